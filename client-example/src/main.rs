@@ -1,0 +1,2 @@
+//! Client.
+fn main() {}

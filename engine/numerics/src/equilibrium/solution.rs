@@ -1,0 +1,107 @@
+//! What a solve returns.
+
+use nalgebra::Vector3;
+use thiserror::Error;
+
+use crate::model::{NodeId, SegmentId};
+
+/// The method that is at work.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Way {
+    /// Linear or Gauss–Newton search on force densities.
+    ForceDensities,
+    /// Newton–Raphson with line search.
+    Newton,
+    /// Interior point, for starts with much slack.
+    InteriorPoint,
+    /// Newton with carried tensions after the interior point.
+    Polish,
+    /// Dynamic relaxation.
+    Relaxation,
+}
+
+/// One iteration, as reported while solving.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct IterationReport {
+    /// The method.
+    pub way: Way,
+    /// Load step, from 1.
+    pub load_step: u32,
+    /// Share of the load in this step.
+    pub load_factor: f64,
+    /// Iteration within the step, from 0 (before the first correction).
+    pub iteration: u32,
+    /// Largest out-of-balance force on a free direction (N).
+    pub residual: f64,
+    /// Where it is.
+    pub worst_node: Option<NodeId>,
+    /// Strain energy (J).
+    pub strain_energy: f64,
+    /// Slack cable segments.
+    pub slack: usize,
+    /// Length of the step taken along the Newton direction (0 before the first).
+    pub step_length: f64,
+}
+
+/// How a solve ended.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Termination {
+    /// Within tolerance.
+    Converged,
+    /// Too many iterations.
+    IterationLimit,
+    /// Steps became too small to matter.
+    StepTooSmall,
+    /// The iterate left the neighbourhood of the net.
+    RunsAway,
+    /// The observer asked to stop.
+    Cancelled,
+}
+
+/// The last state and how it came about.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Solution {
+    /// Position of every node (m).
+    pub positions: Vec<Vector3<f64>>,
+    /// Axial force of every segment (N).
+    pub axial_forces: Vec<f64>,
+    /// How it ended.
+    pub termination: Termination,
+    /// The method that gave the last state.
+    pub way: Way,
+    /// Share of the load that the state carries.
+    pub load_factor: f64,
+    /// Nodes whose place is not determined.
+    pub loose_nodes: Vec<NodeId>,
+    /// Every iteration.
+    pub history: Vec<IterationReport>,
+    /// Factorisations.
+    pub factorisations: u32,
+}
+
+/// Why no state can be given.
+#[derive(Clone, Debug, PartialEq, Error)]
+pub enum SolveError {
+    /// A part that nothing holds carries a load along a direction in which it is free.
+    #[error("nothing holds {n} nodes along the load on them", n = nodes.len())]
+    NotHeld {
+        /// The part.
+        nodes: Vec<NodeId>,
+        /// Free direction (unit).
+        direction: Vector3<f64>,
+        /// Net load along it (N).
+        force: f64,
+    },
+    /// The tangent is singular or indefinite at a state that balances.
+    #[error("a free movement of {n} nodes", n = nodes.len())]
+    FreeMovement {
+        /// Nodes that move, most first.
+        nodes: Vec<NodeId>,
+        /// How the first moves (unit).
+        direction: Vector3<f64>,
+        /// Stiffness against the movement (N/m).
+        stiffness: f64,
+        /// Segments at the first node.
+        segments: Vec<SegmentId>,
+    },
+}

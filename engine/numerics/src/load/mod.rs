@@ -1,0 +1,7 @@
+//! What acts on a net, and the cases that put actions together.
+
+mod action;
+mod case;
+
+pub use action::{Action, Load, Scope};
+pub use case::{Case, SegmentLoads};

@@ -1,0 +1,15 @@
+//! The net as it is given, valid and immutable, and the states it can be in.
+
+mod error;
+mod ids;
+mod material;
+mod net;
+mod state;
+mod support;
+
+pub use error::NetError;
+pub use ids::{CableId, NodeId, ReachId, SegmentId, StrutId};
+pub use material::Section;
+pub use net::{AxialLaw, Cable, CableGiven, Member, Net, NetGiven, Node, NodeGiven, Reach, Segment, Strut, StrutGiven};
+pub use state::ReferenceState;
+pub use support::{ElasticSupport, ElasticSupportGiven, Support, SupportGiven};

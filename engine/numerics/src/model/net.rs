@@ -1,0 +1,507 @@
+//! The net: nodes, cables, struts and supports, checked once and then shared.
+
+use std::ops::Range;
+
+use nalgebra::Vector3;
+use nalgebra_sparse::{CooMatrix, CsrMatrix};
+
+use super::support::{ElasticSupport, ElasticSupportGiven, Support, SupportGiven};
+use super::{CableId, NetError, NodeId, Section, SegmentId, StrutId};
+
+/// A node as given.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct NodeGiven {
+    /// The client's id.
+    pub name: String,
+    /// Position (m); a free node of a net that is shaped first may have none.
+    pub position: Option<Vector3<f64>>,
+    /// Rigid support, if any.
+    pub support: Option<SupportGiven>,
+    /// Mass of clamps, lamps and the like (kg).
+    pub attached_mass: f64,
+}
+
+/// A cable as given: one rope through its nodes in order.
+#[derive(Clone, Debug, PartialEq)]
+pub struct CableGiven {
+    /// The client's id.
+    pub name: String,
+    /// At least two nodes, none twice in a row; a closed rope repeats its first node last.
+    pub path: Vec<NodeId>,
+    /// One section a segment.
+    pub sections: Vec<Section>,
+}
+
+/// A strut as given: one straight two-way bar.
+#[derive(Clone, Debug, PartialEq)]
+pub struct StrutGiven {
+    /// The client's id.
+    pub name: String,
+    /// Foot and head.
+    pub ends: [NodeId; 2],
+    /// Its section.
+    pub section: Section,
+}
+
+/// Everything a net is made of, not yet checked.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct NetGiven {
+    /// Nodes, in result order.
+    pub nodes: Vec<NodeGiven>,
+    /// Cables, in result order.
+    pub cables: Vec<CableGiven>,
+    /// Struts, in result order.
+    pub struts: Vec<StrutGiven>,
+    /// Springs and stiffness matrices.
+    pub elastic_supports: Vec<ElasticSupportGiven>,
+}
+
+/// A node of a net.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Node {
+    /// The client's id.
+    pub name: String,
+    /// Position as given (m).
+    pub position: Option<Vector3<f64>>,
+    /// Mass of what is attached (kg).
+    pub attached_mass: f64,
+}
+
+/// A cable of a net.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Cable {
+    /// The client's id.
+    pub name: String,
+    /// Its nodes in order.
+    pub path: Vec<NodeId>,
+    /// Its segments, one between each two nodes of the path.
+    pub segments: Range<usize>,
+    /// Its reaches, in order.
+    pub reaches: Range<usize>,
+}
+
+/// A strut of a net.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Strut {
+    /// The client's id.
+    pub name: String,
+    /// Its segment.
+    pub segment: SegmentId,
+}
+
+/// What a segment belongs to.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Member {
+    /// A piece of a rope.
+    Cable(CableId),
+    /// The whole of a strut.
+    Strut(StrutId),
+}
+
+/// How axial force follows from stretch.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum AxialLaw {
+    /// `N = EA max(0, λ − 1)`: a rope.
+    TensionOnly,
+    /// `N = EA (λ − 1)`: a strut.
+    TwoWay,
+}
+
+/// A straight piece between two nodes.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Segment {
+    /// Its nodes in path order.
+    pub ends: [NodeId; 2],
+    /// What it belongs to.
+    pub member: Member,
+    /// Its law.
+    pub law: AxialLaw,
+    /// Its section.
+    pub section: Section,
+    /// Index of its unstressed length; see [`Net::n_lengths`].
+    pub length: usize,
+}
+
+/// The piece of a cable between two clamped nodes: its unstressed length is conserved.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Reach {
+    /// The rope.
+    pub cable: CableId,
+    /// Its segments: one, unless the rope slides through nodes.
+    pub segments: Range<usize>,
+}
+
+/// A valid net, immutable: finite numbers, positive stiffness, no dangling index, no path without length.
+#[derive(Clone, Debug)]
+pub struct Net {
+    nodes: Vec<Node>,
+    cables: Vec<Cable>,
+    struts: Vec<Strut>,
+    segments: Vec<Segment>,
+    reaches: Vec<Reach>,
+    supports: Vec<Support>,
+    support_of_node: Vec<Option<usize>>,
+    elastic_supports: Vec<ElasticSupport>,
+    branch_node: CsrMatrix<f64>,
+}
+
+impl Net {
+    /// Checks what is given and numbers it: segments in cable order, along each cable, then struts.
+    ///
+    /// A node touched by an elastic support is held by it alone: a rigid support given as well keeps only the
+    /// directions in which the elastic one has no stiffness of its own.
+    ///
+    /// # Errors
+    /// Every [`NetError`] found, not just the first.
+    pub fn new(given: NetGiven) -> Result<Self, Vec<NetError>> {
+        let errors = violations(&given);
+        if !errors.is_empty() {
+            return Err(errors);
+        }
+        let NetGiven {
+            nodes: nodes_given,
+            cables: cables_given,
+            struts: struts_given,
+            elastic_supports,
+        } = given;
+
+        let mut segments = Vec::new();
+        let mut reaches = Vec::new();
+        let mut cables = Vec::with_capacity(cables_given.len());
+        for (index, cable) in cables_given.into_iter().enumerate() {
+            let id = CableId::new(index);
+            let (first_segment, first_reach) = (segments.len(), reaches.len());
+            for (ends, section) in cable.path.windows(2).zip(cable.sections) {
+                let segment = segments.len();
+                segments.push(Segment {
+                    ends: [ends[0], ends[1]],
+                    member: Member::Cable(id),
+                    law: AxialLaw::TensionOnly,
+                    section,
+                    length: reaches.len(),
+                });
+                reaches.push(Reach {
+                    cable: id,
+                    segments: segment..segment + 1,
+                });
+            }
+            cables.push(Cable {
+                name: cable.name,
+                path: cable.path,
+                segments: first_segment..segments.len(),
+                reaches: first_reach..reaches.len(),
+            });
+        }
+        let mut struts = Vec::with_capacity(struts_given.len());
+        for (index, strut) in struts_given.into_iter().enumerate() {
+            let segment = SegmentId::new(segments.len());
+            segments.push(Segment {
+                ends: strut.ends,
+                member: Member::Strut(StrutId::new(index)),
+                law: AxialLaw::TwoWay,
+                section: strut.section,
+                length: reaches.len() + index,
+            });
+            struts.push(Strut {
+                name: strut.name,
+                segment,
+            });
+        }
+
+        let mut softened: Vec<Vec<Vector3<f64>>> = vec![Vec::new(); nodes_given.len()];
+        for elastic in &elastic_supports {
+            for (position, node) in elastic.nodes.iter().enumerate() {
+                let block = elastic
+                    .stiffness
+                    .fixed_view::<3, 3>(3 * position, 3 * position)
+                    .into_owned();
+                let eigen = block.symmetric_eigen();
+                let largest = eigen.eigenvalues.max();
+                for (value, vector) in eigen.eigenvalues.iter().zip(eigen.eigenvectors.column_iter()) {
+                    if *value > 1e-12 * largest {
+                        softened[node.index()].push(vector.into_owned());
+                    }
+                }
+            }
+        }
+        let mut supports = Vec::new();
+        let mut support_of_node = vec![None; nodes_given.len()];
+        let mut nodes = Vec::with_capacity(nodes_given.len());
+        for (index, node) in nodes_given.into_iter().enumerate() {
+            if let Some(support) = node.support {
+                let mut released = support.released;
+                released.append(&mut softened[index]);
+                support_of_node[index] = Some(supports.len());
+                supports.push(Support::new(NodeId::new(index), &released));
+            }
+            nodes.push(Node {
+                name: node.name,
+                position: node.position,
+                attached_mass: node.attached_mass,
+            });
+        }
+        let elastic_supports = elastic_supports
+            .into_iter()
+            .map(|elastic| {
+                let rest = elastic
+                    .nodes
+                    .iter()
+                    .map(|node| {
+                        nodes[node.index()]
+                            .position
+                            .expect("checked: a held node has a position")
+                    })
+                    .collect();
+                ElasticSupport::new(elastic, rest)
+            })
+            .collect();
+
+        let branch_node = branch_node_matrix(nodes.len(), &segments);
+        Ok(Self {
+            nodes,
+            cables,
+            struts,
+            segments,
+            reaches,
+            supports,
+            support_of_node,
+            elastic_supports,
+            branch_node,
+        })
+    }
+
+    /// Nodes in the order given.
+    #[must_use]
+    pub fn nodes(&self) -> &[Node] {
+        &self.nodes
+    }
+
+    /// Cables in the order given.
+    #[must_use]
+    pub fn cables(&self) -> &[Cable] {
+        &self.cables
+    }
+
+    /// Struts in the order given.
+    #[must_use]
+    pub fn struts(&self) -> &[Strut] {
+        &self.struts
+    }
+
+    /// Segments of the cables, then one for each strut.
+    #[must_use]
+    pub fn segments(&self) -> &[Segment] {
+        &self.segments
+    }
+
+    /// Reaches of the cables, in cable order and along each cable.
+    #[must_use]
+    pub fn reaches(&self) -> &[Reach] {
+        &self.reaches
+    }
+
+    /// Rigid supports in node order.
+    #[must_use]
+    pub fn supports(&self) -> &[Support] {
+        &self.supports
+    }
+
+    /// The rigid support of a node, if it has one.
+    #[must_use]
+    pub fn support_of(&self, node: NodeId) -> Option<&Support> {
+        self.support_of_node[node.index()].map(|index| &self.supports[index])
+    }
+
+    /// Springs and stiffness matrices.
+    #[must_use]
+    pub fn elastic_supports(&self) -> &[ElasticSupport] {
+        &self.elastic_supports
+    }
+
+    /// Branch–node matrix `C`: one row a segment, −1 at its first node and +1 at its second (Schek 1974).
+    #[must_use]
+    pub fn branch_node_matrix(&self) -> &CsrMatrix<f64> {
+        &self.branch_node
+    }
+
+    /// Number of unstressed lengths: one for each reach, then one for each strut.
+    #[must_use]
+    pub fn n_lengths(&self) -> usize {
+        self.reaches.len() + self.struts.len()
+    }
+
+    /// Whether every member is a rope: then the energy is convex and each equilibrium a global minimum.
+    #[must_use]
+    pub fn is_pure_tension(&self) -> bool {
+        self.struts.is_empty()
+    }
+
+    /// The client's id of a node.
+    #[must_use]
+    pub fn node_name(&self, node: NodeId) -> &str {
+        &self.nodes[node.index()].name
+    }
+
+    /// The client's id of the member to which a segment belongs.
+    #[must_use]
+    pub fn member_name(&self, segment: SegmentId) -> &str {
+        match self.segments[segment.index()].member {
+            Member::Cable(cable) => &self.cables[cable.index()].name,
+            Member::Strut(strut) => &self.struts[strut.index()].name,
+        }
+    }
+}
+
+fn branch_node_matrix(n_nodes: usize, segments: &[Segment]) -> CsrMatrix<f64> {
+    let mut entries = CooMatrix::new(segments.len(), n_nodes);
+    for (row, segment) in segments.iter().enumerate() {
+        entries.push(row, segment.ends[0].index(), -1.0);
+        entries.push(row, segment.ends[1].index(), 1.0);
+    }
+    CsrMatrix::from(&entries)
+}
+
+fn violations(given: &NetGiven) -> Vec<NetError> {
+    let mut errors = Vec::new();
+    if given.cables.is_empty() && given.struts.is_empty() {
+        errors.push(NetError::Empty);
+    }
+    for node in &given.nodes {
+        if let Some(value) = node.position.iter().flatten().find(|c| !c.is_finite()) {
+            errors.push(NetError::NotFinite {
+                what: "position",
+                of: node.name.clone(),
+                value: *value,
+            });
+        }
+        if !(node.attached_mass.is_finite() && node.attached_mass >= 0.0) {
+            errors.push(NetError::NotPositive {
+                what: "attached mass",
+                of: node.name.clone(),
+                value: node.attached_mass,
+            });
+        }
+        if let Some(support) = &node.support {
+            if node.position.is_none() {
+                errors.push(NetError::SupportWithoutPosition { of: node.name.clone() });
+            }
+            for direction in &support.released {
+                if !(direction.norm().is_finite() && direction.norm() > 0.0) {
+                    errors.push(NetError::NotPositive {
+                        what: "released direction",
+                        of: node.name.clone(),
+                        value: direction.norm(),
+                    });
+                }
+            }
+        }
+    }
+    for cable in &given.cables {
+        check_path(&cable.name, &cable.path, given.nodes.len(), &mut errors);
+        if cable.sections.len() + 1 != cable.path.len() {
+            errors.push(NetError::DegeneratePath {
+                of: cable.name.clone(),
+                position: cable.sections.len(),
+            });
+        }
+        for section in &cable.sections {
+            check_section(&cable.name, section, &mut errors);
+        }
+    }
+    for strut in &given.struts {
+        check_path(&strut.name, &strut.ends, given.nodes.len(), &mut errors);
+        check_section(&strut.name, &strut.section, &mut errors);
+    }
+    for elastic in &given.elastic_supports {
+        check_elastic_support(elastic, given, &mut errors);
+    }
+    errors
+}
+
+fn check_path(name: &str, path: &[NodeId], n_nodes: usize, errors: &mut Vec<NetError>) {
+    if path.len() < 2 {
+        errors.push(NetError::DegeneratePath {
+            of: name.to_owned(),
+            position: 0,
+        });
+    }
+    for (position, pair) in path.windows(2).enumerate() {
+        if pair[0] == pair[1] {
+            errors.push(NetError::DegeneratePath {
+                of: name.to_owned(),
+                position,
+            });
+        }
+    }
+    for node in path {
+        if node.index() >= n_nodes {
+            errors.push(NetError::UnknownNode {
+                of: name.to_owned(),
+                node: *node,
+            });
+        }
+    }
+}
+
+fn check_section(name: &str, section: &Section, errors: &mut Vec<NetError>) {
+    let mut positive = |what, value: f64, allowed: bool| {
+        if !(value.is_finite() && allowed) {
+            errors.push(NetError::NotPositive {
+                what,
+                of: name.to_owned(),
+                value,
+            });
+        }
+    };
+    positive(
+        "axial stiffness",
+        section.axial_stiffness,
+        section.axial_stiffness > 0.0,
+    );
+    positive(
+        "mass per length",
+        section.mass_per_length,
+        section.mass_per_length >= 0.0,
+    );
+    positive("expansion", section.expansion, true);
+    if let Some(force) = section.breaking_force {
+        positive("breaking force", force, force > 0.0);
+    }
+}
+
+/// Relative asymmetry and negative eigenvalue of a support stiffness that still count as rounding.
+const STIFFNESS_ROUNDING: f64 = 1e-9;
+
+fn check_elastic_support(elastic: &ElasticSupportGiven, given: &NetGiven, errors: &mut Vec<NetError>) {
+    let names: Vec<&str> = elastic
+        .nodes
+        .iter()
+        .filter_map(|n| given.nodes.get(n.index()))
+        .map(|n| n.name.as_str())
+        .collect();
+    let mut lacks = |property| {
+        errors.push(NetError::SupportStiffness {
+            of: names.join(", "),
+            property,
+        })
+    };
+    let size = 3 * elastic.nodes.len();
+    let s = &elastic.stiffness;
+    if names.len() != elastic.nodes.len() || s.nrows() != size || s.ncols() != size || size == 0 {
+        lacks("of three rows and columns for each of its nodes");
+        return;
+    }
+    if !s.iter().all(|v| v.is_finite()) {
+        lacks("finite");
+        return;
+    }
+    if elastic.nodes.iter().any(|n| given.nodes[n.index()].position.is_none()) {
+        lacks("at a node with a position");
+    }
+    let largest = s.amax();
+    if (s - s.transpose()).amax() > STIFFNESS_ROUNDING * largest {
+        lacks("symmetric");
+    } else if s.clone().symmetric_eigenvalues().min() < -STIFFNESS_ROUNDING * largest {
+        lacks("positive semi-definite");
+    }
+}

@@ -1,0 +1,11 @@
+//! A state to start from: force densities and wanted tensions.
+
+use thiserror::Error;
+
+/// How the reference state was found.
+#[derive(Clone, Debug, PartialEq, Default)]
+pub struct ShapeReport {}
+
+/// Why there is no reference state.
+#[derive(Clone, Debug, PartialEq, Error)]
+pub enum ShapeError {}

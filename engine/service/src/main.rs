@@ -1,0 +1,2 @@
+//! Engine.
+fn main() {}
