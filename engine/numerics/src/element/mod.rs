@@ -1,1 +1,5 @@
-//! To come.
+//! One member between two nodes.
+
+mod segment;
+
+pub use segment::Bar;
