@@ -3,3 +3,4 @@
 mod segment;
 
 pub use segment::Bar;
+pub(crate) use segment::axial_block;

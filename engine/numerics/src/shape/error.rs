@@ -57,7 +57,10 @@ pub enum ShapeError {
         nodes: Vec<String>,
     },
     /// A node is to be held in place but has none.
-    #[error("{} are to be held while the shape is found, but have no coordinates", list(nodes, 12))]
+    #[error(
+        "{} are to be held while the shape is found, but have no coordinates",
+        list(nodes, 12)
+    )]
     HeldWithoutPosition {
         /// Ids of the nodes.
         nodes: Vec<String>,
@@ -95,7 +98,10 @@ pub enum ShapeError {
         nodes: Vec<String>,
     },
     /// The stiffness of the prestress is singular: compressed and tensioned members cancel.
-    #[error("the prestress does not fix the place of {}: compression and tension cancel there", list(nodes, 6))]
+    #[error(
+        "the prestress does not fix the place of {}: compression and tension cancel there",
+        list(nodes, 6)
+    )]
     Singular {
         /// Ids of the nodes that move most, most first.
         nodes: Vec<String>,

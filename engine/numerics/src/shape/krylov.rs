@@ -48,7 +48,11 @@ pub(super) fn gmres(
         }
         let k = columns.len();
         let radius = column[k].hypot(column[k + 1]);
-        let (c, s) = if radius > 0.0 { (column[k] / radius, column[k + 1] / radius) } else { (1.0, 0.0) };
+        let (c, s) = if radius > 0.0 {
+            (column[k] / radius, column[k + 1] / radius)
+        } else {
+            (1.0, 0.0)
+        };
         column[k] = radius;
         column.truncate(k + 1);
         rotations.push((c, s));
@@ -90,9 +94,7 @@ mod tests {
             _ if i == j => 3.0 + i as f64,
             _ => 0.3 * ((7 * i + 3 * j) % 5) as f64 - 0.5,
         };
-        let product = |v: &[f64]| -> Vec<f64> {
-            (0..n).map(|i| (0..n).map(|j| entry(i, j) * v[j]).sum()).collect()
-        };
+        let product = |v: &[f64]| -> Vec<f64> { (0..n).map(|i| (0..n).map(|j| entry(i, j) * v[j]).sum()).collect() };
         let wanted: Vec<f64> = (0..n).map(|i| (i as f64).cos()).collect();
         let found = gmres(
             product,

@@ -20,14 +20,18 @@ pub(super) struct ShapeLoads {
 }
 
 impl ShapeLoads {
-    pub(super) fn new(net: &Net, actions: &[Action], under: &[usize]) -> Result<Self, ShapeError> {
-        let n_segments = net.segments().len();
-        let mut loads = Self {
+    /// No load at all.
+    pub(super) fn none(net: &Net) -> Self {
+        Self {
             nodal: vec![Vector3::zeros(); net.nodes().len()],
-            per_length: vec![Vector3::zeros(); n_segments],
-            per_plan_length: vec![Vector3::zeros(); n_segments],
+            per_length: vec![Vector3::zeros(); net.segments().len()],
+            per_plan_length: vec![Vector3::zeros(); net.segments().len()],
             depend_on_lengths: false,
-        };
+        }
+    }
+
+    pub(super) fn new(net: &Net, actions: &[Action], under: &[usize]) -> Result<Self, ShapeError> {
+        let mut loads = Self::none(net);
         for action in under.iter().map(|index| &actions[*index]) {
             for load in &action.loads {
                 loads.add(net, load).map_err(|what| ShapeError::NotDead {

@@ -123,18 +123,34 @@ impl<'a, 'o> Search<'a, 'o> {
             let (axial, unstressed, force) = match self.parts.of[index] {
                 Part::Elastic(bar) => {
                     let axial = bar.axial_force(length);
-                    let force = if length > 0.0 { chord * (axial / length) } else { Vector3::zeros() };
+                    let force = if length > 0.0 {
+                        chord * (axial / length)
+                    } else {
+                        Vector3::zeros()
+                    };
                     (axial, bar.stress_free_length, force)
                 }
                 Part::Balance => {
                     let axial = self.balance_forces[index];
-                    let force = if length > 0.0 { chord * (axial / length) } else { Vector3::zeros() };
-                    (axial, unstressed_length(length, axial, segment.section.axial_stiffness), force)
+                    let force = if length > 0.0 {
+                        chord * (axial / length)
+                    } else {
+                        Vector3::zeros()
+                    };
+                    (
+                        axial,
+                        unstressed_length(length, axial, segment.section.axial_stiffness),
+                        force,
+                    )
                 }
                 Part::Density(_) | Part::Family(_) => {
                     let q = self.density(index, family_densities).expect("a part with a density");
                     let axial = q * length;
-                    (axial, unstressed_length(length, axial, segment.section.axial_stiffness), chord * q)
+                    (
+                        axial,
+                        unstressed_length(length, axial, segment.section.axial_stiffness),
+                        chord * q,
+                    )
                 }
             };
             let load = 0.5
@@ -150,9 +166,7 @@ impl<'a, 'o> Search<'a, 'o> {
         for elastic in net.elastic_supports() {
             for (row, node) in elastic.nodes().iter().enumerate() {
                 let force: Vector3<f64> = (elastic.nodes().iter().zip(elastic.rest()).enumerate())
-                    .map(|(column, (other, rest))| {
-                        elastic.block(row, column) * (point.positions[other.index()] - rest)
-                    })
+                    .map(|(column, (other, rest))| elastic.block(row, column) * (point.positions[other.index()] - rest))
                     .sum();
                 point.out_of_balance[node.index()] -= force;
                 point.largest_force = point.largest_force.max(force.amax());
@@ -232,71 +246,27 @@ impl<'a, 'o> Search<'a, 'o> {
         }
     }
 
-    /// Derivative of the loads by a movement of the nodes, in the free directions: `P v`.
-    fn load_change(&self, point: &Point, movement: &[f64]) -> Vec<f64> {
-        let n_nodes = self.net().nodes().len();
-        let (mut nodal, mut change) = (vec![Vector3::zeros(); n_nodes], vec![Vector3::zeros(); n_nodes]);
-        self.structure.dofs().nodal_into(movement, &mut nodal);
-        for (index, segment) in self.net().segments().iter().enumerate() {
-            let (length, plan) = (point.lengths[index], point.chords[index].xy().norm());
-            let [i, j] = segment.ends.map(NodeId::index);
-            let moved = nodal[j] - nodal[i];
-            let mut load = Vector3::zeros();
-            if length > 0.0 {
-                let longer = point.chords[index].dot(&moved) / length;
-                load += self.loads.per_length[index] * (0.5 * self.unstressed_slope(point, index) * longer);
-            }
-            if plan > 0.0 {
-                let longer = point.chords[index].xy().dot(&moved.xy()) / plan;
-                load += self.loads.per_plan_length[index] * (0.5 * longer);
-            }
-            change[i] += load;
-            change[j] += load;
-        }
-        let mut components = vec![0.0; self.structure.n_dofs()];
-        self.structure.dofs().components_into(&change, &mut components);
-        components
-    }
-
-    /// `dL0/dl` at the force density as it is.
-    fn unstressed_slope(&self, point: &Point, segment: usize) -> f64 {
-        let stretch = point.lengths[segment] / point.unstressed[segment];
-        match self.parts.of[segment] {
-            Part::Elastic(_) => 0.0,
-            Part::Balance => 1.0 / stretch,
-            Part::Density(_) | Part::Family(_) => 1.0 / (stretch * stretch),
-        }
-    }
-
     /// Solves `(K − P) v = b`, `K` as factorised, `P` at the point.
     fn solve(&mut self, point: &Point, right_hand_side: Vec<f64>) -> Vec<f64> {
-        let mut factor = std::mem::replace(&mut self.factor, Factor::empty());
-        let values = std::mem::take(&mut self.values);
-        let pattern = self.structure.pattern();
-        let solution = gmres(
+        let (structure, parts, loads) = (self.structure, self.parts, self.loads);
+        let (factor, values) = (&mut self.factor, &self.values);
+        gmres(
             |v| {
                 let mut product = vec![0.0; v.len()];
-                pattern.product_into(&values, v, &mut product);
-                if self.loads.depend_on_lengths {
-                    let change = self.load_change(point, v);
+                structure.pattern().product_into(values, v, &mut product);
+                if loads.depend_on_lengths {
+                    let change = load_change(structure, parts, loads, point, v);
                     product.iter_mut().zip(change).for_each(|(p, c)| *p -= c);
                 }
                 product
             },
             |v| factor.solve_in_place(v),
             right_hand_side,
-        );
-        self.factor = factor;
-        self.values = values;
-        solution
+        )
     }
 
     /// Positions at balance, from `start`, at given densities of the families (N/m).
-    pub(super) fn balanced(
-        &mut self,
-        start: Vec<Vector3<f64>>,
-        family_densities: &[f64],
-    ) -> Result<Point, ShapeError> {
+    pub(super) fn balanced(&mut self, start: Vec<Vector3<f64>>, family_densities: &[f64]) -> Result<Point, ShapeError> {
         let mut point = self.point(start, family_densities);
         let mut step = 0.0;
         for iteration in 0..MAX_ITERATIONS {
@@ -368,7 +338,11 @@ impl<'a, 'o> Search<'a, 'o> {
                 // Secant on the slope, kept off the ends of the bracket.
                 let secant = low + (high - low) * low_slope / (low_slope - high_slope);
                 let (near, far) = (low + 0.1 * (high - low), high - 0.1 * (high - low));
-                if secant.is_finite() { secant.clamp(near, far) } else { 0.5 * (low + high) }
+                if secant.is_finite() {
+                    secant.clamp(near, far)
+                } else {
+                    0.5 * (low + high)
+                }
             } else {
                 2.0 * t
             };
@@ -414,10 +388,20 @@ impl<'a, 'o> Search<'a, 'o> {
         let mut nodal = vec![Vector3::zeros(); self.net().nodes().len()];
         self.structure.dofs().nodal_into(movement, &mut nodal);
         let mut order: Vec<usize> = (0..nodal.len()).filter(|n| nodal[*n].norm() != 0.0).collect();
-        let size = |n: usize| if nodal[n].norm().is_nan() { f64::INFINITY } else { nodal[n].norm() };
+        let size = |n: usize| {
+            if nodal[n].norm().is_nan() {
+                f64::INFINITY
+            } else {
+                nodal[n].norm()
+            }
+        };
         order.sort_by(|a, b| size(*b).total_cmp(&size(*a)));
         ShapeError::Singular {
-            nodes: order.iter().take(6).map(|n| self.net().nodes()[*n].name.clone()).collect(),
+            nodes: order
+                .iter()
+                .take(6)
+                .map(|n| self.net().nodes()[*n].name.clone())
+                .collect(),
         }
     }
 
@@ -429,9 +413,13 @@ impl<'a, 'o> Search<'a, 'o> {
         for &index in &self.parts.families[family].segments {
             let [i, j] = self.net().segments()[index].ends.map(NodeId::index);
             let force = point.chords[index] * density;
-            let stretch = point.lengths[index] / point.unstressed[index];
             // With more force the same length needs less rope, which weighs less.
-            let shorter = point.unstressed[index] * (stretch - 1.0) / stretch;
+            let unstressed = point.unstressed[index];
+            let shorter = if unstressed > 0.0 {
+                unstressed * (1.0 - unstressed / point.lengths[index])
+            } else {
+                0.0
+            };
             let load = self.loads.per_length[index] * (-0.5 * shorter);
             change[i] += force + load;
             change[j] += load - force;
@@ -467,4 +455,41 @@ impl<'a, 'o> Search<'a, 'o> {
 /// tells it apart.
 fn unstressed_length(length: f64, axial_force: f64, axial_stiffness: f64) -> f64 {
     length / (1.0 + axial_force / axial_stiffness).max(0.1)
+}
+
+/// Derivative of the loads by a movement of the nodes, in the free directions: `P v`.
+fn load_change(structure: &Structure, parts: &Parts, loads: &ShapeLoads, point: &Point, movement: &[f64]) -> Vec<f64> {
+    let net = structure.net();
+    let n_nodes = net.nodes().len();
+    let (mut nodal, mut change) = (vec![Vector3::zeros(); n_nodes], vec![Vector3::zeros(); n_nodes]);
+    structure.dofs().nodal_into(movement, &mut nodal);
+    for (index, segment) in net.segments().iter().enumerate() {
+        let (length, plan) = (point.lengths[index], point.chords[index].xy().norm());
+        let [i, j] = segment.ends.map(NodeId::index);
+        let moved = nodal[j] - nodal[i];
+        let mut load = Vector3::zeros();
+        if length > 0.0 {
+            let longer = point.chords[index].dot(&moved) / length;
+            load += loads.per_length[index] * (0.5 * unstressed_slope(parts, point, index) * longer);
+        }
+        if plan > 0.0 {
+            let longer = point.chords[index].xy().dot(&moved.xy()) / plan;
+            load += loads.per_plan_length[index] * (0.5 * longer);
+        }
+        change[i] += load;
+        change[j] += load;
+    }
+    let mut components = vec![0.0; structure.n_dofs()];
+    structure.dofs().components_into(&change, &mut components);
+    components
+}
+
+/// `dL0/dl` at the force density as it is.
+fn unstressed_slope(parts: &Parts, point: &Point, segment: usize) -> f64 {
+    let stretch = point.lengths[segment] / point.unstressed[segment];
+    match parts.of[segment] {
+        Part::Elastic(_) => 0.0,
+        Part::Balance => 1.0 / stretch,
+        Part::Density(_) | Part::Family(_) => 1.0 / (stretch * stretch),
+    }
 }
