@@ -23,6 +23,8 @@ FLOORS = {
     "equilibrium": 3,
     "shape": 4, "motion": 4, "diagnose": 4, "workshop": 4, "site": 4,
     "brief": 5,
+    # Small nets for tests beside the code.
+    "test_nets": 0.5,
 }
 
 # The kernel is pure and synchronous: crates that would make it otherwise.
