@@ -38,7 +38,9 @@ def test_json_to_binary_to_json(briefs, name):
     message = talk.as_message(text)
     again = stubs.brief.Brief.FromString(message.SerializeToString(deterministic=True))
     assert again == message
-    back = json_format.MessageToDict(again, preserving_proto_field_name=True)
+    back = json_format.MessageToDict(
+        again, preserving_proto_field_name=True, always_print_fields_with_no_presence=True
+    )
     assert json_format.ParseDict(back, stubs.brief.Brief()) == message
     # Nothing of the file is lost: each value of it stands in what came back.
     assert_within(text, back, name)
