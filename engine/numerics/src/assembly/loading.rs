@@ -22,7 +22,7 @@ pub enum LoadingError {
         needed: usize,
     },
     /// A segment would have no length, no stiffness, or numbers beyond reckoning.
-    #[error("the {what} of {segment} is {value}")]
+    #[error("the {what} of {segment} is {value:e}: it must be positive and below {LARGEST:e}")]
     Segment {
         /// The segment.
         segment: SegmentId,
@@ -31,14 +31,33 @@ pub enum LoadingError {
         /// Its value.
         value: f64,
     },
-    /// A force, movement or position is not finite.
-    #[error("the {what} of {node} is not finite")]
+    /// A force, movement or position is not finite, or beyond reckoning.
+    #[error("the {what} of {node} has the component {value:e}: it must be finite and below {LARGEST:e}")]
     Node {
         /// The node.
         node: NodeId,
         /// The quantity.
         what: &'static str,
+        /// The component.
+        value: f64,
     },
+}
+
+/// Numbers beyond this overflow when energies are formed from them, and nothing built comes near.
+const LARGEST: f64 = 1e100;
+
+/// The first of one vector a node that can not be reckoned with.
+pub(crate) fn check_vectors(what: &'static str, vectors: &[Vector3<f64>]) -> Result<(), LoadingError> {
+    for (node, vector) in vectors.iter().enumerate() {
+        if let Some(value) = vector.iter().find(|c| c.is_nan() || c.abs() >= LARGEST) {
+            return Err(LoadingError::Node {
+                node: NodeId::new(node),
+                what,
+                value: *value,
+            });
+        }
+    }
+    Ok(())
 }
 
 /// Forces, bars and supports at one share of the load.
@@ -80,15 +99,8 @@ impl Loading {
                 return Err(LoadingError::WrongLength { what, given, needed });
             }
         }
-        let finite = |what, vectors: &[Vector3<f64>]| match vectors.iter().position(|v| !v.norm().is_finite()) {
-            Some(node) => Err(LoadingError::Node {
-                node: NodeId::new(node),
-                what,
-            }),
-            None => Ok(()),
-        };
-        finite("force", &case.nodal_forces)?;
-        finite("movement", &case.support_movements)?;
+        check_vectors("force", &case.nodal_forces)?;
+        check_vectors("movement", &case.support_movements)?;
         let mut bars = Vec::with_capacity(net.segments().len());
         for (index, segment) in net.segments().iter().enumerate() {
             if case.removed[index] {
@@ -105,7 +117,7 @@ impl Loading {
                 ("stiffness", bar.stiffness),
             ];
             for (what, value) in checks {
-                if !(value.is_finite() && value > 0.0) {
+                if !(value > 0.0 && value < LARGEST) {
                     return Err(LoadingError::Segment {
                         segment: SegmentId::new(index),
                         what,

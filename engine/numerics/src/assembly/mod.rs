@@ -8,6 +8,7 @@ mod structure;
 mod tangent;
 
 pub use dofs::Dofs;
+pub(crate) use loading::check_vectors;
 pub use loading::{Loading, LoadingError};
 pub use pattern::Pattern;
 pub use residual::Response;

@@ -113,11 +113,11 @@ impl Pattern {
     pub fn full_matrix(&self, values: &[f64]) -> CscMatrix<f64> {
         let mut entries = nalgebra_sparse::CooMatrix::new(self.size(), self.size());
         for column in 0..self.size() {
-            for entry in self.column_starts[column]..self.column_starts[column + 1] {
-                let row = self.rows[entry];
-                entries.push(row, column, values[entry]);
+            let range = self.column_starts[column]..self.column_starts[column + 1];
+            for (&row, &value) in self.rows[range.clone()].iter().zip(&values[range]) {
+                entries.push(row, column, value);
                 if row != column {
-                    entries.push(column, row, values[entry]);
+                    entries.push(column, row, value);
                 }
             }
         }
@@ -129,11 +129,11 @@ impl Pattern {
         product.fill(0.0);
         for column in 0..self.size() {
             let mut sum = 0.0;
-            for entry in self.column_starts[column]..self.column_starts[column + 1] {
-                let row = self.rows[entry];
-                sum += values[entry] * vector[row];
+            let range = self.column_starts[column]..self.column_starts[column + 1];
+            for (&row, &value) in self.rows[range.clone()].iter().zip(&values[range]) {
+                sum += value * vector[row];
                 if row != column {
-                    product[row] += values[entry] * vector[column];
+                    product[row] += value * vector[column];
                 }
             }
             product[column] += sum;

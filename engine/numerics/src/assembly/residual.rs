@@ -99,6 +99,13 @@ impl Structure {
                 response.out_of_balance[j] -= force;
             }
         }
+        self.add_elastic_forces(loading, positions, &mut response.out_of_balance);
+        self.dofs()
+            .components_into(&response.out_of_balance, &mut response.residual);
+    }
+
+    /// Adds the forces of all elastic supports on the net, `−S (x − rest − movement)` (N), to one vector a node.
+    pub fn add_elastic_forces(&self, loading: &Loading, positions: &[Vector3<f64>], forces: &mut [Vector3<f64>]) {
         for elastic in self.net().elastic_supports() {
             for (row, node) in elastic.nodes().iter().enumerate() {
                 let mut force = Vector3::zeros();
@@ -106,10 +113,8 @@ impl Structure {
                     let at_rest = elastic.rest()[column] + loading.support_movements[other.index()];
                     force += elastic.block(row, column) * (positions[other.index()] - at_rest);
                 }
-                response.out_of_balance[node.index()] -= force;
+                forces[node.index()] -= force;
             }
         }
-        self.dofs()
-            .components_into(&response.out_of_balance, &mut response.residual);
     }
 }
