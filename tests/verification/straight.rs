@@ -16,7 +16,16 @@ fn two_link(half_span: f64, axial_stiffness: f64, unstressed_half: f64, load: f6
     let right = problem.fixed(half_span, 0.0, 0.0);
     problem.bar(left, middle, stiff(axial_stiffness), unstressed_half);
     problem.bar(middle, right, stiff(axial_stiffness), unstressed_half);
-    problem.push_node(middle, 0.0, 0.0, -load);
+    let load = Load::Nodes {
+        nodes: vec![middle],
+        force: Vector3::new(0.0, 0.0, -load),
+    };
+    if unstressed_half < half_span {
+        problem.load(load);
+    } else {
+        // Without tension the middle has no place of its own until it is loaded: the load belongs to the reference state.
+        problem.always(load);
+    }
     problem.solve()
 }
 
@@ -37,7 +46,7 @@ fn flat_two_link_cable() {
             &format!("{name}: deflection (m)"),
             &data.source(),
             number(&case["deflection"]),
-            -answer.state.displacements[1].z,
+            -answer.state.positions[1].z,
             tolerance,
         );
         check(
