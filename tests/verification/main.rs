@@ -10,7 +10,7 @@
 //! `data/` tell where each of their numbers came from; numbers that stand in the code are closed forms written out
 //! beside the check, or come from the source named there.
 //!
-//! `report` compares, `problem` holds every call of the kernel, the other modules are cases.
+//! `report` compares, `problem` holds every call of the kernel, `properties` tries any net, the other modules are cases.
 #![forbid(unsafe_code)]
 #![allow(clippy::print_stdout, reason = "the report of a comparison is its printed line")]
 
@@ -20,6 +20,7 @@ mod loads;
 mod nets;
 mod prestress;
 mod problem;
+mod properties;
 mod report;
 mod scalar;
 mod shapes;
