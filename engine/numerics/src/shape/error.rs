@@ -177,7 +177,8 @@ pub enum ShapeError {
     },
     /// The search ended without balance.
     #[error(
-        "no balanced shape after {iterations} iterations: {} is left at \"{node}\" ({termination:?})",
+        "no balanced shape after {iterations} iterations: {} is left at \"{node}\" ({termination:?}); force densities that \
+         are small beside the weights they carry have none",
         kilonewtons(*residual)
     )]
     NotConverged {
