@@ -32,6 +32,9 @@ const SETTLED: f64 = 1e-13;
 ///
 /// # Errors
 /// [`ShapeError`], in the client's ids, if there is no such state or it was not found.
+///
+/// # Panics
+/// If `prestress` does not have one rule a segment.
 pub fn find(
     analysis: &Analysis,
     prestress: &Prestress,
@@ -40,6 +43,7 @@ pub fn find(
     observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
 ) -> Result<Found, ShapeError> {
     let net = analysis.structure().net();
+    assert_eq!(prestress.rules.len(), net.segments().len(), "one rule a segment");
     let parts = Parts::new(net, prestress)?;
     let loads = ShapeLoads::new(net, actions, &prestress.under)?;
     let nowhere = |nodes: &mut dyn Iterator<Item = NodeId>| -> Vec<String> {

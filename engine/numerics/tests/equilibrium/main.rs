@@ -1,5 +1,5 @@
 //! States of whole nets: families of random nets, published and own numbers, properties, endings.
-#![allow(clippy::unwrap_used, reason = "tests")]
+#![allow(clippy::unwrap_used, clippy::print_stdout, reason = "tests")]
 
 mod audited;
 mod families;

@@ -237,6 +237,20 @@ fn an_observer_may_stop_the_search() {
 }
 
 #[test]
+fn a_stiffness_beyond_reckoning_is_told() {
+    for stiffness in [1e13, 1e18, 1e300] {
+        let mut sketch = rope();
+        sketch.given.cables[0].sections = vec![section(stiffness, 0.0); 2];
+        let net = Arc::new(sketch.net());
+        let prestress = all(&net, PrestressRule::ForceDensity(1000.0));
+        match shape(&net, &prestress, vec![down(node(&net, "m"), 500.0)]) {
+            Ok(found) => println!("{stiffness:e} {:?}", found.report),
+            Err(error) => println!("{stiffness:e} {error}"),
+        }
+    }
+}
+
+#[test]
 fn numbers_beyond_all_bounds_are_told() {
     let net = Arc::new(rope().net());
     let prestress = all(&net, PrestressRule::ForceDensity(1e-300));
