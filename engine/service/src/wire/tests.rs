@@ -98,7 +98,7 @@ fn what_is_not_protobuf_is_told() {
         (&[0x80, 0x80], "a number that does not end"),
         (&[0xff; 11], "a number of more than 64 bits"),
         (&[0x00, 0x00], "a field number 0"),
-        (&[0x08, 0x01], "a value of another type than the contract has at"),
+        (&[0x08, 0x01], "a value of another type than the contract has"),
         (&[0x12, 0x01, 0xff], "text that is not UTF-8 at \"only\""),
     ] {
         let told = read_run(bytes).expect_err(words).to_string();
