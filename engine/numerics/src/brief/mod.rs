@@ -3,5 +3,7 @@
 mod given;
 mod outcome;
 
-pub use given::{Brief, CaseGiven, Check, CheckKind, Prestress, PrestressRule};
+pub use crate::check::{Check, CheckKind, CheckResult, Verdict};
+pub use crate::shape::{Prestress, PrestressRule};
+pub use given::{Brief, CaseGiven};
 pub use outcome::*;
