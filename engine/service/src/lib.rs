@@ -1,1 +1,7 @@
-//! Service.
+//! The engine behind the contract: reads briefs, runs the mechanics, streams what came of them.
+#![forbid(unsafe_code)]
+
+pub mod config;
+pub mod decode;
+pub mod encode;
+mod words;

@@ -1,0 +1,1 @@
+//! Domain to message.
