@@ -1,15 +1,25 @@
-//! A state to start from: force densities and wanted tensions.
+//! A state to start from: force densities, wanted tensions, given lengths, and members left to balance.
 
+mod balance;
+mod connection;
+mod error;
+mod find;
+mod frozen;
+mod gate;
 mod given;
+mod krylov;
+mod loads;
+mod parts;
+mod report;
+mod search;
+mod targets;
+mod words;
 
-use thiserror::Error;
+#[cfg(test)]
+mod tests;
 
+pub use error::{ForceLeft, ShapeError, Target};
+pub use find::find;
+pub use gate::Found;
 pub use given::{Prestress, PrestressRule};
-
-/// How the reference state was found.
-#[derive(Clone, Debug, PartialEq, Default)]
-pub struct ShapeReport {}
-
-/// Why there is no reference state.
-#[derive(Clone, Debug, PartialEq, Error)]
-pub enum ShapeError {}
+pub use report::{BalanceReport, ShapeReport};
