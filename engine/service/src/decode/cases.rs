@@ -16,8 +16,12 @@ use super::reasons;
 use super::scope::tell_repeated;
 use crate::words::{Quoted, number, quoted_list};
 
-/// Names that results use for states that are not cases.
-pub(crate) const RESERVED: [&str; 3] = ["reference", "governing", "envelope"];
+/// Name of the reference state in results.
+pub(crate) const REFERENCE: &str = "reference";
+/// Name in results of what is gathered over all cases.
+pub(crate) const ENVELOPE: &str = "envelope";
+/// Names that cases and sets must not have.
+const RESERVED: [&str; 3] = [REFERENCE, "governing", ENVELOPE];
 /// Bytes of a case: its beginning is told in one message.
 const LARGEST: usize = 96 * 1024;
 
@@ -126,7 +130,7 @@ impl<'a> Cases<'a> {
     }
 
     fn unknown(&self, name: &str, at: &Path<'_>, findings: &mut Findings) {
-        if name == RESERVED[0] {
+        if name == REFERENCE {
             findings.error(
                 reasons::RESERVED_ID,
                 at,

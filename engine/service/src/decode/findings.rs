@@ -78,25 +78,15 @@ pub(crate) fn is_id(id: &str) -> bool {
     !id.is_empty() && id.chars().count() <= 128 && !id.chars().any(|c| c.is_control() || matches!(c, '/' | '[' | ']'))
 }
 
-/// A finding that was just added, for what few findings have.
+/// A finding that was just added.
 pub(crate) struct Added<'a>(Option<&'a mut v1::Finding>);
 
 impl Added<'_> {
     /// The value found there, written out.
-    pub(crate) fn value(self, value: impl fmt::Display) -> Self {
-        self.with(|finding| finding.value = shown(&value.to_string()))
-    }
-
-    /// The case that it came up in.
-    pub(crate) fn case(self, case: &str) -> Self {
-        self.with(|finding| finding.case = case.to_owned())
-    }
-
-    fn with(mut self, change: impl FnOnce(&mut v1::Finding)) -> Self {
-        if let Some(finding) = &mut self.0 {
-            change(finding);
+    pub(crate) fn value(self, value: impl fmt::Display) {
+        if let Some(finding) = self.0 {
+            finding.value = shown(&value.to_string());
         }
-        self
     }
 }
 

@@ -36,7 +36,9 @@ mod stretch;
 mod supports;
 mod work;
 
+pub(crate) use cases::{ENVELOPE, REFERENCE};
 pub use digest::digest;
+pub(crate) use net::STANDARD_GRAVITY;
 pub use not_served::{NOT_SERVED, SERVED};
 pub use reading::{Reading, read};
 pub use work::Work;

@@ -11,7 +11,7 @@ use super::resolved::Resolved;
 use crate::words::{Quoted, length, quoted_list, rounded};
 
 /// Acceleration of gravity where the brief gives none (m/s²), the conventional value (CGPM 1901).
-const STANDARD_GRAVITY: f64 = 9.80665;
+pub(crate) const STANDARD_GRAVITY: f64 = 9.80665;
 /// Coordinates farther from the origin lose digits to it (m).
 const FARTHEST: f64 = 10_000.0;
 /// Nodes closer than this are in the same place (m).

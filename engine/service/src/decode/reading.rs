@@ -163,7 +163,7 @@ fn read_parts(
             sets: case.sets.clone(),
         })
         .collect();
-    let names = Names::new(&net, &supports);
+    let names = Names::new(&sections, &supports);
     let given = (!findings.has_errors()).then(|| net_given(&net, &sections, supports)).flatten();
     let (actions, cases) = (actions.list, cases.list);
     let work = given.map(|net| {

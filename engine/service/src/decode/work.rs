@@ -3,11 +3,11 @@
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::Brief;
 
-use super::cases::{RESERVED, in_words};
+use super::cases::{REFERENCE, in_words};
 use super::findings::accepts;
 use super::names::nearest;
-use super::net::NetDraft;
 use super::reasons;
+use super::sections::Sections;
 use super::supports::Supports;
 use crate::words::{Quoted, shown};
 
@@ -22,24 +22,29 @@ pub struct Work {
     pub digest: String,
     /// Whether lengths come from a frozen brief.
     pub frozen: bool,
-    pub(crate) names: Names,
-    /// Doubts of the brief that are not accepted; a run repeats them.
-    pub(crate) doubts: Vec<v1::Finding>,
-    /// Notes of the brief, by number.
-    pub(crate) n_notes: usize,
+    names: Names,
+    /// Doubts and notes of the brief; a run repeats them.
+    findings: Vec<v1::Finding>,
 }
 
 /// What results need of the message beside the domain.
 #[derive(Debug)]
 pub(crate) struct Names {
     /// Nodes in model order whose given position is where their springs are at rest.
-    pub(crate) keeps_position: Vec<bool>,
+    keeps_position: Vec<bool>,
+    /// Where the breaking force of each segment comes from; empty: not told.
+    breaking_force_origins: Vec<String>,
 }
 
 impl Names {
-    pub(crate) fn new(_net: &NetDraft<'_>, supports: &Supports) -> Self {
+    pub(crate) fn new(sections: &Sections<'_>, supports: &Supports) -> Self {
+        let origins = sections.of_segment.iter().map(|section| match section {
+            Some((section, _)) => sections.list[*section].message.breaking_force_origin.clone(),
+            None => String::new(),
+        });
         Self {
             keeps_position: supports.is_elastic.clone(),
+            breaking_force_origins: origins.collect(),
         }
     }
 }
@@ -52,16 +57,13 @@ impl Work {
         names: Names,
         findings: &[v1::Finding],
     ) -> Self {
-        let doubts = findings.iter().filter(|finding| finding.severity() == v1::FindingSeverity::Doubt);
-        let notes = findings.iter().filter(|finding| finding.severity() == v1::FindingSeverity::Note);
         Self {
             frozen: message.frozen_from.is_some(),
             brief,
             message,
             digest,
             names,
-            doubts: doubts.cloned().collect(),
-            n_notes: notes.count(),
+            findings: findings.to_vec(),
         }
     }
 
@@ -77,7 +79,7 @@ impl Work {
         }
         let mut wanted = vec![false; cases.len()];
         for (number, name) in only.iter().enumerate() {
-            let mut found = name == RESERVED[0];
+            let mut found = name == REFERENCE;
             for (case, wanted) in cases.iter().zip(&mut wanted) {
                 if case.name == *name || case.sets.contains(name) {
                     *wanted = true;
@@ -127,5 +129,20 @@ impl Work {
         if let Some(accepted) = self.message.accepted.iter().find(|accepted| accepts(accepted, finding)) {
             finding.accepted_note.clone_from(&accepted.note);
         }
+    }
+
+    /// Findings of the brief itself.
+    pub(crate) fn findings(&self) -> &[v1::Finding] {
+        &self.findings
+    }
+
+    /// Whether the given place of a node is where its springs are at rest, so that it must not be written over.
+    pub(crate) fn keeps_position(&self, node: usize) -> bool {
+        self.names.keeps_position[node]
+    }
+
+    /// Where the breaking force of a segment comes from, if the brief tells.
+    pub(crate) fn breaking_force_origin(&self, segment: usize) -> Option<&str> {
+        Some(self.names.breaking_force_origins[segment].as_str()).filter(|origin| !origin.is_empty())
     }
 }
