@@ -101,3 +101,81 @@ pub(crate) fn segments(net: &Net, names: &[&str]) -> Vec<usize> {
         .chain(struts.map(|s| s.segment.index()))
         .collect()
 }
+
+/// The invented courtyard canopy: its ropes, guys and masts, without skin and adjusters, the bracing rope clamped at the
+/// wall bracket, the bracket rigid.
+pub(crate) fn courtyard() -> Sketch {
+    let mut sketch = Sketch::default();
+    sketch.node("W", [-9.0, 0.0, 5.2]);
+    sketch.node("E", [9.0, 0.0, 5.2]);
+    for (name, position) in [
+        ("S", [0.0, -7.0, 2.4]),
+        ("N", [0.0, 7.0, 2.4]),
+        ("K", [0.0, 7.0, 0.4]),
+        ("Z", [0.0, 0.0, 0.0]),
+        ("FW", [-9.0, 0.0, 0.0]),
+        ("FE", [9.0, 0.0, 0.0]),
+        ("GW1", [-13.5, -3.0, 0.0]),
+        ("GW2", [-13.5, 3.0, 0.0]),
+        ("GE1", [13.5, -3.0, 0.0]),
+        ("GE2", [13.5, 3.0, 0.0]),
+    ] {
+        sketch.held(name, position);
+    }
+    let with_breaking_force = |axial_stiffness, mass, breaking_force| Section {
+        breaking_force: Some(breaking_force),
+        ..section(axial_stiffness, mass)
+    };
+    let r10 = with_breaking_force(8.9e6, 0.5, 82e3);
+    let r20 = with_breaking_force(35e6, 2.0, 331e3);
+    let r24 = with_breaking_force(51e6, 2.9, 476e3);
+    for (name, path) in [
+        ("c1", "p1 n11 n12 n13 p4"),
+        ("c2", "W n21 n22 n23 E"),
+        ("c3", "p8 n31 n32 n33 p5"),
+        ("b1", "p2 n11 n21 n31 p7"),
+        ("b2", "S n12 n22 n32 N K"),
+        ("b3", "p3 n13 n23 n33 p6"),
+    ] {
+        sketch.cable(name, r10, path);
+    }
+    for (name, path) in [
+        ("eSW", "W p1 p2 S"),
+        ("eSE", "S p3 p4 E"),
+        ("eNE", "E p5 p6 N"),
+        ("eNW", "N p7 p8 W"),
+    ] {
+        sketch.cable(name, r20, path);
+    }
+    sketch.given.cables[7].sections[2] = r24;
+    for (name, path) in [("gW1", "W GW1"), ("gW2", "W GW2"), ("gE1", "E GE1"), ("gE2", "E GE2")] {
+        sketch.cable(name, r24, path);
+    }
+    sketch.cable("storm1", r10, "n22 Z");
+    sketch.strut("mW", section(844e6, 31.6), "FW", "W");
+    sketch.strut("mE", section(844e6, 31.6), "FE", "E");
+    sketch
+}
+
+/// Its prestress, under the action of index 0.
+pub(crate) fn courtyard_prestress(net: &Net) -> crate::shape::Prestress {
+    use crate::shape::PrestressRule;
+    let mut rules = vec![PrestressRule::Balance; net.segments().len()];
+    let mut set = |names: &[&str], rule| {
+        for segment in segments(net, names) {
+            rules[segment] = rule;
+        }
+    };
+    set(&["c1", "c2", "c3"], PrestressRule::ForceDensity(4000.0));
+    set(&["b1", "b2", "b3"], PrestressRule::ForceDensity(5000.0));
+    for (family, edge) in ["eSW", "eSE", "eNE", "eNW"].into_iter().enumerate() {
+        set(&[edge], PrestressRule::MeanTension(family));
+    }
+    set(&["storm1"], PrestressRule::UnstressedLength(3.75));
+    crate::shape::Prestress {
+        rules,
+        mean_tensions: vec![60e3; 4],
+        hold: vec![node(net, "W"), node(net, "E")],
+        under: vec![0],
+    }
+}

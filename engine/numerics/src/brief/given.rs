@@ -1,5 +1,7 @@
 //! The work as it is given: everything resolved, nothing inherited any more.
 
+use std::sync::Arc;
+
 use crate::check::Check;
 use crate::equilibrium::Settings;
 use crate::load::Action;
@@ -21,7 +23,7 @@ pub struct CaseGiven {
 #[derive(Clone, Debug)]
 pub struct Brief {
     /// The net.
-    pub net: Net,
+    pub net: Arc<Net>,
     /// How its reference state arises.
     pub prestress: Prestress,
     /// Actions.

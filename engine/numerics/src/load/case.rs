@@ -61,6 +61,23 @@ impl Case {
         case
     }
 
+    /// The case at `factor` of its load: forces, movements and temperatures multiplied, lengths on the way from
+    /// `reference_lengths` (m).
+    #[must_use]
+    pub fn scaled(&self, reference_lengths: &[f64], factor: f64) -> Self {
+        let mut scaled = self.clone();
+        if factor == 1.0 {
+            return scaled;
+        }
+        scaled.nodal_forces.iter_mut().for_each(|f| *f *= factor);
+        scaled.support_movements.iter_mut().for_each(|m| *m *= factor);
+        scaled.segments.iter_mut().for_each(|s| s.temperature_change *= factor);
+        for (length, start) in scaled.unstressed_lengths.iter_mut().zip(reference_lengths) {
+            *length = factor * *length + (1.0 - factor) * start;
+        }
+        scaled
+    }
+
     fn add(&mut self, net: &Net, reference: &ReferenceState, load: &Load, factor: f64, shares: &mut [f64]) {
         match load {
             Load::Nodes { nodes, force } => {
@@ -301,6 +318,25 @@ mod tests {
         let tension = EA * (5.0 / case.unstressed_lengths[0] - 1.0);
         assert!((tension - 1.2 * 2000.0).abs() < 1e-9 * tension);
         assert_eq!(case.unstressed_lengths[1..], [2.0, 1.001]);
+    }
+
+    #[test]
+    fn a_share_of_a_case_is_a_share_of_everything() {
+        let mut case = case(
+            vec![Load::Temperature {
+                scope: Scope::All,
+                change: 8.0,
+            }],
+            1.0,
+        );
+        case.nodal_forces[1] = Vector3::x();
+        case.support_movements[2] = Vector3::z();
+        let half = case.scaled(&[4.0, 2.0, 1.0], 0.5);
+        assert_eq!(half.segments[1].temperature_change, 4.0);
+        assert_eq!(half.nodal_forces[1], 0.5 * Vector3::x());
+        assert_eq!(half.support_movements[2], 0.5 * Vector3::z());
+        assert!((half.unstressed_lengths[0] - 0.5 * (4.0 + 5.0 / 1.002)).abs() < 1e-15);
+        assert_eq!(case.scaled(&[4.0, 2.0, 1.0], 1.0), case);
     }
 
     #[test]

@@ -78,15 +78,12 @@ pub enum ShapeError {
     },
     /// A part of the net on which no member with tension leads to anything that holds it.
     #[error(
-        "nothing holds {} along {}: no member with prestress leads from there to a support",
-        list(nodes, 8),
-        direction(free)
+        "nothing holds {} in place: members with prestress lead from there to no support, or to too few directions of one",
+        list(nodes, 8)
     )]
     NotHeld {
         /// Ids of the nodes.
         nodes: Vec<String>,
-        /// A direction in which they are free (unit).
-        free: Vector3<f64>,
     },
     /// Only slack ropes lead to these nodes.
     #[error(
@@ -152,7 +149,10 @@ pub enum ShapeError {
         rank: usize,
     },
     /// Both ends of a member fall on one point.
-    #[error("member \"{member}\" has no length in the shape found: its ends \"{from}\" and \"{to}\" coincide")]
+    #[error(
+        "member \"{member}\" has no length in the shape found: its ends \"{from}\" and \"{to}\" coincide; \
+         nodes creep along a rope of equal tension: give it one mean tension, or force densities"
+    )]
     NoLength {
         /// Id of the member.
         member: String,
@@ -204,13 +204,30 @@ pub enum ShapeError {
         /// Id of the node.
         node: String,
     },
-    /// Elastic members of given length have no equilibrium.
-    #[error("members of given length find no equilibrium: {source}; nodes {}", list(nodes, 6))]
+    /// Members of given length have no equilibrium.
+    #[error("members of given length find no equilibrium{}: {source}", at(nodes))]
     Elastic {
         /// What the solver says.
         source: SolveError,
         /// Ids of the nodes concerned.
         nodes: Vec<String>,
+    },
+    /// The shape balances, but can move freely.
+    #[error(
+        "nothing holds \"{node}\" along {}: of {} none resists, and prestress does not stiffen it ({stiffness:.0} N/m); \
+         spread the members there, or hold \"{node}\" along that direction",
+        direction(along),
+        list(members, 6)
+    )]
+    FreeMovement {
+        /// Id of the node that moves most.
+        node: String,
+        /// How it moves (unit).
+        along: Vector3<f64>,
+        /// Stiffness against the movement (N/m).
+        stiffness: f64,
+        /// Ids of the members at the node.
+        members: Vec<String>,
     },
     /// A number went beyond what can be reckoned with.
     #[error("the numbers of the search went beyond all bounds at \"{node}\": check units of force densities and loads")]
@@ -221,6 +238,14 @@ pub enum ShapeError {
     /// The observer asked to stop.
     #[error("stopped on request")]
     Cancelled,
+}
+
+fn at(nodes: &[String]) -> String {
+    if nodes.is_empty() {
+        String::new()
+    } else {
+        format!(" at {}", list(nodes, 6))
+    }
 }
 
 fn forces_left(left: &[ForceLeft]) -> String {

@@ -10,9 +10,9 @@ use super::loads::ShapeLoads;
 use super::parts::{Part, Parts};
 use super::search::{Point, Search};
 use super::targets::{Densities, MET};
-use super::{BalanceReport, Prestress, ShapeError, Target, connection, frozen};
+use super::{BalanceReport, Prestress, ShapeError, Target, frozen};
 use crate::assembly::Structure;
-use crate::equilibrium::{Analysis, IterationReport, Settings};
+use crate::equilibrium::{Analysis, IterationReport, Settings, existence};
 use crate::load::Action;
 use crate::model::{Member, Net, NodeId, SegmentId};
 
@@ -102,9 +102,9 @@ fn shape(
     observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
 ) -> Result<(Shape, u32), ShapeError> {
     let net = analysis.structure().net();
-    let (start, densities) = start(analysis, parts, hold, observe)?;
+    let (start, densities) = start(analysis, parts, observe)?;
     let mut search = Search::new(analysis, parts, loads, observe);
-    search.check_held(hold)?;
+    search.check_held()?;
     let members = parts.balance();
     let ends_move = members
         .iter()
@@ -129,10 +129,10 @@ fn shape(
     if !found.met {
         return Err(unmet(net, parts, &search, &found));
     }
-    let carries = |e: usize| found.point.axial_forces[e] != 0.0;
-    if let Some(part) = connection::free_part(net, &[], carries) {
+    let loose = existence::loose_nodes(analysis.structure(), |e| found.point.axial_forces[e] != 0.0);
+    if !loose.is_empty() {
         return Err(ShapeError::Loose {
-            nodes: part.nodes.iter().map(|n| net.node_name(*n).to_owned()).collect(),
+            nodes: names(net, &loose),
         });
     }
     let iterations = search.iterations;
@@ -151,7 +151,6 @@ fn shape(
 fn start(
     analysis: &Analysis,
     parts: &Parts,
-    hold: &[NodeId],
     observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
 ) -> Result<(Vec<Vector3<f64>>, Vec<f64>), ShapeError> {
     let net = analysis.structure().net();
@@ -189,7 +188,7 @@ fn start(
         };
         let unloaded = ShapeLoads::none(net);
         let mut search = Search::new(analysis, &soft, &unloaded, observe);
-        search.check_held(hold)?;
+        search.check_held()?;
         positions = search.balanced(positions, &[])?.positions;
     }
     let length = |e: &usize| {
@@ -219,6 +218,11 @@ fn no_length(net: &Net, point: &Point) -> Result<(), ShapeError> {
         }
         None => Ok(()),
     }
+}
+
+/// The client's ids.
+pub(super) fn names(net: &Net, nodes: &[NodeId]) -> Vec<String> {
+    nodes.iter().map(|n| net.node_name(*n).to_owned()).collect()
 }
 
 fn targets(net: &Net, parts: &Parts, found: &Densities) -> Vec<Target> {

@@ -2,10 +2,14 @@
 
 use std::ops::ControlFlow;
 
-use super::find::RawShape;
+use nalgebra::Vector3;
+
+use super::find::{RawShape, names};
 use super::{Prestress, ShapeError, ShapeReport};
-use crate::equilibrium::audit::Audit;
-use crate::equilibrium::{Analysis, IterationReport, Settings, Way};
+use crate::assembly::{Loading, LoadingError};
+use crate::equilibrium::{
+    self, Analysis, IterationReport, LoadSteps, Settings, Solution, SolveError, Termination, Way, audit, stability,
+};
 use crate::load::{Action, Case};
 use crate::model::{Net, NodeId, ReferenceState, SegmentId};
 
@@ -49,42 +53,149 @@ pub(super) fn finish(
         unstressed_lengths,
         axial_forces: raw.axial_forces,
     };
-    let case = case_under(net, &state, actions, prestress);
-    let audit = elastic_imbalance(analysis, &case, &state)?;
     let report = ShapeReport {
         way: Way::ForceDensities,
         iterations: raw.iterations,
         targets: raw.targets,
         balance: raw.balance,
         taut_given_lengths: raw.taut_given_lengths,
-        imbalance: audit.largest_imbalance,
-        largest_force: largest(&state.axial_forces),
+        imbalance: 0.0,
+        largest_force: 0.0,
         polished: false,
-        largest_strain: largest_strain(net, &state),
+        largest_strain: None,
     };
-    let _ = (settings, observe);
-    Ok(Found { state, case, report })
+    let found = Found {
+        case: case_under(net, &state, actions, prestress),
+        state,
+        report,
+    };
+    let audit = audit::audit(net, &found.case, &found.state.positions, &found.state.axial_forces);
+    let stands = audit.largest_imbalance <= STANDS * largest(&found.state.axial_forces);
+    if stands && audit.passed {
+        return checked(analysis, found);
+    }
+    polished(analysis, prestress, actions, settings, found, observe)
 }
 
-fn elastic_imbalance(analysis: &Analysis, case: &Case, state: &ReferenceState) -> Result<Audit, ShapeError> {
-    let structure = analysis.structure();
-    let loading = crate::assembly::Loading::new(structure, case, &state.unstressed_lengths, 1.0).expect("fits");
-    let mut response = crate::assembly::Response::new(structure);
-    structure.response_into(&loading, &state.positions, &mut response);
-    let (largest_imbalance, node) = response.largest_residual(structure);
-    Ok(Audit {
-        largest_imbalance,
-        node,
-        allowed: STANDS * largest(&state.axial_forces),
-        passed: true,
-    })
+/// Corrects the state as an elastic net.
+fn polished(
+    analysis: &Analysis,
+    prestress: &Prestress,
+    actions: &[Action],
+    settings: &Settings,
+    mut found: Found,
+    observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
+) -> Result<Found, ShapeError> {
+    let solution = elastic(analysis, &found.case, &found.state, settings, observe)?;
+    found.state.positions = solution.positions;
+    found.state.axial_forces = solution.axial_forces;
+    found.case = case_under(analysis.structure().net(), &found.state, actions, prestress);
+    found.report.iterations += solution.factorisations;
+    found.report.polished = true;
+    checked(analysis, found)
 }
 
-pub(super) fn largest(forces: &[f64]) -> f64 {
+/// The elastic net of given lengths in balance.
+pub(super) fn elastic(
+    analysis: &Analysis,
+    case: &Case,
+    state: &ReferenceState,
+    settings: &Settings,
+    observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
+) -> Result<Solution, ShapeError> {
+    let net = analysis.structure().net();
+    let lengths = &state.unstressed_lengths;
+    let settings = Settings {
+        load_steps: LoadSteps::FullFirst,
+        tolerance: settings.tolerance.min(STANDS),
+        ..*settings
+    };
+    let solution = match equilibrium::solve(analysis, case, &state.positions, lengths, &settings, observe) {
+        Ok(solution) => solution,
+        Err(SolveError::FreeMovement {
+            nodes,
+            direction,
+            stiffness,
+            segments,
+        }) => return Err(free_movement(net, &nodes, direction, stiffness, &segments)),
+        Err(source) => {
+            let nodes = match &source {
+                SolveError::NotHeld { nodes, .. } => names(net, nodes),
+                SolveError::Loading(LoadingError::Node { node, .. }) => names(net, &[*node]),
+                _ => Vec::new(),
+            };
+            return Err(ShapeError::Elastic { source, nodes });
+        }
+    };
+    match solution.termination {
+        Termination::Converged if solution.loose_nodes.is_empty() => Ok(solution),
+        Termination::Converged => Err(ShapeError::Loose {
+            nodes: names(net, &solution.loose_nodes),
+        }),
+        Termination::Cancelled => Err(ShapeError::Cancelled),
+        termination => {
+            let last = solution.history.last();
+            let node = last.and_then(|report| report.worst_node).unwrap_or(NodeId::new(0));
+            Err(ShapeError::NotConverged {
+                iterations: solution.factorisations,
+                residual: last.map_or(0.0, |report| report.residual),
+                node: net.node_name(node).to_owned(),
+                termination,
+            })
+        }
+    }
+}
+
+/// Fills in what the audit says, and refuses a state that does not stand or can move freely.
+pub(super) fn checked(analysis: &Analysis, mut found: Found) -> Result<Found, ShapeError> {
+    let net = analysis.structure().net();
+    let state = &found.state;
+    let audit = audit::audit(net, &found.case, &state.positions, &state.axial_forces);
+    if !audit.passed {
+        return Err(ShapeError::GateFailed {
+            imbalance: audit.largest_imbalance.max(audit.largest_force_error),
+            allowed: audit.allowed,
+            node: net.node_name(audit.node.unwrap_or(NodeId::new(0))).to_owned(),
+        });
+    }
+    if !net.is_pure_tension() {
+        let loading =
+            Loading::new(analysis.structure(), &found.case, &state.unstressed_lengths, 1.0).map_err(|error| {
+                ShapeError::Elastic {
+                    source: error.into(),
+                    nodes: Vec::new(),
+                }
+            })?;
+        if let Some(m) = stability::free_movement(analysis, &loading, &state.positions, &[]) {
+            return Err(free_movement(net, &m.nodes, m.direction, m.stiffness, &m.segments));
+        }
+    }
+    found.report.imbalance = audit.largest_imbalance;
+    found.report.largest_force = largest(&state.axial_forces);
+    found.report.largest_strain = largest_strain(net, state);
+    Ok(found)
+}
+
+fn free_movement(
+    net: &Net,
+    nodes: &[NodeId],
+    along: Vector3<f64>,
+    stiffness: f64,
+    segments: &[SegmentId],
+) -> ShapeError {
+    ShapeError::FreeMovement {
+        node: names(net, nodes).swap_remove(0),
+        along,
+        stiffness,
+        members: segments.iter().map(|s| net.member_name(*s).to_owned()).collect(),
+    }
+}
+
+fn largest(forces: &[f64]) -> f64 {
     forces.iter().fold(0.0, |m: f64, n| m.max(n.abs()))
 }
 
-pub(super) fn largest_strain(net: &Net, state: &ReferenceState) -> Option<(SegmentId, f64)> {
+fn largest_strain(net: &Net, state: &ReferenceState) -> Option<(SegmentId, f64)> {
     let strains = net.segments().iter().zip(&state.axial_forces).enumerate();
     strains
         .map(|(index, (segment, force))| (SegmentId::new(index), force / segment.section.axial_stiffness))

@@ -1,7 +1,6 @@
 //! A state to start from: force densities, wanted tensions, given lengths, and members left to balance.
 
 mod balance;
-mod connection;
 mod error;
 mod find;
 mod frozen;

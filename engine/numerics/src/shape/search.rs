@@ -15,14 +15,14 @@ use std::ops::ControlFlow;
 
 use nalgebra::{Matrix3, Vector3};
 
+use super::ShapeError;
 use super::krylov::gmres;
 use super::loads::ShapeLoads;
 use super::parts::{Part, Parts};
-use super::{ShapeError, connection};
 use crate::assembly::Structure;
 use crate::element::axial_block;
 use crate::equilibrium::linear::Factor;
-use crate::equilibrium::{Analysis, IterationReport, Termination, Way};
+use crate::equilibrium::{Analysis, IterationReport, Termination, Way, existence};
 use crate::model::{AxialLaw, Net, NodeId};
 
 /// A call for each iteration; it may ask to stop.
@@ -434,20 +434,19 @@ impl<'a, 'o> Search<'a, 'o> {
         self.factorise(point, family_densities, 0.0)
     }
 
-    /// Refuses a net of which a part hangs on members without force only.
-    pub(super) fn check_held(&self, kept: &[NodeId]) -> Result<(), ShapeError> {
-        let joins = |e: usize| match self.parts.of[e] {
+    /// Refuses a net of which a part is led to too little support by members with force, or with a given length.
+    pub(super) fn check_held(&self) -> Result<(), ShapeError> {
+        let free = existence::loose_nodes(self.structure, |e| match self.parts.of[e] {
             Part::Density(q) => q != 0.0,
             Part::Family(_) | Part::Elastic(_) => true,
             Part::Balance => false,
-        };
-        match connection::free_part(self.net(), kept, joins) {
-            Some(part) => Err(ShapeError::NotHeld {
-                nodes: part.nodes.iter().map(|n| self.net().node_name(*n).to_owned()).collect(),
-                free: part.direction,
-            }),
-            None => Ok(()),
+        });
+        if free.is_empty() {
+            return Ok(());
         }
+        Err(ShapeError::NotHeld {
+            nodes: free.iter().map(|n| self.net().node_name(*n).to_owned()).collect(),
+        })
     }
 }
 

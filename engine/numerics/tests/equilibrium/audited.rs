@@ -53,8 +53,8 @@ fn skew_sliders_movements_and_coupled_springs_are_balanced_too() {
     let mut net = saddle_net();
     let slider = net.held.remove(3);
     net.sliders.push((slider, vec![Vector3::new(0.3, 0.2, 1.0)]));
-    net.movements.push((net.held[5], Vector3::new(0.02, -0.01, 0.03)));
-    let (a, b) = (net.held.remove(9), net.held.remove(10));
+    net.movements.push((net.held[9], Vector3::new(0.02, -0.01, 0.03)));
+    let (a, b) = (net.held.remove(1), net.held.remove(2));
     let mut stiffness = DMatrix::identity(6, 6) * 4e6;
     for axis in 0..3 {
         stiffness[(axis, 3 + axis)] = -1e6;
@@ -64,7 +64,7 @@ fn skew_sliders_movements_and_coupled_springs_are_balanced_too() {
         nodes: vec![NodeId::new(a), NodeId::new(b)],
         stiffness,
     });
-    net.movements.push((a, Vector3::new(0.0, -0.01, -0.002)));
+    net.movements.push((a, Vector3::new(-0.01, 0.0, -0.002)));
     let solution = net.solve().unwrap();
     let audit = audit(&net.net(), &net.case(), &solution.positions, &solution.axial_forces);
     assert!(audit.passed, "{audit:?}");

@@ -2,6 +2,7 @@
 
 mod bad_input;
 mod closed_form;
+mod courtyard;
 mod published;
 mod sensitivity;
 mod tent;
