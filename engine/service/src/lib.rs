@@ -31,3 +31,4 @@ pub mod status;
 pub mod strict;
 pub mod telemetry;
 mod wire;
+mod words;

@@ -6,48 +6,8 @@ use tonic::{Request, Response, Status};
 
 use crate::build_info::engine_build;
 use crate::config::{Config, RESPONSE_BYTES};
+use crate::decode::{NOT_SERVED, SERVED};
 use crate::encode;
-
-/// Parts of a brief that are served.
-const SERVED: [&str; 10] = [
-    "net.nodes",
-    "net.sections",
-    "net.roles",
-    "net.cables",
-    "net.struts",
-    "prestress",
-    "actions",
-    "cases",
-    "checks",
-    "solving",
-];
-
-/// Parts that the contract has and this server refuses by name: those that the contract says are not served yet.
-const NOT_SERVED: [&str; 23] = [
-    "stored_net",
-    "net.adjusters",
-    "net.skins",
-    "net.zones",
-    "net.panels",
-    "net.roles.adjuster",
-    "net.cables.slides",
-    "actions.loads.on_plan",
-    "actions.loads.on_surface",
-    "factors",
-    "combinations",
-    "checks.resistance",
-    "checks.service_stress",
-    "checks.buckling",
-    "checks.clearance",
-    "modes",
-    "motions",
-    "stages",
-    "workshop",
-    "readings",
-    "keep",
-    "sizing",
-    "variants",
-];
 
 /// Tells what this server is and what it can do.
 #[derive(Clone, Debug)]
