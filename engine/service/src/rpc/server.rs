@@ -31,8 +31,8 @@ impl ServerApi {
                 waiting: count(config.waiting),
                 call_s: config.max_call().map_or(0.0, |longest| longest.as_secs_f64()),
             }),
-            served: SERVED.map(str::to_owned).to_vec(),
-            not_served: NOT_SERVED.map(str::to_owned).to_vec(),
+            served: SERVED.iter().copied().map(str::to_owned).collect(),
+            not_served: NOT_SERVED.iter().copied().map(str::to_owned).collect(),
             cautions: encode::cautions(),
         })
     }
@@ -84,7 +84,7 @@ mod tests {
         let brief = pool.get_message_by_name("ropewalk.v1.Brief").expect("a brief");
         let mut found = BTreeSet::new();
         told(&brief, "", &mut found);
-        let listed: BTreeSet<String> = NOT_SERVED.map(str::to_owned).into();
+        let listed: BTreeSet<String> = NOT_SERVED.iter().copied().map(str::to_owned).collect();
         assert_eq!(listed, found);
     }
 }
