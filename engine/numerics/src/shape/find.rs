@@ -21,6 +21,11 @@ const MAX_ROUNDS: usize = 60;
 /// Change of their forces, over the largest force, at which these rounds end.
 const SETTLED: f64 = 1e-13;
 
+/// Strain that leaves no trace in an unstressed length: the force could not be had back from it.
+const NO_TRACE: f64 = 1e-14;
+/// Forces below this share of the largest may be lost so.
+const NOTABLE: f64 = 1e-6;
+
 /// Finds the reference state: positions, unstressed lengths and forces that balance the actions of `prestress.under`.
 ///
 /// Free nodes of `prestress.hold` stay where they were given while the shape of the rest is found; members left to
@@ -285,8 +290,16 @@ fn unmet(net: &Net, parts: &Parts, search: &Search<'_, '_>, found: &Densities) -
 impl Shape {
     fn into_raw(self, net: &Net, parts: &Parts, iterations: u32) -> Result<RawShape, ShapeError> {
         let point = &self.densities.point;
+        let largest = point.axial_forces.iter().fold(0.0, |m: f64, n| m.max(n.abs()));
         for (index, segment) in net.segments().iter().enumerate() {
             let (force, stiffness) = (point.axial_forces[index], segment.section.axial_stiffness);
+            if force.abs() > NOTABLE * largest && force.abs() <= NO_TRACE * stiffness {
+                return Err(ShapeError::BeyondReckoning {
+                    part: net.member_name(SegmentId::new(index)).to_owned(),
+                    what: "axial stiffness",
+                    value: stiffness,
+                });
+            }
             let is_given = matches!(parts.of[index], Part::Elastic(_));
             if !is_given && force <= -0.9 * stiffness {
                 return Err(ShapeError::BeyondStiffness {
