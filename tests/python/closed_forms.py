@@ -401,7 +401,7 @@ def unstressed_length():
     return ClosedForm(
         "rule unstressed length",
         brief(
-            [node("A", 0, 0, 0, support={}), node("B", 8, 0, 0, support={})],
+            [node("A", 0, 0, 0, support={}), node("B", 8, 0, 0, support={}), node("m", 1, 1, 1)],
             [rope("a", "A", "m"), rope("b", "m", "B")],
             [length_of("a", l0[0]), length_of("b", l0[1])],
         ),

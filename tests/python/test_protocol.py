@@ -51,7 +51,7 @@ def test_get_info(channel):
     assert info.engine.instruction_set
     assert info.limits.request_bytes >= 64 << 20
     assert 0 < info.limits.response_bytes <= 1 << 20
-    assert "net" in info.served
+    assert {"net.nodes", "cases", "prestress"} <= set(info.served)
     assert "modes" in info.not_served
     assert info.cautions
 
