@@ -6,5 +6,7 @@ mod canopy;
 
 fn main() {
     use std::io::Write as _;
-    std::io::stdout().write_all(canopy::brief().as_bytes()).expect("standard output takes the brief");
+    std::io::stdout()
+        .write_all(canopy::brief().as_bytes())
+        .expect("standard output takes the brief");
 }

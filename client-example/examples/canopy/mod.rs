@@ -30,22 +30,36 @@ fn mark(line: i32, ahead: char, behind: char) -> String {
 }
 
 fn quoted(ids: impl IntoIterator<Item = String>) -> String {
-    ids.into_iter().map(|id| format!("\"{id}\"")).collect::<Vec<_>>().join(", ")
+    ids.into_iter()
+        .map(|id| format!("\"{id}\""))
+        .collect::<Vec<_>>()
+        .join(", ")
 }
 
 fn cable(id: &str, role: &str, nodes: impl IntoIterator<Item = String>) -> String {
-    format!(r#"      {{"id": "{id}", "role": "{role}", "nodes": [{}]}}"#, quoted(nodes))
+    format!(
+        r#"      {{"id": "{id}", "role": "{role}", "nodes": [{}]}}"#,
+        quoted(nodes)
+    )
 }
 
 fn net_ropes() -> Vec<String> {
     let mut lines = Vec::new();
     for j in 1 - HALF..HALF {
         let end = HALF - j.abs();
-        lines.push(cable(&format!("c{}", mark(j, 'n', 's')), "carrying", (-end..=end).map(|i| node(i, j))));
+        lines.push(cable(
+            &format!("c{}", mark(j, 'n', 's')),
+            "carrying",
+            (-end..=end).map(|i| node(i, j)),
+        ));
     }
     for i in 1 - HALF..HALF {
         let end = HALF - i.abs();
-        lines.push(cable(&format!("b{}", mark(i, 'e', 'w')), "bracing", (-end..=end).map(|j| node(i, j))));
+        lines.push(cable(
+            &format!("b{}", mark(i, 'e', 'w')),
+            "bracing",
+            (-end..=end).map(|j| node(i, j)),
+        ));
     }
     for (id, x, y) in [("eSW", -1, -1), ("eSE", 1, -1), ("eNE", 1, 1), ("eNW", -1, 1)] {
         lines.push(cable(id, "edge", (0..=HALF).map(|k| node(x * (HALF - k), y * k))));
