@@ -87,8 +87,23 @@ impl Scale {
         share.clamp(0.0, 1.0)
     }
 
-    /// Numbers for the legend (kN), ascending, the largest force last.
-    pub(crate) fn ticks_kn(&self) -> Vec<f64> {
+    /// Ends of the scale (kN).
+    pub(crate) fn ends_kn(&self) -> [f64; 2] {
+        [self.low_kn, self.high_kn]
+    }
+
+    /// Numbers for the legend (kN) with their texts, ascending, the largest force last.
+    pub(crate) fn ticks(&self) -> Vec<(f64, String)> {
+        let mut ticks: Vec<(f64, String)> = self
+            .round_kn()
+            .into_iter()
+            .map(|tick| (tick, format!("{tick}")))
+            .collect();
+        ticks.push((self.high_kn, number::three(self.high_kn)));
+        ticks
+    }
+
+    fn round_kn(&self) -> Vec<f64> {
         let mut ticks = Vec::new();
         if self.logarithmic {
             let mut decade = 10.0_f64.powf(self.low_kn.log10().floor());
@@ -108,7 +123,6 @@ impl Scale {
         }
         // The last round number must not touch the number at the end.
         ticks.retain(|tick| *tick >= self.low_kn && self.share(tick * 1e3) < 0.95);
-        ticks.push(self.high_kn);
         ticks
     }
 }
@@ -128,9 +142,10 @@ mod tests {
     fn ticks_are_round_and_end_at_the_largest() {
         let scale = Scale::over([2e3, 400e3, 0.0]);
         assert!(scale.logarithmic);
-        assert_eq!(scale.ticks_kn(), [2.0, 5.0, 10.0, 20.0, 50.0, 100.0, 200.0, 400.0]);
+        let texts = |scale: Scale| scale.ticks().into_iter().map(|(_, text)| text).collect::<Vec<_>>();
+        assert_eq!(texts(scale), ["2", "5", "10", "20", "50", "100", "200", "400"]);
         let scale = Scale::over([14_484.0, 24_820.0]);
-        assert_eq!(scale.ticks_kn(), [0.0, 5.0, 10.0, 15.0, 20.0, 24.82]);
+        assert_eq!(texts(scale), ["0", "5", "10", "15", "20", "24.8"]);
         assert_eq!(Scale::over([]).share(0.0), 0.0);
     }
 }

@@ -16,7 +16,10 @@ fn node(i: i32, j: i32) -> String {
         (i, 0) if i == HALF => "E".to_owned(),
         (0, j) if j == -HALF => "S".to_owned(),
         (0, j) if j == HALF => "N".to_owned(),
-        _ => format!("n{}{}", mark(i, 'e', 'w'), mark(j, 'n', 's')),
+        (0, 0) => "middle".to_owned(),
+        (0, j) => mark(j, 'n', 's'),
+        (i, 0) => mark(i, 'e', 'w'),
+        (i, j) => format!("{}{}", mark(i, 'e', 'w'), mark(j, 'n', 's')),
     }
 }
 

@@ -54,7 +54,7 @@ fn refuses_numbers_that_are_spelled_as_text() {
 #[test]
 fn tells_line_and_column_of_what_is_not_json() {
     let found = complaint("{\n  \"id\": \"b\",\n  \"net\": NaN\n}");
-    assert!(found.starts_with("b.json: line 3, column 11: is not JSON:"), "{found}");
+    assert!(found.starts_with("b.json: line 3, column 10: is not JSON:"), "{found}");
     let found = complaint("{\"id\": \"b\"} x");
     assert!(found.contains("line 1, column 13"), "{found}");
     let found = complaint("{\"net\": {\"gravity_m_per_s2\": 1e999}}");

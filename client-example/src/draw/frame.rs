@@ -57,7 +57,7 @@ pub(crate) fn legend(sketch: &mut Sketch, scale: &Scale, x: f64, y: f64, height:
         "<text x=\"{x:.1}\" y=\"{:.1}\" fill=\"{MUTED}\">{kind}</text>",
         y - 11.0
     ));
-    for tick in scale.ticks_kn() {
+    for (tick, text) in scale.ticks() {
         let at = y + height * (1.0 - scale.share(tick * 1e3));
         sketch.put(format_args!(
             "<path d=\"M{:.1} {at:.1}h6\" stroke=\"{INK}\"/>",
@@ -67,7 +67,7 @@ pub(crate) fn legend(sketch: &mut Sketch, scale: &Scale, x: f64, y: f64, height:
             "<text x=\"{:.1}\" y=\"{:.1}\">{}</text>",
             x + 25.0,
             at + 4.5,
-            three(tick)
+            text
         ));
     }
 }

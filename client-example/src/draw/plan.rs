@@ -9,10 +9,12 @@ use crate::run::{Member, Run, State};
 
 const WIDTH: f64 = 1200.0;
 const LEFT: f64 = 36.0;
-const RIGHT: f64 = 1050.0;
+const RIGHT: f64 = 1036.0;
 const TOP: f64 = 120.0;
 /// Room for arrows and their numbers around the net.
-const ROOM: f64 = 96.0;
+const ROOM: f64 = 122.0;
+/// The same above and below, where numbers take less room.
+const HEADROOM: f64 = 84.0;
 /// Up to so many rope segments each gets its number; beyond, each rope gets that of its largest tension.
 const NUMBERS_EACH: usize = 40;
 
@@ -34,11 +36,11 @@ impl View {
         let ((x0, x1), (y0, y1)) = (bound(0), bound(1));
         let (wide, high) = ((x1 - x0).max(1e-6), (y1 - y0).max(1e-6));
         let scale = ((RIGHT - LEFT - 2.0 * ROOM) / wide).min(820.0 / high);
-        let bottom = TOP + 2.0 * ROOM + high * scale;
+        let bottom = TOP + 2.0 * HEADROOM + high * scale;
         let left = f64::midpoint(LEFT, RIGHT) - wide * scale / 2.0;
         Self {
             scale,
-            origin: [left - x0 * scale, bottom - ROOM + y0 * scale],
+            origin: [left - x0 * scale, bottom - HEADROOM + y0 * scale],
             bottom: bottom.max(560.0),
         }
     }
@@ -251,76 +253,116 @@ fn draw_segment(sketch: &mut Sketch, run: &Run, segment: usize, view: &View, pos
     ));
 }
 
+/// Towards the members of a support in plan: on the other side nothing is in the way of an arrow.
+fn towards(run: &Run, node: usize, view: &View, positions: &[[f64; 3]], forces: &[f64]) -> [f64; 2] {
+    let mut sum = [0.0; 2];
+    for end in run.ends.iter().filter(|end| end.node == node) {
+        let nodes = run.segments[end.segment].nodes;
+        let other = if nodes[0] == node { nodes[1] } else { nodes[0] };
+        let (here, there) = (view.at(positions[node]), view.at(positions[other]));
+        let along = [there[0] - here[0], there[1] - here[1]];
+        let size = along[0].hypot(along[1]).max(f64::MIN_POSITIVE);
+        for axis in 0..2 {
+            sum[axis] += forces[end.segment].abs() * along[axis] / size;
+        }
+    }
+    sum
+}
+
+/// The pull on each anchor: an arrow outside the net along its horizontal part, the size and the upright part as numbers.
 fn arrows(sketch: &mut Sketch, run: &Run, state: &State, view: &View, positions: &[[f64; 3]], taken: &mut Taken) {
-    let forces = state.vectors("support_force_n").unwrap_or_default();
-    for (&node, force) in run.supports.iter().zip(&forces) {
+    let supports = state.vectors("support_force_n").unwrap_or_default();
+    let forces = run.axial_forces(state).unwrap_or_default();
+    for (&node, force) in run.supports.iter().zip(&supports) {
         let pull = force.map(|part| 0.0 - part);
         let level = pull[0].hypot(pull[1]);
         let size = level.hypot(pull[2]);
+        if size <= 0.0 {
+            continue;
+        }
         let [x, y] = view.at(positions[node]);
-        let id = markup(&run.nodes[node]);
-        let kn = size / 1e3;
-        let upright = if pull[2].abs() < 0.02 * size {
-            String::new()
+        let flat = level > 0.02 * size;
+        let [dx, dy] = if flat {
+            [pull[0] / level, -pull[1] / level]
         } else {
-            format!(
-                ", {} {}",
-                three(pull[2].abs() / 1e3),
-                if pull[2] > 0.0 { "up" } else { "down" }
-            )
+            [0.0, 0.0]
         };
-        let label = format!("{} kN{upright}", three(kn));
-        let data = format!("data-anchor=\"{id}\" data-pull-kn=\"{}\"", clean(kn));
-        // The arrow comes from outside and its head stands at the anchor: it points the way the anchor is pulled.
-        let (dx, dy) = if level > 1e-3 * size && level > 0.0 {
-            (pull[0] / level, -pull[1] / level)
-        } else {
-            (0.0, 0.0)
-        };
-        let (tail_x, tail_y) = (x - dx * 52.0, y - dy * 52.0);
-        if level > 0.02 * size && size > 0.0 {
-            let (head_x, head_y) = (x - dx * 12.0, y - dy * 12.0);
+        let net = towards(run, node, view, positions, &forces);
+        // A rope pulls the anchor towards the net, a strut may press it away; the arrow stands outside either way.
+        let pressed = dx * net[0] + dy * net[1] < 0.0;
+        let side = if pressed { 1.0 } else { -1.0 };
+        if flat {
+            let at = |way: f64| [x + side * way * dx, y + side * way * dy];
+            let (head, tail) = if pressed {
+                (at(52.0), at(12.0))
+            } else {
+                (at(12.0), at(52.0))
+            };
             sketch.put(format_args!(
-                "<path d=\"M{tail_x:.1} {tail_y:.1}L{:.1} {:.1}\" stroke=\"{INK}\" stroke-width=\"2\"/>",
-                head_x - dx * 7.0,
-                head_y - dy * 7.0
-            ));
-            let (side_x, side_y) = (-dy * 5.0, dx * 5.0);
-            let (back_x, back_y) = (head_x - dx * 11.0, head_y - dy * 11.0);
-            sketch.put(format_args!(
-                "<path d=\"M{head_x:.1} {head_y:.1}L{:.1} {:.1}L{:.1} {:.1}z\"/>",
-                back_x + side_x,
-                back_y + side_y,
-                back_x - side_x,
-                back_y - side_y
+                "<path d=\"M{:.1} {:.1}L{:.1} {:.1}\" stroke=\"{INK}\" stroke-width=\"2\"/>\
+                 <path d=\"M{:.1} {:.1}L{:.1} {:.1}L{:.1} {:.1}z\"/>",
+                tail[0],
+                tail[1],
+                head[0] - 6.0 * dx,
+                head[1] - 6.0 * dy,
+                head[0],
+                head[1],
+                head[0] - 11.0 * dx - 5.0 * dy,
+                head[1] - 11.0 * dy + 5.0 * dx,
+                head[0] - 11.0 * dx + 5.0 * dy,
+                head[1] - 11.0 * dy - 5.0 * dx
             ));
         }
-        let anchor = if dx < -0.4 {
-            "start"
-        } else if dx > 0.4 {
-            "end"
-        } else {
-            "middle"
-        };
-        // Without a horizontal part there is no arrow; the number stands below the anchor.
-        let (text_x, text_y) = if dx == 0.0 && dy == 0.0 {
-            (x, y + 24.0)
-        } else {
-            (tail_x - dx * 6.0, tail_y - dy * 12.0 + 4.5)
-        };
-        let letters = label.chars().count();
-        #[allow(clippy::cast_precision_loss, reason = "a label has few letters")]
-        let half = 3.9 * letters as f64;
-        let middle = match anchor {
-            "start" => text_x + half,
-            "end" => text_x - half,
-            _ => text_x,
-        };
-        taken.take(middle, text_y - 4.0, letters);
-        sketch.put(format_args!(
-            "<text class=\"pull\" x=\"{text_x:.1}\" y=\"{text_y:.1}\" text-anchor=\"{anchor}\" font-weight=\"600\" {HALO} {data}>{label}</text>"
-        ));
+        pull_label(sketch, run, node, pull, [x, y], [side * dx, side * dy], taken);
     }
+}
+
+fn pull_label(
+    sketch: &mut Sketch,
+    run: &Run,
+    node: usize,
+    pull: [f64; 3],
+    place: [f64; 2],
+    out: [f64; 2],
+    taken: &mut Taken,
+) {
+    let size = pull.iter().map(|part| part * part).sum::<f64>().sqrt();
+    let (kn, id) = (size / 1e3, markup(&run.nodes[node]));
+    let upright = if pull[2].abs() < 0.02 * size {
+        String::new()
+    } else {
+        format!(
+            "{} {}",
+            three(pull[2].abs() / 1e3),
+            if pull[2] > 0.0 { "up" } else { "down" }
+        )
+    };
+    let first = format!("{} kN", three(kn));
+    let letters = first.chars().count().max(upright.chars().count());
+    #[allow(clippy::cast_precision_loss, reason = "a label has few letters")]
+    let half = 3.9 * letters as f64;
+    // Without a horizontal part there is no arrow; the numbers stand below the anchor. Farther out if the place is taken.
+    let mut chosen = None;
+    for step in 0..6 {
+        let way = 58.0 + 16.0 * f64::from(step);
+        let [x, y] = if out == [0.0, 0.0] {
+            [place[0], place[1] + way - 28.0]
+        } else {
+            [place[0] + out[0] * (way + half), place[1] + out[1] * (way + 12.0)]
+        };
+        chosen.get_or_insert([x, y]);
+        if taken.take(x, y - 7.0, letters) && taken.take(x, y + 8.0, 2) {
+            chosen = Some([x, y]);
+            break;
+        }
+    }
+    let [x, y] = chosen.expect("there is a first place");
+    sketch.put(format_args!(
+        "<text x=\"{x:.1}\" y=\"{:.1}\" text-anchor=\"middle\" {HALO}><tspan class=\"pull\" font-weight=\"600\" data-anchor=\"{id}\" \
+         data-pull-kn=\"{}\">{first}</tspan><tspan x=\"{x:.1}\" dy=\"15\" font-size=\"12\">{upright}</tspan></text>",
+        y - 2.0,
+        clean(kn)
+    ));
 }
 
 const HALO: &str = "stroke=\"#fff\" stroke-width=\"3.5\" stroke-linejoin=\"round\" paint-order=\"stroke\"";

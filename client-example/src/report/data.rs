@@ -52,7 +52,7 @@ pub(crate) fn data(run: &Run, scale: &Scale) -> Value {
         "states": states,
         "scale": {
             "colours": (0..=64).map(|step| colour::at(f64::from(step) / 64.0)).collect::<Vec<_>>(),
-            "low": scale.ticks_kn().first(), "high": scale.ticks_kn().last(), "log": scale.logarithmic,
+            "low": scale.ends_kn()[0], "high": scale.ends_kn()[1], "log": scale.logarithmic,
         },
     })
 }

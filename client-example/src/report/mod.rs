@@ -150,15 +150,9 @@ fn shape(run: &Run, scale: &Scale) -> String {
         })
         .collect();
     let ticks: String = scale
-        .ticks_kn()
+        .ticks()
         .iter()
-        .map(|tick| {
-            format!(
-                "<i style=\"left:{:.2}%\">{}</i>",
-                scale.share(tick * 1e3) * 100.0,
-                crate::number::three(*tick)
-            )
-        })
+        .map(|(tick, text)| format!("<i style=\"left:{:.2}%\">{text}</i>", scale.share(tick * 1e3) * 100.0))
         .collect();
     let stops: Vec<String> = (0..=16).map(|step| crate::colour::at(f64::from(step) / 16.0)).collect();
     let kind = if scale.logarithmic {

@@ -73,7 +73,7 @@
       w = Math.max(w, Math.abs(x * ct - y * st));
       h = Math.max(h, Math.abs(z * ci + (x * st + y * ct) * si));
     }
-    return Math.min((wide / 2 - 46) / w, (high / 2 - 46) / h, 40 * wide / span);
+    return Math.max(Math.min((wide / 2 - Math.min(105, wide / 6)) / w, (high / 2 - 64) / h), wide / span / 9);
   }
 
   var order = data.segments.map(function (_, i) { return i; });
@@ -142,22 +142,37 @@
       context.beginPath(); context.rect(seen[3 * n] - 5, seen[3 * n + 1] - 5, 10, 10); context.fill(); context.stroke();
     });
   }
-  // Pulls as arrows whose heads stand at the anchors; their size on screen is fixed, the number tells.
+  // Towards the members of each support, to find the side where an arrow is in nobody's way.
+  function towards(n, kn) {
+    var sum = [0, 0];
+    data.segments.forEach(function (part, s) {
+      var other = part[0] === n ? part[1] : part[1] === n ? part[0] : -1;
+      if (other < 0) return;
+      var dx = seen[3 * other] - seen[3 * n], dy = seen[3 * other + 1] - seen[3 * n + 1], size = Math.hypot(dx, dy) || 1;
+      sum[0] += Math.abs(kn[s]) * dx / size;
+      sum[1] += Math.abs(kn[s]) * dy / size;
+    });
+    return sum;
+  }
+  // Pulls as arrows outside the net, pointing the way the anchor is pulled or pressed. Their size on screen says nothing.
   function pulls(now) {
     var ct = Math.cos(view.turn), st = Math.sin(view.turn), ci = Math.cos(view.tilt), si = Math.sin(view.tilt);
     data.supports.forEach(function (n, i) {
       var p = now.pulls[i], size = Math.hypot(p[0], p[1], p[2]);
       if (size < 1e-6) return;
-      var right = (p[0] * ct - p[1] * st) / size, up = (p[2] * ci + (p[0] * st + p[1] * ct) * si) / size;
-      var x = seen[3 * n], y = seen[3 * n + 1], length = 40;
-      var hx = x - right * 9, hy = y + up * 9, tx = x - right * (9 + length), ty = y + up * (9 + length);
+      var dx = (p[0] * ct - p[1] * st) / size, dy = -(p[2] * ci + (p[0] * st + p[1] * ct) * si) / size;
+      var net = towards(n, now.kn), x = seen[3 * n], y = seen[3 * n + 1];
+      var pressed = dx * net[0] + dy * net[1] < 0, side = pressed ? 1 : -1;
+      var near = [x + side * 9 * dx, y + side * 9 * dy], far = [x + side * 46 * dx, y + side * 46 * dy];
+      var head = pressed ? far : near, tail = pressed ? near : far;
       context.strokeStyle = INK; context.fillStyle = INK; context.lineWidth = 1.8; context.setLineDash([]);
-      context.beginPath(); context.moveTo(tx, ty); context.lineTo(hx - right * 5, hy + up * 5); context.stroke();
-      context.beginPath(); context.moveTo(hx, hy);
-      context.lineTo(hx - right * 9 + up * 4, hy + up * 9 + right * 4);
-      context.lineTo(hx - right * 9 - up * 4, hy + up * 9 - right * 4);
+      context.beginPath(); context.moveTo(tail[0], tail[1]); context.lineTo(head[0] - 5 * dx, head[1] - 5 * dy); context.stroke();
+      context.beginPath(); context.moveTo(head[0], head[1]);
+      context.lineTo(head[0] - 10 * dx - 4 * dy, head[1] - 10 * dy + 4 * dx);
+      context.lineTo(head[0] - 10 * dx + 4 * dy, head[1] - 10 * dy - 4 * dx);
       context.closePath(); context.fill();
-      label(digits(size) + " kN", tx - right * 10, ty + up * 12 + 4, INK, right < -0.4 ? "left" : right > 0.4 ? "right" : "center");
+      var out = side * dx;
+      label(digits(size) + " kN", x + side * 54 * dx, y + side * 60 * dy + 4, INK, out > 0.4 ? "left" : out < -0.4 ? "right" : "center");
     });
   }
   function look(now) {

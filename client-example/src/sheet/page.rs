@@ -15,7 +15,20 @@ pub(crate) fn html(sheet: &Sheet) -> String {
         .iter()
         .map(|&column| sheet.rows.iter().any(|row| row.cells[column].is_number()))
         .collect();
-    let class = |at: usize| if right[at] { " class=\"r\"" } else { "" };
+    let long: Vec<bool> = columns
+        .iter()
+        .map(|&column| {
+            sheet
+                .rows
+                .iter()
+                .any(|row| matches!(&row.cells[column], Cell::Text(text) if text.len() > 22))
+        })
+        .collect();
+    let class = |at: usize| match (right[at], long[at]) {
+        (true, _) => " class=\"r\"",
+        (false, true) => " class=\"long\"",
+        (false, false) => "",
+    };
     let mut text = format!(
         "<section id=\"{}\"><h2>{}</h2>\n",
         sheet.file,

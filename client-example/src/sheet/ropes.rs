@@ -30,13 +30,13 @@ fn rope_heads() -> Vec<Head> {
         head("rope", ""),
         head("role", ""),
         head("section", ""),
-        head("reference least", "kN"),
-        head("reference most", "kN"),
+        head("ref. least", "kN"),
+        head("ref. most", "kN"),
         head("min", "kN"),
         head("max", "kN"),
-        head("of breaking, reference", "%"),
+        head("of breaking, ref.", "%"),
         head("of breaking, max", "%"),
-        head("least of reference", "%"),
+        head("least of ref.", "%"),
         head("case of min", ""),
         head("case of max", ""),
         head("unstressed length", "m"),
@@ -59,7 +59,7 @@ pub(crate) fn ropes(run: &Run) -> Sheet {
         rows: keyed.into_iter().map(|(_, _, row)| row).collect(),
         note: "Tensions over all segments of a rope and all answered cases, the reference state among them. \
                Breaking force with end fittings. Least of reference: the lowest tension of a segment over its own in \
-               the reference state; 0 is slack.",
+               the reference state (ref.); 0 is slack. Lengths are unstressed.",
     }
 }
 

@@ -15,23 +15,12 @@ pub(crate) fn terminal(sheet: &Sheet) -> String {
     let columns: Vec<usize> = (0..sheet.heads.len())
         .filter(|&column| sheet.heads[column].place == Place::Everywhere)
         .collect();
-    let mut grid: Vec<Vec<String>> = vec![
-        columns
-            .iter()
-            .map(|&column| sheet.heads[column].title.to_owned())
-            .collect(),
-    ];
-    grid.push(
-        columns
-            .iter()
-            .map(|&column| sheet.heads[column].unit.to_owned())
-            .collect(),
-    );
+    let mut grid: Vec<Vec<String>> = Vec::new();
     let mut shown_of: BTreeMap<&str, usize> = BTreeMap::new();
     let mut left_out: Vec<(&str, usize)> = Vec::new();
     for row in &sheet.rows {
         let shown = shown_of.entry(row.group.as_str()).or_default();
-        if *shown >= ROWS_A_GROUP && !row.group.is_empty() || grid.len() >= ROWS + 2 {
+        if *shown >= ROWS_A_GROUP && !row.group.is_empty() || grid.len() >= ROWS {
             match left_out.iter_mut().find(|(group, _)| *group == row.group) {
                 Some((_, count)) => *count += 1,
                 None => left_out.push((row.group.as_str(), 1)),
@@ -50,16 +39,32 @@ pub(crate) fn terminal(sheet: &Sheet) -> String {
         .iter()
         .map(|&column| sheet.rows.iter().any(|row| row.cells[column].is_number()))
         .collect();
+    let heads: Vec<Vec<String>> = columns
+        .iter()
+        .enumerate()
+        .map(|(at, &column)| {
+            let cells = grid.iter().map(|line| line[at].chars().count()).max().unwrap_or(0);
+            stacked(sheet.heads[column].title, sheet.heads[column].unit, cells)
+        })
+        .collect();
+    let n_head_lines = heads.iter().map(Vec::len).max().unwrap_or(0);
+    let mut lines: Vec<Vec<String>> = Vec::new();
+    for number in 0..n_head_lines {
+        // Heads stand on the line above the cells, however many lines each takes.
+        let line = heads.iter().map(|head| {
+            (number + head.len())
+                .checked_sub(n_head_lines)
+                .map_or(String::new(), |at| head[at].clone())
+        });
+        lines.push(line.collect());
+    }
+    lines.extend(grid);
     let widths: Vec<usize> = (0..columns.len())
-        .map(|column| grid.iter().map(|line| line[column].chars().count()).max().unwrap_or(0))
+        .map(|column| lines.iter().map(|line| line[column].chars().count()).max().unwrap_or(0))
         .collect();
 
     let mut text = format!("{}\n", sheet.title);
-    for (number, line) in grid.iter().enumerate() {
-        // The line of units is left out where there are none.
-        if number == 1 && line.iter().all(String::is_empty) {
-            continue;
-        }
+    for line in &lines {
         let mut out = String::from(" ");
         for (column, cell) in line.iter().enumerate() {
             let pad = " ".repeat(widths[column] - cell.chars().count());
@@ -96,6 +101,16 @@ pub(crate) fn terminal(sheet: &Sheet) -> String {
         )));
     }
     text
+}
+
+/// A head in lines no wider than its cells, if its words allow that; the unit stands below.
+fn stacked(title: &str, unit: &str, width: usize) -> Vec<String> {
+    let widest = title.split(' ').map(|word| word.chars().count()).max().unwrap_or(0);
+    let mut lines: Vec<String> = wrap(title, width.max(widest), "").lines().map(str::to_owned).collect();
+    if !unit.is_empty() {
+        lines.push(unit.to_owned());
+    }
+    lines
 }
 
 /// A paragraph in lines of at most `width` letters, each after the first behind `indent`.
