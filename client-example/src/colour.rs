@@ -1,0 +1,151 @@
+//! Colours for tensions: viridis, the perceptually uniform map of Smith and van der Walt (matplotlib 1.5, 2015; published
+//! under CC0), here at 33 of its 256 steps and mixed in between.
+//!
+//! On white paper the map runs backwards, dark for large, and without its palest eighth, so that every line is seen.
+
+use crate::number;
+
+/// Every eighth colour of the map.
+const VIRIDIS: [u32; 33] = [
+    0x44_01_54, 0x47_0d_60, 0x48_18_6a, 0x48_23_74, 0x47_2d_7b, 0x45_37_81, 0x42_40_86, 0x3e_49_89, 0x3b_52_8b,
+    0x37_5b_8d, 0x33_63_8d, 0x2f_6b_8e, 0x2c_72_8e, 0x29_7a_8e, 0x26_82_8e, 0x23_89_8e, 0x21_91_8c, 0x1f_97_8b,
+    0x1f_9f_88, 0x21_a6_85, 0x27_ad_81, 0x31_b5_7b, 0x3d_bc_74, 0x4c_c2_6c, 0x5c_c8_63, 0x6e_ce_58, 0x81_d3_4d,
+    0x95_d8_40, 0xaa_dc_32, 0xc0_df_25, 0xd5_e2_1a, 0xea_e5_1a, 0xfd_e7_25,
+];
+
+/// Share of the map that is used, from its dark end.
+const USED: f64 = 0.875;
+
+/// The colour at a share from 0, pale, to 1, dark.
+pub(crate) fn at(share: f64) -> String {
+    let place = (1.0 - share.clamp(0.0, 1.0)) * USED * 32.0;
+    #[allow(
+        clippy::cast_possible_truncation,
+        clippy::cast_sign_loss,
+        reason = "the place is between 0 and 32"
+    )]
+    let step = (place.floor() as usize).min(31);
+    #[allow(clippy::cast_precision_loss, reason = "the step is at most 31")]
+    let rest = place - step as f64;
+    let mix = |shift: u32| {
+        let part = |colour: u32| f64::from((colour >> shift) & 0xff);
+        (part(VIRIDIS[step]) * (1.0 - rest) + part(VIRIDIS[step + 1]) * rest).round()
+    };
+    format!("rgb({},{},{})", mix(16), mix(8), mix(0))
+}
+
+/// Colour of a force: linear where forces are alike, by their logarithm where they span more than a factor of 20.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub(crate) struct Scale {
+    low_kn: f64,
+    high_kn: f64,
+    pub(crate) logarithmic: bool,
+}
+
+impl Scale {
+    /// A scale for forces (N); those of slack ropes do not count.
+    pub(crate) fn over(forces_n: impl IntoIterator<Item = f64>) -> Self {
+        let (mut low, mut high) = (f64::INFINITY, 0.0_f64);
+        for force in forces_n {
+            let size = force.abs() / 1e3;
+            if size > 0.0 && size.is_finite() {
+                low = low.min(size);
+                high = high.max(size);
+            }
+        }
+        if high == 0.0 {
+            return Self {
+                low_kn: 0.0,
+                high_kn: 1.0,
+                logarithmic: false,
+            };
+        }
+        if high / low > 20.0 {
+            // Three orders are enough; what is smaller takes the palest colour.
+            Self {
+                low_kn: low.max(high / 1e3),
+                high_kn: high,
+                logarithmic: true,
+            }
+        } else {
+            Self {
+                low_kn: 0.0,
+                high_kn: high,
+                logarithmic: false,
+            }
+        }
+    }
+
+    /// Place of a force on the scale, 0 to 1.
+    pub(crate) fn share(&self, force_n: f64) -> f64 {
+        let size = force_n.abs() / 1e3;
+        let share = if self.logarithmic {
+            (size.max(self.low_kn) / self.low_kn).ln() / (self.high_kn / self.low_kn).ln()
+        } else {
+            size / self.high_kn
+        };
+        share.clamp(0.0, 1.0)
+    }
+
+    /// Ends of the scale (kN).
+    pub(crate) fn ends_kn(&self) -> [f64; 2] {
+        [self.low_kn, self.high_kn]
+    }
+
+    /// Numbers for the legend (kN) with their texts, ascending, the largest force last.
+    pub(crate) fn ticks(&self) -> Vec<(f64, String)> {
+        let mut ticks: Vec<(f64, String)> = self
+            .round_kn()
+            .into_iter()
+            .map(|tick| (tick, format!("{tick}")))
+            .collect();
+        ticks.push((self.high_kn, number::three(self.high_kn)));
+        ticks
+    }
+
+    fn round_kn(&self) -> Vec<f64> {
+        let mut ticks = Vec::new();
+        if self.logarithmic {
+            let mut decade = 10.0_f64.powf(self.low_kn.log10().floor());
+            while decade <= self.high_kn {
+                ticks.extend([1.0, 2.0, 5.0].map(|digit| number::clean(digit * decade)));
+                decade *= 10.0;
+            }
+        } else {
+            let rough = self.high_kn / 5.0;
+            let decade = 10.0_f64.powf(rough.log10().floor());
+            let step = [1.0, 2.0, 5.0, 10.0]
+                .into_iter()
+                .map(|digit| digit * decade)
+                .find(|step| *step >= rough);
+            let step = step.unwrap_or(rough);
+            ticks.extend((0..=6).map(|count| number::clean(step * f64::from(count))));
+        }
+        // The last round number must not touch the number at the end.
+        ticks.retain(|tick| *tick >= self.low_kn && self.share(tick * 1e3) < 0.95);
+        ticks
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_dark_end_is_the_dark_end_of_the_map() {
+        assert_eq!(at(1.0), "rgb(68,1,84)");
+        // 0.875 of the way through 32 steps is step 28.
+        assert_eq!(at(0.0), "rgb(170,220,50)");
+    }
+
+    #[test]
+    fn ticks_are_round_and_end_at_the_largest() {
+        let scale = Scale::over([2e3, 400e3, 0.0]);
+        assert!(scale.logarithmic);
+        let texts = |scale: Scale| scale.ticks().into_iter().map(|(_, text)| text).collect::<Vec<_>>();
+        assert_eq!(texts(scale), ["2", "5", "10", "20", "50", "100", "200", "400"]);
+        let scale = Scale::over([14_484.0, 24_820.0]);
+        assert_eq!(texts(scale), ["0", "5", "10", "15", "20", "24.8"]);
+        assert_eq!(Scale::over([]).share(0.0), 0.0);
+    }
+}

@@ -1,0 +1,510 @@
+//! The plan of a state: each rope with its tension as width and colour, the pull on each anchor as an arrow.
+
+use super::frame::{self, short};
+use super::{ALARM, INK, MUTED, Sketch};
+use crate::colour::{self, Scale};
+use crate::escape::markup;
+use crate::number::{clean, percent, three};
+use crate::run::{Member, Run, State};
+
+const WIDTH: f64 = 1200.0;
+const LEFT: f64 = 36.0;
+const RIGHT: f64 = 1036.0;
+const TOP: f64 = 120.0;
+/// Room for arrows and their numbers around the net.
+const ROOM: f64 = 122.0;
+/// The same above and below, where numbers take less room.
+const HEADROOM: f64 = 84.0;
+/// Up to so many rope segments each gets its number; beyond, each rope gets that of its largest tension.
+const NUMBERS_EACH: usize = 40;
+
+/// From plan coordinates to the sheet.
+struct View {
+    scale: f64,
+    origin: [f64; 2],
+    bottom: f64,
+}
+
+impl View {
+    fn of(positions: &[[f64; 3]]) -> Self {
+        let bound = |axis: usize| {
+            let values = positions.iter().map(|position| position[axis]);
+            values.fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), value| {
+                (low.min(value), high.max(value))
+            })
+        };
+        let ((x0, x1), (y0, y1)) = (bound(0), bound(1));
+        let (wide, high) = ((x1 - x0).max(1e-6), (y1 - y0).max(1e-6));
+        let scale = ((RIGHT - LEFT - 2.0 * ROOM) / wide).min(820.0 / high);
+        let bottom = TOP + 2.0 * HEADROOM + high * scale;
+        let left = f64::midpoint(LEFT, RIGHT) - wide * scale / 2.0;
+        Self {
+            scale,
+            origin: [left - x0 * scale, bottom - HEADROOM + y0 * scale],
+            bottom: bottom.max(560.0),
+        }
+    }
+
+    fn at(&self, position: [f64; 3]) -> [f64; 2] {
+        [
+            self.origin[0] + position[0] * self.scale,
+            self.origin[1] - position[1] * self.scale,
+        ]
+    }
+}
+
+/// Places that are taken by text.
+#[derive(Default)]
+struct Taken(Vec<[f64; 4]>);
+
+impl Taken {
+    /// Takes a place for a text around a point, if it is free.
+    fn take(&mut self, x: f64, y: f64, letters: usize) -> bool {
+        #[allow(clippy::cast_precision_loss, reason = "a label has few letters")]
+        let half = 3.9 * letters as f64 + 3.0;
+        let place = [x - half, y - 9.0, x + half, y + 9.0];
+        let free = self
+            .0
+            .iter()
+            .all(|other| place[2] < other[0] || other[2] < place[0] || place[3] < other[1] || other[3] < place[1]);
+        if free {
+            self.0.push(place);
+        }
+        free
+    }
+}
+
+/// The plan of a state; of one without answer, the reference state with what to look at. None without any positions.
+pub(crate) fn plan(run: &Run, state: &State, scale: &Scale) -> Option<String> {
+    let answered = state.answered();
+    let drawn = if answered {
+        state
+    } else {
+        run.reference().filter(|reference| reference.answered())?
+    };
+    let positions = drawn.vectors("position_m")?;
+    let forces = run.axial_forces(drawn)?;
+    let slack = run.slack(drawn);
+    let view = View::of(&positions);
+    let mut sketch = Sketch::new();
+    let mut taken = Taken::default();
+    head(&mut sketch, run, state, &forces);
+
+    let widest = forces
+        .iter()
+        .map(|force| force.abs())
+        .fold(0.0, f64::max)
+        .max(f64::MIN_POSITIVE);
+    // Large forces last, so that they lie on top.
+    let mut order: Vec<usize> = (0..run.segments.len()).collect();
+    order.sort_by(|&a, &b| forces[a].abs().total_cmp(&forces[b].abs()).then(a.cmp(&b)));
+    for &segment in &order {
+        draw_segment(
+            &mut sketch,
+            run,
+            segment,
+            &view,
+            &positions,
+            Look {
+                force: forces[segment],
+                slack: slack[segment],
+                widest,
+                scale,
+                answered,
+            },
+        );
+    }
+    if answered {
+        arrows(&mut sketch, run, state, &view, &positions, &mut taken);
+    }
+    supports(&mut sketch, run, &view, &positions, &mut taken);
+    let left_out = if answered {
+        numbers(&mut sketch, run, &view, &positions, &forces, &mut taken)
+    } else {
+        0
+    };
+    if let Some(failure) = &state.summary.failure {
+        culprits(&mut sketch, run, &view, &positions, failure);
+    }
+
+    frame::legend(&mut sketch, scale, RIGHT + 30.0, TOP + 40.0, 260.0);
+    key(&mut sketch, RIGHT + 30.0, TOP + 340.0, answered);
+    let bottom = view.bottom;
+    frame::scale_bar(&mut sketch, LEFT, bottom + 12.0, view.scale);
+    let mut remark = String::from("x to the right, y up the sheet; ");
+    remark.push_str(if run.n_rope_segments() <= NUMBERS_EACH {
+        "numbers: kN in each segment"
+    } else {
+        "numbers: largest kN of each rope, at its place"
+    });
+    if left_out > 0 {
+        remark.push_str(&format!("; {left_out} left out for room, see segments.csv"));
+    }
+    sketch.put(format_args!(
+        "<text x=\"330\" y=\"{:.0}\" font-size=\"12\" fill=\"{MUTED}\">{remark}</text>",
+        bottom + 14.0
+    ));
+    frame::foot(&mut sketch, run, bottom + 40.0);
+    Some(sketch.finish(WIDTH, bottom + 60.0, &format!("{}, plan, {}", run.title(), state.id)))
+}
+
+fn head(sketch: &mut Sketch, run: &Run, state: &State, forces: &[f64]) {
+    let words = if state.in_words.is_empty() {
+        String::new()
+    } else {
+        format!("acting: {}", state.in_words)
+    };
+    let told = match &state.summary.failure {
+        Some(failure) if !state.answered() => (
+            format!(
+                "No answer ({} % of the load): {}. Drawn: the reference state.",
+                percent(state.summary.load_factor),
+                failure.message
+            ),
+            ALARM,
+        ),
+        _ if !state.answered() => ("No answer. Drawn: the reference state.".to_owned(), ALARM),
+        _ => {
+            let most = (0..run.n_rope_segments()).max_by(|&a, &b| forces[a].total_cmp(&forces[b]));
+            let most = most.map(|segment| {
+                format!(
+                    "largest {} kN in {}",
+                    three(forces[segment] / 1e3),
+                    run.member_id(segment)
+                )
+            });
+            (
+                format!(
+                    "in balance; {}; {} segments slack",
+                    most.unwrap_or_default(),
+                    state.summary.slack_segments
+                ),
+                INK,
+            )
+        }
+    };
+    frame::head(
+        sketch,
+        &format!("{} · {}", run.title(), state.id),
+        &[(words, MUTED), told],
+    );
+}
+
+#[derive(Clone, Copy)]
+struct Look<'a> {
+    force: f64,
+    slack: bool,
+    widest: f64,
+    scale: &'a Scale,
+    answered: bool,
+}
+
+fn draw_segment(sketch: &mut Sketch, run: &Run, segment: usize, view: &View, positions: &[[f64; 3]], look: Look) {
+    let [from, to] = run.segments[segment].nodes;
+    let ([x0, y0], [x1, y1]) = (view.at(positions[from]), view.at(positions[to]));
+    let (id, from, to) = (
+        markup(run.member_id(segment)),
+        markup(&run.nodes[from]),
+        markup(&run.nodes[to]),
+    );
+    let strut = matches!(run.segments[segment].member, Member::Strut(_));
+    let kn = three(look.force / 1e3);
+    let width = if look.slack {
+        1.3
+    } else {
+        1.2 + 6.0 * (look.force.abs() / look.widest).sqrt()
+    };
+    let (stroke, dash) = if !look.answered {
+        ("#aab3bc".to_owned(), "")
+    } else if look.slack {
+        (MUTED.to_owned(), " stroke-dasharray=\"4 4\"")
+    } else {
+        (colour::at(look.scale.share(look.force)), "")
+    };
+    let kind = if strut { "strut" } else { "rope" };
+    let line = format!("x1=\"{x0:.1}\" y1=\"{y0:.1}\" x2=\"{x1:.1}\" y2=\"{y1:.1}\"");
+    if strut {
+        sketch.put(format_args!(
+            "<line {line} stroke=\"{INK}\" stroke-width=\"{:.1}\"/>",
+            width + 4.0
+        ));
+    }
+    let told = if look.answered {
+        let state = if look.slack {
+            "slack".to_owned()
+        } else {
+            format!("{kn} kN")
+        };
+        format!(
+            " data-{kind}=\"{id}\" data-from=\"{from}\" data-to=\"{to}\" data-axial-force-n=\"{}\" data-slack=\"{}\"><title>{id}, {from} to {to}: {state}</title></line>",
+            look.force,
+            u8::from(look.slack)
+        )
+    } else {
+        format!("><title>{id}, {from} to {to}</title></line>")
+    };
+    let stroke = if strut && look.answered {
+        "#fff".to_owned()
+    } else {
+        stroke
+    };
+    sketch.put(format_args!(
+        "<line {line} stroke=\"{stroke}\" stroke-width=\"{width:.1}\" stroke-linecap=\"round\"{dash}{told}"
+    ));
+}
+
+/// Towards the members of a support in plan: on the other side nothing is in the way of an arrow.
+fn towards(run: &Run, node: usize, view: &View, positions: &[[f64; 3]], forces: &[f64]) -> [f64; 2] {
+    let mut sum = [0.0; 2];
+    for end in run.ends.iter().filter(|end| end.node == node) {
+        let nodes = run.segments[end.segment].nodes;
+        let other = if nodes[0] == node { nodes[1] } else { nodes[0] };
+        let (here, there) = (view.at(positions[node]), view.at(positions[other]));
+        let along = [there[0] - here[0], there[1] - here[1]];
+        let size = along[0].hypot(along[1]).max(f64::MIN_POSITIVE);
+        for axis in 0..2 {
+            sum[axis] += forces[end.segment].abs() * along[axis] / size;
+        }
+    }
+    sum
+}
+
+/// The pull on each anchor: an arrow outside the net along its horizontal part, the size and the upright part as numbers.
+fn arrows(sketch: &mut Sketch, run: &Run, state: &State, view: &View, positions: &[[f64; 3]], taken: &mut Taken) {
+    let supports = state.vectors("support_force_n").unwrap_or_default();
+    let forces = run.axial_forces(state).unwrap_or_default();
+    for (&node, force) in run.supports.iter().zip(&supports) {
+        let pull = force.map(|part| 0.0 - part);
+        let level = pull[0].hypot(pull[1]);
+        let size = level.hypot(pull[2]);
+        if size <= 0.0 {
+            continue;
+        }
+        let [x, y] = view.at(positions[node]);
+        let flat = level > 0.02 * size;
+        let [dx, dy] = if flat {
+            [pull[0] / level, -pull[1] / level]
+        } else {
+            [0.0, 0.0]
+        };
+        let net = towards(run, node, view, positions, &forces);
+        // A rope pulls the anchor towards the net, a strut may press it away; the arrow stands outside either way.
+        let pressed = dx * net[0] + dy * net[1] < 0.0;
+        let side = if pressed { 1.0 } else { -1.0 };
+        if flat {
+            let at = |way: f64| [x + side * way * dx, y + side * way * dy];
+            let (head, tail) = if pressed {
+                (at(52.0), at(12.0))
+            } else {
+                (at(12.0), at(52.0))
+            };
+            sketch.put(format_args!(
+                "<path d=\"M{:.1} {:.1}L{:.1} {:.1}\" stroke=\"{INK}\" stroke-width=\"2\"/>\
+                 <path d=\"M{:.1} {:.1}L{:.1} {:.1}L{:.1} {:.1}z\"/>",
+                tail[0],
+                tail[1],
+                head[0] - 6.0 * dx,
+                head[1] - 6.0 * dy,
+                head[0],
+                head[1],
+                head[0] - 11.0 * dx - 5.0 * dy,
+                head[1] - 11.0 * dy + 5.0 * dx,
+                head[0] - 11.0 * dx + 5.0 * dy,
+                head[1] - 11.0 * dy - 5.0 * dx
+            ));
+        }
+        pull_label(sketch, run, node, pull, [x, y], [side * dx, side * dy], taken);
+    }
+}
+
+fn pull_label(
+    sketch: &mut Sketch,
+    run: &Run,
+    node: usize,
+    pull: [f64; 3],
+    place: [f64; 2],
+    out: [f64; 2],
+    taken: &mut Taken,
+) {
+    let size = pull.iter().map(|part| part * part).sum::<f64>().sqrt();
+    let (kn, id) = (size / 1e3, markup(&run.nodes[node]));
+    let upright = if pull[2].abs() < 0.02 * size {
+        String::new()
+    } else {
+        format!(
+            "{} {}",
+            three(pull[2].abs() / 1e3),
+            if pull[2] > 0.0 { "up" } else { "down" }
+        )
+    };
+    let first = format!("{} kN", three(kn));
+    let letters = first.chars().count().max(upright.chars().count());
+    #[allow(clippy::cast_precision_loss, reason = "a label has few letters")]
+    let half = 3.9 * letters as f64;
+    // Without a horizontal part there is no arrow; the numbers stand below the anchor. Farther out if the place is taken.
+    let mut chosen = None;
+    for step in 0..6 {
+        let way = 58.0 + 16.0 * f64::from(step);
+        let [x, y] = if out == [0.0, 0.0] {
+            [place[0], place[1] + way - 28.0]
+        } else {
+            [place[0] + out[0] * (way + half), place[1] + out[1] * (way + 12.0)]
+        };
+        chosen.get_or_insert([x, y]);
+        if taken.take(x, y - 7.0, letters) && taken.take(x, y + 8.0, 2) {
+            chosen = Some([x, y]);
+            break;
+        }
+    }
+    let [x, y] = chosen.expect("there is a first place");
+    sketch.put(format_args!(
+        "<text x=\"{x:.1}\" y=\"{:.1}\" text-anchor=\"middle\" {HALO}><tspan class=\"pull\" font-weight=\"600\" data-anchor=\"{id}\" \
+         data-pull-kn=\"{}\">{first}</tspan><tspan x=\"{x:.1}\" dy=\"15\" font-size=\"12\">{upright}</tspan></text>",
+        y - 2.0,
+        clean(kn)
+    ));
+}
+
+const HALO: &str = "stroke=\"#fff\" stroke-width=\"3.5\" stroke-linejoin=\"round\" paint-order=\"stroke\"";
+
+fn supports(sketch: &mut Sketch, run: &Run, view: &View, positions: &[[f64; 3]], taken: &mut Taken) {
+    for &node in &run.supports {
+        let [x, y] = view.at(positions[node]);
+        let id = &run.nodes[node];
+        sketch.put(format_args!(
+            "<rect x=\"{:.1}\" y=\"{:.1}\" width=\"11\" height=\"11\" fill=\"#fff\" stroke=\"{INK}\" stroke-width=\"2\"><title>support {}</title></rect>",
+            x - 5.5,
+            y - 5.5,
+            markup(id)
+        ));
+        let shown = short(id, 16);
+        for (dx, dy) in [(0.0, -14.0), (0.0, 20.0), (24.0, 5.0), (-24.0, 5.0)] {
+            if taken.take(x + dx, y + dy - 4.0, shown.chars().count()) {
+                sketch.put(format_args!(
+                    "<text x=\"{:.1}\" y=\"{:.1}\" text-anchor=\"middle\" font-size=\"12\" fill=\"{MUTED}\" {HALO}>{}</text>",
+                    x + dx,
+                    y + dy,
+                    markup(&shown)
+                ));
+                break;
+            }
+        }
+    }
+}
+
+/// Writes tensions at segments; returns how many found no room.
+fn numbers(
+    sketch: &mut Sketch,
+    run: &Run,
+    view: &View,
+    positions: &[[f64; 3]],
+    forces: &[f64],
+    taken: &mut Taken,
+) -> usize {
+    let mut places: Vec<usize> = if run.n_rope_segments() <= NUMBERS_EACH {
+        (0..run.segments.len()).collect()
+    } else {
+        let struts = (run.n_rope_segments()..run.segments.len()).map(|segment| vec![segment]);
+        let of_members = run.cable_segments().into_iter().chain(struts);
+        let largest = |list: Vec<usize>| {
+            list.into_iter()
+                .rev()
+                .max_by(|&a, &b| forces[a].abs().total_cmp(&forces[b].abs()))
+        };
+        of_members.filter_map(largest).collect()
+    };
+    places.sort_by(|&a, &b| forces[b].abs().total_cmp(&forces[a].abs()).then(a.cmp(&b)));
+    let mut left_out = 0;
+    for segment in places {
+        let [from, to] = run.segments[segment].nodes;
+        let ([x0, y0], [x1, y1]) = (view.at(positions[from]), view.at(positions[to]));
+        let (x, y) = (f64::midpoint(x0, x1), f64::midpoint(y0, y1));
+        let label = three(forces[segment] / 1e3);
+        if taken.take(x, y, label.chars().count()) {
+            sketch.put(format_args!(
+                "<text class=\"tension\" x=\"{x:.1}\" y=\"{:.1}\" text-anchor=\"middle\" font-size=\"12\" {HALO} data-of=\"{}\" \
+                 data-axial-force-n=\"{}\">{label}</text>",
+                y + 4.3,
+                markup(run.member_id(segment)),
+                forces[segment]
+            ));
+        } else {
+            left_out += 1;
+        }
+    }
+    left_out
+}
+
+/// Marks what a failure names.
+fn culprits(
+    sketch: &mut Sketch,
+    run: &Run,
+    view: &View,
+    positions: &[[f64; 3]],
+    failure: &ropewalk_api::ropewalk::v1::Failure,
+) {
+    for (number, segment) in run.segments.iter().enumerate() {
+        if failure.members.iter().any(|member| member == run.member_id(number)) {
+            let ([x0, y0], [x1, y1]) = (
+                view.at(positions[segment.nodes[0]]),
+                view.at(positions[segment.nodes[1]]),
+            );
+            sketch.put(format_args!(
+                "<path d=\"M{x0:.1} {y0:.1}L{x1:.1} {y1:.1}\" stroke=\"{ALARM}\" stroke-width=\"2.5\"/>"
+            ));
+        }
+    }
+    for id in &failure.nodes {
+        let Some(node) = run.nodes.iter().position(|node| node == id) else {
+            continue;
+        };
+        let [x, y] = view.at(positions[node]);
+        sketch.put(format_args!(
+            "<circle cx=\"{x:.1}\" cy=\"{y:.1}\" r=\"11\" fill=\"none\" stroke=\"{ALARM}\" stroke-width=\"2.5\"/>"
+        ));
+        sketch.put(format_args!(
+            "<text x=\"{:.1}\" y=\"{:.1}\" fill=\"{ALARM}\" font-weight=\"600\" {HALO}>{}</text>",
+            x + 14.0,
+            y - 9.0,
+            markup(&short(id, 24))
+        ));
+    }
+}
+
+fn key(sketch: &mut Sketch, x: f64, y: f64, answered: bool) {
+    let mut row = 0.0;
+    let mut entry = |sign: String, words: &str| {
+        let at = y + 24.0 * row;
+        sketch.put(format_args!("<g transform=\"translate({x:.1} {at:.1})\">{sign}<text x=\"38\" y=\"4.5\" font-size=\"12\">{words}</text></g>"));
+        row += 1.0;
+    };
+    if answered {
+        entry(
+            format!("<path d=\"M0 0h28\" stroke=\"{MUTED}\" stroke-width=\"1.3\" stroke-dasharray=\"4 4\"/>"),
+            "slack",
+        );
+    }
+    entry(
+        format!(
+            "<path d=\"M0 0h28\" stroke=\"{INK}\" stroke-width=\"7\"/><path d=\"M0 0h28\" stroke=\"#fff\" stroke-width=\"3\"/>"
+        ),
+        "strut",
+    );
+    entry(
+        format!(
+            "<rect x=\"8.5\" y=\"-5.5\" width=\"11\" height=\"11\" fill=\"#fff\" stroke=\"{INK}\" stroke-width=\"2\"/>"
+        ),
+        "support",
+    );
+    if answered {
+        entry(
+            format!("<path d=\"M0 0h20\" stroke=\"{INK}\" stroke-width=\"2\"/><path d=\"M28 0l-11 5v-10z\"/>"),
+            "pull on anchor",
+        );
+    } else {
+        entry(
+            format!("<circle cx=\"14\" cy=\"0\" r=\"8\" fill=\"none\" stroke=\"{ALARM}\" stroke-width=\"2.5\"/>"),
+            "look here",
+        );
+    }
+}

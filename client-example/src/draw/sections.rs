@@ -1,0 +1,274 @@
+//! Sections along picked ropes: height over the way in plan, and below it how far the rope has moved.
+
+use super::frame::{self, rule, ticks};
+use super::{HAIR, INK, MUTED, Sketch, pick};
+use crate::escape::markup;
+use crate::number::{clean, three};
+use crate::run::{Run, State};
+
+const WIDTH: f64 = 1200.0;
+const LEFT: f64 = 92.0;
+const RIGHT: f64 = 930.0;
+const SHAPE: f64 = 190.0;
+const MOVE: f64 = 90.0;
+const GAP: f64 = 62.0;
+/// Colours and dashes of the cases: told apart without colour too.
+const CASES: [(&str, &str); 3] = [("#31688e", ""), ("#c2571a", "7 3"), ("#7a3e9d", "2 3")];
+
+/// A rope as seen from the side.
+struct Profile<'a> {
+    name: &'a str,
+    nodes: Vec<usize>,
+    /// Way in plan along the reference shape (m).
+    way: Vec<f64>,
+    reference: Vec<[f64; 3]>,
+    cases: Vec<(&'a State, Vec<[f64; 3]>)>,
+}
+
+/// Sections through the shape; none without a reference state or ropes of several segments.
+pub(crate) fn sections(run: &Run) -> Option<String> {
+    let profiles: Vec<Profile> = pick::ropes(run)
+        .into_iter()
+        .filter_map(|cable| profile(run, cable))
+        .collect();
+    if profiles.is_empty() {
+        return None;
+    }
+    let mut sketch = Sketch::new();
+    let line = "Reference state and the cases that move the rope most. Heights are drawn as exaggerated as written; the place in plan is that of the reference state.";
+    frame::head(
+        &mut sketch,
+        &format!("{} · sections along ropes", run.title()),
+        &[(line.to_owned(), MUTED)],
+    );
+    let mut top = 128.0;
+    for profile in &profiles {
+        draw(&mut sketch, run, profile, top);
+        top += SHAPE + MOVE + GAP + 56.0;
+    }
+    frame::foot(&mut sketch, run, top);
+    Some(sketch.finish(WIDTH, top + 20.0, &format!("{}, sections", run.title())))
+}
+
+fn profile(run: &Run, cable: usize) -> Option<Profile<'_>> {
+    let reference = run
+        .reference()
+        .filter(|state| state.answered())?
+        .vectors("position_m")?;
+    let segments = run.cable_segments().swap_remove(cable);
+    let mut nodes = vec![run.segments[*segments.first()?].nodes[0]];
+    nodes.extend(segments.iter().map(|&segment| run.segments[segment].nodes[1]));
+    let mut way = vec![0.0];
+    for pair in nodes.windows(2) {
+        let (a, b) = (reference[pair[0]], reference[pair[1]]);
+        way.push(way.last()? + (b[0] - a[0]).hypot(b[1] - a[1]));
+    }
+    // A rope that stands upright has no section of this kind.
+    if *way.last()? <= 0.0 {
+        return None;
+    }
+    let cases = pick::cases(run, &nodes);
+    let cases = cases
+        .into_iter()
+        .filter_map(|state| Some((state, state.vectors("position_m")?)))
+        .collect();
+    Some(Profile {
+        name: &run.cables[cable],
+        nodes,
+        way,
+        reference,
+        cases,
+    })
+}
+
+fn bounds(values: impl Iterator<Item = f64>) -> (f64, f64) {
+    values.fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), value| {
+        (low.min(value), high.max(value))
+    })
+}
+
+fn draw(sketch: &mut Sketch, run: &Run, profile: &Profile, top: f64) {
+    let end = *profile.way.last().expect("a rope has nodes");
+    let across = (RIGHT - LEFT) / end;
+    let all = profile
+        .cases
+        .iter()
+        .map(|(_, positions)| positions)
+        .chain([&profile.reference]);
+    let heights = all.flat_map(|positions| profile.nodes.iter().map(|&node| positions[node][2]));
+    let (low, high) = bounds(heights);
+    // One of a few round exaggerations, the largest that fits.
+    let fits = SHAPE / ((high - low).max(1e-3) * across);
+    let exaggeration = frame::round_below(fits.max(1e-3)).min(20.0);
+    let up = across * exaggeration;
+    let middle = f64::midpoint(low, high);
+    let x = |way: f64| LEFT + way * across;
+    let y = |height: f64| top + SHAPE / 2.0 - (height - middle) * up;
+
+    sketch.put(format_args!(
+        "<text x=\"{LEFT}\" y=\"{:.1}\" font-size=\"16\" font-weight=\"600\">{}</text>\
+         <text x=\"{RIGHT}\" y=\"{:.1}\" text-anchor=\"end\" fill=\"{MUTED}\">heights {} times exaggerated</text>",
+        top - 16.0,
+        markup(&frame::short(&format!("along {}", profile.name), 60)),
+        top - 16.0,
+        three(exaggeration)
+    ));
+    for tick in ticks(middle - SHAPE / 2.0 / up, middle + SHAPE / 2.0 / up, 4.0) {
+        rule(sketch, [LEFT, y(tick)], [RIGHT, y(tick)]);
+        sketch.put(format_args!(
+            "<text x=\"{:.1}\" y=\"{:.1}\" text-anchor=\"end\" font-size=\"12\">{}</text>",
+            LEFT - 8.0,
+            y(tick) + 4.0,
+            three(tick)
+        ));
+    }
+    axis_title(sketch, top + SHAPE / 2.0, "height (m)");
+
+    let line = |positions: &[[f64; 3]]| -> String {
+        let points = profile
+            .nodes
+            .iter()
+            .zip(&profile.way)
+            .map(|(&node, &way)| format!("{:.1},{:.1}", x(way), y(positions[node][2])));
+        points.collect::<Vec<_>>().join(" ")
+    };
+    sketch.put(format_args!(
+        "<polyline points=\"{}\" fill=\"none\" stroke=\"{INK}\" stroke-width=\"2.2\"/>",
+        line(&profile.reference)
+    ));
+    for (&node, &way) in profile.nodes.iter().zip(&profile.way) {
+        sketch.put(format_args!(
+            "<circle cx=\"{:.1}\" cy=\"{:.1}\" r=\"2.4\" data-case=\"reference\" data-node=\"{}\" data-z-m=\"{}\"><title>{}: {} m</title></circle>",
+            x(way),
+            y(profile.reference[node][2]),
+            markup(&run.nodes[node]),
+            profile.reference[node][2],
+            markup(&run.nodes[node]),
+            three(profile.reference[node][2])
+        ));
+    }
+    for ((state, positions), (colour, dash)) in profile.cases.iter().zip(CASES) {
+        let dash = if dash.is_empty() {
+            String::new()
+        } else {
+            format!(" stroke-dasharray=\"{dash}\"")
+        };
+        sketch.put(format_args!("<polyline points=\"{}\" fill=\"none\" stroke=\"{colour}\" stroke-width=\"1.8\"{dash}><title>{}</title></polyline>", line(positions), markup(&state.id)));
+    }
+    moves(sketch, run, profile, top + SHAPE + 34.0, across);
+    key(sketch, profile, top);
+}
+
+/// The movement along the rope (mm), with the largest of each case written at its place.
+fn moves(sketch: &mut Sketch, run: &Run, profile: &Profile, top: f64, across: f64) {
+    let mm = |positions: &[[f64; 3]], node: usize| {
+        let (now, was) = (positions[node], profile.reference[node]);
+        pick::size([now[0] - was[0], now[1] - was[1], now[2] - was[2]]) * 1e3
+    };
+    let all = profile
+        .cases
+        .iter()
+        .flat_map(|(_, positions)| profile.nodes.iter().map(|&node| mm(positions, node)));
+    let most = all.fold(0.0, f64::max).max(1e-3);
+    let x = |way: f64| LEFT + way * across;
+    let y = |value: f64| top + MOVE - value / most * MOVE;
+    for tick in ticks(0.0, most, 3.0) {
+        rule(sketch, [LEFT, y(tick)], [RIGHT, y(tick)]);
+        sketch.put(format_args!(
+            "<text x=\"{:.1}\" y=\"{:.1}\" text-anchor=\"end\" font-size=\"12\">{}</text>",
+            LEFT - 8.0,
+            y(tick) + 4.0,
+            three(tick)
+        ));
+    }
+    axis_title(sketch, top + MOVE / 2.0, "moved (mm)");
+    let end = *profile.way.last().expect("a rope has nodes");
+    for tick in ticks(0.0, end, 8.0) {
+        sketch.put(format_args!(
+            "<path d=\"M{:.1} {:.1}v5\" stroke=\"{MUTED}\"/><text x=\"{:.1}\" y=\"{:.1}\" text-anchor=\"middle\" font-size=\"12\">{}</text>",
+            x(tick),
+            top + MOVE,
+            x(tick),
+            top + MOVE + 19.0,
+            three(tick)
+        ));
+    }
+    sketch.put(format_args!(
+        "<text x=\"{RIGHT}\" y=\"{:.1}\" text-anchor=\"end\" font-size=\"12\" fill=\"{MUTED}\">way in plan from {} (m)</text>",
+        top + MOVE + 36.0,
+        markup(&frame::short(&run.nodes[profile.nodes[0]], 40))
+    ));
+    for ((state, positions), (colour, dash)) in profile.cases.iter().zip(CASES) {
+        let points = profile
+            .nodes
+            .iter()
+            .zip(&profile.way)
+            .map(|(&node, &way)| format!("{:.1},{:.1}", x(way), y(mm(positions, node))));
+        let dash = if dash.is_empty() {
+            String::new()
+        } else {
+            format!(" stroke-dasharray=\"{dash}\"")
+        };
+        sketch.put(format_args!(
+            "<polyline points=\"{}\" fill=\"none\" stroke=\"{colour}\" stroke-width=\"1.8\"{dash}/>",
+            points.collect::<Vec<_>>().join(" ")
+        ));
+        let moves = state.vectors("displacement_m").unwrap_or_default();
+        for &node in &profile.nodes {
+            let told = moves.get(node).map_or(0.0, |part| pick::size(*part)) * 1e3;
+            let place = profile
+                .nodes
+                .iter()
+                .position(|other| *other == node)
+                .expect("the node is on the rope");
+            sketch.put(format_args!(
+                "<circle cx=\"{:.1}\" cy=\"{:.1}\" r=\"2\" fill=\"{colour}\" data-case=\"{}\" data-node=\"{}\" data-moved-mm=\"{}\"/>",
+                x(profile.way[place]),
+                y(mm(positions, node)),
+                markup(&state.id),
+                markup(&run.nodes[node]),
+                clean(told)
+            ));
+        }
+    }
+}
+
+fn axis_title(sketch: &mut Sketch, y: f64, words: &str) {
+    sketch.put(format_args!("<text transform=\"translate(30 {y:.1}) rotate(-90)\" text-anchor=\"middle\" font-size=\"12\" fill=\"{MUTED}\">{words}</text>"));
+}
+
+/// Which line is which, with the largest movement of each.
+fn key(sketch: &mut Sketch, profile: &Profile, top: f64) {
+    let x = RIGHT + 24.0;
+    sketch.put(format_args!("<path d=\"M{x} {top:.1}h26\" stroke=\"{INK}\" stroke-width=\"2.2\"/><text x=\"{:.1}\" y=\"{:.1}\">reference</text>", x + 34.0, top + 4.5));
+    for (number, ((state, _), (colour, dash))) in (1_u8..).zip(profile.cases.iter().zip(CASES)) {
+        let y = top + 44.0 * f64::from(number);
+        let moves = state.vectors("displacement_m").unwrap_or_default();
+        let largest = profile
+            .nodes
+            .iter()
+            .map(|&node| moves.get(node).map_or(0.0, |part| pick::size(*part)))
+            .fold(0.0, f64::max);
+        let dash = if dash.is_empty() {
+            String::new()
+        } else {
+            format!(" stroke-dasharray=\"{dash}\"")
+        };
+        sketch.put(format_args!(
+            "<path d=\"M{x} {y:.1}h26\" stroke=\"{colour}\" stroke-width=\"2\"{dash}/><text x=\"{:.1}\" y=\"{:.1}\">{}</text>\
+             <text x=\"{:.1}\" y=\"{:.1}\" font-size=\"12\" fill=\"{MUTED}\">moves up to {} mm</text>",
+            x + 34.0,
+            y + 4.5,
+            markup(&frame::short(&state.id, 26)),
+            x + 34.0,
+            y + 21.0,
+            three(largest * 1e3)
+        ));
+    }
+    sketch.put(format_args!(
+        "<path d=\"M{:.1} {:.1}V{:.1}\" stroke=\"{HAIR}\"/>",
+        RIGHT + 10.0,
+        top,
+        top + SHAPE
+    ));
+}

@@ -1,0 +1,61 @@
+use super::*;
+use crate::colour::Scale;
+use crate::run::sample::{self, Names};
+
+fn nasty() -> crate::run::Run {
+    sample::run_named(Names {
+        middle: "m\"><script>alert(1)</script>",
+        rope: "r'&<b>",
+        case: "<script>alert('x')</script>",
+        title: "</title><script>x</script>",
+    })
+}
+
+#[test]
+fn drawings_hold_no_markup_from_ids() {
+    let run = nasty();
+    let scale = Scale::over([1e3, 3e4]);
+    let mut drawings: Vec<String> = run
+        .states
+        .iter()
+        .filter_map(|state| plan(&run, state, &scale))
+        .collect();
+    assert_eq!(drawings.len(), 3);
+    drawings.push(sections(&run).unwrap());
+    drawings.push(convergence(&run).unwrap());
+    for drawing in drawings {
+        assert!(!drawing.contains("<script") && !drawing.contains("<b>"), "{drawing}");
+        assert!(drawing.contains("&lt;"));
+        assert!(!drawing.contains("NaN") && !drawing.contains("inf"), "{drawing}");
+    }
+}
+
+#[test]
+fn a_plan_tells_tensions_and_pulls() {
+    let run = sample::run();
+    let scale = Scale::over([19_615.0, 24_820.0]);
+    let drawing = plan(&run, &run.states[1], &scale).unwrap();
+    assert_eq!(drawing.matches("data-rope=").count(), 4);
+    assert!(drawing.contains("data-axial-force-n=\"24820\""));
+    assert_eq!(drawing.matches("class=\"pull\"").count(), 4);
+    // 24.820 kN along (4.5, 4.5, -1.52259) of length 6.54357 m: 5.775 kN down.
+    assert!(
+        drawing.contains(">24.8 kN<") && drawing.contains(">5.78 down<"),
+        "no pull on A"
+    );
+    assert!(
+        drawing.contains(">14.5 kN<") && drawing.contains(" up<"),
+        "no pull on B"
+    );
+}
+
+#[test]
+fn a_case_without_answer_is_drawn_as_such() {
+    let run = sample::run();
+    let drawing = plan(&run, &run.states[2], &Scale::over([1e3])).unwrap();
+    assert!(drawing.contains("No answer") && drawing.contains("nothing holds the lamp"));
+    assert!(
+        !drawing.contains("data-rope="),
+        "numbers of another state would mislead"
+    );
+}

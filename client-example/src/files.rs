@@ -1,0 +1,264 @@
+//! The folder of results.
+
+use std::collections::BTreeSet;
+use std::fs;
+use std::io;
+use std::path::{Path, PathBuf};
+
+use prost::Message as _;
+use serde_json::{Map, Value, json};
+
+use crate::brief_file::message_json;
+use crate::colour::Scale;
+use crate::escape::{csv_text, file_name};
+use crate::run::{Column, Run, State};
+use crate::sheet::{self, Sheet};
+use crate::{draw, json_text, report};
+
+/// Plans that are drawn; beyond it those without answer and with the worst ratios count.
+const PLANS: usize = 60;
+
+/// What was written.
+#[derive(Debug)]
+pub(crate) struct Written {
+    pub(crate) files: usize,
+    /// States without a plan, for their number.
+    pub(crate) plans_left_out: usize,
+}
+
+/// Writes all files of a run into a folder, which is made where it is missing.
+///
+/// # Errors
+/// The file that could not be written, and why.
+pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::Error)> {
+    fs::create_dir_all(folder).map_err(|error| (folder.to_owned(), error))?;
+    let mut count = 0;
+    let mut put = |name: &str, text: &str| -> Result<(), (PathBuf, io::Error)> {
+        let path = folder.join(name);
+        count += 1;
+        fs::write(&path, text).map_err(|error| (path, error))
+    };
+    put("results.json", &results(run))?;
+    put("nodes.csv", &nodes(run))?;
+    put("segments.csv", &segments(run))?;
+    let sheets = all_sheets(run);
+    for sheet in &sheets {
+        put(&format!("{}.csv", sheet.file), &sheet.csv())?;
+    }
+    let scale = scale(run);
+    let mut names = BTreeSet::new();
+    let drawn: Vec<&State> = run
+        .reference()
+        .into_iter()
+        .chain(sheet::by_need(run).into_iter().filter(|state| state.id != "reference"))
+        .collect();
+    for state in drawn.iter().take(PLANS) {
+        if let Some(plan) = draw::plan(run, state, &scale) {
+            let base = file_name(&state.id);
+            // Different ids may make the same name; upper and lower case are one to some file systems.
+            let free = (1..).map(|number| {
+                if number == 1 {
+                    base.clone()
+                } else {
+                    format!("{base}-{number}")
+                }
+            });
+            let name = free
+                .into_iter()
+                .find(|name| names.insert(name.to_lowercase()))
+                .expect("numbers do not run out");
+            put(&format!("plan-{name}.svg"), &plan)?;
+        }
+    }
+    if let Some(sections) = draw::sections(run) {
+        put("sections.svg", &sections)?;
+    }
+    let on_page: Vec<Sheet> = sheets.into_iter().filter(|sheet| sheet.file != "anchors").collect();
+    put("report.html", &report::page(run, &on_page, &scale))?;
+    Ok(Written {
+        files: count,
+        plans_left_out: drawn.len().saturating_sub(PLANS),
+    })
+}
+
+/// All sheets, in the order in which they are read.
+pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
+    vec![
+        sheet::checks(run),
+        sheet::cases(run),
+        sheet::ropes(run),
+        sheet::struts(run),
+        sheet::anchor_peaks(run),
+        sheet::anchors(run),
+        sheet::sums(run),
+    ]
+}
+
+/// One scale for all states, so that colours can be compared.
+fn scale(run: &Run) -> Scale {
+    let ropes = run.n_rope_segments();
+    let answered = run.states.iter().filter(|state| state.answered());
+    Scale::over(
+        answered
+            .filter_map(|state| Some(run.axial_forces(state)?[..ropes].to_vec()))
+            .flatten(),
+    )
+}
+
+/// Everything, as the contract names it; wall times are left out, so that equal runs give equal files.
+fn results(run: &Run) -> String {
+    let columns = |columns: &std::collections::BTreeMap<String, Column>| -> Value {
+        let entries = columns.iter().map(|(name, column)| {
+            let value = json!({
+                "unit": column.unit, "over": column.over.as_str_name(), "components": column.components,
+                "baseline": column.baseline, "values": column.values,
+            });
+            (name.clone(), value)
+        });
+        Value::Object(entries.collect::<Map<_, _>>())
+    };
+    let states: Vec<Value> = run
+        .states
+        .iter()
+        .map(|state| {
+            json!({
+                "id": state.id, "in_words": state.in_words, "sets": state.sets,
+                "summary": message_json("CaseSummary", &state.summary.encode_to_vec()),
+                "columns": columns(&state.columns),
+            })
+        })
+        .collect();
+    let segments: Vec<Value> = (0..run.segments.len())
+        .map(|at| {
+            json!([
+                run.member_id(at),
+                run.nodes[run.segments[at].nodes[0]],
+                run.nodes[run.segments[at].nodes[1]]
+            ])
+        })
+        .collect();
+    let ends: Vec<Value> = run
+        .ends
+        .iter()
+        .map(|end| json!([run.member_id(end.segment), run.nodes[end.node]]))
+        .collect();
+    let value = json!({
+        "started": message_json("Started", &run.started.encode_to_vec()),
+        "summary": message_json("Summary", &run.summary.encode_to_vec()),
+        "findings": run.findings.iter().map(|finding| message_json("Finding", &finding.encode_to_vec())).collect::<Vec<_>>(),
+        "nodes": run.nodes,
+        "cables": run.cables,
+        "struts": run.struts,
+        "segments": segments,
+        "supports": run.supports.iter().map(|&node| run.nodes[node].as_str()).collect::<Vec<_>>(),
+        "ends": ends,
+        "cases": run.case_ids,
+        "states": states,
+        "envelope": columns(&run.envelope),
+    });
+    let mut text = json_text::pretty(&value);
+    text.push('\n');
+    text
+}
+
+/// Nodes in every state that has positions, in SI units with all digits. `answered` 0 marks the last good state of a case
+/// without answer, `loose` 1 a place that means nothing.
+fn nodes(run: &Run) -> String {
+    let mut text = String::from("case,answered,node,x_m,y_m,z_m,dx_m,dy_m,dz_m,loose\r\n");
+    for state in &run.states {
+        let (Some(positions), Some(moves)) = (state.vectors("position_m"), state.vectors("displacement_m")) else {
+            continue;
+        };
+        let loose: BTreeSet<&str> = state.summary.loose_nodes.iter().map(String::as_str).collect();
+        let case = csv_text(&state.id);
+        for ((id, place), step) in run.nodes.iter().zip(&positions).zip(&moves) {
+            text.push_str(&format!(
+                "{case},{},{},{},{},{},{},{},{},{}\r\n",
+                u8::from(state.answered()),
+                csv_text(id),
+                place[0],
+                place[1],
+                place[2],
+                step[0],
+                step[1],
+                step[2],
+                u8::from(loose.contains(id.as_str()))
+            ));
+        }
+    }
+    text
+}
+
+/// Segments in every state that has forces, in SI units with all digits; tension positive.
+fn segments(run: &Run) -> String {
+    let mut text = String::from("case,answered,member,from,to,axial_force_n,slack,length_m,stretch\r\n");
+    for state in &run.states {
+        let Some(forces) = run.axial_forces(state) else {
+            continue;
+        };
+        let slack = run.slack(state);
+        let told = |name: &str, at: usize| {
+            state
+                .numbers(name)
+                .and_then(|numbers| numbers.get(at))
+                .map(ToString::to_string)
+                .unwrap_or_default()
+        };
+        let case = csv_text(&state.id);
+        for (at, segment) in run.segments.iter().enumerate() {
+            text.push_str(&format!(
+                "{case},{},{},{},{},{},{},{},{}\r\n",
+                u8::from(state.answered()),
+                csv_text(run.member_id(at)),
+                csv_text(&run.nodes[segment.nodes[0]]),
+                csv_text(&run.nodes[segment.nodes[1]]),
+                forces[at],
+                u8::from(slack[at]),
+                told("length_m", at),
+                told("stretch", at)
+            ));
+        }
+    }
+    text
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::run::sample::{self, Names};
+
+    #[test]
+    fn equal_runs_give_equal_files() {
+        let base = std::env::temp_dir().join(format!("ropewalk-files-{}", std::process::id()));
+        let names = Names {
+            middle: "m",
+            rope: "=cmd()",
+            case: "../../escape",
+            title: "t",
+        };
+        for folder in ["a", "b"] {
+            let written = write(&sample::run_named(names), &base.join(folder)).unwrap();
+            assert_eq!(
+                written.files,
+                3 + 7 + 3 + 1 + 1,
+                "tables, sheets, plans, sections, page"
+            );
+        }
+        let mut listed: Vec<_> = fs::read_dir(base.join("a"))
+            .unwrap()
+            .map(|entry| entry.unwrap().file_name())
+            .collect();
+        listed.sort();
+        assert!(listed.iter().any(|name| name == "plan-_.._escape.svg"), "{listed:?}");
+        for name in listed {
+            let (one, two) = (
+                fs::read(base.join("a").join(&name)).unwrap(),
+                fs::read(base.join("b").join(&name)).unwrap(),
+            );
+            assert!(one == two, "{} differs", name.display());
+        }
+        let segments = fs::read_to_string(base.join("a/segments.csv")).unwrap();
+        assert!(segments.contains("\"'=cmd()\""), "{segments}");
+        fs::remove_dir_all(base).unwrap();
+    }
+}

@@ -1,0 +1,313 @@
+//! One page that holds everything: no network, no other file, readable on a phone and on paper.
+
+mod data;
+
+use ropewalk_api::ropewalk::v1;
+
+use crate::colour::Scale;
+use crate::draw;
+use crate::escape::{markup, script_json};
+use crate::run::{Run, State};
+use crate::sheet::{self, Sheet};
+
+const STYLE: &str = include_str!("report.css");
+const SCRIPT: &str = include_str!("report.js");
+
+/// The page.
+pub(crate) fn page(run: &Run, sheets: &[Sheet], scale: &Scale) -> String {
+    let mut body = String::new();
+    body.push_str(&head(run));
+    body.push_str(&cautions(run, "Cautions"));
+    body.push_str(&causes(run));
+    body.push_str(&shape(run, scale));
+    for sheet in sheets {
+        body.push_str(&sheet::html(sheet));
+    }
+    body.push_str(&convergence(run));
+    body.push_str(&drawings(run, scale));
+    body.push_str(&findings(run));
+    body.push_str(&origin(run));
+    body.push_str(&cautions(run, "Cautions, once more"));
+    format!(
+        "<!doctype html>\n<html lang=\"en\">\n<head>\n<meta charset=\"utf-8\">\n\
+         <meta name=\"viewport\" content=\"width=device-width, initial-scale=1\">\n\
+         <meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; style-src 'unsafe-inline'; \
+         script-src 'unsafe-inline'; img-src data:\">\n\
+         <title>{}: {}</title>\n<style>\n{STYLE}</style>\n</head>\n<body>\n{body}\
+         <script type=\"application/json\" id=\"run-data\">{}</script>\n<script>\n{SCRIPT}</script>\n</body>\n</html>\n",
+        markup(run.title()),
+        sheet::verdict_word(run.summary.verdict()),
+        script_json(&data::data(run, scale))
+    )
+}
+
+fn head(run: &Run) -> String {
+    let verdict = run.summary.verdict();
+    let class = match verdict {
+        v1::Verdict::Passes => "good",
+        v1::Verdict::NotJudged => "open",
+        v1::Verdict::Exceeds => "bad",
+        v1::Verdict::NoAnswer | v1::Verdict::Unspecified => "gone",
+    };
+    let share = |share: &Option<v1::Share>, of: &str| {
+        let share = share.unwrap_or_default();
+        format!(
+            "<div><dt>{of}</dt><dd>{} <small>of {}</small></dd></div>",
+            share.count, share.of
+        )
+    };
+    let summary = &run.summary;
+    let sizes = run.started.sizes.unwrap_or_default();
+    let note = if run.brief.note.is_empty() {
+        String::new()
+    } else {
+        format!("<p class=\"note\">{}</p>", markup(&run.brief.note))
+    };
+    format!(
+        "<header>\n<p class=\"over\">{}</p>\n<h1>{}</h1>\n{note}\n\
+         <div class=\"verdict {class}\"><strong>{}</strong><span>{}</span></div>\n\
+         <dl class=\"facts\">{}{}{}{}<div><dt>nodes</dt><dd>{}</dd></div><div><dt>segments</dt><dd>{}</dd></div></dl>\n\
+         <p class=\"audit\">{}</p>\n</header>\n",
+        markup(&run.brief.id),
+        markup(run.title()),
+        sheet::verdict_word(verdict),
+        markup(&sheet::why(run)),
+        share(&summary.answered, "states answered"),
+        share(&summary.audited, "audited"),
+        share(&summary.judged, "judged"),
+        share(&summary.passes, "pass"),
+        sizes.nodes,
+        sizes.segments,
+        markup(&sheet::audit_line(run))
+    )
+}
+
+fn cautions(run: &Run, title: &str) -> String {
+    let items: String = run
+        .summary
+        .cautions
+        .iter()
+        .map(|caution| format!("<li>{}</li>", markup(caution)))
+        .collect();
+    format!("<aside class=\"cautions\"><h2>{title}</h2><ul>{items}</ul></aside>\n")
+}
+
+fn causes(run: &Run) -> String {
+    let causes = sheet::causes(run);
+    if causes.is_empty() {
+        return String::new();
+    }
+    let items: String = causes
+        .iter()
+        .map(|cause| {
+            let culprit = if cause.culprit.is_empty() {
+                &cause.reason
+            } else {
+                &cause.culprit
+            };
+            let cure = if cause.cure.is_empty() {
+                String::new()
+            } else {
+                format!("<br><em>Try:</em> {}", markup(&cause.cure))
+            };
+            format!(
+                "<li><strong>{}</strong> {}{cure}<br><small>in {}</small></li>",
+                markup(culprit),
+                markup(&cause.message),
+                markup(&cause.cases.join(", "))
+            )
+        })
+        .collect();
+    format!("<section class=\"causes\"><h2>Without an answer</h2><ol>{items}</ol></section>\n")
+}
+
+fn shape(run: &Run, scale: &Scale) -> String {
+    if run
+        .reference()
+        .is_none_or(|state| state.vectors("position_m").is_none())
+    {
+        return "<section><h2>Shape</h2><p class=\"note\">No state was found, so there is nothing to show.</p></section>\n".to_owned();
+    }
+    let ordered = sheet::by_need(run);
+    let shown: Vec<&State> = run
+        .reference()
+        .into_iter()
+        .chain(ordered.into_iter().filter(|state| state.id != "reference"))
+        .collect();
+    let options: String = shown
+        .iter()
+        .filter_map(|state| {
+            let position = run.states.iter().position(|other| other.id == state.id)?;
+            let told = match state.summary.worst_ratio {
+                _ if !state.answered() => " (no answer)".to_owned(),
+                Some(ratio) => format!(" ({} %)", crate::number::percent(ratio)),
+                None => String::new(),
+            };
+            Some(format!(
+                "<option value=\"{position}\">{}{told}</option>",
+                markup(&state.id)
+            ))
+        })
+        .collect();
+    let ticks: String = scale
+        .ticks()
+        .iter()
+        .map(|(tick, text)| format!("<i style=\"left:{:.2}%\">{text}</i>", scale.share(tick * 1e3) * 100.0))
+        .collect();
+    let stops: Vec<String> = (0..=16).map(|step| crate::colour::at(f64::from(step) / 16.0)).collect();
+    let kind = if scale.logarithmic {
+        "tension, kN, log scale"
+    } else {
+        "tension, kN"
+    };
+    format!(
+        "<section id=\"shape\"><h2>Shape</h2>\n<div class=\"tools\">\
+         <label>state <select id=\"state\">{options}</select></label>\
+         <label>movements <select id=\"times\"><option>1</option><option>2</option><option>5</option><option>10</option>\
+         <option>20</option></select> times</label>\
+         <span class=\"views\"><button type=\"button\" data-view=\"askew\">askew</button><button type=\"button\" data-view=\"plan\">plan</button>\
+         <button type=\"button\" data-view=\"x\">along x</button><button type=\"button\" data-view=\"y\">along y</button></span>\
+         <label><input type=\"checkbox\" id=\"pulls\" checked> anchor pulls</label></div>\n\
+         <p id=\"acting\" class=\"note\"></p>\n\
+         <div class=\"stage\"><canvas id=\"net\" tabindex=\"0\" aria-label=\"Shape of the net in space. Drag or use the arrow keys to turn it, plus and minus to zoom.\"></canvas>\
+         <output id=\"told\"></output></div>\n\
+         <div class=\"legend\"><span>{kind}</span><div class=\"bar\" style=\"background:linear-gradient(to right,{})\"></div><div class=\"ticks\">{ticks}</div></div>\n\
+         <p class=\"note key\"><span class=\"slack\"></span> slack <span class=\"strut\"></span> strut <span class=\"held\"></span> support \
+         <span class=\"before\"></span> reference state. Drag to turn, two fingers or wheel to zoom, shift and drag to move; \
+         arrow keys, + and − do the same. Point at a rope for its numbers.</p>\n</section>\n",
+        stops.join(",")
+    )
+}
+
+fn convergence(run: &Run) -> String {
+    match draw::convergence(run) {
+        None => String::new(),
+        Some(plot) => format!(
+            "<section><h2>Convergence</h2><p class=\"note\">Largest out-of-balance force (N, log scale) over iterations.</p>\
+             <div class=\"wide\">{plot}</div></section>\n"
+        ),
+    }
+}
+
+fn drawings(run: &Run, scale: &Scale) -> String {
+    let mut text = String::new();
+    let worst = sheet::by_need(run)
+        .into_iter()
+        .find(|state| state.answered() && state.id != "reference");
+    for state in run.reference().into_iter().chain(worst) {
+        if let Some(plan) = draw::plan(run, state, scale) {
+            text.push_str(&format!("<div class=\"wide\">{plan}</div>\n"));
+        }
+    }
+    if let Some(sections) = draw::sections(run) {
+        text.push_str(&format!("<div class=\"wide\">{sections}</div>\n"));
+    }
+    if text.is_empty() {
+        return text;
+    }
+    format!(
+        "<section class=\"drawings\"><h2>Drawings</h2><p class=\"note\">Plans of all states lie beside this page.</p>\n{text}</section>\n"
+    )
+}
+
+fn findings(run: &Run) -> String {
+    if run.findings.is_empty() {
+        return String::new();
+    }
+    let items: String = run
+        .findings
+        .iter()
+        .take(200)
+        .map(|finding| {
+            let place = [&finding.case, &finding.path, &finding.id]
+                .into_iter()
+                .filter(|part| !part.is_empty());
+            let place: Vec<&str> = place.map(String::as_str).collect();
+            let cure = if finding.cure.is_empty() {
+                String::new()
+            } else {
+                format!(" <em>{}</em>", markup(&finding.cure))
+            };
+            format!(
+                "<li><small>{}</small> {}{cure}</li>",
+                markup(&place.join(" · ")),
+                markup(&finding.message)
+            )
+        })
+        .collect();
+    format!("<section><h2>Findings</h2><ul>{items}</ul></section>\n")
+}
+
+fn origin(run: &Run) -> String {
+    let engine = run.started.engine.clone().unwrap_or_default();
+    let settings = run.started.settings.unwrap_or_default();
+    let sizes = run.started.sizes.unwrap_or_default();
+    let steps = if settings.load_steps == 0 {
+        "full load first".to_owned()
+    } else {
+        settings.load_steps.to_string()
+    };
+    let rows = [
+        ("brief", run.brief.id.clone()),
+        ("digest of the brief", run.started.digest.clone()),
+        (
+            "lengths",
+            if run.started.frozen {
+                "fixed, from a frozen brief"
+            } else {
+                "found by this run"
+            }
+            .to_owned(),
+        ),
+        ("engine", format!("{}, contract {}", engine.version, engine.contract)),
+        ("instruction set", engine.instruction_set),
+        ("load steps", steps),
+        ("tolerance", format!("{:e}", settings.tolerance)),
+        ("iterations allowed", settings.max_iterations.to_string()),
+        ("gravity (m/s²)", settings.gravity_m_per_s2.to_string()),
+        ("unknown displacements", sizes.unknowns.to_string()),
+    ];
+    let rows: String = rows
+        .iter()
+        .map(|(name, value)| format!("<tr><th scope=\"row\">{name}</th><td>{}</td></tr>", markup(value)))
+        .collect();
+    format!(
+        "<section id=\"origin\"><h2>Where this comes from</h2><div class=\"wide\"><table class=\"pairs\">{rows}</table></div></section>\n"
+    )
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::run::sample::{self, Names};
+
+    fn page_of(run: &Run) -> String {
+        let scale = Scale::over([14e3, 25e3]);
+        page(run, &[sheet::checks(run), sheet::ropes(run), sheet::cases(run)], &scale)
+    }
+
+    #[test]
+    fn ids_cannot_write_on_the_page() {
+        let run = sample::run_named(Names {
+            middle: "m</script><script>alert(1)</script>",
+            rope: "\"><img src=x onerror=alert(1)>",
+            case: "<b>'c'</b>",
+            title: "<script>alert(2)</script>",
+        });
+        let page = page_of(&run);
+        assert_eq!(page.matches("<script").count(), 2, "only the page's own two");
+        assert_eq!(page.matches("</script").count(), 2);
+        assert!(!page.contains("<img") && !page.contains("<b>"));
+    }
+
+    #[test]
+    fn the_page_needs_nothing_else_and_shows_the_cautions_twice() {
+        let page = page_of(&sample::run());
+        assert_eq!(page.matches("Ropewalk is an aid.").count(), 2);
+        let page = page.replace("http://www.w3.org/2000/svg", "");
+        for outside in ["http:", "https:", "src=", "@import", "url("] {
+            assert!(!page.contains(outside), "{outside}");
+        }
+        assert!(page.contains(&"00".repeat(32)));
+    }
+}

@@ -1,0 +1,311 @@
+//! Puts the events of a stream together and refuses a stream that breaks the contract.
+
+use std::collections::{BTreeMap, HashMap};
+
+use ropewalk_api::ropewalk::v1;
+use ropewalk_api::ropewalk::v1::run_response::Event;
+
+use super::{Column, End, Member, Run, Segment, State};
+
+/// A stream that does not keep to the contract.
+#[derive(Clone, Debug, PartialEq, thiserror::Error)]
+#[error("the engine's answer does not keep to the contract: {0}")]
+pub(crate) struct Oddity(String);
+
+fn odd(what: impl Into<String>) -> Oddity {
+    Oddity(what.into())
+}
+
+#[derive(Debug, Default)]
+struct Table {
+    total: usize,
+    ids: Vec<String>,
+    from_nodes: Vec<u32>,
+    to_nodes: Vec<u32>,
+    segments: Vec<u32>,
+}
+
+/// Takes events one by one.
+#[derive(Debug, Default)]
+pub(crate) struct Collector {
+    started: Option<v1::Started>,
+    tables: BTreeMap<i32, Table>,
+    columns: BTreeMap<String, BTreeMap<String, (Column, usize)>>,
+    begun: Vec<v1::CaseBegin>,
+    ended: Vec<v1::CaseSummary>,
+    findings: Vec<v1::Finding>,
+    timing: Option<v1::Timing>,
+    summary: Option<v1::Summary>,
+}
+
+impl Collector {
+    /// States that are closed so far.
+    pub(crate) fn closed(&self) -> &[v1::CaseSummary] {
+        &self.ended
+    }
+
+    /// Takes an event.
+    ///
+    /// # Errors
+    /// [`Oddity`] if it does not fit what came before.
+    pub(crate) fn take(&mut self, event: Event) -> Result<(), Oddity> {
+        if self.summary.is_some() {
+            return Err(odd("events after the summary"));
+        }
+        match event {
+            Event::Started(started) => self.started = Some(started),
+            Event::Ids(part) => self.take_ids(part)?,
+            Event::Columns(part) => self.take_columns(part)?,
+            Event::CaseBegin(begin) => self.begun.push(begin),
+            Event::CaseSummary(end) => {
+                if self.begun.last().is_none_or(|begin| begin.case != end.case) {
+                    return Err(odd(format!("\"{}\" ends without a beginning", end.case)));
+                }
+                self.ended.push(end);
+            }
+            Event::Finding(finding) => self.findings.push(finding),
+            Event::Timing(timing) => self.timing = Some(timing),
+            Event::Summary(summary) => self.summary = Some(summary),
+            Event::Progress(_) => {}
+        }
+        Ok(())
+    }
+
+    fn take_ids(&mut self, part: v1::IdTable) -> Result<(), Oddity> {
+        let table = self.tables.entry(part.over).or_default();
+        if size(part.offset) != table.ids.len() {
+            return Err(odd(format!("a table of ids has a gap at {}", part.offset)));
+        }
+        table.total = size(part.total);
+        table.ids.extend(part.ids);
+        table.from_nodes.extend(part.from_nodes);
+        table.to_nodes.extend(part.to_nodes);
+        table.segments.extend(part.segments);
+        Ok(())
+    }
+
+    fn take_columns(&mut self, part: v1::Columns) -> Result<(), Oddity> {
+        let over = part.over();
+        let columns = self.columns.entry(part.case).or_default();
+        let (column, total) = columns.entry(part.name.clone()).or_insert_with(|| {
+            let column = Column {
+                unit: part.unit,
+                over,
+                components: size(part.components).max(1),
+                baseline: part.baseline,
+                values: Vec::new(),
+            };
+            (column, size(part.total))
+        });
+        if size(part.offset) != column.values.len() {
+            return Err(odd(format!("array \"{}\" has a gap at {}", part.name, part.offset)));
+        }
+        column.values.extend(part.values);
+        if column.values.len() > *total {
+            return Err(odd(format!("array \"{}\" is longer than announced", part.name)));
+        }
+        Ok(())
+    }
+
+    /// The run.
+    ///
+    /// # Errors
+    /// [`Oddity`] if something is missing.
+    pub(crate) fn finish(mut self, brief: v1::Brief) -> Result<Run, Oddity> {
+        let summary = self
+            .summary
+            .take()
+            .ok_or_else(|| odd("the stream ended without a summary"))?;
+        let started = self
+            .started
+            .take()
+            .ok_or_else(|| odd("the stream did not begin with its head"))?;
+        for table in self.tables.values() {
+            if table.ids.len() != table.total {
+                return Err(odd(format!("{} of {} ids in a table", table.ids.len(), table.total)));
+            }
+        }
+        let mut run = Run {
+            brief,
+            started,
+            nodes: self.ids(v1::Range::Node),
+            cables: self.ids(v1::Range::Cable),
+            struts: self.ids(v1::Range::Strut),
+            segments: Vec::new(),
+            supports: Vec::new(),
+            ends: Vec::new(),
+            case_ids: self.ids(v1::Range::Case),
+            states: Vec::new(),
+            envelope: BTreeMap::new(),
+            findings: std::mem::take(&mut self.findings),
+            summary,
+            timing: self.timing.take(),
+        };
+        run.segments = self.segments(&run)?;
+        run.supports = self.supports(&run)?;
+        run.ends = self.ends(&run)?;
+        run.envelope = self.checked_columns("envelope", &run)?;
+        let ended = std::mem::take(&mut self.ended);
+        for end in ended {
+            let begin = self
+                .begun
+                .iter()
+                .find(|begin| begin.case == end.case)
+                .expect("checked when it ended");
+            let (in_words, sets) = (begin.in_words.clone(), begin.sets.clone());
+            let columns = self.checked_columns(&end.case, &run)?;
+            run.states.push(State {
+                id: end.case.clone(),
+                in_words,
+                sets,
+                columns,
+                summary: end,
+            });
+        }
+        Ok(run)
+    }
+
+    fn ids(&self, over: v1::Range) -> Vec<String> {
+        self.tables
+            .get(&(over as i32))
+            .map(|table| table.ids.clone())
+            .unwrap_or_default()
+    }
+
+    fn segments(&self, run: &Run) -> Result<Vec<Segment>, Oddity> {
+        let Some(table) = self.tables.get(&(v1::Range::Segment as i32)) else {
+            return Ok(Vec::new());
+        };
+        let cables: HashMap<&str, usize> = run
+            .cables
+            .iter()
+            .enumerate()
+            .map(|(at, id)| (id.as_str(), at))
+            .collect();
+        let struts: HashMap<&str, usize> = run
+            .struts
+            .iter()
+            .enumerate()
+            .map(|(at, id)| (id.as_str(), at))
+            .collect();
+        if table.from_nodes.len() != table.ids.len() || table.to_nodes.len() != table.ids.len() {
+            return Err(odd("segments without their nodes"));
+        }
+        let mut segments = Vec::with_capacity(table.ids.len());
+        for (id, (from, to)) in table.ids.iter().zip(table.from_nodes.iter().zip(&table.to_nodes)) {
+            let cable = cables.get(id.as_str()).map(|&at| Member::Cable(at));
+            let member = cable.or_else(|| struts.get(id.as_str()).map(|&at| Member::Strut(at)));
+            let member = member.ok_or_else(|| odd(format!("a segment of \"{id}\", which is no cable or strut")))?;
+            let nodes = [size(*from), size(*to)];
+            if nodes.iter().any(|&node| node >= run.nodes.len()) {
+                return Err(odd(format!("a segment of \"{id}\" at a node that is not there")));
+            }
+            segments.push(Segment { member, nodes });
+        }
+        Ok(segments)
+    }
+
+    fn supports(&self, run: &Run) -> Result<Vec<usize>, Oddity> {
+        let places: HashMap<&str, usize> = run.nodes.iter().enumerate().map(|(at, id)| (id.as_str(), at)).collect();
+        let place = |id: &String| {
+            places
+                .get(id.as_str())
+                .copied()
+                .ok_or_else(|| odd(format!("support \"{id}\" is no node")))
+        };
+        self.ids(v1::Range::Support).iter().map(place).collect()
+    }
+
+    fn ends(&self, run: &Run) -> Result<Vec<End>, Oddity> {
+        let Some(table) = self.tables.get(&(v1::Range::End as i32)) else {
+            return Ok(Vec::new());
+        };
+        if table.from_nodes.len() != table.ids.len() || table.segments.len() != table.ids.len() {
+            return Err(odd("ends without their nodes"));
+        }
+        let pairs = table.from_nodes.iter().zip(&table.segments);
+        let ends: Vec<End> = pairs
+            .map(|(node, segment)| End {
+                node: size(*node),
+                segment: size(*segment),
+            })
+            .collect();
+        if ends
+            .iter()
+            .any(|end| end.node >= run.nodes.len() || end.segment >= run.segments.len())
+        {
+            return Err(odd("an end at a node that is not there"));
+        }
+        Ok(ends)
+    }
+
+    fn checked_columns(&mut self, case: &str, run: &Run) -> Result<BTreeMap<String, Column>, Oddity> {
+        let mut checked = BTreeMap::new();
+        for (name, (column, total)) in self.columns.remove(case).unwrap_or_default() {
+            let entries = match column.over {
+                v1::Range::Node => Some(run.nodes.len()),
+                v1::Range::Segment => Some(run.segments.len()),
+                v1::Range::RopeSegment => Some(run.n_rope_segments()),
+                v1::Range::Cable => Some(run.cables.len()),
+                v1::Range::Strut => Some(run.struts.len()),
+                v1::Range::Support => Some(run.supports.len()),
+                v1::Range::End => Some(run.ends.len()),
+                _ => None,
+            };
+            let fits = entries.is_none_or(|entries| column.values.len() == entries * column.components);
+            if column.values.len() != total || !fits {
+                return Err(odd(format!(
+                    "array \"{name}\" of \"{case}\" has {} numbers",
+                    column.values.len()
+                )));
+            }
+            checked.insert(name, column);
+        }
+        Ok(checked)
+    }
+}
+
+fn size(count: u32) -> usize {
+    usize::try_from(count).expect("this machine counts beyond 32 bits")
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::sample;
+    use super::*;
+
+    #[test]
+    fn a_stream_makes_a_run() {
+        let run = sample::run();
+        assert_eq!(run.nodes, ["A", "B", "C", "D", "m"]);
+        assert_eq!(run.segments.len(), 4);
+        assert_eq!(run.states.len(), 3);
+        assert_eq!(run.n_rope_segments(), 4);
+        assert_eq!(run.states[1].vectors("position_m").unwrap()[4], [4.5, 4.5, 1.477_41]);
+    }
+
+    #[test]
+    fn a_broken_stream_is_refused() {
+        let events = sample::events();
+        for (position, event) in events.iter().enumerate() {
+            if matches!(event, Event::Finding(_) | Event::Timing(_) | Event::Progress(_)) {
+                continue;
+            }
+            let mut collector = Collector::default();
+            let rest = events
+                .iter()
+                .enumerate()
+                .filter(|(other, _)| *other != position)
+                .map(|(_, event)| event.clone());
+            let taken: Result<(), Oddity> = rest.into_iter().try_for_each(|event| collector.take(event));
+            let outcome = taken.and_then(|()| collector.finish(sample::brief()));
+            let optional = matches!(event, Event::Columns(_))
+                || matches!(event, Event::Ids(table) if matches!(table.over(), v1::Range::Case | v1::Range::End))
+                || matches!(event, Event::CaseSummary(_));
+            assert!(
+                outcome.is_err() || optional,
+                "nobody misses event {position}: {event:?}"
+            );
+        }
+    }
+}

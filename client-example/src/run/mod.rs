@@ -1,0 +1,176 @@
+//! A run as it came over the wire, put together: the only thing that tables and drawings read.
+
+mod collect;
+mod member;
+
+use std::collections::BTreeMap;
+
+use ropewalk_api::ropewalk::v1;
+
+pub(crate) use collect::Collector;
+
+/// A result array.
+#[derive(Clone, Debug, PartialEq)]
+pub(crate) struct Column {
+    pub(crate) unit: String,
+    pub(crate) over: v1::Range,
+    pub(crate) components: usize,
+    pub(crate) baseline: String,
+    pub(crate) values: Vec<f64>,
+}
+
+/// The reference state or a case.
+#[derive(Clone, Debug)]
+pub(crate) struct State {
+    pub(crate) id: String,
+    pub(crate) in_words: String,
+    pub(crate) sets: Vec<String>,
+    pub(crate) columns: BTreeMap<String, Column>,
+    pub(crate) summary: v1::CaseSummary,
+}
+
+impl State {
+    /// Whether its arrays are an answer.
+    pub(crate) fn answered(&self) -> bool {
+        self.summary.outcome() == v1::CaseOutcome::Answered
+    }
+
+    /// A result array; none where the engine sent none.
+    pub(crate) fn numbers(&self, name: &str) -> Option<&[f64]> {
+        self.columns.get(name).map(|column| column.values.as_slice())
+    }
+
+    /// An array of vectors.
+    pub(crate) fn vectors(&self, name: &str) -> Option<Vec<[f64; 3]>> {
+        let column = self.columns.get(name).filter(|column| column.components == 3)?;
+        Some(
+            column
+                .values
+                .chunks_exact(3)
+                .map(|vector| [vector[0], vector[1], vector[2]])
+                .collect(),
+        )
+    }
+}
+
+/// What a segment belongs to, by position among the cables or struts.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) enum Member {
+    Cable(usize),
+    Strut(usize),
+}
+
+/// A straight piece between two nodes.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) struct Segment {
+    pub(crate) member: Member,
+    pub(crate) nodes: [usize; 2],
+}
+
+/// The end of a segment at a support.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) struct End {
+    pub(crate) node: usize,
+    pub(crate) segment: usize,
+}
+
+/// Everything that a run answered, beside the brief that asked for it.
+#[derive(Clone, Debug)]
+pub(crate) struct Run {
+    pub(crate) brief: v1::Brief,
+    pub(crate) started: v1::Started,
+    pub(crate) nodes: Vec<String>,
+    pub(crate) cables: Vec<String>,
+    pub(crate) struts: Vec<String>,
+    pub(crate) segments: Vec<Segment>,
+    /// Supported nodes, by position among the nodes.
+    pub(crate) supports: Vec<usize>,
+    pub(crate) ends: Vec<End>,
+    pub(crate) case_ids: Vec<String>,
+    /// The reference state, then the cases in the order in which they came.
+    pub(crate) states: Vec<State>,
+    pub(crate) envelope: BTreeMap<String, Column>,
+    pub(crate) findings: Vec<v1::Finding>,
+    pub(crate) summary: v1::Summary,
+    pub(crate) timing: Option<v1::Timing>,
+}
+
+impl Run {
+    /// The net of the brief.
+    pub(crate) fn net(&self) -> Option<&v1::Net> {
+        match &self.brief.net_source {
+            Some(v1::brief::NetSource::Net(net)) => Some(net),
+            _ => None,
+        }
+    }
+
+    /// The reference state, if the engine told of one.
+    pub(crate) fn reference(&self) -> Option<&State> {
+        self.states.iter().find(|state| state.id == "reference")
+    }
+
+    /// Rope segments: the first of all segments.
+    pub(crate) fn n_rope_segments(&self) -> usize {
+        self.segments
+            .iter()
+            .take_while(|segment| matches!(segment.member, Member::Cable(_)))
+            .count()
+    }
+
+    /// Axial force of every segment in a state (N), tension positive.
+    pub(crate) fn axial_forces(&self, state: &State) -> Option<Vec<f64>> {
+        let mut forces = state.numbers("tension_n")?.to_vec();
+        forces.extend_from_slice(state.numbers("axial_force_n").unwrap_or_default());
+        (forces.len() == self.segments.len()).then_some(forces)
+    }
+
+    /// Whether each segment is slack in a state; struts never are.
+    pub(crate) fn slack(&self, state: &State) -> Vec<bool> {
+        let mut slack: Vec<bool> = state
+            .numbers("slack")
+            .unwrap_or_default()
+            .iter()
+            .map(|flag| *flag != 0.0)
+            .collect();
+        slack.resize(self.segments.len(), false);
+        slack
+    }
+
+    /// Id of the cable or strut that a segment belongs to.
+    pub(crate) fn member_id(&self, segment: usize) -> &str {
+        match self.segments[segment].member {
+            Member::Cable(cable) => &self.cables[cable],
+            Member::Strut(strut) => &self.struts[strut],
+        }
+    }
+
+    /// Segments of a cable in path order, or that of a strut.
+    pub(crate) fn segments_of(&self, member: Member) -> Vec<usize> {
+        (0..self.segments.len())
+            .filter(|&segment| self.segments[segment].member == member)
+            .collect()
+    }
+
+    /// Segments of each cable in path order.
+    pub(crate) fn cable_segments(&self) -> Vec<Vec<usize>> {
+        let mut lists = vec![Vec::new(); self.cables.len()];
+        for (position, segment) in self.segments.iter().enumerate() {
+            if let Member::Cable(cable) = segment.member {
+                lists[cable].push(position);
+            }
+        }
+        lists
+    }
+
+    /// Title for people, or the id.
+    pub(crate) fn title(&self) -> &str {
+        if self.brief.title.is_empty() {
+            &self.brief.id
+        } else {
+            &self.brief.title
+        }
+    }
+}
+
+#[cfg(test)]
+pub(crate) mod sample;

@@ -1,0 +1,221 @@
+//! Sheets to decide by: each is made once and then written for the terminal, as CSV and as HTML, so that they agree.
+
+mod anchors;
+mod cases;
+mod checks;
+mod page;
+mod ropes;
+mod text;
+mod verdict;
+
+use crate::escape;
+use crate::number;
+use crate::run::Run;
+
+pub(crate) use anchors::{anchor_peaks, anchors};
+pub(crate) use cases::{by_need, cases, causes, sums, way_words};
+pub(crate) use checks::checks;
+pub(crate) use page::html;
+pub(crate) use ropes::{ropes, struts};
+pub(crate) use text::{terminal, wrap};
+pub(crate) use verdict::{audit_line, largest_difference, verdict_word, why};
+
+/// How a number is shown to eyes.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) enum Show {
+    /// Three digits.
+    Three,
+    /// A share, shown as a percentage without its sign.
+    Percent,
+    /// Whole degrees.
+    Whole,
+    /// One digit and a power of ten.
+    Order,
+}
+
+/// A cell.
+#[derive(Clone, Debug, PartialEq)]
+pub(crate) enum Cell {
+    Text(String),
+    Number(f64, Show),
+    Count(u64),
+    /// Nothing to tell.
+    Empty,
+}
+
+impl Cell {
+    pub(crate) fn text(text: impl Into<String>) -> Self {
+        let text = text.into();
+        if text.is_empty() { Self::Empty } else { Self::Text(text) }
+    }
+
+    pub(crate) fn three(number: f64) -> Self {
+        Self::Number(number, Show::Three)
+    }
+
+    pub(crate) fn percent(share: f64) -> Self {
+        Self::Number(share, Show::Percent)
+    }
+
+    pub(crate) fn maybe(cell: Option<Self>) -> Self {
+        cell.unwrap_or(Self::Empty)
+    }
+
+    /// For eyes.
+    pub(crate) fn shown(&self) -> String {
+        match self {
+            Self::Text(text) => text.clone(),
+            Self::Number(number, Show::Three) => number::three(*number),
+            Self::Number(number, Show::Percent) => number::percent(*number),
+            Self::Number(number, Show::Whole) => {
+                let text = format!("{number:.0}");
+                if text == "-0" { "0".to_owned() } else { text }
+            }
+            Self::Number(number, Show::Order) => number::order(*number),
+            Self::Count(count) => count.to_string(),
+            Self::Empty => "–".to_owned(),
+        }
+    }
+
+    /// For other programs: nine digits in the unit of the column.
+    pub(crate) fn csv(&self) -> String {
+        match self {
+            Self::Text(text) => escape::csv_text(text),
+            Self::Number(number, Show::Percent) => format!("{}", number::clean(number * 100.0)),
+            Self::Number(number, _) => format!("{}", number::clean(*number)),
+            Self::Count(count) => count.to_string(),
+            Self::Empty => String::new(),
+        }
+    }
+
+    /// Whether it stands at the right of its column.
+    pub(crate) fn is_number(&self) -> bool {
+        matches!(self, Self::Number(..) | Self::Count(_))
+    }
+}
+
+/// The head of a column.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) struct Head {
+    pub(crate) title: &'static str,
+    /// Unit; empty: none.
+    pub(crate) unit: &'static str,
+    /// Whether it stands on the terminal and on the page too, or only in the CSV file.
+    pub(crate) place: Place,
+}
+
+/// Where a column stands.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) enum Place {
+    Everywhere,
+    PageAndFile,
+    FileOnly,
+}
+
+pub(crate) const fn head(title: &'static str, unit: &'static str) -> Head {
+    Head {
+        title,
+        unit,
+        place: Place::Everywhere,
+    }
+}
+
+pub(crate) const fn page_head(title: &'static str, unit: &'static str) -> Head {
+    Head {
+        title,
+        unit,
+        place: Place::PageAndFile,
+    }
+}
+
+pub(crate) const fn file_head(title: &'static str, unit: &'static str) -> Head {
+    Head {
+        title,
+        unit,
+        place: Place::FileOnly,
+    }
+}
+
+/// How a row stands out.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) enum Mark {
+    Plain,
+    /// Passes.
+    Good,
+    /// Exceeds.
+    Bad,
+    /// Not judged.
+    Open,
+    /// No answer.
+    Gone,
+}
+
+impl Mark {
+    /// Name for style sheets.
+    pub(crate) fn name(self) -> &'static str {
+        match self {
+            Self::Plain => "plain",
+            Self::Good => "good",
+            Self::Bad => "bad",
+            Self::Open => "open",
+            Self::Gone => "gone",
+        }
+    }
+}
+
+/// A row.
+#[derive(Clone, Debug, PartialEq)]
+pub(crate) struct Row {
+    pub(crate) cells: Vec<Cell>,
+    pub(crate) mark: Mark,
+    /// Rows of a group follow each other; a terminal shows the first ones of each.
+    pub(crate) group: String,
+}
+
+/// A table with a title.
+#[derive(Clone, Debug, PartialEq)]
+pub(crate) struct Sheet {
+    /// Name of its CSV file, without ending.
+    pub(crate) file: &'static str,
+    pub(crate) title: &'static str,
+    pub(crate) heads: Vec<Head>,
+    pub(crate) rows: Vec<Row>,
+    /// What a reader must know about the columns.
+    pub(crate) note: &'static str,
+}
+
+impl Sheet {
+    /// The whole sheet as CSV (RFC 4180, UTF-8), units in the heads.
+    pub(crate) fn csv(&self) -> String {
+        let heads = self.heads.iter().map(|head| match head.unit {
+            "" => escape::csv_text(head.title),
+            unit => escape::csv_text(&format!("{} ({unit})", head.title)),
+        });
+        let mut text = heads.collect::<Vec<_>>().join(",");
+        text.push_str("\r\n");
+        for row in &self.rows {
+            text.push_str(&row.cells.iter().map(Cell::csv).collect::<Vec<_>>().join(","));
+            text.push_str("\r\n");
+        }
+        text
+    }
+}
+
+/// The case that a position in an envelope stands for.
+fn envelope_case(run: &Run, position: f64) -> &str {
+    // Positions are whole numbers from the engine; -1 stands for the reference state.
+    #[allow(
+        clippy::cast_possible_truncation,
+        clippy::cast_sign_loss,
+        reason = "checked to be a small whole number"
+    )]
+    let found = if position >= 0.0 {
+        run.case_ids.get(position as usize)
+    } else {
+        None
+    };
+    found.map_or("reference", String::as_str)
+}
+
+#[cfg(test)]
+mod tests;
