@@ -76,6 +76,13 @@ pub(crate) struct NetDraft<'a> {
     pub(crate) gravity: f64,
 }
 
+impl NodeDraft<'_> {
+    /// Whether the brief gives it a place, readable or not.
+    pub(crate) fn is_placed(&self) -> bool {
+        self.listed.is_some_and(|node| !node.xyz_m.is_empty())
+    }
+}
+
 impl<'a> NetDraft<'a> {
     /// Reads ids, paths and places.
     pub(crate) fn read(message: &'a v1::Net, findings: &mut Findings, resolved: &mut Resolved) -> Self {
@@ -151,8 +158,14 @@ impl<'a> NetDraft<'a> {
         declare("net.roles", &mut roles.map(|(i, r)| (r.id.as_str(), Thing::Role(i))));
         let groups = net.groups.iter().enumerate();
         declare("net.groups", &mut groups.map(|(i, g)| (g.id.as_str(), Thing::Group(i))));
-        declare("net.skins", &mut net.skins.iter().map(|s| (s.id.as_str(), Thing::NotServed)));
-        declare("net.zones", &mut net.zones.iter().map(|z| (z.id.as_str(), Thing::NotServed)));
+        declare(
+            "net.skins",
+            &mut net.skins.iter().map(|s| (s.id.as_str(), Thing::NotServed)),
+        );
+        declare(
+            "net.zones",
+            &mut net.zones.iter().map(|z| (z.id.as_str(), Thing::NotServed)),
+        );
     }
 
     fn read_nodes(&mut self, findings: &mut Findings) {
@@ -265,7 +278,10 @@ impl<'a> NetDraft<'a> {
                     reasons::TOO_FEW_NODES,
                     &at.field("nodes"),
                     &cable.id,
-                    format!("{owner} runs through {} nodes: a rope needs two at least", cable.nodes.len()),
+                    format!(
+                        "{owner} runs through {} nodes: a rope needs two at least",
+                        cable.nodes.len()
+                    ),
                     "name its nodes in order, from one end to the other",
                 )
                 .value(cable.nodes.len());
@@ -292,7 +308,10 @@ impl<'a> NetDraft<'a> {
                     reasons::WRONG_COUNT,
                     &at.field("nodes"),
                     &strut.id,
-                    format!("{owner} has {} nodes: a strut has two, foot and head", strut.nodes.len()),
+                    format!(
+                        "{owner} has {} nodes: a strut has two, foot and head",
+                        strut.nodes.len()
+                    ),
                     "name its foot and its head",
                 )
                 .value(strut.nodes.len());
@@ -361,7 +380,7 @@ impl<'a> NetDraft<'a> {
                         "name it in the path of a member, or take it out",
                     );
                 }
-                1 if node.at_end && node.position.is_none() && !supported => self.used_once(node, &at, findings),
+                1 if node.at_end && !node.is_placed() && !supported => self.used_once(node, &at, findings),
                 1 if node.listed.is_none() && forms[&look_alike(node.id)] > 1 => {
                     let others = self.nodes.iter().map(|n| n.id);
                     if let Some(other) = nearest(node.id, others) {
@@ -404,7 +423,12 @@ impl<'a> NetDraft<'a> {
         );
         let cure = meant.map_or_else(
             || "lead another member to it, or list it in net.nodes with xyz_m".to_owned(),
-            |meant| format!("write {} in the path, or list the node in net.nodes with xyz_m", Quoted(meant)),
+            |meant| {
+                format!(
+                    "write {} in the path, or list the node in net.nodes with xyz_m",
+                    Quoted(meant)
+                )
+            },
         );
         let mut text = String::new();
         let at = if node.listed.is_some() {
@@ -412,7 +436,9 @@ impl<'a> NetDraft<'a> {
         } else {
             self.place_in_path(node, &mut text)
         };
-        findings.error(reasons::NODE_USED_ONCE, &at, node.id, message, cure).value(node.id);
+        findings
+            .error(reasons::NODE_USED_ONCE, &at, node.id, message, cure)
+            .value(node.id);
     }
 
     fn check_places(&self, findings: &mut Findings) {
@@ -423,7 +449,13 @@ impl<'a> NetDraft<'a> {
         if far.len() > 1 && far.len() == placed {
             let positions = || far.iter().filter_map(|i| self.nodes[*i].position);
             let mean: Vector3<f64> = positions().sum::<Vector3<f64>>() / placed as f64;
-            let shift = mean.map(|c| if c.abs() > FARTHEST { (c / 100.0).round() * 100.0 } else { 0.0 });
+            let shift = mean.map(|c| {
+                if c.abs() > FARTHEST {
+                    (c / 100.0).round() * 100.0
+                } else {
+                    0.0
+                }
+            });
             findings
                 .error(
                     reasons::FAR_FROM_ORIGIN,
