@@ -3,10 +3,14 @@
 use std::collections::BTreeMap;
 use std::ops::ControlFlow;
 
+use nalgebra::Vector3;
 use ropewalk_api::ropewalk::v1;
+use ropewalk_numerics::brief::{CaseOutcome, Cause, Culprit, LikelyCause};
+use ropewalk_numerics::equilibrium::{SolveError, Termination};
+use ropewalk_numerics::model::NodeId;
 use ropewalk_service::decode::Work;
 use ropewalk_service::encode::{Tally, case, closing, engine_error, id_tables, reference, started};
-use serde_json::{Value, json};
+use serde_json::json;
 use v1::run_response::Event;
 
 use crate::briefs::{changed, first_net, found, terrace, work};
@@ -32,7 +36,10 @@ pub(crate) fn run(work: &Work, cases: &[usize]) -> Vec<Event> {
         }
     }
     messages.extend(closing(work, &plan, tally));
-    messages.into_iter().map(|message| message.event.expect("an event")).collect()
+    messages
+        .into_iter()
+        .map(|message| message.event.expect("an event"))
+        .collect()
 }
 
 /// The arrays of a run by case and name, put together from their parts.
@@ -87,7 +94,10 @@ fn the_minimal_draft_gives_its_worked_numbers() {
         assert!((tension - worked).abs() < 0.5, "{tension} instead of {worked}");
     }
     let moved = array("full-snow", "displacement_m");
-    assert_eq!((moved.baseline.as_str(), moved.unit.as_str(), moved.components), ("reference", "m", 3));
+    assert_eq!(
+        (moved.baseline.as_str(), moved.unit.as_str(), moved.components),
+        ("reference", "m", 3)
+    );
     assert!((moved.values[14] + 0.02259).abs() < 5e-6, "{}", moved.values[14]);
     assert_eq!(array("reference", "unstressed_length_m").values.len(), 4);
     let most = array("envelope", "tension_max_n");
@@ -114,7 +124,12 @@ fn the_minimal_draft_gives_its_worked_numbers() {
     assert_eq!(summary.verdict(), v1::Verdict::NotJudged);
     assert_eq!(summary.answered, Some(v1::Share { count: 2, of: 2 }));
     assert_eq!(summary.audited, Some(v1::Share { count: 2, of: 2 }));
-    assert!(summary.cautions.iter().any(|caution| caution.contains("licensed engineer")));
+    assert!(
+        summary
+            .cautions
+            .iter()
+            .any(|caution| caution.contains("licensed engineer"))
+    );
 }
 
 #[test]
@@ -143,7 +158,10 @@ fn events_come_in_order() {
         _ => None,
     });
     let begin = begin.expect("the case begins");
-    assert_eq!((begin.in_words.as_str(), begin.sets.as_slice()), ("1.35 self + 1.5 ice", ["winter".to_owned()].as_slice()));
+    assert_eq!(
+        (begin.in_words.as_str(), begin.sets.as_slice()),
+        ("1.35 self + 1.5 ice", ["winter".to_owned()].as_slice())
+    );
 }
 
 /// Arrays and tables have the lengths of what they range over.
@@ -189,7 +207,10 @@ fn checks_are_told_with_demand_limit_and_source() {
     let [safety, slackness, movement, pull] = &summary.checks[..] else {
         panic!("four checks");
     };
-    assert_eq!((safety.path.as_str(), safety.kind.as_str(), safety.unit.as_str()), ("checks[0]", "safety", "N"));
+    assert_eq!(
+        (safety.path.as_str(), safety.kind.as_str(), safety.unit.as_str()),
+        ("checks[0]", "safety", "N")
+    );
     assert_eq!((safety.judged, safety.not_judged), (4, 0));
     assert!((safety.ratio - safety.demand / safety.limit).abs() < 1e-12);
     assert!(safety.source.contains("breaking force"), "{}", safety.source);
@@ -197,7 +218,10 @@ fn checks_are_told_with_demand_limit_and_source() {
     assert_eq!((movement.judged, movement.unit.as_str()), (2, "m"));
     assert_eq!(pull.judged, 3);
     // The worst ratio of a case is that of the checks that read it.
-    let worst = closings(&events).iter().filter_map(|closing| closing.worst_ratio).fold(0.0, f64::max);
+    let worst = closings(&events)
+        .iter()
+        .filter_map(|closing| closing.worst_ratio)
+        .fold(0.0, f64::max);
     let over_all = summary.checks.iter().map(|check| check.ratio).fold(0.0, f64::max);
     assert!((worst - over_all).abs() < 1e-12, "{worst} and {over_all}");
     assert_eq!(summary.judged, Some(v1::Share { count: 11, of: 11 }));
@@ -212,42 +236,151 @@ fn checks_judge_what_was_run() {
     assert_eq!(summary.answered, Some(v1::Share { count: 2, of: 2 }));
     assert_eq!(summary.checks[1].governing_case, "summer");
     // The winter cases were not run, so the check that reads them judges nothing.
-    assert_eq!((summary.checks[0].judged, summary.checks[0].verdict()), (0, v1::Verdict::NotJudged));
+    assert_eq!(
+        (summary.checks[0].judged, summary.checks[0].verdict()),
+        (0, v1::Verdict::NotJudged)
+    );
 }
 
 #[test]
 fn a_case_that_nothing_holds_is_told_by_names() {
-    // A chain that hangs slack sideways: the load on q, which one slack rope holds, is held; a free pair is not.
-    let load = json!({"nodes": {"on": ["p"], "force_n": [0, 0, 1000]}});
-    let json = hanging(load);
-    let events = run(&work(&json), &[0]);
-    let closing = closings(&events)[1].clone();
-    assert_eq!(closing.outcome(), v1::CaseOutcome::Answered, "{closing:#?}");
-}
-
-/// A rope hung between A and C at mid-height, given by its length, with a load.
-fn hanging(load: Value) -> Value {
-    changed(
-        first_net(),
-        &[
-            ("/net/nodes/-", json!({"id": "p", "xyz_m": [1, 1, 1]})),
-            ("/net/cables/-", json!({"id": "hanger", "section": "r10", "nodes": ["A", "p"]})),
-            ("/prestress/rules/-", json!({"on": ["hanger"], "unstressed_length_m": 2})),
-            ("/actions/0/loads/0", load),
-        ],
-    )
+    let work = work(&terrace());
+    let (plan, found) = found(&work);
+    let error = SolveError::NotHeld {
+        nodes: vec![NodeId::new(7)],
+        direction: -Vector3::z(),
+        force: 5000.0,
+    };
+    let cause = Cause {
+        likely: LikelyCause::NotHeld {
+            nodes: vec!["m".to_owned()],
+            force: Vector3::new(0.0, 0.0, -5000.0),
+        },
+        worst: Vec::new(),
+        members: vec!["carrying".to_owned()],
+        last_good_load_factor: 0.0,
+    };
+    let (said, noted) = case(&work, &plan, &found, 0, &CaseOutcome::None { error, cause });
+    let closing = closing_of_case(&said);
+    assert_eq!(closing.outcome(), v1::CaseOutcome::NoEquilibrium);
+    let failure = closing.failure.expect("a failure");
+    assert_eq!(failure.reason, "NOT_HELD");
+    assert_eq!(
+        (failure.nodes, failure.members),
+        (vec!["m".to_owned()], vec!["carrying".to_owned()])
+    );
+    assert!(
+        failure
+            .message
+            .starts_with("case \"snowed\" has no equilibrium: nothing holds \"m\""),
+        "{}",
+        failure.message
+    );
+    assert!(!failure.cure.is_empty());
+    let columns = said
+        .iter()
+        .any(|message| matches!(message.event, Some(Event::Columns(_))));
+    assert!(!columns, "there is no state to tell");
+    let mut tally = Tally::new(&plan, &[0], &Ok(found));
+    tally.add(0, noted);
+    let summary = closing_of(&work, &plan, tally);
+    assert_eq!(summary.verdict(), v1::Verdict::NoAnswer);
+    assert_eq!(summary.findings[0].count, 1);
 }
 
 #[test]
-fn loose_nodes_are_doubted_by_name() {
-    let json = hanging(json!({"nodes": {"on": ["m"], "force_n": [0, 0, -5000]}}));
+fn a_case_that_stops_keeps_its_last_state_and_says_where() {
+    let work = work(&terrace());
+    let (plan, found) = found(&work);
+    let CaseOutcome::State {
+        mut solution, result, ..
+    } = plan.case(&found, 0, &mut |_| ControlFlow::Continue(()))
+    else {
+        panic!("a state");
+    };
+    solution.termination = Termination::StepTooSmall;
+    solution.load_factor = 0.62;
+    let cause = Cause {
+        likely: LikelyCause::Tips {
+            slack_cables: vec!["bracing".to_owned()],
+            load_sum: Vector3::new(0.0, 0.0, 12_400.0),
+        },
+        worst: vec![Culprit {
+            node: "m".to_owned(),
+            imbalance: 410.0,
+            moved: 1.84,
+        }],
+        members: vec!["bracing".to_owned()],
+        last_good_load_factor: 0.6,
+    };
+    let cause = Some(cause);
+    let (said, _) = case(
+        &work,
+        &plan,
+        &found,
+        0,
+        &CaseOutcome::State {
+            solution,
+            result,
+            cause,
+        },
+    );
+    let closing = closing_of_case(&said);
+    assert_eq!(
+        (closing.outcome(), closing.load_factor),
+        (v1::CaseOutcome::NotConverged, 0.62)
+    );
+    assert_eq!(closing.worst_ratio, None);
+    let failure = closing.failure.expect("a failure");
+    assert_eq!(failure.reason, "STEP_TOO_SMALL");
+    assert_eq!(
+        (failure.nodes, failure.members),
+        (vec!["m".to_owned()], vec!["bracing".to_owned()])
+    );
+    for words in [
+        "case \"snowed\" made no more headway at 62 % of its load",
+        "\"bracing\"",
+        "\"m\"",
+        "60 %",
+    ] {
+        assert!(failure.message.contains(words), "{words}: {}", failure.message);
+    }
+    assert!(
+        said.iter()
+            .any(|message| matches!(message.event, Some(Event::Columns(_))))
+    );
+}
+
+fn closing_of_case(said: &[v1::RunResponse]) -> v1::CaseSummary {
+    match said.last().and_then(|message| message.event.clone()) {
+        Some(Event::CaseSummary(closing)) => closing,
+        other => panic!("{other:?} closes the case"),
+    }
+}
+
+/// A rope with a free end hangs slack from A: nothing says where its end is.
+#[test]
+fn a_loose_end_is_told_by_name() {
+    let json = changed(
+        first_net(),
+        &[
+            ("/net/nodes/-", json!({"id": "p", "xyz_m": [1, 1, 1]})),
+            (
+                "/net/cables/-",
+                json!({"id": "hanger", "section": "r10", "nodes": ["A", "p"]}),
+            ),
+            (
+                "/prestress/rules/-",
+                json!({"on": ["hanger"], "unstressed_length_m": 4}),
+            ),
+        ],
+    );
     let work = work(&json);
-    let plan = ropewalk_numerics::brief::Plan::new(work.brief.clone());
-    // A rope that hangs free without a load has no shape to find: told by the node.
-    let found = plan.reference(&mut |_| ControlFlow::Continue(()));
-    let said = reference(&work, &plan, &found);
-    let words = format!("{said:?}");
-    assert!(words.contains("\\\"p\\\""), "{words}");
+    let events = run(&work, &[0]);
+    let closing = closings(&events)[0];
+    let failure = closing.failure.as_ref().expect("no reference state");
+    assert!(failure.nodes.contains(&"p".to_owned()), "{failure:#?}");
+    assert_eq!(summary(&events).verdict(), v1::Verdict::NoAnswer);
 }
 
 #[test]

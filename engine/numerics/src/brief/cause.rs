@@ -102,15 +102,30 @@ const MUCH_SLACK: f64 = 0.5;
 /// A limit of fewer factorisations is itself to blame: hard nets have taken 70.
 const FAIR_LIMIT: u32 = 100;
 
-/// Reads the cause from the last state. `result` tells that state under `carried`, the share of `case` that it carries.
-pub(super) fn cause_of_stop(
-    net: &Net,
-    reference: &ReferenceState,
-    case: &Case,
-    carried: &Case,
-    solution: &Solution,
-    result: &StateResult,
-) -> Cause {
+/// A solve that stopped short.
+pub(super) struct Stop<'a> {
+    pub(super) reference: &'a ReferenceState,
+    /// The case that was wanted.
+    pub(super) case: &'a Case,
+    /// The share of it that the last state carries.
+    pub(super) carried: &'a Case,
+    pub(super) solution: &'a Solution,
+    /// The last state under the share that it carries.
+    pub(super) result: &'a StateResult,
+    /// Factorisations that were allowed.
+    pub(super) limit: u32,
+}
+
+/// Reads the cause from the last state.
+pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
+    let Stop {
+        reference,
+        case,
+        carried,
+        solution,
+        result,
+        limit,
+    } = *stop;
     let worst = culprits(net, carried, result);
     let worst_node = worst.first().map(|(node, _)| *node);
     let slack_cables = |near: Option<NodeId>| -> Vec<String> {
@@ -147,9 +162,7 @@ pub(super) fn cause_of_stop(
             likely_factor: Some(odd.likely_factor),
         },
         _ if solution.termination == Termination::RunsAway => LikelyCause::RanAway,
-        _ if solution.termination == Termination::IterationLimit && solution.factorisations < FAIR_LIMIT => {
-            LikelyCause::OutOfIterations
-        }
+        _ if limit < FAIR_LIMIT && solution.factorisations >= limit => LikelyCause::OutOfIterations,
         _ if n_slack as f64 >= MUCH_SLACK * n_cable_segments as f64 => LikelyCause::MuchSlack {
             cables: slack_cables(worst_node),
             slack: n_slack,

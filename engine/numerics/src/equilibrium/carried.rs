@@ -75,7 +75,11 @@ impl Carried {
                 }
             }
         }
-        Termination::StepTooSmall
+        if run.is_spent() {
+            Termination::IterationLimit
+        } else {
+            Termination::StepTooSmall
+        }
     }
 }
 

@@ -73,10 +73,10 @@ pub fn solve(
         .into());
     }
     check_vectors("start position", start)?;
-    existence::check_loads_are_held(structure, &full)?;
+    let anchors = existence::check_loads_are_held(structure, &full)?;
 
     let level = |factor: f64| Loading::new(structure, case, reference_lengths, factor);
-    let mut run = Run::new(analysis, settings, start, observe);
+    let mut run = Run::new(analysis, settings, start, &anchors, observe);
     let mut steps = Vec::new();
     let mut positions = start.to_vec();
     let (termination, load_factor) = match settings.load_steps {

@@ -2,6 +2,10 @@
 #![allow(clippy::unwrap_used, clippy::print_stdout, reason = "tests")]
 
 mod audited;
+mod endings;
 mod families;
+mod held;
 mod nets;
+mod properties;
 mod saddle;
+mod struts;

@@ -5,11 +5,14 @@ use std::fmt;
 
 use ropewalk_api::ropewalk::v1;
 
+use super::names::nearest;
 use super::reasons;
 use crate::words::shown;
 
 /// Findings of one reason that are written out; further ones are only counted.
 const WRITTEN_OUT: usize = 1000;
+/// Comparisons of names in one brief: some seconds of a brief with nothing but slips of typing, at most.
+const COMPARISONS: usize = 500_000;
 
 #[derive(Clone, Copy, Debug)]
 enum Step<'a> {
@@ -91,10 +94,22 @@ impl Added<'_> {
 }
 
 /// Everything found so far.
-#[derive(Debug, Default)]
+#[derive(Debug)]
 pub(crate) struct Findings {
     list: Vec<v1::Finding>,
     counts: BTreeMap<(i32, &'static str), usize>,
+    /// Names that may still be compared in search of the one that was meant.
+    comparisons: usize,
+}
+
+impl Default for Findings {
+    fn default() -> Self {
+        Self {
+            list: Vec::new(),
+            counts: BTreeMap::new(),
+            comparisons: COMPARISONS,
+        }
+    }
 }
 
 impl Findings {
@@ -107,7 +122,14 @@ impl Findings {
         message: impl Into<String>,
         cure: impl Into<String>,
     ) -> Added<'_> {
-        self.add(v1::FindingSeverity::Error, reason, path, id, message.into(), cure.into())
+        self.add(
+            v1::FindingSeverity::Error,
+            reason,
+            path,
+            id,
+            message.into(),
+            cure.into(),
+        )
     }
 
     /// The work can be done, but somebody should look first.
@@ -119,7 +141,14 @@ impl Findings {
         message: impl Into<String>,
         cure: impl Into<String>,
     ) -> Added<'_> {
-        self.add(v1::FindingSeverity::Doubt, reason, path, id, message.into(), cure.into())
+        self.add(
+            v1::FindingSeverity::Doubt,
+            reason,
+            path,
+            id,
+            message.into(),
+            cure.into(),
+        )
     }
 
     /// Worth knowing.
@@ -160,6 +189,18 @@ impl Findings {
         Added(self.list.last_mut())
     }
 
+    /// The known name that was probably meant, as long as looking for it is worth the time.
+    pub(crate) fn nearest<'a>(&mut self, name: &str, known: impl Iterator<Item = &'a str>) -> Option<&'a str> {
+        let left = &mut self.comparisons;
+        nearest(
+            name,
+            known.take_while(|_| {
+                *left = left.saturating_sub(1);
+                *left > 0
+            }),
+        )
+    }
+
     /// Whether the work cannot be done.
     pub(crate) fn has_errors(&self) -> bool {
         let errors = i32::from(v1::FindingSeverity::Error);
@@ -185,7 +226,10 @@ impl Findings {
                     severity,
                     reason: reasons::MORE_OF_THE_SAME.to_owned(),
                     value: (count - WRITTEN_OUT).to_string(),
-                    message: format!("{} more findings with the reason {reason} are left out", count - WRITTEN_OUT),
+                    message: format!(
+                        "{} more findings with the reason {reason} are left out",
+                        count - WRITTEN_OUT
+                    ),
                     cure: "mend the ones shown first".to_owned(),
                     ..v1::Finding::default()
                 });

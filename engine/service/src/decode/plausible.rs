@@ -6,7 +6,7 @@ use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::shape::{Prestress, PrestressRule};
 
 use super::findings::{Findings, Path};
-use super::net::{MemberDraft, NetDraft};
+use super::net::NetDraft;
 use super::reasons;
 use super::sections::Sections;
 use crate::words::{Quoted, force, length, number, rounded};
@@ -33,27 +33,31 @@ pub(crate) fn sections(net: &NetDraft<'_>, findings: &mut Findings) {
     for (index, section) in net.message.sections.iter().enumerate() {
         let at = list.element(&section.id, index);
         let name = Quoted(&section.id);
-        let mut slip = |field: &'static str, value: Option<f64>, scale: f64, usual: (f64, f64), unit: &str, hint: String| {
-            let Some(value) = value.filter(|value| value.is_finite() && *value > 0.0) else {
-                return;
+        let mut slip =
+            |field: &'static str, value: Option<f64>, scale: f64, usual: (f64, f64), unit: &str, hint: String| {
+                let Some(value) = value.filter(|value| value.is_finite() && *value > 0.0) else {
+                    return;
+                };
+                if (usual.0..=usual.1).contains(&(value / scale)) {
+                    return;
+                }
+                let words = field.rsplit_once("_n").map_or(field, |_| field).replace('_', " ");
+                findings
+                    .doubt(
+                        reasons::UNIT_SLIP,
+                        &at.field(field),
+                        &section.id,
+                        format!("section {name}: {words} is {} {unit}. {hint}", number(value)),
+                        "check the unit, or accept this doubt",
+                    )
+                    .value(number(value));
             };
-            if (usual.0..=usual.1).contains(&(value / scale)) {
-                return;
-            }
-            let words = field.rsplit_once("_n").map_or(field, |_| field).replace('_', " ");
-            findings
-                .doubt(
-                    reasons::UNIT_SLIP,
-                    &at.field(field),
-                    &section.id,
-                    format!("section {name}: {words} is {} {unit}. {hint}", number(value)),
-                    "check the unit, or accept this doubt",
-                )
-                .value(number(value));
-        };
         let hint = "A rope has 1e8 to 3e11 Pa: was the value in MPa or GPa?".to_owned();
         slip("modulus_pa", section.modulus_pa, 1.0, MODULI, "Pa", hint);
-        let Some(diameter) = section.diameter_m.filter(|diameter| diameter.is_finite() && *diameter > 0.0) else {
+        let Some(diameter) = section
+            .diameter_m
+            .filter(|diameter| diameter.is_finite() && *diameter > 0.0)
+        else {
             continue;
         };
         let circle = PI / 4.0 * diameter * diameter;
@@ -63,11 +67,31 @@ pub(crate) fn sections(net: &NetDraft<'_>, findings: &mut Findings) {
         let hint = format!("{rope} has about {about} N: was the value in kN, or the diameter in mm?");
         slip("axial_stiffness_n", stiffness, circle, STIFFNESS_OF_CIRCLE, "N", hint);
         let least = force(STRENGTH_OF_CIRCLE.0 * circle);
-        let hint = format!("{rope} breaks at {least} to {}: was it in kN?", force(STRENGTH_OF_CIRCLE.1 * circle));
-        slip("breaking_force_n", section.breaking_force_n, circle, STRENGTH_OF_CIRCLE, "N", hint);
-        let (least, most) = (rounded(DENSITY_OF_CIRCLE.0 * circle, 2), rounded(DENSITY_OF_CIRCLE.1 * circle, 2));
+        let hint = format!(
+            "{rope} breaks at {least} to {}: was it in kN?",
+            force(STRENGTH_OF_CIRCLE.1 * circle)
+        );
+        slip(
+            "breaking_force_n",
+            section.breaking_force_n,
+            circle,
+            STRENGTH_OF_CIRCLE,
+            "N",
+            hint,
+        );
+        let (least, most) = (
+            rounded(DENSITY_OF_CIRCLE.0 * circle, 2),
+            rounded(DENSITY_OF_CIRCLE.1 * circle, 2),
+        );
         let hint = format!("{rope} has {least} to {most} kg/m: was it in kg per 100 m?");
-        slip("mass_kg_per_m", section.mass_kg_per_m, circle, DENSITY_OF_CIRCLE, "kg/m", hint);
+        slip(
+            "mass_kg_per_m",
+            section.mass_kg_per_m,
+            circle,
+            DENSITY_OF_CIRCLE,
+            "kg/m",
+            hint,
+        );
     }
 }
 
@@ -94,6 +118,7 @@ pub(crate) fn extent(net: &NetDraft<'_>, findings: &mut Findings) {
 
 /// Doubts about prestress against stiffness and breaking force: the worst segment of each section.
 pub(crate) fn prestress(net: &NetDraft<'_>, sections: &Sections<'_>, prestress: &Prestress, findings: &mut Findings) {
+    let lengths = mean_lengths(net);
     let n_sections = sections.list.len();
     let mut strained: Vec<Option<(f64, f64, usize)>> = vec![None; n_sections];
     let mut broken: Vec<Option<(f64, f64, usize)>> = vec![None; n_sections];
@@ -101,17 +126,17 @@ pub(crate) fn prestress(net: &NetDraft<'_>, sections: &Sections<'_>, prestress: 
         let (Some((index, _)), Some(section)) = (sections.of_segment[segment], sections.section(segment)) else {
             continue;
         };
-        let Some(tension) = wanted_tension(net, prestress, segment, rule, section.axial_stiffness) else {
+        let Some(tension) = wanted_tension(prestress, lengths[segment], rule, section.axial_stiffness) else {
             continue;
         };
         let strain = tension.abs() / section.axial_stiffness;
         if strain > strained[index].map_or(LARGEST_STRAIN, |worst| worst.0) {
             strained[index] = Some((strain, tension, segment));
         }
-        if let Some(breaking) = section.breaking_force.filter(|breaking| tension > *breaking) {
-            if tension / breaking > broken[index].map_or(1.0, |worst| worst.0) {
-                broken[index] = Some((tension / breaking, tension, segment));
-            }
+        if let Some(breaking) = section.breaking_force.filter(|breaking| tension > *breaking)
+            && tension / breaking > broken[index].map_or(1.0, |worst| worst.0)
+        {
+            broken[index] = Some((tension / breaking, tension, segment));
         }
     }
     let list = Path::root("net.sections");
@@ -163,38 +188,38 @@ pub(crate) fn prestress(net: &NetDraft<'_>, sections: &Sections<'_>, prestress: 
 /// The tension that a rule asks for (N), as far as it is known before the shape is: for a force density at least that of
 /// the mean segment of the straight line between known nodes.
 fn wanted_tension(
-    net: &NetDraft<'_>,
     prestress: &Prestress,
-    segment: usize,
+    length: Option<f64>,
     rule: &PrestressRule,
     axial_stiffness: f64,
 ) -> Option<f64> {
     match rule {
         PrestressRule::Tension(tension) => Some(*tension),
         PrestressRule::MeanTension(family) => prestress.mean_tensions.get(*family).copied(),
-        PrestressRule::ForceDensity(density) => Some(density * mean_length(net, segment)?),
+        PrestressRule::ForceDensity(density) => Some(density * length?),
         PrestressRule::UnstressedLength(unstressed) => {
-            let strain = net.given_length(segment)? / unstressed - 1.0;
+            let strain = length? / unstressed - 1.0;
             Some(axial_stiffness * strain.max(0.0))
         }
         PrestressRule::Balance => None,
     }
 }
 
-fn mean_length(net: &NetDraft<'_>, segment: usize) -> Option<f64> {
-    if let Some(length) = net.given_length(segment) {
-        return Some(length);
+/// Length of every segment: as given, or else the mean between the known nodes on both sides of it (m).
+fn mean_lengths(net: &NetDraft<'_>) -> Vec<Option<f64>> {
+    let mut lengths: Vec<Option<f64>> = (0..net.segments.len())
+        .map(|segment| net.given_length(segment))
+        .collect();
+    for cable in &net.cables {
+        let known = (0..cable.path.len()).filter_map(|place| Some((place, net.nodes[cable.path[place]].position?)));
+        let known: Vec<_> = known.collect();
+        for pair in known.windows(2) {
+            let [(before, from), (after, to)] = [pair[0], pair[1]];
+            let mean = (to - from).norm() / (after - before) as f64;
+            lengths[cable.first_segment + before..cable.first_segment + after].fill(Some(mean));
+        }
     }
-    let MemberDraft::Cable(cable) = net.segments[segment].1 else {
-        return None;
-    };
-    let draft = &net.cables[cable];
-    let here = segment - draft.first_segment;
-    let place = |position: &usize| net.nodes[draft.path[*position]].position;
-    let before = (0..=here).rev().find(|position| place(position).is_some())?;
-    let after = (here + 1..draft.path.len()).find(|position| place(position).is_some())?;
-    let chord = (place(&after)? - place(&before)?).norm();
-    Some(chord / (after - before) as f64)
+    lengths
 }
 
 /// Notes about data that no served part uses.
@@ -206,20 +231,38 @@ pub(crate) fn unused_data(brief: &v1::Brief, net: &NetDraft<'_>, findings: &mut 
                     reasons::DATA_NOT_USED,
                     &Path::root(path),
                     first,
-                    format!("{field} is kept, and no part that is served uses it ({} given)", ids.len()),
+                    format!(
+                        "{field} is kept, and no part that is served uses it ({} given)",
+                        ids.len()
+                    ),
                     "nothing to mend",
                 )
                 .value(ids.len());
         }
     };
     let message = net.message;
-    let stiff = message.sections.iter().filter(|section| section.bending_stiffness_n_m2.is_some());
-    told("net.sections", "bending_stiffness_n_m2", stiff.map(|section| section.id.as_str()).collect());
+    let stiff = message
+        .sections
+        .iter()
+        .filter(|section| section.bending_stiffness_n_m2.is_some());
+    told(
+        "net.sections",
+        "bending_stiffness_n_m2",
+        stiff.map(|section| section.id.as_str()).collect(),
+    );
     let taking_up = |fitting: &Option<v1::EndFitting>| fitting.as_ref().is_some_and(|f| f.take_up_m.is_some());
     let roles = message.roles.iter().filter(|role| taking_up(&role.end_fitting));
-    told("net.roles", "end_fitting.take_up_m", roles.map(|role| role.id.as_str()).collect());
+    told(
+        "net.roles",
+        "end_fitting.take_up_m",
+        roles.map(|role| role.id.as_str()).collect(),
+    );
     let cables = message.cables.iter().filter(|cable| taking_up(&cable.end_fitting));
-    told("net.cables", "end_fitting.take_up_m", cables.map(|cable| cable.id.as_str()).collect());
+    told(
+        "net.cables",
+        "end_fitting.take_up_m",
+        cables.map(|cable| cable.id.as_str()).collect(),
+    );
     let classed = brief.actions.iter().filter(|action| !action.class.is_empty());
     told("actions", "class", classed.map(|action| action.id.as_str()).collect());
 }

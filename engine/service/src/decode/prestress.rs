@@ -9,14 +9,13 @@ use super::actions::Actions;
 use super::findings::{Findings, Path};
 use super::names::Thing;
 use super::net::{MemberDraft, NetDraft};
-use super::numbers::{FORCE_DENSITY, MEAN_TENSION, Of, Quantity, SHARE_OF_BREAKING, TENSION, UNSTRESSED_LENGTH};
 use super::reasons;
 use super::resolved::Resolved;
 use super::scope::{MEMBERS, Narrowness, Scopes, tell_repeated};
 use super::sections::Sections;
-use super::stretch::{Stretch, stretch};
 use super::supports::Supports;
-use crate::words::{Quoted, number, quoted_list};
+use super::wish::{check_wish, in_words, read_part};
+use crate::words::{Quoted, quoted_list};
 
 /// A rule that covers a segment, and the family of segments that shares a mean tension under it.
 #[derive(Clone, Copy, Debug)]
@@ -49,7 +48,11 @@ pub(crate) fn read(
         under: Vec::new(),
     };
     let Some(prestress) = prestress.filter(|prestress| !prestress.rules.is_empty()) else {
-        let path = if prestress.is_some() { "prestress.rules" } else { "prestress" };
+        let path = if prestress.is_some() {
+            "prestress.rules"
+        } else {
+            "prestress"
+        };
         findings.error(
             reasons::MISSING,
             &Path::root(path),
@@ -86,7 +89,10 @@ fn read_under(prestress: &v1::Prestress, context: &Context<'_, '_>, findings: &m
                     reasons::UNDER_NOT_DEAD,
                     &at,
                     id,
-                    format!("action {} has a {kind}: the reference state is found under dead loads only", Quoted(id)),
+                    format!(
+                        "action {} has a {kind}: the reference state is found under dead loads only",
+                        Quoted(id)
+                    ),
                     "name only actions of forces and own weight here; put the rest into an action of its own",
                 )
                 .value(id);
@@ -106,7 +112,7 @@ fn read_hold(prestress: &v1::Prestress, context: &Context<'_, '_>, findings: &mu
             Some(Thing::Node(node)) => {
                 let why = if context.supports.of_node[node].is_some() {
                     "it is supported"
-                } else if context.net.nodes[node].position.is_none() {
+                } else if !context.net.nodes[node].is_placed() {
                     "it has no coordinates"
                 } else {
                     hold.push(node);
@@ -116,7 +122,10 @@ fn read_hold(prestress: &v1::Prestress, context: &Context<'_, '_>, findings: &mu
                     reasons::HOLD_NOT_FREE,
                     &at,
                     id,
-                    format!("node {} cannot be held in place while the shape is found: {why}", Quoted(id)),
+                    format!(
+                        "node {} cannot be held in place while the shape is found: {why}",
+                        Quoted(id)
+                    ),
                     "hold free nodes that are listed with xyz_m",
                 );
             }
@@ -191,7 +200,11 @@ impl<'m> Rules<'m> {
                     let draft = &net.cables[cable];
                     (draft.first_segment..draft.first_segment + draft.n_segments()).collect()
                 }
-                Thing::Strut(strut) => net.struts[strut].ends.map(|_| net.struts[strut].segment).into_iter().collect(),
+                Thing::Strut(strut) => net.struts[strut]
+                    .ends
+                    .map(|_| net.struts[strut].segment)
+                    .into_iter()
+                    .collect(),
                 _ => Vec::new(),
             };
             covered.push((segments, one.narrowness));
@@ -275,7 +288,11 @@ impl<'m> Rules<'m> {
             }
             told = Some(*member);
             let id = net.member_id(*member);
-            let partly = net.segments.iter().zip(&self.of_segment).any(|((_, of), wish)| of == member && wish.is_some());
+            let partly = net
+                .segments
+                .iter()
+                .zip(&self.of_segment)
+                .any(|((_, of), wish)| of == member && wish.is_some());
             let message = if partly {
                 format!(
                     "no prestress rule covers {} between {}",
@@ -342,7 +359,10 @@ impl<'m> Rules<'m> {
                     reasons::BALANCE_WITHOUT_HOLD,
                     &list.number(rule).field("balance"),
                     id,
-                    format!("{} is to balance nodes that stay in place, and no node does", Quoted(id)),
+                    format!(
+                        "{} is to balance nodes that stay in place, and no node does",
+                        Quoted(id)
+                    ),
                     "name these nodes in prestress.hold",
                 );
             }
@@ -362,7 +382,10 @@ impl<'m> Rules<'m> {
                 reasons::HOLD_WITHOUT_BALANCE,
                 &Path::root("prestress.hold"),
                 id,
-                format!("node {} is to stay in place, and no member at it is on balance", Quoted(id)),
+                format!(
+                    "node {} is to stay in place, and no member at it is on balance",
+                    Quoted(id)
+                ),
                 "put a guy or a strut at it on balance {}, or do not hold it",
             );
         }
@@ -376,7 +399,13 @@ impl<'m> Rules<'m> {
         if !all_lengths {
             return;
         }
-        let missing: Vec<&str> = context.net.nodes.iter().filter(|n| n.position.is_none()).map(|n| n.id).collect();
+        let missing: Vec<&str> = context
+            .net
+            .nodes
+            .iter()
+            .filter(|n| !n.is_placed())
+            .map(|n| n.id)
+            .collect();
         if !missing.is_empty() {
             findings
                 .error(
@@ -417,7 +446,10 @@ impl<'m> Rules<'m> {
                 Some(Rule::UnstressedLengthM(length)) => PrestressRule::UnstressedLength(length),
                 Some(Rule::ShareOfBreaking(share)) => {
                     let section = context.sections.of_segment[segment].map(|(section, _)| section);
-                    let force = context.sections.section(segment).and_then(|section| section.breaking_force);
+                    let force = context
+                        .sections
+                        .section(segment)
+                        .and_then(|section| section.breaking_force);
                     if let (Some(section), None, false) = (section, force, told[wish.rule]) {
                         told[wish.rule] = true;
                         let draft = &context.sections.list[section];
@@ -447,120 +479,4 @@ impl<'m> Rules<'m> {
 
 fn net_id<'a>(context: &Context<'_, 'a>, segment: usize) -> &'a str {
     context.net.member_id(context.net.segments[segment].1)
-}
-
-fn read_part(
-    part: &v1::PartOfCable,
-    net: &NetDraft<'_>,
-    at: &Path<'_>,
-    findings: &mut Findings,
-) -> Option<Vec<usize>> {
-    let field = at.field("cable");
-    let cable = match net.names.find(findings, &field, "cable", &part.cable)? {
-        Thing::Cable(cable) => cable,
-        other => {
-            findings.error(
-                reasons::WRONG_KIND,
-                &field,
-                &part.cable,
-                format!("{} is a {}, and only cables have parts", Quoted(&part.cable), other.kind()),
-                "name a cable",
-            );
-            return None;
-        }
-    };
-    let wanted = Stretch {
-        from: &part.from,
-        to: &part.to,
-        from_visit: part.from_visit,
-        to_visit: part.to_visit,
-    };
-    let positions = stretch(net, cable, &wanted, at, findings)?;
-    let first = net.cables[cable].first_segment;
-    Some(positions.into_iter().map(|position| first + position).collect())
-}
-
-/// Checks the number of a wish, and that it is one that its members can meet.
-fn check_wish(
-    rule: &v1::PrestressRule,
-    covered: &[(Vec<usize>, Narrowness)],
-    at: &Path<'_>,
-    net: &NetDraft<'_>,
-    findings: &mut Findings,
-) {
-    let of = Of::new("prestress rule", "");
-    let covered = || covered.iter().flat_map(|(segments, _)| segments).map(|segment| net.segments[*segment].1);
-    let (field, quantity, value): (&'static str, &Quantity, f64) = match rule.rule {
-        Some(Rule::ForceDensityNPerM(value)) => ("force_density_n_per_m", &FORCE_DENSITY, value),
-        Some(Rule::TensionN(value)) => ("tension_n", &TENSION, value),
-        Some(Rule::MeanTensionN(value)) => ("mean_tension_n", &MEAN_TENSION, value),
-        Some(Rule::UnstressedLengthM(value)) => ("unstressed_length_m", &UNSTRESSED_LENGTH, value),
-        Some(Rule::ShareOfBreaking(value)) => ("share_of_breaking", &SHARE_OF_BREAKING, value),
-        Some(Rule::Balance(_)) => return,
-        None => {
-            findings.error(
-                reasons::MISSING,
-                at,
-                "",
-                "this prestress rule says nothing about its members",
-                "give one of force_density_n_per_m, tension_n, mean_tension_n, unstressed_length_m, share_of_breaking, \
-                 balance {}",
-            );
-            return;
-        }
-    };
-    let field_at = at.field(field);
-    if findings.number(&field_at, of, quantity, value).is_none() {
-        return;
-    }
-    let signed = matches!(rule.rule, Some(Rule::ForceDensityNPerM(_) | Rule::TensionN(_)));
-    if signed && value == 0.0 {
-        findings
-            .error(
-                reasons::NOT_POSITIVE,
-                &field_at,
-                "",
-                "this prestress rule asks for no force at all: such a member holds nothing",
-                "give a tension, or the unstressed length of a rope that hangs slack",
-            )
-            .value(number(value));
-    }
-    if signed && value < 0.0 {
-        if let Some(MemberDraft::Cable(cable)) = covered().find(|member| matches!(member, MemberDraft::Cable(_))) {
-            let id = &net.cables[cable].message.id;
-            findings
-                .error(
-                    reasons::CABLE_PUSHES,
-                    &field_at,
-                    id,
-                    format!("cable {} is asked to push with {}: a rope only pulls", Quoted(id), number(value)),
-                    "give a positive value; only struts may have a negative one",
-                )
-                .value(number(value));
-        }
-    }
-    if let Some(Rule::MeanTensionN(_)) = rule.rule {
-        if let Some(MemberDraft::Strut(strut)) = covered().find(|member| matches!(member, MemberDraft::Strut(_))) {
-            let id = &net.struts[strut].message.id;
-            findings.error(
-                reasons::WRONG_KIND,
-                &field_at,
-                id,
-                format!("strut {} has one segment, and no mean over several", Quoted(id)),
-                "give tension_n for struts",
-            );
-        }
-    }
-}
-
-fn in_words(rule: &v1::PrestressRule) -> String {
-    match rule.rule {
-        Some(Rule::ForceDensityNPerM(value)) => format!("force density {} N/m", number(value)),
-        Some(Rule::TensionN(value)) => format!("tension {} N in every segment", number(value)),
-        Some(Rule::MeanTensionN(value)) => format!("mean tension {} N", number(value)),
-        Some(Rule::UnstressedLengthM(value)) => format!("unstressed length {} m of each reach", number(value)),
-        Some(Rule::ShareOfBreaking(value)) => format!("tension of {} of the breaking force", number(value)),
-        Some(Rule::Balance(_)) => "balance".to_owned(),
-        None => "nothing".to_owned(),
-    }
 }

@@ -1,6 +1,6 @@
 //! What a list called `on` covers.
 
-use std::collections::HashSet;
+use std::collections::{HashMap, HashSet};
 
 use ropewalk_api::ropewalk::v1;
 
@@ -138,7 +138,8 @@ impl Scopes {
             let of = at.field("of");
             tell_repeated(&group.of, &of, findings);
             for (number, id) in group.of.iter().enumerate() {
-                net.names.find(findings, &of.number(number), "member, node, role or group", id);
+                net.names
+                    .find(findings, &of.number(number), "member, node, role or group", id);
             }
             if group.of.is_empty() {
                 findings.doubt(
@@ -168,7 +169,7 @@ impl Scopes {
             covered: Vec::new(),
             complete: true,
         };
-        let mut seen: HashSet<Thing> = HashSet::new();
+        let mut seen: HashMap<Thing, usize> = HashMap::new();
         for (number, id) in on.iter().enumerate() {
             let at = field.number(number);
             let Some(thing) = net.names.find(findings, &at, "part of the net", id) else {
@@ -181,7 +182,13 @@ impl Scopes {
                 scope.complete = false;
                 let through = match thing {
                     Thing::Role(_) | Thing::Group(_) => {
-                        format!("{} {} covers {} {}", thing.kind(), Quoted(id), wrong.kind(), name(net, wrong))
+                        format!(
+                            "{} {} covers {} {}",
+                            thing.kind(),
+                            Quoted(id),
+                            wrong.kind(),
+                            name(net, wrong)
+                        )
                     }
                     _ => format!("{} is a {}", Quoted(id), thing.kind()),
                 };
@@ -216,7 +223,7 @@ impl Scopes {
         net: &NetDraft<'_>,
         thing: Thing,
         allowed: Allowed,
-        seen: &mut HashSet<Thing>,
+        seen: &mut HashMap<Thing, usize>,
         scope: &mut Scope,
     ) -> Option<Thing> {
         let narrowness = match thing {
@@ -250,10 +257,17 @@ impl Scopes {
             };
             if !fits {
                 wrong = wrong.or(Some(thing));
-            } else if seen.insert(thing) {
-                scope.covered.push(Covered { thing, narrowness });
-            } else if let Some(covered) = scope.covered.iter_mut().find(|covered| covered.thing == thing) {
-                covered.narrowness = covered.narrowness.max(narrowness);
+                continue;
+            }
+            match seen.get(&thing) {
+                Some(place) => {
+                    let known = &mut scope.covered[*place].narrowness;
+                    *known = narrowness.max(*known);
+                }
+                None => {
+                    seen.insert(thing, scope.covered.len());
+                    scope.covered.push(Covered { thing, narrowness });
+                }
             }
         }
         wrong

@@ -1,5 +1,7 @@
 //! Supports: rigid directions, springs, and groups of nodes held by a stiffness matrix.
 
+use std::collections::BTreeMap;
+
 use nalgebra::{DMatrix, Matrix3, Vector3};
 use ropewalk_numerics::model::{ElasticSupportGiven, NodeId};
 
@@ -98,7 +100,10 @@ impl Supports {
                 reasons::SUPPORT_HOLDS_NOTHING,
                 &at.field("free"),
                 node.id,
-                format!("node {} is supported, but every direction is released: nothing is held", Quoted(node.id)),
+                format!(
+                    "node {} is supported, but every direction is released: nothing is held",
+                    Quoted(node.id)
+                ),
                 "leave the support out, or release fewer directions",
             );
         }
@@ -209,7 +214,10 @@ impl Supports {
                     reasons::SUPPORT_CONTRADICTS,
                     at,
                     id,
-                    format!("node {} has a support of its own and stands in a support group", Quoted(id)),
+                    format!(
+                        "node {} has a support of its own and stands in a support group",
+                        Quoted(id)
+                    ),
                     "write support {} for it: the group's stiffness takes its place",
                 );
             }
@@ -230,17 +238,17 @@ impl Supports {
                 held[root(&mut part, index)] = true;
             }
         }
-        let mut told = vec![false; net.nodes.len()];
-        for (ends, member) in &net.segments {
-            let of = root(&mut part, ends[0]);
-            if held[of] || told[of] {
-                continue;
+        let mut nodes_of: BTreeMap<usize, Vec<&str>> = BTreeMap::new();
+        for (index, node) in net.nodes.iter().enumerate() {
+            let of = root(&mut part, index);
+            if !held[of] {
+                nodes_of.entry(of).or_default().push(node.id);
             }
-            told[of] = true;
-            let nodes: Vec<&str> = (0..net.nodes.len())
-                .filter(|node| root(&mut part, *node) == of)
-                .map(|node| net.nodes[node].id)
-                .collect();
+        }
+        for (ends, member) in &net.segments {
+            let Some(nodes) = nodes_of.remove(&root(&mut part, ends[0])) else {
+                continue;
+            };
             findings.error(
                 reasons::PART_NOT_HELD,
                 &Path::root("net.nodes"),
@@ -322,7 +330,9 @@ fn read_matrix(
     }
     let mut valid = true;
     for (position, value) in values.iter().enumerate() {
-        valid &= findings.number(&field.number(position), of, &MATRIX_STIFFNESS, *value).is_some();
+        valid &= findings
+            .number(&field.number(position), of, &MATRIX_STIFFNESS, *value)
+            .is_some();
     }
     if !valid {
         return None;

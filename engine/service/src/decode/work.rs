@@ -72,6 +72,10 @@ impl Work {
     ///
     /// # Errors
     /// A finding for the first name that is neither a set nor a case.
+    #[allow(
+        clippy::result_large_err,
+        reason = "the finding goes straight into the refusal, once a call"
+    )]
     pub fn select(&self, only: &[String]) -> Result<Vec<usize>, v1::Finding> {
         let cases = &self.brief.cases;
         if only.is_empty() {
@@ -115,7 +119,9 @@ impl Work {
     #[must_use]
     pub fn reference_in_words(&self) -> String {
         let under = &self.brief.prestress.under;
-        let actions = under.iter().map(|action| format!("1 {}", self.brief.actions[*action].name));
+        let actions = under
+            .iter()
+            .map(|action| format!("1 {}", self.brief.actions[*action].name));
         let words: Vec<String> = actions.collect();
         if words.is_empty() {
             "prestress alone".to_owned()

@@ -3,6 +3,7 @@
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::{Cause, LikelyCause};
 use ropewalk_numerics::equilibrium::{SolveError, Termination};
+use ropewalk_numerics::model::Net;
 use ropewalk_numerics::shape::ShapeError;
 
 use super::parts::first_ids;
@@ -36,7 +37,11 @@ pub(super) fn of_stop(case: &str, termination: Termination, load_factor: f64, ca
         Termination::RunsAway => ("RUNS_AWAY", "ran away from its place"),
         Termination::Cancelled => ("CANCELLED", "was stopped on request"),
     };
-    let mut message = format!("case {} {why} at {} % of its load", Quoted(case), rounded(100.0 * load_factor, 3));
+    let mut message = format!(
+        "case {} {why} at {} % of its load",
+        Quoted(case),
+        rounded(100.0 * load_factor, 3)
+    );
     let Some(cause) = cause else {
         return failure(reason, message, "run it again", &[""; 0], &[""; 0]);
     };
@@ -77,7 +82,10 @@ fn cure_of(likely: &LikelyCause) -> &'static str {
 
 /// The failure of our own code in a case.
 pub(super) fn of_engine(case: &str) -> v1::Failure {
-    let message = format!("the engine failed in case {}; other cases are not touched by it", Quoted(case));
+    let message = format!(
+        "the engine failed in case {}; other cases are not touched by it",
+        Quoted(case)
+    );
     failure(
         "ENGINE_ERROR",
         message,
@@ -88,7 +96,7 @@ pub(super) fn of_engine(case: &str) -> v1::Failure {
 }
 
 /// Why there is no reference state.
-pub(super) fn of_shape(error: &ShapeError) -> (v1::CaseOutcome, v1::Failure) {
+pub(super) fn of_shape(net: &Net, error: &ShapeError) -> (v1::CaseOutcome, v1::Failure) {
     let none: Vec<String> = Vec::new();
     let one = |id: &String| vec![id.clone()];
     let (reason, cure, nodes, members) = match error {
@@ -99,7 +107,12 @@ pub(super) fn of_shape(error: &ShapeError) -> (v1::CaseOutcome, v1::Failure) {
         ShapeError::HeldWithoutPosition { nodes } => {
             ("HOLD_NOT_FREE", "list these nodes with xyz_m", nodes.clone(), none)
         }
-        ShapeError::NotDead { .. } => ("UNDER_NOT_DEAD", "name dead loads only in prestress.under", none.clone(), none),
+        ShapeError::NotDead { .. } => (
+            "UNDER_NOT_DEAD",
+            "name dead loads only in prestress.under",
+            none.clone(),
+            none,
+        ),
         ShapeError::NotHeld { nodes } => (
             "NOT_HELD",
             "lead a member with prestress from there to a support",
@@ -140,7 +153,11 @@ pub(super) fn of_shape(error: &ShapeError) -> (v1::CaseOutcome, v1::Failure) {
             "TARGETS_UNMET",
             "take the nearest balanced set, drop one of the wishes, or leave some members to balance {}",
             left.iter().map(|left| left.node.clone()).collect(),
-            targets.iter().filter(|target| !target.met).map(|target| target.member.clone()).collect(),
+            targets
+                .iter()
+                .filter(|target| !target.met)
+                .map(|target| target.member.clone())
+                .collect(),
         ),
         ShapeError::NoLength { member, from, to } => (
             "NO_LENGTH",
@@ -166,6 +183,11 @@ pub(super) fn of_shape(error: &ShapeError) -> (v1::CaseOutcome, v1::Failure) {
             one(node),
             none,
         ),
+        ShapeError::BeyondReckoning { part, .. } => {
+            let is_node = net.nodes().iter().any(|node| node.name == *part);
+            let (nodes, members) = if is_node { (one(part), none) } else { (none, one(part)) };
+            ("BEYOND_RECKONING", "check the units of the part", nodes, members)
+        }
         ShapeError::Elastic { nodes, .. } => (
             "NO_EQUILIBRIUM",
             "check the unstressed lengths and what holds these nodes",

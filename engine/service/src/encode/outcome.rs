@@ -43,7 +43,7 @@ pub(super) fn reference_findings(
 ) -> Vec<v1::Finding> {
     match found {
         Ok(reference) => doubts::of_state(work, &plan.brief().net, REFERENCE, &reference.result),
-        Err(error) => vec![no_answer(REFERENCE, &failure::of_shape(error).1)],
+        Err(error) => vec![no_answer(REFERENCE, &failure::of_shape(&plan.brief().net, error).1)],
     }
 }
 
@@ -60,7 +60,7 @@ pub(super) fn reference_summary(plan: &Plan, found: &Result<ReferenceOutcome, Sh
             summary
         }
         Err(error) => {
-            let (outcome, failure) = failure::of_shape(error);
+            let (outcome, failure) = failure::of_shape(&plan.brief().net, error);
             v1::CaseSummary {
                 case: REFERENCE.to_owned(),
                 outcome: outcome.into(),
@@ -86,7 +86,11 @@ pub fn case(
     let mut findings = Vec::new();
     let digest = outcome.digest();
     let mut closing = match outcome {
-        CaseOutcome::State { solution, result, cause } => {
+        CaseOutcome::State {
+            solution,
+            result,
+            cause,
+        } => {
             messages.extend(state::arrays(net, name, result, &reference.state.unstressed_lengths));
             messages.extend(state::history(name, &solution.history));
             let mut closing = summary(net, name, result, reference);
@@ -101,7 +105,12 @@ pub fn case(
             } else {
                 closing.set_outcome(v1::CaseOutcome::NotConverged);
                 let cause = cause.as_ref();
-                closing.failure = Some(failure::of_stop(name, solution.termination, solution.load_factor, cause));
+                closing.failure = Some(failure::of_stop(
+                    name,
+                    solution.termination,
+                    solution.load_factor,
+                    cause,
+                ));
             }
             closing
         }
