@@ -37,3 +37,6 @@ pub mod equilibrium;
 pub mod load;
 pub mod model;
 pub mod shape;
+
+#[cfg(test)]
+mod test_nets;

@@ -1,1 +1,15 @@
-//! To come.
+//! All members together: numbering, pattern, out-of-balance forces, tangent.
+
+mod dofs;
+mod loading;
+mod pattern;
+mod residual;
+mod structure;
+mod tangent;
+
+pub use dofs::Dofs;
+pub(crate) use loading::check_vectors;
+pub use loading::{Loading, LoadingError};
+pub use pattern::Pattern;
+pub use residual::Response;
+pub use structure::Structure;

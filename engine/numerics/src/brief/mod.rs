@@ -1,7 +1,22 @@
 //! The roof: the whole work of a brief, planned and run.
 
+mod cause;
+mod estimate;
 mod given;
 mod outcome;
+mod plan;
+mod state;
+mod summary;
 
-pub use given::{Brief, CaseGiven, Check, CheckKind, Prestress, PrestressRule};
-pub use outcome::*;
+#[cfg(test)]
+mod tests;
+
+pub use cause::{Cause, Culprit, LikelyCause};
+pub use estimate::Estimate;
+pub use given::{Brief, CaseGiven};
+pub use outcome::{CaseOutcome, EndForce, ReferenceOutcome, StateResult, SupportForce, Task};
+pub use plan::Plan;
+pub use summary::{Caution, SetEnvelope, Summary};
+
+pub use crate::check::{Check, CheckKind, CheckResult, Verdict};
+pub use crate::shape::{Prestress, PrestressRule};

@@ -1,20 +1,14 @@
 //! What a run answers.
 
-use std::ops::ControlFlow;
-
 use nalgebra::Vector3;
 
-use super::Brief;
-use crate::equilibrium::{IterationReport, Solution, SolveError};
+use super::Cause;
+use crate::check::CaseDigest;
+use crate::equilibrium::audit::Audit;
+use crate::equilibrium::{Solution, SolveError, Termination};
 use crate::load::Case;
 use crate::model::{NodeId, ReferenceState, SegmentId};
-use crate::shape::{ShapeError, ShapeReport};
-
-/// A brief with what is worked out once for its net: numbering, pattern, symbolic factorisation.
-#[derive(Debug)]
-pub struct Plan {
-    brief: Brief,
-}
+use crate::shape::ShapeReport;
 
 /// Forces of a support on the net.
 #[derive(Clone, Debug, PartialEq)]
@@ -47,9 +41,9 @@ pub struct StateResult {
     pub displacements: Vec<Vector3<f64>>,
     /// Axial force of every segment (N).
     pub axial_forces: Vec<f64>,
-    /// Stretch `l/a` of every segment.
+    /// Stretch `l/a` of every segment; zero where it is taken out.
     pub stretches: Vec<f64>,
-    /// Whether a cable segment is slack.
+    /// Whether a cable segment is slack: `l ≤ a`, or taken out.
     pub slack: Vec<bool>,
     /// Current length of every segment (m).
     pub lengths: Vec<f64>,
@@ -66,7 +60,26 @@ pub struct StateResult {
     /// Nodes whose place is not determined, because only slack ropes lead to them.
     pub loose_nodes: Vec<NodeId>,
     /// What the independent routine found.
-    pub audit: crate::equilibrium::audit::Audit,
+    pub audit: Audit,
+}
+
+impl StateResult {
+    /// The little that checks and envelopes need.
+    #[must_use]
+    pub fn digest(&self, answered: bool) -> CaseDigest {
+        let mut support_forces = vec![None; self.positions.len()];
+        for support in &self.support_forces {
+            support_forces[support.node.index()] = Some(support.force.norm());
+        }
+        CaseDigest {
+            answered,
+            audited: answered && self.audit.passed,
+            axial_forces: self.axial_forces.clone(),
+            movements: self.displacements.iter().map(|d| d.norm()).collect(),
+            support_forces,
+            loose_nodes: self.loose_nodes.clone(),
+        }
+    }
 }
 
 /// What came of the reference state.
@@ -91,51 +104,40 @@ pub enum CaseOutcome {
         solution: Solution,
         /// Everything told of the state.
         result: Box<StateResult>,
+        /// Why it did not converge; `None` if it did, or was cancelled.
+        cause: Option<Cause>,
     },
     /// No state can be given.
-    None(SolveError),
+    None {
+        /// What the solver says.
+        error: SolveError,
+        /// The same in the client's ids.
+        cause: Cause,
+    },
 }
 
-/// Which part of the work reports.
+impl CaseOutcome {
+    /// Whether there is a state within tolerance.
+    #[must_use]
+    pub fn is_answered(&self) -> bool {
+        matches!(self, Self::State { solution, .. } if solution.termination == Termination::Converged)
+    }
+
+    /// The little that checks and envelopes need.
+    #[must_use]
+    pub fn digest(&self) -> CaseDigest {
+        match self {
+            Self::State { result, .. } if self.is_answered() => result.digest(true),
+            _ => CaseDigest::default(),
+        }
+    }
+}
+
+/// Which part of the work is meant.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Task {
     /// The reference state.
     Reference,
     /// A case, by index.
     Case(usize),
-}
-
-impl Plan {
-    /// Prepares the work: numbering, pattern and symbolic factorisation, once for the net.
-    #[must_use]
-    pub fn new(brief: Brief) -> Self {
-        Self { brief }
-    }
-
-    /// The work as given.
-    #[must_use]
-    pub fn brief(&self) -> &Brief {
-        &self.brief
-    }
-
-    /// Finds the reference state.
-    ///
-    /// # Errors
-    /// [`ShapeError`] if there is none.
-    pub fn reference(
-        &self,
-        _observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
-    ) -> Result<ReferenceOutcome, ShapeError> {
-        unimplemented!()
-    }
-
-    /// Solves one case from the reference state.
-    pub fn case(
-        &self,
-        _reference: &ReferenceOutcome,
-        _case: usize,
-        _observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
-    ) -> CaseOutcome {
-        unimplemented!()
-    }
 }

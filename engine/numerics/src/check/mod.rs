@@ -1,1 +1,13 @@
-//! To come.
+//! Whether a net is good enough: demands against limits, and what was not judged.
+
+mod envelope;
+mod given;
+mod judge;
+#[cfg(test)]
+mod tests_support;
+mod verdict;
+
+pub use envelope::{CableEnvelope, Envelope, Extreme, envelope};
+pub use given::{Check, CheckKind};
+pub use judge::{CaseDigest, CheckResult, Covered, Judgement, judge};
+pub use verdict::{Facts, Share, Verdict};

@@ -1,1 +1,4 @@
-//! To come.
+//! Why there is no good answer: free movements, and numbers that can not be meant.
+
+pub mod mechanism;
+pub mod plausible;

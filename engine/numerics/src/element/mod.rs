@@ -1,1 +1,6 @@
-//! To come.
+//! One member between two nodes.
+
+mod segment;
+
+pub use segment::Bar;
+pub(crate) use segment::axial_block;

@@ -1,4 +1,15 @@
 //! Nodal balance, found again by a routine that shares no code with assembly.
+//!
+//! Plain loops over what is given and what is claimed; no numbering, no matrices, no element. It goes back to `EA`, `α`,
+//! `ΔT` and `L0`, and compares the claimed axial forces with the law as well as the nodes with their loads.
+
+use nalgebra::Vector3;
+
+use crate::load::Case;
+use crate::model::{AxialLaw, Net, NodeId, SegmentId};
+
+/// Share of the largest force on the net that may be out of balance, or in doubt in a member.
+const SHARE: f64 = 1e-8;
 
 /// What it found.
 #[derive(Clone, Debug, PartialEq, Default)]
@@ -6,9 +17,124 @@ pub struct Audit {
     /// Largest out-of-balance force at a node in its free directions (N).
     pub largest_imbalance: f64,
     /// Where.
-    pub node: Option<crate::model::NodeId>,
-    /// What is allowed (N).
+    pub node: Option<NodeId>,
+    /// Largest difference between a claimed axial force and the law (N).
+    pub largest_force_error: f64,
+    /// Where.
+    pub segment: Option<SegmentId>,
+    /// What is allowed of both (N): 1e−8 of the largest of loads and forces, or the force that the last bits of the
+    /// positions make in the stiffest segment (8 ε × `EA/L0` × largest coordinate or length), whichever is more; never
+    /// more than 1e−4 of the largest force.
     pub allowed: f64,
+    /// Force of its supports on every node (N), rigid and elastic together; zero at nodes without.
+    pub support_forces: Vec<Vector3<f64>>,
+    /// Sum of the loads (N).
+    pub load_sum: Vector3<f64>,
+    /// Sum of the support forces (N).
+    pub support_sum: Vector3<f64>,
     /// Whether the state passes.
     pub passed: bool,
+}
+
+/// Checks a claimed state.
+///
+/// `case`: with the loads that the state carries. `positions`: one a node (m). `axial_forces`: claimed, one a segment (N).
+/// Numbers that are not finite never pass.
+///
+/// # Panics
+/// If a list does not have one entry for each of what it ranges over.
+#[must_use]
+pub fn audit(net: &Net, case: &Case, positions: &[Vector3<f64>], axial_forces: &[f64]) -> Audit {
+    assert_eq!(positions.len(), net.nodes().len(), "one position a node");
+    assert_eq!(axial_forces.len(), net.segments().len(), "one force a segment");
+    let mut audit = Audit::default();
+    let mut unbalanced = case.nodal_forces.clone();
+    let mut largest: f64 = 0.0;
+    let mut rounding: f64 = 0.0;
+    let mut finite = true;
+    let size = positions
+        .iter()
+        .flat_map(|x| x.iter().copied())
+        .fold(0.0_f64, |m, c| m.max(c.abs()));
+    for load in &case.nodal_forces {
+        largest = largest.max(load.x.abs()).max(load.y.abs()).max(load.z.abs());
+        audit.load_sum += load;
+    }
+
+    for (index, segment) in net.segments().iter().enumerate() {
+        let claimed = axial_forces[index];
+        let (from, to) = (positions[segment.ends[0].index()], positions[segment.ends[1].index()]);
+        let (dx, dy, dz) = (to.x - from.x, to.y - from.y, to.z - from.z);
+        let length = (dx * dx + dy * dy + dz * dz).sqrt();
+        let expanded = 1.0 + segment.section.expansion * case.segments[index].temperature_change;
+        let natural = case.unstressed_lengths[segment.length] * expanded;
+        let stretch = length / natural;
+        let mut expected = segment.section.axial_stiffness * (stretch - 1.0);
+        if segment.law == AxialLaw::TensionOnly && stretch <= 1.0 {
+            expected = 0.0;
+        }
+        let mut spring = segment.section.axial_stiffness / natural;
+        if case.removed[index] {
+            expected = 0.0;
+            spring = 0.0;
+        }
+        let error = (claimed - expected).abs();
+        finite &= error.is_finite();
+        if error > audit.largest_force_error {
+            audit.largest_force_error = error;
+            audit.segment = Some(SegmentId::new(index));
+        }
+        largest = largest.max(expected.abs());
+        rounding = rounding.max(8.0 * f64::EPSILON * spring * size.max(length));
+        if length > 0.0 {
+            // The law speaks here, not the claim: the claim has been compared above.
+            let pull = Vector3::new(dx, dy, dz) * (expected / length);
+            unbalanced[segment.ends[0].index()] += pull;
+            unbalanced[segment.ends[1].index()] -= pull;
+        }
+    }
+
+    let mut elastic = vec![Vector3::zeros(); net.nodes().len()];
+    for support in net.elastic_supports() {
+        let mut movement = Vec::new();
+        for (node, rest) in support.nodes().iter().zip(support.rest()) {
+            let moved = positions[node.index()] - rest - case.support_movements[node.index()];
+            movement.extend([moved.x, moved.y, moved.z]);
+        }
+        for (place, node) in support.nodes().iter().enumerate() {
+            for axis in 0..3 {
+                let row = 3 * place + axis;
+                let mut force = 0.0;
+                for (column, moved) in movement.iter().enumerate() {
+                    force -= support.stiffness()[(row, column)] * moved;
+                    rounding = rounding.max(8.0 * f64::EPSILON * support.stiffness()[(row, column)].abs() * size);
+                }
+                elastic[node.index()][axis] += force;
+                largest = largest.max(force.abs());
+            }
+        }
+    }
+
+    audit.support_forces = vec![Vector3::zeros(); net.nodes().len()];
+    for index in 0..net.nodes().len() {
+        let node = NodeId::new(index);
+        let rest = unbalanced[index] + elastic[index];
+        let mut held = Vector3::zeros();
+        if let Some(support) = net.support_of(node) {
+            for direction in support.held() {
+                held -= direction * direction.dot(&rest);
+            }
+        }
+        let free = (rest + held).norm();
+        finite &= free.is_finite();
+        if free > audit.largest_imbalance {
+            audit.largest_imbalance = free;
+            audit.node = Some(node);
+        }
+        audit.support_forces[index] = held + elastic[index];
+        audit.support_sum += audit.support_forces[index];
+    }
+    audit.allowed = (SHARE * largest).max(rounding.min(1e-4 * largest));
+    audit.passed = finite && audit.largest_imbalance <= audit.allowed && audit.largest_force_error <= audit.allowed;
+    audit
 }

@@ -3,6 +3,7 @@
 use nalgebra::Vector3;
 use thiserror::Error;
 
+use crate::assembly::LoadingError;
 use crate::model::{NodeId, SegmentId};
 
 /// The method that is at work.
@@ -58,6 +59,17 @@ pub enum Termination {
     Cancelled,
 }
 
+/// The state after one load step.
+#[derive(Clone, Debug, PartialEq)]
+pub struct LoadStepState {
+    /// Share of the load.
+    pub load_factor: f64,
+    /// Position of every node (m).
+    pub positions: Vec<Vector3<f64>>,
+    /// Axial force of every segment (N).
+    pub axial_forces: Vec<f64>,
+}
+
 /// The last state and how it came about.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Solution {
@@ -67,13 +79,16 @@ pub struct Solution {
     pub axial_forces: Vec<f64>,
     /// How it ended.
     pub termination: Termination,
-    /// The method that gave the last state.
+    /// The method that brought the last state near: relaxation or the interior point where one of them was needed, which
+    /// Newton then finished; Newton itself otherwise.
     pub way: Way,
     /// Share of the load that the state carries.
     pub load_factor: f64,
     /// Nodes whose place is not determined.
     pub loose_nodes: Vec<NodeId>,
-    /// Every iteration.
+    /// The state after every load step, where equal steps were asked for.
+    pub steps: Vec<LoadStepState>,
+    /// Every iteration; of a relaxation, every peak of the kinetic energy.
     pub history: Vec<IterationReport>,
     /// Factorisations.
     pub factorisations: u32,
@@ -82,6 +97,9 @@ pub struct Solution {
 /// Why no state can be given.
 #[derive(Clone, Debug, PartialEq, Error)]
 pub enum SolveError {
+    /// The case does not fit the net, or its numbers are beyond use.
+    #[error(transparent)]
+    Loading(#[from] LoadingError),
     /// A part that nothing holds carries a load along a direction in which it is free.
     #[error("nothing holds {n} nodes along the load on them", n = nodes.len())]
     NotHeld {
@@ -104,4 +122,15 @@ pub enum SolveError {
         /// Segments at the first node.
         segments: Vec<SegmentId>,
     },
+}
+
+impl From<super::stability::FreeMovement> for SolveError {
+    fn from(movement: super::stability::FreeMovement) -> Self {
+        Self::FreeMovement {
+            nodes: movement.nodes,
+            direction: movement.direction,
+            stiffness: movement.stiffness,
+            segments: movement.segments,
+        }
+    }
 }

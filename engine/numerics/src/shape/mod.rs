@@ -1,11 +1,24 @@
-//! A state to start from: force densities and wanted tensions.
+//! A state to start from: force densities, wanted tensions, given lengths, and members left to balance.
 
-use thiserror::Error;
+mod balance;
+mod error;
+mod find;
+mod frozen;
+mod gate;
+mod given;
+mod krylov;
+mod loads;
+mod parts;
+mod report;
+mod search;
+mod targets;
+mod words;
 
-/// How the reference state was found.
-#[derive(Clone, Debug, PartialEq, Default)]
-pub struct ShapeReport {}
+#[cfg(test)]
+mod tests;
 
-/// Why there is no reference state.
-#[derive(Clone, Debug, PartialEq, Error)]
-pub enum ShapeError {}
+pub use error::{ForceLeft, ShapeError, Target};
+pub use find::find;
+pub use gate::Found;
+pub use given::{Prestress, PrestressRule};
+pub use report::{BalanceReport, ShapeReport};

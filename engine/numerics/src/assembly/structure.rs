@@ -1,0 +1,176 @@
+//! What is worked out once for a net: numbering, pattern, and where each member's stiffness goes.
+
+use std::sync::Arc;
+
+use nalgebra_sparse::{CooMatrix, CsrMatrix};
+
+use super::{Dofs, Pattern};
+use crate::model::{Net, NodeId};
+
+/// A net with its numbering and pattern; shared by every state, case and thread.
+#[derive(Clone, Debug)]
+pub struct Structure {
+    net: Arc<Net>,
+    dofs: Dofs,
+    pattern: Pattern,
+    pub(super) ends: Vec<[u32; 2]>,
+    pub(super) couplings: Vec<Coupling>,
+    pub(super) elastic: Vec<(usize, f64)>,
+}
+
+/// Where the block that couples the two ends of a segment goes.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Coupling {
+    /// The lower-numbered node owns the columns, the other the rows.
+    pub(super) column_node: u32,
+    pub(super) row_node: u32,
+    /// Position of the first row of the block in each of its columns.
+    pub(super) positions: [usize; 3],
+    pub(super) shape: Shape,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Shape {
+    /// Both nodes move along the global axes.
+    BothFree,
+    /// At least one end is held or moves along skew directions.
+    Mixed,
+}
+
+impl Structure {
+    /// Numbers the net and finds the pattern of its matrices.
+    #[must_use]
+    pub fn new(net: Arc<Net>) -> Self {
+        Self::keeping(net, &[])
+    }
+
+    /// The same for a net of which some more nodes are kept in place, whatever holds them.
+    #[must_use]
+    pub fn keeping(net: Arc<Net>, kept: &[NodeId]) -> Self {
+        let dofs = Dofs::new(&net, kept);
+        let sizes: Vec<usize> = (0..net.nodes().len())
+            .map(|node| dofs.directions(NodeId::new(node)).len())
+            .collect();
+        let pattern = Pattern::new(&sizes, &node_graph(&net));
+        let ends = net
+            .segments()
+            .iter()
+            .map(|s| s.ends.map(|n| u32::try_from(n.index()).expect("an id fits 32 bits")))
+            .collect();
+        let couplings = net
+            .segments()
+            .iter()
+            .map(|segment| coupling(&dofs, &pattern, segment.ends))
+            .collect();
+        let elastic = elastic_entries(&net, &dofs, &pattern);
+        Self {
+            net,
+            dofs,
+            pattern,
+            ends,
+            couplings,
+            elastic,
+        }
+    }
+
+    /// The net.
+    #[must_use]
+    pub fn net(&self) -> &Arc<Net> {
+        &self.net
+    }
+
+    /// Its free directions.
+    #[must_use]
+    pub fn dofs(&self) -> &Dofs {
+        &self.dofs
+    }
+
+    /// Number of free directions.
+    #[must_use]
+    pub fn n_dofs(&self) -> usize {
+        self.dofs.len()
+    }
+
+    /// Where its matrices have entries.
+    #[must_use]
+    pub fn pattern(&self) -> &Pattern {
+        &self.pattern
+    }
+}
+
+/// Nodes coupled by segments, `|C|ᵀ|C|`, and by elastic supports.
+fn node_graph(net: &Net) -> CsrMatrix<f64> {
+    let mut incidence = net.branch_node_matrix().clone();
+    incidence.values_mut().iter_mut().for_each(|v| *v = v.abs());
+    let mut graph = incidence.transpose() * &incidence;
+    let mut coupled = CooMatrix::new(graph.nrows(), graph.ncols());
+    for elastic in net.elastic_supports() {
+        for (row, a) in elastic.nodes().iter().enumerate() {
+            for (column, b) in elastic.nodes().iter().enumerate() {
+                if row != column && elastic.block(row, column).amax() > 0.0 {
+                    coupled.push(a.index(), b.index(), 1.0);
+                }
+            }
+        }
+    }
+    if coupled.nnz() > 0 {
+        graph = graph + CsrMatrix::from(&coupled);
+    }
+    graph
+}
+
+fn coupling(dofs: &Dofs, pattern: &Pattern, ends: [NodeId; 2]) -> Coupling {
+    let (column_node, row_node) = if ends[0] < ends[1] {
+        (ends[0], ends[1])
+    } else {
+        (ends[1], ends[0])
+    };
+    let (columns, rows) = (dofs.directions(column_node).len(), dofs.directions(row_node).len());
+    let mut positions = [0; 3];
+    if rows > 0 {
+        for (offset, position) in positions.iter_mut().enumerate().take(columns) {
+            *position = pattern
+                .position(dofs.first(row_node), dofs.first(column_node) + offset)
+                .expect("the graph has an edge for each segment");
+        }
+    }
+    let along_axes = |node| {
+        let free = dofs.directions(node);
+        free.len() == 3 && free.iter().enumerate().all(|(axis, f)| f[axis] == 1.0)
+    };
+    Coupling {
+        column_node: u32::try_from(column_node.index()).expect("an id fits 32 bits"),
+        row_node: u32::try_from(row_node.index()).expect("an id fits 32 bits"),
+        positions,
+        shape: if along_axes(column_node) && along_axes(row_node) {
+            Shape::BothFree
+        } else {
+            Shape::Mixed
+        },
+    }
+}
+
+/// Entries of the matrices of all elastic supports, in the free directions.
+fn elastic_entries(net: &Net, dofs: &Dofs, pattern: &Pattern) -> Vec<(usize, f64)> {
+    let mut entries = Vec::new();
+    for elastic in net.elastic_supports() {
+        for (i, a) in elastic.nodes().iter().enumerate() {
+            for (j, b) in elastic.nodes().iter().enumerate() {
+                let block = elastic.block(i, j);
+                for (r, along_a) in dofs.directions(*a).iter().enumerate() {
+                    for (c, along_b) in dofs.directions(*b).iter().enumerate() {
+                        let (row, column) = (dofs.first(*a) + r, dofs.first(*b) + c);
+                        let value = along_a.dot(&(block * along_b));
+                        if row >= column && value != 0.0 {
+                            let position = pattern
+                                .position(row, column)
+                                .expect("the graph has an edge for each coupling");
+                            entries.push((position, value));
+                        }
+                    }
+                }
+            }
+        }
+    }
+    entries
+}

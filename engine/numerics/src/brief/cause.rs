@@ -1,0 +1,379 @@
+//! Why a case has no answer, in the client's ids.
+
+use std::fmt;
+
+use nalgebra::Vector3;
+
+use super::StateResult;
+use crate::diagnose::mechanism::{self, Arrangement};
+use crate::diagnose::plausible;
+use crate::equilibrium::stability::FreeMovement;
+use crate::equilibrium::{Solution, SolveError, Termination};
+use crate::load::Case;
+use crate::model::{Member, Net, NodeId, ReferenceState, SegmentId};
+
+/// A node to blame.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Culprit {
+    /// The client's id of the node.
+    pub node: String,
+    /// Force out of balance there (N).
+    pub imbalance: f64,
+    /// How far it has moved from the reference state (m).
+    pub moved: f64,
+}
+
+/// What is likely behind it.
+#[derive(Clone, Debug, PartialEq)]
+pub enum LikelyCause {
+    /// The numbers of the case can not be used.
+    Numbers {
+        /// What is wrong, with the id of the part.
+        what: String,
+    },
+    /// A part that nothing holds carries a load.
+    NotHeld {
+        /// Ids of the nodes.
+        nodes: Vec<String>,
+        /// The load on them (N).
+        force: Vector3<f64>,
+    },
+    /// The net can move freely.
+    Mechanism {
+        /// Id of the node that moves most.
+        node: String,
+        /// How (unit).
+        direction: Vector3<f64>,
+        /// Stiffness against the movement (N/m).
+        stiffness: f64,
+        /// Ids of the members at the node.
+        members: Vec<String>,
+        /// Whether they lie in one plane or on one line.
+        flat: bool,
+    },
+    /// Strains beyond what any material bears: units are likely mixed up.
+    UnitSlip {
+        /// Id of the member.
+        member: String,
+        /// Its `EA` as given (N).
+        axial_stiffness: f64,
+        /// Its strain (–).
+        strain: f64,
+        /// Factor on `EA` that would make sense of it.
+        likely_factor: Option<f64>,
+    },
+    /// Most ropes are slack, so that little resists.
+    MuchSlack {
+        /// Ids of slack cables at the nodes to blame.
+        cables: Vec<String>,
+        /// Slack segments.
+        slack: usize,
+        /// Cable segments.
+        of: usize,
+    },
+    /// The net left its place under the load.
+    RanAway,
+    /// The load tips the net: beyond the share reached there is no near state of balance.
+    Tips {
+        /// Ids of slack cables.
+        slack_cables: Vec<String>,
+        /// Sum of the loads (N).
+        load_sum: Vector3<f64>,
+    },
+    /// The allowed iterations were used up.
+    OutOfIterations,
+}
+
+/// Why a case has no answer, and what to change.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Cause {
+    /// What is likely behind it.
+    pub likely: LikelyCause,
+    /// Nodes with the largest imbalance, or else the largest movement; worst first.
+    pub worst: Vec<Culprit>,
+    /// Ids of the members at the worst node.
+    pub members: Vec<String>,
+    /// Share of the load of the last good state.
+    pub last_good_load_factor: f64,
+}
+
+/// Share of slack segments from which slackness is to blame.
+const MUCH_SLACK: f64 = 0.5;
+
+/// Reads the cause from the last state. `result` tells that state under `carried`, the share of `case` that it carries.
+pub(super) fn cause_of_stop(
+    net: &Net,
+    reference: &ReferenceState,
+    case: &Case,
+    carried: &Case,
+    solution: &Solution,
+    result: &StateResult,
+) -> Cause {
+    let worst = culprits(net, carried, result);
+    let worst_node = worst.first().map(|(node, _)| *node);
+    let slack_cables = |near: Option<NodeId>| -> Vec<String> {
+        let touches = |index: &usize| near.is_none_or(|n| net.segments()[*index].ends.contains(&n));
+        let slack = (0..net.segments().len())
+            .filter(|index| result.slack[*index])
+            .filter(touches);
+        distinct(slack.map(|index| net.member_name(SegmentId::new(index)).to_owned()))
+    };
+    let n_cable_segments = net
+        .segments()
+        .iter()
+        .filter(|s| matches!(s.member, Member::Cable(_)))
+        .count();
+    let n_slack = result.slack.iter().filter(|slack| **slack).count();
+    let strained = plausible::strained_members(net, case, &reference.axial_forces)
+        .into_iter()
+        .chain(plausible::strained_members(net, case, &solution.axial_forces))
+        .max_by(|a, b| a.strain.abs().total_cmp(&b.strain.abs()));
+    let odd = plausible::odd_stiffnesses(net);
+    let likely = match (strained, odd.first()) {
+        (Some(strained), _) if strained.likely_factor.is_some() => LikelyCause::UnitSlip {
+            member: net.member_name(strained.segment).to_owned(),
+            axial_stiffness: strained.axial_stiffness,
+            strain: strained.strain,
+            likely_factor: strained.likely_factor,
+        },
+        (_, Some(odd)) => LikelyCause::UnitSlip {
+            member: net.member_name(odd.segment).to_owned(),
+            axial_stiffness: odd.axial_stiffness,
+            strain: solution.axial_forces[odd.segment.index()] / odd.axial_stiffness,
+            likely_factor: Some(odd.likely_factor),
+        },
+        _ if solution.termination == Termination::RunsAway => LikelyCause::RanAway,
+        _ if n_slack as f64 >= MUCH_SLACK * n_cable_segments as f64 => LikelyCause::MuchSlack {
+            cables: slack_cables(worst_node),
+            slack: n_slack,
+            of: n_cable_segments,
+        },
+        _ if !net.is_pure_tension() => LikelyCause::Tips {
+            slack_cables: slack_cables(None),
+            load_sum: case.nodal_forces.iter().sum(),
+        },
+        _ => LikelyCause::OutOfIterations,
+    };
+    // A last state that balances carries its share of the load; one that does not is no good state.
+    let last_good_load_factor = if result.audit.passed { solution.load_factor } else { 0.0 };
+    Cause {
+        likely,
+        members: worst_node.map_or_else(Vec::new, |node| members_at(net, node)),
+        worst: worst.into_iter().map(|(_, culprit)| culprit).collect(),
+        last_good_load_factor,
+    }
+}
+
+fn culprits(net: &Net, case: &Case, result: &StateResult) -> Vec<(NodeId, Culprit)> {
+    let mut exerted = case.nodal_forces.clone();
+    for (index, segment) in net.segments().iter().enumerate() {
+        let [i, j] = segment.ends.map(NodeId::index);
+        if result.lengths[index] > 0.0 {
+            let chord = result.positions[j] - result.positions[i];
+            let pull = chord * (result.axial_forces[index] / result.lengths[index]);
+            exerted[i] += pull;
+            exerted[j] -= pull;
+        }
+    }
+    for support in &result.support_forces {
+        exerted[support.node.index()] += support.force;
+    }
+    let mut all: Vec<(NodeId, Culprit)> = (0..net.nodes().len())
+        .map(|index| {
+            let culprit = Culprit {
+                node: net.nodes()[index].name.clone(),
+                imbalance: exerted[index].norm(),
+                moved: result.displacements[index].norm(),
+            };
+            (NodeId::new(index), culprit)
+        })
+        .collect();
+    // Imbalance first where there is any, else movement.
+    let weight = |c: &Culprit| if result.audit.passed { c.moved } else { c.imbalance };
+    all.sort_by(|(_, a), (_, b)| weight(b).total_cmp(&weight(a)));
+    all.truncate(5);
+    all
+}
+
+fn members_at(net: &Net, node: NodeId) -> Vec<String> {
+    let touching = net
+        .segments()
+        .iter()
+        .enumerate()
+        .filter(|(_, s)| s.ends.contains(&node));
+    distinct(touching.map(|(index, _)| net.member_name(SegmentId::new(index)).to_owned()))
+}
+
+fn distinct(names: impl Iterator<Item = String>) -> Vec<String> {
+    let mut seen: Vec<String> = Vec::new();
+    for name in names {
+        if !seen.contains(&name) {
+            seen.push(name);
+        }
+    }
+    seen
+}
+
+/// Tells an error of the solver in the client's ids. `positions`: where the net was (m).
+pub(super) fn cause_of_error(net: &Net, positions: &[Vector3<f64>], error: &SolveError) -> Cause {
+    use crate::assembly::LoadingError;
+    let likely = match error {
+        SolveError::Loading(LoadingError::Segment { segment, what, value }) => LikelyCause::Numbers {
+            what: format!("the {what} of \"{}\" would be {value:e}", net.member_name(*segment)),
+        },
+        SolveError::Loading(LoadingError::Node { node, what, value }) => LikelyCause::Numbers {
+            what: format!("the {what} of \"{}\" would be {value:e}", net.node_name(*node)),
+        },
+        SolveError::Loading(error @ LoadingError::WrongLength { .. }) => LikelyCause::Numbers {
+            what: error.to_string(),
+        },
+        SolveError::NotHeld {
+            nodes,
+            direction,
+            force,
+        } => LikelyCause::NotHeld {
+            nodes: nodes.iter().map(|n| net.node_name(*n).to_owned()).collect(),
+            force: direction * *force,
+        },
+        SolveError::FreeMovement {
+            nodes,
+            direction,
+            stiffness,
+            segments,
+        } => {
+            let movement = FreeMovement {
+                nodes: nodes.clone(),
+                direction: *direction,
+                stiffness: *stiffness,
+                segments: segments.clone(),
+            };
+            let told = mechanism::describe(net, positions, &movement);
+            LikelyCause::Mechanism {
+                node: net.node_name(told.node).to_owned(),
+                direction: told.direction,
+                stiffness: told.stiffness,
+                members: distinct(segments.iter().map(|s| net.member_name(*s).to_owned())),
+                flat: told.arrangement != Arrangement::Space,
+            }
+        }
+    };
+    Cause {
+        members: match &likely {
+            LikelyCause::Mechanism { members, .. } => members.clone(),
+            _ => Vec::new(),
+        },
+        likely,
+        worst: Vec::new(),
+        last_good_load_factor: 0.0,
+    }
+}
+
+fn list(names: &[String]) -> String {
+    let quoted: Vec<String> = names.iter().take(6).map(|n| format!("\"{n}\"")).collect();
+    match names.len().saturating_sub(6) {
+        0 => quoted.join(", "),
+        more => format!("{} and {more} more", quoted.join(", ")),
+    }
+}
+
+fn direction(d: &Vector3<f64>) -> String {
+    format!("({:.2}, {:.2}, {:.2})", d.x, d.y, d.z)
+}
+
+impl fmt::Display for Cause {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        let mut text = self.likely.to_string();
+        let mut add = |sentence: String| {
+            text.push_str(if text.ends_with('?') { " " } else { ". " });
+            text.push_str(&sentence);
+        };
+        if let Some(worst) = self.worst.first() {
+            add(format!(
+                "Worst at \"{}\": {:.3} kN out of balance, moved {:.3} m",
+                worst.node,
+                worst.imbalance / 1e3,
+                worst.moved
+            ));
+        }
+        if self.last_good_load_factor > 0.0 {
+            add(format!(
+                "Last good state at {:.0} % of the load",
+                self.last_good_load_factor * 100.0
+            ));
+        }
+        f.write_str(&text)
+    }
+}
+
+impl fmt::Display for LikelyCause {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            Self::Numbers { what } => write!(f, "{what}: check the units and factors of the case"),
+            Self::NotHeld { nodes, force } => write!(
+                f,
+                "nothing holds {} along the load of {:.3} kN on them: hold one of them, or join them to a support",
+                list(nodes),
+                force.norm() / 1e3
+            ),
+            Self::Mechanism {
+                node,
+                direction: along,
+                stiffness,
+                members,
+                flat,
+            } => {
+                let lie = if *flat { "lie in one plane" } else { "do not resist" };
+                write!(
+                    f,
+                    "nothing holds \"{node}\" along {}: {} {lie}. Prestress does not stiffen it ({stiffness:.0} N/m). \
+                     Spread them, or hold \"{node}\" along that direction",
+                    direction(along),
+                    list(members)
+                )
+            }
+            Self::UnitSlip {
+                member,
+                axial_stiffness,
+                strain,
+                likely_factor,
+            } => {
+                let percent = strain * 100.0;
+                write!(
+                    f,
+                    "\"{member}\" has EA {axial_stiffness:.0} N and would be strained by {percent:.1} %"
+                )?;
+                match likely_factor {
+                    Some(factor) => write!(f, ": was EA given in a unit {factor:e} times another?"),
+                    None => Ok(()),
+                }
+            }
+            Self::MuchSlack { cables, slack, of } => write!(
+                f,
+                "{slack} of {of} cable segments are slack, at the worst node {}: more pull there, or less load",
+                list(cables)
+            ),
+            Self::RanAway => f.write_str(
+                "the net ran away from its place: check the size and sign of the loads, and what holds the nodes below",
+            ),
+            Self::Tips { slack_cables, load_sum } => {
+                let sum = direction(&(load_sum / 1e3));
+                write!(
+                    f,
+                    "the load tips the net rather than a wrong step; loads sum to {sum} kN"
+                )?;
+                if slack_cables.is_empty() {
+                    f.write_str(". Try to put the load on in steps, or check its sign")
+                } else {
+                    let slack = list(slack_cables);
+                    write!(
+                        f,
+                        "; slack: {slack}. Try more pull in these, or check the sign of the loads"
+                    )
+                }
+            }
+            Self::OutOfIterations => {
+                f.write_str("the allowed iterations were used up: allow more, or put the load on in steps")
+            }
+        }
+    }
+}

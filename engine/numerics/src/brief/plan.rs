@@ -1,0 +1,143 @@
+//! A brief made ready to be run, and its two kinds of run.
+
+use std::ops::ControlFlow;
+use std::sync::Arc;
+
+use super::cause::{cause_of_error, cause_of_stop};
+use super::state::{Bare, state_result};
+use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Summary, Task};
+use crate::check::CaseDigest;
+use crate::equilibrium::{self, Analysis, IterationReport, Termination};
+use crate::load::Case;
+use crate::shape::{self, Found, ShapeError};
+
+/// A brief with what is worked out once for its net: numbering, pattern, symbolic factorisation.
+///
+/// It does not change while it is run: cases may be solved side by side, in any order, with the same results.
+#[derive(Debug)]
+pub struct Plan {
+    brief: Brief,
+    analysis: Analysis,
+}
+
+impl Plan {
+    /// Prepares the work: numbering, pattern and symbolic factorisation, once for the net.
+    #[must_use]
+    pub fn new(brief: Brief) -> Self {
+        Self {
+            analysis: Analysis::new(Arc::clone(&brief.net)),
+            brief,
+        }
+    }
+
+    /// The work as given.
+    #[must_use]
+    pub fn brief(&self) -> &Brief {
+        &self.brief
+    }
+
+    /// The parts of the work: the reference state first, since every case starts from it, then the cases in order.
+    pub fn tasks(&self) -> impl Iterator<Item = Task> + use<> {
+        std::iter::once(Task::Reference).chain((0..self.brief.cases.len()).map(Task::Case))
+    }
+
+    /// What the work will cost, roughly.
+    #[must_use]
+    pub fn estimate(&self) -> Estimate {
+        Estimate::new(&self.brief, &self.analysis)
+    }
+
+    /// Finds the reference state.
+    ///
+    /// # Errors
+    /// [`ShapeError`] if there is none.
+    pub fn reference(
+        &self,
+        observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
+    ) -> Result<ReferenceOutcome, ShapeError> {
+        let brief = &self.brief;
+        let Found { state, case, report } = shape::find(
+            &self.analysis,
+            &brief.prestress,
+            &brief.actions,
+            &brief.settings,
+            observe,
+        )?;
+        let bare = Bare {
+            positions: &state.positions,
+            axial_forces: &state.axial_forces,
+            loose_nodes: &[],
+        };
+        let result = state_result(&brief.net, &case, &state.positions, &bare);
+        Ok(ReferenceOutcome {
+            state,
+            case,
+            result,
+            report,
+        })
+    }
+
+    /// Solves one case from the reference state.
+    pub fn case(
+        &self,
+        reference: &ReferenceOutcome,
+        case: usize,
+        observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
+    ) -> CaseOutcome {
+        let Brief {
+            net,
+            actions,
+            cases,
+            settings,
+            ..
+        } = &self.brief;
+        let given = &cases[case];
+        let case = Case::new(net, &reference.state, actions, &given.factors);
+        let solved = equilibrium::solve(
+            &self.analysis,
+            &case,
+            &reference.state.positions,
+            &reference.state.unstressed_lengths,
+            settings,
+            observe,
+        );
+        match solved {
+            Ok(solution) => {
+                let bare = Bare {
+                    positions: &solution.positions,
+                    axial_forces: &solution.axial_forces,
+                    loose_nodes: &solution.loose_nodes,
+                };
+                // The last good state carries a share of the load; it is told under the loads that it carries.
+                let carried = case.scaled(&reference.state.unstressed_lengths, solution.load_factor);
+                let result = state_result(net, &carried, &reference.state.positions, &bare);
+                let cause = match solution.termination {
+                    Termination::Converged | Termination::Cancelled => None,
+                    _ => Some(cause_of_stop(
+                        net,
+                        &reference.state,
+                        &case,
+                        &carried,
+                        &solution,
+                        &result,
+                    )),
+                };
+                CaseOutcome::State {
+                    solution,
+                    result: Box::new(result),
+                    cause,
+                }
+            }
+            Err(error) => CaseOutcome::None {
+                cause: cause_of_error(net, &reference.state.positions, &error),
+                error,
+            },
+        }
+    }
+
+    /// Judges the checks and takes the envelopes. `digests`: one entry a case, in the order of the brief.
+    #[must_use]
+    pub fn summary(&self, reference: &ReferenceOutcome, digests: &[CaseDigest]) -> Summary {
+        Summary::new(&self.brief, reference, digests)
+    }
+}

@@ -1,0 +1,125 @@
+//! Everything that is told of a state, worked out from positions and forces.
+
+use nalgebra::Vector3;
+
+use super::{EndForce, StateResult, SupportForce};
+use crate::equilibrium::audit;
+use crate::load::Case;
+use crate::model::{AxialLaw, Net, NodeId, SegmentId};
+
+/// Positions and forces as a solver leaves them.
+pub(super) struct Bare<'a> {
+    pub(super) positions: &'a [Vector3<f64>],
+    pub(super) axial_forces: &'a [f64],
+    pub(super) loose_nodes: &'a [NodeId],
+}
+
+/// Tells everything of a state of `case`, movements from `reference`.
+pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], state: &Bare<'_>) -> StateResult {
+    let positions = state.positions;
+    let n_segments = net.segments().len();
+    let (mut lengths, mut stretches, mut slack) =
+        (vec![0.0; n_segments], vec![0.0; n_segments], vec![false; n_segments]);
+    // What the members and loads exert on every node.
+    let mut exerted = case.nodal_forces.clone();
+    let mut pulls = vec![Vector3::zeros(); n_segments];
+    for (index, segment) in net.segments().iter().enumerate() {
+        let [i, j] = segment.ends.map(NodeId::index);
+        let chord = positions[j] - positions[i];
+        let length = chord.norm();
+        let strain = segment.section.expansion * case.segments[index].temperature_change;
+        let stress_free = case.unstressed_lengths[segment.length] * (1.0 + strain);
+        lengths[index] = length;
+        if !case.removed[index] {
+            stretches[index] = length / stress_free;
+        }
+        slack[index] = segment.law == AxialLaw::TensionOnly && (case.removed[index] || length <= stress_free);
+        if length > 0.0 {
+            pulls[index] = chord * (state.axial_forces[index] / length);
+        }
+        exerted[i] += pulls[index];
+        exerted[j] -= pulls[index];
+    }
+    let support_forces = support_forces(net, case, positions, exerted);
+    let mut supported = vec![false; net.nodes().len()];
+    for support in &support_forces {
+        supported[support.node.index()] = true;
+    }
+    let end_forces = net
+        .segments()
+        .iter()
+        .enumerate()
+        .flat_map(|(index, segment)| {
+            let [from, to] = segment.ends;
+            [(from, pulls[index]), (to, -pulls[index])].map(|(node, force)| EndForce {
+                node,
+                segment: SegmentId::new(index),
+                force,
+            })
+        })
+        .filter(|end| supported[end.node.index()])
+        .collect();
+    StateResult {
+        displacements: positions.iter().zip(reference).map(|(x, from)| x - from).collect(),
+        positions: positions.to_vec(),
+        axial_forces: state.axial_forces.to_vec(),
+        stretches,
+        slack,
+        lengths,
+        unstressed_lengths: case.unstressed_lengths.clone(),
+        end_forces,
+        load_sum: case.nodal_forces.iter().sum(),
+        support_sum: support_forces.iter().map(|s| s.force).sum(),
+        support_forces,
+        loose_nodes: state.loose_nodes.to_vec(),
+        audit: audit::audit(net, case, positions, state.axial_forces),
+    }
+}
+
+/// `exerted`: loads and member forces on every node (N).
+fn support_forces(
+    net: &Net,
+    case: &Case,
+    positions: &[Vector3<f64>],
+    mut exerted: Vec<Vector3<f64>>,
+) -> Vec<SupportForce> {
+    let mut elastic_forces: Vec<Option<Vector3<f64>>> = vec![None; net.nodes().len()];
+    let mut elastic_order = Vec::new();
+    for elastic in net.elastic_supports() {
+        let moved: Vec<Vector3<f64>> = (elastic.nodes().iter().zip(elastic.rest()))
+            .map(|(node, rest)| positions[node.index()] - rest - case.support_movements[node.index()])
+            .collect();
+        for (row, node) in elastic.nodes().iter().enumerate() {
+            let force: Vector3<f64> = moved
+                .iter()
+                .enumerate()
+                .map(|(column, m)| -(elastic.block(row, column) * m))
+                .sum();
+            exerted[node.index()] += force;
+            let so_far = elastic_forces[node.index()];
+            if so_far.is_none() && net.support_of(*node).is_none() {
+                elastic_order.push(*node);
+            }
+            elastic_forces[node.index()] = Some(so_far.unwrap_or_else(Vector3::zeros) + force);
+        }
+    }
+    let rigid = net.supports().iter().map(|support| {
+        let node = support.node();
+        let resisted = -support.held_part(&exerted[node.index()]);
+        let force = resisted + elastic_forces[node.index()].unwrap_or_else(Vector3::zeros);
+        let mut own_axes = [0.0; 3];
+        for (component, axis) in own_axes.iter_mut().zip(support.held().iter().chain(support.free())) {
+            *component = force.dot(axis);
+        }
+        SupportForce { node, force, own_axes }
+    });
+    let elastic = elastic_order.iter().map(|node| {
+        let force = elastic_forces[node.index()].expect("listed because it has one");
+        SupportForce {
+            node: *node,
+            force,
+            own_axes: force.into(),
+        }
+    });
+    rigid.chain(elastic).collect()
+}

@@ -1,0 +1,308 @@
+//! One check judged: member by member, over its cases.
+
+use super::{Check, CheckKind, Share, Verdict};
+use crate::model::{CableId, Net, NodeId, ReferenceState, SegmentId, StrutId};
+
+/// The little that checks need of a case, so that its full fields need not be kept.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct CaseDigest {
+    /// Whether a state within tolerance was found.
+    pub answered: bool,
+    /// Whether the independent routine agrees.
+    pub audited: bool,
+    /// Axial force of every segment (N); empty if there is no answer.
+    pub axial_forces: Vec<f64>,
+    /// Distance of every node from its place in the reference state (m); empty if there is no answer.
+    pub movements: Vec<f64>,
+    /// Size of the support force at every node (N), `None` where there is no support; empty if there is no answer.
+    pub support_forces: Vec<Option<f64>>,
+    /// Nodes whose place, and so whose movement, is not determined.
+    pub loose_nodes: Vec<NodeId>,
+}
+
+impl CaseDigest {
+    /// Whether the case may be judged: an answer that the audit confirms.
+    #[must_use]
+    pub fn is_sound(&self) -> bool {
+        self.answered && self.audited
+    }
+}
+
+/// A part that a check covers.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Covered {
+    /// A cable.
+    Cable(CableId),
+    /// A strut.
+    Strut(StrutId),
+    /// A node.
+    Node(NodeId),
+}
+
+/// One part, judged.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Judgement {
+    /// The part.
+    pub of: Covered,
+    /// Its segment that governs, for a cable.
+    pub segment: Option<SegmentId>,
+    /// The case that governs, by index.
+    pub case: usize,
+    /// What is demanded: tension times factor (N), tension over reference tension (–), movement (m) or force (N).
+    pub demand: f64,
+    /// What is allowed, in the unit of `demand`.
+    pub limit: f64,
+    /// Use of the limit (–): above 1 fails. For slackness the share of tension lost over the share that may be lost.
+    pub ratio: f64,
+    /// Whether the demand keeps within the limit.
+    pub passes: bool,
+}
+
+/// What came of one check.
+#[derive(Clone, Debug, PartialEq)]
+pub struct CheckResult {
+    /// What was checked.
+    pub kind: CheckKind,
+    /// One entry a judged part, each with its governing case, in the order of the check.
+    pub judgements: Vec<Judgement>,
+    /// Covered parts that could not be judged, for want of data or of an answer.
+    pub not_judged: Vec<Covered>,
+    /// Covered cases without a sound answer.
+    pub unanswered: Vec<usize>,
+}
+
+impl CheckResult {
+    /// The judged part with the largest ratio.
+    #[must_use]
+    pub fn worst(&self) -> Option<&Judgement> {
+        self.judgements.iter().max_by(|a, b| a.ratio.total_cmp(&b.ratio))
+    }
+
+    /// Judged parts of those covered.
+    #[must_use]
+    pub fn judged(&self) -> Share {
+        Share {
+            count: self.judgements.len(),
+            of: self.judgements.len() + self.not_judged.len(),
+        }
+    }
+
+    /// The word for this check alone. A check over nothing judges nothing.
+    #[must_use]
+    pub fn verdict(&self) -> Verdict {
+        if !self.unanswered.is_empty() {
+            Verdict::NoAnswer
+        } else if self.judgements.iter().any(|j| !j.passes) {
+            Verdict::Exceeds
+        } else if self.judgements.is_empty() || !self.not_judged.is_empty() {
+            Verdict::NotJudged
+        } else {
+            Verdict::Passes
+        }
+    }
+}
+
+/// Judges one check over the cases that it covers.
+///
+/// A cable is judged only if each of its segments can be: with a breaking force for strength, with a tension in the
+/// reference state for slackness. `digests`: one entry a case, by index.
+#[must_use]
+pub fn judge(net: &Net, reference: &ReferenceState, check: &Check, digests: &[CaseDigest]) -> CheckResult {
+    let (sound, unanswered): (Vec<usize>, Vec<usize>) = check.cases.iter().partition(|case| digests[**case].is_sound());
+    let mut result = CheckResult {
+        kind: check.kind,
+        judgements: Vec::new(),
+        not_judged: Vec::new(),
+        unanswered,
+    };
+    let covered = (check.cables.iter().map(|id| Covered::Cable(*id)))
+        .chain(check.struts.iter().map(|id| Covered::Strut(*id)))
+        .chain(check.nodes.iter().map(|id| Covered::Node(*id)));
+    for part in covered {
+        let judged = sound
+            .iter()
+            .map(|case| judge_part(net, reference, check.kind, part, *case, &digests[*case]))
+            .collect::<Option<Vec<Judgement>>>()
+            .and_then(worst_of);
+        match judged {
+            Some(judgement) => result.judgements.push(judgement),
+            None => result.not_judged.push(part),
+        }
+    }
+    result
+}
+
+fn worst_of(judgements: Vec<Judgement>) -> Option<Judgement> {
+    // The first of equals, so that the governing case does not depend on how many follow it.
+    judgements
+        .into_iter()
+        .reduce(|worst, next| if next.ratio > worst.ratio { next } else { worst })
+}
+
+fn judge_part(
+    net: &Net,
+    reference: &ReferenceState,
+    kind: CheckKind,
+    part: Covered,
+    case: usize,
+    digest: &CaseDigest,
+) -> Option<Judgement> {
+    let judgement = |segment, demand, limit, ratio: f64, passes| {
+        ratio.is_finite().then_some(Judgement {
+            of: part,
+            segment,
+            case,
+            demand,
+            limit,
+            ratio,
+            passes,
+        })
+    };
+    let below = |demand: f64, limit: f64| judgement(None, demand, limit, demand / limit, demand <= limit);
+    match (kind, part) {
+        (CheckKind::Safety { factor }, Covered::Cable(cable)) => over_segments(net, cable, |segment| {
+            let limit = net.segments()[segment.index()].section.breaking_force?;
+            let demand = factor * digest.axial_forces[segment.index()];
+            judgement(Some(segment), demand, limit, demand / limit, demand <= limit)
+        }),
+        (CheckKind::Slackness { min_share_of_reference }, Covered::Cable(cable)) => {
+            over_segments(net, cable, |segment| {
+                let whole = reference.axial_forces[segment.index()];
+                if whole <= 0.0 || min_share_of_reference >= 1.0 {
+                    return None;
+                }
+                let share = digest.axial_forces[segment.index()] / whole;
+                let ratio = (1.0 - share) / (1.0 - min_share_of_reference);
+                let passes = share >= min_share_of_reference;
+                judgement(Some(segment), share, min_share_of_reference, ratio, passes)
+            })
+        }
+        (CheckKind::Movement { limit }, Covered::Node(node)) => {
+            if digest.loose_nodes.contains(&node) {
+                return None;
+            }
+            below(digest.movements[node.index()], limit)
+        }
+        (CheckKind::AnchorPull { limit }, Covered::Node(node)) => below(digest.support_forces[node.index()]?, limit),
+        _ => None,
+    }
+}
+
+/// The worst of the segments of a cable, if each could be judged.
+fn over_segments(net: &Net, cable: CableId, judge: impl Fn(SegmentId) -> Option<Judgement>) -> Option<Judgement> {
+    net.cables()[cable.index()]
+        .segments
+        .clone()
+        .map(|index| judge(SegmentId::new(index)))
+        .collect::<Option<Vec<Judgement>>>()
+        .and_then(worst_of)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::check::tests_support::{digest, net, reference};
+
+    fn check(kind: CheckKind) -> Check {
+        Check {
+            kind,
+            cables: vec![CableId::new(0), CableId::new(1)],
+            struts: Vec::new(),
+            nodes: Vec::new(),
+            cases: vec![0, 1],
+        }
+    }
+
+    #[test]
+    fn strength_takes_the_worst_segment_and_case() {
+        // Breaking force 10 kN in cable 0, unknown in cable 1.
+        let digests = [digest(&[1000.0, 2000.0, 3000.0]), digest(&[4000.0, 2500.0, 3000.0])];
+        let result = judge(
+            &net(),
+            &reference(),
+            &check(CheckKind::Safety { factor: 3.0 }),
+            &digests,
+        );
+        assert_eq!(result.not_judged, [Covered::Cable(CableId::new(1))]);
+        let [only] = result.judgements[..] else {
+            panic!("one judgement");
+        };
+        assert_eq!((only.segment, only.case), (Some(SegmentId::new(0)), 1));
+        assert_eq!((only.demand, only.limit, only.passes), (12_000.0, 10_000.0, false));
+        assert!((only.ratio - 1.2).abs() < 1e-15);
+        assert_eq!(result.verdict(), Verdict::Exceeds);
+    }
+
+    #[test]
+    fn slackness_is_a_share_of_the_reference_tension() {
+        // Reference tensions 2 kN and 1 kN in cable 0, slack in cable 1.
+        let digests = [digest(&[500.0, 600.0, 0.0]), digest(&[2000.0, 0.0, 0.0])];
+        let kind = CheckKind::Slackness {
+            min_share_of_reference: 0.2,
+        };
+        let result = judge(&net(), &reference(), &check(kind), &digests);
+        assert_eq!(result.not_judged, [Covered::Cable(CableId::new(1))]);
+        let worst = result.worst().expect("one judgement");
+        assert_eq!((worst.segment, worst.case), (Some(SegmentId::new(1)), 1));
+        assert_eq!((worst.demand, worst.passes), (0.0, false));
+        assert!((worst.ratio - 1.25).abs() < 1e-15);
+    }
+
+    #[test]
+    fn movement_of_a_loose_node_is_not_judged() {
+        let mut digests = [digest(&[1.0; 3]), digest(&[1.0; 3])];
+        digests[1].loose_nodes = vec![NodeId::new(1)];
+        digests[1].movements[0] = 0.03;
+        let check = Check {
+            cables: Vec::new(),
+            nodes: vec![NodeId::new(0), NodeId::new(1)],
+            ..check(CheckKind::Movement { limit: 0.02 })
+        };
+        let result = judge(&net(), &reference(), &check, &digests);
+        assert_eq!(result.not_judged, [Covered::Node(NodeId::new(1))]);
+        assert_eq!(result.judgements[0].case, 1);
+        assert!(!result.judgements[0].passes);
+    }
+
+    #[test]
+    fn anchor_pull_needs_a_support() {
+        let mut digests = [digest(&[1.0; 3]), digest(&[1.0; 3])];
+        digests[0].support_forces[0] = Some(900.0);
+        digests[1].support_forces[0] = Some(800.0);
+        let check = Check {
+            cables: Vec::new(),
+            nodes: vec![NodeId::new(0), NodeId::new(1)],
+            struts: vec![StrutId::new(0)],
+            ..check(CheckKind::AnchorPull { limit: 1000.0 })
+        };
+        let result = judge(&net(), &reference(), &check, &digests);
+        let unjudged = [Covered::Strut(StrutId::new(0)), Covered::Node(NodeId::new(1))];
+        assert_eq!(result.not_judged, unjudged);
+        assert_eq!((result.judgements[0].demand, result.judgements[0].case), (900.0, 0));
+        assert_eq!(result.verdict(), Verdict::NotJudged);
+    }
+
+    #[test]
+    fn a_case_without_a_sound_answer_outranks_everything() {
+        let mut digests = [digest(&[1.0; 3]), CaseDigest::default()];
+        let check = check(CheckKind::Safety { factor: 1.0 });
+        let verdict = |digests: &[CaseDigest]| judge(&net(), &reference(), &check, digests).verdict();
+        assert_eq!(verdict(&digests), Verdict::NoAnswer);
+        digests[1] = digest(&[1.0; 3]);
+        digests[1].audited = false;
+        assert_eq!(verdict(&digests), Verdict::NoAnswer);
+    }
+
+    #[test]
+    fn a_check_over_nothing_does_not_pass() {
+        let empty = Check {
+            cables: Vec::new(),
+            ..check(CheckKind::Safety { factor: 1.0 })
+        };
+        let digests = [digest(&[1.0; 3]), digest(&[1.0; 3])];
+        assert_eq!(
+            judge(&net(), &reference(), &empty, &digests).verdict(),
+            Verdict::NotJudged
+        );
+    }
+}

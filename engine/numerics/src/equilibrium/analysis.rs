@@ -1,0 +1,50 @@
+//! What is worked out once for a net before any state is sought.
+
+use std::sync::Arc;
+
+use super::linear::{Factor, Symbolic};
+use crate::assembly::Structure;
+use crate::model::Net;
+
+/// Numbering, pattern and elimination order of a net; cheap to clone, shared by every case and thread.
+#[derive(Clone, Debug)]
+pub struct Analysis {
+    structure: Arc<Structure>,
+    symbolic: Arc<Symbolic>,
+}
+
+impl Analysis {
+    /// Analyses a net.
+    #[must_use]
+    pub fn new(net: Arc<Net>) -> Self {
+        Self::of(Structure::new(net))
+    }
+
+    /// Analyses a numbered net.
+    #[must_use]
+    pub fn of(structure: Structure) -> Self {
+        let symbolic = Arc::new(Symbolic::new(structure.pattern()));
+        Self {
+            structure: Arc::new(structure),
+            symbolic,
+        }
+    }
+
+    /// The net with its numbering.
+    #[must_use]
+    pub fn structure(&self) -> &Structure {
+        &self.structure
+    }
+
+    /// Elimination order and structure of the factor.
+    #[must_use]
+    pub fn symbolic(&self) -> &Arc<Symbolic> {
+        &self.symbolic
+    }
+
+    /// Room for factorisations, for one worker.
+    #[must_use]
+    pub fn new_factor(&self) -> Factor {
+        Factor::new(Arc::clone(&self.symbolic))
+    }
+}

@@ -1,0 +1,252 @@
+//! The recipe: which method when, and how the load is put on.
+
+use nalgebra::Vector3;
+
+use super::newton::Newton;
+use super::run::{Observer, Run};
+use super::solution::LoadStepState;
+use super::{
+    Analysis, IterationReport, LoadSteps, Settings, Solution, SolveError, Termination, Way, existence, interior_point,
+    polish, relaxation, stability,
+};
+use crate::assembly::{Loading, check_vectors};
+use crate::load::Case;
+
+/// Share of slack segments at the start from which the interior point goes first.
+const MUCH_SLACK: f64 = 0.2;
+/// A segment counts as slack at the start below this share of its stress-free length.
+const CLEARLY_SLACK: f64 = 0.999;
+/// Forces below this share of the largest do not hold a node in place.
+const HOLDS: f64 = 1e-9;
+const FIRST_STEP: f64 = 0.25;
+const SMALLEST_STEP: f64 = 1.0 / 256.0;
+
+const TRY: Newton = Newton {
+    floor_share: 1.0,
+    limit: 15,
+};
+const AFTER_INTERIOR_POINT: Newton = Newton {
+    floor_share: 0.1,
+    limit: 80,
+};
+const WITH_STRUTS: Newton = Newton {
+    floor_share: 1.0,
+    limit: 60,
+};
+
+/// The state in which a net balances a case.
+///
+/// `start`: position of every node to start from (m); held nodes go where the case puts their supports.
+/// `reference_lengths`: unstressed lengths (m) from which those of the case are approached in load steps.
+/// `observe`: called at every iteration; a break ends the solve before the next.
+///
+/// Equal input gives equal bits. Not converged is an answer, see [`Solution::termination`].
+///
+/// # Errors
+/// [`SolveError`] if there can be no state, or none that stays: nothing holds a load, the numbers are beyond use, or the
+/// balanced state can move freely.
+pub fn solve(
+    analysis: &Analysis,
+    case: &Case,
+    start: &[Vector3<f64>],
+    reference_lengths: &[f64],
+    settings: &Settings,
+    observe: Observer<'_>,
+) -> Result<Solution, SolveError> {
+    let structure = analysis.structure();
+    let full = Loading::new(structure, case, reference_lengths, 1.0)?;
+    if start.len() != structure.net().nodes().len() {
+        return Err(crate::assembly::LoadingError::WrongLength {
+            what: "start positions",
+            given: start.len(),
+            needed: structure.net().nodes().len(),
+        }
+        .into());
+    }
+    check_vectors("start position", start)?;
+    existence::check_loads_are_held(structure, &full)?;
+
+    let level = |factor: f64| Loading::new(structure, case, reference_lengths, factor);
+    let mut run = Run::new(analysis, settings, start, observe);
+    let mut steps = Vec::new();
+    let mut positions = start.to_vec();
+    let (termination, load_factor) = match settings.load_steps {
+        LoadSteps::FullFirst => {
+            let outcome = state(&mut run, 1, 1.0, &full, &mut positions);
+            let gave_up = !matches!(outcome, Termination::Converged | Termination::Cancelled);
+            if gave_up && !structure.net().is_pure_tension() && !run.is_spent() {
+                in_smaller_steps(&mut run, &level, start, &mut positions)?
+            } else {
+                (outcome, 1.0)
+            }
+        }
+        LoadSteps::Equal(n) => {
+            let n = n.max(1);
+            let mut reached = (Termination::Converged, 0.0);
+            for step in 1..=n {
+                let factor = f64::from(step) / f64::from(n);
+                let loading = level(factor)?;
+                let before = positions.clone();
+                let mut outcome = state(&mut run, step, factor, &loading, &mut positions);
+                let gave_up = !matches!(outcome, Termination::Converged | Termination::Cancelled);
+                if gave_up && !structure.net().is_pure_tension() && !run.is_spent() {
+                    positions.copy_from_slice(&before);
+                    outcome = relaxed(&mut run, step, factor, &loading, &mut positions);
+                }
+                if outcome != Termination::Converged {
+                    // The last good state, if there is one, is worth more than the wreck.
+                    if step > 1 {
+                        positions = before;
+                    } else {
+                        reached.1 = factor;
+                    }
+                    reached.0 = outcome;
+                    break;
+                }
+                reached = (outcome, factor);
+                steps.push(LoadStepState {
+                    load_factor: factor,
+                    positions: positions.clone(),
+                    axial_forces: run.response.axial_forces.clone(),
+                });
+            }
+            reached
+        }
+    };
+
+    let at_end = if load_factor == 1.0 { full } else { level(load_factor)? };
+    run.respond(&at_end, &positions);
+    let way = way(&run.history, load_factor);
+    let holds = HOLDS * run.response.largest_axial_force().max(run.load);
+    let loose_nodes = existence::loose_nodes(structure, |s| run.response.axial_forces[s].abs() > holds);
+    if termination == Termination::Converged
+        && !structure.net().is_pure_tension()
+        && let Some(movement) = stability::free_movement(analysis, &at_end, &positions, &loose_nodes)
+    {
+        return Err(movement.into());
+    }
+    Ok(Solution {
+        axial_forces: std::mem::take(&mut run.response.axial_forces),
+        positions,
+        termination,
+        way,
+        load_factor,
+        loose_nodes,
+        steps,
+        history: run.history,
+        factorisations: run.factorisations,
+    })
+}
+
+/// The hardest method that the last level needed.
+fn way(history: &[IterationReport], load_factor: f64) -> Way {
+    let used = |way| {
+        let mut last_level = history.iter().rev().skip_while(|r| r.load_factor != load_factor);
+        let load_step = last_level.clone().next().map(|r| r.load_step);
+        last_level.any(|r| Some(r.load_step) == load_step && r.way == way)
+    };
+    if used(Way::Relaxation) {
+        Way::Relaxation
+    } else if used(Way::InteriorPoint) {
+        Way::InteriorPoint
+    } else {
+        Way::Newton
+    }
+}
+
+/// One load level, by whatever the net asks for.
+fn state(
+    run: &mut Run<'_>,
+    load_step: u32,
+    load_factor: f64,
+    loading: &Loading,
+    positions: &mut Vec<Vector3<f64>>,
+) -> Termination {
+    loading.place_supports(run.structure, positions);
+    run.begin(load_step, load_factor, loading);
+    if !run.structure.net().is_pure_tension() {
+        return WITH_STRUTS.solve(run, loading, positions);
+    }
+    run.respond(loading, positions);
+    let (mut slack, mut present) = (0.0, 0.0);
+    for (bar, length) in loading.bars.iter().zip(&run.response.lengths) {
+        if bar.is_present() {
+            present += 1.0;
+            slack += f64::from(u8::from(*length < CLEARLY_SLACK * bar.stress_free_length));
+        }
+    }
+    let entry = positions.clone();
+    if slack < MUCH_SLACK * present {
+        let outcome = TRY.solve(run, loading, positions);
+        if matches!(outcome, Termination::Converged | Termination::Cancelled) || run.is_spent() {
+            return outcome;
+        }
+        positions.copy_from_slice(&entry);
+    }
+    match interior_point::solve(run, loading, positions) {
+        Err(Termination::Cancelled) => return Termination::Cancelled,
+        Err(_) => positions.copy_from_slice(&entry),
+        Ok((forces, load)) => {
+            let inside = positions.clone();
+            match polish::solve(run, loading, positions, &forces, load) {
+                Termination::Converged => return Termination::Converged,
+                Termination::Cancelled => return Termination::Cancelled,
+                _ => positions.copy_from_slice(&inside),
+            }
+        }
+    }
+    AFTER_INTERIOR_POINT.solve(run, loading, positions)
+}
+
+/// Load steps as small as they have to be, then relaxation at full load: for nets with struts.
+///
+/// Returns how it ended and the share of the load that `positions` carry.
+fn in_smaller_steps(
+    run: &mut Run<'_>,
+    level: &dyn Fn(f64) -> Result<Loading, crate::assembly::LoadingError>,
+    start: &[Vector3<f64>],
+    positions: &mut Vec<Vector3<f64>>,
+) -> Result<(Termination, f64), SolveError> {
+    let (mut reached, mut step, mut load_step) = (0.0, FIRST_STEP, 1);
+    let mut good = start.to_vec();
+    while step >= SMALLEST_STEP && !run.is_spent() {
+        let factor = f64::min(reached + step, 1.0);
+        let loading = level(factor)?;
+        load_step += 1;
+        positions.copy_from_slice(&good);
+        match state(run, load_step, factor, &loading, positions) {
+            Termination::Converged if factor == 1.0 => return Ok((Termination::Converged, 1.0)),
+            Termination::Cancelled => return Ok((Termination::Cancelled, factor)),
+            Termination::Converged => {
+                good.copy_from_slice(positions);
+                reached = factor;
+                step *= 2.0;
+            }
+            _ => step *= 0.5,
+        }
+    }
+    let loading = level(1.0)?;
+    positions.copy_from_slice(&good);
+    let outcome = relaxed(run, load_step + 1, 1.0, &loading, positions);
+    if matches!(outcome, Termination::Converged | Termination::Cancelled) || reached == 0.0 {
+        return Ok((outcome, 1.0));
+    }
+    positions.copy_from_slice(&good);
+    Ok((outcome, reached))
+}
+
+/// Dynamic relaxation, then Newton for the last digits.
+fn relaxed(
+    run: &mut Run<'_>,
+    load_step: u32,
+    load_factor: f64,
+    loading: &Loading,
+    positions: &mut Vec<Vector3<f64>>,
+) -> Termination {
+    loading.place_supports(run.structure, positions);
+    run.begin(load_step, load_factor, loading);
+    match relaxation::solve(run, loading, positions) {
+        Termination::Converged => WITH_STRUTS.solve(run, loading, positions),
+        outcome => outcome,
+    }
+}

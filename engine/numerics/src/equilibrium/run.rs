@@ -1,0 +1,205 @@
+//! What the methods share: room for their numbers, the stop rule, and the line to the observer.
+
+use std::ops::ControlFlow;
+
+use nalgebra::{Matrix3, Vector3};
+
+use super::linear::{Factor, FactorError};
+use super::{Analysis, IterationReport, Settings, Termination, Way, Yardstick};
+use crate::assembly::{Loading, Response, Structure};
+
+/// Watches a solve and may stop it.
+pub(super) type Observer<'a> = &'a mut dyn FnMut(&IterationReport) -> ControlFlow<()>;
+
+/// Displacements beyond this many times the size of the input count as running away.
+const RUNS_AWAY: f64 = 1e3;
+
+/// Share of the forces up to which rounding in the positions may hide a residual.
+const HIDDEN_BY_ROUNDING: f64 = 1e-4;
+
+/// One solve: buffers, counters, and who watches.
+pub(super) struct Run<'a> {
+    pub(super) structure: &'a Structure,
+    pub(super) settings: &'a Settings,
+    start: &'a [Vector3<f64>],
+    box_size: f64,
+    observe: Observer<'a>,
+    pub(super) history: Vec<IterationReport>,
+    pub(super) load_step: u32,
+    pub(super) load_factor: f64,
+    pub(super) iteration: u32,
+    pub(super) factorisations: u32,
+    /// Largest force met so far in this load step (N); steadies the stop rule where all forces fade.
+    pub(super) force_scale: f64,
+    /// Largest load on a free direction in this load step (N).
+    pub(super) load: f64,
+    rounding: Vec<f64>,
+    factor: Factor,
+    pub(super) values: Vec<f64>,
+    pub(super) blocks: Vec<Matrix3<f64>>,
+    pub(super) response: Response,
+    pub(super) trial: Response,
+    pub(super) trial_positions: Vec<Vector3<f64>>,
+    /// Step along the free directions (m).
+    pub(super) step: Vec<f64>,
+    /// The same, one vector a node (m).
+    pub(super) nodal_step: Vec<Vector3<f64>>,
+}
+
+impl<'a> Run<'a> {
+    pub(super) fn new(
+        analysis: &'a Analysis,
+        settings: &'a Settings,
+        start: &'a [Vector3<f64>],
+        observe: Observer<'a>,
+    ) -> Self {
+        let structure = analysis.structure();
+        Self {
+            structure,
+            settings,
+            start,
+            box_size: 0.0,
+            observe,
+            history: Vec::new(),
+            load_step: 1,
+            load_factor: 1.0,
+            iteration: 0,
+            factorisations: 0,
+            force_scale: 0.0,
+            load: 0.0,
+            rounding: vec![0.0; structure.n_dofs()],
+            factor: analysis.new_factor(),
+            values: vec![0.0; structure.pattern().n_entries()],
+            blocks: vec![Matrix3::zeros(); structure.net().segments().len()],
+            response: Response::new(structure),
+            trial: Response::new(structure),
+            trial_positions: start.to_vec(),
+            step: vec![0.0; structure.n_dofs()],
+            nodal_step: vec![Vector3::zeros(); start.len()],
+        }
+    }
+
+    /// Begins a load step: counts anew, and works out what rounding may hide at each free direction.
+    ///
+    /// Positions are known to their last bit only, of the size of the input; a segment turns that into a force by its
+    /// stiffness. The size is that of the input, never of the iterate: a net that flies off would else pass.
+    pub(super) fn begin(&mut self, load_step: u32, load_factor: f64, loading: &Loading) {
+        self.load_step = load_step;
+        self.load_factor = load_factor;
+        self.iteration = 0;
+        self.load = loading.largest_force(self.structure);
+        self.force_scale = self.load;
+        let coordinates = self.start.iter().map(Vector3::amax);
+        let lengths = loading
+            .bars
+            .iter()
+            .filter(|b| b.is_present())
+            .map(|b| b.stress_free_length);
+        self.box_size = coordinates.chain(lengths).fold(0.0, f64::max);
+        let mut stiffness = vec![0.0; self.start.len()];
+        for (bar, segment) in loading.bars.iter().zip(self.structure.net().segments()) {
+            for end in segment.ends {
+                stiffness[end.index()] += bar.stiffness;
+            }
+        }
+        for elastic in self.structure.net().elastic_supports() {
+            for (position, end) in elastic.nodes().iter().enumerate() {
+                stiffness[end.index()] += elastic.stiffness().rows(3 * position, 3).abs().row_sum().amax();
+            }
+        }
+        for (dof, rounding) in self.rounding.iter_mut().enumerate() {
+            let node = self.structure.dofs().node(dof);
+            *rounding = 4.0 * f64::EPSILON * stiffness[node.index()] * self.box_size;
+        }
+    }
+
+    /// Whether a response is in balance: within tolerance, or within what rounding of the positions hides.
+    pub(super) fn is_balanced(&self, response: &Response) -> bool {
+        let load = self.load;
+        let force = response.largest_axial_force();
+        let yardstick = match self.settings.yardstick {
+            Yardstick::Load if load > 0.0 => load,
+            _ => load.max(force),
+        };
+        let tolerance = self.settings.tolerance * yardstick;
+        let most_hidden = HIDDEN_BY_ROUNDING * load.max(force).max(self.force_scale);
+        response
+            .residual
+            .iter()
+            .zip(&self.rounding)
+            .all(|(r, rounding)| r.abs() <= tolerance.max(rounding.min(most_hidden)))
+    }
+
+    /// Whether `positions` have left the neighbourhood of the input.
+    pub(super) fn runs_away(&self, positions: &[Vector3<f64>]) -> bool {
+        let limit = RUNS_AWAY * self.box_size;
+        let near = |(x, start): (&Vector3<f64>, &Vector3<f64>)| (x - start).iter().all(|c| c.abs() <= limit);
+        !positions.iter().zip(self.start).all(near)
+    }
+
+    /// Assembles the blocks, adds the elastic supports and factorises; false if not positive definite.
+    pub(super) fn factorise_blocks(&mut self) -> bool {
+        self.structure.tangent_into(&self.blocks, &mut self.values);
+        self.structure.add_elastic_supports(&mut self.values);
+        self.factorisations += 1;
+        let outcome: Result<(), FactorError> = self.factor.cholesky(&self.values);
+        outcome.is_ok()
+    }
+
+    /// Whether the allowance of factorisations is used up.
+    pub(super) fn is_spent(&self) -> bool {
+        self.factorisations >= self.settings.max_iterations
+    }
+
+    pub(super) fn solve_in_place(&mut self, right_hand_side: &mut [f64]) {
+        self.factor.solve_in_place(right_hand_side);
+    }
+
+    /// Newton step from the current residual and factor, into `step` and `nodal_step`; returns its slope `r·dx` (J).
+    pub(super) fn newton_step(&mut self) -> f64 {
+        self.step.copy_from_slice(&self.response.residual);
+        self.factor.solve_in_place(&mut self.step);
+        self.structure.dofs().nodal_into(&self.step, &mut self.nodal_step);
+        self.step.iter().zip(&self.response.residual).map(|(u, r)| u * r).sum()
+    }
+
+    /// Response at the given positions, into `response`.
+    pub(super) fn respond(&mut self, loading: &Loading, positions: &[Vector3<f64>]) {
+        self.structure.response_into(loading, positions, &mut self.response);
+        let force = self.response.largest_axial_force();
+        if force.is_finite() {
+            self.force_scale = self.force_scale.max(force);
+        }
+    }
+
+    /// Tells the observer of the state in `response` and keeps the report.
+    pub(super) fn report(&mut self, way: Way, loading: &Loading, step_length: f64) -> ControlFlow<Termination> {
+        let report = self.report_of(way, loading, step_length);
+        self.history.push(report);
+        self.tell(&report)
+    }
+
+    /// Tells the observer only.
+    pub(super) fn tell(&mut self, report: &IterationReport) -> ControlFlow<Termination> {
+        self.iteration += 1;
+        match (self.observe)(report) {
+            ControlFlow::Continue(()) => ControlFlow::Continue(()),
+            ControlFlow::Break(()) => ControlFlow::Break(Termination::Cancelled),
+        }
+    }
+
+    pub(super) fn report_of(&self, way: Way, loading: &Loading, step_length: f64) -> IterationReport {
+        let (residual, worst_node) = self.response.largest_residual(self.structure);
+        IterationReport {
+            way,
+            load_step: self.load_step,
+            load_factor: self.load_factor,
+            iteration: self.iteration,
+            residual,
+            worst_node,
+            strain_energy: self.response.strain_energy(loading),
+            slack: self.response.n_slack(loading),
+            step_length,
+        }
+    }
+}

@@ -1,0 +1,179 @@
+//! Forces of the members left to balance, from the balance of the held nodes.
+//!
+//! ```text
+//! Σ n_m N_m = −r_h   at every held node h, in the directions in which it is free outside the search
+//! ```
+//!
+//! Least squares by singular values: of many solutions the one of least square sum. Own weight of these members depends
+//! on their force, so the solve is repeated until the forces settle.
+
+use nalgebra::{DMatrix, DVector, Vector3};
+
+use super::search::{Point, Search};
+use super::{BalanceReport, ForceLeft, ShapeError};
+use crate::model::{AxialLaw, Net, NodeId, SegmentId};
+
+/// Singular values smaller than this share of the largest count as zero.
+const RANK: f64 = 1e-10;
+/// Forces left at the held nodes, over the largest force, at which they count as balanced.
+const BALANCED: f64 = 1e-10;
+const MAX_ROUNDS: usize = 50;
+
+impl Search<'_, '_> {
+    /// Finds the forces, leaves them in `balance_forces` and updates the point for them.
+    ///
+    /// Returns what is told of them and their largest change (N).
+    pub(super) fn balance(
+        &mut self,
+        hold: &[NodeId],
+        point: &mut Point,
+        family_densities: &[f64],
+    ) -> Result<(BalanceReport, f64), ShapeError> {
+        let net = self.net();
+        let members = self.parts.balance();
+        let rows: Vec<(NodeId, Vector3<f64>)> = hold.iter().flat_map(|h| free_directions(net, *h)).collect();
+        let directions = DMatrix::from_fn(rows.len(), members.len(), |row, column| {
+            let segment = members[column];
+            let [from, to] = net.segments()[segment].ends;
+            let (node, along) = &rows[row];
+            let n = point.chords[segment] / point.lengths[segment];
+            let sign = f64::from(u8::from(from == *node)) - f64::from(u8::from(to == *node));
+            sign * along.dot(&n)
+        });
+        let svd = directions.clone().svd(true, true);
+        let largest = svd.singular_values.iter().copied().fold(0.0, f64::max);
+        let rank = svd.singular_values.iter().filter(|v| **v > RANK * largest).count();
+        let before: Vec<f64> = members.iter().map(|e| self.balance_forces[*e]).collect();
+        let mut left = DVector::zeros(rows.len());
+        for round in 0..=MAX_ROUNDS {
+            // Out of balance with the forces as they are: what they have to take up in addition.
+            left = DVector::from_iterator(
+                rows.len(),
+                rows.iter()
+                    .map(|(node, along)| along.dot(&point.out_of_balance[node.index()])),
+            );
+            if members.is_empty() || rows.is_empty() || rank == 0 || round == MAX_ROUNDS {
+                break;
+            }
+            let more = svd.solve(&-&left, RANK * largest).expect("both sides were asked for");
+            if more.amax() <= 1e-14 * point_force(self, point) {
+                break;
+            }
+            for (segment, force) in members.iter().zip(&more) {
+                self.balance_forces[*segment] += force;
+            }
+            *point = self.point(std::mem::take(&mut point.positions), family_densities);
+        }
+        self.check_forces(hold, &members, rank, &left, point)?;
+        let change = members
+            .iter()
+            .zip(before)
+            .map(|(e, before)| (self.balance_forces[*e] - before).abs())
+            .fold(0.0, f64::max);
+        let report = BalanceReport {
+            unique: rank == members.len(),
+            rank,
+            residual: left.iter().fold(0.0, |m: f64, l| m.max(l.abs())),
+            segments: members.into_iter().map(SegmentId::new).collect(),
+        };
+        Ok((report, change))
+    }
+
+    fn check_forces(
+        &self,
+        hold: &[NodeId],
+        members: &[usize],
+        rank: usize,
+        left: &DVector<f64>,
+        point: &Point,
+    ) -> Result<(), ShapeError> {
+        let net = self.net();
+        let scale = point_force(self, point);
+        if left.iter().any(|l| l.abs() > BALANCED * scale) {
+            let force = |h: &NodeId| -> Vector3<f64> {
+                let along = free_directions(net, *h);
+                along
+                    .iter()
+                    .map(|(node, d)| d * d.dot(&point.out_of_balance[node.index()]))
+                    .sum()
+            };
+            let forces = hold.iter().map(|h| (*h, force(h))).collect();
+            return Err(ShapeError::BalanceUnsolvable {
+                members: members.len(),
+                left: forces_left(net, &point.positions, forces, BALANCED * scale),
+            });
+        }
+        let pushing: Vec<(String, f64)> = members
+            .iter()
+            .filter(|e| {
+                net.segments()[**e].law == AxialLaw::TensionOnly && self.balance_forces[**e] < -BALANCED * scale
+            })
+            .map(|e| (net.member_name(SegmentId::new(*e)).to_owned(), self.balance_forces[*e]))
+            .collect();
+        if pushing.is_empty() {
+            Ok(())
+        } else {
+            Err(ShapeError::BalancePushes {
+                members: pushing,
+                unique: rank == members.len(),
+            })
+        }
+    }
+}
+
+fn point_force(search: &Search<'_, '_>, point: &Point) -> f64 {
+    let loads = search.loads.nodal.iter().map(|p| p.amax());
+    point
+        .axial_forces
+        .iter()
+        .map(|n| n.abs())
+        .chain(loads)
+        .fold(0.0, f64::max)
+}
+
+/// Directions in which a held node is free outside the search.
+fn free_directions(net: &Net, node: NodeId) -> Vec<(NodeId, Vector3<f64>)> {
+    let axes = [Vector3::x(), Vector3::y(), Vector3::z()];
+    let free: &[Vector3<f64>] = net.support_of(node).map_or(&axes, |support| support.free());
+    free.iter().map(|direction| (node, *direction)).collect()
+}
+
+/// Forces above `least`, largest first, each with the neighbour towards which it points best.
+pub(super) fn forces_left(
+    net: &Net,
+    positions: &[Vector3<f64>],
+    forces: Vec<(NodeId, Vector3<f64>)>,
+    least: f64,
+) -> Vec<ForceLeft> {
+    let mut forces: Vec<_> = forces.into_iter().filter(|(_, f)| f.norm() > least).collect();
+    forces.sort_by(|(_, a), (_, b)| b.norm().total_cmp(&a.norm()));
+    let towards = |node: NodeId, force: &Vector3<f64>| {
+        let neighbours = net.segments().iter().filter_map(|s| match s.ends {
+            [a, b] if a == node => Some(b),
+            [a, b] if b == node => Some(a),
+            _ => None,
+        });
+        let alignment = |other: NodeId| {
+            let d = positions[other.index()] - positions[node.index()];
+            if d.norm() > 0.0 {
+                d.dot(force) / (d.norm() * force.norm())
+            } else {
+                0.0
+            }
+        };
+        // Within 30° it is a help to name the neighbour; beyond, the direction says more.
+        neighbours
+            .map(|other| (alignment(other), other))
+            .filter(|(along, _)| *along > 0.866)
+            .max_by(|a, b| a.0.total_cmp(&b.0))
+            .map(|(_, other)| net.node_name(other).to_owned())
+    };
+    forces
+        .into_iter()
+        .map(|(node, force)| ForceLeft {
+            towards: towards(node, &force),
+            node: net.node_name(node).to_owned(),
+            force,
+        })
+        .collect()
+}

@@ -1,0 +1,311 @@
+//! The reference state, from rules to a net that stands.
+
+use std::ops::ControlFlow;
+
+use nalgebra::Vector3;
+
+use super::balance::forces_left;
+use super::gate::{Found, finish};
+use super::loads::ShapeLoads;
+use super::parts::{Part, Parts};
+use super::search::{Point, Search};
+use super::targets::{Densities, MET};
+use super::{BalanceReport, Prestress, ShapeError, Target, frozen};
+use crate::assembly::Structure;
+use crate::equilibrium::{Analysis, IterationReport, Settings, existence};
+use crate::load::Action;
+use crate::model::{Member, Net, NodeId, SegmentId};
+
+/// Rounds between the search and members left to balance that end at nodes which can still move.
+const MAX_ROUNDS: usize = 60;
+/// Change of their forces, over the largest force, at which these rounds end.
+const SETTLED: f64 = 1e-13;
+
+/// Finds the reference state: positions, unstressed lengths and forces that balance the actions of `prestress.under`.
+///
+/// Free nodes of `prestress.hold` stay where they were given while the shape of the rest is found; members left to
+/// balance then bear what keeps them there. If every member has a given unstressed length and nothing is held, the net
+/// is solved as an elastic one from the given coordinates.
+///
+/// `prestress`: one rule a segment, indices within `actions` and the net. `observe` hears of each iteration and may ask
+/// to stop.
+///
+/// # Errors
+/// [`ShapeError`], in the client's ids, if there is no such state or it was not found.
+pub fn find(
+    analysis: &Analysis,
+    prestress: &Prestress,
+    actions: &[Action],
+    settings: &Settings,
+    observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
+) -> Result<Found, ShapeError> {
+    let net = analysis.structure().net();
+    let parts = Parts::new(net, prestress)?;
+    let loads = ShapeLoads::new(net, actions, &prestress.under)?;
+    let nowhere = |nodes: &mut dyn Iterator<Item = NodeId>| -> Vec<String> {
+        let missing = nodes.filter(|n| net.nodes()[n.index()].position.is_none());
+        missing.map(|n| net.node_name(n).to_owned()).collect()
+    };
+    let missing = nowhere(&mut prestress.hold.iter().copied());
+    if !missing.is_empty() {
+        return Err(ShapeError::HeldWithoutPosition { nodes: missing });
+    }
+    parts.check_balance_ends(net, &prestress.hold)?;
+    if parts.all_elastic() && prestress.hold.is_empty() {
+        let missing = nowhere(&mut (0..net.nodes().len()).map(NodeId::new));
+        if !missing.is_empty() {
+            return Err(ShapeError::MissingCoordinates { nodes: missing });
+        }
+        return frozen::find(analysis, prestress, actions, settings, observe);
+    }
+    let kept;
+    let searched = if prestress.hold.is_empty() {
+        analysis
+    } else {
+        kept = Analysis::of(Structure::keeping(net.clone(), &prestress.hold));
+        &kept
+    };
+    let (shape, iterations) = shape(searched, &parts, &loads, &prestress.hold, observe)?;
+    finish(
+        analysis,
+        prestress,
+        actions,
+        settings,
+        shape.into_raw(net, &parts, iterations)?,
+        observe,
+    )
+}
+
+/// What the search came to.
+struct Shape {
+    densities: Densities,
+    balance: Option<BalanceReport>,
+}
+
+/// A shape whose elastic balance has not been looked at yet.
+pub(super) struct RawShape {
+    pub(super) positions: Vec<Vector3<f64>>,
+    pub(super) axial_forces: Vec<f64>,
+    /// By segment (m).
+    pub(super) unstressed: Vec<f64>,
+    pub(super) iterations: u32,
+    pub(super) targets: Vec<Target>,
+    pub(super) balance: Option<BalanceReport>,
+    pub(super) taut_given_lengths: Vec<SegmentId>,
+}
+
+fn shape(
+    analysis: &Analysis,
+    parts: &Parts,
+    loads: &ShapeLoads,
+    hold: &[NodeId],
+    observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
+) -> Result<(Shape, u32), ShapeError> {
+    let net = analysis.structure().net();
+    let (start, densities) = start(analysis, parts, observe)?;
+    let mut search = Search::new(analysis, parts, loads, observe);
+    search.check_held()?;
+    let members = parts.balance();
+    let ends_move = members
+        .iter()
+        .flat_map(|e| net.segments()[*e].ends)
+        .any(|end| !analysis.structure().dofs().directions(end).is_empty());
+    let mut found = search.with_wanted_tensions(start, densities)?;
+    let mut balance = None;
+    for _ in 0..MAX_ROUNDS {
+        if hold.is_empty() && members.is_empty() {
+            break;
+        }
+        no_length(net, &found.point)?;
+        let (report, change) = search.balance(hold, &mut found.point, &found.densities)?;
+        balance = (!members.is_empty()).then_some(report);
+        let largest = found.point.axial_forces.iter().fold(0.0, |m: f64, n| m.max(n.abs()));
+        if !ends_move || change <= SETTLED * largest {
+            break;
+        }
+        found = search.with_wanted_tensions(found.point.positions, found.densities)?;
+    }
+    no_length(net, &found.point)?;
+    if !found.met {
+        return Err(unmet(net, parts, &search, &found));
+    }
+    let loose = existence::loose_nodes(analysis.structure(), |e| found.point.axial_forces[e] != 0.0);
+    if !loose.is_empty() {
+        return Err(ShapeError::Loose {
+            nodes: names(net, &loose),
+        });
+    }
+    let iterations = search.iterations;
+    Ok((
+        Shape {
+            densities: found,
+            balance,
+        },
+        iterations,
+    ))
+}
+
+/// Positions and force densities of the families to start from.
+///
+/// A free node without coordinates starts where force densities alone would put it.
+fn start(
+    analysis: &Analysis,
+    parts: &Parts,
+    observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
+) -> Result<(Vec<Vector3<f64>>, Vec<f64>), ShapeError> {
+    let net = analysis.structure().net();
+    let given: Vec<Vector3<f64>> = net.nodes().iter().filter_map(|n| n.position).collect();
+    let middle = given.iter().sum::<Vector3<f64>>() / (given.len().max(1) as f64);
+    let size = given
+        .iter()
+        .fold(0.0, |m: f64, x| m.max((x - middle).norm()))
+        .max(f64::MIN_POSITIVE);
+    let mut positions: Vec<Vector3<f64>> = net.nodes().iter().map(|n| n.position.unwrap_or(middle)).collect();
+    // A tenth of the net is as good a guess of a segment's length as any; only its order of magnitude matters.
+    let mut densities: Vec<f64> = parts.families.iter().map(|f| f.wanted / (0.1 * size)).collect();
+    let some_density = parts.of.iter().any(|part| !matches!(part, Part::Elastic(_)));
+    if given.len() < net.nodes().len() && some_density {
+        let mut sorted: Vec<f64> = (parts.of.iter())
+            .filter_map(|part| match part {
+                Part::Density(q) if *q != 0.0 => Some(q.abs()),
+                Part::Family(family) => Some(densities[*family].abs()),
+                _ => None,
+            })
+            .collect();
+        sorted.sort_by(f64::total_cmp);
+        let typical = sorted.get(sorted.len() / 2).copied().unwrap_or(1.0);
+        let soft = Parts {
+            of: (parts.of.iter())
+                .map(|part| match part {
+                    Part::Density(q) => Part::Density(q.abs()),
+                    Part::Family(family) => Part::Density(densities[*family].abs()),
+                    // Soft, so that ropes of given length hardly shape the start.
+                    Part::Elastic(_) => Part::Density(1e-2 * typical),
+                    Part::Balance => Part::Balance,
+                })
+                .collect(),
+            families: Vec::new(),
+        };
+        let unloaded = ShapeLoads::none(net);
+        let mut search = Search::new(analysis, &soft, &unloaded, observe);
+        search.check_held()?;
+        positions = search.balanced(positions, &[])?.positions;
+    }
+    let length = |e: &usize| {
+        let [i, j] = net.segments()[*e].ends.map(NodeId::index);
+        (positions[j] - positions[i]).norm()
+    };
+    for (density, family) in densities.iter_mut().zip(&parts.families) {
+        let mean = family.segments.iter().map(length).sum::<f64>() / family.segments.len() as f64;
+        if mean > 1e-6 * size {
+            *density = family.wanted / mean;
+        }
+    }
+    Ok((positions, densities))
+}
+
+/// Refuses a shape in which both ends of a member coincide.
+fn no_length(net: &Net, point: &Point) -> Result<(), ShapeError> {
+    let size = point.positions.iter().fold(0.0, |m: f64, x| m.max(x.amax()));
+    match point.lengths.iter().position(|l| *l <= 1e-12 * size) {
+        Some(index) => {
+            let [from, to] = net.segments()[index].ends.map(|end| net.node_name(end).to_owned());
+            Err(ShapeError::NoLength {
+                member: net.member_name(SegmentId::new(index)).to_owned(),
+                from,
+                to,
+            })
+        }
+        None => Ok(()),
+    }
+}
+
+/// The client's ids.
+pub(super) fn names(net: &Net, nodes: &[NodeId]) -> Vec<String> {
+    nodes.iter().map(|n| net.node_name(*n).to_owned()).collect()
+}
+
+fn targets(net: &Net, parts: &Parts, found: &Densities) -> Vec<Target> {
+    let describe = |segments: &[usize]| {
+        let segment = net.segments()[segments[0]];
+        let name = net.member_name(SegmentId::new(segments[0]));
+        match segment.member {
+            Member::Cable(cable) if segments.len() == 1 && net.cables()[cable.index()].segments.len() > 1 => {
+                format!(
+                    "{name} ({}-{})",
+                    net.node_name(segment.ends[0]),
+                    net.node_name(segment.ends[1])
+                )
+            }
+            _ => name.to_owned(),
+        }
+    };
+    (parts.families.iter().zip(&found.means))
+        .map(|(family, mean)| Target {
+            member: describe(&family.segments),
+            is_mean: family.segments.len() > 1,
+            wanted: family.wanted,
+            found: *mean,
+            met: (mean / family.wanted - 1.0).abs() <= MET,
+        })
+        .collect()
+}
+
+/// Says what the wanted tensions would leave at the nodes, and what balances nearest to them.
+fn unmet(net: &Net, parts: &Parts, search: &Search<'_, '_>, found: &Densities) -> ShapeError {
+    let point = &found.point;
+    let mut nodal = vec![Vector3::zeros(); net.nodes().len()];
+    for (family, mean) in parts.families.iter().zip(&found.means) {
+        for &e in &family.segments {
+            let more = point.axial_forces[e] * (family.wanted / mean - 1.0);
+            let [i, j] = net.segments()[e].ends.map(NodeId::index);
+            nodal[i] += point.chords[e] * (more / point.lengths[e]);
+            nodal[j] -= point.chords[e] * (more / point.lengths[e]);
+        }
+    }
+    let dofs = search.structure.dofs();
+    let forces = (0..net.nodes().len())
+        .map(|n| {
+            let free = dofs.directions(NodeId::new(n));
+            (NodeId::new(n), free.iter().map(|d| d * d.dot(&nodal[n])).sum())
+        })
+        .collect();
+    let largest = point.axial_forces.iter().fold(0.0, |m: f64, n| m.max(n.abs()));
+    ShapeError::TargetsUnmet {
+        targets: targets(net, parts, found),
+        left: forces_left(net, &point.positions, forces, MET * largest),
+        rank: found.rank,
+    }
+}
+
+impl Shape {
+    fn into_raw(self, net: &Net, parts: &Parts, iterations: u32) -> Result<RawShape, ShapeError> {
+        let point = &self.densities.point;
+        for (index, segment) in net.segments().iter().enumerate() {
+            let (force, stiffness) = (point.axial_forces[index], segment.section.axial_stiffness);
+            let is_given = matches!(parts.of[index], Part::Elastic(_));
+            if !is_given && force <= -0.9 * stiffness {
+                return Err(ShapeError::BeyondStiffness {
+                    member: net.member_name(SegmentId::new(index)).to_owned(),
+                    axial_force: force,
+                    axial_stiffness: stiffness,
+                });
+            }
+        }
+        let taut = |e: &usize| match parts.of[*e] {
+            Part::Elastic(bar) => {
+                bar.is_taut(point.lengths[*e]) && matches!(net.segments()[*e].member, Member::Cable(_))
+            }
+            _ => false,
+        };
+        Ok(RawShape {
+            taut_given_lengths: (0..parts.of.len()).filter(taut).map(SegmentId::new).collect(),
+            targets: targets(net, parts, &self.densities),
+            positions: self.densities.point.positions,
+            axial_forces: self.densities.point.axial_forces,
+            unstressed: self.densities.point.unstressed,
+            iterations,
+            balance: self.balance,
+        })
+    }
+}

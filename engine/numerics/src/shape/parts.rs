@@ -1,0 +1,140 @@
+//! What the rules make of each segment, and the families whose force density is sought.
+
+use super::{Prestress, PrestressRule, ShapeError};
+use crate::element::Bar;
+use crate::model::{AxialLaw, Net, NodeId};
+
+/// What a segment is to the search.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub(super) enum Part {
+    /// Its force density is given (N/m).
+    Density(f64),
+    /// It shares the sought force density of a family.
+    Family(usize),
+    /// Its unstressed length is given.
+    Elastic(Bar),
+    /// It bears what the held nodes need.
+    Balance,
+}
+
+/// Segments with one force density in common and a wanted mean tension.
+#[derive(Clone, Debug, PartialEq)]
+pub(super) struct Family {
+    /// Its segments.
+    pub(super) segments: Vec<usize>,
+    /// Wanted mean of their axial forces (N), not zero.
+    pub(super) wanted: f64,
+}
+
+/// The rules, sorted.
+#[derive(Clone, Debug, PartialEq)]
+pub(super) struct Parts {
+    /// One entry a segment.
+    pub(super) of: Vec<Part>,
+    /// Families, those of mean tensions first, then one for each segment with a tension of its own.
+    pub(super) families: Vec<Family>,
+}
+
+impl Parts {
+    /// Sorts the rules and checks their numbers.
+    pub(super) fn new(net: &Net, prestress: &Prestress) -> Result<Self, ShapeError> {
+        let bad = |segment: usize, what, value| ShapeError::BadRule {
+            member: net.member_name(crate::model::SegmentId::new(segment)).to_owned(),
+            what,
+            value,
+        };
+        let mut families: Vec<Family> = prestress
+            .mean_tensions
+            .iter()
+            .map(|wanted| Family {
+                segments: Vec::new(),
+                wanted: *wanted,
+            })
+            .collect();
+        let mut of = Vec::with_capacity(prestress.rules.len());
+        for (index, (rule, segment)) in prestress.rules.iter().zip(net.segments()).enumerate() {
+            let bearable = |force: f64| force.is_finite() && (force >= 0.0 || segment.law == AxialLaw::TwoWay);
+            of.push(match *rule {
+                PrestressRule::ForceDensity(q) if bearable(q) => Part::Density(q),
+                PrestressRule::ForceDensity(q) => return Err(bad(index, "force density (N/m)", q)),
+                // Without force there is nothing to seek.
+                PrestressRule::Tension(0.0) => Part::Density(0.0),
+                PrestressRule::Tension(n) if bearable(n) => {
+                    families.push(Family {
+                        segments: vec![index],
+                        wanted: n,
+                    });
+                    Part::Family(families.len() - 1)
+                }
+                PrestressRule::Tension(n) => return Err(bad(index, "tension (N)", n)),
+                PrestressRule::MeanTension(family) => {
+                    let wanted = prestress.mean_tensions[family];
+                    if !bearable(wanted) {
+                        return Err(bad(index, "mean tension (N)", wanted));
+                    }
+                    if wanted == 0.0 {
+                        Part::Density(0.0)
+                    } else {
+                        families[family].segments.push(index);
+                        Part::Family(family)
+                    }
+                }
+                PrestressRule::UnstressedLength(l0) if l0.is_finite() && l0 > 0.0 => {
+                    Part::Elastic(Bar::new(segment.law, segment.section.axial_stiffness, l0, 0.0))
+                }
+                PrestressRule::UnstressedLength(l0) => return Err(bad(index, "unstressed length (m)", l0)),
+                PrestressRule::Balance => Part::Balance,
+            });
+        }
+        // Families that no segment belongs to are dropped, and the numbers of those behind them move up.
+        let mut number = vec![0; families.len()];
+        let mut kept = Vec::with_capacity(families.len());
+        for (index, family) in families.into_iter().enumerate() {
+            number[index] = kept.len();
+            if !family.segments.is_empty() {
+                kept.push(family);
+            }
+        }
+        for part in &mut of {
+            if let Part::Family(family) = part {
+                *family = number[*family];
+            }
+        }
+        Ok(Self { of, families: kept })
+    }
+
+    /// Whether every member has a given unstressed length, as in a frozen net.
+    pub(super) fn all_elastic(&self) -> bool {
+        self.of.iter().all(|part| matches!(part, Part::Elastic(_)))
+    }
+
+    /// Segments left to balance.
+    pub(super) fn balance(&self) -> Vec<usize> {
+        (0..self.of.len()).filter(|e| self.of[*e] == Part::Balance).collect()
+    }
+
+    /// A member left to balance bears nothing in the search, so it may end only where something else holds.
+    pub(super) fn check_balance_ends(&self, net: &Net, hold: &[NodeId]) -> Result<(), ShapeError> {
+        let mut held = vec![false; net.nodes().len()];
+        for node in hold {
+            held[node.index()] = true;
+        }
+        for support in net.supports() {
+            held[support.node().index()] = true;
+        }
+        for node in net.elastic_supports().iter().flat_map(|e| e.nodes()) {
+            held[node.index()] = true;
+        }
+        for segment in self.balance() {
+            for end in net.segments()[segment].ends {
+                if !held[end.index()] {
+                    return Err(ShapeError::BalanceNotHeld {
+                        member: net.member_name(crate::model::SegmentId::new(segment)).to_owned(),
+                        node: net.node_name(end).to_owned(),
+                    });
+                }
+            }
+        }
+        Ok(())
+    }
+}

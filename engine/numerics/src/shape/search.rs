@@ -1,0 +1,497 @@
+//! Positions that balance given force densities, elastic members of given length and loads that depend on lengths.
+//!
+//! ```text
+//! r(x) = p(x) − Σ f_e − S (x − rest) = 0
+//! f_e = q_e d_e                       force density q, given or for the time being
+//! f_e = T(l_e) n_e                    member of given unstressed length
+//! f_e = N_e n_e                       member left to balance, N as last found
+//! p   = p0 + ½ Σ (w L0 + v plan)      L0 = l / (1 + N/EA), plan = length in the x-y plane
+//! ```
+//!
+//! The matrix `K` of the forces is symmetric; the part `P` of loads that depend on lengths is not, and small. Systems
+//! in `K − P` are solved by a Krylov iteration that `K`, factorised, preconditions.
+
+use std::ops::ControlFlow;
+
+use nalgebra::{Matrix3, Vector3};
+
+use super::ShapeError;
+use super::krylov::gmres;
+use super::loads::ShapeLoads;
+use super::parts::{Part, Parts};
+use crate::assembly::Structure;
+use crate::element::axial_block;
+use crate::equilibrium::linear::Factor;
+use crate::equilibrium::{Analysis, IterationReport, Termination, Way, existence};
+use crate::model::{AxialLaw, Net, NodeId};
+
+/// A call for each iteration; it may ask to stop.
+pub(super) type Observer<'a> = dyn FnMut(&IterationReport) -> ControlFlow<()> + 'a;
+
+/// Largest residual over the largest force at which positions count as balanced.
+const BALANCED: f64 = 1e-14;
+/// The same where rounding forbids more.
+const BALANCED_BUT_FOR_ROUNDING: f64 = 1e-11;
+const MAX_ITERATIONS: u32 = 100;
+/// Stiffness left to slack ropes, over the largest in the net, so that a slack rope does not make the matrix singular.
+const SLACK_STIFFNESS: f64 = 1e-10;
+
+/// The net at some positions.
+#[derive(Clone, Debug)]
+pub(super) struct Point {
+    pub(super) positions: Vec<Vector3<f64>>,
+    pub(super) chords: Vec<Vector3<f64>>,
+    pub(super) lengths: Vec<f64>,
+    /// Axial force (N).
+    pub(super) axial_forces: Vec<f64>,
+    /// Unstressed lengths by segment (m).
+    pub(super) unstressed: Vec<f64>,
+    /// Loads less forces of members and elastic supports (N).
+    pub(super) out_of_balance: Vec<Vector3<f64>>,
+    residual: Vec<f64>,
+    worst: (f64, Option<NodeId>),
+    largest_force: f64,
+}
+
+/// The search and its room.
+pub(super) struct Search<'a, 'o> {
+    pub(super) structure: &'a Structure,
+    pub(super) parts: &'a Parts,
+    pub(super) loads: &'a ShapeLoads,
+    /// Axial forces of the members left to balance (N), as last found; zero elsewhere.
+    pub(super) balance_forces: Vec<f64>,
+    /// Iterations so far.
+    pub(super) iterations: u32,
+    factor: Factor,
+    values: Vec<f64>,
+    observe: &'o mut Observer<'o>,
+}
+
+impl<'a, 'o> Search<'a, 'o> {
+    /// `analysis`: of the net with the nodes to be held kept in place.
+    pub(super) fn new(
+        analysis: &'a Analysis,
+        parts: &'a Parts,
+        loads: &'a ShapeLoads,
+        observe: &'o mut Observer<'o>,
+    ) -> Self {
+        let structure = analysis.structure();
+        Self {
+            structure,
+            parts,
+            loads,
+            balance_forces: vec![0.0; structure.net().segments().len()],
+            iterations: 0,
+            factor: analysis.new_factor(),
+            values: vec![0.0; structure.pattern().n_entries()],
+            observe,
+        }
+    }
+
+    pub(super) fn net(&self) -> &'a Net {
+        self.structure.net()
+    }
+
+    /// The force density of a segment, if it has one.
+    fn density(&self, segment: usize, family_densities: &[f64]) -> Option<f64> {
+        match self.parts.of[segment] {
+            Part::Density(q) => Some(q),
+            Part::Family(family) => Some(family_densities[family]),
+            Part::Elastic(_) | Part::Balance => None,
+        }
+    }
+
+    /// The net at given positions and densities of the families (N/m).
+    pub(super) fn point(&self, positions: Vec<Vector3<f64>>, family_densities: &[f64]) -> Point {
+        let net = self.net();
+        let n_segments = net.segments().len();
+        let mut point = Point {
+            chords: Vec::with_capacity(n_segments),
+            lengths: Vec::with_capacity(n_segments),
+            axial_forces: Vec::with_capacity(n_segments),
+            unstressed: Vec::with_capacity(n_segments),
+            out_of_balance: self.loads.nodal.clone(),
+            residual: vec![0.0; self.structure.n_dofs()],
+            worst: (0.0, None),
+            largest_force: self.loads.nodal.iter().fold(0.0, |m: f64, p| m.max(p.amax())),
+            positions,
+        };
+        for (index, segment) in net.segments().iter().enumerate() {
+            let [i, j] = segment.ends.map(NodeId::index);
+            let chord = point.positions[j] - point.positions[i];
+            let length = chord.norm();
+            let (axial, unstressed, force) = match self.parts.of[index] {
+                Part::Elastic(bar) => {
+                    let axial = bar.axial_force(length);
+                    let force = if length > 0.0 {
+                        chord * (axial / length)
+                    } else {
+                        Vector3::zeros()
+                    };
+                    (axial, bar.stress_free_length, force)
+                }
+                Part::Balance => {
+                    let axial = self.balance_forces[index];
+                    let force = if length > 0.0 {
+                        chord * (axial / length)
+                    } else {
+                        Vector3::zeros()
+                    };
+                    (
+                        axial,
+                        unstressed_length(length, axial, segment.section.axial_stiffness),
+                        force,
+                    )
+                }
+                Part::Density(_) | Part::Family(_) => {
+                    let q = self.density(index, family_densities).expect("a part with a density");
+                    let axial = q * length;
+                    (
+                        axial,
+                        unstressed_length(length, axial, segment.section.axial_stiffness),
+                        chord * q,
+                    )
+                }
+            };
+            let load = 0.5
+                * (self.loads.per_length[index] * unstressed + self.loads.per_plan_length[index] * chord.xy().norm());
+            point.out_of_balance[i] += force + load;
+            point.out_of_balance[j] += load - force;
+            point.largest_force = point.largest_force.max(axial.abs()).max(load.amax());
+            point.chords.push(chord);
+            point.lengths.push(length);
+            point.axial_forces.push(axial);
+            point.unstressed.push(unstressed);
+        }
+        for elastic in net.elastic_supports() {
+            for (row, node) in elastic.nodes().iter().enumerate() {
+                let force: Vector3<f64> = (elastic.nodes().iter().zip(elastic.rest()).enumerate())
+                    .map(|(column, (other, rest))| elastic.block(row, column) * (point.positions[other.index()] - rest))
+                    .sum();
+                point.out_of_balance[node.index()] -= force;
+                point.largest_force = point.largest_force.max(force.amax());
+            }
+        }
+        let dofs = self.structure.dofs();
+        dofs.components_into(&point.out_of_balance, &mut point.residual);
+        for (dof, r) in point.residual.iter().enumerate() {
+            if !r.is_finite() {
+                point.worst = (f64::INFINITY, Some(dofs.node(dof)));
+                break;
+            }
+            if r.abs() > point.worst.0 {
+                point.worst = (r.abs(), Some(dofs.node(dof)));
+            }
+        }
+        point
+    }
+
+    /// Factorises the stiffness at a point. `floor`: least force across a member of given length (N).
+    fn factorise(&mut self, point: &Point, family_densities: &[f64], floor: f64) -> Result<(), ShapeError> {
+        let n_segments = self.net().segments().len();
+        let mut blocks = vec![Matrix3::zeros(); n_segments];
+        let mut largest: f64 = 0.0;
+        let mut definite = true;
+        for (index, block) in blocks.iter_mut().enumerate() {
+            match self.parts.of[index] {
+                Part::Elastic(bar) => {
+                    let length = point.lengths[index];
+                    if length == 0.0 {
+                        continue;
+                    }
+                    let axial = point.axial_forces[index];
+                    definite &= axial >= 0.0;
+                    let across = if bar.law == AxialLaw::TensionOnly {
+                        axial.max(floor) / length.max(bar.stress_free_length)
+                    } else {
+                        axial / length
+                    };
+                    let along = if bar.is_taut(length) { bar.stiffness } else { across };
+                    largest = largest.max(along);
+                    *block = axial_block(along, across, &(point.chords[index] / length));
+                }
+                Part::Balance => {}
+                Part::Density(_) | Part::Family(_) => {
+                    let q = self.density(index, family_densities).expect("a part with a density");
+                    definite &= q >= 0.0;
+                    largest = largest.max(q.abs());
+                    *block = Matrix3::from_diagonal_element(q);
+                }
+            }
+        }
+        for (block, part) in blocks.iter_mut().zip(&self.parts.of) {
+            if matches!(part, Part::Elastic(_)) {
+                *block += Matrix3::from_diagonal_element(SLACK_STIFFNESS * largest);
+            }
+        }
+        self.structure.tangent_into(&blocks, &mut self.values);
+        self.structure.add_elastic_supports(&mut self.values);
+        let outcome = if definite {
+            self.factor.cholesky(&self.values)
+        } else {
+            self.factor.ldlt(&self.values).map(|_| ())
+        };
+        outcome.map_err(|error| match error {
+            crate::equilibrium::linear::FactorError::Pivot { dof } => ShapeError::Singular {
+                nodes: vec![self.net().node_name(self.structure.dofs().node(dof)).to_owned()],
+            },
+            crate::equilibrium::linear::FactorError::NotFinite => self.unbounded(point),
+        })
+    }
+
+    fn unbounded(&self, point: &Point) -> ShapeError {
+        let node = point.worst.1.unwrap_or(NodeId::new(0));
+        ShapeError::Unbounded {
+            node: self.net().node_name(node).to_owned(),
+        }
+    }
+
+    /// Solves `(K − P) v = b`, `K` as factorised, `P` at the point.
+    fn solve(&mut self, point: &Point, right_hand_side: Vec<f64>) -> Vec<f64> {
+        let (structure, parts, loads) = (self.structure, self.parts, self.loads);
+        let (factor, values) = (&mut self.factor, &self.values);
+        if !loads.depend_on_lengths {
+            let mut solution = right_hand_side;
+            factor.solve_in_place(&mut solution);
+            return solution;
+        }
+        gmres(
+            |v| {
+                let mut product = vec![0.0; v.len()];
+                structure.pattern().product_into(values, v, &mut product);
+                let change = load_change(structure, parts, loads, point, v);
+                product.iter_mut().zip(change).for_each(|(p, c)| *p -= c);
+                product
+            },
+            |v| factor.solve_in_place(v),
+            right_hand_side,
+        )
+    }
+
+    /// Positions at balance, from `start`, at given densities of the families (N/m).
+    pub(super) fn balanced(&mut self, start: Vec<Vector3<f64>>, family_densities: &[f64]) -> Result<Point, ShapeError> {
+        let mut point = self.point(start, family_densities);
+        let mut step = 0.0;
+        for iteration in 0..MAX_ITERATIONS {
+            self.report(&point, iteration, step)?;
+            if !point.worst.0.is_finite() {
+                return Err(self.unbounded(&point));
+            }
+            let allowed = self.allowed(&point, family_densities);
+            if point.worst.0 <= allowed {
+                return Ok(point);
+            }
+            self.factorise(&point, family_densities, point.worst.0)?;
+            let movement = self.solve(&point, point.residual.clone());
+            if movement.iter().any(|m| !m.is_finite()) {
+                return Err(self.singular(&movement));
+            }
+            let (next, taken) = self.line_search(&point, &movement, family_densities);
+            let stuck = next.worst.0 > 0.5 * point.worst.0 || taken == 0.0;
+            if stuck && point.worst.0 <= BALANCED_BUT_FOR_ROUNDING * point.largest_force {
+                return Ok(if next.worst.0 < point.worst.0 { next } else { point });
+            }
+            if taken == 0.0 {
+                return Err(self.not_converged(&point, Termination::StepTooSmall));
+            }
+            (point, step) = (next, taken);
+        }
+        Err(self.not_converged(&point, Termination::IterationLimit))
+    }
+
+    /// Largest residual that counts as balance: the rounding of forces and of stiffness times coordinates.
+    fn allowed(&self, point: &Point, family_densities: &[f64]) -> f64 {
+        let stiffest = (0..self.parts.of.len())
+            .map(|e| match self.parts.of[e] {
+                Part::Elastic(bar) if bar.is_taut(point.lengths[e]) => bar.stiffness,
+                _ => self.density(e, family_densities).unwrap_or(0.0).abs(),
+            })
+            .fold(0.0, f64::max);
+        let size = point.positions.iter().fold(0.0, |m: f64, x| m.max(x.amax()));
+        (BALANCED * point.largest_force).max(2.0 * f64::EPSILON * stiffest * size)
+    }
+
+    /// The step along `movement` at which the residual no longer points along it, and its length.
+    ///
+    /// With given force densities alone the equations are linear and the full step ends them.
+    fn line_search(&self, point: &Point, movement: &[f64], family_densities: &[f64]) -> (Point, f64) {
+        let slope = |p: &Point| -> f64 { p.residual.iter().zip(movement).map(|(r, m)| r * m).sum() };
+        let size = |p: &Point| p.residual.iter().map(|r| r * r).sum::<f64>().sqrt();
+        let at = |t: f64| {
+            let mut positions = point.positions.clone();
+            self.structure.dofs().move_nodes(movement, t, &mut positions);
+            self.point(positions, family_densities)
+        };
+        let (start_slope, start_size) = (slope(point), size(point));
+        let (mut low, mut low_slope, mut high) = (0.0, start_slope, f64::INFINITY);
+        let mut high_slope = 0.0;
+        let mut t = 1.0;
+        for _ in 0..25 {
+            let trial = at(t);
+            let trial_slope = slope(&trial);
+            if size(&trial) <= (1.0 - 1e-4 * t) * start_size || trial_slope.abs() <= 0.3 * start_slope.abs() {
+                return (trial, t);
+            }
+            if trial_slope * start_slope > 0.0 && trial_slope.is_finite() {
+                (low, low_slope) = (t, trial_slope);
+            } else {
+                (high, high_slope) = (t, trial_slope);
+            }
+            t = if high.is_finite() {
+                // Secant on the slope, kept off the ends of the bracket.
+                let secant = low + (high - low) * low_slope / (low_slope - high_slope);
+                let (near, far) = (low + 0.1 * (high - low), high - 0.1 * (high - low));
+                if secant.is_finite() {
+                    secant.clamp(near, far)
+                } else {
+                    0.5 * (low + high)
+                }
+            } else {
+                2.0 * t
+            };
+        }
+        (point.clone(), 0.0)
+    }
+
+    fn report(&mut self, point: &Point, iteration: u32, step_length: f64) -> Result<(), ShapeError> {
+        let energy = |e: usize| 0.5 * point.axial_forces[e] * (point.lengths[e] - point.unstressed[e]);
+        let slack = |e: &usize| match self.parts.of[*e] {
+            Part::Elastic(bar) => !bar.is_taut(point.lengths[*e]),
+            _ => false,
+        };
+        let n_segments = point.lengths.len();
+        let report = IterationReport {
+            way: Way::ForceDensities,
+            load_step: 1,
+            load_factor: 1.0,
+            iteration,
+            residual: point.worst.0,
+            worst_node: point.worst.1,
+            strain_energy: (0..n_segments).map(energy).sum(),
+            slack: (0..n_segments).filter(slack).count(),
+            step_length,
+        };
+        self.iterations += 1;
+        match (self.observe)(&report) {
+            ControlFlow::Continue(()) => Ok(()),
+            ControlFlow::Break(()) => Err(ShapeError::Cancelled),
+        }
+    }
+
+    fn not_converged(&self, point: &Point, termination: Termination) -> ShapeError {
+        ShapeError::NotConverged {
+            iterations: self.iterations,
+            residual: point.worst.0,
+            node: self.net().node_name(point.worst.1.unwrap_or(NodeId::new(0))).to_owned(),
+            termination,
+        }
+    }
+
+    fn singular(&self, movement: &[f64]) -> ShapeError {
+        let mut nodal = vec![Vector3::zeros(); self.net().nodes().len()];
+        self.structure.dofs().nodal_into(movement, &mut nodal);
+        let mut order: Vec<usize> = (0..nodal.len()).filter(|n| nodal[*n].norm() != 0.0).collect();
+        let size = |n: usize| {
+            if nodal[n].norm().is_nan() {
+                f64::INFINITY
+            } else {
+                nodal[n].norm()
+            }
+        };
+        order.sort_by(|a, b| size(*b).total_cmp(&size(*a)));
+        ShapeError::Singular {
+            nodes: order
+                .iter()
+                .take(6)
+                .map(|n| self.net().nodes()[*n].name.clone())
+                .collect(),
+        }
+    }
+
+    /// Change of the positions with the logarithm of the force density of a family, at balance, in the free directions.
+    ///
+    /// The stiffness must be that of the point: call [`Self::prepare_sensitivities`] first.
+    pub(super) fn sensitivity(&mut self, point: &Point, family: usize, density: f64) -> Vec<f64> {
+        let mut change = vec![Vector3::zeros(); self.net().nodes().len()];
+        for &index in &self.parts.families[family].segments {
+            let [i, j] = self.net().segments()[index].ends.map(NodeId::index);
+            let force = point.chords[index] * density;
+            // With more force the same length needs less rope, which weighs less.
+            let unstressed = point.unstressed[index];
+            let shorter = if unstressed > 0.0 {
+                unstressed * (1.0 - unstressed / point.lengths[index])
+            } else {
+                0.0
+            };
+            let load = self.loads.per_length[index] * (-0.5 * shorter);
+            change[i] += force + load;
+            change[j] += load - force;
+        }
+        let mut components = vec![0.0; self.structure.n_dofs()];
+        self.structure.dofs().components_into(&change, &mut components);
+        self.solve(point, components)
+    }
+
+    /// Factorises the stiffness at a balanced point.
+    pub(super) fn prepare_sensitivities(&mut self, point: &Point, family_densities: &[f64]) -> Result<(), ShapeError> {
+        self.factorise(point, family_densities, 0.0)
+    }
+
+    /// Refuses a net of which a part is led to too little support by members with force, or with a given length.
+    pub(super) fn check_held(&self) -> Result<(), ShapeError> {
+        let free = existence::loose_nodes(self.structure, |e| match self.parts.of[e] {
+            Part::Density(q) => q != 0.0,
+            Part::Family(_) | Part::Elastic(_) => true,
+            Part::Balance => false,
+        });
+        if free.is_empty() {
+            return Ok(());
+        }
+        Err(ShapeError::NotHeld {
+            nodes: free.iter().map(|n| self.net().node_name(*n).to_owned()).collect(),
+        })
+    }
+}
+
+/// `L0 = l / (1 + N/EA)`; where a strut would be crushed to less than a tenth, that of a tenth: the end of the search
+/// tells it apart.
+fn unstressed_length(length: f64, axial_force: f64, axial_stiffness: f64) -> f64 {
+    length / (1.0 + axial_force / axial_stiffness).max(0.1)
+}
+
+/// Derivative of the loads by a movement of the nodes, in the free directions: `P v`.
+fn load_change(structure: &Structure, parts: &Parts, loads: &ShapeLoads, point: &Point, movement: &[f64]) -> Vec<f64> {
+    let net = structure.net();
+    let n_nodes = net.nodes().len();
+    let (mut nodal, mut change) = (vec![Vector3::zeros(); n_nodes], vec![Vector3::zeros(); n_nodes]);
+    structure.dofs().nodal_into(movement, &mut nodal);
+    for (index, segment) in net.segments().iter().enumerate() {
+        let (length, plan) = (point.lengths[index], point.chords[index].xy().norm());
+        let [i, j] = segment.ends.map(NodeId::index);
+        let moved = nodal[j] - nodal[i];
+        let mut load = Vector3::zeros();
+        if length > 0.0 {
+            let longer = point.chords[index].dot(&moved) / length;
+            load += loads.per_length[index] * (0.5 * unstressed_slope(parts, point, index) * longer);
+        }
+        if plan > 0.0 {
+            let longer = point.chords[index].xy().dot(&moved.xy()) / plan;
+            load += loads.per_plan_length[index] * (0.5 * longer);
+        }
+        change[i] += load;
+        change[j] += load;
+    }
+    let mut components = vec![0.0; structure.n_dofs()];
+    structure.dofs().components_into(&change, &mut components);
+    components
+}
+
+/// `dL0/dl` at the force density as it is.
+fn unstressed_slope(parts: &Parts, point: &Point, segment: usize) -> f64 {
+    let stretch = point.lengths[segment] / point.unstressed[segment];
+    match parts.of[segment] {
+        Part::Elastic(_) => 0.0,
+        Part::Balance => 1.0 / stretch,
+        Part::Density(_) | Part::Family(_) => 1.0 / (stretch * stretch),
+    }
+}

@@ -1,0 +1,76 @@
+//! The audit passes what the solver finds and catches what is corrupted.
+
+use nalgebra::{DMatrix, Vector3};
+use ropewalk_numerics::equilibrium::audit::audit;
+use ropewalk_numerics::model::{ElasticSupportGiven, NodeId, SegmentId};
+
+use crate::saddle::saddle_net;
+
+#[test]
+fn a_solved_state_passes_and_its_supports_bear_its_loads() {
+    let net = saddle_net();
+    let solution = net.solve().unwrap();
+    let audit = audit(&net.net(), &net.case(), &solution.positions, &solution.axial_forces);
+    assert!(audit.passed, "{audit:?}");
+    assert!((audit.load_sum + audit.support_sum).norm() < 24.0 * audit.allowed);
+    assert!((audit.load_sum.z + 18.0 * 9600.0).abs() < 1e-9);
+}
+
+#[test]
+fn one_corrupted_tension_is_found() {
+    let net = saddle_net();
+    let mut solution = net.solve().unwrap();
+    solution.axial_forces[17] *= 1.0 + 1e-6;
+    let audit = audit(&net.net(), &net.case(), &solution.positions, &solution.axial_forces);
+    assert!(!audit.passed);
+    assert_eq!(audit.segment, Some(SegmentId::new(17)));
+    assert!(
+        audit.largest_imbalance <= audit.allowed,
+        "the positions are still right"
+    );
+}
+
+#[test]
+fn one_moved_node_is_found() {
+    let net = saddle_net();
+    let mut solution = net.solve().unwrap();
+    let node = (0..60).find(|n| !net.held.contains(n)).unwrap();
+    solution.positions[node].z += 1e-6;
+    let audit = audit(&net.net(), &net.case(), &solution.positions, &solution.axial_forces);
+    assert!(!audit.passed);
+    solution.positions[node].z = f64::NAN;
+    let net_audit = ropewalk_numerics::equilibrium::audit::audit(
+        &net.net(),
+        &net.case(),
+        &solution.positions,
+        &solution.axial_forces,
+    );
+    assert!(!net_audit.passed);
+}
+
+#[test]
+fn skew_sliders_movements_and_coupled_springs_are_balanced_too() {
+    let mut net = saddle_net();
+    let slider = net.held.remove(3);
+    net.sliders.push((slider, vec![Vector3::new(0.3, 0.2, 1.0)]));
+    net.movements.push((net.held[9], Vector3::new(0.02, -0.01, 0.03)));
+    let (a, b) = (net.held.remove(1), net.held.remove(2));
+    let mut stiffness = DMatrix::identity(6, 6) * 4e6;
+    for axis in 0..3 {
+        stiffness[(axis, 3 + axis)] = -1e6;
+        stiffness[(3 + axis, axis)] = -1e6;
+    }
+    net.elastic.push(ElasticSupportGiven {
+        nodes: vec![NodeId::new(a), NodeId::new(b)],
+        stiffness,
+    });
+    net.movements.push((a, Vector3::new(-0.01, 0.0, -0.002)));
+    let solution = net.solve().unwrap();
+    let audit = audit(&net.net(), &net.case(), &solution.positions, &solution.axial_forces);
+    assert!(audit.passed, "{audit:?}");
+    assert!(audit.support_forces[a].norm() > 1e3);
+    let slid = solution.positions[slider] - net.positions[slider];
+    assert!(slid.norm() > 1e-4 && slid.cross(&Vector3::new(0.3, 0.2, 1.0)).norm() < 1e-12);
+    let moved = net.movements[0].0;
+    assert_eq!(solution.positions[moved], net.positions[moved] + net.movements[0].1);
+}

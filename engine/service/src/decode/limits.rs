@@ -1,0 +1,102 @@
+//! Sizes that the server takes.
+
+use prost::Message;
+use ropewalk_api::ropewalk::v1;
+
+use super::findings::{Findings, Path};
+use super::net::NetDraft;
+use super::reasons;
+use crate::config::Limits;
+
+/// Bytes of one element of a list: it must fit a message from the server, which stays below 1 MiB.
+const LARGEST_ELEMENT: usize = 900 * 1024;
+/// Bytes of title, remark and labels together.
+const LARGEST_HEAD: usize = 128 * 1024;
+
+/// Refuses lists that are too long, before anything is made of them. Answers whether to go on.
+pub(crate) fn counts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings) -> bool {
+    let mut fits = most(findings, "cases", "cases", brief.cases.len(), limits.cases);
+    if let Some(v1::brief::NetSource::Net(net)) = &brief.net_source {
+        fits &= most(findings, "net.nodes", "nodes", net.nodes.len(), limits.nodes);
+        let paths: usize = net.cables.iter().map(|cable| cable.nodes.len().saturating_sub(1)).sum();
+        fits &= most(findings, "net", "segments", paths + net.struts.len(), limits.segments);
+    }
+    fits
+}
+
+/// Refuses nets with too many nodes, those that only paths name counted.
+pub(crate) fn nodes(net: &NetDraft<'_>, limits: &Limits, findings: &mut Findings) {
+    if net.message.nodes.len() <= limits.nodes as usize {
+        most(findings, "net", "nodes", net.nodes.len(), limits.nodes);
+    }
+}
+
+fn most(findings: &mut Findings, path: &str, what: &str, count: usize, limit: u32) -> bool {
+    let fits = count <= limit as usize;
+    if !fits {
+        findings
+            .error(
+                reasons::TOO_MANY,
+                &Path::root(path),
+                "",
+                format!("{count} {what}: this server takes {limit}"),
+                "send a smaller brief, or ask for a server with higher limits; GetInfo tells them",
+            )
+            .value(count);
+    }
+    fits
+}
+
+/// Refuses elements that no message from the server could repeat.
+pub(crate) fn elements(brief: &v1::Brief, findings: &mut Findings) {
+    fn each<M: Message>(list: &str, elements: &[M], id: impl Fn(&M) -> &str, findings: &mut Findings) {
+        let list = Path::root(list);
+        for (number, element) in elements.iter().enumerate() {
+            let size = element.encoded_len();
+            if size > LARGEST_ELEMENT {
+                let id = id(element);
+                findings
+                    .error(
+                        reasons::TOO_LARGE,
+                        &list.element(id, number),
+                        id,
+                        format!("this element takes {size} bytes: at most {LARGEST_ELEMENT} can be sent back"),
+                        "split it, or use shorter ids",
+                    )
+                    .value(size);
+            }
+        }
+    }
+    if let Some(v1::brief::NetSource::Net(net)) = &brief.net_source {
+        each("net.nodes", &net.nodes, |e| &e.id, findings);
+        each("net.sections", &net.sections, |e| &e.id, findings);
+        each("net.roles", &net.roles, |e| &e.id, findings);
+        each("net.cables", &net.cables, |e| &e.id, findings);
+        each("net.struts", &net.struts, |e| &e.id, findings);
+        each("net.groups", &net.groups, |e| &e.id, findings);
+        each("net.support_groups", &net.support_groups, |e| &e.id, findings);
+    }
+    each("actions", &brief.actions, |e| &e.id, findings);
+    each("checks", &brief.checks, |_| "", findings);
+    each("accepted", &brief.accepted, |e| &e.on, findings);
+    let labels: usize = brief.labels.iter().map(|(key, value)| key.len() + value.len() + 8).sum();
+    let notes = brief.solving.as_ref().map_or(0, |s| s.note.len())
+        + brief.prestress.as_ref().map_or(0, |p| p.note.len())
+        + brief.frozen_from.as_ref().map_or(0, |f| f.note.len());
+    let net = match &brief.net_source {
+        Some(v1::brief::NetSource::Net(net)) => net.note.len(),
+        _ => 0,
+    };
+    let head = brief.title.len() + brief.note.len() + labels + notes + net;
+    if head > LARGEST_HEAD {
+        findings
+            .error(
+                reasons::TOO_LARGE,
+                &Path::root("note"),
+                "",
+                format!("title, remarks and labels take {head} bytes: at most {LARGEST_HEAD} can be sent back"),
+                "keep long texts elsewhere",
+            )
+            .value(head);
+    }
+}

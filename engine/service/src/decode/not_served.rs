@@ -1,0 +1,165 @@
+//! Parts that the contract has and this server does not serve yet: refused by name, each at its place.
+
+use ropewalk_api::ropewalk::v1;
+
+use super::findings::{Findings, Path};
+use super::reasons;
+
+/// Parts of a brief that are served.
+pub const SERVED: &[&str] = &[
+    "net.nodes",
+    "net.sections",
+    "net.roles",
+    "net.cables",
+    "net.struts",
+    "net.groups",
+    "net.support_groups",
+    "prestress",
+    "actions.loads.nodes",
+    "actions.loads.own_weight",
+    "actions.loads.on_length",
+    "actions.loads.on_plan_length",
+    "actions.loads.temperature",
+    "actions.loads.move",
+    "actions.loads.prestress",
+    "cases",
+    "checks.safety",
+    "checks.slackness",
+    "checks.movement",
+    "checks.anchor_pull",
+    "solving",
+    "accepted",
+    "frozen_from",
+];
+
+/// Parts of a brief that are refused.
+pub const NOT_SERVED: &[&str] = &[
+    "stored_net",
+    "net.adjusters",
+    "net.skins",
+    "net.zones",
+    "net.panels",
+    "net.cables.slides",
+    "net.roles.adjuster",
+    "actions.loads.on_plan",
+    "actions.loads.on_surface",
+    "factors",
+    "combinations",
+    "checks.resistance",
+    "checks.service_stress",
+    "checks.buckling",
+    "checks.clearance",
+    "modes",
+    "motions",
+    "stages",
+    "workshop",
+    "readings",
+    "keep",
+    "sizing",
+    "variants",
+];
+
+/// Refuses every part of the brief that is not served.
+pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
+    let mut part = |path: &Path<'_>, id: &str| {
+        findings
+            .error(
+                reasons::NOT_SERVED,
+                path,
+                id,
+                format!("this server does not serve {path} yet"),
+                "take it out of the brief; GetInfo tells which parts are served",
+            )
+            .value(id);
+    };
+    match &brief.net_source {
+        Some(v1::brief::NetSource::StoredNet(digest)) => part(&Path::root("stored_net"), digest),
+        Some(v1::brief::NetSource::Net(net)) => in_net(net, &mut part),
+        None => {}
+    }
+    for (list, ids) in [
+        ("motions", brief.motions.iter().map(|m| m.id.as_str()).collect::<Vec<_>>()),
+        ("stages", brief.stages.iter().map(|s| s.id.as_str()).collect()),
+        ("readings", brief.readings.iter().map(|r| r.id.as_str()).collect()),
+        ("variants", brief.variants.iter().map(|v| v.id.as_str()).collect()),
+    ] {
+        elements(list, &ids, &mut part);
+    }
+    let combinations = Path::root("combinations");
+    for number in 0..brief.combinations.len() {
+        part(&combinations.number(number), "");
+    }
+    for (field, given) in [
+        ("factors", brief.factors.is_some()),
+        ("modes", brief.modes.is_some()),
+        ("workshop", brief.workshop.is_some()),
+        ("keep", brief.keep.is_some()),
+        ("sizing", brief.sizing.is_some()),
+    ] {
+        if given {
+            part(&Path::root(field), "");
+        }
+    }
+    in_actions(&brief.actions, &mut part);
+    in_checks(&brief.checks, &mut part);
+}
+
+fn elements(list: &str, ids: &[&str], part: &mut impl FnMut(&Path<'_>, &str)) {
+    let list = Path::root(list);
+    for (number, id) in ids.iter().enumerate() {
+        part(&list.element(id, number), id);
+    }
+}
+
+fn in_net(net: &v1::Net, part: &mut impl FnMut(&Path<'_>, &str)) {
+    for (list, ids) in [
+        ("net.adjusters", net.adjusters.iter().map(|a| a.id.as_str()).collect::<Vec<_>>()),
+        ("net.skins", net.skins.iter().map(|s| s.id.as_str()).collect()),
+        ("net.zones", net.zones.iter().map(|z| z.id.as_str()).collect()),
+        ("net.panels", net.panels.iter().map(|p| p.id.as_str()).collect()),
+    ] {
+        elements(list, &ids, part);
+    }
+    let cables = Path::root("net.cables");
+    for (number, cable) in net.cables.iter().enumerate() {
+        if cable.slides.is_some() {
+            part(&cables.element(&cable.id, number).field("slides"), &cable.id);
+        }
+    }
+    let roles = Path::root("net.roles");
+    for (number, role) in net.roles.iter().enumerate() {
+        if role.adjuster.is_some() {
+            part(&roles.element(&role.id, number).field("adjuster"), &role.id);
+        }
+    }
+}
+
+fn in_actions(actions: &[v1::Action], part: &mut impl FnMut(&Path<'_>, &str)) {
+    let list = Path::root("actions");
+    for (number, action) in actions.iter().enumerate() {
+        let at = list.element(&action.id, number);
+        let loads = at.field("loads");
+        for (number, load) in action.loads.iter().enumerate() {
+            let field = match load.kind {
+                Some(v1::load::Kind::OnPlan(_)) => "on_plan",
+                Some(v1::load::Kind::OnSurface(_)) => "on_surface",
+                _ => continue,
+            };
+            part(&loads.number(number).field(field), &action.id);
+        }
+    }
+}
+
+fn in_checks(checks: &[v1::Check], part: &mut impl FnMut(&Path<'_>, &str)) {
+    let list = Path::root("checks");
+    for (number, check) in checks.iter().enumerate() {
+        let field = match check.kind {
+            Some(v1::check::Kind::Resistance(_)) => "resistance",
+            Some(v1::check::Kind::ServiceStress(_)) => "service_stress",
+            Some(v1::check::Kind::Buckling(_)) => "buckling",
+            Some(v1::check::Kind::Clearance(_)) => "clearance",
+            _ => continue,
+        };
+        part(&list.number(number).field(field), "");
+    }
+}

@@ -1,0 +1,218 @@
+//! A brief, read as a whole.
+
+use ropewalk_api::ropewalk::v1;
+use ropewalk_numerics::brief::Brief;
+use ropewalk_numerics::model::{CableGiven, Net, NetGiven, NodeGiven, NodeId, StrutGiven, SupportGiven};
+
+use super::actions::Actions;
+use super::cases::{Cases, in_words};
+use super::digest::digest;
+use super::findings::{Findings, Path, is_id};
+use super::names::bad_id;
+use super::net::NetDraft;
+use super::resolved::Resolved;
+use super::scope::Scopes;
+use super::sections::Sections;
+use super::supports::Supports;
+use super::work::{Names, Work};
+use super::{accepted, checks, frozen, limits, not_served, plausible, prestress, reasons, solving};
+use crate::config::Limits;
+
+/// What came of reading a brief.
+#[derive(Debug)]
+pub struct Reading {
+    /// Digest of the brief.
+    pub digest: String,
+    /// Everything that is wrong, odd or worth knowing: errors first.
+    pub findings: Vec<v1::Finding>,
+    /// Values that the brief left to defaults, roles and rules.
+    pub resolved: Vec<v1::ResolvedValue>,
+    /// The cases in words, in brief order.
+    pub cases: Vec<v1::CaseInWords>,
+    /// The work, where there are no errors.
+    pub work: Option<Work>,
+}
+
+/// Reads a brief.
+#[must_use]
+pub fn read(brief: v1::Brief, limits: &Limits) -> Reading {
+    let mut findings = Findings::default();
+    let mut resolved = Resolved::default();
+    let digest = digest(&brief);
+    let parts = read_parts(&brief, limits, &mut findings, &mut resolved);
+    accepted::read(&brief.accepted, &mut findings);
+    let (cases, parts) = match parts {
+        Some(parts) => (parts.words, parts.work.filter(|_| !findings.has_errors())),
+        None => (Vec::new(), None),
+    };
+    let work = parts.and_then(|(brief_read, names)| match brief_read.build() {
+        Ok(domain) => Some((domain, names)),
+        Err(errors) => {
+            // The border checks everything that the model does; should it ever not, the model has the last word.
+            for error in errors {
+                findings.error(
+                    reasons::OUT_OF_RANGE,
+                    &Path::root("net"),
+                    "",
+                    error.to_string(),
+                    "mend this part of the net",
+                );
+            }
+            None
+        }
+    });
+    let findings = findings.into_list();
+    let work = work.map(|(domain, names)| Work::new(domain, brief, digest.clone(), names, &findings));
+    Reading {
+        digest,
+        findings,
+        resolved: resolved.into_list(),
+        cases,
+        work,
+    }
+}
+
+/// A brief of the kernel whose net is not built yet.
+struct Unbuilt {
+    net: NetGiven,
+    rest: Box<dyn FnOnce(Net) -> Brief>,
+}
+
+impl Unbuilt {
+    fn build(self) -> Result<Brief, Vec<ropewalk_numerics::model::NetError>> {
+        Ok((self.rest)(Net::new(self.net)?))
+    }
+}
+
+struct Parts {
+    words: Vec<v1::CaseInWords>,
+    work: Option<(Unbuilt, Names)>,
+}
+
+fn read_parts(
+    brief: &v1::Brief,
+    limits: &Limits,
+    findings: &mut Findings,
+    resolved: &mut Resolved,
+) -> Option<Parts> {
+    if !is_id(&brief.id) {
+        bad_id(findings, &Path::root("id"), &brief.id);
+    }
+    not_served::refuse(brief, findings);
+    if !limits::counts(brief, limits, findings) {
+        return None;
+    }
+    limits::elements(brief, findings);
+    let settings = solving::read(brief.solving.as_ref(), findings, resolved);
+    let message = match &brief.net_source {
+        Some(v1::brief::NetSource::Net(net)) => net,
+        Some(v1::brief::NetSource::StoredNet(_)) => return None,
+        None => {
+            findings.error(
+                reasons::MISSING,
+                &Path::root("net"),
+                "",
+                "the brief has no net",
+                "give the net in the field net",
+            );
+            return None;
+        }
+    };
+    let net = NetDraft::read(message, findings, resolved);
+    limits::nodes(&net, limits, findings);
+    let sections = Sections::read(&net, findings, resolved);
+    let supports = Supports::read(&net, findings);
+    let scopes = Scopes::read(&net, findings);
+    let actions = Actions::read(&brief.actions, &net, &scopes, &supports, findings);
+    let prestress = prestress::read(
+        brief.prestress.as_ref(),
+        &prestress::Context {
+            net: &net,
+            scopes: &scopes,
+            sections: &sections,
+            supports: &supports,
+            actions: &actions,
+        },
+        findings,
+        resolved,
+    );
+    let cases = Cases::read(brief, &actions, findings);
+    cases.doubts(&net, &actions, &prestress.under, findings);
+    let checks = checks::read(
+        &brief.checks,
+        &checks::Context {
+            net: &net,
+            scopes: &scopes,
+            sections: &sections,
+            supports: &supports,
+            cases: &cases,
+        },
+        findings,
+        resolved,
+    );
+    plausible::sections(&net, findings);
+    plausible::extent(&net, findings);
+    plausible::prestress(&net, &sections, &prestress, findings);
+    plausible::unused_data(brief, &net, findings);
+    frozen::read(brief.frozen_from.as_ref(), &net, &sections, &prestress, findings);
+
+    let words = (cases.list.iter())
+        .map(|case| v1::CaseInWords {
+            case: case.name.clone(),
+            in_words: in_words(case, &brief.actions),
+            sets: case.sets.clone(),
+        })
+        .collect();
+    let names = Names::new(&sections, &supports);
+    let given = (!findings.has_errors()).then(|| net_given(&net, &sections, supports)).flatten();
+    let (actions, cases) = (actions.list, cases.list);
+    let work = given.map(|net| {
+        let rest = move |net| Brief {
+            net,
+            prestress,
+            actions,
+            cases,
+            checks,
+            settings,
+        };
+        let unbuilt = Unbuilt {
+            net,
+            rest: Box::new(rest),
+        };
+        (unbuilt, names)
+    });
+    Some(Parts { words, work })
+}
+
+fn net_given(net: &NetDraft<'_>, sections: &Sections<'_>, supports: Supports) -> Option<NetGiven> {
+    let nodes = net.nodes.iter().zip(supports.of_node);
+    let nodes = nodes.map(|(node, support)| NodeGiven {
+        name: node.id.to_owned(),
+        position: node.position,
+        support: support.map(|support| SupportGiven {
+            released: support.released,
+        }),
+        attached_mass: node.attached_mass,
+    });
+    let cables = net.cables.iter().map(|cable| {
+        let segments = cable.first_segment..cable.first_segment + cable.n_segments();
+        Some(CableGiven {
+            name: cable.message.id.clone(),
+            path: cable.path.iter().copied().map(NodeId::new).collect(),
+            sections: segments.map(|segment| sections.section(segment)).collect::<Option<_>>()?,
+        })
+    });
+    let struts = net.struts.iter().map(|strut| {
+        Some(StrutGiven {
+            name: strut.message.id.clone(),
+            ends: strut.ends?.map(NodeId::new),
+            section: sections.section(strut.segment)?,
+        })
+    });
+    Some(NetGiven {
+        nodes: nodes.collect(),
+        cables: cables.collect::<Option<_>>()?,
+        struts: struts.collect::<Option<_>>()?,
+        elastic_supports: supports.elastic,
+    })
+}

@@ -1,0 +1,182 @@
+//! Every reason that a finding can have. A reason never changes its meaning; a new meaning gets a new one.
+
+macro_rules! reasons {
+    ($($(#[doc = $doc:literal])+ $name:ident,)+) => {
+        $($(#[doc = $doc])+ pub const $name: &str = stringify!($name);)+
+
+        /// Every reason with its meaning.
+        pub const ALL: &[(&str, &str)] = &[$((stringify!($name), concat!($($doc),+)),)+];
+    };
+}
+
+reasons! {
+    /// A number is NaN or infinite.
+    NOT_FINITE,
+    /// A number must be greater than zero.
+    NOT_POSITIVE,
+    /// A number must not be negative.
+    NEGATIVE,
+    /// A number lies outside the documented range.
+    OUT_OF_RANGE,
+    /// A list has the wrong number of entries.
+    WRONG_COUNT,
+    /// Something required is missing.
+    MISSING,
+    /// A direction is the zero vector.
+    ZERO_DIRECTION,
+    /// An id is empty, too long, or has characters that ids must not have.
+    BAD_ID,
+    /// An id stands twice where it must be unique.
+    DUPLICATE_ID,
+    /// An id is a reserved word.
+    RESERVED_ID,
+    /// An id names nothing.
+    UNKNOWN_ID,
+    /// An id names something of a kind that cannot stand here.
+    WRONG_KIND,
+    /// The same id stands twice in one list.
+    REPEATED_IN_LIST,
+    /// A list names things, but nothing comes of it.
+    COVERS_NOTHING,
+    /// A part of the brief that this server does not serve yet.
+    NOT_SERVED,
+    /// More than the server takes.
+    TOO_MANY,
+    /// One element of a list is larger than a message may be.
+    TOO_LARGE,
+    /// Findings of a kind that are left out, after very many of them.
+    MORE_OF_THE_SAME,
+    /// The net has no member.
+    EMPTY_NET,
+    /// A node is used by one end of one member only and has no coordinates.
+    NODE_USED_ONCE,
+    /// A node is used once, and its name looks like another's.
+    NODE_LOOKS_LIKE,
+    /// A supported node that no member uses.
+    NODE_UNUSED,
+    /// A free node that no member leads to.
+    NODE_NOT_CONNECTED,
+    /// A supported node has no coordinates.
+    SUPPORT_WITHOUT_POSITION,
+    /// A part of the net has no support.
+    PART_NOT_HELD,
+    /// A cable with fewer than two nodes.
+    TOO_FEW_NODES,
+    /// A path names the same node twice in a row.
+    NODE_TWICE_IN_A_ROW,
+    /// Two nodes at the ends of a segment lie in the same place.
+    NO_LENGTH,
+    /// Coordinates far away from the origin.
+    FAR_FROM_ORIGIN,
+    /// A member has no section.
+    NO_SECTION,
+    /// Axial stiffness and modulus times area disagree.
+    STIFFNESS_DISAGREES,
+    /// Parts of a cable overlap.
+    PARTS_OVERLAP,
+    /// A stretch of a cable that its path does not have.
+    NO_SUCH_STRETCH,
+    /// Groups that contain each other.
+    GROUP_CYCLE,
+    /// A support that holds nothing.
+    SUPPORT_HOLDS_NOTHING,
+    /// A direction is both released and on a spring.
+    SUPPORT_CONTRADICTS,
+    /// A stiffness matrix is not symmetric.
+    NOT_SYMMETRIC,
+    /// A stiffness matrix has a negative eigenvalue.
+    NOT_SEMI_DEFINITE,
+    /// A member that no prestress rule covers.
+    NO_RULE,
+    /// Two prestress rules of equal narrowness cover the same member.
+    RULES_TIE,
+    /// A cable is asked to push.
+    CABLE_PUSHES,
+    /// Members on balance, but no node to hold.
+    BALANCE_WITHOUT_HOLD,
+    /// A node to hold that no member on balance holds.
+    HOLD_WITHOUT_BALANCE,
+    /// A node to hold that is supported or has no coordinates.
+    HOLD_NOT_FREE,
+    /// An action under which the reference state is found is not a dead load.
+    UNDER_NOT_DEAD,
+    /// A share of a breaking force that is not known.
+    NO_BREAKING_FORCE,
+    /// Nodes without coordinates that no shape search finds.
+    NO_COORDINATES,
+    /// A load moves a node that has no support.
+    MOVE_WITHOUT_SUPPORT,
+    /// A load moves a support along a direction in which it is free.
+    MOVE_ALONG_FREE,
+    /// A prestress share takes away all of the tension.
+    SHARE_TAKES_ALL,
+    /// An action without loads.
+    ACTION_WITHOUT_LOADS,
+    /// An action that acts nowhere.
+    ACTION_UNUSED,
+    /// A case in which nothing acts.
+    CASE_WITHOUT_ACTIONS,
+    /// A factor of zero.
+    FACTOR_ZERO,
+    /// Own weight acts in no case.
+    NO_OWN_WEIGHT,
+    /// Nothing has a mass.
+    NO_MASS,
+    /// A case leaves out an action under which the reference state was found.
+    CASE_WITHOUT_DEAD_LOAD,
+    /// A change of temperature from a temperature that is not stated.
+    NO_REFERENCE_TEMPERATURE,
+    /// A check over sets or cases that are not there.
+    CHECK_WITHOUT_CASES,
+    /// Members that a check covers but cannot judge.
+    NOT_JUDGEABLE,
+    /// Cases, but no check.
+    NOTHING_CHECKED,
+    /// A value that looks as if it were in another unit.
+    UNIT_SLIP,
+    /// Prestress above the breaking force.
+    PRESTRESS_OVER_BREAKING,
+    /// A doubt is accepted whose reason is not known.
+    ACCEPTED_UNKNOWN,
+    /// An accepted doubt that was not found.
+    ACCEPTED_NOT_FOUND,
+    /// Data that no served part uses.
+    DATA_NOT_USED,
+    /// A frozen brief whose sections have changed since.
+    FROZEN_SECTION_CHANGED,
+    /// Nodes whose place slack ropes leave open.
+    LOOSE_NODES,
+    /// Ropes that are slack in the reference state.
+    SLACK_IN_REFERENCE,
+    /// Tension above the breaking force in a solved state.
+    OVER_BREAKING,
+    /// A movement so large that units or loads are to be doubted.
+    LARGE_MOVEMENT,
+    /// The independent routine does not confirm a state.
+    AUDIT_FAILED,
+    /// A state without an answer.
+    NO_ANSWER,
+}
+
+/// Reasons of doubts that only a run can find.
+pub const OF_RESULTS: &[&str] = &[
+    LOOSE_NODES,
+    SLACK_IN_REFERENCE,
+    OVER_BREAKING,
+    LARGE_MOVEMENT,
+    AUDIT_FAILED,
+];
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn reasons_are_upper_snake_and_unique() {
+        for (position, (reason, meaning)) in ALL.iter().enumerate() {
+            assert!(reason.chars().all(|c| c.is_ascii_uppercase() || c == '_'), "{reason}");
+            assert!(!meaning.trim().is_empty());
+            assert!(ALL[..position].iter().all(|(other, _)| other != reason), "{reason}");
+        }
+    }
+}

@@ -1,0 +1,148 @@
+//! The work of a brief without errors.
+
+use ropewalk_api::ropewalk::v1;
+use ropewalk_numerics::brief::Brief;
+
+use super::cases::{REFERENCE, in_words};
+use super::findings::accepts;
+use super::names::nearest;
+use super::reasons;
+use super::sections::Sections;
+use super::supports::Supports;
+use crate::words::{Quoted, shown};
+
+/// The brief for the kernel, the message that it came from, and what results need of it.
+#[derive(Debug)]
+pub struct Work {
+    /// The work.
+    pub brief: Brief,
+    /// The message as it was sent.
+    pub message: v1::Brief,
+    /// Digest of the message.
+    pub digest: String,
+    /// Whether lengths come from a frozen brief.
+    pub frozen: bool,
+    names: Names,
+    /// Doubts and notes of the brief; a run repeats them.
+    findings: Vec<v1::Finding>,
+}
+
+/// What results need of the message beside the domain.
+#[derive(Debug)]
+pub(crate) struct Names {
+    /// Nodes in model order whose given position is where their springs are at rest.
+    keeps_position: Vec<bool>,
+    /// Where the breaking force of each segment comes from; empty: not told.
+    breaking_force_origins: Vec<String>,
+}
+
+impl Names {
+    pub(crate) fn new(sections: &Sections<'_>, supports: &Supports) -> Self {
+        let origins = sections.of_segment.iter().map(|section| match section {
+            Some((section, _)) => sections.list[*section].message.breaking_force_origin.clone(),
+            None => String::new(),
+        });
+        Self {
+            keeps_position: supports.is_elastic.clone(),
+            breaking_force_origins: origins.collect(),
+        }
+    }
+}
+
+impl Work {
+    pub(crate) fn new(
+        brief: Brief,
+        message: v1::Brief,
+        digest: String,
+        names: Names,
+        findings: &[v1::Finding],
+    ) -> Self {
+        Self {
+            frozen: message.frozen_from.is_some(),
+            brief,
+            message,
+            digest,
+            names,
+            findings: findings.to_vec(),
+        }
+    }
+
+    /// Cases that sets and cases in `only` name, in brief order; all of them where it is empty. The word `reference`
+    /// names none.
+    ///
+    /// # Errors
+    /// A finding for the first name that is neither a set nor a case.
+    pub fn select(&self, only: &[String]) -> Result<Vec<usize>, v1::Finding> {
+        let cases = &self.brief.cases;
+        if only.is_empty() {
+            return Ok((0..cases.len()).collect());
+        }
+        let mut wanted = vec![false; cases.len()];
+        for (number, name) in only.iter().enumerate() {
+            let mut found = name == REFERENCE;
+            for (case, wanted) in cases.iter().zip(&mut wanted) {
+                if case.name == *name || case.sets.contains(name) {
+                    *wanted = true;
+                    found = true;
+                }
+            }
+            if !found {
+                let known = cases.iter().flat_map(|case| case.sets.iter().chain([&case.name]));
+                let meant = nearest(name, known.map(String::as_str));
+                let question = meant.map_or(String::new(), |meant| format!(" Did you mean {}?", Quoted(meant)));
+                return Err(v1::Finding {
+                    severity: v1::FindingSeverity::Error.into(),
+                    reason: reasons::UNKNOWN_ID.to_owned(),
+                    path: format!("only[{number}]"),
+                    id: shown(name),
+                    value: shown(name),
+                    message: format!("there is no set or case {}.{question}", Quoted(name)),
+                    cure: "name sets or cases of the brief, or none for all of them".to_owned(),
+                    ..v1::Finding::default()
+                });
+            }
+        }
+        Ok((0..cases.len()).filter(|case| wanted[*case]).collect())
+    }
+
+    /// What acts in a case, in words.
+    #[must_use]
+    pub fn in_words(&self, case: usize) -> String {
+        in_words(&self.brief.cases[case], &self.message.actions)
+    }
+
+    /// What acts in the reference state, in words.
+    #[must_use]
+    pub fn reference_in_words(&self) -> String {
+        let under = &self.brief.prestress.under;
+        let actions = under.iter().map(|action| format!("1 {}", self.brief.actions[*action].name));
+        let words: Vec<String> = actions.collect();
+        if words.is_empty() {
+            "prestress alone".to_owned()
+        } else {
+            format!("prestress under {}", words.join(" + "))
+        }
+    }
+
+    /// Marks a doubt of a result as accepted where the brief says so.
+    pub(crate) fn accept(&self, finding: &mut v1::Finding) {
+        if let Some(accepted) = self.message.accepted.iter().find(|accepted| accepts(accepted, finding)) {
+            finding.accepted_note.clone_from(&accepted.note);
+        }
+    }
+
+    /// Findings of the brief itself.
+    pub(crate) fn findings(&self) -> &[v1::Finding] {
+        &self.findings
+    }
+
+    /// Whether the given place of a node is where its springs are at rest, so that it must not be written over.
+    pub(crate) fn keeps_position(&self, node: usize) -> bool {
+        self.names.keeps_position[node]
+    }
+
+    /// Where the breaking force of a segment comes from, if the brief tells.
+    pub(crate) fn breaking_force_origin(&self, segment: usize) -> Option<&str> {
+        Some(self.names.breaking_force_origins[segment].as_str()).filter(|origin| !origin.is_empty())
+    }
+}

@@ -1,0 +1,33 @@
+//! Domain to message. Every message stays well below 1 MiB, so that a client with default limits never fails: arrays,
+//! tables and lists go out in parts.
+//!
+//! | file | says |
+//! |---|---|
+//! | `head` | what is about to run: sizes, settings, tables of ids |
+//! | `progress` | what is being worked on |
+//! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
+//! | `closing`, `verdicts`, `cautions` | the end of a run |
+//! | `freeze` | the brief with what was found written in |
+//! | `report` | what reading the brief told |
+//! | `parts` | how much fits a message |
+
+mod cautions;
+mod closing;
+mod doubts;
+mod failure;
+mod freeze;
+mod head;
+mod outcome;
+mod parts;
+mod progress;
+mod report;
+mod state;
+mod verdicts;
+
+pub use cautions::cautions;
+pub use closing::{Noted, Tally, closing};
+pub use freeze::freeze;
+pub use head::{id_tables, started};
+pub use outcome::{case, engine_error, reference};
+pub use progress::progress;
+pub use report::check_report;

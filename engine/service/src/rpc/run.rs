@@ -1,0 +1,297 @@
+//! A run: the brief is read, its reference state found, its cases solved in brief order.
+
+use std::collections::VecDeque;
+use std::ops::ControlFlow;
+use std::sync::Arc;
+use std::sync::atomic::{AtomicU32, AtomicU64, Ordering};
+use std::time::{Duration, Instant};
+
+use ropewalk_api::ropewalk::v1;
+use ropewalk_numerics as numerics;
+use ropewalk_numerics::brief::{Plan, ReferenceOutcome, Task};
+use tokio::sync::watch;
+use v1::run_response::Event;
+
+use super::Work;
+use super::stream::Outbox;
+use crate::config::Fault;
+use crate::pool::{Panicked, Pending, Stop};
+use crate::status::Refusal;
+use crate::{decode, encode};
+
+/// Shortest time between two reports of progress in a run.
+const BETWEEN_PROGRESS: Duration = Duration::from_millis(200);
+
+/// A brief that has been read and planned.
+pub(super) struct Prepared {
+    pub(super) work: decode::Work,
+    pub(super) plan: Plan,
+}
+
+/// Answers `request` into `outbox`.
+pub(super) async fn run(work: Work, request: v1::RunRequest, outbox: Outbox<v1::RunResponse>) -> Result<(), Refusal> {
+    let clock = Arc::new(Clock::default());
+    let (prepared, findings) = prepare(&work, request.brief.unwrap_or_default()).await?;
+    let cases = prepared
+        .work
+        .select(&request.only)
+        .map_err(|finding| Refusal::BriefHasErrors(vec![finding]))?;
+    tracing::info!(digest = prepared.work.digest, cases = cases.len(), "run");
+
+    let (about, selected) = (Arc::clone(&prepared), cases.clone());
+    let head = work.compute(move || head(&about, &selected, findings)).await?;
+    outbox.send(head).await?;
+
+    let desk = Arc::new(ProgressDesk::new(cases.len()));
+    let (mut tally, reference) = find_reference(&work, &prepared, &desk, &clock, &cases, &outbox).await?;
+    if let Some(reference) = reference {
+        let solver = Solver {
+            work: &work,
+            prepared: &prepared,
+            reference: &reference,
+            desk: &desk,
+            clock: &clock,
+        };
+        solver.solve_in_order(&cases, &mut tally, &outbox).await?;
+    }
+
+    let about = Arc::clone(&prepared);
+    let mut closing = work
+        .compute(move || encode::closing(&about.work, &about.plan, tally))
+        .await?;
+    let timing = v1::Timing {
+        total_s: work.call.arrived.elapsed().as_secs_f64(),
+        waiting_s: work.waiting.as_secs_f64(),
+        computing_s: clock.seconds(),
+    };
+    // Wall times stand just before the summary, which is the last message.
+    let last = closing.len().saturating_sub(1);
+    closing.insert(last, event(Event::Timing(timing)));
+    outbox.send(closing).await
+}
+
+/// Reads and plans a brief on the pool; errors in it are a refusal, other findings are handed on.
+pub(super) async fn prepare(work: &Work, brief: v1::Brief) -> Result<(Arc<Prepared>, Vec<v1::Finding>), Refusal> {
+    let limits = work.shared.limits;
+    let breaks = work.fault(&Fault::PanicInReading);
+    let prepared = work.compute(move || {
+        break_on_purpose(breaks);
+        let reading = decode::read(brief, &limits);
+        match reading.work {
+            Some(work) => {
+                let plan = Plan::new(work.brief.clone());
+                Ok((Arc::new(Prepared { work, plan }), reading.findings))
+            }
+            None => Err(Refusal::BriefHasErrors(reading.findings)),
+        }
+    });
+    prepared.await?
+}
+
+/// What comes before any result.
+fn head(about: &Prepared, cases: &[usize], findings: Vec<v1::Finding>) -> Vec<v1::RunResponse> {
+    let started = encode::started(&about.work, &about.plan, cases);
+    let tables = encode::id_tables(&about.work, &about.plan, cases);
+    std::iter::once(Event::Started(started))
+        .chain(tables.into_iter().map(Event::Ids))
+        .chain(findings.into_iter().map(Event::Finding))
+        .map(event)
+        .collect()
+}
+
+async fn find_reference(
+    work: &Work,
+    prepared: &Arc<Prepared>,
+    desk: &Arc<ProgressDesk>,
+    clock: &Arc<Clock>,
+    cases: &[usize],
+    outbox: &Outbox<v1::RunResponse>,
+) -> Result<(encode::Tally, Option<Arc<ReferenceOutcome>>), Refusal> {
+    let breaks = work.fault(&Fault::PanicInReference);
+    let (about, stop, desk_there, clock) = (
+        Arc::clone(prepared),
+        work.stop.clone(),
+        Arc::clone(desk),
+        Arc::clone(clock),
+    );
+    let (place, cases) = (Arc::clone(&work.place), cases.to_vec());
+    let mut pending = work.shared.pool.start(move || {
+        let _place = place;
+        break_on_purpose(breaks);
+        let found = clock.time(|| {
+            about
+                .plan
+                .reference(&mut |report| desk_there.observe(&about, Task::Reference, report, &stop))
+        });
+        let messages = encode::reference(&about.work, &about.plan, &found);
+        let tally = encode::Tally::new(&about.plan, &cases, &found);
+        (messages, tally, found.ok().map(Arc::new))
+    });
+    let answer = desk.relay(&mut pending, outbox, progress).await;
+    let (messages, tally, reference) = answer.map_err(|panicked| work.internal(panicked))?;
+    outbox.send(messages).await?;
+    Ok((tally, reference))
+}
+
+/// Solves the cases of a run.
+struct Solver<'a> {
+    work: &'a Work,
+    prepared: &'a Arc<Prepared>,
+    reference: &'a Arc<ReferenceOutcome>,
+    desk: &'a Arc<ProgressDesk>,
+    clock: &'a Arc<Clock>,
+}
+
+/// What a case leaves: its messages, and what the summary needs of it.
+type CaseAnswer = (Vec<v1::RunResponse>, encode::Noted);
+
+impl Solver<'_> {
+    /// As many cases at a time as there are threads; none is started before the client has taken the results of those
+    /// in front of it, so that a slow reader holds no thread.
+    async fn solve_in_order(
+        &self,
+        cases: &[usize],
+        tally: &mut encode::Tally,
+        outbox: &Outbox<v1::RunResponse>,
+    ) -> Result<(), Refusal> {
+        let width = self.work.shared.pool.width();
+        let mut next = cases.iter().copied();
+        let mut at_work: VecDeque<(usize, Pending<CaseAnswer>)> = VecDeque::with_capacity(width);
+        loop {
+            let free = width - at_work.len();
+            at_work.extend(next.by_ref().take(free).map(|case| (case, self.start(case))));
+            let Some((case, mut pending)) = at_work.pop_front() else {
+                return Ok(());
+            };
+            let (messages, noted) = match self.desk.relay(&mut pending, outbox, progress).await {
+                Ok(answer) => answer,
+                Err(Panicked) => {
+                    tracing::error!(position = case, "the engine failed in a case; the others go on");
+                    encode::engine_error(&self.prepared.work, &self.prepared.plan, case)
+                }
+            };
+            tally.add(case, noted);
+            self.desk.done.fetch_add(1, Ordering::Relaxed);
+            outbox.send(messages).await?;
+        }
+    }
+
+    fn start(&self, case: usize) -> Pending<CaseAnswer> {
+        let name = &self.prepared.plan.brief().cases[case].name;
+        let breaks = matches!(&self.work.shared.fault, Some(Fault::PanicInCase(id)) if id == name);
+        let (about, reference) = (Arc::clone(self.prepared), Arc::clone(self.reference));
+        let (desk, clock) = (Arc::clone(self.desk), Arc::clone(self.clock));
+        let (stop, place) = (self.work.stop.clone(), Arc::clone(&self.work.place));
+        self.work.shared.pool.start(move || {
+            let _place = place;
+            break_on_purpose(breaks);
+            let outcome = clock.time(|| {
+                let observe = &mut |report: &_| desk.observe(&about, Task::Case(case), report, &stop);
+                about.plan.case(&reference, case, observe)
+            });
+            encode::case(&about.work, &about.plan, &reference, case, &outcome)
+        })
+    }
+}
+
+/// Where tasks on the pool report, and the run picks up what the client shall see.
+#[derive(Debug)]
+pub(super) struct ProgressDesk {
+    latest: watch::Sender<Option<v1::Progress>>,
+    began: Instant,
+    /// Time from which on the next report is wanted (ms since the beginning).
+    wanted_from_ms: AtomicU64,
+    done: AtomicU32,
+    total: u32,
+}
+
+impl ProgressDesk {
+    pub(super) fn new(cases: usize) -> Self {
+        Self {
+            latest: watch::Sender::new(None),
+            began: Instant::now(),
+            wanted_from_ms: AtomicU64::new(0),
+            done: AtomicU32::new(0),
+            total: u32::try_from(cases).unwrap_or(u32::MAX),
+        }
+    }
+
+    /// Called in each iteration, on the pool; says whether to go on.
+    pub(super) fn observe(
+        &self,
+        about: &Prepared,
+        task: Task,
+        report: &numerics::equilibrium::IterationReport,
+        stop: &Stop,
+    ) -> ControlFlow<()> {
+        if stop.is_asked() {
+            return ControlFlow::Break(());
+        }
+        let now = u64::try_from(self.began.elapsed().as_millis()).unwrap_or(u64::MAX);
+        let wanted = self.wanted_from_ms.load(Ordering::Relaxed);
+        let between = u64::try_from(BETWEEN_PROGRESS.as_millis()).unwrap_or(u64::MAX);
+        let turn = now >= wanted
+            && self
+                .wanted_from_ms
+                .compare_exchange(wanted, now + between, Ordering::Relaxed, Ordering::Relaxed)
+                .is_ok();
+        if turn {
+            let done = self.done.load(Ordering::Relaxed);
+            let report = encode::progress(&about.work, &about.plan, task, report, done, self.total);
+            self.latest.send_replace(Some(report));
+        }
+        ControlFlow::Continue(())
+    }
+
+    /// Waits for an answer and meanwhile passes progress on to a client that keeps up.
+    pub(super) async fn relay<T, Message>(
+        &self,
+        pending: &mut Pending<T>,
+        outbox: &Outbox<Message>,
+        message: impl Fn(v1::Progress) -> Message,
+    ) -> Result<T, Panicked> {
+        let mut latest = self.latest.subscribe();
+        loop {
+            tokio::select! {
+                biased;
+                answer = pending.answer() => return answer,
+                Ok(()) = latest.changed() => {
+                    let progress = latest.borrow_and_update().clone();
+                    if let Some(progress) = progress {
+                        outbox.send_if_idle(message(progress));
+                    }
+                }
+            }
+        }
+    }
+}
+
+/// Sums the time spent computing (µs).
+#[derive(Debug, Default)]
+pub(super) struct Clock(AtomicU64);
+
+impl Clock {
+    pub(super) fn time<T>(&self, task: impl FnOnce() -> T) -> T {
+        let began = Instant::now();
+        let value = task();
+        let spent = u64::try_from(began.elapsed().as_micros()).unwrap_or(u64::MAX);
+        self.0.fetch_add(spent, Ordering::Relaxed);
+        value
+    }
+
+    fn seconds(&self) -> f64 {
+        Duration::from_micros(self.0.load(Ordering::Relaxed)).as_secs_f64()
+    }
+}
+
+pub(super) fn break_on_purpose(breaks: bool) {
+    assert!(!breaks, "a fault on purpose");
+}
+
+fn progress(progress: v1::Progress) -> v1::RunResponse {
+    event(Event::Progress(progress))
+}
+
+fn event(event: Event) -> v1::RunResponse {
+    v1::RunResponse { event: Some(event) }
+}

@@ -1,0 +1,17 @@
+//! The engine as a program, over its network: how it streams, refuses, survives and ends.
+//!
+//! The tests drive the built binary, whose path stands in the environment variable `ROPEWALK_ENGINE_BIN`.
+
+mod admission;
+mod briefs;
+mod client;
+mod drain;
+mod engine;
+mod faults;
+mod hostile;
+mod http2;
+mod operation;
+mod requests;
+mod runs;
+mod slow;
+mod web;

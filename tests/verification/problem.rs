@@ -1,0 +1,238 @@
+//! A net with its prestress and loads, put together by hand and solved: every call of the kernel is here.
+
+use std::ops::ControlFlow;
+use std::sync::Arc;
+
+use nalgebra::{DMatrix, Vector3};
+use ropewalk_numerics::brief::{
+    Brief, CaseGiven, CaseOutcome, Plan, Prestress, PrestressRule, ReferenceOutcome, StateResult, SupportForce,
+};
+use ropewalk_numerics::equilibrium::{Settings, Termination};
+use ropewalk_numerics::load::{Action, Load};
+use ropewalk_numerics::model::{
+    CableGiven, ElasticSupportGiven, Net, NetGiven, NodeGiven, NodeId, Section, StrutGiven, SupportGiven,
+};
+
+/// A net in the making.
+#[derive(Clone, Debug, Default)]
+pub(crate) struct Problem {
+    net: NetGiven,
+    cable_rules: Vec<PrestressRule>,
+    strut_rules: Vec<PrestressRule>,
+    mean_tensions: Vec<f64>,
+    hold: Vec<NodeId>,
+    under: Vec<Load>,
+    case: Vec<Load>,
+}
+
+/// What a problem answers.
+#[derive(Clone, Debug)]
+pub(crate) struct Answer {
+    /// The reference state.
+    pub(crate) reference: StateResult,
+    /// The state under the case's loads; the reference state again if there are none.
+    pub(crate) state: StateResult,
+}
+
+/// A section of which only the stiffness matters.
+pub(crate) fn stiff(axial_stiffness: f64) -> Section {
+    Section {
+        axial_stiffness,
+        mass_per_length: 0.0,
+        expansion: 0.0,
+        breaking_force: None,
+    }
+}
+
+impl Problem {
+    fn push(&mut self, position: Vector3<f64>, support: Option<SupportGiven>) -> NodeId {
+        let id = NodeId::new(self.net.nodes.len());
+        self.net.nodes.push(NodeGiven {
+            name: format!("n{}", id.index()),
+            position: Some(position),
+            support,
+            attached_mass: 0.0,
+        });
+        id
+    }
+
+    /// A free node.
+    pub(crate) fn free(&mut self, x: f64, y: f64, z: f64) -> NodeId {
+        self.push(Vector3::new(x, y, z), None)
+    }
+
+    /// A node held in all directions.
+    pub(crate) fn fixed(&mut self, x: f64, y: f64, z: f64) -> NodeId {
+        self.push(Vector3::new(x, y, z), Some(SupportGiven::default()))
+    }
+
+    /// A node held in all directions but the given ones.
+    pub(crate) fn released(&mut self, position: Vector3<f64>, released: Vec<Vector3<f64>>) -> NodeId {
+        self.push(position, Some(SupportGiven { released }))
+    }
+
+    /// Holds nodes by a stiffness (N/m), on top of what holds them rigidly.
+    pub(crate) fn elastic(&mut self, nodes: Vec<NodeId>, stiffness: DMatrix<f64>) {
+        self.net.elastic_supports.push(ElasticSupportGiven { nodes, stiffness });
+    }
+
+    /// Attaches a mass (kg) to a node.
+    pub(crate) fn attach(&mut self, node: NodeId, mass: f64) {
+        self.net.nodes[node.index()].attached_mass = mass;
+    }
+
+    /// A rope through nodes, each of its segments with its rule.
+    pub(crate) fn cable(&mut self, path: &[NodeId], section: Section, rules: impl IntoIterator<Item = PrestressRule>) {
+        let rules: Vec<_> = rules.into_iter().collect();
+        assert_eq!(rules.len() + 1, path.len(), "one rule a segment");
+        self.net.cables.push(CableGiven {
+            name: format!("c{}", self.net.cables.len()),
+            path: path.to_vec(),
+            sections: vec![section; rules.len()],
+        });
+        self.cable_rules.extend(rules);
+    }
+
+    /// A rope of one segment with its unstressed length (m).
+    pub(crate) fn bar(&mut self, from: NodeId, to: NodeId, section: Section, unstressed_length: f64) {
+        self.cable(
+            &[from, to],
+            section,
+            [PrestressRule::UnstressedLength(unstressed_length)],
+        );
+    }
+
+    /// A strut.
+    pub(crate) fn strut(&mut self, foot: NodeId, head: NodeId, section: Section, rule: PrestressRule) {
+        self.net.struts.push(StrutGiven {
+            name: format!("s{}", self.net.struts.len()),
+            ends: [foot, head],
+            section,
+        });
+        self.strut_rules.push(rule);
+    }
+
+    /// A rule for a family of segments whose tensions shall have this mean (N).
+    pub(crate) fn mean_tension(&mut self, tension: f64) -> PrestressRule {
+        self.mean_tensions.push(tension);
+        PrestressRule::MeanTension(self.mean_tensions.len() - 1)
+    }
+
+    /// Keeps a free node where it is while the shape is found.
+    pub(crate) fn hold(&mut self, node: NodeId) {
+        self.hold.push(node);
+    }
+
+    /// A dead load that acts in the reference state and in the case.
+    pub(crate) fn always(&mut self, load: Load) {
+        self.under.push(load);
+    }
+
+    /// A load of the case.
+    pub(crate) fn load(&mut self, load: Load) {
+        self.case.push(load);
+    }
+
+    /// A force (N) on one node, in the case.
+    pub(crate) fn push_node(&mut self, node: NodeId, x: f64, y: f64, z: f64) {
+        self.load(Load::Nodes {
+            nodes: vec![node],
+            force: Vector3::new(x, y, z),
+        });
+    }
+
+    /// Solves to the rounding floor of the input: the published digits are compared, not the tolerance at which a user's
+    /// solve may stop.
+    ///
+    /// The answer has passed the audit, and its loads and support forces add up to nothing, within 1e-6 of the loads
+    /// and tensions: what is compared is a state in balance.
+    #[track_caller]
+    pub(crate) fn solve(self) -> Answer {
+        let has_case = !self.case.is_empty();
+        let plan = self.plan();
+        let reference = reference(&plan);
+        let state = if has_case {
+            case(&plan, &reference)
+        } else {
+            reference.result.clone()
+        };
+        in_balance(&reference.result);
+        in_balance(&state);
+        Answer {
+            reference: reference.result,
+            state,
+        }
+    }
+
+    #[track_caller]
+    fn plan(self) -> Plan {
+        let net = Net::new(self.net).expect("the net of a case is valid");
+        let mut rules = self.cable_rules;
+        rules.extend(self.strut_rules);
+        let actions = [("always", self.under), ("case", self.case)].map(|(name, loads)| Action {
+            name: name.to_owned(),
+            loads,
+        });
+        Plan::new(Brief {
+            net: Arc::new(net),
+            prestress: Prestress {
+                rules,
+                mean_tensions: self.mean_tensions,
+                hold: self.hold,
+                under: vec![0],
+            },
+            actions: actions.to_vec(),
+            cases: vec![CaseGiven {
+                name: "case".to_owned(),
+                sets: Vec::new(),
+                factors: vec![(0, 1.0), (1, 1.0)],
+            }],
+            checks: Vec::new(),
+            settings: Settings {
+                tolerance: 1e-14,
+                ..Settings::default()
+            },
+        })
+    }
+}
+
+#[track_caller]
+fn reference(plan: &Plan) -> ReferenceOutcome {
+    plan.reference(&mut |_| ControlFlow::Continue(()))
+        .unwrap_or_else(|error| panic!("no reference state: {error}"))
+}
+
+#[track_caller]
+fn case(plan: &Plan, reference: &ReferenceOutcome) -> StateResult {
+    match plan.case(reference, 0, &mut |_| ControlFlow::Continue(())) {
+        CaseOutcome::State { solution, result, .. } => {
+            assert_eq!(solution.termination, Termination::Converged);
+            *result
+        }
+        CaseOutcome::None { error, .. } => panic!("no state: {error}"),
+    }
+}
+
+#[track_caller]
+fn in_balance(state: &StateResult) {
+    assert!(state.audit.passed, "the audit fails: {:?}", state.audit);
+    let largest = state
+        .axial_forces
+        .iter()
+        .fold(state.load_sum.norm(), |a, b| a.max(b.abs()));
+    let rest = (state.load_sum + state.support_sum).norm();
+    assert!(
+        rest <= 1e-6 * largest,
+        "loads and support forces leave {rest} N of {largest} N"
+    );
+}
+
+/// The force of a support on the net (N).
+#[track_caller]
+pub(crate) fn support_force(state: &StateResult, node: NodeId) -> &SupportForce {
+    state
+        .support_forces
+        .iter()
+        .find(|s| s.node == node)
+        .expect("the node is supported")
+}
