@@ -37,6 +37,8 @@ impl SilentClient {
         // HEADERS with END_HEADERS.
         stream.write_all(&frame(1, 0x4, 1, &block)).expect("sent");
         let body = crate::web::frame(&message.encode_to_vec());
+        // Settings are never acknowledged, so the first windows of the protocol hold (RFC 9113, section 6.9.2).
+        assert!(body.len() < 65_535, "{} bytes do not fit the window", body.len());
         // DATA up to the frame size that every peer takes; END_STREAM on the last.
         let parts: Vec<&[u8]> = body.chunks(16_384).collect();
         for (number, part) in parts.iter().enumerate() {

@@ -11,6 +11,7 @@ mod faults;
 mod hostile;
 mod http2;
 mod operation;
+mod overhead;
 mod requests;
 mod runs;
 mod slow;

@@ -3,7 +3,7 @@
 use std::sync::Arc;
 
 use crate::check::Check;
-use crate::equilibrium::Settings;
+use crate::equilibrium::{LoadSteps, Settings};
 use crate::load::Action;
 use crate::model::Net;
 use crate::shape::Prestress;
@@ -17,6 +17,8 @@ pub struct CaseGiven {
     pub sets: Vec<String>,
     /// Action and its factor.
     pub factors: Vec<(usize, f64)>,
+    /// How its load is put on; `None`: as the settings say.
+    pub load_steps: Option<LoadSteps>,
 }
 
 /// The whole work.

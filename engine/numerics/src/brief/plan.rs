@@ -5,9 +5,10 @@ use std::sync::Arc;
 
 use super::cause::{cause_of_error, cause_of_stop};
 use super::state::{Bare, state_result};
+use super::summary::worst_ratio;
 use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Summary, Task};
 use crate::check::CaseDigest;
-use crate::equilibrium::{self, Analysis, IterationReport, Termination};
+use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination};
 use crate::load::Case;
 use crate::shape::{self, Found, ShapeError};
 
@@ -92,6 +93,10 @@ impl Plan {
             ..
         } = &self.brief;
         let given = &cases[case];
+        let settings = &Settings {
+            load_steps: given.load_steps.unwrap_or(settings.load_steps),
+            ..*settings
+        };
         let case = Case::new(net, &reference.state, actions, &given.factors);
         let solved = equilibrium::solve(
             &self.analysis,
@@ -135,9 +140,17 @@ impl Plan {
         }
     }
 
-    /// Judges the checks and takes the envelopes. `digests`: one entry a case, in the order of the brief.
+    /// Judges the checks over `cases`, those that were run, and takes the envelopes.
+    ///
+    /// `digests`: one entry a case, in the order of the brief; those of other cases are not looked at.
     #[must_use]
-    pub fn summary(&self, reference: &ReferenceOutcome, digests: &[CaseDigest]) -> Summary {
-        Summary::new(&self.brief, reference, digests)
+    pub fn summary(&self, reference: &ReferenceOutcome, cases: &[usize], digests: &[CaseDigest]) -> Summary {
+        Summary::new(&self.brief, reference, cases, digests)
+    }
+
+    /// Worst ratio, in one case, of the checks that cover it (–); `None` where none of them judges anything.
+    #[must_use]
+    pub fn worst_ratio(&self, reference: &ReferenceOutcome, case: usize, digest: &CaseDigest) -> Option<f64> {
+        worst_ratio(&self.brief, reference, case, digest)
     }
 }

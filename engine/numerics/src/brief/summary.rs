@@ -3,7 +3,7 @@
 use std::fmt;
 
 use super::{Brief, ReferenceOutcome};
-use crate::check::{CableEnvelope, CaseDigest, CheckResult, Facts, Verdict, envelope, judge};
+use crate::check::{CableEnvelope, CaseDigest, Check, CheckResult, Facts, Verdict, envelope, judge};
 use crate::model::{Net, SegmentId};
 
 /// Least and largest forces over the cases of one set.
@@ -93,14 +93,17 @@ pub struct Summary {
 }
 
 impl Summary {
-    pub(super) fn new(brief: &Brief, reference: &ReferenceOutcome, digests: &[CaseDigest]) -> Self {
+    pub(super) fn new(brief: &Brief, reference: &ReferenceOutcome, cases: &[usize], digests: &[CaseDigest]) -> Self {
         let net = &brief.net;
+        let mut ran = vec![false; brief.cases.len()];
+        cases.iter().for_each(|case| ran[*case] = true);
         let checks: Vec<CheckResult> = brief
             .checks
             .iter()
-            .map(|check| judge(net, &reference.state, check, digests))
+            .map(|check| judge(net, &reference.state, &over(check, |case| ran[case]), digests))
             .collect();
-        let facts = Facts::new(digests, &checks);
+        let of_run: Vec<CaseDigest> = cases.iter().map(|case| digests[*case].clone()).collect();
+        let facts = Facts::new(&of_run, &checks);
         Self {
             verdict: if reference.result.audit.passed {
                 facts.verdict()
@@ -109,15 +112,41 @@ impl Summary {
             },
             facts,
             checks,
-            envelopes: envelopes(brief, digests),
+            envelopes: envelopes(brief, &ran, digests),
             cautions: cautions(net, reference),
         }
     }
 }
 
-fn envelopes(brief: &Brief, digests: &[CaseDigest]) -> Vec<SetEnvelope> {
-    let mut sets: Vec<(Option<String>, Vec<usize>)> = vec![(None, (0..brief.cases.len()).collect())];
-    for (index, case) in brief.cases.iter().enumerate() {
+/// The check, over those of its cases that the test picks.
+fn over(check: &Check, picks: impl Fn(usize) -> bool) -> Check {
+    let mut over = check.clone();
+    over.cases.retain(|case| picks(*case));
+    over
+}
+
+/// Worst ratio, in one case, of the checks that cover it (–).
+pub(super) fn worst_ratio(
+    brief: &Brief,
+    reference: &ReferenceOutcome,
+    case: usize,
+    digest: &CaseDigest,
+) -> Option<f64> {
+    let mut digests = vec![CaseDigest::default(); brief.cases.len()];
+    digests[case] = digest.clone();
+    let checks = brief.checks.iter().filter(|check| check.cases.contains(&case));
+    checks
+        .filter_map(|check| {
+            let result = judge(&brief.net, &reference.state, &over(check, |other| other == case), &digests);
+            result.worst().map(|worst| worst.ratio)
+        })
+        .reduce(f64::max)
+}
+
+fn envelopes(brief: &Brief, ran: &[bool], digests: &[CaseDigest]) -> Vec<SetEnvelope> {
+    let all = (0..brief.cases.len()).filter(|case| ran[*case]);
+    let mut sets: Vec<(Option<String>, Vec<usize>)> = vec![(None, all.collect())];
+    for (index, case) in brief.cases.iter().enumerate().filter(|(index, _)| ran[*index]) {
         for set in &case.sets {
             match sets.iter_mut().find(|(name, _)| name.as_ref() == Some(set)) {
                 Some((_, cases)) => cases.push(index),

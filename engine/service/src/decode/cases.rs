@@ -6,6 +6,7 @@ use prost::Message as _;
 use ropewalk_api::ropewalk::v1;
 use ropewalk_api::ropewalk::v1::load::Kind;
 use ropewalk_numerics::brief::CaseGiven;
+use ropewalk_numerics::equilibrium::LoadSteps;
 
 use super::actions::Actions;
 use super::findings::{Findings, Path, is_id};
@@ -54,10 +55,12 @@ impl<'a> Cases<'a> {
             let at = list.element(&case.id, index);
             cases.read_sets(case, &at, findings);
             let factors = read_factors(case, &at, actions, findings);
-            if let Some(steps) = case.load_steps {
-                let field = at.field("load_steps");
-                findings.number(&field, Of::new("case", &case.id), &LOAD_STEPS, f64::from(steps));
-            }
+            let steps_at = at.field("load_steps");
+            let of = Of::new("case", &case.id);
+            let steps = case.load_steps;
+            let load_steps = steps.filter(|steps| {
+                findings.number(&steps_at, of, &LOAD_STEPS, f64::from(*steps)).is_some()
+            });
             if case.encoded_len() > LARGEST {
                 findings
                     .error(
@@ -73,6 +76,7 @@ impl<'a> Cases<'a> {
                 name: case.id.clone(),
                 sets: case.sets.clone(),
                 factors,
+                load_steps: load_steps.map(LoadSteps::Equal),
             });
         }
         cases

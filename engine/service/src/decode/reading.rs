@@ -1,5 +1,7 @@
 //! A brief, read as a whole.
 
+use std::sync::Arc;
+
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::Brief;
 use ropewalk_numerics::model::{CableGiven, Net, NetGiven, NodeGiven, NodeId, StrutGiven, SupportGiven};
@@ -168,7 +170,7 @@ fn read_parts(
     let (actions, cases) = (actions.list, cases.list);
     let work = given.map(|net| {
         let rest = move |net| Brief {
-            net,
+            net: Arc::new(net),
             prestress,
             actions,
             cases,

@@ -30,6 +30,7 @@ fn case(name: &str, factors: &[(usize, f64)]) -> CaseGiven {
         name: name.to_owned(),
         sets: Vec::new(),
         factors: factors.to_vec(),
+        load_steps: None,
     }
 }
 

@@ -22,7 +22,7 @@ fn summary(plan: &Plan) -> Summary {
     let digests: Vec<_> = cases
         .map(|case| plan.case(&reference, case, &mut run_on).digest())
         .collect();
-    plan.summary(&reference, &digests)
+    plan.summary(&reference, &(0..digests.len()).collect::<Vec<_>>(), &digests)
 }
 
 fn strength(factor: f64) -> Check {

@@ -1,0 +1,11 @@
+//! The border between contract and kernel: what is read, what is refused, what is said.
+
+mod briefs;
+mod drafts;
+mod fields;
+mod freezing;
+mod golden;
+mod minimal;
+mod results;
+mod sizes;
+mod violations;

@@ -1,0 +1,299 @@
+//! What is said of a run: the order of events, arrays in parts, the summary, failures by name.
+
+use std::collections::BTreeMap;
+use std::ops::ControlFlow;
+
+use ropewalk_api::ropewalk::v1;
+use ropewalk_service::decode::Work;
+use ropewalk_service::encode::{Tally, case, closing, engine_error, id_tables, reference, started};
+use serde_json::{Value, json};
+use v1::run_response::Event;
+
+use crate::briefs::{changed, first_net, found, terrace, work};
+
+/// Every event of a run of some cases.
+pub(crate) fn run(work: &Work, cases: &[usize]) -> Vec<Event> {
+    let plan = ropewalk_numerics::brief::Plan::new(work.brief.clone());
+    let mut messages = vec![v1::RunResponse {
+        event: Some(Event::Started(started(work, &plan, cases))),
+    }];
+    messages.extend(id_tables(work, &plan, cases).into_iter().map(|table| v1::RunResponse {
+        event: Some(Event::Ids(table)),
+    }));
+    let found = plan.reference(&mut |_| ControlFlow::Continue(()));
+    messages.extend(reference(work, &plan, &found));
+    let mut tally = Tally::new(&plan, cases, &found);
+    if let Ok(found) = &found {
+        for index in cases {
+            let outcome = plan.case(found, *index, &mut |_| ControlFlow::Continue(()));
+            let (said, noted) = case(work, &plan, found, *index, &outcome);
+            messages.extend(said);
+            tally.add(*index, noted);
+        }
+    }
+    messages.extend(closing(work, &plan, tally));
+    messages.into_iter().map(|message| message.event.expect("an event")).collect()
+}
+
+/// The arrays of a run by case and name, put together from their parts.
+#[track_caller]
+fn arrays(events: &[Event]) -> BTreeMap<(String, String), v1::Columns> {
+    let mut arrays: BTreeMap<(String, String), v1::Columns> = BTreeMap::new();
+    for event in events {
+        if let Event::Columns(part) = event {
+            let key = (part.case.clone(), part.name.clone());
+            match arrays.get_mut(&key) {
+                Some(array) => {
+                    assert_eq!(part.offset as usize, array.values.len(), "parts come in order");
+                    array.values.extend(&part.values);
+                }
+                None => {
+                    assert_eq!(part.offset, 0);
+                    arrays.insert(key, part.clone());
+                }
+            }
+        }
+    }
+    for array in arrays.values() {
+        assert_eq!(array.values.len(), array.total as usize, "{} is complete", array.name);
+    }
+    arrays
+}
+
+fn summary(events: &[Event]) -> &v1::Summary {
+    match events.last() {
+        Some(Event::Summary(summary)) => summary,
+        other => panic!("{other:?} comes last"),
+    }
+}
+
+fn closings(events: &[Event]) -> Vec<&v1::CaseSummary> {
+    let closings = events.iter().filter_map(|event| match event {
+        Event::CaseSummary(closing) => Some(closing),
+        _ => None,
+    });
+    closings.collect()
+}
+
+/// Worked numbers of the minimal draft: own Newton solve, stated beside it in the contract's design.
+#[test]
+fn the_minimal_draft_gives_its_worked_numbers() {
+    let work = work(&first_net());
+    let events = run(&work, &[0]);
+    let arrays = arrays(&events);
+    let array = |case: &str, name: &str| &arrays[&(case.to_owned(), name.to_owned())];
+    let tensions = &array("full-snow", "tension_n").values;
+    for (tension, worked) in tensions.iter().zip([24_820.0, 24_820.0, 14_484.0, 14_484.0]) {
+        assert!((tension - worked).abs() < 0.5, "{tension} instead of {worked}");
+    }
+    let moved = array("full-snow", "displacement_m");
+    assert_eq!((moved.baseline.as_str(), moved.unit.as_str(), moved.components), ("reference", "m", 3));
+    assert!((moved.values[14] + 0.02259).abs() < 5e-6, "{}", moved.values[14]);
+    assert_eq!(array("reference", "unstressed_length_m").values.len(), 4);
+    let most = array("envelope", "tension_max_n");
+    assert!((most.values[0] - 24_820.0).abs() < 0.5);
+    assert_eq!(array("envelope", "tension_max_case").values, [0.0, 0.0, -1.0, -1.0]);
+    assert_eq!(array("envelope", "tension_min_case").values, [-1.0, -1.0, 0.0, 0.0]);
+    // At A the carrying rope pulls towards C and down: 45 degrees in plan.
+    let plan = array("reference", "end_angle_plan_deg").values[0];
+    let up = array("reference", "end_angle_up_deg").values[0];
+    assert!((plan - 45.0).abs() < 1e-9, "{plan}");
+    let expected = (-1.5_f64).atan2(4.5 * 2.0_f64.sqrt()).to_degrees();
+    assert!((up - expected).abs() < 1e-6, "{up}");
+
+    let closing = closings(&events)[1];
+    assert_eq!(closing.outcome(), v1::CaseOutcome::Answered);
+    assert!(closing.audited);
+    assert_eq!(closing.largest_movement_node, "m");
+    assert!((closing.load_sum_n[2] + 5000.0).abs() < 1e-9);
+    assert!((closing.support_force_sum_n[2] - 5000.0).abs() < 1e-3);
+    assert_eq!(closing.lowest_tension_cable, "bracing");
+    let share = closing.lowest_tension_share.expect("taut ropes");
+    assert!((share - 14_484.0 / 19_615.0).abs() < 1e-4, "{share}");
+    let summary = summary(&events);
+    assert_eq!(summary.verdict(), v1::Verdict::NotJudged);
+    assert_eq!(summary.answered, Some(v1::Share { count: 2, of: 2 }));
+    assert_eq!(summary.audited, Some(v1::Share { count: 2, of: 2 }));
+    assert!(summary.cautions.iter().any(|caution| caution.contains("licensed engineer")));
+}
+
+#[test]
+fn events_come_in_order() {
+    let work = work(&terrace());
+    let events = run(&work, &[0, 1, 2]);
+    assert!(matches!(events[0], Event::Started(_)));
+    let mut open: Option<String> = None;
+    let mut closed = Vec::new();
+    for event in &events {
+        match event {
+            Event::CaseBegin(begin) => assert!(open.replace(begin.case.clone()).is_none()),
+            Event::Columns(columns) if columns.case != "envelope" => assert_eq!(open.as_ref(), Some(&columns.case)),
+            Event::Columns(_) => assert!(open.is_none()),
+            Event::CaseSummary(closing) => {
+                assert_eq!(open.take().as_ref(), Some(&closing.case));
+                closed.push(closing.case.clone());
+            }
+            Event::Ids(_) => assert!(open.is_none() && closed.is_empty()),
+            _ => {}
+        }
+    }
+    assert_eq!(closed, ["reference", "snowed", "iced", "summer"]);
+    let begin = events.iter().find_map(|event| match event {
+        Event::CaseBegin(begin) if begin.case == "iced" => Some(begin),
+        _ => None,
+    });
+    let begin = begin.expect("the case begins");
+    assert_eq!((begin.in_words.as_str(), begin.sets.as_slice()), ("1.35 self + 1.5 ice", ["winter".to_owned()].as_slice()));
+}
+
+/// Arrays and tables have the lengths of what they range over.
+#[test]
+fn arrays_fit_their_tables() {
+    let work = work(&terrace());
+    let events = run(&work, &[0]);
+    let mut totals: BTreeMap<i32, u32> = BTreeMap::new();
+    let mut sizes = None;
+    for event in &events {
+        match event {
+            Event::Ids(table) => {
+                assert_eq!(table.total as usize, table.ids.len());
+                totals.insert(table.over, table.total);
+            }
+            Event::Started(started) => sizes = started.sizes,
+            _ => {}
+        }
+    }
+    let sizes = sizes.expect("sizes are told");
+    let of = |over: v1::Range| totals.get(&over.into()).copied();
+    assert_eq!(of(v1::Range::Node), Some(sizes.nodes));
+    assert_eq!(of(v1::Range::Segment), Some(sizes.segments));
+    assert_eq!(of(v1::Range::Cable), Some(sizes.cables));
+    assert_eq!(of(v1::Range::Strut), Some(sizes.struts));
+    assert_eq!(of(v1::Range::Support), Some(sizes.supports));
+    assert_eq!(of(v1::Range::Case), Some(1));
+    for ((_, name), array) in arrays(&events) {
+        let length = match array.over() {
+            v1::Range::RopeSegment => sizes.segments - sizes.struts,
+            v1::Range::Reach => sizes.segments,
+            v1::Range::Iteration => continue,
+            over => of(over).unwrap_or_else(|| panic!("no table for {name}")),
+        };
+        assert_eq!(array.total, length * array.components, "{name}");
+    }
+}
+
+#[test]
+fn checks_are_told_with_demand_limit_and_source() {
+    let events = run(&work(&terrace()), &[0, 1, 2]);
+    let summary = summary(&events);
+    let [safety, slackness, movement, pull] = &summary.checks[..] else {
+        panic!("four checks");
+    };
+    assert_eq!((safety.path.as_str(), safety.kind.as_str(), safety.unit.as_str()), ("checks[0]", "safety", "N"));
+    assert_eq!((safety.judged, safety.not_judged), (4, 0));
+    assert!((safety.ratio - safety.demand / safety.limit).abs() < 1e-12);
+    assert!(safety.source.contains("breaking force"), "{}", safety.source);
+    assert_eq!(slackness.over, ["service"]);
+    assert_eq!((movement.judged, movement.unit.as_str()), (2, "m"));
+    assert_eq!(pull.judged, 3);
+    // The worst ratio of a case is that of the checks that read it.
+    let worst = closings(&events).iter().filter_map(|closing| closing.worst_ratio).fold(0.0, f64::max);
+    let over_all = summary.checks.iter().map(|check| check.ratio).fold(0.0, f64::max);
+    assert!((worst - over_all).abs() < 1e-12, "{worst} and {over_all}");
+    assert_eq!(summary.judged, Some(v1::Share { count: 11, of: 11 }));
+}
+
+#[test]
+fn checks_judge_what_was_run() {
+    let work = work(&terrace());
+    let only = work.select(&["summer".to_owned()]).expect("a case");
+    let events = run(&work, &only);
+    let summary = summary(&events);
+    assert_eq!(summary.answered, Some(v1::Share { count: 2, of: 2 }));
+    assert_eq!(summary.checks[1].governing_case, "summer");
+    // The winter cases were not run, so the check that reads them judges nothing.
+    assert_eq!((summary.checks[0].judged, summary.checks[0].verdict()), (0, v1::Verdict::NotJudged));
+}
+
+#[test]
+fn a_case_that_nothing_holds_is_told_by_names() {
+    // A chain that hangs slack sideways: the load on q, which one slack rope holds, is held; a free pair is not.
+    let load = json!({"nodes": {"on": ["p"], "force_n": [0, 0, 1000]}});
+    let json = hanging(load);
+    let events = run(&work(&json), &[0]);
+    let closing = closings(&events)[1].clone();
+    assert_eq!(closing.outcome(), v1::CaseOutcome::Answered, "{closing:#?}");
+}
+
+/// A rope hung between A and C at mid-height, given by its length, with a load.
+fn hanging(load: Value) -> Value {
+    changed(
+        first_net(),
+        &[
+            ("/net/nodes/-", json!({"id": "p", "xyz_m": [1, 1, 1]})),
+            ("/net/cables/-", json!({"id": "hanger", "section": "r10", "nodes": ["A", "p"]})),
+            ("/prestress/rules/-", json!({"on": ["hanger"], "unstressed_length_m": 2})),
+            ("/actions/0/loads/0", load),
+        ],
+    )
+}
+
+#[test]
+fn loose_nodes_are_doubted_by_name() {
+    let json = hanging(json!({"nodes": {"on": ["m"], "force_n": [0, 0, -5000]}}));
+    let work = work(&json);
+    let plan = ropewalk_numerics::brief::Plan::new(work.brief.clone());
+    // A rope that hangs free without a load has no shape to find: told by the node.
+    let found = plan.reference(&mut |_| ControlFlow::Continue(()));
+    let said = reference(&work, &plan, &found);
+    let words = format!("{said:?}");
+    assert!(words.contains("\\\"p\\\""), "{words}");
+}
+
+#[test]
+fn failures_of_our_own_are_told_and_do_not_end_the_run() {
+    let work = work(&first_net());
+    let (plan, found) = found(&work);
+    let found = Ok(found);
+    let mut tally = Tally::new(&plan, &[0], &found);
+    let (said, noted) = engine_error(&work, &plan, 0);
+    tally.add(0, noted);
+    let Some(Event::CaseSummary(closing)) = said.last().and_then(|message| message.event.clone()) else {
+        panic!("the case is closed");
+    };
+    assert_eq!(closing.outcome(), v1::CaseOutcome::EngineError);
+    assert_eq!(closing.failure.expect("a failure").reason, "ENGINE_ERROR");
+    let said = ropewalk_service::encode::closing(&work, &plan, tally);
+    let Some(Event::Summary(summary)) = said.last().and_then(|message| message.event.clone()) else {
+        panic!("the summary comes last");
+    };
+    assert_eq!(summary.verdict(), v1::Verdict::NoAnswer);
+    assert_eq!(summary.answered, Some(v1::Share { count: 1, of: 2 }));
+    assert_eq!(summary.findings[0].count, 1);
+}
+
+#[test]
+fn without_a_reference_state_nothing_is_judged() {
+    let work = work(&terrace());
+    let plan = ropewalk_numerics::brief::Plan::new(work.brief.clone());
+    let found = plan.reference(&mut |_| ControlFlow::Break(()));
+    assert!(found.is_err());
+    let said = reference(&work, &plan, &found);
+    let Some(Event::CaseSummary(closing)) = said.last().and_then(|message| message.event.clone()) else {
+        panic!("the reference state is closed");
+    };
+    let failure = closing.failure.expect("a failure");
+    assert_eq!(failure.reason, "CANCELLED");
+    let said = closing_of(&work, &plan, Tally::new(&plan, &[0, 1, 2], &found));
+    assert_eq!(said.verdict(), v1::Verdict::NoAnswer);
+    assert_eq!(said.answered, Some(v1::Share { count: 0, of: 4 }));
+    assert_eq!(said.checks[0].not_judged, 4);
+    assert_eq!(said.judged, Some(v1::Share { count: 0, of: 11 }));
+}
+
+fn closing_of(work: &Work, plan: &ropewalk_numerics::brief::Plan, tally: Tally) -> v1::Summary {
+    match closing(work, plan, tally).pop().and_then(|message| message.event) {
+        Some(Event::Summary(summary)) => summary,
+        other => panic!("{other:?} comes last"),
+    }
+}
