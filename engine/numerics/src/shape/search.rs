@@ -60,7 +60,7 @@ pub(super) struct Search<'a, 'o> {
     pub(super) loads: &'a ShapeLoads,
     /// Axial forces of the members left to balance (N), as last found; zero elsewhere.
     pub(super) balance_forces: Vec<f64>,
-    /// Iterations so far.
+    /// Factorisations so far.
     pub(super) iterations: u32,
     factor: Factor,
     values: Vec<f64>,
@@ -188,6 +188,7 @@ impl<'a, 'o> Search<'a, 'o> {
 
     /// Factorises the stiffness at a point. `floor`: least force across a member of given length (N).
     fn factorise(&mut self, point: &Point, family_densities: &[f64], floor: f64) -> Result<(), ShapeError> {
+        self.iterations += 1;
         let n_segments = self.net().segments().len();
         let mut blocks = vec![Matrix3::zeros(); n_segments];
         let mut largest: f64 = 0.0;
@@ -371,7 +372,6 @@ impl<'a, 'o> Search<'a, 'o> {
             slack: (0..n_segments).filter(slack).count(),
             step_length,
         };
-        self.iterations += 1;
         match (self.observe)(&report) {
             ControlFlow::Continue(()) => Ok(()),
             ControlFlow::Break(()) => Err(ShapeError::Cancelled),
