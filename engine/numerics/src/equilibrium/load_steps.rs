@@ -19,6 +19,7 @@ const MUCH_SLACK: f64 = 0.2;
 const CLEARLY_SLACK: f64 = 0.999;
 /// Forces below this share of the largest do not hold a node in place.
 const HOLDS: f64 = 1e-9;
+const ROUNDS_WITH_STRUTS: u32 = 3;
 const FIRST_STEP: f64 = 0.25;
 const SMALLEST_STEP: f64 = 1.0 / 256.0;
 
@@ -203,9 +204,6 @@ fn state(
         }
         positions.copy_from_slice(&entry);
     }
-    if !run.structure.net().is_pure_tension() {
-        return WITH_STRUTS.solve(run, loading, positions);
-    }
     if slack < MUCH_SLACK * present {
         let outcome = TRY.solve(run, loading, positions);
         if ends(outcome, run) {
@@ -213,15 +211,26 @@ fn state(
         }
         positions.copy_from_slice(&entry);
     }
-    match interior_point::solve(run, loading, positions) {
-        Err(Termination::Cancelled) => return Termination::Cancelled,
-        Err(_) => positions.copy_from_slice(&entry),
-        Ok((forces, load)) => {
-            let inside = positions.clone();
-            match POLISH.solve(run, loading, positions, forces, load) {
-                Termination::Converged => return Termination::Converged,
-                Termination::Cancelled => return Termination::Cancelled,
-                _ => positions.copy_from_slice(&inside),
+    // With struts the interior point is repeated from where it got to: it takes them along their direction at its start.
+    let rounds = if run.structure.net().is_pure_tension() {
+        1
+    } else {
+        ROUNDS_WITH_STRUTS
+    };
+    for _ in 0..rounds {
+        match interior_point::solve(run, loading, positions) {
+            Err(Termination::Cancelled) => return Termination::Cancelled,
+            Err(_) => {
+                positions.copy_from_slice(&entry);
+                break;
+            }
+            Ok((forces, load)) => {
+                let inside = positions.clone();
+                let outcome = POLISH.solve(run, loading, positions, forces, load);
+                if ends(outcome, run) {
+                    return outcome;
+                }
+                positions.copy_from_slice(&inside);
             }
         }
     }
