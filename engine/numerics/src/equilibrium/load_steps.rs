@@ -191,7 +191,8 @@ fn state(
     }
     let ends =
         |outcome, run: &Run<'_>| matches!(outcome, Termination::Converged | Termination::Cancelled) || run.is_spent();
-    if pulled >= (1.0 - MUCH_SLACK) * present {
+    let is_taut = pulled >= (1.0 - MUCH_SLACK) * present;
+    if is_taut {
         let carried = run.response.axial_forces.clone();
         let joining = if run.load > 0.0 {
             run.load
@@ -204,7 +205,7 @@ fn state(
         }
         positions.copy_from_slice(&entry);
     }
-    if slack < MUCH_SLACK * present {
+    if slack < MUCH_SLACK * present && !is_taut {
         let outcome = TRY.solve(run, loading, positions);
         if ends(outcome, run) {
             return outcome;
@@ -248,7 +249,9 @@ fn in_smaller_steps(
 ) -> Result<(Termination, f64), SolveError> {
     let (mut reached, mut step, mut load_step) = (0.0, FIRST_STEP, 1);
     let mut good = start.to_vec();
-    while step >= SMALLEST_STEP && !run.is_spent() {
+    // The rest of the allowance is for what comes after.
+    let share = run.settings.max_iterations / 4 * 3;
+    while step >= SMALLEST_STEP && run.factorisations < share {
         let factor = f64::min(reached + step, 1.0);
         let loading = level(factor)?;
         load_step += 1;

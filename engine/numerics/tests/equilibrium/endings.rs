@@ -134,3 +134,53 @@ fn a_node_far_below_its_place_is_found() {
         solution.positions[1]
     );
 }
+
+/// World coordinates cost digits: the answer says so by what it leaves out of balance, and is still an answer.
+#[test]
+fn a_net_far_from_the_origin_is_solved_to_its_rounding() {
+    let near = saddle_net();
+    let wanted = near.solve().unwrap();
+    for shift in [1e4, 3e6] {
+        let mut far = near.clone();
+        far.positions
+            .iter_mut()
+            .for_each(|x| *x += Vector3::new(shift, -shift, 0.0));
+        let solution = far.solve().unwrap();
+        assert_eq!(solution.termination, Termination::Converged, "{shift:e}");
+        let audit = ropewalk_numerics::equilibrium::audit::audit(
+            &far.net(),
+            &far.case(),
+            &solution.positions,
+            &solution.axial_forces,
+        );
+        assert!(
+            audit.passed,
+            "{shift:e}: {} N of {} N",
+            audit.largest_imbalance, audit.allowed
+        );
+        for (a, b) in solution.axial_forces.iter().zip(&wanted.axial_forces) {
+            // k ε x of the rounded chords, where x is the size of the coordinates.
+            assert!(
+                (a - b).abs() < 1e-5 + 20.0 * 4e6 / 1.7 * f64::EPSILON * shift,
+                "{shift:e}: {a} {b}"
+            );
+        }
+    }
+}
+
+/// Slack nets of some size, whose start is nearly inextensible: the interior point's home ground.
+#[test]
+fn larger_slack_nets_are_solved() {
+    for n in [16, 32, 48] {
+        let mut net = grid(n, 24.0, 1e7, |u, w| 1.5 * (u * u - w * w));
+        net.segments.iter_mut().for_each(|s| s.3 *= 1.02);
+        net.loads = vec![Vector3::new(0.0, 0.0, -800.0); net.positions.len()];
+        let solution = net.solve().unwrap();
+        assert_eq!(solution.termination, Termination::Converged);
+        assert!(solution.factorisations <= 30, "{n}: {}", solution.factorisations);
+        println!(
+            "slack {n} x {n}: {} factorisations, {:?}",
+            solution.factorisations, solution.way
+        );
+    }
+}

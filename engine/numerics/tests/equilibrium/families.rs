@@ -257,7 +257,7 @@ fn hanging_chains() {
 
 #[test]
 fn tents_on_masts() {
-    check_family("tent", tent, 9);
+    check_family("tent", tent, 22);
 }
 
 #[test]
