@@ -9,6 +9,8 @@ const BROKEN: f64 = 0.05;
 const SLIPS: [f64; 2] = [1e3, 1e6];
 /// Strains that ropes are built for lie below this (–).
 const USUAL: f64 = 0.02;
+/// Decades between an `EA` and the median of its kind from which it counts as a slip.
+const SLIP_DECADES: f64 = 2.0;
 
 /// A member that is stretched or squeezed more than any material bears.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -73,7 +75,7 @@ pub struct OddStiffness {
     pub likely_factor: f64,
 }
 
-/// Ropes whose `EA` differs from the median of all ropes by a factor near 1 000 or a million, and struts likewise.
+/// Ropes whose `EA` differs from the median of all ropes by two decades or more, and struts likewise.
 #[must_use]
 pub fn odd_stiffnesses(net: &Net) -> Vec<OddStiffness> {
     let mut odd = Vec::new();
@@ -87,12 +89,11 @@ pub fn odd_stiffnesses(net: &Net) -> Vec<OddStiffness> {
         let mut last = None;
         for (index, segment) in of_kind() {
             let ratio = median / segment.section.axial_stiffness;
-            // Ropes of one net span about a decade either way; a slip stands clear of that.
-            let slip = SLIPS.into_iter().flat_map(|f| [f, 1.0 / f]);
-            let near = slip.into_iter().find(|f| (ratio / f).log10().abs() <= 1.0);
-            if let Some(likely_factor) = near
-                && last != Some(segment.member)
-            {
+            // Ropes of one net span about a decade either way; two decades are no choice of ropes any more.
+            let decades = ratio.log10();
+            let size = if decades.abs() < 4.5 { SLIPS[0] } else { SLIPS[1] };
+            let likely_factor = if decades > 0.0 { size } else { 1.0 / size };
+            if decades.abs() >= SLIP_DECADES && last != Some(segment.member) {
                 last = Some(segment.member);
                 odd.push(OddStiffness {
                     segment: SegmentId::new(index),

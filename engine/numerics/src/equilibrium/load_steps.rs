@@ -129,9 +129,13 @@ pub fn solve(
     let way = way(&run.history, load_factor);
     let holds = HOLDS * run.response.largest_axial_force().max(run.load);
     let loose_nodes = existence::loose_nodes(structure, |s| run.response.axial_forces[s].abs() > holds);
+    run.begin(run.load_step, load_factor, &at_end);
+    let mut free_movement = None;
+    if !structure.net().is_pure_tension() && run.is_balanced(&run.response) {
+        free_movement = stability::free_movement(analysis, &at_end, &positions, &loose_nodes);
+    }
     if termination == Termination::Converged
-        && !structure.net().is_pure_tension()
-        && let Some(movement) = stability::free_movement(analysis, &at_end, &positions, &loose_nodes)
+        && let Some(movement) = free_movement
     {
         return Err(movement.into());
     }
@@ -142,6 +146,7 @@ pub fn solve(
         way,
         load_factor,
         loose_nodes,
+        free_movement,
         steps,
         history: run.history,
         factorisations: run.factorisations,

@@ -3,6 +3,7 @@
 use nalgebra::Vector3;
 use thiserror::Error;
 
+use super::stability::FreeMovement;
 use crate::assembly::LoadingError;
 use crate::model::{NodeId, SegmentId};
 
@@ -86,6 +87,8 @@ pub struct Solution {
     pub load_factor: f64,
     /// Nodes whose place is not determined.
     pub loose_nodes: Vec<NodeId>,
+    /// A movement that nothing resists, where the solve ended early at a balanced state: what to blame.
+    pub free_movement: Option<FreeMovement>,
     /// The state after every load step, where equal steps were asked for.
     pub steps: Vec<LoadStepState>,
     /// Every iteration; of a relaxation, every peak of the kinetic energy.
@@ -124,8 +127,8 @@ pub enum SolveError {
     },
 }
 
-impl From<super::stability::FreeMovement> for SolveError {
-    fn from(movement: super::stability::FreeMovement) -> Self {
+impl From<FreeMovement> for SolveError {
+    fn from(movement: FreeMovement) -> Self {
         Self::FreeMovement {
             nodes: movement.nodes,
             direction: movement.direction,

@@ -4,7 +4,9 @@ use std::ops::ControlFlow;
 
 use nalgebra::Vector3;
 use ropewalk_numerics::assembly::LoadingError;
-use ropewalk_numerics::equilibrium::{Analysis, IterationReport, Settings, SolveError, Termination, Way, solve};
+use ropewalk_numerics::equilibrium::{
+    Analysis, IterationReport, LoadSteps, Settings, SolveError, Termination, Way, solve,
+};
 
 use crate::nets::{Example, grid};
 use crate::saddle::saddle_net;
@@ -59,6 +61,30 @@ fn the_limit_of_iterations_is_kept() {
     assert!(solution.factorisations <= 3);
     assert_eq!(solution.termination, Termination::IterationLimit);
     assert!(solution.positions.iter().all(|x| x.norm().is_finite()));
+}
+
+#[test]
+fn the_last_good_load_step_is_kept() {
+    let settings = Settings {
+        load_steps: LoadSteps::Equal(4),
+        max_iterations: 7,
+        ..Settings::default()
+    };
+    let net = saddle_net();
+    let solution = net.solve_with(&settings).unwrap();
+    assert_eq!(solution.termination, Termination::IterationLimit);
+    assert_eq!(solution.load_factor, 0.25);
+    assert_eq!(solution.steps.len(), 1);
+    assert_eq!(solution.steps[0].positions, solution.positions);
+    let mut quarter = net.clone();
+    quarter.loads.iter_mut().for_each(|p| *p *= 0.25);
+    let audit = ropewalk_numerics::equilibrium::audit::audit(
+        &net.net(),
+        &quarter.case(),
+        &solution.positions,
+        &solution.axial_forces,
+    );
+    assert!(audit.passed);
 }
 
 #[test]
@@ -250,7 +276,7 @@ fn supports_move_and_temperatures_come_with_the_load_factor() {
     net.movements = vec![(net.held[2], Vector3::new(0.0, 0.0, 0.04))];
     net.strains = vec![2e-4; net.segments.len()];
     let settings = Settings {
-        load_steps: ropewalk_numerics::equilibrium::LoadSteps::Equal(4),
+        load_steps: LoadSteps::Equal(4),
         ..Settings::default()
     };
     let solution = net.solve_with(&settings).unwrap();
