@@ -20,7 +20,8 @@ pub(crate) const LIMITS: Limits = Limits {
 
 pub(crate) fn descriptor() -> MessageDescriptor {
     let pool = DescriptorPool::decode(FILE_DESCRIPTOR_SET).expect("the descriptors are valid");
-    pool.get_message_by_name("ropewalk.v1.Brief").expect("the contract has briefs")
+    pool.get_message_by_name("ropewalk.v1.Brief")
+        .expect("the contract has briefs")
 }
 
 /// The brief that a JSON value says.

@@ -14,7 +14,9 @@ fn round_trip(json: &Value) {
     let binary = dynamic.encode_to_vec();
     let typed = v1::Brief::decode(binary.as_slice()).expect("a brief");
     let again = DynamicMessage::decode(descriptor(), typed.encode_to_vec().as_slice()).expect("a brief");
-    let options = SerializeOptions::new().use_proto_field_name(true).skip_default_fields(true);
+    let options = SerializeOptions::new()
+        .use_proto_field_name(true)
+        .skip_default_fields(true);
     let back = again
         .serialize_with_options(serde_json::value::Serializer, &options)
         .expect("a brief has a JSON form");

@@ -70,7 +70,10 @@ fn skew_springs_of_a_node_are_summed_and_free_directions_released() {
             assert!((sum[(row, column)] - expected[row][column]).abs() < 1e-6, "{sum}");
         }
     }
-    assert_eq!(net.support_of(NodeId::new(3)).map(|support| support.held().len()), Some(0));
+    assert_eq!(
+        net.support_of(NodeId::new(3)).map(|support| support.held().len()),
+        Some(0)
+    );
 }
 
 #[test]
@@ -78,9 +81,15 @@ fn rules_and_their_narrowness() {
     let rules = |rules: Value| {
         let work = work(&changed(
             terrace(),
-            &[("/prestress/rules", rules), ("/net/groups/2/of", json!(["carrying", "bracing", "g1", "g2"]))],
+            &[
+                ("/prestress/rules", rules),
+                ("/net/groups/2/of", json!(["carrying", "bracing", "g1", "g2"])),
+            ],
         ));
-        (work.brief.prestress.rules.clone(), work.brief.prestress.mean_tensions.clone())
+        (
+            work.brief.prestress.rules.clone(),
+            work.brief.prestress.mean_tensions.clone(),
+        )
     };
     let balance = json!({"on": ["post"], "balance": {}});
     // Group, role, member and part: each narrower one wins.
@@ -91,7 +100,15 @@ fn rules_and_their_narrowness() {
     let tension = PrestressRule::Tension;
     assert_eq!(
         found,
-        [tension(3.0), tension(4.0), tension(2.0), tension(2.0), tension(1.0), tension(1.0), PrestressRule::Balance]
+        [
+            tension(3.0),
+            tension(4.0),
+            tension(2.0),
+            tension(2.0),
+            tension(1.0),
+            tension(1.0),
+            PrestressRule::Balance
+        ]
     );
     // One family of a mean tension for each cable, also where a role names them.
     let (found, means) = rules(json!([
@@ -182,7 +199,10 @@ fn cases_checks_and_settings() {
 
 #[test]
 fn a_negative_factor_reads_as_a_difference() {
-    let work = work(&changed(terrace(), &[("/cases/1/factors", json!({"self": 1, "snow": -0.5}))]));
+    let work = work(&changed(
+        terrace(),
+        &[("/cases/1/factors", json!({"self": 1, "snow": -0.5}))],
+    ));
     assert_eq!(work.in_words(1), "1 self - 0.5 snow");
 }
 
@@ -190,16 +210,32 @@ fn a_negative_factor_reads_as_a_difference() {
 fn inherited_values_are_told() {
     let reading = reading(&terrace());
     let has = |path: &str, value: &str, origin: &str| {
-        let found = (reading.resolved.iter()).any(|r| (r.path.as_str(), r.value.as_str(), r.origin.as_str()) == (path, value, origin));
-        assert!(found, "{path} = {value} from {origin} is not among {:#?}", reading.resolved);
+        let found = (reading.resolved.iter())
+            .any(|r| (r.path.as_str(), r.value.as_str(), r.origin.as_str()) == (path, value, origin));
+        assert!(
+            found,
+            "{path} = {value} from {origin} is not among {:#?}",
+            reading.resolved
+        );
     };
     has("net.cables[bracing].section", "r10", "net.roles[rope].section");
     has("net.struts[post].section", "tube", "net.roles[mast].section");
-    has("net.cables[g2].end_fitting", "strength factor 0.9", "net.roles[guy].end_fitting");
-    has("net.sections[tube].axial_stiffness_n", "4.2e8", "net.sections[tube].modulus_pa");
+    has(
+        "net.cables[g2].end_fitting",
+        "strength factor 0.9",
+        "net.roles[guy].end_fitting",
+    );
+    has(
+        "net.sections[tube].axial_stiffness_n",
+        "4.2e8",
+        "net.sections[tube].modulus_pa",
+    );
     has("net.struts[post]", "balance", "prestress.rules[1]");
     has("checks[2].on", "all free nodes", "default");
-    assert!(!reading.resolved.iter().any(|r| r.path == "net.cables[g2].section"), "its own section is not inherited");
+    assert!(
+        !reading.resolved.iter().any(|r| r.path == "net.cables[g2].section"),
+        "its own section is not inherited"
+    );
 }
 
 #[test]
@@ -214,7 +250,12 @@ fn a_ring_wraps_and_visits_count() {
         ("/cases", json!([])),
     ];
     let work = work(&changed(first_net(), &changes));
-    let stiffness = work.brief.net.segments().iter().map(|segment| segment.section.axial_stiffness);
+    let stiffness = work
+        .brief
+        .net
+        .segments()
+        .iter()
+        .map(|segment| segment.section.axial_stiffness);
     assert_eq!(stiffness.collect::<Vec<_>>(), [4e6, 6.5e6, 6.5e6, 4e6]);
 }
 

@@ -42,7 +42,10 @@ fn check(json: &Value) {
     assert_eq!(from.digest, summary.from_digest);
     let prestress = brief.prestress.as_ref().expect("has rules");
     assert!(prestress.hold.is_empty());
-    assert_eq!(prestress.under, first.message.prestress.as_ref().expect("had rules").under);
+    assert_eq!(
+        prestress.under,
+        first.message.prestress.as_ref().expect("had rules").under
+    );
     assert_eq!(brief.cases, first.message.cases);
     assert_eq!(brief.checks, first.message.checks);
     let Some(v1::brief::NetSource::Net(net)) = &brief.net_source else {
@@ -55,14 +58,23 @@ fn check(json: &Value) {
     let again = reading.work.unwrap_or_else(|| panic!("{:#?}", reading.findings));
     assert!(again.frozen);
     let (_, after) = found(&again);
-    let largest = before.state.axial_forces.iter().fold(0.0_f64, |largest, force| largest.max(force.abs()));
+    let largest = before
+        .state
+        .axial_forces
+        .iter()
+        .fold(0.0_f64, |largest, force| largest.max(force.abs()));
     for (before, after) in before.state.axial_forces.iter().zip(&after.state.axial_forces) {
         assert!((before - after).abs() < 1e-6 * largest, "{before} and {after}");
     }
     for (before, after) in before.state.positions.iter().zip(&after.state.positions) {
         assert!((before - after).norm() < 1e-6, "{before} and {after}");
     }
-    for (before, after) in before.state.unstressed_lengths.iter().zip(&after.state.unstressed_lengths) {
+    for (before, after) in before
+        .state
+        .unstressed_lengths
+        .iter()
+        .zip(&after.state.unstressed_lengths)
+    {
         assert!((before - after).abs() < 1e-12, "lengths are kept");
     }
 }
@@ -78,12 +90,17 @@ fn visits_tell_stretches_of_a_rope_that_comes_back() {
     // A figure of eight through m: A m C D m B.
     let cables = json!([{"id": "eight", "section": "r10", "nodes": ["A", "m", "C", "n", "D", "m", "B"]},
         {"id": "tie", "section": "r10", "nodes": ["n", "A"]}]);
-    let rules = json!([{"on": ["eight"], "force_density_n_per_m": 3000}, {"on": ["tie"], "force_density_n_per_m": 2000}]);
+    let rules =
+        json!([{"on": ["eight"], "force_density_n_per_m": 3000}, {"on": ["tie"], "force_density_n_per_m": 2000}]);
     let json = changed(first_net(), &[("/net/cables", cables), ("/prestress/rules", rules)]);
     check(&json);
     let (brief, _) = frozen(&work(&json));
     let rules = brief.prestress.expect("rules").rules;
-    let visits: Vec<Option<u32>> = rules.iter().flat_map(|rule| &rule.parts).map(|part| part.from_visit).collect();
+    let visits: Vec<Option<u32>> = rules
+        .iter()
+        .flat_map(|rule| &rule.parts)
+        .map(|part| part.from_visit)
+        .collect();
     assert_eq!(visits, [None, None, None, None, None, Some(2)]);
 }
 

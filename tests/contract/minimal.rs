@@ -20,7 +20,13 @@ fn every_number_arrives() {
     assert_eq!(net.nodes()[4].position, None);
     assert_eq!(net.supports().len(), 4);
     assert!(net.supports().iter().all(|support| support.held().len() == 3));
-    let path = |cable: usize| net.cables()[cable].path.iter().map(|node| node.index()).collect::<Vec<_>>();
+    let path = |cable: usize| {
+        net.cables()[cable]
+            .path
+            .iter()
+            .map(|node| node.index())
+            .collect::<Vec<_>>()
+    };
     assert_eq!((path(0), path(1)), (vec![0, 4, 2], vec![1, 4, 3]));
     assert!(net.struts().is_empty() && net.elastic_supports().is_empty());
     for segment in net.segments() {
@@ -48,15 +54,24 @@ fn every_number_arrives() {
 fn what_was_left_out_is_told_with_its_origin() {
     let reading = reading(&first_net());
     let origin = |path: &str, value: &str| {
-        let found = reading.resolved.iter().find(|resolved| resolved.path == path && resolved.value == value);
+        let found = reading
+            .resolved
+            .iter()
+            .find(|resolved| resolved.path == path && resolved.value == value);
         found.map_or_else(|| panic!("{path} = {value} is not told"), |found| found.origin.clone())
     };
     assert_eq!(origin("net.gravity_m_per_s2", "9.80665"), "default");
     assert_eq!(origin("net.sections[r10].mass_kg_per_m", "0"), "default");
     assert_eq!(origin("net.sections[r10].expansion_per_k", "1.2e-5"), "default");
     assert_eq!(origin("solving.tolerance", "1e-10"), "default");
-    assert_eq!(origin("net.nodes[m]", "free, its place is to be found"), "net.cables[carrying].nodes");
-    assert_eq!(origin("net.cables[bracing]", "force density 3000 N/m"), "prestress.rules[0]");
+    assert_eq!(
+        origin("net.nodes[m]", "free, its place is to be found"),
+        "net.cables[carrying].nodes"
+    );
+    assert_eq!(
+        origin("net.cables[bracing]", "force density 3000 N/m"),
+        "prestress.rules[0]"
+    );
     assert_eq!(reading.cases.len(), 1);
     assert_eq!(reading.cases[0].in_words, "1 snow");
 }
@@ -75,7 +90,12 @@ fn its_reference_state_is_the_known_one() {
     let work = work(&first_net());
     let (_, reference) = found(&work);
     assert!((reference.state.positions[4] - Vector3::new(4.5, 4.5, 1.5)).norm() < 1e-9);
-    for (tension, length) in reference.state.axial_forces.iter().zip(&reference.state.unstressed_lengths) {
+    for (tension, length) in reference
+        .state
+        .axial_forces
+        .iter()
+        .zip(&reference.state.unstressed_lengths)
+    {
         assert!((tension - 19_615.0).abs() < 0.5, "{tension}");
         assert!((length - 6.518_677).abs() < 5e-7, "{length}");
     }

@@ -32,7 +32,10 @@ pub(crate) fn run(work: &Work, cases: &[usize]) -> Vec<Event> {
         }
     }
     messages.extend(closing(work, &plan, tally));
-    messages.into_iter().map(|message| message.event.expect("an event")).collect()
+    messages
+        .into_iter()
+        .map(|message| message.event.expect("an event"))
+        .collect()
 }
 
 /// The arrays of a run by case and name, put together from their parts.
@@ -87,7 +90,10 @@ fn the_minimal_draft_gives_its_worked_numbers() {
         assert!((tension - worked).abs() < 0.5, "{tension} instead of {worked}");
     }
     let moved = array("full-snow", "displacement_m");
-    assert_eq!((moved.baseline.as_str(), moved.unit.as_str(), moved.components), ("reference", "m", 3));
+    assert_eq!(
+        (moved.baseline.as_str(), moved.unit.as_str(), moved.components),
+        ("reference", "m", 3)
+    );
     assert!((moved.values[14] + 0.02259).abs() < 5e-6, "{}", moved.values[14]);
     assert_eq!(array("reference", "unstressed_length_m").values.len(), 4);
     let most = array("envelope", "tension_max_n");
@@ -114,7 +120,12 @@ fn the_minimal_draft_gives_its_worked_numbers() {
     assert_eq!(summary.verdict(), v1::Verdict::NotJudged);
     assert_eq!(summary.answered, Some(v1::Share { count: 2, of: 2 }));
     assert_eq!(summary.audited, Some(v1::Share { count: 2, of: 2 }));
-    assert!(summary.cautions.iter().any(|caution| caution.contains("licensed engineer")));
+    assert!(
+        summary
+            .cautions
+            .iter()
+            .any(|caution| caution.contains("licensed engineer"))
+    );
 }
 
 #[test]
@@ -143,7 +154,10 @@ fn events_come_in_order() {
         _ => None,
     });
     let begin = begin.expect("the case begins");
-    assert_eq!((begin.in_words.as_str(), begin.sets.as_slice()), ("1.35 self + 1.5 ice", ["winter".to_owned()].as_slice()));
+    assert_eq!(
+        (begin.in_words.as_str(), begin.sets.as_slice()),
+        ("1.35 self + 1.5 ice", ["winter".to_owned()].as_slice())
+    );
 }
 
 /// Arrays and tables have the lengths of what they range over.
@@ -189,7 +203,10 @@ fn checks_are_told_with_demand_limit_and_source() {
     let [safety, slackness, movement, pull] = &summary.checks[..] else {
         panic!("four checks");
     };
-    assert_eq!((safety.path.as_str(), safety.kind.as_str(), safety.unit.as_str()), ("checks[0]", "safety", "N"));
+    assert_eq!(
+        (safety.path.as_str(), safety.kind.as_str(), safety.unit.as_str()),
+        ("checks[0]", "safety", "N")
+    );
     assert_eq!((safety.judged, safety.not_judged), (4, 0));
     assert!((safety.ratio - safety.demand / safety.limit).abs() < 1e-12);
     assert!(safety.source.contains("breaking force"), "{}", safety.source);
@@ -197,7 +214,10 @@ fn checks_are_told_with_demand_limit_and_source() {
     assert_eq!((movement.judged, movement.unit.as_str()), (2, "m"));
     assert_eq!(pull.judged, 3);
     // The worst ratio of a case is that of the checks that read it.
-    let worst = closings(&events).iter().filter_map(|closing| closing.worst_ratio).fold(0.0, f64::max);
+    let worst = closings(&events)
+        .iter()
+        .filter_map(|closing| closing.worst_ratio)
+        .fold(0.0, f64::max);
     let over_all = summary.checks.iter().map(|check| check.ratio).fold(0.0, f64::max);
     assert!((worst - over_all).abs() < 1e-12, "{worst} and {over_all}");
     assert_eq!(summary.judged, Some(v1::Share { count: 11, of: 11 }));
@@ -212,7 +232,10 @@ fn checks_judge_what_was_run() {
     assert_eq!(summary.answered, Some(v1::Share { count: 2, of: 2 }));
     assert_eq!(summary.checks[1].governing_case, "summer");
     // The winter cases were not run, so the check that reads them judges nothing.
-    assert_eq!((summary.checks[0].judged, summary.checks[0].verdict()), (0, v1::Verdict::NotJudged));
+    assert_eq!(
+        (summary.checks[0].judged, summary.checks[0].verdict()),
+        (0, v1::Verdict::NotJudged)
+    );
 }
 
 #[test]
@@ -231,8 +254,14 @@ fn hanging(load: Value) -> Value {
         first_net(),
         &[
             ("/net/nodes/-", json!({"id": "p", "xyz_m": [1, 1, 1]})),
-            ("/net/cables/-", json!({"id": "hanger", "section": "r10", "nodes": ["A", "p"]})),
-            ("/prestress/rules/-", json!({"on": ["hanger"], "unstressed_length_m": 2})),
+            (
+                "/net/cables/-",
+                json!({"id": "hanger", "section": "r10", "nodes": ["A", "p"]}),
+            ),
+            (
+                "/prestress/rules/-",
+                json!({"on": ["hanger"], "unstressed_length_m": 2}),
+            ),
             ("/actions/0/loads/0", load),
         ],
     )

@@ -195,10 +195,18 @@ fn very_many_findings_come_in_parts() {
         }
     }
     let reading = read(brief, &LIMITS);
-    assert!(reading.findings.iter().any(|finding| finding.reason == "MORE_OF_THE_SAME"));
+    assert!(
+        reading
+            .findings
+            .iter()
+            .any(|finding| finding.reason == "MORE_OF_THE_SAME")
+    );
     let report = check_report(reading);
     small(&report);
-    let totals = report.last().and_then(|part| part.totals.as_ref()).expect("totals come last");
+    let totals = report
+        .last()
+        .and_then(|part| part.totals.as_ref())
+        .expect("totals come last");
     assert!(totals.findings[0].count > 1000);
     assert_eq!((totals.seconds, totals.bytes), (0.0, 0));
 }

@@ -137,7 +137,12 @@ pub(super) fn worst_ratio(
     let checks = brief.checks.iter().filter(|check| check.cases.contains(&case));
     checks
         .filter_map(|check| {
-            let result = judge(&brief.net, &reference.state, &over(check, |other| other == case), &digests);
+            let result = judge(
+                &brief.net,
+                &reference.state,
+                &over(check, |other| other == case),
+                &digests,
+            );
             result.worst().map(|worst| worst.ratio)
         })
         .reduce(f64::max)

@@ -30,7 +30,10 @@ pub(crate) fn read(accepted: &[v1::AcceptedDoubt], findings: &mut Findings) {
                     reasons::ACCEPTED_UNKNOWN,
                     &at.field("reason"),
                     &doubt.on,
-                    format!("there is no reason {}: nothing is accepted.{question}", Quoted(&doubt.reason)),
+                    format!(
+                        "there is no reason {}: nothing is accepted.{question}",
+                        Quoted(&doubt.reason)
+                    ),
                     "give the reason as in the finding",
                 )
                 .value(&doubt.reason);

@@ -89,7 +89,10 @@ impl<'a> Actions<'a> {
 
     /// Whether an action has loads that the test asks for.
     pub(crate) fn has(&self, action: usize, test: impl Fn(&Kind) -> bool) -> bool {
-        self.messages[action].loads.iter().any(|load| load.kind.as_ref().is_some_and(&test))
+        self.messages[action]
+            .loads
+            .iter()
+            .any(|load| load.kind.as_ref().is_some_and(&test))
     }
 }
 
@@ -172,7 +175,8 @@ impl Reader<'_, '_> {
 
     fn force_per_length(&mut self, force: &[f64], at: &Path<'_>) -> Option<Vector3<f64>> {
         let of = Of::new("action", self.action);
-        self.findings.vector(&at.field("force_n_per_m"), of, &FORCE_PER_LENGTH, force)
+        self.findings
+            .vector(&at.field("force_n_per_m"), of, &FORCE_PER_LENGTH, force)
     }
 
     fn covers_nothing(&mut self, on: &[String], field: &Path<'_>) -> bool {
@@ -213,7 +217,11 @@ impl Reader<'_, '_> {
                     reasons::WRONG_KIND,
                     &field,
                     &load.node,
-                    format!("{} is a {}, and only supported nodes can be moved", Quoted(&load.node), other.kind()),
+                    format!(
+                        "{} is a {}, and only supported nodes can be moved",
+                        Quoted(&load.node),
+                        other.kind()
+                    ),
                     "name a supported node",
                 );
                 return None;
@@ -234,7 +242,11 @@ impl Reader<'_, '_> {
             return None;
         };
         let by = by?;
-        if let Some(loose) = support.loose.iter().find(|loose| loose.dot(&by).abs() > ROUNDING * by.norm()) {
+        if let Some(loose) = support
+            .loose
+            .iter()
+            .find(|loose| loose.dot(&by).abs() > ROUNDING * by.norm())
+        {
             self.findings.error(
                 reasons::MOVE_ALONG_FREE,
                 &by_at,
@@ -258,11 +270,15 @@ impl Reader<'_, '_> {
 
     fn share(&mut self, load: &v1::PrestressShare, at: &Path<'_>) -> Option<Load> {
         let of = Of::new("action", self.action);
-        let share = self.findings.number(&at.field("share"), of, &PRESTRESS_SHARE, load.share);
+        let share = self
+            .findings
+            .number(&at.field("share"), of, &PRESTRESS_SHARE, load.share);
         let (cables, scope) = if load.on.is_empty() {
             ((0..self.net.cables.len()).collect(), Segments::All)
         } else {
-            let scope = self.scopes.of(self.net, &load.on, &at.field("on"), CABLES, self.findings);
+            let scope = self
+                .scopes
+                .of(self.net, &load.on, &at.field("on"), CABLES, self.findings);
             let segments = scope.segments(self.net).into_iter().map(SegmentId::new).collect();
             (scope.cables().collect(), Segments::Segments(segments))
         };

@@ -58,16 +58,19 @@ impl<'a> Cases<'a> {
             let steps_at = at.field("load_steps");
             let of = Of::new("case", &case.id);
             let steps = case.load_steps;
-            let load_steps = steps.filter(|steps| {
-                findings.number(&steps_at, of, &LOAD_STEPS, f64::from(*steps)).is_some()
-            });
+            let load_steps =
+                steps.filter(|steps| findings.number(&steps_at, of, &LOAD_STEPS, f64::from(*steps)).is_some());
             if case.encoded_len() > LARGEST {
                 findings
                     .error(
                         reasons::TOO_LARGE,
                         &at,
                         &case.id,
-                        format!("case {} takes {} bytes: at most {LARGEST} can be told", Quoted(&case.id), case.encoded_len()),
+                        format!(
+                            "case {} takes {} bytes: at most {LARGEST} can be told",
+                            Quoted(&case.id),
+                            case.encoded_len()
+                        ),
                         "gather loads in fewer actions, and name fewer sets",
                     )
                     .value(case.encoded_len());
@@ -98,7 +101,10 @@ impl<'a> Cases<'a> {
                         reasons::DUPLICATE_ID,
                         &at,
                         set,
-                        format!("{} is a case and a set: checks could not tell which is meant", Quoted(set)),
+                        format!(
+                            "{} is a case and a set: checks could not tell which is meant",
+                            Quoted(set)
+                        ),
                         "give the set another name than any case",
                     )
                     .value(set);
@@ -180,13 +186,21 @@ impl<'a> Cases<'a> {
     }
 
     fn acts(&self, action: usize) -> bool {
-        self.list.iter().any(|case| case.factors.iter().any(|(other, factor)| *other == action && *factor != 0.0))
+        self.list.iter().any(|case| {
+            case.factors
+                .iter()
+                .any(|(other, factor)| *other == action && *factor != 0.0)
+        })
     }
 
     fn own_weight(&self, net: &NetDraft<'_>, actions: &Actions<'_>, findings: &mut Findings) {
         let weighs = |action: &usize| actions.has(*action, |kind| matches!(kind, Kind::OwnWeight(_)));
         let weights: Vec<usize> = (0..actions.messages.len()).filter(weighs).collect();
-        let mass = net.message.sections.iter().any(|section| section.mass_kg_per_m.is_some_and(|mass| mass > 0.0))
+        let mass = net
+            .message
+            .sections
+            .iter()
+            .any(|section| section.mass_kg_per_m.is_some_and(|mass| mass > 0.0))
             || net.nodes.iter().any(|node| node.attached_mass > 0.0);
         if let (Some(weight), false) = (weights.first(), mass) {
             let id = &actions.messages[*weight].id;
@@ -279,12 +293,7 @@ fn reserved(id: &str, at: &Path<'_>, findings: &mut Findings) {
     }
 }
 
-fn read_factors(
-    case: &v1::Case,
-    at: &Path<'_>,
-    actions: &Actions<'_>,
-    findings: &mut Findings,
-) -> Vec<(usize, f64)> {
+fn read_factors(case: &v1::Case, at: &Path<'_>, actions: &Actions<'_>, findings: &mut Findings) -> Vec<(usize, f64)> {
     let field = at.field("factors");
     if case.factors.is_empty() {
         findings.doubt(
@@ -320,7 +329,11 @@ fn read_factors(
 
 /// Shares of prestress add up; what is left must pull.
 fn check_shares(case: &CaseGiven, at: &Path<'_>, net: &NetDraft<'_>, actions: &Actions<'_>, findings: &mut Findings) {
-    if case.factors.iter().all(|(action, _)| actions.shares[*action].is_empty()) {
+    if case
+        .factors
+        .iter()
+        .all(|(action, _)| actions.shares[*action].is_empty())
+    {
         return;
     }
     let mut left = vec![1.0_f64; net.cables.len()];

@@ -96,10 +96,12 @@ fn read_check(
                 min_share_of_reference: share,
             })
         }
-        Some(Kind::Movement(movement)) => limit("movement", "limit_m", &MOVEMENT_LIMIT, movement.limit_m)
-            .map(|limit| CheckKind::Movement { limit }),
-        Some(Kind::AnchorPull(pull)) => limit("anchor_pull", "limit_n", &PULL_LIMIT, pull.limit_n)
-            .map(|limit| CheckKind::AnchorPull { limit }),
+        Some(Kind::Movement(movement)) => {
+            limit("movement", "limit_m", &MOVEMENT_LIMIT, movement.limit_m).map(|limit| CheckKind::Movement { limit })
+        }
+        Some(Kind::AnchorPull(pull)) => {
+            limit("anchor_pull", "limit_n", &PULL_LIMIT, pull.limit_n).map(|limit| CheckKind::AnchorPull { limit })
+        }
         // Refused by name elsewhere.
         Some(Kind::Resistance(_) | Kind::ServiceStress(_) | Kind::Buckling(_) | Kind::Clearance(_)) => return None,
         None => {
@@ -167,7 +169,10 @@ fn cover(
                         reasons::WRONG_KIND,
                         &on,
                         id,
-                        format!("node {} has no support: there is no pull on an anchor to check", Quoted(id)),
+                        format!(
+                            "node {} has no support: there is no pull on an anchor to check",
+                            Quoted(id)
+                        ),
                         "name supported nodes",
                     );
                 }
@@ -234,7 +239,9 @@ fn tell_not_judgeable(
         })
     };
     let cables = read.cables.iter().filter(|cable| strength && unknown(cable));
-    let cables: Vec<&str> = cables.map(|cable| net.cables[cable.index()].message.id.as_str()).collect();
+    let cables: Vec<&str> = cables
+        .map(|cable| net.cables[cable.index()].message.id.as_str())
+        .collect();
     let of = read.cables.len() + read.struts.len();
     if let Some(first) = cables.first() {
         findings
@@ -251,7 +258,11 @@ fn tell_not_judgeable(
             )
             .value(cables.len());
     }
-    let struts: Vec<&str> = read.struts.iter().map(|s| net.struts[s.index()].message.id.as_str()).collect();
+    let struts: Vec<&str> = read
+        .struts
+        .iter()
+        .map(|s| net.struts[s.index()].message.id.as_str())
+        .collect();
     if let Some(first) = struts.first() {
         findings
             .doubt(

@@ -107,7 +107,14 @@ impl Findings {
         message: impl Into<String>,
         cure: impl Into<String>,
     ) -> Added<'_> {
-        self.add(v1::FindingSeverity::Error, reason, path, id, message.into(), cure.into())
+        self.add(
+            v1::FindingSeverity::Error,
+            reason,
+            path,
+            id,
+            message.into(),
+            cure.into(),
+        )
     }
 
     /// The work can be done, but somebody should look first.
@@ -119,7 +126,14 @@ impl Findings {
         message: impl Into<String>,
         cure: impl Into<String>,
     ) -> Added<'_> {
-        self.add(v1::FindingSeverity::Doubt, reason, path, id, message.into(), cure.into())
+        self.add(
+            v1::FindingSeverity::Doubt,
+            reason,
+            path,
+            id,
+            message.into(),
+            cure.into(),
+        )
     }
 
     /// Worth knowing.
@@ -185,7 +199,10 @@ impl Findings {
                     severity,
                     reason: reasons::MORE_OF_THE_SAME.to_owned(),
                     value: (count - WRITTEN_OUT).to_string(),
-                    message: format!("{} more findings with the reason {reason} are left out", count - WRITTEN_OUT),
+                    message: format!(
+                        "{} more findings with the reason {reason} are left out",
+                        count - WRITTEN_OUT
+                    ),
                     cure: "mend the ones shown first".to_owned(),
                     ..v1::Finding::default()
                 });

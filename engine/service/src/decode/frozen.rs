@@ -74,7 +74,9 @@ fn axial_stiffness(section: &v1::Section) -> Option<f64> {
         Some(v1::section::Area::MetallicAreaM2(area) | v1::section::Area::NominalAreaM2(area)) => Some(area),
         None => None,
     };
-    let stiffness = section.axial_stiffness_n.or_else(|| Some(section.modulus_pa? * area?))?;
+    let stiffness = section
+        .axial_stiffness_n
+        .or_else(|| Some(section.modulus_pa? * area?))?;
     (stiffness.is_finite() && stiffness > 0.0).then_some(stiffness)
 }
 

@@ -79,7 +79,11 @@ pub(crate) fn elements(brief: &v1::Brief, findings: &mut Findings) {
     each("actions", &brief.actions, |e| &e.id, findings);
     each("checks", &brief.checks, |_| "", findings);
     each("accepted", &brief.accepted, |e| &e.on, findings);
-    let labels: usize = brief.labels.iter().map(|(key, value)| key.len() + value.len() + 8).sum();
+    let labels: usize = brief
+        .labels
+        .iter()
+        .map(|(key, value)| key.len() + value.len() + 8)
+        .sum();
     let notes = brief.solving.as_ref().map_or(0, |s| s.note.len())
         + brief.prestress.as_ref().map_or(0, |p| p.note.len())
         + brief.frozen_from.as_ref().map_or(0, |f| f.note.len());

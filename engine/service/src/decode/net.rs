@@ -151,8 +151,14 @@ impl<'a> NetDraft<'a> {
         declare("net.roles", &mut roles.map(|(i, r)| (r.id.as_str(), Thing::Role(i))));
         let groups = net.groups.iter().enumerate();
         declare("net.groups", &mut groups.map(|(i, g)| (g.id.as_str(), Thing::Group(i))));
-        declare("net.skins", &mut net.skins.iter().map(|s| (s.id.as_str(), Thing::NotServed)));
-        declare("net.zones", &mut net.zones.iter().map(|z| (z.id.as_str(), Thing::NotServed)));
+        declare(
+            "net.skins",
+            &mut net.skins.iter().map(|s| (s.id.as_str(), Thing::NotServed)),
+        );
+        declare(
+            "net.zones",
+            &mut net.zones.iter().map(|z| (z.id.as_str(), Thing::NotServed)),
+        );
     }
 
     fn read_nodes(&mut self, findings: &mut Findings) {
@@ -265,7 +271,10 @@ impl<'a> NetDraft<'a> {
                     reasons::TOO_FEW_NODES,
                     &at.field("nodes"),
                     &cable.id,
-                    format!("{owner} runs through {} nodes: a rope needs two at least", cable.nodes.len()),
+                    format!(
+                        "{owner} runs through {} nodes: a rope needs two at least",
+                        cable.nodes.len()
+                    ),
                     "name its nodes in order, from one end to the other",
                 )
                 .value(cable.nodes.len());
@@ -292,7 +301,10 @@ impl<'a> NetDraft<'a> {
                     reasons::WRONG_COUNT,
                     &at.field("nodes"),
                     &strut.id,
-                    format!("{owner} has {} nodes: a strut has two, foot and head", strut.nodes.len()),
+                    format!(
+                        "{owner} has {} nodes: a strut has two, foot and head",
+                        strut.nodes.len()
+                    ),
                     "name its foot and its head",
                 )
                 .value(strut.nodes.len());
@@ -404,7 +416,12 @@ impl<'a> NetDraft<'a> {
         );
         let cure = meant.map_or_else(
             || "lead another member to it, or list it in net.nodes with xyz_m".to_owned(),
-            |meant| format!("write {} in the path, or list the node in net.nodes with xyz_m", Quoted(meant)),
+            |meant| {
+                format!(
+                    "write {} in the path, or list the node in net.nodes with xyz_m",
+                    Quoted(meant)
+                )
+            },
         );
         let mut text = String::new();
         let at = if node.listed.is_some() {
@@ -412,7 +429,9 @@ impl<'a> NetDraft<'a> {
         } else {
             self.place_in_path(node, &mut text)
         };
-        findings.error(reasons::NODE_USED_ONCE, &at, node.id, message, cure).value(node.id);
+        findings
+            .error(reasons::NODE_USED_ONCE, &at, node.id, message, cure)
+            .value(node.id);
     }
 
     fn check_places(&self, findings: &mut Findings) {
@@ -423,7 +442,13 @@ impl<'a> NetDraft<'a> {
         if far.len() > 1 && far.len() == placed {
             let positions = || far.iter().filter_map(|i| self.nodes[*i].position);
             let mean: Vector3<f64> = positions().sum::<Vector3<f64>>() / placed as f64;
-            let shift = mean.map(|c| if c.abs() > FARTHEST { (c / 100.0).round() * 100.0 } else { 0.0 });
+            let shift = mean.map(|c| {
+                if c.abs() > FARTHEST {
+                    (c / 100.0).round() * 100.0
+                } else {
+                    0.0
+                }
+            });
             findings
                 .error(
                     reasons::FAR_FROM_ORIGIN,

@@ -78,7 +78,10 @@ pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
         None => {}
     }
     for (list, ids) in [
-        ("motions", brief.motions.iter().map(|m| m.id.as_str()).collect::<Vec<_>>()),
+        (
+            "motions",
+            brief.motions.iter().map(|m| m.id.as_str()).collect::<Vec<_>>(),
+        ),
         ("stages", brief.stages.iter().map(|s| s.id.as_str()).collect()),
         ("readings", brief.readings.iter().map(|r| r.id.as_str()).collect()),
         ("variants", brief.variants.iter().map(|v| v.id.as_str()).collect()),
@@ -113,7 +116,10 @@ fn elements(list: &str, ids: &[&str], part: &mut impl FnMut(&Path<'_>, &str)) {
 
 fn in_net(net: &v1::Net, part: &mut impl FnMut(&Path<'_>, &str)) {
     for (list, ids) in [
-        ("net.adjusters", net.adjusters.iter().map(|a| a.id.as_str()).collect::<Vec<_>>()),
+        (
+            "net.adjusters",
+            net.adjusters.iter().map(|a| a.id.as_str()).collect::<Vec<_>>(),
+        ),
         ("net.skins", net.skins.iter().map(|s| s.id.as_str()).collect()),
         ("net.zones", net.zones.iter().map(|z| z.id.as_str()).collect()),
         ("net.panels", net.panels.iter().map(|p| p.id.as_str()).collect()),

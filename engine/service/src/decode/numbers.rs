@@ -97,8 +97,7 @@ pub(crate) const STRENGTH_FACTOR: Quantity = Quantity::positive("strength factor
 pub(crate) const SPRING_STIFFNESS: Quantity = Quantity::positive("spring stiffness", "N/m", 1e-6, 1e15);
 pub(crate) const MATRIX_STIFFNESS: Quantity = Quantity::signed("stiffness", "N/m", 1e15);
 pub(crate) const DIRECTION: Quantity = Quantity::signed("direction", "", 1e150);
-pub(crate) const REFERENCE_TEMPERATURE: Quantity =
-    Quantity::between("reference temperature", "deg C", -273.15, 1000.0);
+pub(crate) const REFERENCE_TEMPERATURE: Quantity = Quantity::between("reference temperature", "deg C", -273.15, 1000.0);
 pub(crate) const GRAVITY: Quantity = Quantity::not_negative("gravity", "m/s2", 100.0);
 pub(crate) const FORCE_DENSITY: Quantity = Quantity::signed("force density", "N/m", 1e12);
 pub(crate) const TENSION: Quantity = Quantity::signed("tension", "N", 1e12);
@@ -158,7 +157,11 @@ impl Findings {
             Range::NotNegative(_) if value < 0.0 => (reasons::NEGATIVE, "must not be negative".to_owned()),
             _ => (
                 reasons::OUT_OF_RANGE,
-                format!("outside the range from {} to {}", number(least), quantity.written(largest)),
+                format!(
+                    "outside the range from {} to {}",
+                    number(least),
+                    quantity.written(largest)
+                ),
             ),
         };
         self.error(
@@ -219,7 +222,10 @@ impl Findings {
                 reasons::ZERO_DIRECTION,
                 path,
                 of.id,
-                format!("{of}: the direction ({}, {}, {}) has no length", vector.x, vector.y, vector.z),
+                format!(
+                    "{of}: the direction ({}, {}, {}) has no length",
+                    vector.x, vector.y, vector.z
+                ),
                 "give the direction as three numbers of which at least one is not zero",
             );
             return None;

@@ -33,27 +33,31 @@ pub(crate) fn sections(net: &NetDraft<'_>, findings: &mut Findings) {
     for (index, section) in net.message.sections.iter().enumerate() {
         let at = list.element(&section.id, index);
         let name = Quoted(&section.id);
-        let mut slip = |field: &'static str, value: Option<f64>, scale: f64, usual: (f64, f64), unit: &str, hint: String| {
-            let Some(value) = value.filter(|value| value.is_finite() && *value > 0.0) else {
-                return;
+        let mut slip =
+            |field: &'static str, value: Option<f64>, scale: f64, usual: (f64, f64), unit: &str, hint: String| {
+                let Some(value) = value.filter(|value| value.is_finite() && *value > 0.0) else {
+                    return;
+                };
+                if (usual.0..=usual.1).contains(&(value / scale)) {
+                    return;
+                }
+                let words = field.rsplit_once("_n").map_or(field, |_| field).replace('_', " ");
+                findings
+                    .doubt(
+                        reasons::UNIT_SLIP,
+                        &at.field(field),
+                        &section.id,
+                        format!("section {name}: {words} is {} {unit}. {hint}", number(value)),
+                        "check the unit, or accept this doubt",
+                    )
+                    .value(number(value));
             };
-            if (usual.0..=usual.1).contains(&(value / scale)) {
-                return;
-            }
-            let words = field.rsplit_once("_n").map_or(field, |_| field).replace('_', " ");
-            findings
-                .doubt(
-                    reasons::UNIT_SLIP,
-                    &at.field(field),
-                    &section.id,
-                    format!("section {name}: {words} is {} {unit}. {hint}", number(value)),
-                    "check the unit, or accept this doubt",
-                )
-                .value(number(value));
-        };
         let hint = "A rope has 1e8 to 3e11 Pa: was the value in MPa or GPa?".to_owned();
         slip("modulus_pa", section.modulus_pa, 1.0, MODULI, "Pa", hint);
-        let Some(diameter) = section.diameter_m.filter(|diameter| diameter.is_finite() && *diameter > 0.0) else {
+        let Some(diameter) = section
+            .diameter_m
+            .filter(|diameter| diameter.is_finite() && *diameter > 0.0)
+        else {
             continue;
         };
         let circle = PI / 4.0 * diameter * diameter;
@@ -63,11 +67,31 @@ pub(crate) fn sections(net: &NetDraft<'_>, findings: &mut Findings) {
         let hint = format!("{rope} has about {about} N: was the value in kN, or the diameter in mm?");
         slip("axial_stiffness_n", stiffness, circle, STIFFNESS_OF_CIRCLE, "N", hint);
         let least = force(STRENGTH_OF_CIRCLE.0 * circle);
-        let hint = format!("{rope} breaks at {least} to {}: was it in kN?", force(STRENGTH_OF_CIRCLE.1 * circle));
-        slip("breaking_force_n", section.breaking_force_n, circle, STRENGTH_OF_CIRCLE, "N", hint);
-        let (least, most) = (rounded(DENSITY_OF_CIRCLE.0 * circle, 2), rounded(DENSITY_OF_CIRCLE.1 * circle, 2));
+        let hint = format!(
+            "{rope} breaks at {least} to {}: was it in kN?",
+            force(STRENGTH_OF_CIRCLE.1 * circle)
+        );
+        slip(
+            "breaking_force_n",
+            section.breaking_force_n,
+            circle,
+            STRENGTH_OF_CIRCLE,
+            "N",
+            hint,
+        );
+        let (least, most) = (
+            rounded(DENSITY_OF_CIRCLE.0 * circle, 2),
+            rounded(DENSITY_OF_CIRCLE.1 * circle, 2),
+        );
         let hint = format!("{rope} has {least} to {most} kg/m: was it in kg per 100 m?");
-        slip("mass_kg_per_m", section.mass_kg_per_m, circle, DENSITY_OF_CIRCLE, "kg/m", hint);
+        slip(
+            "mass_kg_per_m",
+            section.mass_kg_per_m,
+            circle,
+            DENSITY_OF_CIRCLE,
+            "kg/m",
+            hint,
+        );
     }
 }
 
@@ -206,20 +230,38 @@ pub(crate) fn unused_data(brief: &v1::Brief, net: &NetDraft<'_>, findings: &mut 
                     reasons::DATA_NOT_USED,
                     &Path::root(path),
                     first,
-                    format!("{field} is kept, and no part that is served uses it ({} given)", ids.len()),
+                    format!(
+                        "{field} is kept, and no part that is served uses it ({} given)",
+                        ids.len()
+                    ),
                     "nothing to mend",
                 )
                 .value(ids.len());
         }
     };
     let message = net.message;
-    let stiff = message.sections.iter().filter(|section| section.bending_stiffness_n_m2.is_some());
-    told("net.sections", "bending_stiffness_n_m2", stiff.map(|section| section.id.as_str()).collect());
+    let stiff = message
+        .sections
+        .iter()
+        .filter(|section| section.bending_stiffness_n_m2.is_some());
+    told(
+        "net.sections",
+        "bending_stiffness_n_m2",
+        stiff.map(|section| section.id.as_str()).collect(),
+    );
     let taking_up = |fitting: &Option<v1::EndFitting>| fitting.as_ref().is_some_and(|f| f.take_up_m.is_some());
     let roles = message.roles.iter().filter(|role| taking_up(&role.end_fitting));
-    told("net.roles", "end_fitting.take_up_m", roles.map(|role| role.id.as_str()).collect());
+    told(
+        "net.roles",
+        "end_fitting.take_up_m",
+        roles.map(|role| role.id.as_str()).collect(),
+    );
     let cables = message.cables.iter().filter(|cable| taking_up(&cable.end_fitting));
-    told("net.cables", "end_fitting.take_up_m", cables.map(|cable| cable.id.as_str()).collect());
+    told(
+        "net.cables",
+        "end_fitting.take_up_m",
+        cables.map(|cable| cable.id.as_str()).collect(),
+    );
     let classed = brief.actions.iter().filter(|action| !action.class.is_empty());
     told("actions", "class", classed.map(|action| action.id.as_str()).collect());
 }

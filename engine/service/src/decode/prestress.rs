@@ -49,7 +49,11 @@ pub(crate) fn read(
         under: Vec::new(),
     };
     let Some(prestress) = prestress.filter(|prestress| !prestress.rules.is_empty()) else {
-        let path = if prestress.is_some() { "prestress.rules" } else { "prestress" };
+        let path = if prestress.is_some() {
+            "prestress.rules"
+        } else {
+            "prestress"
+        };
         findings.error(
             reasons::MISSING,
             &Path::root(path),
@@ -86,7 +90,10 @@ fn read_under(prestress: &v1::Prestress, context: &Context<'_, '_>, findings: &m
                     reasons::UNDER_NOT_DEAD,
                     &at,
                     id,
-                    format!("action {} has a {kind}: the reference state is found under dead loads only", Quoted(id)),
+                    format!(
+                        "action {} has a {kind}: the reference state is found under dead loads only",
+                        Quoted(id)
+                    ),
                     "name only actions of forces and own weight here; put the rest into an action of its own",
                 )
                 .value(id);
@@ -116,7 +123,10 @@ fn read_hold(prestress: &v1::Prestress, context: &Context<'_, '_>, findings: &mu
                     reasons::HOLD_NOT_FREE,
                     &at,
                     id,
-                    format!("node {} cannot be held in place while the shape is found: {why}", Quoted(id)),
+                    format!(
+                        "node {} cannot be held in place while the shape is found: {why}",
+                        Quoted(id)
+                    ),
                     "hold free nodes that are listed with xyz_m",
                 );
             }
@@ -191,7 +201,11 @@ impl<'m> Rules<'m> {
                     let draft = &net.cables[cable];
                     (draft.first_segment..draft.first_segment + draft.n_segments()).collect()
                 }
-                Thing::Strut(strut) => net.struts[strut].ends.map(|_| net.struts[strut].segment).into_iter().collect(),
+                Thing::Strut(strut) => net.struts[strut]
+                    .ends
+                    .map(|_| net.struts[strut].segment)
+                    .into_iter()
+                    .collect(),
                 _ => Vec::new(),
             };
             covered.push((segments, one.narrowness));
@@ -275,7 +289,11 @@ impl<'m> Rules<'m> {
             }
             told = Some(*member);
             let id = net.member_id(*member);
-            let partly = net.segments.iter().zip(&self.of_segment).any(|((_, of), wish)| of == member && wish.is_some());
+            let partly = net
+                .segments
+                .iter()
+                .zip(&self.of_segment)
+                .any(|((_, of), wish)| of == member && wish.is_some());
             let message = if partly {
                 format!(
                     "no prestress rule covers {} between {}",
@@ -342,7 +360,10 @@ impl<'m> Rules<'m> {
                     reasons::BALANCE_WITHOUT_HOLD,
                     &list.number(rule).field("balance"),
                     id,
-                    format!("{} is to balance nodes that stay in place, and no node does", Quoted(id)),
+                    format!(
+                        "{} is to balance nodes that stay in place, and no node does",
+                        Quoted(id)
+                    ),
                     "name these nodes in prestress.hold",
                 );
             }
@@ -362,7 +383,10 @@ impl<'m> Rules<'m> {
                 reasons::HOLD_WITHOUT_BALANCE,
                 &Path::root("prestress.hold"),
                 id,
-                format!("node {} is to stay in place, and no member at it is on balance", Quoted(id)),
+                format!(
+                    "node {} is to stay in place, and no member at it is on balance",
+                    Quoted(id)
+                ),
                 "put a guy or a strut at it on balance {}, or do not hold it",
             );
         }
@@ -376,7 +400,13 @@ impl<'m> Rules<'m> {
         if !all_lengths {
             return;
         }
-        let missing: Vec<&str> = context.net.nodes.iter().filter(|n| n.position.is_none()).map(|n| n.id).collect();
+        let missing: Vec<&str> = context
+            .net
+            .nodes
+            .iter()
+            .filter(|n| n.position.is_none())
+            .map(|n| n.id)
+            .collect();
         if !missing.is_empty() {
             findings
                 .error(
@@ -417,7 +447,10 @@ impl<'m> Rules<'m> {
                 Some(Rule::UnstressedLengthM(length)) => PrestressRule::UnstressedLength(length),
                 Some(Rule::ShareOfBreaking(share)) => {
                     let section = context.sections.of_segment[segment].map(|(section, _)| section);
-                    let force = context.sections.section(segment).and_then(|section| section.breaking_force);
+                    let force = context
+                        .sections
+                        .section(segment)
+                        .and_then(|section| section.breaking_force);
                     if let (Some(section), None, false) = (section, force, told[wish.rule]) {
                         told[wish.rule] = true;
                         let draft = &context.sections.list[section];
@@ -449,12 +482,7 @@ fn net_id<'a>(context: &Context<'_, 'a>, segment: usize) -> &'a str {
     context.net.member_id(context.net.segments[segment].1)
 }
 
-fn read_part(
-    part: &v1::PartOfCable,
-    net: &NetDraft<'_>,
-    at: &Path<'_>,
-    findings: &mut Findings,
-) -> Option<Vec<usize>> {
+fn read_part(part: &v1::PartOfCable, net: &NetDraft<'_>, at: &Path<'_>, findings: &mut Findings) -> Option<Vec<usize>> {
     let field = at.field("cable");
     let cable = match net.names.find(findings, &field, "cable", &part.cable)? {
         Thing::Cable(cable) => cable,
@@ -463,7 +491,11 @@ fn read_part(
                 reasons::WRONG_KIND,
                 &field,
                 &part.cable,
-                format!("{} is a {}, and only cables have parts", Quoted(&part.cable), other.kind()),
+                format!(
+                    "{} is a {}, and only cables have parts",
+                    Quoted(&part.cable),
+                    other.kind()
+                ),
                 "name a cable",
             );
             return None;
@@ -489,7 +521,12 @@ fn check_wish(
     findings: &mut Findings,
 ) {
     let of = Of::new("prestress rule", "");
-    let covered = || covered.iter().flat_map(|(segments, _)| segments).map(|segment| net.segments[*segment].1);
+    let covered = || {
+        covered
+            .iter()
+            .flat_map(|(segments, _)| segments)
+            .map(|segment| net.segments[*segment].1)
+    };
     let (field, quantity, value): (&'static str, &Quantity, f64) = match rule.rule {
         Some(Rule::ForceDensityNPerM(value)) => ("force_density_n_per_m", &FORCE_DENSITY, value),
         Some(Rule::TensionN(value)) => ("tension_n", &TENSION, value),
@@ -533,7 +570,11 @@ fn check_wish(
                     reasons::CABLE_PUSHES,
                     &field_at,
                     id,
-                    format!("cable {} is asked to push with {}: a rope only pulls", Quoted(id), number(value)),
+                    format!(
+                        "cable {} is asked to push with {}: a rope only pulls",
+                        Quoted(id),
+                        number(value)
+                    ),
                     "give a positive value; only struts may have a negative one",
                 )
                 .value(number(value));

@@ -91,12 +91,7 @@ struct Parts {
     work: Option<(Unbuilt, Names)>,
 }
 
-fn read_parts(
-    brief: &v1::Brief,
-    limits: &Limits,
-    findings: &mut Findings,
-    resolved: &mut Resolved,
-) -> Option<Parts> {
+fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resolved: &mut Resolved) -> Option<Parts> {
     if !is_id(&brief.id) {
         bad_id(findings, &Path::root("id"), &brief.id);
     }
@@ -166,7 +161,9 @@ fn read_parts(
         })
         .collect();
     let names = Names::new(&sections, &supports);
-    let given = (!findings.has_errors()).then(|| net_given(&net, &sections, supports)).flatten();
+    let given = (!findings.has_errors())
+        .then(|| net_given(&net, &sections, supports))
+        .flatten();
     let (actions, cases) = (actions.list, cases.list);
     let work = given.map(|net| {
         let rest = move |net| Brief {
@@ -201,7 +198,9 @@ fn net_given(net: &NetDraft<'_>, sections: &Sections<'_>, supports: Supports) ->
         Some(CableGiven {
             name: cable.message.id.clone(),
             path: cable.path.iter().copied().map(NodeId::new).collect(),
-            sections: segments.map(|segment| sections.section(segment)).collect::<Option<_>>()?,
+            sections: segments
+                .map(|segment| sections.section(segment))
+                .collect::<Option<_>>()?,
         })
     });
     let struts = net.struts.iter().map(|strut| {

@@ -138,7 +138,8 @@ impl Scopes {
             let of = at.field("of");
             tell_repeated(&group.of, &of, findings);
             for (number, id) in group.of.iter().enumerate() {
-                net.names.find(findings, &of.number(number), "member, node, role or group", id);
+                net.names
+                    .find(findings, &of.number(number), "member, node, role or group", id);
             }
             if group.of.is_empty() {
                 findings.doubt(
@@ -181,7 +182,13 @@ impl Scopes {
                 scope.complete = false;
                 let through = match thing {
                     Thing::Role(_) | Thing::Group(_) => {
-                        format!("{} {} covers {} {}", thing.kind(), Quoted(id), wrong.kind(), name(net, wrong))
+                        format!(
+                            "{} {} covers {} {}",
+                            thing.kind(),
+                            Quoted(id),
+                            wrong.kind(),
+                            name(net, wrong)
+                        )
                     }
                     _ => format!("{} is a {}", Quoted(id), thing.kind()),
                 };

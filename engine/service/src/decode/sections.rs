@@ -48,7 +48,12 @@ impl<'a> Sections<'a> {
         let mut list = Vec::with_capacity(net.message.sections.len());
         for (index, section) in net.message.sections.iter().enumerate() {
             names.declare(findings, &at, index, section.id.as_str(), index);
-            list.push(read_section(section, &at.element(&section.id, index), findings, resolved));
+            list.push(read_section(
+                section,
+                &at.element(&section.id, index),
+                findings,
+                resolved,
+            ));
         }
         let roles = read_roles(net, &names, findings);
         let mut sections = Self {
@@ -104,7 +109,10 @@ impl<'a> Sections<'a> {
         }
     }
 
-    #[allow(clippy::too_many_arguments, reason = "the place, the part, and what it is read against")]
+    #[allow(
+        clippy::too_many_arguments,
+        reason = "the place, the part, and what it is read against"
+    )]
     fn read_part(
         &self,
         net: &NetDraft<'a>,
@@ -254,7 +262,11 @@ fn read_section<'a>(
     let area = positive(field, &AREA, area);
     let breaking_force = positive("breaking_force_n", &BREAKING_FORCE, section.breaking_force_n).flatten();
     positive("diameter_m", &DIAMETER, section.diameter_m);
-    positive("bending_stiffness_n_m2", &BENDING_STIFFNESS, section.bending_stiffness_n_m2);
+    positive(
+        "bending_stiffness_n_m2",
+        &BENDING_STIFFNESS,
+        section.bending_stiffness_n_m2,
+    );
 
     let product = match (modulus, area) {
         (Some(Some(modulus)), Some(Some(area))) => Some(modulus * area),

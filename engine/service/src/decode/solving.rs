@@ -13,7 +13,10 @@ pub(crate) fn read(solving: Option<&v1::Solving>, findings: &mut Findings, resol
     let at = Path::root("solving");
     match solving.and_then(|solving| solving.load_steps) {
         Some(steps) => {
-            if findings.number(&at.field("load_steps"), of, &LOAD_STEPS, f64::from(steps)).is_some() {
+            if findings
+                .number(&at.field("load_steps"), of, &LOAD_STEPS, f64::from(steps))
+                .is_some()
+            {
                 settings.load_steps = LoadSteps::Equal(steps);
             }
         }
@@ -30,7 +33,10 @@ pub(crate) fn read(solving: Option<&v1::Solving>, findings: &mut Findings, resol
     match solving.and_then(|solving| solving.max_iterations) {
         Some(iterations) => {
             let field = at.field("max_iterations");
-            if findings.number(&field, of, &ITERATIONS, f64::from(iterations)).is_some() {
+            if findings
+                .number(&field, of, &ITERATIONS, f64::from(iterations))
+                .is_some()
+            {
                 settings.max_iterations = iterations;
             }
         }

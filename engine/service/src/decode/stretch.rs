@@ -30,13 +30,20 @@ pub(crate) fn stretch(
     let on_path = |node: &str, field: &'static str, findings: &mut Findings| {
         let visits = visits(&draft.message.nodes, node);
         if visits.is_empty() {
-            let what = if node.is_empty() { "no node".to_owned() } else { format!("node {}", Quoted(node)) };
+            let what = if node.is_empty() {
+                "no node".to_owned()
+            } else {
+                format!("node {}", Quoted(node))
+            };
             findings
                 .error(
                     reasons::NO_SUCH_STRETCH,
                     &at.field(field),
                     id,
-                    format!("{what} is named as an end of the stretch, and cable {} does not pass it", Quoted(id)),
+                    format!(
+                        "{what} is named as an end of the stretch, and cable {} does not pass it",
+                        Quoted(id)
+                    ),
                     format!("name two nodes of cable {}, in the order of its path", Quoted(id)),
                 )
                 .value(node);

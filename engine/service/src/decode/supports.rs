@@ -98,7 +98,10 @@ impl Supports {
                 reasons::SUPPORT_HOLDS_NOTHING,
                 &at.field("free"),
                 node.id,
-                format!("node {} is supported, but every direction is released: nothing is held", Quoted(node.id)),
+                format!(
+                    "node {} is supported, but every direction is released: nothing is held",
+                    Quoted(node.id)
+                ),
                 "leave the support out, or release fewer directions",
             );
         }
@@ -209,7 +212,10 @@ impl Supports {
                     reasons::SUPPORT_CONTRADICTS,
                     at,
                     id,
-                    format!("node {} has a support of its own and stands in a support group", Quoted(id)),
+                    format!(
+                        "node {} has a support of its own and stands in a support group",
+                        Quoted(id)
+                    ),
                     "write support {} for it: the group's stiffness takes its place",
                 );
             }
@@ -322,7 +328,9 @@ fn read_matrix(
     }
     let mut valid = true;
     for (position, value) in values.iter().enumerate() {
-        valid &= findings.number(&field.number(position), of, &MATRIX_STIFFNESS, *value).is_some();
+        valid &= findings
+            .number(&field.number(position), of, &MATRIX_STIFFNESS, *value)
+            .is_some();
     }
     if !valid {
         return None;

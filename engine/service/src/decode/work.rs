@@ -115,7 +115,9 @@ impl Work {
     #[must_use]
     pub fn reference_in_words(&self) -> String {
         let under = &self.brief.prestress.under;
-        let actions = under.iter().map(|action| format!("1 {}", self.brief.actions[*action].name));
+        let actions = under
+            .iter()
+            .map(|action| format!("1 {}", self.brief.actions[*action].name));
         let words: Vec<String> = actions.collect();
         if words.is_empty() {
             "prestress alone".to_owned()

@@ -116,7 +116,10 @@ pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
                 verdict: verdicts::verdict(summary.verdict).into(),
                 // The reference state counts among the states.
                 answered: Some(share(answered.count + 1, answered.of + 1)),
-                audited: Some(share(summary.facts.audited.count + reference_audited, answered.count + 1)),
+                audited: Some(share(
+                    summary.facts.audited.count + reference_audited,
+                    answered.count + 1,
+                )),
                 judged: Some(share(summary.facts.judged.count, summary.facts.judged.of)),
                 passes: Some(share(summary.facts.passing.count, summary.facts.passing.of)),
                 checks: verdicts::checks(work, plan, &summary.checks),
@@ -160,7 +163,11 @@ fn share(of_them: usize, of: usize) -> v1::Share {
 /// Least and largest tension of every rope segment over the sound cases and the reference state, and where they occur.
 fn envelope(plan: &Plan, reference: &ReferenceOutcome, tally: &Tally) -> Vec<v1::RunResponse> {
     let net = &plan.brief().net;
-    let ropes = net.segments().iter().filter(|s| matches!(s.member, Member::Cable(_))).count();
+    let ropes = net
+        .segments()
+        .iter()
+        .filter(|s| matches!(s.member, Member::Cable(_)))
+        .count();
     let mut least: Vec<f64> = reference.state.axial_forces[..ropes].to_vec();
     let mut largest = least.clone();
     // Position in the table of cases; −1 stands for the reference state.

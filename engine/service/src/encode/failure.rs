@@ -36,7 +36,11 @@ pub(super) fn of_stop(case: &str, termination: Termination, load_factor: f64, ca
         Termination::RunsAway => ("RUNS_AWAY", "ran away from its place"),
         Termination::Cancelled => ("CANCELLED", "was stopped on request"),
     };
-    let mut message = format!("case {} {why} at {} % of its load", Quoted(case), rounded(100.0 * load_factor, 3));
+    let mut message = format!(
+        "case {} {why} at {} % of its load",
+        Quoted(case),
+        rounded(100.0 * load_factor, 3)
+    );
     let Some(cause) = cause else {
         return failure(reason, message, "run it again", &[""; 0], &[""; 0]);
     };
@@ -77,7 +81,10 @@ fn cure_of(likely: &LikelyCause) -> &'static str {
 
 /// The failure of our own code in a case.
 pub(super) fn of_engine(case: &str) -> v1::Failure {
-    let message = format!("the engine failed in case {}; other cases are not touched by it", Quoted(case));
+    let message = format!(
+        "the engine failed in case {}; other cases are not touched by it",
+        Quoted(case)
+    );
     failure(
         "ENGINE_ERROR",
         message,
@@ -99,7 +106,12 @@ pub(super) fn of_shape(error: &ShapeError) -> (v1::CaseOutcome, v1::Failure) {
         ShapeError::HeldWithoutPosition { nodes } => {
             ("HOLD_NOT_FREE", "list these nodes with xyz_m", nodes.clone(), none)
         }
-        ShapeError::NotDead { .. } => ("UNDER_NOT_DEAD", "name dead loads only in prestress.under", none.clone(), none),
+        ShapeError::NotDead { .. } => (
+            "UNDER_NOT_DEAD",
+            "name dead loads only in prestress.under",
+            none.clone(),
+            none,
+        ),
         ShapeError::NotHeld { nodes } => (
             "NOT_HELD",
             "lead a member with prestress from there to a support",
@@ -140,7 +152,11 @@ pub(super) fn of_shape(error: &ShapeError) -> (v1::CaseOutcome, v1::Failure) {
             "TARGETS_UNMET",
             "take the nearest balanced set, drop one of the wishes, or leave some members to balance {}",
             left.iter().map(|left| left.node.clone()).collect(),
-            targets.iter().filter(|target| !target.met).map(|target| target.member.clone()).collect(),
+            targets
+                .iter()
+                .filter(|target| !target.met)
+                .map(|target| target.member.clone())
+                .collect(),
         ),
         ShapeError::NoLength { member, from, to } => (
             "NO_LENGTH",

@@ -25,7 +25,9 @@ pub fn freeze(
     let summary = outcome::reference_summary(plan, found);
     let reference = match found {
         Ok(reference) if reference.result.audit.passed => reference,
-        Ok(_) => return Err("the independent routine does not confirm the reference state: it is not frozen".to_owned()),
+        Ok(_) => {
+            return Err("the independent routine does not confirm the reference state: it is not frozen".to_owned());
+        }
         Err(_) => {
             let failure = summary.failure.unwrap_or_default();
             return Err(format!("{}. To mend it: {}", failure.message, failure.cure));

@@ -70,19 +70,31 @@ pub fn id_tables(_work: &Work, plan: &Plan, cases: &[usize]) -> Vec<v1::IdTable>
     let mut tables = Vec::new();
     let rows = |over, ids: &mut dyn Iterator<Item = Row>| table(over, ids.collect());
     let plain = |id: &str| Row::new(id, [None, None, None]);
-    tables.extend(rows(v1::Range::Node, &mut net.nodes().iter().map(|node| plain(&node.name))));
-    tables.extend(rows(v1::Range::Cable, &mut net.cables().iter().map(|cable| plain(&cable.name))));
-    tables.extend(rows(v1::Range::Strut, &mut net.struts().iter().map(|strut| plain(&strut.name))));
+    tables.extend(rows(
+        v1::Range::Node,
+        &mut net.nodes().iter().map(|node| plain(&node.name)),
+    ));
+    tables.extend(rows(
+        v1::Range::Cable,
+        &mut net.cables().iter().map(|cable| plain(&cable.name)),
+    ));
+    tables.extend(rows(
+        v1::Range::Strut,
+        &mut net.struts().iter().map(|strut| plain(&strut.name)),
+    ));
     let segments = net.segments().iter().enumerate();
     let mut segments = segments.map(|(index, segment)| {
         let [from, to] = segment.ends.map(position);
         Row::new(member(index), [Some(from), Some(to), None])
     });
     tables.extend(rows(v1::Range::Segment, &mut segments));
-    let mut supports = net.supports().iter().map(|support| plain(net.node_name(support.node())));
+    let mut supports = net
+        .supports()
+        .iter()
+        .map(|support| plain(net.node_name(support.node())));
     tables.extend(rows(v1::Range::Support, &mut supports));
-    let mut ends = ends(net)
-        .map(|(node, segment)| Row::new(member(segment), [Some(position(node)), None, Some(count(segment))]));
+    let mut ends =
+        ends(net).map(|(node, segment)| Row::new(member(segment), [Some(position(node)), None, Some(count(segment))]));
     tables.extend(rows(v1::Range::End, &mut ends));
     let mut cases = cases.iter().map(|case| plain(&brief.cases[*case].name));
     tables.extend(rows(v1::Range::Case, &mut cases));

@@ -86,7 +86,11 @@ pub fn case(
     let mut findings = Vec::new();
     let digest = outcome.digest();
     let mut closing = match outcome {
-        CaseOutcome::State { solution, result, cause } => {
+        CaseOutcome::State {
+            solution,
+            result,
+            cause,
+        } => {
             messages.extend(state::arrays(net, name, result, &reference.state.unstressed_lengths));
             messages.extend(state::history(name, &solution.history));
             let mut closing = summary(net, name, result, reference);
@@ -101,7 +105,12 @@ pub fn case(
             } else {
                 closing.set_outcome(v1::CaseOutcome::NotConverged);
                 let cause = cause.as_ref();
-                closing.failure = Some(failure::of_stop(name, solution.termination, solution.load_factor, cause));
+                closing.failure = Some(failure::of_stop(
+                    name,
+                    solution.termination,
+                    solution.load_factor,
+                    cause,
+                ));
             }
             closing
         }

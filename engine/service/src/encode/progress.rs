@@ -28,7 +28,9 @@ pub fn progress(
         load_factor: report.load_factor,
         iteration: report.iteration,
         residual_n: report.residual,
-        worst_node: report.worst_node.map_or_else(String::new, |node| brief.net.node_name(node).to_owned()),
+        worst_node: report
+            .worst_node
+            .map_or_else(String::new, |node| brief.net.node_name(node).to_owned()),
         strain_energy_j: report.strain_energy,
         slack_segments: count(report.slack),
         cases_done: done,

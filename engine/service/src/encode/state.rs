@@ -46,12 +46,19 @@ impl Array<'_> {
 }
 
 fn flat<'a>(vectors: impl IntoIterator<Item = &'a Vector3<f64>>) -> Vec<f64> {
-    vectors.into_iter().flat_map(|vector| [vector.x, vector.y, vector.z]).collect()
+    vectors
+        .into_iter()
+        .flat_map(|vector| [vector.x, vector.y, vector.z])
+        .collect()
 }
 
 /// Every array of a state. `reference_lengths`: unstressed lengths in the reference state (m).
 pub(super) fn arrays(net: &Net, case: &str, state: &StateResult, reference_lengths: &[f64]) -> Vec<v1::RunResponse> {
-    let ropes = net.segments().iter().filter(|s| matches!(s.member, Member::Cable(_))).count();
+    let ropes = net
+        .segments()
+        .iter()
+        .filter(|s| matches!(s.member, Member::Cable(_)))
+        .count();
     let mut messages = Vec::new();
     let mut send = |name: &str, over: Range, components: u32, values: Vec<f64>| {
         let array = Array {
@@ -74,7 +81,11 @@ pub(super) fn arrays(net: &Net, case: &str, state: &StateResult, reference_lengt
     send("length_m", Range::Segment, 1, state.lengths.clone());
     send("stretch", Range::Segment, 1, state.stretches.clone());
     send("unstressed_length_m", Range::Reach, 1, state.unstressed_lengths.clone());
-    let change = state.unstressed_lengths.iter().zip(reference_lengths).map(|(now, then)| now - then);
+    let change = state
+        .unstressed_lengths
+        .iter()
+        .zip(reference_lengths)
+        .map(|(now, then)| now - then);
     send("unstressed_length_change_m", Range::Reach, 1, change.collect());
 
     let mut of_node = vec![None; net.nodes().len()];
@@ -90,7 +101,9 @@ pub(super) fn arrays(net: &Net, case: &str, state: &StateResult, reference_lengt
     send("end_force_n", Range::End, 3, flat(ends.iter().map(|end| &end.force)));
     let plan = ends.iter().map(|end| end.force.y.atan2(end.force.x).to_degrees());
     send("end_angle_plan_deg", Range::End, 1, plan.collect());
-    let up = ends.iter().map(|end| end.force.z.atan2(end.force.x.hypot(end.force.y)).to_degrees());
+    let up = ends
+        .iter()
+        .map(|end| end.force.z.atan2(end.force.x.hypot(end.force.y)).to_degrees());
     send("end_angle_up_deg", Range::End, 1, up.collect());
     messages
 }

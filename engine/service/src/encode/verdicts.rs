@@ -25,7 +25,9 @@ pub(super) fn verdict(verdict: Verdict) -> v1::Verdict {
 /// Results of the checks, in brief order.
 pub(super) fn checks(work: &Work, plan: &Plan, results: &[CheckResult]) -> Vec<v1::CheckResult> {
     let results = results.iter().enumerate();
-    fit(results.map(|(number, result)| check(work, plan, number, result)).collect())
+    fit(results
+        .map(|(number, result)| check(work, plan, number, result))
+        .collect())
 }
 
 /// Results of checks in a run without a reference state.
@@ -95,7 +97,11 @@ fn head(work: &Work, number: usize, kind: CheckKind) -> v1::CheckResult {
             "m",
             "distance from the place in the reference state, against the limit of the brief",
         ),
-        CheckKind::AnchorPull { .. } => ("anchor_pull", "N", "resultant support force, against the limit of the brief"),
+        CheckKind::AnchorPull { .. } => (
+            "anchor_pull",
+            "N",
+            "resultant support force, against the limit of the brief",
+        ),
     };
     let over = work.message.checks[number].over.iter().map(String::as_str);
     v1::CheckResult {
@@ -123,7 +129,9 @@ fn check(work: &Work, plan: &Plan, number: usize, result: &CheckResult) -> v1::C
         message.limit = worst.limit;
         message.ratio = worst.ratio;
         message.governing_case.clone_from(&plan.brief().cases[worst.case].name);
-        let origin = worst.segment.and_then(|segment| work.breaking_force_origin(segment.index()));
+        let origin = worst
+            .segment
+            .and_then(|segment| work.breaking_force_origin(segment.index()));
         if let (CheckKind::Safety { .. }, Some(origin)) = (result.kind, origin) {
             message.source.push_str(&format!(" (breaking force: {origin})"));
         }
@@ -132,7 +140,11 @@ fn check(work: &Work, plan: &Plan, number: usize, result: &CheckResult) -> v1::C
 }
 
 fn why_not_judged(result: &CheckResult) -> String {
-    let struts = result.not_judged.iter().filter(|part| matches!(part, Covered::Strut(_))).count();
+    let struts = result
+        .not_judged
+        .iter()
+        .filter(|part| matches!(part, Covered::Strut(_)))
+        .count();
     let mut reasons = Vec::new();
     if struts < result.not_judged.len() {
         reasons.push(match result.kind {
