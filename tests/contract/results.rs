@@ -3,10 +3,14 @@
 use std::collections::BTreeMap;
 use std::ops::ControlFlow;
 
+use nalgebra::Vector3;
 use ropewalk_api::ropewalk::v1;
+use ropewalk_numerics::brief::{CaseOutcome, Cause, Culprit, LikelyCause};
+use ropewalk_numerics::equilibrium::{SolveError, Termination};
+use ropewalk_numerics::model::NodeId;
 use ropewalk_service::decode::Work;
 use ropewalk_service::encode::{Tally, case, closing, engine_error, id_tables, reference, started};
-use serde_json::{Value, json};
+use serde_json::json;
 use v1::run_response::Event;
 
 use crate::briefs::{changed, first_net, found, terrace, work};
@@ -160,6 +164,16 @@ fn events_come_in_order() {
     );
 }
 
+/// Equal load steps of one case: it is put on in halves, the other cases are not.
+#[test]
+fn load_steps_of_a_case_are_its_own() {
+    let events = run(&work(&terrace()), &[0, 1]);
+    let arrays = arrays(&events);
+    let factors = |case: &str| &arrays[&(case.to_owned(), "iteration_load_factor".to_owned())].values;
+    assert!(factors("snowed").contains(&0.5) && factors("snowed").ends_with(&[1.0]));
+    assert!(factors("iced").iter().all(|factor| *factor == 1.0));
+}
+
 /// Arrays and tables have the lengths of what they range over.
 #[test]
 fn arrays_fit_their_tables() {
@@ -240,17 +254,124 @@ fn checks_judge_what_was_run() {
 
 #[test]
 fn a_case_that_nothing_holds_is_told_by_names() {
-    // A chain that hangs slack sideways: the load on q, which one slack rope holds, is held; a free pair is not.
-    let load = json!({"nodes": {"on": ["p"], "force_n": [0, 0, 1000]}});
-    let json = hanging(load);
-    let events = run(&work(&json), &[0]);
-    let closing = closings(&events)[1].clone();
-    assert_eq!(closing.outcome(), v1::CaseOutcome::Answered, "{closing:#?}");
+    let work = work(&terrace());
+    let (plan, found) = found(&work);
+    let error = SolveError::NotHeld {
+        nodes: vec![NodeId::new(7)],
+        direction: -Vector3::z(),
+        force: 5000.0,
+    };
+    let cause = Cause {
+        likely: LikelyCause::NotHeld {
+            nodes: vec!["m".to_owned()],
+            force: Vector3::new(0.0, 0.0, -5000.0),
+        },
+        worst: Vec::new(),
+        members: vec!["carrying".to_owned()],
+        last_good_load_factor: 0.0,
+    };
+    let (said, noted) = case(&work, &plan, &found, 0, &CaseOutcome::None { error, cause });
+    let closing = closing_of_case(&said);
+    assert_eq!(closing.outcome(), v1::CaseOutcome::NoEquilibrium);
+    let failure = closing.failure.expect("a failure");
+    assert_eq!(failure.reason, "NOT_HELD");
+    assert_eq!(
+        (failure.nodes, failure.members),
+        (vec!["m".to_owned()], vec!["carrying".to_owned()])
+    );
+    assert!(
+        failure
+            .message
+            .starts_with("case \"snowed\" has no equilibrium: nothing holds \"m\""),
+        "{}",
+        failure.message
+    );
+    assert!(!failure.cure.is_empty());
+    let columns = said
+        .iter()
+        .any(|message| matches!(message.event, Some(Event::Columns(_))));
+    assert!(!columns, "there is no state to tell");
+    let mut tally = Tally::new(&plan, &[0], &Ok(found));
+    tally.add(0, noted);
+    let summary = closing_of(&work, &plan, tally);
+    assert_eq!(summary.verdict(), v1::Verdict::NoAnswer);
+    assert_eq!(summary.findings[0].count, 1);
 }
 
-/// A rope hung between A and C at mid-height, given by its length, with a load.
-fn hanging(load: Value) -> Value {
-    changed(
+#[test]
+fn a_case_that_stops_keeps_its_last_state_and_says_where() {
+    let work = work(&terrace());
+    let (plan, found) = found(&work);
+    let CaseOutcome::State {
+        mut solution, result, ..
+    } = plan.case(&found, 0, &mut |_| ControlFlow::Continue(()))
+    else {
+        panic!("a state");
+    };
+    solution.termination = Termination::StepTooSmall;
+    solution.load_factor = 0.62;
+    let cause = Cause {
+        likely: LikelyCause::Tips {
+            slack_cables: vec!["bracing".to_owned()],
+            load_sum: Vector3::new(0.0, 0.0, 12_400.0),
+        },
+        worst: vec![Culprit {
+            node: "m".to_owned(),
+            imbalance: 410.0,
+            moved: 1.84,
+        }],
+        members: vec!["bracing".to_owned()],
+        last_good_load_factor: 0.6,
+    };
+    let cause = Some(cause);
+    let (said, _) = case(
+        &work,
+        &plan,
+        &found,
+        0,
+        &CaseOutcome::State {
+            solution,
+            result,
+            cause,
+        },
+    );
+    let closing = closing_of_case(&said);
+    assert_eq!(
+        (closing.outcome(), closing.load_factor),
+        (v1::CaseOutcome::NotConverged, 0.62)
+    );
+    assert_eq!(closing.worst_ratio, None);
+    let failure = closing.failure.expect("a failure");
+    assert_eq!(failure.reason, "STEP_TOO_SMALL");
+    assert_eq!(
+        (failure.nodes, failure.members),
+        (vec!["m".to_owned()], vec!["bracing".to_owned()])
+    );
+    for words in [
+        "case \"snowed\" made no more headway at 62 % of its load",
+        "\"bracing\"",
+        "\"m\"",
+        "60 %",
+    ] {
+        assert!(failure.message.contains(words), "{words}: {}", failure.message);
+    }
+    assert!(
+        said.iter()
+            .any(|message| matches!(message.event, Some(Event::Columns(_))))
+    );
+}
+
+fn closing_of_case(said: &[v1::RunResponse]) -> v1::CaseSummary {
+    match said.last().and_then(|message| message.event.clone()) {
+        Some(Event::CaseSummary(closing)) => closing,
+        other => panic!("{other:?} closes the case"),
+    }
+}
+
+/// A rope with a free end hangs slack from A: nothing says where its end is.
+#[test]
+fn a_loose_end_is_told_by_name() {
+    let json = changed(
         first_net(),
         &[
             ("/net/nodes/-", json!({"id": "p", "xyz_m": [1, 1, 1]})),
@@ -260,23 +381,16 @@ fn hanging(load: Value) -> Value {
             ),
             (
                 "/prestress/rules/-",
-                json!({"on": ["hanger"], "unstressed_length_m": 2}),
+                json!({"on": ["hanger"], "unstressed_length_m": 4}),
             ),
-            ("/actions/0/loads/0", load),
         ],
-    )
-}
-
-#[test]
-fn loose_nodes_are_doubted_by_name() {
-    let json = hanging(json!({"nodes": {"on": ["m"], "force_n": [0, 0, -5000]}}));
+    );
     let work = work(&json);
-    let plan = ropewalk_numerics::brief::Plan::new(work.brief.clone());
-    // A rope that hangs free without a load has no shape to find: told by the node.
-    let found = plan.reference(&mut |_| ControlFlow::Continue(()));
-    let said = reference(&work, &plan, &found);
-    let words = format!("{said:?}");
-    assert!(words.contains("\\\"p\\\""), "{words}");
+    let events = run(&work, &[0]);
+    let closing = closings(&events)[0];
+    let failure = closing.failure.as_ref().expect("no reference state");
+    assert!(failure.nodes.contains(&"p".to_owned()), "{failure:#?}");
+    assert_eq!(summary(&events).verdict(), v1::Verdict::NoAnswer);
 }
 
 #[test]

@@ -99,16 +99,33 @@ pub struct Cause {
 
 /// Share of slack segments from which slackness is to blame.
 const MUCH_SLACK: f64 = 0.5;
+/// A limit of fewer factorisations is itself to blame: hard nets have taken 70.
+const FAIR_LIMIT: u32 = 100;
 
-/// Reads the cause from the last state. `result` tells that state under `carried`, the share of `case` that it carries.
-pub(super) fn cause_of_stop(
-    net: &Net,
-    reference: &ReferenceState,
-    case: &Case,
-    carried: &Case,
-    solution: &Solution,
-    result: &StateResult,
-) -> Cause {
+/// A solve that stopped short.
+pub(super) struct Stop<'a> {
+    pub(super) reference: &'a ReferenceState,
+    /// The case that was wanted.
+    pub(super) case: &'a Case,
+    /// The share of it that the last state carries.
+    pub(super) carried: &'a Case,
+    pub(super) solution: &'a Solution,
+    /// The last state under the share that it carries.
+    pub(super) result: &'a StateResult,
+    /// Factorisations that were allowed.
+    pub(super) limit: u32,
+}
+
+/// Reads the cause from the last state.
+pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
+    let Stop {
+        reference,
+        case,
+        carried,
+        solution,
+        result,
+        limit,
+    } = *stop;
     let worst = culprits(net, carried, result);
     let worst_node = worst.first().map(|(node, _)| *node);
     let slack_cables = |near: Option<NodeId>| -> Vec<String> {
@@ -124,9 +141,11 @@ pub(super) fn cause_of_stop(
         .filter(|s| matches!(s.member, Member::Cable(_)))
         .count();
     let n_slack = result.slack.iter().filter(|slack| **slack).count();
-    let strained = plausible::strained_members(net, case, &reference.axial_forces)
-        .into_iter()
-        .chain(plausible::strained_members(net, case, &solution.axial_forces))
+    // Forces out of balance say little about strain; those of a balanced state do.
+    let balanced = result.audit.passed.then_some(&solution.axial_forces);
+    let strained = std::iter::once(&reference.axial_forces)
+        .chain(balanced)
+        .flat_map(|forces| plausible::strained_members(net, case, forces))
         .max_by(|a, b| a.strain.abs().total_cmp(&b.strain.abs()));
     let odd = plausible::odd_stiffnesses(net);
     let likely = match (strained, odd.first()) {
@@ -143,6 +162,7 @@ pub(super) fn cause_of_stop(
             likely_factor: Some(odd.likely_factor),
         },
         _ if solution.termination == Termination::RunsAway => LikelyCause::RanAway,
+        _ if limit < FAIR_LIMIT && solution.factorisations >= limit => LikelyCause::OutOfIterations,
         _ if n_slack as f64 >= MUCH_SLACK * n_cable_segments as f64 => LikelyCause::MuchSlack {
             cables: slack_cables(worst_node),
             slack: n_slack,

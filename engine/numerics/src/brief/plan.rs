@@ -3,7 +3,7 @@
 use std::ops::ControlFlow;
 use std::sync::Arc;
 
-use super::cause::{cause_of_error, cause_of_stop};
+use super::cause::{Stop, cause_of_error, cause_of_stop};
 use super::state::{Bare, state_result};
 use super::summary::worst_ratio;
 use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Summary, Task};
@@ -120,11 +120,14 @@ impl Plan {
                     Termination::Converged | Termination::Cancelled => None,
                     _ => Some(cause_of_stop(
                         net,
-                        &reference.state,
-                        &case,
-                        &carried,
-                        &solution,
-                        &result,
+                        &Stop {
+                            reference: &reference.state,
+                            case: &case,
+                            carried: &carried,
+                            solution: &solution,
+                            result: &result,
+                            limit: settings.max_iterations,
+                        },
                     )),
                 };
                 CaseOutcome::State {

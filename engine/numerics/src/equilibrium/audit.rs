@@ -102,14 +102,14 @@ pub fn audit(net: &Net, case: &Case, positions: &[Vector3<f64>], axial_forces: &
             movement.extend([moved.x, moved.y, moved.z]);
         }
         for (place, node) in support.nodes().iter().enumerate() {
-            for axis in 0..3 {
+            for (axis, along) in elastic[node.index()].iter_mut().enumerate() {
                 let row = 3 * place + axis;
                 let mut force = 0.0;
                 for (column, moved) in movement.iter().enumerate() {
                     force -= support.stiffness()[(row, column)] * moved;
                     rounding = rounding.max(8.0 * f64::EPSILON * support.stiffness()[(row, column)].abs() * size);
                 }
-                elastic[node.index()][axis] += force;
+                *along += force;
                 largest = largest.max(force.abs());
             }
         }

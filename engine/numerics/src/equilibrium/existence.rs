@@ -18,11 +18,21 @@ const NO_RESISTANCE: f64 = 1e-9;
 /// Share of the loads on a part below which their sum counts as zero.
 const NO_LOAD: f64 = 1e-9;
 
-/// Checks that every load is held.
+/// A node and a direction that may be held without changing any force: it stops a part that could be translated freely.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Anchor {
+    /// The node.
+    pub node: NodeId,
+    /// The direction (unit).
+    pub direction: Vector3<f64>,
+}
+
+/// Checks that every load is held; returns where parts that may be anywhere can be anchored.
 ///
 /// # Errors
 /// [`SolveError::NotHeld`] for the first part, in node order, with a net load along a free translation.
-pub fn check_loads_are_held(structure: &Structure, loading: &Loading) -> Result<(), SolveError> {
+pub fn check_loads_are_held(structure: &Structure, loading: &Loading) -> Result<Vec<Anchor>, SolveError> {
+    let mut anchors = Vec::new();
     let parts = Parts::new(structure, |segment| loading.bars[segment].is_present());
     for group in parts.groups() {
         let translations = group.free_translations(structure);
@@ -56,8 +66,13 @@ pub fn check_loads_are_held(structure: &Structure, loading: &Loading) -> Result<
                 force: force.norm(),
             });
         }
+        anchors.extend(
+            translations
+                .column_iter()
+                .filter_map(|t| group.anchor(structure, &t.into_owned())),
+        );
     }
-    Ok(())
+    Ok(anchors)
 }
 
 /// Nodes whose place is not determined: no path of taut segments leads them to enough support.
@@ -171,6 +186,24 @@ impl Group<'_> {
         } else {
             DMatrix::from_columns(&free)
         }
+    }
+
+    /// Where a free translation shows most: the node to hold, and along what.
+    fn anchor(&self, structure: &Structure, translation: &DVector<f64>) -> Option<Anchor> {
+        let part = (0..self.parts.len()).max_by(|a, b| {
+            (block(translation, *a).norm())
+                .total_cmp(&block(translation, *b).norm())
+                .then(b.cmp(a))
+        })?;
+        let direction = block(translation, part).try_normalize(0.0)?;
+        let reach = |node: &NodeId| -> f64 {
+            let free = structure.dofs().directions(*node);
+            free.iter().map(|d| d.dot(&direction).powi(2)).sum()
+        };
+        let node = self.parts[part]
+            .iter()
+            .max_by(|a, b| reach(a).total_cmp(&reach(b)).then(b.cmp(a)))?;
+        Some(Anchor { node: *node, direction })
     }
 
     fn add_elastic(&self, net: &Net, resistance: &mut DMatrix<f64>) {

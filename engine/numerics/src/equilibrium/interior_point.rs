@@ -5,7 +5,7 @@
 //! s = (a + ε, d), z = (N, −v) in the second-order cone;   at the end k ε = N, Cᵀ v = p, s ∘ z = 0
 //! ```
 //! Unlike Newton on the energy it does not creep along curved valleys where much is slack and little stretches. It ends
-//! near seven digits, which is the nature of its equations; [`super::polish`] takes it from there.
+//! near seven digits, which is the nature of its equations; [`super::carried`] takes it from there.
 //!
 //! Scaling: Nesterov & Todd 1997; predictor and corrector: Mehrotra 1992 (both from memory).
 
@@ -173,7 +173,7 @@ impl Member {
 
 /// Searches from `positions`; leaves its last point there.
 ///
-/// Returns the axial force of every segment (N) and the force scale `P` (N) for the polish, or why it had to stop.
+/// Returns the axial force of every segment (N) and the force scale `P` (N) for a polish, or why it had to stop.
 pub(super) fn solve(
     run: &mut Run<'_>,
     loading: &Loading,

@@ -301,7 +301,10 @@ impl Factor {
             Spec::default(),
         );
         match outcome {
-            Ok(_) => self.accept(Held::Cholesky),
+            Ok(_) => {
+                self.held = Held::Cholesky;
+                Ok(())
+            }
             Err(LltError::NonPositivePivot { index }) => Err(self.pivot(index)),
         }
     }
@@ -326,7 +329,6 @@ impl Factor {
         if let Err(LdltError::ZeroPivot { index }) = outcome {
             return Err(self.pivot(index));
         }
-        self.accept(Held::Ldlt)?;
         let factor = supernodal::SupernodalLdltRef::new(&self.symbolic.factor, &self.values);
         let mut inertia = Inertia {
             negative: 0,
@@ -336,12 +338,16 @@ impl Factor {
             let block = factor.supernode(s).val();
             for j in 0..block.ncols() {
                 let pivot = block[(j, j)];
+                if !pivot.is_finite() {
+                    return Err(FactorError::NotFinite);
+                }
                 inertia.negative += usize::from(pivot < 0.0);
                 if pivot.abs() < inertia.smallest.abs() {
                     inertia.smallest = pivot;
                 }
             }
         }
+        self.held = Held::Ldlt;
         Ok(inertia)
     }
 
@@ -405,16 +411,6 @@ impl Factor {
             finite &= entry.is_finite();
         }
         if finite { Ok(()) } else { Err(FactorError::NotFinite) }
-    }
-
-    fn accept(&mut self, held: Held) -> Result<(), FactorError> {
-        // Overflow inside the factor shows at the latest in its last pivot's column.
-        if self.values.iter().all(|v| v.is_finite()) {
-            self.held = held;
-            Ok(())
-        } else {
-            Err(FactorError::NotFinite)
-        }
     }
 
     fn pivot(&self, index: usize) -> FactorError {
@@ -521,8 +517,8 @@ mod tests {
                 descendants[parent] += descendants[k];
             }
         }
-        for k in 0..n {
-            for i in k + 1 - descendants[k]..k {
+        for (k, n_below) in descendants.iter().enumerate() {
+            for i in k + 1 - n_below..k {
                 let parent = (i + 1..n).find(|&j| fill[(j, i)]).expect("a descendant has a parent");
                 assert!(parent <= k, "row {i} is not below {k}");
             }

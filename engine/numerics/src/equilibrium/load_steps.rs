@@ -2,12 +2,13 @@
 
 use nalgebra::Vector3;
 
+use super::carried::Carried;
 use super::newton::Newton;
 use super::run::{Observer, Run};
 use super::solution::LoadStepState;
 use super::{
     Analysis, IterationReport, LoadSteps, Settings, Solution, SolveError, Termination, Way, existence, interior_point,
-    polish, relaxation, stability,
+    relaxation, stability,
 };
 use crate::assembly::{Loading, check_vectors};
 use crate::load::Case;
@@ -21,6 +22,14 @@ const HOLDS: f64 = 1e-9;
 const FIRST_STEP: f64 = 0.25;
 const SMALLEST_STEP: f64 = 1.0 / 256.0;
 
+const QUICK: Carried = Carried {
+    way: Way::Newton,
+    limit: 12,
+};
+const POLISH: Carried = Carried {
+    way: Way::Polish,
+    limit: 12,
+};
 const TRY: Newton = Newton {
     floor_share: 1.0,
     limit: 15,
@@ -64,10 +73,10 @@ pub fn solve(
         .into());
     }
     check_vectors("start position", start)?;
-    existence::check_loads_are_held(structure, &full)?;
+    let anchors = existence::check_loads_are_held(structure, &full)?;
 
     let level = |factor: f64| Loading::new(structure, case, reference_lengths, factor);
-    let mut run = Run::new(analysis, settings, start, observe);
+    let mut run = Run::new(analysis, settings, start, &anchors, observe);
     let mut steps = Vec::new();
     let mut positions = start.to_vec();
     let (termination, load_factor) = match settings.load_steps {
@@ -164,21 +173,42 @@ fn state(
 ) -> Termination {
     loading.place_supports(run.structure, positions);
     run.begin(load_step, load_factor, loading);
-    if !run.structure.net().is_pure_tension() {
-        return WITH_STRUTS.solve(run, loading, positions);
-    }
     run.respond(loading, positions);
-    let (mut slack, mut present) = (0.0, 0.0);
-    for (bar, length) in loading.bars.iter().zip(&run.response.lengths) {
+    let entry = positions.clone();
+    let (mut slack, mut pulled, mut present) = (0.0, 0.0, 0.0);
+    for ((bar, length), axial) in loading
+        .bars
+        .iter()
+        .zip(&run.response.lengths)
+        .zip(&run.response.axial_forces)
+    {
         if bar.is_present() {
             present += 1.0;
             slack += f64::from(u8::from(*length < CLEARLY_SLACK * bar.stress_free_length));
+            pulled += f64::from(u8::from(*axial != 0.0));
         }
     }
-    let entry = positions.clone();
+    let ends =
+        |outcome, run: &Run<'_>| matches!(outcome, Termination::Converged | Termination::Cancelled) || run.is_spent();
+    if pulled >= (1.0 - MUCH_SLACK) * present {
+        let carried = run.response.axial_forces.clone();
+        let joining = if run.load > 0.0 {
+            run.load
+        } else {
+            0.01 * run.response.largest_axial_force()
+        };
+        let outcome = QUICK.solve(run, loading, positions, carried, joining);
+        if ends(outcome, run) {
+            return outcome;
+        }
+        positions.copy_from_slice(&entry);
+    }
+    if !run.structure.net().is_pure_tension() {
+        return WITH_STRUTS.solve(run, loading, positions);
+    }
     if slack < MUCH_SLACK * present {
         let outcome = TRY.solve(run, loading, positions);
-        if matches!(outcome, Termination::Converged | Termination::Cancelled) || run.is_spent() {
+        if ends(outcome, run) {
             return outcome;
         }
         positions.copy_from_slice(&entry);
@@ -188,7 +218,7 @@ fn state(
         Err(_) => positions.copy_from_slice(&entry),
         Ok((forces, load)) => {
             let inside = positions.clone();
-            match polish::solve(run, loading, positions, &forces, load) {
+            match POLISH.solve(run, loading, positions, forces, load) {
                 Termination::Converged => return Termination::Converged,
                 Termination::Cancelled => return Termination::Cancelled,
                 _ => positions.copy_from_slice(&inside),

@@ -2,21 +2,22 @@
 //!
 //! ```text
 //! existence      is every load held?                            a graph test, before anything is solved
-//! newton         Newton on the energy with a line search        first, unless much is slack at the start
-//! interior point, polish                                        pure tension, hard starts
+//! carried        Newton with carried forces                     first, where most is taut
+//! newton         Newton on the energy with a line search        where that fails, unless much is slack at the start
+//! interior point, then carried forces as a polish               pure tension, hard starts
 //! load steps, relaxation                                        with struts, hard starts
 //! stability      can the balanced state move freely?            with struts
 //! ```
 
 mod analysis;
 pub mod audit;
+mod carried;
 pub mod existence;
 mod interior_point;
 mod line_search;
 pub mod linear;
 mod load_steps;
 mod newton;
-mod polish;
 mod relaxation;
 mod run;
 mod settings;

@@ -4,6 +4,7 @@ use std::ops::ControlFlow;
 
 use nalgebra::{Matrix3, Vector3};
 
+use super::existence::Anchor;
 use super::linear::{Factor, FactorError};
 use super::{Analysis, IterationReport, Settings, Termination, Way, Yardstick};
 use crate::assembly::{Loading, Response, Structure};
@@ -17,6 +18,24 @@ const RUNS_AWAY: f64 = 1e3;
 /// Share of the forces up to which rounding in the positions may hide a residual.
 const HIDDEN_BY_ROUNDING: f64 = 1e-4;
 
+fn anchor_entries(structure: &Structure, anchors: &[Anchor]) -> Vec<(usize, f64)> {
+    let mut entries = Vec::new();
+    for anchor in anchors {
+        let first = structure.dofs().first(anchor.node);
+        let free = structure.dofs().directions(anchor.node);
+        for (column, along) in free.iter().enumerate() {
+            for (row, across) in free.iter().enumerate().skip(column) {
+                let position = structure
+                    .pattern()
+                    .position(first + row, first + column)
+                    .expect("the block of a node is full");
+                entries.push((position, along.dot(&anchor.direction) * across.dot(&anchor.direction)));
+            }
+        }
+    }
+    entries
+}
+
 /// One solve: buffers, counters, and who watches.
 pub(super) struct Run<'a> {
     pub(super) structure: &'a Structure,
@@ -29,11 +48,12 @@ pub(super) struct Run<'a> {
     pub(super) load_factor: f64,
     pub(super) iteration: u32,
     pub(super) factorisations: u32,
-    /// Largest force met so far in this load step (N); steadies the stop rule where all forces fade.
-    pub(super) force_scale: f64,
     /// Largest load on a free direction in this load step (N).
     pub(super) load: f64,
     rounding: Vec<f64>,
+    /// Entries of the tangent, and their shares of the largest stiffness, that hold parts free to be anywhere.
+    anchors: Vec<(usize, f64)>,
+    largest_stiffness: f64,
     factor: Factor,
     pub(super) values: Vec<f64>,
     pub(super) blocks: Vec<Matrix3<f64>>,
@@ -51,6 +71,7 @@ impl<'a> Run<'a> {
         analysis: &'a Analysis,
         settings: &'a Settings,
         start: &'a [Vector3<f64>],
+        anchors: &[Anchor],
         observe: Observer<'a>,
     ) -> Self {
         let structure = analysis.structure();
@@ -65,9 +86,10 @@ impl<'a> Run<'a> {
             load_factor: 1.0,
             iteration: 0,
             factorisations: 0,
-            force_scale: 0.0,
             load: 0.0,
             rounding: vec![0.0; structure.n_dofs()],
+            anchors: anchor_entries(structure, anchors),
+            largest_stiffness: 0.0,
             factor: analysis.new_factor(),
             values: vec![0.0; structure.pattern().n_entries()],
             blocks: vec![Matrix3::zeros(); structure.net().segments().len()],
@@ -88,7 +110,6 @@ impl<'a> Run<'a> {
         self.load_factor = load_factor;
         self.iteration = 0;
         self.load = loading.largest_force(self.structure);
-        self.force_scale = self.load;
         let coordinates = self.start.iter().map(Vector3::amax);
         let lengths = loading
             .bars
@@ -96,6 +117,7 @@ impl<'a> Run<'a> {
             .filter(|b| b.is_present())
             .map(|b| b.stress_free_length);
         self.box_size = coordinates.chain(lengths).fold(0.0, f64::max);
+        self.largest_stiffness = loading.bars.iter().map(|b| b.stiffness).fold(0.0, f64::max);
         let mut stiffness = vec![0.0; self.start.len()];
         for (bar, segment) in loading.bars.iter().zip(self.structure.net().segments()) {
             for end in segment.ends {
@@ -122,7 +144,12 @@ impl<'a> Run<'a> {
             _ => load.max(force),
         };
         let tolerance = self.settings.tolerance * yardstick;
-        let most_hidden = HIDDEN_BY_ROUNDING * load.max(force).max(self.force_scale);
+        // Without load all forces may fade, and rounding is all that is left of them.
+        let most_hidden = if load > 0.0 {
+            HIDDEN_BY_ROUNDING * load.max(force)
+        } else {
+            f64::INFINITY
+        };
         response
             .residual
             .iter()
@@ -141,6 +168,9 @@ impl<'a> Run<'a> {
     pub(super) fn factorise_blocks(&mut self) -> bool {
         self.structure.tangent_into(&self.blocks, &mut self.values);
         self.structure.add_elastic_supports(&mut self.values);
+        for (position, share) in &self.anchors {
+            self.values[*position] += share * self.largest_stiffness;
+        }
         self.factorisations += 1;
         let outcome: Result<(), FactorError> = self.factor.cholesky(&self.values);
         outcome.is_ok()
@@ -166,10 +196,6 @@ impl<'a> Run<'a> {
     /// Response at the given positions, into `response`.
     pub(super) fn respond(&mut self, loading: &Loading, positions: &[Vector3<f64>]) {
         self.structure.response_into(loading, positions, &mut self.response);
-        let force = self.response.largest_axial_force();
-        if force.is_finite() {
-            self.force_scale = self.force_scale.max(force);
-        }
     }
 
     /// Tells the observer of the state in `response` and keeps the report.

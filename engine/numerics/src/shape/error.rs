@@ -177,7 +177,8 @@ pub enum ShapeError {
     },
     /// The search ended without balance.
     #[error(
-        "no balanced shape after {iterations} iterations: {} is left at \"{node}\" ({termination:?})",
+        "no balanced shape after {iterations} iterations: {} is left at \"{node}\" ({termination:?}); if force densities \
+         are small beside the weights they carry, raise them",
         kilonewtons(*residual)
     )]
     NotConverged {
@@ -203,6 +204,16 @@ pub enum ShapeError {
         allowed: f64,
         /// Id of the node.
         node: String,
+    },
+    /// A number of the elastic net is beyond reckoning.
+    #[error("the {what} of \"{part}\" is {value:e}: it has to be positive and of a size that can be built")]
+    BeyondReckoning {
+        /// Id of the member or node.
+        part: String,
+        /// The quantity.
+        what: &'static str,
+        /// Its value.
+        value: f64,
     },
     /// Members of given length have no equilibrium.
     #[error("members of given length find no equilibrium{}: {source}", at(nodes))]

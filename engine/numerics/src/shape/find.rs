@@ -21,6 +21,11 @@ const MAX_ROUNDS: usize = 60;
 /// Change of their forces, over the largest force, at which these rounds end.
 const SETTLED: f64 = 1e-13;
 
+/// Strain that leaves no trace in an unstressed length: the force could not be had back from it.
+const NO_TRACE: f64 = 1e-14;
+/// Forces below this share of the largest may be lost so.
+const NOTABLE: f64 = 1e-6;
+
 /// Finds the reference state: positions, unstressed lengths and forces that balance the actions of `prestress.under`.
 ///
 /// Free nodes of `prestress.hold` stay where they were given while the shape of the rest is found; members left to
@@ -32,6 +37,9 @@ const SETTLED: f64 = 1e-13;
 ///
 /// # Errors
 /// [`ShapeError`], in the client's ids, if there is no such state or it was not found.
+///
+/// # Panics
+/// If `prestress` does not have one rule a segment.
 pub fn find(
     analysis: &Analysis,
     prestress: &Prestress,
@@ -40,6 +48,7 @@ pub fn find(
     observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
 ) -> Result<Found, ShapeError> {
     let net = analysis.structure().net();
+    assert_eq!(prestress.rules.len(), net.segments().len(), "one rule a segment");
     let parts = Parts::new(net, prestress)?;
     let loads = ShapeLoads::new(net, actions, &prestress.under)?;
     let nowhere = |nodes: &mut dyn Iterator<Item = NodeId>| -> Vec<String> {
@@ -281,8 +290,16 @@ fn unmet(net: &Net, parts: &Parts, search: &Search<'_, '_>, found: &Densities) -
 impl Shape {
     fn into_raw(self, net: &Net, parts: &Parts, iterations: u32) -> Result<RawShape, ShapeError> {
         let point = &self.densities.point;
+        let largest = point.axial_forces.iter().fold(0.0, |m: f64, n| m.max(n.abs()));
         for (index, segment) in net.segments().iter().enumerate() {
             let (force, stiffness) = (point.axial_forces[index], segment.section.axial_stiffness);
+            if force.abs() > NOTABLE * largest && force.abs() <= NO_TRACE * stiffness {
+                return Err(ShapeError::BeyondReckoning {
+                    part: net.member_name(SegmentId::new(index)).to_owned(),
+                    what: "axial stiffness",
+                    value: stiffness,
+                });
+            }
             let is_given = matches!(parts.of[index], Part::Elastic(_));
             if !is_given && force <= -0.9 * stiffness {
                 return Err(ShapeError::BeyondStiffness {

@@ -110,23 +110,8 @@ pub(super) fn elastic(
         tolerance: settings.tolerance.min(STANDS),
         ..*settings
     };
-    let solution = match equilibrium::solve(analysis, case, &state.positions, lengths, &settings, observe) {
-        Ok(solution) => solution,
-        Err(SolveError::FreeMovement {
-            nodes,
-            direction,
-            stiffness,
-            segments,
-        }) => return Err(free_movement(net, &nodes, direction, stiffness, &segments)),
-        Err(source) => {
-            let nodes = match &source {
-                SolveError::NotHeld { nodes, .. } => names(net, nodes),
-                SolveError::Loading(LoadingError::Node { node, .. }) => names(net, &[*node]),
-                _ => Vec::new(),
-            };
-            return Err(ShapeError::Elastic { source, nodes });
-        }
-    };
+    let solved = equilibrium::solve(analysis, case, &state.positions, lengths, &settings, observe);
+    let solution = solved.map_err(|error| in_ids(net, error))?;
     match solution.termination {
         Termination::Converged if solution.loose_nodes.is_empty() => Ok(solution),
         Termination::Converged => Err(ShapeError::Loose {
@@ -159,13 +144,8 @@ pub(super) fn checked(analysis: &Analysis, mut found: Found) -> Result<Found, Sh
         });
     }
     if !net.is_pure_tension() {
-        let loading =
-            Loading::new(analysis.structure(), &found.case, &state.unstressed_lengths, 1.0).map_err(|error| {
-                ShapeError::Elastic {
-                    source: error.into(),
-                    nodes: Vec::new(),
-                }
-            })?;
+        let loading = Loading::new(analysis.structure(), &found.case, &state.unstressed_lengths, 1.0);
+        let loading = loading.map_err(|error| in_ids(net, error.into()))?;
         if let Some(m) = stability::free_movement(analysis, &loading, &state.positions, &[]) {
             return Err(free_movement(net, &m.nodes, m.direction, m.stiffness, &m.segments));
         }
@@ -174,6 +154,35 @@ pub(super) fn checked(analysis: &Analysis, mut found: Found) -> Result<Found, Sh
     found.report.largest_force = largest(&state.axial_forces);
     found.report.largest_strain = largest_strain(net, state);
     Ok(found)
+}
+
+/// What the solver says, with the client's ids.
+fn in_ids(net: &Net, error: SolveError) -> ShapeError {
+    match error {
+        SolveError::FreeMovement {
+            nodes,
+            direction,
+            stiffness,
+            segments,
+        } => free_movement(net, &nodes, direction, stiffness, &segments),
+        SolveError::Loading(LoadingError::Segment { segment, what, value }) => ShapeError::BeyondReckoning {
+            part: net.member_name(segment).to_owned(),
+            what,
+            value,
+        },
+        SolveError::Loading(LoadingError::Node { node, what, value }) => ShapeError::BeyondReckoning {
+            part: net.node_name(node).to_owned(),
+            what,
+            value,
+        },
+        source => {
+            let nodes = match &source {
+                SolveError::NotHeld { nodes, .. } => names(net, nodes),
+                _ => Vec::new(),
+            };
+            ShapeError::Elastic { source, nodes }
+        }
+    }
 }
 
 fn free_movement(

@@ -1,7 +1,7 @@
 //! Generalised minimal residuals, for matrices that are nearly the one that was factorised.
 
-/// Relative residual at which a system counts as solved.
-const SOLVED: f64 = 1e-13;
+/// Relative residual at which a system counts as solved: the steps that use it are repeated or only nearly right anyway.
+const SOLVED: f64 = 1e-10;
 const MAX_VECTORS: usize = 40;
 
 /// Solves `A x = b` with `M⁻¹` from the left: `A` and `M` differ little, so a few vectors do.
@@ -102,7 +102,7 @@ mod tests {
             product(&wanted),
         );
         for (a, b) in found.iter().zip(&wanted) {
-            assert!((a - b).abs() < 1e-11);
+            assert!((a - b).abs() < 1e-8);
         }
     }
 }

@@ -250,14 +250,17 @@ impl<'a, 'o> Search<'a, 'o> {
     fn solve(&mut self, point: &Point, right_hand_side: Vec<f64>) -> Vec<f64> {
         let (structure, parts, loads) = (self.structure, self.parts, self.loads);
         let (factor, values) = (&mut self.factor, &self.values);
+        if !loads.depend_on_lengths {
+            let mut solution = right_hand_side;
+            factor.solve_in_place(&mut solution);
+            return solution;
+        }
         gmres(
             |v| {
                 let mut product = vec![0.0; v.len()];
                 structure.pattern().product_into(values, v, &mut product);
-                if loads.depend_on_lengths {
-                    let change = load_change(structure, parts, loads, point, v);
-                    product.iter_mut().zip(change).for_each(|(p, c)| *p -= c);
-                }
+                let change = load_change(structure, parts, loads, point, v);
+                product.iter_mut().zip(change).for_each(|(p, c)| *p -= c);
                 product
             },
             |v| factor.solve_in_place(v),

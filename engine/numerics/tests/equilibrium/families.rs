@@ -5,7 +5,7 @@ use ropewalk_numerics::equilibrium::Termination;
 
 use crate::nets::{Example, Random, grid};
 
-const NETS_A_FAMILY: u64 = 40;
+const NETS_A_FAMILY: u32 = 40;
 
 /// Downward, patterned, uplift or lateral loads on the free nodes, of size `force`.
 fn load(example: &mut Example, random: &mut Random, force: f64) {
@@ -169,7 +169,7 @@ fn check_family(name: &str, draw: fn(&mut Random) -> Example, most_in_the_middle
     let mut counts = Vec::new();
     let mut failures = Vec::new();
     for seed in 0..NETS_A_FAMILY {
-        let net = draw(&mut Random::new(seed));
+        let net = draw(&mut Random::new(seed.into()));
         let solution = net.solve().unwrap_or_else(|e| panic!("{name} {seed}: {e}"));
         counts.push(solution.factorisations);
         if solution.termination == Termination::Converged {
@@ -191,7 +191,7 @@ fn check_family(name: &str, draw: fn(&mut Random) -> Example, most_in_the_middle
     counts.sort_unstable();
     println!(
         "{name}: {} of {} solved, factorisations median {} worst {}",
-        NETS_A_FAMILY as usize - failures.len(),
+        counts.len() - failures.len(),
         NETS_A_FAMILY,
         counts[counts.len() / 2],
         counts[counts.len() - 1],
@@ -205,30 +205,30 @@ fn check_family(name: &str, draw: fn(&mut Random) -> Example, most_in_the_middle
 
 #[test]
 fn prestressed_saddles() {
-    check_family("saddle", saddle, 12);
+    check_family("saddle", saddle, 7);
 }
 
 #[test]
 fn flat_nets_without_prestress() {
-    check_family("flat", flat, 11);
+    check_family("flat", flat, 9);
 }
 
 #[test]
 fn nets_all_slack_at_the_start() {
-    check_family("slack", slack, 20);
+    check_family("slack", slack, 14);
 }
 
 #[test]
 fn random_meshes() {
-    check_family("mesh", mesh, 24);
+    check_family("mesh", mesh, 17);
 }
 
 #[test]
 fn hanging_chains() {
-    check_family("chain", chain, 16);
+    check_family("chain", chain, 14);
 }
 
 #[test]
 fn nets_with_floating_parts() {
-    check_family("floating", floating, 12);
+    check_family("floating", floating, 7);
 }

@@ -1,7 +1,11 @@
 //! States of whole nets: families of random nets, published and own numbers, properties, endings.
-#![allow(clippy::unwrap_used, reason = "tests")]
+#![allow(clippy::unwrap_used, clippy::print_stdout, reason = "tests")]
 
 mod audited;
+mod endings;
 mod families;
+mod held;
 mod nets;
+mod properties;
 mod saddle;
+mod struts;

@@ -3,7 +3,6 @@
 use ropewalk_api::ropewalk::v1;
 
 use super::findings::{Findings, Path};
-use super::names::nearest;
 use super::reasons;
 use crate::words::Quoted;
 
@@ -23,7 +22,7 @@ pub(crate) fn read(accepted: &[v1::AcceptedDoubt], findings: &mut Findings) {
         }
         let known = || reasons::ALL.iter().map(|(reason, _)| *reason);
         if !known().any(|reason| reason == doubt.reason) {
-            let meant = nearest(&doubt.reason, known());
+            let meant = findings.nearest(&doubt.reason, known());
             let question = meant.map_or(String::new(), |meant| format!(" Did you mean {meant}?"));
             findings
                 .doubt(

@@ -185,12 +185,13 @@ impl<'a> Cases<'a> {
         self.unused(actions, under, findings);
     }
 
-    fn acts(&self, action: usize) -> bool {
-        self.list.iter().any(|case| {
-            case.factors
-                .iter()
-                .any(|(other, factor)| *other == action && *factor != 0.0)
-        })
+    /// Whether each action acts in some case.
+    fn acting(&self, actions: &Actions<'_>) -> Vec<bool> {
+        let mut acting = vec![false; actions.messages.len()];
+        for (action, factor) in self.list.iter().flat_map(|case| &case.factors) {
+            acting[*action] |= *factor != 0.0;
+        }
+        acting
     }
 
     fn own_weight(&self, net: &NetDraft<'_>, actions: &Actions<'_>, findings: &mut Findings) {
@@ -213,7 +214,8 @@ impl<'a> Cases<'a> {
                 "give mass_kg_per_m of the sections",
             );
         }
-        if self.messages.is_empty() || weights.iter().any(|weight| self.acts(*weight)) {
+        let acting = self.acting(actions);
+        if self.messages.is_empty() || weights.iter().any(|weight| acting[*weight]) {
             return;
         }
         if mass {
@@ -260,7 +262,9 @@ impl<'a> Cases<'a> {
     }
 
     fn unused(&self, actions: &Actions<'_>, under: &[usize], findings: &mut Findings) {
-        let idle = |action: &usize| !self.acts(*action) && !under.contains(action);
+        let mut acting = self.acting(actions);
+        under.iter().for_each(|action| acting[*action] = true);
+        let idle = |action: &usize| !acting[*action];
         let unused: Vec<&str> = (0..actions.messages.len())
             .filter(idle)
             .map(|action| actions.messages[action].id.as_str())

@@ -5,11 +5,14 @@ use std::fmt;
 
 use ropewalk_api::ropewalk::v1;
 
+use super::names::nearest;
 use super::reasons;
 use crate::words::shown;
 
 /// Findings of one reason that are written out; further ones are only counted.
 const WRITTEN_OUT: usize = 1000;
+/// Comparisons of names in one brief: some seconds of a brief with nothing but slips of typing, at most.
+const COMPARISONS: usize = 500_000;
 
 #[derive(Clone, Copy, Debug)]
 enum Step<'a> {
@@ -91,10 +94,22 @@ impl Added<'_> {
 }
 
 /// Everything found so far.
-#[derive(Debug, Default)]
+#[derive(Debug)]
 pub(crate) struct Findings {
     list: Vec<v1::Finding>,
     counts: BTreeMap<(i32, &'static str), usize>,
+    /// Names that may still be compared in search of the one that was meant.
+    comparisons: usize,
+}
+
+impl Default for Findings {
+    fn default() -> Self {
+        Self {
+            list: Vec::new(),
+            counts: BTreeMap::new(),
+            comparisons: COMPARISONS,
+        }
+    }
 }
 
 impl Findings {
@@ -172,6 +187,18 @@ impl Findings {
             ..v1::Finding::default()
         });
         Added(self.list.last_mut())
+    }
+
+    /// The known name that was probably meant, as long as looking for it is worth the time.
+    pub(crate) fn nearest<'a>(&mut self, name: &str, known: impl Iterator<Item = &'a str>) -> Option<&'a str> {
+        let left = &mut self.comparisons;
+        nearest(
+            name,
+            known.take_while(|_| {
+                *left = left.saturating_sub(1);
+                *left > 0
+            }),
+        )
     }
 
     /// Whether the work cannot be done.

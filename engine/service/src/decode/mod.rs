@@ -5,8 +5,8 @@
 //! |---|---|
 //! | `reading`, `work` | the whole brief, and what comes of it |
 //! | `findings`, `reasons`, `numbers`, `names` | what is told, where, and why |
-//! | `net`, `sections`, `supports`, `stretch`, `scope` | the net |
-//! | `prestress`, `actions`, `cases`, `checks`, `solving` | what is wanted of it |
+//! | `net`, `places`, `sections`, `supports`, `stretch`, `scope` | the net |
+//! | `prestress`, `wish`, `actions`, `cases`, `checks`, `solving` | what is wanted of it |
 //! | `plausible`, `frozen`, `accepted` | doubts |
 //! | `limits`, `not_served` | what is refused |
 //!
@@ -24,6 +24,7 @@ mod names;
 mod net;
 mod not_served;
 mod numbers;
+mod places;
 mod plausible;
 mod prestress;
 mod reading;
@@ -34,6 +35,7 @@ mod sections;
 mod solving;
 mod stretch;
 mod supports;
+mod wish;
 mod work;
 
 pub(crate) use cases::{ENVELOPE, REFERENCE};

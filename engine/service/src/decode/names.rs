@@ -97,7 +97,7 @@ impl<'a, T: Copy> Names<'a, T> {
 
     /// Tells that a name names nothing.
     pub(crate) fn unknown(&self, findings: &mut Findings, at: &Path<'_>, what: &str, name: &str) {
-        let meant = nearest(name, self.order.iter().copied());
+        let meant = findings.nearest(name, self.order.iter().copied());
         let question = meant.map_or(String::new(), |meant| format!(" Did you mean {}?", Quoted(meant)));
         let cure = meant.map_or_else(
             || format!("name a {what} that the brief has"),
@@ -154,14 +154,11 @@ pub(crate) fn look_alike(name: &str) -> String {
 
 /// The known name that was probably meant, if one is close enough: letters that look alike count as equal.
 pub(crate) fn nearest<'a>(name: &str, known: impl Iterator<Item = &'a str>) -> Option<&'a str> {
-    // Beyond this many, a suggestion is not worth the time.
-    const TRIED: usize = 50_000;
     let form = look_alike(name);
     let length = form.chars().count();
     // A third of the letters may differ; of a single letter only its look.
     let allowed = (length + 1) / 3;
     known
-        .take(TRIED)
         .filter(|other| *other != name)
         .filter(|other| other.len().abs_diff(name.len()) <= 4 * allowed)
         .filter_map(|other| {

@@ -1,21 +1,21 @@
 //! Nodes, cables and struts: ids, paths and places.
 
+use std::cell::OnceCell;
+use std::collections::HashMap;
+
 use nalgebra::Vector3;
 use ropewalk_api::ropewalk::v1;
 
 use super::findings::{Findings, Path, is_id};
-use super::names::{Names, Thing, bad_id, look_alike, nearest};
+use super::names::{Names, Thing, bad_id};
 use super::numbers::{ATTACHED_MASS, COORDINATE, GRAVITY, ORIGIN, Of, REFERENCE_TEMPERATURE};
-use super::reasons;
 use super::resolved::Resolved;
-use crate::words::{Quoted, length, quoted_list, rounded};
+use super::stretch::visits;
+use super::{places, reasons};
+use crate::words::Quoted;
 
 /// Acceleration of gravity where the brief gives none (m/s²), the conventional value (CGPM 1901).
 pub(crate) const STANDARD_GRAVITY: f64 = 9.80665;
-/// Coordinates farther from the origin lose digits to it (m).
-const FARTHEST: f64 = 10_000.0;
-/// Nodes closer than this are in the same place (m).
-const SAME_PLACE: f64 = 1e-6;
 
 /// A node, listed or only named in a path.
 #[derive(Debug)]
@@ -25,11 +25,11 @@ pub(crate) struct NodeDraft<'a> {
     pub(crate) position: Option<Vector3<f64>>,
     pub(crate) attached_mass: f64,
     /// Places in paths: visits of members.
-    uses: usize,
+    pub(crate) uses: usize,
     /// The only or first member that uses it.
-    user: &'a str,
+    pub(crate) user: &'a str,
     /// Whether one of the visits is an end of a member.
-    at_end: bool,
+    pub(crate) at_end: bool,
 }
 
 /// A cable as a path over node indices.
@@ -39,9 +39,17 @@ pub(crate) struct CableDraft<'a> {
     pub(crate) path: Vec<usize>,
     pub(crate) first_segment: usize,
     pub(crate) role: Option<usize>,
+    /// Places of each node on the path, found when they are first asked for.
+    visits: OnceCell<HashMap<usize, Vec<usize>>>,
 }
 
 impl CableDraft<'_> {
+    /// Places at which the path meets a node; the end of a closed path is its beginning.
+    pub(crate) fn visits(&self, node: usize) -> &[usize] {
+        let visits = self.visits.get_or_init(|| visits(&self.path));
+        visits.get(&node).map_or(&[], Vec::as_slice)
+    }
+
     pub(crate) fn n_segments(&self) -> usize {
         self.path.len().saturating_sub(1)
     }
@@ -74,6 +82,14 @@ pub(crate) struct NetDraft<'a> {
     /// Ends and member of each segment.
     pub(crate) segments: Vec<([usize; 2], MemberDraft)>,
     pub(crate) gravity: f64,
+    roles: Names<'a, usize>,
+}
+
+impl NodeDraft<'_> {
+    /// Whether the brief gives it a place, readable or not.
+    pub(crate) fn is_placed(&self) -> bool {
+        self.listed.is_some_and(|node| !node.xyz_m.is_empty())
+    }
 }
 
 impl<'a> NetDraft<'a> {
@@ -87,7 +103,11 @@ impl<'a> NetDraft<'a> {
             struts: Vec::with_capacity(message.struts.len()),
             segments: Vec::new(),
             gravity: STANDARD_GRAVITY,
+            roles: Names::new("roles"),
         };
+        for (index, role) in message.roles.iter().enumerate() {
+            net.roles.insert(&role.id, index);
+        }
         net.read_scalars(findings, resolved);
         net.declare(findings);
         net.read_nodes(findings);
@@ -108,8 +128,8 @@ impl<'a> NetDraft<'a> {
                 "list at least one cable in net.cables",
             );
         }
-        net.check_uses(findings);
-        net.check_places(findings);
+        places::check_uses(&net, findings);
+        places::check_places(&net, findings);
         net.tell_undeclared(resolved);
         net
     }
@@ -290,6 +310,7 @@ impl<'a> NetDraft<'a> {
             path,
             first_segment,
             role,
+            visits: OnceCell::new(),
         });
     }
 
@@ -333,179 +354,18 @@ impl<'a> NetDraft<'a> {
         }
         match self.names.get(id) {
             Some(Thing::Role(role)) => Some(role),
-            _ => {
-                let mut roles = Names::new("roles");
-                for (index, role) in self.message.roles.iter().enumerate() {
-                    roles.insert(role.id.as_str(), index);
-                }
-                roles.find(findings, at, "role", id)
-            }
+            _ => self.roles.find(findings, at, "role", id),
         }
     }
 
-    /// Listed and named nodes that something is odd about.
-    fn check_uses(&self, findings: &mut Findings) {
-        let list = Path::root("net.nodes");
-        let mut forms = std::collections::HashMap::new();
-        for node in &self.nodes {
-            *forms.entry(look_alike(node.id)).or_insert(0_usize) += 1;
-        }
-        for (index, node) in self.nodes.iter().enumerate() {
-            let at = list.element(node.id, index);
-            let supported = node.listed.is_some_and(|n| n.support.is_some());
-            let name = Quoted(node.id);
-            match node.uses {
-                0 if supported => {
-                    findings.doubt(
-                        reasons::NODE_UNUSED,
-                        &at,
-                        node.id,
-                        format!("node {name} is supported, and no member leads to it"),
-                        "name it in the path of a member, or take it out",
-                    );
-                }
-                0 => {
-                    findings.error(
-                        reasons::NODE_NOT_CONNECTED,
-                        &at,
-                        node.id,
-                        format!("node {name} is free, and no member leads to it: nothing holds it"),
-                        "name it in the path of a member, or take it out",
-                    );
-                }
-                1 if node.at_end && node.position.is_none() && !supported => self.used_once(node, &at, findings),
-                1 if node.listed.is_none() && forms[&look_alike(node.id)] > 1 => {
-                    let others = self.nodes.iter().map(|n| n.id);
-                    if let Some(other) = nearest(node.id, others) {
-                        findings.doubt(
-                            reasons::NODE_LOOKS_LIKE,
-                            &self.place_in_path(node, &mut String::new()),
-                            node.id,
-                            format!(
-                                "node {name} is used once, by {}, and looks like node {}",
-                                Quoted(node.user),
-                                Quoted(other)
-                            ),
-                            "write one of the names everywhere, or accept this doubt",
-                        );
-                    }
-                }
-                _ => {}
-            }
-        }
-    }
-
-    fn place_in_path<'p>(&self, node: &NodeDraft<'_>, text: &'p mut String) -> Path<'p> {
+    /// Place of the first path that names a node.
+    pub(crate) fn place_in_path<'p>(&self, node: &NodeDraft<'_>, text: &'p mut String) -> Path<'p> {
         let user = node.user;
         *text = match self.names.get(user) {
             Some(Thing::Cable(_)) => format!("net.cables[{user}].nodes"),
             _ => format!("net.struts[{user}].nodes"),
         };
         Path::root(text)
-    }
-
-    fn used_once(&self, node: &NodeDraft<'_>, listed_at: &Path<'_>, findings: &mut Findings) {
-        let cable = matches!(self.names.get(node.user), Some(Thing::Cable(_)));
-        let (kind, rope) = if cable { ("cable", "rope") } else { ("strut", "bar") };
-        let meant = nearest(node.id, self.nodes.iter().map(|n| n.id));
-        let question = meant.map_or(String::new(), |meant| format!(" Did you mean {}?", Quoted(meant)));
-        let message = format!(
-            "node {} is used once, by {kind} {}, and has no coordinates: it would hang on one {rope}.{question}",
-            Quoted(node.id),
-            Quoted(node.user),
-        );
-        let cure = meant.map_or_else(
-            || "lead another member to it, or list it in net.nodes with xyz_m".to_owned(),
-            |meant| {
-                format!(
-                    "write {} in the path, or list the node in net.nodes with xyz_m",
-                    Quoted(meant)
-                )
-            },
-        );
-        let mut text = String::new();
-        let at = if node.listed.is_some() {
-            *listed_at
-        } else {
-            self.place_in_path(node, &mut text)
-        };
-        findings
-            .error(reasons::NODE_USED_ONCE, &at, node.id, message, cure)
-            .value(node.id);
-    }
-
-    fn check_places(&self, findings: &mut Findings) {
-        let far: Vec<usize> = (0..self.nodes.len())
-            .filter(|i| self.nodes[*i].position.is_some_and(|p| p.amax() > FARTHEST))
-            .collect();
-        let placed = self.nodes.iter().filter(|n| n.position.is_some()).count();
-        if far.len() > 1 && far.len() == placed {
-            let positions = || far.iter().filter_map(|i| self.nodes[*i].position);
-            let mean: Vector3<f64> = positions().sum::<Vector3<f64>>() / placed as f64;
-            let shift = mean.map(|c| {
-                if c.abs() > FARTHEST {
-                    (c / 100.0).round() * 100.0
-                } else {
-                    0.0
-                }
-            });
-            findings
-                .error(
-                    reasons::FAR_FROM_ORIGIN,
-                    &Path::root("net.nodes"),
-                    "",
-                    format!(
-                        "all nodes lie about {} km from the origin: that many digits are lost to their movements",
-                        rounded(mean.norm() / 1e3, 4)
-                    ),
-                    format!(
-                        "subtract ({}, {}, {}) from all coordinates and give it as net.origin_m; coordinates may reach 10 km",
-                        shift.x, shift.y, shift.z
-                    ),
-                )
-                .value(rounded(mean.norm(), 6));
-        } else {
-            let list = Path::root("net.nodes");
-            for index in far {
-                let node = &self.nodes[index];
-                let away = node.position.map_or(0.0, |p| p.amax());
-                findings
-                    .error(
-                        reasons::FAR_FROM_ORIGIN,
-                        &list.element(node.id, index).field("xyz_m"),
-                        node.id,
-                        format!("node {} lies {} from the origin", Quoted(node.id), length(away)),
-                        "mend the coordinate, or count all coordinates from a point nearby and give it as net.origin_m; \
-                         they may reach 10 km",
-                    )
-                    .value(away);
-            }
-        }
-        let cables = Path::root("net.cables");
-        let struts = Path::root("net.struts");
-        for ([a, b], member) in &self.segments {
-            let (Some(first), Some(second)) = (self.nodes[*a].position, self.nodes[*b].position) else {
-                continue;
-            };
-            if a == b || (second - first).norm() >= SAME_PLACE {
-                continue;
-            }
-            let (list, id, index) = match member {
-                MemberDraft::Cable(index) => (&cables, &self.cables[*index].message.id, *index),
-                MemberDraft::Strut(index) => (&struts, &self.struts[*index].message.id, *index),
-            };
-            findings.error(
-                reasons::NO_LENGTH,
-                &list.element(id, index).field("nodes"),
-                id,
-                format!(
-                    "{} has no length between {}: they lie in the same place",
-                    Quoted(id),
-                    quoted_list([self.nodes[*a].id, self.nodes[*b].id])
-                ),
-                "mend the coordinates of one of the two nodes, or name only one of them",
-            );
-        }
     }
 
     fn tell_undeclared(&self, resolved: &mut Resolved) {

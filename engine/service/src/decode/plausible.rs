@@ -6,7 +6,7 @@ use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::shape::{Prestress, PrestressRule};
 
 use super::findings::{Findings, Path};
-use super::net::{MemberDraft, NetDraft};
+use super::net::NetDraft;
 use super::reasons;
 use super::sections::Sections;
 use crate::words::{Quoted, force, length, number, rounded};
@@ -118,6 +118,7 @@ pub(crate) fn extent(net: &NetDraft<'_>, findings: &mut Findings) {
 
 /// Doubts about prestress against stiffness and breaking force: the worst segment of each section.
 pub(crate) fn prestress(net: &NetDraft<'_>, sections: &Sections<'_>, prestress: &Prestress, findings: &mut Findings) {
+    let lengths = mean_lengths(net);
     let n_sections = sections.list.len();
     let mut strained: Vec<Option<(f64, f64, usize)>> = vec![None; n_sections];
     let mut broken: Vec<Option<(f64, f64, usize)>> = vec![None; n_sections];
@@ -125,17 +126,17 @@ pub(crate) fn prestress(net: &NetDraft<'_>, sections: &Sections<'_>, prestress: 
         let (Some((index, _)), Some(section)) = (sections.of_segment[segment], sections.section(segment)) else {
             continue;
         };
-        let Some(tension) = wanted_tension(net, prestress, segment, rule, section.axial_stiffness) else {
+        let Some(tension) = wanted_tension(prestress, lengths[segment], rule, section.axial_stiffness) else {
             continue;
         };
         let strain = tension.abs() / section.axial_stiffness;
         if strain > strained[index].map_or(LARGEST_STRAIN, |worst| worst.0) {
             strained[index] = Some((strain, tension, segment));
         }
-        if let Some(breaking) = section.breaking_force.filter(|breaking| tension > *breaking) {
-            if tension / breaking > broken[index].map_or(1.0, |worst| worst.0) {
-                broken[index] = Some((tension / breaking, tension, segment));
-            }
+        if let Some(breaking) = section.breaking_force.filter(|breaking| tension > *breaking)
+            && tension / breaking > broken[index].map_or(1.0, |worst| worst.0)
+        {
+            broken[index] = Some((tension / breaking, tension, segment));
         }
     }
     let list = Path::root("net.sections");
@@ -187,38 +188,38 @@ pub(crate) fn prestress(net: &NetDraft<'_>, sections: &Sections<'_>, prestress: 
 /// The tension that a rule asks for (N), as far as it is known before the shape is: for a force density at least that of
 /// the mean segment of the straight line between known nodes.
 fn wanted_tension(
-    net: &NetDraft<'_>,
     prestress: &Prestress,
-    segment: usize,
+    length: Option<f64>,
     rule: &PrestressRule,
     axial_stiffness: f64,
 ) -> Option<f64> {
     match rule {
         PrestressRule::Tension(tension) => Some(*tension),
         PrestressRule::MeanTension(family) => prestress.mean_tensions.get(*family).copied(),
-        PrestressRule::ForceDensity(density) => Some(density * mean_length(net, segment)?),
+        PrestressRule::ForceDensity(density) => Some(density * length?),
         PrestressRule::UnstressedLength(unstressed) => {
-            let strain = net.given_length(segment)? / unstressed - 1.0;
+            let strain = length? / unstressed - 1.0;
             Some(axial_stiffness * strain.max(0.0))
         }
         PrestressRule::Balance => None,
     }
 }
 
-fn mean_length(net: &NetDraft<'_>, segment: usize) -> Option<f64> {
-    if let Some(length) = net.given_length(segment) {
-        return Some(length);
+/// Length of every segment: as given, or else the mean between the known nodes on both sides of it (m).
+fn mean_lengths(net: &NetDraft<'_>) -> Vec<Option<f64>> {
+    let mut lengths: Vec<Option<f64>> = (0..net.segments.len())
+        .map(|segment| net.given_length(segment))
+        .collect();
+    for cable in &net.cables {
+        let known = (0..cable.path.len()).filter_map(|place| Some((place, net.nodes[cable.path[place]].position?)));
+        let known: Vec<_> = known.collect();
+        for pair in known.windows(2) {
+            let [(before, from), (after, to)] = [pair[0], pair[1]];
+            let mean = (to - from).norm() / (after - before) as f64;
+            lengths[cable.first_segment + before..cable.first_segment + after].fill(Some(mean));
+        }
     }
-    let MemberDraft::Cable(cable) = net.segments[segment].1 else {
-        return None;
-    };
-    let draft = &net.cables[cable];
-    let here = segment - draft.first_segment;
-    let place = |position: &usize| net.nodes[draft.path[*position]].position;
-    let before = (0..=here).rev().find(|position| place(position).is_some())?;
-    let after = (here + 1..draft.path.len()).find(|position| place(position).is_some())?;
-    let chord = (place(&after)? - place(&before)?).norm();
-    Some(chord / (after - before) as f64)
+    lengths
 }
 
 /// Notes about data that no served part uses.

@@ -9,14 +9,13 @@ use super::actions::Actions;
 use super::findings::{Findings, Path};
 use super::names::Thing;
 use super::net::{MemberDraft, NetDraft};
-use super::numbers::{FORCE_DENSITY, MEAN_TENSION, Of, Quantity, SHARE_OF_BREAKING, TENSION, UNSTRESSED_LENGTH};
 use super::reasons;
 use super::resolved::Resolved;
 use super::scope::{MEMBERS, Narrowness, Scopes, tell_repeated};
 use super::sections::Sections;
-use super::stretch::{Stretch, stretch};
 use super::supports::Supports;
-use crate::words::{Quoted, number, quoted_list};
+use super::wish::{check_wish, in_words, read_part};
+use crate::words::{Quoted, quoted_list};
 
 /// A rule that covers a segment, and the family of segments that shares a mean tension under it.
 #[derive(Clone, Copy, Debug)]
@@ -113,7 +112,7 @@ fn read_hold(prestress: &v1::Prestress, context: &Context<'_, '_>, findings: &mu
             Some(Thing::Node(node)) => {
                 let why = if context.supports.of_node[node].is_some() {
                     "it is supported"
-                } else if context.net.nodes[node].position.is_none() {
+                } else if !context.net.nodes[node].is_placed() {
                     "it has no coordinates"
                 } else {
                     hold.push(node);
@@ -404,7 +403,7 @@ impl<'m> Rules<'m> {
             .net
             .nodes
             .iter()
-            .filter(|n| n.position.is_none())
+            .filter(|n| !n.is_placed())
             .map(|n| n.id)
             .collect();
         if !missing.is_empty() {
@@ -480,128 +479,4 @@ impl<'m> Rules<'m> {
 
 fn net_id<'a>(context: &Context<'_, 'a>, segment: usize) -> &'a str {
     context.net.member_id(context.net.segments[segment].1)
-}
-
-fn read_part(part: &v1::PartOfCable, net: &NetDraft<'_>, at: &Path<'_>, findings: &mut Findings) -> Option<Vec<usize>> {
-    let field = at.field("cable");
-    let cable = match net.names.find(findings, &field, "cable", &part.cable)? {
-        Thing::Cable(cable) => cable,
-        other => {
-            findings.error(
-                reasons::WRONG_KIND,
-                &field,
-                &part.cable,
-                format!(
-                    "{} is a {}, and only cables have parts",
-                    Quoted(&part.cable),
-                    other.kind()
-                ),
-                "name a cable",
-            );
-            return None;
-        }
-    };
-    let wanted = Stretch {
-        from: &part.from,
-        to: &part.to,
-        from_visit: part.from_visit,
-        to_visit: part.to_visit,
-    };
-    let positions = stretch(net, cable, &wanted, at, findings)?;
-    let first = net.cables[cable].first_segment;
-    Some(positions.into_iter().map(|position| first + position).collect())
-}
-
-/// Checks the number of a wish, and that it is one that its members can meet.
-fn check_wish(
-    rule: &v1::PrestressRule,
-    covered: &[(Vec<usize>, Narrowness)],
-    at: &Path<'_>,
-    net: &NetDraft<'_>,
-    findings: &mut Findings,
-) {
-    let of = Of::new("prestress rule", "");
-    let covered = || {
-        covered
-            .iter()
-            .flat_map(|(segments, _)| segments)
-            .map(|segment| net.segments[*segment].1)
-    };
-    let (field, quantity, value): (&'static str, &Quantity, f64) = match rule.rule {
-        Some(Rule::ForceDensityNPerM(value)) => ("force_density_n_per_m", &FORCE_DENSITY, value),
-        Some(Rule::TensionN(value)) => ("tension_n", &TENSION, value),
-        Some(Rule::MeanTensionN(value)) => ("mean_tension_n", &MEAN_TENSION, value),
-        Some(Rule::UnstressedLengthM(value)) => ("unstressed_length_m", &UNSTRESSED_LENGTH, value),
-        Some(Rule::ShareOfBreaking(value)) => ("share_of_breaking", &SHARE_OF_BREAKING, value),
-        Some(Rule::Balance(_)) => return,
-        None => {
-            findings.error(
-                reasons::MISSING,
-                at,
-                "",
-                "this prestress rule says nothing about its members",
-                "give one of force_density_n_per_m, tension_n, mean_tension_n, unstressed_length_m, share_of_breaking, \
-                 balance {}",
-            );
-            return;
-        }
-    };
-    let field_at = at.field(field);
-    if findings.number(&field_at, of, quantity, value).is_none() {
-        return;
-    }
-    let signed = matches!(rule.rule, Some(Rule::ForceDensityNPerM(_) | Rule::TensionN(_)));
-    if signed && value == 0.0 {
-        findings
-            .error(
-                reasons::NOT_POSITIVE,
-                &field_at,
-                "",
-                "this prestress rule asks for no force at all: such a member holds nothing",
-                "give a tension, or the unstressed length of a rope that hangs slack",
-            )
-            .value(number(value));
-    }
-    if signed && value < 0.0 {
-        if let Some(MemberDraft::Cable(cable)) = covered().find(|member| matches!(member, MemberDraft::Cable(_))) {
-            let id = &net.cables[cable].message.id;
-            findings
-                .error(
-                    reasons::CABLE_PUSHES,
-                    &field_at,
-                    id,
-                    format!(
-                        "cable {} is asked to push with {}: a rope only pulls",
-                        Quoted(id),
-                        number(value)
-                    ),
-                    "give a positive value; only struts may have a negative one",
-                )
-                .value(number(value));
-        }
-    }
-    if let Some(Rule::MeanTensionN(_)) = rule.rule {
-        if let Some(MemberDraft::Strut(strut)) = covered().find(|member| matches!(member, MemberDraft::Strut(_))) {
-            let id = &net.struts[strut].message.id;
-            findings.error(
-                reasons::WRONG_KIND,
-                &field_at,
-                id,
-                format!("strut {} has one segment, and no mean over several", Quoted(id)),
-                "give tension_n for struts",
-            );
-        }
-    }
-}
-
-fn in_words(rule: &v1::PrestressRule) -> String {
-    match rule.rule {
-        Some(Rule::ForceDensityNPerM(value)) => format!("force density {} N/m", number(value)),
-        Some(Rule::TensionN(value)) => format!("tension {} N in every segment", number(value)),
-        Some(Rule::MeanTensionN(value)) => format!("mean tension {} N", number(value)),
-        Some(Rule::UnstressedLengthM(value)) => format!("unstressed length {} m of each reach", number(value)),
-        Some(Rule::ShareOfBreaking(value)) => format!("tension of {} of the breaking force", number(value)),
-        Some(Rule::Balance(_)) => "balance".to_owned(),
-        None => "nothing".to_owned(),
-    }
 }

@@ -1,6 +1,6 @@
 //! What a list called `on` covers.
 
-use std::collections::HashSet;
+use std::collections::{HashMap, HashSet};
 
 use ropewalk_api::ropewalk::v1;
 
@@ -169,7 +169,7 @@ impl Scopes {
             covered: Vec::new(),
             complete: true,
         };
-        let mut seen: HashSet<Thing> = HashSet::new();
+        let mut seen: HashMap<Thing, usize> = HashMap::new();
         for (number, id) in on.iter().enumerate() {
             let at = field.number(number);
             let Some(thing) = net.names.find(findings, &at, "part of the net", id) else {
@@ -223,7 +223,7 @@ impl Scopes {
         net: &NetDraft<'_>,
         thing: Thing,
         allowed: Allowed,
-        seen: &mut HashSet<Thing>,
+        seen: &mut HashMap<Thing, usize>,
         scope: &mut Scope,
     ) -> Option<Thing> {
         let narrowness = match thing {
@@ -257,10 +257,17 @@ impl Scopes {
             };
             if !fits {
                 wrong = wrong.or(Some(thing));
-            } else if seen.insert(thing) {
-                scope.covered.push(Covered { thing, narrowness });
-            } else if let Some(covered) = scope.covered.iter_mut().find(|covered| covered.thing == thing) {
-                covered.narrowness = covered.narrowness.max(narrowness);
+                continue;
+            }
+            match seen.get(&thing) {
+                Some(place) => {
+                    let known = &mut scope.covered[*place].narrowness;
+                    *known = narrowness.max(*known);
+                }
+                None => {
+                    seen.insert(thing, scope.covered.len());
+                    scope.covered.push(Covered { thing, narrowness });
+                }
             }
         }
         wrong

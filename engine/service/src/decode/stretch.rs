@@ -1,6 +1,9 @@
 //! Stretches of a cable between two of its nodes, in path order; on a closed ring they may wrap.
 
+use std::collections::HashMap;
+
 use super::findings::{Findings, Path};
+use super::names::Thing;
 use super::net::NetDraft;
 use super::reasons;
 use crate::words::Quoted;
@@ -28,7 +31,10 @@ pub(crate) fn stretch(
         return None;
     }
     let on_path = |node: &str, field: &'static str, findings: &mut Findings| {
-        let visits = visits(&draft.message.nodes, node);
+        let visits = match net.names.get(node) {
+            Some(Thing::Node(index)) => draft.visits(index),
+            _ => &[],
+        };
         if visits.is_empty() {
             let what = if node.is_empty() {
                 "no node".to_owned()
@@ -55,7 +61,7 @@ pub(crate) fn stretch(
     if from_visits.is_empty() || to_visits.is_empty() {
         return None;
     }
-    match positions(&draft.message.nodes, wanted, &from_visits, &to_visits) {
+    match positions(&draft.path, wanted, from_visits, to_visits) {
         Some(positions) => Some(positions),
         None => {
             findings.error(
@@ -75,17 +81,21 @@ pub(crate) fn stretch(
     }
 }
 
-fn is_closed(path: &[String]) -> bool {
+fn is_closed(path: &[usize]) -> bool {
     path.len() > 2 && path.first() == path.last()
 }
 
-/// Positions at which a path meets a node; the end of a closed path is its beginning.
-fn visits(path: &[String], node: &str) -> Vec<usize> {
+/// Positions at which a path meets each of its nodes; the end of a closed path is its beginning.
+pub(crate) fn visits(path: &[usize]) -> HashMap<usize, Vec<usize>> {
     let places = if is_closed(path) { path.len() - 1 } else { path.len() };
-    (0..places).filter(|place| path[*place] == node).collect()
+    let mut visits: HashMap<usize, Vec<usize>> = HashMap::new();
+    for (place, node) in path[..places].iter().enumerate() {
+        visits.entry(*node).or_default().push(place);
+    }
+    visits
 }
 
-fn positions(path: &[String], wanted: &Stretch<'_>, from: &[usize], to: &[usize]) -> Option<Vec<usize>> {
+fn positions(path: &[usize], wanted: &Stretch<'_>, from: &[usize], to: &[usize]) -> Option<Vec<usize>> {
     let visit = |visits: &[usize], number: u32| -> Option<usize> {
         visits.get(usize::try_from(number).ok()?.checked_sub(1)?).copied()
     };
@@ -114,14 +124,16 @@ mod tests {
 
     #[track_caller]
     fn check(path: &str, from: (&str, Option<u32>), to: (&str, Option<u32>), expected: Option<&[usize]>) {
-        let path: Vec<String> = path.split(' ').map(str::to_owned).collect();
+        let number = |name: &str| usize::from(name.as_bytes()[0]);
+        let path: Vec<usize> = path.split(' ').map(number).collect();
         let wanted = Stretch {
             from: from.0,
             to: to.0,
             from_visit: from.1,
             to_visit: to.1,
         };
-        let found = positions(&path, &wanted, &visits(&path, from.0), &visits(&path, to.0));
+        let visits = visits(&path);
+        let found = positions(&path, &wanted, &visits[&number(from.0)], &visits[&number(to.0)]);
         assert_eq!(found.as_deref(), expected);
     }
 

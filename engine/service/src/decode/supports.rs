@@ -1,5 +1,7 @@
 //! Supports: rigid directions, springs, and groups of nodes held by a stiffness matrix.
 
+use std::collections::BTreeMap;
+
 use nalgebra::{DMatrix, Matrix3, Vector3};
 use ropewalk_numerics::model::{ElasticSupportGiven, NodeId};
 
@@ -236,17 +238,17 @@ impl Supports {
                 held[root(&mut part, index)] = true;
             }
         }
-        let mut told = vec![false; net.nodes.len()];
-        for (ends, member) in &net.segments {
-            let of = root(&mut part, ends[0]);
-            if held[of] || told[of] {
-                continue;
+        let mut nodes_of: BTreeMap<usize, Vec<&str>> = BTreeMap::new();
+        for (index, node) in net.nodes.iter().enumerate() {
+            let of = root(&mut part, index);
+            if !held[of] {
+                nodes_of.entry(of).or_default().push(node.id);
             }
-            told[of] = true;
-            let nodes: Vec<&str> = (0..net.nodes.len())
-                .filter(|node| root(&mut part, *node) == of)
-                .map(|node| net.nodes[node].id)
-                .collect();
+        }
+        for (ends, member) in &net.segments {
+            let Some(nodes) = nodes_of.remove(&root(&mut part, ends[0])) else {
+                continue;
+            };
             findings.error(
                 reasons::PART_NOT_HELD,
                 &Path::root("net.nodes"),

@@ -72,6 +72,10 @@ impl Work {
     ///
     /// # Errors
     /// A finding for the first name that is neither a set nor a case.
+    #[allow(
+        clippy::result_large_err,
+        reason = "the finding goes straight into the refusal, once a call"
+    )]
     pub fn select(&self, only: &[String]) -> Result<Vec<usize>, v1::Finding> {
         let cases = &self.brief.cases;
         if only.is_empty() {

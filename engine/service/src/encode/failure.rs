@@ -3,6 +3,7 @@
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::{Cause, LikelyCause};
 use ropewalk_numerics::equilibrium::{SolveError, Termination};
+use ropewalk_numerics::model::Net;
 use ropewalk_numerics::shape::ShapeError;
 
 use super::parts::first_ids;
@@ -95,7 +96,7 @@ pub(super) fn of_engine(case: &str) -> v1::Failure {
 }
 
 /// Why there is no reference state.
-pub(super) fn of_shape(error: &ShapeError) -> (v1::CaseOutcome, v1::Failure) {
+pub(super) fn of_shape(net: &Net, error: &ShapeError) -> (v1::CaseOutcome, v1::Failure) {
     let none: Vec<String> = Vec::new();
     let one = |id: &String| vec![id.clone()];
     let (reason, cure, nodes, members) = match error {
@@ -182,6 +183,11 @@ pub(super) fn of_shape(error: &ShapeError) -> (v1::CaseOutcome, v1::Failure) {
             one(node),
             none,
         ),
+        ShapeError::BeyondReckoning { part, .. } => {
+            let is_node = net.nodes().iter().any(|node| node.name == *part);
+            let (nodes, members) = if is_node { (one(part), none) } else { (none, one(part)) };
+            ("BEYOND_RECKONING", "check the units of the part", nodes, members)
+        }
         ShapeError::Elastic { nodes, .. } => (
             "NO_EQUILIBRIUM",
             "check the unstressed lengths and what holds these nodes",

@@ -1,5 +1,7 @@
 //! The brief with found coordinates and unstressed lengths written in, in parts that merge.
 
+use std::collections::HashMap;
+
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::{Plan, ReferenceOutcome};
 use ropewalk_numerics::model::{Net, NodeId};
@@ -98,13 +100,14 @@ fn rules(net: &Net, lengths: &[f64]) -> Vec<v1::PrestressRule> {
             });
             continue;
         }
+        let visits = visits(&cable.path);
         for (position, length) in of_cable.iter().enumerate() {
             let [from, to] = [cable.path[position], cable.path[position + 1]];
             let part = v1::PartOfCable {
                 cable: cable.name.clone(),
                 from: net.node_name(from).to_owned(),
                 to: net.node_name(to).to_owned(),
-                from_visit: visit(&cable.path, position),
+                from_visit: visits[position],
                 // The default, the first visit after `from`, is the next node of the path.
                 to_visit: None,
                 note: String::new(),
@@ -124,10 +127,16 @@ fn rules(net: &Net, lengths: &[f64]) -> Vec<v1::PrestressRule> {
     rules
 }
 
-/// Which visit of its node a position of a path is; `None` for the first, the default.
-fn visit(path: &[NodeId], position: usize) -> Option<u32> {
-    let before = path[..position].iter().filter(|node| **node == path[position]).count();
-    (before > 0).then(|| super::parts::count(before + 1))
+/// Which visit of its node each position of a path is; `None` for the first, the default.
+fn visits(path: &[NodeId]) -> Vec<Option<u32>> {
+    let mut so_far: HashMap<NodeId, u32> = HashMap::new();
+    path.iter()
+        .map(|node| {
+            let visit = so_far.entry(*node).or_default();
+            *visit += 1;
+            (*visit > 1).then_some(*visit)
+        })
+        .collect()
 }
 
 /// Cuts a brief into parts that give it back when they are merged, in order, as protobuf merges messages: single values

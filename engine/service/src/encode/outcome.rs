@@ -43,7 +43,7 @@ pub(super) fn reference_findings(
 ) -> Vec<v1::Finding> {
     match found {
         Ok(reference) => doubts::of_state(work, &plan.brief().net, REFERENCE, &reference.result),
-        Err(error) => vec![no_answer(REFERENCE, &failure::of_shape(error).1)],
+        Err(error) => vec![no_answer(REFERENCE, &failure::of_shape(&plan.brief().net, error).1)],
     }
 }
 
@@ -60,7 +60,7 @@ pub(super) fn reference_summary(plan: &Plan, found: &Result<ReferenceOutcome, Sh
             summary
         }
         Err(error) => {
-            let (outcome, failure) = failure::of_shape(error);
+            let (outcome, failure) = failure::of_shape(&plan.brief().net, error);
             v1::CaseSummary {
                 case: REFERENCE.to_owned(),
                 outcome: outcome.into(),

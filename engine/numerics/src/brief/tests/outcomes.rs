@@ -180,8 +180,13 @@ fn a_stop_names_nodes_ropes_and_what_to_change() {
     assert!(cause.worst[0].imbalance > 0.0);
     assert_eq!(cause.members, ["carrying", "bracing"]);
     assert_eq!(cause.last_good_load_factor, 0.0);
+    assert_eq!(cause.likely, LikelyCause::OutOfIterations);
     let text = cause.to_string();
-    assert!(text.contains("Worst at \"m\": 9."), "{text}");
+    let worst = format!("Worst at \"m\": {:.3} kN", cause.worst[0].imbalance / 1e3);
+    assert!(
+        text.contains("put the load on in steps") && text.contains(&worst),
+        "{text}"
+    );
 }
 
 /// A mast head between four stays; a case heats the two across until they are slack, and the head can fall over.

@@ -236,6 +236,27 @@ fn an_observer_may_stop_the_search() {
     assert_eq!(outcome.expect_err("stopped"), ShapeError::Cancelled);
 }
 
+/// Lengths of very stiff ropes hold few digits of their force: the shape is corrected, or the stiffness refused.
+#[test]
+fn stiffness_beyond_reckoning() {
+    let shaped = |stiffness| {
+        let mut sketch = rope();
+        sketch.given.cables[0].sections = vec![section(stiffness, 0.0); 2];
+        let net = Arc::new(sketch.net());
+        let load = down(node(&net, "m"), 500.0);
+        shape(&net, &all(&net, PrestressRule::ForceDensity(1000.0)), vec![load])
+    };
+    let stiff = shaped(1e13).expect("a shape").report;
+    assert!(
+        stiff.polished && stiff.imbalance <= 1e-8 * stiff.largest_force,
+        "{stiff:?}"
+    );
+    for stiffness in [1e18, 1e300] {
+        let text = message(shaped(stiffness));
+        assert!(text.contains("axial stiffness of \"rope\""), "{text}");
+    }
+}
+
 #[test]
 fn numbers_beyond_all_bounds_are_told() {
     let net = Arc::new(rope().net());

@@ -3,6 +3,8 @@
 mod bad_input;
 mod closed_form;
 mod courtyard;
+mod grids;
+mod properties;
 mod published;
 mod sensitivity;
 mod tent;

@@ -1,0 +1,211 @@
+//! Time of a full Newton solve of a large net, printed as one line of JSON for each size.
+//!
+//! ```text
+//! cargo bench -p ropewalk-numerics --bench newton -- 32 100        sizes n: n × n free nodes
+//! ```
+//! The net: a square of 60 m, rim on the saddle z = 6 (x² − y²) / 30², shape of equal force densities, ropes of
+//! 20 MN a metre of width prestressed with 25 kN a metre, snow of 0.9 kN/m² on one half and half of that on the other,
+//! in four equal steps, each to a residual of 1e−8 of the largest nodal load. One thread. Forces here are in N.
+#![allow(clippy::print_stdout, reason = "printing is what it is for")]
+
+use std::ops::ControlFlow;
+use std::sync::Arc;
+use std::time::Instant;
+
+use nalgebra::{Matrix3, Vector3};
+use ropewalk_numerics::assembly::{Loading, Response, Structure};
+use ropewalk_numerics::equilibrium::{Analysis, LoadSteps, Settings, Termination, Yardstick, solve};
+use ropewalk_numerics::load::{Case, SegmentLoads};
+use ropewalk_numerics::model::{CableGiven, Net, NetGiven, NodeGiven, NodeId, Section, SupportGiven};
+
+const SPAN: f64 = 60.0;
+const SAG: f64 = 6.0;
+const STIFFNESS: f64 = 20.0e6;
+const PRESTRESS: f64 = 25.0e3;
+const SNOW: f64 = 900.0;
+const REPEATS: usize = 5;
+
+/// The net on its rim, free nodes not yet in place, with corners left out.
+fn rim_net(n: usize) -> NetGiven {
+    let m = n + 2;
+    let h = SPAN / (n + 1) as f64;
+    let mut number = vec![usize::MAX; m * m];
+    let mut given = NetGiven::default();
+    let edge = |k: usize| k == 0 || k == m - 1;
+    for i in 0..m {
+        for j in (0..m).filter(|j| !(edge(i) && edge(*j))) {
+            number[i * m + j] = given.nodes.len();
+            let (x, y) = (i as f64 * h - SPAN / 2.0, j as f64 * h - SPAN / 2.0);
+            let z = SAG * (x * x - y * y) / (SPAN * SPAN / 4.0);
+            given.nodes.push(NodeGiven {
+                name: format!("n{i}-{j}"),
+                position: Some(Vector3::new(x, y, z)),
+                support: (edge(i) || edge(j)).then(SupportGiven::default),
+                attached_mass: 0.0,
+            });
+        }
+    }
+    let section = Section {
+        axial_stiffness: STIFFNESS * h,
+        mass_per_length: 0.0,
+        expansion: 0.0,
+        breaking_force: None,
+    };
+    let mut rope = |name: String, path: Vec<NodeId>| {
+        given.cables.push(CableGiven {
+            name,
+            sections: vec![section; path.len() - 1],
+            path,
+        });
+    };
+    for k in 1..m - 1 {
+        rope(
+            format!("x{k}"),
+            (0..m).map(|i| NodeId::new(number[i * m + k])).collect(),
+        );
+        rope(
+            format!("y{k}"),
+            (0..m).map(|j| NodeId::new(number[k * m + j])).collect(),
+        );
+    }
+    given
+}
+
+/// Positions in balance with one force density everywhere: one linear system for three directions at once.
+fn shape(analysis: &Analysis) -> Vec<Vector3<f64>> {
+    let structure = analysis.structure();
+    let net = structure.net();
+    let blocks = vec![Matrix3::from_diagonal_element(PRESTRESS); net.segments().len()];
+    let mut values = vec![0.0; structure.pattern().n_entries()];
+    structure.tangent_into(&blocks, &mut values);
+    let mut positions: Vec<Vector3<f64>> = net.nodes().iter().map(|n| n.position.expect("given")).collect();
+    let mut forces = vec![Vector3::zeros(); positions.len()];
+    for segment in net.segments() {
+        let [a, b] = segment.ends.map(NodeId::index);
+        let pull = (positions[b] - positions[a]) * PRESTRESS;
+        forces[a] += pull;
+        forces[b] -= pull;
+    }
+    let mut step = vec![0.0; structure.n_dofs()];
+    structure.dofs().components_into(&forces, &mut step);
+    let mut factor = analysis.new_factor();
+    factor.cholesky(&values).expect("a held net");
+    factor.solve_in_place(&mut step);
+    structure.dofs().move_nodes(&step, 1.0, &mut positions);
+    positions
+}
+
+fn case(net: &Net, positions: &[Vector3<f64>], n: usize) -> Case {
+    let h = SPAN / (n + 1) as f64;
+    let length = |ends: [NodeId; 2]| (positions[ends[1].index()] - positions[ends[0].index()]).norm();
+    let unstressed = net.segments().iter().map(|s| {
+        let l = length(s.ends);
+        l / (1.0 + PRESTRESS * l / s.section.axial_stiffness)
+    });
+    let load = |(node, x): (usize, &Vector3<f64>)| {
+        let share = if x.x >= 0.0 { 1.0 } else { 0.5 };
+        let is_free = net.support_of(NodeId::new(node)).is_none();
+        Vector3::new(0.0, 0.0, if is_free { -SNOW * h * h * share } else { 0.0 })
+    };
+    Case {
+        nodal_forces: positions.iter().enumerate().map(load).collect(),
+        unstressed_lengths: unstressed.collect(),
+        segments: vec![SegmentLoads::default(); net.segments().len()],
+        support_movements: vec![Vector3::zeros(); positions.len()],
+        removed: vec![false; net.segments().len()],
+    }
+}
+
+fn median(mut times: Vec<f64>) -> f64 {
+    times.sort_by(f64::total_cmp);
+    times[times.len() / 2]
+}
+
+fn timed(mut work: impl FnMut()) -> f64 {
+    median(
+        (0..REPEATS)
+            .map(|_| {
+                let start = Instant::now();
+                work();
+                start.elapsed().as_secs_f64()
+            })
+            .collect(),
+    )
+}
+
+fn run(n: usize, load_steps: LoadSteps) {
+    let net = Arc::new(Net::new(rim_net(n)).expect("a valid net"));
+    let setup = timed(|| drop(Analysis::new(Arc::clone(&net))));
+    let analysis = Analysis::new(Arc::clone(&net));
+    let positions = shape(&analysis);
+    let case = case(&net, &positions, n);
+    let settings = Settings {
+        load_steps,
+        tolerance: 1e-8,
+        yardstick: Yardstick::Load,
+        ..Settings::default()
+    };
+    let mut watch = |_: &_| ControlFlow::Continue(());
+    let mut solved = || {
+        solve(
+            &analysis,
+            &case,
+            &positions,
+            &case.unstressed_lengths,
+            &settings,
+            &mut watch,
+        )
+    };
+    let wall = timed(|| drop(solved()));
+    let solution = solved().expect("a held net");
+    assert_eq!(solution.termination, Termination::Converged);
+
+    let structure = analysis.structure();
+    let loading = Loading::new(structure, &case, &case.unstressed_lengths, 1.0).expect("a fitting case");
+    let mut response = Response::new(structure);
+    let mut values = vec![0.0; structure.pattern().n_entries()];
+    let mut blocks = vec![Matrix3::zeros(); net.segments().len()];
+    let assembly = timed(|| assemble(structure, &loading, &positions, &mut response, &mut blocks, &mut values));
+    let mut factor = analysis.new_factor();
+    let factorise = timed(|| factor.cholesky(&values).expect("a held net"));
+    let mut step = response.residual.clone();
+    let solving = timed(|| factor.solve_in_place(&mut step));
+
+    let moved = |(x, start): (&Vector3<f64>, &Vector3<f64>)| (x - start).amax();
+    let largest = solution.positions.iter().zip(&positions).map(moved).fold(0.0, f64::max);
+    let slack = solution.axial_forces.iter().filter(|t| **t == 0.0).count();
+    let steps = solution.history.last().map_or(0, |r| r.load_step);
+    let iterations: Vec<usize> = (1..=steps)
+        .map(|s| solution.history.iter().filter(|r| r.load_step == s).count() - 1)
+        .collect();
+    println!(
+        "{{\"n\": {n}, \"dof\": {}, \"iterations\": {iterations:?}, \"factorisations\": {}, \"umax\": {largest:.17}, \
+         \"slack\": {slack}, \"seconds\": {{\"analysis\": {setup:.5}, \"one_assembly\": {assembly:.5}, \
+         \"one_factorisation\": {factorise:.5}, \"one_solve\": {solving:.5}, \"wall\": {wall:.5}}}}}",
+        structure.n_dofs(),
+        solution.factorisations,
+    );
+}
+
+fn assemble(
+    structure: &Structure,
+    loading: &Loading,
+    positions: &[Vector3<f64>],
+    response: &mut Response,
+    blocks: &mut [Matrix3<f64>],
+    values: &mut [f64],
+) {
+    structure.response_into(loading, positions, response);
+    for ((block, bar), chord) in blocks.iter_mut().zip(&loading.bars).zip(&response.chords) {
+        *block = bar.stiffness_block(chord);
+    }
+    structure.tangent_into(blocks, values);
+}
+
+fn main() {
+    let sizes: Vec<usize> = std::env::args().filter_map(|a| a.parse().ok()).collect();
+    for n in if sizes.is_empty() { vec![10, 32, 100] } else { sizes } {
+        run(n, LoadSteps::Equal(4));
+        run(n, LoadSteps::FullFirst);
+    }
+}

@@ -1,0 +1,77 @@
+//! Saddle nets of some size.
+
+use super::*;
+use crate::test_nets::{Sketch, section};
+
+/// A saddle of `n` free nodes a side over a square of 12 m, its rim held; cables along x, then along y.
+fn saddle(n: u32, mass: f64) -> Sketch {
+    let mut sketch = Sketch::default();
+    let name = |i: u32, j: u32| format!("{i},{j}");
+    let at = |k: u32| 12.0 * f64::from(k) / f64::from(n + 1);
+    for i in 0..=n + 1 {
+        for j in 0..=n + 1 {
+            let rim = |k| k == 0 || k == n + 1;
+            if rim(i) != rim(j) {
+                let (u, w) = (at(i) / 6.0 - 1.0, at(j) / 6.0 - 1.0);
+                sketch.held(&name(i, j), [at(i), at(j), 1.2 * (u * u - w * w)]);
+            }
+        }
+    }
+    for j in 1..=n {
+        let path: Vec<String> = (0..=n + 1).map(|i| name(i, j)).collect();
+        sketch.cable(&format!("x{j}"), section(4e6, mass), &path.join(" "));
+    }
+    for i in 1..=n {
+        let path: Vec<String> = (0..=n + 1).map(|j| name(i, j)).collect();
+        sketch.cable(&format!("y{i}"), section(4e6, mass), &path.join(" "));
+    }
+    sketch
+}
+
+/// Equal tension along each rope, another one across: nodes find the places where the directions cancel.
+#[test]
+fn a_net_of_constant_tensions() {
+    let net = Arc::new(saddle(6, 0.0).net());
+    let half = net.segments().len() / 2;
+    let wanted = |e: usize| if e < half { 10e3 } else { 12e3 };
+    let prestress = Prestress {
+        rules: (0..net.segments().len())
+            .map(|e| PrestressRule::Tension(wanted(e)))
+            .collect(),
+        ..all(&net, PrestressRule::Balance)
+    };
+    let found = shape(&net, &prestress, vec![]).expect("a shape");
+    let mut sums = vec![Vector3::zeros(); net.nodes().len()];
+    for (e, segment) in net.segments().iter().enumerate() {
+        close(found.state.axial_forces[e], wanted(e), 1e-10 * wanted(e));
+        let [i, j] = segment.ends.map(NodeId::index);
+        let n = (found.state.positions[j] - found.state.positions[i]).normalize();
+        sums[i] += n * wanted(e);
+        sums[j] -= n * wanted(e);
+    }
+    // Of all shapes this one has the least tension times length: its gradient vanishes.
+    for (sum, node) in sums.iter().zip(net.nodes()) {
+        assert!(node.position.is_some() || sum.norm() < 1e-5, "{sum} at {}", node.name);
+    }
+}
+
+/// The end of the search is quadratic: few iterations for a dozen wanted tensions under own weight.
+#[test]
+fn mean_tensions_of_many_ropes_take_few_iterations() {
+    let net = Arc::new(saddle(6, 2.0).net());
+    let mut prestress = Prestress {
+        mean_tensions: (0..net.cables().len()).map(|c| 8e3 + 500.0 * c as f64).collect(),
+        ..all(&net, PrestressRule::Balance)
+    };
+    for (index, cable) in net.cables().iter().enumerate() {
+        for segment in cable.segments.clone() {
+            prestress.rules[segment] = PrestressRule::MeanTension(index);
+        }
+    }
+    let found = shape(&net, &prestress, vec![own_weight()]).expect("a shape");
+    for (target, wanted) in found.report.targets.iter().zip(&prestress.mean_tensions) {
+        close(target.found, *wanted, 1e-10 * wanted);
+    }
+    assert!(found.report.iterations <= 20, "{}", found.report.iterations);
+    assert!(found.report.imbalance <= 1e-9 * found.report.largest_force);
+}

@@ -1,0 +1,149 @@
+//! Nets with struts: closed forms, unstable balances, hard starts.
+
+use nalgebra::Vector3;
+use ropewalk_numerics::equilibrium::{LoadSteps, Settings, SolveError, Termination};
+use ropewalk_numerics::model::NodeId;
+
+use crate::nets::Example;
+
+/// A mast of 5 m with guys to anchors around its foot at the given angles, each guy shortened by `strain`.
+fn mast(angles: &[f64], strain: f64) -> Example {
+    let mut net = Example {
+        positions: vec![Vector3::zeros(), Vector3::new(0.0, 0.0, 5.0)],
+        held: vec![0],
+        struts: vec![(0, 1, 2e7, 5.0)],
+        ..Example::default()
+    };
+    for angle in angles {
+        let anchor = net.positions.len();
+        net.positions
+            .push(Vector3::new(4.0 * angle.cos(), 4.0 * angle.sin(), 0.0));
+        net.held.push(anchor);
+        net.segments.push((1, anchor, 5e6, 41_f64.sqrt() / (1.0 + strain)));
+    }
+    net.loads = vec![Vector3::zeros(); net.positions.len()];
+    net
+}
+
+fn around(n: u32) -> Vec<f64> {
+    (0..n)
+        .map(|i| 0.3 + std::f64::consts::TAU * f64::from(i) / f64::from(n))
+        .collect()
+}
+
+#[test]
+fn a_guyed_mast_stands() {
+    let mut net = mast(&around(3), 0.003);
+    net.loads[1] = Vector3::new(2000.0, -500.0, -10_000.0);
+    let solution = net.solve().unwrap();
+    assert_eq!(solution.termination, Termination::Converged);
+    assert!(solution.axial_forces[3] < -30_000.0, "{:?}", solution.axial_forces);
+    let imbalance = net.imbalance(&solution)[1];
+    assert!(imbalance.norm() < 1e-5, "{imbalance}");
+}
+
+#[test]
+fn a_mast_with_guys_in_one_plane_is_not_called_balanced() {
+    let net = mast(&[0.0, std::f64::consts::PI], 0.003);
+    let Err(SolveError::FreeMovement {
+        nodes,
+        direction,
+        stiffness,
+        segments,
+    }) = net.solve()
+    else {
+        panic!("nothing holds the head across the plane")
+    };
+    assert_eq!(nodes, [NodeId::new(1)]);
+    assert!((direction - Vector3::y()).norm() < 1e-9, "{direction}");
+    // By hand: 2 T/l of the guys less N/h of the mast; N = 2 T · 5/l: equal in size, so that prestress brings nothing.
+    assert!(stiffness.abs() < 1.0, "{stiffness}");
+    assert_eq!(segments.len(), 3);
+}
+
+/// The head carries a load, so that the mast is squeezed more than the guys pull.
+#[test]
+fn compression_drives_the_free_movement() {
+    let mut net = mast(&[0.0, std::f64::consts::PI], 0.003);
+    net.loads[1].z = -20_000.0;
+    let Err(SolveError::FreeMovement { stiffness, .. }) = net.solve() else {
+        panic!("nothing holds the head across the plane")
+    };
+    // −P/h, P the load, h the height at balance (by hand from lateral balance of head and guys).
+    assert!((stiffness + 20_000.0 / 5.0).abs() < 0.01 * 4000.0, "{stiffness}");
+}
+
+#[test]
+fn a_strut_alone_in_space_moves_freely() {
+    let mut net = mast(&around(3), 0.003);
+    let (a, b) = (net.positions.len(), net.positions.len() + 1);
+    net.positions
+        .extend([Vector3::new(9.0, 0.0, 0.0), Vector3::new(9.0, 0.0, 1.0)]);
+    net.held.push(a);
+    net.struts.push((a, b, 1e6, 1.0));
+    let outcome = net.solve();
+    let solution = outcome.unwrap();
+    assert_eq!(
+        solution.loose_nodes,
+        [NodeId::new(b)],
+        "a strut without force holds nothing in place"
+    );
+    net.loads.resize(b + 1, Vector3::zeros());
+    net.loads[b].z = -50.0;
+    assert!(
+        matches!(net.solve(), Err(SolveError::FreeMovement { .. })),
+        "a pencil on its tip"
+    );
+}
+
+/// Two struts in a flat arch snap through at a load known in closed form (standard theory: two-bar truss, engineering
+/// strain on the initial length).
+#[test]
+fn a_flat_arch_snaps_through_beyond_its_limit() {
+    let (half, rise, ea) = (10.0_f64, 0.5_f64, 1e7);
+    let l0 = half.hypot(rise);
+    let push = |w: f64| {
+        let l = half.hypot(rise - w);
+        2.0 * ea * (l0 - l) / l0 * (rise - w) / l
+    };
+    let limit = (0..10_000)
+        .map(|i| push(rise * f64::from(i) / 10_000.0))
+        .fold(0.0, f64::max);
+    let arch = |load: f64| Example {
+        positions: vec![
+            Vector3::zeros(),
+            Vector3::new(half, 0.0, rise),
+            Vector3::new(2.0 * half, 0.0, 0.0),
+            Vector3::new(half, 8.0, rise),
+            Vector3::new(half, -8.0, rise),
+        ],
+        held: vec![0, 2, 3, 4],
+        struts: vec![(0, 1, ea, l0), (1, 2, ea, l0)],
+        // Side ropes keep the crown in its plane; too weak to matter along it.
+        segments: vec![(1, 3, 1.2e4, 7.99), (1, 4, 1.2e4, 7.99)],
+        loads: vec![Vector3::zeros(), Vector3::new(0.0, 0.0, -load)],
+        ..Example::default()
+    };
+    for share in [0.5, 0.9] {
+        let net = arch(share * limit);
+        let solution = net.solve().unwrap();
+        assert_eq!(solution.termination, Termination::Converged);
+        assert!(
+            solution.positions[1].z > 0.2,
+            "before the limit: {}",
+            solution.positions[1].z
+        );
+        assert!(net.imbalance(&solution)[1].norm() < 1e-4);
+    }
+    for steps in [LoadSteps::FullFirst, LoadSteps::Equal(8)] {
+        let net = arch(1.2 * limit);
+        let settings = Settings {
+            load_steps: steps,
+            ..Settings::default()
+        };
+        let solution = net.solve_with(&settings).unwrap();
+        assert_eq!(solution.termination, Termination::Converged);
+        assert!(solution.positions[1].z < -0.3, "beyond it: {}", solution.positions[1].z);
+        assert!(net.imbalance(&solution)[1].norm() < 1e-4);
+    }
+}
