@@ -1,5 +1,6 @@
 //! The border between contract and kernel: what is read, what is refused, what is said.
 
+mod absurd;
 mod briefs;
 mod drafts;
 mod fields;

@@ -164,6 +164,16 @@ fn events_come_in_order() {
     );
 }
 
+/// Equal load steps of one case: it is put on in halves, the other cases are not.
+#[test]
+fn load_steps_of_a_case_are_its_own() {
+    let events = run(&work(&terrace()), &[0, 1]);
+    let arrays = arrays(&events);
+    let factors = |case: &str| &arrays[&(case.to_owned(), "iteration_load_factor".to_owned())].values;
+    assert!(factors("snowed").contains(&0.5) && factors("snowed").ends_with(&[1.0]));
+    assert!(factors("iced").iter().all(|factor| *factor == 1.0));
+}
+
 /// Arrays and tables have the lengths of what they range over.
 #[test]
 fn arrays_fit_their_tables() {

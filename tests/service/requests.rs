@@ -1,5 +1,9 @@
 //! Requests that the contract does not have: each is told what is wrong, and where.
 
+use std::io::{Read as _, Write as _};
+use std::net::TcpStream;
+use std::time::Instant;
+
 use bytes::{Buf as _, BufMut as _, Bytes};
 use prost::Message as _;
 use ropewalk_api::ropewalk::v1;
@@ -8,9 +12,10 @@ use tonic::codegen::http::uri::PathAndQuery;
 use tonic::{Code, Request, Status};
 use tonic_types::StatusExt as _;
 
-use crate::briefs;
-use crate::client::code_and_reason;
-use crate::engine::Engine;
+use crate::admission::begun;
+use crate::client::{code_and_reason, collect};
+use crate::engine::{Engine, PATIENCE};
+use crate::{briefs, web};
 
 /// Sends and takes bytes as they are.
 #[derive(Clone, Copy, Default)]
@@ -151,7 +156,7 @@ async fn a_request_of_several_mib_is_taken() {
         .await
         .check(v1::CheckRequest { brief: Some(brief) })
         .await;
-    let (reports, end) = crate::client::collect(reports.expect("taken").into_inner()).await;
+    let (reports, end) = collect(reports.expect("taken").into_inner()).await;
     end.expect("a report");
     assert!(reports.last().expect("a report").totals.is_some());
 }
@@ -176,10 +181,7 @@ async fn errors_of_a_brief_are_listed_with_their_places() {
     let mut brief = briefs::first_net();
     brief.cases[0].factors.insert("snwo".to_owned(), 1.0);
     let status = match engine.briefs().await.run(briefs::run(brief.clone())).await {
-        Ok(stream) => crate::client::collect(stream.into_inner())
-            .await
-            .1
-            .expect_err("refused"),
+        Ok(stream) => collect(stream.into_inner()).await.1.expect_err("refused"),
         Err(status) => status,
     };
     assert_eq!(
@@ -198,8 +200,55 @@ async fn errors_of_a_brief_are_listed_with_their_places() {
         .check(v1::CheckRequest { brief: Some(brief) })
         .await
         .expect("a report");
-    let (reports, end) = crate::client::collect(reports.into_inner()).await;
+    let (reports, end) = collect(reports.into_inner()).await;
     end.expect("ends well");
     assert_eq!(reports[0].findings[0].reason, violations[0].reason);
     assert!(reports.last().expect("a report").totals.is_some());
+}
+
+#[test]
+fn a_request_that_does_not_arrive_is_given_up() {
+    let engine = Engine::start(&["--receive-seconds", "1"]);
+    let mut stream = TcpStream::connect(engine.address).expect("the engine listens");
+    let head = web::post(RUN);
+    let head = format!(
+        "{head}\r\nhost: {}\r\nconnection: close\r\ncontent-length: 1000\r\n\r\n",
+        engine.address
+    );
+    stream.write_all(head.as_bytes()).expect("sent");
+    // The prefix, and a hundred of the bytes that it says.
+    stream.write_all(&web::frame(&[0; 900])[..105]).expect("sent");
+    let mut told = Vec::new();
+    stream.read_to_end(&mut told).expect("an answer");
+    let told = String::from_utf8_lossy(&told).into_owned();
+    assert!(told.contains("grpc-status: 4"), "{told}");
+    assert!(told.contains("did%20not%20arrive%20within%201%20s"), "{told}");
+}
+
+#[tokio::test]
+async fn large_requests_share_a_bounded_memory() {
+    let engine = Engine::start(&["--request-limit-mib", "1", "--requests-held", "1"]);
+    // Half a MiB and more, all of it cases; the client reads no further than the beginning.
+    let large = || briefs::run(briefs::saddle(4, 18_000));
+    let first = begun(&engine, large()).await;
+    let status = engine.briefs().await.run(large()).await.expect_err("no memory left");
+    assert_eq!(
+        code_and_reason(&status),
+        (Code::ResourceExhausted, "SERVER_FULL".to_owned())
+    );
+    assert!(status.get_error_details().retry_info().is_some());
+    // A small one passes, and after the first one has left, a large one does.
+    let stream = engine
+        .briefs()
+        .await
+        .run(briefs::run(briefs::first_net()))
+        .await
+        .expect("small");
+    collect(stream.into_inner()).await.1.expect("ends well");
+    drop(first);
+    let end = Instant::now() + PATIENCE;
+    while let Err(status) = engine.briefs().await.run(large()).await {
+        assert_eq!(code_and_reason(&status).1, "SERVER_FULL");
+        assert!(Instant::now() < end, "memory never given back");
+    }
 }

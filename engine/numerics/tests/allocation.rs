@@ -16,7 +16,7 @@ fn ladder(n: usize) -> Net {
         position: Some(Vector3::new((i / 2) as f64, (i % 2) as f64, 0.1 * (i % 3) as f64)),
         support: match i {
             0 | 1 => Some(SupportGiven::default()),
-            _ if i % 7 == 0 => Some(SupportGiven {
+            _ if i.is_multiple_of(7) => Some(SupportGiven {
                 released: vec![Vector3::new(1.0, 0.2, 0.3)],
             }),
             _ => None,

@@ -174,3 +174,109 @@ fn elastic_entries(net: &Net, dofs: &Dofs, pattern: &Pattern) -> Vec<(usize, f64
     }
     entries
 }
+
+#[cfg(test)]
+mod tests {
+    use nalgebra::{DMatrix, Vector3};
+
+    use super::*;
+    use crate::assembly::{Loading, Response};
+    use crate::load::{Case, SegmentLoads};
+    use crate::model::{CableGiven, ElasticSupportGiven, NetGiven, NodeGiven, Section, StrutGiven, SupportGiven};
+
+    /// Free, skew, sprung and held nodes; ropes, one of them slack, and a strut.
+    fn net() -> Net {
+        let at = |x: f64, y: f64, z: f64, released: Option<Vec<Vector3<f64>>>| NodeGiven {
+            name: format!("{x} {y}"),
+            position: Some(Vector3::new(x, y, z)),
+            support: released.map(|released| SupportGiven { released }),
+            attached_mass: 0.0,
+        };
+        let section = Section {
+            axial_stiffness: 2e5,
+            mass_per_length: 0.0,
+            expansion: 0.0,
+            breaking_force: None,
+        };
+        let cable = |a, b| CableGiven {
+            name: format!("{a}-{b}"),
+            path: vec![NodeId::new(a), NodeId::new(b)],
+            sections: vec![section],
+        };
+        let half = DMatrix::from_fn(6, 6, |i, j| ((3 * i + 5 * j) % 7) as f64);
+        Net::new(NetGiven {
+            nodes: vec![
+                at(0.0, 0.0, 0.0, Some(vec![])),
+                at(2.0, 0.1, 0.3, None),
+                at(2.2, 1.9, -0.2, Some(vec![Vector3::new(1.0, 0.5, 0.2)])),
+                at(0.1, 2.1, 0.4, None),
+                at(1.0, 1.0, 1.0, Some(vec![Vector3::new(0.0, 1.0, 1.0), Vector3::x()])),
+            ],
+            cables: vec![
+                cable(0, 1),
+                cable(2, 1),
+                cable(2, 3),
+                cable(3, 0),
+                cable(4, 1),
+                cable(2, 4),
+                cable(1, 3),
+            ],
+            struts: vec![StrutGiven {
+                name: "strut".into(),
+                ends: [NodeId::new(3), NodeId::new(4)],
+                section,
+            }],
+            elastic_supports: vec![ElasticSupportGiven {
+                nodes: vec![NodeId::new(3), NodeId::new(1)],
+                stiffness: &half * half.transpose() * 50.0,
+            }],
+        })
+        .expect("valid")
+    }
+
+    #[test]
+    fn tangent_is_the_negative_slope_of_the_residual() {
+        let structure = Structure::new(Arc::new(net()));
+        let n_segments = structure.net().segments().len();
+        let positions: Vec<_> = structure.net().nodes().iter().filter_map(|n| n.position).collect();
+        let mut case = Case {
+            nodal_forces: vec![Vector3::new(10.0, 20.0, -30.0); positions.len()],
+            unstressed_lengths: vec![1.3; structure.net().n_lengths()],
+            segments: vec![SegmentLoads::default(); n_segments],
+            support_movements: vec![Vector3::new(0.01, 0.0, 0.02); positions.len()],
+            removed: vec![false; n_segments],
+        };
+        case.unstressed_lengths[1] = 4.0;
+        case.unstressed_lengths[7] = 4.0;
+        let loading = Loading::new(&structure, &case, &case.unstressed_lengths, 1.0).expect("fits");
+        let mut response = Response::new(&structure);
+        structure.response_into(&loading, &positions, &mut response);
+        assert_eq!(response.axial_forces[1], 0.0);
+        assert!(response.axial_forces[7] < 0.0);
+        let blocks: Vec<_> = (loading.bars.iter().zip(&response.chords))
+            .map(|(bar, chord)| bar.stiffness_block(chord))
+            .collect();
+        let mut values = vec![0.0; structure.pattern().n_entries()];
+        structure.tangent_into(&blocks, &mut values);
+        structure.add_elastic_supports(&mut values);
+        let tangent = DMatrix::from(&structure.pattern().full_matrix(&values));
+        assert_eq!(structure.n_dofs(), 9);
+        for column in 0..structure.n_dofs() {
+            let mut residual = |h: f64| {
+                let mut unit = vec![0.0; structure.n_dofs()];
+                unit[column] = h;
+                let mut moved = positions.clone();
+                structure.dofs().move_nodes(&unit, 1.0, &mut moved);
+                structure.response_into(&loading, &moved, &mut response);
+                response.residual.clone()
+            };
+            let h = 1e-3;
+            let sides = [residual(h), residual(-h), residual(2.0 * h), residual(-2.0 * h)];
+            for row in 0..structure.n_dofs() {
+                let slope = (8.0 * (sides[0][row] - sides[1][row]) - (sides[2][row] - sides[3][row])) / (12.0 * h);
+                let error = (tangent[(row, column)] + slope).abs();
+                assert!(error <= 1e-8 * tangent.amax(), "{row} {column}: {error}");
+            }
+        }
+    }
+}

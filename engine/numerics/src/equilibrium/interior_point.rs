@@ -1,4 +1,4 @@
-//! Interior point for pure-tension nets, on the same pattern as the tangent.
+//! Interior point for nets with much slack, on the same pattern as the tangent.
 //!
 //! ```text
 //! min Σ ½ k ε² − p·x   with   |d_e| ≤ a_e + ε_e
@@ -6,6 +6,9 @@
 //! ```
 //! Unlike Newton on the energy it does not creep along curved valleys where much is slack and little stretches. It ends
 //! near seven digits, which is the nature of its equations; [`super::carried`] takes it from there.
+//!
+//! A strut takes part as a two-way spring along its direction at the start, which is convex: force `k (n0·d − a) n0`.
+//! What it lacks, the turning of the strut, is left to whoever goes on from here.
 //!
 //! Scaling: Nesterov & Todd 1997; predictor and corrector: Mehrotra 1992 (both from memory).
 
@@ -16,9 +19,13 @@ use nalgebra::{Matrix3, Vector3};
 use super::run::Run;
 use super::{Termination, Way};
 use crate::assembly::Loading;
+use crate::element::axial_block;
+use crate::model::AxialLaw;
 
 const LIMIT: u32 = 40;
 const SMALLEST_STIFFNESS: f64 = 1e-13;
+/// Share of its stiffness that a strut has across, in the steps only, so that none is without.
+const SMALLEST_OF_A_STRUT: f64 = 1e-9;
 const TO_THE_BOUNDARY: f64 = 0.99;
 const ENOUGH_BALANCE: f64 = 1e-4;
 const ENOUGH_GAP: f64 = 1e-6;
@@ -185,6 +192,7 @@ pub(super) fn solve(
     let force = if run.load > 0.0 { run.load } else { 0.01 * imbalance };
     let length = median_length(loading);
     let mut members = start(run, loading, force, length);
+    let struts = struts(run, loading);
     if members.is_empty() || force <= 0.0 || !force.is_finite() {
         return Ok((vec![0.0; loading.bars.len()], force));
     }
@@ -196,7 +204,7 @@ pub(super) fn solve(
             member.s.tail = run.response.chords[member.index];
             member.scale();
         }
-        let residual = residual(run, loading, positions, &members);
+        let residual = residual(run, loading, positions, &members, &struts);
         let imbalance = residual.iter().fold(0.0, |m: f64, r| m.max(r.abs()));
         let gap = members.iter().map(|m| m.lambda.dot(&m.lambda)).sum::<f64>() / members.len() as f64;
         if !(imbalance.is_finite() && gap.is_finite()) || run.runs_away(positions) {
@@ -217,6 +225,9 @@ pub(super) fn solve(
         before.push((balance_share, gap_share));
         if is_there || stalls || iteration == LIMIT || run.is_spent() {
             break;
+        }
+        for strut in &struts {
+            run.blocks[strut.index] = axial_block(strut.stiffness, SMALLEST_OF_A_STRUT * strut.stiffness, &strut.along);
         }
         for member in &members {
             let fill = member.column * member.column.transpose() / (member.stiffness + member.head);
@@ -261,6 +272,9 @@ pub(super) fn solve(
     for member in &members {
         forces[member.index] = member.z.head;
     }
+    for strut in &struts {
+        forces[strut.index] = strut.force(positions);
+    }
     Ok((forces, force))
 }
 
@@ -279,7 +293,7 @@ fn start(run: &mut Run<'_>, loading: &Loading, force: f64, length: f64) -> Vec<M
     let zero = Cone::new(0.0, Vector3::zeros());
     let mut members = Vec::new();
     for (index, (bar, segment)) in loading.bars.iter().zip(run.structure.net().segments()).enumerate() {
-        if !bar.is_present() {
+        if !bar.is_present() || bar.law == AxialLaw::TwoWay {
             run.blocks[index] = Matrix3::zeros();
             continue;
         }
@@ -307,14 +321,58 @@ fn start(run: &mut Run<'_>, loading: &Loading, force: f64, length: f64) -> Vec<M
     members
 }
 
-/// `p − Cᵀ v` and the elastic supports, along the free directions (N).
-fn residual(run: &Run<'_>, loading: &Loading, positions: &[Vector3<f64>], members: &[Member]) -> Vec<f64> {
+/// A strut as a spring along its direction at the start.
+#[derive(Clone, Copy, Debug)]
+struct Rail {
+    index: usize,
+    ends: [usize; 2],
+    stiffness: f64,
+    length: f64,
+    along: Vector3<f64>,
+}
+
+impl Rail {
+    fn force(&self, positions: &[Vector3<f64>]) -> f64 {
+        let chord = positions[self.ends[1]] - positions[self.ends[0]];
+        self.stiffness * (self.along.dot(&chord) - self.length)
+    }
+}
+
+fn struts(run: &Run<'_>, loading: &Loading) -> Vec<Rail> {
+    let segments = loading.bars.iter().zip(run.structure.net().segments()).enumerate();
+    segments
+        .filter(|(index, (bar, _))| {
+            bar.is_present() && bar.law == AxialLaw::TwoWay && run.response.lengths[*index] > 0.0
+        })
+        .map(|(index, (bar, segment))| Rail {
+            index,
+            ends: segment.ends.map(|n| n.index()),
+            stiffness: bar.stiffness,
+            length: bar.stress_free_length,
+            along: run.response.chords[index] / run.response.lengths[index],
+        })
+        .collect()
+}
+
+/// `p − Cᵀ v`, struts and elastic supports, along the free directions (N).
+fn residual(
+    run: &Run<'_>,
+    loading: &Loading,
+    positions: &[Vector3<f64>],
+    members: &[Member],
+    struts: &[Rail],
+) -> Vec<f64> {
     let mut balance = loading.nodal_forces.clone();
     run.structure.add_elastic_forces(loading, positions, &mut balance);
     for member in members {
         // z carries −v.
         balance[member.ends[0]] -= member.z.tail;
         balance[member.ends[1]] += member.z.tail;
+    }
+    for strut in struts {
+        let pull = strut.along * strut.force(positions);
+        balance[strut.ends[0]] += pull;
+        balance[strut.ends[1]] -= pull;
     }
     let mut residual = vec![0.0; run.structure.n_dofs()];
     run.structure.dofs().components_into(&balance, &mut residual);

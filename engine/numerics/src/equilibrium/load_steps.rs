@@ -19,6 +19,7 @@ const MUCH_SLACK: f64 = 0.2;
 const CLEARLY_SLACK: f64 = 0.999;
 /// Forces below this share of the largest do not hold a node in place.
 const HOLDS: f64 = 1e-9;
+const ROUNDS_WITH_STRUTS: u32 = 3;
 const FIRST_STEP: f64 = 0.25;
 const SMALLEST_STEP: f64 = 1.0 / 256.0;
 
@@ -190,7 +191,8 @@ fn state(
     }
     let ends =
         |outcome, run: &Run<'_>| matches!(outcome, Termination::Converged | Termination::Cancelled) || run.is_spent();
-    if pulled >= (1.0 - MUCH_SLACK) * present {
+    let is_taut = pulled >= (1.0 - MUCH_SLACK) * present;
+    if is_taut {
         let carried = run.response.axial_forces.clone();
         let joining = if run.load > 0.0 {
             run.load
@@ -203,25 +205,33 @@ fn state(
         }
         positions.copy_from_slice(&entry);
     }
-    if !run.structure.net().is_pure_tension() {
-        return WITH_STRUTS.solve(run, loading, positions);
-    }
-    if slack < MUCH_SLACK * present {
+    if slack < MUCH_SLACK * present && !is_taut {
         let outcome = TRY.solve(run, loading, positions);
         if ends(outcome, run) {
             return outcome;
         }
         positions.copy_from_slice(&entry);
     }
-    match interior_point::solve(run, loading, positions) {
-        Err(Termination::Cancelled) => return Termination::Cancelled,
-        Err(_) => positions.copy_from_slice(&entry),
-        Ok((forces, load)) => {
-            let inside = positions.clone();
-            match POLISH.solve(run, loading, positions, forces, load) {
-                Termination::Converged => return Termination::Converged,
-                Termination::Cancelled => return Termination::Cancelled,
-                _ => positions.copy_from_slice(&inside),
+    // With struts the interior point is repeated from where it got to: it takes them along their direction at its start.
+    let rounds = if run.structure.net().is_pure_tension() {
+        1
+    } else {
+        ROUNDS_WITH_STRUTS
+    };
+    for _ in 0..rounds {
+        match interior_point::solve(run, loading, positions) {
+            Err(Termination::Cancelled) => return Termination::Cancelled,
+            Err(_) => {
+                positions.copy_from_slice(&entry);
+                break;
+            }
+            Ok((forces, load)) => {
+                let inside = positions.clone();
+                let outcome = POLISH.solve(run, loading, positions, forces, load);
+                if ends(outcome, run) {
+                    return outcome;
+                }
+                positions.copy_from_slice(&inside);
             }
         }
     }
@@ -239,7 +249,9 @@ fn in_smaller_steps(
 ) -> Result<(Termination, f64), SolveError> {
     let (mut reached, mut step, mut load_step) = (0.0, FIRST_STEP, 1);
     let mut good = start.to_vec();
-    while step >= SMALLEST_STEP && !run.is_spent() {
+    // The rest of the allowance is for what comes after.
+    let share = run.settings.max_iterations / 4 * 3;
+    while step >= SMALLEST_STEP && run.factorisations < share {
         let factor = f64::min(reached + step, 1.0);
         let loading = level(factor)?;
         load_step += 1;

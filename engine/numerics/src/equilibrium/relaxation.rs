@@ -90,3 +90,95 @@ fn masses(run: &Run<'_>, loading: &Loading) -> Vec<f64> {
         .map(|dof| (MASS_RESERVE * 0.5 * nodal[structure.dofs().node(dof).index()]).max(f64::MIN_POSITIVE))
         .collect()
 }
+
+#[cfg(test)]
+mod tests {
+    use std::sync::Arc;
+
+    use super::*;
+    use crate::equilibrium::{Analysis, IterationReport, Settings};
+    use crate::load::{Case, SegmentLoads};
+    use crate::model::{CableGiven, Net, NetGiven, NodeGiven, NodeId, Section, StrutGiven, SupportGiven};
+
+    /// A mast of 5 m on three guys, its head given far from balance.
+    fn relax(observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>) -> (Termination, Vec<Vector3<f64>>, f64) {
+        let section = |axial_stiffness| Section {
+            axial_stiffness,
+            mass_per_length: 0.0,
+            expansion: 0.0,
+            breaking_force: None,
+        };
+        let places = [
+            [0.0, 0.0, 0.0],
+            [1.5, -1.0, 3.0],
+            [4.0, 0.0, 0.0],
+            [-2.0, 3.5, 0.0],
+            [-2.0, -3.5, 0.0],
+        ];
+        let node = |(i, p): (usize, &[f64; 3])| NodeGiven {
+            name: format!("n{i}"),
+            position: Some(Vector3::from(*p)),
+            support: (i != 1).then(SupportGiven::default),
+            attached_mass: 0.0,
+        };
+        let guy = |i| CableGiven {
+            name: format!("g{i}"),
+            path: vec![NodeId::new(1), NodeId::new(i)],
+            sections: vec![section(1e6)],
+        };
+        let net = Net::new(NetGiven {
+            nodes: places.iter().enumerate().map(node).collect(),
+            cables: (2..5).map(guy).collect(),
+            struts: vec![StrutGiven {
+                name: "mast".into(),
+                ends: [NodeId::new(0), NodeId::new(1)],
+                section: section(5e6),
+            }],
+            elastic_supports: vec![],
+        })
+        .expect("valid");
+        let case = Case {
+            nodal_forces: vec![Vector3::new(50.0, 20.0, -500.0); 5],
+            unstressed_lengths: vec![6.35, 6.35, 6.35, 5.0],
+            segments: vec![SegmentLoads::default(); 4],
+            support_movements: vec![Vector3::zeros(); 5],
+            removed: vec![false; 4],
+        };
+        let analysis = Analysis::new(Arc::new(net));
+        let start: Vec<Vector3<f64>> = places.map(Vector3::from).to_vec();
+        let settings = Settings::default();
+        let loading = Loading::new(analysis.structure(), &case, &case.unstressed_lengths, 1.0).expect("fits");
+        let mut run = Run::new(&analysis, &settings, &start, &[], observe);
+        run.begin(1, 1.0, &loading);
+        let mut positions = start.clone();
+        let outcome = solve(&mut run, &loading, &mut positions);
+        let left = run.response.largest_residual(analysis.structure()).0 / run.response.largest_axial_force();
+        (outcome, positions, left)
+    }
+
+    #[test]
+    fn a_mast_far_from_balance_gets_there() {
+        let mut energies = Vec::new();
+        let (outcome, positions, left) = relax(&mut |r| {
+            energies.push(r.residual);
+            ControlFlow::Continue(())
+        });
+        assert_eq!(outcome, Termination::Converged);
+        assert!(left <= NEAR && positions[1].z > 4.9, "{left} {}", positions[1]);
+        assert!(energies.len() < 5000, "{}", energies.len());
+    }
+
+    #[test]
+    fn it_stops_when_asked() {
+        let mut reports = 0;
+        let (outcome, ..) = relax(&mut |_| {
+            reports += 1;
+            if reports == 7 {
+                ControlFlow::Break(())
+            } else {
+                ControlFlow::Continue(())
+            }
+        });
+        assert_eq!((outcome, reports), (Termination::Cancelled, 7));
+    }
+}

@@ -111,8 +111,9 @@ fn shape(
     observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
 ) -> Result<(Shape, u32), ShapeError> {
     let net = analysis.structure().net();
-    let (start, densities) = start(analysis, parts, observe)?;
+    let (start, densities, iterations) = start(analysis, parts, observe)?;
     let mut search = Search::new(analysis, parts, loads, observe);
+    search.iterations = iterations;
     search.check_held()?;
     let members = parts.balance();
     let ends_move = members
@@ -154,14 +155,14 @@ fn shape(
     ))
 }
 
-/// Positions and force densities of the families to start from.
+/// Positions and force densities of the families to start from, and the factorisations it took.
 ///
 /// A free node without coordinates starts where force densities alone would put it.
 fn start(
     analysis: &Analysis,
     parts: &Parts,
     observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
-) -> Result<(Vec<Vector3<f64>>, Vec<f64>), ShapeError> {
+) -> Result<(Vec<Vector3<f64>>, Vec<f64>, u32), ShapeError> {
     let net = analysis.structure().net();
     let given: Vec<Vector3<f64>> = net.nodes().iter().filter_map(|n| n.position).collect();
     let middle = given.iter().sum::<Vector3<f64>>() / (given.len().max(1) as f64);
@@ -172,6 +173,7 @@ fn start(
     let mut positions: Vec<Vector3<f64>> = net.nodes().iter().map(|n| n.position.unwrap_or(middle)).collect();
     // A tenth of the net is as good a guess of a segment's length as any; only its order of magnitude matters.
     let mut densities: Vec<f64> = parts.families.iter().map(|f| f.wanted / (0.1 * size)).collect();
+    let mut iterations = 0;
     let some_density = parts.of.iter().any(|part| !matches!(part, Part::Elastic(_)));
     if given.len() < net.nodes().len() && some_density {
         let mut sorted: Vec<f64> = (parts.of.iter())
@@ -199,6 +201,7 @@ fn start(
         let mut search = Search::new(analysis, &soft, &unloaded, observe);
         search.check_held()?;
         positions = search.balanced(positions, &[])?.positions;
+        iterations = search.iterations;
     }
     let length = |e: &usize| {
         let [i, j] = net.segments()[*e].ends.map(NodeId::index);
@@ -210,7 +213,7 @@ fn start(
             *density = family.wanted / mean;
         }
     }
-    Ok((positions, densities))
+    Ok((positions, densities, iterations))
 }
 
 /// Refuses a shape in which both ends of a member coincide.

@@ -32,7 +32,8 @@ pub(super) type Observer<'a> = dyn FnMut(&IterationReport) -> ControlFlow<()> + 
 const BALANCED: f64 = 1e-14;
 /// The same where rounding forbids more.
 const BALANCED_BUT_FOR_ROUNDING: f64 = 1e-11;
-const MAX_ITERATIONS: u32 = 100;
+const MAX_ITERATIONS: u32 = 300;
+const MAX_EVALUATIONS: u32 = 40;
 /// Stiffness left to slack ropes, over the largest in the net, so that a slack rope does not make the matrix singular.
 const SLACK_STIFFNESS: f64 = 1e-10;
 
@@ -60,7 +61,7 @@ pub(super) struct Search<'a, 'o> {
     pub(super) loads: &'a ShapeLoads,
     /// Axial forces of the members left to balance (N), as last found; zero elsewhere.
     pub(super) balance_forces: Vec<f64>,
-    /// Iterations so far.
+    /// Factorisations so far.
     pub(super) iterations: u32,
     factor: Factor,
     values: Vec<f64>,
@@ -188,6 +189,7 @@ impl<'a, 'o> Search<'a, 'o> {
 
     /// Factorises the stiffness at a point. `floor`: least force across a member of given length (N).
     fn factorise(&mut self, point: &Point, family_densities: &[f64], floor: f64) -> Result<(), ShapeError> {
+        self.iterations += 1;
         let n_segments = self.net().segments().len();
         let mut blocks = vec![Matrix3::zeros(); n_segments];
         let mut largest: f64 = 0.0;
@@ -326,7 +328,7 @@ impl<'a, 'o> Search<'a, 'o> {
         let (mut low, mut low_slope, mut high) = (0.0, start_slope, f64::INFINITY);
         let mut high_slope = 0.0;
         let mut t = 1.0;
-        for _ in 0..25 {
+        for evaluation in 0..MAX_EVALUATIONS {
             let trial = at(t);
             let trial_slope = slope(&trial);
             if size(&trial) <= (1.0 - 1e-4 * t) * start_size || trial_slope.abs() <= 0.3 * start_slope.abs() {
@@ -338,10 +340,11 @@ impl<'a, 'o> Search<'a, 'o> {
                 (high, high_slope) = (t, trial_slope);
             }
             t = if high.is_finite() {
-                // Secant on the slope, kept off the ends of the bracket.
+                // Secant on the slope, kept off the ends of the bracket; every other time its middle, since the slope
+                // jumps where a rope comes taut.
                 let secant = low + (high - low) * low_slope / (low_slope - high_slope);
                 let (near, far) = (low + 0.1 * (high - low), high - 0.1 * (high - low));
-                if secant.is_finite() {
+                if secant.is_finite() && evaluation % 2 == 0 {
                     secant.clamp(near, far)
                 } else {
                     0.5 * (low + high)
@@ -350,7 +353,12 @@ impl<'a, 'o> Search<'a, 'o> {
                 2.0 * t
             };
         }
-        (point.clone(), 0.0)
+        // Up to `low` the slope kept its sign: there the energy is less than at the start.
+        if low > 0.0 {
+            (at(low), low)
+        } else {
+            (point.clone(), 0.0)
+        }
     }
 
     fn report(&mut self, point: &Point, iteration: u32, step_length: f64) -> Result<(), ShapeError> {
@@ -371,7 +379,6 @@ impl<'a, 'o> Search<'a, 'o> {
             slack: (0..n_segments).filter(slack).count(),
             step_length,
         };
-        self.iterations += 1;
         match (self.observe)(&report) {
             ControlFlow::Continue(()) => Ok(()),
             ControlFlow::Break(()) => Err(ShapeError::Cancelled),

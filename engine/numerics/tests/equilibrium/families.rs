@@ -164,6 +164,33 @@ fn mesh(random: &mut Random) -> Example {
     net
 }
 
+/// A tent: a prestressed net over masts that stand on the ground and push some of its nodes up.
+fn tent(random: &mut Random) -> Example {
+    let ea = random.power(5.5, 7.5);
+    let n = random.index(4, 12);
+    let mut net = grid(n, 12.0, ea, |u, w| 2.0 * (1.0 - u * u) * (1.0 - w * w));
+    let strain = random.power(-3.0, -2.0);
+    net.segments.iter_mut().for_each(|s| s.3 /= 1.0 + strain);
+    for _ in 0..random.index(1, 4) {
+        let top = random.index(0, net.positions.len());
+        if net.held.contains(&top) {
+            continue;
+        }
+        let foot = net.positions.len();
+        let lean = Vector3::new(random.range(-0.5, 0.5), random.range(-0.5, 0.5), 0.0);
+        net.positions
+            .push(net.positions[top] + lean - Vector3::new(0.0, 0.0, 4.0));
+        net.loads.push(Vector3::zeros());
+        net.held.push(foot);
+        let length = (net.positions[top] - net.positions[foot]).norm();
+        net.struts
+            .push((foot, top, 30.0 * ea, length * random.range(1.0, 1.05)));
+    }
+    let force = ea * random.power(-5.0, -3.0);
+    load(&mut net, random, force);
+    net
+}
+
 #[track_caller]
 fn check_family(name: &str, draw: fn(&mut Random) -> Example, most_in_the_middle: u32) {
     let mut counts = Vec::new();
@@ -226,6 +253,11 @@ fn random_meshes() {
 #[test]
 fn hanging_chains() {
     check_family("chain", chain, 14);
+}
+
+#[test]
+fn tents_on_masts() {
+    check_family("tent", tent, 22);
 }
 
 #[test]

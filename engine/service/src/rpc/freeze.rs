@@ -18,7 +18,7 @@ pub(super) async fn freeze(
     request: v1::FreezeRequest,
     outbox: Outbox<v1::FreezeResponse>,
 ) -> Result<(), Refusal> {
-    let (prepared, _) = prepare(&work, request.brief.unwrap_or_default()).await?;
+    let (prepared, ()) = prepare(&work, request.brief.unwrap_or_default(), |_, _| Ok(())).await?;
     tracing::info!(digest = prepared.work.digest, "freeze");
     let desk = Arc::new(ProgressDesk::new(0));
     let breaks = work.fault(&Fault::PanicInReference);

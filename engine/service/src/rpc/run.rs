@@ -31,15 +31,16 @@ pub(super) struct Prepared {
 /// Answers `request` into `outbox`.
 pub(super) async fn run(work: Work, request: v1::RunRequest, outbox: Outbox<v1::RunResponse>) -> Result<(), Refusal> {
     let clock = Arc::new(Clock::default());
-    let (prepared, findings) = prepare(&work, request.brief.unwrap_or_default()).await?;
-    let cases = prepared
-        .work
-        .select(&request.only)
-        .map_err(|finding| Refusal::BriefHasErrors(vec![finding]))?;
+    let only = request.only;
+    let begin = move |prepared: &Prepared, findings| {
+        let cases = prepared
+            .work
+            .select(&only)
+            .map_err(|finding| Refusal::BriefHasErrors(vec![finding]))?;
+        Ok((head(prepared, &cases, findings), cases))
+    };
+    let (prepared, (head, cases)) = prepare(&work, request.brief.unwrap_or_default(), begin).await?;
     tracing::info!(digest = prepared.work.digest, cases = cases.len(), "run");
-
-    let (about, selected) = (Arc::clone(&prepared), cases.clone());
-    let head = work.compute(move || head(&about, &selected, findings)).await?;
     outbox.send(head).await?;
 
     let desk = Arc::new(ProgressDesk::new(cases.len()));
@@ -70,20 +71,25 @@ pub(super) async fn run(work: Work, request: v1::RunRequest, outbox: Outbox<v1::
     outbox.send(closing).await
 }
 
-/// Reads and plans a brief on the pool; errors in it are a refusal, other findings are handed on.
-pub(super) async fn prepare(work: &Work, brief: v1::Brief) -> Result<(Arc<Prepared>, Vec<v1::Finding>), Refusal> {
+/// Reads and plans a brief on the pool, and there begins with it; errors in it are a refusal, other findings are handed
+/// on.
+pub(super) async fn prepare<T: Send + 'static>(
+    work: &Work,
+    brief: v1::Brief,
+    begin: impl FnOnce(&Prepared, Vec<v1::Finding>) -> Result<T, Refusal> + Send + 'static,
+) -> Result<(Arc<Prepared>, T), Refusal> {
     let limits = work.shared.limits;
     let breaks = work.fault(&Fault::PanicInReading);
     let prepared = work.compute(move || {
         break_on_purpose(breaks);
         let reading = decode::read(brief, &limits);
-        match reading.work {
-            Some(work) => {
-                let plan = Plan::new(work.brief.clone());
-                Ok((Arc::new(Prepared { work, plan }), reading.findings))
-            }
-            None => Err(Refusal::BriefHasErrors(reading.findings)),
-        }
+        let Some(work) = reading.work else {
+            return Err(Refusal::BriefHasErrors(reading.findings));
+        };
+        let plan = Plan::new(work.brief.clone());
+        let prepared = Prepared { work, plan };
+        let begun = begin(&prepared, reading.findings)?;
+        Ok((Arc::new(prepared), begun))
     });
     prepared.await?
 }

@@ -9,8 +9,9 @@ use tonic::Status;
 
 use crate::status::Refusal;
 
-/// Messages that may lie ready for the transport. Each is below 256 KiB.
-const READY: usize = 4;
+/// Messages that may lie ready for the transport: enough that a small run rarely waits for its reader. Each is below
+/// 256 KiB.
+const READY: usize = 16;
 
 /// Where messages go in.
 #[derive(Debug)]

@@ -125,3 +125,58 @@ fn given_lengths_alone_are_solved_as_an_elastic_net() {
     close(found.state.positions[2].z, -sag, 1e-9);
     close(found.state.axial_forces[0], tension, 1e-9 * tension);
 }
+
+/// Loads per length on plan follow the shape of a net of given lengths: `T_x` is the same all along, and at each node the
+/// slopes take up the load of half of both plan lengths.
+#[test]
+fn plan_loads_settle_on_a_net_of_given_lengths() {
+    let mut sketch = Sketch::default();
+    sketch.held("a", [0.0, 0.0, 0.0]);
+    sketch.held("b", [10.0, 0.0, 2.0]);
+    for (name, x) in [("1", 2.5), ("2", 5.0), ("3", 7.5)] {
+        sketch.node(name, [x, 0.0, -1.0]);
+    }
+    sketch.cable("rope", section(1e5, 0.0), "a 1 2 3 b");
+    let net = Arc::new(sketch.net());
+    let plan = Load::PerPlanLength {
+        scope: crate::load::Scope::All,
+        force: Vector3::new(0.0, 0.0, -700.0),
+    };
+    let found = shape(&net, &all(&net, PrestressRule::UnstressedLength(2.7)), vec![plan]).expect("a state");
+    let order = ["a", "1", "2", "3", "b"].map(|name| found.state.positions[node(&net, name).index()]);
+    let mut level = Vec::new();
+    for k in 0..4 {
+        let d = order[k + 1] - order[k];
+        level.push(found.state.axial_forces[k] * d.x / d.norm());
+    }
+    for k in 1..4 {
+        let (before, after) = (order[k] - order[k - 1], order[k + 1] - order[k]);
+        close(level[k], level[0], 1e-7 * level[0]);
+        let bend = level[k] * after.z / after.x - level[k - 1] * before.z / before.x;
+        close(bend, 350.0 * (before.x + after.x), 1e-6 * 350.0);
+    }
+    assert!(
+        (order[1].x - 2.5).abs() > 0.05,
+        "plan lengths differ from those given at the start"
+    );
+}
+
+/// A node held for the search that stands on a spring: the spring at rest bears nothing.
+#[test]
+fn a_held_node_may_have_a_spring() {
+    let mut sketch = Sketch::default();
+    sketch.held("wall", [5.0, 0.0, 0.0]);
+    sketch.held("anchor", [-4.0, 0.0, 0.0]);
+    sketch.sprung("h", [0.0, 0.0, 0.0], [1e5, 1e5, 1e5]);
+    sketch.cable("rope", section(1e6, 0.0), "h wall");
+    sketch.cable("guy", section(1e6, 0.0), "h anchor");
+    let net = Arc::new(sketch.net());
+    let prestress = Prestress {
+        rules: vec![PrestressRule::Tension(700.0), PrestressRule::Balance],
+        hold: vec![node(&net, "h")],
+        ..all(&net, PrestressRule::Balance)
+    };
+    let found = shape(&net, &prestress, vec![]).expect("a shape");
+    close(found.state.axial_forces[1], 700.0, 1e-9);
+    assert!(found.state.positions[node(&net, "h").index()].norm() < 1e-12);
+}
