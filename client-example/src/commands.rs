@@ -329,8 +329,9 @@ fn ending(run: &Run) -> String {
         }
         text.push_str(&format!("  {}\n", wrapped(&format!("in {}", cause.cases.join(", ")))));
     }
-    if !run.findings.is_empty() {
-        text.push_str(&format!("\n{}", refusal::findings_text(&run.findings)));
+    let findings = run.other_findings();
+    if !findings.is_empty() {
+        text.push_str(&format!("\n{}", refusal::findings_text(&findings)));
     }
     text.push_str(&format!(
         "\n{}\n\n{}",

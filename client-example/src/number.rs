@@ -53,6 +53,16 @@ pub(crate) fn percent(share: f64) -> String {
     if text == "-0" { "0".to_owned() } else { text }
 }
 
+/// A number with so many decimals; no negative zero, and zero without decimals.
+pub(crate) fn fixed(number: f64, decimals: usize) -> String {
+    let text = format!("{number:.decimals$}");
+    if text.parse::<f64>().is_ok_and(|value| value == 0.0) {
+        "0".to_owned()
+    } else {
+        text
+    }
+}
+
 /// A number without the noise that a change of unit leaves in its last digits: nine digits.
 pub(crate) fn clean(number: f64) -> f64 {
     format!("{number:.8e}").parse().expect("a formatted number is a number")

@@ -157,7 +157,7 @@ pub(crate) fn brief() -> String {
     "struts": [
       {{"id": "mast W", "role": "mast", "nodes": ["FW", "W"]}},
       {{"id": "mast E", "role": "mast", "nodes": ["FE", "E"]}},
-      {{"id": "prop", "role": "prop", "nodes": ["PF", "P"], "note": "stands in the line, without side guys"}}
+      {{"id": "lantern prop", "role": "prop", "nodes": ["PF", "P"], "note": "stands in the line, without side guys"}}
     ],
     "groups": [
 {groups}

@@ -18,6 +18,9 @@ const HEADROOM: f64 = 84.0;
 /// Up to so many rope segments each gets its number; beyond, each rope gets that of its largest tension.
 const NUMBERS_EACH: usize = 40;
 
+/// Share of a pull that must lie in plan for an arrow to say anything.
+const LEVEL: f64 = 0.15;
+
 /// From plan coordinates to the sheet.
 struct View {
     scale: f64,
@@ -60,9 +63,18 @@ struct Taken(Vec<[f64; 4]>);
 impl Taken {
     /// Takes a place for a text around a point, if it is free.
     fn take(&mut self, x: f64, y: f64, letters: usize) -> bool {
+        self.take_box(x, y, letters, 9.0)
+    }
+
+    /// The same for a text of two lines.
+    fn take_lines(&mut self, x: f64, y: f64, letters: usize) -> bool {
+        self.take_box(x, y, letters, 16.0)
+    }
+
+    fn take_box(&mut self, x: f64, y: f64, letters: usize, half_height: f64) -> bool {
         #[allow(clippy::cast_precision_loss, reason = "a label has few letters")]
         let half = 3.9 * letters as f64 + 3.0;
-        let place = [x - half, y - 9.0, x + half, y + 9.0];
+        let place = [x - half, y - half_height, x + half, y + half_height];
         let free = self
             .0
             .iter()
@@ -113,6 +125,10 @@ pub(crate) fn plan(run: &Run, state: &State, scale: &Scale) -> Option<String> {
                 answered,
             },
         );
+    }
+    for &node in &run.supports {
+        let [x, y] = view.at(positions[node]);
+        taken.take(x, y, 1);
     }
     if answered {
         arrows(&mut sketch, run, state, &view, &positions, &mut taken);
@@ -281,7 +297,7 @@ fn arrows(sketch: &mut Sketch, run: &Run, state: &State, view: &View, positions:
             continue;
         }
         let [x, y] = view.at(positions[node]);
-        let flat = level > 0.02 * size;
+        let flat = level > LEVEL * size;
         let [dx, dy] = if flat {
             [pull[0] / level, -pull[1] / level]
         } else {
@@ -341,22 +357,20 @@ fn pull_label(
     let letters = first.chars().count().max(upright.chars().count());
     #[allow(clippy::cast_precision_loss, reason = "a label has few letters")]
     let half = 3.9 * letters as f64;
-    // Without a horizontal part there is no arrow; the numbers stand below the anchor. Farther out if the place is taken.
-    let mut chosen = None;
-    for step in 0..6 {
-        let way = 58.0 + 16.0 * f64::from(step);
-        let [x, y] = if out == [0.0, 0.0] {
-            [place[0], place[1] + way - 28.0]
+    // Without an arrow the numbers stand below the anchor. Farther out where the place is taken.
+    let mut chosen = place;
+    for step in 0..8 {
+        let way = 58.0 + 14.0 * f64::from(step);
+        chosen = if out == [0.0, 0.0] {
+            [place[0], place[1] + way - 32.0]
         } else {
             [place[0] + out[0] * (way + half), place[1] + out[1] * (way + 12.0)]
         };
-        chosen.get_or_insert([x, y]);
-        if taken.take(x, y - 7.0, letters) && taken.take(x, y + 8.0, 2) {
-            chosen = Some([x, y]);
+        if taken.take_lines(chosen[0], chosen[1], letters) {
             break;
         }
     }
-    let [x, y] = chosen.expect("there is a first place");
+    let [x, y] = chosen;
     sketch.put(format_args!(
         "<text x=\"{x:.1}\" y=\"{:.1}\" text-anchor=\"middle\" {HALO}><tspan class=\"pull\" font-weight=\"600\" data-anchor=\"{id}\" \
          data-pull-kn=\"{}\">{first}</tspan><tspan x=\"{x:.1}\" dy=\"15\" font-size=\"12\">{upright}</tspan></text>",

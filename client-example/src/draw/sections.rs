@@ -9,7 +9,9 @@ use crate::run::{Run, State};
 const WIDTH: f64 = 1200.0;
 const LEFT: f64 = 92.0;
 const RIGHT: f64 = 930.0;
-const SHAPE: f64 = 190.0;
+/// Height of a shape: enough for the key beside it, and no more than a sheet bears.
+const SHAPE: [f64; 2] = [170.0, 460.0];
+const USUAL: f64 = 230.0;
 const MOVE: f64 = 90.0;
 const GAP: f64 = 62.0;
 /// Colours and dashes of the cases: told apart without colour too.
@@ -35,7 +37,7 @@ pub(crate) fn sections(run: &Run) -> Option<String> {
         return None;
     }
     let mut sketch = Sketch::new();
-    let line = "Reference state and the cases that move the rope most. Heights are drawn as exaggerated as written; the place in plan is that of the reference state.";
+    let line = "Reference state and the cases that move the rope most. Movements are drawn to the scale of the heights; the place in plan is that of the reference state.";
     frame::head(
         &mut sketch,
         &format!("{} · sections along ropes", run.title()),
@@ -43,8 +45,8 @@ pub(crate) fn sections(run: &Run) -> Option<String> {
     );
     let mut top = 128.0;
     for profile in &profiles {
-        draw(&mut sketch, run, profile, top);
-        top += SHAPE + MOVE + GAP + 56.0;
+        let shape = draw(&mut sketch, run, profile, top);
+        top += shape + MOVE + GAP + 56.0;
     }
     frame::foot(&mut sketch, run, top);
     Some(sketch.finish(WIDTH, top + 20.0, &format!("{}, sections", run.title())))
@@ -81,13 +83,22 @@ fn profile(run: &Run, cable: usize) -> Option<Profile<'_>> {
     })
 }
 
+fn scale_words(exaggeration: f64) -> String {
+    if exaggeration == 1.0 {
+        "true to scale".to_owned()
+    } else {
+        format!("heights drawn {exaggeration} times")
+    }
+}
+
 fn bounds(values: impl Iterator<Item = f64>) -> (f64, f64) {
     values.fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), value| {
         (low.min(value), high.max(value))
     })
 }
 
-fn draw(sketch: &mut Sketch, run: &Run, profile: &Profile, top: f64) {
+/// Draws a section; returns the height of its shape.
+fn draw(sketch: &mut Sketch, run: &Run, profile: &Profile, top: f64) -> f64 {
     let end = *profile.way.last().expect("a rope has nodes");
     let across = (RIGHT - LEFT) / end;
     let all = profile
@@ -97,32 +108,38 @@ fn draw(sketch: &mut Sketch, run: &Run, profile: &Profile, top: f64) {
         .chain([&profile.reference]);
     let heights = all.flat_map(|positions| profile.nodes.iter().map(|&node| positions[node][2]));
     let (low, high) = bounds(heights);
-    // One of a few round exaggerations, the largest that fits.
-    let fits = SHAPE / ((high - low).max(1e-3) * across);
-    let exaggeration = frame::round_below(fits.max(1e-3)).min(20.0);
+    // True to scale if that is high enough, else the largest round exaggeration that keeps to the usual height. Flattened
+    // only where a sheet could not bear the rope.
+    let true_height = (high - low).max(1e-3) * across;
+    let exaggeration = if true_height > SHAPE[1] {
+        frame::round_below(SHAPE[1] / true_height)
+    } else {
+        frame::round_below((USUAL / true_height).max(1.0)).min(20.0)
+    };
+    let shape = (true_height * exaggeration + 24.0).max(SHAPE[0]);
     let up = across * exaggeration;
     let middle = f64::midpoint(low, high);
     let x = |way: f64| LEFT + way * across;
-    let y = |height: f64| top + SHAPE / 2.0 - (height - middle) * up;
+    let y = |height: f64| top + shape / 2.0 - (height - middle) * up;
 
     sketch.put(format_args!(
         "<text x=\"{LEFT}\" y=\"{:.1}\" font-size=\"16\" font-weight=\"600\">{}</text>\
-         <text x=\"{RIGHT}\" y=\"{:.1}\" text-anchor=\"end\" fill=\"{MUTED}\">heights {} times exaggerated</text>",
+         <text x=\"{RIGHT}\" y=\"{:.1}\" text-anchor=\"end\" fill=\"{MUTED}\">{}</text>",
         top - 16.0,
         markup(&frame::short(&format!("along {}", profile.name), 60)),
         top - 16.0,
-        three(exaggeration)
+        scale_words(exaggeration)
     ));
-    for tick in ticks(middle - SHAPE / 2.0 / up, middle + SHAPE / 2.0 / up, 4.0) {
+    for tick in ticks(middle - shape / 2.0 / up, middle + shape / 2.0 / up, 4.0) {
         rule(sketch, [LEFT, y(tick)], [RIGHT, y(tick)]);
         sketch.put(format_args!(
             "<text x=\"{:.1}\" y=\"{:.1}\" text-anchor=\"end\" font-size=\"12\">{}</text>",
             LEFT - 8.0,
             y(tick) + 4.0,
-            three(tick)
+            tick
         ));
     }
-    axis_title(sketch, top + SHAPE / 2.0, "height (m)");
+    axis_title(sketch, top + shape / 2.0, "height (m)");
 
     let line = |positions: &[[f64; 3]]| -> String {
         let points = profile
@@ -155,8 +172,9 @@ fn draw(sketch: &mut Sketch, run: &Run, profile: &Profile, top: f64) {
         };
         sketch.put(format_args!("<polyline points=\"{}\" fill=\"none\" stroke=\"{colour}\" stroke-width=\"1.8\"{dash}><title>{}</title></polyline>", line(positions), markup(&state.id)));
     }
-    moves(sketch, run, profile, top + SHAPE + 34.0, across);
-    key(sketch, profile, top);
+    moves(sketch, run, profile, top + shape + 34.0, across);
+    key(sketch, profile, top, shape);
+    shape
 }
 
 /// The movement along the rope (mm), with the largest of each case written at its place.
@@ -178,7 +196,7 @@ fn moves(sketch: &mut Sketch, run: &Run, profile: &Profile, top: f64, across: f6
             "<text x=\"{:.1}\" y=\"{:.1}\" text-anchor=\"end\" font-size=\"12\">{}</text>",
             LEFT - 8.0,
             y(tick) + 4.0,
-            three(tick)
+            tick
         ));
     }
     axis_title(sketch, top + MOVE / 2.0, "moved (mm)");
@@ -190,7 +208,7 @@ fn moves(sketch: &mut Sketch, run: &Run, profile: &Profile, top: f64, across: f6
             top + MOVE,
             x(tick),
             top + MOVE + 19.0,
-            three(tick)
+            tick
         ));
     }
     sketch.put(format_args!(
@@ -238,7 +256,7 @@ fn axis_title(sketch: &mut Sketch, y: f64, words: &str) {
 }
 
 /// Which line is which, with the largest movement of each.
-fn key(sketch: &mut Sketch, profile: &Profile, top: f64) {
+fn key(sketch: &mut Sketch, profile: &Profile, top: f64, shape: f64) {
     let x = RIGHT + 24.0;
     sketch.put(format_args!("<path d=\"M{x} {top:.1}h26\" stroke=\"{INK}\" stroke-width=\"2.2\"/><text x=\"{:.1}\" y=\"{:.1}\">reference</text>", x + 34.0, top + 4.5));
     for (number, ((state, _), (colour, dash))) in (1_u8..).zip(profile.cases.iter().zip(CASES)) {
@@ -269,6 +287,6 @@ fn key(sketch: &mut Sketch, profile: &Profile, top: f64) {
         "<path d=\"M{:.1} {:.1}V{:.1}\" stroke=\"{HAIR}\"/>",
         RIGHT + 10.0,
         top,
-        top + SHAPE
+        top + shape
     ));
 }

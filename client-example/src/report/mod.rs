@@ -211,11 +211,11 @@ fn drawings(run: &Run, scale: &Scale) -> String {
 }
 
 fn findings(run: &Run) -> String {
-    if run.findings.is_empty() {
+    let findings = run.other_findings();
+    if findings.is_empty() {
         return String::new();
     }
-    let items: String = run
-        .findings
+    let items: String = findings
         .iter()
         .take(200)
         .map(|finding| {

@@ -162,6 +162,20 @@ impl Run {
         lists
     }
 
+    /// Findings beside those that only repeat why a case has no answer.
+    pub(crate) fn other_findings(&self) -> Vec<v1::Finding> {
+        let causes: Vec<&str> = self
+            .states
+            .iter()
+            .filter_map(|state| Some(state.summary.failure.as_ref()?.message.as_str()))
+            .collect();
+        self.findings
+            .iter()
+            .filter(|finding| !causes.contains(&finding.message.as_str()))
+            .cloned()
+            .collect()
+    }
+
     /// Title for people, or the id.
     pub(crate) fn title(&self) -> &str {
         if self.brief.title.is_empty() {

@@ -80,14 +80,15 @@ pub(crate) fn anchors(run: &Run) -> Sheet {
         for (state, pull) in of_node {
             let limit = limit(run, node, state);
             let used = limit.map(|limit| pull.size() / limit);
+            let [hx, hy, v] = Cell::components(pull.parts.map(|part| part / 1e3), pull.size() / 1e3);
             rows.push(Row {
                 cells: vec![
                     Cell::text(&run.nodes[node]),
                     Cell::text(&state.id),
                     Cell::text(state.sets.join(", ")),
-                    Cell::three(pull.parts[0] / 1e3),
-                    Cell::three(pull.parts[1] / 1e3),
-                    Cell::three(pull.parts[2] / 1e3),
+                    hx,
+                    hy,
+                    v,
                     Cell::three(pull.size() / 1e3),
                     Cell::Number(pull.plan_deg(), Show::Whole),
                     Cell::Number(pull.up_deg(), Show::Whole),
@@ -162,14 +163,15 @@ pub(crate) fn anchor_peaks(run: &Run) -> Sheet {
         let lifts = up.parts[2] > 0.0;
         // Rounding noise is no reversal: a thousandth of the pull counts.
         let turns = lifts && lowest < 0.0 && lowest.abs().min(up.parts[2]) > 1e-3 * pull.size();
+        let [hx, hy, v] = Cell::components(pull.parts.map(|part| part / 1e3), pull.size() / 1e3);
         let row = Row {
             cells: vec![
                 Cell::text(&run.nodes[node]),
                 Cell::three(pull.size() / 1e3),
                 Cell::text(words(pull)),
-                Cell::three(pull.parts[0] / 1e3),
-                Cell::three(pull.parts[1] / 1e3),
-                Cell::three(pull.parts[2] / 1e3),
+                hx,
+                hy,
+                v,
                 Cell::Number(pull.plan_deg(), Show::Whole),
                 Cell::Number(pull.up_deg(), Show::Whole),
                 Cell::text(&state.id),
@@ -208,7 +210,7 @@ pub(crate) fn anchor_peaks(run: &Run) -> Sheet {
             head("case", ""),
             head("largest uplift", "kN"),
             head("case of uplift", ""),
-            head("V turns round", ""),
+            head("V reverses", ""),
             head("limit", "kN"),
             head("used", "%"),
         ],

@@ -31,6 +31,8 @@ pub(crate) enum Show {
     Whole,
     /// One digit and a power of ten.
     Order,
+    /// So many decimals: a component of something that has three digits with them.
+    Decimals(usize),
 }
 
 /// A cell.
@@ -53,6 +55,14 @@ impl Cell {
         Self::Number(number, Show::Three)
     }
 
+    /// Components of a vector, with the decimals that its size has with three digits.
+    pub(crate) fn components<const N: usize>(parts: [f64; N], size: f64) -> [Self; N] {
+        let decimals = number::three(size)
+            .split_once('.')
+            .map_or(0, |(_, decimals)| decimals.len());
+        parts.map(|part| Self::Number(part, Show::Decimals(decimals)))
+    }
+
     pub(crate) fn percent(share: f64) -> Self {
         Self::Number(share, Show::Percent)
     }
@@ -67,10 +77,8 @@ impl Cell {
             Self::Text(text) => text.clone(),
             Self::Number(number, Show::Three) => number::three(*number),
             Self::Number(number, Show::Percent) => number::percent(*number),
-            Self::Number(number, Show::Whole) => {
-                let text = format!("{number:.0}");
-                if text == "-0" { "0".to_owned() } else { text }
-            }
+            Self::Number(number, Show::Whole) => number::fixed(*number, 0),
+            Self::Number(number, Show::Decimals(decimals)) => number::fixed(*number, *decimals),
             Self::Number(number, Show::Order) => number::order(*number),
             Self::Count(count) => count.to_string(),
             Self::Empty => "–".to_owned(),
