@@ -164,6 +164,15 @@ fn events_come_in_order() {
     );
 }
 
+/// The post stands upright: its pull has no direction in plan, and rounding does not make one up.
+#[test]
+fn an_upright_pull_has_no_angle_in_plan() {
+    let events = run(&work(&terrace()), &[]);
+    let arrays = arrays(&events);
+    let angle = |name: &str| arrays[&("reference".to_owned(), name.to_owned())].values[5];
+    assert_eq!((angle("end_angle_plan_deg"), angle("end_angle_up_deg")), (0.0, -90.0));
+}
+
 /// Equal load steps of one case: it is put on in halves, the other cases are not.
 #[test]
 fn load_steps_of_a_case_are_its_own() {

@@ -10,7 +10,7 @@ use crate::config::Limits;
 
 /// Bytes of one element of a list: it must fit a message from the server, which stays below 1 MiB.
 const LARGEST_ELEMENT: usize = 900 * 1024;
-/// Bytes of title, remark and labels together.
+/// Bytes of what a frozen brief says in one message: title, remarks, labels, the actions of the reference state.
 const LARGEST_HEAD: usize = 128 * 1024;
 
 /// Refuses lists that are too long, before anything is made of them. Answers whether to go on.
@@ -91,15 +91,19 @@ pub(crate) fn elements(brief: &v1::Brief, findings: &mut Findings) {
         Some(v1::brief::NetSource::Net(net)) => net.note.len(),
         _ => 0,
     };
-    let head = brief.title.len() + brief.note.len() + labels + notes + net;
+    let under: usize = (brief.prestress.iter())
+        .flat_map(|prestress| &prestress.under)
+        .map(|id| id.len() + 4)
+        .sum();
+    let head = brief.title.len() + brief.note.len() + labels + notes + net + under;
     if head > LARGEST_HEAD {
         findings
             .error(
                 reasons::TOO_LARGE,
                 &Path::root("note"),
                 "",
-                format!("title, remarks and labels take {head} bytes: at most {LARGEST_HEAD} can be sent back"),
-                "keep long texts elsewhere",
+                format!("title, remarks, labels and prestress.under take {head} bytes: at most {LARGEST_HEAD} can be sent back"),
+                "keep long texts elsewhere, and gather loads in fewer actions",
             )
             .value(head);
     }

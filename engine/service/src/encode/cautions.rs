@@ -22,16 +22,33 @@ pub fn cautions() -> Vec<String> {
 
 /// Cautions of a run: those of every result, then its own.
 pub(super) fn of_run(own: &[Caution]) -> Vec<String> {
-    let own = own.iter().map(|caution| clipped(&caution.to_string()));
+    let own = own.iter().map(|caution| sentence(&caution.to_string()));
     cautions().into_iter().chain(own).collect()
 }
 
-fn clipped(text: &str) -> String {
-    /// Characters of one caution; lists of ids may be long.
+/// The text as a sentence, cut where it is long: lists of ids may be.
+fn sentence(text: &str) -> String {
+    /// Characters of one caution.
     const LONGEST: usize = 2000;
-    if text.chars().count() <= LONGEST {
-        return text.to_owned();
+    let mut letters = text.chars();
+    let first = letters.next().map(|letter| letter.to_uppercase().to_string());
+    let rest: String = letters.by_ref().take(LONGEST).collect();
+    let end = match (letters.next(), rest.ends_with('?')) {
+        (Some(_), _) => " ...",
+        (None, true) => "",
+        (None, false) => ".",
+    };
+    format!("{}{rest}{end}", first.unwrap_or_default())
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn cautions_are_sentences_of_bounded_length() {
+        assert_eq!(sentence("the net has struts"), "The net has struts.");
+        assert_eq!(sentence("was it in kN?"), "Was it in kN?");
+        assert!(sentence(&"x".repeat(5000)).ends_with("x ...") && sentence(&"x".repeat(5000)).len() < 2100);
     }
-    let head: String = text.chars().take(LONGEST).collect();
-    format!("{head} ...")
 }

@@ -99,13 +99,21 @@ pub(super) fn arrays(net: &Net, case: &str, state: &StateResult, reference_lengt
     send("support_force_own_axes_n", Range::Support, 3, own);
     let ends = &state.end_forces;
     send("end_force_n", Range::End, 3, flat(ends.iter().map(|end| &end.force)));
-    let plan = ends.iter().map(|end| end.force.y.atan2(end.force.x).to_degrees());
+    let plan = ends.iter().map(|end| angle_in_plan(&end.force).to_degrees());
     send("end_angle_plan_deg", Range::End, 1, plan.collect());
     let up = ends
         .iter()
         .map(|end| end.force.z.atan2(end.force.x.hypot(end.force.y)).to_degrees());
     send("end_angle_up_deg", Range::End, 1, up.collect());
     messages
+}
+
+/// Angle of a pull in plan, from x towards y (rad); zero where it is upright, since rounding would decide.
+fn angle_in_plan(force: &Vector3<f64>) -> f64 {
+    if force.x.hypot(force.y) <= 1e-12 * force.norm() {
+        return 0.0;
+    }
+    force.y.atan2(force.x)
 }
 
 /// How the iterations of a state went.
