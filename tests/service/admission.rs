@@ -76,7 +76,7 @@ async fn a_full_server_refuses_at_once_and_says_when_to_come_back() {
         .retry_delay
         .expect("a time");
     assert!(Duration::from_millis(100) <= come_back && come_back <= Duration::from_secs(60));
-    assert!(took < Duration::from_millis(200), "{took:?}");
+    assert!(took < Duration::from_secs(1), "{took:?}");
 
     // Information is there all the same.
     let mut server = ServerServiceClient::new(engine.channel().await);
