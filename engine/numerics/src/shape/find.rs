@@ -111,16 +111,16 @@ fn shape(
     observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
 ) -> Result<(Shape, u32), ShapeError> {
     let net = analysis.structure().net();
-    let (start, densities, iterations) = start(analysis, parts, observe)?;
+    let start = start(analysis, parts, observe)?;
     let mut search = Search::new(analysis, parts, loads, observe);
-    search.iterations = iterations;
+    search.iterations = start.iterations;
     search.check_held()?;
     let members = parts.balance();
     let ends_move = members
         .iter()
         .flat_map(|e| net.segments()[*e].ends)
         .any(|end| !analysis.structure().dofs().directions(end).is_empty());
-    let mut found = search.with_wanted_tensions(start, densities)?;
+    let mut found = search.with_wanted_tensions(start.positions, start.densities)?;
     let mut balance = None;
     for _ in 0..MAX_ROUNDS {
         if hold.is_empty() && members.is_empty() {
@@ -155,14 +155,23 @@ fn shape(
     ))
 }
 
-/// Positions and force densities of the families to start from, and the factorisations it took.
+/// Where a search starts.
+struct Start {
+    positions: Vec<Vector3<f64>>,
+    /// Force density of each family (N/m).
+    densities: Vec<f64>,
+    /// Factorisations that it took.
+    iterations: u32,
+}
+
+/// Positions and force densities of the families to start from.
 ///
 /// A free node without coordinates starts where force densities alone would put it.
 fn start(
     analysis: &Analysis,
     parts: &Parts,
     observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
-) -> Result<(Vec<Vector3<f64>>, Vec<f64>, u32), ShapeError> {
+) -> Result<Start, ShapeError> {
     let net = analysis.structure().net();
     let given: Vec<Vector3<f64>> = net.nodes().iter().filter_map(|n| n.position).collect();
     let middle = given.iter().sum::<Vector3<f64>>() / (given.len().max(1) as f64);
@@ -213,7 +222,11 @@ fn start(
             *density = family.wanted / mean;
         }
     }
-    Ok((positions, densities, iterations))
+    Ok(Start {
+        positions,
+        densities,
+        iterations,
+    })
 }
 
 /// Refuses a shape in which both ends of a member coincide.
