@@ -45,3 +45,9 @@ def test_pins_are_those_of_the_tests():
     assert named
     for pin in named:
         assert pin in tested, pin
+
+
+def test_links_lead_somewhere():
+    for page in ("README.md", "DEVELOPERS.md"):
+        for link in re.findall(r"\]\(([^)#]+)\)", (stubs.ROOT / page).read_text()):
+            assert "://" in link or (stubs.ROOT / link).exists(), f"{page}: {link}"

@@ -146,8 +146,17 @@ fn errors(findings: &[v1::Finding]) -> impl Iterator<Item = &v1::Finding> {
         .filter(|finding| finding.severity() == v1::FindingSeverity::Error)
 }
 
+/// All errors: a finding that stands for those left out counts as many as it tells.
 fn count_errors(findings: &[v1::Finding]) -> usize {
-    errors(findings).count()
+    errors(findings)
+        .map(|finding| {
+            if finding.reason == crate::decode::reasons::MORE_OF_THE_SAME {
+                finding.value.parse().unwrap_or(1)
+            } else {
+                1
+            }
+        })
+        .sum()
 }
 
 fn first_error(findings: &[v1::Finding]) -> &str {
