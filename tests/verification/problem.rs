@@ -186,6 +186,7 @@ impl Problem {
                 name: "case".to_owned(),
                 sets: Vec::new(),
                 factors: vec![(0, 1.0), (1, 1.0)],
+                load_steps: None,
             }],
             checks: Vec::new(),
             settings: Settings {

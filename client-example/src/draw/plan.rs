@@ -143,16 +143,18 @@ pub(crate) fn plan(run: &Run, state: &State, scale: &Scale) -> Option<String> {
         culprits(&mut sketch, run, &view, &positions, failure);
     }
 
-    frame::legend(&mut sketch, scale, RIGHT + 30.0, TOP + 40.0, 260.0);
+    if answered {
+        frame::legend(&mut sketch, scale, RIGHT + 30.0, TOP + 40.0, 260.0);
+    }
     key(&mut sketch, RIGHT + 30.0, TOP + 340.0, answered);
     let bottom = view.bottom;
     frame::scale_bar(&mut sketch, LEFT, bottom + 12.0, view.scale);
-    let mut remark = String::from("x to the right, y up the sheet; ");
-    remark.push_str(if run.n_rope_segments() <= NUMBERS_EACH {
-        "numbers: kN in each segment"
-    } else {
-        "numbers: largest kN of each rope, at its place"
-    });
+    let mut remark = String::from("x to the right, y up the sheet");
+    if answered && run.n_rope_segments() <= NUMBERS_EACH {
+        remark.push_str("; numbers: kN in each segment");
+    } else if answered {
+        remark.push_str("; numbers: largest kN of each rope, at its place");
+    }
     if left_out > 0 {
         remark.push_str(&format!("; {left_out} left out for room, see segments.csv"));
     }
@@ -225,10 +227,10 @@ fn draw_segment(sketch: &mut Sketch, run: &Run, segment: usize, view: &View, pos
     );
     let strut = matches!(run.segments[segment].member, Member::Strut(_));
     let kn = three(look.force / 1e3);
-    let width = if look.slack {
-        1.3
-    } else {
-        1.2 + 6.0 * (look.force.abs() / look.widest).sqrt()
+    let width = match (look.answered, look.slack) {
+        (false, _) => 1.4,
+        (true, true) => 1.3,
+        (true, false) => 1.2 + 6.0 * (look.force.abs() / look.widest).sqrt(),
     };
     let (stroke, dash) = if !look.answered {
         ("#aab3bc".to_owned(), "")

@@ -6,14 +6,14 @@ use std::path::{Path, PathBuf};
 use std::process::Command;
 
 /// How the program ended.
-pub struct Ended {
-    pub code: i32,
-    pub out: String,
-    pub told: String,
+pub(crate) struct Ended {
+    pub(crate) code: i32,
+    pub(crate) out: String,
+    pub(crate) told: String,
 }
 
 /// Runs the built program; nothing of the caller's settings reaches it.
-pub fn ropewalk(args: &[&str]) -> Ended {
+pub(crate) fn ropewalk(args: &[&str]) -> Ended {
     let mut command = Command::new(env!("CARGO_BIN_EXE_ropewalk"));
     for (name, _) in std::env::vars() {
         if name.starts_with("ROPEWALK_") {
@@ -29,25 +29,25 @@ pub fn ropewalk(args: &[&str]) -> Ended {
 }
 
 /// One of the briefs beside the program.
-pub fn brief(name: &str) -> String {
+pub(crate) fn brief(name: &str) -> String {
     format!("{}/briefs/{name}.json", env!("CARGO_MANIFEST_DIR"))
 }
 
 /// A folder that goes away with its test.
-pub struct Folder(PathBuf);
+pub(crate) struct Folder(PathBuf);
 
 impl Folder {
-    pub fn new(name: &str) -> Self {
+    pub(crate) fn new(name: &str) -> Self {
         let path = std::env::temp_dir().join(format!("ropewalk-test-{name}-{}", std::process::id()));
         fs::create_dir_all(&path).expect("a temporary folder");
         Self(path)
     }
 
-    pub fn path(&self, name: &str) -> PathBuf {
+    pub(crate) fn path(&self, name: &str) -> PathBuf {
         self.0.join(name)
     }
 
-    pub fn write(&self, name: &str, text: &str) -> String {
+    pub(crate) fn write(&self, name: &str, text: &str) -> String {
         fs::write(self.path(name), text).expect("a temporary file");
         self.path(name).to_str().expect("a plain path").to_owned()
     }
@@ -61,12 +61,12 @@ impl Drop for Folder {
 }
 
 /// A JSON file.
-pub fn json(path: &Path) -> serde_json::Value {
+pub(crate) fn json(path: &Path) -> serde_json::Value {
     serde_json::from_str(&fs::read_to_string(path).expect("the file is there")).expect("JSON")
 }
 
 /// A CSV file, row by row.
-pub fn csv(path: &Path) -> Vec<Vec<String>> {
+pub(crate) fn csv(path: &Path) -> Vec<Vec<String>> {
     let text = fs::read_to_string(path).expect("the file is there");
     let (mut rows, mut row, mut cell, mut quoted) = (Vec::new(), Vec::new(), String::new(), false);
     let mut letters = text.chars().peekable();
@@ -89,7 +89,7 @@ pub fn csv(path: &Path) -> Vec<Vec<String>> {
 }
 
 /// Attributes of all elements that have a certain one; the text that follows stands under `text`.
-pub fn attributes(svg: &str, wanted: &str) -> Vec<HashMap<String, String>> {
+pub(crate) fn attributes(svg: &str, wanted: &str) -> Vec<HashMap<String, String>> {
     let mut found = Vec::new();
     for element in svg
         .split('<')
