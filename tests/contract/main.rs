@@ -7,6 +7,7 @@ mod fields;
 mod freezing;
 mod golden;
 mod minimal;
+mod reasons;
 mod results;
 mod sizes;
 mod violations;
