@@ -14,7 +14,7 @@ const TOP: f64 = 120.0;
 /// Room for arrows and their numbers around the net.
 const ROOM: f64 = 122.0;
 /// The same above and below, where numbers take less room.
-const HEADROOM: f64 = 84.0;
+const HEADROOM: f64 = 100.0;
 /// Up to so many rope segments each gets its number; beyond, each rope gets that of its largest tension.
 const NUMBERS_EACH: usize = 40;
 
@@ -38,7 +38,7 @@ impl View {
         };
         let ((x0, x1), (y0, y1)) = (bound(0), bound(1));
         let (wide, high) = ((x1 - x0).max(1e-6), (y1 - y0).max(1e-6));
-        let scale = ((RIGHT - LEFT - 2.0 * ROOM) / wide).min(820.0 / high);
+        let scale = ((RIGHT - LEFT - 2.0 * ROOM) / wide).min(800.0 / high);
         let bottom = TOP + 2.0 * HEADROOM + high * scale;
         let left = f64::midpoint(LEFT, RIGHT) - wide * scale / 2.0;
         Self {
@@ -128,7 +128,7 @@ pub(crate) fn plan(run: &Run, state: &State, scale: &Scale) -> Option<String> {
     }
     for &node in &run.supports {
         let [x, y] = view.at(positions[node]);
-        taken.take(x, y, 1);
+        taken.take_box(x, y, 1, 5.0);
     }
     if answered {
         arrows(&mut sketch, run, state, &view, &positions, &mut taken);
@@ -331,6 +331,10 @@ fn arrows(sketch: &mut Sketch, run: &Run, state: &State, view: &View, positions:
                 head[1] - 11.0 * dy - 5.0 * dx
             ));
         }
+        for way in [20.0, 32.0, 44.0] {
+            // Along its own arrow nothing else may stand.
+            taken.take_box(x + side * way * dx, y + side * way * dy, 1, 5.0);
+        }
         pull_label(sketch, run, node, pull, [x, y], [side * dx, side * dy], taken);
     }
 }
@@ -394,7 +398,7 @@ fn supports(sketch: &mut Sketch, run: &Run, view: &View, positions: &[[f64; 3]],
             markup(id)
         ));
         let shown = short(id, 16);
-        for (dx, dy) in [(0.0, -14.0), (0.0, 20.0), (24.0, 5.0), (-24.0, 5.0)] {
+        for (dx, dy) in [(0.0, -13.0), (0.0, 22.0), (24.0, 5.0), (-24.0, 5.0), (20.0, -12.0)] {
             if taken.take(x + dx, y + dy - 4.0, shown.chars().count()) {
                 sketch.put(format_args!(
                     "<text x=\"{:.1}\" y=\"{:.1}\" text-anchor=\"middle\" font-size=\"12\" fill=\"{MUTED}\" {HALO}>{}</text>",
