@@ -8,6 +8,8 @@
 //! in four equal steps, each to a residual of 1e−8 of the largest nodal load. One thread. Forces here are in N.
 #![allow(clippy::print_stdout, reason = "printing is what it is for")]
 
+#![allow(clippy::disallowed_types, reason = "a bench reads the clock")]
+
 use std::ops::ControlFlow;
 use std::sync::Arc;
 use std::time::Instant;
