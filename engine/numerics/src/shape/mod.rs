@@ -11,6 +11,7 @@ mod loads;
 mod parts;
 mod report;
 mod search;
+mod sensitivity;
 mod targets;
 mod words;
 
