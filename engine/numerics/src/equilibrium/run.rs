@@ -126,7 +126,7 @@ impl<'a> Run<'a> {
         }
         for elastic in self.structure.net().elastic_supports() {
             for (position, end) in elastic.nodes().iter().enumerate() {
-                stiffness[end.index()] += elastic.stiffness().rows(3 * position, 3).abs().row_sum().amax();
+                stiffness[end.index()] += elastic.largest_row_sum(position);
             }
         }
         for (dof, rounding) in self.rounding.iter_mut().enumerate() {
