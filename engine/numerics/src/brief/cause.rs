@@ -1,5 +1,6 @@
 //! Why a case has no answer, in the client's ids.
 
+use std::collections::HashSet;
 use std::fmt;
 
 use nalgebra::Vector3;
@@ -163,7 +164,7 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
         },
         _ if solution.termination == Termination::RunsAway => LikelyCause::RanAway,
         _ if limit < FAIR_LIMIT && solution.factorisations >= limit => LikelyCause::OutOfIterations,
-        _ if n_slack as f64 >= MUCH_SLACK * n_cable_segments as f64 => LikelyCause::MuchSlack {
+        _ if n_slack > 0 && n_slack as f64 >= MUCH_SLACK * n_cable_segments as f64 => LikelyCause::MuchSlack {
             cables: slack_cables(worst_node),
             slack: n_slack,
             of: n_cable_segments,
@@ -224,14 +225,10 @@ fn members_at(net: &Net, node: NodeId) -> Vec<String> {
     distinct(touching.map(|(index, _)| net.member_name(SegmentId::new(index)).to_owned()))
 }
 
+/// Each name once, in order of first mention.
 fn distinct(names: impl Iterator<Item = String>) -> Vec<String> {
-    let mut seen: Vec<String> = Vec::new();
-    for name in names {
-        if !seen.contains(&name) {
-            seen.push(name);
-        }
-    }
-    seen
+    let mut seen = HashSet::new();
+    names.filter(|name| seen.insert(name.clone())).collect()
 }
 
 /// Tells an error of the solver in the client's ids. `positions`: where the net was (m).
