@@ -1,7 +1,8 @@
 //! Nodal balance, found again by a routine that shares no code with assembly.
 //!
 //! Plain loops over what is given and what is claimed; no numbering, no matrices, no element. It goes back to `EA`, `α`,
-//! `ΔT` and `L0`, and compares the claimed axial forces with the law as well as the nodes with their loads.
+//! `ΔT` and `L0`, and compares the claimed axial forces with the law, the nodes with their loads, and the held nodes with
+//! where the case puts their supports.
 
 use nalgebra::Vector3;
 
@@ -10,6 +11,10 @@ use crate::model::{AxialLaw, Net, NodeId, SegmentId};
 
 /// Share of the largest force on the net that may be out of balance, or in doubt in a member.
 const SHARE: f64 = 1e-8;
+
+/// Share of the largest coordinate or length by which a held node may be off its support: some thousand last bits, since
+/// a node that slides along its support gathers one with each step.
+const MISPLACED: f64 = 1e-12;
 
 /// What it found.
 #[derive(Clone, Debug, PartialEq, Default)]
@@ -22,7 +27,9 @@ pub struct Audit {
     pub largest_force_error: f64,
     /// Where.
     pub segment: Option<SegmentId>,
-    /// What is allowed of both (N): 1e−8 of the largest of loads and forces, or the force that the last bits of the
+    /// Largest distance of a held node from where the case puts its support, along its held directions (m).
+    pub largest_misplacement: f64,
+    /// What is allowed of both forces (N): 1e−8 of the largest of loads and forces, or the force that the last bits of the
     /// positions make at the stiffest node (8 ε × `Σ EA/L0` × largest coordinate or length), whichever is more; never
     /// more than 1e−4 of the largest force, unless there is no load and no force beyond that rounding.
     pub allowed: f64,
@@ -126,8 +133,13 @@ pub fn audit(net: &Net, case: &Case, positions: &[Vector3<f64>], axial_forces: &
         let rest = unbalanced[index] + elastic[index];
         let mut held = Vector3::zeros();
         if let Some(support) = net.support_of(node) {
+            let given = net.nodes()[index].position.unwrap_or(positions[index]);
+            let off = positions[index] - given - case.support_movements[index];
             for direction in support.held() {
                 held -= direction * direction.dot(&rest);
+                let distance = direction.dot(&off).abs();
+                finite &= distance.is_finite();
+                audit.largest_misplacement = audit.largest_misplacement.max(distance);
             }
         }
         let free = (rest + held).norm();
@@ -148,6 +160,9 @@ pub fn audit(net: &Net, case: &Case, positions: &[Vector3<f64>], axial_forces: &
         rounding.min(1e-4 * largest)
     };
     audit.allowed = (SHARE * largest).max(hidden);
-    audit.passed = finite && audit.largest_imbalance <= audit.allowed && audit.largest_force_error <= audit.allowed;
+    audit.passed = finite
+        && audit.largest_imbalance <= audit.allowed
+        && audit.largest_force_error <= audit.allowed
+        && audit.largest_misplacement <= MISPLACED * size;
     audit
 }

@@ -51,6 +51,17 @@ fn one_moved_node_is_found() {
 }
 
 #[test]
+fn a_support_that_is_not_where_the_case_puts_it_is_found() {
+    // Everything moved alike is in balance, but not on its supports.
+    let net = saddle_net();
+    let mut solution = net.solve().unwrap();
+    solution.positions.iter_mut().for_each(|x| x.y += 1e-6);
+    let state = audit(&net.net(), &net.case(), &solution.positions, &solution.axial_forces);
+    assert!(!state.passed && state.largest_imbalance <= state.allowed, "{state:?}");
+    assert!((state.largest_misplacement - 1e-6).abs() < 1e-12);
+}
+
+#[test]
 fn skew_sliders_movements_and_coupled_springs_are_balanced_too() {
     let mut net = saddle_net();
     let slider = net.held.remove(3);
