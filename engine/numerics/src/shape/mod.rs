@@ -12,7 +12,7 @@ mod parts;
 mod report;
 mod search;
 mod targets;
-mod words;
+pub(crate) mod words;
 
 #[cfg(test)]
 mod tests;
