@@ -13,7 +13,7 @@ mod report;
 mod search;
 mod sensitivity;
 mod targets;
-mod words;
+pub(crate) mod words;
 
 #[cfg(test)]
 mod tests;

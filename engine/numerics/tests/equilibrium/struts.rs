@@ -272,3 +272,22 @@ fn prisms_that_need_smaller_load_steps() {
         }
     }
 }
+
+#[test]
+fn a_slack_rope_beside_a_strut_between_supports_is_loose() {
+    // Nothing that can move has any stiffness: the question for a free movement has no measure to go by.
+    let net = Example {
+        positions: vec![
+            Vector3::zeros(),
+            Vector3::new(4.0, 0.0, 0.0),
+            Vector3::new(2.0, 0.0, 0.0),
+        ],
+        held: vec![0, 1],
+        segments: vec![(0, 2, 1e6, 2.5), (2, 1, 1e6, 2.5)],
+        struts: vec![(0, 1, 1e7, 4.0)],
+        ..Example::default()
+    };
+    let solution = net.solve().unwrap();
+    assert_eq!(solution.termination, Termination::Converged);
+    assert_eq!(solution.loose_nodes, [NodeId::new(2)]);
+}
