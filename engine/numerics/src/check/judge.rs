@@ -52,7 +52,8 @@ pub struct Judgement {
     pub demand: f64,
     /// What is allowed, in the unit of `demand`.
     pub limit: f64,
-    /// Use of the limit (–): above 1 fails. For slackness the share of tension lost over the share that may be lost.
+    /// Use of the limit (–): above 1 fails. For slackness the share of tension lost over the share that may be lost; a
+    /// slack rope of which only that it is not slack is asked stands at 1, and fails.
     pub ratio: f64,
     /// Whether the demand keeps within the limit.
     pub passes: bool,
@@ -234,7 +235,8 @@ fn judge_part(
                 }
                 let share = digest.axial_forces[segment.index()] / whole;
                 let ratio = (1.0 - share) / (1.0 - min_share_of_reference);
-                let passes = share >= min_share_of_reference;
+                // A slack rope fails a wanted share of zero too: it asks for "not slack".
+                let passes = share >= min_share_of_reference && share > 0.0;
                 judgement(Some(segment), share, min_share_of_reference, ratio, passes)
             })
         }
@@ -320,6 +322,22 @@ mod tests {
         assert_eq!((worst.segment, worst.case), (Some(SegmentId::new(1)), 1));
         assert_eq!((worst.demand, worst.passes), (0.0, false));
         assert!((worst.ratio - 1.25).abs() < 1e-15);
+    }
+
+    #[test]
+    fn a_wanted_share_of_zero_asks_for_a_taut_rope() {
+        let kind = CheckKind::Slackness {
+            min_share_of_reference: 0.0,
+        };
+        let verdict_with = |tension: f64| {
+            let digests = [digest(&[500.0, tension, 0.0]), digest(&[2000.0, 1000.0, 0.0])];
+            let result = judge(&net(), &reference(), &check(kind), &digests);
+            let worst = result.worst().expect("one judgement");
+            (worst.segment, worst.ratio <= 1.0, worst.passes)
+        };
+        // Reference tension 1 kN in segment 1.
+        assert_eq!(verdict_with(0.0), (Some(SegmentId::new(1)), true, false));
+        assert_eq!(verdict_with(1.0), (Some(SegmentId::new(1)), true, true));
     }
 
     #[test]
