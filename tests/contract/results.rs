@@ -32,7 +32,7 @@ pub(crate) fn run(work: &Work, cases: &[usize]) -> Vec<Event> {
             let outcome = plan.case(found, *index, &mut |_| ControlFlow::Continue(()));
             let (said, noted) = case(work, &plan, found, *index, &outcome);
             messages.extend(said);
-            tally.add(*index, noted);
+            tally.add(*index, &noted);
         }
     }
     messages.extend(closing(work, &plan, tally));
@@ -301,7 +301,7 @@ fn a_case_that_nothing_holds_is_told_by_names() {
         .any(|message| matches!(message.event, Some(Event::Columns(_))));
     assert!(!columns, "there is no state to tell");
     let mut tally = Tally::new(&plan, &[0], &Ok(found));
-    tally.add(0, noted);
+    tally.add(0, &noted);
     let summary = closing_of(&work, &plan, tally);
     assert_eq!(summary.verdict(), v1::Verdict::NoAnswer);
     assert_eq!(summary.findings[0].count, 1);
@@ -409,7 +409,7 @@ fn failures_of_our_own_are_told_and_do_not_end_the_run() {
     let found = Ok(found);
     let mut tally = Tally::new(&plan, &[0], &found);
     let (said, noted) = engine_error(&work, &plan, 0);
-    tally.add(0, noted);
+    tally.add(0, &noted);
     let Some(Event::CaseSummary(closing)) = said.last().and_then(|message| message.event.clone()) else {
         panic!("the case is closed");
     };

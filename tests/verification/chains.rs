@@ -131,6 +131,9 @@ fn chains_of_32_bars() {
     }
 }
 
+/// A name in the data and how a chain tells it.
+type Quantity = (&'static str, fn(&Hung) -> f64);
+
 #[test]
 fn chains_approach_the_elastic_catenary() {
     let data = file!("pub-03-elastic-catenary");
@@ -138,7 +141,7 @@ fn chains_approach_the_elastic_catenary() {
         let case = &entry["value"];
         let name = format!("pub-03 {}", entry["quantity"].as_str().expect("a name"));
         let hung: Vec<Hung> = [32, 64, 128, 256].iter().map(|bars| rope(case).hang(*bars)).collect();
-        let quantities: [(&str, fn(&Hung) -> f64); 6] = [
+        let quantities: [Quantity; 6] = [
             ("H", |h| -h.first.x),
             ("V_A", |h| h.first.z),
             ("T_A", |h| h.first.norm()),

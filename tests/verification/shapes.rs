@@ -147,10 +147,13 @@ fn parabolic_cable() {
     }
 }
 
+/// A name in the data and the height over plan (m).
+type Surface = (&'static str, fn(f64, f64) -> f64);
+
 #[test]
 fn grid_takes_discrete_harmonic_shapes() {
     let data = file!("pub-16-fdm-discrete-harmonic");
-    let surfaces: [(&str, fn(f64, f64) -> f64); 3] = [
+    let surfaces: [Surface; 3] = [
         ("max node error: bilinear", |i, j| 0.3 * i * j),
         ("max node error: saddle", |i, j| 0.2 * (i * i - j * j)),
         ("max node error: cubic", |i, j| 0.05 * (i * i * i - 3.0 * i * j * j)),

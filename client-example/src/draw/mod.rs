@@ -4,6 +4,8 @@ mod convergence;
 mod frame;
 mod pick;
 mod plan;
+mod pulls;
+mod room;
 mod sections;
 
 use std::fmt::Write as _;

@@ -1,10 +1,12 @@
 //! The plan of a state: each rope with its tension as width and colour, the pull on each anchor as an arrow.
 
 use super::frame::{self, short};
+use super::pulls::arrows;
+use super::room::{HALO, Taken};
 use super::{ALARM, INK, MUTED, Sketch};
 use crate::colour::{self, Scale};
 use crate::escape::markup;
-use crate::number::{clean, percent, three};
+use crate::number::{percent, three};
 use crate::run::{Member, Run, State};
 
 const WIDTH: f64 = 1200.0;
@@ -14,15 +16,13 @@ const TOP: f64 = 120.0;
 /// Room for arrows and their numbers around the net.
 const ROOM: f64 = 122.0;
 /// The same above and below, where numbers take less room.
-const HEADROOM: f64 = 84.0;
+const HEADROOM: f64 = 100.0;
 /// Up to so many rope segments each gets its number; beyond, each rope gets that of its largest tension.
 const NUMBERS_EACH: usize = 40;
 
-/// Share of a pull that must lie in plan for an arrow to say anything.
-const LEVEL: f64 = 0.15;
-
 /// From plan coordinates to the sheet.
-struct View {
+#[derive(Debug)]
+pub(super) struct View {
     scale: f64,
     origin: [f64; 2],
     bottom: f64,
@@ -38,7 +38,7 @@ impl View {
         };
         let ((x0, x1), (y0, y1)) = (bound(0), bound(1));
         let (wide, high) = ((x1 - x0).max(1e-6), (y1 - y0).max(1e-6));
-        let scale = ((RIGHT - LEFT - 2.0 * ROOM) / wide).min(820.0 / high);
+        let scale = ((RIGHT - LEFT - 2.0 * ROOM) / wide).min(800.0 / high);
         let bottom = TOP + 2.0 * HEADROOM + high * scale;
         let left = f64::midpoint(LEFT, RIGHT) - wide * scale / 2.0;
         Self {
@@ -48,41 +48,11 @@ impl View {
         }
     }
 
-    fn at(&self, position: [f64; 3]) -> [f64; 2] {
+    pub(super) fn at(&self, position: [f64; 3]) -> [f64; 2] {
         [
             self.origin[0] + position[0] * self.scale,
             self.origin[1] - position[1] * self.scale,
         ]
-    }
-}
-
-/// Places that are taken by text.
-#[derive(Default)]
-struct Taken(Vec<[f64; 4]>);
-
-impl Taken {
-    /// Takes a place for a text around a point, if it is free.
-    fn take(&mut self, x: f64, y: f64, letters: usize) -> bool {
-        self.take_box(x, y, letters, 9.0)
-    }
-
-    /// The same for a text of two lines.
-    fn take_lines(&mut self, x: f64, y: f64, letters: usize) -> bool {
-        self.take_box(x, y, letters, 16.0)
-    }
-
-    fn take_box(&mut self, x: f64, y: f64, letters: usize, half_height: f64) -> bool {
-        #[allow(clippy::cast_precision_loss, reason = "a label has few letters")]
-        let half = 3.9 * letters as f64 + 3.0;
-        let place = [x - half, y - half_height, x + half, y + half_height];
-        let free = self
-            .0
-            .iter()
-            .all(|other| place[2] < other[0] || other[2] < place[0] || place[3] < other[1] || other[3] < place[1]);
-        if free {
-            self.0.push(place);
-        }
-        free
     }
 }
 
@@ -128,12 +98,12 @@ pub(crate) fn plan(run: &Run, state: &State, scale: &Scale) -> Option<String> {
     }
     for &node in &run.supports {
         let [x, y] = view.at(positions[node]);
-        taken.take(x, y, 1);
+        taken.take_box(x, y, 1, 5.0);
     }
     if answered {
         arrows(&mut sketch, run, state, &view, &positions, &mut taken);
     }
-    supports(&mut sketch, run, &view, &positions, &mut taken);
+    supports(&mut sketch, run, &view, &positions, (!answered).then_some(&mut taken));
     let left_out = if answered {
         numbers(&mut sketch, run, &view, &positions, &forces, &mut taken)
     } else {
@@ -271,119 +241,8 @@ fn draw_segment(sketch: &mut Sketch, run: &Run, segment: usize, view: &View, pos
     ));
 }
 
-/// Towards the members of a support in plan: on the other side nothing is in the way of an arrow.
-fn towards(run: &Run, node: usize, view: &View, positions: &[[f64; 3]], forces: &[f64]) -> [f64; 2] {
-    let mut sum = [0.0; 2];
-    for end in run.ends.iter().filter(|end| end.node == node) {
-        let nodes = run.segments[end.segment].nodes;
-        let other = if nodes[0] == node { nodes[1] } else { nodes[0] };
-        let (here, there) = (view.at(positions[node]), view.at(positions[other]));
-        let along = [there[0] - here[0], there[1] - here[1]];
-        let size = along[0].hypot(along[1]).max(f64::MIN_POSITIVE);
-        for axis in 0..2 {
-            sum[axis] += forces[end.segment].abs() * along[axis] / size;
-        }
-    }
-    sum
-}
-
-/// The pull on each anchor: an arrow outside the net along its horizontal part, the size and the upright part as numbers.
-fn arrows(sketch: &mut Sketch, run: &Run, state: &State, view: &View, positions: &[[f64; 3]], taken: &mut Taken) {
-    let supports = state.vectors("support_force_n").unwrap_or_default();
-    let forces = run.axial_forces(state).unwrap_or_default();
-    for (&node, force) in run.supports.iter().zip(&supports) {
-        let pull = force.map(|part| 0.0 - part);
-        let level = pull[0].hypot(pull[1]);
-        let size = level.hypot(pull[2]);
-        if size <= 0.0 {
-            continue;
-        }
-        let [x, y] = view.at(positions[node]);
-        let flat = level > LEVEL * size;
-        let [dx, dy] = if flat {
-            [pull[0] / level, -pull[1] / level]
-        } else {
-            [0.0, 0.0]
-        };
-        let net = towards(run, node, view, positions, &forces);
-        // A rope pulls the anchor towards the net, a strut may press it away; the arrow stands outside either way.
-        let pressed = dx * net[0] + dy * net[1] < 0.0;
-        let side = if pressed { 1.0 } else { -1.0 };
-        if flat {
-            let at = |way: f64| [x + side * way * dx, y + side * way * dy];
-            let (head, tail) = if pressed {
-                (at(52.0), at(12.0))
-            } else {
-                (at(12.0), at(52.0))
-            };
-            sketch.put(format_args!(
-                "<path d=\"M{:.1} {:.1}L{:.1} {:.1}\" stroke=\"{INK}\" stroke-width=\"2\"/>\
-                 <path d=\"M{:.1} {:.1}L{:.1} {:.1}L{:.1} {:.1}z\"/>",
-                tail[0],
-                tail[1],
-                head[0] - 6.0 * dx,
-                head[1] - 6.0 * dy,
-                head[0],
-                head[1],
-                head[0] - 11.0 * dx - 5.0 * dy,
-                head[1] - 11.0 * dy + 5.0 * dx,
-                head[0] - 11.0 * dx + 5.0 * dy,
-                head[1] - 11.0 * dy - 5.0 * dx
-            ));
-        }
-        pull_label(sketch, run, node, pull, [x, y], [side * dx, side * dy], taken);
-    }
-}
-
-fn pull_label(
-    sketch: &mut Sketch,
-    run: &Run,
-    node: usize,
-    pull: [f64; 3],
-    place: [f64; 2],
-    out: [f64; 2],
-    taken: &mut Taken,
-) {
-    let size = pull.iter().map(|part| part * part).sum::<f64>().sqrt();
-    let (kn, id) = (size / 1e3, markup(&run.nodes[node]));
-    let upright = if pull[2].abs() < 0.02 * size {
-        String::new()
-    } else {
-        format!(
-            "{} {}",
-            three(pull[2].abs() / 1e3),
-            if pull[2] > 0.0 { "up" } else { "down" }
-        )
-    };
-    let first = format!("{} kN", three(kn));
-    let letters = first.chars().count().max(upright.chars().count());
-    #[allow(clippy::cast_precision_loss, reason = "a label has few letters")]
-    let half = 3.9 * letters as f64;
-    // Without an arrow the numbers stand below the anchor. Farther out where the place is taken.
-    let mut chosen = place;
-    for step in 0..8 {
-        let way = 58.0 + 14.0 * f64::from(step);
-        chosen = if out == [0.0, 0.0] {
-            [place[0], place[1] + way - 32.0]
-        } else {
-            [place[0] + out[0] * (way + half), place[1] + out[1] * (way + 12.0)]
-        };
-        if taken.take_lines(chosen[0], chosen[1], letters) {
-            break;
-        }
-    }
-    let [x, y] = chosen;
-    sketch.put(format_args!(
-        "<text x=\"{x:.1}\" y=\"{:.1}\" text-anchor=\"middle\" {HALO}><tspan class=\"pull\" font-weight=\"600\" data-anchor=\"{id}\" \
-         data-pull-kn=\"{}\">{first}</tspan><tspan x=\"{x:.1}\" dy=\"15\" font-size=\"12\">{upright}</tspan></text>",
-        y - 2.0,
-        clean(kn)
-    ));
-}
-
-const HALO: &str = "stroke=\"#fff\" stroke-width=\"3.5\" stroke-linejoin=\"round\" paint-order=\"stroke\"";
-
-fn supports(sketch: &mut Sketch, run: &Run, view: &View, positions: &[[f64; 3]], taken: &mut Taken) {
+/// Supports as squares, with their names where there is room to be taken for them: beside a pull the name stands already.
+fn supports(sketch: &mut Sketch, run: &Run, view: &View, positions: &[[f64; 3]], mut room: Option<&mut Taken>) {
     for &node in &run.supports {
         let [x, y] = view.at(positions[node]);
         let id = &run.nodes[node];
@@ -393,8 +252,9 @@ fn supports(sketch: &mut Sketch, run: &Run, view: &View, positions: &[[f64; 3]],
             y - 5.5,
             markup(id)
         ));
+        let Some(taken) = room.as_deref_mut() else { continue };
         let shown = short(id, 16);
-        for (dx, dy) in [(0.0, -14.0), (0.0, 20.0), (24.0, 5.0), (-24.0, 5.0)] {
+        for (dx, dy) in [(0.0, -13.0), (0.0, 22.0), (24.0, 5.0), (-24.0, 5.0), (20.0, -12.0)] {
             if taken.take(x + dx, y + dy - 4.0, shown.chars().count()) {
                 sketch.put(format_args!(
                     "<text x=\"{:.1}\" y=\"{:.1}\" text-anchor=\"middle\" font-size=\"12\" fill=\"{MUTED}\" {HALO}>{}</text>",

@@ -37,7 +37,7 @@ pub(crate) fn sections(run: &Run) -> Option<String> {
         return None;
     }
     let mut sketch = Sketch::new();
-    let line = "Reference state and the cases that move the rope most. Movements are drawn to the scale of the heights; the place in plan is that of the reference state.";
+    let line = "Reference state and the cases that move the rope most, movements to the scale of the heights; places in plan are those of the reference.";
     frame::head(
         &mut sketch,
         &format!("{} · sections along ropes", run.title()),

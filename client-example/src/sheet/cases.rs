@@ -66,7 +66,7 @@ pub(crate) fn cases(run: &Run) -> Sheet {
             head("largest movement", "mm"),
             head("at node", ""),
             head("imbalance", "N"),
-            page_head("allowed", "N"),
+            file_head("allowed", "N"),
             page_head("loose nodes", ""),
             file_head("reason", ""),
             file_head("cause", ""),

@@ -7,6 +7,7 @@
 //! 20 MN a metre of width prestressed with 25 kN a metre, snow of 0.9 kN/m² on one half and half of that on the other,
 //! in four equal steps, each to a residual of 1e−8 of the largest nodal load. One thread. Forces here are in N.
 #![allow(clippy::print_stdout, reason = "printing is what it is for")]
+#![allow(clippy::disallowed_types, reason = "a bench reads the clock")]
 
 use std::ops::ControlFlow;
 use std::sync::Arc;

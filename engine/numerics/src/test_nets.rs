@@ -1,6 +1,6 @@
 //! Nets for tests, written by name.
 
-use std::collections::HashMap;
+use std::collections::BTreeMap;
 
 use nalgebra::{DMatrix, Matrix3, Vector3};
 
@@ -22,7 +22,7 @@ pub(crate) fn section(axial_stiffness: f64, mass_per_length: f64) -> Section {
 #[derive(Default)]
 pub(crate) struct Sketch {
     pub(crate) given: NetGiven,
-    index: HashMap<String, usize>,
+    index: BTreeMap<String, usize>,
 }
 
 impl Sketch {

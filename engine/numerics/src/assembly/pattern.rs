@@ -1,6 +1,6 @@
 //! Where a symmetric matrix over the free directions has entries.
 
-use nalgebra_sparse::{CscMatrix, CsrMatrix};
+use nalgebra_sparse::CsrMatrix;
 
 /// Lower triangle, diagonal included, of a symmetric matrix made of dense blocks, in compressed columns with sorted rows.
 ///
@@ -109,8 +109,8 @@ impl Pattern {
     }
 
     /// The whole symmetric matrix, both triangles.
-    #[must_use]
-    pub fn full_matrix(&self, values: &[f64]) -> CscMatrix<f64> {
+    #[cfg(test)]
+    pub(crate) fn full_matrix(&self, values: &[f64]) -> nalgebra_sparse::CscMatrix<f64> {
         let mut entries = nalgebra_sparse::CooMatrix::new(self.size(), self.size());
         for column in 0..self.size() {
             let range = self.column_starts[column]..self.column_starts[column + 1];
@@ -121,7 +121,7 @@ impl Pattern {
                 }
             }
         }
-        CscMatrix::from(&entries)
+        nalgebra_sparse::CscMatrix::from(&entries)
     }
 
     /// Product of the symmetric matrix with a vector.

@@ -1,5 +1,6 @@
 //! Why a case has no answer, in the client's ids.
 
+use std::collections::HashSet;
 use std::fmt;
 
 use nalgebra::Vector3;
@@ -11,6 +12,7 @@ use crate::equilibrium::stability::FreeMovement;
 use crate::equilibrium::{Solution, SolveError, Termination};
 use crate::load::Case;
 use crate::model::{Member, Net, NodeId, ReferenceState, SegmentId};
+use crate::shape::words::{direction, list};
 
 /// A node to blame.
 #[derive(Clone, Debug, PartialEq)]
@@ -80,7 +82,7 @@ pub enum LikelyCause {
         /// Sum of the loads (N).
         load_sum: Vector3<f64>,
     },
-    /// The allowed iterations were used up.
+    /// The methods gave up before the forces were in balance, for no reason that the state shows.
     OutOfIterations,
 }
 
@@ -99,6 +101,8 @@ pub struct Cause {
 
 /// Share of slack segments from which slackness is to blame.
 const MUCH_SLACK: f64 = 0.5;
+/// Ids that a sentence names before it counts.
+const NAMED: usize = 6;
 /// A limit of fewer factorisations is itself to blame: hard nets have taken 70.
 const FAIR_LIMIT: u32 = 100;
 
@@ -163,7 +167,7 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
         },
         _ if solution.termination == Termination::RunsAway => LikelyCause::RanAway,
         _ if limit < FAIR_LIMIT && solution.factorisations >= limit => LikelyCause::OutOfIterations,
-        _ if n_slack as f64 >= MUCH_SLACK * n_cable_segments as f64 => LikelyCause::MuchSlack {
+        _ if n_slack > 0 && n_slack as f64 >= MUCH_SLACK * n_cable_segments as f64 => LikelyCause::MuchSlack {
             cables: slack_cables(worst_node),
             slack: n_slack,
             of: n_cable_segments,
@@ -224,14 +228,10 @@ fn members_at(net: &Net, node: NodeId) -> Vec<String> {
     distinct(touching.map(|(index, _)| net.member_name(SegmentId::new(index)).to_owned()))
 }
 
+/// Each name once, in order of first mention.
 fn distinct(names: impl Iterator<Item = String>) -> Vec<String> {
-    let mut seen: Vec<String> = Vec::new();
-    for name in names {
-        if !seen.contains(&name) {
-            seen.push(name);
-        }
-    }
-    seen
+    let mut seen = HashSet::new();
+    names.filter(|name| seen.insert(name.clone())).collect()
 }
 
 /// Tells an error of the solver in the client's ids. `positions`: where the net was (m).
@@ -288,18 +288,6 @@ pub(super) fn cause_of_error(net: &Net, positions: &[Vector3<f64>], error: &Solv
     }
 }
 
-fn list(names: &[String]) -> String {
-    let quoted: Vec<String> = names.iter().take(6).map(|n| format!("\"{n}\"")).collect();
-    match names.len().saturating_sub(6) {
-        0 => quoted.join(", "),
-        more => format!("{} and {more} more", quoted.join(", ")),
-    }
-}
-
-fn direction(d: &Vector3<f64>) -> String {
-    format!("({:.2}, {:.2}, {:.2})", d.x, d.y, d.z)
-}
-
 impl fmt::Display for Cause {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         let mut text = self.likely.to_string();
@@ -332,7 +320,7 @@ impl fmt::Display for LikelyCause {
             Self::NotHeld { nodes, force } => write!(
                 f,
                 "nothing holds {} along the load of {:.3} kN on them: hold one of them, or join them to a support",
-                list(nodes),
+                list(nodes, NAMED),
                 force.norm() / 1e3
             ),
             Self::Mechanism {
@@ -348,7 +336,7 @@ impl fmt::Display for LikelyCause {
                     "nothing holds \"{node}\" along {}: {} {lie}. Prestress does not stiffen it ({stiffness:.0} N/m). \
                      Spread them, or hold \"{node}\" along that direction",
                     direction(along),
-                    list(members)
+                    list(members, NAMED)
                 )
             }
             Self::UnitSlip {
@@ -370,7 +358,7 @@ impl fmt::Display for LikelyCause {
             Self::MuchSlack { cables, slack, of } => write!(
                 f,
                 "{slack} of {of} cable segments are slack, at the worst node {}: more pull there, or less load",
-                list(cables)
+                list(cables, NAMED)
             ),
             Self::RanAway => f.write_str(
                 "the net ran away from its place: check the size and sign of the loads, and what holds the nodes below",
@@ -384,16 +372,16 @@ impl fmt::Display for LikelyCause {
                 if slack_cables.is_empty() {
                     f.write_str(". Try to put the load on in steps, or check its sign")
                 } else {
-                    let slack = list(slack_cables);
+                    let slack = list(slack_cables, NAMED);
                     write!(
                         f,
                         "; slack: {slack}. Try more pull in these, or check the sign of the loads"
                     )
                 }
             }
-            Self::OutOfIterations => {
-                f.write_str("the allowed iterations were used up: allow more, or put the load on in steps")
-            }
+            Self::OutOfIterations => f.write_str(
+                "the iteration ended before the forces were in balance: allow more, or put the load on in steps",
+            ),
         }
     }
 }

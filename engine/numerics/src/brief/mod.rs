@@ -7,6 +7,7 @@ mod outcome;
 mod plan;
 mod state;
 mod summary;
+mod tally;
 
 #[cfg(test)]
 mod tests;
@@ -16,7 +17,8 @@ pub use estimate::Estimate;
 pub use given::{Brief, CaseGiven};
 pub use outcome::{CaseOutcome, EndForce, ReferenceOutcome, StateResult, SupportForce, Task};
 pub use plan::Plan;
-pub use summary::{Caution, SetEnvelope, Summary};
+pub use summary::{Caution, Summary};
+pub use tally::Tally;
 
 pub use crate::check::{Check, CheckKind, CheckResult, Verdict};
 pub use crate::shape::{Prestress, PrestressRule};

@@ -5,9 +5,8 @@ use std::sync::Arc;
 
 use super::cause::{Stop, cause_of_error, cause_of_stop};
 use super::state::{Bare, state_result};
-use super::summary::worst_ratio;
-use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Summary, Task};
-use crate::check::CaseDigest;
+use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Task};
+use crate::check::{CaseDigest, worst_ratio};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination};
 use crate::load::Case;
 use crate::shape::{self, Found, ShapeError};
@@ -17,7 +16,7 @@ use crate::shape::{self, Found, ShapeError};
 /// It does not change while it is run: cases may be solved side by side, in any order, with the same results.
 #[derive(Debug)]
 pub struct Plan {
-    brief: Brief,
+    brief: Arc<Brief>,
     analysis: Analysis,
 }
 
@@ -27,8 +26,12 @@ impl Plan {
     pub fn new(brief: Brief) -> Self {
         Self {
             analysis: Analysis::new(Arc::clone(&brief.net)),
-            brief,
+            brief: Arc::new(brief),
         }
+    }
+
+    pub(super) fn shared_brief(&self) -> Arc<Brief> {
+        Arc::clone(&self.brief)
     }
 
     /// The work as given.
@@ -91,7 +94,7 @@ impl Plan {
             cases,
             settings,
             ..
-        } = &self.brief;
+        } = &*self.brief;
         let given = &cases[case];
         let settings = &Settings {
             load_steps: given.load_steps.unwrap_or(settings.load_steps),
@@ -143,17 +146,13 @@ impl Plan {
         }
     }
 
-    /// Judges the checks over `cases`, those that were run, and takes the envelopes.
-    ///
-    /// `digests`: one entry a case, in the order of the brief; those of other cases are not looked at.
-    #[must_use]
-    pub fn summary(&self, reference: &ReferenceOutcome, cases: &[usize], digests: &[CaseDigest]) -> Summary {
-        Summary::new(&self.brief, reference, cases, digests)
-    }
-
     /// Worst ratio, in one case, of the checks that cover it (–); `None` where none of them judges anything.
     #[must_use]
     pub fn worst_ratio(&self, reference: &ReferenceOutcome, case: usize, digest: &CaseDigest) -> Option<f64> {
-        worst_ratio(&self.brief, reference, case, digest)
+        let (brief, forces) = (&self.brief, &reference.state.axial_forces);
+        let checks = brief.checks.iter().filter(|check| check.cases.contains(&case));
+        checks
+            .filter_map(|check| worst_ratio(&brief.net, forces, check, case, digest))
+            .reduce(f64::max)
     }
 }

@@ -1,21 +1,10 @@
-//! The end of a run: checks judged, envelopes taken, cautions listed.
+//! The end of a run: what checks and envelopes came to, and what must be said with it.
 
 use std::fmt;
 
-use super::{Brief, ReferenceOutcome};
-use crate::check::{CableEnvelope, CaseDigest, Check, CheckResult, Facts, Verdict, envelope, judge};
+use super::ReferenceOutcome;
+use crate::check::{CheckResult, Envelope, Facts, Verdict};
 use crate::model::{Net, SegmentId};
-
-/// Least and largest forces over the cases of one set.
-#[derive(Clone, Debug, PartialEq)]
-pub struct SetEnvelope {
-    /// The set; `None` stands for all cases.
-    pub set: Option<String>,
-    /// Its cases, by index.
-    pub cases: Vec<usize>,
-    /// Its envelopes.
-    pub envelope: CableEnvelope,
-}
 
 /// Something that must be shown with the results.
 #[derive(Clone, Debug, PartialEq)]
@@ -86,89 +75,13 @@ pub struct Summary {
     pub facts: Facts,
     /// The checks, in the order of the brief.
     pub checks: Vec<CheckResult>,
-    /// Envelopes over all cases, then over each set in order of first mention.
-    pub envelopes: Vec<SetEnvelope>,
+    /// Envelope of every segment over the reference state and the sound cases.
+    pub envelopes: Vec<Envelope>,
     /// What must be shown.
     pub cautions: Vec<Caution>,
 }
 
-impl Summary {
-    pub(super) fn new(brief: &Brief, reference: &ReferenceOutcome, cases: &[usize], digests: &[CaseDigest]) -> Self {
-        let net = &brief.net;
-        let mut ran = vec![false; brief.cases.len()];
-        cases.iter().for_each(|case| ran[*case] = true);
-        let checks: Vec<CheckResult> = brief
-            .checks
-            .iter()
-            .map(|check| judge(net, &reference.state, &over(check, |case| ran[case]), digests))
-            .collect();
-        let of_run: Vec<CaseDigest> = cases.iter().map(|case| digests[*case].clone()).collect();
-        let facts = Facts::new(&of_run, &checks);
-        Self {
-            verdict: if reference.result.audit.passed {
-                facts.verdict()
-            } else {
-                Verdict::NoAnswer
-            },
-            facts,
-            checks,
-            envelopes: envelopes(brief, &ran, digests),
-            cautions: cautions(net, reference),
-        }
-    }
-}
-
-/// The check, over those of its cases that the test picks.
-fn over(check: &Check, picks: impl Fn(usize) -> bool) -> Check {
-    let mut over = check.clone();
-    over.cases.retain(|case| picks(*case));
-    over
-}
-
-/// Worst ratio, in one case, of the checks that cover it (–).
-pub(super) fn worst_ratio(
-    brief: &Brief,
-    reference: &ReferenceOutcome,
-    case: usize,
-    digest: &CaseDigest,
-) -> Option<f64> {
-    let mut digests = vec![CaseDigest::default(); brief.cases.len()];
-    digests[case] = digest.clone();
-    let checks = brief.checks.iter().filter(|check| check.cases.contains(&case));
-    checks
-        .filter_map(|check| {
-            let result = judge(
-                &brief.net,
-                &reference.state,
-                &over(check, |other| other == case),
-                &digests,
-            );
-            result.worst().map(|worst| worst.ratio)
-        })
-        .reduce(f64::max)
-}
-
-fn envelopes(brief: &Brief, ran: &[bool], digests: &[CaseDigest]) -> Vec<SetEnvelope> {
-    let all = (0..brief.cases.len()).filter(|case| ran[*case]);
-    let mut sets: Vec<(Option<String>, Vec<usize>)> = vec![(None, all.collect())];
-    for (index, case) in brief.cases.iter().enumerate().filter(|(index, _)| ran[*index]) {
-        for set in &case.sets {
-            match sets.iter_mut().find(|(name, _)| name.as_ref() == Some(set)) {
-                Some((_, cases)) => cases.push(index),
-                None => sets.push((Some(set.clone()), vec![index])),
-            }
-        }
-    }
-    sets.into_iter()
-        .map(|(set, cases)| SetEnvelope {
-            set,
-            envelope: envelope(&brief.net, digests, &cases),
-            cases,
-        })
-        .collect()
-}
-
-fn cautions(net: &Net, reference: &ReferenceOutcome) -> Vec<Caution> {
+pub(super) fn cautions(net: &Net, reference: &ReferenceOutcome) -> Vec<Caution> {
     let report = &reference.report;
     let names = |segments: &[SegmentId]| {
         let mut names: Vec<String> = segments.iter().map(|s| net.member_name(*s).to_owned()).collect();

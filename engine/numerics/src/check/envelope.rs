@@ -1,15 +1,14 @@
-//! Least and largest axial forces over cases.
+//! Least and largest axial forces over the reference state and cases.
 
 use super::CaseDigest;
-use crate::model::Net;
 
-/// A value and the case that it comes from.
+/// A value and where it comes from.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Extreme {
     /// Axial force (N), tension positive.
     pub value: f64,
-    /// The case, by index.
-    pub case: usize,
+    /// The case, by index; `None` stands for the reference state.
+    pub case: Option<usize>,
 }
 
 /// Least and largest axial force of one segment.
@@ -21,79 +20,86 @@ pub struct Envelope {
     pub largest: Extreme,
 }
 
-impl Envelope {
-    /// The envelope of both.
+/// Envelopes on their way through the cases, one a segment, whatever the order and number of cases.
+#[derive(Clone, Debug)]
+pub struct EnvelopeTally {
+    segments: Vec<Envelope>,
+}
+
+impl EnvelopeTally {
+    /// Envelopes of the reference state alone. `reference_forces`: axial force of every segment in it (N).
     #[must_use]
-    pub fn with(self, other: Self) -> Self {
-        // Strict comparisons: of equals the first case stays.
-        Self {
-            least: if other.least.value < self.least.value {
-                other.least
-            } else {
-                self.least
-            },
-            largest: if other.largest.value > self.largest.value {
-                other.largest
-            } else {
-                self.largest
-            },
-        }
-    }
-}
-
-/// Envelopes of the segments and, from theirs, of the cables; `None` where no case has a sound answer.
-#[derive(Clone, Debug, PartialEq)]
-pub struct CableEnvelope {
-    /// One entry a segment.
-    pub segments: Vec<Option<Envelope>>,
-    /// One entry a cable.
-    pub cables: Vec<Option<Envelope>>,
-}
-
-/// Least and largest axial force of every segment and cable over `cases`, by index into `digests`.
-#[must_use]
-pub fn envelope(net: &Net, digests: &[CaseDigest], cases: &[usize]) -> CableEnvelope {
-    let mut segments: Vec<Option<Envelope>> = vec![None; net.segments().len()];
-    for case in cases.iter().copied().filter(|case| digests[*case].is_sound()) {
-        for (entry, force) in segments.iter_mut().zip(&digests[case].axial_forces) {
-            let extreme = Extreme { value: *force, case };
-            let one = Envelope {
+    pub fn new(reference_forces: &[f64]) -> Self {
+        let alone = |value: &f64| {
+            let extreme = Extreme {
+                value: *value,
+                case: None,
+            };
+            Envelope {
                 least: extreme,
                 largest: extreme,
-            };
-            *entry = Some(entry.map_or(one, |e| e.with(one)));
+            }
+        };
+        Self {
+            segments: reference_forces.iter().map(alone).collect(),
         }
     }
-    let cables = net
-        .cables()
-        .iter()
-        .map(|cable| {
-            let own = segments[cable.segments.clone()].iter().copied().flatten();
-            own.reduce(Envelope::with)
-        })
-        .collect();
-    CableEnvelope { segments, cables }
+
+    /// Takes in a case; one without a sound answer is not looked at.
+    pub fn add(&mut self, case: usize, digest: &CaseDigest) {
+        if !digest.is_sound() {
+            return;
+        }
+        for (envelope, force) in self.segments.iter_mut().zip(&digest.axial_forces) {
+            let (value, case) = (*force, Some(case));
+            // Of equals the reference state, then the first case of the brief: the order of adding leaves no trace.
+            let Envelope { least, largest } = envelope;
+            if value < least.value || (value == least.value && case < least.case) {
+                *least = Extreme { value, case };
+            }
+            if value > largest.value || (value == largest.value && case < largest.case) {
+                *largest = Extreme { value, case };
+            }
+        }
+    }
+
+    /// One envelope a segment.
+    #[must_use]
+    pub fn finish(self) -> Vec<Envelope> {
+        self.segments
+    }
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::check::tests_support::{digest, net};
+    use crate::check::tests_support::{digest, reference_forces};
 
     #[test]
     fn extremes_name_their_case_and_skip_unsound_ones() {
-        let mut digests = vec![
-            digest(&[1.0, 5.0, 0.0]),
-            digest(&[3.0, 4.0, 0.0]),
-            digest(&[-9.0, 99.0, 1.0]),
+        let mut digests = [
+            digest(&[1500.0, 1500.0, 0.0]),
+            digest(&[1000.0, 1500.0, -0.0]),
+            digest(&[-9.0, 9e9, 1.0]),
         ];
         digests[2].audited = false;
-        let found = envelope(&net(), &digests, &[1, 0, 2]);
-        let cable = found.cables[0].expect("two sound cases");
-        assert_eq!(cable.least, Extreme { value: 1.0, case: 0 });
-        assert_eq!(cable.largest, Extreme { value: 5.0, case: 0 });
-        // Equal in both cases: the first one asked for is named.
-        assert_eq!(found.segments[2].expect("two sound cases").largest.case, 1);
-        assert!(envelope(&net(), &digests, &[2]).cables.iter().all(Option::is_none));
+        let found = |order: [usize; 3]| {
+            let mut tally = EnvelopeTally::new(&reference_forces());
+            order.iter().for_each(|case| tally.add(*case, &digests[*case]));
+            tally.finish()
+        };
+        let forward = found([0, 1, 2]);
+        let extreme = |value, case| Extreme { value, case };
+        assert_eq!(forward[0].least, extreme(1000.0, Some(1)));
+        assert_eq!(forward[0].largest, extreme(2000.0, None));
+        // Equal in both cases: the first one is named. As in the reference state: that is named.
+        assert_eq!(forward[1].largest, extreme(1500.0, Some(0)));
+        assert_eq!(forward[2].least, extreme(0.0, None));
+        for order in [[2, 1, 0], [1, 2, 0], [0, 2, 1]] {
+            let other = found(order);
+            assert_eq!(other, forward);
+            let signs = |found: &[Envelope]| found.iter().map(|e| e.least.value.to_bits()).collect::<Vec<_>>();
+            assert_eq!(signs(&other), signs(&forward));
+        }
     }
 }

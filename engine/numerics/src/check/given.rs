@@ -1,5 +1,6 @@
 //! Checks as they are given.
 
+use super::Covered;
 use crate::model::{CableId, NodeId, StrutId};
 
 /// What is checked.
@@ -40,4 +41,13 @@ pub struct Check {
     pub nodes: Vec<NodeId>,
     /// Cases it covers, by index.
     pub cases: Vec<usize>,
+}
+
+impl Check {
+    /// The parts it covers: cables, then struts, then nodes.
+    pub fn covered(&self) -> impl Iterator<Item = Covered> + '_ {
+        (self.cables.iter().map(|cable| Covered::Cable(*cable)))
+            .chain(self.struts.iter().map(|strut| Covered::Strut(*strut)))
+            .chain(self.nodes.iter().map(|node| Covered::Node(*node)))
+    }
 }

@@ -1,7 +1,7 @@
 //! One check judged: member by member, over its cases.
 
 use super::{Check, CheckKind, Share, Verdict};
-use crate::model::{CableId, Net, NodeId, ReferenceState, SegmentId, StrutId};
+use crate::model::{CableId, Net, NodeId, SegmentId, StrutId};
 
 /// The little that checks need of a case, so that its full fields need not be kept.
 #[derive(Clone, Debug, Default, PartialEq)]
@@ -103,46 +103,107 @@ impl CheckResult {
     }
 }
 
-/// Judges one check over the cases that it covers.
-///
-/// A cable is judged only if each of its segments can be: with a breaking force for strength, with a tension in the
-/// reference state for slackness. `digests`: one entry a case, by index.
-#[must_use]
-pub fn judge(net: &Net, reference: &ReferenceState, check: &Check, digests: &[CaseDigest]) -> CheckResult {
-    let (sound, unanswered): (Vec<usize>, Vec<usize>) = check.cases.iter().partition(|case| digests[**case].is_sound());
-    let mut result = CheckResult {
-        kind: check.kind,
-        judgements: Vec::new(),
-        not_judged: Vec::new(),
-        unanswered,
-    };
-    let covered = (check.cables.iter().map(|id| Covered::Cable(*id)))
-        .chain(check.struts.iter().map(|id| Covered::Strut(*id)))
-        .chain(check.nodes.iter().map(|id| Covered::Node(*id)));
-    for part in covered {
-        let judged = sound
-            .iter()
-            .map(|case| judge_part(net, reference, check.kind, part, *case, &digests[*case]))
-            .collect::<Option<Vec<Judgement>>>()
-            .and_then(worst_of);
-        match judged {
-            Some(judgement) => result.judgements.push(judgement),
-            None => result.not_judged.push(part),
-        }
-    }
-    result
+/// What is known of a part before all cases are in.
+#[derive(Clone, Copy, Debug)]
+enum Standing {
+    /// No case yet.
+    Open,
+    /// The worst so far.
+    Worst(Judgement),
+    /// A case could not be judged, and so neither can the part.
+    NotJudged,
 }
 
-fn worst_of(judgements: Vec<Judgement>) -> Option<Judgement> {
-    // The first of equals, so that the governing case does not depend on how many follow it.
-    judgements
-        .into_iter()
-        .reduce(|worst, next| if next.ratio > worst.ratio { next } else { worst })
+/// A check on its way through the cases: the worst of each part so far, whatever the order and number of cases.
+///
+/// A cable is judged only if each of its segments can be: with a breaking force for strength, with a tension in the
+/// reference state for slackness.
+#[derive(Clone, Debug)]
+pub struct CheckTally {
+    kind: CheckKind,
+    parts: Vec<(Covered, Standing)>,
+}
+
+impl CheckTally {
+    /// A check before its first case.
+    #[must_use]
+    pub fn new(check: &Check) -> Self {
+        Self {
+            kind: check.kind,
+            parts: check.covered().map(|part| (part, Standing::Open)).collect(),
+        }
+    }
+
+    /// Takes in a case that the check covers; one without a sound answer is not looked at.
+    ///
+    /// `reference_forces`: axial force of every segment in the reference state (N).
+    pub fn add(&mut self, net: &Net, reference_forces: &[f64], case: usize, digest: &CaseDigest) {
+        if !digest.is_sound() {
+            return;
+        }
+        for (part, standing) in &mut self.parts {
+            let worst = match standing {
+                Standing::NotJudged => continue,
+                Standing::Open => None,
+                Standing::Worst(worst) => Some(*worst),
+            };
+            *standing = match judge_part(net, reference_forces, self.kind, *part, case, digest) {
+                None => Standing::NotJudged,
+                Some(next) => Standing::Worst(worst.map_or(next, |worst| worse_case(worst, next))),
+            };
+        }
+    }
+
+    /// What came of the check. `unanswered`: its cases without a sound answer.
+    #[must_use]
+    pub fn finish(self, unanswered: Vec<usize>) -> CheckResult {
+        let mut result = CheckResult {
+            kind: self.kind,
+            judgements: Vec::new(),
+            not_judged: Vec::new(),
+            unanswered,
+        };
+        for (part, standing) in self.parts {
+            match standing {
+                Standing::Worst(judgement) => result.judgements.push(judgement),
+                Standing::Open | Standing::NotJudged => result.not_judged.push(part),
+            }
+        }
+        result
+    }
+}
+
+/// Of two cases the worse one, of equals the one that comes first in the brief: the order of adding leaves no trace.
+fn worse_case(a: Judgement, b: Judgement) -> Judgement {
+    if b.ratio > a.ratio || (b.ratio == a.ratio && b.case < a.case) {
+        b
+    } else {
+        a
+    }
+}
+
+/// Worst ratio that a check finds in one case (–); `None` where it judges nothing in it.
+#[must_use]
+pub fn worst_ratio(
+    net: &Net,
+    reference_forces: &[f64],
+    check: &Check,
+    case: usize,
+    digest: &CaseDigest,
+) -> Option<f64> {
+    if !digest.is_sound() {
+        return None;
+    }
+    check
+        .covered()
+        .filter_map(|part| judge_part(net, reference_forces, check.kind, part, case, digest))
+        .map(|judgement| judgement.ratio)
+        .reduce(f64::max)
 }
 
 fn judge_part(
     net: &Net,
-    reference: &ReferenceState,
+    reference_forces: &[f64],
     kind: CheckKind,
     part: Covered,
     case: usize,
@@ -168,7 +229,7 @@ fn judge_part(
         }),
         (CheckKind::Slackness { min_share_of_reference }, Covered::Cable(cable)) => {
             over_segments(net, cable, |segment| {
-                let whole = reference.axial_forces[segment.index()];
+                let whole = reference_forces[segment.index()];
                 if whole <= 0.0 || min_share_of_reference >= 1.0 {
                     return None;
                 }
@@ -190,20 +251,38 @@ fn judge_part(
     }
 }
 
-/// The worst of the segments of a cable, if each could be judged.
+/// The worst of the segments of a cable, of equals the first, if each could be judged.
 fn over_segments(net: &Net, cable: CableId, judge: impl Fn(SegmentId) -> Option<Judgement>) -> Option<Judgement> {
-    net.cables()[cable.index()]
-        .segments
-        .clone()
-        .map(|index| judge(SegmentId::new(index)))
-        .collect::<Option<Vec<Judgement>>>()
-        .and_then(worst_of)
+    let mut worst: Option<Judgement> = None;
+    for index in net.cables()[cable.index()].segments.clone() {
+        let next = judge(SegmentId::new(index))?;
+        worst = Some(worst.map_or(next, |worst| if next.ratio > worst.ratio { next } else { worst }));
+    }
+    worst
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::check::tests_support::{digest, net, reference};
+    use crate::check::tests_support::{digest, net, reference_forces};
+
+    fn judge_in_order(check: &Check, digests: &[CaseDigest], order: &[usize]) -> CheckResult {
+        let mut tally = CheckTally::new(check);
+        for case in order {
+            tally.add(&net(), &reference_forces(), *case, &digests[*case]);
+        }
+        let unanswered = check.cases.iter().copied().filter(|case| !digests[*case].is_sound());
+        tally.finish(unanswered.collect())
+    }
+
+    /// The check over all of its cases; whether they come forward or backward must not matter.
+    fn judge(check: &Check, digests: &[CaseDigest]) -> CheckResult {
+        let forward: Vec<usize> = (0..digests.len()).collect();
+        let backward: Vec<usize> = forward.iter().rev().copied().collect();
+        let result = judge_in_order(check, digests, &forward);
+        assert_eq!(result, judge_in_order(check, digests, &backward));
+        result
+    }
 
     fn check(kind: CheckKind) -> Check {
         Check {
@@ -219,12 +298,7 @@ mod tests {
     fn strength_takes_the_worst_segment_and_case() {
         // Breaking force 10 kN in cable 0, unknown in cable 1.
         let digests = [digest(&[1000.0, 2000.0, 3000.0]), digest(&[4000.0, 2500.0, 3000.0])];
-        let result = judge(
-            &net(),
-            &reference(),
-            &check(CheckKind::Safety { factor: 3.0 }),
-            &digests,
-        );
+        let result = judge(&check(CheckKind::Safety { factor: 3.0 }), &digests);
         assert_eq!(result.not_judged, [Covered::Cable(CableId::new(1))]);
         let [only] = result.judgements[..] else {
             panic!("one judgement");
@@ -242,7 +316,7 @@ mod tests {
         let kind = CheckKind::Slackness {
             min_share_of_reference: 0.2,
         };
-        let result = judge(&net(), &reference(), &check(kind), &digests);
+        let result = judge(&check(kind), &digests);
         assert_eq!(result.not_judged, [Covered::Cable(CableId::new(1))]);
         let worst = result.worst().expect("one judgement");
         assert_eq!((worst.segment, worst.case), (Some(SegmentId::new(1)), 1));
@@ -276,7 +350,7 @@ mod tests {
             nodes: vec![NodeId::new(0), NodeId::new(1)],
             ..check(CheckKind::Movement { limit: 0.02 })
         };
-        let result = judge(&net(), &reference(), &check, &digests);
+        let result = judge(&check, &digests);
         assert_eq!(result.not_judged, [Covered::Node(NodeId::new(1))]);
         assert_eq!(result.judgements[0].case, 1);
         assert!(!result.judgements[0].passes);
@@ -293,7 +367,7 @@ mod tests {
             struts: vec![StrutId::new(0)],
             ..check(CheckKind::AnchorPull { limit: 1000.0 })
         };
-        let result = judge(&net(), &reference(), &check, &digests);
+        let result = judge(&check, &digests);
         let unjudged = [Covered::Strut(StrutId::new(0)), Covered::Node(NodeId::new(1))];
         assert_eq!(result.not_judged, unjudged);
         assert_eq!((result.judgements[0].demand, result.judgements[0].case), (900.0, 0));
@@ -304,11 +378,30 @@ mod tests {
     fn a_case_without_a_sound_answer_outranks_everything() {
         let mut digests = [digest(&[1.0; 3]), CaseDigest::default()];
         let check = check(CheckKind::Safety { factor: 1.0 });
-        let verdict = |digests: &[CaseDigest]| judge(&net(), &reference(), &check, digests).verdict();
+        let verdict = |digests: &[CaseDigest]| judge(&check, digests).verdict();
         assert_eq!(verdict(&digests), Verdict::NoAnswer);
         digests[1] = digest(&[1.0; 3]);
         digests[1].audited = false;
         assert_eq!(verdict(&digests), Verdict::NoAnswer);
+    }
+
+    #[test]
+    fn of_equal_cases_the_first_of_the_brief_governs() {
+        let digests = [digest(&[1000.0, 4000.0, 0.0]), digest(&[4000.0, 1000.0, 0.0])];
+        let result = judge(&check(CheckKind::Safety { factor: 3.0 }), &digests);
+        let worst = result.worst().expect("one judgement");
+        assert_eq!((worst.case, worst.segment), (0, Some(SegmentId::new(1))));
+    }
+
+    #[test]
+    fn the_worst_ratio_of_one_case() {
+        let check = check(CheckKind::Safety { factor: 3.0 });
+        let mut digest = digest(&[1000.0, 2000.0, 3000.0]);
+        let ratio = |digest: &CaseDigest| worst_ratio(&net(), &reference_forces(), &check, 1, digest);
+        // 3 · 2 kN against 10 kN; the cable of unknown strength does not count.
+        assert!((ratio(&digest).expect("a judged cable") - 0.6).abs() < 1e-15);
+        digest.audited = false;
+        assert_eq!(ratio(&digest), None);
     }
 
     #[test]
@@ -318,9 +411,6 @@ mod tests {
             ..check(CheckKind::Safety { factor: 1.0 })
         };
         let digests = [digest(&[1.0; 3]), digest(&[1.0; 3])];
-        assert_eq!(
-            judge(&net(), &reference(), &empty, &digests).verdict(),
-            Verdict::NotJudged
-        );
+        assert_eq!(judge(&empty, &digests).verdict(), Verdict::NotJudged);
     }
 }

@@ -7,7 +7,7 @@ mod judge;
 mod tests_support;
 mod verdict;
 
-pub use envelope::{CableEnvelope, Envelope, Extreme, envelope};
+pub use envelope::{Envelope, EnvelopeTally, Extreme};
 pub use given::{Check, CheckKind};
-pub use judge::{CaseDigest, CheckResult, Covered, Judgement, judge};
+pub use judge::{CaseDigest, CheckResult, CheckTally, Covered, Judgement, worst_ratio};
 pub use verdict::{Facts, Share, Verdict};

@@ -3,7 +3,7 @@
 use nalgebra::Vector3;
 
 use super::CaseDigest;
-use crate::model::{CableGiven, Net, NetGiven, NodeGiven, NodeId, ReferenceState, Section, StrutGiven, SupportGiven};
+use crate::model::{CableGiven, Net, NetGiven, NodeGiven, NodeId, Section, StrutGiven, SupportGiven};
 
 /// Cable 0 with two segments (breaking force 10 kN), cable 1 with one (unknown), one strut.
 pub(super) fn net() -> Net {
@@ -44,12 +44,9 @@ pub(super) fn net() -> Net {
     .expect("a valid net")
 }
 
-pub(super) fn reference() -> ReferenceState {
-    ReferenceState {
-        positions: vec![Vector3::zeros(); 3],
-        unstressed_lengths: vec![1.0; 4],
-        axial_forces: vec![2000.0, 1000.0, 0.0, -500.0],
-    }
+/// Axial forces in the reference state (N).
+pub(super) fn reference_forces() -> [f64; 4] {
+    [2000.0, 1000.0, 0.0, -500.0]
 }
 
 /// A sound case with these forces in the cables.

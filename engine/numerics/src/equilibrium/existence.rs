@@ -7,14 +7,16 @@
 //! The same test on the taut segments alone tells which nodes have a place: within a part joined by taut segments all
 //! chords are determined, and so is the place of a part that can not be translated.
 
-use nalgebra::{DMatrix, DVector, Vector3};
+use nalgebra::{DMatrix, DVector, Matrix3, Vector3};
 
 use super::SolveError;
 use crate::assembly::{Loading, Structure};
-use crate::model::{Net, NodeId};
+use crate::model::{ElasticSupport, Net, NodeId};
 
 /// Eigenvalues below this share of the largest count as no resistance.
 const NO_RESISTANCE: f64 = 1e-9;
+/// Stiffness of a spring below this share of the stiffest at the same node is rounding of that one.
+const NO_SPRING: f64 = 1e-12;
 /// Share of the loads on a part below which their sum counts as zero.
 const NO_LOAD: f64 = 1e-9;
 
@@ -34,7 +36,7 @@ pub struct Anchor {
 pub fn check_loads_are_held(structure: &Structure, loading: &Loading) -> Result<Vec<Anchor>, SolveError> {
     let mut anchors = Vec::new();
     let parts = Parts::new(structure, |segment| loading.bars[segment].is_present());
-    for group in parts.groups() {
+    for group in parts.groups(structure.net()) {
         let translations = group.free_translations(structure);
         if translations.ncols() == 0 {
             continue;
@@ -81,7 +83,7 @@ pub fn check_loads_are_held(structure: &Structure, loading: &Loading) -> Result<
 #[must_use]
 pub fn loose_nodes(structure: &Structure, is_taut: impl Fn(usize) -> bool) -> Vec<NodeId> {
     let mut loose = Vec::new();
-    for group in Parts::new(structure, is_taut).groups() {
+    for group in Parts::new(structure, is_taut).groups(structure.net()) {
         let translations = group.free_translations(structure);
         for (part, nodes) in group.parts.iter().enumerate() {
             if translations.rows(3 * part, 3).amax() > 1e-6 {
@@ -103,12 +105,14 @@ struct Parts {
     part_of_node: Vec<usize>,
     nodes: Vec<Vec<NodeId>>,
     group_of_part: Vec<usize>,
+    /// Number of a part within its group.
+    place_in_group: Vec<usize>,
 }
 
 /// Parts that elastic supports couple: to be judged together.
 struct Group<'a> {
     parts: Vec<Vec<NodeId>>,
-    numbers: Vec<usize>,
+    elastic_supports: Vec<&'a ElasticSupport>,
     all: &'a Parts,
 }
 
@@ -132,25 +136,39 @@ impl Parts {
                 groups.join(part_of_node[pair[0].index()], part_of_node[pair[1].index()]);
             }
         }
+        let (group_of_part, n_groups) = groups.numbers();
+        let mut so_far = vec![0; n_groups];
+        let place_in_group = (group_of_part.iter())
+            .map(|group| {
+                so_far[*group] += 1;
+                so_far[*group] - 1
+            })
+            .collect();
         Self {
             part_of_node,
             nodes,
-            group_of_part: groups.numbers().0,
+            group_of_part,
+            place_in_group,
         }
     }
 
-    fn groups(&self) -> Vec<Group<'_>> {
+    fn groups<'a>(&'a self, net: &'a Net) -> Vec<Group<'a>> {
         let n_groups = self.group_of_part.iter().map(|g| g + 1).max().unwrap_or(0);
         let mut groups: Vec<Group<'_>> = (0..n_groups)
             .map(|_| Group {
                 parts: Vec::new(),
-                numbers: Vec::new(),
+                elastic_supports: Vec::new(),
                 all: self,
             })
             .collect();
         for (part, group) in self.group_of_part.iter().enumerate() {
             groups[*group].parts.push(self.nodes[part].clone());
-            groups[*group].numbers.push(part);
+        }
+        for elastic in net.elastic_supports() {
+            if let Some(first) = elastic.nodes().first() {
+                let part = self.part_of_node[first.index()];
+                groups[self.group_of_part[part]].elastic_supports.push(elastic);
+            }
         }
         groups
     }
@@ -165,7 +183,7 @@ impl Group<'_> {
             for node in nodes {
                 let free = structure.dofs().directions(*node);
                 if free.len() < 3 {
-                    let mut held = nalgebra::Matrix3::identity();
+                    let mut held = Matrix3::identity();
                     for direction in free {
                         held -= direction * direction.transpose();
                     }
@@ -174,7 +192,7 @@ impl Group<'_> {
                 }
             }
         }
-        self.add_elastic(structure.net(), &mut resistance);
+        self.add_elastic(&mut resistance);
         let eigen = resistance.symmetric_eigen();
         let largest = eigen.eigenvalues.amax();
         let free: Vec<_> = (eigen.eigenvalues.iter().zip(eigen.eigenvectors.column_iter()))
@@ -206,27 +224,42 @@ impl Group<'_> {
         Some(Anchor { node: *node, direction })
     }
 
-    fn add_elastic(&self, net: &Net, resistance: &mut DMatrix<f64>) {
-        let place = |node: &NodeId| {
-            self.numbers
-                .iter()
-                .position(|p| *p == self.all.part_of_node[node.index()])
-        };
-        for elastic in net.elastic_supports() {
-            let places: Vec<_> = elastic.nodes().iter().map(place).collect();
+    fn add_elastic(&self, resistance: &mut DMatrix<f64>) {
+        let place = |node: &NodeId| self.all.place_in_group[self.all.part_of_node[node.index()]];
+        for elastic in &self.elastic_supports {
             // Only the directions matter, so that a soft support counts as much as a stiff one.
-            let largest = elastic.stiffness().amax();
-            if places.iter().any(Option::is_none) || largest == 0.0 {
+            if let [node] = elastic.nodes() {
+                let mut block = resistance.fixed_view_mut::<3, 3>(3 * place(node), 3 * place(node));
+                block += resisted(elastic.block(0, 0));
                 continue;
             }
-            for (row, a) in places.iter().flatten().enumerate() {
-                for (column, b) in places.iter().flatten().enumerate() {
+            let places: Vec<_> = elastic.nodes().iter().map(place).collect();
+            let largest = elastic.stiffness().amax();
+            if largest == 0.0 {
+                continue;
+            }
+            for (row, a) in places.iter().enumerate() {
+                for (column, b) in places.iter().enumerate() {
                     let mut block = resistance.fixed_view_mut::<3, 3>(3 * a, 3 * b);
                     block += elastic.block(row, column) / largest;
                 }
             }
         }
     }
+}
+
+/// Projection on the directions in which a node on springs is resisted at all: a spring as good as rigid beside a soft
+/// one must not hide it.
+fn resisted(stiffness: Matrix3<f64>) -> Matrix3<f64> {
+    let eigen = stiffness.symmetric_eigen();
+    let largest = eigen.eigenvalues.max();
+    let mut projection = Matrix3::zeros();
+    for (value, along) in eigen.eigenvalues.iter().zip(eigen.eigenvectors.column_iter()) {
+        if *value > NO_SPRING * largest {
+            projection += along * along.transpose();
+        }
+    }
+    projection
 }
 
 /// Disjoint sets with path halving.

@@ -127,9 +127,12 @@ pub fn solve(
     let at_end = if load_factor == 1.0 { full } else { level(load_factor)? };
     run.respond(&at_end, &positions);
     let way = way(&run.history, load_factor);
-    let holds = HOLDS * run.response.largest_axial_force().max(run.load);
-    let loose_nodes = existence::loose_nodes(structure, |s| run.response.axial_forces[s].abs() > holds);
     run.begin(run.load_step, load_factor, &at_end);
+    let force = run.response.largest_axial_force();
+    // What is left of forces that fade without load is rounding, and holds nothing.
+    let has_faded = run.load == 0.0 && force <= run.largest_rounding();
+    let holds = if has_faded { force } else { HOLDS * force.max(run.load) };
+    let loose_nodes = existence::loose_nodes(structure, |s| run.response.axial_forces[s].abs() > holds);
     let mut free_movement = None;
     if !structure.net().is_pure_tension() && run.is_balanced(&run.response) {
         free_movement = stability::free_movement(analysis, &at_end, &positions, &loose_nodes);

@@ -15,8 +15,9 @@ pub(super) type Observer<'a> = &'a mut dyn FnMut(&IterationReport) -> ControlFlo
 /// Displacements beyond this many times the size of the input count as running away.
 const RUNS_AWAY: f64 = 1e3;
 
-/// Share of the forces up to which rounding in the positions may hide a residual.
-const HIDDEN_BY_ROUNDING: f64 = 1e-4;
+/// Share of the forces up to which rounding in the positions may hide a residual along one axis: half of what the audit
+/// allows a node along all three.
+const HIDDEN_BY_ROUNDING: f64 = 5e-5;
 
 fn anchor_entries(structure: &Structure, anchors: &[Anchor]) -> Vec<(usize, f64)> {
     let mut entries = Vec::new();
@@ -126,7 +127,7 @@ impl<'a> Run<'a> {
         }
         for elastic in self.structure.net().elastic_supports() {
             for (position, end) in elastic.nodes().iter().enumerate() {
-                stiffness[end.index()] += elastic.stiffness().rows(3 * position, 3).abs().row_sum().amax();
+                stiffness[end.index()] += elastic.largest_row_sum(position);
             }
         }
         for (dof, rounding) in self.rounding.iter_mut().enumerate() {
@@ -155,6 +156,11 @@ impl<'a> Run<'a> {
             .iter()
             .zip(&self.rounding)
             .all(|(r, rounding)| r.abs() <= tolerance.max(rounding.min(most_hidden)))
+    }
+
+    /// Largest force that rounding of the positions makes at a free direction (N).
+    pub(super) fn largest_rounding(&self) -> f64 {
+        self.rounding.iter().copied().fold(0.0, f64::max)
     }
 
     /// Whether `positions` have left the neighbourhood of the input.

@@ -3,7 +3,7 @@
 /// How the load is put on.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Default)]
 pub enum LoadSteps {
-    /// The full load at once; smaller steps only where that fails.
+    /// The full load at once; with struts, smaller steps where that fails.
     #[default]
     FullFirst,
     /// This many equal steps, each solved and kept; zero counts as one.

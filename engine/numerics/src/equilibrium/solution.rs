@@ -83,7 +83,7 @@ pub struct Solution {
     /// The method that brought the last state near: relaxation or the interior point where one of them was needed, which
     /// Newton then finished; Newton itself otherwise.
     pub way: Way,
-    /// Share of the load that the state carries.
+    /// Share of the load that the state carries; where not even a part of it was reached, the share that was tried.
     pub load_factor: f64,
     /// Nodes whose place is not determined.
     pub loose_nodes: Vec<NodeId>,

@@ -46,6 +46,8 @@ pub fn free_movement(
     let largest = (0..structure.n_dofs())
         .map(|dof| values[starts[dof]].abs())
         .fold(0.0, f64::max);
+    // Where nothing has stiffness any measure serves, but zero is none.
+    let largest = if largest > 0.0 { largest } else { 1.0 };
     for node in loose {
         let first = structure.dofs().first(*node);
         for dof in first..first + structure.dofs().directions(*node).len() {

@@ -6,6 +6,7 @@ mod material;
 mod net;
 mod state;
 mod support;
+mod violations;
 
 pub use error::NetError;
 pub use ids::{CableId, NodeId, ReachId, SegmentId, StrutId};

@@ -140,6 +140,13 @@ impl ElasticSupport {
         self.stiffness.fixed_view::<3, 3>(3 * row, 3 * column).into_owned()
     }
 
+    /// Largest sum of absolute stiffnesses along a row of one of its nodes (N/m): no unit movement of its nodes along the
+    /// axes brings more force to that node.
+    #[must_use]
+    pub(crate) fn largest_row_sum(&self, node: usize) -> f64 {
+        self.stiffness.rows(3 * node, 3).abs().column_sum().amax()
+    }
+
     /// Positions of its nodes at which it bears no force (m).
     #[must_use]
     pub fn rest(&self) -> &[Vector3<f64>] {

@@ -40,9 +40,11 @@ impl Search<'_, '_> {
             let sign = f64::from(u8::from(from == *node)) - f64::from(u8::from(to == *node));
             sign * along.dot(&n)
         });
-        let svd = directions.clone().svd(true, true);
-        let largest = svd.singular_values.iter().copied().fold(0.0, f64::max);
-        let rank = svd.singular_values.iter().filter(|v| **v > RANK * largest).count();
+        // Without held nodes or members there is nothing to decompose, only something to be left over.
+        let svd = (!directions.is_empty()).then(|| directions.svd(true, true));
+        let values = || svd.iter().flat_map(|svd| svd.singular_values.iter().copied());
+        let largest = values().fold(0.0, f64::max);
+        let rank = values().filter(|v| *v > RANK * largest).count();
         let before: Vec<f64> = members.iter().map(|e| self.balance_forces[*e]).collect();
         let mut left = DVector::zeros(rows.len());
         for round in 0..=MAX_ROUNDS {
@@ -52,9 +54,9 @@ impl Search<'_, '_> {
                 rows.iter()
                     .map(|(node, along)| along.dot(&point.out_of_balance[node.index()])),
             );
-            if members.is_empty() || rows.is_empty() || rank == 0 || round == MAX_ROUNDS {
+            let Some(svd) = svd.as_ref().filter(|_| rank > 0 && round < MAX_ROUNDS) else {
                 break;
-            }
+            };
             let more = svd.solve(&-&left, RANK * largest).expect("both sides were asked for");
             if more.amax() <= 1e-14 * point_force(self, point) {
                 break;

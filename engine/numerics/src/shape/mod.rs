@@ -11,8 +11,9 @@ mod loads;
 mod parts;
 mod report;
 mod search;
+mod sensitivity;
 mod targets;
-mod words;
+pub(crate) mod words;
 
 #[cfg(test)]
 mod tests;

@@ -16,7 +16,6 @@ use std::ops::ControlFlow;
 use nalgebra::{Matrix3, Vector3};
 
 use super::ShapeError;
-use super::krylov::gmres;
 use super::loads::ShapeLoads;
 use super::parts::{Part, Parts};
 use crate::assembly::Structure;
@@ -63,8 +62,10 @@ pub(super) struct Search<'a, 'o> {
     pub(super) balance_forces: Vec<f64>,
     /// Factorisations so far.
     pub(super) iterations: u32,
-    factor: Factor,
-    values: Vec<f64>,
+    pub(super) factor: Factor,
+    pub(super) values: Vec<f64>,
+    /// Densities of the families (N/m) whose stiffness is factorised, where nothing else decides the stiffness.
+    factorised_for: Option<Vec<f64>>,
     observe: &'o mut Observer<'o>,
 }
 
@@ -85,6 +86,7 @@ impl<'a, 'o> Search<'a, 'o> {
             iterations: 0,
             factor: analysis.new_factor(),
             values: vec![0.0; structure.pattern().n_entries()],
+            factorised_for: None,
             observe,
         }
     }
@@ -188,7 +190,13 @@ impl<'a, 'o> Search<'a, 'o> {
     }
 
     /// Factorises the stiffness at a point. `floor`: least force across a member of given length (N).
-    fn factorise(&mut self, point: &Point, family_densities: &[f64], floor: f64) -> Result<(), ShapeError> {
+    ///
+    /// Without members of given length the densities alone decide it: what is factorised for them already, stays.
+    pub(super) fn factorise(&mut self, point: &Point, family_densities: &[f64], floor: f64) -> Result<(), ShapeError> {
+        if self.factorised_for.as_deref() == Some(family_densities) {
+            return Ok(());
+        }
+        self.factorised_for = None;
         self.iterations += 1;
         let n_segments = self.net().segments().len();
         let mut blocks = vec![Matrix3::zeros(); n_segments];
@@ -238,7 +246,11 @@ impl<'a, 'o> Search<'a, 'o> {
                 nodes: vec![self.net().node_name(self.structure.dofs().node(dof)).to_owned()],
             },
             crate::equilibrium::linear::FactorError::NotFinite => self.unbounded(point),
-        })
+        })?;
+        if !self.parts.of.iter().any(|part| matches!(part, Part::Elastic(_))) {
+            self.factorised_for = Some(family_densities.to_vec());
+        }
+        Ok(())
     }
 
     fn unbounded(&self, point: &Point) -> ShapeError {
@@ -246,28 +258,6 @@ impl<'a, 'o> Search<'a, 'o> {
         ShapeError::Unbounded {
             node: self.net().node_name(node).to_owned(),
         }
-    }
-
-    /// Solves `(K − P) v = b`, `K` as factorised, `P` at the point.
-    fn solve(&mut self, point: &Point, right_hand_side: Vec<f64>) -> Vec<f64> {
-        let (structure, parts, loads) = (self.structure, self.parts, self.loads);
-        let (factor, values) = (&mut self.factor, &self.values);
-        if !loads.depend_on_lengths {
-            let mut solution = right_hand_side;
-            factor.solve_in_place(&mut solution);
-            return solution;
-        }
-        gmres(
-            |v| {
-                let mut product = vec![0.0; v.len()];
-                structure.pattern().product_into(values, v, &mut product);
-                let change = load_change(structure, parts, loads, point, v);
-                product.iter_mut().zip(change).for_each(|(p, c)| *p -= c);
-                product
-            },
-            |v| factor.solve_in_place(v),
-            right_hand_side,
-        )
     }
 
     /// Positions at balance, from `start`, at given densities of the families (N/m).
@@ -415,35 +405,6 @@ impl<'a, 'o> Search<'a, 'o> {
         }
     }
 
-    /// Change of the positions with the logarithm of the force density of a family, at balance, in the free directions.
-    ///
-    /// The stiffness must be that of the point: call [`Self::prepare_sensitivities`] first.
-    pub(super) fn sensitivity(&mut self, point: &Point, family: usize, density: f64) -> Vec<f64> {
-        let mut change = vec![Vector3::zeros(); self.net().nodes().len()];
-        for &index in &self.parts.families[family].segments {
-            let [i, j] = self.net().segments()[index].ends.map(NodeId::index);
-            let force = point.chords[index] * density;
-            // With more force the same length needs less rope, which weighs less.
-            let unstressed = point.unstressed[index];
-            let shorter = if unstressed > 0.0 {
-                unstressed * (1.0 - unstressed / point.lengths[index])
-            } else {
-                0.0
-            };
-            let load = self.loads.per_length[index] * (-0.5 * shorter);
-            change[i] += force + load;
-            change[j] += load - force;
-        }
-        let mut components = vec![0.0; self.structure.n_dofs()];
-        self.structure.dofs().components_into(&change, &mut components);
-        self.solve(point, components)
-    }
-
-    /// Factorises the stiffness at a balanced point.
-    pub(super) fn prepare_sensitivities(&mut self, point: &Point, family_densities: &[f64]) -> Result<(), ShapeError> {
-        self.factorise(point, family_densities, 0.0)
-    }
-
     /// Refuses a net of which a part is led to too little support by members with force, or with a given length.
     pub(super) fn check_held(&self) -> Result<(), ShapeError> {
         let free = existence::loose_nodes(self.structure, |e| match self.parts.of[e] {
@@ -464,41 +425,4 @@ impl<'a, 'o> Search<'a, 'o> {
 /// tells it apart.
 fn unstressed_length(length: f64, axial_force: f64, axial_stiffness: f64) -> f64 {
     length / (1.0 + axial_force / axial_stiffness).max(0.1)
-}
-
-/// Derivative of the loads by a movement of the nodes, in the free directions: `P v`.
-fn load_change(structure: &Structure, parts: &Parts, loads: &ShapeLoads, point: &Point, movement: &[f64]) -> Vec<f64> {
-    let net = structure.net();
-    let n_nodes = net.nodes().len();
-    let (mut nodal, mut change) = (vec![Vector3::zeros(); n_nodes], vec![Vector3::zeros(); n_nodes]);
-    structure.dofs().nodal_into(movement, &mut nodal);
-    for (index, segment) in net.segments().iter().enumerate() {
-        let (length, plan) = (point.lengths[index], point.chords[index].xy().norm());
-        let [i, j] = segment.ends.map(NodeId::index);
-        let moved = nodal[j] - nodal[i];
-        let mut load = Vector3::zeros();
-        if length > 0.0 {
-            let longer = point.chords[index].dot(&moved) / length;
-            load += loads.per_length[index] * (0.5 * unstressed_slope(parts, point, index) * longer);
-        }
-        if plan > 0.0 {
-            let longer = point.chords[index].xy().dot(&moved.xy()) / plan;
-            load += loads.per_plan_length[index] * (0.5 * longer);
-        }
-        change[i] += load;
-        change[j] += load;
-    }
-    let mut components = vec![0.0; structure.n_dofs()];
-    structure.dofs().components_into(&change, &mut components);
-    components
-}
-
-/// `dL0/dl` at the force density as it is.
-fn unstressed_slope(parts: &Parts, point: &Point, segment: usize) -> f64 {
-    let stretch = point.lengths[segment] / point.unstressed[segment];
-    match parts.of[segment] {
-        Part::Elastic(_) => 0.0,
-        Part::Balance => 1.0 / stretch,
-        Part::Density(_) | Part::Family(_) => 1.0 / (stretch * stretch),
-    }
 }

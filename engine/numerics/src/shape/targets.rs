@@ -6,7 +6,7 @@
 //! step     (Jᵀ J + λ I) δ = −Jᵀ c,   λ = μ |c|²
 //! ```
 //!
-//! `J` is exact, by one solve a family with the matrix factorised at the balanced shape. With `λ` falling as `|c|²` the
+//! `J` is exact, by one right-hand side a family with the matrix factorised at the balanced shape. With `λ` falling as `|c|²` the
 //! end is quadratic, also where the tensions are not independent.
 //!
 //! # Reference
@@ -16,7 +16,6 @@ use nalgebra::{DMatrix, DVector, Vector3};
 
 use super::ShapeError;
 use super::search::{Point, Search};
-use crate::model::NodeId;
 
 /// Deviation of a mean tension from the wanted one at which it is met.
 pub(super) const MET: f64 = 1e-10;
@@ -142,32 +141,6 @@ impl Search<'_, '_> {
                 (mean / wanted).max(1e-30).ln()
             }),
         )
-    }
-
-    /// `∂ ln (mean T) / ∂ ln q` at a balanced point, families by families.
-    pub(super) fn jacobian(&mut self, point: &Point, densities: &[f64]) -> Result<DMatrix<f64>, ShapeError> {
-        let n = densities.len();
-        self.prepare_sensitivities(point, densities)?;
-        let mut jacobian = DMatrix::identity(n, n);
-        let mut nodal = vec![Vector3::zeros(); point.positions.len()];
-        for column in 0..n {
-            let movement = self.sensitivity(point, column, densities[column]);
-            self.structure.dofs().nodal_into(&movement, &mut nodal);
-            for (row, family) in self.parts.families.iter().enumerate() {
-                let (mut longer, mut total) = (0.0, 0.0);
-                for &e in &family.segments {
-                    let [i, j] = self.net().segments()[e].ends.map(NodeId::index);
-                    if point.lengths[e] > 0.0 {
-                        longer += point.chords[e].dot(&(nodal[j] - nodal[i])) / point.lengths[e];
-                    }
-                    total += point.lengths[e];
-                }
-                if total > 0.0 {
-                    jacobian[(row, column)] += longer / total;
-                }
-            }
-        }
-        Ok(jacobian)
     }
 }
 

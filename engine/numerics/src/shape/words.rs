@@ -30,7 +30,7 @@ pub(super) fn three_digits(value: f64) -> String {
 }
 
 /// Names in quotes, at most `most` of them, then how many more there are.
-pub(super) fn list(names: &[String], most: usize) -> String {
+pub(crate) fn list(names: &[String], most: usize) -> String {
     let quoted: Vec<String> = names.iter().take(most).map(|n| format!("\"{n}\"")).collect();
     match names.len().saturating_sub(most) {
         0 => quoted.join(", "),
@@ -39,7 +39,7 @@ pub(super) fn list(names: &[String], most: usize) -> String {
 }
 
 /// A direction in two decimals.
-pub(super) fn direction(d: &Vector3<f64>) -> String {
+pub(crate) fn direction(d: &Vector3<f64>) -> String {
     format!("({:.2}, {:.2}, {:.2})", d.x, d.y, d.z)
 }
 

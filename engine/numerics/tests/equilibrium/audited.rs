@@ -1,9 +1,11 @@
 //! The audit passes what the solver finds and catches what is corrupted.
 
 use nalgebra::{DMatrix, Vector3};
+use ropewalk_numerics::equilibrium::Termination;
 use ropewalk_numerics::equilibrium::audit::audit;
 use ropewalk_numerics::model::{ElasticSupportGiven, NodeId, SegmentId};
 
+use crate::nets::Example;
 use crate::saddle::saddle_net;
 
 #[test]
@@ -49,6 +51,17 @@ fn one_moved_node_is_found() {
 }
 
 #[test]
+fn a_support_that_is_not_where_the_case_puts_it_is_found() {
+    // Everything moved alike is in balance, but not on its supports.
+    let net = saddle_net();
+    let mut solution = net.solve().unwrap();
+    solution.positions.iter_mut().for_each(|x| x.y += 1e-6);
+    let state = audit(&net.net(), &net.case(), &solution.positions, &solution.axial_forces);
+    assert!(!state.passed && state.largest_imbalance <= state.allowed, "{state:?}");
+    assert!((state.largest_misplacement - 1e-6).abs() < 1e-12);
+}
+
+#[test]
 fn skew_sliders_movements_and_coupled_springs_are_balanced_too() {
     let mut net = saddle_net();
     let slider = net.held.remove(3);
@@ -73,4 +86,34 @@ fn skew_sliders_movements_and_coupled_springs_are_balanced_too() {
     assert!(slid.norm() > 1e-4 && slid.cross(&Vector3::new(0.3, 0.2, 1.0)).norm() < 1e-12);
     let moved = net.movements[0].0;
     assert_eq!(solution.positions[moved], net.positions[moved] + net.movements[0].1);
+}
+
+/// A hanging chain from which the load is taken: its forces fade to what the last bits of the positions make of `EA`.
+#[test]
+fn forces_that_fade_without_load_pass_and_hold_nothing() {
+    for (n, sag) in [(3, 4.0), (3, 4.8), (6, 4.0), (6, 12.0), (11, 4.04)] {
+        let mut net = Example {
+            held: vec![0, n],
+            ..Example::default()
+        };
+        for i in 0..=n {
+            let u = i as f64 / n as f64;
+            let z = -sag * u * (1.0 - u);
+            net.positions.push(Vector3::new(10.0 * u, 0.3 * u * u, z));
+        }
+        for i in 0..n {
+            let length = (net.positions[i + 1] - net.positions[i]).norm();
+            net.segments
+                .push((i, i + 1, 1e7, length * (1.0 - 1e-4 * (1.0 + i as f64))));
+        }
+        let solution = net.solve().unwrap();
+        assert_eq!(solution.termination, Termination::Converged);
+        assert_eq!(solution.loose_nodes.len(), n - 1, "all slack: no place is determined");
+        let mut forces = solution.axial_forces.clone();
+        let state = audit(&net.net(), &net.case(), &solution.positions, &forces);
+        assert!(state.passed && state.allowed < 1e-6, "{state:?}");
+        // What the last bits can not make is still found.
+        forces[1] += 1e-3;
+        assert!(!audit(&net.net(), &net.case(), &solution.positions, &forces).passed);
+    }
 }

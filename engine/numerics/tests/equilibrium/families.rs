@@ -1,7 +1,8 @@
 //! Six families of random nets, drawn as in the study behind the recipe; every net has to be solved.
 
 use nalgebra::Vector3;
-use ropewalk_numerics::equilibrium::Termination;
+use ropewalk_numerics::equilibrium::audit::audit;
+use ropewalk_numerics::equilibrium::{Solution, Termination};
 
 use crate::nets::{Example, Random, grid};
 
@@ -191,6 +192,16 @@ fn tent(random: &mut Random) -> Example {
     net
 }
 
+/// What the solver calls converged passes the audit.
+fn check_audit(name: &str, seed: u32, net: &Example, solution: &Solution) {
+    let state = audit(&net.net(), &net.case(), &solution.positions, &solution.axial_forces);
+    assert!(
+        state.passed,
+        "{name} {seed}: {:e} N out of balance, {:e} N off the law, {:e} N allowed",
+        state.largest_imbalance, state.largest_force_error, state.allowed
+    );
+}
+
 #[track_caller]
 fn check_family(name: &str, draw: fn(&mut Random) -> Example, most_in_the_middle: u32) {
     let mut counts = Vec::new();
@@ -200,6 +211,7 @@ fn check_family(name: &str, draw: fn(&mut Random) -> Example, most_in_the_middle
         let solution = net.solve().unwrap_or_else(|e| panic!("{name} {seed}: {e}"));
         counts.push(solution.factorisations);
         if solution.termination == Termination::Converged {
+            check_audit(name, seed, &net, &solution);
             let largest = solution.axial_forces.iter().fold(0.0_f64, |m, t| m.max(*t));
             let load = net.loads.iter().map(|p| p.amax()).fold(0.0, f64::max);
             let imbalance = net.imbalance(&solution);
@@ -209,6 +221,15 @@ fn check_family(name: &str, draw: fn(&mut Random) -> Example, most_in_the_middle
                     imbalance[node].amax() <= 3e-8 * largest.max(load),
                     "{name} {seed} node {node}"
                 );
+            }
+            // Far from the origin, where the last bits of the positions make more force.
+            let mut far = net.clone();
+            far.positions
+                .iter_mut()
+                .for_each(|x| *x += Vector3::new(9000.0, -9500.0, 0.0));
+            let solution = far.solve().unwrap_or_else(|e| panic!("{name} {seed} far away: {e}"));
+            if solution.termination == Termination::Converged {
+                check_audit(name, seed, &far, &solution);
             }
         } else {
             let r = solution.history.last().unwrap();

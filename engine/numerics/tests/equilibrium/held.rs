@@ -131,3 +131,25 @@ fn slack_is_exact_and_its_nodes_are_loose() {
     assert_eq!(solution.axial_forces, [0.0, 0.0]);
     assert_eq!(solution.loose_nodes, [NodeId::new(1)]);
 }
+
+#[test]
+fn a_spring_as_good_as_rigid_does_not_hide_a_soft_one() {
+    for soft in [1e3, 1.0, 1e-1] {
+        let mut net = rope();
+        // Skew, so that the soft one shows in no single entry of the matrix.
+        let (stiff, gives) = (Vector3::new(0.8, 0.0, 0.6), Vector3::new(-0.6, 0.0, 0.8));
+        let stiffness = stiff * stiff.transpose() * 1e10
+            + Vector3::y() * Vector3::y().transpose() * 1e10
+            + gives * gives.transpose() * soft;
+        net.elastic = vec![ElasticSupportGiven {
+            nodes: vec![NodeId::new(0)],
+            stiffness: DMatrix::from_column_slice(3, 3, stiffness.as_slice()),
+        }];
+        net.loads[1] = Vector3::new(0.0, 0.0, -0.05 * soft.min(1.0));
+        let solution = net.solve().unwrap();
+        assert_eq!(solution.termination, Termination::Converged, "{soft}");
+        let sunk = solution.positions[0].dot(&gives);
+        let expected = net.loads[1].dot(&gives) / soft;
+        assert!((sunk - expected).abs() < 1e-4 * expected.abs(), "{sunk} {expected}");
+    }
+}

@@ -73,6 +73,39 @@ fn equal_load_steps_lead_to_the_same_state() {
     assert_eq!(solution.steps[4].positions, solution.positions);
 }
 
+/// A net of ropes alone has one equilibrium: in how many steps the load comes does not matter, nor that each step is told.
+#[test]
+fn as_many_equal_steps_as_wanted_reach_the_state_of_full_load() {
+    let net = saddle_net();
+    let sharp = |load_steps| Settings {
+        load_steps,
+        tolerance: 1e-13,
+        ..Settings::default()
+    };
+    let full = net.solve_with(&sharp(LoadSteps::FullFirst)).unwrap();
+    assert!(full.steps.is_empty());
+    let size = full.positions.iter().fold(0.0, |m: f64, x| m.max(x.amax()));
+    let largest = full.axial_forces.iter().fold(0.0, |m: f64, n| m.max(*n));
+    for (given, n) in [(0, 1), (1, 1), (3, 3), (8, 8)] {
+        let stepped = net.solve_with(&sharp(LoadSteps::Equal(given))).unwrap();
+        assert_eq!(stepped.termination, Termination::Converged);
+        assert_eq!((stepped.load_factor, stepped.steps.len()), (1.0, n));
+        for (index, step) in stepped.steps.iter().enumerate() {
+            assert_eq!(step.load_factor, (index + 1) as f64 / n as f64);
+            let told: Vec<_> = (stepped.history.iter())
+                .filter(|r| r.load_step as usize == index + 1)
+                .collect();
+            assert!(!told.is_empty() && told.iter().all(|r| r.load_factor == step.load_factor));
+        }
+        for (a, b) in stepped.positions.iter().zip(&full.positions) {
+            assert!((a - b).amax() <= 1e-8 * size, "{n} steps: {a} {b}");
+        }
+        for (a, b) in stepped.axial_forces.iter().zip(&full.axial_forces) {
+            assert!((a - b).abs() <= 1e-8 * largest, "{n} steps: {a} {b}");
+        }
+    }
+}
+
 #[test]
 fn the_end_game_is_quadratic() {
     let solution = saddle_net().solve().unwrap();

@@ -1,8 +1,8 @@
 //! The end of a run: envelopes, then the summary.
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::{Plan, ReferenceOutcome};
-use ropewalk_numerics::check::CaseDigest;
+use ropewalk_numerics::brief::{self, Plan, ReferenceOutcome};
+use ropewalk_numerics::check::{CaseDigest, Envelope, Extreme};
 use ropewalk_numerics::model::Member;
 use ropewalk_numerics::shape::ShapeError;
 use v1::run_response::Event;
@@ -68,11 +68,9 @@ impl Counts {
 #[derive(Debug)]
 pub struct Tally {
     cases: Vec<usize>,
-    /// The reference state, if there is one.
-    reference: Option<ReferenceOutcome>,
-    failed: Option<ShapeError>,
-    /// One entry a case of the brief; those that were not run stay empty.
-    digests: Vec<CaseDigest>,
+    found: Result<ReferenceOutcome, ShapeError>,
+    /// The summary in the making, if there is a reference state.
+    summed_up: Option<brief::Tally>,
     counts: Counts,
 }
 
@@ -80,18 +78,20 @@ impl Tally {
     /// A tally of a run of `cases`, none of them solved yet.
     #[must_use]
     pub fn new(plan: &Plan, cases: &[usize], found: &Result<ReferenceOutcome, ShapeError>) -> Self {
+        let summed_up = found.as_ref().ok();
         Self {
             cases: cases.to_vec(),
-            reference: found.as_ref().ok().cloned(),
-            failed: found.as_ref().err().cloned(),
-            digests: vec![CaseDigest::default(); plan.brief().cases.len()],
+            summed_up: summed_up.map(|reference| brief::Tally::new(plan, reference, cases)),
+            found: found.clone(),
             counts: Counts::default(),
         }
     }
 
     /// Takes in a case.
-    pub fn add(&mut self, case: usize, noted: Noted) {
-        self.digests[case] = noted.digest;
+    pub fn add(&mut self, case: usize, noted: &Noted) {
+        if let Some(summed_up) = &mut self.summed_up {
+            summed_up.add(case, &noted.digest);
+        }
         self.counts.join(noted.counts);
     }
 }
@@ -99,17 +99,20 @@ impl Tally {
 /// The envelopes, then the summary.
 #[must_use]
 pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
+    let Tally {
+        cases,
+        found,
+        summed_up,
+        mut counts,
+    } = tally;
     let mut messages = Vec::new();
-    let mut counts = tally.counts;
     work.findings().iter().for_each(|finding| counts.add(finding));
-    let summary = match &tally.reference {
-        Some(reference) => {
-            let found = Ok(reference.clone());
-            for finding in outcome::reference_findings(work, plan, &found) {
-                counts.add(&finding);
-            }
-            messages.extend(envelope(plan, reference, &tally));
-            let summary = plan.summary(reference, &tally.cases, &tally.digests);
+    for finding in outcome::reference_findings(work, plan, &found) {
+        counts.add(&finding);
+    }
+    let summary = match (&found, summed_up.map(brief::Tally::finish)) {
+        (Ok(reference), Some(summary)) => {
+            messages.extend(envelope(plan, &cases, &summary.envelopes));
             let answered = summary.facts.answered;
             let reference_audited = usize::from(reference.result.audit.passed);
             v1::Summary {
@@ -128,17 +131,12 @@ pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
                 digest: work.digest.clone(),
             }
         }
-        None => {
-            if let Some(error) = tally.failed {
-                for finding in outcome::reference_findings(work, plan, &Err(error)) {
-                    counts.add(&finding);
-                }
-            }
+        _ => {
             let checks = verdicts::not_judged(work, plan);
             let covered: u32 = checks.iter().map(|check| check.not_judged).sum();
             v1::Summary {
                 verdict: v1::Verdict::NoAnswer.into(),
-                answered: Some(share(0, tally.cases.len() + 1)),
+                answered: Some(share(0, cases.len() + 1)),
                 audited: Some(share(0, 0)),
                 judged: Some(v1::Share { count: 0, of: covered }),
                 passes: Some(share(0, 0)),
@@ -161,39 +159,22 @@ fn share(of_them: usize, of: usize) -> v1::Share {
 }
 
 /// Least and largest tension of every rope segment over the sound cases and the reference state, and where they occur.
-fn envelope(plan: &Plan, reference: &ReferenceOutcome, tally: &Tally) -> Vec<v1::RunResponse> {
-    let net = &plan.brief().net;
-    let ropes = net
-        .segments()
-        .iter()
-        .filter(|s| matches!(s.member, Member::Cable(_)))
-        .count();
-    let mut least: Vec<f64> = reference.state.axial_forces[..ropes].to_vec();
-    let mut largest = least.clone();
+fn envelope(plan: &Plan, cases: &[usize], envelopes: &[Envelope]) -> Vec<v1::RunResponse> {
+    let brief = plan.brief();
+    let segments = brief.net.segments().iter();
+    let ropes = segments.filter(|s| matches!(s.member, Member::Cable(_))).count();
     // Position in the table of cases; −1 stands for the reference state.
-    let mut least_case = vec![-1.0; ropes];
-    let mut largest_case = vec![-1.0; ropes];
-    for (position, case) in tally.cases.iter().enumerate() {
-        let digest = &tally.digests[*case];
-        if !digest.is_sound() {
-            continue;
-        }
-        for (segment, tension) in digest.axial_forces[..ropes].iter().enumerate() {
-            if *tension < least[segment] {
-                least[segment] = *tension;
-                least_case[segment] = f64::from(count(position));
-            }
-            if *tension > largest[segment] {
-                largest[segment] = *tension;
-                largest_case[segment] = f64::from(count(position));
-            }
-        }
+    let mut position = vec![-1.0; brief.cases.len()];
+    for (number, case) in cases.iter().enumerate() {
+        position[*case] = f64::from(count(number));
     }
+    let of_all = |take: &dyn Fn(&Envelope) -> f64| envelopes[..ropes].iter().map(take).collect::<Vec<f64>>();
+    let place = |extreme: Extreme| extreme.case.map_or(-1.0, |case| position[case]);
     [
-        ("tension_min_n", "N", least),
-        ("tension_max_n", "N", largest),
-        ("tension_min_case", "", least_case),
-        ("tension_max_case", "", largest_case),
+        ("tension_min_n", "N", of_all(&|e| e.least.value)),
+        ("tension_max_n", "N", of_all(&|e| e.largest.value)),
+        ("tension_min_case", "", of_all(&|e| place(e.least))),
+        ("tension_max_case", "", of_all(&|e| place(e.largest))),
     ]
     .into_iter()
     .flat_map(|(name, unit, values)| {

@@ -2,7 +2,7 @@
 
 use prost::Message as _;
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::{Check, CheckKind, CheckResult, Plan, Verdict};
+use ropewalk_numerics::brief::{CheckKind, CheckResult, Plan, Verdict};
 use ropewalk_numerics::check::Covered;
 
 use super::parts::{BYTES, count, first_ids};
@@ -35,7 +35,7 @@ pub(super) fn checks(work: &Work, plan: &Plan, results: &[CheckResult]) -> Vec<v
 pub(super) fn not_judged(work: &Work, plan: &Plan) -> Vec<v1::CheckResult> {
     let checks = plan.brief().checks.iter().enumerate();
     let results = checks.map(|(number, check)| {
-        let covered: Vec<Covered> = covered(check).collect();
+        let covered: Vec<Covered> = check.covered().collect();
         v1::CheckResult {
             not_judged: count(covered.len()),
             not_judged_ids: ids(plan, &covered),
@@ -45,12 +45,6 @@ pub(super) fn not_judged(work: &Work, plan: &Plan) -> Vec<v1::CheckResult> {
         }
     });
     fit(results.collect())
-}
-
-fn covered(check: &Check) -> impl Iterator<Item = Covered> + '_ {
-    (check.cables.iter().map(|cable| Covered::Cable(*cable)))
-        .chain(check.struts.iter().map(|strut| Covered::Strut(*strut)))
-        .chain(check.nodes.iter().map(|node| Covered::Node(*node)))
 }
 
 /// Takes out lists of ids, from the last check on, until all checks fit one message.

@@ -176,7 +176,7 @@ impl Solver<'_> {
                     encode::engine_error(&self.prepared.work, &self.prepared.plan, case)
                 }
             };
-            tally.add(case, noted);
+            tally.add(case, &noted);
             self.desk.done.fetch_add(1, Ordering::Relaxed);
             outbox.send(messages).await?;
         }

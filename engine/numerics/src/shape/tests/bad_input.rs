@@ -132,6 +132,32 @@ fn a_member_left_to_balance_needs_held_ends() {
 }
 
 #[test]
+fn a_held_node_where_nothing_is_left_to_balance() {
+    let (net, mut prestress) = mast_head([6.0, 0.0, 3.0]);
+    prestress.rules = vec![PrestressRule::ForceDensity(1000.0); 2];
+    // 6 kN towards the wall, 4 kN back and 3 kN down towards the anchor: that is what is left.
+    let text = message(shape(&net, &prestress, vec![]));
+    assert!(text.contains("3.61 kN at \"head\""), "{text}");
+    // Half way between its ends the head is in balance as it is.
+    let (net, _) = mast_head([4.0, 0.0, 6.0]);
+    let found = shape(&net, &prestress, vec![]).expect("in balance");
+    assert_eq!(found.report.balance, None);
+}
+
+#[test]
+fn a_member_left_to_balance_where_no_node_is_held_bears_nothing() {
+    let mut sketch = rope();
+    sketch.cable("tie", section(1e6, 0.0), "a b");
+    let net = Arc::new(sketch.net());
+    let mut prestress = all(&net, PrestressRule::ForceDensity(10.0));
+    *prestress.rules.last_mut().expect("a segment") = PrestressRule::Balance;
+    let found = shape(&net, &prestress, vec![]).expect("a shape");
+    assert_eq!(found.state.axial_forces.last(), Some(&0.0));
+    let balance = found.report.balance.expect("a report");
+    assert_eq!((balance.rank, balance.unique), (0, false));
+}
+
+#[test]
 fn a_held_node_needs_a_place() {
     let net = Arc::new(rope().net());
     let prestress = Prestress {

@@ -55,10 +55,9 @@ fn a_net_of_constant_tensions() {
     }
 }
 
-/// The end of the search is quadratic: few iterations for a dozen wanted tensions under own weight.
-#[test]
-fn mean_tensions_of_many_ropes_take_few_iterations() {
-    let net = Arc::new(saddle(6, 2.0).net());
+/// Finds the shape of a saddle with a wanted mean tension in each rope.
+fn with_mean_tensions(n: u32, mass: f64, weight: Vec<Load>) -> Found {
+    let net = Arc::new(saddle(n, mass).net());
     let mut prestress = Prestress {
         mean_tensions: (0..net.cables().len()).map(|c| 8e3 + 500.0 * c as f64).collect(),
         ..all(&net, PrestressRule::Balance)
@@ -68,10 +67,24 @@ fn mean_tensions_of_many_ropes_take_few_iterations() {
             prestress.rules[segment] = PrestressRule::MeanTension(index);
         }
     }
-    let found = shape(&net, &prestress, vec![own_weight()]).expect("a shape");
+    let found = shape(&net, &prestress, weight).expect("a shape");
     for (target, wanted) in found.report.targets.iter().zip(&prestress.mean_tensions) {
         close(target.found, *wanted, 1e-10 * wanted);
     }
-    assert!(found.report.iterations <= 20, "{}", found.report.iterations);
     assert!(found.report.imbalance <= 1e-9 * found.report.largest_force);
+    found
+}
+
+/// The end of the search is quadratic: few factorisations for a dozen wanted tensions under own weight.
+#[test]
+fn mean_tensions_of_many_ropes_take_few_iterations() {
+    let found = with_mean_tensions(6, 2.0, vec![own_weight()]);
+    assert!(found.report.iterations <= 10, "{}", found.report.iterations);
+}
+
+/// More ropes than are solved for at a time.
+#[test]
+fn mean_tensions_of_more_ropes_than_fit_one_block() {
+    let found = with_mean_tensions(18, 0.0, vec![]);
+    assert!(found.report.iterations <= 8, "{}", found.report.iterations);
 }

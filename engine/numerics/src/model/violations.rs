@@ -1,0 +1,149 @@
+//! Everything that keeps the given parts from being a net.
+
+use super::{ElasticSupportGiven, NetError, NetGiven, NodeId, Section};
+
+/// All of it, not just the first.
+pub(super) fn violations(given: &NetGiven) -> Vec<NetError> {
+    let mut errors = Vec::new();
+    if given.cables.is_empty() && given.struts.is_empty() {
+        errors.push(NetError::Empty);
+    }
+    for node in &given.nodes {
+        if let Some(value) = node.position.iter().flatten().find(|c| !c.is_finite()) {
+            errors.push(NetError::NotFinite {
+                what: "position",
+                of: node.name.clone(),
+                value: *value,
+            });
+        }
+        if !(node.attached_mass.is_finite() && node.attached_mass >= 0.0) {
+            errors.push(NetError::NotPositive {
+                what: "attached mass",
+                of: node.name.clone(),
+                value: node.attached_mass,
+            });
+        }
+        if let Some(support) = &node.support {
+            if node.position.is_none() {
+                errors.push(NetError::SupportWithoutPosition { of: node.name.clone() });
+            }
+            for direction in &support.released {
+                if !(direction.norm().is_finite() && direction.norm() > 0.0) {
+                    errors.push(NetError::NotPositive {
+                        what: "released direction",
+                        of: node.name.clone(),
+                        value: direction.norm(),
+                    });
+                }
+            }
+        }
+    }
+    for cable in &given.cables {
+        check_path(&cable.name, &cable.path, given.nodes.len(), &mut errors);
+        if cable.sections.len() + 1 != cable.path.len() {
+            errors.push(NetError::DegeneratePath {
+                of: cable.name.clone(),
+                position: cable.sections.len(),
+            });
+        }
+        for section in &cable.sections {
+            check_section(&cable.name, section, &mut errors);
+        }
+    }
+    for strut in &given.struts {
+        check_path(&strut.name, &strut.ends, given.nodes.len(), &mut errors);
+        check_section(&strut.name, &strut.section, &mut errors);
+    }
+    for elastic in &given.elastic_supports {
+        check_elastic_support(elastic, given, &mut errors);
+    }
+    errors
+}
+
+fn check_path(name: &str, path: &[NodeId], n_nodes: usize, errors: &mut Vec<NetError>) {
+    if path.len() < 2 {
+        errors.push(NetError::DegeneratePath {
+            of: name.to_owned(),
+            position: 0,
+        });
+    }
+    for (position, pair) in path.windows(2).enumerate() {
+        if pair[0] == pair[1] {
+            errors.push(NetError::DegeneratePath {
+                of: name.to_owned(),
+                position,
+            });
+        }
+    }
+    for node in path {
+        if node.index() >= n_nodes {
+            errors.push(NetError::UnknownNode {
+                of: name.to_owned(),
+                node: *node,
+            });
+        }
+    }
+}
+
+fn check_section(name: &str, section: &Section, errors: &mut Vec<NetError>) {
+    let mut positive = |what, value: f64, allowed: bool| {
+        if !(value.is_finite() && allowed) {
+            errors.push(NetError::NotPositive {
+                what,
+                of: name.to_owned(),
+                value,
+            });
+        }
+    };
+    positive(
+        "axial stiffness",
+        section.axial_stiffness,
+        section.axial_stiffness > 0.0,
+    );
+    positive(
+        "mass per length",
+        section.mass_per_length,
+        section.mass_per_length >= 0.0,
+    );
+    positive("expansion", section.expansion, true);
+    if let Some(force) = section.breaking_force {
+        positive("breaking force", force, force > 0.0);
+    }
+}
+
+/// Relative asymmetry and negative eigenvalue of a support stiffness that still count as rounding.
+const STIFFNESS_ROUNDING: f64 = 1e-9;
+
+fn check_elastic_support(elastic: &ElasticSupportGiven, given: &NetGiven, errors: &mut Vec<NetError>) {
+    let names: Vec<&str> = elastic
+        .nodes
+        .iter()
+        .filter_map(|n| given.nodes.get(n.index()))
+        .map(|n| n.name.as_str())
+        .collect();
+    let mut lacks = |property| {
+        errors.push(NetError::SupportStiffness {
+            of: names.join(", "),
+            property,
+        })
+    };
+    let size = 3 * elastic.nodes.len();
+    let s = &elastic.stiffness;
+    if names.len() != elastic.nodes.len() || s.nrows() != size || s.ncols() != size || size == 0 {
+        lacks("of three rows and columns for each of its nodes");
+        return;
+    }
+    if !s.iter().all(|v| v.is_finite()) {
+        lacks("finite");
+        return;
+    }
+    if elastic.nodes.iter().any(|n| given.nodes[n.index()].position.is_none()) {
+        lacks("at a node with a position");
+    }
+    let largest = s.amax();
+    if (s - s.transpose()).amax() > STIFFNESS_ROUNDING * largest {
+        lacks("symmetric");
+    } else if s.clone().symmetric_eigenvalues().min() < -STIFFNESS_ROUNDING * largest {
+        lacks("positive semi-definite");
+    }
+}
