@@ -331,7 +331,7 @@ mod tests {
         };
         let verdict_with = |tension: f64| {
             let digests = [digest(&[500.0, tension, 0.0]), digest(&[2000.0, 1000.0, 0.0])];
-            let result = judge(&net(), &reference(), &check(kind), &digests);
+            let result = judge(&check(kind), &digests);
             let worst = result.worst().expect("one judgement");
             (worst.segment, worst.ratio <= 1.0, worst.passes)
         };
