@@ -10,7 +10,7 @@ use ropewalk_numerics::load::Case;
 use ropewalk_numerics::model::{Net, NodeId, ReferenceState, SegmentId};
 use ropewalk_numerics::shape::ShapeReport;
 use ropewalk_service::decode::{Work, read};
-use ropewalk_service::encode::{Tally, check_report, closing, freeze, id_tables, reference, started};
+use ropewalk_service::encode::{self, Tally, check_report, closing, freeze, id_tables, reference, started};
 
 use crate::briefs::LIMITS;
 
@@ -176,6 +176,42 @@ fn every_message_of_a_large_net_is_small() {
     assert!(frozen.len() > 20, "a frozen brief comes in parts");
     small(&frozen);
     small(&check_report(read(brief, &LIMITS)));
+}
+
+#[test]
+fn long_texts_of_the_client_are_not_repeated_whole() {
+    let mut brief = grid(4);
+    if let Some(v1::brief::NetSource::Net(net)) = &mut brief.net_source {
+        net.sections[0].breaking_force_n = Some(1e5);
+        net.sections[0].breaking_force_origin = "certificate ".repeat(60_000);
+    }
+    let check = v1::Check {
+        kind: Some(v1::check::Kind::Safety(v1::SafetyCheck {
+            factor: 2.0,
+            ..v1::SafetyCheck::default()
+        })),
+        ..v1::Check::default()
+    };
+    brief.checks = vec![check.clone(), check];
+    let work = read(brief.clone(), &LIMITS).work.expect("no errors");
+    let plan = Plan::new(work.brief.clone());
+    let found = Ok(state(&plan.brief().net));
+    let mut tally = Tally::new(&plan, &[0], &found);
+    let reference = found.as_ref().expect("a state");
+    let outcome = plan.case(reference, 0, &mut |_| std::ops::ControlFlow::Continue(()));
+    tally.add(0, encode::case(&work, &plan, reference, 0, &outcome).1);
+    let messages = closing(&work, &plan, tally);
+    small(&messages);
+
+    // A case that is refused for its size is told in the report all the same.
+    brief.cases[0].sets = (0..12_000).map(|number| format!("{number:0126}")).collect();
+    brief.cases.push(v1::Case {
+        id: "x".repeat(2_000_000),
+        ..v1::Case::default()
+    });
+    let reading = read(brief, &LIMITS);
+    assert!(reading.work.is_none());
+    small(&check_report(reading));
 }
 
 #[test]

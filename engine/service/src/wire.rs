@@ -9,6 +9,15 @@ use crate::schema::{Content, Field, Schema};
 /// Most unknown fields that are named; all are counted.
 const NAMED: usize = 20;
 
+/// Memory that a message takes once it is decoded, beside what stands in it: a rough mean (bytes).
+const ELEMENT_BYTES: usize = 128;
+
+/// Memory that any request may make of its elements (bytes), and how many times its size a request may make.
+///
+/// An empty element takes two bytes of a request and a hundred times that in memory. Briefs of short ids come to 13
+/// times their size.
+const ROOM: (usize, usize) = (1 << 20, 16);
+
 /// Fields that the contract does not know.
 #[derive(Clone, Debug, Default, PartialEq, Eq)]
 pub(crate) struct Unknown {
@@ -39,12 +48,13 @@ impl fmt::Display for Malformed {
 /// Reads `bytes` as the request with this index.
 ///
 /// # Errors
-/// [`Malformed`] where a decoder would fail.
+/// [`Malformed`] where a decoder would fail, or would make far more of the bytes than briefs are like.
 pub(crate) fn read(schema: &Schema, request: usize, bytes: &[u8]) -> Result<Unknown, Malformed> {
     let mut reader = Reader {
         schema,
         way: Vec::new(),
         unknown: Unknown::default(),
+        room: ROOM.0.saturating_add(bytes.len().saturating_mul(ROOM.1)),
     };
     match reader.message(request, bytes) {
         Ok(()) => Ok(reader.unknown),
@@ -67,6 +77,8 @@ struct Reader<'a> {
     schema: &'a Schema,
     way: Vec<Step<'a>>,
     unknown: Unknown,
+    /// Memory that elements may still take (bytes).
+    room: usize,
 }
 
 impl<'a> Reader<'a> {
@@ -92,8 +104,12 @@ impl<'a> Reader<'a> {
                         self.enter(field, number, before, &[]);
                         return Err("text that is not UTF-8");
                     }
+                    if field.repeated {
+                        self.take_room(field, number, before, size_of::<String>())?;
+                    }
                 }
                 (Content::Message(inner), Value::Bytes(inside)) => {
+                    self.take_room(field, number, before, ELEMENT_BYTES)?;
                     self.enter(field, number, before, inside);
                     self.message(inner, inside)?;
                     self.way.pop();
@@ -115,6 +131,15 @@ impl<'a> Reader<'a> {
             before,
             inside,
         });
+    }
+
+    fn take_room(&mut self, field: &'a Field, number: u32, before: &'a [u8], bytes: usize) -> Result<(), &'static str> {
+        if let Some(left) = self.room.checked_sub(bytes) {
+            self.room = left;
+            return Ok(());
+        }
+        self.enter(field, number, before, &[]);
+        Err("far more elements than its size allows for")
     }
 
     fn note_unknown(&mut self, number: u32) {

@@ -15,7 +15,7 @@ use super::net::NetDraft;
 use super::numbers::{FACTOR, LOAD_STEPS, Of};
 use super::reasons;
 use super::scope::tell_repeated;
-use crate::words::{Quoted, number, quoted_list};
+use crate::words::{Quoted, number, quoted_list, shown};
 
 /// Name of the reference state in results.
 pub(crate) const REFERENCE: &str = "reference";
@@ -24,7 +24,7 @@ pub(crate) const ENVELOPE: &str = "envelope";
 /// Names that cases and sets must not have.
 const RESERVED: [&str; 3] = [REFERENCE, "governing", ENVELOPE];
 /// Bytes of a case: its beginning is told in one message.
-const LARGEST: usize = 96 * 1024;
+pub(super) const LARGEST: usize = 96 * 1024;
 
 /// Cases as read, with the names that checks may read.
 #[derive(Debug)]
@@ -383,7 +383,11 @@ pub(crate) fn in_words(case: &CaseGiven, actions: &[v1::Action]) -> String {
             (_, false) => " + ",
             (_, true) => " - ",
         };
-        text.push_str(&format!("{sign}{} {}", number(factor.abs()), actions[*action].id));
+        text.push_str(&format!(
+            "{sign}{} {}",
+            number(factor.abs()),
+            shown(&actions[*action].id)
+        ));
     }
     if case.factors.len() > WRITTEN_OUT {
         text.push_str(&format!(" and {} more", case.factors.len() - WRITTEN_OUT));

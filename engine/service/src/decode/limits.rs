@@ -20,6 +20,17 @@ pub(crate) fn counts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings
         fits &= most(findings, "net.nodes", "nodes", net.nodes.len(), limits.nodes);
         let paths: usize = net.cables.iter().map(|cable| cable.nodes.len().saturating_sub(1)).sum();
         fits &= most(findings, "net", "segments", paths + net.struts.len(), limits.segments);
+        // What describes members need not be more than they can be.
+        fits &= most(
+            findings,
+            "net.sections",
+            "sections",
+            net.sections.len(),
+            limits.segments,
+        );
+        fits &= most(findings, "net.roles", "roles", net.roles.len(), limits.segments);
+        fits &= most(findings, "net.cables", "cables", net.cables.len(), limits.segments);
+        fits &= most(findings, "net.groups", "groups", net.groups.len(), limits.segments);
     }
     fits
 }

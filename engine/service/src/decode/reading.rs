@@ -7,7 +7,7 @@ use ropewalk_numerics::brief::Brief;
 use ropewalk_numerics::model::{CableGiven, Net, NetGiven, NodeGiven, NodeId, StrutGiven, SupportGiven};
 
 use super::actions::Actions;
-use super::cases::{Cases, in_words};
+use super::cases::{Cases, LARGEST, in_words};
 use super::digest::digest;
 use super::findings::{Findings, Path, is_id};
 use super::names::bad_id;
@@ -19,6 +19,7 @@ use super::supports::Supports;
 use super::work::{Names, Work};
 use super::{accepted, checks, frozen, limits, not_served, plausible, prestress, reasons, solving};
 use crate::config::Limits;
+use crate::words::shown;
 
 /// What came of reading a brief.
 #[derive(Debug)]
@@ -91,6 +92,20 @@ struct Parts {
     work: Option<(Unbuilt, Names)>,
 }
 
+/// The sets of a case; the first of them where they are so many that the case is refused: the report shall fit its
+/// messages all the same.
+fn first_sets(sets: &[String]) -> Vec<String> {
+    let mut room = LARGEST;
+    let fits = sets.iter().take_while(|set| match room.checked_sub(set.len() + 2) {
+        Some(left) => {
+            room = left;
+            true
+        }
+        None => false,
+    });
+    fits.cloned().collect()
+}
+
 fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resolved: &mut Resolved) -> Option<Parts> {
     if !is_id(&brief.id) {
         bad_id(findings, &Path::root("id"), &brief.id);
@@ -155,9 +170,9 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
 
     let words = (cases.list.iter())
         .map(|case| v1::CaseInWords {
-            case: case.name.clone(),
+            case: shown(&case.name),
             in_words: in_words(case, &brief.actions),
-            sets: case.sets.clone(),
+            sets: first_sets(&case.sets),
         })
         .collect();
     let names = Names::new(&sections, &supports);

@@ -7,6 +7,7 @@ use ropewalk_numerics::check::Covered;
 
 use super::parts::{BYTES, count, first_ids};
 use crate::decode::Work;
+use crate::words::shown;
 
 /// Parts that could not be judged and are listed.
 const NOT_JUDGED: usize = 100;
@@ -127,7 +128,9 @@ fn check(work: &Work, plan: &Plan, number: usize, result: &CheckResult) -> v1::C
             .segment
             .and_then(|segment| work.breaking_force_origin(segment.index()));
         if let (CheckKind::Safety { .. }, Some(origin)) = (result.kind, origin) {
-            message.source.push_str(&format!(" (breaking force: {origin})"));
+            message
+                .source
+                .push_str(&format!(" (breaking force: {})", shown(origin)));
         }
     }
     message

@@ -111,6 +111,29 @@ fn what_is_not_protobuf_is_told() {
     );
 }
 
+#[test]
+fn what_would_fill_the_memory_is_refused_where_it_begins_to() {
+    // In a brief: net is 5; in it, sections are 2. In a cable, nodes are 4.
+    let sections = |n: usize| field(1, &field(5, &[0x12, 0x00].repeat(n)));
+    assert_eq!(read_run(&sections(5000)), Ok(Unknown::default()));
+    let told = read_run(&sections(1_000_000)).expect_err("too many").to_string();
+    let words = "far more elements than its size allows for at \"net.sections[";
+    assert!(told.starts_with(words), "{told}");
+    let path = field(4, b"").repeat(1_000_000);
+    let cable = field(1, &field(5, &field(schema_number("cables"), &path)));
+    assert_eq!(read_run(&cable), Ok(Unknown::default()));
+
+    // The densest briefs that people write: nothing but cases, with ids and factors as short as can be.
+    let mut request = run_request();
+    let case = |number: usize| v1::Case {
+        id: number.to_string(),
+        factors: [("s".to_owned(), 1.0)].into(),
+        ..v1::Case::default()
+    };
+    request.brief.as_mut().expect("a brief").cases = (0..100_000).map(case).collect();
+    assert_eq!(read_run(&request.encode_to_vec()), Ok(Unknown::default()));
+}
+
 /// Whatever passes here can be decoded, so that the generated decoder behind never has the last word.
 #[test]
 fn whatever_passes_is_decoded() {
