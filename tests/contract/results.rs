@@ -449,3 +449,15 @@ fn closing_of(work: &Work, plan: &ropewalk_numerics::brief::Plan, tally: Tally) 
         other => panic!("{other:?} comes last"),
     }
 }
+
+#[test]
+fn the_search_for_the_reference_state_tells_its_iterations() {
+    let events = run(&work(&first_net()), &[0]);
+    let arrays = arrays(&events);
+    for state in ["reference", "full-snow"] {
+        let residuals = &arrays[&(state.to_owned(), "iteration_residual_n".to_owned())].values;
+        assert!(residuals.len() > 1, "{state}: {residuals:?}");
+        let last = residuals.last().expect("an iteration");
+        assert!(*last <= 1e-5, "{state} ends in balance: {residuals:?}");
+    }
+}

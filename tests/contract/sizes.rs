@@ -124,6 +124,7 @@ fn state(net: &Net) -> ReferenceOutcome {
             support_movements: Vec::new(),
             removed: Vec::new(),
         },
+        history: Vec::new(),
         report: ShapeReport {
             way: Way::ForceDensities,
             iterations: 1,

@@ -5,7 +5,7 @@ use nalgebra::Vector3;
 use super::Cause;
 use crate::check::CaseDigest;
 use crate::equilibrium::audit::Audit;
-use crate::equilibrium::{Solution, SolveError, Termination};
+use crate::equilibrium::{IterationReport, Solution, SolveError, Termination};
 use crate::load::Case;
 use crate::model::{NodeId, ReferenceState, SegmentId};
 use crate::shape::ShapeReport;
@@ -93,6 +93,8 @@ pub struct ReferenceOutcome {
     pub result: StateResult,
     /// How it was found.
     pub report: ShapeReport,
+    /// Every iteration; of a relaxation its beginning and its end.
+    pub history: Vec<IterationReport>,
 }
 
 /// What came of one case.

@@ -7,7 +7,7 @@ use super::cause::{Stop, cause_of_error, cause_of_stop};
 use super::state::{Bare, state_result};
 use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Task};
 use crate::check::{CaseDigest, worst_ratio};
-use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination};
+use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
 use crate::load::Case;
 use crate::shape::{self, Found, ShapeError};
 
@@ -60,12 +60,16 @@ impl Plan {
         observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
     ) -> Result<ReferenceOutcome, ShapeError> {
         let brief = &self.brief;
+        let mut history = Vec::new();
         let Found { state, case, report } = shape::find(
             &self.analysis,
             &brief.prestress,
             &brief.actions,
             &brief.settings,
-            observe,
+            &mut |report| {
+                note(&mut history, report);
+                observe(report)
+            },
         )?;
         let bare = Bare {
             positions: &state.positions,
@@ -78,6 +82,7 @@ impl Plan {
             case,
             result,
             report,
+            history,
         })
     }
 
@@ -155,4 +160,13 @@ impl Plan {
             .filter_map(|check| worst_ratio(&brief.net, forces, check, case, digest))
             .reduce(f64::max)
     }
+}
+
+/// Adds a report to a history, which keeps of a relaxation its beginning and its end only.
+fn note(history: &mut Vec<IterationReport>, report: &IterationReport) {
+    let relaxes = |report: &&IterationReport| report.way == Way::Relaxation;
+    if relaxes(&report) && history.len() > 1 && history.iter().rev().take(2).all(|r| relaxes(&r)) {
+        history.pop();
+    }
+    history.push(*report);
 }

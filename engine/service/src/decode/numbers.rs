@@ -114,7 +114,7 @@ pub(crate) const SAFETY_FACTOR: Quantity = Quantity::between("safety factor", ""
 pub(crate) const SHARE_OF_REFERENCE: Quantity = Quantity::between("share of reference tension", "", 0.0, 0.999_999_999);
 pub(crate) const MOVEMENT_LIMIT: Quantity = Quantity::positive("limit of movement", "m", 1e-9, 1e5);
 pub(crate) const PULL_LIMIT: Quantity = Quantity::positive("limit of anchor pull", "N", 1e-3, 1e13);
-pub(crate) const TOLERANCE: Quantity = Quantity::between("tolerance", "", 1e-14, 1e-3);
+pub(crate) const TOLERANCE: Quantity = Quantity::between("tolerance", "", 1e-14, 1e-8);
 pub(crate) const LOAD_STEPS: Quantity = Quantity::between("number of load steps", "", 1.0, 1000.0);
 pub(crate) const ITERATIONS: Quantity = Quantity::between("number of iterations", "", 1.0, 100_000.0);
 

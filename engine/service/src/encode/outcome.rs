@@ -3,7 +3,7 @@
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::{CaseOutcome, Plan, ReferenceOutcome, StateResult};
 use ropewalk_numerics::check::CaseDigest;
-use ropewalk_numerics::equilibrium::Termination;
+use ropewalk_numerics::equilibrium::{IterationReport, Termination};
 use ropewalk_numerics::model::{AxialLaw, Net, SegmentId};
 use ropewalk_numerics::shape::ShapeError;
 use v1::run_response::Event;
@@ -29,6 +29,7 @@ pub fn reference(work: &Work, plan: &Plan, found: &Result<ReferenceOutcome, Shap
     if let Ok(reference) = found {
         let lengths = &reference.state.unstressed_lengths;
         messages.extend(state::arrays(&plan.brief().net, REFERENCE, &reference.result, lengths));
+        messages.extend(state::history(REFERENCE, &reference.history));
     }
     let findings = reference_findings(work, plan, found);
     messages.extend(findings.into_iter().map(|finding| event(Event::Finding(finding))));
@@ -55,7 +56,7 @@ pub(super) fn reference_summary(plan: &Plan, found: &Result<ReferenceOutcome, Sh
             summary.set_outcome(v1::CaseOutcome::Answered);
             summary.set_way(way(reference.report.way));
             summary.load_factor = 1.0;
-            summary.iterations = reference.report.iterations;
+            summary.iterations = iterations(&reference.history);
             summary.factorisations = reference.report.iterations;
             summary
         }
@@ -96,7 +97,7 @@ pub fn case(
             let mut closing = summary(net, name, result, reference);
             closing.set_way(way(solution.way));
             closing.load_factor = solution.load_factor;
-            closing.iterations = count(solution.history.iter().filter(|report| report.iteration > 0).count());
+            closing.iterations = iterations(&solution.history);
             closing.factorisations = solution.factorisations;
             if solution.termination == Termination::Converged {
                 closing.set_outcome(v1::CaseOutcome::Answered);
@@ -207,4 +208,9 @@ fn lowest_tension_share(net: &Net, state: &StateResult, reference: &ReferenceOut
         .filter(taut)
         .map(|segment| (segment, state.axial_forces[segment] / before[segment]))
         .reduce(|lowest, next| if next.1 < lowest.1 { next } else { lowest })
+}
+
+/// Corrections in a history: the reports before the first one do not count.
+fn iterations(history: &[IterationReport]) -> u32 {
+    count(history.iter().filter(|report| report.iteration > 0).count())
 }
