@@ -199,7 +199,7 @@ fn long_texts_of_the_client_are_not_repeated_whole() {
     let mut tally = Tally::new(&plan, &[0], &found);
     let reference = found.as_ref().expect("a state");
     let outcome = plan.case(reference, 0, &mut |_| std::ops::ControlFlow::Continue(()));
-    tally.add(0, encode::case(&work, &plan, reference, 0, &outcome).1);
+    tally.add(0, &encode::case(&work, &plan, reference, 0, &outcome).1);
     let messages = closing(&work, &plan, tally);
     small(&messages);
 
