@@ -1,6 +1,6 @@
 //! Why a case has no answer, in the client's ids.
 
-use std::collections::HashSet;
+use std::collections::BTreeSet;
 use std::fmt;
 
 use nalgebra::Vector3;
@@ -230,7 +230,7 @@ fn members_at(net: &Net, node: NodeId) -> Vec<String> {
 
 /// Each name once, in order of first mention.
 fn distinct(names: impl Iterator<Item = String>) -> Vec<String> {
-    let mut seen = HashSet::new();
+    let mut seen = BTreeSet::new();
     names.filter(|name| seen.insert(name.clone())).collect()
 }
 
