@@ -17,6 +17,9 @@ use crate::{files, refusal, say, sheet};
 /// The brief of the demo, as it lies beside the others.
 const DEMO: &str = include_str!("../briefs/market-square.json");
 
+/// Findings that a run lists; the page and results.json have more.
+const FINDINGS_LISTED: usize = 20;
+
 /// Cases that `check` lists.
 const CASES_LISTED: usize = 40;
 
@@ -40,7 +43,7 @@ async fn run_brief(url: Option<&str>, brief: v1::Brief, out: Option<PathBuf>, on
     let mut engine = Engine::reach(url).await?;
     let answered = answer(&mut engine, &brief, only).await;
     engine.leave().await;
-    let run = answered?;
+    let (run, broken) = answered?;
     let folder = out.unwrap_or_else(|| Path::new("out").join(file_name(&brief.id)));
     let written = files::write(&run, &folder)
         .map_err(|(path, error)| Stop::new(End::CannotWrite, format!("cannot write {}: {error}", path.display())))?;
@@ -58,10 +61,14 @@ async fn run_brief(url: Option<&str>, brief: v1::Brief, out: Option<PathBuf>, on
         ));
     }
     say::out(&line);
-    Ok(End::of(run.summary.verdict()))
+    match broken {
+        Some(stop) => Err(stop),
+        None => Ok(End::of(run.summary.verdict())),
+    }
 }
 
-async fn answer(engine: &mut Engine, brief: &v1::Brief, only: Vec<String>) -> Result<Run, Stop> {
+/// The run; if its stream broke off after some states, what came of it and why to stop.
+async fn answer(engine: &mut Engine, brief: &v1::Brief, only: Vec<String>) -> Result<(Run, Option<Stop>), Stop> {
     let request = v1::RunRequest {
         brief: Some(brief.clone()),
         only,
@@ -73,6 +80,7 @@ async fn answer(engine: &mut Engine, brief: &v1::Brief, only: Vec<String>) -> Re
     match ended {
         Ok(()) => collector
             .finish(brief.clone())
+            .map(|run| (run, None))
             .map_err(|odd| Stop::new(End::EngineFailed, odd.to_string())),
         Err(Broken::Odd(stop)) => Err(stop),
         Err(Broken::Status(status)) if refusal::brief_has_errors(&status) => {
@@ -80,14 +88,25 @@ async fn answer(engine: &mut Engine, brief: &v1::Brief, only: Vec<String>) -> Re
         }
         Err(Broken::Status(status)) => {
             let mut stop = refusal::stop(&status);
-            let closed: Vec<&str> = collector.closed().iter().map(|end| end.case.as_str()).collect();
-            if !closed.is_empty() {
-                stop.told.push_str(&format!(
-                    "\nIt broke off after {}; nothing was written.",
-                    closed.join(", ")
-                ));
+            if !collector.has_begun() {
+                return Err(stop);
             }
-            Err(stop)
+            let n_closed = collector.closed().len();
+            match collector.finish_broken(brief.clone(), &stop.told) {
+                Ok(run) => {
+                    stop.told.push_str(&format!(
+                        "\nThe run broke off after {n_closed} of {} states. What they answered is written; there is no \
+                         verdict.",
+                        run.case_ids.len() + 1
+                    ));
+                    Ok((run, Some(stop)))
+                }
+                Err(_) => {
+                    stop.told
+                        .push_str("\nThe run broke off before its first state had an answer; nothing was written.");
+                    Err(stop)
+                }
+            }
         }
     }
 }
@@ -331,7 +350,10 @@ fn ending(run: &Run) -> String {
     }
     let findings = run.other_findings();
     if !findings.is_empty() {
-        text.push_str(&format!("\n{}", refusal::findings_text(&findings)));
+        text.push_str(&format!(
+            "\n{}",
+            refusal::findings_text_up_to(&findings, FINDINGS_LISTED)
+        ));
     }
     text.push_str(&format!(
         "\n{}\n\n{}",
