@@ -65,7 +65,10 @@ fn between(engine: &Engine, at_cut: impl FnOnce(&TcpStream) + Send + 'static) ->
     thread::spawn(move || {
         let (client, _) = listener.accept().expect("the client calls");
         let server = TcpStream::connect(there).expect("the engine listens");
-        let (mut asks, mut asked) = (client.try_clone().unwrap(), server.try_clone().unwrap());
+        let (mut asks, mut asked) = (
+            client.try_clone().expect("a second handle"),
+            server.try_clone().expect("a second handle"),
+        );
         thread::spawn(move || std::io::copy(&mut asks, &mut asked));
         let (mut from, mut to) = (server, client);
         let mut left = CUT;
@@ -93,7 +96,7 @@ fn an_engine_that_dies_leaves_what_it_answered_and_no_verdict() {
         let mut child = child.lock().unwrap();
         child.kill().expect("it still runs");
         child.wait().unwrap();
-        client.shutdown(Shutdown::Both).unwrap();
+        client.shutdown(Shutdown::Both).expect("the client is there");
     });
     let out = folder.path("out");
     let ended = ropewalk(&["--engine", &url, "demo", "--out", out.to_str().unwrap()]);
