@@ -17,6 +17,9 @@ use crate::{files, refusal, say, sheet};
 /// The brief of the demo, as it lies beside the others.
 const DEMO: &str = include_str!("../briefs/market-square.json");
 
+/// Findings that a run lists; the page and results.json have more.
+const FINDINGS_LISTED: usize = 20;
+
 /// Cases that `check` lists.
 const CASES_LISTED: usize = 40;
 
@@ -40,7 +43,7 @@ async fn run_brief(url: Option<&str>, brief: v1::Brief, out: Option<PathBuf>, on
     let mut engine = Engine::reach(url).await?;
     let answered = answer(&mut engine, &brief, only).await;
     engine.leave().await;
-    let run = answered?;
+    let (run, broken) = answered?;
     let folder = out.unwrap_or_else(|| Path::new("out").join(file_name(&brief.id)));
     let written = files::write(&run, &folder)
         .map_err(|(path, error)| Stop::new(End::CannotWrite, format!("cannot write {}: {error}", path.display())))?;
@@ -58,10 +61,14 @@ async fn run_brief(url: Option<&str>, brief: v1::Brief, out: Option<PathBuf>, on
         ));
     }
     say::out(&line);
-    Ok(End::of(run.summary.verdict()))
+    match broken {
+        Some(stop) => Err(stop),
+        None => Ok(End::of(run.summary.verdict())),
+    }
 }
 
-async fn answer(engine: &mut Engine, brief: &v1::Brief, only: Vec<String>) -> Result<Run, Stop> {
+/// The run; if its stream broke off after some states, what came of it and why to stop.
+async fn answer(engine: &mut Engine, brief: &v1::Brief, only: Vec<String>) -> Result<(Run, Option<Stop>), Stop> {
     let request = v1::RunRequest {
         brief: Some(brief.clone()),
         only,
@@ -73,6 +80,7 @@ async fn answer(engine: &mut Engine, brief: &v1::Brief, only: Vec<String>) -> Re
     match ended {
         Ok(()) => collector
             .finish(brief.clone())
+            .map(|run| (run, None))
             .map_err(|odd| Stop::new(End::EngineFailed, odd.to_string())),
         Err(Broken::Odd(stop)) => Err(stop),
         Err(Broken::Status(status)) if refusal::brief_has_errors(&status) => {
@@ -80,14 +88,25 @@ async fn answer(engine: &mut Engine, brief: &v1::Brief, only: Vec<String>) -> Re
         }
         Err(Broken::Status(status)) => {
             let mut stop = refusal::stop(&status);
-            let closed: Vec<&str> = collector.closed().iter().map(|end| end.case.as_str()).collect();
-            if !closed.is_empty() {
-                stop.told.push_str(&format!(
-                    "\nIt broke off after {}; nothing was written.",
-                    closed.join(", ")
-                ));
+            if !collector.has_begun() {
+                return Err(stop);
             }
-            Err(stop)
+            let n_closed = collector.closed().len();
+            match collector.finish_broken(brief.clone(), &stop.told) {
+                Ok(run) => {
+                    stop.told.push_str(&format!(
+                        "\nThe run broke off after {n_closed} of {} states. What they answered is written; there is no \
+                         verdict.",
+                        run.case_ids.len() + 1
+                    ));
+                    Ok((run, Some(stop)))
+                }
+                Err(_) => {
+                    stop.told
+                        .push_str("\nThe run broke off before its first state had an answer; nothing was written.");
+                    Err(stop)
+                }
+            }
         }
     }
 }
@@ -131,6 +150,8 @@ async fn receive(
 /// A refused call names the first errors only; a check tells all of them.
 async fn all_errors(engine: &mut Engine, brief: &v1::Brief, status: &Status) -> Stop {
     match check_report(engine, brief).await {
+        // Nothing is wrong with the brief itself: the refusal is about what was asked of it.
+        Ok(report) if !has_errors(&report) => refusal::stop(status),
         Ok(report) => Stop::new(
             End::BriefHasErrors,
             format!(
@@ -189,7 +210,7 @@ pub(crate) async fn check(url: Option<&str>, briefs: &[PathBuf], values: bool) -
             report.resolved.len()
         ));
     }
-    let totals = report.totals.unwrap_or_default();
+    let totals = report.totals.clone().unwrap_or_default();
     if let Some(sizes) = totals.sizes {
         text.push_str(&format!(
             "{} nodes, {} segments, {} cables, {} struts, {} supports; {} cases in about {:.1} s, {:.1} MB\n",
@@ -211,11 +232,16 @@ pub(crate) async fn check(url: Option<&str>, briefs: &[PathBuf], values: bool) -
         refusal::count_words(&report.findings)
     ));
     say::out(&text);
-    let errors = report
-        .findings
-        .iter()
-        .any(|finding| finding.severity() == v1::FindingSeverity::Error);
-    Ok(if errors { End::BriefHasErrors } else { End::Passes })
+    Ok(if has_errors(&report) {
+        End::BriefHasErrors
+    } else {
+        End::Passes
+    })
+}
+
+fn has_errors(report: &v1::CheckResponse) -> bool {
+    let mut findings = report.findings.iter();
+    findings.any(|finding| finding.severity() == v1::FindingSeverity::Error)
 }
 
 /// Freezes a brief.
@@ -240,7 +266,7 @@ pub(crate) async fn freeze(url: Option<&str>, briefs: &[PathBuf], output: &Path)
     };
     let summary = summary.ok_or_else(|| broken("the stream ended without a summary"))?;
     let frozen = v1::Brief::decode(parts.as_slice()).map_err(|error| broken(&error.to_string()))?;
-    std::fs::write(output, brief_file::to_json(&frozen))
+    replace(output, &brief_file::to_json(&frozen))
         .map_err(|error| Stop::new(End::CannotWrite, format!("cannot write {}: {error}", output.display())))?;
     let mut text = format!(
         "{} is frozen into {}.\nfrom digest {}\nto digest   {}\n",
@@ -261,6 +287,22 @@ pub(crate) async fn freeze(url: Option<&str>, briefs: &[PathBuf], output: &Path)
     text.push_str(&cautions(&summary.cautions));
     say::out(text.trim_end());
     Ok(End::Passes)
+}
+
+/// Writes a file whole or not at all, so that a full disk does not cost the one that was there.
+fn replace(path: &Path, text: &str) -> std::io::Result<()> {
+    if let Some(folder) = path.parent() {
+        std::fs::create_dir_all(folder)?;
+    }
+    let mut name = path.file_name().unwrap_or_default().to_owned();
+    name.push(".part");
+    let part = path.with_file_name(name);
+    std::fs::write(&part, text)
+        .and_then(|()| std::fs::rename(&part, path))
+        .inspect_err(|_| {
+            // What is left of it is of no use; the error that counts is the first.
+            let _ = std::fs::remove_file(&part);
+        })
 }
 
 async fn frozen(
@@ -331,7 +373,10 @@ fn ending(run: &Run) -> String {
     }
     let findings = run.other_findings();
     if !findings.is_empty() {
-        text.push_str(&format!("\n{}", refusal::findings_text(&findings)));
+        text.push_str(&format!(
+            "\n{}",
+            refusal::findings_text_up_to(&findings, FINDINGS_LISTED)
+        ));
     }
     text.push_str(&format!(
         "\n{}\n\n{}",

@@ -81,7 +81,10 @@ async fn connect(url: &str) -> Result<Channel, Stop> {
         }
         Stop::new(
             End::EngineAway,
-            format!("no engine answers at {url} ({words}); is it running?"),
+            format!(
+                "no engine answers at {url} ({words}).\nStart one there (ropewalk-engine --listen HOST:PORT), mend \
+                 --engine or ROPEWALK_ENGINE, or leave both out: then one is started inside this program."
+            ),
         )
     })
 }
@@ -90,7 +93,6 @@ async fn connect(url: &str) -> Result<Channel, Stop> {
 mod inside {
     use std::net::SocketAddr;
 
-    use clap::Parser as _;
     use ropewalk_service::config::Config;
     use ropewalk_service::server;
     use tokio::sync::oneshot;
@@ -114,9 +116,7 @@ mod inside {
                     format!("the engine inside this program does not start: {why}"),
                 )
             };
-            let config = Config::try_parse_from(["ropewalk-engine", "--listen", "127.0.0.1:0"])
-                .map_err(|error| failed(error.to_string()))?;
-            let server = server::bind(config).map_err(|error| failed(error.to_string()))?;
+            let server = server::bind(Config::embedded()).map_err(|error| failed(error.to_string()))?;
             let address = server.local_addr();
             let (stop, stopped) = oneshot::channel::<()>();
             let serving = tokio::spawn(async move {

@@ -2,7 +2,7 @@
 
 use std::collections::BTreeSet;
 use std::fs;
-use std::io;
+use std::io::{self, Write as _};
 use std::path::{Path, PathBuf};
 
 use prost::Message as _;
@@ -18,6 +18,9 @@ use crate::{draw, json_text, report};
 /// Plans that are drawn; beyond it those without answer and with the worst ratios count.
 const PLANS: usize = 60;
 
+/// Names of the files that a run wrote, so that the next one into the same folder leaves none of them behind.
+const LIST: &str = "files.txt";
+
 /// What was written.
 #[derive(Debug)]
 pub(crate) struct Written {
@@ -32,8 +35,11 @@ pub(crate) struct Written {
 /// The file that could not be written, and why.
 pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::Error)> {
     fs::create_dir_all(folder).map_err(|error| (folder.to_owned(), error))?;
-    let mut count = 0;
+    let mut count = 1;
+    let mut list = begin_list(folder)?;
     let mut put = |name: &str, text: &str| -> Result<(), (PathBuf, io::Error)> {
+        // Listed before it is there: a run that is stopped while it writes leaves nothing unlisted.
+        writeln!(list, "{name}").map_err(|error| (folder.join(LIST), error))?;
         let path = folder.join(name);
         count += 1;
         fs::write(&path, text).map_err(|error| (path, error))
@@ -79,6 +85,33 @@ pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::E
         files: count,
         plans_left_out: drawn.len().saturating_sub(PLANS),
     })
+}
+
+/// Removes what the list of an earlier run names, and begins the list anew. Files that no list names are left alone.
+fn begin_list(folder: &Path) -> Result<fs::File, (PathBuf, io::Error)> {
+    let list = folder.join(LIST);
+    match fs::read_to_string(&list) {
+        Ok(names) => {
+            for name in names.lines().filter(|name| is_ours(name)) {
+                let path = folder.join(name);
+                match fs::remove_file(&path) {
+                    Err(error) if error.kind() != io::ErrorKind::NotFound => return Err((path, error)),
+                    _ => {}
+                }
+            }
+        }
+        Err(error) if error.kind() == io::ErrorKind::NotFound => {}
+        Err(error) => return Err((list, error)),
+    }
+    fs::File::create(&list).map_err(|error| (list, error))
+}
+
+/// Whether a run may have written a file of that name: in the folder itself, of a kind that it writes.
+fn is_ours(name: &str) -> bool {
+    let path = Path::new(name);
+    let plain = path.file_name().is_some_and(|last| last == path.as_os_str());
+    let kind = path.extension().and_then(|ending| ending.to_str());
+    plain && kind.is_some_and(|kind| ["csv", "html", "json", "svg"].contains(&kind))
 }
 
 /// All sheets, in the order in which they are read.
@@ -155,6 +188,7 @@ fn results(run: &Run) -> String {
         "cases": run.case_ids,
         "states": states,
         "envelope": columns(&run.envelope),
+        "broken_off": run.broken_off,
     });
     let mut text = json_text::pretty(&value);
     text.push('\n');
@@ -228,6 +262,35 @@ mod tests {
     use crate::run::sample::{self, Names};
 
     #[test]
+    fn a_later_run_leaves_no_file_of_an_earlier_one_and_touches_no_other() {
+        let base = std::env::temp_dir().join(format!("ropewalk-stale-{}", std::process::id()));
+        let folder = base.join("out");
+        write(&sample::run(), &folder).unwrap();
+        let plan = folder.join("plan-full-snow.svg");
+        assert!(plan.exists());
+        for own in ["notes.txt", "mine.svg", "../outside.csv"] {
+            fs::write(folder.join(own), "mine").unwrap();
+        }
+        // A list that was tampered with reaches nothing outside of the folder, and no kind of file that is never written.
+        let mut list = fs::read_to_string(folder.join(LIST)).unwrap();
+        list.push_str("../outside.csv\nnotes.txt\n..\n/\n\ngone.svg\n");
+        fs::write(folder.join(LIST), list).unwrap();
+        let names = Names {
+            middle: "m",
+            rope: "r",
+            case: "wind",
+            title: "t",
+        };
+        write(&sample::run_named(names), &folder).unwrap();
+        assert!(!plan.exists(), "a plan of another run stays");
+        assert!(folder.join("plan-wind.svg").exists());
+        for own in ["notes.txt", "mine.svg", "../outside.csv"] {
+            assert!(folder.join(own).exists(), "{own} is gone");
+        }
+        fs::remove_dir_all(base).unwrap();
+    }
+
+    #[test]
     fn equal_runs_give_equal_files() {
         let base = std::env::temp_dir().join(format!("ropewalk-files-{}", std::process::id()));
         let names = Names {
@@ -240,8 +303,8 @@ mod tests {
             let written = write(&sample::run_named(names), &base.join(folder)).unwrap();
             assert_eq!(
                 written.files,
-                3 + 7 + 3 + 1 + 1,
-                "tables, sheets, plans, sections, page"
+                3 + 7 + 3 + 1 + 1 + 1,
+                "tables, sheets, plans, sections, page, list"
             );
         }
         let mut listed: Vec<_> = fs::read_dir(base.join("a"))

@@ -49,6 +49,10 @@ fn main() -> ExitCode {
         Err(error) => Err(Stop::new(End::EngineFailed, format!("cannot start: {error}"))),
     };
     match ended {
+        Ok(_) if say::is_lost() => {
+            say::err("cannot write to standard output: what was to be said there is lost");
+            ExitCode::from(End::CannotWrite.code())
+        }
         Ok(end) => ExitCode::from(end.code()),
         Err(stop) => {
             say::err(&stop.told);

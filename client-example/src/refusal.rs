@@ -20,6 +20,8 @@ fn reason(status: &Status) -> Option<String> {
 pub(crate) fn stop(status: &Status) -> Stop {
     let details = status.get_error_details();
     let mut told = match status.code() {
+        // The library that carries the call has no better word for a connection that went away.
+        _ if connection_lost(status) => format!("the connection to the engine broke: {}", status.message()),
         Code::Unavailable => format!("the engine is not available: {}", status.message()),
         Code::Internal | Code::Unknown | Code::DataLoss => format!("the engine failed: {}", status.message()),
         _ => format!("the engine refuses: {}", status.message()),
@@ -33,6 +35,7 @@ pub(crate) fn stop(status: &Status) -> Stop {
         told.push_str(&format!("\nTry again in {:.1} s.", delay.as_secs_f64()));
     }
     let end = match status.code() {
+        _ if connection_lost(status) => End::EngineAway,
         Code::InvalidArgument | Code::NotFound | Code::OutOfRange => End::BriefHasErrors,
         Code::FailedPrecondition if reason(status).as_deref() == Some("NO_REFERENCE_STATE") => End::NoAnswer,
         Code::Unavailable | Code::ResourceExhausted | Code::DeadlineExceeded | Code::Unimplemented => End::EngineAway,
@@ -41,8 +44,14 @@ pub(crate) fn stop(status: &Status) -> Stop {
     Stop { end, told }
 }
 
+/// Whether the status was made at this end because the connection broke.
+fn connection_lost(status: &Status) -> bool {
+    matches!(status.code(), Code::Unknown | Code::Internal | Code::Unavailable)
+        && std::error::Error::source(status).is_some()
+}
+
 /// A severity as a word.
-fn severity_word(severity: v1::FindingSeverity) -> &'static str {
+pub(crate) fn severity_word(severity: v1::FindingSeverity) -> &'static str {
     match severity {
         v1::FindingSeverity::Error => "error",
         v1::FindingSeverity::Doubt => "doubt",
@@ -50,17 +59,27 @@ fn severity_word(severity: v1::FindingSeverity) -> &'static str {
     }
 }
 
-/// Findings for eyes: errors first, each with what, where and how to mend it.
-pub(crate) fn findings_text(findings: &[v1::Finding]) -> String {
-    let mut sorted: Vec<&v1::Finding> = findings.iter().collect();
-    let rank = |finding: &v1::Finding| match finding.severity() {
+/// What weighs most comes first.
+pub(crate) fn severity_rank(severity: v1::FindingSeverity) -> u8 {
+    match severity {
         v1::FindingSeverity::Error => 0,
         v1::FindingSeverity::Doubt => 1,
         v1::FindingSeverity::Note | v1::FindingSeverity::Unspecified => 2,
-    };
-    sorted.sort_by_key(|finding| (rank(finding), !finding.accepted_note.is_empty()));
+    }
+}
+
+/// Findings for eyes: errors first, each with what, where and how to mend it.
+pub(crate) fn findings_text(findings: &[v1::Finding]) -> String {
+    findings_text_up_to(findings, usize::MAX)
+}
+
+/// The same, for the first so many.
+pub(crate) fn findings_text_up_to(findings: &[v1::Finding], most: usize) -> String {
+    let mut sorted: Vec<&v1::Finding> = findings.iter().collect();
+    sorted.sort_by_key(|finding| (severity_rank(finding.severity()), !finding.accepted_note.is_empty()));
     let mut text = String::new();
-    for finding in sorted {
+    let left_out = sorted.len().saturating_sub(most);
+    for finding in sorted.into_iter().take(most) {
         let mut place = finding.path.clone();
         if place.is_empty() {
             place = [finding.case.as_str(), finding.id.as_str()]
@@ -89,6 +108,9 @@ pub(crate) fn findings_text(findings: &[v1::Finding]) -> String {
                 wrap(&format!("cure: {}", finding.cure), 110, "        ")
             ));
         }
+    }
+    if left_out > 0 {
+        text.push_str(&format!("... and {left_out} more findings\n"));
     }
     text
 }

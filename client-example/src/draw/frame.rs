@@ -5,18 +5,34 @@ use crate::colour::{self, Scale};
 use crate::escape::markup;
 use crate::number::three;
 use crate::run::Run;
+use crate::sheet::wrap;
 
-/// A title and two lines below it.
+/// Letters in a line of a head.
+const LINE: usize = 145;
+/// Lines of a head.
+const LINES: usize = 3;
+
+/// A title and up to three lines below it; a longer line runs on, and is cut where there is no room left.
 pub(crate) fn head(sketch: &mut Sketch, title: &str, lines: &[(String, &str)]) {
     sketch.put(format_args!(
         "<text x=\"36\" y=\"44\" font-size=\"22\" font-weight=\"600\">{}</text>",
         markup(&short(title, 90))
     ));
-    for (number, (line, colour)) in lines.iter().enumerate() {
-        let y = 68 + 20 * number;
+    let wrapped = lines.iter().flat_map(|(line, colour)| {
+        let lines: Vec<String> = wrap(line, LINE, "").lines().map(str::to_owned).collect();
+        lines.into_iter().map(move |line| (line, colour))
+    });
+    let wrapped: Vec<(String, &&str)> = wrapped.collect();
+    for (number, (line, colour)) in wrapped.iter().take(LINES).enumerate() {
+        let y = 68 + 18 * number;
+        let more = if number + 1 == LINES && wrapped.len() > LINES {
+            " …"
+        } else {
+            ""
+        };
         sketch.put(format_args!(
-            "<text x=\"36\" y=\"{y}\" fill=\"{colour}\">{}</text>",
-            markup(&short(line, 150))
+            "<text x=\"36\" y=\"{y}\" fill=\"{colour}\">{}{more}</text>",
+            markup(&short(line, LINE))
         ));
     }
 }

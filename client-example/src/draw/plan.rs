@@ -14,7 +14,7 @@ const LEFT: f64 = 36.0;
 const RIGHT: f64 = 1036.0;
 const TOP: f64 = 120.0;
 /// Room for arrows and their numbers around the net.
-const ROOM: f64 = 122.0;
+const ROOM: f64 = 136.0;
 /// The same above and below, where numbers take less room.
 const HEADROOM: f64 = 100.0;
 /// Up to so many rope segments each gets its number; beyond, each rope gets that of its largest tension.
@@ -46,6 +46,11 @@ impl View {
             origin: [left - x0 * scale, bottom - HEADROOM + y0 * scale],
             bottom: bottom.max(560.0),
         }
+    }
+
+    /// Where text may stand: left, top, right, bottom.
+    pub(super) fn room(&self) -> [f64; 4] {
+        [8.0, TOP - 8.0, RIGHT + 14.0, self.bottom - 6.0]
     }
 
     pub(super) fn at(&self, position: [f64; 3]) -> [f64; 2] {
@@ -98,11 +103,17 @@ pub(crate) fn plan(run: &Run, state: &State, scale: &Scale) -> Option<String> {
     }
     for &node in &run.supports {
         let [x, y] = view.at(positions[node]);
-        taken.take_box(x, y, 1, 5.0);
+        taken.occupy([x - 7.0, y - 7.0, x + 7.0, y + 7.0]);
     }
-    if answered {
-        arrows(&mut sketch, run, state, &view, &positions, &mut taken);
+    for segment in &run.segments {
+        let [from, to] = segment.nodes.map(|node| view.at(positions[node]));
+        taken.cross(from, to);
     }
+    let pulls_left_out = if answered {
+        arrows(&mut sketch, run, state, &view, &positions, &mut taken)
+    } else {
+        0
+    };
     supports(&mut sketch, run, &view, &positions, (!answered).then_some(&mut taken));
     let left_out = if answered {
         numbers(&mut sketch, run, &view, &positions, &forces, &mut taken)
@@ -125,11 +136,15 @@ pub(crate) fn plan(run: &Run, state: &State, scale: &Scale) -> Option<String> {
     } else if answered {
         remark.push_str("; numbers: largest kN of each rope, at its place");
     }
-    if left_out > 0 {
-        remark.push_str(&format!("; {left_out} left out for room, see segments.csv"));
-    }
+    let room = match (left_out, pulls_left_out) {
+        (0, 0) => String::new(),
+        (ropes, 0) => format!("; for room {ropes} left out, see segments.csv"),
+        (0, pulls) => format!("; for room {pulls} pulls left out, see anchors.csv"),
+        (ropes, pulls) => format!("; for room {ropes} left out, and {pulls} pulls: see the tables"),
+    };
+    remark.push_str(&room);
     sketch.put(format_args!(
-        "<text x=\"330\" y=\"{:.0}\" font-size=\"12\" fill=\"{MUTED}\">{remark}</text>",
+        "<text x=\"300\" y=\"{:.0}\" font-size=\"12\" fill=\"{MUTED}\">{remark}</text>",
         bottom + 14.0
     ));
     frame::foot(&mut sketch, run, bottom + 40.0);
@@ -294,9 +309,8 @@ fn numbers(
     for segment in places {
         let [from, to] = run.segments[segment].nodes;
         let ([x0, y0], [x1, y1]) = (view.at(positions[from]), view.at(positions[to]));
-        let (x, y) = (f64::midpoint(x0, x1), f64::midpoint(y0, y1));
         let label = three(forces[segment] / 1e3);
-        if taken.take(x, y, label.chars().count()) {
+        if let Some([x, y]) = number_place([x0, y0], [x1, y1], label.chars().count(), taken) {
             sketch.put(format_args!(
                 "<text class=\"tension\" x=\"{x:.1}\" y=\"{:.1}\" text-anchor=\"middle\" font-size=\"12\" {HALO} data-of=\"{}\" \
                  data-axial-force-n=\"{}\">{label}</text>",
@@ -309,6 +323,24 @@ fn numbers(
         }
     }
     left_out
+}
+
+/// A place for a number on its segment, or close beside it where nothing else is.
+fn number_place(from: [f64; 2], to: [f64; 2], letters: usize, taken: &mut Taken) -> Option<[f64; 2]> {
+    let [x, y] = [f64::midpoint(from[0], to[0]), f64::midpoint(from[1], to[1])];
+    if taken.take(x, y, letters) {
+        return Some([x, y]);
+    }
+    let along = [to[0] - from[0], to[1] - from[1]];
+    let size = along[0].hypot(along[1]);
+    if size <= 0.0 {
+        return None;
+    }
+    let beside = [16.0, -16.0, 24.0, -24.0].map(|way| [x - along[1] / size * way, y + along[0] / size * way]);
+    beside.into_iter().find(|&[x, y]| {
+        let place = Taken::place(x, y, letters, 9.0);
+        taken.is_clear(place) && taken.take(x, y, letters)
+    })
 }
 
 /// Marks what a failure names.

@@ -37,11 +37,14 @@ pub(crate) fn sections(run: &Run) -> Option<String> {
         return None;
     }
     let mut sketch = Sketch::new();
-    let line = "Reference state and the cases that move the rope most, movements to the scale of the heights; places in plan are those of the reference.";
+    let lines = [
+        "Reference state and the cases that move each rope most.",
+        "Movements are drawn to the scale of the heights, at the places in plan of the reference state.",
+    ];
     frame::head(
         &mut sketch,
         &format!("{} · sections along ropes", run.title()),
-        &[(line.to_owned(), MUTED)],
+        &lines.map(|line| (line.to_owned(), MUTED)),
     );
     let mut top = 128.0;
     for profile in &profiles {

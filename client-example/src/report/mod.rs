@@ -7,11 +7,15 @@ use ropewalk_api::ropewalk::v1;
 use crate::colour::Scale;
 use crate::draw;
 use crate::escape::{markup, script_json};
+use crate::refusal::{count_words, severity_rank, severity_word};
 use crate::run::{Run, State};
 use crate::sheet::{self, Sheet};
 
 const STYLE: &str = include_str!("report.css");
 const SCRIPT: &str = include_str!("report.js");
+
+/// Findings that the page lists.
+const FINDINGS: usize = 200;
 
 /// The page.
 pub(crate) fn page(run: &Run, sheets: &[Sheet], scale: &Scale) -> String {
@@ -206,7 +210,7 @@ fn drawings(run: &Run, scale: &Scale) -> String {
         return text;
     }
     format!(
-        "<section class=\"drawings\"><h2>Drawings</h2><p class=\"note\">Plans of all states lie beside this page.</p>\n{text}</section>\n"
+        "<section class=\"drawings\"><h2>Drawings</h2><p class=\"note\">Drawn here: the reference state and the case with the worst ratio. More plans lie beside this page.</p>\n{text}</section>\n"
     )
 }
 
@@ -215,9 +219,15 @@ fn findings(run: &Run) -> String {
     if findings.is_empty() {
         return String::new();
     }
-    let items: String = findings
-        .iter()
-        .take(200)
+    let mut sorted: Vec<&v1::Finding> = findings.iter().collect();
+    sorted.sort_by_key(|finding| (!finding.accepted_note.is_empty(), severity_rank(finding.severity())));
+    let more = match sorted.len().saturating_sub(FINDINGS) {
+        0 => String::new(),
+        count => format!("<p class=\"note\">{count} more in results.json.</p>"),
+    };
+    let items: String = sorted
+        .into_iter()
+        .take(FINDINGS)
         .map(|finding| {
             let place = [&finding.case, &finding.path, &finding.id]
                 .into_iter()
@@ -228,14 +238,26 @@ fn findings(run: &Run) -> String {
             } else {
                 format!(" <em>{}</em>", markup(&finding.cure))
             };
+            let accepted = if finding.accepted_note.is_empty() {
+                String::new()
+            } else {
+                format!(
+                    "<br><small>accepted in the brief: {}</small>",
+                    markup(&finding.accepted_note)
+                )
+            };
             format!(
-                "<li><small>{}</small> {}{cure}</li>",
+                "<li><strong>{}</strong> <small>{}</small> {}{cure}{accepted}</li>",
+                severity_word(finding.severity()),
                 markup(&place.join(" · ")),
                 markup(&finding.message)
             )
         })
         .collect();
-    format!("<section><h2>Findings</h2><ul>{items}</ul></section>\n")
+    format!(
+        "<section id=\"findings\"><h2>Findings</h2><p class=\"note\">{}</p><ul>{items}</ul>{more}</section>\n",
+        count_words(&findings)
+    )
 }
 
 fn origin(run: &Run) -> String {

@@ -1,3 +1,26 @@
+// Tables and drawings that go on to the right say so.
+(function () {
+  "use strict";
+  var wides = Array.from(document.querySelectorAll(".wide")).map(function (wide) {
+    var sign = document.createElement("p");
+    sign.className = "scrolls";
+    sign.textContent = "goes on to the right: scroll sideways \u2192";
+    wide.parentNode.insertBefore(sign, wide);
+    return [wide, sign];
+  });
+  function look() {
+    wides.forEach(function (pair) {
+      var hidden = pair[0].scrollWidth - pair[0].clientWidth;
+      pair[0].classList.toggle("cut", hidden - pair[0].scrollLeft > 2);
+      pair[1].classList.toggle("on", hidden > 2);
+      if (hidden > 2) pair[0].tabIndex = 0; else pair[0].removeAttribute("tabindex");
+    });
+  }
+  wides.forEach(function (pair) { pair[0].addEventListener("scroll", look, { passive: true }); });
+  window.addEventListener("resize", look);
+  look();
+})();
+
 // The turning shape. Orthographic, so that lengths on the screen can be compared; painted from back to front.
 (function () {
   "use strict";
@@ -135,18 +158,25 @@
     context.fillStyle = ink;
     context.fillText(text, x, y);
   }
+  // Many supports are drawn small, and the arrows of a long row of them would be a hedge: then the largest pulls have theirs.
+  var ARROWS = 40, half = data.supports.length > ARROWS ? 2.5 : 5;
   function supports() {
     context.setLineDash([]);
     data.supports.forEach(function (n) {
-      context.fillStyle = "#fff"; context.strokeStyle = INK; context.lineWidth = 2;
-      context.beginPath(); context.rect(seen[3 * n] - 5, seen[3 * n + 1] - 5, 10, 10); context.fill(); context.stroke();
+      context.fillStyle = "#fff"; context.strokeStyle = INK; context.lineWidth = half > 3 ? 2 : 1;
+      context.beginPath(); context.rect(seen[3 * n] - half, seen[3 * n + 1] - half, 2 * half, 2 * half); context.fill(); context.stroke();
     });
   }
   // Towards the members of each support, to find the side where an arrow is in nobody's way.
+  var at = new Map(data.supports.map(function (n) { return [n, []]; }));
+  data.segments.forEach(function (part, s) {
+    if (at.has(part[0])) at.get(part[0]).push(s);
+    if (at.has(part[1])) at.get(part[1]).push(s);
+  });
   function towards(n, kn) {
     var sum = [0, 0];
-    data.segments.forEach(function (part, s) {
-      var other = part[0] === n ? part[1] : part[1] === n ? part[0] : -1;
+    at.get(n).forEach(function (s) {
+      var part = data.segments[s], other = part[0] === n ? part[1] : part[1] === n ? part[0] : -1;
       if (other < 0) return;
       var dx = seen[3 * other] - seen[3 * n], dy = seen[3 * other + 1] - seen[3 * n + 1], size = Math.hypot(dx, dy) || 1;
       sum[0] += Math.abs(kn[s]) * dx / size;
@@ -157,8 +187,11 @@
   // Pulls as arrows outside the net, pointing the way the anchor is pulled or pressed. Their size on screen says nothing.
   function pulls(now) {
     var ct = Math.cos(view.turn), st = Math.sin(view.turn), ci = Math.cos(view.tilt), si = Math.sin(view.tilt);
-    data.supports.forEach(function (n, i) {
-      var p = now.pulls[i], size = Math.hypot(p[0], p[1], p[2]);
+    var sizes = now.pulls.map(function (p) { return Math.hypot(p[0], p[1], p[2]); });
+    var largest = sizes.map(function (_, i) { return i; }).sort(function (a, b) { return sizes[b] - sizes[a] || a - b; }).slice(0, ARROWS);
+    var boxes = [];
+    largest.forEach(function (i) {
+      var n = data.supports[i], p = now.pulls[i], size = sizes[i];
       if (size < 1e-6) return;
       var dx = (p[0] * ct - p[1] * st) / size, dy = -(p[2] * ci + (p[0] * st + p[1] * ct) * si) / size;
       var net = towards(n, now.kn), x = seen[3 * n], y = seen[3 * n + 1];
@@ -171,8 +204,15 @@
       context.lineTo(head[0] - 10 * dx - 4 * dy, head[1] - 10 * dy + 4 * dx);
       context.lineTo(head[0] - 10 * dx + 4 * dy, head[1] - 10 * dy - 4 * dx);
       context.closePath(); context.fill();
-      var out = side * dx;
-      label(digits(size) + " kN", x + side * 54 * dx, y + side * 60 * dy + 4, INK, out > 0.4 ? "left" : out < -0.4 ? "right" : "center");
+      // A number keeps to the canvas, and off the numbers of larger pulls.
+      var out = side * dx, text = digits(size) + " kN", wide = 7.2 * text.length;
+      var middle = x + side * 54 * dx + (out > 0.4 ? wide / 2 : out < -0.4 ? -wide / 2 : 0), low = y + side * 60 * dy + 4;
+      middle = Math.max(wide / 2 + 3, Math.min(canvas.clientWidth - wide / 2 - 3, middle));
+      low = Math.max(14, Math.min(canvas.clientHeight - 5, low));
+      var free = boxes.every(function (box) { return Math.abs(box[0] - middle) > (box[2] + wide) / 2 || Math.abs(box[1] - low) > 14; });
+      if (!free) return;
+      boxes.push([middle, low, wide]);
+      label(text, middle, low, INK, "center");
     });
   }
   function look(now) {
@@ -281,10 +321,24 @@
       paint();
     });
   });
-  stateChoice.addEventListener("change", show);
+  // The address names the state, as `#case=` and its id, so that a link can point at it.
+  function fromAddress() {
+    var named = /^#case=(.*)$/.exec(window.location.hash), id;
+    try { id = named && decodeURIComponent(named[1]); } catch (_) { return false; }
+    var found = data.states.findIndex(function (one) { return one.id === id; });
+    if (found < 0 || stateChoice.value === String(found)) return false;
+    stateChoice.value = String(found);
+    return true;
+  }
+  window.addEventListener("hashchange", function () { if (fromAddress()) show(); });
+  stateChoice.addEventListener("change", function () {
+    try { window.history.replaceState(null, "", "#case=" + encodeURIComponent(state().id)); } catch (_) { /* a page without an address */ }
+    show();
+  });
   timesChoice.addEventListener("change", show);
   pullsChoice.addEventListener("change", paint);
   window.addEventListener("resize", paint);
   window.addEventListener("beforeprint", paint);
+  fromAddress();
   show();
 })();

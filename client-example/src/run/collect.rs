@@ -39,6 +39,11 @@ pub(crate) struct Collector {
 }
 
 impl Collector {
+    /// Whether the engine took the brief and began to answer.
+    pub(crate) fn has_begun(&self) -> bool {
+        self.started.is_some()
+    }
+
     /// States that are closed so far.
     pub(crate) fn closed(&self) -> &[v1::CaseSummary] {
         &self.ended
@@ -116,6 +121,61 @@ impl Collector {
             .summary
             .take()
             .ok_or_else(|| odd("the stream ended without a summary"))?;
+        self.put_together(brief, summary, None)
+    }
+
+    /// What came before a stream broke off: states that were closed, without a verdict. The state that was open is left
+    /// out.
+    ///
+    /// # Errors
+    /// [`Oddity`] if that is not enough to tell of.
+    pub(crate) fn finish_broken(mut self, brief: v1::Brief, why: &str) -> Result<Run, Oddity> {
+        if self.ended.is_empty() {
+            return Err(odd("the stream broke off before the first state was closed"));
+        }
+        // Arrays of states that were not closed may lack their ends; those over all states mean nothing without all.
+        let closed: Vec<&str> = self.ended.iter().map(|end| end.case.as_str()).collect();
+        self.columns.retain(|case, _| closed.contains(&case.as_str()));
+        let count = |of: usize| u32::try_from(of).unwrap_or(u32::MAX);
+        let answered: Vec<&v1::CaseSummary> = self
+            .ended
+            .iter()
+            .filter(|end| end.outcome() == v1::CaseOutcome::Answered)
+            .collect();
+        let audited = answered.iter().filter(|end| end.audited).count();
+        let asked = self
+            .tables
+            .get(&(v1::Range::Case as i32))
+            .map_or(self.begun.len(), |table| table.total + 1);
+        let summary = v1::Summary {
+            verdict: v1::Verdict::NoAnswer.into(),
+            answered: Some(v1::Share {
+                count: count(answered.len()),
+                of: count(asked),
+            }),
+            audited: Some(v1::Share {
+                count: count(audited),
+                of: count(answered.len()),
+            }),
+            cautions: vec![
+                format!(
+                    "This run is not complete: it broke off after {} of {asked} states, and no check was judged. Run it \
+                     again before you decide by it.",
+                    self.ended.len()
+                ),
+                "An aid: the local code and a licensed engineer decide.".to_owned(),
+            ],
+            ..Default::default()
+        };
+        self.put_together(brief, summary, Some(why.to_owned()))
+    }
+
+    fn put_together(
+        mut self,
+        brief: v1::Brief,
+        summary: v1::Summary,
+        broken_off: Option<String>,
+    ) -> Result<Run, Oddity> {
         let started = self
             .started
             .take()
@@ -140,6 +200,7 @@ impl Collector {
             findings: std::mem::take(&mut self.findings),
             summary,
             timing: self.timing.take(),
+            broken_off,
         };
         run.segments = self.segments(&run)?;
         run.supports = self.supports(&run)?;

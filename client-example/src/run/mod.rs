@@ -93,6 +93,8 @@ pub(crate) struct Run {
     pub(crate) findings: Vec<v1::Finding>,
     pub(crate) summary: v1::Summary,
     pub(crate) timing: Option<v1::Timing>,
+    /// Why the stream broke off before its summary; none where it came whole.
+    pub(crate) broken_off: Option<String>,
 }
 
 impl Run {
@@ -164,15 +166,31 @@ impl Run {
 
     /// Findings beside those that only repeat why a case has no answer.
     pub(crate) fn other_findings(&self) -> Vec<v1::Finding> {
-        let causes: Vec<&str> = self
+        let failures: Vec<(&str, &str)> = self
             .states
             .iter()
-            .filter_map(|state| Some(state.summary.failure.as_ref()?.message.as_str()))
+            .filter_map(|state| Some((state.id.as_str(), state.summary.failure.as_ref()?.message.as_str())))
             .collect();
+        let repeats = |finding: &v1::Finding| {
+            failures.iter().any(|(case, message)| {
+                finding.message == *message || finding.reason == "NO_ANSWER" && finding.case == *case
+            })
+        };
         self.findings
             .iter()
-            .filter(|finding| !causes.contains(&finding.message.as_str()))
+            .filter(|finding| !repeats(finding))
             .cloned()
+            .collect()
+    }
+
+    /// Cases that the stream did not come to; the reference state is named like them.
+    pub(crate) fn cases_missing(&self) -> Vec<&str> {
+        if self.broken_off.is_none() {
+            return Vec::new();
+        }
+        std::iter::once("reference")
+            .chain(self.case_ids.iter().map(String::as_str))
+            .filter(|id| !self.states.iter().any(|state| state.id == *id))
             .collect()
     }
 

@@ -18,6 +18,23 @@ pub(crate) fn verdict_word(verdict: v1::Verdict) -> &'static str {
 /// Why the verdict is what it is, in one sentence.
 pub(crate) fn why(run: &Run) -> String {
     let summary = &run.summary;
+    if let Some(why) = &run.broken_off {
+        let missing = run.cases_missing();
+        let named: Vec<String> = missing.iter().take(5).map(|id| format!("\"{id}\"")).collect();
+        let more = match missing.len().saturating_sub(named.len()) {
+            0 => String::new(),
+            count => format!(" and {count} more"),
+        };
+        let lacks = if missing.is_empty() {
+            "no check was judged".to_owned()
+        } else {
+            format!("no answer for {}{more}, and no check was judged", named.join(", "))
+        };
+        return format!(
+            "the run broke off after {}: {lacks}. {why}",
+            counted(run.states.len(), "state")
+        );
+    }
     match summary.verdict() {
         v1::Verdict::Passes => {
             let n_cases = run.states.len().saturating_sub(1);

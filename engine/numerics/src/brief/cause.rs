@@ -319,7 +319,7 @@ impl fmt::Display for LikelyCause {
             Self::Numbers { what } => write!(f, "{what}: check the units and factors of the case"),
             Self::NotHeld { nodes, force } => write!(
                 f,
-                "nothing holds {} along the load of {:.3} kN on them: hold one of them, or join them to a support",
+                "nothing holds {} along the load of {:.3} kN on them",
                 list(nodes, NAMED),
                 force.norm() / 1e3
             ),
@@ -333,8 +333,7 @@ impl fmt::Display for LikelyCause {
                 let lie = if *flat { "lie in one plane" } else { "do not resist" };
                 write!(
                     f,
-                    "nothing holds \"{node}\" along {}: {} {lie}. Prestress does not stiffen it ({stiffness:.0} N/m). \
-                     Spread them, or hold \"{node}\" along that direction",
+                    "nothing holds \"{node}\" along {}: {} {lie}. Prestress does not stiffen it ({stiffness:.0} N/m)",
                     direction(along),
                     list(members, NAMED)
                 )

@@ -47,7 +47,7 @@ pub(super) fn of_stop(case: &str, termination: Termination, load_factor: f64, ca
     };
     message.push_str(&format!(". {cause}"));
     let nodes: Vec<&str> = cause.worst.iter().map(|culprit| culprit.node.as_str()).collect();
-    failure(reason, message, cure_of(&cause.likely), &nodes, &cause.members)
+    failure(reason, message, &cure_of(&cause.likely), &nodes, &cause.members)
 }
 
 /// Why no state of a case can be given.
@@ -64,20 +64,27 @@ pub(super) fn of_error(case: &str, error: &SolveError, cause: &Cause) -> v1::Fai
     };
     nodes.extend(cause.worst.iter().map(|culprit| culprit.node.as_str()));
     let message = format!("case {} has no equilibrium: {cause}", Quoted(case));
-    failure(reason, message, cure_of(&cause.likely), &nodes, &cause.members)
+    failure(reason, message, &cure_of(&cause.likely), &nodes, &cause.members)
 }
 
-fn cure_of(likely: &LikelyCause) -> &'static str {
-    match likely {
+/// What to try; the message tells only what happened, so that nothing is said twice.
+fn cure_of(likely: &LikelyCause) -> String {
+    let cure = match likely {
         LikelyCause::Numbers { .. } => "check units and factors of the actions in this case",
         LikelyCause::NotHeld { .. } => "hold one of the nodes, join them to a support, or take the load off",
-        LikelyCause::Mechanism { .. } => "spread the members at the node, or hold it along the direction",
+        LikelyCause::Mechanism { node, .. } => {
+            return format!(
+                "spread the members at {}, or hold it along that direction",
+                Quoted(node)
+            );
+        }
         LikelyCause::UnitSlip { .. } => "check the axial stiffness: was it given in kN?",
         LikelyCause::MuchSlack { .. } => "give more prestress there, or less load",
         LikelyCause::RanAway => "check size and sign of the loads, and what holds these nodes",
         LikelyCause::Tips { .. } => "give more prestress, or check the sign of the loads",
         LikelyCause::OutOfIterations => "allow more iterations in solving.max_iterations, or put the load on in steps",
-    }
+    };
+    cure.to_owned()
 }
 
 /// The failure of our own code in a case.

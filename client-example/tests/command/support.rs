@@ -3,7 +3,7 @@
 use std::collections::HashMap;
 use std::fs;
 use std::path::{Path, PathBuf};
-use std::process::Command;
+use std::process::{Command, Output};
 
 /// How the program ended.
 pub(crate) struct Ended {
@@ -12,15 +12,25 @@ pub(crate) struct Ended {
     pub(crate) told: String,
 }
 
-/// Runs the built program; nothing of the caller's settings reaches it.
-pub(crate) fn ropewalk(args: &[&str]) -> Ended {
+/// The built program; nothing of the caller's settings reaches it.
+pub(crate) fn command(args: &[&str]) -> Command {
     let mut command = Command::new(env!("CARGO_BIN_EXE_ropewalk"));
     for (name, _) in std::env::vars() {
         if name.starts_with("ROPEWALK_") {
             command.env_remove(name);
         }
     }
-    let output = command.args(args).output().expect("the program starts");
+    command.args(args);
+    command
+}
+
+/// Runs the built program.
+pub(crate) fn ropewalk(args: &[&str]) -> Ended {
+    finish(command(args).output().expect("the program starts"))
+}
+
+/// Reads what the program said.
+pub(crate) fn finish(output: Output) -> Ended {
     Ended {
         code: output.status.code().expect("the program ends by itself"),
         out: String::from_utf8(output.stdout).expect("text"),
