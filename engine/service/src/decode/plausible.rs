@@ -41,7 +41,11 @@ pub(crate) fn sections(net: &NetDraft<'_>, findings: &mut Findings) {
                 if (usual.0..=usual.1).contains(&(value / scale)) {
                     return;
                 }
-                let words = field.rsplit_once("_n").map_or(field, |_| field).replace('_', " ");
+                // The unit is the last word of the field's name.
+                let words = field
+                    .rsplit_once('_')
+                    .map_or(field, |(quantity, _)| quantity)
+                    .replace('_', " ");
                 findings
                     .doubt(
                         reasons::UNIT_SLIP,
