@@ -123,6 +123,7 @@ fn state(net: &Net) -> ReferenceOutcome {
             segments: Vec::new(),
             support_movements: Vec::new(),
             removed: Vec::new(),
+            ..Case::default()
         },
         history: Vec::new(),
         report: ShapeReport {

@@ -41,6 +41,7 @@ pub(crate) fn stiff(axial_stiffness: f64) -> Section {
         mass_per_length: 0.0,
         expansion: 0.0,
         breaking_force: None,
+        ..Section::default()
     }
 }
 
@@ -89,6 +90,7 @@ impl Problem {
             name: format!("c{}", self.net.cables.len()),
             path: path.to_vec(),
             sections: vec![section; rules.len()],
+            ..CableGiven::default()
         });
         self.cable_rules.extend(rules);
     }

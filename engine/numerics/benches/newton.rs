@@ -51,12 +51,14 @@ fn rim_net(n: usize) -> NetGiven {
         mass_per_length: 0.0,
         expansion: 0.0,
         breaking_force: None,
+        ..Section::default()
     };
     let mut rope = |name: String, path: Vec<NodeId>| {
         given.cables.push(CableGiven {
             name,
             sections: vec![section; path.len() - 1],
             path,
+            ..CableGiven::default()
         });
     };
     for k in 1..m - 1 {
@@ -114,6 +116,7 @@ fn case(net: &Net, positions: &[Vector3<f64>], n: usize) -> Case {
         segments: vec![SegmentLoads::default(); net.segments().len()],
         support_movements: vec![Vector3::zeros(); positions.len()],
         removed: vec![false; net.segments().len()],
+        ..Case::default()
     }
 }
 

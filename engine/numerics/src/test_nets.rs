@@ -15,6 +15,7 @@ pub(crate) fn section(axial_stiffness: f64, mass_per_length: f64) -> Section {
         mass_per_length,
         expansion: 12e-6,
         breaking_force: None,
+        ..Section::default()
     }
 }
 
@@ -65,6 +66,7 @@ impl Sketch {
             name: name.to_owned(),
             sections: vec![section; path.len() - 1],
             path,
+            ..CableGiven::default()
         });
     }
 

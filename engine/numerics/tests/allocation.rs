@@ -28,12 +28,14 @@ fn ladder(n: usize) -> Net {
         mass_per_length: 0.0,
         expansion: 0.0,
         breaking_force: None,
+        ..Section::default()
     };
     let pairs = (0..n - 2).flat_map(|i| [(i, i + 1), (i, i + 2)]);
     let cable = |(a, b): (usize, usize)| CableGiven {
         name: format!("c{a}-{b}"),
         path: vec![NodeId::new(a), NodeId::new(b)],
         sections: vec![section],
+        ..CableGiven::default()
     };
     Net::new(NetGiven {
         nodes: (0..n).map(node).collect(),
@@ -55,6 +57,7 @@ fn assembly_does_not_allocate() {
         segments: vec![SegmentLoads::default(); n_segments],
         support_movements: vec![Vector3::zeros(); positions.len()],
         removed: vec![false; n_segments],
+        ..Case::default()
     };
     let loading = Loading::new(&structure, &case, &case.unstressed_lengths, 1.0).expect("fits");
     let mut response = Response::new(&structure);

@@ -60,7 +60,9 @@ fn check(nodes: &[Vector3<f64>], held: &[usize], bars: &[Bar], loads: Vec<Vector
                     mass_per_length: 0.0,
                     expansion: 1.0,
                     breaking_force: None,
+                    ..Section::default()
                 }],
+                ..CableGiven::default()
             })
             .collect(),
         ..NetGiven::default()
@@ -72,10 +74,12 @@ fn check(nodes: &[Vector3<f64>], held: &[usize], bars: &[Bar], loads: Vec<Vector
         segments: (bars.iter())
             .map(|b| SegmentLoads {
                 temperature_change: b.4,
+                ..SegmentLoads::default()
             })
             .collect(),
         support_movements: vec![Vector3::zeros(); nodes.len()],
         removed: vec![false; bars.len()],
+        ..Case::default()
     };
     let settings = Settings {
         tolerance: 1e-13,

@@ -197,11 +197,13 @@ mod tests {
             mass_per_length: 0.0,
             expansion: 0.0,
             breaking_force: None,
+            ..Section::default()
         };
         let cable = |a, b| CableGiven {
             name: format!("{a}-{b}"),
             path: vec![NodeId::new(a), NodeId::new(b)],
             sections: vec![section],
+            ..CableGiven::default()
         };
         let half = DMatrix::from_fn(6, 6, |i, j| ((3 * i + 5 * j) % 7) as f64);
         Net::new(NetGiven {
@@ -230,6 +232,7 @@ mod tests {
                 nodes: vec![NodeId::new(3), NodeId::new(1)],
                 stiffness: &half * half.transpose() * 50.0,
             }],
+            ..NetGiven::default()
         })
         .expect("valid")
     }
@@ -245,6 +248,7 @@ mod tests {
             segments: vec![SegmentLoads::default(); n_segments],
             support_movements: vec![Vector3::new(0.01, 0.0, 0.02); positions.len()],
             removed: vec![false; n_segments],
+            ..Case::default()
         };
         case.unstressed_lengths[1] = 4.0;
         case.unstressed_lengths[7] = 4.0;

@@ -12,6 +12,7 @@ pub(super) fn net() -> Net {
         mass_per_length: 0.0,
         expansion: 0.0,
         breaking_force,
+        ..Section::default()
     };
     let node = |index: u32| NodeGiven {
         name: format!("n{index}"),
@@ -27,11 +28,13 @@ pub(super) fn net() -> Net {
                 name: "known".to_owned(),
                 path: path(&[0, 1, 2]),
                 sections: vec![section(Some(10_000.0)); 2],
+                ..CableGiven::default()
             },
             CableGiven {
                 name: "unknown".to_owned(),
                 path: path(&[0, 2]),
                 sections: vec![section(None)],
+                ..CableGiven::default()
             },
         ],
         struts: vec![StrutGiven {
@@ -40,6 +43,7 @@ pub(super) fn net() -> Net {
             section: section(None),
         }],
         elastic_supports: Vec::new(),
+        ..NetGiven::default()
     })
     .expect("a valid net")
 }

@@ -104,11 +104,13 @@ mod tests {
             mass_per_length: 0.0,
             expansion: 0.0,
             breaking_force: None,
+            ..Section::default()
         };
         let cable = |name: &str, a, b| CableGiven {
             name: name.into(),
             path: vec![NodeId::new(a), NodeId::new(b)],
             sections: vec![section],
+            ..CableGiven::default()
         };
         let net = Net::new(NetGiven {
             nodes: vec![
@@ -124,6 +126,7 @@ mod tests {
                 section,
             }],
             elastic_supports: vec![],
+            ..NetGiven::default()
         })
         .expect("valid");
         let positions: Vec<_> = net.nodes().iter().filter_map(|n| n.position).collect();

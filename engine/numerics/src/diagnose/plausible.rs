@@ -135,7 +135,9 @@ mod tests {
                     mass_per_length: 0.0,
                     expansion: 0.0,
                     breaking_force: None,
+                    ..Section::default()
                 }],
+                ..CableGiven::default()
             })
             .collect();
         Net::new(NetGiven {
@@ -159,6 +161,7 @@ mod tests {
             segments: vec![SegmentLoads::default(); 4],
             support_movements: vec![],
             removed: vec![false; 4],
+            ..Case::default()
         };
         let strained = strained_members(&net, &case, &[13_500.0, 13_500.0, 0.0, 13_500.0]);
         assert_eq!(strained.len(), 1);

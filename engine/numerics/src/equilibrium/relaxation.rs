@@ -110,6 +110,7 @@ mod tests {
             mass_per_length: 0.0,
             expansion: 0.0,
             breaking_force: None,
+            ..Section::default()
         }
     }
 
@@ -121,6 +122,7 @@ mod tests {
             segments: vec![SegmentLoads::default(); net.segments().len()],
             support_movements: vec![Vector3::zeros(); net.nodes().len()],
             removed: vec![false; net.segments().len()],
+            ..Case::default()
         }
     }
 
@@ -143,6 +145,7 @@ mod tests {
             name: format!("g{i}"),
             path: vec![NodeId::new(1), NodeId::new(i)],
             sections: vec![section(1e6)],
+            ..CableGiven::default()
         };
         let net = Net::new(NetGiven {
             nodes: places.iter().enumerate().map(node).collect(),
@@ -153,6 +156,7 @@ mod tests {
                 section: section(5e6),
             }],
             elastic_supports: vec![],
+            ..NetGiven::default()
         })
         .expect("valid");
         let case = case(&net, Vector3::new(50.0, 20.0, -500.0), vec![6.35, 6.35, 6.35, 5.0]);
@@ -171,6 +175,7 @@ mod tests {
             name: format!("r{i}"),
             path: vec![NodeId::new(i + n), NodeId::new(i)],
             sections: vec![section(1e6)],
+            ..CableGiven::default()
         };
         let net = Net::new(NetGiven {
             nodes: (0..2 * n).map(node).collect(),
@@ -180,6 +185,7 @@ mod tests {
                 nodes: (0..n).map(NodeId::new).collect(),
                 stiffness: DMatrix::from_fn(3 * n, 3 * n, |i, j| if i % 3 == j % 3 { 1e5 } else { 0.0 }),
             }],
+            ..NetGiven::default()
         })
         .expect("valid");
         let case = case(&net, Vector3::new(30.0, 0.0, -500.0), vec![4.99; n]);

@@ -10,10 +10,13 @@ use crate::model::{Net, ReferenceState, SegmentId};
 pub struct SegmentLoads {
     /// Change of temperature (K).
     pub temperature_change: f64,
+    /// Dead load per unstressed length (N/m) of a segment that hangs; zero for a straight one, whose load is in the
+    /// nodal forces.
+    pub per_length: Vector3<f64>,
 }
 
 /// A case ready to be solved. Neither the net nor its analysis is rebuilt for it.
-#[derive(Clone, Debug, PartialEq)]
+#[derive(Clone, Debug, Default, PartialEq)]
 pub struct Case {
     /// Dead force on every node (N), held ones too.
     pub nodal_forces: Vec<Vector3<f64>>,
@@ -25,6 +28,8 @@ pub struct Case {
     pub support_movements: Vec<Vector3<f64>>,
     /// Segments taken out, by index.
     pub removed: Vec<bool>,
+    /// Pressure on the outer side of every panel (Pa); it stays normal to the panel as that moves. Empty: none.
+    pub pressures: Vec<f64>,
 }
 
 impl Case {
@@ -50,6 +55,7 @@ impl Case {
             segments: vec![SegmentLoads::default(); net.segments().len()],
             support_movements: vec![Vector3::zeros(); net.nodes().len()],
             removed: vec![false; net.segments().len()],
+            pressures: Vec::new(),
         };
         let mut shares = vec![0.0; net.segments().len()];
         for (action, factor) in factors.iter().filter(|(_, factor)| *factor != 0.0) {
@@ -71,7 +77,11 @@ impl Case {
         }
         scaled.nodal_forces.iter_mut().for_each(|f| *f *= factor);
         scaled.support_movements.iter_mut().for_each(|m| *m *= factor);
-        scaled.segments.iter_mut().for_each(|s| s.temperature_change *= factor);
+        for segment in &mut scaled.segments {
+            segment.temperature_change *= factor;
+            segment.per_length *= factor;
+        }
+        scaled.pressures.iter_mut().for_each(|p| *p *= factor);
         for (length, start) in scaled.unstressed_lengths.iter_mut().zip(reference_lengths) {
             *length = factor * *length + (1.0 - factor) * start;
         }
@@ -184,6 +194,7 @@ mod tests {
             mass_per_length: 2.0,
             expansion: 12e-6,
             breaking_force: None,
+            ..Section::default()
         };
         let node = |name: &str, x, y, z, held: bool, attached_mass| NodeGiven {
             name: name.to_owned(),
@@ -202,6 +213,7 @@ mod tests {
                 name: "rope".to_owned(),
                 path: [0, 1, 2].map(NodeId::new).to_vec(),
                 sections: vec![section; 2],
+                ..CableGiven::default()
             }],
             struts: vec![StrutGiven {
                 name: "post".to_owned(),
@@ -209,6 +221,7 @@ mod tests {
                 section,
             }],
             elastic_supports: Vec::new(),
+            ..NetGiven::default()
         })
         .expect("a valid net")
     }

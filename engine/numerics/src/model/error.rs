@@ -43,6 +43,20 @@ pub enum NetError {
         /// Position in the path.
         position: usize,
     },
+    /// A rope can slide at an inner node only, once, and not where it hangs as a catenary.
+    #[error("{of} can not slide at place {position} of its path: name an inner node of a straight rope, once")]
+    CanNotSlide {
+        /// Name of the cable.
+        of: String,
+        /// Position in the path.
+        position: usize,
+    },
+    /// A panel has fewer than three corners, or one of them twice.
+    #[error("the panel {of} has fewer than three different corners")]
+    DegeneratePanel {
+        /// Name of the panel.
+        of: String,
+    },
     /// A held node has no position.
     #[error("the held node {of} has no position")]
     SupportWithoutPosition {

@@ -11,6 +11,9 @@ mod violations;
 pub use error::NetError;
 pub use ids::{CableId, NodeId, ReachId, SegmentId, StrutId};
 pub use material::Section;
-pub use net::{AxialLaw, Cable, CableGiven, Member, Net, NetGiven, Node, NodeGiven, Reach, Segment, Strut, StrutGiven};
+pub use net::{
+    AxialLaw, Cable, CableGiven, Member, Net, NetGiven, Node, NodeGiven, Panel, PanelGiven, Reach, Segment, Slide,
+    Strut, StrutGiven,
+};
 pub use state::ReferenceState;
 pub use support::{ElasticSupport, ElasticSupportGiven, Support, SupportGiven};

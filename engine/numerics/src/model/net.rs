@@ -22,8 +22,17 @@ pub struct NodeGiven {
     pub attached_mass: f64,
 }
 
+/// A node through which a rope slides instead of being clamped.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Slide {
+    /// Position of the node in the path of the cable: neither its first nor its last.
+    pub place: usize,
+    /// Coulomb friction coefficient (–), zero or more.
+    pub friction: f64,
+}
+
 /// A cable as given: one rope through its nodes in order.
-#[derive(Clone, Debug, PartialEq)]
+#[derive(Clone, Debug, Default, PartialEq)]
 pub struct CableGiven {
     /// The client's id.
     pub name: String,
@@ -31,6 +40,20 @@ pub struct CableGiven {
     pub path: Vec<NodeId>,
     /// One section a segment.
     pub sections: Vec<Section>,
+    /// Where it slides, by place; empty: clamped at every node.
+    pub slides: Vec<Slide>,
+    /// Whether its segments hang as elastic catenaries under loads per length, instead of being straight with half of
+    /// such loads at each end.
+    pub hangs: bool,
+}
+
+/// A panel as given: a mesh of the net that passes pressure to its corners.
+#[derive(Clone, Debug, PartialEq)]
+pub struct PanelGiven {
+    /// The client's id, or one made of its corners.
+    pub name: String,
+    /// At least three nodes in order; seen from the outer side they run counter-clockwise.
+    pub corners: Vec<NodeId>,
 }
 
 /// A strut as given: one straight two-way bar.
@@ -55,6 +78,8 @@ pub struct NetGiven {
     pub struts: Vec<StrutGiven>,
     /// Springs and stiffness matrices.
     pub elastic_supports: Vec<ElasticSupportGiven>,
+    /// Panels, in result order.
+    pub panels: Vec<PanelGiven>,
 }
 
 /// A node of a net.
@@ -119,8 +144,10 @@ pub struct Segment {
     pub law: AxialLaw,
     /// Its section.
     pub section: Section,
-    /// Index of its unstressed length; see [`Net::n_lengths`].
+    /// Index of its unstressed length; see [`Net::n_lengths`]. Segments of one reach share it.
     pub length: usize,
+    /// Whether it hangs as an elastic catenary under loads per length.
+    pub hangs: bool,
 }
 
 /// The piece of a cable between two clamped nodes: its unstressed length is conserved.
@@ -130,6 +157,25 @@ pub struct Reach {
     pub cable: CableId,
     /// Its segments: one, unless the rope slides through nodes.
     pub segments: Range<usize>,
+    /// Coulomb friction coefficient at each of the nodes through which it slides (–).
+    pub friction: Vec<f64>,
+}
+
+impl Reach {
+    /// Whether the rope slides somewhere along it.
+    #[must_use]
+    pub fn slides(&self) -> bool {
+        self.segments.len() > 1
+    }
+}
+
+/// A panel: the corners of a mesh.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Panel {
+    /// Its id.
+    pub name: String,
+    /// Its corners in order, counter-clockwise seen from the outer side.
+    pub corners: Vec<NodeId>,
 }
 
 /// A valid net, immutable: finite numbers, positive stiffness, no dangling index, no path without length.
@@ -143,6 +189,7 @@ pub struct Net {
     supports: Vec<Support>,
     support_of_node: Vec<Option<usize>>,
     elastic_supports: Vec<ElasticSupport>,
+    panels: Vec<Panel>,
     branch_node: CsrMatrix<f64>,
 }
 
@@ -164,6 +211,7 @@ impl Net {
             cables: cables_given,
             struts: struts_given,
             elastic_supports,
+            panels,
         } = given;
 
         let mut segments = Vec::new();
@@ -172,18 +220,28 @@ impl Net {
         for (index, cable) in cables_given.into_iter().enumerate() {
             let id = CableId::new(index);
             let (first_segment, first_reach) = (segments.len(), reaches.len());
-            for (ends, section) in cable.path.windows(2).zip(cable.sections) {
+            for (place, (ends, section)) in cable.path.windows(2).zip(cable.sections).enumerate() {
                 let segment = segments.len();
+                // The piece goes on where the rope slides through its first node.
+                match cable.slides.iter().find(|slide| slide.place == place) {
+                    Some(slide) => {
+                        let reach: &mut Reach = reaches.last_mut().expect("a rope slides at inner nodes only");
+                        reach.segments.end = segment + 1;
+                        reach.friction.push(slide.friction);
+                    }
+                    None => reaches.push(Reach {
+                        cable: id,
+                        segments: segment..segment + 1,
+                        friction: Vec::new(),
+                    }),
+                }
                 segments.push(Segment {
                     ends: [ends[0], ends[1]],
                     member: Member::Cable(id),
                     law: AxialLaw::TensionOnly,
                     section,
-                    length: reaches.len(),
-                });
-                reaches.push(Reach {
-                    cable: id,
-                    segments: segment..segment + 1,
+                    length: reaches.len() - 1,
+                    hangs: cable.hangs,
                 });
             }
             cables.push(Cable {
@@ -202,6 +260,7 @@ impl Net {
                 law: AxialLaw::TwoWay,
                 section: strut.section,
                 length: reaches.len() + index,
+                hangs: false,
             });
             struts.push(Strut {
                 name: strut.name,
@@ -267,6 +326,13 @@ impl Net {
             supports,
             support_of_node,
             elastic_supports,
+            panels: panels
+                .into_iter()
+                .map(|panel| Panel {
+                    name: panel.name,
+                    corners: panel.corners,
+                })
+                .collect(),
             branch_node,
         })
     }
@@ -317,6 +383,18 @@ impl Net {
     #[must_use]
     pub fn elastic_supports(&self) -> &[ElasticSupport] {
         &self.elastic_supports
+    }
+
+    /// Panels in the order given.
+    #[must_use]
+    pub fn panels(&self) -> &[Panel] {
+        &self.panels
+    }
+
+    /// Whether every rope is clamped at every node and every member straight: what is left is straight bars.
+    #[must_use]
+    pub fn is_plain(&self) -> bool {
+        self.segments.iter().all(|s| !s.hangs) && !self.reaches.iter().any(Reach::slides)
     }
 
     /// Branch–node matrix `C`: one row a segment, −1 at its first node and +1 at its second (Schek 1974).

@@ -1,6 +1,6 @@
 //! Everything that keeps the given parts from being a net.
 
-use super::{ElasticSupportGiven, NetError, NetGiven, NodeId, Section};
+use super::{CableGiven, ElasticSupportGiven, NetError, NetGiven, NodeId, PanelGiven, Section};
 
 /// All of it, not just the first.
 pub(super) fn violations(given: &NetGiven) -> Vec<NetError> {
@@ -49,10 +49,14 @@ pub(super) fn violations(given: &NetGiven) -> Vec<NetError> {
         for section in &cable.sections {
             check_section(&cable.name, section, &mut errors);
         }
+        check_slides(cable, &mut errors);
     }
     for strut in &given.struts {
         check_path(&strut.name, &strut.ends, given.nodes.len(), &mut errors);
         check_section(&strut.name, &strut.section, &mut errors);
+    }
+    for panel in &given.panels {
+        check_panel(panel, given.nodes.len(), &mut errors);
     }
     for elastic in &given.elastic_supports {
         check_elastic_support(elastic, given, &mut errors);
@@ -82,6 +86,39 @@ fn check_path(name: &str, path: &[NodeId], n_nodes: usize, errors: &mut Vec<NetE
                 node: *node,
             });
         }
+    }
+}
+
+fn check_slides(cable: &CableGiven, errors: &mut Vec<NetError>) {
+    for (index, slide) in cable.slides.iter().enumerate() {
+        let is_inner = slide.place > 0 && slide.place + 1 < cable.path.len();
+        let is_new = cable.slides[..index].iter().all(|other| other.place != slide.place);
+        if !is_inner || !is_new || cable.hangs {
+            errors.push(NetError::CanNotSlide {
+                of: cable.name.clone(),
+                position: slide.place,
+            });
+        }
+        if !(slide.friction.is_finite() && slide.friction >= 0.0) {
+            errors.push(NetError::NotPositive {
+                what: "friction coefficient",
+                of: cable.name.clone(),
+                value: slide.friction,
+            });
+        }
+    }
+}
+
+fn check_panel(panel: &PanelGiven, n_nodes: usize, errors: &mut Vec<NetError>) {
+    if let Some(node) = panel.corners.iter().find(|n| n.index() >= n_nodes) {
+        errors.push(NetError::UnknownNode {
+            of: panel.name.clone(),
+            node: *node,
+        });
+    }
+    let is_double = |i: usize| panel.corners[..i].contains(&panel.corners[i]);
+    if panel.corners.len() < 3 || (0..panel.corners.len()).any(is_double) {
+        errors.push(NetError::DegeneratePanel { of: panel.name.clone() });
     }
 }
 

@@ -34,6 +34,7 @@ impl Example {
             mass_per_length: 0.0,
             expansion: 1.0,
             breaking_force: None,
+            ..Section::default()
         }
     }
 
@@ -55,6 +56,7 @@ impl Example {
             name: format!("c{i}"),
             path: vec![NodeId::new(*a), NodeId::new(*b)],
             sections: vec![Self::section(*ea)],
+            ..CableGiven::default()
         });
         let struts = self.struts.iter().enumerate().map(|(i, (a, b, ea, _))| StrutGiven {
             name: format!("s{i}"),
@@ -66,6 +68,7 @@ impl Example {
             cables: cables.collect(),
             struts: struts.collect(),
             elastic_supports: self.elastic.clone(),
+            ..NetGiven::default()
         };
         Arc::new(Net::new(given).expect("a valid net"))
     }
@@ -88,10 +91,12 @@ impl Example {
             segments: (0..n_segments)
                 .map(|i| SegmentLoads {
                     temperature_change: self.strains.get(i).copied().unwrap_or(0.0),
+                    ..SegmentLoads::default()
                 })
                 .collect(),
             support_movements: movements,
             removed: (0..n_segments).map(|i| self.removed.contains(&i)).collect(),
+            ..Case::default()
         }
     }
 

@@ -216,6 +216,7 @@ fn net_given(net: &NetDraft<'_>, sections: &Sections<'_>, supports: Supports) ->
             sections: segments
                 .map(|segment| sections.section(segment))
                 .collect::<Option<_>>()?,
+            ..CableGiven::default()
         })
     });
     let struts = net.struts.iter().map(|strut| {
@@ -230,5 +231,6 @@ fn net_given(net: &NetDraft<'_>, sections: &Sections<'_>, supports: Supports) ->
         cables: cables.collect::<Option<_>>()?,
         struts: struts.collect::<Option<_>>()?,
         elastic_supports: supports.elastic,
+        ..NetGiven::default()
     })
 }

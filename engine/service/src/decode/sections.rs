@@ -195,6 +195,7 @@ impl<'a> Sections<'a> {
             mass_per_length: draft.mass_per_length,
             expansion: draft.expansion,
             breaking_force: draft.breaking_force.map(|force| factor * force),
+            ..Section::default()
         })
     }
 }
