@@ -16,7 +16,7 @@ fn close(computed: f64, expected: f64, tolerance: f64) {
     );
 }
 
-/// Numbers in (0, 1), the same every time (Marsaglia 2003, xorshift).
+/// Numbers in (0, 1), the same every time (xorshift).
 struct Dice(u64);
 
 impl Dice {
@@ -254,7 +254,7 @@ fn stiffness_is_the_slope_of_the_force_and_force_that_of_the_energy() {
         }
         let hanging = rope.at(&chord, None);
         let across = chord - rope.load * (chord.dot(&rope.load) / rope.load.norm_squared());
-        let h = 2e-3 * across.norm().min(0.02 * rope.unstressed_length);
+        let h = 1e-3 * across.norm().min(0.02 * rope.unstressed_length);
         for axis in 0..3 {
             let at = |step: f64| {
                 let mut moved = chord;
