@@ -74,6 +74,7 @@ impl Plan {
         let bare = Bare {
             positions: &state.positions,
             axial_forces: &state.axial_forces,
+            members: &equilibrium::member_states(self.analysis.structure(), &case, &state),
             loose_nodes: &[],
         };
         let result = state_result(&brief.net, &case, &state.positions, &bare);
@@ -119,6 +120,7 @@ impl Plan {
                 let bare = Bare {
                     positions: &solution.positions,
                     axial_forces: &solution.axial_forces,
+                    members: &solution.members,
                     loose_nodes: &solution.loose_nodes,
                 };
                 // The last good state carries a share of the load; it is told under the loads that it carries.
@@ -131,7 +133,6 @@ impl Plan {
                         &Stop {
                             reference: &reference.state,
                             case: &case,
-                            carried: &carried,
                             solution: &solution,
                             result: &result,
                             limit: settings.max_iterations,

@@ -28,6 +28,9 @@ pub struct Case {
     pub support_movements: Vec<Vector3<f64>>,
     /// Segments taken out, by index.
     pub removed: Vec<bool>,
+    /// Unstressed length (m) that lies in every segment while nothing slides from where it lay in the reference state, at
+    /// the full load. Read where ropes slide against friction; empty: there is none.
+    pub lying: Vec<f64>,
     /// Pressure on the outer side of every panel (Pa); it stays normal to the panel as that moves. Empty: none.
     pub pressures: Vec<f64>,
 }
@@ -55,6 +58,7 @@ impl Case {
             segments: vec![SegmentLoads::default(); net.segments().len()],
             support_movements: vec![Vector3::zeros(); net.nodes().len()],
             removed: vec![false; net.segments().len()],
+            lying: Vec::new(),
             pressures: Vec::new(),
         };
         let mut shares = vec![0.0; net.segments().len()];
