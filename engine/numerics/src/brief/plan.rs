@@ -8,7 +8,6 @@ use super::state::{Bare, state_result};
 use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Task};
 use crate::check::{CaseDigest, worst_ratio};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
-use crate::load::Case;
 use crate::shape::{self, Found, ShapeError};
 
 /// A brief with what is worked out once for its net: numbering, pattern, symbolic factorisation.
@@ -105,7 +104,7 @@ impl Plan {
             load_steps: given.load_steps.unwrap_or(settings.load_steps),
             ..*settings
         };
-        let case = Case::new(net, &reference.state, actions, &given.factors);
+        let case = given.case(net, &reference.state, actions);
         let solved = equilibrium::solve(
             &self.analysis,
             &case,

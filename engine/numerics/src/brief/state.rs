@@ -33,7 +33,7 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
         if !case.removed[index] {
             stretches[index] = length / stress_free;
         }
-        slack[index] = segment.law == AxialLaw::TensionOnly && (case.removed[index] || length <= stress_free);
+        slack[index] = segment.law == AxialLaw::TensionOnly && !case.removed[index] && length <= stress_free;
         if length > 0.0 {
             pulls[index] = chord * (state.axial_forces[index] / length);
         }
@@ -72,6 +72,10 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
         support_sum: support_forces.iter().map(|s| s.force).sum(),
         support_forces,
         loose_nodes: state.loose_nodes.to_vec(),
+        removed: (0..n_segments)
+            .filter(|e| case.removed[*e])
+            .map(SegmentId::new)
+            .collect(),
         audit: audit::audit(net, case, positions, state.axial_forces),
     }
 }

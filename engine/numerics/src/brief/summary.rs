@@ -2,7 +2,7 @@
 
 use std::fmt;
 
-use super::ReferenceOutcome;
+use super::{Loss, ReferenceOutcome};
 use crate::check::{CheckResult, Envelope, Facts, Verdict};
 use crate::model::{Net, SegmentId};
 
@@ -77,6 +77,8 @@ pub struct Summary {
     pub checks: Vec<CheckResult>,
     /// Envelope of every segment over the reference state and the sound cases.
     pub envelopes: Vec<Envelope>,
+    /// What the loss of each member that some case takes out came to, in the order in which cases name them.
+    pub losses: Vec<Loss>,
     /// What must be shown.
     pub cautions: Vec<Caution>,
 }

@@ -80,6 +80,7 @@ impl<'a> Cases<'a> {
                 sets: case.sets.clone(),
                 factors,
                 load_steps: load_steps.map(LoadSteps::Equal),
+                ..CaseGiven::default()
             });
         }
         cases

@@ -186,6 +186,7 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
             prestress,
             actions,
             cases,
+            effects: Vec::new(),
             checks,
             settings,
         };
