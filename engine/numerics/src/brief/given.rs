@@ -10,6 +10,15 @@ use crate::shape::Prestress;
 
 use super::DesignEffect;
 
+/// States on the way to a case and beyond, each solved from the one before.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct LoadPath {
+    /// Last load factor (–).
+    pub to_factor: f64,
+    /// Equal steps, at least one.
+    pub steps: u32,
+}
+
 /// A case as given: factors on actions.
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct CaseGiven {
@@ -25,6 +34,8 @@ pub struct CaseGiven {
     pub removed: Vec<Member>,
     /// Share of prestress of all ropes on top of that of the actions: a partial factor on prestress, less one (–).
     pub prestress_share: f64,
+    /// How the net gets there, where that is asked for.
+    pub path: Option<LoadPath>,
 }
 
 impl CaseGiven {

@@ -17,7 +17,7 @@ mod tests;
 pub use cause::{Cause, Culprit, LikelyCause};
 pub use effect::{DesignEffect, EffectRule};
 pub use estimate::Estimate;
-pub use given::{Brief, CaseGiven};
+pub use given::{Brief, CaseGiven, LoadPath};
 pub use loss::{Loss, LossExtreme};
 pub use outcome::{CaseOutcome, EndForce, ReferenceOutcome, StateResult, SupportForce, Task};
 pub use plan::Plan;
