@@ -1,5 +1,7 @@
 //! Design effects: what a standard states on effects, worked out from cases, quantity by quantity. Never a state.
 
+use crate::check::CaseDigest;
+
 /// The rule that an effect follows.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub enum EffectRule {
@@ -44,5 +46,41 @@ impl DesignEffect {
             .beside
             .filter(|case| self.terms.iter().all(|(term, _)| term != case));
         self.terms.iter().map(|(case, _)| *case).chain(beside)
+    }
+}
+
+/// Largest axial forces (N) of every segment by the ways to factor a single predominant action, over all design effects that
+/// stand beside a case: the largest of the three governs.
+#[derive(Clone, Debug, PartialEq)]
+pub struct FactorRules {
+    /// `E(γF)`: factors on actions.
+    pub on_action: Vec<f64>,
+    /// `γ E(F)`: the factor on the effect.
+    pub on_effect: Vec<f64>,
+    /// Factors on effects part by part; zeros where there are none.
+    pub on_parts: Vec<f64>,
+}
+
+impl FactorRules {
+    pub(super) fn new(n_segments: usize) -> Self {
+        Self {
+            on_action: vec![0.0; n_segments],
+            on_effect: vec![0.0; n_segments],
+            on_parts: vec![0.0; n_segments],
+        }
+    }
+
+    /// Takes in a design effect and the case that it stands beside, whatever their order.
+    pub(super) fn add(&mut self, rule: EffectRule, effect: &CaseDigest, beside: &CaseDigest) {
+        let of_rule = match rule {
+            EffectRule::Loss { .. } => return,
+            EffectRule::OnEffect { .. } => &mut self.on_effect,
+            EffectRule::OnParts { .. } => &mut self.on_parts,
+        };
+        for (known, forces) in [(of_rule, effect), (&mut self.on_action, beside)] {
+            for (known, force) in known.iter_mut().zip(&forces.axial_forces) {
+                *known = known.max(*force);
+            }
+        }
     }
 }

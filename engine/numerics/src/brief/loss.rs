@@ -24,7 +24,7 @@ pub struct Loss {
     pub unanswered: Vec<usize>,
     /// Largest factor on the effect of the loss (–); 1 where only states without the members were found.
     pub factor: f64,
-    /// Largest axial force of every segment (N); `None` where nothing was found, or it is taken out.
+    /// Axial force of every segment that is largest in size (N); `None` where nothing was found, or it is taken out.
     pub largest_forces: Vec<Option<LossExtreme>>,
     /// Largest movement from the reference state (m) of nodes whose place is determined.
     pub largest_movement: Option<(NodeId, LossExtreme)>,
@@ -154,9 +154,13 @@ impl Loss {
     }
 }
 
-/// The larger one; of equals the one that comes first in the brief.
+/// The one larger in size; of equals the one that comes first in the brief.
 fn worse(known: &mut Option<LossExtreme>, value: f64, case: usize) {
-    if known.is_none_or(|old| value > old.value || (value == old.value && case < old.case)) {
+    let is_worse = |old: LossExtreme| {
+        let (new, old_size) = (value.abs(), old.value.abs());
+        new > old_size || (new == old_size && case < old.case)
+    };
+    if known.is_none_or(is_worse) {
         *known = Some(LossExtreme { value, case });
     }
 }

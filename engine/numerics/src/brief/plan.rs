@@ -33,6 +33,10 @@ impl Plan {
         Arc::clone(&self.brief)
     }
 
+    pub(super) fn analysis(&self) -> &Analysis {
+        &self.analysis
+    }
+
     /// The work as given.
     #[must_use]
     pub fn brief(&self) -> &Brief {
@@ -150,7 +154,8 @@ impl Plan {
         }
     }
 
-    /// Worst ratio, in one case, of the checks that cover it (–); `None` where none of them judges anything.
+    /// Worst ratio, in one case or (counted on from the last case) design effect, of the checks that cover it (–); `None`
+    /// where none of them judges anything.
     #[must_use]
     pub fn worst_ratio(&self, reference: &ReferenceOutcome, case: usize, digest: &CaseDigest) -> Option<f64> {
         let (brief, forces) = (&self.brief, &reference.state.axial_forces);

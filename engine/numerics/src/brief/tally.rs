@@ -3,6 +3,7 @@
 use std::collections::BTreeMap;
 use std::sync::Arc;
 
+use super::effect::FactorRules;
 use super::loss::LossTally;
 use super::summary::cautions;
 use super::{Brief, Caution, Plan, ReferenceOutcome, Summary};
@@ -65,6 +66,7 @@ pub struct Tally {
     checks: Vec<CheckTally>,
     envelopes: EnvelopeTally,
     losses: LossTally,
+    factor_rules: Option<FactorRules>,
 }
 
 impl Tally {
@@ -101,6 +103,7 @@ impl Tally {
             checks: brief.checks.iter().map(CheckTally::new).collect(),
             envelopes: EnvelopeTally::new(&reference.state.axial_forces),
             losses: LossTally::new(&brief),
+            factor_rules: None,
             brief,
         }
     }
@@ -165,6 +168,7 @@ impl Tally {
         let terms: Vec<(f64, &CaseDigest)> = terms.iter().map(|(weight, digest)| (*weight, &**digest)).collect();
         let digest = CaseDigest::design_effect(&brief.net, &terms);
         let beside = given.beside.map(|case| Arc::clone(&self.held[&case].digest));
+        let beside = beside.filter(|digest| digest.is_sound());
         for case in given.cases() {
             let held = self.held.get_mut(&case).expect("held until its last reader");
             held.readers -= 1;
@@ -180,12 +184,13 @@ impl Tally {
         if let Some(digest) = &digest {
             self.judge(brief.cases.len() + effect, digest);
             self.losses.add_effect(&brief, effect, digest);
+            if let Some(beside) = &beside {
+                let n_segments = brief.net.segments().len();
+                let rules = self.factor_rules.get_or_insert_with(|| FactorRules::new(n_segments));
+                rules.add(given.rule, digest, beside);
+            }
         }
-        Effect {
-            effect,
-            digest,
-            beside: beside.filter(|digest| digest.is_sound()),
-        }
+        Effect { effect, digest, beside }
     }
 
     /// The end of the run.
@@ -220,6 +225,7 @@ impl Tally {
             checks,
             envelopes: self.envelopes.finish(),
             losses: self.losses.finish(),
+            factor_rules: self.factor_rules,
             cautions: self.cautions,
         }
     }

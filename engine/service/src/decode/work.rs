@@ -122,11 +122,23 @@ impl Work {
     /// What acts in a case, in words.
     #[must_use]
     pub fn in_words(&self, case: usize) -> String {
+        in_words(&self.brief.cases[case], &self.message.actions, &|member| {
+            self.member_name(member)
+        })
+    }
+
+    /// Ids of what a case takes out.
+    pub(crate) fn removed(&self, case: usize) -> Vec<&str> {
+        let removed = self.brief.cases[case].removed.iter();
+        removed.map(|member| self.member_name(*member)).collect()
+    }
+
+    pub(crate) fn member_name(&self, member: Member) -> &str {
         let net = &self.brief.net;
-        in_words(&self.brief.cases[case], &self.message.actions, &|member| match member {
+        match member {
             Member::Cable(cable) => &net.cables()[cable.index()].name,
             Member::Strut(strut) => &net.struts()[strut.index()].name,
-        })
+        }
     }
 
     /// What a design effect is, in words.
