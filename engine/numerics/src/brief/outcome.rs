@@ -45,7 +45,7 @@ pub struct StateResult {
     pub pulls: Vec<[Vector3<f64>; 2]>,
     /// Stretch `l/a` of every segment; zero where it is taken out.
     pub stretches: Vec<f64>,
-    /// Whether a cable segment is slack: `l ≤ a`, or taken out.
+    /// Whether a cable segment is slack: `l ≤ a`; one that is taken out is not.
     pub slack: Vec<bool>,
     /// Current length of every segment (m), along the curve where it hangs.
     pub lengths: Vec<f64>,
@@ -65,6 +65,8 @@ pub struct StateResult {
     pub support_sum: Vector3<f64>,
     /// Nodes whose place is not determined, because only slack ropes lead to them.
     pub loose_nodes: Vec<NodeId>,
+    /// Segments that are taken out.
+    pub removed: Vec<SegmentId>,
     /// What the independent routine found.
     pub audit: Audit,
 }
@@ -75,15 +77,16 @@ impl StateResult {
     pub fn digest(&self, answered: bool) -> CaseDigest {
         let mut support_forces = vec![None; self.positions.len()];
         for support in &self.support_forces {
-            support_forces[support.node.index()] = Some(support.force.norm());
+            support_forces[support.node.index()] = Some(support.force);
         }
         CaseDigest {
             answered,
             audited: answered && self.audit.passed,
             axial_forces: self.axial_forces.clone(),
-            movements: self.displacements.iter().map(|d| d.norm()).collect(),
+            displacements: self.displacements.clone(),
             support_forces,
             loose_nodes: self.loose_nodes.clone(),
+            removed: self.removed.clone(),
         }
     }
 }

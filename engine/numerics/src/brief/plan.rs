@@ -8,7 +8,6 @@ use super::state::{Bare, state_result};
 use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Task};
 use crate::check::{CaseDigest, worst_ratio};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
-use crate::load::Case;
 use crate::shape::{self, Found, ShapeError};
 
 /// A brief with what is worked out once for its net: numbering, pattern, symbolic factorisation.
@@ -32,6 +31,10 @@ impl Plan {
 
     pub(super) fn shared_brief(&self) -> Arc<Brief> {
         Arc::clone(&self.brief)
+    }
+
+    pub(super) fn analysis(&self) -> &Analysis {
+        &self.analysis
     }
 
     /// The work as given.
@@ -106,7 +109,7 @@ impl Plan {
             load_steps: given.load_steps.unwrap_or(settings.load_steps),
             ..*settings
         };
-        let case = Case::new(net, &reference.state, actions, &given.factors);
+        let case = given.case(net, &reference.state, actions);
         let solved = equilibrium::solve(
             &self.analysis,
             &case,
@@ -152,7 +155,8 @@ impl Plan {
         }
     }
 
-    /// Worst ratio, in one case, of the checks that cover it (–); `None` where none of them judges anything.
+    /// Worst ratio, in one case or (counted on from the last case) design effect, of the checks that cover it (–); `None`
+    /// where none of them judges anything.
     #[must_use]
     pub fn worst_ratio(&self, reference: &ReferenceOutcome, case: usize, digest: &CaseDigest) -> Option<f64> {
         let (brief, forces) = (&self.brief, &reference.state.axial_forces);

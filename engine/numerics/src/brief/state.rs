@@ -39,7 +39,7 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
             _ if net.slides(SegmentId::new(index)) => axial_forces[index] == 0.0,
             AxialLaw::TensionOnly => lengths[index] <= stress_free,
         };
-        slack[index] = segment.law == AxialLaw::TensionOnly && case.removed[index] || is_slack;
+        slack[index] = !case.removed[index] && is_slack;
         exerted[i] += pulls[index][0];
         exerted[j] += pulls[index][1];
     }
@@ -77,6 +77,10 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
         support_sum: support_forces.iter().map(|s| s.force).sum(),
         support_forces,
         loose_nodes: state.loose_nodes.to_vec(),
+        removed: (0..n_segments)
+            .filter(|e| case.removed[*e])
+            .map(SegmentId::new)
+            .collect(),
         audit: audit::audit_members(net, case, positions, axial_forces, state.members),
         loads,
     }
