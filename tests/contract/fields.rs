@@ -30,6 +30,9 @@ fn sections_fittings_and_parts() {
     assert_eq!(sections[4].breaking_force, Some(0.9 * 200e3));
     assert_eq!(sections[5].axial_stiffness, 6.5e6);
     assert_eq!(sections[5].breaking_force, Some(0.9 * 82e3));
+    assert_eq!((sections[0].diameter, sections[1].diameter), (Some(0.010), None));
+    assert_eq!(sections[0].proof_force, None);
+    assert_eq!(sections[6].bending_stiffness, Some(1e6));
     assert_eq!(sections[6].axial_stiffness, 2.1e11 * 2e-3);
     assert_eq!(sections[6].mass_per_length, 15.7);
     assert_eq!(sections[6].breaking_force, None);

@@ -89,6 +89,7 @@ pub(crate) const MODULUS: Quantity = Quantity::positive("modulus", "Pa", 1.0, 1e
 pub(crate) const AREA: Quantity = Quantity::positive("area", "m2", 1e-12, 1e3);
 pub(crate) const MASS_PER_LENGTH: Quantity = Quantity::not_negative("mass per length", "kg/m", 1e7);
 pub(crate) const BREAKING_FORCE: Quantity = Quantity::positive("breaking force", "N", 1e-3, 1e13);
+pub(crate) const PROOF_FORCE: Quantity = Quantity::positive("proof force", "N", 1e-3, 1e13);
 pub(crate) const EXPANSION: Quantity = Quantity::signed("thermal expansion", "1/K", 0.999_999e-3);
 pub(crate) const DIAMETER: Quantity = Quantity::positive("diameter", "m", 1e-6, 1e2);
 pub(crate) const BENDING_STIFFNESS: Quantity = Quantity::positive("bending stiffness", "N m2", 1e-9, 1e15);
