@@ -3,11 +3,11 @@
 use nalgebra::Vector3;
 
 use super::Cause;
-use crate::check::CaseDigest;
+use crate::check::{Against, Base, CaseDigest};
 use crate::equilibrium::audit::Audit;
 use crate::equilibrium::{IterationReport, Solution, SolveError, Termination};
 use crate::load::Case;
-use crate::model::{NodeId, ReferenceState, SegmentId};
+use crate::model::{Net, NodeId, ReferenceState, SegmentId};
 use crate::shape::ShapeReport;
 
 /// Forces of a support on the net.
@@ -69,13 +69,14 @@ impl StateResult {
     pub fn digest(&self, answered: bool) -> CaseDigest {
         let mut support_forces = vec![None; self.positions.len()];
         for support in &self.support_forces {
-            support_forces[support.node.index()] = Some(support.force.norm());
+            support_forces[support.node.index()] = Some(support.force);
         }
         CaseDigest {
             answered,
             audited: answered && self.audit.passed,
             axial_forces: self.axial_forces.clone(),
-            movements: self.displacements.iter().map(|d| d.norm()).collect(),
+            displacements: self.displacements.clone(),
+            positions: self.positions.clone(),
             support_forces,
             loose_nodes: self.loose_nodes.clone(),
         }
@@ -95,6 +96,21 @@ pub struct ReferenceOutcome {
     pub report: ShapeReport,
     /// Every iteration; of a relaxation its beginning and its end.
     pub history: Vec<IterationReport>,
+    /// States of the cases that checks measure movements from.
+    pub bases: Vec<Base>,
+}
+
+impl ReferenceOutcome {
+    /// What every case is judged against.
+    #[must_use]
+    pub fn against<'a>(&'a self, net: &'a Net) -> Against<'a> {
+        Against {
+            net,
+            axial_forces: &self.state.axial_forces,
+            positions: &self.state.positions,
+            bases: &self.bases,
+        }
+    }
 }
 
 /// What came of one case.

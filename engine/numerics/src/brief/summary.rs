@@ -3,7 +3,7 @@
 use std::fmt;
 
 use super::ReferenceOutcome;
-use crate::check::{CheckResult, Envelope, Facts, Verdict};
+use crate::check::{AnchorExtremes, CheckResult, Envelope, Extreme, Facts, Verdict};
 use crate::model::{Net, SegmentId};
 
 /// Something that must be shown with the results.
@@ -77,6 +77,10 @@ pub struct Summary {
     pub checks: Vec<CheckResult>,
     /// Envelope of every segment over the reference state and the sound cases.
     pub envelopes: Vec<Envelope>,
+    /// Largest movement of every node from the reference state (m), over the sound cases.
+    pub movements: Vec<Extreme>,
+    /// Pulls on every anchor over the reference state and the sound cases, in the order of the support forces.
+    pub anchors: Vec<AnchorExtremes>,
     /// What must be shown.
     pub cautions: Vec<Caution>,
 }

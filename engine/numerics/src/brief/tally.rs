@@ -2,9 +2,13 @@
 
 use std::sync::Arc;
 
+use nalgebra::Vector3;
+
 use super::summary::cautions;
 use super::{Brief, Caution, Plan, ReferenceOutcome, Summary};
-use crate::check::{CaseDigest, CheckTally, EnvelopeTally, Facts, Share, Verdict};
+use crate::check::{
+    Against, AnchorTally, Base, CaseDigest, CheckTally, EnvelopeTally, Facts, MovementTally, Share, Verdict,
+};
 
 /// What is known of a case of the brief.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -23,6 +27,8 @@ enum Standing {
 pub struct Tally {
     brief: Arc<Brief>,
     reference_forces: Vec<f64>,
+    reference_positions: Vec<Vector3<f64>>,
+    bases: Vec<Base>,
     reference_audited: bool,
     cautions: Vec<Caution>,
     /// One entry a case of the brief.
@@ -30,6 +36,8 @@ pub struct Tally {
     answered: usize,
     checks: Vec<CheckTally>,
     envelopes: EnvelopeTally,
+    movements: MovementTally,
+    anchors: AnchorTally,
 }
 
 impl Tally {
@@ -41,14 +49,24 @@ impl Tally {
         let brief = plan.shared_brief();
         let mut standings = vec![Standing::NotOfTheRun; brief.cases.len()];
         cases.iter().for_each(|case| standings[*case] = Standing::Awaited);
+        let against = reference.against(&brief.net);
+        let supports = reference.result.support_forces.iter();
         Self {
             reference_forces: reference.state.axial_forces.clone(),
+            reference_positions: reference.state.positions.clone(),
+            bases: reference.bases.clone(),
             reference_audited: reference.result.audit.passed,
             cautions: cautions(&brief.net, reference),
             cases: standings,
             answered: 0,
-            checks: brief.checks.iter().map(CheckTally::new).collect(),
+            checks: brief
+                .checks
+                .iter()
+                .map(|check| CheckTally::new(check, &against))
+                .collect(),
             envelopes: EnvelopeTally::new(&reference.state.axial_forces),
+            movements: MovementTally::new(brief.net.nodes().len()),
+            anchors: AnchorTally::new(supports.map(|support| (support.node, support.force))),
             brief,
         }
     }
@@ -64,13 +82,20 @@ impl Tally {
             return;
         }
         self.cases[case] = Standing::Sound;
-        let net = &self.brief.net;
+        let against = Against {
+            net: &self.brief.net,
+            axial_forces: &self.reference_forces,
+            positions: &self.reference_positions,
+            bases: &self.bases,
+        };
         for (check, tally) in self.brief.checks.iter().zip(&mut self.checks) {
             if check.cases.contains(&case) {
-                tally.add(net, &self.reference_forces, case, digest);
+                tally.add(check, &against, case, digest);
             }
         }
         self.envelopes.add(case, digest);
+        self.movements.add(case, digest);
+        self.anchors.add(case, digest);
     }
 
     /// The end of the run.
@@ -80,7 +105,7 @@ impl Tally {
         let is_open = |case: &usize| matches!(cases[*case], Standing::Awaited | Standing::Unsound);
         let checks = brief.checks.iter().zip(self.checks);
         let checks: Vec<_> = checks
-            .map(|(check, tally)| tally.finish(check.cases.iter().copied().filter(is_open).collect()))
+            .map(|(check, tally)| tally.finish(check, check.cases.iter().copied().filter(is_open).collect()))
             .collect();
         let answered = Share {
             count: self.answered,
@@ -97,6 +122,8 @@ impl Tally {
             facts,
             checks,
             envelopes: self.envelopes.finish(),
+            movements: self.movements.finish(),
+            anchors: self.anchors.finish(),
             cautions: self.cautions,
         }
     }

@@ -6,11 +6,12 @@
 //! | `head` | what is about to run: sizes, settings, tables of ids |
 //! | `progress` | what is being worked on |
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
-//! | `closing`, `verdicts`, `cautions` | the end of a run |
+//! | `closing`, `verdicts`, `rules`, `anchors`, `cautions` | the end of a run |
 //! | `freeze` | the brief with what was found written in |
 //! | `report` | what reading the brief told |
 //! | `parts` | how much fits a message |
 
+mod anchors;
 mod cautions;
 mod closing;
 mod doubts;
@@ -21,6 +22,7 @@ mod outcome;
 mod parts;
 mod progress;
 mod report;
+mod rules;
 mod state;
 mod verdicts;
 
