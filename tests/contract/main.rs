@@ -2,6 +2,7 @@
 
 mod absurd;
 mod briefs;
+mod checks;
 mod drafts;
 mod fields;
 mod freezing;

@@ -127,6 +127,7 @@ fn state(net: &Net) -> ReferenceOutcome {
             ..Case::default()
         },
         history: Vec::new(),
+        bases: Vec::new(),
         report: ShapeReport {
             way: Way::ForceDensities,
             iterations: 1,

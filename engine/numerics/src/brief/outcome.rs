@@ -3,11 +3,11 @@
 use nalgebra::Vector3;
 
 use super::Cause;
-use crate::check::CaseDigest;
+use crate::check::{Against, Base, CaseDigest};
 use crate::equilibrium::audit::Audit;
 use crate::equilibrium::{IterationReport, Solution, SolveError, Termination};
 use crate::load::Case;
-use crate::model::{NodeId, ReferenceState, SegmentId};
+use crate::model::{Net, NodeId, ReferenceState, SegmentId};
 use crate::shape::ShapeReport;
 
 /// Forces of a support on the net.
@@ -84,6 +84,7 @@ impl StateResult {
             audited: answered && self.audit.passed,
             axial_forces: self.axial_forces.clone(),
             displacements: self.displacements.clone(),
+            positions: self.positions.clone(),
             support_forces,
             loose_nodes: self.loose_nodes.clone(),
             removed: self.removed.clone(),
@@ -104,6 +105,21 @@ pub struct ReferenceOutcome {
     pub report: ShapeReport,
     /// Every iteration; of a relaxation its beginning and its end.
     pub history: Vec<IterationReport>,
+    /// States of the cases that checks measure movements from.
+    pub bases: Vec<Base>,
+}
+
+impl ReferenceOutcome {
+    /// What every case is judged against.
+    #[must_use]
+    pub fn against<'a>(&'a self, net: &'a Net) -> Against<'a> {
+        Against {
+            net,
+            axial_forces: &self.state.axial_forces,
+            positions: &self.state.positions,
+            bases: &self.bases,
+        }
+    }
 }
 
 /// What came of one case.

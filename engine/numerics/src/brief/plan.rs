@@ -1,12 +1,13 @@
 //! A brief made ready to be run, and its two kinds of run.
 
+use std::collections::BTreeSet;
 use std::ops::ControlFlow;
 use std::sync::Arc;
 
 use super::cause::{Stop, cause_of_error, cause_of_stop};
 use super::state::{Bare, state_result};
 use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Task};
-use crate::check::{CaseDigest, worst_ratio};
+use crate::check::{Base, CaseDigest, CheckKind, worst_ratio};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
 use crate::shape::{self, Found, ShapeError};
 
@@ -81,13 +82,35 @@ impl Plan {
             loose_nodes: &[],
         };
         let result = state_result(&brief.net, &case, &state.positions, &bare);
-        Ok(ReferenceOutcome {
+        let mut outcome = ReferenceOutcome {
             state,
             case,
             result,
             report,
             history,
-        })
+            bases: Vec::new(),
+        };
+        outcome.bases = self.bases(&outcome, observe);
+        Ok(outcome)
+    }
+
+    /// States of the cases that checks measure movements from, each once, in the order of the cases: wanted before the
+    /// first case is judged, whichever cases are run.
+    fn bases(
+        &self,
+        reference: &ReferenceOutcome,
+        observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
+    ) -> Vec<Base> {
+        let named = self.brief.checks.iter().filter_map(|check| match check.kind {
+            CheckKind::Movement { from, .. } => from,
+            _ => None,
+        });
+        let cases: BTreeSet<usize> = named.collect();
+        let solve = |case| Base {
+            case,
+            digest: self.case(reference, case, observe).digest(),
+        };
+        cases.into_iter().map(solve).collect()
     }
 
     /// Solves one case from the reference state.
@@ -159,10 +182,10 @@ impl Plan {
     /// where none of them judges anything.
     #[must_use]
     pub fn worst_ratio(&self, reference: &ReferenceOutcome, case: usize, digest: &CaseDigest) -> Option<f64> {
-        let (brief, forces) = (&self.brief, &reference.state.axial_forces);
-        let checks = brief.checks.iter().filter(|check| check.cases.contains(&case));
+        let against = reference.against(&self.brief.net);
+        let checks = self.brief.checks.iter().filter(|check| check.cases.contains(&case));
         checks
-            .filter_map(|check| worst_ratio(&brief.net, forces, check, case, digest))
+            .filter_map(|check| worst_ratio(&against, check, case, digest))
             .reduce(f64::max)
     }
 }

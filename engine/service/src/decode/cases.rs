@@ -200,6 +200,11 @@ impl<'a> Cases<'a> {
         complete.then(|| (0..wanted.len()).filter(|case| wanted[*case]).collect())
     }
 
+    /// The case with a name; tells if there is none.
+    pub(crate) fn case(&self, name: &str, at: &Path<'_>, findings: &mut Findings) -> Option<usize> {
+        self.names.find(findings, at, "case", name)
+    }
+
     fn unknown(&self, name: &str, at: &Path<'_>, findings: &mut Findings) {
         if name == REFERENCE {
             findings.error(

@@ -29,6 +29,13 @@ pub const SERVED: &[&str] = &[
     "checks.slackness",
     "checks.movement",
     "checks.anchor_pull",
+    "checks.resistance",
+    "checks.service_stress",
+    "checks.construction_stress",
+    "checks.buckling",
+    "checks.clearance",
+    "checks.clamp",
+    "checks.saddle",
     "solving",
     "accepted",
     "frozen_from",
@@ -45,10 +52,7 @@ pub const NOT_SERVED: &[&str] = &[
     "net.roles.adjuster",
     "actions.loads.on_plan",
     "actions.loads.on_surface",
-    "checks.resistance",
-    "checks.service_stress",
-    "checks.buckling",
-    "checks.clearance",
+    "checks.drainage",
     "modes",
     "motions",
     "stages",
@@ -154,13 +158,8 @@ fn in_actions(actions: &[v1::Action], part: &mut impl FnMut(&Path<'_>, &str)) {
 fn in_checks(checks: &[v1::Check], part: &mut impl FnMut(&Path<'_>, &str)) {
     let list = Path::root("checks");
     for (number, check) in checks.iter().enumerate() {
-        let field = match check.kind {
-            Some(v1::check::Kind::Resistance(_)) => "resistance",
-            Some(v1::check::Kind::ServiceStress(_)) => "service_stress",
-            Some(v1::check::Kind::Buckling(_)) => "buckling",
-            Some(v1::check::Kind::Clearance(_)) => "clearance",
-            _ => continue,
-        };
-        part(&list.number(number).field(field), "");
+        if let Some(v1::check::Kind::Drainage(_)) = check.kind {
+            part(&list.number(number).field("drainage"), "");
+        }
     }
 }

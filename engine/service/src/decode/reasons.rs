@@ -148,6 +148,10 @@ reasons! {
     CHECK_WITHOUT_CASES,
     /// Members that a check covers but cannot judge.
     NOT_JUDGEABLE,
+    /// A standard or edition whose factors are not known here, and not given.
+    EDITION_UNKNOWN,
+    /// A factor that the named edition does not recommend.
+    FACTOR_NOT_OF_EDITION,
     /// Cases, but no check.
     NOTHING_CHECKED,
     /// A value that looks as if it were in another unit.

@@ -7,11 +7,12 @@
 //! | `progress` | what is being worked on |
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
 //! | `effects` | sums of effects, paths of cases, losses of members |
-//! | `closing`, `verdicts`, `cautions` | the end of a run |
+//! | `closing`, `verdicts`, `rules`, `anchors`, `cautions` | the end of a run |
 //! | `freeze` | the brief with what was found written in |
 //! | `report` | what reading the brief told |
 //! | `parts` | how much fits a message |
 
+mod anchors;
 mod cautions;
 mod closing;
 mod doubts;
@@ -23,6 +24,7 @@ mod outcome;
 mod parts;
 mod progress;
 mod report;
+mod rules;
 mod state;
 mod verdicts;
 
