@@ -5,7 +5,7 @@
 //! r = rank B     s = b − r states of self-stress, Bᵀ t = 0;   m = n − r mechanisms, B d = 0
 //! dᵀ K_G d > 0   prestress stiffens the mechanism d,   K_G = Σ (N / l)(I − n nᵀ)
 //! ```
-//! Pellegrino & Calladine 1986. Prestress stiffens all mechanisms only if it stiffens each of their combinations, so that
+//! Calladine 1978; Pellegrino & Calladine 1986. Prestress stiffens all mechanisms only if it stiffens each of their combinations, so that
 //! the question is put to the eigenvalues of `K_G` on the space of mechanisms.
 //!
 //! A rope that slides over nodes is one member over all of its segments, friction left out. A hanging rope counts as
