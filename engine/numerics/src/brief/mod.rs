@@ -1,6 +1,7 @@
 //! The roof: the whole work of a brief, planned and run.
 
 mod cause;
+mod diagnosis;
 mod estimate;
 mod given;
 mod outcome;
@@ -13,6 +14,7 @@ mod tally;
 mod tests;
 
 pub use cause::{Cause, Culprit, LikelyCause};
+pub use diagnosis::{DiagnosisGiven, LITTLE_LEFT, Standing, StateDiagnosis};
 pub use estimate::Estimate;
 pub use given::{Brief, CaseGiven};
 pub use outcome::{CaseOutcome, EndForce, ReferenceOutcome, StateResult, SupportForce, Task};

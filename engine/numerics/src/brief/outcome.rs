@@ -2,7 +2,7 @@
 
 use nalgebra::Vector3;
 
-use super::Cause;
+use super::{Cause, StateDiagnosis};
 use crate::check::CaseDigest;
 use crate::equilibrium::audit::Audit;
 use crate::equilibrium::{IterationReport, Solution, SolveError, Termination};
@@ -61,6 +61,8 @@ pub struct StateResult {
     pub loose_nodes: Vec<NodeId>,
     /// What the independent routine found.
     pub audit: Audit,
+    /// What it allows beside bearing its load, where that was asked for.
+    pub diagnosis: Option<Box<StateDiagnosis>>,
 }
 
 impl StateResult {

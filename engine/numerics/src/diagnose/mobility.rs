@@ -31,7 +31,7 @@ const STIFFENS_SPARSE: f64 = 1e-6;
 /// Stretching stiffness over the largest force density.
 const PENALTY: f64 = 1e9;
 /// Mechanisms and states of self-stress that the sparse way lists.
-const LISTED_SPARSE: usize = 20;
+const LISTED_SPARSE: usize = 8;
 /// Forces below this share of the largest are left out of a list.
 const NO_FORCE: f64 = 1e-6;
 

@@ -51,7 +51,8 @@ pub fn free_movement(
         return None;
     }
     let pair = eigen::least(structure.pattern(), &mut factor, &values, 1).pop()?;
-    Some(describe(structure, &pair.vector, pair.value))
+    let movements = moving_nodes(structure, &pair.vector);
+    (!movements.is_empty()).then(|| free_movement_of(structure, &movements, pair.value))
 }
 
 /// A movement to which a balanced state has little stiffness.
@@ -135,15 +136,15 @@ fn tangent(structure: &Structure, loading: &Loading, positions: &[Vector3<f64>])
     values
 }
 
-fn describe(structure: &Structure, movement: &[f64], stiffness: f64) -> FreeMovement {
-    let movements = moving_nodes(structure, movement);
+/// A free movement with what meets at the node that moves most.
+fn free_movement_of(structure: &Structure, movements: &[(NodeId, Vector3<f64>)], stiffness: f64) -> FreeMovement {
     let (first, direction) = movements[0];
     let segments = (structure.net().segments().iter().enumerate())
         .filter(|(_, s)| s.ends.contains(&first))
         .map(|(index, _)| SegmentId::new(index))
         .collect();
     FreeMovement {
-        nodes: movements.into_iter().map(|(node, _)| node).collect(),
+        nodes: movements.iter().map(|(node, _)| *node).collect(),
         direction: direction.normalize(),
         stiffness,
         segments,

@@ -115,15 +115,44 @@ impl<'a> Cases<'a> {
 
     /// Cases that a list of sets and cases names, in brief order; all of them where it is empty.
     pub(crate) fn named(&self, over: &[String], field: &Path<'_>, findings: &mut Findings) -> Option<Vec<usize>> {
-        tell_repeated(over, field, findings);
         if over.is_empty() {
             return Some((0..self.messages.len()).collect());
         }
+        self.find(over, field, None, findings)
+    }
+
+    /// States that a list of sets, cases and the word `reference` names: whether the reference state is one of them, and
+    /// the cases in brief order; all of them where the list is empty.
+    pub(crate) fn states(
+        &self,
+        about: &[String],
+        field: &Path<'_>,
+        findings: &mut Findings,
+    ) -> Option<(bool, Vec<usize>)> {
+        if about.is_empty() {
+            return Some((true, (0..self.messages.len()).collect()));
+        }
+        let mut reference = false;
+        let cases = self.find(about, field, Some(&mut reference), findings);
+        cases.map(|cases| (reference, cases))
+    }
+
+    /// Cases that a list names, in brief order; `reference`: where the word may stand, and is noted.
+    fn find(
+        &self,
+        over: &[String],
+        field: &Path<'_>,
+        mut reference: Option<&mut bool>,
+        findings: &mut Findings,
+    ) -> Option<Vec<usize>> {
+        tell_repeated(over, field, findings);
         let mut wanted = vec![false; self.messages.len()];
         let mut complete = true;
         for (number, name) in over.iter().enumerate() {
             let at = field.number(number);
-            if let Some(case) = self.names.get(name) {
+            if let Some(reference) = reference.as_deref_mut().filter(|_| name == REFERENCE) {
+                *reference = true;
+            } else if let Some(case) = self.names.get(name) {
                 wanted[case] = true;
             } else if self.sets.get(name).is_some() {
                 for (case, message) in self.messages.iter().enumerate() {

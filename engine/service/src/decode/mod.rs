@@ -6,7 +6,7 @@
 //! | `reading`, `work` | the whole brief, and what comes of it |
 //! | `findings`, `reasons`, `numbers`, `names` | what is told, where, and why |
 //! | `net`, `places`, `sections`, `supports`, `stretch`, `scope` | the net |
-//! | `prestress`, `wish`, `actions`, `cases`, `checks`, `solving` | what is wanted of it |
+//! | `prestress`, `wish`, `actions`, `cases`, `checks`, `diagnosis`, `solving` | what is wanted of it |
 //! | `plausible`, `frozen`, `accepted` | doubts |
 //! | `limits`, `not_served` | what is refused |
 //!
@@ -16,6 +16,7 @@ mod accepted;
 mod actions;
 mod cases;
 mod checks;
+mod diagnosis;
 mod digest;
 mod findings;
 mod frozen;

@@ -27,6 +27,7 @@ pub const SERVED: &[&str] = &[
     "checks.slackness",
     "checks.movement",
     "checks.anchor_pull",
+    "diagnosis",
     "solving",
     "accepted",
     "frozen_from",

@@ -17,7 +17,7 @@ use super::scope::Scopes;
 use super::sections::Sections;
 use super::supports::Supports;
 use super::work::{Names, Work};
-use super::{accepted, checks, frozen, limits, not_served, plausible, prestress, reasons, solving};
+use super::{accepted, checks, diagnosis, frozen, limits, not_served, plausible, prestress, reasons, solving};
 use crate::config::Limits;
 use crate::words::shown;
 
@@ -162,6 +162,7 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
         findings,
         resolved,
     );
+    let diagnosis = diagnosis::read(brief.diagnosis.as_ref(), &cases, findings, resolved);
     plausible::sections(&net, findings);
     plausible::extent(&net, findings);
     plausible::prestress(&net, &sections, &prestress, findings);
@@ -187,6 +188,7 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
             actions,
             cases,
             checks,
+            diagnosis,
             settings,
         };
         let unbuilt = Unbuilt {

@@ -6,6 +6,7 @@
 //! | `head` | what is about to run: sizes, settings, tables of ids |
 //! | `progress` | what is being worked on |
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
+//! | `diagnosis` | free movements, states of self-stress, least stiffnesses |
 //! | `closing`, `verdicts`, `cautions` | the end of a run |
 //! | `freeze` | the brief with what was found written in |
 //! | `report` | what reading the brief told |
@@ -13,6 +14,7 @@
 
 mod cautions;
 mod closing;
+mod diagnosis;
 mod doubts;
 mod failure;
 mod freeze;
