@@ -116,7 +116,7 @@ fn is_ours(name: &str) -> bool {
 
 /// All sheets, in the order in which they are read.
 pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
-    vec![
+    let mut sheets = vec![
         sheet::checks(run),
         sheet::cases(run),
         sheet::ropes(run),
@@ -124,7 +124,12 @@ pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
         sheet::anchor_peaks(run),
         sheet::anchors(run),
         sheet::sums(run),
-    ]
+    ];
+    // Of interest only where it was asked for.
+    if !run.diagnoses.is_empty() {
+        sheets.push(sheet::diagnoses(run));
+    }
+    sheets
 }
 
 /// One scale for all states, so that colours can be compared.

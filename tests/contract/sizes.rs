@@ -93,6 +93,9 @@ fn state(net: &Net) -> ReferenceOutcome {
         slack: vec![false; segments],
         lengths: vec![1.0; segments],
         removed: Vec::new(),
+        pulls: vec![[Vector3::x(), -Vector3::x()]; segments],
+        lying: vec![1.0; segments],
+        loads: vec![Vector3::zeros(); nodes],
         unstressed_lengths: state.unstressed_lengths.clone(),
         support_forces: supported
             .map(|node| SupportForce {
@@ -116,6 +119,7 @@ fn state(net: &Net) -> ReferenceOutcome {
             passed: true,
             ..Audit::default()
         },
+        diagnosis: None,
     };
     ReferenceOutcome {
         case: Case {

@@ -34,6 +34,7 @@ pub(crate) struct Collector {
     begun: Vec<v1::CaseBegin>,
     ended: Vec<v1::CaseSummary>,
     findings: Vec<v1::Finding>,
+    diagnoses: Vec<v1::StateDiagnosis>,
     timing: Option<v1::Timing>,
     summary: Option<v1::Summary>,
 }
@@ -71,6 +72,7 @@ impl Collector {
             Event::Finding(finding) => self.findings.push(finding),
             Event::Timing(timing) => self.timing = Some(timing),
             Event::Summary(summary) => self.summary = Some(summary),
+            Event::Diagnosis(part) => self.diagnoses.push(part),
             Event::Progress(_) | Event::DesignEffect(_) | Event::LossTable(_) => {}
         }
         Ok(())
@@ -198,6 +200,7 @@ impl Collector {
             states: Vec::new(),
             envelope: BTreeMap::new(),
             findings: std::mem::take(&mut self.findings),
+            diagnoses: std::mem::take(&mut self.diagnoses),
             summary,
             timing: self.timing.take(),
             broken_off,

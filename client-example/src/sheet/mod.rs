@@ -3,6 +3,7 @@
 mod anchors;
 mod cases;
 mod checks;
+mod diagnosis;
 mod page;
 mod ropes;
 mod text;
@@ -15,6 +16,7 @@ use crate::run::Run;
 pub(crate) use anchors::{anchor_peaks, anchors};
 pub(crate) use cases::{by_need, cases, causes, sums, way_words};
 pub(crate) use checks::checks;
+pub(crate) use diagnosis::diagnoses;
 pub(crate) use page::html;
 pub(crate) use ropes::{ropes, struts};
 pub(crate) use text::{terminal, wrap};

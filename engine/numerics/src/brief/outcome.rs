@@ -2,7 +2,7 @@
 
 use nalgebra::Vector3;
 
-use super::Cause;
+use super::{Cause, StateDiagnosis};
 use crate::check::{Against, Base, CaseDigest};
 use crate::equilibrium::audit::Audit;
 use crate::equilibrium::{IterationReport, Solution, SolveError, Termination};
@@ -69,6 +69,8 @@ pub struct StateResult {
     pub removed: Vec<SegmentId>,
     /// What the independent routine found.
     pub audit: Audit,
+    /// What it allows beside bearing its load, where that was asked for.
+    pub diagnosis: Option<Box<StateDiagnosis>>,
 }
 
 impl StateResult {

@@ -5,6 +5,7 @@ use std::ops::ControlFlow;
 use std::sync::Arc;
 
 use super::cause::{Stop, cause_of_error, cause_of_stop};
+use super::diagnosis::diagnose;
 use super::state::{Bare, state_result};
 use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Task};
 use crate::check::{Base, CaseDigest, CheckKind, worst_ratio};
@@ -81,7 +82,10 @@ impl Plan {
             members: &equilibrium::member_states(self.analysis.structure(), &case, &state),
             loose_nodes: &[],
         };
-        let result = state_result(&brief.net, &case, &state.positions, &bare);
+        let mut result = state_result(&brief.net, &case, &state.positions, &bare);
+        if let Some(asked) = brief.diagnosis.as_ref().filter(|asked| asked.reference) {
+            result.diagnosis = diagnose(&self.analysis, asked, &case, &result, None).map(Box::new);
+        }
         let mut outcome = ReferenceOutcome {
             state,
             case,
@@ -125,9 +129,11 @@ impl Plan {
             actions,
             cases,
             settings,
+            diagnosis,
             ..
         } = &*self.brief;
         let given = &cases[case];
+        let asked = diagnosis.as_ref().filter(|asked| asked.cases.contains(&case));
         let settings = &Settings {
             load_steps: given.load_steps.unwrap_or(settings.load_steps),
             ..*settings
@@ -151,7 +157,7 @@ impl Plan {
                 };
                 // The last good state carries a share of the load; it is told under the loads that it carries.
                 let carried = case.scaled(&reference.state.unstressed_lengths, solution.load_factor);
-                let result = state_result(net, &carried, &reference.state.positions, &bare);
+                let mut result = state_result(net, &carried, &reference.state.positions, &bare);
                 let cause = match solution.termination {
                     Termination::Converged | Termination::Cancelled => None,
                     _ => Some(cause_of_stop(
@@ -165,6 +171,13 @@ impl Plan {
                         },
                     )),
                 };
+                if let Some(asked) = asked.filter(|_| solution.termination == Termination::Converged) {
+                    let before = reference.result.diagnosis.as_ref();
+                    let before = before
+                        .and_then(|of| of.stiffnesses.first())
+                        .map(|least| least.stiffness);
+                    result.diagnosis = diagnose(&self.analysis, asked, &case, &result, before).map(Box::new);
+                }
                 CaseOutcome::State {
                     solution,
                     result: Box::new(result),

@@ -7,7 +7,7 @@
 //! | `findings`, `reasons`, `numbers`, `names` | what is told, where, and why |
 //! | `net`, `places`, `sections`, `supports`, `stretch`, `scope` | the net |
 //! | `prestress`, `wish`, `actions`, `factors`, `combinations`, `cases`, `solving` | what is wanted of it |
-//! | `checks`, `check_kinds`, `editions` | what it is judged by |
+//! | `checks`, `check_kinds`, `editions`, `diagnosis` | what it is judged by |
 //! | `plausible`, `frozen`, `accepted` | doubts |
 //! | `limits`, `not_served` | what is refused |
 //!
@@ -19,6 +19,7 @@ mod cases;
 mod check_kinds;
 mod checks;
 mod combinations;
+mod diagnosis;
 mod digest;
 mod editions;
 mod factors;

@@ -36,6 +36,7 @@ pub const SERVED: &[&str] = &[
     "checks.clearance",
     "checks.clamp",
     "checks.saddle",
+    "diagnosis",
     "solving",
     "accepted",
     "frozen_from",

@@ -141,6 +141,7 @@ pub(crate) const RADIUS_OVER_WIRE: Quantity = Quantity::between("radius over wir
 pub(crate) const FALL: Quantity = Quantity::positive("fall", "m per m", 1e-9, 10.0);
 pub(crate) const TOLERANCE: Quantity = Quantity::between("tolerance", "", 1e-14, 1e-8);
 pub(crate) const LOAD_STEPS: Quantity = Quantity::between("number of load steps", "", 1.0, 1000.0);
+pub(crate) const MODES_OF_STIFFNESS: Quantity = Quantity::between("number of modes of stiffness", "", 1.0, 20.0);
 pub(crate) const ITERATIONS: Quantity = Quantity::between("number of iterations", "", 1.0, 100_000.0);
 
 /// Whom a number belongs to.

@@ -174,6 +174,8 @@ reasons! {
     OVER_BREAKING,
     /// A movement so large that units or loads are to be doubted.
     LARGE_MOVEMENT,
+    /// A state with hardly any stiffness left against a movement, or none.
+    LITTLE_STIFFNESS,
     /// The independent routine does not confirm a state.
     AUDIT_FAILED,
     /// A state without an answer.

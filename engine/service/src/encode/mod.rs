@@ -7,6 +7,7 @@
 //! | `progress` | what is being worked on |
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
 //! | `effects` | sums of effects, paths of cases, losses of members |
+//! | `diagnosis` | free movements, states of self-stress, least stiffnesses |
 //! | `closing`, `verdicts`, `rules`, `anchors`, `cautions` | the end of a run |
 //! | `freeze` | the brief with what was found written in |
 //! | `report` | what reading the brief told |
@@ -15,6 +16,7 @@
 mod anchors;
 mod cautions;
 mod closing;
+mod diagnosis;
 mod doubts;
 mod effects;
 mod failure;
