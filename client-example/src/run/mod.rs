@@ -2,6 +2,7 @@
 
 mod collect;
 mod member;
+pub(crate) mod record;
 
 use std::collections::BTreeMap;
 
@@ -95,6 +96,8 @@ pub(crate) struct Run {
     pub(crate) timing: Option<v1::Timing>,
     /// Why the stream broke off before its summary; none where it came whole.
     pub(crate) broken_off: Option<String>,
+    /// The request and its events, encoded: what `record::read` makes this run of again.
+    pub(crate) record: Vec<u8>,
 }
 
 impl Run {

@@ -13,7 +13,7 @@ use crate::number;
 use crate::run::Run;
 
 pub(crate) use anchors::{anchor_peaks, anchors};
-pub(crate) use cases::{by_need, cases, causes, sums, way_words};
+pub(crate) use cases::{by_need, cases, causes, outcome_words, sums, way_words};
 pub(crate) use checks::checks;
 pub(crate) use page::html;
 pub(crate) use ropes::{ropes, struts};
