@@ -124,6 +124,7 @@ pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
         sheet::ropes(run),
         sheet::struts(run),
         sheet::anchor_peaks(run),
+        sheet::anchor_sets(run),
         sheet::anchors(run),
         sheet::sums(run),
     ]
@@ -305,7 +306,7 @@ mod tests {
             let written = write(&sample::run_named(names), &base.join(folder)).unwrap();
             assert_eq!(
                 written.files,
-                5 + 7 + 3 + 1 + 1 + 1,
+                5 + 8 + 3 + 1 + 1 + 1,
                 "brief, record, tables, sheets, plans, sections, page, list"
             );
         }

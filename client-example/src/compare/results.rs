@@ -58,6 +58,20 @@ pub(super) struct Quantity {
     pub(super) compared: usize,
 }
 
+impl Quantity {
+    /// Its place in a list: what ropes and anchors carry first, lengths, then where things are.
+    fn rank(&self) -> usize {
+        let first = ["tension", "slack", "axial force", "anchor pull", "unstressed"];
+        let last = ["position", "displacement"];
+        let starts = |names: &[&str]| names.iter().position(|name| self.name.starts_with(name));
+        match (starts(&first), starts(&last)) {
+            (Some(at), _) => at,
+            (None, Some(at)) => first.len() + 1 + at,
+            (None, None) => first.len(),
+        }
+    }
+}
+
 /// What came of comparing two runs.
 #[derive(Clone, Debug, Default)]
 pub(super) struct Comparison {
@@ -101,9 +115,11 @@ impl Comparison {
                 .apart
                 .push(format!("not compared, as only one side has it: {}", names.join(", ")));
         }
+        let ranks: Vec<usize> = comparison.quantities.iter().map(Quantity::rank).collect();
         comparison.numbers.sort_by(|one, other| {
+            let place = |number: &Number| (ranks[number.quantity], number.quantity);
             let size = |number: &Number| number.difference().abs();
-            (one.quantity.cmp(&other.quantity)).then(size(other).total_cmp(&size(one)))
+            (place(one).cmp(&place(other))).then(size(other).total_cmp(&size(one)))
         });
         comparison
     }
@@ -494,7 +510,7 @@ mod tests {
                 ("tension", "full-snow", "carrying A to m")
             ]
         );
-        assert!((comparison.numbers[1].difference() - 300.0).abs() < 1e-9);
+        assert!((comparison.numbers[0].difference() - 300.0).abs() < 1e-9);
         assert_eq!(comparison.said.len(), 1, "{:?}", comparison.said);
         assert_eq!(
             comparison.said[0].now.as_deref(),

@@ -189,11 +189,12 @@ fn results_text(results: &Comparison, limits: &Thresholds) -> String {
         .iter()
         .map(|said| (said.what.clone(), told(said.was.as_deref(), said.now.as_deref())));
     text.push_str(&list(said.collect()));
-    text.push_str(&format!(
-        "  compared: {} states that both answered, told where they differ by more than: {}\n",
+    let compared = format!(
+        "{} states that both answered were compared; told is what differs by more than {}.",
         results.states,
         limits.words()
-    ));
+    );
+    text.push_str(&format!("  {}\n", sheet::wrap(&compared, 114, "  ")));
     for words in &results.apart {
         text.push_str(&format!("  {words}\n"));
     }
@@ -317,8 +318,10 @@ fn worst_numbers(results: &Comparison) -> Sheet {
         let (eyes, scale) = shown(unit);
         let value = |number: f64| match (name.as_str(), unit.as_str()) {
             ("slack", _) => Cell::text(if number == 0.0 { "taut" } else { "slack" }),
-            // Places and lengths are metres; what differs in them is millimetres.
-            (_, "m") => Cell::text(format!("{number:.4} m")),
+            // Places and lengths are metres; movements, and what differs in them, are millimetres.
+            (name, "m") if !name.starts_with("displacement") && !name.ends_with("change") => {
+                Cell::text(format!("{number:.4} m"))
+            }
             _ => Cell::text(format!("{} {eyes}", three(number * scale)).trim_end().to_owned()),
         };
         let by = match (name.as_str(), unit.as_str()) {

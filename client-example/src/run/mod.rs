@@ -1,6 +1,7 @@
 //! A run as it came over the wire, put together: the only thing that tables and drawings read.
 
 mod collect;
+mod factors;
 mod member;
 pub(crate) mod record;
 
