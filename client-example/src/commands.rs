@@ -74,7 +74,7 @@ async fn answer(engine: &mut Engine, brief: &v1::Brief, only: Vec<String>) -> Re
         only,
     };
     let mut watch = Watch::new();
-    let mut collector = Collector::default();
+    let mut collector = Collector::of(&request);
     let ended = receive(engine, request, &mut collector, &mut watch).await;
     watch.done();
     match ended {

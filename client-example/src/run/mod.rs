@@ -1,7 +1,9 @@
 //! A run as it came over the wire, put together: the only thing that tables and drawings read.
 
 mod collect;
+mod factors;
 mod member;
+pub(crate) mod record;
 
 use std::collections::BTreeMap;
 
@@ -97,6 +99,8 @@ pub(crate) struct Run {
     pub(crate) timing: Option<v1::Timing>,
     /// Why the stream broke off before its summary; none where it came whole.
     pub(crate) broken_off: Option<String>,
+    /// The request and its events, encoded: what `record::read` makes this run of again.
+    pub(crate) record: Vec<u8>,
 }
 
 impl Run {
