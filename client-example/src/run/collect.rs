@@ -71,7 +71,7 @@ impl Collector {
             Event::Finding(finding) => self.findings.push(finding),
             Event::Timing(timing) => self.timing = Some(timing),
             Event::Summary(summary) => self.summary = Some(summary),
-            Event::Progress(_) => {}
+            Event::Panels(_) | Event::LoadPicture(_) | Event::Progress(_) => {}
         }
         Ok(())
     }

@@ -5,10 +5,10 @@ use std::sync::Arc;
 
 use super::cause::{Stop, cause_of_error, cause_of_stop};
 use super::state::{Bare, state_result};
-use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Task};
+use super::{Brief, CaseOutcome, Estimate, LoadPicture, ReferenceOutcome, Task};
 use crate::check::{CaseDigest, worst_ratio};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
-use crate::load::Case;
+use crate::load::{Case, Surface};
 use crate::shape::{self, Found, ShapeError};
 
 /// A brief with what is worked out once for its net: numbering, pattern, symbolic factorisation.
@@ -149,6 +149,22 @@ impl Plan {
                 error,
             },
         }
+    }
+
+    /// The panels in the reference state.
+    #[must_use]
+    pub fn surface(&self, reference: &ReferenceOutcome) -> Surface {
+        Surface::new(&self.brief.net, &reference.state.positions)
+    }
+
+    /// What each action does in the reference state, with the factor 1, in order.
+    #[must_use]
+    pub fn load_pictures(&self, reference: &ReferenceOutcome) -> Vec<LoadPicture> {
+        let surface = self.surface(reference);
+        let actions = 0..self.brief.actions.len();
+        actions
+            .map(|action| LoadPicture::new(&self.brief, reference, &surface, action))
+            .collect()
     }
 
     /// Worst ratio, in one case, of the checks that cover it (–); `None` where none of them judges anything.

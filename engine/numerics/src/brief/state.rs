@@ -2,10 +2,11 @@
 
 use nalgebra::Vector3;
 
-use super::{EndForce, StateResult, SupportForce};
+use super::picture::forces_at;
+use super::{EndForce, Resultant, StateResult, SupportForce};
 use crate::equilibrium::audit;
 use crate::load::Case;
-use crate::model::{AxialLaw, Net, NodeId, SegmentId};
+use crate::model::{AxialLaw, Net, NodeId, SegmentId, fan};
 
 /// Positions and forces as a solver leaves them.
 pub(super) struct Bare<'a> {
@@ -21,7 +22,8 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
     let (mut lengths, mut stretches, mut slack) =
         (vec![0.0; n_segments], vec![0.0; n_segments], vec![false; n_segments]);
     // What the members and loads exert on every node.
-    let mut exerted = case.nodal_forces.clone();
+    let loads = forces_at(net, case, positions);
+    let mut exerted = loads.clone();
     let mut pulls = vec![Vector3::zeros(); n_segments];
     for (index, segment) in net.segments().iter().enumerate() {
         let [i, j] = segment.ends.map(NodeId::index);
@@ -41,6 +43,9 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
         exerted[j] -= pulls[index];
     }
     let support_forces = support_forces(net, case, positions, exerted);
+    let of_loads = Resultant::of(loads.iter().zip(positions));
+    let places = support_forces.iter().map(|s| (&s.force, &positions[s.node.index()]));
+    let of_supports = Resultant::of(places);
     let mut supported = vec![false; net.nodes().len()];
     for support in &support_forces {
         supported[support.node.index()] = true;
@@ -68,8 +73,18 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
         lengths,
         unstressed_lengths: case.unstressed_lengths.clone(),
         end_forces,
-        load_sum: case.nodal_forces.iter().sum(),
-        support_sum: support_forces.iter().map(|s| s.force).sum(),
+        load_sum: of_loads.force,
+        load_moment: of_loads.moment,
+        support_sum: of_supports.force,
+        support_moment: of_supports.moment,
+        panel_areas: (net.panels().iter())
+            .map(|panel| fan::area(&panel.places(positions)))
+            .collect(),
+        panel_pressures: if case.pressures.is_empty() {
+            vec![0.0; net.panels().len()]
+        } else {
+            case.pressures.clone()
+        },
         support_forces,
         loose_nodes: state.loose_nodes.to_vec(),
         audit: audit::audit(net, case, positions, state.axial_forces),

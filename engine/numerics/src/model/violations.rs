@@ -55,7 +55,13 @@ pub(super) fn violations(given: &NetGiven) -> Vec<NetError> {
         check_path(&strut.name, &strut.ends, given.nodes.len(), &mut errors);
         check_section(&strut.name, &strut.section, &mut errors);
     }
-    check_surface(&given.panels, &given.skins, &given.zones, given.nodes.len(), &mut errors);
+    check_surface(
+        &given.panels,
+        &given.skins,
+        &given.zones,
+        given.nodes.len(),
+        &mut errors,
+    );
     for elastic in &given.elastic_supports {
         check_elastic_support(elastic, given, &mut errors);
     }

@@ -3,7 +3,7 @@
 use ropewalk_api::ropewalk::v1;
 use ropewalk_api::ropewalk::v1::check::Kind;
 use ropewalk_numerics::brief::{Check, CheckKind};
-use ropewalk_numerics::model::{CableId, NodeId, StrutId};
+use ropewalk_numerics::model::{Area, CableId, NodeId, StrutId};
 
 use super::cases::Cases;
 use super::findings::{Findings, Path};
@@ -34,7 +34,7 @@ pub(crate) fn read(
     context: &Context<'_, '_>,
     findings: &mut Findings,
     resolved: &mut Resolved,
-) -> Vec<Check> {
+) -> Vec<CheckDraft> {
     let list = Path::root("checks");
     if messages.len() > MOST {
         findings
@@ -63,6 +63,13 @@ pub(crate) fn read(
         .collect()
 }
 
+/// A check as read. Which nodes are at the corners of panels is known only when panels are.
+pub(crate) struct CheckDraft {
+    pub(crate) check: Check,
+    /// Skins and zones that it covers.
+    pub(crate) areas: Vec<Area>,
+}
+
 fn read_check(
     check: &v1::Check,
     number: usize,
@@ -70,7 +77,7 @@ fn read_check(
     context: &Context<'_, '_>,
     findings: &mut Findings,
     resolved: &mut Resolved,
-) -> Option<Check> {
+) -> Option<CheckDraft> {
     let over = at.field("over");
     if context.cases.messages.is_empty() && check.over.is_empty() {
         findings.error(
@@ -122,9 +129,9 @@ fn read_check(
         nodes: Vec::new(),
         cases: cases.unwrap_or_default(),
     };
-    cover(check, &mut read, at, context, findings, resolved);
+    let areas = cover(check, &mut read, at, context, findings, resolved);
     tell_not_judgeable(check, &read, at, context, findings);
-    kind.map(|_| read)
+    kind.map(|_| CheckDraft { check: read, areas })
 }
 
 fn cover(
@@ -134,8 +141,9 @@ fn cover(
     context: &Context<'_, '_>,
     findings: &mut Findings,
     resolved: &mut Resolved,
-) {
+) -> Vec<Area> {
     let (net, on) = (context.net, at.field("on"));
+    let mut areas = Vec::new();
     let supported = |node: &usize| context.supports.of_node[*node].is_some();
     let all = check.on.is_empty();
     let mut scope_of = |allowed| context.scopes.of(net, &check.on, &on, allowed, findings);
@@ -158,6 +166,7 @@ fn cover(
             let scope = scope_of(ANYTHING);
             complete = scope.complete;
             read.nodes = nodes_of(&scope, context).into_iter().map(NodeId::new).collect();
+            areas = scope.areas().collect();
         }
         Some(Kind::AnchorPull(_)) => {
             let scope = scope_of(NODES);
@@ -186,7 +195,8 @@ fn cover(
             read.struts = scope.struts().map(StrutId::new).collect();
         }
     }
-    if complete && read.cables.is_empty() && read.struts.is_empty() && read.nodes.is_empty() {
+    let nothing = read.cables.is_empty() && read.struts.is_empty() && read.nodes.is_empty() && areas.is_empty();
+    if complete && nothing {
         findings.error(
             reasons::COVERS_NOTHING,
             &on,
@@ -195,6 +205,7 @@ fn cover(
             "name in on what it covers, or take it out",
         );
     }
+    areas
 }
 
 /// Nodes named themselves, and the free ones of named members, each once, in order.

@@ -5,7 +5,7 @@
 //! |---|---|
 //! | `reading`, `work` | the whole brief, and what comes of it |
 //! | `findings`, `reasons`, `numbers`, `names` | what is told, where, and why |
-//! | `net`, `places`, `sections`, `supports`, `stretch`, `scope` | the net |
+//! | `net`, `places`, `sections`, `supports`, `stretch`, `scope`, `surface` | the net |
 //! | `prestress`, `wish`, `actions`, `cases`, `checks`, `solving` | what is wanted of it |
 //! | `plausible`, `frozen`, `accepted` | doubts |
 //! | `limits`, `not_served` | what is refused |
@@ -35,6 +35,7 @@ mod sections;
 mod solving;
 mod stretch;
 mod supports;
+mod surface;
 mod wish;
 mod work;
 
@@ -43,4 +44,5 @@ pub use digest::digest;
 pub(crate) use net::STANDARD_GRAVITY;
 pub use not_served::{NOT_SERVED, SERVED};
 pub use reading::{Reading, read};
+pub(crate) use surface::WithoutValue;
 pub use work::Work;

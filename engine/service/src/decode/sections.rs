@@ -38,6 +38,8 @@ pub(crate) struct SectionDraft<'a> {
     pub(crate) expansion: f64,
     /// Of the bare rope (N).
     pub(crate) breaking_force: Option<f64>,
+    /// Diameter (m).
+    pub(crate) diameter: Option<f64>,
 }
 
 impl<'a> Sections<'a> {
@@ -195,6 +197,7 @@ impl<'a> Sections<'a> {
             mass_per_length: draft.mass_per_length,
             expansion: draft.expansion,
             breaking_force: draft.breaking_force.map(|force| factor * force),
+            diameter: draft.diameter,
             ..Section::default()
         })
     }
@@ -262,7 +265,7 @@ fn read_section<'a>(
     };
     let area = positive(field, &AREA, area);
     let breaking_force = positive("breaking_force_n", &BREAKING_FORCE, section.breaking_force_n).flatten();
-    positive("diameter_m", &DIAMETER, section.diameter_m);
+    let diameter = positive("diameter_m", &DIAMETER, section.diameter_m).flatten();
     positive(
         "bending_stiffness_n_m2",
         &BENDING_STIFFNESS,
@@ -334,6 +337,7 @@ fn read_section<'a>(
         mass_per_length: mass,
         expansion,
         breaking_force,
+        diameter,
     }
 }
 

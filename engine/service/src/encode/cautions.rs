@@ -1,6 +1,7 @@
 //! Cautions that every client must show.
 
 use ropewalk_numerics::brief::Caution;
+use ropewalk_numerics::model::Net;
 
 /// Cautions that hold for every result.
 #[must_use]
@@ -18,6 +19,12 @@ pub fn cautions() -> Vec<String> {
     ]
     .map(str::to_owned)
     .to_vec()
+}
+
+/// Cautions that hold for every result of a net, whatever came of it.
+pub(super) fn of_net(net: &Net) -> Vec<String> {
+    let own = (!net.panels().is_empty()).then_some(Caution::SkinsPassLoad);
+    of_run(own.as_slice())
 }
 
 /// Cautions of a run: those of every result, then its own.

@@ -6,6 +6,7 @@
 //! | `head` | what is about to run: sizes, settings, tables of ids |
 //! | `progress` | what is being worked on |
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
+//! | `surface` | panels, and what each action does in the reference state |
 //! | `closing`, `verdicts`, `cautions` | the end of a run |
 //! | `freeze` | the brief with what was found written in |
 //! | `report` | what reading the brief told |
@@ -22,6 +23,7 @@ mod parts;
 mod progress;
 mod report;
 mod state;
+mod surface;
 mod verdicts;
 
 pub use cautions::cautions;
