@@ -2,9 +2,10 @@
 
 use nalgebra::Vector3;
 
+use super::state::loads;
 use super::{Brief, ReferenceOutcome};
 use crate::load::{Case, Load, Surface};
-use crate::model::{Net, NodeId, fan};
+use crate::model::{Net, NodeId};
 
 /// A system of forces reduced to the origin.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
@@ -105,25 +106,16 @@ impl LoadPicture {
     }
 }
 
-/// Every load of a case as forces on nodes at `positions` (m): loads along hanging segments half to each end, pressures
-/// normal to the panels as they lie there.
-pub(super) fn forces_at(net: &Net, case: &Case, positions: &[Vector3<f64>]) -> Vec<Vector3<f64>> {
-    let mut forces = case.nodal_forces.clone();
-    for (segment, loads) in net.segments().iter().zip(&case.segments) {
-        if segment.hangs {
-            let half = 0.5 * case.unstressed_lengths[segment.length] * loads.per_length;
-            segment
-                .ends
-                .map(NodeId::index)
-                .into_iter()
-                .for_each(|end| forces[end] += half);
-        }
-    }
-    for (panel, pressure) in net.panels().iter().zip(&case.pressures).filter(|(_, p)| **p != 0.0) {
-        let shares = fan::to_corners(&fan::triangles(&panel.places(positions)));
-        for (corner, share) in panel.corners.iter().zip(shares) {
-            forces[corner.index()] -= *pressure * share;
-        }
+/// Every load of a case as forces on nodes at `positions` (m): loads along hanging segments half to each end.
+fn forces_at(net: &Net, case: &Case, positions: &[Vector3<f64>]) -> Vec<Vector3<f64>> {
+    let mut forces = loads(net, case, positions);
+    for (segment, loads) in net.segments().iter().zip(&case.segments).filter(|(s, _)| s.hangs) {
+        let half = 0.5 * case.unstressed_lengths[segment.length] * loads.per_length;
+        segment
+            .ends
+            .map(NodeId::index)
+            .into_iter()
+            .for_each(|end| forces[end] += half);
     }
     forces
 }

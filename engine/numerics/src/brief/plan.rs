@@ -8,7 +8,7 @@ use super::state::{Bare, state_result};
 use super::{Brief, CaseOutcome, Estimate, LoadPicture, ReferenceOutcome, Task};
 use crate::check::{CaseDigest, worst_ratio};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
-use crate::load::{Case, Surface};
+use crate::load::Surface;
 use crate::shape::{self, Found, ShapeError};
 
 /// A brief with what is worked out once for its net: numbering, pattern, symbolic factorisation.
@@ -32,6 +32,10 @@ impl Plan {
 
     pub(super) fn shared_brief(&self) -> Arc<Brief> {
         Arc::clone(&self.brief)
+    }
+
+    pub(super) fn analysis(&self) -> &Analysis {
+        &self.analysis
     }
 
     /// The work as given.
@@ -74,6 +78,7 @@ impl Plan {
         let bare = Bare {
             positions: &state.positions,
             axial_forces: &state.axial_forces,
+            members: &equilibrium::member_states(self.analysis.structure(), &case, &state),
             loose_nodes: &[],
         };
         let result = state_result(&brief.net, &case, &state.positions, &bare);
@@ -105,7 +110,7 @@ impl Plan {
             load_steps: given.load_steps.unwrap_or(settings.load_steps),
             ..*settings
         };
-        let case = Case::new(net, &reference.state, actions, &given.factors);
+        let case = given.case(net, &reference.state, actions);
         let solved = equilibrium::solve(
             &self.analysis,
             &case,
@@ -119,6 +124,7 @@ impl Plan {
                 let bare = Bare {
                     positions: &solution.positions,
                     axial_forces: &solution.axial_forces,
+                    members: &solution.members,
                     loose_nodes: &solution.loose_nodes,
                 };
                 // The last good state carries a share of the load; it is told under the loads that it carries.
@@ -131,7 +137,6 @@ impl Plan {
                         &Stop {
                             reference: &reference.state,
                             case: &case,
-                            carried: &carried,
                             solution: &solution,
                             result: &result,
                             limit: settings.max_iterations,
@@ -167,7 +172,8 @@ impl Plan {
             .collect()
     }
 
-    /// Worst ratio, in one case, of the checks that cover it (–); `None` where none of them judges anything.
+    /// Worst ratio, in one case or (counted on from the last case) design effect, of the checks that cover it (–); `None`
+    /// where none of them judges anything.
     #[must_use]
     pub fn worst_ratio(&self, reference: &ReferenceOutcome, case: usize, digest: &CaseDigest) -> Option<f64> {
         let (brief, forces) = (&self.brief, &reference.state.axial_forces);

@@ -2,6 +2,7 @@
 
 mod action;
 mod case;
+pub mod combination;
 mod surface;
 
 pub use action::{Action, Load, Scope};

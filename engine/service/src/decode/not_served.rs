@@ -29,6 +29,8 @@ pub const SERVED: &[&str] = &[
     "actions.loads.temperature",
     "actions.loads.move",
     "actions.loads.prestress",
+    "factors",
+    "combinations",
     "cases",
     "checks.safety",
     "checks.slackness",
@@ -45,8 +47,6 @@ pub const NOT_SERVED: &[&str] = &[
     "net.adjusters",
     "net.cables.slides",
     "net.roles.adjuster",
-    "factors",
-    "combinations",
     "checks.resistance",
     "checks.service_stress",
     "checks.buckling",
@@ -90,12 +90,7 @@ pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
     ] {
         elements(list, &ids, &mut part);
     }
-    let combinations = Path::root("combinations");
-    for number in 0..brief.combinations.len() {
-        part(&combinations.number(number), "");
-    }
     for (field, given) in [
-        ("factors", brief.factors.is_some()),
         ("modes", brief.modes.is_some()),
         ("workshop", brief.workshop.is_some()),
         ("keep", brief.keep.is_some()),

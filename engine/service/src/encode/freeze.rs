@@ -40,7 +40,7 @@ pub fn freeze(
         from_digest: work.digest.clone(),
         digest: digest(&frozen),
         reference: Some(summary),
-        cautions: cautions::of_net(&plan.brief().net),
+        cautions: cautions::of_net(work, &plan.brief().net),
     };
     let parts = merging_parts(frozen).into_iter().map(Part::Brief);
     let parts = parts.chain([Part::Summary(closing)]);
