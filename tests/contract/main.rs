@@ -12,4 +12,5 @@ mod minimal;
 mod reasons;
 mod results;
 mod sizes;
+mod surfaces;
 mod violations;

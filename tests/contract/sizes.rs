@@ -113,7 +113,11 @@ fn state(net: &Net) -> ReferenceOutcome {
             })
             .collect(),
         load_sum: Vector3::zeros(),
+        load_moment: Vector3::zeros(),
         support_sum: Vector3::zeros(),
+        support_moment: Vector3::zeros(),
+        panel_areas: Vec::new(),
+        panel_pressures: Vec::new(),
         loose_nodes: (0..nodes).map(NodeId::new).collect(),
         audit: Audit {
             passed: true,

@@ -90,7 +90,11 @@ impl Collector {
             Event::Timing(timing) => self.timing = Some(timing),
             Event::Summary(summary) => self.summary = Some(summary),
             Event::Diagnosis(part) => self.diagnoses.push(part),
-            Event::Progress(_) | Event::DesignEffect(_) | Event::LossTable(_) => {}
+            Event::Panels(_)
+            | Event::LoadPicture(_)
+            | Event::Progress(_)
+            | Event::DesignEffect(_)
+            | Event::LossTable(_) => {}
         }
         Ok(())
     }

@@ -61,8 +61,16 @@ pub struct StateResult {
     pub end_forces: Vec<EndForce>,
     /// Sum of the loads (N).
     pub load_sum: Vector3<f64>,
+    /// Moment of the loads about the origin (N m), at these positions.
+    pub load_moment: Vector3<f64>,
     /// Sum of the support forces (N).
     pub support_sum: Vector3<f64>,
+    /// Moment of the support forces about the origin (N m), at these positions.
+    pub support_moment: Vector3<f64>,
+    /// Area of every panel (m²).
+    pub panel_areas: Vec<f64>,
+    /// Pressure on the outer side of every panel (Pa).
+    pub panel_pressures: Vec<f64>,
     /// Nodes whose place is not determined, because only slack ropes lead to them.
     pub loose_nodes: Vec<NodeId>,
     /// Segments that are taken out.

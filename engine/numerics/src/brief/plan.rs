@@ -7,9 +7,10 @@ use std::sync::Arc;
 use super::cause::{Stop, cause_of_error, cause_of_stop};
 use super::diagnosis::diagnose;
 use super::state::{Bare, state_result};
-use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Task};
+use super::{Brief, CaseOutcome, Estimate, LoadPicture, ReferenceOutcome, Task};
 use crate::check::{Base, CaseDigest, CheckKind, worst_ratio};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
+use crate::load::Surface;
 use crate::shape::{self, Found, ShapeError};
 
 /// A brief with what is worked out once for its net: numbering, pattern, symbolic factorisation.
@@ -189,6 +190,22 @@ impl Plan {
                 error,
             },
         }
+    }
+
+    /// The panels in the reference state.
+    #[must_use]
+    pub fn surface(&self, reference: &ReferenceOutcome) -> Surface {
+        Surface::new(&self.brief.net, &reference.state.positions)
+    }
+
+    /// What each action does in the reference state, with the factor 1, in order.
+    #[must_use]
+    pub fn load_pictures(&self, reference: &ReferenceOutcome) -> Vec<LoadPicture> {
+        let surface = self.surface(reference);
+        let actions = 0..self.brief.actions.len();
+        actions
+            .map(|action| LoadPicture::new(&self.brief, reference, &surface, action))
+            .collect()
     }
 
     /// Worst ratio, in one case or (counted on from the last case) design effect, of the checks that cover it (–); `None`

@@ -28,6 +28,8 @@ pub enum Caution {
         /// Its strain (–) in the reference state.
         strain: f64,
     },
+    /// Skins have no stiffness here.
+    SkinsPassLoad,
     /// The shape was corrected as an elastic net, so that given force densities are met nearly only.
     ShapeCorrected,
 }
@@ -58,6 +60,10 @@ impl fmt::Display for Caution {
                 f,
                 "\"{member}\" is strained by {:.1} % in the reference state: was its EA given in another unit?",
                 strain * 100.0
+            ),
+            Self::SkinsPassLoad => f.write_str(
+                "skins only pass load to the ropes at the corners of their panels: they have no stiffness and no \
+                 prestress here, and are not judged",
             ),
             Self::ShapeCorrected => f.write_str(
                 "the shape found was corrected as an elastic net: given force densities are met nearly only",
@@ -99,6 +105,9 @@ pub(super) fn cautions(net: &Net, reference: &ReferenceOutcome) -> Vec<Caution> 
     let mut cautions = Vec::new();
     if !net.is_pure_tension() {
         cautions.push(Caution::StrutsNotUnique);
+    }
+    if !net.panels().is_empty() {
+        cautions.push(Caution::SkinsPassLoad);
     }
     if let Some(balance) = report.balance.as_ref().filter(|b| !b.unique) {
         cautions.push(Caution::BalanceNotUnique {

@@ -1,5 +1,6 @@
 //! A state to start from: force densities, wanted tensions, given lengths, and members left to balance.
 
+mod areas;
 mod balance;
 mod error;
 mod find;
@@ -19,7 +20,7 @@ pub(crate) mod words;
 mod tests;
 
 pub use error::{ForceLeft, ShapeError, Target};
-pub use find::find;
+pub use find::{find, first_shape};
 pub use gate::Found;
 pub use given::{Prestress, PrestressRule};
 pub use report::{BalanceReport, ShapeReport};

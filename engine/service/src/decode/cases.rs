@@ -362,7 +362,8 @@ impl<'a> Cases<'a> {
             .sections
             .iter()
             .any(|section| section.mass_kg_per_m.is_some_and(|mass| mass > 0.0))
-            || net.nodes.iter().any(|node| node.attached_mass > 0.0);
+            || net.nodes.iter().any(|node| node.attached_mass > 0.0)
+            || (net.message.skins.iter()).any(|skin| skin.mass_kg_per_m2.is_some_and(|mass| mass > 0.0));
         if let (Some(weight), false) = (weights.first(), mass) {
             let id = &actions.messages[*weight].id;
             let list = Path::root("actions");

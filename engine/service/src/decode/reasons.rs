@@ -108,6 +108,20 @@ reasons! {
     MOVE_WITHOUT_SUPPORT,
     /// A load moves a support along a direction in which it is free.
     MOVE_ALONG_FREE,
+    /// Ropes of a skin cross, touch or lie above each other in plan, so that its meshes cannot be told apart.
+    MESHES_UNCLEAR,
+    /// A skin whose ropes enclose no mesh in plan, and that has no panels given one by one.
+    SKIN_WITHOUT_PANELS,
+    /// A rope that a skin names, of which a stretch bounds none of its panels.
+    ROPE_BOUNDS_NO_PANEL,
+    /// Two panels have the same corners.
+    PANEL_TWICE,
+    /// An outline in plan that crosses itself or encloses nothing.
+    BAD_OUTLINE,
+    /// A load gives different coefficients to a panel that lies in several zones.
+    ZONES_CONTRADICT,
+    /// A load needs a diameter that a section does not give.
+    NO_DIAMETER,
     /// A prestress share takes away all of the tension.
     SHARE_TAKES_ALL,
     /// An action without loads.
@@ -176,6 +190,10 @@ reasons! {
     LARGE_MOVEMENT,
     /// A state with hardly any stiffness left against a movement, or none.
     LITTLE_STIFFNESS,
+    /// Panels that a pressure on the surface leaves without a value.
+    PANELS_WITHOUT_VALUE,
+    /// A panel that was found in plan has turned over in the reference state.
+    PANEL_TURNED,
     /// The independent routine does not confirm a state.
     AUDIT_FAILED,
     /// A state without an answer.
@@ -188,6 +206,9 @@ pub const OF_RESULTS: &[&str] = &[
     SLACK_IN_REFERENCE,
     OVER_BREAKING,
     LARGE_MOVEMENT,
+    PANELS_WITHOUT_VALUE,
+    PANEL_TURNED,
+    ZONES_CONTRADICT,
     AUDIT_FAILED,
 ];
 

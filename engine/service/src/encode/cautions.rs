@@ -1,6 +1,7 @@
 //! Cautions that every client must show.
 
 use ropewalk_numerics::brief::Caution;
+use ropewalk_numerics::model::Net;
 
 use crate::decode::Work;
 
@@ -20,6 +21,12 @@ pub fn cautions() -> Vec<String> {
     ]
     .map(str::to_owned)
     .to_vec()
+}
+
+/// Cautions that hold for every result of a net, whatever came of it.
+pub(super) fn of_net(work: &Work, net: &Net) -> Vec<String> {
+    let own = (!net.panels().is_empty()).then_some(Caution::SkinsPassLoad);
+    of_run(work, own.as_slice())
 }
 
 /// Cautions of a run: those of every result, then its own.

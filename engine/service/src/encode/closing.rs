@@ -147,7 +147,7 @@ pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
                 judged: Some(v1::Share { count: 0, of: covered }),
                 passes: Some(share(0, 0)),
                 checks,
-                cautions: cautions::cautions(),
+                cautions: cautions::of_net(work, &plan.brief().net),
                 findings: counts.messages(),
                 digest: work.digest.clone(),
                 anchors: None,

@@ -28,7 +28,7 @@ pub(super) fn of_state(work: &Work, net: &Net, case: &str, state: &StateResult) 
     findings
 }
 
-fn finding(
+pub(super) fn finding(
     severity: v1::FindingSeverity,
     reason: &str,
     id: &str,

@@ -11,14 +11,14 @@ use v1::run_response::Event;
 use super::closing::Noted;
 use super::parts::{count, event, first_ids};
 use super::progress::way;
-use super::{diagnosis, doubts, failure, state};
+use super::{diagnosis, doubts, failure, state, surface};
 use crate::decode::{REFERENCE, Work, reasons};
 use crate::words::quoted_list;
 
 /// Loose nodes that are listed.
 const LOOSE_NODES: usize = 1000;
 
-/// The reference state: beginning, arrays, findings, summary.
+/// The reference state: beginning, arrays, findings, summary; then panels and what each action does.
 #[must_use]
 pub fn reference(work: &Work, plan: &Plan, found: &Result<ReferenceOutcome, ShapeError>) -> Vec<v1::RunResponse> {
     let begin = v1::CaseBegin {
@@ -36,6 +36,9 @@ pub fn reference(work: &Work, plan: &Plan, found: &Result<ReferenceOutcome, Shap
     let findings = reference_findings(work, plan, found);
     messages.extend(findings.into_iter().map(|finding| event(Event::Finding(finding))));
     messages.push(event(Event::CaseSummary(reference_summary(plan, found))));
+    if let Ok(reference) = found {
+        messages.extend(surface::tables(plan, reference));
+    }
     messages
 }
 
@@ -45,7 +48,11 @@ pub(super) fn reference_findings(
     found: &Result<ReferenceOutcome, ShapeError>,
 ) -> Vec<v1::Finding> {
     match found {
-        Ok(reference) => doubts::of_state(work, &plan.brief().net, REFERENCE, &reference.result),
+        Ok(reference) => {
+            let mut findings = doubts::of_state(work, &plan.brief().net, REFERENCE, &reference.result);
+            findings.extend(surface::doubts(work, plan, reference));
+            findings
+        }
         Err(error) => vec![no_answer(REFERENCE, &failure::of_shape(&plan.brief().net, error).1)],
     }
 }
@@ -202,6 +209,8 @@ fn summary(net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutc
         imbalance_allowed_n: audit.allowed,
         load_sum_n: state.load_sum.iter().copied().collect(),
         support_force_sum_n: state.support_sum.iter().copied().collect(),
+        load_moment_nm: state.load_moment.iter().copied().collect(),
+        support_moment_nm: state.support_moment.iter().copied().collect(),
         largest_movement_m: movement.map_or(0.0, |(_, moved)| moved),
         largest_movement_node: movement.map_or_else(String::new, |(node, _)| name(node)),
         lowest_tension_share: lowest.map(|(_, share)| share),
