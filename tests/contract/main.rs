@@ -10,4 +10,5 @@ mod minimal;
 mod reasons;
 mod results;
 mod sizes;
+mod targets;
 mod violations;

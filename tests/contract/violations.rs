@@ -22,7 +22,7 @@ fn told<'r>(reading: &'r Reading, severity: v1::FindingSeverity, reason: &str, p
 
 /// A change, and the one kind of error that it makes.
 #[track_caller]
-fn check(base: Value, changes: &[(&str, Value)], reason: &str, path: &str) {
+pub(crate) fn check(base: Value, changes: &[(&str, Value)], reason: &str, path: &str) {
     let reading = reading(&changed(base, changes));
     told(&reading, Error, reason, path);
     assert!(reading.work.is_none());

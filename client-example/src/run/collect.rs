@@ -71,7 +71,8 @@ impl Collector {
             Event::Finding(finding) => self.findings.push(finding),
             Event::Timing(timing) => self.timing = Some(timing),
             Event::Summary(summary) => self.summary = Some(summary),
-            Event::Progress(_) => {}
+            // What is not met comes as a doubt as well.
+            Event::Progress(_) | Event::ShapeReport(_) => {}
         }
         Ok(())
     }

@@ -35,6 +35,7 @@ mod sections;
 mod solving;
 mod stretch;
 mod supports;
+mod targets;
 mod wish;
 mod work;
 

@@ -6,6 +6,7 @@
 //! | `head` | what is about to run: sizes, settings, tables of ids |
 //! | `progress` | what is being worked on |
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
+//! | `shape` | how the reference state meets what was wanted |
 //! | `closing`, `verdicts`, `cautions` | the end of a run |
 //! | `freeze` | the brief with what was found written in |
 //! | `report` | what reading the brief told |
@@ -21,6 +22,7 @@ mod outcome;
 mod parts;
 mod progress;
 mod report;
+mod shape;
 mod state;
 mod verdicts;
 

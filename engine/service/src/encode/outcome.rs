@@ -11,15 +11,22 @@ use v1::run_response::Event;
 use super::closing::Noted;
 use super::parts::{count, event, first_ids};
 use super::progress::way;
-use super::{doubts, failure, state};
+use super::{doubts, failure, shape, state};
 use crate::decode::{REFERENCE, Work, reasons};
 
 /// Loose nodes that are listed.
 const LOOSE_NODES: usize = 1000;
 
 /// The reference state: beginning, arrays, findings, summary.
+///
+/// `history`: every iteration, also where there is no state.
 #[must_use]
-pub fn reference(work: &Work, plan: &Plan, found: &Result<ReferenceOutcome, ShapeError>) -> Vec<v1::RunResponse> {
+pub fn reference(
+    work: &Work,
+    plan: &Plan,
+    found: &Result<ReferenceOutcome, ShapeError>,
+    history: &[IterationReport],
+) -> Vec<v1::RunResponse> {
     let begin = v1::CaseBegin {
         case: REFERENCE.to_owned(),
         in_words: work.reference_in_words(),
@@ -29,11 +36,14 @@ pub fn reference(work: &Work, plan: &Plan, found: &Result<ReferenceOutcome, Shap
     if let Ok(reference) = found {
         let lengths = &reference.state.unstressed_lengths;
         messages.extend(state::arrays(&plan.brief().net, REFERENCE, &reference.result, lengths));
-        messages.extend(state::history(REFERENCE, &reference.history));
+    }
+    messages.extend(state::history(REFERENCE, history));
+    if let Ok(reference) = found {
+        messages.extend(shape::report(&reference.report));
     }
     let findings = reference_findings(work, plan, found);
     messages.extend(findings.into_iter().map(|finding| event(Event::Finding(finding))));
-    messages.push(event(Event::CaseSummary(reference_summary(plan, found))));
+    messages.push(event(Event::CaseSummary(reference_summary(plan, found, history))));
     messages
 }
 
@@ -43,20 +53,28 @@ pub(super) fn reference_findings(
     found: &Result<ReferenceOutcome, ShapeError>,
 ) -> Vec<v1::Finding> {
     match found {
-        Ok(reference) => doubts::of_state(work, &plan.brief().net, REFERENCE, &reference.result),
+        Ok(reference) => {
+            let mut findings = doubts::of_state(work, &plan.brief().net, REFERENCE, &reference.result);
+            findings.extend(doubts::targets_unmet(work, &reference.report));
+            findings
+        }
         Err(error) => vec![no_answer(REFERENCE, &failure::of_shape(&plan.brief().net, error).1)],
     }
 }
 
 /// The closing words of the reference state.
-pub(super) fn reference_summary(plan: &Plan, found: &Result<ReferenceOutcome, ShapeError>) -> v1::CaseSummary {
+pub(super) fn reference_summary(
+    plan: &Plan,
+    found: &Result<ReferenceOutcome, ShapeError>,
+    history: &[IterationReport],
+) -> v1::CaseSummary {
     match found {
         Ok(reference) => {
             let mut summary = summary(&plan.brief().net, REFERENCE, &reference.result, reference);
             summary.set_outcome(v1::CaseOutcome::Answered);
             summary.set_way(way(reference.report.way));
             summary.load_factor = 1.0;
-            summary.iterations = iterations(&reference.history);
+            summary.iterations = iterations(history);
             summary.factorisations = reference.report.iterations;
             summary
         }
@@ -66,6 +84,7 @@ pub(super) fn reference_summary(plan: &Plan, found: &Result<ReferenceOutcome, Sh
                 case: REFERENCE.to_owned(),
                 outcome: outcome.into(),
                 failure: Some(failure),
+                iterations: iterations(history),
                 ..v1::CaseSummary::default()
             }
         }
