@@ -1,6 +1,7 @@
 //! The reference state, from rules to a net that stands.
 
 use std::ops::ControlFlow;
+use std::sync::Arc;
 
 use nalgebra::Vector3;
 
@@ -51,7 +52,7 @@ pub fn find(
     let net = analysis.structure().net();
     assert_eq!(prestress.rules.len(), net.segments().len(), "one rule a segment");
     let parts = Parts::new(net, prestress)?;
-    let loads = ShapeLoads::new(net, actions, &prestress.under)?;
+    let mut loads = ShapeLoads::new(net, actions, &prestress.under)?;
     let nowhere = |nodes: &mut dyn Iterator<Item = NodeId>| -> Vec<String> {
         let missing = nodes.filter(|n| net.nodes()[n.index()].position.is_none());
         missing.map(|n| net.node_name(n).to_owned()).collect()
@@ -81,7 +82,7 @@ pub fn find(
     };
     let wanted = Wanted {
         parts: &parts,
-        loads: &loads,
+        loads: &mut loads,
         rows,
         hold: &prestress.hold,
     };
@@ -92,9 +93,48 @@ pub fn find(
 /// What a search is after.
 struct Wanted<'a> {
     parts: &'a Parts,
-    loads: &'a ShapeLoads,
+    loads: &'a mut ShapeLoads,
     rows: Rows,
     hold: &'a [NodeId],
+}
+
+/// Rounds in which force densities of families are fitted to the lengths of the first shape.
+const FIRST_ROUNDS: usize = 4;
+
+/// About where the nodes will be, for whoever has to know before the shape is searched for (m): where they were given,
+/// or, if some were not, where force densities would put them without loads.
+///
+/// # Errors
+/// [`ShapeError`] if not even this can be told; the search then fails for the same reason.
+pub fn first_shape(net: &Arc<Net>, prestress: &Prestress) -> Result<Vec<Vector3<f64>>, ShapeError> {
+    let given: Vec<Vector3<f64>> = net.nodes().iter().filter_map(|n| n.position).collect();
+    if given.len() == net.nodes().len() {
+        return Ok(given);
+    }
+    let parts = Parts::new(net, prestress)?;
+    if prestress.hold.iter().any(|h| net.nodes()[h.index()].position.is_none()) {
+        let held = prestress
+            .hold
+            .iter()
+            .filter(|h| net.nodes()[h.index()].position.is_none());
+        return Err(ShapeError::HeldWithoutPosition {
+            nodes: names(net, &held.copied().collect::<Vec<_>>()),
+        });
+    }
+    let analysis = if prestress.hold.is_empty() {
+        Analysis::new(Arc::clone(net))
+    } else {
+        Analysis::of(Structure::keeping(Arc::clone(net), &prestress.hold))
+    };
+    let observe = &mut |_: &IterationReport| ControlFlow::Continue(());
+    let mut first = start(&analysis, &parts, observe)?;
+    for _ in 0..FIRST_ROUNDS {
+        let (soft, unloaded) = (softened(&parts, &first.densities), ShapeLoads::none(net));
+        let mut search = Search::new(&analysis, &soft, &unloaded, observe);
+        first.positions = search.balanced(first.positions, &[])?.positions;
+        fit(net, &parts, &first.positions, &mut first.densities);
+    }
+    Ok(first.positions)
 }
 
 /// What the search came to.
@@ -132,6 +172,7 @@ fn shape(
         hold,
     } = wanted;
     let start = start(analysis, parts, observe)?;
+    loads.place(net, &start.positions);
     let mut search = Search::new(analysis, parts, loads, observe);
     search.rows = rows;
     search.iterations = start.iterations;
@@ -206,33 +247,51 @@ fn start(
     let mut iterations = 0;
     let some_density = parts.of.iter().any(|part| !matches!(part, Part::Elastic(_)));
     if given.len() < net.nodes().len() && some_density {
-        let mut sorted: Vec<f64> = (parts.of.iter())
-            .filter_map(|part| match part {
-                Part::Density(q) if *q != 0.0 => Some(q.abs()),
-                Part::Family(family) => Some(densities[*family].abs()),
-                _ => None,
-            })
-            .collect();
-        sorted.sort_by(f64::total_cmp);
-        let typical = sorted.get(sorted.len() / 2).copied().unwrap_or(1.0);
-        let soft = Parts {
-            of: (parts.of.iter())
-                .map(|part| match part {
-                    Part::Density(q) => Part::Density(q.abs()),
-                    Part::Family(family) => Part::Density(densities[*family].abs()),
-                    // Soft, so that ropes of given length hardly shape the start.
-                    Part::Elastic(_) => Part::Density(1e-2 * typical),
-                    Part::Balance => Part::Balance,
-                })
-                .collect(),
-            families: Vec::new(),
-        };
+        let soft = softened(parts, &densities);
         let unloaded = ShapeLoads::none(net);
         let mut search = Search::new(analysis, &soft, &unloaded, observe);
         search.check_held()?;
         positions = search.balanced(positions, &[])?.positions;
         iterations = search.iterations;
     }
+    fit(net, parts, &positions, &mut densities);
+    Ok(Start {
+        positions,
+        densities,
+        iterations,
+    })
+}
+
+/// The parts of a net without loads that stands whatever its forces are: densities alone, none of them negative.
+fn softened(parts: &Parts, densities: &[f64]) -> Parts {
+    let mut sorted: Vec<f64> = (parts.of.iter())
+        .filter_map(|part| match part {
+            Part::Density(q) if *q != 0.0 => Some(q.abs()),
+            Part::Family(family) => Some(densities[*family].abs()),
+            _ => None,
+        })
+        .collect();
+    sorted.sort_by(f64::total_cmp);
+    let typical = sorted.get(sorted.len() / 2).copied().unwrap_or(1.0);
+    Parts {
+        of: (parts.of.iter())
+            .map(|part| match part {
+                Part::Density(q) => Part::Density(q.abs()),
+                Part::Family(family) => Part::Density(densities[*family].abs()),
+                // Soft, so that ropes of given length hardly shape the start.
+                Part::Elastic(_) => Part::Density(1e-2 * typical),
+                Part::Balance => Part::Balance,
+            })
+            .collect(),
+        families: Vec::new(),
+    }
+}
+
+/// Force densities of the families that give them the wanted mean tension at these lengths.
+fn fit(net: &Net, parts: &Parts, positions: &[Vector3<f64>], densities: &mut [f64]) {
+    let given: Vec<Vector3<f64>> = net.nodes().iter().filter_map(|n| n.position).collect();
+    let middle = given.iter().sum::<Vector3<f64>>() / (given.len().max(1) as f64);
+    let size = given.iter().fold(0.0, |m: f64, x| m.max((x - middle).norm()));
     let length = |e: &usize| {
         let [i, j] = net.segments()[*e].ends.map(NodeId::index);
         (positions[j] - positions[i]).norm()
@@ -246,11 +305,6 @@ fn start(
             *density = wanted / mean;
         }
     }
-    Ok(Start {
-        positions,
-        densities,
-        iterations,
-    })
 }
 
 /// Refuses a shape of which nodes hang on slack ropes alone, or both ends of a member coincide.

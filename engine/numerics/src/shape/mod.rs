@@ -1,5 +1,6 @@
 //! A state to start from: force densities, wanted tensions and other targets, given lengths, and members left to balance.
 
+mod areas;
 mod balance;
 mod error;
 mod fights;
@@ -23,7 +24,7 @@ pub(crate) mod words;
 mod tests;
 
 pub use error::{ForceLeft, ShapeError};
-pub use find::find;
+pub use find::{find, first_shape};
 pub use gate::Found;
 pub use given::{Adjustable, Prestress, PrestressRule, SagMeasure, ShapeTarget, Wish};
 pub use report::{BalanceReport, Fight, Quantity, ShapeReport, Target, Unmet, WITHIN};

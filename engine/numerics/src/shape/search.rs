@@ -1,11 +1,12 @@
-//! Positions that balance given force densities, elastic members of given length and loads that depend on lengths.
+//! Positions that balance given force densities, elastic members of given length and loads that depend on lengths and areas.
 //!
 //! ```text
 //! r(x) = p(x) − Σ f_e − S (x − rest) = 0
 //! f_e = q_e d_e                       force density q, given or for the time being
 //! f_e = T(l_e) n_e                    member of given unstressed length
 //! f_e = N_e n_e                       member left to balance, N as last found
-//! p   = p0 + ½ Σ (w L0 + v plan)      L0 = l / (1 + N/EA), plan = length in the x-y plane
+//! p   = p0 + ½ Σ (w L0 + v plan) + Σ (u A)_corner    L0 = l / (1 + N/EA), plan = length in the x-y plane,
+//!                                     A = area of a panel, or its area on plan
 //! ```
 //!
 //! The matrix `K` of the forces is symmetric; the part `P` of loads that depend on lengths is not, and small. Systems
@@ -52,7 +53,7 @@ pub(super) struct Point {
     pub(super) out_of_balance: Vec<Vector3<f64>>,
     residual: Vec<f64>,
     worst: (f64, Option<NodeId>),
-    largest_force: f64,
+    pub(super) largest_force: f64,
 }
 
 /// The search and its room.
@@ -174,6 +175,7 @@ impl<'a, 'o> Search<'a, 'o> {
             point.axial_forces.push(axial);
             point.unstressed.push(unstressed);
         }
+        self.loads.add_on_panels(net, &mut point);
         for elastic in net.elastic_supports() {
             for (row, node) in elastic.nodes().iter().enumerate() {
                 let force: Vector3<f64> = (elastic.nodes().iter().zip(elastic.rest()).enumerate())

@@ -12,7 +12,8 @@ use super::findings::{Findings, Path};
 use super::names::{Names, Thing};
 use super::net::MemberDraft;
 use super::numbers::{
-    COORDINATE, LENGTH_TARGET, MEAN_TENSION, Of, Quantity, RADIUS, SAG, SAG_NORMAL, TENSION, UNSTRESSED_LENGTH, WEIGHT,
+    COORDINATE, CURVATURE_RADIUS, LENGTH_TARGET, MEAN_TENSION, Of, Quantity, SAG, SAG_NORMAL, TENSION,
+    UNSTRESSED_LENGTH, WEIGHT,
 };
 use super::prestress::Context;
 use super::reasons;
@@ -427,7 +428,7 @@ impl Readers<'_, '_, '_> {
     }
 
     fn radii(&self, wish: &v1::RadiusTarget, of: Of<'_>, at: &Path<'_>, findings: &mut Findings) -> Vec<Wish> {
-        let radius = findings.number(&at.field("radius_m"), of, &RADIUS, wish.radius_m);
+        let radius = findings.number(&at.field("radius_m"), of, &CURVATURE_RADIUS, wish.radius_m);
         let stretches = self.stretches(&wish.on, &wish.parts, CABLES, of, at, findings);
         let net = self.context.net;
         if let Some(short) = stretches.iter().find(|segments| segments.len() < 2) {

@@ -7,6 +7,7 @@ mod grids;
 mod properties;
 mod published;
 mod sensitivity;
+mod skins;
 mod targets;
 mod tent;
 
