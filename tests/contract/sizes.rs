@@ -115,6 +115,7 @@ fn state(net: &Net) -> ReferenceOutcome {
             passed: true,
             ..Audit::default()
         },
+        certificate: None,
     };
     ReferenceOutcome {
         case: Case {

@@ -5,6 +5,7 @@ use nalgebra::Vector3;
 use super::Cause;
 use crate::check::CaseDigest;
 use crate::equilibrium::audit::Audit;
+use crate::equilibrium::certificate::Certificate;
 use crate::equilibrium::{IterationReport, Solution, SolveError, Termination};
 use crate::load::Case;
 use crate::model::{NodeId, ReferenceState, SegmentId};
@@ -61,6 +62,8 @@ pub struct StateResult {
     pub loose_nodes: Vec<NodeId>,
     /// What the independent routine found.
     pub audit: Audit,
+    /// How far the state can be from the true one; `None` where it is no answer, or nothing can be said.
+    pub certificate: Option<Certificate>,
 }
 
 impl StateResult {

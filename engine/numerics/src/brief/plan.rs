@@ -7,6 +7,7 @@ use super::cause::{Stop, cause_of_error, cause_of_stop};
 use super::state::{Bare, state_result};
 use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Task};
 use crate::check::{CaseDigest, worst_ratio};
+use crate::equilibrium::certificate::{Certificate, certificate};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
 use crate::load::Case;
 use crate::shape::{self, Found, ShapeError};
@@ -76,7 +77,8 @@ impl Plan {
             axial_forces: &state.axial_forces,
             loose_nodes: &[],
         };
-        let result = state_result(&brief.net, &case, &state.positions, &bare);
+        let mut result = state_result(&brief.net, &case, &state.positions, &bare);
+        result.certificate = self.certificate(&case, &bare);
         Ok(ReferenceOutcome {
             state,
             case,
@@ -123,7 +125,10 @@ impl Plan {
                 };
                 // The last good state carries a share of the load; it is told under the loads that it carries.
                 let carried = case.scaled(&reference.state.unstressed_lengths, solution.load_factor);
-                let result = state_result(net, &carried, &reference.state.positions, &bare);
+                let mut result = state_result(net, &carried, &reference.state.positions, &bare);
+                if solution.termination == Termination::Converged {
+                    result.certificate = self.certificate(&carried, &bare);
+                }
                 let cause = match solution.termination {
                     Termination::Converged | Termination::Cancelled => None,
                     _ => Some(cause_of_stop(
@@ -149,6 +154,12 @@ impl Plan {
                 error,
             },
         }
+    }
+
+    /// How far a state of `case` can be from the true one.
+    fn certificate(&self, case: &Case, state: &Bare<'_>) -> Option<Certificate> {
+        certificate(&self.analysis, case, state.positions, state.axial_forces)
+            .expect("a case that was solved fits the net")
     }
 
     /// Worst ratio, in one case, of the checks that cover it (–); `None` where none of them judges anything.

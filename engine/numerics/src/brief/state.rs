@@ -73,6 +73,7 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
         support_forces,
         loose_nodes: state.loose_nodes.to_vec(),
         audit: audit::audit(net, case, positions, state.axial_forces),
+        certificate: None,
     }
 }
 

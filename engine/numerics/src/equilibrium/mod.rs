@@ -7,11 +7,13 @@
 //! interior point, then carried forces as a polish               pure tension, hard starts
 //! load steps, relaxation                                        with struts, hard starts
 //! stability      can the balanced state move freely?            with struts
+//! certificate    how far can it be from the true state?         after it is found
 //! ```
 
 mod analysis;
 pub mod audit;
 mod carried;
+pub mod certificate;
 pub mod existence;
 mod interior_point;
 mod line_search;
