@@ -24,7 +24,7 @@ pub fn freeze(
     plan: &Plan,
     found: &Result<ReferenceOutcome, ShapeError>,
 ) -> Result<Vec<v1::FreezeResponse>, String> {
-    let summary = outcome::reference_summary(plan, found);
+    let summary = outcome::reference_summary(work, plan, found);
     let reference = match found {
         Ok(reference) if reference.result.audit.passed => reference,
         Ok(_) => {

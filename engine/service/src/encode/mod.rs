@@ -6,12 +6,14 @@
 //! | `head` | what is about to run: sizes, settings, tables of ids |
 //! | `progress` | what is being worked on |
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
+//! | `certificate` | how far a state can be from the true one |
 //! | `closing`, `verdicts`, `cautions` | the end of a run |
 //! | `freeze` | the brief with what was found written in |
 //! | `report` | what reading the brief told |
 //! | `parts` | how much fits a message |
 
 mod cautions;
+mod certificate;
 mod closing;
 mod doubts;
 mod failure;

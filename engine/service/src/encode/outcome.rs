@@ -11,7 +11,7 @@ use v1::run_response::Event;
 use super::closing::Noted;
 use super::parts::{count, event, first_ids};
 use super::progress::way;
-use super::{doubts, failure, state};
+use super::{certificate, doubts, failure, state};
 use crate::decode::{REFERENCE, Work, reasons};
 
 /// Loose nodes that are listed.
@@ -33,7 +33,7 @@ pub fn reference(work: &Work, plan: &Plan, found: &Result<ReferenceOutcome, Shap
     }
     let findings = reference_findings(work, plan, found);
     messages.extend(findings.into_iter().map(|finding| event(Event::Finding(finding))));
-    messages.push(event(Event::CaseSummary(reference_summary(plan, found))));
+    messages.push(event(Event::CaseSummary(reference_summary(work, plan, found))));
     messages
 }
 
@@ -49,10 +49,14 @@ pub(super) fn reference_findings(
 }
 
 /// The closing words of the reference state.
-pub(super) fn reference_summary(plan: &Plan, found: &Result<ReferenceOutcome, ShapeError>) -> v1::CaseSummary {
+pub(super) fn reference_summary(
+    work: &Work,
+    plan: &Plan,
+    found: &Result<ReferenceOutcome, ShapeError>,
+) -> v1::CaseSummary {
     match found {
         Ok(reference) => {
-            let mut summary = summary(&plan.brief().net, REFERENCE, &reference.result, reference);
+            let mut summary = summary(work, &plan.brief().net, REFERENCE, &reference.result, reference);
             summary.set_outcome(v1::CaseOutcome::Answered);
             summary.set_way(way(reference.report.way));
             summary.load_factor = 1.0;
@@ -94,7 +98,7 @@ pub fn case(
         } => {
             messages.extend(state::arrays(net, name, result, &reference.state.unstressed_lengths));
             messages.extend(state::history(name, &solution.history));
-            let mut closing = summary(net, name, result, reference);
+            let mut closing = summary(work, net, name, result, reference);
             closing.set_way(way(solution.way));
             closing.load_factor = solution.load_factor;
             closing.iterations = iterations(&solution.history);
@@ -174,7 +178,7 @@ fn no_answer(case: &str, failure: &v1::Failure) -> v1::Finding {
 }
 
 /// What a state says of itself.
-fn summary(net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutcome) -> v1::CaseSummary {
+fn summary(work: &Work, net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutcome) -> v1::CaseSummary {
     let name = |node: usize| net.nodes()[node].name.clone();
     let movement = doubts::largest_movement(state);
     let lowest = lowest_tension_share(net, state, reference);
@@ -196,6 +200,10 @@ fn summary(net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutc
         }),
         loose_nodes: first_ids(state.loose_nodes.iter().map(|node| net.node_name(*node)), LOOSE_NODES),
         loose_nodes_total: count(state.loose_nodes.len()),
+        certificate: state
+            .certificate
+            .as_ref()
+            .map(|found| certificate::of(work, net, found)),
         ..v1::CaseSummary::default()
     }
 }
