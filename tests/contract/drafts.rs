@@ -89,8 +89,6 @@ fn the_realistic_draft_is_refused_part_by_part() {
         "net.cables[b2].slides",
         "actions[snow].loads[0].on_plan",
         "actions[wind-lift].loads[0].on_surface",
-        "factors",
-        "combinations[2]",
         "checks[0].resistance",
         "checks[1].service_stress",
         "checks[3].buckling",

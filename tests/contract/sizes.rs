@@ -92,6 +92,7 @@ fn state(net: &Net) -> ReferenceOutcome {
         stretches: vec![1.0001; segments],
         slack: vec![false; segments],
         lengths: vec![1.0; segments],
+        removed: Vec::new(),
         unstressed_lengths: state.unstressed_lengths.clone(),
         support_forces: supported
             .map(|node| SupportForce {

@@ -186,10 +186,10 @@ impl Problem {
             actions: actions.to_vec(),
             cases: vec![CaseGiven {
                 name: "case".to_owned(),
-                sets: Vec::new(),
                 factors: vec![(0, 1.0), (1, 1.0)],
-                load_steps: None,
+                ..CaseGiven::default()
             }],
+            effects: Vec::new(),
             checks: Vec::new(),
             settings: Settings {
                 tolerance: 1e-14,

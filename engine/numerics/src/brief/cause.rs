@@ -111,8 +111,6 @@ pub(super) struct Stop<'a> {
     pub(super) reference: &'a ReferenceState,
     /// The case that was wanted.
     pub(super) case: &'a Case,
-    /// The share of it that the last state carries.
-    pub(super) carried: &'a Case,
     pub(super) solution: &'a Solution,
     /// The last state under the share that it carries.
     pub(super) result: &'a StateResult,
@@ -125,12 +123,11 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
     let Stop {
         reference,
         case,
-        carried,
         solution,
         result,
         limit,
     } = *stop;
-    let worst = culprits(net, carried, result);
+    let worst = culprits(net, result);
     let worst_node = worst.first().map(|(node, _)| *node);
     let slack_cables = |near: Option<NodeId>| -> Vec<String> {
         let touches = |index: &usize| near.is_none_or(|n| net.segments()[*index].ends.contains(&n));
@@ -188,15 +185,11 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
     }
 }
 
-fn culprits(net: &Net, case: &Case, result: &StateResult) -> Vec<(NodeId, Culprit)> {
-    let mut exerted = case.nodal_forces.clone();
-    for (index, segment) in net.segments().iter().enumerate() {
-        let [i, j] = segment.ends.map(NodeId::index);
-        if result.lengths[index] > 0.0 {
-            let chord = result.positions[j] - result.positions[i];
-            let pull = chord * (result.axial_forces[index] / result.lengths[index]);
-            exerted[i] += pull;
-            exerted[j] -= pull;
+fn culprits(net: &Net, result: &StateResult) -> Vec<(NodeId, Culprit)> {
+    let mut exerted = result.loads.clone();
+    for (pulls, segment) in result.pulls.iter().zip(net.segments()) {
+        for (pull, end) in pulls.iter().zip(segment.ends) {
+            exerted[end.index()] += pull;
         }
     }
     for support in &result.support_forces {
@@ -243,6 +236,9 @@ pub(super) fn cause_of_error(net: &Net, positions: &[Vector3<f64>], error: &Solv
         },
         SolveError::Loading(LoadingError::Node { node, what, value }) => LikelyCause::Numbers {
             what: format!("the {what} of \"{}\" would be {value:e}", net.node_name(*node)),
+        },
+        SolveError::Loading(LoadingError::Panel { panel, value }) => LikelyCause::Numbers {
+            what: format!("the pressure on \"{}\" would be {value:e}", net.panels()[*panel].name),
         },
         SolveError::Loading(error @ LoadingError::WrongLength { .. }) => LikelyCause::Numbers {
             what: error.to_string(),

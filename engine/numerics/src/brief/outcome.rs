@@ -42,12 +42,18 @@ pub struct StateResult {
     pub displacements: Vec<Vector3<f64>>,
     /// Axial force of every segment (N).
     pub axial_forces: Vec<f64>,
+    /// Force of every segment on its first and its second node (N).
+    pub pulls: Vec<[Vector3<f64>; 2]>,
     /// Stretch `l/a` of every segment; zero where it is taken out.
     pub stretches: Vec<f64>,
-    /// Whether a cable segment is slack: `l ≤ a`, or taken out.
+    /// Whether a cable segment is slack: `l ≤ a`; one that is taken out is not.
     pub slack: Vec<bool>,
-    /// Current length of every segment (m).
+    /// Current length of every segment (m), along the curve where it hangs.
     pub lengths: Vec<f64>,
+    /// Unstressed length that lies in every segment (m): its share where the rope slides.
+    pub lying: Vec<f64>,
+    /// Load on every node (N), pressure where the panels are now; without what acts along hanging ropes.
+    pub loads: Vec<Vector3<f64>>,
     /// Unstressed length at the reference temperature (m), by [`crate::model::Net::n_lengths`].
     pub unstressed_lengths: Vec<f64>,
     /// Support forces: rigid supports in node order, then elastic ones by their nodes; a node with both appears once.
@@ -60,6 +66,8 @@ pub struct StateResult {
     pub support_sum: Vector3<f64>,
     /// Nodes whose place is not determined, because only slack ropes lead to them.
     pub loose_nodes: Vec<NodeId>,
+    /// Segments that are taken out.
+    pub removed: Vec<SegmentId>,
     /// What the independent routine found.
     pub audit: Audit,
     /// How far the state can be from the true one; `None` where it is no answer, or nothing can be said.
@@ -72,15 +80,16 @@ impl StateResult {
     pub fn digest(&self, answered: bool) -> CaseDigest {
         let mut support_forces = vec![None; self.positions.len()];
         for support in &self.support_forces {
-            support_forces[support.node.index()] = Some(support.force.norm());
+            support_forces[support.node.index()] = Some(support.force);
         }
         CaseDigest {
             answered,
             audited: answered && self.audit.passed,
             axial_forces: self.axial_forces.clone(),
-            movements: self.displacements.iter().map(|d| d.norm()).collect(),
+            displacements: self.displacements.clone(),
             support_forces,
             loose_nodes: self.loose_nodes.clone(),
+            removed: self.removed.clone(),
         }
     }
 }

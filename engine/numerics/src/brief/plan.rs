@@ -7,7 +7,7 @@ use super::cause::{Stop, cause_of_error, cause_of_stop};
 use super::state::{Bare, state_result};
 use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Task};
 use crate::check::{CaseDigest, worst_ratio};
-use crate::equilibrium::certificate::{Certificate, certificate};
+use crate::equilibrium::certificate::{self, Certificate, certificate};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
 use crate::load::Case;
 use crate::shape::{self, Found, ShapeError};
@@ -33,6 +33,10 @@ impl Plan {
 
     pub(super) fn shared_brief(&self) -> Arc<Brief> {
         Arc::clone(&self.brief)
+    }
+
+    pub(super) fn analysis(&self) -> &Analysis {
+        &self.analysis
     }
 
     /// The work as given.
@@ -75,6 +79,7 @@ impl Plan {
         let bare = Bare {
             positions: &state.positions,
             axial_forces: &state.axial_forces,
+            members: &equilibrium::member_states(self.analysis.structure(), &case, &state),
             loose_nodes: &[],
         };
         let mut result = state_result(&brief.net, &case, &state.positions, &bare);
@@ -107,7 +112,7 @@ impl Plan {
             load_steps: given.load_steps.unwrap_or(settings.load_steps),
             ..*settings
         };
-        let case = Case::new(net, &reference.state, actions, &given.factors);
+        let case = given.case(net, &reference.state, actions);
         let solved = equilibrium::solve(
             &self.analysis,
             &case,
@@ -121,6 +126,7 @@ impl Plan {
                 let bare = Bare {
                     positions: &solution.positions,
                     axial_forces: &solution.axial_forces,
+                    members: &solution.members,
                     loose_nodes: &solution.loose_nodes,
                 };
                 // The last good state carries a share of the load; it is told under the loads that it carries.
@@ -136,7 +142,6 @@ impl Plan {
                         &Stop {
                             reference: &reference.state,
                             case: &case,
-                            carried: &carried,
                             solution: &solution,
                             result: &result,
                             limit: settings.max_iterations,
@@ -158,11 +163,16 @@ impl Plan {
 
     /// How far a state of `case` can be from the true one.
     fn certificate(&self, case: &Case, state: &Bare<'_>) -> Option<Certificate> {
-        certificate(&self.analysis, case, state.positions, state.axial_forces)
-            .expect("a case that was solved fits the net")
+        let found = certificate::State {
+            positions: state.positions,
+            axial_forces: state.axial_forces,
+            members: state.members,
+        };
+        certificate(&self.analysis, case, &found).expect("a case that was solved fits the net")
     }
 
-    /// Worst ratio, in one case, of the checks that cover it (–); `None` where none of them judges anything.
+    /// Worst ratio, in one case or (counted on from the last case) design effect, of the checks that cover it (–); `None`
+    /// where none of them judges anything.
     #[must_use]
     pub fn worst_ratio(&self, reference: &ReferenceOutcome, case: usize, digest: &CaseDigest) -> Option<f64> {
         let (brief, forces) = (&self.brief, &reference.state.axial_forces);

@@ -3,7 +3,8 @@
 use nalgebra::Vector3;
 
 use super::{EndForce, StateResult, SupportForce};
-use crate::equilibrium::audit;
+use crate::element::panel::pressure_forces;
+use crate::equilibrium::{MemberStates, audit};
 use crate::load::Case;
 use crate::model::{AxialLaw, Net, NodeId, SegmentId};
 
@@ -11,6 +12,7 @@ use crate::model::{AxialLaw, Net, NodeId, SegmentId};
 pub(super) struct Bare<'a> {
     pub(super) positions: &'a [Vector3<f64>],
     pub(super) axial_forces: &'a [f64],
+    pub(super) members: &'a MemberStates,
     pub(super) loose_nodes: &'a [NodeId],
 }
 
@@ -18,27 +20,28 @@ pub(super) struct Bare<'a> {
 pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], state: &Bare<'_>) -> StateResult {
     let positions = state.positions;
     let n_segments = net.segments().len();
-    let (mut lengths, mut stretches, mut slack) =
-        (vec![0.0; n_segments], vec![0.0; n_segments], vec![false; n_segments]);
+    let axial_forces = state.axial_forces;
+    let MemberStates { pulls, lengths, lying } = state.members;
+    let (mut stretches, mut slack) = (vec![0.0; n_segments], vec![false; n_segments]);
     // What the members and loads exert on every node.
-    let mut exerted = case.nodal_forces.clone();
-    let mut pulls = vec![Vector3::zeros(); n_segments];
+    let loads = loads(net, case, positions);
+    let mut exerted = loads.clone();
     for (index, segment) in net.segments().iter().enumerate() {
         let [i, j] = segment.ends.map(NodeId::index);
-        let chord = positions[j] - positions[i];
-        let length = chord.norm();
         let strain = segment.section.expansion * case.segments[index].temperature_change;
-        let stress_free = case.unstressed_lengths[segment.length] * (1.0 + strain);
-        lengths[index] = length;
+        let stress_free = lying[index] * (1.0 + strain);
         if !case.removed[index] {
-            stretches[index] = length / stress_free;
+            stretches[index] = lengths[index] / stress_free;
         }
-        slack[index] = segment.law == AxialLaw::TensionOnly && (case.removed[index] || length <= stress_free);
-        if length > 0.0 {
-            pulls[index] = chord * (state.axial_forces[index] / length);
-        }
-        exerted[i] += pulls[index];
-        exerted[j] -= pulls[index];
+        let is_slack = match segment.law {
+            AxialLaw::TwoWay => false,
+            // Where the rope slides, rounding of the share must not decide.
+            _ if net.slides(SegmentId::new(index)) => axial_forces[index] == 0.0,
+            AxialLaw::TensionOnly => lengths[index] <= stress_free,
+        };
+        slack[index] = !case.removed[index] && is_slack;
+        exerted[i] += pulls[index][0];
+        exerted[j] += pulls[index][1];
     }
     let support_forces = support_forces(net, case, positions, exerted);
     let mut supported = vec![false; net.nodes().len()];
@@ -51,7 +54,7 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
         .enumerate()
         .flat_map(|(index, segment)| {
             let [from, to] = segment.ends;
-            [(from, pulls[index]), (to, -pulls[index])].map(|(node, force)| EndForce {
+            [(from, pulls[index][0]), (to, pulls[index][1])].map(|(node, force)| EndForce {
                 node,
                 segment: SegmentId::new(index),
                 force,
@@ -62,19 +65,51 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
     StateResult {
         displacements: positions.iter().zip(reference).map(|(x, from)| x - from).collect(),
         positions: positions.to_vec(),
-        axial_forces: state.axial_forces.to_vec(),
+        axial_forces: axial_forces.to_vec(),
+        pulls: pulls.clone(),
         stretches,
         slack,
-        lengths,
+        lengths: lengths.clone(),
+        lying: lying.clone(),
         unstressed_lengths: case.unstressed_lengths.clone(),
         end_forces,
-        load_sum: case.nodal_forces.iter().sum(),
+        load_sum: loads.iter().sum::<Vector3<f64>>() + hanging_load(net, case),
         support_sum: support_forces.iter().map(|s| s.force).sum(),
         support_forces,
         loose_nodes: state.loose_nodes.to_vec(),
-        audit: audit::audit(net, case, positions, state.axial_forces),
+        removed: (0..n_segments)
+            .filter(|e| case.removed[*e])
+            .map(SegmentId::new)
+            .collect(),
+        audit: audit::audit_members(net, case, positions, axial_forces, state.members),
         certificate: None,
+        loads,
     }
+}
+
+/// Sum of the loads along hanging ropes (N): it reaches the nodes by the ends of these.
+fn hanging_load(net: &Net, case: &Case) -> Vector3<f64> {
+    let segments = net.segments().iter().enumerate();
+    segments
+        .filter(|(index, segment)| segment.hangs && !case.removed[*index])
+        .map(|(index, segment)| case.segments[index].per_length * case.unstressed_lengths[segment.length])
+        .sum()
+}
+
+/// Load on every node (N): dead forces, and pressure where the panels are now.
+fn loads(net: &Net, case: &Case, positions: &[Vector3<f64>]) -> Vec<Vector3<f64>> {
+    let mut loads = case.nodal_forces.clone();
+    let mut corners = Vec::new();
+    for (panel, pressure) in net.panels().iter().zip(&case.pressures) {
+        corners.clear();
+        corners.extend(panel.corners.iter().map(|n| positions[n.index()]));
+        let mut forces = vec![Vector3::zeros(); corners.len()];
+        pressure_forces(&corners, *pressure, &mut forces);
+        for (node, force) in panel.corners.iter().zip(forces) {
+            loads[node.index()] += force;
+        }
+    }
+    loads
 }
 
 /// `exerted`: loads and member forces on every node (N).

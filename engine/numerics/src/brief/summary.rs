@@ -2,7 +2,7 @@
 
 use std::fmt;
 
-use super::ReferenceOutcome;
+use super::{FactorRules, Loss, ReferenceOutcome};
 use crate::check::{CheckResult, Envelope, Facts, Verdict};
 use crate::model::{Net, SegmentId};
 
@@ -77,6 +77,10 @@ pub struct Summary {
     pub checks: Vec<CheckResult>,
     /// Envelope of every segment over the reference state and the sound cases.
     pub envelopes: Vec<Envelope>,
+    /// What the loss of each member that some case takes out came to, in the order in which cases name them.
+    pub losses: Vec<Loss>,
+    /// Which way to factor a predominant action governs, where design effects stand beside cases.
+    pub factor_rules: Option<FactorRules>,
     /// What must be shown.
     pub cautions: Vec<Caution>,
 }

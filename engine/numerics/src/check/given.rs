@@ -39,7 +39,7 @@ pub struct Check {
     pub struts: Vec<StrutId>,
     /// Nodes it covers (movement, anchor pull).
     pub nodes: Vec<NodeId>,
-    /// Cases it covers, by index.
+    /// Cases it covers, by index; design effects are counted on from the last case, see `brief::Brief`.
     pub cases: Vec<usize>,
 }
 

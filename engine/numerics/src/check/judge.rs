@@ -1,7 +1,9 @@
 //! One check judged: member by member, over its cases.
 
+use nalgebra::Vector3;
+
 use super::{Check, CheckKind, Share, Verdict};
-use crate::model::{CableId, Net, NodeId, SegmentId, StrutId};
+use crate::model::{AxialLaw, CableId, Member, Net, NodeId, SegmentId, StrutId};
 
 /// The little that checks need of a case, so that its full fields need not be kept.
 #[derive(Clone, Debug, Default, PartialEq)]
@@ -12,12 +14,14 @@ pub struct CaseDigest {
     pub audited: bool,
     /// Axial force of every segment (N); empty if there is no answer.
     pub axial_forces: Vec<f64>,
-    /// Distance of every node from its place in the reference state (m); empty if there is no answer.
-    pub movements: Vec<f64>,
-    /// Size of the support force at every node (N), `None` where there is no support; empty if there is no answer.
-    pub support_forces: Vec<Option<f64>>,
+    /// Movement of every node from its place in the reference state (m); empty if there is no answer.
+    pub displacements: Vec<Vector3<f64>>,
+    /// Support force on the net at every node (N), `None` where there is no support; empty if there is no answer.
+    pub support_forces: Vec<Option<Vector3<f64>>>,
     /// Nodes whose place, and so whose movement, is not determined.
     pub loose_nodes: Vec<NodeId>,
+    /// Segments that are taken out in this case: their members are not judged in it, and have no part in envelopes.
+    pub removed: Vec<SegmentId>,
 }
 
 impl CaseDigest {
@@ -25,6 +29,75 @@ impl CaseDigest {
     #[must_use]
     pub fn is_sound(&self) -> bool {
         self.answered && self.audited
+    }
+
+    /// A design effect: `Σ w E` over sound cases, quantity by quantity, for the rules that a standard states on effects.
+    /// It is no state: nothing is in balance in it.
+    ///
+    /// A rope can not push, so that its sum counts from zero. What is taken out in one of the cases is taken out of the
+    /// effect; a place that one of them leaves open stays open. `None` unless every case is sound.
+    ///
+    /// `terms`: weight (–) and case, at least one.
+    #[must_use]
+    pub fn design_effect(net: &Net, terms: &[(f64, &Self)]) -> Option<Self> {
+        let (_, first) = terms.first()?;
+        if !terms.iter().all(|(_, digest)| digest.is_sound()) {
+            return None;
+        }
+        let sum =
+            |value: &dyn Fn(&Self) -> f64| terms.iter().map(|(weight, digest)| weight * value(digest)).sum::<f64>();
+        let vector = |value: &dyn Fn(&Self) -> Vector3<f64>| {
+            (terms.iter()).fold(Vector3::zeros(), |sum, (weight, digest)| sum + *weight * value(digest))
+        };
+        let mut effect = Self {
+            answered: true,
+            audited: true,
+            axial_forces: (0..first.axial_forces.len())
+                .map(|e| sum(&|digest| digest.axial_forces[e]))
+                .collect(),
+            displacements: (0..first.displacements.len())
+                .map(|node| vector(&|digest| digest.displacements[node]))
+                .collect(),
+            support_forces: (0..first.support_forces.len())
+                .map(|node| {
+                    first.support_forces[node]?;
+                    Some(vector(&|digest| {
+                        digest.support_forces[node].unwrap_or_else(Vector3::zeros)
+                    }))
+                })
+                .collect(),
+            loose_nodes: terms
+                .iter()
+                .flat_map(|(_, digest)| digest.loose_nodes.iter().copied())
+                .collect(),
+            removed: terms
+                .iter()
+                .flat_map(|(_, digest)| digest.removed.iter().copied())
+                .collect(),
+        };
+        effect.removed.sort_unstable();
+        effect.removed.dedup();
+        effect.loose_nodes.sort_unstable();
+        effect.loose_nodes.dedup();
+        for (force, segment) in effect.axial_forces.iter_mut().zip(net.segments()) {
+            if segment.law == AxialLaw::TensionOnly {
+                *force = force.max(0.0);
+            }
+        }
+        for segment in &effect.removed {
+            effect.axial_forces[segment.index()] = 0.0;
+        }
+        Some(effect)
+    }
+
+    /// Whether a member is taken out in this case.
+    fn lacks(&self, net: &Net, part: Covered) -> bool {
+        let is_of = |segment: &SegmentId| match (net.segments()[segment.index()].member, part) {
+            (Member::Cable(of), Covered::Cable(cable)) => of == cable,
+            (Member::Strut(of), Covered::Strut(strut)) => of == strut,
+            _ => false,
+        };
+        self.removed.iter().any(is_of)
     }
 }
 
@@ -46,7 +119,7 @@ pub struct Judgement {
     pub of: Covered,
     /// Its segment that governs, for a cable.
     pub segment: Option<SegmentId>,
-    /// The case that governs, by index.
+    /// The case that governs, by index; from the number of cases on, a design effect.
     pub case: usize,
     /// What is demanded: tension times factor (N), tension over reference tension (–), movement (m) or force (N).
     pub demand: f64,
@@ -143,6 +216,7 @@ impl CheckTally {
         }
         for (part, standing) in &mut self.parts {
             let worst = match standing {
+                _ if digest.lacks(net, *part) => continue,
                 Standing::NotJudged => continue,
                 Standing::Open => None,
                 Standing::Worst(worst) => Some(*worst),
@@ -196,6 +270,7 @@ pub fn worst_ratio(
     }
     check
         .covered()
+        .filter(|part| !digest.lacks(net, *part))
         .filter_map(|part| judge_part(net, reference_forces, check.kind, part, case, digest))
         .map(|judgement| judgement.ratio)
         .reduce(f64::max)
@@ -244,9 +319,11 @@ fn judge_part(
             if digest.loose_nodes.contains(&node) {
                 return None;
             }
-            below(digest.movements[node.index()], limit)
+            below(digest.displacements[node.index()].norm(), limit)
         }
-        (CheckKind::AnchorPull { limit }, Covered::Node(node)) => below(digest.support_forces[node.index()]?, limit),
+        (CheckKind::AnchorPull { limit }, Covered::Node(node)) => {
+            below(digest.support_forces[node.index()]?.norm(), limit)
+        }
         _ => None,
     }
 }
@@ -344,7 +421,7 @@ mod tests {
     fn movement_of_a_loose_node_is_not_judged() {
         let mut digests = [digest(&[1.0; 3]), digest(&[1.0; 3])];
         digests[1].loose_nodes = vec![NodeId::new(1)];
-        digests[1].movements[0] = 0.03;
+        digests[1].displacements[0] = Vector3::z() * -0.03;
         let check = Check {
             cables: Vec::new(),
             nodes: vec![NodeId::new(0), NodeId::new(1)],
@@ -359,8 +436,8 @@ mod tests {
     #[test]
     fn anchor_pull_needs_a_support() {
         let mut digests = [digest(&[1.0; 3]), digest(&[1.0; 3])];
-        digests[0].support_forces[0] = Some(900.0);
-        digests[1].support_forces[0] = Some(800.0);
+        digests[0].support_forces[0] = Some(Vector3::x() * 900.0);
+        digests[1].support_forces[0] = Some(Vector3::x() * 800.0);
         let check = Check {
             cables: Vec::new(),
             nodes: vec![NodeId::new(0), NodeId::new(1)],

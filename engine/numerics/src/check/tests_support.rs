@@ -59,8 +59,9 @@ pub(super) fn digest(cable_forces: &[f64; 3]) -> CaseDigest {
         answered: true,
         audited: true,
         axial_forces: cable_forces.iter().copied().chain([-500.0]).collect(),
-        movements: vec![0.01; 3],
-        support_forces: vec![Some(10.0), None, Some(10.0)],
+        displacements: vec![Vector3::z() * 0.01; 3],
+        support_forces: vec![Some(Vector3::x() * 10.0), None, Some(Vector3::x() * 10.0)],
         loose_nodes: Vec::new(),
+        removed: Vec::new(),
     }
 }

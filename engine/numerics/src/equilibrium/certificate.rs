@@ -17,8 +17,9 @@
 //! positions   |x_i − x_i*| ≤ √(2 g (D_lo⁻¹)_ii),   D_lo = Cᵀ diag(q_lo) C,   q_lo = t/(a (1 + t/EA)),   t = max(0, T − √(2 k g))
 //! ```
 //!
-//! With struts the energy is not convex. Then their end forces are taken as dead loads, and the bounds tell of the ropes
-//! under these; but where all struts pull they are as good as ropes.
+//! Ropes that slide without friction and ropes that hang have convex energies of their own (`gap`). What has none is
+//! taken as a dead load as found: struts that push, pressure that follows, ropes that slide against friction. The bounds
+//! then tell of the rest under these forces. Where all struts pull they are as good as ropes.
 //!
 //! # Reference
 //! Rockafellar 1970 for the duality; the bounds are derived in the text above.
@@ -31,9 +32,9 @@ use std::fmt;
 use nalgebra::{Matrix3, Vector3};
 
 use super::run::anchor_entries;
-use super::{Analysis, existence};
+use super::{Analysis, MemberStates, existence};
 use crate::assembly::{Loading, LoadingError, Response, Structure};
-use crate::element::axial_block;
+use crate::element::{Bar, Hanging, Sliding, axial_block};
 use crate::load::Case;
 use crate::model::{AxialLaw, NodeId};
 use places::Places;
@@ -51,6 +52,12 @@ const CORRECTIONS: usize = 3;
 pub enum Condition {
     /// Forces of struts.
     Struts,
+    /// Pressure on panels where they are.
+    Pressure,
+    /// Forces of ropes that slide against friction.
+    Friction,
+    /// Forces of ropes that slide and change their section or temperature on the way.
+    ChangingSection,
 }
 
 impl fmt::Display for Condition {
@@ -58,6 +65,13 @@ impl fmt::Display for Condition {
         f.write_str(match self {
             Self::Struts => {
                 "with the forces of the struts as found: another state with other strut forces is not excluded"
+            }
+            Self::Pressure => "with the pressure on the panels where they are: it would follow other shapes",
+            Self::Friction => {
+                "with the forces of ropes that slide against friction as found: they depend on how the load came on"
+            }
+            Self::ChangingSection => {
+                "with the forces of ropes as found that slide and change section or temperature on the way"
             }
         })
     }
@@ -124,64 +138,128 @@ impl Certificate {
     }
 }
 
+/// A state as told.
+#[derive(Clone, Copy, Debug)]
+pub struct State<'a> {
+    /// Position of every node (m), held nodes where the case puts them.
+    pub positions: &'a [Vector3<f64>],
+    /// Axial force of every segment (N); what it differs from the law at these positions is added to its bound.
+    pub axial_forces: &'a [f64],
+    /// Ends of the segments: read where their forces are a condition.
+    pub members: &'a MemberStates,
+}
+
 /// Certifies a state of a case.
 ///
-/// `case`: with the loads that the state carries. `positions`: one a node (m), held nodes where the case puts them.
-/// `axial_forces`: as told, one a segment (N); what they differ from the law at these positions is added to their bounds.
-///
-/// `None` where no forces in balance were found, so that nothing can be said, and for nets that are not made of straight
-/// members between clamped nodes.
+/// `case`: with the loads that the state carries. `None` where no forces in balance were found, so that nothing can be
+/// said.
 ///
 /// # Errors
 /// [`LoadingError`] if the case does not fit the net.
-pub fn certificate(
-    analysis: &Analysis,
-    case: &Case,
-    positions: &[Vector3<f64>],
-    axial_forces: &[f64],
-) -> Result<Option<Certificate>, LoadingError> {
+pub fn certificate(analysis: &Analysis, case: &Case, state: &State<'_>) -> Result<Option<Certificate>, LoadingError> {
     let structure = analysis.structure();
-    if !structure.net().is_plain() || case.pressures.iter().any(|p| *p != 0.0) {
-        return Ok(None);
-    }
-    let loading = Loading::new(structure, case, &case.unstressed_lengths, 1.0)?;
-    let mut response = Response::new(structure);
-    structure.response_into(&loading, positions, &mut response);
-    let state = State {
-        analysis,
-        positions,
-        response: &response,
-        told: axial_forces,
+    let mut loading = Loading::new(structure, case, &case.unstressed_lengths, 1.0)?;
+    let mut conditions = freeze_special(structure, &mut loading, state);
+    let worth = |conditions: &[Condition]| match conditions {
+        [] => Kind::Full,
+        some => Kind::Conditional(some.to_vec()),
     };
-    let is_strut = |e: &usize| loading.bars[*e].law == AxialLaw::TwoWay;
+    let of = |loading: &Loading, kind: Kind| {
+        let mut response = Response::new(structure);
+        structure.response_into(loading, state.positions, &mut response);
+        Work {
+            analysis,
+            loading,
+            response: &response,
+            state,
+        }
+        .certificate(kind)
+    };
+    let is_strut = |e: &usize| loading.bars[*e].law == AxialLaw::TwoWay && loading.bars[*e].is_present();
     let struts: Vec<usize> = (0..loading.bars.len()).filter(is_strut).collect();
-    if struts.iter().all(|e| response.axial_forces[*e] > 0.0)
-        && let Some(certificate) = state.certificate(&loading, Kind::Full)
+    if struts.iter().all(|e| state.axial_forces[*e] > 0.0)
+        && let Some(certificate) = of(&loading, worth(&conditions))
         && struts
             .iter()
-            .all(|e| response.axial_forces[*e] > certificate.force_bounds[*e])
+            .all(|e| state.axial_forces[*e] > certificate.force_bounds[*e])
     {
         return Ok(Some(certificate));
     }
     if struts.is_empty() {
         return Ok(None);
     }
-    let frozen = with_frozen_struts(structure, &loading, &response);
-    Ok(state.certificate(&frozen, Kind::Conditional(vec![Condition::Struts])))
+    freeze(structure, &mut loading, state, struts.into_iter());
+    conditions.insert(0, Condition::Struts);
+    Ok(of(&loading, worth(&conditions)))
 }
 
-/// The same loading with the end forces of all struts as dead loads.
-fn with_frozen_struts(structure: &Structure, loading: &Loading, response: &Response) -> Loading {
-    let mut frozen = loading.clone();
-    for (index, segment) in structure.net().segments().iter().enumerate() {
-        if loading.bars[index].law == AxialLaw::TwoWay {
-            frozen.bars[index] = crate::element::Bar::absent();
-            let force = along(response, index) * response.axial_forces[index];
-            frozen.nodal_forces[segment.ends[0].index()] += force;
-            frozen.nodal_forces[segment.ends[1].index()] -= force;
+/// Makes dead loads of segments.
+fn freeze(structure: &Structure, loading: &mut Loading, state: &State<'_>, segments: impl Iterator<Item = usize>) {
+    for e in segments {
+        loading.bars[e] = Bar::absent();
+        for (node, pull) in structure.net().segments()[e].ends.iter().zip(&state.members.pulls[e]) {
+            loading.nodal_forces[node.index()] += pull;
         }
     }
-    frozen
+}
+
+/// Makes dead loads of what has no energy of its own, and bars of hanging ropes without load.
+fn freeze_special(structure: &Structure, loading: &mut Loading, state: &State<'_>) -> Vec<Condition> {
+    let Some(mut special) = loading.special.take() else {
+        return Vec::new();
+    };
+    let mut conditions = Vec::new();
+    if !special.pressures.is_empty() {
+        structure.add_pressure_forces(&special.pressures, state.positions, &mut loading.nodal_forces);
+        special.pressures.clear();
+        conditions.push(Condition::Pressure);
+    }
+    let net = structure.net();
+    let mut kept = Vec::new();
+    for piece in std::mem::take(&mut special.sliding) {
+        let reach = &net.reaches()[net.segments()[piece.first].length];
+        let condition = if reach.friction.iter().any(|mu| *mu > 0.0) {
+            Condition::Friction
+        } else if is_uniform(&piece) {
+            kept.push(piece);
+            continue;
+        } else {
+            Condition::ChangingSection
+        };
+        freeze(structure, loading, state, piece.segments());
+        if !conditions.contains(&condition) {
+            conditions.push(condition);
+        }
+    }
+    special.sliding = kept;
+    let straight = &special.straight;
+    special.hanging.retain(|hanging| {
+        let loaded = hanging.catenary.load != Vector3::zeros();
+        if !loaded {
+            loading.bars[hanging.segment] = straight[hanging.segment];
+        }
+        loaded
+    });
+    if !(special.sliding.is_empty() && special.hanging.is_empty()) {
+        loading.special = Some(special);
+    }
+    conditions
+}
+
+/// Whether a piece has one stiffness and one temperature: then its energy is that of one long spring.
+fn is_uniform(piece: &Sliding) -> bool {
+    piece.axial_stiffness.iter().all(|ea| *ea == piece.axial_stiffness[0])
+        && piece.expansion.iter().all(|theta| *theta == piece.expansion[0])
+}
+
+/// A piece without friction as one long spring, `a = θ L0`, `k = EA/a`.
+fn spring(piece: &Sliding) -> Bar {
+    Bar::new(
+        AxialLaw::TensionOnly,
+        piece.axial_stiffness[0],
+        piece.unstressed_length,
+        piece.expansion[0] - 1.0,
+    )
 }
 
 /// Direction of a segment (unit); zero where it has no length.
@@ -204,21 +282,44 @@ struct Balanced {
     left: Vec<Vector3<f64>>,
 }
 
-struct State<'a> {
+/// One look at a state: a loading that has a convex energy, and the answer to it.
+struct Work<'a> {
     analysis: &'a Analysis,
-    positions: &'a [Vector3<f64>],
+    loading: &'a Loading,
     response: &'a Response,
-    told: &'a [f64],
+    state: &'a State<'a>,
 }
 
-impl State<'_> {
-    fn certificate(&self, loading: &Loading, kind: Kind) -> Option<Certificate> {
-        let structure = self.analysis.structure();
-        let balanced = self.balance(loading)?;
-        let (mut gap, mut strain_energy) = (0.0, 0.0);
+impl Work<'_> {
+    fn sliding(&self) -> impl Iterator<Item = (&Sliding, f64)> {
+        let pieces = self.loading.special.iter().flat_map(|special| &special.sliding);
+        pieces.zip(self.response.special.tensions.iter().copied())
+    }
+
+    fn hanging(&self) -> impl Iterator<Item = (usize, &Hanging)> {
+        let segments = self.loading.special.iter().flat_map(|special| &special.hanging);
+        segments.map(|h| h.segment).zip(&self.response.special.hanging)
+    }
+
+    /// Stiffness of every segment against a change of its force (N/m); zero where that is none of ours.
+    fn stiffnesses(&self) -> Vec<f64> {
+        let mut stiffnesses: Vec<f64> = self.loading.bars.iter().map(|bar| bar.stiffness).collect();
+        for (piece, _) in self.sliding() {
+            stiffnesses[piece.segments()].fill(spring(piece).stiffness);
+        }
+        for hanging in self.loading.special.iter().flat_map(|special| &special.hanging) {
+            let rope = &hanging.catenary;
+            stiffnesses[hanging.segment] = rope.axial_stiffness / rope.stress_free_length;
+        }
+        stiffnesses
+    }
+
+    fn certificate(&self, kind: Kind) -> Option<Certificate> {
+        let (structure, loading) = (self.analysis.structure(), self.loading);
+        let balanced = self.balance()?;
+        let mut gap = 0.0;
         for (index, bar) in loading.bars.iter().enumerate().filter(|(_, bar)| bar.is_present()) {
             let (length, force) = (self.response.lengths[index], self.response.axial_forces[index]);
-            strain_energy += bar.energy(length);
             gap += gap::of_bar(
                 bar,
                 length,
@@ -227,16 +328,26 @@ impl State<'_> {
                 &balanced.beyond[index],
             );
         }
+        for (piece, tension) in self.sliding() {
+            let segments = piece
+                .segments()
+                .map(|e| (self.response.lengths[e], along(self.response, e), balanced.beyond[e]));
+            gap += gap::of_sliding(&spring(piece), tension, segments);
+        }
+        for (segment, hanging) in self.hanging() {
+            gap += hanging.gap(&balanced.beyond[segment]);
+        }
         gap += gap::of_elastic_supports(structure.net(), &balanced.movement);
+        let stiffnesses = self.stiffnesses();
 
-        let width = width(loading, self.positions);
+        let width = width(loading, self.state.positions);
         let left: f64 = balanced.left.iter().map(Vector3::norm).sum();
         let mut certificate = Certificate {
             kind,
             gap: gap + left * width,
             leftover: left * width,
             reach: Reach::Width,
-            strain_energy,
+            strain_energy: self.response.strain_energy(loading),
             certified: false,
             force_bounds: Vec::new(),
             position_bounds: Vec::new(),
@@ -246,16 +357,20 @@ impl State<'_> {
         }
         let places = Places::new(
             self.analysis,
-            |e| self.least_density(loading, e, certificate.gap),
+            &self.least_densities(&stiffnesses, certificate.gap),
             structure.net().elastic_supports(),
         );
         self.tighten(&mut certificate, gap, &balanced.left, &places, width);
         certificate.certified = certificate.gap <= CERTIFIED * certificate.strain_energy;
         let g = certificate.gap;
-        certificate.force_bounds = (loading.bars.iter().enumerate())
-            .map(|(e, bar)| {
-                let told = (self.told[e] - self.response.axial_forces[e]).abs();
-                (2.0 * bar.stiffness * g).sqrt() + told
+        certificate.force_bounds = (stiffnesses.iter().enumerate())
+            .map(|(e, stiffness)| {
+                let told = (self.state.axial_forces[e] - self.response.axial_forces[e]).abs();
+                if *stiffness > 0.0 {
+                    (2.0 * stiffness * g).sqrt() + told
+                } else {
+                    0.0
+                }
             })
             .collect();
         certificate.position_bounds = places
@@ -289,43 +404,71 @@ impl State<'_> {
         }
     }
 
-    /// Lowest force density that a segment can have in the true state (N/m).
-    fn least_density(&self, loading: &Loading, segment: usize, gap: f64) -> f64 {
-        let bar = &loading.bars[segment];
-        let least = self.response.axial_forces[segment] - (2.0 * bar.stiffness * gap).sqrt();
-        if !bar.is_present() || least <= 0.0 {
-            return 0.0;
+    /// Lowest force density that each segment can have in the true state (N/m); zero for sliding ones, which hold a node
+    /// across the rope only.
+    ///
+    /// A hanging rope is a chain of short bars: the inverses of their force densities add up to `a/EA + ∫ dX/T`.
+    fn least_densities(&self, stiffnesses: &[f64], gap: f64) -> Vec<f64> {
+        let off = |e: usize| (2.0 * stiffnesses[e] * gap).sqrt();
+        let mut densities: Vec<f64> = (self.loading.bars.iter().enumerate())
+            .map(|(e, bar)| {
+                let least = self.response.axial_forces[e] - off(e);
+                if bar.is_present() && least > 0.0 {
+                    least / (bar.stress_free_length + least / bar.stiffness)
+                } else {
+                    0.0
+                }
+            })
+            .collect();
+        for (e, hanging) in self.hanging() {
+            let least = hanging.tension_least - off(e);
+            if least > 0.0 {
+                let slenderness = hanging.slenderness * (hanging.tension_least / least);
+                densities[e] = 1.0 / (1.0 / stiffnesses[e] + slenderness);
+            }
         }
-        let a = bar.stress_free_length;
-        least / (a + least / bar.stiffness)
+        densities
+    }
+
+    /// Stiffness of every segment, with a little in every direction, but for the stretch of sliding pieces.
+    fn blocks(&self, smallest: f64) -> Vec<Matrix3<f64>> {
+        let block = |(index, bar): (usize, &Bar)| {
+            let (length, least) = (self.response.lengths[index], smallest * bar.stiffness);
+            if bar.is_present() && bar.is_taut(length) && length > 0.0 {
+                let across = self.response.axial_forces[index] / length;
+                axial_block(bar.stiffness + least, across + least, &along(self.response, index))
+            } else {
+                Matrix3::from_diagonal_element(least)
+            }
+        };
+        let mut blocks: Vec<_> = self.loading.bars.iter().enumerate().map(block).collect();
+        if let Some(special) = &self.loading.special {
+            let (structure, tensions) = (self.analysis.structure(), &self.response.special.tensions);
+            structure.special_blocks(special, self.response, tensions, smallest, &mut blocks);
+        }
+        blocks
     }
 
     /// Corrects the forces of the state until they balance the loads, up to rounding.
-    fn balance(&self, loading: &Loading) -> Option<Balanced> {
-        let structure = self.analysis.structure();
+    fn balance(&self) -> Option<Balanced> {
+        let (structure, loading) = (self.analysis.structure(), self.loading);
         let net = structure.net();
-        let blocks = |smallest: f64| -> Vec<Matrix3<f64>> {
-            let block = |(index, bar): (usize, &crate::element::Bar)| {
-                let (length, least) = (self.response.lengths[index], smallest * bar.stiffness);
-                if bar.is_present() && bar.is_taut(length) && length > 0.0 {
-                    let across = self.response.axial_forces[index] / length;
-                    axial_block(bar.stiffness + least, across + least, &along(self.response, index))
-                } else {
-                    Matrix3::from_diagonal_element(least)
-                }
-            };
-            loading.bars.iter().enumerate().map(block).collect()
-        };
         // Where a part is not held by ropes alone its leftover force counts with the width of the net.
-        let anchors = existence::check_loads_are_held(structure, loading).unwrap_or_default();
+        let bars_only = structure.substitute(loading, self.response);
+        let anchors = existence::check_loads_are_held(structure, &bars_only).unwrap_or_default();
         let anchors = anchor_entries(structure, &anchors);
-        let stiffest = loading.bars.iter().map(|b| b.stiffness).fold(0.0, f64::max);
+        let stiffest = bars_only.bars.iter().map(|b| b.stiffness).fold(0.0, f64::max);
         let stiffest = if stiffest > 0.0 { stiffest } else { 1.0 };
+        let tensions = &self.response.special.tensions;
         let mut factor = self.analysis.new_factor();
         let mut values = vec![0.0; structure.pattern().n_entries()];
         let blocks = SMALLEST_STIFFNESS.into_iter().find_map(|smallest| {
-            let blocks = blocks(smallest);
+            let blocks = self.blocks(smallest);
             structure.tangent_into(&blocks, &mut values);
+            if let Some(special) = &loading.special {
+                let taut = |piece: usize| tensions[piece] > 0.0;
+                structure.add_special_tangent(special, self.response, taut, &mut values);
+            }
             structure.add_elastic_supports(&mut values);
             for (position, share) in &anchors {
                 values[*position] += share * stiffest;
@@ -340,9 +483,10 @@ impl State<'_> {
             left: vec![Vector3::zeros(); net.nodes().len()],
         };
         let mut left = vec![0.0; structure.n_dofs()];
+        let mut step = vec![Vector3::zeros(); net.nodes().len()];
         let mut last = f64::INFINITY;
         for round in 0..=CORRECTIONS {
-            let forces = self.out_of_balance(loading, &balanced);
+            let forces = self.out_of_balance(&balanced);
             structure.dofs().components_into(&forces, &mut left);
             let size = left.iter().map(|r| r * r).sum::<f64>().sqrt();
             if !size.is_finite() {
@@ -355,30 +499,53 @@ impl State<'_> {
             last = size;
             factor.solve_in_place(&mut left);
             structure.dofs().move_nodes(&left, 1.0, &mut balanced.movement);
-            let mut step = vec![Vector3::zeros(); net.nodes().len()];
             structure.dofs().nodal_into(&left, &mut step);
-            for ((beyond, block), segment) in balanced.beyond.iter_mut().zip(&blocks).zip(net.segments()) {
-                let [i, j] = segment.ends.map(NodeId::index);
-                *beyond += block * (step[j] - step[i]);
-            }
+            self.add_forces_of(&step, &blocks, &mut balanced.beyond);
         }
         Some(balanced)
     }
 
+    /// Adds what a movement (m, one a node) makes of the forces of the segments (N).
+    fn add_forces_of(&self, step: &[Vector3<f64>], blocks: &[Matrix3<f64>], beyond: &mut [Vector3<f64>]) {
+        let segments = self.analysis.structure().net().segments();
+        let change = |e: usize| {
+            let [i, j] = segments[e].ends.map(NodeId::index);
+            step[j] - step[i]
+        };
+        for (e, (beyond, block)) in beyond.iter_mut().zip(blocks).enumerate() {
+            *beyond += block * change(e);
+        }
+        let mut slopes = Vec::new();
+        for (piece, tension) in self.sliding().filter(|(_, tension)| *tension > 0.0) {
+            slopes.resize(piece.factors.len(), 0.0);
+            piece.slopes_into(&self.response.lengths[piece.segments()], tension, &mut slopes);
+            let more: f64 = (piece.segments().zip(&slopes))
+                .map(|(e, slope)| slope * along(self.response, e).dot(&change(e)))
+                .sum();
+            for e in piece.segments() {
+                beyond[e] += along(self.response, e) * more;
+            }
+        }
+    }
+
     /// Loads less the corrected forces, one a node (N).
-    fn out_of_balance(&self, loading: &Loading, balanced: &Balanced) -> Vec<Vector3<f64>> {
-        let structure = self.analysis.structure();
+    fn out_of_balance(&self, balanced: &Balanced) -> Vec<Vector3<f64>> {
+        let (structure, loading) = (self.analysis.structure(), self.loading);
         let mut forces = loading.nodal_forces.clone();
-        let moved: Vec<Vector3<f64>> = (self.positions.iter().zip(&balanced.movement))
+        let moved: Vec<Vector3<f64>> = (self.state.positions.iter().zip(&balanced.movement))
             .map(|(x, y)| x + y)
             .collect();
         structure.add_elastic_forces(loading, &moved, &mut forces);
+        if let Some(special) = &loading.special {
+            structure.add_special_forces(special, self.response, &mut forces);
+        }
         for (index, segment) in structure.net().segments().iter().enumerate() {
+            let mut force = balanced.beyond[index];
             if loading.bars[index].is_present() {
-                let force = along(self.response, index) * self.response.axial_forces[index] + balanced.beyond[index];
-                forces[segment.ends[0].index()] += force;
-                forces[segment.ends[1].index()] -= force;
+                force += along(self.response, index) * self.response.axial_forces[index];
             }
+            forces[segment.ends[0].index()] += force;
+            forces[segment.ends[1].index()] -= force;
         }
         forces
     }
@@ -400,7 +567,7 @@ fn width(loading: &Loading, positions: &[Vector3<f64>]) -> f64 {
         low = low.inf(x);
         high = high.sup(x);
     }
-    let longest = (loading.bars.iter().filter(|b| b.is_present()))
+    let longest = (loading.straight_bars().iter().filter(|b| b.is_present()))
         .map(|b| b.stress_free_length)
         .fold(0.0, f64::max);
     if positions.is_empty() {

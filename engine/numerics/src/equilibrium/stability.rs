@@ -7,7 +7,7 @@ use nalgebra::Vector3;
 
 use super::Analysis;
 use super::linear::Factor;
-use crate::assembly::{Loading, Structure};
+use crate::assembly::{Loading, Response, Structure};
 use crate::model::{NodeId, SegmentId};
 
 /// Stiffness below this share of the largest is none: rounding reaches there.
@@ -77,12 +77,24 @@ pub fn free_movement(
     Some(describe(structure, &movement, stiffness))
 }
 
-fn tangent(structure: &Structure, loading: &Loading, positions: &[Vector3<f64>]) -> Vec<f64> {
+/// Exact but for the antisymmetric part of pressure and friction, by the entries of the pattern (N/m).
+pub(super) fn tangent(structure: &Structure, loading: &Loading, positions: &[Vector3<f64>]) -> Vec<f64> {
     let blocks: Vec<_> = (structure.net().segments().iter().zip(&loading.bars))
         .map(|(s, bar)| bar.stiffness_block(&(positions[s.ends[1].index()] - positions[s.ends[0].index()])))
         .collect();
     let mut values = vec![0.0; structure.pattern().n_entries()];
+    let Some(special) = &loading.special else {
+        structure.tangent_into(&blocks, &mut values);
+        structure.add_elastic_supports(&mut values);
+        return values;
+    };
+    let mut blocks = blocks;
+    let mut response = Response::new(structure);
+    structure.response_into(loading, positions, &mut response);
+    let tensions = response.special.tensions.clone();
+    structure.special_blocks(special, &response, &tensions, 0.0, &mut blocks);
     structure.tangent_into(&blocks, &mut values);
+    structure.add_special_tangent(special, &response, |piece| tensions[piece] > 0.0, &mut values);
     structure.add_elastic_supports(&mut values);
     values
 }

@@ -3,7 +3,7 @@
 use nalgebra::Vector3;
 
 use super::{Action, Load, Scope};
-use crate::model::{Net, ReferenceState, SegmentId};
+use crate::model::{Member, Net, ReferenceState, Segment, SegmentId};
 
 /// What a case changes about the segments.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
@@ -28,6 +28,9 @@ pub struct Case {
     pub support_movements: Vec<Vector3<f64>>,
     /// Segments taken out, by index.
     pub removed: Vec<bool>,
+    /// Unstressed length (m) that lies in every segment while nothing slides from where it lay in the reference state, at
+    /// the full load. Read where ropes slide against friction; empty: there is none.
+    pub lying: Vec<f64>,
     /// Pressure on the outer side of every panel (Pa); it stays normal to the panel as that moves. Empty: none.
     pub pressures: Vec<f64>,
 }
@@ -49,15 +52,32 @@ impl Case {
     /// `factors`: index into `actions` and its factor; a factor of zero leaves no trace.
     #[must_use]
     pub fn new(net: &Net, reference: &ReferenceState, actions: &[Action], factors: &[(usize, f64)]) -> Self {
+        Self::changed(net, reference, actions, factors, &[], 0.0)
+    }
+
+    /// The same with members taken out, and with a share of prestress of all ropes on top of that of the actions.
+    ///
+    /// What is taken out carries nothing, and neither its weight nor loads along it act any more.
+    #[must_use]
+    pub fn changed(
+        net: &Net,
+        reference: &ReferenceState,
+        actions: &[Action],
+        factors: &[(usize, f64)],
+        removed: &[Member],
+        prestress_share: f64,
+    ) -> Self {
+        let is_removed = |segment: &Segment| removed.contains(&segment.member);
         let mut case = Self {
             nodal_forces: vec![Vector3::zeros(); net.nodes().len()],
             unstressed_lengths: reference.unstressed_lengths.clone(),
             segments: vec![SegmentLoads::default(); net.segments().len()],
             support_movements: vec![Vector3::zeros(); net.nodes().len()],
-            removed: vec![false; net.segments().len()],
+            removed: net.segments().iter().map(is_removed).collect(),
+            lying: Vec::new(),
             pressures: Vec::new(),
         };
-        let mut shares = vec![0.0; net.segments().len()];
+        let mut shares = vec![prestress_share; net.segments().len()];
         for (action, factor) in factors.iter().filter(|(_, factor)| *factor != 0.0) {
             for load in &actions[*action].loads {
                 case.add(net, reference, load, *factor, &mut shares);
@@ -131,6 +151,9 @@ impl Case {
     }
 
     fn share_between_ends(&mut self, net: &Net, segment: usize, force: Vector3<f64>) {
+        if self.removed[segment] {
+            return;
+        }
         for node in net.segments()[segment].ends {
             self.nodal_forces[node.index()] += 0.5 * force;
         }

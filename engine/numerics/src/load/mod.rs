@@ -2,6 +2,7 @@
 
 mod action;
 mod case;
+pub mod combination;
 
 pub use action::{Action, Load, Scope};
 pub use case::{Case, SegmentLoads};

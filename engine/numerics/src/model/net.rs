@@ -391,6 +391,13 @@ impl Net {
         &self.panels
     }
 
+    /// Whether a segment is part of a reach that slides.
+    #[must_use]
+    pub fn slides(&self, segment: SegmentId) -> bool {
+        let length = self.segments[segment.index()].length;
+        self.reaches.get(length).is_some_and(Reach::slides)
+    }
+
     /// Whether every rope is clamped at every node and every member straight: what is left is straight bars.
     #[must_use]
     pub fn is_plain(&self) -> bool {

@@ -6,7 +6,7 @@
 //! | `reading`, `work` | the whole brief, and what comes of it |
 //! | `findings`, `reasons`, `numbers`, `names` | what is told, where, and why |
 //! | `net`, `places`, `sections`, `supports`, `stretch`, `scope` | the net |
-//! | `prestress`, `wish`, `actions`, `cases`, `checks`, `solving` | what is wanted of it |
+//! | `prestress`, `wish`, `actions`, `factors`, `combinations`, `cases`, `checks`, `solving` | what is wanted of it |
 //! | `plausible`, `frozen`, `accepted` | doubts |
 //! | `limits`, `not_served` | what is refused |
 //!
@@ -16,7 +16,9 @@ mod accepted;
 mod actions;
 mod cases;
 mod checks;
+mod combinations;
 mod digest;
+mod factors;
 mod findings;
 mod frozen;
 mod limits;

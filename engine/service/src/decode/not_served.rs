@@ -22,6 +22,8 @@ pub const SERVED: &[&str] = &[
     "actions.loads.temperature",
     "actions.loads.move",
     "actions.loads.prestress",
+    "factors",
+    "combinations",
     "cases",
     "checks.safety",
     "checks.slackness",
@@ -43,8 +45,6 @@ pub const NOT_SERVED: &[&str] = &[
     "net.roles.adjuster",
     "actions.loads.on_plan",
     "actions.loads.on_surface",
-    "factors",
-    "combinations",
     "checks.resistance",
     "checks.service_stress",
     "checks.buckling",
@@ -88,12 +88,7 @@ pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
     ] {
         elements(list, &ids, &mut part);
     }
-    let combinations = Path::root("combinations");
-    for number in 0..brief.combinations.len() {
-        part(&combinations.number(number), "");
-    }
     for (field, given) in [
-        ("factors", brief.factors.is_some()),
         ("modes", brief.modes.is_some()),
         ("workshop", brief.workshop.is_some()),
         ("keep", brief.keep.is_some()),

@@ -4,11 +4,12 @@ use std::sync::Arc;
 
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::Brief;
-use ropewalk_numerics::model::{CableGiven, Net, NetGiven, NodeGiven, NodeId, StrutGiven, SupportGiven};
+use ropewalk_numerics::model::{CableGiven, Member, Net, NetGiven, NodeGiven, NodeId, StrutGiven, SupportGiven};
 
 use super::actions::Actions;
 use super::cases::{Cases, LARGEST, in_words};
 use super::digest::digest;
+use super::factors::Factors;
 use super::findings::{Findings, Path, is_id};
 use super::names::bad_id;
 use super::net::NetDraft;
@@ -17,7 +18,7 @@ use super::scope::Scopes;
 use super::sections::Sections;
 use super::supports::Supports;
 use super::work::{Names, Work};
-use super::{accepted, checks, frozen, limits, not_served, plausible, prestress, reasons, solving};
+use super::{accepted, checks, combinations, frozen, limits, not_served, plausible, prestress, reasons, solving};
 use crate::config::Limits;
 use crate::words::shown;
 
@@ -148,8 +149,18 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
         findings,
         resolved,
     );
-    let cases = Cases::read(brief, &actions, findings);
-    cases.doubts(&net, &actions, &prestress.under, findings);
+    let context = combinations::Context {
+        net: &net,
+        scopes: &scopes,
+        actions: &actions,
+        under: &prestress.under,
+        limits,
+    };
+    let factors = brief.factors.as_ref();
+    let factors = factors.map(|factors| Factors::read(factors, &actions, findings, resolved));
+    let mut cases = Cases::read(brief, &context, findings, resolved);
+    combinations::read(brief, factors.as_ref(), &context, &mut cases, findings, resolved);
+    cases.doubts(&context, factors.as_ref(), findings);
     let checks = checks::read(
         &brief.checks,
         &checks::Context {
@@ -168,10 +179,14 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
     plausible::unused_data(brief, &net, findings);
     frozen::read(brief.frozen_from.as_ref(), &net, &sections, &prestress, findings);
 
+    let member_name = |member| match member {
+        Member::Cable(cable) => net.cables[cable.index()].message.id.as_str(),
+        Member::Strut(strut) => net.struts[strut.index()].message.id.as_str(),
+    };
     let words = (cases.list.iter())
         .map(|case| v1::CaseInWords {
             case: shown(&case.name),
-            in_words: in_words(case, &brief.actions),
+            in_words: in_words(case, &brief.actions, &member_name),
             sets: first_sets(&case.sets),
         })
         .collect();
@@ -179,13 +194,14 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
     let given = (!findings.has_errors())
         .then(|| net_given(&net, &sections, supports))
         .flatten();
-    let (actions, cases) = (actions.list, cases.list);
+    let (actions, cases, effects) = (actions.list, cases.list, cases.effects);
     let work = given.map(|net| {
         let rest = move |net| Brief {
             net: Arc::new(net),
             prestress,
             actions,
             cases,
+            effects,
             checks,
             settings,
         };

@@ -124,6 +124,24 @@ reasons! {
     NO_MASS,
     /// A case leaves out an action under which the reference state was found.
     CASE_WITHOUT_DEAD_LOAD,
+    /// Factors whose standard, edition and annex are not told.
+    NO_SOURCE,
+    /// A factor is smaller than one that is as a rule the smaller of the two.
+    FACTORS_OUT_OF_ORDER,
+    /// A class of actions that no action has.
+    CLASS_WITHOUT_ACTIONS,
+    /// An action that no rule combines, since its class has no factors.
+    ACTION_NOT_COMBINED,
+    /// A rule that finds nothing to combine.
+    COMBINATION_WITHOUT_ACTIONS,
+    /// How many cases and design effects a rule makes.
+    CASES_MADE,
+    /// A permanent action has a factor below 1 in every case.
+    PERMANENT_BELOW_ONE,
+    /// A permanent action has a factor above 1 in every case.
+    NO_FAVOURABLE_CASE,
+    /// A case takes out every member.
+    REMOVES_ALL,
     /// A change of temperature from a temperature that is not stated.
     NO_REFERENCE_TEMPERATURE,
     /// A check over sets or cases that are not there.

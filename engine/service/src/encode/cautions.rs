@@ -2,6 +2,8 @@
 
 use ropewalk_numerics::brief::Caution;
 
+use crate::decode::Work;
+
 /// Cautions that hold for every result.
 #[must_use]
 pub fn cautions() -> Vec<String> {
@@ -21,9 +23,23 @@ pub fn cautions() -> Vec<String> {
 }
 
 /// Cautions of a run: those of every result, then its own.
-pub(super) fn of_run(own: &[Caution]) -> Vec<String> {
+pub(super) fn of_run(work: &Work, own: &[Caution]) -> Vec<String> {
     let own = own.iter().map(|caution| sentence(&caution.to_string()));
-    cautions().into_iter().chain(own).collect()
+    let factors = work
+        .message
+        .factors
+        .as_ref()
+        .filter(|_| !work.message.combinations.is_empty());
+    let source = factors.map(|factors| match factors.source.trim() {
+        "" => "the factors of combinations come without a source".to_owned(),
+        source => format!("the factors of combinations are those of the brief, from: {source}"),
+    });
+    let effects = (!work.brief.effects.is_empty()).then(|| {
+        "design effects are sums of effects by a rule, quantity by quantity, never states: nothing is in balance in them"
+            .to_owned()
+    });
+    let of_brief = source.into_iter().chain(effects).map(|text| sentence(&text));
+    cautions().into_iter().chain(own).chain(of_brief).collect()
 }
 
 /// The text as a sentence, cut where it is long: lists of ids may be.

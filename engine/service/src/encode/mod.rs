@@ -7,6 +7,7 @@
 //! | `progress` | what is being worked on |
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
 //! | `certificate` | how far a state can be from the true one |
+//! | `effects` | sums of effects, paths of cases, losses of members |
 //! | `closing`, `verdicts`, `cautions` | the end of a run |
 //! | `freeze` | the brief with what was found written in |
 //! | `report` | what reading the brief told |
@@ -16,6 +17,7 @@ mod cautions;
 mod certificate;
 mod closing;
 mod doubts;
+mod effects;
 mod failure;
 mod freeze;
 mod head;
@@ -28,6 +30,7 @@ mod verdicts;
 
 pub use cautions::cautions;
 pub use closing::{Noted, Tally, closing};
+pub use effects::{design_effect, path};
 pub use freeze::freeze;
 pub use head::{id_tables, started};
 pub use outcome::{case, engine_error, reference};

@@ -13,6 +13,7 @@ use super::parts::{count, event, first_ids};
 use super::progress::way;
 use super::{certificate, doubts, failure, state};
 use crate::decode::{REFERENCE, Work, reasons};
+use crate::words::quoted_list;
 
 /// Loose nodes that are listed.
 const LOOSE_NODES: usize = 1000;
@@ -126,6 +127,12 @@ pub fn case(
         },
     };
     closing.case.clone_from(name);
+    let removed = work.removed(case);
+    if let (Some(failure), false) = (closing.failure.as_mut(), removed.is_empty()) {
+        failure
+            .message
+            .push_str(&format!(" Taken out: {}.", quoted_list(removed)));
+    }
     findings.extend(closing.failure.as_ref().map(|failure| no_answer(name, failure)));
     let noted = Noted::new(digest, &findings);
     messages.extend(findings.into_iter().map(|finding| event(Event::Finding(finding))));
@@ -212,8 +219,10 @@ fn summary(work: &Work, net: &Net, case: &str, state: &StateResult, reference: &
 fn lowest_tension_share(net: &Net, state: &StateResult, reference: &ReferenceOutcome) -> Option<(usize, f64)> {
     let before = &reference.state.axial_forces;
     let taut = |segment: &usize| net.segments()[*segment].law == AxialLaw::TensionOnly && before[*segment] > 0.0;
+    let left = |segment: &usize| !state.removed.contains(&SegmentId::new(*segment));
     (0..before.len())
         .filter(taut)
+        .filter(left)
         .map(|segment| (segment, state.axial_forces[segment] / before[segment]))
         .reduce(|lowest, next| if next.1 < lowest.1 { next } else { lowest })
 }

@@ -45,7 +45,7 @@ impl Array<'_> {
     }
 }
 
-fn flat<'a>(vectors: impl IntoIterator<Item = &'a Vector3<f64>>) -> Vec<f64> {
+pub(super) fn flat<'a>(vectors: impl IntoIterator<Item = &'a Vector3<f64>>) -> Vec<f64> {
     vectors
         .into_iter()
         .flat_map(|vector| [vector.x, vector.y, vector.z])
@@ -140,7 +140,7 @@ pub(super) fn history(case: &str, history: &[IterationReport]) -> Vec<v1::RunRes
     messages
 }
 
-fn unit(name: &str) -> &'static str {
+pub(super) fn unit(name: &str) -> &'static str {
     match name.rsplit('_').next() {
         Some("m") => "m",
         Some("n") => "N",

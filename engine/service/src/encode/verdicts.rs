@@ -123,7 +123,7 @@ fn check(work: &Work, plan: &Plan, number: usize, result: &CheckResult) -> v1::C
         message.demand = worst.demand;
         message.limit = worst.limit;
         message.ratio = worst.ratio;
-        message.governing_case.clone_from(&plan.brief().cases[worst.case].name);
+        message.governing_case.push_str(plan.brief().case_name(worst.case));
         let origin = worst
             .segment
             .and_then(|segment| work.breaking_force_origin(segment.index()));

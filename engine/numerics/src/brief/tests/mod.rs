@@ -28,9 +28,8 @@ fn action(name: &str, loads: Vec<Load>) -> Action {
 fn case(name: &str, factors: &[(usize, f64)]) -> CaseGiven {
     CaseGiven {
         name: name.to_owned(),
-        sets: Vec::new(),
         factors: factors.to_vec(),
-        load_steps: None,
+        ..CaseGiven::default()
     }
 }
 
@@ -53,6 +52,7 @@ fn brief(net: Net, prestress: Prestress, actions: Vec<Action>, cases: Vec<CaseGi
         prestress,
         actions,
         cases,
+        effects: Vec::new(),
         checks: Vec::new(),
         settings: Settings::default(),
     }

@@ -25,20 +25,18 @@ struct Axis {
 }
 
 impl Places {
-    /// `density`: least force density of each segment (N/m), by index; zero or more.
+    /// `densities`: least force density of each segment (N/m), zero or more.
     ///
     /// Along each axis the matrix is that of a network of resistances: its inverse has no negative entry, so that the sum
     /// along a row bounds the entry on the diagonal. In a large net one solve with a vector of ones thus serves all nodes.
-    pub(super) fn new(analysis: &Analysis, density: impl Fn(usize) -> f64, elastic: &[ElasticSupport]) -> Self {
-        let net = analysis.structure().net();
-        let densities: Vec<f64> = (0..net.segments().len()).map(density).collect();
+    pub(super) fn new(analysis: &Analysis, densities: &[f64], elastic: &[ElasticSupport]) -> Self {
         let axes = [0, 1, 2].map(|axis| Axis::new(analysis, elastic, axis));
-        let mut flexibilities = along(analysis, &densities, &axes[0]);
+        let mut flexibilities = along(analysis, densities, &axes[0]);
         for axis in 1..3 {
             if axes[axis] == axes[axis - 1] {
                 continue;
             }
-            for (all, one) in flexibilities.iter_mut().zip(along(analysis, &densities, &axes[axis])) {
+            for (all, one) in flexibilities.iter_mut().zip(along(analysis, densities, &axes[axis])) {
                 *all = all.zip(one).map(|(a, b)| a.max(b));
             }
         }

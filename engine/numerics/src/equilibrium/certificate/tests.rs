@@ -2,9 +2,9 @@ use std::ops::ControlFlow;
 use std::sync::Arc;
 
 use super::*;
-use crate::equilibrium::{Settings, Solution, Termination, solve};
+use crate::equilibrium::{Settings, Solution, Termination, members, solve};
 use crate::load::SegmentLoads;
-use crate::model::Net;
+use crate::model::{Net, Slide};
 use crate::test_nets::{Sketch, section};
 
 /// Numbers in (0, 1), the same every time (xorshift).
@@ -41,19 +41,26 @@ impl Problem {
     }
 
     fn solution(&self) -> Solution {
+        self.answer().expect("converges")
+    }
+
+    fn answer(&self) -> Option<Solution> {
         let lengths = &self.case.unstressed_lengths;
         let settings = Settings::default();
         let solution = solve(&self.analysis, &self.case, &self.start, lengths, &settings, &mut |_| {
             ControlFlow::Continue(())
         });
-        let solution = solution.expect("held");
-        assert_eq!(solution.termination, Termination::Converged);
-        solution
+        solution.ok().filter(|s| s.termination == Termination::Converged)
     }
 
     fn certificate(&self, positions: &[Vector3<f64>]) -> Certificate {
-        let response = self.response(positions);
-        certificate(&self.analysis, &self.case, positions, &response.axial_forces)
+        let (loading, response) = (self.loading(), self.response(positions));
+        let state = State {
+            positions,
+            axial_forces: &response.axial_forces,
+            members: &members::of_response(&loading, &response),
+        };
+        certificate(&self.analysis, &self.case, &state)
             .expect("fits")
             .expect("balanced")
     }
@@ -81,6 +88,12 @@ impl Problem {
         let response = self.response(positions);
         let loading = self.loading();
         let mut energy = response.strain_energy(&loading);
+        let hanging = loading.special.iter().flat_map(|special| &special.hanging);
+        for (hanging, at) in hanging.zip(&response.special.hanging) {
+            let first = self.analysis.structure().net().segments()[hanging.segment].ends[0].index();
+            let total = hanging.catenary.load * hanging.catenary.unstressed_length;
+            energy += at.potential - at.strain_energy - total.dot(&(positions[first] - self.start[first]));
+        }
         for ((force, x), from) in loading.nodal_forces.iter().zip(positions).zip(&self.start) {
             energy -= force.dot(&(x - from));
         }
@@ -112,9 +125,17 @@ fn span(net: &Net, start: &[Vector3<f64>], segment: usize) -> f64 {
     (start[j] - start[i]).norm()
 }
 
-/// A saddle on a rim, a corner of which is on springs and one side of which slides; ropes of random stiffness, prestress
-/// and load, some of them too long.
-fn random_saddle(dice: &mut Dice) -> Problem {
+/// What some ropes of a net do.
+#[derive(Clone, Copy, Debug, PartialEq)]
+enum Ropes {
+    AreStraight,
+    Hang,
+    Slide,
+}
+
+/// A saddle on a rim, one side of which may be on springs; ropes of random stiffness, prestress and load, some of them
+/// too long.
+fn random_saddle(dice: &mut Dice, ropes: Ropes) -> Problem {
     let (nx, ny) = (2 + (dice.roll() * 5.0) as usize, 2 + (dice.roll() * 5.0) as usize);
     let rise = dice.between(0.0, 2.0);
     let mut sketch = Sketch::default();
@@ -158,14 +179,28 @@ fn random_saddle(dice: &mut Dice) -> Problem {
             &path.join(" "),
         );
     }
+    for (place, cable) in sketch.given.cables.iter_mut().enumerate() {
+        match ropes {
+            Ropes::AreStraight => {}
+            Ropes::Hang => cable.hangs = place % 2 == 0,
+            Ropes::Slide if place < nx => {}
+            Ropes::Slide => {
+                let slide = |place| Slide { place, friction: 0.0 };
+                cable.slides = (1..cable.path.len() - 1)
+                    .filter(|n| (n + place) % 3 > 0)
+                    .map(slide)
+                    .collect();
+            }
+        }
+    }
     let prestress = 10_f64.powf(dice.between(-3.5, -2.2));
     let load = ea * 10_f64.powf(dice.between(-4.5, -2.8));
     let slack = dice.roll() * 0.2;
     Problem::new(sketch.net(), |net, start| {
-        let lengths = (0..net.segments().len())
-            .map(|e| {
+        let lengths = (net.reaches().iter())
+            .map(|reach| {
                 let strain = if dice.roll() < slack { -0.02 } else { prestress };
-                span(net, start, e) / (1.0 + strain)
+                reach.segments.clone().map(|e| span(net, start, e)).sum::<f64>() / (1.0 + strain)
             })
             .collect();
         let forces = (0..net.nodes().len())
@@ -177,7 +212,13 @@ fn random_saddle(dice: &mut Dice) -> Problem {
                 )
             })
             .collect();
-        case(net, lengths, forces)
+        let mut case = case(net, lengths, forces);
+        for (segment, loads) in net.segments().iter().zip(&mut case.segments) {
+            if segment.hangs {
+                loads.per_length = load * Vector3::new(0.1, 0.0, -dice.between(0.01, 0.3));
+            }
+        }
+        case
     })
 }
 
@@ -222,12 +263,22 @@ fn check_bounds(problem: &Problem, truth: &Solution, positions: &[Vector3<f64>],
 /// No state within the bounds of another may be outside of them.
 #[test]
 fn perturbed_states_of_random_nets_are_within_their_bounds() {
-    let mut dice = Dice(4711);
+    for (ropes, seed) in [(Ropes::AreStraight, 4711), (Ropes::Hang, 4712), (Ropes::Slide, 4713)] {
+        perturbed_states(ropes, &mut Dice(seed));
+    }
+}
+
+fn perturbed_states(ropes: Ropes, dice: &mut Dice) {
     let mut tightness = [Vec::new(), Vec::new(), Vec::new()];
-    let mut bounded = 0;
-    for _ in 0..120 {
-        let problem = random_saddle(&mut dice);
-        let truth = problem.solution();
+    let (mut bounded, mut answered) = (0, 0);
+    for _ in 0..80 {
+        let problem = random_saddle(dice, ropes);
+        // Sliding ropes may leave a node at the end of its segment, where the solver stops.
+        let Some(truth) = problem.answer() else {
+            assert_eq!(ropes, Ropes::Slide);
+            continue;
+        };
+        answered += 1;
         let certificate = problem.certificate(&truth.positions);
         assert!(
             certificate.certified,
@@ -244,11 +295,12 @@ fn perturbed_states_of_random_nets_are_within_their_bounds() {
             check_bounds(&problem, &truth, &positions, &mut tightness);
         }
     }
-    assert!(bounded > 1000);
+    println!("{ropes:?}: {answered} nets, {bounded} nodes with a bound");
+    assert!(bounded > 500 && answered > 40);
     // The bounds are of use: some state uses up a good part of each.
     for shares in tightness {
         let most = shares.iter().copied().fold(0.0, f64::max);
-        println!("largest share of a bound that was used: {most:.3}");
+        println!("{ropes:?}: largest share of a bound that was used: {most:.3}");
         assert!(most > 0.05 && most <= 1.0 + 1e-6, "{most}");
     }
 }
@@ -259,7 +311,7 @@ fn perturbed_states_of_random_nets_are_within_their_bounds() {
 fn dual_value_is_below_the_energy_by_the_gap() {
     let mut dice = Dice(99);
     for _ in 0..30 {
-        let problem = random_saddle(&mut dice);
+        let problem = random_saddle(&mut dice, Ropes::AreStraight);
         let truth = problem.solution();
         let mut positions = truth.positions.clone();
         let structure = problem.analysis.structure();
@@ -267,12 +319,17 @@ fn dual_value_is_below_the_energy_by_the_gap() {
         structure.dofs().move_nodes(&movement, 1.0, &mut positions);
         let (loading, response) = (problem.loading(), problem.response(&positions));
         let state = State {
-            analysis: &problem.analysis,
             positions: &positions,
-            response: &response,
-            told: &response.axial_forces,
+            axial_forces: &response.axial_forces,
+            members: &members::of_response(&loading, &response),
         };
-        let balanced = state.balance(&loading).expect("balanced");
+        let work = Work {
+            analysis: &problem.analysis,
+            loading: &loading,
+            response: &response,
+            state: &state,
+        };
+        let balanced = work.balance().expect("balanced");
         // D = v·(C x0) − p·0 − Σ ψ*(v) − ½ ρ·S⁻¹ρ, all from the start positions x0 where the springs are at rest and the
         // loads have done no work; v = T n + δ balances p with ρ = S (u + y) up to what is left.
         let mut dual = 0.0;
