@@ -182,6 +182,7 @@ impl Problem {
                 mean_tensions: self.mean_tensions,
                 hold: self.hold,
                 under: vec![0],
+                ..Prestress::default()
             },
             actions: actions.to_vec(),
             cases: vec![CaseGiven {
@@ -191,6 +192,7 @@ impl Problem {
             }],
             effects: Vec::new(),
             checks: Vec::new(),
+            diagnosis: None,
             settings: Settings {
                 tolerance: 1e-14,
                 ..Settings::default()

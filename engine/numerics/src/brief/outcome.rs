@@ -2,13 +2,13 @@
 
 use nalgebra::Vector3;
 
-use super::Cause;
-use crate::check::CaseDigest;
+use super::{Cause, StateDiagnosis};
+use crate::check::{Against, Base, CaseDigest};
 use crate::equilibrium::audit::Audit;
 use crate::equilibrium::certificate::Certificate;
 use crate::equilibrium::{IterationReport, Solution, SolveError, Termination};
 use crate::load::Case;
-use crate::model::{NodeId, ReferenceState, SegmentId};
+use crate::model::{Net, NodeId, ReferenceState, SegmentId};
 use crate::shape::ShapeReport;
 
 /// Forces of a support on the net.
@@ -62,8 +62,16 @@ pub struct StateResult {
     pub end_forces: Vec<EndForce>,
     /// Sum of the loads (N).
     pub load_sum: Vector3<f64>,
+    /// Moment of the loads about the origin (N m), at these positions.
+    pub load_moment: Vector3<f64>,
     /// Sum of the support forces (N).
     pub support_sum: Vector3<f64>,
+    /// Moment of the support forces about the origin (N m), at these positions.
+    pub support_moment: Vector3<f64>,
+    /// Area of every panel (m²).
+    pub panel_areas: Vec<f64>,
+    /// Pressure on the outer side of every panel (Pa).
+    pub panel_pressures: Vec<f64>,
     /// Nodes whose place is not determined, because only slack ropes lead to them.
     pub loose_nodes: Vec<NodeId>,
     /// Segments that are taken out.
@@ -72,6 +80,8 @@ pub struct StateResult {
     pub audit: Audit,
     /// How far the state can be from the true one; `None` where it is no answer, or nothing can be said.
     pub certificate: Option<Certificate>,
+    /// What it allows beside bearing its load, where that was asked for.
+    pub diagnosis: Option<Box<StateDiagnosis>>,
 }
 
 impl StateResult {
@@ -87,6 +97,7 @@ impl StateResult {
             audited: answered && self.audit.passed,
             axial_forces: self.axial_forces.clone(),
             displacements: self.displacements.clone(),
+            positions: self.positions.clone(),
             support_forces,
             loose_nodes: self.loose_nodes.clone(),
             removed: self.removed.clone(),
@@ -107,6 +118,21 @@ pub struct ReferenceOutcome {
     pub report: ShapeReport,
     /// Every iteration; of a relaxation its beginning and its end.
     pub history: Vec<IterationReport>,
+    /// States of the cases that checks measure movements from.
+    pub bases: Vec<Base>,
+}
+
+impl ReferenceOutcome {
+    /// What every case is judged against.
+    #[must_use]
+    pub fn against<'a>(&'a self, net: &'a Net) -> Against<'a> {
+        Against {
+            net,
+            axial_forces: &self.state.axial_forces,
+            positions: &self.state.positions,
+            bases: &self.bases,
+        }
+    }
 }
 
 /// What came of one case.

@@ -1,15 +1,17 @@
 //! A brief made ready to be run, and its two kinds of run.
 
+use std::collections::BTreeSet;
 use std::ops::ControlFlow;
 use std::sync::Arc;
 
 use super::cause::{Stop, cause_of_error, cause_of_stop};
+use super::diagnosis::diagnose;
 use super::state::{Bare, state_result};
-use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Task};
-use crate::check::{CaseDigest, worst_ratio};
+use super::{Brief, CaseOutcome, Estimate, LoadPicture, ReferenceOutcome, Task};
+use crate::check::{Base, CaseDigest, CheckKind, worst_ratio};
 use crate::equilibrium::certificate::{self, Certificate, certificate};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
-use crate::load::Case;
+use crate::load::{Case, Surface};
 use crate::shape::{self, Found, ShapeError};
 
 /// A brief with what is worked out once for its net: numbering, pattern, symbolic factorisation.
@@ -84,13 +86,38 @@ impl Plan {
         };
         let mut result = state_result(&brief.net, &case, &state.positions, &bare);
         result.certificate = self.certificate(&case, &bare);
-        Ok(ReferenceOutcome {
+        if let Some(asked) = brief.diagnosis.as_ref().filter(|asked| asked.reference) {
+            result.diagnosis = diagnose(&self.analysis, asked, &case, &result, None).map(Box::new);
+        }
+        let mut outcome = ReferenceOutcome {
             state,
             case,
             result,
             report,
             history,
-        })
+            bases: Vec::new(),
+        };
+        outcome.bases = self.bases(&outcome, observe);
+        Ok(outcome)
+    }
+
+    /// States of the cases that checks measure movements from, each once, in the order of the cases: wanted before the
+    /// first case is judged, whichever cases are run.
+    fn bases(
+        &self,
+        reference: &ReferenceOutcome,
+        observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
+    ) -> Vec<Base> {
+        let named = self.brief.checks.iter().filter_map(|check| match check.kind {
+            CheckKind::Movement { from, .. } => from,
+            _ => None,
+        });
+        let cases: BTreeSet<usize> = named.collect();
+        let solve = |case| Base {
+            case,
+            digest: self.case(reference, case, observe).digest(),
+        };
+        cases.into_iter().map(solve).collect()
     }
 
     /// Solves one case from the reference state.
@@ -105,9 +132,11 @@ impl Plan {
             actions,
             cases,
             settings,
+            diagnosis,
             ..
         } = &*self.brief;
         let given = &cases[case];
+        let asked = diagnosis.as_ref().filter(|asked| asked.cases.contains(&case));
         let settings = &Settings {
             load_steps: given.load_steps.unwrap_or(settings.load_steps),
             ..*settings
@@ -148,6 +177,13 @@ impl Plan {
                         },
                     )),
                 };
+                if let Some(asked) = asked.filter(|_| solution.termination == Termination::Converged) {
+                    let before = reference.result.diagnosis.as_ref();
+                    let before = before
+                        .and_then(|of| of.stiffnesses.first())
+                        .map(|least| least.stiffness);
+                    result.diagnosis = diagnose(&self.analysis, asked, &case, &result, before).map(Box::new);
+                }
                 CaseOutcome::State {
                     solution,
                     result: Box::new(result),
@@ -171,14 +207,30 @@ impl Plan {
         certificate(&self.analysis, case, &found).expect("a case that was solved fits the net")
     }
 
+    /// The panels in the reference state.
+    #[must_use]
+    pub fn surface(&self, reference: &ReferenceOutcome) -> Surface {
+        Surface::new(&self.brief.net, &reference.state.positions)
+    }
+
+    /// What each action does in the reference state, with the factor 1, in order.
+    #[must_use]
+    pub fn load_pictures(&self, reference: &ReferenceOutcome) -> Vec<LoadPicture> {
+        let surface = self.surface(reference);
+        let actions = 0..self.brief.actions.len();
+        actions
+            .map(|action| LoadPicture::new(&self.brief, reference, &surface, action))
+            .collect()
+    }
+
     /// Worst ratio, in one case or (counted on from the last case) design effect, of the checks that cover it (–); `None`
     /// where none of them judges anything.
     #[must_use]
     pub fn worst_ratio(&self, reference: &ReferenceOutcome, case: usize, digest: &CaseDigest) -> Option<f64> {
-        let (brief, forces) = (&self.brief, &reference.state.axial_forces);
-        let checks = brief.checks.iter().filter(|check| check.cases.contains(&case));
+        let against = reference.against(&self.brief.net);
+        let checks = self.brief.checks.iter().filter(|check| check.cases.contains(&case));
         checks
-            .filter_map(|check| worst_ratio(&brief.net, forces, check, case, digest))
+            .filter_map(|check| worst_ratio(&against, check, case, digest))
             .reduce(f64::max)
     }
 }

@@ -2,11 +2,11 @@
 
 use nalgebra::Vector3;
 
-use super::{EndForce, StateResult, SupportForce};
+use super::{EndForce, Resultant, StateResult, SupportForce};
 use crate::element::panel::pressure_forces;
 use crate::equilibrium::{MemberStates, audit};
 use crate::load::Case;
-use crate::model::{AxialLaw, Net, NodeId, SegmentId};
+use crate::model::{AxialLaw, Net, NodeId, SegmentId, fan};
 
 /// Positions and forces as a solver leaves them.
 pub(super) struct Bare<'a> {
@@ -44,6 +44,15 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
         exerted[j] += pulls[index][1];
     }
     let support_forces = support_forces(net, case, positions, exerted);
+    // What hangs from the ends of a rope pulls at them as its load does, forces and moments alike.
+    let hanging = (net.segments().iter().zip(pulls)).filter(|(segment, _)| segment.hangs);
+    let hanging = hanging.flat_map(|(segment, pulls)| {
+        let at = segment.ends.map(|end| &positions[end.index()]);
+        [(&pulls[0], at[0]), (&pulls[1], at[1])]
+    });
+    let of_loads = Resultant::of(loads.iter().zip(positions).chain(hanging));
+    let places = support_forces.iter().map(|s| (&s.force, &positions[s.node.index()]));
+    let of_supports = Resultant::of(places);
     let mut supported = vec![false; net.nodes().len()];
     for support in &support_forces {
         supported[support.node.index()] = true;
@@ -74,7 +83,17 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
         unstressed_lengths: case.unstressed_lengths.clone(),
         end_forces,
         load_sum: loads.iter().sum::<Vector3<f64>>() + hanging_load(net, case),
-        support_sum: support_forces.iter().map(|s| s.force).sum(),
+        load_moment: of_loads.moment,
+        support_sum: of_supports.force,
+        support_moment: of_supports.moment,
+        panel_areas: (net.panels().iter())
+            .map(|panel| fan::area(&panel.places(positions)))
+            .collect(),
+        panel_pressures: if case.pressures.is_empty() {
+            vec![0.0; net.panels().len()]
+        } else {
+            case.pressures.clone()
+        },
         support_forces,
         loose_nodes: state.loose_nodes.to_vec(),
         removed: (0..n_segments)
@@ -84,6 +103,7 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
         audit: audit::audit_members(net, case, positions, axial_forces, state.members),
         certificate: None,
         loads,
+        diagnosis: None,
     }
 }
 
@@ -97,7 +117,7 @@ fn hanging_load(net: &Net, case: &Case) -> Vector3<f64> {
 }
 
 /// Load on every node (N): dead forces, and pressure where the panels are now.
-fn loads(net: &Net, case: &Case, positions: &[Vector3<f64>]) -> Vec<Vector3<f64>> {
+pub(super) fn loads(net: &Net, case: &Case, positions: &[Vector3<f64>]) -> Vec<Vector3<f64>> {
     let mut loads = case.nodal_forces.clone();
     let mut corners = Vec::new();
     for (panel, pressure) in net.panels().iter().zip(&case.pressures) {

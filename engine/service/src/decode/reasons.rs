@@ -108,6 +108,20 @@ reasons! {
     MOVE_WITHOUT_SUPPORT,
     /// A load moves a support along a direction in which it is free.
     MOVE_ALONG_FREE,
+    /// Ropes of a skin cross, touch or lie above each other in plan, so that its meshes cannot be told apart.
+    MESHES_UNCLEAR,
+    /// A skin whose ropes enclose no mesh in plan, and that has no panels given one by one.
+    SKIN_WITHOUT_PANELS,
+    /// A rope that a skin names, of which a stretch bounds none of its panels.
+    ROPE_BOUNDS_NO_PANEL,
+    /// Two panels have the same corners.
+    PANEL_TWICE,
+    /// An outline in plan that crosses itself or encloses nothing.
+    BAD_OUTLINE,
+    /// A load gives different coefficients to a panel that lies in several zones.
+    ZONES_CONTRADICT,
+    /// A load needs a diameter that a section does not give.
+    NO_DIAMETER,
     /// A prestress share takes away all of the tension.
     SHARE_TAKES_ALL,
     /// An action without loads.
@@ -148,6 +162,10 @@ reasons! {
     CHECK_WITHOUT_CASES,
     /// Members that a check covers but cannot judge.
     NOT_JUDGEABLE,
+    /// A standard or edition whose factors are not known here, and not given.
+    EDITION_UNKNOWN,
+    /// A factor that the named edition does not recommend.
+    FACTOR_NOT_OF_EDITION,
     /// Cases, but no check.
     NOTHING_CHECKED,
     /// A value that looks as if it were in another unit.
@@ -170,6 +188,12 @@ reasons! {
     OVER_BREAKING,
     /// A movement so large that units or loads are to be doubted.
     LARGE_MOVEMENT,
+    /// A state with hardly any stiffness left against a movement, or none.
+    LITTLE_STIFFNESS,
+    /// Panels that a pressure on the surface leaves without a value.
+    PANELS_WITHOUT_VALUE,
+    /// A panel that was found in plan has turned over in the reference state.
+    PANEL_TURNED,
     /// The independent routine does not confirm a state.
     AUDIT_FAILED,
     /// A state without an answer.
@@ -182,6 +206,9 @@ pub const OF_RESULTS: &[&str] = &[
     SLACK_IN_REFERENCE,
     OVER_BREAKING,
     LARGE_MOVEMENT,
+    PANELS_WITHOUT_VALUE,
+    PANEL_TURNED,
+    ZONES_CONTRADICT,
     AUDIT_FAILED,
 ];
 

@@ -193,6 +193,15 @@ impl Work {
         self.names.keeps_position[node]
     }
 
+    /// Whether a panel is a mesh of ropes, and none given in the brief one by one.
+    pub(crate) fn is_mesh(&self, panel: usize) -> bool {
+        let id = &self.brief.net.panels()[panel].name;
+        match &self.message.net_source {
+            Some(v1::brief::NetSource::Net(net)) => net.panels.iter().all(|given| given.id != *id),
+            _ => true,
+        }
+    }
+
     /// Where the breaking force of a segment comes from, if the brief tells.
     pub(crate) fn breaking_force_origin(&self, segment: usize) -> Option<&str> {
         Some(self.names.breaking_force_origins[segment].as_str()).filter(|origin| !origin.is_empty())

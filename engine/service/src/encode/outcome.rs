@@ -11,14 +11,14 @@ use v1::run_response::Event;
 use super::closing::Noted;
 use super::parts::{count, event, first_ids};
 use super::progress::way;
-use super::{certificate, doubts, failure, state};
+use super::{certificate, diagnosis, doubts, failure, state, surface};
 use crate::decode::{REFERENCE, Work, reasons};
 use crate::words::quoted_list;
 
 /// Loose nodes that are listed.
 const LOOSE_NODES: usize = 1000;
 
-/// The reference state: beginning, arrays, findings, summary.
+/// The reference state: beginning, arrays, findings, summary; then panels and what each action does.
 #[must_use]
 pub fn reference(work: &Work, plan: &Plan, found: &Result<ReferenceOutcome, ShapeError>) -> Vec<v1::RunResponse> {
     let begin = v1::CaseBegin {
@@ -31,10 +31,14 @@ pub fn reference(work: &Work, plan: &Plan, found: &Result<ReferenceOutcome, Shap
         let lengths = &reference.state.unstressed_lengths;
         messages.extend(state::arrays(&plan.brief().net, REFERENCE, &reference.result, lengths));
         messages.extend(state::history(REFERENCE, &reference.history));
+        messages.extend(diagnosed(&plan.brief().net, REFERENCE, &reference.result));
     }
     let findings = reference_findings(work, plan, found);
     messages.extend(findings.into_iter().map(|finding| event(Event::Finding(finding))));
     messages.push(event(Event::CaseSummary(reference_summary(work, plan, found))));
+    if let Ok(reference) = found {
+        messages.extend(surface::tables(plan, reference));
+    }
     messages
 }
 
@@ -44,7 +48,11 @@ pub(super) fn reference_findings(
     found: &Result<ReferenceOutcome, ShapeError>,
 ) -> Vec<v1::Finding> {
     match found {
-        Ok(reference) => doubts::of_state(work, &plan.brief().net, REFERENCE, &reference.result),
+        Ok(reference) => {
+            let mut findings = doubts::of_state(work, &plan.brief().net, REFERENCE, &reference.result);
+            findings.extend(surface::doubts(work, plan, reference));
+            findings
+        }
         Err(error) => vec![no_answer(REFERENCE, &failure::of_shape(&plan.brief().net, error).1)],
     }
 }
@@ -99,6 +107,7 @@ pub fn case(
         } => {
             messages.extend(state::arrays(net, name, result, &reference.state.unstressed_lengths));
             messages.extend(state::history(name, &solution.history));
+            messages.extend(diagnosed(net, name, result));
             let mut closing = summary(work, net, name, result, reference);
             closing.set_way(way(solution.way));
             closing.load_factor = solution.load_factor;
@@ -184,6 +193,11 @@ fn no_answer(case: &str, failure: &v1::Failure) -> v1::Finding {
     }
 }
 
+fn diagnosed(net: &Net, case: &str, state: &StateResult) -> Vec<v1::RunResponse> {
+    let found = state.diagnosis.as_deref();
+    found.map_or_else(Vec::new, |found| diagnosis::parts(net, case, found))
+}
+
 /// What a state says of itself.
 fn summary(work: &Work, net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutcome) -> v1::CaseSummary {
     let name = |node: usize| net.nodes()[node].name.clone();
@@ -199,6 +213,8 @@ fn summary(work: &Work, net: &Net, case: &str, state: &StateResult, reference: &
         imbalance_allowed_n: audit.allowed,
         load_sum_n: state.load_sum.iter().copied().collect(),
         support_force_sum_n: state.support_sum.iter().copied().collect(),
+        load_moment_nm: state.load_moment.iter().copied().collect(),
+        support_moment_nm: state.support_moment.iter().copied().collect(),
         largest_movement_m: movement.map_or(0.0, |(_, moved)| moved),
         largest_movement_node: movement.map_or_else(String::new, |(node, _)| name(node)),
         lowest_tension_share: lowest.map(|(_, share)| share),
@@ -211,6 +227,9 @@ fn summary(work: &Work, net: &Net, case: &str, state: &StateResult, reference: &
             .certificate
             .as_ref()
             .map(|found| certificate::of(work, net, found)),
+        smallest_stiffness_n_per_m: (state.diagnosis.as_ref())
+            .and_then(|found| found.stiffnesses.first())
+            .map(|least| least.stiffness),
         ..v1::CaseSummary::default()
     }
 }

@@ -105,6 +105,8 @@ pub(super) fn arrays(net: &Net, case: &str, state: &StateResult, reference_lengt
         .iter()
         .map(|end| end.force.z.atan2(end.force.x.hypot(end.force.y)).to_degrees());
     send("end_angle_up_deg", Range::End, 1, up.collect());
+    send("panel_area_m2", Range::Panel, 1, state.panel_areas.clone());
+    send("panel_pressure_pa", Range::Panel, 1, state.panel_pressures.clone());
     messages
 }
 
@@ -143,6 +145,8 @@ pub(super) fn history(case: &str, history: &[IterationReport]) -> Vec<v1::RunRes
 pub(super) fn unit(name: &str) -> &'static str {
     match name.rsplit('_').next() {
         Some("m") => "m",
+        Some("m2") => "m2",
+        Some("pa") => "Pa",
         Some("n") => "N",
         Some("j") => "J",
         Some("deg") => "deg",

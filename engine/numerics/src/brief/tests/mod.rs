@@ -54,6 +54,7 @@ fn brief(net: Net, prestress: Prestress, actions: Vec<Action>, cases: Vec<CaseGi
         cases,
         effects: Vec::new(),
         checks: Vec::new(),
+        diagnosis: None,
         settings: Settings::default(),
     }
 }
@@ -63,8 +64,7 @@ fn densities(net: &Net, density: f64) -> Prestress {
     Prestress {
         rules: vec![PrestressRule::ForceDensity(density); net.segments().len()],
         mean_tensions: Vec::new(),
-        hold: Vec::new(),
-        under: Vec::new(),
+        ..Prestress::default()
     }
 }
 
