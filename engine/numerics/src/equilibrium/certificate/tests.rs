@@ -2,9 +2,9 @@ use std::ops::ControlFlow;
 use std::sync::Arc;
 
 use super::*;
-use crate::equilibrium::{Settings, Solution, Termination, members, solve};
+use crate::equilibrium::{Settings, Solution, Termination, members, solve, stability};
 use crate::load::SegmentLoads;
-use crate::model::{Net, Slide};
+use crate::model::{Net, PanelGiven, Slide};
 use crate::test_nets::{Sketch, section};
 
 /// Numbers in (0, 1), the same every time (xorshift).
@@ -475,4 +475,74 @@ fn a_node_on_slack_ropes_has_no_bound() {
     assert!(certificate.certified);
     assert_eq!(certificate.n_without_bound(), 1);
     assert_eq!(certificate.position_bounds[3], None);
+}
+
+/// Frictionless sliding rope of our own, reckoned in another language: tension and least eigenvalue of the tangent.
+#[test]
+fn known_sliding_rope_is_certified() {
+    let mut sketch = Sketch::default();
+    sketch.held("a", [0.0, 0.0, 0.0]);
+    sketch.node("b", [3.0, 0.5, -1.0]);
+    sketch.node("c", [6.0, -0.2, -1.4]);
+    sketch.held("d", [9.0, 0.0, 0.5]);
+    sketch.cable("rope", section(1e6, 0.0), "a b c d");
+    sketch.given.cables[0].slides = [1, 2].map(|place| Slide { place, friction: 0.0 }).to_vec();
+    let mut problem = Problem::new(sketch.net(), |net, start| {
+        case(net, vec![9.6], vec![Vector3::zeros(); start.len()])
+    });
+    // The loads that this state balances.
+    let response = problem.response(&problem.start);
+    for e in 0..3 {
+        assert!((response.axial_forces[e] - 27571.9668).abs() < 1e-4);
+    }
+    problem.case.nodal_forces = response.out_of_balance.iter().map(|r| -r).collect();
+    let structure = problem.analysis.structure();
+    let values = stability::tangent(structure, &problem.loading(), &problem.start);
+    let full = nalgebra::DMatrix::from(&structure.pattern().full_matrix(&values));
+    assert!((full.symmetric_eigenvalues().min() - 516.6).abs() < 0.05);
+    let certificate = problem.certificate(&problem.start);
+    assert_eq!(certificate.kind, Kind::Full);
+    assert!(certificate.certified, "{certificate:?}");
+    // Its nodes are held across the rope only.
+    assert_eq!(certificate.n_without_bound(), 2);
+}
+
+#[test]
+fn friction_and_pressure_are_conditions() {
+    let mut sketch = Sketch::default();
+    sketch.held("a", [0.0, 0.0, 0.0]);
+    sketch.held("b", [4.0, 0.0, 0.0]);
+    sketch.held("c", [2.0, 2.0, 0.5]);
+    sketch.held("d", [2.0, -2.0, 0.5]);
+    sketch.node("m", [2.0, 0.0, 0.0]);
+    sketch.cable("slides", section(1e6, 0.0), "a m b");
+    sketch.cable("holds", section(1e6, 0.0), "c m d");
+    sketch.given.cables[0].slides = vec![Slide {
+        place: 1,
+        friction: 0.1,
+    }];
+    sketch.given.panels = vec![PanelGiven {
+        name: "sail".to_owned(),
+        corners: [0, 4, 2].map(NodeId::new).to_vec(),
+    }];
+    let problem = Problem::new(sketch.net(), |net, start| {
+        let lengths = [3.99, 2.05, 2.05].to_vec();
+        let mut case = case(net, lengths, vec![Vector3::zeros(); start.len()]);
+        case.pressures = vec![200.0];
+        case
+    });
+    let solution = problem.solution();
+    let state = State {
+        positions: &solution.positions,
+        axial_forces: &solution.axial_forces,
+        members: &solution.members,
+    };
+    let certificate = certificate(&problem.analysis, &problem.case, &state);
+    let certificate = certificate.expect("fits").expect("balanced");
+    let conditions = vec![Condition::Pressure, Condition::Friction];
+    assert_eq!(certificate.kind, Kind::Conditional(conditions));
+    assert!(certificate.certified, "{certificate:?}");
+    // The forces of the rope that slides are a condition, those of the other are bounded.
+    assert_eq!(certificate.force_bounds[0..2], [0.0, 0.0]);
+    assert!(certificate.force_bounds[2] > 0.0);
 }
