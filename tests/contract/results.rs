@@ -13,7 +13,7 @@ use ropewalk_service::encode::{Tally, case, closing, engine_error, id_tables, re
 use serde_json::json;
 use v1::run_response::Event;
 
-use crate::briefs::{changed, first_net, found, terrace, work};
+use crate::briefs::{changed, first_net, found, quince_yard, terrace, work};
 
 /// Every event of a run of some cases.
 pub(crate) fn run(work: &Work, cases: &[usize]) -> Vec<Event> {
@@ -81,6 +81,36 @@ fn closings(events: &[Event]) -> Vec<&v1::CaseSummary> {
         _ => None,
     });
     closings.collect()
+}
+
+/// What is proven is told of every answered state; energies where they are asked for.
+#[test]
+fn certificates_tell_their_energies_on_request_only() {
+    let asked = changed(first_net(), &[("/solving", json!({"energies": true}))]);
+    for (brief, told) in [(first_net(), false), (asked, true)] {
+        let events = run(&work(&brief), &[0]);
+        let closings = closings(&events);
+        assert_eq!(closings.len(), 2);
+        for closing in closings {
+            let certificate = closing.certificate.as_ref().expect("answered");
+            assert!(certificate.certified && certificate.condition.is_empty());
+            assert!(certificate.tension_within_n > 0.0 && certificate.tension_within_n < 1e-3);
+            assert!(["carrying", "bracing"].contains(&certificate.tension_within_member.as_str()));
+            assert!(certificate.position_within_m < 1e-6);
+            assert_eq!(certificate.nodes_without_bound_total, 0);
+            assert_eq!(certificate.gap_j.is_some(), told);
+            assert_eq!(certificate.strain_energy_j.is_some_and(|energy| energy > 0.0), told);
+        }
+    }
+}
+
+#[test]
+fn a_pushing_strut_is_the_condition_of_a_certificate() {
+    let events = run(&work(&quince_yard()), &[]);
+    let reference = closings(&events)[0];
+    let certificate = reference.certificate.as_ref().expect("answered");
+    assert!(certificate.condition.contains("struts"), "{}", certificate.condition);
+    assert!(certificate.certified);
 }
 
 /// Worked numbers of the minimal draft: own Newton solve, stated beside it in the contract's design.

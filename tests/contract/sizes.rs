@@ -123,6 +123,7 @@ fn state(net: &Net) -> ReferenceOutcome {
             passed: true,
             ..Audit::default()
         },
+        certificate: None,
         diagnosis: None,
     };
     ReferenceOutcome {

@@ -2,6 +2,7 @@
 
 use nalgebra::Vector3;
 use ropewalk_numerics::brief::StateResult;
+use ropewalk_numerics::equilibrium::certificate::Kind;
 use ropewalk_numerics::load::{Load, Scope};
 use ropewalk_numerics::model::SegmentId;
 use serde_json::Value;
@@ -286,6 +287,31 @@ fn saddle_with_six_slack_segments() {
         -0.819426025,
         lowest,
         Absolute(1e-8),
+    );
+    let certificate = state.certificate.expect("forces in balance were found");
+    assert_eq!(certificate.kind, Kind::Full);
+    assert!(certificate.certified);
+    assert_eq!(certificate.n_without_bound(), 0);
+    check(
+        "6 x 6 saddle: strain energy of the certificate (J)",
+        source,
+        21326.537356,
+        certificate.strain_energy,
+        Absolute(1e-5),
+    );
+    check(
+        "6 x 6 saddle: gap of the certificate over strain energy",
+        "strong duality: the gap of the answer is zero",
+        0.0,
+        certificate.gap / certificate.strain_energy,
+        Absolute(1e-20),
+    );
+    check(
+        "6 x 6 saddle: bound on tensions (N)",
+        "strong duality: the bound closes on the answer",
+        0.0,
+        certificate.largest_force_bound(),
+        Absolute(1e-4),
     );
 }
 

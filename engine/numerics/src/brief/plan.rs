@@ -9,8 +9,9 @@ use super::diagnosis::diagnose;
 use super::state::{Bare, state_result};
 use super::{Brief, CaseOutcome, Estimate, LoadPicture, ReferenceOutcome, Task};
 use crate::check::{Base, CaseDigest, CheckKind, worst_ratio};
+use crate::equilibrium::certificate::{self, Certificate, certificate};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
-use crate::load::Surface;
+use crate::load::{Case, Surface};
 use crate::shape::{self, Found, ShapeError};
 
 /// A brief with what is worked out once for its net: numbering, pattern, symbolic factorisation.
@@ -95,6 +96,7 @@ impl Plan {
             loose_nodes: &[],
         };
         let mut result = state_result(&brief.net, &case, &state.positions, &bare);
+        result.certificate = self.certificate(&case, &bare);
         if let Some(asked) = brief.diagnosis.as_ref().filter(|asked| asked.reference) {
             result.diagnosis = diagnose(&self.analysis, asked, &case, &result, None).map(Box::new);
         }
@@ -170,6 +172,9 @@ impl Plan {
                 // The last good state carries a share of the load; it is told under the loads that it carries.
                 let carried = case.scaled(&reference.state.unstressed_lengths, solution.load_factor);
                 let mut result = state_result(net, &carried, &reference.state.positions, &bare);
+                if solution.termination == Termination::Converged {
+                    result.certificate = self.certificate(&carried, &bare);
+                }
                 let cause = match solution.termination {
                     Termination::Converged | Termination::Cancelled => None,
                     _ => Some(cause_of_stop(
@@ -201,6 +206,16 @@ impl Plan {
                 error,
             },
         }
+    }
+
+    /// How far a state of `case` can be from the true one.
+    fn certificate(&self, case: &Case, state: &Bare<'_>) -> Option<Certificate> {
+        let found = certificate::State {
+            positions: state.positions,
+            axial_forces: state.axial_forces,
+            members: state.members,
+        };
+        certificate(&self.analysis, case, &found).expect("a case that was solved fits the net")
     }
 
     /// The panels in the reference state.

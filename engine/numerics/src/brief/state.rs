@@ -101,6 +101,7 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
             .map(SegmentId::new)
             .collect(),
         audit: audit::audit_members(net, case, positions, axial_forces, state.members),
+        certificate: None,
         loads,
         diagnosis: None,
     }
