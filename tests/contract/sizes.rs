@@ -89,9 +89,11 @@ fn state(net: &Net) -> ReferenceOutcome {
         positions: state.positions.clone(),
         displacements: vec![Vector3::zeros(); nodes],
         axial_forces: state.axial_forces.clone(),
+        pulls: vec![[Vector3::zeros(); 2]; segments],
         stretches: vec![1.0001; segments],
         slack: vec![false; segments],
         lengths: vec![1.0; segments],
+        lying: vec![1.0; segments],
         removed: Vec::new(),
         unstressed_lengths: state.unstressed_lengths.clone(),
         support_forces: supported
@@ -109,6 +111,7 @@ fn state(net: &Net) -> ReferenceOutcome {
                 force: Vector3::x(),
             })
             .collect(),
+        loads: vec![Vector3::zeros(); nodes],
         load_sum: Vector3::zeros(),
         load_moment: Vector3::zeros(),
         support_sum: Vector3::zeros(),
@@ -116,6 +119,7 @@ fn state(net: &Net) -> ReferenceOutcome {
         panel_areas: Vec::new(),
         panel_pressures: Vec::new(),
         loose_nodes: (0..nodes).map(NodeId::new).collect(),
+        ponding: None,
         audit: Audit {
             passed: true,
             ..Audit::default()

@@ -2,7 +2,7 @@
 
 use nalgebra::Vector3;
 
-use super::Cause;
+use super::{Cause, Ponding, PondingEnd};
 use crate::check::CaseDigest;
 use crate::equilibrium::audit::Audit;
 use crate::equilibrium::{IterationReport, Solution, SolveError, Termination};
@@ -75,6 +75,8 @@ pub struct StateResult {
     pub loose_nodes: Vec<NodeId>,
     /// Segments that are taken out.
     pub removed: Vec<SegmentId>,
+    /// Water on skins, where the case asks for it; its weight is among the loads.
+    pub ponding: Option<Ponding>,
     /// What the independent routine found.
     pub audit: Audit,
 }
@@ -136,10 +138,16 @@ pub enum CaseOutcome {
 }
 
 impl CaseOutcome {
-    /// Whether there is a state within tolerance.
+    /// Whether there is a state within tolerance, with water that has settled.
     #[must_use]
     pub fn is_answered(&self) -> bool {
-        matches!(self, Self::State { solution, .. } if solution.termination == Termination::Converged)
+        match self {
+            Self::State { solution, result, .. } => {
+                let settled = |ponding: &Ponding| ponding.end == PondingEnd::Settled;
+                solution.termination == Termination::Converged && result.ponding.as_ref().is_none_or(settled)
+            }
+            Self::None { .. } => false,
+        }
     }
 
     /// The little that checks and envelopes need.
