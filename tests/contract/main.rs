@@ -2,6 +2,8 @@
 
 mod absurd;
 mod briefs;
+mod checks;
+mod diagnosis;
 mod drafts;
 mod fields;
 mod freezing;

@@ -89,12 +89,13 @@ fn state(net: &Net) -> ReferenceOutcome {
         positions: state.positions.clone(),
         displacements: vec![Vector3::zeros(); nodes],
         axial_forces: state.axial_forces.clone(),
-        pulls: vec![[Vector3::zeros(); 2]; segments],
         stretches: vec![1.0001; segments],
         slack: vec![false; segments],
         lengths: vec![1.0; segments],
-        lying: vec![1.0; segments],
         removed: Vec::new(),
+        pulls: vec![[Vector3::x(), -Vector3::x()]; segments],
+        lying: vec![1.0; segments],
+        loads: vec![Vector3::zeros(); nodes],
         unstressed_lengths: state.unstressed_lengths.clone(),
         support_forces: supported
             .map(|node| SupportForce {
@@ -111,7 +112,6 @@ fn state(net: &Net) -> ReferenceOutcome {
                 force: Vector3::x(),
             })
             .collect(),
-        loads: vec![Vector3::zeros(); nodes],
         load_sum: Vector3::zeros(),
         load_moment: Vector3::zeros(),
         support_sum: Vector3::zeros(),
@@ -124,6 +124,7 @@ fn state(net: &Net) -> ReferenceOutcome {
             passed: true,
             ..Audit::default()
         },
+        diagnosis: None,
     };
     ReferenceOutcome {
         case: Case {
@@ -135,6 +136,7 @@ fn state(net: &Net) -> ReferenceOutcome {
             ..Case::default()
         },
         history: Vec::new(),
+        bases: Vec::new(),
         report: ShapeReport {
             way: Way::ForceDensities,
             iterations: 1,

@@ -191,6 +191,7 @@ impl Problem {
             }],
             effects: Vec::new(),
             checks: Vec::new(),
+            diagnosis: None,
             settings: Settings {
                 tolerance: 1e-14,
                 ..Settings::default()

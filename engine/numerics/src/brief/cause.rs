@@ -267,6 +267,18 @@ fn distinct(names: impl Iterator<Item = String>) -> Vec<String> {
     names.filter(|name| seen.insert(name.clone())).collect()
 }
 
+/// Tells a free movement in the client's ids. `positions`: where the net is (m).
+pub(super) fn cause_of_movement(net: &Net, positions: &[Vector3<f64>], movement: &FreeMovement) -> LikelyCause {
+    let told = mechanism::describe(net, positions, movement);
+    LikelyCause::Mechanism {
+        node: net.node_name(told.node).to_owned(),
+        direction: told.direction,
+        stiffness: told.stiffness,
+        members: distinct(movement.segments.iter().map(|s| net.member_name(*s).to_owned())),
+        flat: told.arrangement != Arrangement::Space,
+    }
+}
+
 /// Tells an error of the solver in the client's ids. `positions`: where the net was (m).
 pub(super) fn cause_of_error(net: &Net, positions: &[Vector3<f64>], error: &SolveError) -> Cause {
     use crate::assembly::LoadingError;
@@ -303,14 +315,7 @@ pub(super) fn cause_of_error(net: &Net, positions: &[Vector3<f64>], error: &Solv
                 stiffness: *stiffness,
                 segments: segments.clone(),
             };
-            let told = mechanism::describe(net, positions, &movement);
-            LikelyCause::Mechanism {
-                node: net.node_name(told.node).to_owned(),
-                direction: told.direction,
-                stiffness: told.stiffness,
-                members: distinct(segments.iter().map(|s| net.member_name(*s).to_owned())),
-                flat: told.arrangement != Arrangement::Space,
-            }
+            cause_of_movement(net, positions, &movement)
         }
     };
     Cause {

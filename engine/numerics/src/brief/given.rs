@@ -2,6 +2,7 @@
 
 use std::sync::Arc;
 
+use super::DiagnosisGiven;
 use crate::check::Check;
 use crate::equilibrium::{LoadSteps, Settings};
 use crate::load::{Action, Case};
@@ -63,6 +64,8 @@ pub struct Brief {
     pub effects: Vec<DesignEffect>,
     /// Checks, in result order.
     pub checks: Vec<Check>,
+    /// States that are looked into, if any.
+    pub diagnosis: Option<DiagnosisGiven>,
     /// How states are solved for.
     pub settings: Settings,
 }

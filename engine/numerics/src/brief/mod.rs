@@ -1,6 +1,7 @@
 //! The roof: the whole work of a brief, planned and run.
 
 mod cause;
+mod diagnosis;
 mod effect;
 mod estimate;
 mod given;
@@ -18,6 +19,7 @@ mod tally;
 mod tests;
 
 pub use cause::{Cause, Culprit, LikelyCause};
+pub use diagnosis::{DiagnosisGiven, LITTLE_LEFT, Standing, StateDiagnosis};
 pub use effect::{DesignEffect, EffectRule, FactorRules};
 pub use estimate::Estimate;
 pub use given::{Brief, CaseGiven, LoadPath};

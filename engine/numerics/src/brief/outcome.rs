@@ -2,12 +2,12 @@
 
 use nalgebra::Vector3;
 
-use super::{Cause, Ponding, PondingEnd};
-use crate::check::CaseDigest;
+use super::{Cause, Ponding, PondingEnd, StateDiagnosis};
+use crate::check::{Against, Base, CaseDigest};
 use crate::equilibrium::audit::Audit;
 use crate::equilibrium::{IterationReport, Solution, SolveError, Termination};
 use crate::load::Case;
-use crate::model::{NodeId, ReferenceState, SegmentId};
+use crate::model::{Net, NodeId, ReferenceState, SegmentId};
 use crate::shape::ShapeReport;
 
 /// Forces of a support on the net.
@@ -79,6 +79,8 @@ pub struct StateResult {
     pub ponding: Option<Ponding>,
     /// What the independent routine found.
     pub audit: Audit,
+    /// What it allows beside bearing its load, where that was asked for.
+    pub diagnosis: Option<Box<StateDiagnosis>>,
 }
 
 impl StateResult {
@@ -94,6 +96,7 @@ impl StateResult {
             audited: answered && self.audit.passed,
             axial_forces: self.axial_forces.clone(),
             displacements: self.displacements.clone(),
+            positions: self.positions.clone(),
             support_forces,
             loose_nodes: self.loose_nodes.clone(),
             removed: self.removed.clone(),
@@ -114,6 +117,21 @@ pub struct ReferenceOutcome {
     pub report: ShapeReport,
     /// Every iteration; of a relaxation its beginning and its end.
     pub history: Vec<IterationReport>,
+    /// States of the cases that checks measure movements from.
+    pub bases: Vec<Base>,
+}
+
+impl ReferenceOutcome {
+    /// What every case is judged against.
+    #[must_use]
+    pub fn against<'a>(&'a self, net: &'a Net) -> Against<'a> {
+        Against {
+            net,
+            axial_forces: &self.state.axial_forces,
+            positions: &self.state.positions,
+            bases: &self.bases,
+        }
+    }
 }
 
 /// What came of one case.

@@ -1,12 +1,14 @@
 //! A brief made ready to be run, and its two kinds of run.
 
+use std::collections::BTreeSet;
 use std::ops::ControlFlow;
 use std::sync::Arc;
 
 use super::cause::{Stop, cause_of_error, cause_of_pond, cause_of_stop};
+use super::diagnosis::diagnose;
 use super::state::{Bare, state_result};
 use super::{Brief, CaseOutcome, Estimate, LoadPicture, PondingEnd, ReferenceOutcome, Task, ponding};
-use crate::check::{CaseDigest, worst_ratio};
+use crate::check::{Base, CaseDigest, CheckKind, worst_ratio};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
 use crate::load::Surface;
 use crate::shape::{self, Found, ShapeError};
@@ -81,14 +83,39 @@ impl Plan {
             members: &equilibrium::member_states(self.analysis.structure(), &case, &state),
             loose_nodes: &[],
         };
-        let result = state_result(&brief.net, &case, &state.positions, &bare);
-        Ok(ReferenceOutcome {
+        let mut result = state_result(&brief.net, &case, &state.positions, &bare);
+        if let Some(asked) = brief.diagnosis.as_ref().filter(|asked| asked.reference) {
+            result.diagnosis = diagnose(&self.analysis, asked, &case, &result, None).map(Box::new);
+        }
+        let mut outcome = ReferenceOutcome {
             state,
             case,
             result,
             report,
             history,
-        })
+            bases: Vec::new(),
+        };
+        outcome.bases = self.bases(&outcome, observe);
+        Ok(outcome)
+    }
+
+    /// States of the cases that checks measure movements from, each once, in the order of the cases: wanted before the
+    /// first case is judged, whichever cases are run.
+    fn bases(
+        &self,
+        reference: &ReferenceOutcome,
+        observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
+    ) -> Vec<Base> {
+        let named = self.brief.checks.iter().filter_map(|check| match check.kind {
+            CheckKind::Movement { from, .. } => from,
+            _ => None,
+        });
+        let cases: BTreeSet<usize> = named.collect();
+        let solve = |case| Base {
+            case,
+            digest: self.case(reference, case, observe).digest(),
+        };
+        cases.into_iter().map(solve).collect()
     }
 
     /// Solves one case from the reference state.
@@ -103,9 +130,11 @@ impl Plan {
             actions,
             cases,
             settings,
+            diagnosis,
             ..
         } = &*self.brief;
         let given = &cases[case];
+        let asked = diagnosis.as_ref().filter(|asked| asked.cases.contains(&case));
         let settings = &Settings {
             load_steps: given.load_steps.unwrap_or(settings.load_steps),
             ..*settings
@@ -154,6 +183,13 @@ impl Plan {
                         },
                     )),
                 };
+                if let Some(asked) = asked.filter(|_| solution.termination == Termination::Converged) {
+                    let before = reference.result.diagnosis.as_ref();
+                    let before = before
+                        .and_then(|of| of.stiffnesses.first())
+                        .map(|least| least.stiffness);
+                    result.diagnosis = diagnose(&self.analysis, asked, &case, &result, before).map(Box::new);
+                }
                 CaseOutcome::State {
                     solution,
                     result: Box::new(result),
@@ -187,10 +223,10 @@ impl Plan {
     /// where none of them judges anything.
     #[must_use]
     pub fn worst_ratio(&self, reference: &ReferenceOutcome, case: usize, digest: &CaseDigest) -> Option<f64> {
-        let (brief, forces) = (&self.brief, &reference.state.axial_forces);
-        let checks = brief.checks.iter().filter(|check| check.cases.contains(&case));
+        let against = reference.against(&self.brief.net);
+        let checks = self.brief.checks.iter().filter(|check| check.cases.contains(&case));
         checks
-            .filter_map(|check| worst_ratio(&brief.net, forces, check, case, digest))
+            .filter_map(|check| worst_ratio(&against, check, case, digest))
             .reduce(f64::max)
     }
 }

@@ -103,6 +103,7 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
         ponding: None,
         audit: audit::audit_members(net, case, positions, axial_forces, state.members),
         loads,
+        diagnosis: None,
     }
 }
 

@@ -3,7 +3,7 @@
 use std::fmt;
 
 use super::{FactorRules, Loss, ReferenceOutcome};
-use crate::check::{CheckResult, Envelope, Facts, Verdict};
+use crate::check::{AnchorExtremes, CheckResult, Envelope, Extreme, Facts, Verdict};
 use crate::model::{Net, SegmentId};
 
 /// Something that must be shown with the results.
@@ -87,6 +87,10 @@ pub struct Summary {
     pub losses: Vec<Loss>,
     /// Which way to factor a predominant action governs, where design effects stand beside cases.
     pub factor_rules: Option<FactorRules>,
+    /// Largest movement of every node from the reference state (m), over the sound cases.
+    pub movements: Vec<Extreme>,
+    /// Pulls on every anchor over the reference state and the sound cases, in the order of the support forces.
+    pub anchors: Vec<AnchorExtremes>,
     /// What must be shown.
     pub cautions: Vec<Caution>,
 }

@@ -3,11 +3,15 @@
 use std::collections::BTreeMap;
 use std::sync::Arc;
 
+use nalgebra::Vector3;
+
 use super::effect::FactorRules;
 use super::loss::LossTally;
 use super::summary::cautions;
 use super::{Brief, Caution, Plan, ReferenceOutcome, Summary};
-use crate::check::{CaseDigest, CheckTally, EnvelopeTally, Facts, Share, Verdict};
+use crate::check::{
+    Against, AnchorTally, Base, CaseDigest, CheckTally, EnvelopeTally, Facts, MovementTally, Share, Verdict,
+};
 
 /// What is known of a case of the brief.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -53,6 +57,8 @@ pub struct Effect {
 pub struct Tally {
     brief: Arc<Brief>,
     reference_forces: Vec<f64>,
+    reference_positions: Vec<Vector3<f64>>,
+    bases: Vec<Base>,
     reference_audited: bool,
     cautions: Vec<Caution>,
     /// One entry a case of the brief.
@@ -67,6 +73,8 @@ pub struct Tally {
     envelopes: EnvelopeTally,
     losses: LossTally,
     factor_rules: Option<FactorRules>,
+    movements: MovementTally,
+    anchors: AnchorTally,
 }
 
 impl Tally {
@@ -91,8 +99,12 @@ impl Tally {
                 missing: effect.cases().count(),
             });
         }
+        let against = reference.against(&brief.net);
+        let supports = reference.result.support_forces.iter();
         Self {
             reference_forces: reference.state.axial_forces.clone(),
+            reference_positions: reference.state.positions.clone(),
+            bases: reference.bases.clone(),
             reference_audited: reference.result.audit.passed,
             cautions: cautions(&brief.net, reference),
             cases: standings,
@@ -100,10 +112,16 @@ impl Tally {
             readers,
             held: BTreeMap::new(),
             answered: 0,
-            checks: brief.checks.iter().map(CheckTally::new).collect(),
+            checks: brief
+                .checks
+                .iter()
+                .map(|check| CheckTally::new(check, &against))
+                .collect(),
             envelopes: EnvelopeTally::new(&reference.state.axial_forces),
             losses: LossTally::new(&brief),
             factor_rules: None,
+            movements: MovementTally::new(brief.net.nodes().len()),
+            anchors: AnchorTally::new(supports.map(|support| (support.node, support.force))),
             brief,
         }
     }
@@ -120,6 +138,8 @@ impl Tally {
             self.cases[case] = Standing::Sound;
             self.judge(case, digest);
             self.envelopes.add(case, digest);
+            self.movements.add(case, digest);
+            self.anchors.add(case, digest);
         } else {
             self.cases[case] = Standing::Unsound;
         }
@@ -128,10 +148,15 @@ impl Tally {
 
     /// Lets the checks that cover a case, or a design effect, read it.
     fn judge(&mut self, index: usize, digest: &CaseDigest) {
-        let net = &self.brief.net;
+        let against = Against {
+            net: &self.brief.net,
+            axial_forces: &self.reference_forces,
+            positions: &self.reference_positions,
+            bases: &self.bases,
+        };
         for (check, tally) in self.brief.checks.iter().zip(&mut self.checks) {
             if check.cases.contains(&index) {
-                tally.add(net, &self.reference_forces, index, digest);
+                tally.add(check, &against, index, digest);
             }
         }
     }
@@ -207,7 +232,7 @@ impl Tally {
         let is_open = |index: &usize| matches!(standing(*index), Standing::Awaited | Standing::Unsound);
         let checks = brief.checks.iter().zip(self.checks);
         let checks: Vec<_> = checks
-            .map(|(check, tally)| tally.finish(check.cases.iter().copied().filter(is_open).collect()))
+            .map(|(check, tally)| tally.finish(check, check.cases.iter().copied().filter(is_open).collect()))
             .collect();
         let answered = Share {
             count: self.answered,
@@ -226,6 +251,8 @@ impl Tally {
             envelopes: self.envelopes.finish(),
             losses: self.losses.finish(),
             factor_rules: self.factor_rules,
+            movements: self.movements.finish(),
+            anchors: self.anchors.finish(),
             cautions: self.cautions,
         }
     }

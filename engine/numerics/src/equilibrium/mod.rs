@@ -7,11 +7,13 @@
 //! interior point, then carried forces as a polish               pure tension, hard starts
 //! load steps, relaxation                                        with struts, hard starts
 //! stability      can the balanced state move freely?            with struts
+//! eigen          least eigenvalues of a sparse matrix           where asked for
 //! ```
 
 mod analysis;
 pub mod audit;
 mod carried;
+pub mod eigen;
 pub mod existence;
 mod friction;
 mod interior_point;

@@ -194,8 +194,15 @@ fn check_section(name: &str, section: &Section, errors: &mut Vec<NetError>) {
         section.mass_per_length >= 0.0,
     );
     positive("expansion", section.expansion, true);
-    if let Some(force) = section.breaking_force {
-        positive("breaking force", force, force > 0.0);
+    for (what, value) in [
+        ("breaking force", section.breaking_force),
+        ("proof force", section.proof_force),
+        ("bending stiffness", section.bending_stiffness),
+        ("diameter", section.diameter),
+    ] {
+        if let Some(value) = value {
+            positive(what, value, value > 0.0);
+        }
     }
 }
 

@@ -171,7 +171,6 @@ impl<'a> Cases<'a> {
     /// Cases that a list of sets and cases names, in brief order; all of them where it is empty. Design effects that it
     /// names are counted on from the last case; where it is empty, those that fill a set.
     pub(crate) fn named(&self, over: &[String], field: &Path<'_>, findings: &mut Findings) -> Option<Vec<usize>> {
-        tell_repeated(over, field, findings);
         let n_cases = self.list.len();
         let mut wanted = vec![over.is_empty(); n_cases + self.effects.len()];
         if over.is_empty() {
@@ -179,10 +178,48 @@ impl<'a> Cases<'a> {
                 *wanted = !effect.sets.is_empty();
             }
         }
+        self.find(over, field, None, wanted, findings)
+    }
+
+    /// States that a list of sets, cases and the word `reference` names: whether the reference state is one of them, and
+    /// the cases in brief order; all of them where the list is empty. Design effects are no states.
+    pub(crate) fn states(
+        &self,
+        about: &[String],
+        field: &Path<'_>,
+        findings: &mut Findings,
+    ) -> Option<(bool, Vec<usize>)> {
+        let n_cases = self.list.len();
+        if about.is_empty() {
+            return Some((true, (0..n_cases).collect()));
+        }
+        let mut reference = false;
+        let wanted = vec![false; n_cases + self.effects.len()];
+        let cases = self.find(about, field, Some(&mut reference), wanted, findings);
+        cases.map(|mut cases| {
+            cases.retain(|case| *case < n_cases);
+            (reference, cases)
+        })
+    }
+
+    /// Cases and design effects that a list names beside those `wanted`, in brief order; `reference`: where the word may
+    /// stand, and is noted.
+    fn find(
+        &self,
+        over: &[String],
+        field: &Path<'_>,
+        mut reference: Option<&mut bool>,
+        mut wanted: Vec<bool>,
+        findings: &mut Findings,
+    ) -> Option<Vec<usize>> {
+        tell_repeated(over, field, findings);
+        let n_cases = self.list.len();
         let mut complete = true;
         for (number, name) in over.iter().enumerate() {
             let at = field.number(number);
-            if let Some(case) = self.names.get(name) {
+            if let Some(reference) = reference.as_deref_mut().filter(|_| name == REFERENCE) {
+                *reference = true;
+            } else if let Some(case) = self.names.get(name) {
                 wanted[case] = true;
             } else if let Some(made) = self.made.get(name) {
                 wanted[match *made {
@@ -201,6 +238,11 @@ impl<'a> Cases<'a> {
             }
         }
         complete.then(|| (0..wanted.len()).filter(|case| wanted[*case]).collect())
+    }
+
+    /// The case with a name; tells if there is none.
+    pub(crate) fn case(&self, name: &str, at: &Path<'_>, findings: &mut Findings) -> Option<usize> {
+        self.names.find(findings, at, "case", name)
     }
 
     fn unknown(&self, name: &str, at: &Path<'_>, findings: &mut Findings) {

@@ -105,6 +105,9 @@ pub(crate) fn elements(brief: &v1::Brief, findings: &mut Findings) {
         .sum();
     let notes = brief.solving.as_ref().map_or(0, |s| s.note.len())
         + brief.prestress.as_ref().map_or(0, |p| p.note.len())
+        + (brief.diagnosis.iter())
+            .map(|d| d.note.len() + d.about.iter().map(|id| id.len() + 4).sum::<usize>())
+            .sum::<usize>()
         + brief.frozen_from.as_ref().map_or(0, |f| f.note.len());
     let net = match &brief.net_source {
         Some(v1::brief::NetSource::Net(net)) => net.note.len(),

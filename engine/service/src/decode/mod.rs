@@ -6,7 +6,8 @@
 //! | `reading`, `work` | the whole brief, and what comes of it |
 //! | `findings`, `reasons`, `numbers`, `names` | what is told, where, and why |
 //! | `net`, `places`, `sections`, `supports`, `stretch`, `scope`, `surface` | the net |
-//! | `prestress`, `wish`, `actions`, `factors`, `combinations`, `cases`, `checks`, `solving` | what is wanted of it |
+//! | `prestress`, `wish`, `actions`, `factors`, `combinations`, `cases`, `solving` | what is wanted of it |
+//! | `checks`, `check_kinds`, `editions`, `diagnosis` | what it is judged by |
 //! | `plausible`, `frozen`, `accepted` | doubts |
 //! | `limits`, `not_served` | what is refused |
 //!
@@ -15,9 +16,12 @@
 mod accepted;
 mod actions;
 mod cases;
+mod check_kinds;
 mod checks;
 mod combinations;
+mod diagnosis;
 mod digest;
+mod editions;
 mod factors;
 mod findings;
 mod frozen;
@@ -42,7 +46,9 @@ mod wish;
 mod work;
 
 pub(crate) use cases::{ENVELOPE, REFERENCE};
+pub(crate) use check_kinds::field as check_field;
 pub use digest::digest;
+pub(crate) use editions::of as edition_of;
 pub(crate) use net::STANDARD_GRAVITY;
 pub use not_served::{NOT_SERVED, SERVED};
 pub use reading::{Reading, read};

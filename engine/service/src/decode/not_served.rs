@@ -36,6 +36,14 @@ pub const SERVED: &[&str] = &[
     "checks.slackness",
     "checks.movement",
     "checks.anchor_pull",
+    "checks.resistance",
+    "checks.service_stress",
+    "checks.construction_stress",
+    "checks.buckling",
+    "checks.clearance",
+    "checks.clamp",
+    "checks.saddle",
+    "diagnosis",
     "solving",
     "accepted",
     "frozen_from",
@@ -47,10 +55,7 @@ pub const NOT_SERVED: &[&str] = &[
     "net.adjusters",
     "net.cables.slides",
     "net.roles.adjuster",
-    "checks.resistance",
-    "checks.service_stress",
-    "checks.buckling",
-    "checks.clearance",
+    "checks.drainage",
     "modes",
     "motions",
     "stages",
@@ -130,13 +135,8 @@ fn in_net(net: &v1::Net, part: &mut impl FnMut(&Path<'_>, &str)) {
 fn in_checks(checks: &[v1::Check], part: &mut impl FnMut(&Path<'_>, &str)) {
     let list = Path::root("checks");
     for (number, check) in checks.iter().enumerate() {
-        let field = match check.kind {
-            Some(v1::check::Kind::Resistance(_)) => "resistance",
-            Some(v1::check::Kind::ServiceStress(_)) => "service_stress",
-            Some(v1::check::Kind::Buckling(_)) => "buckling",
-            Some(v1::check::Kind::Clearance(_)) => "clearance",
-            _ => continue,
-        };
-        part(&list.number(number).field(field), "");
+        if let Some(v1::check::Kind::Drainage(_)) = check.kind {
+            part(&list.number(number).field("drainage"), "");
+        }
     }
 }

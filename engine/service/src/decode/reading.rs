@@ -21,7 +21,9 @@ use super::sections::Sections;
 use super::supports::Supports;
 use super::surface::SurfaceDraft;
 use super::work::{Names, Work};
-use super::{accepted, checks, combinations, frozen, limits, not_served, plausible, prestress, reasons, solving};
+use super::{
+    accepted, checks, combinations, diagnosis, frozen, limits, not_served, plausible, prestress, reasons, solving,
+};
 use crate::config::Limits;
 use crate::words::shown;
 
@@ -202,6 +204,7 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
         findings,
         resolved,
     );
+    let diagnosis = diagnosis::read(brief.diagnosis.as_ref(), &cases, findings, resolved);
     plausible::sections(&net, findings);
     plausible::extent(&net, findings);
     plausible::prestress(&net, &sections, &prestress, findings);
@@ -233,6 +236,7 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
             cases,
             effects,
             checks,
+            diagnosis,
             settings,
         };
         let unbuilt = Unbuilt {

@@ -164,6 +164,10 @@ reasons! {
     CHECK_WITHOUT_CASES,
     /// Members that a check covers but cannot judge.
     NOT_JUDGEABLE,
+    /// A standard or edition whose factors are not known here, and not given.
+    EDITION_UNKNOWN,
+    /// A factor that the named edition does not recommend.
+    FACTOR_NOT_OF_EDITION,
     /// Cases, but no check.
     NOTHING_CHECKED,
     /// A value that looks as if it were in another unit.
@@ -186,6 +190,8 @@ reasons! {
     OVER_BREAKING,
     /// A movement so large that units or loads are to be doubted.
     LARGE_MOVEMENT,
+    /// A state with hardly any stiffness left against a movement, or none.
+    LITTLE_STIFFNESS,
     /// Panels that a pressure on the surface leaves without a value.
     PANELS_WITHOUT_VALUE,
     /// A panel that was found in plan has turned over in the reference state.

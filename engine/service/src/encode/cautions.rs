@@ -10,8 +10,8 @@ use crate::decode::Work;
 pub fn cautions() -> Vec<String> {
     [
         "This result is an aid. The local code with its national annex and a licensed engineer decide.",
-        "The checks are simple limits set in the brief; they apply no edition of a standard. State beside them which code and \
-         edition the limits follow.",
+        "The checks are limits set in the brief, or single clauses of the edition that a result names; values marked \"from \
+         memory\" must be verified, editions and national annexes differ.",
         "Rope data (stiffness, mass, breaking force) must come from the supplier's certificate or tests; values from tables \
          are first estimates.",
         "Nonlinear results must not be added or scaled: every combination is a case of its own from the same unstressed \

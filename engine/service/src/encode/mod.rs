@@ -8,13 +8,16 @@
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
 //! | `surface` | panels, and what each action does in the reference state |
 //! | `effects` | sums of effects, paths of cases, losses of members |
-//! | `closing`, `verdicts`, `cautions` | the end of a run |
+//! | `diagnosis` | free movements, states of self-stress, least stiffnesses |
+//! | `closing`, `verdicts`, `rules`, `anchors`, `cautions` | the end of a run |
 //! | `freeze` | the brief with what was found written in |
 //! | `report` | what reading the brief told |
 //! | `parts` | how much fits a message |
 
+mod anchors;
 mod cautions;
 mod closing;
+mod diagnosis;
 mod doubts;
 mod effects;
 mod failure;
@@ -24,6 +27,7 @@ mod outcome;
 mod parts;
 mod progress;
 mod report;
+mod rules;
 mod state;
 mod surface;
 mod verdicts;

@@ -11,7 +11,7 @@ use v1::run_response::Event;
 use super::closing::Noted;
 use super::parts::{count, event, first_ids};
 use super::progress::way;
-use super::{doubts, failure, state, surface};
+use super::{diagnosis, doubts, failure, state, surface};
 use crate::decode::{REFERENCE, Work, reasons};
 use crate::words::quoted_list;
 
@@ -31,6 +31,7 @@ pub fn reference(work: &Work, plan: &Plan, found: &Result<ReferenceOutcome, Shap
         let lengths = &reference.state.unstressed_lengths;
         messages.extend(state::arrays(&plan.brief().net, REFERENCE, &reference.result, lengths));
         messages.extend(state::history(REFERENCE, &reference.history));
+        messages.extend(diagnosed(&plan.brief().net, REFERENCE, &reference.result));
     }
     let findings = reference_findings(work, plan, found);
     messages.extend(findings.into_iter().map(|finding| event(Event::Finding(finding))));
@@ -102,6 +103,7 @@ pub fn case(
         } => {
             messages.extend(state::arrays(net, name, result, &reference.state.unstressed_lengths));
             messages.extend(state::history(name, &solution.history));
+            messages.extend(diagnosed(net, name, result));
             let mut closing = summary(net, name, result, reference);
             closing.set_way(way(solution.way));
             closing.load_factor = solution.load_factor;
@@ -185,6 +187,11 @@ fn no_answer(case: &str, failure: &v1::Failure) -> v1::Finding {
     }
 }
 
+fn diagnosed(net: &Net, case: &str, state: &StateResult) -> Vec<v1::RunResponse> {
+    let found = state.diagnosis.as_deref();
+    found.map_or_else(Vec::new, |found| diagnosis::parts(net, case, found))
+}
+
 /// What a state says of itself.
 fn summary(net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutcome) -> v1::CaseSummary {
     let name = |node: usize| net.nodes()[node].name.clone();
@@ -210,6 +217,9 @@ fn summary(net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutc
         }),
         loose_nodes: first_ids(state.loose_nodes.iter().map(|node| net.node_name(*node)), LOOSE_NODES),
         loose_nodes_total: count(state.loose_nodes.len()),
+        smallest_stiffness_n_per_m: (state.diagnosis.as_ref())
+            .and_then(|found| found.stiffnesses.first())
+            .map(|least| least.stiffness),
         ..v1::CaseSummary::default()
     }
 }

@@ -54,6 +54,7 @@ fn brief(net: Net, prestress: Prestress, actions: Vec<Action>, cases: Vec<CaseGi
         cases,
         effects: Vec::new(),
         checks: Vec::new(),
+        diagnosis: None,
         settings: Settings::default(),
     }
 }
