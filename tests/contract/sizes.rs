@@ -138,6 +138,7 @@ fn state(net: &Net) -> ReferenceOutcome {
         history: Vec::new(),
         bases: Vec::new(),
         report: ShapeReport {
+            unmet: None,
             way: Way::ForceDensities,
             iterations: 1,
             targets: Vec::new(),

@@ -214,6 +214,7 @@ impl Problem {
                 mean_tensions: self.mean_tensions,
                 hold: self.hold,
                 under: vec![0],
+                ..Prestress::default()
             },
             actions: actions.to_vec(),
             cases: vec![CaseGiven {

@@ -5,13 +5,14 @@ use std::sync::Arc;
 
 use nalgebra::Vector3;
 
-use super::balance::forces_left;
+use super::fights::{targets, unmet};
 use super::gate::{Found, finish};
 use super::loads::ShapeLoads;
-use super::parts::{Part, Parts};
+use super::parts::{Part, Parts, Sought};
+use super::rows::Rows;
 use super::search::{Point, Search};
-use super::targets::{Densities, MET};
-use super::{BalanceReport, Prestress, ShapeError, Target, frozen};
+use super::targets::Densities;
+use super::{BalanceReport, Prestress, ShapeError, Target, Unmet, frozen};
 use crate::assembly::Structure;
 use crate::equilibrium::{Analysis, IterationReport, Settings, existence};
 use crate::load::Action;
@@ -61,6 +62,10 @@ pub fn find(
         return Err(ShapeError::HeldWithoutPosition { nodes: missing });
     }
     parts.check_balance_ends(net, &prestress.hold)?;
+    let rows = Rows::new(net, &parts, prestress)?;
+    if !prestress.targets.is_empty() && parts.families.is_empty() {
+        return Err(ShapeError::NothingAdjustable);
+    }
     if parts.all_elastic() && prestress.hold.is_empty() {
         let missing = nowhere(&mut (0..net.nodes().len()).map(NodeId::new));
         if !missing.is_empty() {
@@ -75,15 +80,22 @@ pub fn find(
         kept = Analysis::of(Structure::keeping(net.clone(), &prestress.hold));
         &kept
     };
-    let (shape, iterations) = shape(searched, &parts, &mut loads, &prestress.hold, observe)?;
-    finish(
-        analysis,
-        prestress,
-        actions,
-        settings,
-        shape.into_raw(net, &parts, iterations)?,
-        observe,
-    )
+    let wanted = Wanted {
+        parts: &parts,
+        loads: &mut loads,
+        rows,
+        hold: &prestress.hold,
+    };
+    let raw = shape(searched, wanted, observe)?.into_raw(net, &parts)?;
+    finish(analysis, prestress, actions, settings, raw, observe)
+}
+
+/// What a search is after.
+struct Wanted<'a> {
+    parts: &'a Parts,
+    loads: &'a mut ShapeLoads,
+    rows: Rows,
+    hold: &'a [NodeId],
 }
 
 /// Rounds in which force densities of families are fitted to the lengths of the first shape.
@@ -129,6 +141,9 @@ pub fn first_shape(net: &Arc<Net>, prestress: &Prestress) -> Result<Vec<Vector3<
 struct Shape {
     densities: Densities,
     balance: Option<BalanceReport>,
+    targets: Vec<Target>,
+    unmet: Option<Unmet>,
+    iterations: u32,
 }
 
 /// A shape whose elastic balance has not been looked at yet.
@@ -139,21 +154,27 @@ pub(super) struct RawShape {
     pub(super) unstressed: Vec<f64>,
     pub(super) iterations: u32,
     pub(super) targets: Vec<Target>,
+    pub(super) unmet: Option<Unmet>,
     pub(super) balance: Option<BalanceReport>,
     pub(super) taut_given_lengths: Vec<SegmentId>,
 }
 
 fn shape(
     analysis: &Analysis,
-    parts: &Parts,
-    loads: &mut ShapeLoads,
-    hold: &[NodeId],
+    wanted: Wanted<'_>,
     observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
-) -> Result<(Shape, u32), ShapeError> {
+) -> Result<Shape, ShapeError> {
     let net = analysis.structure().net();
+    let Wanted {
+        parts,
+        loads,
+        rows,
+        hold,
+    } = wanted;
     let start = start(analysis, parts, observe)?;
     loads.place(net, &start.positions);
     let mut search = Search::new(analysis, parts, loads, observe);
+    search.rows = rows;
     search.iterations = start.iterations;
     search.check_held()?;
     let members = parts.balance();
@@ -161,39 +182,34 @@ fn shape(
         .iter()
         .flat_map(|e| net.segments()[*e].ends)
         .any(|end| !analysis.structure().dofs().directions(end).is_empty());
-    let mut found = search.with_wanted_tensions(start.positions, start.densities)?;
+    let mut found = search.with_wanted(start.positions, start.densities)?;
     let mut balance = None;
     for _ in 0..MAX_ROUNDS {
         if hold.is_empty() && members.is_empty() {
             break;
         }
-        no_length(net, &found.point)?;
+        sound(analysis, &found.point)?;
         let (report, change) = search.balance(hold, &mut found.point, &found.densities)?;
         balance = (!members.is_empty()).then_some(report);
         let largest = found.point.axial_forces.iter().fold(0.0, |m: f64, n| m.max(n.abs()));
         if !ends_move || change <= SETTLED * largest {
             break;
         }
-        found = search.with_wanted_tensions(found.point.positions, found.densities)?;
+        found = search.with_wanted(found.point.positions, found.densities)?;
     }
-    no_length(net, &found.point)?;
-    if !found.met {
-        return Err(unmet(net, parts, &search, &found));
-    }
-    let loose = existence::loose_nodes(analysis.structure(), |e| found.point.axial_forces[e] != 0.0);
-    if !loose.is_empty() {
-        return Err(ShapeError::Loose {
-            nodes: names(net, &loose),
-        });
-    }
-    let iterations = search.iterations;
-    Ok((
-        Shape {
-            densities: found,
-            balance,
-        },
-        iterations,
-    ))
+    sound(analysis, &found.point)?;
+    let unmet = if found.met {
+        None
+    } else {
+        Some(unmet(&mut search, &found)?)
+    };
+    Ok(Shape {
+        targets: targets(&search, &found),
+        unmet,
+        densities: found,
+        balance,
+        iterations: search.iterations,
+    })
 }
 
 /// Where a search starts.
@@ -222,7 +238,12 @@ fn start(
         .max(f64::MIN_POSITIVE);
     let mut positions: Vec<Vector3<f64>> = net.nodes().iter().map(|n| n.position.unwrap_or(middle)).collect();
     // A tenth of the net is as good a guess of a segment's length as any; only its order of magnitude matters.
-    let mut densities: Vec<f64> = parts.families.iter().map(|f| f.wanted / (0.1 * size)).collect();
+    let mut densities: Vec<f64> = (parts.families.iter())
+        .map(|family| match family.sought {
+            Sought::Mean(wanted) => wanted / (0.1 * size),
+            Sought::Targets(given) => given.density,
+        })
+        .collect();
     let mut iterations = 0;
     let some_density = parts.of.iter().any(|part| !matches!(part, Part::Elastic(_)));
     if given.len() < net.nodes().len() && some_density {
@@ -276,15 +297,25 @@ fn fit(net: &Net, parts: &Parts, positions: &[Vector3<f64>], densities: &mut [f6
         (positions[j] - positions[i]).norm()
     };
     for (density, family) in densities.iter_mut().zip(&parts.families) {
+        let Some(wanted) = family.wanted() else {
+            continue;
+        };
         let mean = family.segments.iter().map(length).sum::<f64>() / family.segments.len() as f64;
         if mean > 1e-6 * size {
-            *density = family.wanted / mean;
+            *density = wanted / mean;
         }
     }
 }
 
-/// Refuses a shape in which both ends of a member coincide.
-fn no_length(net: &Net, point: &Point) -> Result<(), ShapeError> {
+/// Refuses a shape of which nodes hang on slack ropes alone, or both ends of a member coincide.
+fn sound(analysis: &Analysis, point: &Point) -> Result<(), ShapeError> {
+    let net = analysis.structure().net();
+    let loose = existence::loose_nodes(analysis.structure(), |e| point.axial_forces[e] != 0.0);
+    if !loose.is_empty() {
+        return Err(ShapeError::Loose {
+            nodes: names(net, &loose),
+        });
+    }
     let size = point.positions.iter().fold(0.0, |m: f64, x| m.max(x.amax()));
     match point.lengths.iter().position(|l| *l <= 1e-12 * size) {
         Some(index) => {
@@ -304,61 +335,8 @@ pub(super) fn names(net: &Net, nodes: &[NodeId]) -> Vec<String> {
     nodes.iter().map(|n| net.node_name(*n).to_owned()).collect()
 }
 
-fn targets(net: &Net, parts: &Parts, found: &Densities) -> Vec<Target> {
-    let describe = |segments: &[usize]| {
-        let segment = net.segments()[segments[0]];
-        let name = net.member_name(SegmentId::new(segments[0]));
-        match segment.member {
-            Member::Cable(cable) if segments.len() == 1 && net.cables()[cable.index()].segments.len() > 1 => {
-                format!(
-                    "{name} ({}-{})",
-                    net.node_name(segment.ends[0]),
-                    net.node_name(segment.ends[1])
-                )
-            }
-            _ => name.to_owned(),
-        }
-    };
-    (parts.families.iter().zip(&found.means))
-        .map(|(family, mean)| Target {
-            member: describe(&family.segments),
-            is_mean: family.segments.len() > 1,
-            wanted: family.wanted,
-            found: *mean,
-            met: (mean / family.wanted - 1.0).abs() <= MET,
-        })
-        .collect()
-}
-
-/// Says what the wanted tensions would leave at the nodes, and what balances nearest to them.
-fn unmet(net: &Net, parts: &Parts, search: &Search<'_, '_>, found: &Densities) -> ShapeError {
-    let point = &found.point;
-    let mut nodal = vec![Vector3::zeros(); net.nodes().len()];
-    for (family, mean) in parts.families.iter().zip(&found.means) {
-        for &e in &family.segments {
-            let more = point.axial_forces[e] * (family.wanted / mean - 1.0);
-            let [i, j] = net.segments()[e].ends.map(NodeId::index);
-            nodal[i] += point.chords[e] * (more / point.lengths[e]);
-            nodal[j] -= point.chords[e] * (more / point.lengths[e]);
-        }
-    }
-    let dofs = search.structure.dofs();
-    let forces = (0..net.nodes().len())
-        .map(|n| {
-            let free = dofs.directions(NodeId::new(n));
-            (NodeId::new(n), free.iter().map(|d| d * d.dot(&nodal[n])).sum())
-        })
-        .collect();
-    let largest = point.axial_forces.iter().fold(0.0, |m: f64, n| m.max(n.abs()));
-    ShapeError::TargetsUnmet {
-        targets: targets(net, parts, found),
-        left: forces_left(net, &point.positions, forces, MET * largest),
-        rank: found.rank,
-    }
-}
-
 impl Shape {
-    fn into_raw(self, net: &Net, parts: &Parts, iterations: u32) -> Result<RawShape, ShapeError> {
+    fn into_raw(self, net: &Net, parts: &Parts) -> Result<RawShape, ShapeError> {
         let point = &self.densities.point;
         let largest = point.axial_forces.iter().fold(0.0, |m: f64, n| m.max(n.abs()));
         for (index, segment) in net.segments().iter().enumerate() {
@@ -387,11 +365,12 @@ impl Shape {
         };
         Ok(RawShape {
             taut_given_lengths: (0..parts.of.len()).filter(taut).map(SegmentId::new).collect(),
-            targets: targets(net, parts, &self.densities),
+            targets: self.targets,
+            unmet: self.unmet,
             positions: self.densities.point.positions,
             axial_forces: self.densities.point.axial_forces,
             unstressed: self.densities.point.unstressed,
-            iterations,
+            iterations: self.iterations,
             balance: self.balance,
         })
     }

@@ -19,6 +19,8 @@ use nalgebra::{Matrix3, Vector3};
 use super::ShapeError;
 use super::loads::ShapeLoads;
 use super::parts::{Part, Parts};
+use super::rows::Rows;
+use super::sensitivity::Side;
 use crate::assembly::Structure;
 use crate::element::axial_block;
 use crate::equilibrium::linear::Factor;
@@ -65,6 +67,10 @@ pub(super) struct Search<'a, 'o> {
     pub(super) iterations: u32,
     pub(super) factor: Factor,
     pub(super) values: Vec<f64>,
+    /// Targets beside wanted tensions.
+    pub(super) rows: Rows,
+    /// An equation that is left out for the time being.
+    pub(super) dropped: Option<usize>,
     /// Densities of the families (N/m) whose stiffness is factorised, where nothing else decides the stiffness.
     factorised_for: Option<Vec<f64>>,
     observe: &'o mut Observer<'o>,
@@ -87,6 +93,8 @@ impl<'a, 'o> Search<'a, 'o> {
             iterations: 0,
             factor: analysis.new_factor(),
             values: vec![0.0; structure.pattern().n_entries()],
+            rows: Rows::default(),
+            dropped: None,
             factorised_for: None,
             observe,
         }
@@ -276,7 +284,7 @@ impl<'a, 'o> Search<'a, 'o> {
                 return Ok(point);
             }
             self.factorise(&point, family_densities, point.worst.0)?;
-            let movement = self.solve(&point, point.residual.clone());
+            let movement = self.solve(&point, point.residual.clone(), Side::Plain);
             if movement.iter().any(|m| !m.is_finite()) {
                 return Err(self.singular(&movement));
             }

@@ -64,8 +64,7 @@ fn densities(net: &Net, density: f64) -> Prestress {
     Prestress {
         rules: vec![PrestressRule::ForceDensity(density); net.segments().len()],
         mean_tensions: Vec::new(),
-        hold: Vec::new(),
-        under: Vec::new(),
+        ..Prestress::default()
     }
 }
 
