@@ -306,6 +306,7 @@ fn zones_that_are_none() {
     for (value, reason) in [
         (json!([0, 0, 3, 0]), "WRONG_COUNT"),
         (json!([0, 0, 3, 0, 3]), "WRONG_COUNT"),
+        (json!(vec![0.5; 2002]), "TOO_MANY"),
         (json!([0, 0, 3, 3, 3, 0, 0, 3]), "BAD_OUTLINE"),
         (json!([0, 0, 3, 0, 6, 0]), "BAD_OUTLINE"),
     ] {

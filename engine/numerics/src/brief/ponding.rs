@@ -12,6 +12,8 @@ use crate::model::ReferenceState;
 const MAX_ROUNDS: usize = 200;
 /// Change of the water on the nodes, over all of it, at which it has settled.
 const SETTLED: f64 = 1e-6;
+/// Movement over the extent of the net at which no further round is worth it.
+const OUT_OF_PLACE: f64 = 100.0;
 /// A round that adds at least this share of what the round before added does not lead to an end.
 const GROWING: f64 = 0.999;
 
@@ -97,6 +99,11 @@ pub(super) fn solve(
         volumes: Vec::new(),
     };
     let mut factorisations = 0;
+    let first = reference.positions.first().copied().unwrap_or_else(Vector3::zeros);
+    let extent = reference
+        .positions
+        .iter()
+        .fold(0.0, |m: f64, x| m.max((x - first).amax()));
     loop {
         let mut solution = equilibrium::solve(analysis, &case, &start, lengths, settings, observe)?;
         factorisations += solution.factorisations;
@@ -115,9 +122,11 @@ pub(super) fn solve(
         let change: f64 = changes.map(|(now, before)| (now - before).abs()).sum();
         ponding.volumes.push(volume);
         ponding.ponds = found.ponds;
-        if change <= SETTLED * volume || volume == 0.0 {
+        let moves = solution.positions.iter().zip(&reference.positions);
+        let moved = moves.map(|(now, before)| (now - before).amax()).fold(0.0, f64::max);
+        if change <= SETTLED * volume {
             ponding.end = PondingEnd::Settled;
-        } else if ponding.volumes.len() == MAX_ROUNDS {
+        } else if ponding.volumes.len() == MAX_ROUNDS || moved > OUT_OF_PLACE * extent {
             ponding.end = end_of(&ponding, PondingEnd::NotSettled);
         } else {
             start.clone_from(&solution.positions);
