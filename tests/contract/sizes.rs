@@ -119,6 +119,7 @@ fn state(net: &Net) -> ReferenceOutcome {
         panel_areas: Vec::new(),
         panel_pressures: Vec::new(),
         loose_nodes: (0..nodes).map(NodeId::new).collect(),
+        ponding: None,
         audit: Audit {
             passed: true,
             ..Audit::default()

@@ -5,12 +5,14 @@ use std::sync::Arc;
 
 use nalgebra::{DMatrix, Vector3};
 use ropewalk_numerics::brief::{
-    Brief, CaseGiven, CaseOutcome, Plan, Prestress, PrestressRule, ReferenceOutcome, StateResult, SupportForce,
+    Brief, CaseGiven, CaseOutcome, Plan, PondingGiven, Prestress, PrestressRule, ReferenceOutcome, StateResult,
+    SupportForce,
 };
 use ropewalk_numerics::equilibrium::{Settings, Termination};
 use ropewalk_numerics::load::{Action, Load};
 use ropewalk_numerics::model::{
-    CableGiven, ElasticSupportGiven, Net, NetGiven, NodeGiven, NodeId, Section, StrutGiven, SupportGiven,
+    CableGiven, ElasticSupportGiven, Net, NetGiven, NodeGiven, NodeId, PanelGiven, Section, Skin, StrutGiven,
+    SupportGiven,
 };
 
 /// A net in the making.
@@ -23,6 +25,7 @@ pub(crate) struct Problem {
     hold: Vec<NodeId>,
     under: Vec<Load>,
     case: Vec<Load>,
+    ponding: Option<PondingGiven>,
 }
 
 /// What a problem answers.
@@ -125,6 +128,35 @@ impl Problem {
         self.hold.push(node);
     }
 
+    /// A skin of panels, each by its corners counter-clockwise seen from its outer side.
+    pub(crate) fn skin(&mut self, mass_per_area: f64, panels: &[&[NodeId]]) {
+        let first = self.net.panels.len();
+        for corners in panels {
+            self.net.panels.push(PanelGiven {
+                name: format!("p{}", self.net.panels.len()),
+                corners: corners.to_vec(),
+            });
+        }
+        self.net.skins.push(Skin {
+            name: format!("skin{}", self.net.skins.len()),
+            mass_per_area,
+            panels: (first..self.net.panels.len()).collect(),
+        });
+    }
+
+    /// Lets water of this density (kg/m³) gather on skins in the case.
+    pub(crate) fn gather_water(&mut self, density: f64, gravity: f64) {
+        self.ponding = Some(PondingGiven { density, gravity });
+    }
+
+    /// What comes of the case, whether it is an answer or not.
+    #[track_caller]
+    pub(crate) fn outcome(self) -> CaseOutcome {
+        let plan = self.plan();
+        let reference = reference(&plan);
+        plan.case(&reference, 0, &mut |_| ControlFlow::Continue(()))
+    }
+
     /// A dead load that acts in the reference state and in the case.
     pub(crate) fn always(&mut self, load: Load) {
         self.under.push(load);
@@ -150,7 +182,7 @@ impl Problem {
     /// and tensions: what is compared is a state in balance.
     #[track_caller]
     pub(crate) fn solve(self) -> Answer {
-        let has_case = !self.case.is_empty();
+        let has_case = !self.case.is_empty() || self.ponding.is_some();
         let plan = self.plan();
         let reference = reference(&plan);
         let state = if has_case {
@@ -188,6 +220,7 @@ impl Problem {
             cases: vec![CaseGiven {
                 name: "case".to_owned(),
                 factors: vec![(0, 1.0), (1, 1.0)],
+                ponding: self.ponding,
                 ..CaseGiven::default()
             }],
             effects: Vec::new(),

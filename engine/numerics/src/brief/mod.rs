@@ -10,6 +10,7 @@ mod outcome;
 mod path;
 mod picture;
 mod plan;
+mod ponding;
 mod state;
 mod summary;
 mod tally;
@@ -27,6 +28,7 @@ pub use outcome::{CaseOutcome, EndForce, ReferenceOutcome, StateResult, SupportF
 pub use path::PathResult;
 pub use picture::{LoadPicture, Resultant};
 pub use plan::Plan;
+pub use ponding::{Ponding, PondingEnd, PondingGiven};
 pub use summary::{Caution, Summary};
 pub use tally::{Effect, Tally};
 

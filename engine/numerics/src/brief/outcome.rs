@@ -2,7 +2,7 @@
 
 use nalgebra::Vector3;
 
-use super::{Cause, StateDiagnosis};
+use super::{Cause, Ponding, PondingEnd, StateDiagnosis};
 use crate::check::{Against, Base, CaseDigest};
 use crate::equilibrium::audit::Audit;
 use crate::equilibrium::certificate::Certificate;
@@ -76,6 +76,8 @@ pub struct StateResult {
     pub loose_nodes: Vec<NodeId>,
     /// Segments that are taken out.
     pub removed: Vec<SegmentId>,
+    /// Water on skins, where the case asks for it; its weight is among the loads.
+    pub ponding: Option<Ponding>,
     /// What the independent routine found.
     pub audit: Audit,
     /// How far the state can be from the true one; `None` where it is no answer, or nothing can be said.
@@ -157,10 +159,16 @@ pub enum CaseOutcome {
 }
 
 impl CaseOutcome {
-    /// Whether there is a state within tolerance.
+    /// Whether there is a state within tolerance, with water that has settled.
     #[must_use]
     pub fn is_answered(&self) -> bool {
-        matches!(self, Self::State { solution, .. } if solution.termination == Termination::Converged)
+        match self {
+            Self::State { solution, result, .. } => {
+                let settled = |ponding: &Ponding| ponding.end == PondingEnd::Settled;
+                solution.termination == Termination::Converged && result.ponding.as_ref().is_none_or(settled)
+            }
+            Self::None { .. } => false,
+        }
     }
 
     /// The little that checks and envelopes need.

@@ -4,10 +4,10 @@ use std::collections::BTreeSet;
 use std::ops::ControlFlow;
 use std::sync::Arc;
 
-use super::cause::{Stop, cause_of_error, cause_of_stop};
+use super::cause::{Stop, cause_of_error, cause_of_pond, cause_of_stop};
 use super::diagnosis::diagnose;
 use super::state::{Bare, state_result};
-use super::{Brief, CaseOutcome, Estimate, LoadPicture, ReferenceOutcome, Task};
+use super::{Brief, CaseOutcome, Estimate, LoadPicture, PondingEnd, ReferenceOutcome, Task, ponding};
 use crate::check::{Base, CaseDigest, CheckKind, worst_ratio};
 use crate::equilibrium::certificate::{self, Certificate, certificate};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
@@ -153,16 +153,21 @@ impl Plan {
             ..*settings
         };
         let case = given.case(net, &reference.state, actions);
-        let solved = equilibrium::solve(
-            &self.analysis,
-            &case,
-            &reference.state.positions,
-            &reference.state.unstressed_lengths,
-            settings,
-            observe,
-        );
+        let solved = match given.ponding {
+            Some(ponding) => ponding::solve(&self.analysis, &case, ponding, &reference.state, settings, observe)
+                .map(|ponded| (ponded.solution, ponded.case, Some(ponded.ponding))),
+            None => equilibrium::solve(
+                &self.analysis,
+                &case,
+                &reference.state.positions,
+                &reference.state.unstressed_lengths,
+                settings,
+                observe,
+            )
+            .map(|solution| (solution, case, None)),
+        };
         match solved {
-            Ok(solution) => {
+            Ok((solution, case, ponding)) => {
                 let bare = Bare {
                     positions: &solution.positions,
                     axial_forces: &solution.axial_forces,
@@ -172,11 +177,17 @@ impl Plan {
                 // The last good state carries a share of the load; it is told under the loads that it carries.
                 let carried = case.scaled(&reference.state.unstressed_lengths, solution.load_factor);
                 let mut result = state_result(net, &carried, &reference.state.positions, &bare);
-                if solution.termination == Termination::Converged {
+                result.ponding = ponding;
+                let of_pond = result.ponding.as_ref().and_then(|ponding| cause_of_pond(net, ponding));
+                let grows = result.ponding.as_ref().is_some_and(|p| p.end == PondingEnd::Growing);
+                if solution.termination == Termination::Converged && !grows {
                     result.certificate = self.certificate(&carried, &bare);
                 }
                 let cause = match solution.termination {
-                    Termination::Converged | Termination::Cancelled => None,
+                    Termination::Cancelled => None,
+                    Termination::Converged => of_pond,
+                    // A pond that grew until nothing converged any more is the cause, not the last of its rounds.
+                    _ if grows => of_pond,
                     _ => Some(cause_of_stop(
                         net,
                         &Stop {

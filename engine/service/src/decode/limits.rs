@@ -9,7 +9,7 @@ use super::reasons;
 use crate::config::Limits;
 
 /// Skins and zones: each zone is compared with each panel.
-const MOST_AREAS: u32 = 10_000;
+const MOST_AREAS: u32 = 1000;
 /// Bytes of one element of a list: it must fit a message from the server, which stays below 1 MiB.
 const LARGEST_ELEMENT: usize = 900 * 1024;
 /// Bytes of what a frozen brief says in one message: title, remarks, labels, the actions of the reference state.

@@ -119,6 +119,7 @@ pub(crate) const PRESSURE_COEFFICIENT: Quantity = Quantity::signed("coefficient"
 pub(crate) const DRAG_COEFFICIENT: Quantity = Quantity::positive("drag coefficient", "", 1e-6, 1e3);
 pub(crate) const ICE_THICKNESS: Quantity = Quantity::positive("thickness of ice", "m", 1e-9, 10.0);
 pub(crate) const ICE_DENSITY: Quantity = Quantity::positive("density of ice", "kg/m3", 1e-3, 1e5);
+pub(crate) const WATER_DENSITY: Quantity = Quantity::positive("density of water", "kg/m3", 1e-3, 1e5);
 pub(crate) const MASS_PER_AREA: Quantity = Quantity::not_negative("mass per area", "kg/m2", 1e6);
 pub(crate) const TEMPERATURE_CHANGE: Quantity = Quantity::signed("change of temperature", "K", 1e3);
 pub(crate) const MOVEMENT: Quantity = Quantity::signed("movement", "m", 1e3);

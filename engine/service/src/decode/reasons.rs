@@ -134,6 +134,8 @@ reasons! {
     BAD_OUTLINE,
     /// A load gives different coefficients to a panel that lies in several zones.
     ZONES_CONTRADICT,
+    /// A case asks for ponding and for a path.
+    PONDING_WITH_PATH,
     /// A load needs a diameter that a section does not give.
     NO_DIAMETER,
     /// A prestress share takes away all of the tension.

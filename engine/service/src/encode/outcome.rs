@@ -1,9 +1,9 @@
 //! A state from its beginning to its closing words.
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::{CaseOutcome, Plan, ReferenceOutcome, StateResult};
+use ropewalk_numerics::brief::{CaseOutcome, LikelyCause, Plan, ReferenceOutcome, StateResult};
 use ropewalk_numerics::check::CaseDigest;
-use ropewalk_numerics::equilibrium::{IterationReport, Termination};
+use ropewalk_numerics::equilibrium::IterationReport;
 use ropewalk_numerics::model::{AxialLaw, Net, SegmentId};
 use ropewalk_numerics::shape::ShapeError;
 use v1::run_response::Event;
@@ -130,19 +130,17 @@ pub fn case(
             closing.load_factor = solution.load_factor;
             closing.iterations = iterations(&solution.history);
             closing.factorisations = solution.factorisations;
-            if solution.termination == Termination::Converged {
+            closing.ponding = result.ponding.as_ref().map(|ponding| surface::ponding(net, ponding));
+            if outcome.is_answered() {
                 closing.set_outcome(v1::CaseOutcome::Answered);
                 closing.worst_ratio = plan.worst_ratio(reference, case, &digest);
                 findings.extend(doubts::of_state(work, net, name, result));
             } else {
                 closing.set_outcome(v1::CaseOutcome::NotConverged);
-                let cause = cause.as_ref();
-                closing.failure = Some(failure::of_stop(
-                    name,
-                    solution.termination,
-                    solution.load_factor,
-                    cause,
-                ));
+                closing.failure = Some(match cause.as_ref() {
+                    Some(cause) if matches!(cause.likely, LikelyCause::Pond { .. }) => failure::of_pond(name, cause),
+                    cause => failure::of_stop(name, solution.termination, solution.load_factor, cause),
+                });
             }
             closing
         }
