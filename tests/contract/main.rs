@@ -2,6 +2,7 @@
 
 mod absurd;
 mod briefs;
+mod combinations;
 mod drafts;
 mod fields;
 mod freezing;

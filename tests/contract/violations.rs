@@ -1178,12 +1178,6 @@ fn parts_that_are_not_served() {
             json!({"on_surface": {"pressure_pa": 500}}),
             "actions[snow].loads[0].on_surface",
         ),
-        ("/factors", json!({}), "factors"),
-        (
-            "/combinations",
-            json!([{"set": "ultimate", "fundamental": {}}]),
-            "combinations[0]",
-        ),
         ("/checks/0", json!({"resistance": {}}), "checks[0].resistance"),
         ("/checks/0", json!({"service_stress": {}}), "checks[0].service_stress"),
         ("/checks/0", json!({"buckling": {}}), "checks[0].buckling"),

@@ -10,7 +10,8 @@ use ropewalk_numerics::brief::{
 use ropewalk_numerics::equilibrium::{Settings, Termination};
 use ropewalk_numerics::load::{Action, Load};
 use ropewalk_numerics::model::{
-    CableGiven, ElasticSupportGiven, Net, NetGiven, NodeGiven, NodeId, Section, StrutGiven, SupportGiven,
+    CableGiven, CableId, ElasticSupportGiven, Member, Net, NetGiven, NodeGiven, NodeId, Section, StrutGiven,
+    SupportGiven,
 };
 
 /// A net in the making.
@@ -23,6 +24,7 @@ pub(crate) struct Problem {
     hold: Vec<NodeId>,
     under: Vec<Load>,
     case: Vec<Load>,
+    removed: Vec<Member>,
 }
 
 /// What a problem answers.
@@ -135,6 +137,11 @@ impl Problem {
         self.case.push(load);
     }
 
+    /// Takes a rope out, in the case.
+    pub(crate) fn take_out(&mut self, cable: CableId) {
+        self.removed.push(Member::Cable(cable));
+    }
+
     /// A force (N) on one node, in the case.
     pub(crate) fn push_node(&mut self, node: NodeId, x: f64, y: f64, z: f64) {
         self.load(Load::Nodes {
@@ -187,6 +194,7 @@ impl Problem {
             cases: vec![CaseGiven {
                 name: "case".to_owned(),
                 factors: vec![(0, 1.0), (1, 1.0)],
+                removed: self.removed,
                 ..CaseGiven::default()
             }],
             effects: Vec::new(),

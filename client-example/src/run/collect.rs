@@ -71,7 +71,8 @@ impl Collector {
             Event::Finding(finding) => self.findings.push(finding),
             Event::Timing(timing) => self.timing = Some(timing),
             Event::Summary(summary) => self.summary = Some(summary),
-            Event::Progress(_) => {}
+            // Design effects and losses have no view yet.
+            Event::Progress(_) | Event::DesignEffect(_) | Event::LossTable(_) => {}
         }
         Ok(())
     }
