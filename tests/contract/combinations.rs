@@ -700,3 +700,34 @@ fn factors_on_effects_stand_beside_factors_on_actions() {
         summary.checks[0]
     );
 }
+
+#[test]
+fn a_frozen_brief_keeps_its_factors_and_rules() {
+    let work = work(&yard());
+    let plan = ropewalk_numerics::brief::Plan::new(work.brief.clone());
+    let found = plan.reference(&mut |_| std::ops::ControlFlow::Continue(()));
+    let parts = ropewalk_service::encode::freeze(&work, &plan, &found).expect("a frozen brief");
+    let bytes: Vec<u8> = (parts.iter())
+        .filter_map(|response| match &response.part {
+            Some(v1::freeze_response::Part::Brief(brief)) => Some(prost::Message::encode_to_vec(brief)),
+            _ => None,
+        })
+        .flatten()
+        .collect();
+    let frozen: v1::Brief = prost::Message::decode(bytes.as_slice()).expect("parts merge");
+    assert_eq!(
+        (&frozen.factors, &frozen.combinations),
+        (&work.message.factors, &work.message.combinations)
+    );
+}
+
+#[test]
+fn very_many_rules_and_classes_are_refused_before_anything_is_made() {
+    let rules: Vec<Value> = (0..1001)
+        .map(|_| json!({"set": "ultimate", "fundamental": {}}))
+        .collect();
+    check(&[("/combinations", json!(rules))], "TOO_MANY", "combinations");
+    let class = |number: usize| json!({"id": format!("c{number}"), "accidental": {}});
+    let classes: Vec<Value> = (0..1001).map(class).collect();
+    check(&[("/factors/classes", json!(classes))], "TOO_MANY", "factors.classes");
+}

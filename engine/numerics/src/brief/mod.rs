@@ -19,7 +19,7 @@ pub use cause::{Cause, Culprit, LikelyCause};
 pub use effect::{DesignEffect, EffectRule, FactorRules};
 pub use estimate::Estimate;
 pub use given::{Brief, CaseGiven, LoadPath};
-pub use loss::{Loss, LossExtreme};
+pub use loss::{Loss, LossExtreme, LossForce};
 pub use outcome::{CaseOutcome, EndForce, ReferenceOutcome, StateResult, SupportForce, Task};
 pub use path::PathResult;
 pub use plan::Plan;

@@ -129,11 +129,16 @@ fn a_loss_is_factored_per_quantity_in_any_order() {
         (loss.factor, &loss.cases[..], loss.unanswered.len()),
         (1.5, &[1][..], 0)
     );
-    assert_eq!(loss.largest_forces[2], None);
     // Without the bracing the carrying rope slackens: the state itself is worse than what the factor makes of it.
-    let largest = loss.largest_forces[0].expect("a force");
     assert!(expected < digests[1].axial_forces[0]);
-    assert_eq!((largest.value, largest.case), (digests[1].axial_forces[0], 1));
+    let [worst] = loss.worst[..] else {
+        panic!("one member is left: {loss:?}")
+    };
+    assert_eq!((worst.member, worst.case), (Member::Cable(CableId::new(0)), 1));
+    assert_eq!(
+        (worst.force, worst.share),
+        (digests[1].axial_forces[0], Some(worst.force / 82e3))
+    );
     // The envelope over states does not take what is out of the net for slack.
     assert!(summaries[0].envelopes[2].least.value > 1000.0);
 }
@@ -252,4 +257,65 @@ fn a_path_leads_through_the_cases() {
     let path = plan.path(&reference, 1, &mut run_on).expect("a path");
     close(path.movements[0], 0.0, 1e-9);
     close(path.tensions[0][0], reference.state.axial_forces[0], 1e-3);
+}
+
+/// Many ropes and cases, in two orders: a row keeps the worst ropes, each with the case that comes first in the brief.
+#[test]
+fn the_worst_of_a_loss_do_not_depend_on_the_order_of_cases() {
+    let mut sketch = Sketch::default();
+    for rope in 0..30 {
+        let (from, to) = (format!("a{rope}"), format!("b{rope}"));
+        sketch.held(&from, [0.0, f64::from(rope), 0.0]);
+        sketch.held(&to, [1.0, f64::from(rope), 0.0]);
+        sketch.cable(&format!("c{rope}"), section(1e6, 0.0), &format!("{from} {to}"));
+    }
+    let net = sketch.net();
+    let prestress = densities(&net, 1000.0);
+    let lacks = |number: usize| CaseGiven {
+        removed: vec![Member::Cable(CableId::new(0))],
+        ..case(&format!("case-{number}"), &[])
+    };
+    let plan = Plan::new(brief(net, prestress, Vec::new(), (0..40).map(lacks).collect()));
+    let reference = plan.reference(&mut run_on).expect("a reference state");
+    // Forces that repeat between ropes and cases, so that equals meet.
+    let digest = |number: usize| CaseDigest {
+        answered: true,
+        audited: true,
+        axial_forces: (0..30)
+            .map(|rope| f64::from(u32::try_from((rope * 7 + number * 11) % 13).expect("small")))
+            .collect(),
+        displacements: vec![Vector3::zeros(); 60],
+        support_forces: vec![None; 60],
+        removed: vec![crate::model::SegmentId::new(0)],
+        ..CaseDigest::default()
+    };
+    let all: Vec<usize> = (0..40).collect();
+    let rows = |order: &[usize]| {
+        let mut tally = Tally::new(&plan, &reference, &all);
+        for case in order {
+            tally.add(*case, &digest(*case));
+        }
+        tally.finish().losses
+    };
+    let forward = rows(&all);
+    let mut other: Vec<usize> = all.iter().map(|case| case * 17 % 40).collect();
+    assert_eq!(rows(&other), forward);
+    other.reverse();
+    assert_eq!(rows(&other), forward);
+    // By hand: of each rope the largest force and its first case, then the first twenty.
+    let mut expected: Vec<(f64, usize, usize)> = (1..30)
+        .map(|rope| {
+            let forces = all.iter().map(|case| (digest(*case).axial_forces[rope], *case));
+            let (force, case) = forces.fold((-1.0, 0), |best, next| if next.0 > best.0 { next } else { best });
+            (force, rope, case)
+        })
+        .collect();
+    expected.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));
+    let found: Vec<(f64, usize, usize)> = (forward[0].worst.iter())
+        .map(|worst| match worst.member {
+            Member::Cable(cable) => (worst.force, cable.index(), worst.case),
+            Member::Strut(_) => panic!("no strut"),
+        })
+        .collect();
+    assert_eq!(found, expected[..20]);
 }
