@@ -3,6 +3,7 @@
 mod absurd;
 mod briefs;
 mod checks;
+mod combinations;
 mod diagnosis;
 mod drafts;
 mod fields;

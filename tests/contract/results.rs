@@ -9,7 +9,7 @@ use ropewalk_numerics::brief::{CaseOutcome, Cause, Culprit, LikelyCause};
 use ropewalk_numerics::equilibrium::{SolveError, Termination};
 use ropewalk_numerics::model::NodeId;
 use ropewalk_service::decode::Work;
-use ropewalk_service::encode::{Tally, case, closing, engine_error, id_tables, reference, started};
+use ropewalk_service::encode::{Tally, case, closing, design_effect, engine_error, id_tables, reference, started};
 use serde_json::json;
 use v1::run_response::Event;
 
@@ -33,7 +33,9 @@ pub(crate) fn run(work: &Work, cases: &[usize]) -> Vec<Event> {
             let outcome = plan.case(found, *index, &mut |_| ControlFlow::Continue(()));
             let (said, noted) = case(work, &plan, found, *index, &outcome);
             messages.extend(said);
-            tally.add(*index, &noted);
+            for effect in tally.add(*index, &noted) {
+                messages.extend(design_effect(work, &plan, found, &effect));
+            }
         }
     }
     messages.extend(closing(work, &plan, tally));
