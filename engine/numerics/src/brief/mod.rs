@@ -5,6 +5,7 @@ mod estimate;
 mod given;
 mod outcome;
 mod plan;
+mod sizing;
 mod state;
 mod summary;
 mod tally;
@@ -17,6 +18,7 @@ pub use estimate::Estimate;
 pub use given::{Brief, CaseGiven};
 pub use outcome::{CaseOutcome, EndForce, ReferenceOutcome, StateResult, SupportForce, Task};
 pub use plan::Plan;
+pub use sizing::{Sizing, SizingNeed, SizingOutcome, SizingRound, SizingStep, SizingUnit, size};
 pub use summary::{Caution, Summary};
 pub use tally::Tally;
 

@@ -6,7 +6,7 @@ use nalgebra::Vector3;
 use nalgebra_sparse::{CooMatrix, CsrMatrix};
 
 use super::support::{ElasticSupport, ElasticSupportGiven, Support, SupportGiven};
-use super::violations::violations;
+use super::violations::{check_section, violations};
 use super::{CableId, NetError, NodeId, Section, SegmentId, StrutId};
 
 /// A node as given.
@@ -335,6 +335,28 @@ impl Net {
                 .collect(),
             branch_node,
         })
+    }
+
+    /// The same net with other sections.
+    ///
+    /// `sections`: one a segment.
+    ///
+    /// # Errors
+    /// Every [`NetError`] of a section that no net can have.
+    ///
+    /// # Panics
+    /// If there are not as many sections as segments.
+    pub fn with_sections(&self, sections: &[Section]) -> Result<Self, Vec<NetError>> {
+        assert_eq!(sections.len(), self.segments.len(), "one section a segment");
+        let mut errors = Vec::new();
+        let mut net = self.clone();
+        for (index, section) in sections.iter().enumerate() {
+            if net.segments[index].section != *section {
+                check_section(self.member_name(SegmentId::new(index)), section, &mut errors);
+                net.segments[index].section = *section;
+            }
+        }
+        if errors.is_empty() { Ok(net) } else { Err(errors) }
     }
 
     /// Nodes in the order given.

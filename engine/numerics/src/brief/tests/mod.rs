@@ -1,6 +1,7 @@
 //! Briefs from end to end.
 
 mod outcomes;
+mod sizing;
 mod worked_numbers;
 
 use std::ops::ControlFlow;
