@@ -6,8 +6,8 @@ use clap::{Parser, Subcommand};
 
 const AFTER: &str = "\
 Exit codes:
-  0   the verdict is: passes; for check and freeze: done
-  1   the verdict is: exceeds
+  0   the verdict is: passes; for check and freeze: done; for compare: nothing differs
+  1   the verdict is: exceeds; for compare: something differs
   2   the verdict is: not judged
   3   the verdict is: no answer; for freeze: there is no reference state
   64  the brief or the command line has errors
@@ -68,5 +68,22 @@ pub(crate) enum Command {
         /// File for the frozen brief
         #[arg(short, long, value_name = "FILE")]
         output: PathBuf,
+    },
+    /// Tell what differs between two briefs, two folders of results, or a brief and results, by id
+    #[command(after_help = AFTER)]
+    Compare {
+        /// A brief, or a folder that `run` wrote
+        #[arg(value_name = "A")]
+        a: PathBuf,
+        /// Another one
+        #[arg(value_name = "B")]
+        b: PathBuf,
+        /// Pass over differences of results up to this: force=0.1 (kN), share=1 (% of the force), length=1 (mm),
+        /// angle=1 (deg), ratio=1 (% points) are the defaults; forces must exceed both; may be given several times
+        #[arg(long, value_name = "NAME=NUMBER")]
+        above: Vec<String>,
+        /// Folder for everything that differs, as CSV
+        #[arg(long, value_name = "DIR")]
+        out: Option<PathBuf>,
     },
 }

@@ -9,6 +9,8 @@ pub(crate) enum End {
     Exceeds,
     NotJudged,
     NoAnswer,
+    /// What was compared is not the same.
+    Differs,
     BriefHasErrors,
     EngineAway,
     EngineFailed,
@@ -20,7 +22,7 @@ impl End {
     pub(crate) fn code(self) -> u8 {
         match self {
             Self::Passes => 0,
-            Self::Exceeds => 1,
+            Self::Exceeds | Self::Differs => 1,
             Self::NotJudged => 2,
             Self::NoAnswer => 3,
             Self::BriefHasErrors => 64,

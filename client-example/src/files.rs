@@ -8,10 +8,10 @@ use std::path::{Path, PathBuf};
 use prost::Message as _;
 use serde_json::{Map, Value, json};
 
-use crate::brief_file::message_json;
+use crate::brief_file::{self, message_json};
 use crate::colour::Scale;
 use crate::escape::{csv_text, file_name};
-use crate::run::{Column, Run, State};
+use crate::run::{Column, Run, State, record};
 use crate::sheet::{self, Sheet};
 use crate::{draw, json_text, report};
 
@@ -37,19 +37,21 @@ pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::E
     fs::create_dir_all(folder).map_err(|error| (folder.to_owned(), error))?;
     let mut count = 1;
     let mut list = begin_list(folder)?;
-    let mut put = |name: &str, text: &str| -> Result<(), (PathBuf, io::Error)> {
+    let mut put = |name: &str, content: &[u8]| -> Result<(), (PathBuf, io::Error)> {
         // Listed before it is there: a run that is stopped while it writes leaves nothing unlisted.
         writeln!(list, "{name}").map_err(|error| (folder.join(LIST), error))?;
         let path = folder.join(name);
         count += 1;
-        fs::write(&path, text).map_err(|error| (path, error))
+        fs::write(&path, content).map_err(|error| (path, error))
     };
-    put("results.json", &results(run))?;
-    put("nodes.csv", &nodes(run))?;
-    put("segments.csv", &segments(run))?;
+    put("brief.json", brief_file::to_json(&run.brief).as_bytes())?;
+    put(record::FILE, &run.record)?;
+    put("results.json", results(run).as_bytes())?;
+    put("nodes.csv", nodes(run).as_bytes())?;
+    put("segments.csv", segments(run).as_bytes())?;
     let sheets = all_sheets(run);
     for sheet in &sheets {
-        put(&format!("{}.csv", sheet.file), &sheet.csv())?;
+        put(&format!("{}.csv", sheet.file), sheet.csv().as_bytes())?;
     }
     let scale = scale(run);
     let mut names = BTreeSet::new();
@@ -73,14 +75,14 @@ pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::E
                 .into_iter()
                 .find(|name| names.insert(name.to_lowercase()))
                 .expect("numbers do not run out");
-            put(&format!("plan-{name}.svg"), &plan)?;
+            put(&format!("plan-{name}.svg"), plan.as_bytes())?;
         }
     }
     if let Some(sections) = draw::sections(run) {
-        put("sections.svg", &sections)?;
+        put("sections.svg", sections.as_bytes())?;
     }
     let on_page: Vec<Sheet> = sheets.into_iter().filter(|sheet| sheet.file != "anchors").collect();
-    put("report.html", &report::page(run, &on_page, &scale))?;
+    put("report.html", report::page(run, &on_page, &scale).as_bytes())?;
     Ok(Written {
         files: count,
         plans_left_out: drawn.len().saturating_sub(PLANS),
@@ -111,20 +113,26 @@ fn is_ours(name: &str) -> bool {
     let path = Path::new(name);
     let plain = path.file_name().is_some_and(|last| last == path.as_os_str());
     let kind = path.extension().and_then(|ending| ending.to_str());
-    plain && kind.is_some_and(|kind| ["csv", "html", "json", "svg"].contains(&kind))
+    plain && kind.is_some_and(|kind| ["binpb", "csv", "html", "json", "svg"].contains(&kind))
 }
 
 /// All sheets, in the order in which they are read.
 pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
-    vec![
+    let mut sheets = vec![
         sheet::checks(run),
         sheet::cases(run),
         sheet::ropes(run),
         sheet::struts(run),
         sheet::anchor_peaks(run),
+        sheet::anchor_sets(run),
         sheet::anchors(run),
         sheet::sums(run),
-    ]
+    ];
+    // Of interest only where it was asked for.
+    if !run.diagnoses.is_empty() {
+        sheets.push(sheet::diagnoses(run));
+    }
+    sheets
 }
 
 /// One scale for all states, so that colours can be compared.
@@ -303,8 +311,8 @@ mod tests {
             let written = write(&sample::run_named(names), &base.join(folder)).unwrap();
             assert_eq!(
                 written.files,
-                3 + 7 + 3 + 1 + 1 + 1,
-                "tables, sheets, plans, sections, page, list"
+                5 + 8 + 3 + 1 + 1 + 1,
+                "brief, record, tables, sheets, plans, sections, page, list"
             );
         }
         let mut listed: Vec<_> = fs::read_dir(base.join("a"))

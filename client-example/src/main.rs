@@ -6,6 +6,7 @@ mod args;
 mod brief_file;
 mod colour;
 mod commands;
+mod compare;
 mod draw;
 mod end;
 mod engine;
@@ -75,6 +76,7 @@ async fn execute(args: Args) -> Result<End, Stop> {
         Command::Demo { out } => commands::demo(url, out).await,
         Command::Run { briefs, out, only } => commands::run(url, &briefs, out, only).await,
         Command::Check { briefs, values } => commands::check(url, &briefs, values).await,
+        Command::Compare { a, b, above, out } => compare::run(&a, &b, &above, out.as_deref()),
         Command::Freeze { briefs, output } => commands::freeze(url, &briefs, &output).await,
     }
 }

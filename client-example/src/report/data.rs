@@ -4,6 +4,7 @@ use serde_json::{Value, json};
 
 use crate::colour::{self, Scale};
 use crate::run::{Member, Run, State};
+use crate::sheet;
 
 /// Numbers that a page may hold; states beyond it show their words only.
 const NUMBERS: usize = 4_000_000;
@@ -50,6 +51,9 @@ pub(crate) fn data(run: &Run, scale: &Scale) -> Value {
         "supports": run.supports,
         "reference": flat(&reference, 4),
         "states": states,
+        "worst": worst(run),
+        "top": top_share(run),
+        "pullScale": pull_scale(run),
         "scale": {
             "colours": (0..=64).map(|step| colour::at(f64::from(step) / 64.0)).collect::<Vec<_>>(),
             "low": scale.ends_kn()[0], "high": scale.ends_kn()[1], "log": scale.logarithmic,
@@ -93,6 +97,12 @@ fn state_data(run: &Run, state: &State, room: &mut usize) -> Value {
     value["moves"] = json!(flat(&moves, 5));
     value["kn"] = json!(scale);
     value["slack"] = json!(slack);
+    let loads = &state.summary.load_sum_n;
+    value["loads"] = json!(
+        (0..3)
+            .map(|axis| rounded(loads.get(axis).copied().unwrap_or(0.0) / 1e3, 3))
+            .collect::<Vec<_>>()
+    );
     let pulls = state.vectors("support_force_n").unwrap_or_default();
     value["pulls"] = json!(
         pulls
@@ -101,6 +111,79 @@ fn state_data(run: &Run, state: &State, room: &mut usize) -> Value {
             .collect::<Vec<_>>()
     );
     value
+}
+
+/// The largest tension of each rope segment and the largest pull on each anchor over all answered states, with the positions
+/// of the states they come from; -1: the reference state.
+fn worst(run: &Run) -> Value {
+    let envelope = |name: &str| run.envelope.get(name).map(|column| column.values.as_slice());
+    let state_of = |position: f64| -> i64 {
+        let id = sheet::envelope_case(run, position);
+        let found = run.states.iter().position(|state| state.id == id);
+        found.and_then(|at| i64::try_from(at).ok()).unwrap_or(-1)
+    };
+    let states = |name: &str| -> Vec<i64> {
+        let positions = envelope(name).unwrap_or_default();
+        positions.iter().map(|&position| state_of(position)).collect()
+    };
+    // Struts have no envelope.
+    let kn: Option<Vec<Option<f64>>> = envelope("tension_max_n").map(|most| {
+        let ropes = most.iter().map(|force| Some(rounded(force / 1e3, 3)));
+        ropes
+            .chain(std::iter::repeat_n(None, run.segments.len().saturating_sub(most.len())))
+            .collect()
+    });
+    let lows = envelope("tension_min_n").unwrap_or_default();
+    let slack: Vec<usize> = (0..lows.len()).filter(|&at| lows[at] <= 0.0).collect();
+    let mut pulls = vec![([0.0; 3], -1_i64); run.supports.len()];
+    for (at, state) in run.states.iter().enumerate().filter(|(_, state)| state.answered()) {
+        for (worst, force) in pulls
+            .iter_mut()
+            .zip(state.vectors("support_force_n").unwrap_or_default())
+        {
+            let size = |force: [f64; 3]| force.iter().map(|part| part * part).sum::<f64>();
+            if size(force) > size(worst.0) {
+                *worst = (force, i64::try_from(at).unwrap_or(-1));
+            }
+        }
+    }
+    json!({
+        "kn": kn,
+        "from": states("tension_max_case"),
+        "slack": slack,
+        "slackFrom": states("tension_min_case"),
+        "pulls": pulls.iter().map(|(force, _)| force.map(|part| rounded(-part / 1e3, 3))).collect::<Vec<_>>(),
+        "pullFrom": pulls.iter().map(|(_, from)| from).collect::<Vec<_>>(),
+    })
+}
+
+/// Upper end of the scale of shares of breaking forces: the next tenth above the largest, at most 1; 0 without any.
+pub(super) fn top_share(run: &Run) -> f64 {
+    let Some(most) = run.envelope.get("tension_max_n") else {
+        return 0.0;
+    };
+    let mut largest = 0.0_f64;
+    for (cable, segments) in run.cables.iter().zip(run.cable_segments()) {
+        let forces = run
+            .cable(cable)
+            .map(|cable| run.breaking_forces(cable))
+            .unwrap_or_default();
+        for (segment, force) in segments.into_iter().zip(forces) {
+            if let (Some(tension), Some(force)) = (most.values.get(segment), force) {
+                largest = largest.max(tension / force);
+            }
+        }
+    }
+    (largest * 10.0).ceil().min(10.0) / 10.0
+}
+
+/// Size of the largest pull (kN), against which a sum is zero or not.
+fn pull_scale(run: &Run) -> f64 {
+    let states = run.states.iter().filter(|state| state.answered());
+    let pulls = states.flat_map(|state| state.vectors("support_force_n").unwrap_or_default());
+    pulls
+        .map(|force| force.iter().map(|part| part * part).sum::<f64>().sqrt() / 1e3)
+        .fold(0.0, f64::max)
 }
 
 fn flat(vectors: &[[f64; 3]], decimals: usize) -> Vec<f64> {

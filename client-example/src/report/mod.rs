@@ -1,6 +1,7 @@
 //! One page that holds everything: no network, no other file, readable on a phone and on paper.
 
 mod data;
+mod pictures;
 
 use ropewalk_api::ropewalk::v1;
 
@@ -8,11 +9,18 @@ use crate::colour::Scale;
 use crate::draw;
 use crate::escape::{markup, script_json};
 use crate::refusal::{count_words, severity_rank, severity_word};
-use crate::run::{Run, State};
+use crate::run::Run;
 use crate::sheet::{self, Sheet};
 
 const STYLE: &str = include_str!("report.css");
-const SCRIPT: &str = include_str!("report.js");
+/// Parts of the script in their order: what all share comes first.
+const SCRIPT: [&str; 5] = [
+    include_str!("wide.js"),
+    include_str!("common.js"),
+    include_str!("shape.js"),
+    include_str!("tension_map.js"),
+    include_str!("together.js"),
+];
 
 /// Findings that the page lists.
 const FINDINGS: usize = 200;
@@ -23,9 +31,15 @@ pub(crate) fn page(run: &Run, sheets: &[Sheet], scale: &Scale) -> String {
     body.push_str(&head(run));
     body.push_str(&cautions(run, "Cautions"));
     body.push_str(&causes(run));
-    body.push_str(&shape(run, scale));
+    body.push_str(&pictures::shape(run, scale));
     for sheet in sheets {
         body.push_str(&sheet::html(sheet));
+        match sheet.file {
+            // What a sheet tells in numbers is drawn behind it.
+            "checks" => body.push_str(&pictures::tension_map(run)),
+            "anchor-sets" => body.push_str(&pictures::together(run)),
+            _ => {}
+        }
     }
     body.push_str(&convergence(run));
     body.push_str(&drawings(run, scale));
@@ -38,10 +52,11 @@ pub(crate) fn page(run: &Run, sheets: &[Sheet], scale: &Scale) -> String {
          <meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; style-src 'unsafe-inline'; \
          script-src 'unsafe-inline'; img-src data:\">\n\
          <title>{}: {}</title>\n<style>\n{STYLE}</style>\n</head>\n<body>\n{body}\
-         <script type=\"application/json\" id=\"run-data\">{}</script>\n<script>\n{SCRIPT}</script>\n</body>\n</html>\n",
+         <script type=\"application/json\" id=\"run-data\">{}</script>\n<script>\n{}</script>\n</body>\n</html>\n",
         markup(run.title()),
         sheet::verdict_word(run.summary.verdict()),
-        script_json(&data::data(run, scale))
+        script_json(&data::data(run, scale)),
+        SCRIPT.concat()
     )
 }
 
@@ -123,64 +138,6 @@ fn causes(run: &Run) -> String {
         })
         .collect();
     format!("<section class=\"causes\"><h2>Without an answer</h2><ol>{items}</ol></section>\n")
-}
-
-fn shape(run: &Run, scale: &Scale) -> String {
-    if run
-        .reference()
-        .is_none_or(|state| state.vectors("position_m").is_none())
-    {
-        return "<section><h2>Shape</h2><p class=\"note\">No state was found, so there is nothing to show.</p></section>\n".to_owned();
-    }
-    let ordered = sheet::by_need(run);
-    let shown: Vec<&State> = run
-        .reference()
-        .into_iter()
-        .chain(ordered.into_iter().filter(|state| state.id != "reference"))
-        .collect();
-    let options: String = shown
-        .iter()
-        .filter_map(|state| {
-            let position = run.states.iter().position(|other| other.id == state.id)?;
-            let told = match state.summary.worst_ratio {
-                _ if !state.answered() => " (no answer)".to_owned(),
-                Some(ratio) => format!(" ({} %)", crate::number::percent(ratio)),
-                None => String::new(),
-            };
-            Some(format!(
-                "<option value=\"{position}\">{}{told}</option>",
-                markup(&state.id)
-            ))
-        })
-        .collect();
-    let ticks: String = scale
-        .ticks()
-        .iter()
-        .map(|(tick, text)| format!("<i style=\"left:{:.2}%\">{text}</i>", scale.share(tick * 1e3) * 100.0))
-        .collect();
-    let stops: Vec<String> = (0..=16).map(|step| crate::colour::at(f64::from(step) / 16.0)).collect();
-    let kind = if scale.logarithmic {
-        "tension, kN, log scale"
-    } else {
-        "tension, kN"
-    };
-    format!(
-        "<section id=\"shape\"><h2>Shape</h2>\n<div class=\"tools\">\
-         <label>state <select id=\"state\">{options}</select></label>\
-         <label>movements <select id=\"times\"><option>1</option><option>2</option><option>5</option><option>10</option>\
-         <option>20</option></select> times</label>\
-         <span class=\"views\"><button type=\"button\" data-view=\"askew\">askew</button><button type=\"button\" data-view=\"plan\">plan</button>\
-         <button type=\"button\" data-view=\"x\">along x</button><button type=\"button\" data-view=\"y\">along y</button></span>\
-         <label><input type=\"checkbox\" id=\"pulls\" checked> anchor pulls</label></div>\n\
-         <p id=\"acting\" class=\"note\"></p>\n\
-         <div class=\"stage\"><canvas id=\"net\" tabindex=\"0\" aria-label=\"Shape of the net in space. Drag or use the arrow keys to turn it, plus and minus to zoom.\"></canvas>\
-         <output id=\"told\"></output></div>\n\
-         <div class=\"legend\"><span>{kind}</span><div class=\"bar\" style=\"background:linear-gradient(to right,{})\"></div><div class=\"ticks\">{ticks}</div></div>\n\
-         <p class=\"note key\"><span class=\"slack\"></span> slack <span class=\"strut\"></span> strut <span class=\"held\"></span> support \
-         <span class=\"before\"></span> reference state. Drag to turn, two fingers or wheel to zoom, shift and drag to move; \
-         arrow keys, + and − do the same. Point at a rope for its numbers.</p>\n</section>\n",
-        stops.join(",")
-    )
 }
 
 fn convergence(run: &Run) -> String {

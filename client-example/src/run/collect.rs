@@ -2,6 +2,7 @@
 
 use std::collections::{BTreeMap, HashMap};
 
+use prost::Message as _;
 use ropewalk_api::ropewalk::v1;
 use ropewalk_api::ropewalk::v1::run_response::Event;
 
@@ -28,20 +29,36 @@ struct Table {
 /// Takes events one by one.
 #[derive(Debug, Default)]
 pub(crate) struct Collector {
+    /// What was asked and answered, as `run/record.rs` tells.
+    record: Vec<u8>,
     started: Option<v1::Started>,
     tables: BTreeMap<i32, Table>,
     columns: BTreeMap<String, BTreeMap<String, (Column, usize)>>,
     begun: Vec<v1::CaseBegin>,
     ended: Vec<v1::CaseSummary>,
     findings: Vec<v1::Finding>,
+    diagnoses: Vec<v1::StateDiagnosis>,
     timing: Option<v1::Timing>,
     summary: Option<v1::Summary>,
 }
 
 impl Collector {
+    /// A collector of what answers a request.
+    pub(crate) fn of(request: &v1::RunRequest) -> Self {
+        Self {
+            record: request.encode_length_delimited_to_vec(),
+            ..Self::default()
+        }
+    }
+
     /// Whether the engine took the brief and began to answer.
     pub(crate) fn has_begun(&self) -> bool {
         self.started.is_some()
+    }
+
+    /// Whether the summary came.
+    pub(crate) fn is_whole(&self) -> bool {
+        self.summary.is_some()
     }
 
     /// States that are closed so far.
@@ -57,6 +74,7 @@ impl Collector {
         if self.summary.is_some() {
             return Err(odd("events after the summary"));
         }
+        let event = self.keep(event);
         match event {
             Event::Started(started) => self.started = Some(started),
             Event::Ids(part) => self.take_ids(part)?,
@@ -71,9 +89,26 @@ impl Collector {
             Event::Finding(finding) => self.findings.push(finding),
             Event::Timing(timing) => self.timing = Some(timing),
             Event::Summary(summary) => self.summary = Some(summary),
-            Event::Progress(_) => {}
+            Event::Diagnosis(part) => self.diagnoses.push(part),
+            Event::Panels(_)
+            | Event::LoadPicture(_)
+            | Event::Progress(_)
+            | Event::DesignEffect(_)
+            | Event::LossTable(_) => {}
         }
         Ok(())
+    }
+
+    /// Writes an event into the record; progress and wall times are left out, so that equal runs give equal records.
+    fn keep(&mut self, event: Event) -> Event {
+        if matches!(event, Event::Progress(_) | Event::Timing(_)) {
+            return event;
+        }
+        let response = v1::RunResponse { event: Some(event) };
+        response
+            .encode_length_delimited(&mut self.record)
+            .expect("memory takes every message");
+        response.event.expect("it was put there")
     }
 
     fn take_ids(&mut self, part: v1::IdTable) -> Result<(), Oddity> {
@@ -198,9 +233,11 @@ impl Collector {
             states: Vec::new(),
             envelope: BTreeMap::new(),
             findings: std::mem::take(&mut self.findings),
+            diagnoses: std::mem::take(&mut self.diagnoses),
             summary,
             timing: self.timing.take(),
             broken_off,
+            record: std::mem::take(&mut self.record),
         };
         run.segments = self.segments(&run)?;
         run.supports = self.supports(&run)?;

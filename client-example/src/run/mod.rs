@@ -1,7 +1,9 @@
 //! A run as it came over the wire, put together: the only thing that tables and drawings read.
 
 mod collect;
+mod factors;
 mod member;
+pub(crate) mod record;
 
 use std::collections::BTreeMap;
 
@@ -91,10 +93,14 @@ pub(crate) struct Run {
     pub(crate) states: Vec<State>,
     pub(crate) envelope: BTreeMap<String, Column>,
     pub(crate) findings: Vec<v1::Finding>,
+    /// What was found of states beside their balance, in order.
+    pub(crate) diagnoses: Vec<v1::StateDiagnosis>,
     pub(crate) summary: v1::Summary,
     pub(crate) timing: Option<v1::Timing>,
     /// Why the stream broke off before its summary; none where it came whole.
     pub(crate) broken_off: Option<String>,
+    /// The request and its events, encoded: what `record::read` makes this run of again.
+    pub(crate) record: Vec<u8>,
 }
 
 impl Run {

@@ -37,7 +37,10 @@ pub(crate) fn run() -> Run {
 }
 
 pub(crate) fn run_named(names: Names) -> Run {
-    let mut collector = Collector::default();
+    let mut collector = Collector::of(&v1::RunRequest {
+        brief: Some(brief_named(names)),
+        only: Vec::new(),
+    });
     for event in events_named(names) {
         collector.take(event).unwrap();
     }

@@ -7,28 +7,33 @@ use crate::run::{Run, State};
 
 /// The pull on an anchor: the opposite of the support's force on the net.
 #[derive(Clone, Copy, Debug, PartialEq)]
-struct Pull {
+pub(super) struct Pull {
     /// Components along x, y and z, up (N).
-    parts: [f64; 3],
+    pub(super) parts: [f64; 3],
 }
 
 impl Pull {
-    fn size(self) -> f64 {
+    pub(super) fn size(self) -> f64 {
         self.parts.iter().map(|part| part * part).sum::<f64>().sqrt()
     }
 
+    /// Horizontal part (N).
+    pub(super) fn level(self) -> f64 {
+        self.parts[0].hypot(self.parts[1])
+    }
+
     /// Angle in plan, from x towards y (deg).
-    fn plan_deg(self) -> f64 {
+    pub(super) fn plan_deg(self) -> f64 {
         self.parts[1].atan2(self.parts[0]).to_degrees()
     }
 
     /// Angle above the horizontal (deg).
-    fn up_deg(self) -> f64 {
-        self.parts[2].atan2(self.parts[0].hypot(self.parts[1])).to_degrees()
+    pub(super) fn up_deg(self) -> f64 {
+        self.parts[2].atan2(self.level()).to_degrees()
     }
 }
 
-fn pulls(state: &State) -> Vec<Pull> {
+pub(super) fn pulls(state: &State) -> Vec<Pull> {
     let forces = state.vectors("support_force_n").unwrap_or_default();
     // Zero stays zero: a force of -0 would read oddly.
     forces
@@ -89,6 +94,7 @@ pub(crate) fn anchors(run: &Run) -> Sheet {
                     Cell::text(&run.nodes[node]),
                     Cell::text(&state.id),
                     Cell::text(state.sets.join(", ")),
+                    Cell::text(run.factoring(state).word()),
                     hx,
                     hy,
                     v,
@@ -114,6 +120,7 @@ pub(crate) fn anchors(run: &Run) -> Sheet {
             head("anchor", ""),
             head("case", ""),
             head("sets", ""),
+            head("factors", ""),
             head("Hx", "kN"),
             head("Hy", "kN"),
             head("V up", "kN"),
@@ -128,7 +135,7 @@ pub(crate) fn anchors(run: &Run) -> Sheet {
     }
 }
 
-/// One row an anchor: its largest pull, its largest uplift, and whether the vertical force turns round.
+/// One row an anchor: its largest pull, its largest uplift, and which of its components turn round.
 pub(crate) fn anchor_peaks(run: &Run) -> Sheet {
     let answered: Vec<(&State, Vec<Pull>)> = run
         .states
@@ -153,10 +160,6 @@ pub(crate) fn anchor_peaks(run: &Run) -> Sheet {
         else {
             continue;
         };
-        let lowest = of_node
-            .iter()
-            .map(|(_, pull)| pull.parts[2])
-            .fold(f64::INFINITY, f64::min);
         let judged = of_node
             .iter()
             .filter_map(|(state, pull)| Some((limit(run, node, state)?, pull.size())));
@@ -164,8 +167,7 @@ pub(crate) fn anchor_peaks(run: &Run) -> Sheet {
             .map(|(limit, size)| (size / limit, limit))
             .max_by(|a, b| a.0.total_cmp(&b.0));
         let lifts = up.parts[2] > 0.0;
-        // Rounding noise is no reversal: a thousandth of the pull counts.
-        let turns = lifts && lowest < 0.0 && lowest.abs().min(up.parts[2]) > 1e-3 * pull.size();
+        let turns = reversals(&of_node, pull.size());
         let [hx, hy, v] = Cell::components(pull.parts.map(|part| part / 1e3), pull.size() / 1e3);
         let row = Row {
             cells: vec![
@@ -184,7 +186,7 @@ pub(crate) fn anchor_peaks(run: &Run) -> Sheet {
                     Cell::text("none")
                 },
                 if lifts { Cell::text(&up_state.id) } else { Cell::Empty },
-                Cell::text(if turns { "yes" } else { "no" }),
+                Cell::text(turns),
                 Cell::maybe(used.map(|(_, limit)| Cell::three(limit / 1e3))),
                 Cell::maybe(used.map(|(used, _)| Cell::percent(used))),
             ],
@@ -213,12 +215,28 @@ pub(crate) fn anchor_peaks(run: &Run) -> Sheet {
             head("case", ""),
             head("largest uplift", "kN"),
             head("case of uplift", ""),
-            head("V reverses", ""),
+            head("reverses", ""),
             head("limit", "kN"),
             head("used", "%"),
         ],
         rows: keyed.into_iter().map(|(_, row)| row).collect(),
         note: NOTE,
+    }
+}
+
+/// Components that point one way in one state and the other way in another: "Hx, V". Rounding noise is no reversal: a
+/// thousandth of the largest pull counts.
+fn reversals(of_node: &[(&State, Pull)], largest: f64) -> String {
+    let turns = ["Hx", "Hy", "V"].into_iter().enumerate().filter(|(axis, _)| {
+        let parts = of_node.iter().map(|(_, pull)| pull.parts[*axis]);
+        let (low, high) = parts.fold((0.0_f64, 0.0_f64), |(low, high), part| (low.min(part), high.max(part)));
+        high.min(-low) > 1e-3 * largest
+    });
+    let turns: Vec<&str> = turns.map(|(_, name)| name).collect();
+    if turns.is_empty() {
+        "no".to_owned()
+    } else {
+        turns.join(", ")
     }
 }
 

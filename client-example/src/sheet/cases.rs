@@ -18,7 +18,7 @@ pub(crate) fn way_words(way: v1::SolutionWay) -> &'static str {
 }
 
 /// An outcome, in words.
-fn outcome_words(state: &State) -> &'static str {
+pub(crate) fn outcome_words(state: &State) -> &'static str {
     match state.summary.outcome() {
         v1::CaseOutcome::Answered if state.summary.audited => "converged",
         v1::CaseOutcome::Answered => "converged, audit failed",

@@ -1,8 +1,10 @@
 //! Sheets to decide by: each is made once and then written for the terminal, as CSV and as HTML, so that they agree.
 
+mod anchor_sets;
 mod anchors;
 mod cases;
 mod checks;
+mod diagnosis;
 mod page;
 mod ropes;
 mod text;
@@ -12,9 +14,11 @@ use crate::escape;
 use crate::number;
 use crate::run::Run;
 
+pub(crate) use anchor_sets::anchor_sets;
 pub(crate) use anchors::{anchor_peaks, anchors};
-pub(crate) use cases::{by_need, cases, causes, sums, way_words};
+pub(crate) use cases::{by_need, cases, causes, outcome_words, sums, way_words};
 pub(crate) use checks::checks;
+pub(crate) use diagnosis::diagnoses;
 pub(crate) use page::html;
 pub(crate) use ropes::{ropes, struts};
 pub(crate) use text::{terminal, wrap};
@@ -41,6 +45,8 @@ pub(crate) enum Cell {
     Text(String),
     Number(f64, Show),
     Count(u64),
+    /// A range and a place in it, as shares of the width of the column: least, reference, most. For pages only.
+    Range([f64; 3]),
     /// Nothing to tell.
     Empty,
 }
@@ -81,6 +87,7 @@ impl Cell {
             Self::Number(number, Show::Decimals(decimals)) => number::fixed(*number, *decimals),
             Self::Number(number, Show::Order) => number::order(*number),
             Self::Count(count) => count.to_string(),
+            Self::Range(_) => String::new(),
             Self::Empty => "–".to_owned(),
         }
     }
@@ -92,7 +99,7 @@ impl Cell {
             Self::Number(number, Show::Percent) => format!("{}", number::clean(number * 100.0)),
             Self::Number(number, _) => format!("{}", number::clean(*number)),
             Self::Count(count) => count.to_string(),
-            Self::Empty => String::new(),
+            Self::Range(_) | Self::Empty => String::new(),
         }
     }
 
@@ -118,6 +125,7 @@ pub(crate) enum Place {
     Everywhere,
     PageAndFile,
     FileOnly,
+    PageOnly,
 }
 
 pub(crate) const fn head(title: &'static str, unit: &'static str) -> Head {
@@ -195,14 +203,21 @@ pub(crate) struct Sheet {
 impl Sheet {
     /// The whole sheet as CSV (RFC 4180, UTF-8), units in the heads.
     pub(crate) fn csv(&self) -> String {
-        let heads = self.heads.iter().map(|head| match head.unit {
-            "" => escape::csv_text(head.title),
-            unit => escape::csv_text(&format!("{} ({unit})", head.title)),
-        });
+        let columns: Vec<usize> = (0..self.heads.len())
+            .filter(|&column| self.heads[column].place != Place::PageOnly)
+            .collect();
+        let heads = columns
+            .iter()
+            .map(|&column| &self.heads[column])
+            .map(|head| match head.unit {
+                "" => escape::csv_text(head.title),
+                unit => escape::csv_text(&format!("{} ({unit})", head.title)),
+            });
         let mut text = heads.collect::<Vec<_>>().join(",");
         text.push_str("\r\n");
         for row in &self.rows {
-            text.push_str(&row.cells.iter().map(Cell::csv).collect::<Vec<_>>().join(","));
+            let cells = columns.iter().map(|&column| row.cells[column].csv());
+            text.push_str(&cells.collect::<Vec<_>>().join(","));
             text.push_str("\r\n");
         }
         text
@@ -210,7 +225,7 @@ impl Sheet {
 }
 
 /// The case that a position in an envelope stands for.
-fn envelope_case(run: &Run, position: f64) -> &str {
+pub(crate) fn envelope_case(run: &Run, position: f64) -> &str {
     // Positions are whole numbers from the engine; -1 stands for the reference state.
     #[allow(
         clippy::cast_possible_truncation,

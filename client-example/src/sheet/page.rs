@@ -56,6 +56,10 @@ pub(crate) fn html(sheet: &Sheet) -> String {
         text.push_str(&format!("<tr class=\"{}\">", row.mark.name()));
         for (at, &column) in columns.iter().enumerate() {
             let cell = &row.cells[column];
+            if let Cell::Range(range) = cell {
+                text.push_str(&bar(*range));
+                continue;
+            }
             let empty = if *cell == Cell::Empty {
                 " class=\"none\""
             } else {
@@ -78,4 +82,14 @@ pub(crate) fn html(sheet: &Sheet) -> String {
     }
     text.push_str("</section>\n");
     text
+}
+
+/// A bar from least to most with a tick at the reference.
+fn bar(range: [f64; 3]) -> String {
+    let [least, reference, most] = range.map(|share| share.clamp(0.0, 1.0) * 100.0);
+    format!(
+        "<td class=\"range\"><span class=\"rail\"><i style=\"left:{least:.1}%;width:{:.1}%\"></i>\
+         <b style=\"left:{reference:.1}%\"></b></span></td>",
+        most - least
+    )
 }

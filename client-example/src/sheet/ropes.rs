@@ -2,7 +2,7 @@
 
 use ropewalk_api::ropewalk::v1;
 
-use super::{Cell, Head, Mark, Row, Sheet, envelope_case, file_head, head};
+use super::{Cell, Head, Mark, Place, Row, Sheet, envelope_case, file_head, head};
 use crate::run::{Member, Run};
 
 /// The extreme of some numbers at some places, with its place; none where there are no numbers.
@@ -40,6 +40,11 @@ fn rope_heads() -> Vec<Head> {
         head("case of min", ""),
         head("case of max", ""),
         head("unstressed length", "m"),
+        Head {
+            title: "0 to 100 % of breaking",
+            unit: "",
+            place: Place::PageOnly,
+        },
         file_head("segments", ""),
         file_head("least breaking force with fittings", "kN"),
     ]
@@ -59,7 +64,8 @@ pub(crate) fn ropes(run: &Run) -> Sheet {
         rows: keyed.into_iter().map(|(_, _, row)| row).collect(),
         note: "Tensions over all segments of a rope and all answered cases, the reference state among them. \
                Breaking force with end fittings. Least of reference: the lowest tension of a segment over its own in \
-               the reference state (ref.); 0 is slack. Lengths are unstressed.",
+               the reference state (ref.); 0 is slack. Lengths are unstressed. On the page the bar runs from least to most \
+               tension, the tick is the reference state.",
     }
 }
 
@@ -89,6 +95,19 @@ fn rope(run: &Run, cable: usize, segments: &[usize]) -> (usize, f64, Row) {
             .try_fold(0.0_f64, |worst, share| Some(worst.max(share?)))
     };
     let share_max = of_breaking(highs);
+    let share_rest = of_breaking(at_rest);
+    // The bar ends where its rope works least and most; its own least share, not that of another segment.
+    let share_min = lows.and_then(|lows| {
+        let shares = segments
+            .iter()
+            .zip(&breaking)
+            .map(|(&at, force)| Some(lows.get(at)? / (*force)?));
+        shares.collect::<Option<Vec<f64>>>()?.into_iter().min_by(f64::total_cmp)
+    });
+    let bar = share_min
+        .zip(share_rest)
+        .zip(share_max)
+        .map(|((least, rest), most)| [least, rest, most]);
     let least_share = at_rest.zip(lows).and_then(|(rest, lows)| {
         let shares = segments
             .iter()
@@ -124,12 +143,13 @@ fn rope(run: &Run, cable: usize, segments: &[usize]) -> (usize, f64, Row) {
             kn(at_rest.and_then(|rest| most(segments, rest))),
             kn(low),
             kn(high),
-            Cell::maybe(of_breaking(at_rest).map(Cell::percent)),
+            Cell::maybe(share_rest.map(Cell::percent)),
             Cell::maybe(share_max.map(Cell::percent)),
             Cell::maybe(least_share.map(Cell::percent)),
             Cell::maybe(case_of("tension_min_case", low)),
             Cell::maybe(case_of("tension_max_case", high)),
             Cell::maybe(length.map(Cell::three)),
+            Cell::maybe(bar.map(Cell::Range)),
             Cell::Count(segments.len().try_into().expect("a count fits 64 bits")),
             Cell::maybe(
                 least_breaking

@@ -1,6 +1,7 @@
 //! The built program, as a user starts it: it brings its engine along, and what it leaves behind is read back.
 
 mod broken;
+mod compare;
 mod support;
 
 use std::collections::HashMap;

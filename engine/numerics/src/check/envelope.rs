@@ -50,7 +50,13 @@ impl EnvelopeTally {
         if !digest.is_sound() {
             return;
         }
-        for (envelope, force) in self.segments.iter_mut().zip(&digest.axial_forces) {
+        let mut removed = vec![false; self.segments.len()];
+        digest
+            .removed
+            .iter()
+            .for_each(|segment| removed[segment.index()] = true);
+        let present = self.segments.iter_mut().zip(&digest.axial_forces).zip(removed);
+        for ((envelope, force), _) in present.filter(|(_, removed)| !removed) {
             let (value, case) = (*force, Some(case));
             // Of equals the reference state, then the first case of the brief: the order of adding leaves no trace.
             let Envelope { least, largest } = envelope;

@@ -169,7 +169,7 @@ pub struct Check {
     pub nodes: Vec<NodeId>,
     /// Panels it covers, by index.
     pub panels: Vec<usize>,
-    /// Cases it covers, by index.
+    /// Cases it covers, by index; design effects are counted on from the last case, see `brief::Brief`.
     pub cases: Vec<usize>,
 }
 

@@ -57,7 +57,9 @@ impl CheckTally {
             return;
         }
         for (part, standing) in &mut self.parts {
-            *standing = standing.with(judge_part(against, check, *part, Some(case), digest));
+            if !digest.lacks(against.net, *part) {
+                *standing = standing.with(judge_part(against, check, *part, Some(case), digest));
+            }
         }
     }
 
@@ -98,6 +100,7 @@ pub fn worst_ratio(against: &Against<'_>, check: &Check, case: usize, digest: &C
     }
     let parts = check.covered().into_iter();
     parts
+        .filter(|part| !digest.lacks(against.net, *part))
         .filter_map(|part| judge_part(against, check, part, Some(case), digest).ok())
         .map(|judgement| judgement.ratio)
         .reduce(f64::max)

@@ -72,5 +72,6 @@ pub(super) fn digest(cable_forces: &[f64; 3]) -> CaseDigest {
             Some(Vector3::new(6.0, 0.0, 8.0)),
         ],
         loose_nodes: Vec::new(),
+        removed: Vec::new(),
     }
 }

@@ -1,6 +1,6 @@
 //! Everything that keeps the given parts from being a net.
 
-use super::{CableGiven, ElasticSupportGiven, NetError, NetGiven, NodeId, PanelGiven, Section};
+use super::{CableGiven, ElasticSupportGiven, NetError, NetGiven, NodeId, PanelGiven, Section, Skin, Zone};
 
 /// All of it, not just the first.
 pub(super) fn violations(given: &NetGiven) -> Vec<NetError> {
@@ -55,9 +55,13 @@ pub(super) fn violations(given: &NetGiven) -> Vec<NetError> {
         check_path(&strut.name, &strut.ends, given.nodes.len(), &mut errors);
         check_section(&strut.name, &strut.section, &mut errors);
     }
-    for panel in &given.panels {
-        check_panel(panel, given.nodes.len(), &mut errors);
-    }
+    check_surface(
+        &given.panels,
+        &given.skins,
+        &given.zones,
+        given.nodes.len(),
+        &mut errors,
+    );
     for elastic in &given.elastic_supports {
         check_elastic_support(elastic, given, &mut errors);
     }
@@ -105,6 +109,53 @@ fn check_slides(cable: &CableGiven, errors: &mut Vec<NetError>) {
                 of: cable.name.clone(),
                 value: slide.friction,
             });
+        }
+    }
+}
+
+pub(super) fn check_surface(
+    panels: &[PanelGiven],
+    skins: &[Skin],
+    zones: &[Zone],
+    n_nodes: usize,
+    errors: &mut Vec<NetError>,
+) {
+    for panel in panels {
+        check_panel(panel, n_nodes, errors);
+    }
+    let mut skins_of = vec![0; panels.len()];
+    for skin in skins {
+        if !(skin.mass_per_area.is_finite() && skin.mass_per_area >= 0.0) {
+            errors.push(NetError::NotPositive {
+                what: "mass per area",
+                of: skin.name.clone(),
+                value: skin.mass_per_area,
+            });
+        }
+        for panel in &skin.panels {
+            match skins_of.get_mut(*panel) {
+                Some(skins) => *skins += 1,
+                None => errors.push(NetError::UnknownPart {
+                    of: skin.name.clone(),
+                    what: "panel",
+                }),
+            }
+        }
+    }
+    for (panel, skins) in panels.iter().zip(skins_of) {
+        if skins > 1 {
+            errors.push(NetError::SeveralSkins { of: panel.name.clone() });
+        }
+    }
+    for zone in zones {
+        if zone.skin >= skins.len() {
+            errors.push(NetError::UnknownPart {
+                of: zone.name.clone(),
+                what: "skin",
+            });
+        }
+        if zone.outline.len() < 3 || zone.outline.iter().any(|p| !(p.x.is_finite() && p.y.is_finite())) {
+            errors.push(NetError::DegeneratePanel { of: zone.name.clone() });
         }
     }
 }

@@ -223,7 +223,6 @@ impl Reader<'_, '_, '_> {
             let at = between_at.number(number);
             match self.context.net.names.find(self.findings, &at, "node", id)? {
                 Thing::Node(node) => Some(NodeId::new(node)),
-                Thing::NotServed => None,
                 other => {
                     self.findings
                         .error(

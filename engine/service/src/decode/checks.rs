@@ -2,7 +2,7 @@
 
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::{Check, CheckKind};
-use ropewalk_numerics::model::{CableId, NodeId, StrutId};
+use ropewalk_numerics::model::{Area, CableId, NodeId, StrutId};
 use v1::check::Kind;
 
 use super::cases::Cases;
@@ -34,7 +34,7 @@ pub(crate) fn read(
     context: &Context<'_, '_>,
     findings: &mut Findings,
     resolved: &mut Resolved,
-) -> Vec<Check> {
+) -> Vec<CheckDraft> {
     let list = Path::root("checks");
     if messages.len() > MOST {
         findings
@@ -63,6 +63,13 @@ pub(crate) fn read(
         .collect()
 }
 
+/// A check as read. Which nodes are at the corners of panels is known only when panels are.
+pub(crate) struct CheckDraft {
+    pub(crate) check: Check,
+    /// Skins and zones that it covers.
+    pub(crate) areas: Vec<Area>,
+}
+
 fn read_check(
     check: &v1::Check,
     number: usize,
@@ -70,7 +77,7 @@ fn read_check(
     context: &Context<'_, '_>,
     findings: &mut Findings,
     resolved: &mut Resolved,
-) -> Option<Check> {
+) -> Option<CheckDraft> {
     let over = at.field("over");
     if context.cases.messages.is_empty() && check.over.is_empty() {
         findings.error(
@@ -106,9 +113,9 @@ fn read_check(
         panels: Vec::new(),
         cases: cases.unwrap_or_default(),
     };
-    cover(given, &check.on, &mut read, at, context, findings, resolved);
+    let areas = cover(given, &check.on, &mut read, at, context, findings, resolved);
     tell_not_judgeable(given, &read, at, context, findings);
-    kind.map(|_| read)
+    kind.map(|_| CheckDraft { check: read, areas })
 }
 
 fn cover(
@@ -119,8 +126,9 @@ fn cover(
     context: &Context<'_, '_>,
     findings: &mut Findings,
     resolved: &mut Resolved,
-) {
+) -> Vec<Area> {
     let (net, on) = (context.net, at.field("on"));
+    let mut areas = Vec::new();
     let all = names.is_empty();
     let complete = if all {
         let told = cover_all(given, read, context);
@@ -135,6 +143,7 @@ fn cover(
         let scope = context.scopes.of(net, names, &on, allowed, findings);
         if let Kind::Movement(_) = given {
             read.nodes = nodes_of(&scope, context).into_iter().map(NodeId::new).collect();
+            areas = scope.areas().collect();
         } else {
             read.cables = scope.cables().map(CableId::new).collect();
             read.struts = scope.struts().map(StrutId::new).collect();
@@ -157,7 +166,8 @@ fn cover(
         }
         scope.complete
     };
-    if complete && read.cables.is_empty() && read.struts.is_empty() && read.nodes.is_empty() && read.panels.is_empty() {
+    let no_part = read.cables.is_empty() && read.struts.is_empty() && read.nodes.is_empty() && read.panels.is_empty();
+    if complete && no_part && areas.is_empty() {
         findings.error(
             reasons::COVERS_NOTHING,
             &on,
@@ -166,6 +176,7 @@ fn cover(
             "name in on what it covers, or take it out",
         );
     }
+    areas
 }
 
 /// Everything that a check is for; answers that in words.

@@ -201,6 +201,7 @@ fn wanted_tension(
         PrestressRule::Tension(tension) => Some(*tension),
         PrestressRule::MeanTension(family) => prestress.mean_tensions.get(*family).copied(),
         PrestressRule::ForceDensity(density) => Some(density * length?),
+        PrestressRule::Adjustable(family) => Some(prestress.adjustables.get(*family)?.density * length?),
         PrestressRule::UnstressedLength(unstressed) => {
             let strain = length? / unstressed - 1.0;
             Some(axial_stiffness * strain.max(0.0))

@@ -1,7 +1,7 @@
 //! The end of a run: envelopes, then the summary.
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::{self, Plan, ReferenceOutcome};
+use ropewalk_numerics::brief::{self, Effect, Plan, ReferenceOutcome};
 use ropewalk_numerics::check::{CaseDigest, Envelope, Extreme};
 use ropewalk_numerics::model::Member;
 use ropewalk_numerics::shape::ShapeError;
@@ -9,7 +9,7 @@ use v1::run_response::Event;
 
 use super::parts::{count, event};
 use super::state::Array;
-use super::{anchors, cautions, outcome, verdicts};
+use super::{anchors, cautions, effects, outcome, verdicts};
 use crate::decode::{ENVELOPE, REFERENCE, Work};
 
 /// What the end of a run needs of a case.
@@ -87,12 +87,13 @@ impl Tally {
         }
     }
 
-    /// Takes in a case.
-    pub fn add(&mut self, case: usize, noted: &Noted) {
-        if let Some(summed_up) = &mut self.summed_up {
-            summed_up.add(case, &noted.digest);
-        }
+    /// Takes in a case. Answers the design effects that are complete with it.
+    pub fn add(&mut self, case: usize, noted: &Noted) -> Vec<Effect> {
         self.counts.join(noted.counts);
+        match &mut self.summed_up {
+            Some(summed_up) => summed_up.add(case, &noted.digest),
+            None => Vec::new(),
+        }
     }
 }
 
@@ -113,6 +114,10 @@ pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
     let summary = match (&found, summed_up.map(brief::Tally::finish)) {
         (Ok(reference), Some(summary)) => {
             messages.extend(envelope(plan, &cases, &summary));
+            if let Some(rules) = &summary.factor_rules {
+                messages.extend(effects::factor_rules(&plan.brief().net, rules));
+            }
+            messages.extend(effects::losses(work, plan, &summary.losses));
             let answered = summary.facts.answered;
             let reference_audited = usize::from(reference.result.audit.passed);
             v1::Summary {
@@ -126,7 +131,7 @@ pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
                 judged: Some(share(summary.facts.judged.count, summary.facts.judged.of)),
                 passes: Some(share(summary.facts.passing.count, summary.facts.passing.of)),
                 checks: verdicts::checks(work, plan, &summary.checks),
-                cautions: cautions::of_run(&summary.cautions),
+                cautions: cautions::of_run(work, &summary.cautions),
                 findings: counts.messages(),
                 digest: work.digest.clone(),
                 anchors: Some(anchors::sheet(plan, &summary.anchors)),
@@ -142,7 +147,7 @@ pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
                 judged: Some(v1::Share { count: 0, of: covered }),
                 passes: Some(share(0, 0)),
                 checks,
-                cautions: cautions::cautions(),
+                cautions: cautions::of_net(work, &plan.brief().net),
                 findings: counts.messages(),
                 digest: work.digest.clone(),
                 anchors: None,

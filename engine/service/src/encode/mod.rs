@@ -6,6 +6,9 @@
 //! | `head` | what is about to run: sizes, settings, tables of ids |
 //! | `progress` | what is being worked on |
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
+//! | `surface` | panels, and what each action does in the reference state |
+//! | `effects` | sums of effects, paths of cases, losses of members |
+//! | `diagnosis` | free movements, states of self-stress, least stiffnesses |
 //! | `closing`, `verdicts`, `rules`, `anchors`, `cautions` | the end of a run |
 //! | `freeze` | the brief with what was found written in |
 //! | `report` | what reading the brief told |
@@ -14,7 +17,9 @@
 mod anchors;
 mod cautions;
 mod closing;
+mod diagnosis;
 mod doubts;
+mod effects;
 mod failure;
 mod freeze;
 mod head;
@@ -24,10 +29,12 @@ mod progress;
 mod report;
 mod rules;
 mod state;
+mod surface;
 mod verdicts;
 
 pub use cautions::cautions;
 pub use closing::{Noted, Tally, closing};
+pub use effects::{design_effect, path};
 pub use freeze::freeze;
 pub use head::{id_tables, started};
 pub use outcome::{case, engine_error, reference};

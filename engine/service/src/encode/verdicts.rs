@@ -90,7 +90,7 @@ fn judged_name<'p>(plan: &'p Plan, judgement: &Judgement) -> &'p str {
 
 /// Name of a case in results.
 pub(super) fn case_name(plan: &Plan, case: Option<usize>) -> &str {
-    case.map_or(REFERENCE, |case| &plan.brief().cases[case].name)
+    case.map_or(REFERENCE, |case| plan.brief().case_name(case))
 }
 
 fn ids<'a>(plan: &Plan, covered: impl Iterator<Item = &'a Covered>) -> Vec<String> {

@@ -1,30 +1,8 @@
-// Tables and drawings that go on to the right say so.
-(function () {
-  "use strict";
-  var wides = Array.from(document.querySelectorAll(".wide")).map(function (wide) {
-    var sign = document.createElement("p");
-    sign.className = "scrolls";
-    sign.textContent = "goes on to the right: scroll sideways \u2192";
-    wide.parentNode.insertBefore(sign, wide);
-    return [wide, sign];
-  });
-  function look() {
-    wides.forEach(function (pair) {
-      var hidden = pair[0].scrollWidth - pair[0].clientWidth;
-      pair[0].classList.toggle("cut", hidden - pair[0].scrollLeft > 2);
-      pair[1].classList.toggle("on", hidden > 2);
-      if (hidden > 2) pair[0].tabIndex = 0; else pair[0].removeAttribute("tabindex");
-    });
-  }
-  wides.forEach(function (pair) { pair[0].addEventListener("scroll", look, { passive: true }); });
-  window.addEventListener("resize", look);
-  look();
-})();
-
 // The turning shape. Orthographic, so that lengths on the screen can be compared; painted from back to front.
 (function () {
   "use strict";
-  var data = JSON.parse(document.getElementById("run-data").textContent);
+  var data = page.data, digits = page.digits, label = page.label, colour = page.tensionColour;
+  var INK = page.INK, MUTED = page.MUTED, ALARM = page.ALARM, PALE = "#b4bcc4";
   var canvas = document.getElementById("net");
   if (!canvas || !data.reference.length) return;
   var context = canvas.getContext("2d");
@@ -34,7 +12,6 @@
   var timesChoice = document.getElementById("times");
   var pullsChoice = document.getElementById("pulls");
   var nNodes = data.nodes.length;
-  var INK = "#1d2733", MUTED = "#5d6a78", PALE = "#b4bcc4", ALARM = "#b3261e";
 
   var view = { turn: -0.6, tilt: 0.42, zoom: 1, x: 0, y: 0 };
   var places = new Float64Array(data.reference);
@@ -54,17 +31,6 @@
   })();
 
   function state() { return data.states[+stateChoice.value]; }
-  function digits(value) {
-    var size = Math.abs(value);
-    if (size === 0) return "0";
-    return value.toFixed(Math.max(0, Math.min(6, 2 - Math.floor(Math.log10(size)))));
-  }
-  function colour(kn) {
-    var scale = data.scale, size = Math.abs(kn), share;
-    if (scale.log) share = Math.log(Math.max(size, scale.low) / scale.low) / Math.log(scale.high / scale.low);
-    else share = size / scale.high;
-    return scale.colours[Math.round(64 * Math.min(1, Math.max(0, share)))];
-  }
 
   // Places of the chosen state, movements enlarged.
   function target() {
@@ -102,13 +68,7 @@
   var order = data.segments.map(function (_, i) { return i; });
 
   function paint() {
-    var ratio = window.devicePixelRatio || 1, wide = canvas.clientWidth, high = canvas.clientHeight;
-    if (canvas.width !== Math.round(wide * ratio) || canvas.height !== Math.round(high * ratio)) {
-      canvas.width = Math.round(wide * ratio);
-      canvas.height = Math.round(high * ratio);
-    }
-    context.setTransform(ratio, 0, 0, ratio, 0, 0);
-    context.clearRect(0, 0, wide, high);
+    page.sharpen(canvas);
     var now = state(), shape = frame(), kn = now.kn;
     project(places, seen, shape);
     project(data.reference, seenBefore, shape);
@@ -117,7 +77,7 @@
     if (kn) for (var k = 0; k < kn.length; k++) largest = Math.max(largest, Math.abs(kn[k]));
     order.sort(function (a, b) { return depth(b) - depth(a); });
     order.forEach(function (s) { segment(s, now, kn, slack.has(s), largest); });
-    supports();
+    page.supports(context, seen);
     if (kn && pullsChoice.checked) pulls(now);
     look(now);
     if (under >= 0) highlight(under);
@@ -150,69 +110,11 @@
     context.lineWidth = 1.1 + 4.4 * Math.sqrt(Math.abs(kn[s]) / largest);
     line(seen, s);
   }
-  function label(text, x, y, ink, where) {
-    context.font = "600 12px system-ui, 'DejaVu Sans', sans-serif";
-    context.textAlign = where || "center";
-    context.lineWidth = 4; context.lineJoin = "round"; context.strokeStyle = "rgba(255,255,255,.9)"; context.setLineDash([]);
-    context.strokeText(text, x, y);
-    context.fillStyle = ink;
-    context.fillText(text, x, y);
-  }
-  // Many supports are drawn small, and the arrows of a long row of them would be a hedge: then the largest pulls have theirs.
-  var ARROWS = 40, half = data.supports.length > ARROWS ? 2.5 : 5;
-  function supports() {
-    context.setLineDash([]);
-    data.supports.forEach(function (n) {
-      context.fillStyle = "#fff"; context.strokeStyle = INK; context.lineWidth = half > 3 ? 2 : 1;
-      context.beginPath(); context.rect(seen[3 * n] - half, seen[3 * n + 1] - half, 2 * half, 2 * half); context.fill(); context.stroke();
-    });
-  }
-  // Towards the members of each support, to find the side where an arrow is in nobody's way.
-  var at = new Map(data.supports.map(function (n) { return [n, []]; }));
-  data.segments.forEach(function (part, s) {
-    if (at.has(part[0])) at.get(part[0]).push(s);
-    if (at.has(part[1])) at.get(part[1]).push(s);
-  });
-  function towards(n, kn) {
-    var sum = [0, 0];
-    at.get(n).forEach(function (s) {
-      var part = data.segments[s], other = part[0] === n ? part[1] : part[1] === n ? part[0] : -1;
-      if (other < 0) return;
-      var dx = seen[3 * other] - seen[3 * n], dy = seen[3 * other + 1] - seen[3 * n + 1], size = Math.hypot(dx, dy) || 1;
-      sum[0] += Math.abs(kn[s]) * dx / size;
-      sum[1] += Math.abs(kn[s]) * dy / size;
-    });
-    return sum;
-  }
-  // Pulls as arrows outside the net, pointing the way the anchor is pulled or pressed. Their size on screen says nothing.
+  // Pulls as arrows outside the net. Their size on screen says nothing.
   function pulls(now) {
     var ct = Math.cos(view.turn), st = Math.sin(view.turn), ci = Math.cos(view.tilt), si = Math.sin(view.tilt);
-    var sizes = now.pulls.map(function (p) { return Math.hypot(p[0], p[1], p[2]); });
-    var largest = sizes.map(function (_, i) { return i; }).sort(function (a, b) { return sizes[b] - sizes[a] || a - b; }).slice(0, ARROWS);
-    var boxes = [];
-    largest.forEach(function (i) {
-      var n = data.supports[i], p = now.pulls[i], size = sizes[i];
-      if (size < 1e-6) return;
-      var dx = (p[0] * ct - p[1] * st) / size, dy = -(p[2] * ci + (p[0] * st + p[1] * ct) * si) / size;
-      var net = towards(n, now.kn), x = seen[3 * n], y = seen[3 * n + 1];
-      var pressed = dx * net[0] + dy * net[1] < 0, side = pressed ? 1 : -1;
-      var near = [x + side * 9 * dx, y + side * 9 * dy], far = [x + side * 46 * dx, y + side * 46 * dy];
-      var head = pressed ? far : near, tail = pressed ? near : far;
-      context.strokeStyle = INK; context.fillStyle = INK; context.lineWidth = 1.8; context.setLineDash([]);
-      context.beginPath(); context.moveTo(tail[0], tail[1]); context.lineTo(head[0] - 5 * dx, head[1] - 5 * dy); context.stroke();
-      context.beginPath(); context.moveTo(head[0], head[1]);
-      context.lineTo(head[0] - 10 * dx - 4 * dy, head[1] - 10 * dy + 4 * dx);
-      context.lineTo(head[0] - 10 * dx + 4 * dy, head[1] - 10 * dy - 4 * dx);
-      context.closePath(); context.fill();
-      // A number keeps to the canvas, and off the numbers of larger pulls.
-      var out = side * dx, text = digits(size) + " kN", wide = 7.2 * text.length;
-      var middle = x + side * 54 * dx + (out > 0.4 ? wide / 2 : out < -0.4 ? -wide / 2 : 0), low = y + side * 60 * dy + 4;
-      middle = Math.max(wide / 2 + 3, Math.min(canvas.clientWidth - wide / 2 - 3, middle));
-      low = Math.max(14, Math.min(canvas.clientHeight - 5, low));
-      var free = boxes.every(function (box) { return Math.abs(box[0] - middle) > (box[2] + wide) / 2 || Math.abs(box[1] - low) > 14; });
-      if (!free) return;
-      boxes.push([middle, low, wide]);
-      label(text, middle, low, INK, "center");
+    page.pulls(context, canvas, seen, now.kn, now.pulls, function (p) {
+      return [p[0] * ct - p[1] * st, -(p[2] * ci + (p[0] * st + p[1] * ct) * si)];
     });
   }
   function look(now) {
@@ -223,7 +125,7 @@
     now.lookNodes.forEach(function (n, i) {
       context.strokeStyle = ALARM; context.lineWidth = 2.5;
       context.beginPath(); context.arc(seen[3 * n], seen[3 * n + 1], 9, 0, 7); context.stroke();
-      if (i < 3) label(data.nodes[n], seen[3 * n] + 14, seen[3 * n + 1] - 8, ALARM, "left");
+      if (i < 3) label(context, data.nodes[n], seen[3 * n] + 14, seen[3 * n + 1] - 8, ALARM, "left");
     });
   }
   function highlight(s) {

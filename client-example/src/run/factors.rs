@@ -1,0 +1,91 @@
+//! Whether a state carries factored loads: what a foundation's engineer must know of every pull.
+
+use ropewalk_api::ropewalk::v1;
+
+use super::{Run, State};
+
+/// How the actions of a state are factored.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+pub(crate) enum Factoring {
+    /// The reference state: what acts while the prestress is measured, unfactored.
+    Reference,
+    /// Every action with its whole, unfactored value, or left out; or by a serviceability rule.
+    Characteristic,
+    /// Some action with another factor than 1, or by a rule for ultimate states.
+    Factored,
+    /// By a rule that this client does not know.
+    Unknown,
+}
+
+impl Factoring {
+    pub(crate) fn word(self) -> &'static str {
+        match self {
+            Self::Reference => "reference",
+            Self::Characteristic => "characteristic",
+            Self::Factored => "factored",
+            Self::Unknown => "",
+        }
+    }
+}
+
+impl Run {
+    /// How the actions of a state are factored, by the brief.
+    pub(crate) fn factoring(&self, state: &State) -> Factoring {
+        if state.id == "reference" {
+            return Factoring::Reference;
+        }
+        if let Some(case) = self.brief.cases.iter().find(|case| case.id == state.id) {
+            let whole = |factor: &f64| *factor == 0.0 || factor.abs() == 1.0;
+            return if case.factors.values().all(whole) {
+                Factoring::Characteristic
+            } else {
+                Factoring::Factored
+            };
+        }
+        let rules = self
+            .brief
+            .combinations
+            .iter()
+            .filter(|rule| state.sets.contains(&rule.set));
+        let of_rule = |rule: &v1::Combination| match &rule.rule {
+            Some(v1::combination::Rule::Fundamental(_) | v1::combination::Rule::Accidental(_)) => Factoring::Factored,
+            Some(
+                v1::combination::Rule::Characteristic(_)
+                | v1::combination::Rule::Frequent(_)
+                | v1::combination::Rule::QuasiPermanent(_),
+            ) => Factoring::Characteristic,
+            None => Factoring::Unknown,
+        };
+        rules.map(of_rule).max().unwrap_or(Factoring::Unknown)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::sample;
+    use super::*;
+
+    #[test]
+    fn one_factor_other_than_1_makes_a_state_factored() {
+        let mut run = sample::run();
+        let of = |run: &Run, at: usize| run.factoring(&run.states[at]);
+        assert_eq!(of(&run, 0), Factoring::Reference);
+        assert_eq!(of(&run, 1), Factoring::Characteristic);
+        run.brief.cases[0].factors.insert("snow".to_owned(), 1.5);
+        assert_eq!(of(&run, 1), Factoring::Factored);
+    }
+
+    #[test]
+    fn cases_of_a_rule_are_factored_as_the_rule_is() {
+        let mut run = sample::run();
+        run.brief.cases.clear();
+        run.states[1].sets = vec!["strength".to_owned()];
+        assert_eq!(run.factoring(&run.states[1]), Factoring::Unknown);
+        run.brief.combinations.push(v1::Combination {
+            set: "strength".to_owned(),
+            rule: Some(v1::combination::Rule::Fundamental(v1::FundamentalRule::default())),
+            ..Default::default()
+        });
+        assert_eq!(run.factoring(&run.states[1]), Factoring::Factored);
+    }
+}
