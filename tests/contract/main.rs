@@ -12,5 +12,6 @@ mod minimal;
 mod reasons;
 mod results;
 mod sizes;
+mod sizing;
 mod surfaces;
 mod violations;

@@ -1174,18 +1174,12 @@ fn parts_that_are_not_served() {
             json!([{"set": "ultimate", "fundamental": {}}]),
             "combinations[0]",
         ),
-        (
-            "/checks/0",
-            json!({"drainage": {"min_fall": 0.05}}),
-            "checks[0].drainage",
-        ),
         ("/modes", json!({"count": 3}), "modes"),
         ("/motions", json!([{"id": "fall"}]), "motions[fall]"),
         ("/stages", json!([{"id": "first"}]), "stages[first]"),
         ("/workshop", json!({}), "workshop"),
         ("/readings", json!([{"id": "r1"}]), "readings[r1]"),
         ("/keep", json!({}), "keep"),
-        ("/sizing", json!({}), "sizing"),
         ("/variants", json!([{"id": "v"}]), "variants[v]"),
     ] {
         let mut base = terrace();

@@ -43,6 +43,8 @@ pub const SERVED: &[&str] = &[
     "checks.clearance",
     "checks.clamp",
     "checks.saddle",
+    "checks.drainage",
+    "sizing",
     "diagnosis",
     "solving",
     "accepted",
@@ -55,14 +57,12 @@ pub const NOT_SERVED: &[&str] = &[
     "net.adjusters",
     "net.cables.slides",
     "net.roles.adjuster",
-    "checks.drainage",
     "modes",
     "motions",
     "stages",
     "workshop",
     "readings",
     "keep",
-    "sizing",
     "variants",
 ];
 
@@ -99,13 +99,11 @@ pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
         ("modes", brief.modes.is_some()),
         ("workshop", brief.workshop.is_some()),
         ("keep", brief.keep.is_some()),
-        ("sizing", brief.sizing.is_some()),
     ] {
         if given {
             part(&Path::root(field), "");
         }
     }
-    in_checks(&brief.checks, &mut part);
 }
 
 fn elements(list: &str, ids: &[&str], part: &mut impl FnMut(&Path<'_>, &str)) {
@@ -128,15 +126,6 @@ fn in_net(net: &v1::Net, part: &mut impl FnMut(&Path<'_>, &str)) {
     for (number, role) in net.roles.iter().enumerate() {
         if role.adjuster.is_some() {
             part(&roles.element(&role.id, number).field("adjuster"), &role.id);
-        }
-    }
-}
-
-fn in_checks(checks: &[v1::Check], part: &mut impl FnMut(&Path<'_>, &str)) {
-    let list = Path::root("checks");
-    for (number, check) in checks.iter().enumerate() {
-        if let Some(v1::check::Kind::Drainage(_)) = check.kind {
-            part(&list.number(number).field("drainage"), "");
         }
     }
 }

@@ -166,6 +166,8 @@ reasons! {
     EDITION_UNKNOWN,
     /// A factor that the named edition does not recommend.
     FACTOR_NOT_OF_EDITION,
+    /// A member that two choices of sizing cover.
+    SIZED_TWICE,
     /// Cases, but no check.
     NOTHING_CHECKED,
     /// A value that looks as if it were in another unit.
