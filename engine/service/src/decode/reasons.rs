@@ -170,6 +170,16 @@ reasons! {
     SIZED_TWICE,
     /// Cases, but no check.
     NOTHING_CHECKED,
+    /// A rope is to slide where it can not.
+    CAN_NOT_SLIDE,
+    /// A rope is to slide and to hang.
+    SLIDES_AND_HANGS,
+    /// An adjuster is not at an end of its rope.
+    NOT_AN_END,
+    /// Turns of an adjuster whose travel a turn is not known.
+    NO_TRAVEL_PER_TURN,
+    /// A case asks more of an adjuster than its travel.
+    ADJUSTER_TOO_SHORT,
     /// A value that looks as if it were in another unit.
     UNIT_SLIP,
     /// Prestress above the breaking force.

@@ -101,15 +101,19 @@ fn rules(net: &Net, lengths: &[f64]) -> Vec<v1::PrestressRule> {
             continue;
         }
         let visits = visits(&cable.path);
-        for (position, length) in of_cable.iter().enumerate() {
-            let [from, to] = [cable.path[position], cable.path[position + 1]];
+        for (reach, length) in net.reaches()[cable.reaches.clone()].iter().zip(of_cable) {
+            let (position, end) = (
+                reach.segments.start - cable.segments.start,
+                reach.segments.end - cable.segments.start,
+            );
+            let [from, to] = [cable.path[position], cable.path[end]];
             let part = v1::PartOfCable {
                 cable: cable.name.clone(),
                 from: net.node_name(from).to_owned(),
                 to: net.node_name(to).to_owned(),
                 from_visit: visits[position],
-                // The default, the first visit after `from`, is the next node of the path.
-                to_visit: None,
+                // The default, the first visit after `from`, is the right one unless the rope slides through `to` before.
+                to_visit: (cable.path[position + 1..end].contains(&to)).then(|| visits[end].unwrap_or(1)),
                 note: String::new(),
             };
             rules.push(v1::PrestressRule {

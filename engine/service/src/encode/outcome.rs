@@ -28,8 +28,12 @@ pub fn reference(work: &Work, plan: &Plan, found: &Result<ReferenceOutcome, Shap
     };
     let mut messages = vec![event(Event::CaseBegin(begin))];
     if let Ok(reference) = found {
-        let lengths = &reference.state.unstressed_lengths;
-        messages.extend(state::arrays(&plan.brief().net, REFERENCE, &reference.result, lengths));
+        messages.extend(state::arrays(
+            &plan.brief().net,
+            REFERENCE,
+            &reference.result,
+            &reference.result,
+        ));
         messages.extend(state::history(REFERENCE, &reference.history));
         messages.extend(diagnosed(&plan.brief().net, REFERENCE, &reference.result));
     }
@@ -101,7 +105,7 @@ pub fn case(
             result,
             cause,
         } => {
-            messages.extend(state::arrays(net, name, result, &reference.state.unstressed_lengths));
+            messages.extend(state::arrays(net, name, result, &reference.result));
             messages.extend(state::history(name, &solution.history));
             messages.extend(diagnosed(net, name, result));
             let mut closing = summary(net, name, result, reference);
