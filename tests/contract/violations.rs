@@ -1157,29 +1157,12 @@ fn accepted_doubts_stay_visible() {
 fn parts_that_are_not_served() {
     for (pointer, value, path) in [
         ("/stored_net", json!("3f9a"), "stored_net"),
-        (
-            "/net/adjusters",
-            json!([{"id": "t", "cable": "g1", "at": "G1"}]),
-            "net.adjusters[t]",
-        ),
-        ("/net/cables/0/slides", json!({}), "net.cables[carrying].slides"),
-        (
-            "/net/roles/0/adjuster",
-            json!({"in_m": 0.1}),
-            "net.roles[rope].adjuster",
-        ),
-        (
-            "/checks/0",
-            json!({"drainage": {"min_fall": 0.05}}),
-            "checks[0].drainage",
-        ),
         ("/modes", json!({"count": 3}), "modes"),
         ("/motions", json!([{"id": "fall"}]), "motions[fall]"),
         ("/stages", json!([{"id": "first"}]), "stages[first]"),
         ("/workshop", json!({}), "workshop"),
         ("/readings", json!([{"id": "r1"}]), "readings[r1]"),
         ("/keep", json!({}), "keep"),
-        ("/sizing", json!({}), "sizing"),
         ("/variants", json!([{"id": "v"}]), "variants[v]"),
     ] {
         let mut base = terrace();

@@ -38,6 +38,7 @@ pub(crate) struct Collector {
     ended: Vec<v1::CaseSummary>,
     findings: Vec<v1::Finding>,
     diagnoses: Vec<v1::StateDiagnosis>,
+    sizing: Option<v1::SizingResult>,
     timing: Option<v1::Timing>,
     summary: Option<v1::Summary>,
 }
@@ -90,6 +91,7 @@ impl Collector {
             Event::Timing(timing) => self.timing = Some(timing),
             Event::Summary(summary) => self.summary = Some(summary),
             Event::Diagnosis(part) => self.diagnoses.push(part),
+            Event::Sizing(sizing) => self.sizing = Some(sizing),
             Event::Panels(_)
             | Event::LoadPicture(_)
             | Event::Progress(_)
@@ -235,6 +237,7 @@ impl Collector {
             envelope: BTreeMap::new(),
             findings: std::mem::take(&mut self.findings),
             diagnoses: std::mem::take(&mut self.diagnoses),
+            sizing: self.sizing.take(),
             summary,
             timing: self.timing.take(),
             broken_off,

@@ -7,6 +7,7 @@ mod checks;
 mod diagnosis;
 mod page;
 mod ropes;
+mod sizing;
 mod text;
 mod verdict;
 
@@ -21,6 +22,7 @@ pub(crate) use checks::checks;
 pub(crate) use diagnosis::diagnoses;
 pub(crate) use page::html;
 pub(crate) use ropes::{ropes, struts};
+pub(crate) use sizing::{sized, sizing_rounds, sizing_words};
 pub(crate) use text::{terminal, wrap};
 pub(crate) use verdict::{audit_line, largest_difference, proof_line, verdict_word, why};
 
