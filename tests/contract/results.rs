@@ -278,12 +278,23 @@ fn a_case_that_nothing_holds_is_told_by_names() {
         worst: Vec::new(),
         members: vec!["carrying".to_owned()],
         last_good_load_factor: 0.0,
+        stopped_at: None,
+        exists: false,
+        taken_out: vec!["g1".to_owned()],
     };
     let (said, noted) = case(&work, &plan, &found, 0, &CaseOutcome::None { error, cause });
     let closing = closing_of_case(&said);
     assert_eq!(closing.outcome(), v1::CaseOutcome::NoEquilibrium);
     let failure = closing.failure.expect("a failure");
-    assert_eq!(failure.reason, "NOT_HELD");
+    assert_eq!(
+        (failure.reason.as_str(), failure.group.as_str()),
+        ("NOT_HELD", "NOT_HELD/m")
+    );
+    assert!(
+        failure.message.contains("Taken out in this case: \"g1\""),
+        "{}",
+        failure.message
+    );
     assert_eq!(
         (failure.nodes, failure.members),
         (vec!["m".to_owned()], vec!["carrying".to_owned()])
@@ -331,6 +342,9 @@ fn a_case_that_stops_keeps_its_last_state_and_says_where() {
         }],
         members: vec!["bracing".to_owned()],
         last_good_load_factor: 0.6,
+        stopped_at: Some(0.62),
+        exists: false,
+        taken_out: Vec::new(),
     };
     let cause = Some(cause);
     let (said, _) = case(
@@ -360,7 +374,9 @@ fn a_case_that_stops_keeps_its_last_state_and_says_where() {
         "case \"snowed\" made no more headway at 62 % of its load",
         "\"bracing\"",
         "\"m\"",
-        "60 %",
+        "Last good state kept at 60.0 % of the load",
+        "the load tips the net; its sum is 12.4 kN upwards",
+        "gave the same stop, down to 62.0 %",
     ] {
         assert!(failure.message.contains(words), "{words}: {}", failure.message);
     }

@@ -158,7 +158,7 @@ impl Plan {
                 }
             }
             Err(error) => CaseOutcome::None {
-                cause: cause_of_error(net, &reference.state.positions, &error),
+                cause: cause_of_error(net, &case, &reference.state.positions, &error),
                 error,
             },
         }

@@ -19,6 +19,9 @@ use crate::model::AxialLaw;
 /// Smallest isotropic stiffness of a segment over its axial stiffness; raised where rounding still breaks a pivot.
 const SMALLEST_STIFFNESS: [f64; 3] = [1e-12, 1e-9, 1e-6];
 
+/// Share of the first residual that may be left once patience ends.
+const HOPE: f64 = 0.1;
+
 /// How Newton is used in one place of the recipe.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct Newton {
@@ -26,6 +29,8 @@ pub(super) struct Newton {
     pub(super) floor_share: f64,
     /// Factorisations allowed.
     pub(super) limit: u32,
+    /// Factorisations after which a tenth of the first residual, at most, must be left to go on.
+    pub(super) patience: u32,
 }
 
 /// What compressed struts bring to the tangent.
@@ -43,6 +48,7 @@ impl Newton {
     pub(super) fn solve(self, run: &mut Run<'_>, loading: &Loading, positions: &mut Vec<Vector3<f64>>) -> Termination {
         let first = run.factorisations;
         let mut step_length = 0.0;
+        let mut at_first = None;
         run.respond(loading, positions);
         loop {
             if let ControlFlow::Break(end) = run.report(Way::Newton, loading, step_length) {
@@ -55,8 +61,14 @@ impl Newton {
             if run.is_balanced(&run.response) {
                 return Termination::Converged;
             }
-            if run.is_spent() || run.factorisations - first >= self.limit {
+            if run.is_spent() {
                 return Termination::IterationLimit;
+            }
+            let used = run.factorisations - first;
+            let before = *at_first.get_or_insert(residual);
+            let is_hopeless = used == self.patience && residual > HOPE * before;
+            if used >= self.limit || is_hopeless {
+                return Termination::StepTooSmall;
             }
             if !factorise(run, loading, self.floor_share * residual) {
                 return Termination::StepTooSmall;

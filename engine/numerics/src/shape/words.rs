@@ -3,12 +3,12 @@
 use nalgebra::Vector3;
 
 /// A force (N) in kilonewtons with three digits that count.
-pub(super) fn kilonewtons(force: f64) -> String {
+pub(crate) fn kilonewtons(force: f64) -> String {
     format!("{} kN", three_digits(force / 1e3))
 }
 
 /// A number with three digits that count.
-pub(super) fn three_digits(value: f64) -> String {
+pub(crate) fn three_digits(value: f64) -> String {
     let size = value.abs();
     if size == 0.0 || !size.is_finite() {
         return format!("{value}");

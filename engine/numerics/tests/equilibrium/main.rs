@@ -7,5 +7,6 @@ mod families;
 mod held;
 mod nets;
 mod properties;
+mod random;
 mod saddle;
 mod struts;
