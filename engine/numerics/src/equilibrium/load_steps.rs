@@ -38,7 +38,7 @@ const TRY: Newton = Newton {
 };
 /// With struts a start that looks taut may be far off: then the interior point does better, and nothing should be lost on
 /// the way to it.
-const TRY_WITH_STRUTS: Newton = Newton { patience: 5, ..TRY };
+const TRY_WITH_STRUTS: Newton = Newton { patience: 4, ..TRY };
 const AFTER_INTERIOR_POINT: Newton = Newton {
     floor_share: 0.1,
     limit: 80,

@@ -19,8 +19,8 @@ use crate::model::AxialLaw;
 /// Smallest isotropic stiffness of a segment over its axial stiffness; raised where rounding still breaks a pivot.
 const SMALLEST_STIFFNESS: [f64; 3] = [1e-12, 1e-9, 1e-6];
 
-/// Share of the first residual that may be left once patience ends.
-const HOPE: f64 = 0.1;
+/// Share of the largest axial force that stands for the load where there is little of it.
+const LITTLE_LOAD: f64 = 1e-3;
 
 /// How Newton is used in one place of the recipe.
 #[derive(Clone, Copy, Debug)]
@@ -29,7 +29,7 @@ pub(super) struct Newton {
     pub(super) floor_share: f64,
     /// Factorisations allowed.
     pub(super) limit: u32,
-    /// Factorisations after which a tenth of the first residual, at most, must be left to go on.
+    /// Factorisations after which the residual must be down to the load to go on: from a good start it soon is.
     pub(super) patience: u32,
 }
 
@@ -48,7 +48,6 @@ impl Newton {
     pub(super) fn solve(self, run: &mut Run<'_>, loading: &Loading, positions: &mut Vec<Vector3<f64>>) -> Termination {
         let first = run.factorisations;
         let mut step_length = 0.0;
-        let mut at_first = None;
         run.respond(loading, positions);
         loop {
             if let ControlFlow::Break(end) = run.report(Way::Newton, loading, step_length) {
@@ -65,8 +64,8 @@ impl Newton {
                 return Termination::IterationLimit;
             }
             let used = run.factorisations - first;
-            let before = *at_first.get_or_insert(residual);
-            let is_hopeless = used == self.patience && residual > HOPE * before;
+            let load = run.load.max(LITTLE_LOAD * run.response.largest_axial_force());
+            let is_hopeless = used == self.patience && residual > load;
             if used >= self.limit || is_hopeless {
                 return Termination::StepTooSmall;
             }

@@ -264,13 +264,8 @@ fn tents_with_everything() {
 fn strut_nets_far_from_their_place() {
     let prisms = run("far prisms", 4000..4300, far_prism);
     let masts = run("leaning masts", 5000..5300, leaning_mast);
-    println!(
-        "gave up: {} of {} prisms, {} of {} masts",
-        prisms.gave_up(),
-        prisms.of,
-        masts.gave_up(),
-        masts.of
-    );
+    // Before relaxation had its share of the allowance, 22 of these prisms ended without an answer.
+    assert_eq!((prisms.gave_up(), masts.gave_up()), (0, 0));
 }
 
 /// A part that nothing holds carries a load: it is named, and never "converges" far away.
