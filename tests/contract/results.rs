@@ -477,3 +477,38 @@ fn the_search_for_the_reference_state_tells_its_iterations() {
         assert!(*last <= 1e-5, "{state} ends in balance: {residuals:?}");
     }
 }
+
+/// Doubts that need no check: a rope stretched beyond what any bears, and one beyond its breaking force.
+#[test]
+fn states_that_can_not_be_meant_are_doubted() {
+    let doubts = |changes: &[(&str, serde_json::Value)], reason: &str| {
+        let events = run(&work(&changed(first_net(), changes)), &[0]);
+        let found = events.into_iter().filter_map(|event| match event {
+            Event::Finding(finding) if finding.reason == reason => Some(finding),
+            _ => None,
+        });
+        found.collect::<Vec<v1::Finding>>()
+    };
+    let section = "/net/sections/0/";
+    let soft = doubts(&[(&format!("{section}axial_stiffness_n"), json!(65_000))], "UNIT_SLIP");
+    assert_eq!(
+        soft.iter().map(|f| f.case.as_str()).collect::<Vec<_>>(),
+        ["reference", "full-snow"]
+    );
+    // 19.6 kN over 65 kN.
+    assert!(
+        soft[0].message.contains("stretched by 30.2 % with 19.6 kN"),
+        "{}",
+        soft[0].message
+    );
+    let weak = doubts(
+        &[(&format!("{section}breaking_force_n"), json!(22_000))],
+        "OVER_BREAKING",
+    );
+    assert_eq!(weak.iter().map(|f| f.case.as_str()).collect::<Vec<_>>(), ["full-snow"]);
+    assert!(
+        weak[0].message.contains("\"carrying\" would break: 24.8 kN"),
+        "{}",
+        weak[0].message
+    );
+}

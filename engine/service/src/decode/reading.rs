@@ -43,13 +43,15 @@ pub fn read(brief: v1::Brief, limits: &Limits) -> Reading {
     let mut resolved = Resolved::default();
     let digest = digest(&brief);
     let parts = read_parts(&brief, limits, &mut findings, &mut resolved);
-    accepted::read(&brief.accepted, &mut findings);
     let (cases, parts) = match parts {
         Some(parts) => (parts.words, parts.work.filter(|_| !findings.has_errors())),
         None => (Vec::new(), None),
     };
     let work = parts.and_then(|(brief_read, names)| match brief_read.build() {
-        Ok(domain) => Some((domain, names)),
+        Ok(domain) => {
+            plausible::ratios(&domain.net, &mut findings);
+            Some((domain, names))
+        }
         Err(errors) => {
             // The border checks everything that the model does; should it ever not, the model has the last word.
             for error in errors {
@@ -64,6 +66,8 @@ pub fn read(brief: v1::Brief, limits: &Limits) -> Reading {
             None
         }
     });
+    accepted::read(&brief.accepted, &mut findings);
+    let work = work.filter(|_| !findings.has_errors());
     let findings = findings.into_list();
     let work = work.map(|(domain, names)| Work::new(domain, brief, digest.clone(), names, &findings));
     Reading {
