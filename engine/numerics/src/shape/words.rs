@@ -40,6 +40,8 @@ pub(crate) fn list(names: &[String], most: usize) -> String {
 
 /// A direction in two decimals.
 pub(crate) fn direction(d: &Vector3<f64>) -> String {
+    // Adding zero takes the sign from a zero.
+    let d = d.map(|c| (c * 100.0).round() / 100.0 + 0.0);
     format!("({:.2}, {:.2}, {:.2})", d.x, d.y, d.z)
 }
 

@@ -186,13 +186,15 @@ fn little_stiffness(net: &Net, state: &StateResult) -> Option<v1::Finding> {
         Standing::Unstable => "none: the state is not stable".to_owned(),
     };
     let id = net.node_name(*node);
+    // Adding zero takes the sign from a zero.
+    let shown = |component: f64| (component * 100.0).round() / 100.0 + 0.0;
     let message = format!(
         "the least stiffness is {} N/m, {how}; most moves {}, along ({:.2}, {:.2}, {:.2})",
         rounded(least.stiffness, 3),
         Quoted(id),
-        by.x,
-        by.y,
-        by.z
+        shown(by.x),
+        shown(by.y),
+        shown(by.z)
     );
     Some(finding(
         v1::FindingSeverity::Doubt,
