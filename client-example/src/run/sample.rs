@@ -200,6 +200,7 @@ fn events_named(names: Names) -> Vec<Event> {
             case: "lamp".to_owned(),
             outcome: v1::CaseOutcome::NoEquilibrium.into(),
             failure: Some(v1::Failure {
+                group: String::new(),
                 reason: "NOT_HELD".to_owned(),
                 message: "nothing holds the lamp".to_owned(),
                 cure: "tie it to the net".to_owned(),

@@ -56,7 +56,10 @@ pub fn read(brief: v1::Brief, limits: &Limits) -> Reading {
         Some(parts) => {
             let built = parts.work.and_then(|(unbuilt, names)| {
                 let built = unbuilt.build(&mut findings, &mut resolved);
-                built.map(|domain| (domain, names))
+                built.map(|domain| {
+                    plausible::ratios(&domain.net, &mut findings);
+                    (domain, names)
+                })
             });
             (parts.words, built)
         }
