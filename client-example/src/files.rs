@@ -62,21 +62,19 @@ pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::E
         .collect();
     for state in drawn.iter().take(PLANS) {
         if let Some(plan) = draw::plan(run, state, &scale) {
-            let base = file_name(&state.id);
-            // Different ids may make the same name; upper and lower case are one to some file systems.
-            let free = (1..).map(|number| {
-                if number == 1 {
-                    base.clone()
-                } else {
-                    format!("{base}-{number}")
-                }
-            });
-            let name = free
-                .into_iter()
-                .find(|name| names.insert(name.to_lowercase()))
-                .expect("numbers do not run out");
-            put(&format!("plan-{name}.svg"), plan.as_bytes())?;
+            put(
+                &format!("plan-{}.svg", free_name(&state.id, &mut names)),
+                plan.as_bytes(),
+            )?;
         }
+    }
+    let mut names = BTreeSet::new();
+    for (state, path) in run.load_paths().into_iter().take(PLANS) {
+        let name = free_name(&state.id, &mut names);
+        put(
+            &format!("doubling-{name}.svg"),
+            draw::doubling(run, state, &path).as_bytes(),
+        )?;
     }
     if let Some(sections) = draw::sections(run) {
         put("sections.svg", sections.as_bytes())?;
@@ -87,6 +85,22 @@ pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::E
         files: count,
         plans_left_out: drawn.len().saturating_sub(PLANS),
     })
+}
+
+/// A name for a file made of an id that no other id has: different ids may make the same one, and upper and lower case are
+/// one to some file systems.
+fn free_name(id: &str, taken: &mut BTreeSet<String>) -> String {
+    let base = file_name(id);
+    let free = (1..).map(|number| {
+        if number == 1 {
+            base.clone()
+        } else {
+            format!("{base}-{number}")
+        }
+    });
+    free.into_iter()
+        .find(|name| taken.insert(name.to_lowercase()))
+        .expect("numbers do not run out")
 }
 
 /// Removes what the list of an earlier run names, and begins the list anew. Files that no list names are left alone.
@@ -118,7 +132,7 @@ fn is_ours(name: &str) -> bool {
 
 /// All sheets, in the order in which they are read.
 pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
-    vec![
+    let mut sheets = vec![
         sheet::checks(run),
         sheet::cases(run),
         sheet::ropes(run),
@@ -127,7 +141,9 @@ pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
         sheet::anchor_sets(run),
         sheet::anchors(run),
         sheet::sums(run),
-    ]
+    ];
+    sheets.extend(sheet::doubling(run));
+    sheets
 }
 
 /// One scale for all states, so that colours can be compared.

@@ -506,8 +506,8 @@ mod tests {
         assert_eq!(
             told,
             [
-                ("position z", "reference", "m"),
-                ("tension", "full-snow", "carrying A to m")
+                ("tension", "full-snow", "carrying A to m"),
+                ("position z", "reference", "m")
             ]
         );
         assert!((comparison.numbers[0].difference() - 300.0).abs() < 1e-9);

@@ -14,16 +14,20 @@ use crate::sheet::{self, Sheet};
 
 const STYLE: &str = include_str!("report.css");
 /// Parts of the script in their order: what all share comes first.
-const SCRIPT: [&str; 5] = [
+const SCRIPT: [&str; 6] = [
     include_str!("wide.js"),
     include_str!("common.js"),
     include_str!("shape.js"),
     include_str!("tension_map.js"),
     include_str!("together.js"),
+    include_str!("section.js"),
 ];
 
 /// Findings that the page lists.
 const FINDINGS: usize = 200;
+
+/// Load paths that the page draws.
+const DOUBLINGS: usize = 6;
 
 /// The page.
 pub(crate) fn page(run: &Run, sheets: &[Sheet], scale: &Scale) -> String {
@@ -38,9 +42,11 @@ pub(crate) fn page(run: &Run, sheets: &[Sheet], scale: &Scale) -> String {
             // What a sheet tells in numbers is drawn behind it.
             "checks" => body.push_str(&pictures::tension_map(run)),
             "anchor-sets" => body.push_str(&pictures::together(run)),
+            "doubling" => body.push_str(&doubling(run)),
             _ => {}
         }
     }
+    body.push_str(&pictures::section(run));
     body.push_str(&convergence(run));
     body.push_str(&drawings(run, scale));
     body.push_str(&findings(run));
@@ -148,6 +154,17 @@ fn convergence(run: &Run) -> String {
              <div class=\"wide\">{plot}</div></section>\n"
         ),
     }
+}
+
+/// Load paths, the first ones; all lie beside the page.
+fn doubling(run: &Run) -> String {
+    let plots: String = run
+        .load_paths()
+        .iter()
+        .take(DOUBLINGS)
+        .map(|(state, path)| format!("<div class=\"wide\">{}</div>\n", draw::doubling(run, state, path)))
+        .collect();
+    format!("<section class=\"drawings\"><h2>Load paths</h2>\n{plots}</section>\n")
 }
 
 fn drawings(run: &Run, scale: &Scale) -> String {

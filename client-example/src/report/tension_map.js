@@ -99,8 +99,12 @@
     list.forEach(function (entry) {
       var part = data.segments[entry[1]], text = percent(entry[0]) + " %", wide = 7.2 * text.length;
       var x = (seen[3 * part[0]] + seen[3 * part[1]]) / 2, y = (seen[3 * part[0] + 1] + seen[3 * part[1] + 1]) / 2 + 4;
-      var free = boxes.every(function (box) { return Math.abs(box[0] - x) > (box[2] + wide) / 2 || Math.abs(box[1] - y) > 14; });
-      if (!free) return;
+      // On its segment, or close beside it.
+      var place = [[0, 0], [0, -15], [0, 15], [wide, 0], [-wide, 0]].find(function (off) {
+        return boxes.every(function (box) { return Math.abs(box[0] - x - off[0]) > (box[2] + wide) / 2 || Math.abs(box[1] - y - off[1]) > 14; });
+      });
+      if (!place) return;
+      x += place[0]; y += place[1];
       boxes.push([x, y, wide]);
       page.label(context, text, x, y, entry[0] > 1 ? ALARM : INK);
     });

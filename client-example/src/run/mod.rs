@@ -3,6 +3,7 @@
 mod collect;
 mod factors;
 mod member;
+mod path;
 pub(crate) mod record;
 
 use std::collections::BTreeMap;
@@ -10,6 +11,7 @@ use std::collections::BTreeMap;
 use ropewalk_api::ropewalk::v1;
 
 pub(crate) use collect::Collector;
+pub(crate) use path::{Growth, LoadPath};
 
 /// A result array.
 #[derive(Clone, Debug, PartialEq)]
