@@ -355,6 +355,9 @@ fn ending(run: &Run) -> String {
     text.push_str(&sheet::terminal(&sheet::anchor_peaks(run)));
     text.push('\n');
     text.push_str(&sheet::terminal(&sheet::cases(run)));
+    if !run.diagnoses.is_empty() {
+        text.push_str(&format!("\n{}", sheet::terminal(&sheet::diagnoses(run))));
+    }
     let causes = sheet::causes(run);
     if !causes.is_empty() {
         text.push_str("\nWithout an answer\n");

@@ -142,6 +142,10 @@ pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
         sheet::anchors(run),
         sheet::sums(run),
     ];
+    // Of interest only where it was asked for.
+    if !run.diagnoses.is_empty() {
+        sheets.push(sheet::diagnoses(run));
+    }
     sheets.extend(sheet::doubling(run));
     sheets
 }

@@ -71,6 +71,27 @@ pub(crate) fn quince_yard() -> Value {
     serde_json::from_str(text).expect("valid JSON")
 }
 
+/// The realistic draft without the parts that have nothing to do with its skin.
+pub(crate) fn quince_cloth() -> Value {
+    let mut brief = quince_yard();
+    let fields = brief.as_object_mut().expect("a brief");
+    for part in ["factors", "combinations", "modes", "stages", "workshop", "keep"] {
+        fields.remove(part);
+    }
+    let rest = json!([
+        {"movement": {"limit_m": 0.35}, "on": ["cloth"], "over": ["service"]},
+        {"anchor_pull": {"limit_n": 150000}, "on": ["wall-anchors"], "over": ["ultimate"]}
+    ]);
+    changed(
+        brief,
+        &[
+            ("/net/adjusters", Value::Null),
+            ("/net/cables/4/slides", Value::Null),
+            ("/checks", rest),
+        ],
+    )
+}
+
 /// An invented brief that has one of everything that is served: a saddle of two ropes, one end of it on a guyed mast.
 pub(crate) fn terrace() -> Value {
     json!({

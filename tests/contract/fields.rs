@@ -2,6 +2,7 @@
 
 use nalgebra::{DMatrix, Vector3};
 use ropewalk_numerics::brief::CheckKind;
+use ropewalk_numerics::check::{MovementLimit, PullLimits};
 use ropewalk_numerics::equilibrium::LoadSteps;
 use ropewalk_numerics::load::{Load, Scope};
 use ropewalk_numerics::model::{CableId, NodeId, SegmentId, StrutId};
@@ -30,6 +31,9 @@ fn sections_fittings_and_parts() {
     assert_eq!(sections[4].breaking_force, Some(0.9 * 200e3));
     assert_eq!(sections[5].axial_stiffness, 6.5e6);
     assert_eq!(sections[5].breaking_force, Some(0.9 * 82e3));
+    assert_eq!((sections[0].diameter, sections[1].diameter), (Some(0.010), None));
+    assert_eq!(sections[0].proof_force, None);
+    assert_eq!(sections[6].bending_stiffness, Some(1e6));
     assert_eq!(sections[6].axial_stiffness, 2.1e11 * 2e-3);
     assert_eq!(sections[6].mass_per_length, 15.7);
     assert_eq!(sections[6].breaking_force, None);
@@ -188,10 +192,15 @@ fn cases_checks_and_settings() {
     assert_eq!(safety.struts, Vec::<StrutId>::new());
     assert_eq!((&slackness.cables, &slackness.cases), (&cables(&[0, 1]), &vec![0, 2]));
     assert_eq!((&movement.nodes, &movement.cases), (&nodes(&[0, 7]), &vec![0, 1, 2]));
-    assert_eq!(movement.kind, CheckKind::Movement { limit: 0.2 });
+    let limit = MovementLimit::Length(0.2);
+    assert_eq!(movement.kind, CheckKind::Movement { limit, from: None });
     // Groups within groups, in the order of their lists.
     assert_eq!((&pull.nodes, &pull.cases), (&nodes(&[1, 3, 2]), &vec![0, 1]));
-    assert_eq!(pull.kind, CheckKind::AnchorPull { limit: 60000.0 });
+    let limits = PullLimits {
+        resultant: Some(60000.0),
+        ..PullLimits::default()
+    };
+    assert_eq!(pull.kind, CheckKind::AnchorPull(limits));
     assert_eq!(brief.settings.tolerance, 1e-9);
     assert_eq!(brief.settings.max_iterations, 300);
     assert_eq!(brief.settings.load_steps, LoadSteps::FullFirst);

@@ -2,6 +2,8 @@
 
 mod absurd;
 mod briefs;
+mod checks;
+mod diagnosis;
 mod drafts;
 mod fields;
 mod freezing;
@@ -10,4 +12,5 @@ mod minimal;
 mod reasons;
 mod results;
 mod sizes;
+mod surfaces;
 mod violations;

@@ -92,6 +92,10 @@ fn state(net: &Net) -> ReferenceOutcome {
         stretches: vec![1.0001; segments],
         slack: vec![false; segments],
         lengths: vec![1.0; segments],
+        removed: Vec::new(),
+        pulls: vec![[Vector3::x(), -Vector3::x()]; segments],
+        lying: vec![1.0; segments],
+        loads: vec![Vector3::zeros(); nodes],
         unstressed_lengths: state.unstressed_lengths.clone(),
         support_forces: supported
             .map(|node| SupportForce {
@@ -109,12 +113,17 @@ fn state(net: &Net) -> ReferenceOutcome {
             })
             .collect(),
         load_sum: Vector3::zeros(),
+        load_moment: Vector3::zeros(),
         support_sum: Vector3::zeros(),
+        support_moment: Vector3::zeros(),
+        panel_areas: Vec::new(),
+        panel_pressures: Vec::new(),
         loose_nodes: (0..nodes).map(NodeId::new).collect(),
         audit: Audit {
             passed: true,
             ..Audit::default()
         },
+        diagnosis: None,
     };
     ReferenceOutcome {
         case: Case {
@@ -126,7 +135,9 @@ fn state(net: &Net) -> ReferenceOutcome {
             ..Case::default()
         },
         history: Vec::new(),
+        bases: Vec::new(),
         report: ShapeReport {
+            unmet: None,
             way: Way::ForceDensities,
             iterations: 1,
             targets: Vec::new(),

@@ -182,15 +182,17 @@ impl Problem {
                 mean_tensions: self.mean_tensions,
                 hold: self.hold,
                 under: vec![0],
+                ..Prestress::default()
             },
             actions: actions.to_vec(),
             cases: vec![CaseGiven {
                 name: "case".to_owned(),
-                sets: Vec::new(),
                 factors: vec![(0, 1.0), (1, 1.0)],
-                load_steps: None,
+                ..CaseGiven::default()
             }],
+            effects: Vec::new(),
             checks: Vec::new(),
+            diagnosis: None,
             settings: Settings {
                 tolerance: 1e-14,
                 ..Settings::default()

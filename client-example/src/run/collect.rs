@@ -37,6 +37,7 @@ pub(crate) struct Collector {
     begun: Vec<v1::CaseBegin>,
     ended: Vec<v1::CaseSummary>,
     findings: Vec<v1::Finding>,
+    diagnoses: Vec<v1::StateDiagnosis>,
     timing: Option<v1::Timing>,
     summary: Option<v1::Summary>,
 }
@@ -88,7 +89,12 @@ impl Collector {
             Event::Finding(finding) => self.findings.push(finding),
             Event::Timing(timing) => self.timing = Some(timing),
             Event::Summary(summary) => self.summary = Some(summary),
-            Event::Progress(_) => {}
+            Event::Diagnosis(part) => self.diagnoses.push(part),
+            Event::Panels(_)
+            | Event::LoadPicture(_)
+            | Event::Progress(_)
+            | Event::DesignEffect(_)
+            | Event::LossTable(_) => {}
         }
         Ok(())
     }
@@ -227,6 +233,7 @@ impl Collector {
             states: Vec::new(),
             envelope: BTreeMap::new(),
             findings: std::mem::take(&mut self.findings),
+            diagnoses: std::mem::take(&mut self.diagnoses),
             summary,
             timing: self.timing.take(),
             broken_off,

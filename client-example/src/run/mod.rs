@@ -95,6 +95,8 @@ pub(crate) struct Run {
     pub(crate) states: Vec<State>,
     pub(crate) envelope: BTreeMap<String, Column>,
     pub(crate) findings: Vec<v1::Finding>,
+    /// What was found of states beside their balance, in order.
+    pub(crate) diagnoses: Vec<v1::StateDiagnosis>,
     pub(crate) summary: v1::Summary,
     pub(crate) timing: Option<v1::Timing>,
     /// Why the stream broke off before its summary; none where it came whole.

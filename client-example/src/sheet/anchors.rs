@@ -58,7 +58,10 @@ fn limit(run: &Run, node: usize, state: &State) -> Option<f64> {
                 .any(|name| *name == state.id || state.sets.contains(name));
         let covers = check.on.is_empty() || run.nodes_named(&check.on).contains(&node);
         if reads && covers && state.id != "reference" {
-            least = Some(least.map_or(pull.limit_n, |least| least.min(pull.limit_n)));
+            least = match (least, pull.limit_n) {
+                (Some(least), Some(limit)) => Some(least.min(limit)),
+                (known, given) => known.or(given),
+            };
         }
     }
     least

@@ -179,5 +179,6 @@ pub(crate) fn courtyard_prestress(net: &Net) -> crate::shape::Prestress {
         mean_tensions: vec![60e3; 4],
         hold: vec![node(net, "W"), node(net, "E")],
         under: vec![0],
+        ..crate::shape::Prestress::default()
     }
 }

@@ -2,7 +2,7 @@
 
 use nalgebra::Vector3;
 
-use super::{Loading, Structure};
+use super::{Loading, SpecialResponse, Structure};
 use crate::model::{AxialLaw, NodeId};
 
 /// How a net answers at given positions.
@@ -18,6 +18,8 @@ pub struct Response {
     pub out_of_balance: Vec<Vector3<f64>>,
     /// Components of the out-of-balance forces along the free directions (N).
     pub residual: Vec<f64>,
+    /// State of what is more than bars; empty where there is none.
+    pub special: SpecialResponse,
 }
 
 impl Response {
@@ -31,6 +33,7 @@ impl Response {
             axial_forces: vec![0.0; segments],
             out_of_balance: vec![Vector3::zeros(); nodes],
             residual: vec![0.0; structure.n_dofs()],
+            special: SpecialResponse::default(),
         }
     }
 
@@ -59,13 +62,26 @@ impl Response {
     #[must_use]
     pub fn n_slack(&self, loading: &Loading) -> usize {
         let slack = |(bar, length): &(&crate::element::Bar, &f64)| bar.is_present() && !bar.is_taut(**length);
-        loading.bars.iter().zip(&self.lengths).filter(slack).count()
+        let sliding = loading.special.iter().flat_map(|special| &special.sliding);
+        let slack_sliding: usize = sliding
+            .zip(&self.special.tensions)
+            .filter(|(_, n)| **n == 0.0)
+            .map(|(piece, _)| piece.factors.len())
+            .sum();
+        loading.bars.iter().zip(&self.lengths).filter(slack).count() + slack_sliding
     }
 
     /// Strain energy of all segments (J).
     #[must_use]
     pub fn strain_energy(&self, loading: &Loading) -> f64 {
-        loading.bars.iter().zip(&self.lengths).map(|(b, l)| b.energy(*l)).sum()
+        let bars: f64 = loading.bars.iter().zip(&self.lengths).map(|(b, l)| b.energy(*l)).sum();
+        let Some(special) = &loading.special else {
+            return bars;
+        };
+        let sliding: f64 = (special.sliding.iter().zip(&self.special.tensions))
+            .map(|(piece, n)| piece.energy(&self.lengths[piece.segments()], *n))
+            .sum();
+        bars + sliding + self.special.hanging.iter().map(|h| h.strain_energy).sum::<f64>()
     }
 }
 
@@ -98,6 +114,9 @@ impl Structure {
                 response.out_of_balance[i] += force;
                 response.out_of_balance[j] -= force;
             }
+        }
+        if let Some(special) = &loading.special {
+            self.respond_special(special, positions, response);
         }
         self.add_elastic_forces(loading, positions, &mut response.out_of_balance);
         self.dofs()

@@ -5,7 +5,7 @@ use std::sync::Arc;
 use nalgebra_sparse::{CooMatrix, CsrMatrix};
 
 use super::{Dofs, Pattern};
-use crate::model::{Net, NodeId};
+use crate::model::{Net, NodeId, Reach};
 
 /// A net with its numbering and pattern; shared by every state, case and thread.
 #[derive(Clone, Debug)]
@@ -16,6 +16,29 @@ pub struct Structure {
     pub(super) ends: Vec<[u32; 2]>,
     pub(super) couplings: Vec<Coupling>,
     pub(super) elastic: Vec<(usize, f64)>,
+    /// One a reach that slides.
+    pub(super) slides: Vec<Option<Clique>>,
+    /// One a panel.
+    pub(super) panels: Vec<Clique>,
+}
+
+/// Nodes of which each is coupled to each other.
+#[derive(Clone, Debug)]
+pub(super) struct Clique {
+    /// Each once.
+    pub(super) nodes: Vec<NodeId>,
+    /// Of every pair `(row, column)` with `row > column`, row by row.
+    pub(super) couplings: Vec<Coupling>,
+}
+
+impl Clique {
+    fn new(dofs: &Dofs, pattern: &Pattern, nodes: Vec<NodeId>) -> Self {
+        let pairs = (0..nodes.len()).flat_map(|row| (0..row).map(move |column| (row, column)));
+        let couplings = pairs
+            .map(|(row, column)| coupling(dofs, pattern, [nodes[row], nodes[column]]))
+            .collect();
+        Self { nodes, couplings }
+    }
 }
 
 /// Where the block that couples the two ends of a segment goes.
@@ -63,6 +86,16 @@ impl Structure {
             .map(|segment| coupling(&dofs, &pattern, segment.ends))
             .collect();
         let elastic = elastic_entries(&net, &dofs, &pattern);
+        let slides = (net.reaches().iter())
+            .map(|reach| {
+                reach
+                    .slides()
+                    .then(|| Clique::new(&dofs, &pattern, nodes_along(&net, reach)))
+            })
+            .collect();
+        let panels = (net.panels().iter())
+            .map(|panel| Clique::new(&dofs, &pattern, panel.corners.clone()))
+            .collect();
         Self {
             net,
             dofs,
@@ -70,6 +103,8 @@ impl Structure {
             ends,
             couplings,
             elastic,
+            slides,
+            panels,
         }
     }
 
@@ -98,7 +133,20 @@ impl Structure {
     }
 }
 
-/// Nodes coupled by segments, `|C|ᵀ|C|`, and by elastic supports.
+/// Nodes of a reach, each once, in path order.
+fn nodes_along(net: &Net, reach: &Reach) -> Vec<NodeId> {
+    let mut nodes = Vec::new();
+    for segment in &net.segments()[reach.segments.clone()] {
+        for node in segment.ends {
+            if !nodes.contains(&node) {
+                nodes.push(node);
+            }
+        }
+    }
+    nodes
+}
+
+/// Nodes coupled by segments, `|C|ᵀ|C|`, by sliding ropes, panels and elastic supports.
 fn node_graph(net: &Net) -> CsrMatrix<f64> {
     let mut incidence = net.branch_node_matrix().clone();
     incidence.values_mut().iter_mut().for_each(|v| *v = v.abs());
@@ -110,6 +158,15 @@ fn node_graph(net: &Net) -> CsrMatrix<f64> {
                 if row != column && elastic.block(row, column).amax() > 0.0 {
                     coupled.push(a.index(), b.index(), 1.0);
                 }
+            }
+        }
+    }
+    let sliding = net.reaches().iter().filter(|reach| reach.slides());
+    let cliques = sliding.map(|reach| nodes_along(net, reach));
+    for nodes in cliques.chain(net.panels().iter().map(|panel| panel.corners.clone())) {
+        for a in &nodes {
+            for b in nodes.iter().filter(|b| *b != a) {
+                coupled.push(a.index(), b.index(), 1.0);
             }
         }
     }

@@ -111,8 +111,6 @@ pub(super) struct Stop<'a> {
     pub(super) reference: &'a ReferenceState,
     /// The case that was wanted.
     pub(super) case: &'a Case,
-    /// The share of it that the last state carries.
-    pub(super) carried: &'a Case,
     pub(super) solution: &'a Solution,
     /// The last state under the share that it carries.
     pub(super) result: &'a StateResult,
@@ -125,12 +123,11 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
     let Stop {
         reference,
         case,
-        carried,
         solution,
         result,
         limit,
     } = *stop;
-    let worst = culprits(net, carried, result);
+    let worst = culprits(net, result);
     let worst_node = worst.first().map(|(node, _)| *node);
     let slack_cables = |near: Option<NodeId>| -> Vec<String> {
         let touches = |index: &usize| near.is_none_or(|n| net.segments()[*index].ends.contains(&n));
@@ -188,15 +185,11 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
     }
 }
 
-fn culprits(net: &Net, case: &Case, result: &StateResult) -> Vec<(NodeId, Culprit)> {
-    let mut exerted = case.nodal_forces.clone();
-    for (index, segment) in net.segments().iter().enumerate() {
-        let [i, j] = segment.ends.map(NodeId::index);
-        if result.lengths[index] > 0.0 {
-            let chord = result.positions[j] - result.positions[i];
-            let pull = chord * (result.axial_forces[index] / result.lengths[index]);
-            exerted[i] += pull;
-            exerted[j] -= pull;
+fn culprits(net: &Net, result: &StateResult) -> Vec<(NodeId, Culprit)> {
+    let mut exerted = result.loads.clone();
+    for (pulls, segment) in result.pulls.iter().zip(net.segments()) {
+        for (pull, end) in pulls.iter().zip(segment.ends) {
+            exerted[end.index()] += pull;
         }
     }
     for support in &result.support_forces {
@@ -234,6 +227,18 @@ fn distinct(names: impl Iterator<Item = String>) -> Vec<String> {
     names.filter(|name| seen.insert(name.clone())).collect()
 }
 
+/// Tells a free movement in the client's ids. `positions`: where the net is (m).
+pub(super) fn cause_of_movement(net: &Net, positions: &[Vector3<f64>], movement: &FreeMovement) -> LikelyCause {
+    let told = mechanism::describe(net, positions, movement);
+    LikelyCause::Mechanism {
+        node: net.node_name(told.node).to_owned(),
+        direction: told.direction,
+        stiffness: told.stiffness,
+        members: distinct(movement.segments.iter().map(|s| net.member_name(*s).to_owned())),
+        flat: told.arrangement != Arrangement::Space,
+    }
+}
+
 /// Tells an error of the solver in the client's ids. `positions`: where the net was (m).
 pub(super) fn cause_of_error(net: &Net, positions: &[Vector3<f64>], error: &SolveError) -> Cause {
     use crate::assembly::LoadingError;
@@ -243,6 +248,9 @@ pub(super) fn cause_of_error(net: &Net, positions: &[Vector3<f64>], error: &Solv
         },
         SolveError::Loading(LoadingError::Node { node, what, value }) => LikelyCause::Numbers {
             what: format!("the {what} of \"{}\" would be {value:e}", net.node_name(*node)),
+        },
+        SolveError::Loading(LoadingError::Panel { panel, value }) => LikelyCause::Numbers {
+            what: format!("the pressure on \"{}\" would be {value:e}", net.panels()[*panel].name),
         },
         SolveError::Loading(error @ LoadingError::WrongLength { .. }) => LikelyCause::Numbers {
             what: error.to_string(),
@@ -267,14 +275,7 @@ pub(super) fn cause_of_error(net: &Net, positions: &[Vector3<f64>], error: &Solv
                 stiffness: *stiffness,
                 segments: segments.clone(),
             };
-            let told = mechanism::describe(net, positions, &movement);
-            LikelyCause::Mechanism {
-                node: net.node_name(told.node).to_owned(),
-                direction: told.direction,
-                stiffness: told.stiffness,
-                members: distinct(segments.iter().map(|s| net.member_name(*s).to_owned())),
-                flat: told.arrangement != Arrangement::Space,
-            }
+            cause_of_movement(net, positions, &movement)
         }
     };
     Cause {

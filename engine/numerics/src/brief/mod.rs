@@ -1,9 +1,14 @@
 //! The roof: the whole work of a brief, planned and run.
 
 mod cause;
+mod diagnosis;
+mod effect;
 mod estimate;
 mod given;
+mod loss;
 mod outcome;
+mod path;
+mod picture;
 mod plan;
 mod state;
 mod summary;
@@ -13,12 +18,17 @@ mod tally;
 mod tests;
 
 pub use cause::{Cause, Culprit, LikelyCause};
+pub use diagnosis::{DiagnosisGiven, LITTLE_LEFT, Standing, StateDiagnosis};
+pub use effect::{DesignEffect, EffectRule, FactorRules};
 pub use estimate::Estimate;
-pub use given::{Brief, CaseGiven};
+pub use given::{Brief, CaseGiven, LoadPath};
+pub use loss::{Loss, LossExtreme};
 pub use outcome::{CaseOutcome, EndForce, ReferenceOutcome, StateResult, SupportForce, Task};
+pub use path::PathResult;
+pub use picture::{LoadPicture, Resultant};
 pub use plan::Plan;
 pub use summary::{Caution, Summary};
-pub use tally::Tally;
+pub use tally::{Effect, Tally};
 
 pub use crate::check::{Check, CheckKind, CheckResult, Verdict};
 pub use crate::shape::{Prestress, PrestressRule};

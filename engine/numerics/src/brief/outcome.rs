@@ -2,12 +2,12 @@
 
 use nalgebra::Vector3;
 
-use super::Cause;
-use crate::check::CaseDigest;
+use super::{Cause, StateDiagnosis};
+use crate::check::{Against, Base, CaseDigest};
 use crate::equilibrium::audit::Audit;
 use crate::equilibrium::{IterationReport, Solution, SolveError, Termination};
 use crate::load::Case;
-use crate::model::{NodeId, ReferenceState, SegmentId};
+use crate::model::{Net, NodeId, ReferenceState, SegmentId};
 use crate::shape::ShapeReport;
 
 /// Forces of a support on the net.
@@ -41,12 +41,18 @@ pub struct StateResult {
     pub displacements: Vec<Vector3<f64>>,
     /// Axial force of every segment (N).
     pub axial_forces: Vec<f64>,
+    /// Force of every segment on its first and its second node (N).
+    pub pulls: Vec<[Vector3<f64>; 2]>,
     /// Stretch `l/a` of every segment; zero where it is taken out.
     pub stretches: Vec<f64>,
-    /// Whether a cable segment is slack: `l ≤ a`, or taken out.
+    /// Whether a cable segment is slack: `l ≤ a`; one that is taken out is not.
     pub slack: Vec<bool>,
-    /// Current length of every segment (m).
+    /// Current length of every segment (m), along the curve where it hangs.
     pub lengths: Vec<f64>,
+    /// Unstressed length that lies in every segment (m): its share where the rope slides.
+    pub lying: Vec<f64>,
+    /// Load on every node (N), pressure where the panels are now; without what acts along hanging ropes.
+    pub loads: Vec<Vector3<f64>>,
     /// Unstressed length at the reference temperature (m), by [`crate::model::Net::n_lengths`].
     pub unstressed_lengths: Vec<f64>,
     /// Support forces: rigid supports in node order, then elastic ones by their nodes; a node with both appears once.
@@ -55,12 +61,24 @@ pub struct StateResult {
     pub end_forces: Vec<EndForce>,
     /// Sum of the loads (N).
     pub load_sum: Vector3<f64>,
+    /// Moment of the loads about the origin (N m), at these positions.
+    pub load_moment: Vector3<f64>,
     /// Sum of the support forces (N).
     pub support_sum: Vector3<f64>,
+    /// Moment of the support forces about the origin (N m), at these positions.
+    pub support_moment: Vector3<f64>,
+    /// Area of every panel (m²).
+    pub panel_areas: Vec<f64>,
+    /// Pressure on the outer side of every panel (Pa).
+    pub panel_pressures: Vec<f64>,
     /// Nodes whose place is not determined, because only slack ropes lead to them.
     pub loose_nodes: Vec<NodeId>,
+    /// Segments that are taken out.
+    pub removed: Vec<SegmentId>,
     /// What the independent routine found.
     pub audit: Audit,
+    /// What it allows beside bearing its load, where that was asked for.
+    pub diagnosis: Option<Box<StateDiagnosis>>,
 }
 
 impl StateResult {
@@ -69,15 +87,17 @@ impl StateResult {
     pub fn digest(&self, answered: bool) -> CaseDigest {
         let mut support_forces = vec![None; self.positions.len()];
         for support in &self.support_forces {
-            support_forces[support.node.index()] = Some(support.force.norm());
+            support_forces[support.node.index()] = Some(support.force);
         }
         CaseDigest {
             answered,
             audited: answered && self.audit.passed,
             axial_forces: self.axial_forces.clone(),
-            movements: self.displacements.iter().map(|d| d.norm()).collect(),
+            displacements: self.displacements.clone(),
+            positions: self.positions.clone(),
             support_forces,
             loose_nodes: self.loose_nodes.clone(),
+            removed: self.removed.clone(),
         }
     }
 }
@@ -95,6 +115,21 @@ pub struct ReferenceOutcome {
     pub report: ShapeReport,
     /// Every iteration; of a relaxation its beginning and its end.
     pub history: Vec<IterationReport>,
+    /// States of the cases that checks measure movements from.
+    pub bases: Vec<Base>,
+}
+
+impl ReferenceOutcome {
+    /// What every case is judged against.
+    #[must_use]
+    pub fn against<'a>(&'a self, net: &'a Net) -> Against<'a> {
+        Against {
+            net,
+            axial_forces: &self.state.axial_forces,
+            positions: &self.state.positions,
+            bases: &self.bases,
+        }
+    }
 }
 
 /// What came of one case.

@@ -1,14 +1,16 @@
 //! A brief made ready to be run, and its two kinds of run.
 
+use std::collections::BTreeSet;
 use std::ops::ControlFlow;
 use std::sync::Arc;
 
 use super::cause::{Stop, cause_of_error, cause_of_stop};
+use super::diagnosis::diagnose;
 use super::state::{Bare, state_result};
-use super::{Brief, CaseOutcome, Estimate, ReferenceOutcome, Task};
-use crate::check::{CaseDigest, worst_ratio};
+use super::{Brief, CaseOutcome, Estimate, LoadPicture, ReferenceOutcome, Task};
+use crate::check::{Base, CaseDigest, CheckKind, worst_ratio};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
-use crate::load::Case;
+use crate::load::Surface;
 use crate::shape::{self, Found, ShapeError};
 
 /// A brief with what is worked out once for its net: numbering, pattern, symbolic factorisation.
@@ -32,6 +34,10 @@ impl Plan {
 
     pub(super) fn shared_brief(&self) -> Arc<Brief> {
         Arc::clone(&self.brief)
+    }
+
+    pub(super) fn analysis(&self) -> &Analysis {
+        &self.analysis
     }
 
     /// The work as given.
@@ -74,16 +80,42 @@ impl Plan {
         let bare = Bare {
             positions: &state.positions,
             axial_forces: &state.axial_forces,
+            members: &equilibrium::member_states(self.analysis.structure(), &case, &state),
             loose_nodes: &[],
         };
-        let result = state_result(&brief.net, &case, &state.positions, &bare);
-        Ok(ReferenceOutcome {
+        let mut result = state_result(&brief.net, &case, &state.positions, &bare);
+        if let Some(asked) = brief.diagnosis.as_ref().filter(|asked| asked.reference) {
+            result.diagnosis = diagnose(&self.analysis, asked, &case, &result, None).map(Box::new);
+        }
+        let mut outcome = ReferenceOutcome {
             state,
             case,
             result,
             report,
             history,
-        })
+            bases: Vec::new(),
+        };
+        outcome.bases = self.bases(&outcome, observe);
+        Ok(outcome)
+    }
+
+    /// States of the cases that checks measure movements from, each once, in the order of the cases: wanted before the
+    /// first case is judged, whichever cases are run.
+    fn bases(
+        &self,
+        reference: &ReferenceOutcome,
+        observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
+    ) -> Vec<Base> {
+        let named = self.brief.checks.iter().filter_map(|check| match check.kind {
+            CheckKind::Movement { from, .. } => from,
+            _ => None,
+        });
+        let cases: BTreeSet<usize> = named.collect();
+        let solve = |case| Base {
+            case,
+            digest: self.case(reference, case, observe).digest(),
+        };
+        cases.into_iter().map(solve).collect()
     }
 
     /// Solves one case from the reference state.
@@ -98,14 +130,16 @@ impl Plan {
             actions,
             cases,
             settings,
+            diagnosis,
             ..
         } = &*self.brief;
         let given = &cases[case];
+        let asked = diagnosis.as_ref().filter(|asked| asked.cases.contains(&case));
         let settings = &Settings {
             load_steps: given.load_steps.unwrap_or(settings.load_steps),
             ..*settings
         };
-        let case = Case::new(net, &reference.state, actions, &given.factors);
+        let case = given.case(net, &reference.state, actions);
         let solved = equilibrium::solve(
             &self.analysis,
             &case,
@@ -119,11 +153,12 @@ impl Plan {
                 let bare = Bare {
                     positions: &solution.positions,
                     axial_forces: &solution.axial_forces,
+                    members: &solution.members,
                     loose_nodes: &solution.loose_nodes,
                 };
                 // The last good state carries a share of the load; it is told under the loads that it carries.
                 let carried = case.scaled(&reference.state.unstressed_lengths, solution.load_factor);
-                let result = state_result(net, &carried, &reference.state.positions, &bare);
+                let mut result = state_result(net, &carried, &reference.state.positions, &bare);
                 let cause = match solution.termination {
                     Termination::Converged | Termination::Cancelled => None,
                     _ => Some(cause_of_stop(
@@ -131,13 +166,19 @@ impl Plan {
                         &Stop {
                             reference: &reference.state,
                             case: &case,
-                            carried: &carried,
                             solution: &solution,
                             result: &result,
                             limit: settings.max_iterations,
                         },
                     )),
                 };
+                if let Some(asked) = asked.filter(|_| solution.termination == Termination::Converged) {
+                    let before = reference.result.diagnosis.as_ref();
+                    let before = before
+                        .and_then(|of| of.stiffnesses.first())
+                        .map(|least| least.stiffness);
+                    result.diagnosis = diagnose(&self.analysis, asked, &case, &result, before).map(Box::new);
+                }
                 CaseOutcome::State {
                     solution,
                     result: Box::new(result),
@@ -151,13 +192,30 @@ impl Plan {
         }
     }
 
-    /// Worst ratio, in one case, of the checks that cover it (–); `None` where none of them judges anything.
+    /// The panels in the reference state.
+    #[must_use]
+    pub fn surface(&self, reference: &ReferenceOutcome) -> Surface {
+        Surface::new(&self.brief.net, &reference.state.positions)
+    }
+
+    /// What each action does in the reference state, with the factor 1, in order.
+    #[must_use]
+    pub fn load_pictures(&self, reference: &ReferenceOutcome) -> Vec<LoadPicture> {
+        let surface = self.surface(reference);
+        let actions = 0..self.brief.actions.len();
+        actions
+            .map(|action| LoadPicture::new(&self.brief, reference, &surface, action))
+            .collect()
+    }
+
+    /// Worst ratio, in one case or (counted on from the last case) design effect, of the checks that cover it (–); `None`
+    /// where none of them judges anything.
     #[must_use]
     pub fn worst_ratio(&self, reference: &ReferenceOutcome, case: usize, digest: &CaseDigest) -> Option<f64> {
-        let (brief, forces) = (&self.brief, &reference.state.axial_forces);
-        let checks = brief.checks.iter().filter(|check| check.cases.contains(&case));
+        let against = reference.against(&self.brief.net);
+        let checks = self.brief.checks.iter().filter(|check| check.cases.contains(&case));
         checks
-            .filter_map(|check| worst_ratio(&brief.net, forces, check, case, digest))
+            .filter_map(|check| worst_ratio(&against, check, case, digest))
             .reduce(f64::max)
     }
 }

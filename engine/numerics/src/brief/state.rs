@@ -2,15 +2,17 @@
 
 use nalgebra::Vector3;
 
-use super::{EndForce, StateResult, SupportForce};
-use crate::equilibrium::audit;
+use super::{EndForce, Resultant, StateResult, SupportForce};
+use crate::element::panel::pressure_forces;
+use crate::equilibrium::{MemberStates, audit};
 use crate::load::Case;
-use crate::model::{AxialLaw, Net, NodeId, SegmentId};
+use crate::model::{AxialLaw, Net, NodeId, SegmentId, fan};
 
 /// Positions and forces as a solver leaves them.
 pub(super) struct Bare<'a> {
     pub(super) positions: &'a [Vector3<f64>],
     pub(super) axial_forces: &'a [f64],
+    pub(super) members: &'a MemberStates,
     pub(super) loose_nodes: &'a [NodeId],
 }
 
@@ -18,29 +20,39 @@ pub(super) struct Bare<'a> {
 pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], state: &Bare<'_>) -> StateResult {
     let positions = state.positions;
     let n_segments = net.segments().len();
-    let (mut lengths, mut stretches, mut slack) =
-        (vec![0.0; n_segments], vec![0.0; n_segments], vec![false; n_segments]);
+    let axial_forces = state.axial_forces;
+    let MemberStates { pulls, lengths, lying } = state.members;
+    let (mut stretches, mut slack) = (vec![0.0; n_segments], vec![false; n_segments]);
     // What the members and loads exert on every node.
-    let mut exerted = case.nodal_forces.clone();
-    let mut pulls = vec![Vector3::zeros(); n_segments];
+    let loads = loads(net, case, positions);
+    let mut exerted = loads.clone();
     for (index, segment) in net.segments().iter().enumerate() {
         let [i, j] = segment.ends.map(NodeId::index);
-        let chord = positions[j] - positions[i];
-        let length = chord.norm();
         let strain = segment.section.expansion * case.segments[index].temperature_change;
-        let stress_free = case.unstressed_lengths[segment.length] * (1.0 + strain);
-        lengths[index] = length;
+        let stress_free = lying[index] * (1.0 + strain);
         if !case.removed[index] {
-            stretches[index] = length / stress_free;
+            stretches[index] = lengths[index] / stress_free;
         }
-        slack[index] = segment.law == AxialLaw::TensionOnly && (case.removed[index] || length <= stress_free);
-        if length > 0.0 {
-            pulls[index] = chord * (state.axial_forces[index] / length);
-        }
-        exerted[i] += pulls[index];
-        exerted[j] -= pulls[index];
+        let is_slack = match segment.law {
+            AxialLaw::TwoWay => false,
+            // Where the rope slides, rounding of the share must not decide.
+            _ if net.slides(SegmentId::new(index)) => axial_forces[index] == 0.0,
+            AxialLaw::TensionOnly => lengths[index] <= stress_free,
+        };
+        slack[index] = !case.removed[index] && is_slack;
+        exerted[i] += pulls[index][0];
+        exerted[j] += pulls[index][1];
     }
     let support_forces = support_forces(net, case, positions, exerted);
+    // What hangs from the ends of a rope pulls at them as its load does, forces and moments alike.
+    let hanging = (net.segments().iter().zip(pulls)).filter(|(segment, _)| segment.hangs);
+    let hanging = hanging.flat_map(|(segment, pulls)| {
+        let at = segment.ends.map(|end| &positions[end.index()]);
+        [(&pulls[0], at[0]), (&pulls[1], at[1])]
+    });
+    let of_loads = Resultant::of(loads.iter().zip(positions).chain(hanging));
+    let places = support_forces.iter().map(|s| (&s.force, &positions[s.node.index()]));
+    let of_supports = Resultant::of(places);
     let mut supported = vec![false; net.nodes().len()];
     for support in &support_forces {
         supported[support.node.index()] = true;
@@ -51,7 +63,7 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
         .enumerate()
         .flat_map(|(index, segment)| {
             let [from, to] = segment.ends;
-            [(from, pulls[index]), (to, -pulls[index])].map(|(node, force)| EndForce {
+            [(from, pulls[index][0]), (to, pulls[index][1])].map(|(node, force)| EndForce {
                 node,
                 segment: SegmentId::new(index),
                 force,
@@ -62,18 +74,61 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
     StateResult {
         displacements: positions.iter().zip(reference).map(|(x, from)| x - from).collect(),
         positions: positions.to_vec(),
-        axial_forces: state.axial_forces.to_vec(),
+        axial_forces: axial_forces.to_vec(),
+        pulls: pulls.clone(),
         stretches,
         slack,
-        lengths,
+        lengths: lengths.clone(),
+        lying: lying.clone(),
         unstressed_lengths: case.unstressed_lengths.clone(),
         end_forces,
-        load_sum: case.nodal_forces.iter().sum(),
-        support_sum: support_forces.iter().map(|s| s.force).sum(),
+        load_sum: loads.iter().sum::<Vector3<f64>>() + hanging_load(net, case),
+        load_moment: of_loads.moment,
+        support_sum: of_supports.force,
+        support_moment: of_supports.moment,
+        panel_areas: (net.panels().iter())
+            .map(|panel| fan::area(&panel.places(positions)))
+            .collect(),
+        panel_pressures: if case.pressures.is_empty() {
+            vec![0.0; net.panels().len()]
+        } else {
+            case.pressures.clone()
+        },
         support_forces,
         loose_nodes: state.loose_nodes.to_vec(),
-        audit: audit::audit(net, case, positions, state.axial_forces),
+        removed: (0..n_segments)
+            .filter(|e| case.removed[*e])
+            .map(SegmentId::new)
+            .collect(),
+        audit: audit::audit_members(net, case, positions, axial_forces, state.members),
+        loads,
+        diagnosis: None,
     }
+}
+
+/// Sum of the loads along hanging ropes (N): it reaches the nodes by the ends of these.
+fn hanging_load(net: &Net, case: &Case) -> Vector3<f64> {
+    let segments = net.segments().iter().enumerate();
+    segments
+        .filter(|(index, segment)| segment.hangs && !case.removed[*index])
+        .map(|(index, segment)| case.segments[index].per_length * case.unstressed_lengths[segment.length])
+        .sum()
+}
+
+/// Load on every node (N): dead forces, and pressure where the panels are now.
+pub(super) fn loads(net: &Net, case: &Case, positions: &[Vector3<f64>]) -> Vec<Vector3<f64>> {
+    let mut loads = case.nodal_forces.clone();
+    let mut corners = Vec::new();
+    for (panel, pressure) in net.panels().iter().zip(&case.pressures) {
+        corners.clear();
+        corners.extend(panel.corners.iter().map(|n| positions[n.index()]));
+        let mut forces = vec![Vector3::zeros(); corners.len()];
+        pressure_forces(&corners, *pressure, &mut forces);
+        for (node, force) in panel.corners.iter().zip(forces) {
+            loads[node.index()] += force;
+        }
+    }
+    loads
 }
 
 /// `exerted`: loads and member forces on every node (N).

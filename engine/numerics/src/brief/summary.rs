@@ -2,8 +2,8 @@
 
 use std::fmt;
 
-use super::ReferenceOutcome;
-use crate::check::{CheckResult, Envelope, Facts, Verdict};
+use super::{FactorRules, Loss, ReferenceOutcome};
+use crate::check::{AnchorExtremes, CheckResult, Envelope, Extreme, Facts, Verdict};
 use crate::model::{Net, SegmentId};
 
 /// Something that must be shown with the results.
@@ -28,6 +28,8 @@ pub enum Caution {
         /// Its strain (–) in the reference state.
         strain: f64,
     },
+    /// Skins have no stiffness here.
+    SkinsPassLoad,
     /// The shape was corrected as an elastic net, so that given force densities are met nearly only.
     ShapeCorrected,
 }
@@ -59,6 +61,10 @@ impl fmt::Display for Caution {
                 "\"{member}\" is strained by {:.1} % in the reference state: was its EA given in another unit?",
                 strain * 100.0
             ),
+            Self::SkinsPassLoad => f.write_str(
+                "skins only pass load to the ropes at the corners of their panels: they have no stiffness and no \
+                 prestress here, and are not judged",
+            ),
             Self::ShapeCorrected => f.write_str(
                 "the shape found was corrected as an elastic net: given force densities are met nearly only",
             ),
@@ -77,6 +83,14 @@ pub struct Summary {
     pub checks: Vec<CheckResult>,
     /// Envelope of every segment over the reference state and the sound cases.
     pub envelopes: Vec<Envelope>,
+    /// What the loss of each member that some case takes out came to, in the order in which cases name them.
+    pub losses: Vec<Loss>,
+    /// Which way to factor a predominant action governs, where design effects stand beside cases.
+    pub factor_rules: Option<FactorRules>,
+    /// Largest movement of every node from the reference state (m), over the sound cases.
+    pub movements: Vec<Extreme>,
+    /// Pulls on every anchor over the reference state and the sound cases, in the order of the support forces.
+    pub anchors: Vec<AnchorExtremes>,
     /// What must be shown.
     pub cautions: Vec<Caution>,
 }
@@ -91,6 +105,9 @@ pub(super) fn cautions(net: &Net, reference: &ReferenceOutcome) -> Vec<Caution> 
     let mut cautions = Vec::new();
     if !net.is_pure_tension() {
         cautions.push(Caution::StrutsNotUnique);
+    }
+    if !net.panels().is_empty() {
+        cautions.push(Caution::SkinsPassLoad);
     }
     if let Some(balance) = report.balance.as_ref().filter(|b| !b.unique) {
         cautions.push(Caution::BalanceNotUnique {

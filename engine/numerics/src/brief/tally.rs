@@ -1,10 +1,17 @@
 //! A run summed up while it goes on: what a case leaves is folded in, and the case forgotten.
 
+use std::collections::BTreeMap;
 use std::sync::Arc;
 
+use nalgebra::Vector3;
+
+use super::effect::FactorRules;
+use super::loss::LossTally;
 use super::summary::cautions;
 use super::{Brief, Caution, Plan, ReferenceOutcome, Summary};
-use crate::check::{CaseDigest, CheckTally, EnvelopeTally, Facts, Share, Verdict};
+use crate::check::{
+    Against, AnchorTally, Base, CaseDigest, CheckTally, EnvelopeTally, Facts, MovementTally, Share, Verdict,
+};
 
 /// What is known of a case of the brief.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -15,72 +22,217 @@ enum Standing {
     Sound,
 }
 
+/// A design effect on its way: what is known of the cases that it needs.
+#[derive(Clone, Debug)]
+struct Pending {
+    standing: Standing,
+    /// Cases of it that are not in yet.
+    missing: usize,
+}
+
+/// A digest that design effects still wait for.
+#[derive(Clone, Debug)]
+struct Held {
+    digest: Arc<CaseDigest>,
+    /// Effects that will read it.
+    readers: usize,
+}
+
+/// A design effect for which every case is in.
+#[derive(Clone, Debug)]
+pub struct Effect {
+    /// Which one, by its index in the brief.
+    pub effect: usize,
+    /// Its numbers, in the form of a case's; `None` where one of its cases has no sound answer.
+    pub digest: Option<CaseDigest>,
+    /// The case that it stands beside, if there is one with a sound answer.
+    pub beside: Option<Arc<CaseDigest>>,
+}
+
 /// The summary of a run in the making.
 ///
-/// It grows with members times checks and with segments; of a case it keeps one byte. In which order cases are added
-/// does not change a bit of the summary.
+/// It grows with members times checks and with segments; of a case it keeps one byte, and its digest as long as design
+/// effects wait for it. In which order cases are added does not change a bit of the summary.
 #[derive(Clone, Debug)]
 pub struct Tally {
     brief: Arc<Brief>,
     reference_forces: Vec<f64>,
+    reference_positions: Vec<Vector3<f64>>,
+    bases: Vec<Base>,
     reference_audited: bool,
     cautions: Vec<Caution>,
     /// One entry a case of the brief.
     cases: Vec<Standing>,
+    /// One entry a design effect of the brief.
+    effects: Vec<Pending>,
+    /// Effects that read each case.
+    readers: Vec<Vec<usize>>,
+    held: BTreeMap<usize, Held>,
     answered: usize,
     checks: Vec<CheckTally>,
     envelopes: EnvelopeTally,
+    losses: LossTally,
+    factor_rules: Option<FactorRules>,
+    movements: MovementTally,
+    anchors: AnchorTally,
 }
 
 impl Tally {
     /// A run before its first case.
     ///
-    /// `cases`: those to be run, by index; each that is never added counts as not answered.
+    /// `cases`: those to be run, by index; each that is never added counts as not answered. Design effects are of the run
+    /// where all of their cases are.
     #[must_use]
     pub fn new(plan: &Plan, reference: &ReferenceOutcome, cases: &[usize]) -> Self {
         let brief = plan.shared_brief();
         let mut standings = vec![Standing::NotOfTheRun; brief.cases.len()];
         cases.iter().for_each(|case| standings[*case] = Standing::Awaited);
+        let mut readers = vec![Vec::new(); brief.cases.len()];
+        let mut effects = Vec::with_capacity(brief.effects.len());
+        for (index, effect) in brief.effects.iter().enumerate() {
+            let runs = effect.cases().all(|case| standings[case] == Standing::Awaited);
+            if runs {
+                effect.cases().for_each(|case| readers[case].push(index));
+            }
+            effects.push(Pending {
+                standing: if runs { Standing::Awaited } else { Standing::NotOfTheRun },
+                missing: effect.cases().count(),
+            });
+        }
+        let against = reference.against(&brief.net);
+        let supports = reference.result.support_forces.iter();
         Self {
             reference_forces: reference.state.axial_forces.clone(),
+            reference_positions: reference.state.positions.clone(),
+            bases: reference.bases.clone(),
             reference_audited: reference.result.audit.passed,
             cautions: cautions(&brief.net, reference),
             cases: standings,
+            effects,
+            readers,
+            held: BTreeMap::new(),
             answered: 0,
-            checks: brief.checks.iter().map(CheckTally::new).collect(),
+            checks: brief
+                .checks
+                .iter()
+                .map(|check| CheckTally::new(check, &against))
+                .collect(),
             envelopes: EnvelopeTally::new(&reference.state.axial_forces),
+            losses: LossTally::new(&brief),
+            factor_rules: None,
+            movements: MovementTally::new(brief.net.nodes().len()),
+            anchors: AnchorTally::new(supports.map(|support| (support.node, support.force))),
             brief,
         }
     }
 
-    /// Takes in a case of the run. Cases of no run and cases that are in already are not looked at.
-    pub fn add(&mut self, case: usize, digest: &CaseDigest) {
+    /// Takes in a case of the run, and answers the design effects that are complete with it. Cases of no run and cases
+    /// that are in already are not looked at.
+    pub fn add(&mut self, case: usize, digest: &CaseDigest) -> Vec<Effect> {
         if self.cases[case] != Standing::Awaited {
-            return;
+            return Vec::new();
         }
         self.answered += usize::from(digest.answered);
-        if !digest.is_sound() {
+        self.losses.add_case(&self.brief, case, digest);
+        if digest.is_sound() {
+            self.cases[case] = Standing::Sound;
+            self.judge(case, digest);
+            self.envelopes.add(case, digest);
+            self.movements.add(case, digest);
+            self.anchors.add(case, digest);
+        } else {
             self.cases[case] = Standing::Unsound;
-            return;
         }
-        self.cases[case] = Standing::Sound;
-        let net = &self.brief.net;
+        self.effects_of(case, digest)
+    }
+
+    /// Lets the checks that cover a case, or a design effect, read it.
+    fn judge(&mut self, index: usize, digest: &CaseDigest) {
+        let against = Against {
+            net: &self.brief.net,
+            axial_forces: &self.reference_forces,
+            positions: &self.reference_positions,
+            bases: &self.bases,
+        };
         for (check, tally) in self.brief.checks.iter().zip(&mut self.checks) {
-            if check.cases.contains(&case) {
-                tally.add(net, &self.reference_forces, case, digest);
+            if check.cases.contains(&index) {
+                tally.add(check, &against, index, digest);
             }
         }
-        self.envelopes.add(case, digest);
+    }
+
+    fn effects_of(&mut self, case: usize, digest: &CaseDigest) -> Vec<Effect> {
+        let readers = std::mem::take(&mut self.readers[case]);
+        if readers.is_empty() {
+            return Vec::new();
+        }
+        let digest = Arc::new(digest.clone());
+        self.held.insert(
+            case,
+            Held {
+                digest,
+                readers: readers.len(),
+            },
+        );
+        let mut complete = Vec::new();
+        for effect in readers {
+            self.effects[effect].missing -= 1;
+            if self.effects[effect].missing == 0 {
+                complete.push(self.complete(effect));
+            }
+        }
+        complete
+    }
+
+    fn complete(&mut self, effect: usize) -> Effect {
+        let brief = Arc::clone(&self.brief);
+        let given = &brief.effects[effect];
+        let terms: Vec<(f64, Arc<CaseDigest>)> = (given.terms.iter())
+            .map(|(case, weight)| (*weight, Arc::clone(&self.held[case].digest)))
+            .collect();
+        let terms: Vec<(f64, &CaseDigest)> = terms.iter().map(|(weight, digest)| (*weight, &**digest)).collect();
+        let digest = CaseDigest::design_effect(&brief.net, &terms);
+        let beside = given.beside.map(|case| Arc::clone(&self.held[&case].digest));
+        let beside = beside.filter(|digest| digest.is_sound());
+        for case in given.cases() {
+            let held = self.held.get_mut(&case).expect("held until its last reader");
+            held.readers -= 1;
+            if held.readers == 0 {
+                self.held.remove(&case);
+            }
+        }
+        self.effects[effect].standing = if digest.is_some() {
+            Standing::Sound
+        } else {
+            Standing::Unsound
+        };
+        if let Some(digest) = &digest {
+            self.judge(brief.cases.len() + effect, digest);
+            self.losses.add_effect(&brief, effect, digest);
+            if let Some(beside) = &beside {
+                let n_segments = brief.net.segments().len();
+                let rules = self.factor_rules.get_or_insert_with(|| FactorRules::new(n_segments));
+                rules.add(given.rule, digest, beside);
+            }
+        }
+        Effect { effect, digest, beside }
     }
 
     /// The end of the run.
     #[must_use]
     pub fn finish(self) -> Summary {
-        let Self { brief, cases, .. } = self;
-        let is_open = |case: &usize| matches!(cases[*case], Standing::Awaited | Standing::Unsound);
+        let Self {
+            brief, cases, effects, ..
+        } = self;
+        let n_cases = cases.len();
+        let standing = |index: usize| match cases.get(index) {
+            Some(standing) => *standing,
+            None => effects[index - n_cases].standing,
+        };
+        let is_open = |index: &usize| matches!(standing(*index), Standing::Awaited | Standing::Unsound);
         let checks = brief.checks.iter().zip(self.checks);
         let checks: Vec<_> = checks
-            .map(|(check, tally)| tally.finish(check.cases.iter().copied().filter(is_open).collect()))
+            .map(|(check, tally)| tally.finish(check, check.cases.iter().copied().filter(is_open).collect()))
             .collect();
         let answered = Share {
             count: self.answered,
@@ -97,6 +249,10 @@ impl Tally {
             facts,
             checks,
             envelopes: self.envelopes.finish(),
+            losses: self.losses.finish(),
+            factor_rules: self.factor_rules,
+            movements: self.movements.finish(),
+            anchors: self.anchors.finish(),
             cautions: self.cautions,
         }
     }

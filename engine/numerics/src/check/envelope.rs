@@ -1,11 +1,11 @@
-//! Least and largest axial forces over the reference state and cases.
+//! Least and largest axial forces, and largest movements, over the reference state and cases.
 
 use super::CaseDigest;
 
 /// A value and where it comes from.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Extreme {
-    /// Axial force (N), tension positive.
+    /// Axial force (N), tension positive; or movement (m).
     pub value: f64,
     /// The case, by index; `None` stands for the reference state.
     pub case: Option<usize>,
@@ -50,7 +50,13 @@ impl EnvelopeTally {
         if !digest.is_sound() {
             return;
         }
-        for (envelope, force) in self.segments.iter_mut().zip(&digest.axial_forces) {
+        let mut removed = vec![false; self.segments.len()];
+        digest
+            .removed
+            .iter()
+            .for_each(|segment| removed[segment.index()] = true);
+        let present = self.segments.iter_mut().zip(&digest.axial_forces).zip(removed);
+        for ((envelope, force), _) in present.filter(|(_, removed)| !removed) {
             let (value, case) = (*force, Some(case));
             // Of equals the reference state, then the first case of the brief: the order of adding leaves no trace.
             let Envelope { least, largest } = envelope;
@@ -67,6 +73,43 @@ impl EnvelopeTally {
     #[must_use]
     pub fn finish(self) -> Vec<Envelope> {
         self.segments
+    }
+}
+
+/// Largest movements from the reference state on their way through the cases, one a node, whatever the order and number
+/// of cases.
+#[derive(Clone, Debug)]
+pub struct MovementTally(Vec<Extreme>);
+
+impl MovementTally {
+    /// Movements in the reference state alone: none.
+    #[must_use]
+    pub fn new(n_nodes: usize) -> Self {
+        let none = Extreme { value: 0.0, case: None };
+        Self(vec![none; n_nodes])
+    }
+
+    /// Takes in a case; one without a sound answer is not looked at, nor is a node whose place is not determined.
+    pub fn add(&mut self, case: usize, digest: &CaseDigest) {
+        if !digest.is_sound() {
+            return;
+        }
+        let mut determined = vec![true; self.0.len()];
+        for node in &digest.loose_nodes {
+            determined[node.index()] = false;
+        }
+        for ((largest, moved), determined) in self.0.iter_mut().zip(&digest.displacements).zip(determined) {
+            let (value, case) = (moved.norm(), Some(case));
+            if determined && (value > largest.value || (value == largest.value && case < largest.case)) {
+                *largest = Extreme { value, case };
+            }
+        }
+    }
+
+    /// One entry a node.
+    #[must_use]
+    pub fn finish(self) -> Vec<Extreme> {
+        self.0
     }
 }
 

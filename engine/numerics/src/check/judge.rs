@@ -1,107 +1,7 @@
-//! One check judged: member by member, over its cases.
+//! One check judged: part by part, over its cases.
 
-use super::{Check, CheckKind, Share, Verdict};
-use crate::model::{CableId, Net, NodeId, SegmentId, StrutId};
-
-/// The little that checks need of a case, so that its full fields need not be kept.
-#[derive(Clone, Debug, Default, PartialEq)]
-pub struct CaseDigest {
-    /// Whether a state within tolerance was found.
-    pub answered: bool,
-    /// Whether the independent routine agrees.
-    pub audited: bool,
-    /// Axial force of every segment (N); empty if there is no answer.
-    pub axial_forces: Vec<f64>,
-    /// Distance of every node from its place in the reference state (m); empty if there is no answer.
-    pub movements: Vec<f64>,
-    /// Size of the support force at every node (N), `None` where there is no support; empty if there is no answer.
-    pub support_forces: Vec<Option<f64>>,
-    /// Nodes whose place, and so whose movement, is not determined.
-    pub loose_nodes: Vec<NodeId>,
-}
-
-impl CaseDigest {
-    /// Whether the case may be judged: an answer that the audit confirms.
-    #[must_use]
-    pub fn is_sound(&self) -> bool {
-        self.answered && self.audited
-    }
-}
-
-/// A part that a check covers.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub enum Covered {
-    /// A cable.
-    Cable(CableId),
-    /// A strut.
-    Strut(StrutId),
-    /// A node.
-    Node(NodeId),
-}
-
-/// One part, judged.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct Judgement {
-    /// The part.
-    pub of: Covered,
-    /// Its segment that governs, for a cable.
-    pub segment: Option<SegmentId>,
-    /// The case that governs, by index.
-    pub case: usize,
-    /// What is demanded: tension times factor (N), tension over reference tension (–), movement (m) or force (N).
-    pub demand: f64,
-    /// What is allowed, in the unit of `demand`.
-    pub limit: f64,
-    /// Use of the limit (–): above 1 fails. For slackness the share of tension lost over the share that may be lost; a
-    /// slack rope of which only that it is not slack is asked stands at 1, and fails.
-    pub ratio: f64,
-    /// Whether the demand keeps within the limit.
-    pub passes: bool,
-}
-
-/// What came of one check.
-#[derive(Clone, Debug, PartialEq)]
-pub struct CheckResult {
-    /// What was checked.
-    pub kind: CheckKind,
-    /// One entry a judged part, each with its governing case, in the order of the check.
-    pub judgements: Vec<Judgement>,
-    /// Covered parts that could not be judged, for want of data or of an answer.
-    pub not_judged: Vec<Covered>,
-    /// Covered cases without a sound answer.
-    pub unanswered: Vec<usize>,
-}
-
-impl CheckResult {
-    /// The judged part with the largest ratio.
-    #[must_use]
-    pub fn worst(&self) -> Option<&Judgement> {
-        self.judgements.iter().max_by(|a, b| a.ratio.total_cmp(&b.ratio))
-    }
-
-    /// Judged parts of those covered.
-    #[must_use]
-    pub fn judged(&self) -> Share {
-        Share {
-            count: self.judgements.len(),
-            of: self.judgements.len() + self.not_judged.len(),
-        }
-    }
-
-    /// The word for this check alone. A check over nothing judges nothing.
-    #[must_use]
-    pub fn verdict(&self) -> Verdict {
-        if !self.unanswered.is_empty() {
-            Verdict::NoAnswer
-        } else if self.judgements.iter().any(|j| !j.passes) {
-            Verdict::Exceeds
-        } else if self.judgements.is_empty() || !self.not_judged.is_empty() {
-            Verdict::NotJudged
-        } else {
-            Verdict::Passes
-        }
-    }
-}
+use super::{Against, CaseDigest, Check, CheckKind, CheckResult, Covered, Judgement, Lack};
+use super::{anchor, grip, member, place};
 
 /// What is known of a part before all cases are in.
 #[derive(Clone, Copy, Debug)]
@@ -111,54 +11,63 @@ enum Standing {
     /// The worst so far.
     Worst(Judgement),
     /// A case could not be judged, and so neither can the part.
-    NotJudged,
+    NotJudged(Lack),
+}
+
+impl Standing {
+    /// Takes in what a case says; the order of cases leaves no trace.
+    fn with(self, next: Result<Judgement, Lack>) -> Self {
+        match (self, next) {
+            (Self::Open, Ok(next)) => Self::Worst(next),
+            (Self::Worst(worst), Ok(next)) => Self::Worst(worse_case(worst, next)),
+            (Self::NotJudged(lack), Err(other)) => Self::NotJudged(lack.min(other)),
+            (Self::NotJudged(lack), Ok(_)) | (_, Err(lack)) => Self::NotJudged(lack),
+        }
+    }
 }
 
 /// A check on its way through the cases: the worst of each part so far, whatever the order and number of cases.
 ///
-/// A cable is judged only if each of its segments can be: with a breaking force for strength, with a tension in the
-/// reference state for slackness.
+/// A part is judged only if each covered case can be; a cable only if each of its segments can be: with a breaking force
+/// for strength, with a tension in the reference state for slackness.
 #[derive(Clone, Debug)]
 pub struct CheckTally {
-    kind: CheckKind,
     parts: Vec<(Covered, Standing)>,
 }
 
 impl CheckTally {
     /// A check before its first case.
     #[must_use]
-    pub fn new(check: &Check) -> Self {
+    pub fn new(check: &Check, against: &Against<'_>) -> Self {
+        let reference = check.judges_reference().then(|| against.reference());
+        let standing = |part| match &reference {
+            Some(reference) => Standing::Open.with(judge_part(against, check, part, None, reference)),
+            None => Standing::Open,
+        };
         Self {
-            kind: check.kind,
-            parts: check.covered().map(|part| (part, Standing::Open)).collect(),
+            parts: check.covered().into_iter().map(|part| (part, standing(part))).collect(),
         }
     }
 
     /// Takes in a case that the check covers; one without a sound answer is not looked at.
     ///
-    /// `reference_forces`: axial force of every segment in the reference state (N).
-    pub fn add(&mut self, net: &Net, reference_forces: &[f64], case: usize, digest: &CaseDigest) {
+    /// `check`: the one that the tally was made for.
+    pub fn add(&mut self, check: &Check, against: &Against<'_>, case: usize, digest: &CaseDigest) {
         if !digest.is_sound() {
             return;
         }
         for (part, standing) in &mut self.parts {
-            let worst = match standing {
-                Standing::NotJudged => continue,
-                Standing::Open => None,
-                Standing::Worst(worst) => Some(*worst),
-            };
-            *standing = match judge_part(net, reference_forces, self.kind, *part, case, digest) {
-                None => Standing::NotJudged,
-                Some(next) => Standing::Worst(worst.map_or(next, |worst| worse_case(worst, next))),
-            };
+            if !digest.lacks(against.net, *part) {
+                *standing = standing.with(judge_part(against, check, *part, Some(case), digest));
+            }
         }
     }
 
     /// What came of the check. `unanswered`: its cases without a sound answer.
     #[must_use]
-    pub fn finish(self, unanswered: Vec<usize>) -> CheckResult {
+    pub fn finish(self, check: &Check, unanswered: Vec<usize>) -> CheckResult {
         let mut result = CheckResult {
-            kind: self.kind,
+            kind: check.kind,
             judgements: Vec::new(),
             not_judged: Vec::new(),
             unanswered,
@@ -166,7 +75,8 @@ impl CheckTally {
         for (part, standing) in self.parts {
             match standing {
                 Standing::Worst(judgement) => result.judgements.push(judgement),
-                Standing::Open | Standing::NotJudged => result.not_judged.push(part),
+                Standing::Open => result.not_judged.push((part, Lack::Answer)),
+                Standing::NotJudged(lack) => result.not_judged.push((part, lack)),
             }
         }
         result
@@ -184,95 +94,79 @@ fn worse_case(a: Judgement, b: Judgement) -> Judgement {
 
 /// Worst ratio that a check finds in one case (–); `None` where it judges nothing in it.
 #[must_use]
-pub fn worst_ratio(
-    net: &Net,
-    reference_forces: &[f64],
-    check: &Check,
-    case: usize,
-    digest: &CaseDigest,
-) -> Option<f64> {
+pub fn worst_ratio(against: &Against<'_>, check: &Check, case: usize, digest: &CaseDigest) -> Option<f64> {
     if !digest.is_sound() {
         return None;
     }
-    check
-        .covered()
-        .filter_map(|part| judge_part(net, reference_forces, check.kind, part, case, digest))
+    let parts = check.covered().into_iter();
+    parts
+        .filter(|part| !digest.lacks(against.net, *part))
+        .filter_map(|part| judge_part(against, check, part, Some(case), digest).ok())
         .map(|judgement| judgement.ratio)
         .reduce(f64::max)
 }
 
 fn judge_part(
-    net: &Net,
-    reference_forces: &[f64],
-    kind: CheckKind,
+    against: &Against<'_>,
+    check: &Check,
     part: Covered,
-    case: usize,
+    case: Option<usize>,
     digest: &CaseDigest,
-) -> Option<Judgement> {
-    let judgement = |segment, demand, limit, ratio: f64, passes| {
-        ratio.is_finite().then_some(Judgement {
-            of: part,
-            segment,
-            case,
-            demand,
-            limit,
-            ratio,
-            passes,
-        })
+) -> Result<Judgement, Lack> {
+    let judged = match check.kind {
+        CheckKind::Safety { .. }
+        | CheckKind::Resistance { .. }
+        | CheckKind::ShareOfStrength { .. }
+        | CheckKind::Slackness { .. } => member::rope(against, check.kind, part, digest),
+        CheckKind::Buckling {
+            length_factor,
+            safety,
+            eccentricity,
+        } => {
+            let buckling = member::Buckling {
+                length_factor,
+                safety,
+                eccentricity,
+            };
+            member::strut(against, &buckling, part, digest)
+        }
+        CheckKind::Movement { limit, from } => place::movement(against, limit, from, part, digest),
+        CheckKind::Clearance(clearance) => place::clearance(against, check, &clearance, digest),
+        CheckKind::Drainage { least_fall } => place::fall(against, least_fall, part, digest),
+        CheckKind::AnchorPull(limits) => anchor::pull(&limits, part, digest),
+        CheckKind::Clamp(clamp) => grip::clamp(against.net, &clamp, part, digest),
+        CheckKind::Saddle(saddle) => grip::saddle(against.net, &saddle, part, digest),
     };
-    let below = |demand: f64, limit: f64| judgement(None, demand, limit, demand / limit, demand <= limit);
-    match (kind, part) {
-        (CheckKind::Safety { factor }, Covered::Cable(cable)) => over_segments(net, cable, |segment| {
-            let limit = net.segments()[segment.index()].section.breaking_force?;
-            let demand = factor * digest.axial_forces[segment.index()];
-            judgement(Some(segment), demand, limit, demand / limit, demand <= limit)
-        }),
-        (CheckKind::Slackness { min_share_of_reference }, Covered::Cable(cable)) => {
-            over_segments(net, cable, |segment| {
-                let whole = reference_forces[segment.index()];
-                if whole <= 0.0 || min_share_of_reference >= 1.0 {
-                    return None;
-                }
-                let share = digest.axial_forces[segment.index()] / whole;
-                let ratio = (1.0 - share) / (1.0 - min_share_of_reference);
-                // A slack rope fails a wanted share of zero too: it asks for "not slack".
-                let passes = share >= min_share_of_reference && share > 0.0;
-                judgement(Some(segment), share, min_share_of_reference, ratio, passes)
-            })
-        }
-        (CheckKind::Movement { limit }, Covered::Node(node)) => {
-            if digest.loose_nodes.contains(&node) {
-                return None;
-            }
-            below(digest.movements[node.index()], limit)
-        }
-        (CheckKind::AnchorPull { limit }, Covered::Node(node)) => below(digest.support_forces[node.index()]?, limit),
-        _ => None,
-    }
-}
-
-/// The worst of the segments of a cable, of equals the first, if each could be judged.
-fn over_segments(net: &Net, cable: CableId, judge: impl Fn(SegmentId) -> Option<Judgement>) -> Option<Judgement> {
-    let mut worst: Option<Judgement> = None;
-    for index in net.cables()[cable.index()].segments.clone() {
-        let next = judge(SegmentId::new(index))?;
-        worst = Some(worst.map_or(next, |worst| if next.ratio > worst.ratio { next } else { worst }));
-    }
-    worst
+    judged.map(|judgement| Judgement { case, ..judgement })
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::check::tests_support::{digest, net, reference_forces};
+    use crate::check::tests_support::{digest, net, positions, reference_forces};
+    use crate::check::{MovementLimit, PullLimits, Verdict};
+    use crate::model::{CableId, NodeId, SegmentId, StrutId};
+    use nalgebra::Vector3;
+
+    /// What the small net is judged against.
+    fn with_against<T>(ask: impl FnOnce(&Against<'_>) -> T) -> T {
+        ask(&Against {
+            net: &net(),
+            axial_forces: &reference_forces(),
+            positions: &positions(),
+            bases: &[],
+        })
+    }
 
     fn judge_in_order(check: &Check, digests: &[CaseDigest], order: &[usize]) -> CheckResult {
-        let mut tally = CheckTally::new(check);
-        for case in order {
-            tally.add(&net(), &reference_forces(), *case, &digests[*case]);
-        }
-        let unanswered = check.cases.iter().copied().filter(|case| !digests[*case].is_sound());
-        tally.finish(unanswered.collect())
+        with_against(|against| {
+            let mut tally = CheckTally::new(check, against);
+            for case in order {
+                tally.add(check, against, *case, &digests[*case]);
+            }
+            let unanswered = check.cases.iter().copied().filter(|case| !digests[*case].is_sound());
+            tally.finish(check, unanswered.collect())
+        })
     }
 
     /// The check over all of its cases; whether they come forward or backward must not matter.
@@ -290,6 +184,7 @@ mod tests {
             cables: vec![CableId::new(0), CableId::new(1)],
             struts: Vec::new(),
             nodes: Vec::new(),
+            panels: Vec::new(),
             cases: vec![0, 1],
         }
     }
@@ -299,11 +194,14 @@ mod tests {
         // Breaking force 10 kN in cable 0, unknown in cable 1.
         let digests = [digest(&[1000.0, 2000.0, 3000.0]), digest(&[4000.0, 2500.0, 3000.0])];
         let result = judge(&check(CheckKind::Safety { factor: 3.0 }), &digests);
-        assert_eq!(result.not_judged, [Covered::Cable(CableId::new(1))]);
+        assert_eq!(
+            result.not_judged,
+            [(Covered::Cable(CableId::new(1)), Lack::BreakingForce)]
+        );
         let [only] = result.judgements[..] else {
             panic!("one judgement");
         };
-        assert_eq!((only.segment, only.case), (Some(SegmentId::new(0)), 1));
+        assert_eq!((only.segment, only.case), (Some(SegmentId::new(0)), Some(1)));
         assert_eq!((only.demand, only.limit, only.passes), (12_000.0, 10_000.0, false));
         assert!((only.ratio - 1.2).abs() < 1e-15);
         assert_eq!(result.verdict(), Verdict::Exceeds);
@@ -317,9 +215,12 @@ mod tests {
             min_share_of_reference: 0.2,
         };
         let result = judge(&check(kind), &digests);
-        assert_eq!(result.not_judged, [Covered::Cable(CableId::new(1))]);
+        assert_eq!(
+            result.not_judged,
+            [(Covered::Cable(CableId::new(1)), Lack::TautReference)]
+        );
         let worst = result.worst().expect("one judgement");
-        assert_eq!((worst.segment, worst.case), (Some(SegmentId::new(1)), 1));
+        assert_eq!((worst.segment, worst.case), (Some(SegmentId::new(1)), Some(1)));
         assert_eq!((worst.demand, worst.passes), (0.0, false));
         assert!((worst.ratio - 1.25).abs() < 1e-15);
     }
@@ -344,33 +245,45 @@ mod tests {
     fn movement_of_a_loose_node_is_not_judged() {
         let mut digests = [digest(&[1.0; 3]), digest(&[1.0; 3])];
         digests[1].loose_nodes = vec![NodeId::new(1)];
-        digests[1].movements[0] = 0.03;
+        digests[1].displacements[0] = Vector3::z() * -0.03;
         let check = Check {
             cables: Vec::new(),
             nodes: vec![NodeId::new(0), NodeId::new(1)],
-            ..check(CheckKind::Movement { limit: 0.02 })
+            ..check(CheckKind::Movement {
+                limit: MovementLimit::Length(0.02),
+                from: None,
+            })
         };
         let result = judge(&check, &digests);
-        assert_eq!(result.not_judged, [Covered::Node(NodeId::new(1))]);
-        assert_eq!(result.judgements[0].case, 1);
+        assert_eq!(result.not_judged, [(Covered::Node(NodeId::new(1)), Lack::Place)]);
+        assert_eq!(result.judgements[0].case, Some(1));
         assert!(!result.judgements[0].passes);
     }
 
     #[test]
     fn anchor_pull_needs_a_support() {
         let mut digests = [digest(&[1.0; 3]), digest(&[1.0; 3])];
-        digests[0].support_forces[0] = Some(900.0);
-        digests[1].support_forces[0] = Some(800.0);
+        digests[0].support_forces[0] = Some(Vector3::new(0.0, 0.0, -900.0));
+        digests[1].support_forces[0] = Some(Vector3::new(480.0, 640.0, 0.0));
         let check = Check {
             cables: Vec::new(),
             nodes: vec![NodeId::new(0), NodeId::new(1)],
             struts: vec![StrutId::new(0)],
-            ..check(CheckKind::AnchorPull { limit: 1000.0 })
+            ..check(CheckKind::AnchorPull(PullLimits {
+                resultant: Some(1000.0),
+                ..PullLimits::default()
+            }))
         };
         let result = judge(&check, &digests);
-        let unjudged = [Covered::Strut(StrutId::new(0)), Covered::Node(NodeId::new(1))];
+        let unjudged = [
+            (Covered::Strut(StrutId::new(0)), Lack::Support),
+            (Covered::Node(NodeId::new(1)), Lack::Support),
+        ];
         assert_eq!(result.not_judged, unjudged);
-        assert_eq!((result.judgements[0].demand, result.judgements[0].case), (900.0, 0));
+        assert_eq!(
+            (result.judgements[0].demand, result.judgements[0].case),
+            (900.0, Some(0))
+        );
         assert_eq!(result.verdict(), Verdict::NotJudged);
     }
 
@@ -390,14 +303,14 @@ mod tests {
         let digests = [digest(&[1000.0, 4000.0, 0.0]), digest(&[4000.0, 1000.0, 0.0])];
         let result = judge(&check(CheckKind::Safety { factor: 3.0 }), &digests);
         let worst = result.worst().expect("one judgement");
-        assert_eq!((worst.case, worst.segment), (0, Some(SegmentId::new(1))));
+        assert_eq!((worst.case, worst.segment), (Some(0), Some(SegmentId::new(1))));
     }
 
     #[test]
     fn the_worst_ratio_of_one_case() {
         let check = check(CheckKind::Safety { factor: 3.0 });
         let mut digest = digest(&[1000.0, 2000.0, 3000.0]);
-        let ratio = |digest: &CaseDigest| worst_ratio(&net(), &reference_forces(), &check, 1, digest);
+        let ratio = |digest: &CaseDigest| with_against(|against| worst_ratio(against, &check, 1, digest));
         // 3 · 2 kN against 10 kN; the cable of unknown strength does not count.
         assert!((ratio(&digest).expect("a judged cable") - 0.6).abs() < 1e-15);
         digest.audited = false;

@@ -53,14 +53,25 @@ pub(super) fn reference_forces() -> [f64; 4] {
     [2000.0, 1000.0, 0.0, -500.0]
 }
 
+/// Places in the reference state (m).
+pub(super) fn positions() -> Vec<Vector3<f64>> {
+    (0..3).map(|index| Vector3::new(f64::from(index), 0.0, 0.0)).collect()
+}
+
 /// A sound case with these forces in the cables.
 pub(super) fn digest(cable_forces: &[f64; 3]) -> CaseDigest {
     CaseDigest {
         answered: true,
         audited: true,
         axial_forces: cable_forces.iter().copied().chain([-500.0]).collect(),
-        movements: vec![0.01; 3],
-        support_forces: vec![Some(10.0), None, Some(10.0)],
+        displacements: vec![Vector3::z() * 0.01; 3],
+        positions: positions(),
+        support_forces: vec![
+            Some(Vector3::new(6.0, 0.0, 8.0)),
+            None,
+            Some(Vector3::new(6.0, 0.0, 8.0)),
+        ],
         loose_nodes: Vec::new(),
+        removed: Vec::new(),
     }
 }

@@ -6,8 +6,11 @@
 
 use nalgebra::Vector3;
 
+use super::MemberStates;
 use crate::load::Case;
-use crate::model::{AxialLaw, Net, NodeId, SegmentId};
+use crate::model::{AxialLaw, Net, NodeId, Panel, SegmentId};
+
+mod hanging;
 
 /// Share of the largest force on the net that may be out of balance, or in doubt in a member.
 const SHARE: f64 = 1e-8;
@@ -43,7 +46,7 @@ pub struct Audit {
     pub passed: bool,
 }
 
-/// Checks a claimed state.
+/// Checks a claimed state of a net whose ropes are clamped and straight.
 ///
 /// `case`: with the loads that the state carries. `positions`: one a node (m). `axial_forces`: claimed, one a segment (N).
 /// Numbers that are not finite never pass.
@@ -52,6 +55,33 @@ pub struct Audit {
 /// If a list does not have one entry for each of what it ranges over.
 #[must_use]
 pub fn audit(net: &Net, case: &Case, positions: &[Vector3<f64>], axial_forces: &[f64]) -> Audit {
+    let members = MemberStates {
+        lying: net
+            .segments()
+            .iter()
+            .map(|s| case.unstressed_lengths[s.length])
+            .collect(),
+        ..MemberStates::default()
+    };
+    audit_members(net, case, positions, axial_forces, &members)
+}
+
+/// Checks a claimed state of any net.
+///
+/// `members`: claimed as well. Of a rope that slides: the lengths that lie in its segments have to fill the rope, and the
+/// tensions beside each node to differ by no more than friction allows. Of a rope that hangs: the curve is integrated
+/// from the claimed force at its first end, and has to arrive at its second node.
+///
+/// # Panics
+/// If a list does not have one entry for each of what it ranges over.
+#[must_use]
+pub fn audit_members(
+    net: &Net,
+    case: &Case,
+    positions: &[Vector3<f64>],
+    axial_forces: &[f64],
+    members: &MemberStates,
+) -> Audit {
     assert_eq!(positions.len(), net.nodes().len(), "one position a node");
     assert_eq!(axial_forces.len(), net.segments().len(), "one force a segment");
     let mut audit = Audit::default();
@@ -74,7 +104,7 @@ pub fn audit(net: &Net, case: &Case, positions: &[Vector3<f64>], axial_forces: &
         let (dx, dy, dz) = (to.x - from.x, to.y - from.y, to.z - from.z);
         let length = (dx * dx + dy * dy + dz * dz).sqrt();
         let expanded = 1.0 + segment.section.expansion * case.segments[index].temperature_change;
-        let natural = case.unstressed_lengths[segment.length] * expanded;
+        let natural = members.lying[index] * expanded;
         let stretch = length / natural;
         let mut expected = segment.section.axial_stiffness * (stretch - 1.0);
         if segment.law == AxialLaw::TensionOnly && stretch <= 1.0 {
@@ -84,6 +114,38 @@ pub fn audit(net: &Net, case: &Case, positions: &[Vector3<f64>], axial_forces: &
         if case.removed[index] {
             expected = 0.0;
             spring = 0.0;
+        }
+        if segment.hangs && !case.removed[index] {
+            let load = case.segments[index].per_length;
+            let rope = hanging::Rope {
+                axial_stiffness: segment.section.axial_stiffness,
+                unstressed: members.lying[index],
+                expanded,
+                load: [load.x, load.y, load.z],
+            };
+            let start = members.pulls[index][0];
+            let arrives = hanging::end_of(&rope, [start.x, start.y, start.z]);
+            let miss = ((arrives[0] - dx).powi(2) + (arrives[1] - dy).powi(2) + (arrives[2] - dz).powi(2)).sqrt();
+            let end = load * members.lying[index] - start;
+            let claimed_end = members.pulls[index][1];
+            expected = start.norm().max(end.norm());
+            // What is missed at the end, by the stiffness of the whole rope.
+            let error = (miss * spring)
+                .max((claimed_end - end).norm())
+                .max((claimed - expected).abs());
+            finite &= error.is_finite();
+            if error > audit.largest_force_error {
+                audit.largest_force_error = error;
+                audit.segment = Some(SegmentId::new(index));
+            }
+            largest = largest.max(expected);
+            size = size.max(length).max(natural);
+            for (node, pull) in segment.ends.iter().zip([start, end]) {
+                stiffness[node.index()] += spring;
+                unbalanced[node.index()] += pull;
+            }
+            audit.load_sum += load * members.lying[index];
+            continue;
         }
         let error = (claimed - expected).abs();
         finite &= error.is_finite();
@@ -102,6 +164,20 @@ pub fn audit(net: &Net, case: &Case, positions: &[Vector3<f64>], axial_forces: &
             unbalanced[segment.ends[0].index()] += pull;
             unbalanced[segment.ends[1].index()] -= pull;
         }
+    }
+
+    for (panel, pressure) in net.panels().iter().zip(&case.pressures) {
+        for (node, force) in pressed(panel, *pressure, positions) {
+            unbalanced[node.index()] += force;
+            audit.load_sum += force;
+            largest = largest.max(force.norm());
+        }
+    }
+    let (slip, slipping) = sliding_error(net, case, axial_forces, members, positions);
+    finite &= slip.is_finite();
+    if slip > audit.largest_force_error {
+        audit.largest_force_error = slip;
+        audit.segment = slipping;
     }
 
     let mut elastic = vec![Vector3::zeros(); net.nodes().len()];
@@ -165,4 +241,75 @@ pub fn audit(net: &Net, case: &Case, positions: &[Vector3<f64>], axial_forces: &
         && audit.largest_force_error <= audit.allowed
         && audit.largest_misplacement <= MISPLACED * size;
     audit
+}
+
+/// Forces of a pressure on the corners of a panel (N): a third of each triangle between two corners and their mean to each
+/// of the three, the share of the mean to all corners.
+fn pressed(panel: &Panel, pressure: f64, positions: &[Vector3<f64>]) -> Vec<(NodeId, Vector3<f64>)> {
+    let count = panel.corners.len();
+    let mut mean = Vector3::zeros();
+    for corner in &panel.corners {
+        mean += positions[corner.index()] / count as f64;
+    }
+    let mut forces: Vec<(NodeId, Vector3<f64>)> = panel.corners.iter().map(|c| (*c, Vector3::zeros())).collect();
+    for first in 0..count {
+        let second = if first + 1 == count { 0 } else { first + 1 };
+        let a = positions[panel.corners[first].index()];
+        let b = positions[panel.corners[second].index()];
+        // The area of the triangle (a, b, mean) as half the product of its sides from a; it points outward.
+        let (u, v) = (b - a, mean - a);
+        let area = 0.5 * Vector3::new(u.y * v.z - u.z * v.y, u.z * v.x - u.x * v.z, u.x * v.y - u.y * v.x);
+        let third = -pressure / 3.0 * area;
+        forces[first].1 += third;
+        forces[second].1 += third;
+        for force in &mut forces {
+            force.1 += third / count as f64;
+        }
+    }
+    forces
+}
+
+/// Largest contradiction to sliding, as a force (N), and where: rope that is missing or too much, tensions that differ by
+/// more than friction allows.
+fn sliding_error(
+    net: &Net,
+    case: &Case,
+    axial_forces: &[f64],
+    members: &MemberStates,
+    positions: &[Vector3<f64>],
+) -> (f64, Option<SegmentId>) {
+    let mut worst = (0.0, None);
+    for (index, reach) in net.reaches().iter().enumerate() {
+        if reach.segments.len() == 1 || case.removed[reach.segments.start] {
+            continue;
+        }
+        let mut note = |error: f64, segment: usize| {
+            if error > worst.0 || error.is_nan() {
+                worst = (error, Some(SegmentId::new(segment)));
+            }
+        };
+        let mut lies = 0.0;
+        for segment in reach.segments.clone() {
+            lies += members.lying[segment];
+        }
+        let whole = case.unstressed_lengths[index];
+        let stiffness = net.segments()[reach.segments.start].section.axial_stiffness / whole;
+        note((lies - whole).abs() * stiffness, reach.segments.start);
+        for (place, mu) in reach.friction.iter().enumerate() {
+            let (before, after) = (reach.segments.start + place, reach.segments.start + place + 1);
+            let direction = |segment: usize| {
+                let [from, to] = net.segments()[segment].ends;
+                (positions[to.index()] - positions[from.index()]).normalize()
+            };
+            let angle = direction(before).dot(&direction(after)).clamp(-1.0, 1.0).acos();
+            let most = (mu * angle).exp();
+            let (less, more) = if axial_forces[before] < axial_forces[after] {
+                (axial_forces[before], axial_forces[after])
+            } else {
+                (axial_forces[after], axial_forces[before])
+            };
+            note(more - most * less, after);
+        }
+    }
+    worst
 }

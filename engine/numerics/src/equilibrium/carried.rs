@@ -49,6 +49,7 @@ impl Carried {
     ) -> Termination {
         run.respond(loading, positions);
         let mut taut = taut_set(run, loading, &carried);
+        let mut sliding = run.response.special.tensions.clone();
         let mut step_length = 0.0;
         for _ in 0..=self.limit {
             if let ControlFlow::Break(end) = run.report(self.way, loading, step_length) {
@@ -57,11 +58,12 @@ impl Carried {
             if run.is_balanced(&run.response) {
                 return Termination::Converged;
             }
-            if run.is_spent() || run.runs_away(positions) || !step(run, loading, positions, &carried, &taut) {
+            if run.is_spent() || run.runs_away(positions) || !step(run, loading, positions, &carried, &taut, &sliding) {
                 break;
             }
             step_length = 1.0;
             let dropped = carry(run, loading, &mut carried, &mut taut);
+            carry_sliding(run, loading, &mut sliding);
             for (x, u) in positions.iter_mut().zip(&run.nodal_step) {
                 *x += u;
             }
@@ -97,7 +99,16 @@ fn taut_set(run: &Run<'_>, loading: &Loading, carried: &[f64]) -> Vec<bool> {
 }
 
 /// The full step for the present set, into the step of `run`; false if its tangent is not positive definite.
-fn step(run: &mut Run<'_>, loading: &Loading, positions: &[Vector3<f64>], carried: &[f64], taut: &[bool]) -> bool {
+///
+/// `sliding`: carried tensions of the sliding pieces (N).
+fn step(
+    run: &mut Run<'_>,
+    loading: &Loading,
+    positions: &[Vector3<f64>],
+    carried: &[f64],
+    taut: &[bool],
+    sliding: &[f64],
+) -> bool {
     // The right-hand side takes the taut set as two-way, so that a segment on the verge does not flicker.
     let mut balance = loading.nodal_forces.clone();
     run.structure.add_elastic_forces(loading, positions, &mut balance);
@@ -120,7 +131,12 @@ fn step(run: &mut Run<'_>, loading: &Loading, positions: &[Vector3<f64>], carrie
             Matrix3::from_diagonal_element(SMALLEST_STIFFNESS * bar.stiffness)
         };
     }
-    if !run.factorise_blocks() {
+    if let Some(special) = &loading.special {
+        run.structure.add_special_forces(special, &run.response, &mut balance);
+        run.structure
+            .special_blocks(special, &run.response, sliding, SMALLEST_STIFFNESS, &mut run.blocks);
+    }
+    if !run.factorise_blocks(loading, |piece| sliding[piece] > 0.0) {
         return false;
     }
     let mut step = std::mem::take(&mut run.step);
@@ -129,6 +145,31 @@ fn step(run: &mut Run<'_>, loading: &Loading, positions: &[Vector3<f64>], carrie
     run.structure.dofs().nodal_into(&step, &mut run.nodal_step);
     run.step = step;
     true
+}
+
+/// Predicts the tensions of sliding pieces after the step to first order.
+fn carry_sliding(run: &Run<'_>, loading: &Loading, sliding: &mut [f64]) {
+    let Some(special) = &loading.special else { return };
+    for (piece, (carried, n)) in special
+        .sliding
+        .iter()
+        .zip(sliding.iter_mut().zip(&run.response.special.tensions))
+    {
+        let lengths = &run.response.lengths[piece.segments()];
+        let mut slopes = vec![0.0; lengths.len()];
+        piece.slopes_into(lengths, *n, &mut slopes);
+        // Below its stress-free length the same spring, drawn on to the other side.
+        let lack = if *n > 0.0 { 0.0 } else { piece.lack(lengths) * slopes[0] };
+        let growth: f64 = (piece.segments().zip(&slopes))
+            .filter(|(e, _)| run.response.lengths[*e] > 0.0)
+            .map(|(e, slope)| {
+                let [i, j] = run.structure.net().segments()[e].ends;
+                let change = run.nodal_step[j.index()] - run.nodal_step[i.index()];
+                slope * change.dot(&run.response.chords[e]) / run.response.lengths[e]
+            })
+            .sum();
+        *carried = (*n - lack + growth).max(0.0);
+    }
 }
 
 /// Predicts the forces after the step to first order and drops ropes that would push; returns which.

@@ -234,7 +234,7 @@ pub(super) fn solve(
             run.blocks[member.index] =
                 member.block - fill + Matrix3::from_diagonal_element(SMALLEST_STIFFNESS * member.stiffness);
         }
-        if !run.factorise_blocks() {
+        if !run.factorise_blocks(loading, |_| false) {
             break;
         }
         for member in &mut members {

@@ -72,8 +72,12 @@ pub(super) fn search(run: &mut Run<'_>, loading: &Loading, positions: &[Vector3<
         if run.is_balanced(&run.trial) && !run.runs_away(&run.trial_positions) {
             return Some(t);
         }
-        let growth = growth(run, loading, t) + elastic * t * t;
-        let lowers = growth <= (1.0 - SUFFICIENT_DECREASE) * t * s;
+        let lowers = if loading.special.is_some() {
+            // Where the energy is convex a slope that still falls, or hardly rises, says as much.
+            slope <= FLAT_ENOUGH * s
+        } else {
+            growth(run, loading, t) + elastic * t * t <= (1.0 - SUFFICIENT_DECREASE) * t * s
+        };
         if lowers && slope.abs() <= FLAT_ENOUGH * s {
             return Some(t);
         }

@@ -3,14 +3,15 @@
 use nalgebra::Vector3;
 
 use super::carried::Carried;
+use super::friction::Friction;
 use super::newton::Newton;
 use super::run::{Observer, Run};
 use super::solution::LoadStepState;
 use super::{
-    Analysis, IterationReport, LoadSteps, Settings, Solution, SolveError, Termination, Way, existence, interior_point,
-    relaxation, stability,
+    Analysis, IterationReport, LoadSteps, Settings, Solution, SolveError, Termination, Way, existence, friction,
+    interior_point, members, relaxation, stability,
 };
-use crate::assembly::{Loading, check_vectors};
+use crate::assembly::{Gripping, Loading, Response, Structure, check_vectors};
 use crate::load::Case;
 
 /// Share of slack segments at the start from which the interior point goes first.
@@ -20,6 +21,8 @@ const CLEARLY_SLACK: f64 = 0.999;
 /// Forces below this share of the largest do not hold a node in place.
 const HOLDS: f64 = 1e-9;
 const ROUNDS_WITH_STRUTS: u32 = 3;
+/// Substitutes tried where Newton does not get hold of a net that slides, hangs or is pressed.
+const SUBSTITUTES: u32 = 12;
 const FIRST_STEP: f64 = 0.25;
 const SMALLEST_STEP: f64 = 1.0 / 256.0;
 
@@ -44,6 +47,12 @@ const WITH_STRUTS: Newton = Newton {
     limit: 60,
 };
 
+/// A way to answer one load level.
+type LevelWay = fn(&mut Run<'_>, u32, f64, &Loading, &mut Vec<Vector3<f64>>) -> Termination;
+/// Answers a load level by a way, friction included.
+type Answer<'a> =
+    dyn Fn(&mut Run<'_>, u32, f64, &mut Vec<Vector3<f64>>, LevelWay) -> Result<(Termination, Loading), SolveError> + 'a;
+
 /// The state in which a net balances a case.
 ///
 /// `start`: position of every node to start from (m); held nodes go where the case puts their supports.
@@ -64,7 +73,10 @@ pub fn solve(
     observe: Observer<'_>,
 ) -> Result<Solution, SolveError> {
     let structure = analysis.structure();
-    let full = Loading::new(structure, case, reference_lengths, 1.0)?;
+    let level = |factor: f64, gripping: Option<&Gripping>| {
+        Loading::gripping(structure, case, reference_lengths, factor, gripping)
+    };
+    let full = level(1.0, None)?;
     if start.len() != structure.net().nodes().len() {
         return Err(crate::assembly::LoadingError::WrongLength {
             what: "start positions",
@@ -74,18 +86,41 @@ pub fn solve(
         .into());
     }
     check_vectors("start position", start)?;
-    let anchors = existence::check_loads_are_held(structure, &full)?;
+    let anchors = existence::check_loads_are_held(structure, &bars_only(structure, &full, start))?;
 
-    let level = |factor: f64| Loading::new(structure, case, reference_lengths, factor);
+    let before = match friction::is_felt(structure) {
+        true => Some(lying_at(structure, &level(0.0, None)?, start)),
+        false => None,
+    };
+    // One load level, friction and all.
+    let answer = |run: &mut Run<'_>, load_step: u32, factor: f64, positions: &mut Vec<Vector3<f64>>, way: LevelWay| {
+        let Some(before) = &before else {
+            let loading = level(factor, None)?;
+            let outcome = way(run, load_step, factor, &loading, positions);
+            return Ok((outcome, loading));
+        };
+        let friction = Friction::new(structure, case, before, reference_lengths, factor);
+        friction::settle(
+            run,
+            friction,
+            |gripping| Ok(level(factor, Some(gripping))?),
+            |run, loading| way(run, load_step, factor, loading, positions),
+        )
+    };
+    let gives_up_lightly = !structure.net().is_pure_tension() || !full.has_energy() || before.is_some();
     let mut run = Run::new(analysis, settings, start, &anchors, observe);
     let mut steps = Vec::new();
     let mut positions = start.to_vec();
+    let mut at_end = None;
     let (termination, load_factor) = match settings.load_steps {
         LoadSteps::FullFirst => {
-            let outcome = state(&mut run, 1, 1.0, &full, &mut positions);
+            let (outcome, loading) = answer(&mut run, 1, 1.0, &mut positions, state)?;
+            at_end = Some(loading);
             let gave_up = !matches!(outcome, Termination::Converged | Termination::Cancelled);
-            if gave_up && !structure.net().is_pure_tension() && !run.is_spent() {
-                in_smaller_steps(&mut run, &level, start, &mut positions)?
+            if gave_up && gives_up_lightly && !run.is_spent() {
+                let (outcome, factor, loading) = in_smaller_steps(&mut run, &answer, start, &mut positions)?;
+                at_end = loading;
+                (outcome, factor)
             } else {
                 (outcome, 1.0)
             }
@@ -95,24 +130,25 @@ pub fn solve(
             let mut reached = (Termination::Converged, 0.0);
             for step in 1..=n {
                 let factor = f64::from(step) / f64::from(n);
-                let loading = level(factor)?;
-                let before = positions.clone();
-                let mut outcome = state(&mut run, step, factor, &loading, &mut positions);
+                let good = positions.clone();
+                let (mut outcome, mut loading) = answer(&mut run, step, factor, &mut positions, state)?;
                 let gave_up = !matches!(outcome, Termination::Converged | Termination::Cancelled);
-                if gave_up && !structure.net().is_pure_tension() && !run.is_spent() {
-                    positions.copy_from_slice(&before);
-                    outcome = relaxed(&mut run, step, factor, &loading, &mut positions);
+                if gave_up && gives_up_lightly && !run.is_spent() {
+                    positions.copy_from_slice(&good);
+                    (outcome, loading) = answer(&mut run, step, factor, &mut positions, relaxed)?;
                 }
                 if outcome != Termination::Converged {
                     // The last good state, if there is one, is worth more than the wreck.
                     if step > 1 {
-                        positions = before;
+                        positions = good;
                     } else {
                         reached.1 = factor;
+                        at_end = Some(loading);
                     }
                     reached.0 = outcome;
                     break;
                 }
+                at_end = Some(loading);
                 reached = (outcome, factor);
                 steps.push(LoadStepState {
                     load_factor: factor,
@@ -124,7 +160,7 @@ pub fn solve(
         }
     };
 
-    let at_end = if load_factor == 1.0 { full } else { level(load_factor)? };
+    let at_end = at_end.unwrap_or(full);
     run.respond(&at_end, &positions);
     let way = way(&run.history, load_factor);
     run.begin(run.load_step, load_factor, &at_end);
@@ -134,7 +170,8 @@ pub fn solve(
     let holds = if has_faded { force } else { HOLDS * force.max(run.load) };
     let loose_nodes = existence::loose_nodes(structure, |s| run.response.axial_forces[s].abs() > holds);
     let mut free_movement = None;
-    if !structure.net().is_pure_tension() && run.is_balanced(&run.response) {
+    let may_tip = !structure.net().is_pure_tension() || !at_end.has_energy();
+    if may_tip && run.is_balanced(&run.response) {
         free_movement = stability::free_movement(analysis, &at_end, &positions, &loose_nodes);
     }
     if termination == Termination::Converged
@@ -143,6 +180,7 @@ pub fn solve(
         return Err(movement.into());
     }
     Ok(Solution {
+        members: members::of_response(&at_end, &run.response),
         axial_forces: std::mem::take(&mut run.response.axial_forces),
         positions,
         termination,
@@ -220,6 +258,9 @@ fn state(
         }
         positions.copy_from_slice(&entry);
     }
+    if loading.special.is_some() {
+        return by_substitutes(run, load_step, load_factor, loading, positions);
+    }
     // With struts the interior point is repeated from where it got to: it takes them along their direction at its start.
     let rounds = if run.structure.net().is_pure_tension() {
         1
@@ -251,23 +292,25 @@ fn state(
 /// Returns how it ended and the share of the load that `positions` carry.
 fn in_smaller_steps(
     run: &mut Run<'_>,
-    level: &dyn Fn(f64) -> Result<Loading, crate::assembly::LoadingError>,
+    answer: &Answer<'_>,
     start: &[Vector3<f64>],
     positions: &mut Vec<Vector3<f64>>,
-) -> Result<(Termination, f64), SolveError> {
+) -> Result<(Termination, f64, Option<Loading>), SolveError> {
     let (mut reached, mut step, mut load_step) = (0.0, FIRST_STEP, 1);
     let mut good = start.to_vec();
+    let mut at_good = None;
     // The rest of the allowance is for what comes after.
     let share = run.settings.max_iterations / 4 * 3;
     while step >= SMALLEST_STEP && run.factorisations < share {
         let factor = f64::min(reached + step, 1.0);
-        let loading = level(factor)?;
         load_step += 1;
         positions.copy_from_slice(&good);
-        match state(run, load_step, factor, &loading, positions) {
-            Termination::Converged if factor == 1.0 => return Ok((Termination::Converged, 1.0)),
-            Termination::Cancelled => return Ok((Termination::Cancelled, factor)),
+        let (outcome, loading) = answer(run, load_step, factor, positions, state)?;
+        match outcome {
+            Termination::Converged if factor == 1.0 => return Ok((outcome, 1.0, Some(loading))),
+            Termination::Cancelled => return Ok((outcome, factor, Some(loading))),
             Termination::Converged => {
+                at_good = Some(loading);
                 good.copy_from_slice(positions);
                 reached = factor;
                 step *= 2.0;
@@ -275,14 +318,13 @@ fn in_smaller_steps(
             _ => step *= 0.5,
         }
     }
-    let loading = level(1.0)?;
     positions.copy_from_slice(&good);
-    let outcome = relaxed(run, load_step + 1, 1.0, &loading, positions);
+    let (outcome, loading) = answer(run, load_step + 1, 1.0, positions, relaxed)?;
     if matches!(outcome, Termination::Converged | Termination::Cancelled) || reached == 0.0 {
-        return Ok((outcome, 1.0));
+        return Ok((outcome, 1.0, Some(loading)));
     }
     positions.copy_from_slice(&good);
-    Ok((outcome, reached))
+    Ok((outcome, reached, at_good))
 }
 
 /// Dynamic relaxation, then Newton for the last digits.
@@ -295,8 +337,68 @@ fn relaxed(
 ) -> Termination {
     loading.place_supports(run.structure, positions);
     run.begin(load_step, load_factor, loading);
-    match relaxation::solve(run, loading, positions) {
+    let outcome = if loading.special.is_some() {
+        run.respond(loading, positions);
+        let substitute = run.structure.substitute(loading, &run.response);
+        relaxation::solve(run, &substitute, positions)
+    } else {
+        relaxation::solve(run, loading, positions)
+    };
+    match outcome {
         Termination::Converged => WITH_STRUTS.solve(run, loading, positions),
         outcome => outcome,
     }
+}
+
+/// Answers of bars and dead forces in place of what slides, hangs and follows, taken anew at each, until Newton gets hold
+/// of the true net from there.
+fn by_substitutes(
+    run: &mut Run<'_>,
+    load_step: u32,
+    load_factor: f64,
+    loading: &Loading,
+    positions: &mut Vec<Vector3<f64>>,
+) -> Termination {
+    let mut last = Termination::IterationLimit;
+    for _ in 0..SUBSTITUTES {
+        run.respond(loading, positions);
+        let substitute = run.structure.substitute(loading, &run.response);
+        match state(run, load_step, load_factor, &substitute, positions) {
+            Termination::Converged => {}
+            outcome => return outcome,
+        }
+        let near = positions.clone();
+        for quick in [true, false] {
+            run.begin(load_step, load_factor, loading);
+            run.respond(loading, positions);
+            last = if quick {
+                let carried = run.response.axial_forces.clone();
+                let joining = run.load.max(0.01 * run.response.largest_axial_force());
+                QUICK.solve(run, loading, positions, carried, joining)
+            } else {
+                AFTER_INTERIOR_POINT.solve(run, loading, positions)
+            };
+            if matches!(last, Termination::Converged | Termination::Cancelled) || run.is_spent() {
+                return last;
+            }
+            positions.copy_from_slice(&near);
+        }
+    }
+    last
+}
+
+/// The case as bars and dead forces at given positions.
+fn bars_only(structure: &Structure, loading: &Loading, positions: &[Vector3<f64>]) -> Loading {
+    if loading.special.is_none() {
+        return loading.clone();
+    }
+    let mut response = Response::new(structure);
+    structure.response_into(loading, positions, &mut response);
+    structure.substitute(loading, &response)
+}
+
+fn lying_at(structure: &Structure, loading: &Loading, positions: &[Vector3<f64>]) -> Vec<f64> {
+    let mut response = Response::new(structure);
+    structure.response_into(loading, positions, &mut response);
+    members::lying(loading, &response)
 }

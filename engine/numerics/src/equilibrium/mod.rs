@@ -7,16 +7,20 @@
 //! interior point, then carried forces as a polish               pure tension, hard starts
 //! load steps, relaxation                                        with struts, hard starts
 //! stability      can the balanced state move freely?            with struts
+//! eigen          least eigenvalues of a sparse matrix           where asked for
 //! ```
 
 mod analysis;
 pub mod audit;
 mod carried;
+pub mod eigen;
 pub mod existence;
+mod friction;
 mod interior_point;
 mod line_search;
 pub mod linear;
 mod load_steps;
+mod members;
 mod newton;
 mod relaxation;
 mod run;
@@ -26,5 +30,6 @@ pub mod stability;
 
 pub use analysis::Analysis;
 pub use load_steps::solve;
+pub use members::member_states;
 pub use settings::{LoadSteps, Settings, Yardstick};
-pub use solution::{IterationReport, LoadStepState, Solution, SolveError, Termination, Way};
+pub use solution::{IterationReport, LoadStepState, MemberStates, Solution, SolveError, Termination, Way};

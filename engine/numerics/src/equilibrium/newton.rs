@@ -84,7 +84,8 @@ fn factorise(run: &mut Run<'_>, loading: &Loading, force_floor: f64) -> bool {
     for compression in kept.into_iter().chain([Compression::Dropped]) {
         for smallest in SMALLEST_STIFFNESS {
             fill_blocks(run, loading, force_floor, smallest, compression);
-            if run.factorise_blocks() {
+            let taut: Vec<bool> = run.response.special.tensions.iter().map(|n| *n > 0.0).collect();
+            if run.factorise_blocks(loading, |piece| taut[piece]) {
                 return true;
             }
             if compression == Compression::Kept {
@@ -115,5 +116,11 @@ fn fill_blocks(run: &mut Run<'_>, loading: &Loading, force_floor: f64, smallest:
         } else {
             Matrix3::from_diagonal_element(across + least)
         };
+    }
+    if let Some(special) = &loading.special {
+        let tensions = response.special.tensions.iter().map(|n| n.max(force_floor));
+        let tensions: Vec<f64> = tensions.collect();
+        run.structure
+            .special_blocks(special, response, &tensions, smallest, &mut run.blocks);
     }
 }

@@ -110,17 +110,17 @@ impl<'a> Run<'a> {
         self.load_step = load_step;
         self.load_factor = load_factor;
         self.iteration = 0;
-        self.load = loading.largest_force(self.structure);
+        self.load = self.largest_load(loading);
         let coordinates = self.start.iter().map(Vector3::amax);
         let lengths = loading
-            .bars
+            .straight_bars()
             .iter()
             .filter(|b| b.is_present())
             .map(|b| b.stress_free_length);
         self.box_size = coordinates.chain(lengths).fold(0.0, f64::max);
-        self.largest_stiffness = loading.bars.iter().map(|b| b.stiffness).fold(0.0, f64::max);
+        self.largest_stiffness = loading.straight_bars().iter().map(|b| b.stiffness).fold(0.0, f64::max);
         let mut stiffness = vec![0.0; self.start.len()];
-        for (bar, segment) in loading.bars.iter().zip(self.structure.net().segments()) {
+        for (bar, segment) in loading.straight_bars().iter().zip(self.structure.net().segments()) {
             for end in segment.ends {
                 stiffness[end.index()] += bar.stiffness;
             }
@@ -133,6 +133,29 @@ impl<'a> Run<'a> {
         for (dof, rounding) in self.rounding.iter_mut().enumerate() {
             let node = self.structure.dofs().node(dof);
             *rounding = 4.0 * f64::EPSILON * stiffness[node.index()] * self.box_size;
+        }
+    }
+
+    /// Largest load on a free direction (N), pressure taken where it began.
+    fn largest_load(&self, loading: &Loading) -> f64 {
+        match &loading.special {
+            Some(special) if !special.pressures.is_empty() || !special.hanging.is_empty() => {
+                let mut forces = loading.nodal_forces.clone();
+                self.structure
+                    .add_pressure_forces(&special.pressures, self.start, &mut forces);
+                for hanging in &special.hanging {
+                    let half = hanging.catenary.load * (0.5 * hanging.catenary.unstressed_length);
+                    for node in self.structure.net().segments()[hanging.segment].ends {
+                        forces[node.index()] += half;
+                    }
+                }
+                let whole = Loading {
+                    nodal_forces: forces,
+                    ..loading.clone()
+                };
+                whole.largest_force(self.structure)
+            }
+            _ => loading.largest_force(self.structure),
         }
     }
 
@@ -171,8 +194,14 @@ impl<'a> Run<'a> {
     }
 
     /// Assembles the blocks, adds the elastic supports and factorises; false if not positive definite.
-    pub(super) fn factorise_blocks(&mut self) -> bool {
+    ///
+    /// `taut`: whether a sliding piece resists its stretching.
+    pub(super) fn factorise_blocks(&mut self, loading: &Loading, taut: impl Fn(usize) -> bool) -> bool {
         self.structure.tangent_into(&self.blocks, &mut self.values);
+        if let Some(special) = &loading.special {
+            self.structure
+                .add_special_tangent(special, &self.response, taut, &mut self.values);
+        }
         self.structure.add_elastic_supports(&mut self.values);
         for (position, share) in &self.anchors {
             self.values[*position] += share * self.largest_stiffness;

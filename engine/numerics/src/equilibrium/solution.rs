@@ -71,13 +71,27 @@ pub struct LoadStepState {
     pub axial_forces: Vec<f64>,
 }
 
+/// How the segments are in a state, beyond their axial forces.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct MemberStates {
+    /// Force of every segment on its first and its second node (N).
+    pub pulls: Vec<[Vector3<f64>; 2]>,
+    /// Length of every segment (m); along the curve where it hangs.
+    pub lengths: Vec<f64>,
+    /// Unstressed length, at the reference temperature, that lies in every segment (m): that of its reach, or its share of
+    /// it where the rope slides.
+    pub lying: Vec<f64>,
+}
+
 /// The last state and how it came about.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Solution {
     /// Position of every node (m).
     pub positions: Vec<Vector3<f64>>,
-    /// Axial force of every segment (N).
+    /// Axial force of every segment (N); the larger end where it hangs.
     pub axial_forces: Vec<f64>,
+    /// Ends and lengths of every segment.
+    pub members: MemberStates,
     /// How it ended.
     pub termination: Termination,
     /// The method that brought the last state near: relaxation or the interior point where one of them was needed, which

@@ -2,7 +2,7 @@
 
 use nalgebra::Vector3;
 
-use crate::model::{NodeId, SegmentId};
+use crate::model::{Area, NodeId, SegmentId};
 
 /// Which segments a load acts on.
 #[derive(Clone, Debug, PartialEq)]
@@ -13,7 +13,7 @@ pub enum Scope {
     Segments(Vec<SegmentId>),
 }
 
-/// One load. All of them are dead: fixed in size and direction once the reference state is known.
+/// One load. All but pressure on a surface are dead: fixed in size and direction once the reference state is known.
 #[derive(Clone, Debug, PartialEq)]
 pub enum Load {
     /// The same force (N) on each of these nodes.
@@ -23,7 +23,8 @@ pub enum Load {
         /// Force on each (N).
         force: Vector3<f64>,
     },
-    /// Weight of every mass: members by their unstressed length, attached masses. Half of a segment's to each end.
+    /// Weight of every mass: members by their unstressed length, half to each end; attached masses; skins by their area
+    /// in the reference state.
     OwnWeight {
         /// Acceleration (m/s²), pointing down for the usual case.
         gravity: Vector3<f64>,
@@ -41,6 +42,51 @@ pub enum Load {
         scope: Scope,
         /// Force per length on plan (N/m).
         force: Vector3<f64>,
+    },
+    /// Pressure on the area on plan in the reference state, downward.
+    OnPlan {
+        /// Skins or zones, each panel once.
+        on: Vec<Area>,
+        /// Pressure (Pa), downward positive.
+        pressure: f64,
+    },
+    /// Pressure on the outer side of panels; it stays normal to them as they move.
+    OnSurface {
+        /// Reference pressure (Pa).
+        pressure: f64,
+        /// Coefficients of zones and skins; a zone wins over its skin.
+        coefficients: Vec<(Area, f64)>,
+        /// Coefficient of all other panels; none: they get no pressure.
+        elsewhere: Option<f64>,
+    },
+    /// Drag of wind on round ropes, across them, fixed at the reference geometry. With the wind along the unit vector `w`
+    /// and the rope along `t`, `w⊥ = w − (w·t) t`:
+    ///
+    /// ```text
+    /// force per length = pressure · drag coefficient · diameter · |w⊥| w⊥
+    /// ```
+    ///
+    /// The part of the wind along the rope does nothing (cross-flow principle, Hoerner 1965).
+    WindOnRopes {
+        /// Where; every segment has a diameter.
+        scope: Scope,
+        /// Velocity pressure of the wind (Pa).
+        pressure: f64,
+        /// Direction in which the wind blows, a unit vector.
+        along: Vector3<f64>,
+        /// Drag coefficient on the diameter (–).
+        drag_coefficient: f64,
+    },
+    /// A ring of ice around round ropes, `π t (d + t)` in section, along the unstressed length.
+    Ice {
+        /// Where; every segment has a diameter.
+        scope: Scope,
+        /// Thickness `t` of the ring (m).
+        thickness: f64,
+        /// Density of the ice (kg/m³).
+        density: f64,
+        /// Acceleration (m/s²).
+        gravity: Vector3<f64>,
     },
     /// Change of temperature from the reference temperature (K).
     Temperature {

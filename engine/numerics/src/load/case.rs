@@ -1,9 +1,11 @@
 //! One case: everything that acts at once, as plain numbers over the net.
 
+use std::f64::consts::PI;
+
 use nalgebra::Vector3;
 
-use super::{Action, Load, Scope};
-use crate::model::{Net, ReferenceState, SegmentId};
+use super::{Action, Load, Scope, Surface};
+use crate::model::{Member, Net, ReferenceState, Section, Segment, SegmentId, fan};
 
 /// What a case changes about the segments.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
@@ -28,6 +30,9 @@ pub struct Case {
     pub support_movements: Vec<Vector3<f64>>,
     /// Segments taken out, by index.
     pub removed: Vec<bool>,
+    /// Unstressed length (m) that lies in every segment while nothing slides from where it lay in the reference state, at
+    /// the full load. Read where ropes slide against friction; empty: there is none.
+    pub lying: Vec<f64>,
     /// Pressure on the outer side of every panel (Pa); it stays normal to the panel as that moves. Empty: none.
     pub pressures: Vec<f64>,
 }
@@ -49,20 +54,49 @@ impl Case {
     /// `factors`: index into `actions` and its factor; a factor of zero leaves no trace.
     #[must_use]
     pub fn new(net: &Net, reference: &ReferenceState, actions: &[Action], factors: &[(usize, f64)]) -> Self {
+        Self::changed(net, reference, actions, factors, &[], 0.0)
+    }
+
+    /// The same with members taken out, and with a share of prestress of all ropes on top of that of the actions.
+    ///
+    /// What is taken out carries nothing, and neither its weight nor loads along it act any more.
+    #[must_use]
+    pub fn changed(
+        net: &Net,
+        reference: &ReferenceState,
+        actions: &[Action],
+        factors: &[(usize, f64)],
+        removed: &[Member],
+        prestress_share: f64,
+    ) -> Self {
+        let is_removed = |segment: &Segment| removed.contains(&segment.member);
         let mut case = Self {
             nodal_forces: vec![Vector3::zeros(); net.nodes().len()],
             unstressed_lengths: reference.unstressed_lengths.clone(),
             segments: vec![SegmentLoads::default(); net.segments().len()],
             support_movements: vec![Vector3::zeros(); net.nodes().len()],
-            removed: vec![false; net.segments().len()],
+            removed: net.segments().iter().map(is_removed).collect(),
+            lying: Vec::new(),
             pressures: Vec::new(),
         };
-        let mut shares = vec![0.0; net.segments().len()];
+        // Measured once, and only if something lies on it.
+        let surface = if net.panels().is_empty() {
+            Surface::default()
+        } else {
+            Surface::new(net, &reference.positions)
+        };
+        let mut adding = Adding {
+            net,
+            reference,
+            surface: &surface,
+            shares: vec![prestress_share; net.segments().len()],
+        };
         for (action, factor) in factors.iter().filter(|(_, factor)| *factor != 0.0) {
             for load in &actions[*action].loads {
-                case.add(net, reference, load, *factor, &mut shares);
+                adding.add(&mut case, load, *factor);
             }
         }
+        let shares = adding.shares;
         case.apply_shares(net, reference, &shares);
         case
     }
@@ -88,54 +122,6 @@ impl Case {
         scaled
     }
 
-    fn add(&mut self, net: &Net, reference: &ReferenceState, load: &Load, factor: f64, shares: &mut [f64]) {
-        match load {
-            Load::Nodes { nodes, force } => {
-                for node in nodes {
-                    self.nodal_forces[node.index()] += factor * force;
-                }
-            }
-            Load::OwnWeight { gravity } => {
-                for (index, segment) in net.segments().iter().enumerate() {
-                    let mass = segment.section.mass_per_length * unstressed_length(net, reference, index);
-                    self.share_between_ends(net, index, factor * mass * gravity);
-                }
-                for (force, node) in self.nodal_forces.iter_mut().zip(net.nodes()) {
-                    *force += factor * node.attached_mass * gravity;
-                }
-            }
-            Load::PerUnstressedLength { scope, force } => {
-                for index in segments(net, scope) {
-                    let length = unstressed_length(net, reference, index);
-                    self.share_between_ends(net, index, factor * length * force);
-                }
-            }
-            Load::PerPlanLength { scope, force } => {
-                for index in segments(net, scope) {
-                    let length = span(net, reference, index).xy().norm();
-                    self.share_between_ends(net, index, factor * length * force);
-                }
-            }
-            Load::Temperature { scope, change } => {
-                for index in segments(net, scope) {
-                    self.segments[index].temperature_change += factor * change;
-                }
-            }
-            Load::SupportMovement { node, by } => self.support_movements[node.index()] += factor * by,
-            Load::PrestressShare { scope, share } => {
-                for index in segments(net, scope) {
-                    shares[index] += factor * share;
-                }
-            }
-        }
-    }
-
-    fn share_between_ends(&mut self, net: &Net, segment: usize, force: Vector3<f64>) {
-        for node in net.segments()[segment].ends {
-            self.nodal_forces[node.index()] += 0.5 * force;
-        }
-    }
-
     fn apply_shares(&mut self, net: &Net, reference: &ReferenceState, shares: &[f64]) {
         for (index, reach) in net.reaches().iter().enumerate() {
             let untouched = shares[reach.segments.clone()].iter().all(|share| *share == 0.0);
@@ -153,6 +139,162 @@ impl Case {
                 .sum();
         }
     }
+}
+
+/// What loads are added up over.
+struct Adding<'a> {
+    net: &'a Net,
+    reference: &'a ReferenceState,
+    surface: &'a Surface,
+    /// Share of prestress by segment.
+    shares: Vec<f64>,
+}
+
+impl Adding<'_> {
+    fn add(&mut self, case: &mut Case, load: &Load, factor: f64) {
+        let net = self.net;
+        match load {
+            Load::Nodes { nodes, force } => {
+                for node in nodes {
+                    case.nodal_forces[node.index()] += factor * force;
+                }
+            }
+            Load::OwnWeight { gravity } => {
+                for (index, segment) in net.segments().iter().enumerate() {
+                    self.add_per_length(case, index, factor * segment.section.mass_per_length * gravity);
+                }
+                for (force, node) in case.nodal_forces.iter_mut().zip(net.nodes()) {
+                    *force += factor * node.attached_mass * gravity;
+                }
+                for skin in net.skins().iter().filter(|skin| skin.mass_per_area > 0.0) {
+                    for panel in &skin.panels {
+                        self.add_on_panel(case, *panel, factor * skin.mass_per_area * gravity, |a| a.norm());
+                    }
+                }
+            }
+            Load::PerUnstressedLength { scope, force } => {
+                for index in segments(net, scope) {
+                    self.add_per_length(case, index, factor * force);
+                }
+            }
+            Load::PerPlanLength { scope, force } => {
+                for index in segments(net, scope) {
+                    let length = self.span(index).xy().norm();
+                    self.share_between_ends(case, index, factor * length * force);
+                }
+            }
+            Load::OnPlan { on, pressure } => {
+                for panel in self.surface.panels_of(on) {
+                    let corners = net.panels()[panel].places(&self.reference.positions);
+                    let up = fan::signed_area_on_plan(&corners).signum();
+                    self.add_on_panel(case, panel, Vector3::new(0.0, 0.0, -factor * pressure), |a| up * a.z);
+                }
+            }
+            Load::OnSurface {
+                pressure,
+                coefficients,
+                elsewhere,
+            } => {
+                case.pressures.resize(net.panels().len(), 0.0);
+                for (panel, sum) in case.pressures.iter_mut().enumerate() {
+                    let coefficient = self.surface.coefficient(panel, coefficients, *elsewhere);
+                    *sum += factor * pressure * coefficient.unwrap_or(0.0);
+                }
+            }
+            Load::WindOnRopes {
+                scope,
+                pressure,
+                along,
+                drag_coefficient,
+            } => {
+                for index in segments(net, scope) {
+                    let Some(diameter) = net.segments()[index].section.diameter else {
+                        continue;
+                    };
+                    let span = self.span(index);
+                    let length = span.norm();
+                    let across = if length > 0.0 {
+                        along - span * (along.dot(&span) / (length * length))
+                    } else {
+                        Vector3::zeros()
+                    };
+                    let force = factor * pressure * drag_coefficient * diameter * length * across.norm() * across;
+                    self.share_between_ends(case, index, force);
+                }
+            }
+            Load::Ice {
+                scope,
+                thickness,
+                density,
+                gravity,
+            } => {
+                for index in segments(net, scope) {
+                    let mass = ice_per_length(&net.segments()[index].section, *thickness, *density);
+                    self.add_per_length(case, index, factor * mass * gravity);
+                }
+            }
+            Load::Temperature { scope, change } => {
+                for index in segments(net, scope) {
+                    case.segments[index].temperature_change += factor * change;
+                }
+            }
+            Load::SupportMovement { node, by } => case.support_movements[node.index()] += factor * by,
+            Load::PrestressShare { scope, share } => {
+                for index in segments(net, scope) {
+                    self.shares[index] += factor * share;
+                }
+            }
+        }
+    }
+
+    fn span(&self, segment: usize) -> Vector3<f64> {
+        span(self.net, self.reference, segment)
+    }
+
+    /// A load per unstressed length: along the segment where it hangs, else half of it at each end.
+    fn add_per_length(&self, case: &mut Case, segment: usize, per_length: Vector3<f64>) {
+        if case.removed[segment] {
+            return;
+        }
+        if self.net.segments()[segment].hangs {
+            case.segments[segment].per_length += per_length;
+        } else {
+            let length = unstressed_length(self.net, self.reference, segment);
+            self.share_between_ends(case, segment, length * per_length);
+        }
+    }
+
+    fn share_between_ends(&self, case: &mut Case, segment: usize, force: Vector3<f64>) {
+        if case.removed[segment] {
+            return;
+        }
+        for node in self.net.segments()[segment].ends {
+            case.nodal_forces[node.index()] += 0.5 * force;
+        }
+    }
+
+    /// A load per area: `measure` says how much of it a triangle with this area vector counts for.
+    fn add_on_panel(
+        &self,
+        case: &mut Case,
+        panel: usize,
+        per_area: Vector3<f64>,
+        measure: impl Fn(&Vector3<f64>) -> f64,
+    ) {
+        let panel = &self.net.panels()[panel];
+        let areas = fan::triangles(&panel.places(&self.reference.positions));
+        let areas: Vec<f64> = areas.iter().map(measure).collect();
+        for (corner, area) in panel.corners.iter().zip(fan::to_corners(&areas)) {
+            case.nodal_forces[corner.index()] += area * per_area;
+        }
+    }
+}
+
+/// Mass of a ring of ice per length (kg/m): `ρ π t (d + t)`; none around what has no diameter.
+#[must_use]
+pub fn ice_per_length(section: &Section, thickness: f64, density: f64) -> f64 {
+    let ring = |diameter: f64| density * PI * thickness * (diameter + thickness);
+    section.diameter.map_or(0.0, ring)
 }
 
 /// Unstressed length of one segment (m): that of its reach, shared by current length where a reach has several.

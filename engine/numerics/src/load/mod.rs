@@ -2,6 +2,9 @@
 
 mod action;
 mod case;
+pub mod combination;
+mod surface;
 
 pub use action::{Action, Load, Scope};
-pub use case::{Case, SegmentLoads};
+pub use case::{Case, SegmentLoads, ice_per_length};
+pub use surface::Surface;

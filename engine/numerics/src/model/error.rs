@@ -51,9 +51,23 @@ pub enum NetError {
         /// Position in the path.
         position: usize,
     },
-    /// A panel has fewer than three corners, or one of them twice.
-    #[error("the panel {of} has fewer than three different corners")]
+    /// A panel has fewer than three corners, or one of them twice; or a zone has no outline.
+    #[error("{of} has fewer than three different corners")]
     DegeneratePanel {
+        /// Name of the panel or zone.
+        of: String,
+    },
+    /// A skin or zone names a part that does not exist.
+    #[error("{of} names a {what} that the net does not have")]
+    UnknownPart {
+        /// Name of the skin or zone.
+        of: String,
+        /// Kind of the part.
+        what: &'static str,
+    },
+    /// A panel belongs to several skins.
+    #[error("the panel {of} belongs to several skins")]
+    SeveralSkins {
         /// Name of the panel.
         of: String,
     },

@@ -11,6 +11,8 @@ pub struct Section {
     pub expansion: f64,
     /// Breaking force of the member with its end fittings (N), if known.
     pub breaking_force: Option<f64>,
+    /// Characteristic force at the proof strength (N), if known; the end fittings do not lower it.
+    pub proof_force: Option<f64>,
     /// Bending stiffness `EI` of a strut (N m²), if known.
     pub bending_stiffness: Option<f64>,
     /// Diameter of the rope or tube (m), if known.

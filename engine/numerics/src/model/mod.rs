@@ -1,11 +1,14 @@
 //! The net as it is given, valid and immutable, and the states it can be in.
 
 mod error;
+pub mod fan;
 mod ids;
 mod material;
+pub mod mesh;
 mod net;
 mod state;
 mod support;
+mod surface;
 mod violations;
 
 pub use error::NetError;
@@ -17,3 +20,4 @@ pub use net::{
 };
 pub use state::ReferenceState;
 pub use support::{ElasticSupport, ElasticSupportGiven, Support, SupportGiven};
+pub use surface::{Area, Skin, Zone};

@@ -6,8 +6,8 @@ use nalgebra::Vector3;
 use nalgebra_sparse::{CooMatrix, CsrMatrix};
 
 use super::support::{ElasticSupport, ElasticSupportGiven, Support, SupportGiven};
-use super::violations::violations;
-use super::{CableId, NetError, NodeId, Section, SegmentId, StrutId};
+use super::violations::{check_surface, violations};
+use super::{CableId, NetError, NodeId, Section, SegmentId, Skin, StrutId, Zone};
 
 /// A node as given.
 #[derive(Clone, Debug, Default, PartialEq)]
@@ -80,6 +80,10 @@ pub struct NetGiven {
     pub elastic_supports: Vec<ElasticSupportGiven>,
     /// Panels, in result order.
     pub panels: Vec<PanelGiven>,
+    /// Skins, in result order.
+    pub skins: Vec<Skin>,
+    /// Zones, in result order.
+    pub zones: Vec<Zone>,
 }
 
 /// A node of a net.
@@ -178,6 +182,22 @@ pub struct Panel {
     pub corners: Vec<NodeId>,
 }
 
+impl From<PanelGiven> for Panel {
+    fn from(given: PanelGiven) -> Self {
+        Self {
+            name: given.name,
+            corners: given.corners,
+        }
+    }
+}
+
+impl Panel {
+    /// Where its corners are (m), of one position a node.
+    pub fn places<'a>(&'a self, positions: &'a [Vector3<f64>]) -> Vec<Vector3<f64>> {
+        self.corners.iter().map(|corner| positions[corner.index()]).collect()
+    }
+}
+
 /// A valid net, immutable: finite numbers, positive stiffness, no dangling index, no path without length.
 #[derive(Clone, Debug)]
 pub struct Net {
@@ -190,6 +210,8 @@ pub struct Net {
     support_of_node: Vec<Option<usize>>,
     elastic_supports: Vec<ElasticSupport>,
     panels: Vec<Panel>,
+    skins: Vec<Skin>,
+    zones: Vec<Zone>,
     branch_node: CsrMatrix<f64>,
 }
 
@@ -212,6 +234,8 @@ impl Net {
             struts: struts_given,
             elastic_supports,
             panels,
+            skins,
+            zones,
         } = given;
 
         let mut segments = Vec::new();
@@ -326,15 +350,32 @@ impl Net {
             supports,
             support_of_node,
             elastic_supports,
-            panels: panels
-                .into_iter()
-                .map(|panel| Panel {
-                    name: panel.name,
-                    corners: panel.corners,
-                })
-                .collect(),
+            panels: panels.into_iter().map(Panel::from).collect(),
+            skins,
+            zones,
             branch_node,
         })
+    }
+
+    /// The same net with other panels, skins and zones: panels are meshes of the net and found only when it is known.
+    ///
+    /// # Errors
+    /// Every [`NetError`] found in them.
+    pub fn with_surface(
+        mut self,
+        panels: Vec<PanelGiven>,
+        skins: Vec<Skin>,
+        zones: Vec<Zone>,
+    ) -> Result<Self, Vec<NetError>> {
+        let mut errors = Vec::new();
+        check_surface(&panels, &skins, &zones, self.nodes.len(), &mut errors);
+        if !errors.is_empty() {
+            return Err(errors);
+        }
+        self.panels = panels.into_iter().map(Panel::from).collect();
+        self.skins = skins;
+        self.zones = zones;
+        Ok(self)
     }
 
     /// Nodes in the order given.
@@ -389,6 +430,25 @@ impl Net {
     #[must_use]
     pub fn panels(&self) -> &[Panel] {
         &self.panels
+    }
+
+    /// Skins in the order given.
+    #[must_use]
+    pub fn skins(&self) -> &[Skin] {
+        &self.skins
+    }
+
+    /// Zones in the order given.
+    #[must_use]
+    pub fn zones(&self) -> &[Zone] {
+        &self.zones
+    }
+
+    /// Whether a segment is part of a reach that slides.
+    #[must_use]
+    pub fn slides(&self, segment: SegmentId) -> bool {
+        let length = self.segments[segment.index()].length;
+        self.reaches.get(length).is_some_and(Reach::slides)
     }
 
     /// Whether every rope is clamped at every node and every member straight: what is left is straight bars.

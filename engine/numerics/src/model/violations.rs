@@ -1,6 +1,6 @@
 //! Everything that keeps the given parts from being a net.
 
-use super::{CableGiven, ElasticSupportGiven, NetError, NetGiven, NodeId, PanelGiven, Section};
+use super::{CableGiven, ElasticSupportGiven, NetError, NetGiven, NodeId, PanelGiven, Section, Skin, Zone};
 
 /// All of it, not just the first.
 pub(super) fn violations(given: &NetGiven) -> Vec<NetError> {
@@ -55,9 +55,13 @@ pub(super) fn violations(given: &NetGiven) -> Vec<NetError> {
         check_path(&strut.name, &strut.ends, given.nodes.len(), &mut errors);
         check_section(&strut.name, &strut.section, &mut errors);
     }
-    for panel in &given.panels {
-        check_panel(panel, given.nodes.len(), &mut errors);
-    }
+    check_surface(
+        &given.panels,
+        &given.skins,
+        &given.zones,
+        given.nodes.len(),
+        &mut errors,
+    );
     for elastic in &given.elastic_supports {
         check_elastic_support(elastic, given, &mut errors);
     }
@@ -109,6 +113,53 @@ fn check_slides(cable: &CableGiven, errors: &mut Vec<NetError>) {
     }
 }
 
+pub(super) fn check_surface(
+    panels: &[PanelGiven],
+    skins: &[Skin],
+    zones: &[Zone],
+    n_nodes: usize,
+    errors: &mut Vec<NetError>,
+) {
+    for panel in panels {
+        check_panel(panel, n_nodes, errors);
+    }
+    let mut skins_of = vec![0; panels.len()];
+    for skin in skins {
+        if !(skin.mass_per_area.is_finite() && skin.mass_per_area >= 0.0) {
+            errors.push(NetError::NotPositive {
+                what: "mass per area",
+                of: skin.name.clone(),
+                value: skin.mass_per_area,
+            });
+        }
+        for panel in &skin.panels {
+            match skins_of.get_mut(*panel) {
+                Some(skins) => *skins += 1,
+                None => errors.push(NetError::UnknownPart {
+                    of: skin.name.clone(),
+                    what: "panel",
+                }),
+            }
+        }
+    }
+    for (panel, skins) in panels.iter().zip(skins_of) {
+        if skins > 1 {
+            errors.push(NetError::SeveralSkins { of: panel.name.clone() });
+        }
+    }
+    for zone in zones {
+        if zone.skin >= skins.len() {
+            errors.push(NetError::UnknownPart {
+                of: zone.name.clone(),
+                what: "skin",
+            });
+        }
+        if zone.outline.len() < 3 || zone.outline.iter().any(|p| !(p.x.is_finite() && p.y.is_finite())) {
+            errors.push(NetError::DegeneratePanel { of: zone.name.clone() });
+        }
+    }
+}
+
 fn check_panel(panel: &PanelGiven, n_nodes: usize, errors: &mut Vec<NetError>) {
     if let Some(node) = panel.corners.iter().find(|n| n.index() >= n_nodes) {
         errors.push(NetError::UnknownNode {
@@ -143,8 +194,15 @@ fn check_section(name: &str, section: &Section, errors: &mut Vec<NetError>) {
         section.mass_per_length >= 0.0,
     );
     positive("expansion", section.expansion, true);
-    if let Some(force) = section.breaking_force {
-        positive("breaking force", force, force > 0.0);
+    for (what, value) in [
+        ("breaking force", section.breaking_force),
+        ("proof force", section.proof_force),
+        ("bending stiffness", section.bending_stiffness),
+        ("diameter", section.diameter),
+    ] {
+        if let Some(value) = value {
+            positive(what, value, value > 0.0);
+        }
     }
 }
 

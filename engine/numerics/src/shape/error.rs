@@ -3,23 +3,8 @@
 use nalgebra::Vector3;
 use thiserror::Error;
 
-use super::words::{direction, kilonewtons, list, three_digits};
+use super::words::{direction, kilonewtons, list};
 use crate::equilibrium::{SolveError, Termination};
-
-/// A wanted tension and the nearest that balances.
-#[derive(Clone, Debug, PartialEq)]
-pub struct Target {
-    /// The client's id of the member.
-    pub member: String,
-    /// Whether the wanted tension is a mean over several segments.
-    pub is_mean: bool,
-    /// Wanted axial force (N).
-    pub wanted: f64,
-    /// Axial force found (N).
-    pub found: f64,
-    /// Whether it was met.
-    pub met: bool,
-}
 
 /// A force that nothing balances.
 #[derive(Clone, Debug, PartialEq)]
@@ -138,15 +123,25 @@ pub enum ShapeError {
         /// Whether the forces are the only ones that balance.
         unique: bool,
     },
-    /// Wanted tensions that no shape balances.
-    #[error("{}", unmet(targets, left, *rank))]
-    TargetsUnmet {
-        /// Every wanted tension with the nearest that balances.
-        targets: Vec<Target>,
-        /// What the wanted tensions would leave at the nodes of the nearest shape, largest first.
-        left: Vec<ForceLeft>,
-        /// How many of the wanted tensions can be chosen independently near that shape.
-        rank: usize,
+    /// A target can not stand as it is given.
+    #[error("target \"{target}\" can not stand: {why}")]
+    BadTarget {
+        /// Name of the target.
+        target: String,
+        /// What is wrong with it.
+        why: String,
+    },
+    /// There are targets, and no force density may change.
+    #[error("targets are given, and no rule lets the search change a force density: let some be adjusted")]
+    NothingAdjustable,
+    /// A target has no value at the shape to start from.
+    #[error(
+        "target \"{target}\" has no value at the shape that the rules give: its nodes coincide there, or a chord stands \
+         upright"
+    )]
+    NotMeasurable {
+        /// Name of the target.
+        target: String,
     },
     /// Both ends of a member fall on one point.
     #[error(
@@ -259,7 +254,7 @@ fn at(nodes: &[String]) -> String {
     }
 }
 
-fn forces_left(left: &[ForceLeft]) -> String {
+pub(super) fn forces_left(left: &[ForceLeft]) -> String {
     if left.is_empty() {
         return "nothing at any node".to_owned();
     }
@@ -278,30 +273,4 @@ fn forces_left(left: &[ForceLeft]) -> String {
 fn pushing(members: &[(String, f64)]) -> String {
     let one = |(name, force): &(String, f64)| format!("cable \"{name}\" ({})", kilonewtons(*force));
     members.iter().take(6).map(one).collect::<Vec<_>>().join(" and ")
-}
-
-fn unmet(targets: &[Target], left: &[ForceLeft], rank: usize) -> String {
-    let mut worst: Vec<&Target> = targets.iter().filter(|t| !t.met).collect();
-    let miss = |t: &Target| (t.found / t.wanted - 1.0).abs();
-    worst.sort_by(|a, b| miss(b).total_cmp(&miss(a)));
-    let nearest: Vec<String> = worst
-        .iter()
-        .take(6)
-        .map(|t| {
-            format!(
-                "\"{}\" {} instead of {}",
-                t.member,
-                three_digits(t.found / 1e3),
-                kilonewtons(t.wanted)
-            )
-        })
-        .collect();
-    format!(
-        "the given tensions leave {}. Nearest balanced set: {}; met: {} of {}, independent: {rank}; or leave some of them \
-         to balance {{}}",
-        forces_left(left),
-        nearest.join(", "),
-        targets.iter().filter(|t| t.met).count(),
-        targets.len()
-    )
 }

@@ -1,16 +1,18 @@
 //! The reference state, from rules to a net that stands.
 
 use std::ops::ControlFlow;
+use std::sync::Arc;
 
 use nalgebra::Vector3;
 
-use super::balance::forces_left;
+use super::fights::{targets, unmet};
 use super::gate::{Found, finish};
 use super::loads::ShapeLoads;
-use super::parts::{Part, Parts};
+use super::parts::{Part, Parts, Sought};
+use super::rows::Rows;
 use super::search::{Point, Search};
-use super::targets::{Densities, MET};
-use super::{BalanceReport, Prestress, ShapeError, Target, frozen};
+use super::targets::Densities;
+use super::{BalanceReport, Prestress, ShapeError, Target, Unmet, frozen};
 use crate::assembly::Structure;
 use crate::equilibrium::{Analysis, IterationReport, Settings, existence};
 use crate::load::Action;
@@ -50,7 +52,7 @@ pub fn find(
     let net = analysis.structure().net();
     assert_eq!(prestress.rules.len(), net.segments().len(), "one rule a segment");
     let parts = Parts::new(net, prestress)?;
-    let loads = ShapeLoads::new(net, actions, &prestress.under)?;
+    let mut loads = ShapeLoads::new(net, actions, &prestress.under)?;
     let nowhere = |nodes: &mut dyn Iterator<Item = NodeId>| -> Vec<String> {
         let missing = nodes.filter(|n| net.nodes()[n.index()].position.is_none());
         missing.map(|n| net.node_name(n).to_owned()).collect()
@@ -60,6 +62,10 @@ pub fn find(
         return Err(ShapeError::HeldWithoutPosition { nodes: missing });
     }
     parts.check_balance_ends(net, &prestress.hold)?;
+    let rows = Rows::new(net, &parts, prestress)?;
+    if !prestress.targets.is_empty() && parts.families.is_empty() {
+        return Err(ShapeError::NothingAdjustable);
+    }
     if parts.all_elastic() && prestress.hold.is_empty() {
         let missing = nowhere(&mut (0..net.nodes().len()).map(NodeId::new));
         if !missing.is_empty() {
@@ -74,21 +80,70 @@ pub fn find(
         kept = Analysis::of(Structure::keeping(net.clone(), &prestress.hold));
         &kept
     };
-    let (shape, iterations) = shape(searched, &parts, &loads, &prestress.hold, observe)?;
-    finish(
-        analysis,
-        prestress,
-        actions,
-        settings,
-        shape.into_raw(net, &parts, iterations)?,
-        observe,
-    )
+    let wanted = Wanted {
+        parts: &parts,
+        loads: &mut loads,
+        rows,
+        hold: &prestress.hold,
+    };
+    let raw = shape(searched, wanted, observe)?.into_raw(net, &parts)?;
+    finish(analysis, prestress, actions, settings, raw, observe)
+}
+
+/// What a search is after.
+struct Wanted<'a> {
+    parts: &'a Parts,
+    loads: &'a mut ShapeLoads,
+    rows: Rows,
+    hold: &'a [NodeId],
+}
+
+/// Rounds in which force densities of families are fitted to the lengths of the first shape.
+const FIRST_ROUNDS: usize = 4;
+
+/// About where the nodes will be, for whoever has to know before the shape is searched for (m): where they were given,
+/// or, if some were not, where force densities would put them without loads.
+///
+/// # Errors
+/// [`ShapeError`] if not even this can be told; the search then fails for the same reason.
+pub fn first_shape(net: &Arc<Net>, prestress: &Prestress) -> Result<Vec<Vector3<f64>>, ShapeError> {
+    let given: Vec<Vector3<f64>> = net.nodes().iter().filter_map(|n| n.position).collect();
+    if given.len() == net.nodes().len() {
+        return Ok(given);
+    }
+    let parts = Parts::new(net, prestress)?;
+    if prestress.hold.iter().any(|h| net.nodes()[h.index()].position.is_none()) {
+        let held = prestress
+            .hold
+            .iter()
+            .filter(|h| net.nodes()[h.index()].position.is_none());
+        return Err(ShapeError::HeldWithoutPosition {
+            nodes: names(net, &held.copied().collect::<Vec<_>>()),
+        });
+    }
+    let analysis = if prestress.hold.is_empty() {
+        Analysis::new(Arc::clone(net))
+    } else {
+        Analysis::of(Structure::keeping(Arc::clone(net), &prestress.hold))
+    };
+    let observe = &mut |_: &IterationReport| ControlFlow::Continue(());
+    let mut first = start(&analysis, &parts, observe)?;
+    for _ in 0..FIRST_ROUNDS {
+        let (soft, unloaded) = (softened(&parts, &first.densities), ShapeLoads::none(net));
+        let mut search = Search::new(&analysis, &soft, &unloaded, observe);
+        first.positions = search.balanced(first.positions, &[])?.positions;
+        fit(net, &parts, &first.positions, &mut first.densities);
+    }
+    Ok(first.positions)
 }
 
 /// What the search came to.
 struct Shape {
     densities: Densities,
     balance: Option<BalanceReport>,
+    targets: Vec<Target>,
+    unmet: Option<Unmet>,
+    iterations: u32,
 }
 
 /// A shape whose elastic balance has not been looked at yet.
@@ -99,20 +154,27 @@ pub(super) struct RawShape {
     pub(super) unstressed: Vec<f64>,
     pub(super) iterations: u32,
     pub(super) targets: Vec<Target>,
+    pub(super) unmet: Option<Unmet>,
     pub(super) balance: Option<BalanceReport>,
     pub(super) taut_given_lengths: Vec<SegmentId>,
 }
 
 fn shape(
     analysis: &Analysis,
-    parts: &Parts,
-    loads: &ShapeLoads,
-    hold: &[NodeId],
+    wanted: Wanted<'_>,
     observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
-) -> Result<(Shape, u32), ShapeError> {
+) -> Result<Shape, ShapeError> {
     let net = analysis.structure().net();
+    let Wanted {
+        parts,
+        loads,
+        rows,
+        hold,
+    } = wanted;
     let start = start(analysis, parts, observe)?;
+    loads.place(net, &start.positions);
     let mut search = Search::new(analysis, parts, loads, observe);
+    search.rows = rows;
     search.iterations = start.iterations;
     search.check_held()?;
     let members = parts.balance();
@@ -120,39 +182,34 @@ fn shape(
         .iter()
         .flat_map(|e| net.segments()[*e].ends)
         .any(|end| !analysis.structure().dofs().directions(end).is_empty());
-    let mut found = search.with_wanted_tensions(start.positions, start.densities)?;
+    let mut found = search.with_wanted(start.positions, start.densities)?;
     let mut balance = None;
     for _ in 0..MAX_ROUNDS {
         if hold.is_empty() && members.is_empty() {
             break;
         }
-        no_length(net, &found.point)?;
+        sound(analysis, &found.point)?;
         let (report, change) = search.balance(hold, &mut found.point, &found.densities)?;
         balance = (!members.is_empty()).then_some(report);
         let largest = found.point.axial_forces.iter().fold(0.0, |m: f64, n| m.max(n.abs()));
         if !ends_move || change <= SETTLED * largest {
             break;
         }
-        found = search.with_wanted_tensions(found.point.positions, found.densities)?;
+        found = search.with_wanted(found.point.positions, found.densities)?;
     }
-    no_length(net, &found.point)?;
-    if !found.met {
-        return Err(unmet(net, parts, &search, &found));
-    }
-    let loose = existence::loose_nodes(analysis.structure(), |e| found.point.axial_forces[e] != 0.0);
-    if !loose.is_empty() {
-        return Err(ShapeError::Loose {
-            nodes: names(net, &loose),
-        });
-    }
-    let iterations = search.iterations;
-    Ok((
-        Shape {
-            densities: found,
-            balance,
-        },
-        iterations,
-    ))
+    sound(analysis, &found.point)?;
+    let unmet = if found.met {
+        None
+    } else {
+        Some(unmet(&mut search, &found)?)
+    };
+    Ok(Shape {
+        targets: targets(&search, &found),
+        unmet,
+        densities: found,
+        balance,
+        iterations: search.iterations,
+    })
 }
 
 /// Where a search starts.
@@ -181,47 +238,23 @@ fn start(
         .max(f64::MIN_POSITIVE);
     let mut positions: Vec<Vector3<f64>> = net.nodes().iter().map(|n| n.position.unwrap_or(middle)).collect();
     // A tenth of the net is as good a guess of a segment's length as any; only its order of magnitude matters.
-    let mut densities: Vec<f64> = parts.families.iter().map(|f| f.wanted / (0.1 * size)).collect();
+    let mut densities: Vec<f64> = (parts.families.iter())
+        .map(|family| match family.sought {
+            Sought::Mean(wanted) => wanted / (0.1 * size),
+            Sought::Targets(given) => given.density,
+        })
+        .collect();
     let mut iterations = 0;
     let some_density = parts.of.iter().any(|part| !matches!(part, Part::Elastic(_)));
     if given.len() < net.nodes().len() && some_density {
-        let mut sorted: Vec<f64> = (parts.of.iter())
-            .filter_map(|part| match part {
-                Part::Density(q) if *q != 0.0 => Some(q.abs()),
-                Part::Family(family) => Some(densities[*family].abs()),
-                _ => None,
-            })
-            .collect();
-        sorted.sort_by(f64::total_cmp);
-        let typical = sorted.get(sorted.len() / 2).copied().unwrap_or(1.0);
-        let soft = Parts {
-            of: (parts.of.iter())
-                .map(|part| match part {
-                    Part::Density(q) => Part::Density(q.abs()),
-                    Part::Family(family) => Part::Density(densities[*family].abs()),
-                    // Soft, so that ropes of given length hardly shape the start.
-                    Part::Elastic(_) => Part::Density(1e-2 * typical),
-                    Part::Balance => Part::Balance,
-                })
-                .collect(),
-            families: Vec::new(),
-        };
+        let soft = softened(parts, &densities);
         let unloaded = ShapeLoads::none(net);
         let mut search = Search::new(analysis, &soft, &unloaded, observe);
         search.check_held()?;
         positions = search.balanced(positions, &[])?.positions;
         iterations = search.iterations;
     }
-    let length = |e: &usize| {
-        let [i, j] = net.segments()[*e].ends.map(NodeId::index);
-        (positions[j] - positions[i]).norm()
-    };
-    for (density, family) in densities.iter_mut().zip(&parts.families) {
-        let mean = family.segments.iter().map(length).sum::<f64>() / family.segments.len() as f64;
-        if mean > 1e-6 * size {
-            *density = family.wanted / mean;
-        }
-    }
+    fit(net, parts, &positions, &mut densities);
     Ok(Start {
         positions,
         densities,
@@ -229,8 +262,60 @@ fn start(
     })
 }
 
-/// Refuses a shape in which both ends of a member coincide.
-fn no_length(net: &Net, point: &Point) -> Result<(), ShapeError> {
+/// The parts of a net without loads that stands whatever its forces are: densities alone, none of them negative.
+fn softened(parts: &Parts, densities: &[f64]) -> Parts {
+    let mut sorted: Vec<f64> = (parts.of.iter())
+        .filter_map(|part| match part {
+            Part::Density(q) if *q != 0.0 => Some(q.abs()),
+            Part::Family(family) => Some(densities[*family].abs()),
+            _ => None,
+        })
+        .collect();
+    sorted.sort_by(f64::total_cmp);
+    let typical = sorted.get(sorted.len() / 2).copied().unwrap_or(1.0);
+    Parts {
+        of: (parts.of.iter())
+            .map(|part| match part {
+                Part::Density(q) => Part::Density(q.abs()),
+                Part::Family(family) => Part::Density(densities[*family].abs()),
+                // Soft, so that ropes of given length hardly shape the start.
+                Part::Elastic(_) => Part::Density(1e-2 * typical),
+                Part::Balance => Part::Balance,
+            })
+            .collect(),
+        families: Vec::new(),
+    }
+}
+
+/// Force densities of the families that give them the wanted mean tension at these lengths.
+fn fit(net: &Net, parts: &Parts, positions: &[Vector3<f64>], densities: &mut [f64]) {
+    let given: Vec<Vector3<f64>> = net.nodes().iter().filter_map(|n| n.position).collect();
+    let middle = given.iter().sum::<Vector3<f64>>() / (given.len().max(1) as f64);
+    let size = given.iter().fold(0.0, |m: f64, x| m.max((x - middle).norm()));
+    let length = |e: &usize| {
+        let [i, j] = net.segments()[*e].ends.map(NodeId::index);
+        (positions[j] - positions[i]).norm()
+    };
+    for (density, family) in densities.iter_mut().zip(&parts.families) {
+        let Some(wanted) = family.wanted() else {
+            continue;
+        };
+        let mean = family.segments.iter().map(length).sum::<f64>() / family.segments.len() as f64;
+        if mean > 1e-6 * size {
+            *density = wanted / mean;
+        }
+    }
+}
+
+/// Refuses a shape of which nodes hang on slack ropes alone, or both ends of a member coincide.
+fn sound(analysis: &Analysis, point: &Point) -> Result<(), ShapeError> {
+    let net = analysis.structure().net();
+    let loose = existence::loose_nodes(analysis.structure(), |e| point.axial_forces[e] != 0.0);
+    if !loose.is_empty() {
+        return Err(ShapeError::Loose {
+            nodes: names(net, &loose),
+        });
+    }
     let size = point.positions.iter().fold(0.0, |m: f64, x| m.max(x.amax()));
     match point.lengths.iter().position(|l| *l <= 1e-12 * size) {
         Some(index) => {
@@ -250,61 +335,8 @@ pub(super) fn names(net: &Net, nodes: &[NodeId]) -> Vec<String> {
     nodes.iter().map(|n| net.node_name(*n).to_owned()).collect()
 }
 
-fn targets(net: &Net, parts: &Parts, found: &Densities) -> Vec<Target> {
-    let describe = |segments: &[usize]| {
-        let segment = net.segments()[segments[0]];
-        let name = net.member_name(SegmentId::new(segments[0]));
-        match segment.member {
-            Member::Cable(cable) if segments.len() == 1 && net.cables()[cable.index()].segments.len() > 1 => {
-                format!(
-                    "{name} ({}-{})",
-                    net.node_name(segment.ends[0]),
-                    net.node_name(segment.ends[1])
-                )
-            }
-            _ => name.to_owned(),
-        }
-    };
-    (parts.families.iter().zip(&found.means))
-        .map(|(family, mean)| Target {
-            member: describe(&family.segments),
-            is_mean: family.segments.len() > 1,
-            wanted: family.wanted,
-            found: *mean,
-            met: (mean / family.wanted - 1.0).abs() <= MET,
-        })
-        .collect()
-}
-
-/// Says what the wanted tensions would leave at the nodes, and what balances nearest to them.
-fn unmet(net: &Net, parts: &Parts, search: &Search<'_, '_>, found: &Densities) -> ShapeError {
-    let point = &found.point;
-    let mut nodal = vec![Vector3::zeros(); net.nodes().len()];
-    for (family, mean) in parts.families.iter().zip(&found.means) {
-        for &e in &family.segments {
-            let more = point.axial_forces[e] * (family.wanted / mean - 1.0);
-            let [i, j] = net.segments()[e].ends.map(NodeId::index);
-            nodal[i] += point.chords[e] * (more / point.lengths[e]);
-            nodal[j] -= point.chords[e] * (more / point.lengths[e]);
-        }
-    }
-    let dofs = search.structure.dofs();
-    let forces = (0..net.nodes().len())
-        .map(|n| {
-            let free = dofs.directions(NodeId::new(n));
-            (NodeId::new(n), free.iter().map(|d| d * d.dot(&nodal[n])).sum())
-        })
-        .collect();
-    let largest = point.axial_forces.iter().fold(0.0, |m: f64, n| m.max(n.abs()));
-    ShapeError::TargetsUnmet {
-        targets: targets(net, parts, found),
-        left: forces_left(net, &point.positions, forces, MET * largest),
-        rank: found.rank,
-    }
-}
-
 impl Shape {
-    fn into_raw(self, net: &Net, parts: &Parts, iterations: u32) -> Result<RawShape, ShapeError> {
+    fn into_raw(self, net: &Net, parts: &Parts) -> Result<RawShape, ShapeError> {
         let point = &self.densities.point;
         let largest = point.axial_forces.iter().fold(0.0, |m: f64, n| m.max(n.abs()));
         for (index, segment) in net.segments().iter().enumerate() {
@@ -333,11 +365,12 @@ impl Shape {
         };
         Ok(RawShape {
             taut_given_lengths: (0..parts.of.len()).filter(taut).map(SegmentId::new).collect(),
-            targets: targets(net, parts, &self.densities),
+            targets: self.targets,
+            unmet: self.unmet,
             positions: self.densities.point.positions,
             axial_forces: self.densities.point.axial_forces,
             unstressed: self.densities.point.unstressed,
-            iterations,
+            iterations: self.iterations,
             balance: self.balance,
         })
     }

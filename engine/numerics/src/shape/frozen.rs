@@ -54,6 +54,7 @@ pub(super) fn find(
                 way: solution.way,
                 iterations,
                 targets: Vec::new(),
+                unmet: None,
                 balance: None,
                 taut_given_lengths: Vec::new(),
                 imbalance: 0.0,

@@ -57,6 +57,7 @@ pub(super) fn finish(
         way: Way::ForceDensities,
         iterations: raw.iterations,
         targets: raw.targets,
+        unmet: raw.unmet,
         balance: raw.balance,
         taut_given_lengths: raw.taut_given_lengths,
         imbalance: 0.0,

@@ -3,8 +3,8 @@
 use nalgebra::Vector3;
 
 use super::ShapeError;
-use crate::load::{Action, Load, Scope};
-use crate::model::Net;
+use crate::load::{Action, Load, Scope, Surface, ice_per_length};
+use crate::model::{Area, Net, SegmentId};
 
 /// Dead loads, apart by what they depend on.
 #[derive(Clone, Debug)]
@@ -15,7 +15,13 @@ pub(super) struct ShapeLoads {
     pub(super) per_length: Vec<Vector3<f64>>,
     /// Force per length on plan on every segment (N/m).
     pub(super) per_plan_length: Vec<Vector3<f64>>,
-    /// Whether any segment carries a load that depends on its length.
+    /// Force per area of every panel (N/m²); empty where none has any.
+    pub(super) per_area: Vec<Vector3<f64>>,
+    /// Force per area on plan of every panel (N/m²); empty where none has any.
+    pub(super) per_plan_area: Vec<Vector3<f64>>,
+    /// Loads on areas on plan (N/m²), of which panels are to be told.
+    on_areas: Vec<(Vec<Area>, Vector3<f64>)>,
+    /// Whether anything carries a load that depends on lengths or areas.
     pub(super) depend_on_lengths: bool,
 }
 
@@ -26,6 +32,9 @@ impl ShapeLoads {
             nodal: vec![Vector3::zeros(); net.nodes().len()],
             per_length: vec![Vector3::zeros(); net.segments().len()],
             per_plan_length: vec![Vector3::zeros(); net.segments().len()],
+            per_area: Vec::new(),
+            per_plan_area: Vec::new(),
+            on_areas: Vec::new(),
             depend_on_lengths: false,
         }
     }
@@ -41,8 +50,25 @@ impl ShapeLoads {
             }
         }
         let loaded = |forces: &[Vector3<f64>]| forces.iter().any(|f| *f != Vector3::zeros());
-        loads.depend_on_lengths = loaded(&loads.per_length) || loaded(&loads.per_plan_length);
+        loads.depend_on_lengths = loaded(&loads.per_length)
+            || loaded(&loads.per_plan_length)
+            || loaded(&loads.per_area)
+            || !loads.on_areas.is_empty();
         Ok(loads)
+    }
+
+    /// Gives loads on zones to the panels whose centres lie in them at `positions` (m). The search keeps them there.
+    pub(super) fn place(&mut self, net: &Net, positions: &[Vector3<f64>]) {
+        if self.on_areas.is_empty() {
+            return;
+        }
+        let surface = Surface::new(net, positions);
+        self.per_plan_area = vec![Vector3::zeros(); net.panels().len()];
+        for (on, force) in &self.on_areas {
+            for panel in surface.panels_of(on) {
+                self.per_plan_area[panel] += force;
+            }
+        }
     }
 
     fn add(&mut self, net: &Net, load: &Load) -> Result<(), &'static str> {
@@ -59,9 +85,36 @@ impl ShapeLoads {
                 for (force, node) in self.nodal.iter_mut().zip(net.nodes()) {
                     *force += node.attached_mass * gravity;
                 }
+                for skin in net.skins().iter().filter(|skin| skin.mass_per_area > 0.0) {
+                    self.per_area.resize(net.panels().len(), Vector3::zeros());
+                    for panel in &skin.panels {
+                        self.per_area[*panel] += skin.mass_per_area * gravity;
+                    }
+                }
             }
             Load::PerUnstressedLength { scope, force } => on(&mut self.per_length, scope, force),
             Load::PerPlanLength { scope, force } => on(&mut self.per_plan_length, scope, force),
+            Load::Ice {
+                scope,
+                thickness,
+                density,
+                gravity,
+            } => {
+                let all: Vec<_> = (0..net.segments().len()).map(SegmentId::new).collect();
+                let list = match scope {
+                    Scope::All => &all,
+                    Scope::Segments(list) => list,
+                };
+                for segment in list.iter().copied().map(SegmentId::index) {
+                    let mass = ice_per_length(&net.segments()[segment].section, *thickness, *density);
+                    self.per_length[segment] += mass * gravity;
+                }
+            }
+            Load::OnPlan { on, pressure } => {
+                self.on_areas.push((on.clone(), Vector3::new(0.0, 0.0, -pressure)));
+            }
+            Load::OnSurface { .. } => return Err("pressure that follows the surface"),
+            Load::WindOnRopes { .. } => return Err("wind on ropes"),
             Load::Temperature { .. } => return Err("change of temperature"),
             Load::SupportMovement { .. } => return Err("support movement"),
             Load::PrestressShare { .. } => return Err("change of prestress"),

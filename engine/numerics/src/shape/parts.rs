@@ -1,5 +1,6 @@
 //! What the rules make of each segment, and the families whose force density is sought.
 
+use super::given::Adjustable;
 use super::{Prestress, PrestressRule, ShapeError};
 use crate::element::Bar;
 use crate::model::{AxialLaw, Net, NodeId};
@@ -17,13 +18,48 @@ pub(super) enum Part {
     Balance,
 }
 
-/// Segments with one force density in common and a wanted mean tension.
+/// Segments with one force density in common, which is sought.
 #[derive(Clone, Debug, PartialEq)]
 pub(super) struct Family {
     /// Its segments.
     pub(super) segments: Vec<usize>,
-    /// Wanted mean of their axial forces (N), not zero.
-    pub(super) wanted: f64,
+    /// What decides it.
+    pub(super) sought: Sought,
+}
+
+/// What decides the force density of a family.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub(super) enum Sought {
+    /// A wanted mean of its axial forces (N), not zero.
+    Mean(f64),
+    /// Targets elsewhere, from a start and within bounds.
+    Targets(Adjustable),
+}
+
+impl Family {
+    /// Wanted mean of the axial forces (N), if any.
+    pub(super) fn wanted(&self) -> Option<f64> {
+        match self.sought {
+            Sought::Mean(wanted) => Some(wanted),
+            Sought::Targets(_) => None,
+        }
+    }
+
+    /// Force density that the rules give to start from (N/m), if they do.
+    pub(super) fn given_density(&self) -> Option<f64> {
+        match self.sought {
+            Sought::Mean(_) => None,
+            Sought::Targets(given) => Some(given.density),
+        }
+    }
+
+    /// Least and largest size of the force density (N/m).
+    pub(super) fn bounds(&self) -> (f64, f64) {
+        match self.sought {
+            Sought::Mean(_) => (0.0, f64::INFINITY),
+            Sought::Targets(given) => (given.least, given.most),
+        }
+    }
 }
 
 /// The rules, sorted.
@@ -31,7 +67,8 @@ pub(super) struct Family {
 pub(super) struct Parts {
     /// One entry a segment.
     pub(super) of: Vec<Part>,
-    /// Families, those of mean tensions first, then one for each segment with a tension of its own.
+    /// Families, those of mean tensions first, then those for targets to decide, then one for each segment with a tension
+    /// of its own.
     pub(super) families: Vec<Family>,
 }
 
@@ -48,9 +85,14 @@ impl Parts {
             .iter()
             .map(|wanted| Family {
                 segments: Vec::new(),
-                wanted: *wanted,
+                sought: Sought::Mean(*wanted),
             })
             .collect();
+        let n_means = families.len();
+        families.extend(prestress.adjustables.iter().map(|given| Family {
+            segments: Vec::new(),
+            sought: Sought::Targets(*given),
+        }));
         let mut of = Vec::with_capacity(prestress.rules.len());
         for (index, (rule, segment)) in prestress.rules.iter().zip(net.segments()).enumerate() {
             let bearable = |force: f64| force.is_finite() && (force >= 0.0 || segment.law == AxialLaw::TwoWay);
@@ -62,7 +104,7 @@ impl Parts {
                 PrestressRule::Tension(n) if bearable(n) => {
                     families.push(Family {
                         segments: vec![index],
-                        wanted: n,
+                        sought: Sought::Mean(n),
                     });
                     Part::Family(families.len() - 1)
                 }
@@ -78,6 +120,15 @@ impl Parts {
                         families[family].segments.push(index);
                         Part::Family(family)
                     }
+                }
+                PrestressRule::Adjustable(family) => {
+                    let given = prestress.adjustables[family];
+                    let within = given.least >= 0.0 && (given.least..=given.most).contains(&given.density.abs());
+                    if given.density == 0.0 || !bearable(given.density) || !within {
+                        return Err(bad(index, "adjustable force density (N/m)", given.density));
+                    }
+                    families[n_means + family].segments.push(index);
+                    Part::Family(n_means + family)
                 }
                 PrestressRule::UnstressedLength(l0) if l0.is_finite() && l0 > 0.0 => {
                     Part::Elastic(Bar::new(segment.law, segment.section.axial_stiffness, l0, 0.0))
@@ -106,6 +157,20 @@ impl Parts {
     /// Whether every member has a given unstressed length, as in a frozen net.
     pub(super) fn all_elastic(&self) -> bool {
         self.of.iter().all(|part| matches!(part, Part::Elastic(_)))
+    }
+
+    /// Sign of the force that a segment can have by its rule; zero where it has none.
+    pub(super) fn sign(&self, segment: usize) -> f64 {
+        match self.of[segment] {
+            Part::Density(0.0) => 0.0,
+            Part::Density(q) => q.signum(),
+            Part::Family(family) => match self.families[family].sought {
+                Sought::Mean(wanted) => wanted.signum(),
+                Sought::Targets(given) => given.density.signum(),
+            },
+            // A strut of given length may come to either.
+            Part::Elastic(_) | Part::Balance => 1.0,
+        }
     }
 
     /// Segments left to balance.

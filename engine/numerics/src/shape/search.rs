@@ -1,11 +1,12 @@
-//! Positions that balance given force densities, elastic members of given length and loads that depend on lengths.
+//! Positions that balance given force densities, elastic members of given length and loads that depend on lengths and areas.
 //!
 //! ```text
 //! r(x) = p(x) − Σ f_e − S (x − rest) = 0
 //! f_e = q_e d_e                       force density q, given or for the time being
 //! f_e = T(l_e) n_e                    member of given unstressed length
 //! f_e = N_e n_e                       member left to balance, N as last found
-//! p   = p0 + ½ Σ (w L0 + v plan)      L0 = l / (1 + N/EA), plan = length in the x-y plane
+//! p   = p0 + ½ Σ (w L0 + v plan) + Σ (u A)_corner    L0 = l / (1 + N/EA), plan = length in the x-y plane,
+//!                                     A = area of a panel, or its area on plan
 //! ```
 //!
 //! The matrix `K` of the forces is symmetric; the part `P` of loads that depend on lengths is not, and small. Systems
@@ -18,6 +19,8 @@ use nalgebra::{Matrix3, Vector3};
 use super::ShapeError;
 use super::loads::ShapeLoads;
 use super::parts::{Part, Parts};
+use super::rows::Rows;
+use super::sensitivity::Side;
 use crate::assembly::Structure;
 use crate::element::axial_block;
 use crate::equilibrium::linear::Factor;
@@ -50,7 +53,7 @@ pub(super) struct Point {
     pub(super) out_of_balance: Vec<Vector3<f64>>,
     residual: Vec<f64>,
     worst: (f64, Option<NodeId>),
-    largest_force: f64,
+    pub(super) largest_force: f64,
 }
 
 /// The search and its room.
@@ -64,6 +67,10 @@ pub(super) struct Search<'a, 'o> {
     pub(super) iterations: u32,
     pub(super) factor: Factor,
     pub(super) values: Vec<f64>,
+    /// Targets beside wanted tensions.
+    pub(super) rows: Rows,
+    /// An equation that is left out for the time being.
+    pub(super) dropped: Option<usize>,
     /// Densities of the families (N/m) whose stiffness is factorised, where nothing else decides the stiffness.
     factorised_for: Option<Vec<f64>>,
     observe: &'o mut Observer<'o>,
@@ -86,6 +93,8 @@ impl<'a, 'o> Search<'a, 'o> {
             iterations: 0,
             factor: analysis.new_factor(),
             values: vec![0.0; structure.pattern().n_entries()],
+            rows: Rows::default(),
+            dropped: None,
             factorised_for: None,
             observe,
         }
@@ -166,6 +175,7 @@ impl<'a, 'o> Search<'a, 'o> {
             point.axial_forces.push(axial);
             point.unstressed.push(unstressed);
         }
+        self.loads.add_on_panels(net, &mut point);
         for elastic in net.elastic_supports() {
             for (row, node) in elastic.nodes().iter().enumerate() {
                 let force: Vector3<f64> = (elastic.nodes().iter().zip(elastic.rest()).enumerate())
@@ -274,7 +284,7 @@ impl<'a, 'o> Search<'a, 'o> {
                 return Ok(point);
             }
             self.factorise(&point, family_densities, point.worst.0)?;
-            let movement = self.solve(&point, point.residual.clone());
+            let movement = self.solve(&point, point.residual.clone(), Side::Plain);
             if movement.iter().any(|m| !m.is_finite()) {
                 return Err(self.singular(&movement));
             }

@@ -8,4 +8,5 @@ mod held;
 mod nets;
 mod properties;
 mod saddle;
+mod special;
 mod struts;

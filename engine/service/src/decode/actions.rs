@@ -4,19 +4,30 @@ use nalgebra::Vector3;
 use ropewalk_api::ropewalk::v1;
 use ropewalk_api::ropewalk::v1::load::Kind;
 use ropewalk_numerics::load::{Action, Load, Scope as Segments};
-use ropewalk_numerics::model::{NodeId, SegmentId};
+use ropewalk_numerics::model::{Area, NodeId, SegmentId};
 
 use super::findings::{Findings, Path};
 use super::names::{Names, Thing};
 use super::net::NetDraft;
-use super::numbers::{FORCE, FORCE_PER_LENGTH, MOVEMENT, Of, PRESTRESS_SHARE, TEMPERATURE_CHANGE};
+use super::numbers::{
+    DRAG_COEFFICIENT, FORCE, FORCE_PER_LENGTH, ICE_DENSITY, ICE_THICKNESS, MOVEMENT, Of, PRESSURE,
+    PRESSURE_COEFFICIENT, PRESTRESS_SHARE, TEMPERATURE_CHANGE, WIND_PRESSURE,
+};
 use super::reasons;
-use super::scope::{Allowed, CABLES, MEMBERS, NODES, Scopes};
+use super::resolved::Resolved;
+use super::scope::{AREAS, Allowed, CABLES, MEMBERS, NODES, Scopes};
+use super::sections::Sections;
 use super::supports::Supports;
-use crate::words::{Quoted, rounded};
+use crate::words::{Quoted, number, quoted_list, rounded};
 
 /// Movement along a direction that nothing holds, over the whole movement, that still counts as rounding.
 const ROUNDING: f64 = 1e-9;
+/// Density of clear ice (kg/m³), common practice.
+const ICE: f64 = 900.0;
+/// Pressures of wind and snow outside these are doubted (Pa): snow on high mountains has some 30 kPa.
+const PRESSURES: (f64, f64) = (5.0, 50e3);
+/// Ice thicker than this is doubted (m).
+const THICK_ICE: f64 = 0.3;
 
 /// Actions as read.
 #[derive(Debug)]
@@ -29,12 +40,15 @@ pub(crate) struct Actions<'a> {
 }
 
 impl<'a> Actions<'a> {
+    #[allow(clippy::too_many_arguments, reason = "what was read before, and where findings go")]
     pub(crate) fn read(
         messages: &'a [v1::Action],
         net: &NetDraft<'a>,
+        sections: &Sections<'a>,
         scopes: &Scopes,
         supports: &Supports,
         findings: &mut Findings,
+        resolved: &mut Resolved,
     ) -> Self {
         let at = Path::root("actions");
         let mut actions = Self {
@@ -59,8 +73,10 @@ impl<'a> Actions<'a> {
             let mut reader = Reader {
                 action: &message.id,
                 net,
+                sections,
                 scopes,
                 supports,
+                resolved,
                 shares: &mut actions.shares[index],
                 findings,
             };
@@ -82,7 +98,15 @@ impl<'a> Actions<'a> {
             Some(Kind::Move(_)) => Some("movement of a support"),
             Some(Kind::Prestress(_)) => Some("change of prestress"),
             Some(Kind::OnSurface(_)) => Some("pressure that follows the surface"),
-            Some(Kind::Nodes(_) | Kind::OwnWeight(_) | Kind::OnLength(_) | Kind::OnPlanLength(_) | Kind::OnPlan(_))
+            Some(Kind::WindOnRopes(_)) => Some("wind on ropes"),
+            Some(
+                Kind::Nodes(_)
+                | Kind::OwnWeight(_)
+                | Kind::OnLength(_)
+                | Kind::OnPlanLength(_)
+                | Kind::OnPlan(_)
+                | Kind::Ice(_),
+            )
             | None => None,
         })
     }
@@ -100,8 +124,10 @@ impl<'a> Actions<'a> {
 struct Reader<'r, 'a> {
     action: &'a str,
     net: &'r NetDraft<'a>,
+    sections: &'r Sections<'a>,
     scopes: &'r Scopes,
     supports: &'r Supports,
+    resolved: &'r mut Resolved,
     shares: &'r mut Vec<(Vec<usize>, f64)>,
     findings: &'r mut Findings,
 }
@@ -144,15 +170,18 @@ impl Reader<'_, '_> {
             }
             Some(Kind::Move(load)) => self.movement(load, &at.field("move")),
             Some(Kind::Prestress(load)) => self.share(load, &at.field("prestress")),
-            // Refused by name elsewhere.
-            Some(Kind::OnPlan(_) | Kind::OnSurface(_)) => None,
+            Some(Kind::OnPlan(load)) => self.on_plan(load, &at.field("on_plan")),
+            Some(Kind::OnSurface(load)) => self.on_surface(load, &at.field("on_surface")),
+            Some(Kind::WindOnRopes(load)) => self.wind_on_ropes(load, &at.field("wind_on_ropes")),
+            Some(Kind::Ice(load)) => self.ice(load, &at.field("ice")),
             None => {
                 self.findings.error(
                     reasons::MISSING,
                     at,
                     self.action,
                     format!("a load of action {} says not what acts", Quoted(self.action)),
-                    "give one of nodes, own_weight, on_length, on_plan_length, temperature, move, prestress",
+                    "give one of nodes, own_weight, on_length, on_plan_length, on_plan, on_surface, wind_on_ropes, ice, temperature, \
+                     move, prestress",
                 );
                 None
             }
@@ -171,6 +200,203 @@ impl Reader<'_, '_> {
             nodes: scope.nodes().map(NodeId::new).collect(),
             force: force?,
         })
+    }
+
+    fn on_plan(&mut self, load: &v1::PlanLoad, at: &Path<'_>) -> Option<Load> {
+        let of = Of::new("action", self.action);
+        let field = at.field("pressure_pa");
+        let pressure = self.findings.number(&field, of, &PRESSURE, load.pressure_pa);
+        self.doubt_pressure(load.pressure_pa, &field);
+        let on = at.field("on");
+        if self.covers_nothing(&load.on, &on) {
+            return None;
+        }
+        let scope = self.scopes.of(self.net, &load.on, &on, AREAS, self.findings);
+        Some(Load::OnPlan {
+            on: scope.areas().collect(),
+            pressure: pressure?,
+        })
+    }
+
+    fn on_surface(&mut self, load: &v1::SurfaceLoad, at: &Path<'_>) -> Option<Load> {
+        let of = Of::new("action", self.action);
+        let field = at.field("pressure_pa");
+        let pressure = self.findings.number(&field, of, &PRESSURE, load.pressure_pa);
+        self.doubt_pressure(load.pressure_pa, &field);
+        let list = at.field("coefficients");
+        let mut coefficients = Vec::with_capacity(load.coefficients.len());
+        let mut complete = true;
+        for (name, value) in &load.coefficients {
+            let at = list.key(name);
+            let value = self.findings.number(&at, of, &PRESSURE_COEFFICIENT, *value);
+            let area = match self.net.names.find(self.findings, &at, "zone", name) {
+                Some(Thing::Zone(zone)) => Some(Area::Zone(zone)),
+                Some(Thing::Skin(skin)) => Some(Area::Skin(skin)),
+                Some(other) => {
+                    self.findings.error(
+                        reasons::WRONG_KIND,
+                        &at,
+                        name,
+                        format!(
+                            "{} is a {}, and coefficients are of zones and skins",
+                            Quoted(name),
+                            other.kind()
+                        ),
+                        "name zones or skins",
+                    );
+                    None
+                }
+                None => None,
+            };
+            complete &= area.is_some() && value.is_some();
+            coefficients.extend(area.zip(value));
+        }
+        // Brief order: the first zone around a panel is the one that comes first there.
+        coefficients.sort_by_key(|(area, _)| match area {
+            Area::Zone(zone) => (0, *zone),
+            Area::Skin(skin) => (1, *skin),
+        });
+        let elsewhere = match load.elsewhere {
+            Some(value) => {
+                let value = self
+                    .findings
+                    .number(&at.field("elsewhere"), of, &PRESSURE_COEFFICIENT, value);
+                complete &= value.is_some();
+                value
+            }
+            None => None,
+        };
+        let message = &self.net.message;
+        if (load.coefficients.is_empty() && load.elsewhere.is_none())
+            || (message.skins.is_empty() && message.panels.is_empty())
+        {
+            self.findings.error(
+                reasons::COVERS_NOTHING,
+                &list,
+                self.action,
+                format!("a pressure of action {} acts on nothing", Quoted(self.action)),
+                "give coefficients of zones or skins, or elsewhere, in a net that has skins",
+            );
+            return None;
+        }
+        Some(Load::OnSurface {
+            pressure: pressure?,
+            coefficients: complete.then_some(coefficients)?,
+            elsewhere,
+        })
+    }
+
+    fn wind_on_ropes(&mut self, load: &v1::WindOnRopes, at: &Path<'_>) -> Option<Load> {
+        let of = Of::new("action", self.action);
+        let field = at.field("pressure_pa");
+        let pressure = self.findings.number(&field, of, &WIND_PRESSURE, load.pressure_pa);
+        self.doubt_pressure(load.pressure_pa, &field);
+        let along = self.findings.direction(&at.field("along"), of, &load.along);
+        let field = at.field("drag_coefficient");
+        let drag = self
+            .findings
+            .number(&field, of, &DRAG_COEFFICIENT, load.drag_coefficient);
+        let scope = self.segments_with_diameter(&load.on, at);
+        Some(Load::WindOnRopes {
+            scope: scope?,
+            pressure: pressure?,
+            along: along?,
+            drag_coefficient: drag?,
+        })
+    }
+
+    fn ice(&mut self, load: &v1::IceLoad, at: &Path<'_>) -> Option<Load> {
+        let of = Of::new("action", self.action);
+        let field = at.field("thickness_m");
+        let thickness = self.findings.number(&field, of, &ICE_THICKNESS, load.thickness_m);
+        if let Some(thickness) = thickness.filter(|thickness| *thickness > THICK_ICE) {
+            self.findings
+                .doubt(
+                    reasons::UNIT_SLIP,
+                    &field,
+                    self.action,
+                    format!("{of}: the ice is {} m thick: was it in mm?", number(thickness)),
+                    "check the unit, or accept this doubt",
+                )
+                .value(number(thickness));
+        }
+        let field = at.field("density_kg_per_m3");
+        if load.density_kg_per_m3.is_none() {
+            self.resolved.left_out(&field, number(ICE));
+        }
+        let density = self
+            .findings
+            .number_or(&field, of, &ICE_DENSITY, load.density_kg_per_m3, ICE);
+        let scope = self.segments_with_diameter(&load.on, at);
+        Some(Load::Ice {
+            scope: scope?,
+            thickness: thickness?,
+            density: density?,
+            gravity: Vector3::new(0.0, 0.0, -self.net.gravity),
+        })
+    }
+
+    /// Segments that a list covers; tells sections among them that have no diameter.
+    fn segments_with_diameter(&mut self, on: &[String], at: &Path<'_>) -> Option<Segments> {
+        let scope = self.segments(on, at, MEMBERS, None)?;
+        let Segments::Segments(segments) = &scope else {
+            return Some(scope);
+        };
+        let sections = segments
+            .iter()
+            .filter_map(|segment| self.sections.of_segment[segment.index()]);
+        let bare = sections.map(|(section, _)| section);
+        let mut bare: Vec<usize> = bare
+            .filter(|section| self.sections.list[*section].message.diameter_m.is_none())
+            .collect();
+        bare.sort_unstable();
+        bare.dedup();
+        let ids: Vec<&str> = (bare.iter())
+            .map(|section| self.sections.list[*section].message.id.as_str())
+            .collect();
+        if let Some(first) = ids.first() {
+            self.findings
+                .error(
+                    reasons::NO_DIAMETER,
+                    &at.field("on"),
+                    first,
+                    format!(
+                        "action {} needs the diameter of section {}",
+                        Quoted(self.action),
+                        quoted_list(ids.iter().copied())
+                    ),
+                    "give diameter_m of the section, or name other members",
+                )
+                .value(ids.len());
+            return None;
+        }
+        Some(scope)
+    }
+
+    /// Doubts pressures that no wind and no snow has.
+    fn doubt_pressure(&mut self, pressure: f64, at: &Path<'_>) {
+        let size = pressure.abs();
+        if size == 0.0 || !size.is_finite() || (PRESSURES.0..=PRESSURES.1).contains(&size) {
+            return;
+        }
+        let hint = if size < 1.0 * PRESSURES.0 {
+            "was it in kPa?"
+        } else {
+            "was it in Pa already and multiplied again?"
+        };
+        self.findings
+            .doubt(
+                reasons::UNIT_SLIP,
+                at,
+                self.action,
+                format!(
+                    "action {}: the pressure is {} Pa: {hint}",
+                    Quoted(self.action),
+                    number(pressure)
+                ),
+                "check the unit, or accept this doubt",
+            )
+            .value(number(pressure));
     }
 
     fn force_per_length(&mut self, force: &[f64], at: &Path<'_>) -> Option<Vector3<f64>> {

@@ -1,21 +1,25 @@
 //! Cases: which actions act together, and in words.
 
-use std::collections::HashSet;
+use std::collections::BTreeMap;
 
 use prost::Message as _;
 use ropewalk_api::ropewalk::v1;
 use ropewalk_api::ropewalk::v1::load::Kind;
-use ropewalk_numerics::brief::CaseGiven;
+use ropewalk_numerics::brief::{CaseGiven, DesignEffect, LoadPath};
 use ropewalk_numerics::equilibrium::LoadSteps;
+use ropewalk_numerics::model::Member;
 
 use super::actions::Actions;
+use super::combinations::{Context, members};
+use super::factors::Factors;
 use super::findings::{Findings, Path, is_id};
 use super::names::{Names, bad_id};
 use super::net::NetDraft;
-use super::numbers::{FACTOR, LOAD_STEPS, Of};
+use super::numbers::{FACTOR, LOAD_STEPS, Of, PATH_END, PATH_STEPS};
 use super::reasons;
+use super::resolved::Resolved;
 use super::scope::tell_repeated;
-use crate::words::{Quoted, number, quoted_list, shown};
+use crate::words::{Quoted, number, quoted_list, rounded, shown};
 
 /// Name of the reference state in results.
 pub(crate) const REFERENCE: &str = "reference";
@@ -23,6 +27,8 @@ pub(crate) const REFERENCE: &str = "reference";
 pub(crate) const ENVELOPE: &str = "envelope";
 /// Names that cases and sets must not have.
 const RESERVED: [&str; 3] = [REFERENCE, "governing", ENVELOPE];
+const PATH_END_DEFAULT: f64 = 1.5;
+const PATH_STEPS_DEFAULT: u32 = 15;
 /// Bytes of a case: its beginning is told in one message.
 pub(super) const LARGEST: usize = 96 * 1024;
 
@@ -30,21 +36,37 @@ pub(super) const LARGEST: usize = 96 * 1024;
 #[derive(Debug)]
 pub(crate) struct Cases<'a> {
     pub(crate) messages: &'a [v1::Case],
+    /// Those written by hand, then those that rules make.
     pub(crate) list: Vec<CaseGiven>,
+    /// Design effects that rules make.
+    pub(crate) effects: Vec<DesignEffect>,
     names: Names<'a, usize>,
     sets: Names<'a, ()>,
-    /// Sets that only combinations fill, which are not served.
-    not_served: HashSet<&'a str>,
+    /// Ids that rules made, of cases and of effects.
+    made: BTreeMap<String, Made>,
+}
+
+/// What an id that a rule made stands for.
+#[derive(Clone, Copy, Debug)]
+enum Made {
+    Case(usize),
+    Effect(usize),
 }
 
 impl<'a> Cases<'a> {
-    pub(crate) fn read(brief: &'a v1::Brief, actions: &Actions<'a>, findings: &mut Findings) -> Self {
+    pub(crate) fn read(
+        brief: &'a v1::Brief,
+        context: &Context<'_, 'a>,
+        findings: &mut Findings,
+        resolved: &mut Resolved,
+    ) -> Self {
         let mut cases = Self {
             messages: &brief.cases,
             list: Vec::with_capacity(brief.cases.len()),
+            effects: Vec::new(),
             names: Names::new("cases"),
             sets: Names::new("sets"),
-            not_served: brief.combinations.iter().map(|rule| rule.set.as_str()).collect(),
+            made: BTreeMap::new(),
         };
         let list = Path::root("cases");
         for (index, case) in brief.cases.iter().enumerate() {
@@ -54,7 +76,7 @@ impl<'a> Cases<'a> {
         for (index, case) in brief.cases.iter().enumerate() {
             let at = list.element(&case.id, index);
             cases.read_sets(case, &at, findings);
-            let factors = read_factors(case, &at, actions, findings);
+            let factors = read_factors(case, &at, context.actions, findings);
             let steps_at = at.field("load_steps");
             let of = Of::new("case", &case.id);
             let steps = case.load_steps;
@@ -80,6 +102,9 @@ impl<'a> Cases<'a> {
                 sets: case.sets.clone(),
                 factors,
                 load_steps: load_steps.map(LoadSteps::Equal),
+                removed: read_removed(case, &at, context, findings),
+                path: read_path(case, &at, findings, resolved),
+                prestress_share: 0.0,
             });
         }
         cases
@@ -95,48 +120,126 @@ impl<'a> Cases<'a> {
                 continue;
             }
             reserved(set, &at, findings);
-            if self.names.get(set).is_some() {
-                findings
-                    .error(
-                        reasons::DUPLICATE_ID,
-                        &at,
-                        set,
-                        format!(
-                            "{} is a case and a set: checks could not tell which is meant",
-                            Quoted(set)
-                        ),
-                        "give the set another name than any case",
-                    )
-                    .value(set);
-            }
-            self.sets.insert(set, ());
+            self.add_set(set, &at, findings);
         }
     }
 
-    /// Cases that a list of sets and cases names, in brief order; all of them where it is empty.
-    pub(crate) fn named(&self, over: &[String], field: &Path<'_>, findings: &mut Findings) -> Option<Vec<usize>> {
-        tell_repeated(over, field, findings);
-        if over.is_empty() {
-            return Some((0..self.messages.len()).collect());
+    pub(super) fn add_set(&mut self, set: &'a str, at: &Path<'_>, findings: &mut Findings) {
+        if self.names.get(set).is_some() {
+            case_and_set(set, at, findings);
         }
-        let mut wanted = vec![false; self.messages.len()];
+        self.sets.insert(set, ());
+    }
+
+    /// Adds the id of a case that a rule makes.
+    pub(super) fn declare_made(&mut self, id: &str, case: usize, at: &Path<'_>, findings: &mut Findings) {
+        self.declare(id, Made::Case(case), at, findings);
+    }
+
+    /// Adds the id of the next design effect.
+    pub(super) fn declare_effect(&mut self, id: &str, at: &Path<'_>, findings: &mut Findings) {
+        self.declare(id, Made::Effect(self.effects.len()), at, findings);
+    }
+
+    fn declare(&mut self, id: &str, made: Made, at: &Path<'_>, findings: &mut Findings) {
+        let at = at.field("set");
+        if !is_id(id) {
+            bad_id(findings, &at, id);
+        } else if self.sets.get(id).is_some() {
+            case_and_set(id, &at, findings);
+        } else if self.names.get(id).is_some() || self.made.contains_key(id) {
+            findings
+                .error(
+                    reasons::DUPLICATE_ID,
+                    &at,
+                    id,
+                    format!(
+                        "this rule makes a case {}, and there is another with this id",
+                        Quoted(id)
+                    ),
+                    "give that case, or the set, another name",
+                )
+                .value(id);
+        } else {
+            self.made.insert(id.to_owned(), made);
+        }
+    }
+
+    /// Cases that a list of sets and cases names, in brief order; all of them where it is empty. Design effects that it
+    /// names are counted on from the last case; where it is empty, those that fill a set.
+    pub(crate) fn named(&self, over: &[String], field: &Path<'_>, findings: &mut Findings) -> Option<Vec<usize>> {
+        let n_cases = self.list.len();
+        let mut wanted = vec![over.is_empty(); n_cases + self.effects.len()];
+        if over.is_empty() {
+            for (wanted, effect) in wanted[n_cases..].iter_mut().zip(&self.effects) {
+                *wanted = !effect.sets.is_empty();
+            }
+        }
+        self.find(over, field, None, wanted, findings)
+    }
+
+    /// States that a list of sets, cases and the word `reference` names: whether the reference state is one of them, and
+    /// the cases in brief order; all of them where the list is empty. Design effects are no states.
+    pub(crate) fn states(
+        &self,
+        about: &[String],
+        field: &Path<'_>,
+        findings: &mut Findings,
+    ) -> Option<(bool, Vec<usize>)> {
+        let n_cases = self.list.len();
+        if about.is_empty() {
+            return Some((true, (0..n_cases).collect()));
+        }
+        let mut reference = false;
+        let wanted = vec![false; n_cases + self.effects.len()];
+        let cases = self.find(about, field, Some(&mut reference), wanted, findings);
+        cases.map(|mut cases| {
+            cases.retain(|case| *case < n_cases);
+            (reference, cases)
+        })
+    }
+
+    /// Cases and design effects that a list names beside those `wanted`, in brief order; `reference`: where the word may
+    /// stand, and is noted.
+    fn find(
+        &self,
+        over: &[String],
+        field: &Path<'_>,
+        mut reference: Option<&mut bool>,
+        mut wanted: Vec<bool>,
+        findings: &mut Findings,
+    ) -> Option<Vec<usize>> {
+        tell_repeated(over, field, findings);
+        let n_cases = self.list.len();
         let mut complete = true;
         for (number, name) in over.iter().enumerate() {
             let at = field.number(number);
-            if let Some(case) = self.names.get(name) {
+            if let Some(reference) = reference.as_deref_mut().filter(|_| name == REFERENCE) {
+                *reference = true;
+            } else if let Some(case) = self.names.get(name) {
                 wanted[case] = true;
+            } else if let Some(made) = self.made.get(name) {
+                wanted[match *made {
+                    Made::Case(case) => case,
+                    Made::Effect(effect) => n_cases + effect,
+                }] = true;
             } else if self.sets.get(name).is_some() {
-                for (case, message) in self.messages.iter().enumerate() {
-                    wanted[case] |= message.sets.contains(name);
+                let sets =
+                    (self.list.iter().map(|case| &case.sets)).chain(self.effects.iter().map(|effect| &effect.sets));
+                for (wanted, sets) in wanted.iter_mut().zip(sets) {
+                    *wanted |= sets.contains(name);
                 }
             } else {
                 complete = false;
-                if !self.not_served.contains(name.as_str()) {
-                    self.unknown(name, &at, findings);
-                }
+                self.unknown(name, &at, findings);
             }
         }
         complete.then(|| (0..wanted.len()).filter(|case| wanted[*case]).collect())
+    }
+
+    /// The case with a name; tells if there is none.
+    pub(crate) fn case(&self, name: &str, at: &Path<'_>, findings: &mut Findings) -> Option<usize> {
+        self.names.find(findings, at, "case", name)
     }
 
     fn unknown(&self, name: &str, at: &Path<'_>, findings: &mut Findings) {
@@ -151,16 +254,21 @@ impl<'a> Cases<'a> {
             return;
         }
         let mut both: Names<'_, ()> = Names::new("cases and sets");
-        for known in self.names.order().iter().chain(self.sets.order()) {
+        let made = self.made.keys().map(String::as_str);
+        for known in self.names.order().iter().chain(self.sets.order()).copied().chain(made) {
             both.insert(known, ());
         }
         both.unknown(findings, at, "set or case", name);
     }
 
     /// What the cases leave out or say twice.
-    pub(crate) fn doubts(&self, net: &NetDraft<'_>, actions: &Actions<'_>, under: &[usize], findings: &mut Findings) {
+    pub(crate) fn doubts(&self, context: &Context<'_, 'a>, factors: Option<&Factors<'a>>, findings: &mut Findings) {
+        let Context {
+            net, actions, under, ..
+        } = *context;
         let list = Path::root("cases");
-        for (index, case) in self.list.iter().enumerate() {
+        let by_hand = self.list.iter().take(self.messages.len());
+        for (index, case) in by_hand.enumerate() {
             let at = list.element(&case.name, index);
             for action in under {
                 if case.factors.iter().all(|(other, _)| other != action) {
@@ -183,6 +291,58 @@ impl<'a> Cases<'a> {
         self.own_weight(net, actions, findings);
         self.temperature(net, actions, findings);
         self.unused(actions, under, findings);
+        self.permanent(actions, under, factors, findings);
+    }
+
+    /// Permanent actions that no case takes as favourable, or none as they are.
+    fn permanent(
+        &self,
+        actions: &Actions<'_>,
+        under: &[usize],
+        factors: Option<&Factors<'_>>,
+        findings: &mut Findings,
+    ) {
+        let list = Path::root("actions");
+        for (action, message) in actions.messages.iter().enumerate() {
+            let is_permanent = factors.is_some_and(|factors| factors.is_permanent(action));
+            if !is_permanent && !under.contains(&action) {
+                continue;
+            }
+            let of_it = self.list.iter().flat_map(|case| &case.factors);
+            let of_it = of_it.filter(|(other, factor)| *other == action && *factor != 0.0);
+            let (least, largest) = of_it.fold((f64::INFINITY, f64::NEG_INFINITY), |(least, largest), (_, factor)| {
+                (least.min(*factor), largest.max(*factor))
+            });
+            let at = list.element(&message.id, action);
+            if largest < 1.0 && largest > f64::NEG_INFINITY {
+                findings
+                    .doubt(
+                        reasons::PERMANENT_BELOW_ONE,
+                        &at,
+                        &message.id,
+                        format!(
+                            "the permanent action {} has a factor below 1 in every case, {} at most",
+                            Quoted(&message.id),
+                            number(largest)
+                        ),
+                        "add cases in which it is adverse",
+                    )
+                    .value(number(largest));
+            } else if least > 1.0 && least < f64::INFINITY {
+                findings
+                    .doubt(
+                        reasons::NO_FAVOURABLE_CASE,
+                        &at,
+                        &message.id,
+                        format!(
+                            "the permanent action {} has a factor above 1 in every case: none shows least tension or uplift",
+                            Quoted(&message.id)
+                        ),
+                        "add cases in which it is favourable, with a factor of 1 or less",
+                    )
+                    .value(number(least));
+            }
+        }
     }
 
     /// Whether each action acts in some case.
@@ -202,7 +362,8 @@ impl<'a> Cases<'a> {
             .sections
             .iter()
             .any(|section| section.mass_kg_per_m.is_some_and(|mass| mass > 0.0))
-            || net.nodes.iter().any(|node| node.attached_mass > 0.0);
+            || net.nodes.iter().any(|node| node.attached_mass > 0.0)
+            || (net.message.skins.iter()).any(|skin| skin.mass_kg_per_m2.is_some_and(|mass| mass > 0.0));
         if let (Some(weight), false) = (weights.first(), mass) {
             let id = &actions.messages[*weight].id;
             let list = Path::root("actions");
@@ -215,7 +376,7 @@ impl<'a> Cases<'a> {
             );
         }
         let acting = self.acting(actions);
-        if self.messages.is_empty() || weights.iter().any(|weight| acting[*weight]) {
+        if self.list.is_empty() || weights.iter().any(|weight| acting[*weight]) {
             return;
         }
         if mass {
@@ -283,7 +444,59 @@ impl<'a> Cases<'a> {
     }
 }
 
-fn reserved(id: &str, at: &Path<'_>, findings: &mut Findings) {
+fn case_and_set(id: &str, at: &Path<'_>, findings: &mut Findings) {
+    findings
+        .error(
+            reasons::DUPLICATE_ID,
+            at,
+            id,
+            format!(
+                "{} is a case and a set: checks could not tell which is meant",
+                Quoted(id)
+            ),
+            "give the set another name than any case",
+        )
+        .value(id);
+}
+
+/// What a case takes out.
+fn read_removed(case: &v1::Case, at: &Path<'_>, context: &Context<'_, '_>, findings: &mut Findings) -> Vec<Member> {
+    let field = at.field("remove");
+    let members = members(&case.remove, &field, context, findings).unwrap_or_default();
+    let removed: Vec<Member> = members.iter().map(|(member, _)| *member).collect();
+    let all = context.net.cables.len() + context.net.struts.len();
+    if removed.len() == all && all > 0 {
+        findings.error(
+            reasons::REMOVES_ALL,
+            &field,
+            &case.id,
+            format!("case {} takes out every member of the net", Quoted(&case.id)),
+            "name fewer members",
+        );
+    }
+    removed
+}
+
+fn read_path(case: &v1::Case, at: &Path<'_>, findings: &mut Findings, resolved: &mut Resolved) -> Option<LoadPath> {
+    let given = case.path.as_ref()?;
+    let (at, of) = (at.field("path"), Of::new("case", &case.id));
+    let (end_at, steps_at) = (at.field("to_factor"), at.field("steps"));
+    if given.to_factor.is_none() {
+        resolved.left_out(&end_at, PATH_END_DEFAULT);
+    }
+    if given.steps.is_none() {
+        resolved.left_out(&steps_at, PATH_STEPS_DEFAULT);
+    }
+    let to_factor = findings.number_or(&end_at, of, &PATH_END, given.to_factor, PATH_END_DEFAULT);
+    let steps = given.steps.unwrap_or(PATH_STEPS_DEFAULT);
+    findings.number(&steps_at, of, &PATH_STEPS, f64::from(steps))?;
+    Some(LoadPath {
+        to_factor: to_factor?,
+        steps,
+    })
+}
+
+pub(super) fn reserved(id: &str, at: &Path<'_>, findings: &mut Findings) {
     if RESERVED.contains(&id) {
         findings
             .error(
@@ -331,16 +544,22 @@ fn read_factors(case: &v1::Case, at: &Path<'_>, actions: &Actions<'_>, findings:
     factors
 }
 
-/// Shares of prestress add up; what is left must pull.
-fn check_shares(case: &CaseGiven, at: &Path<'_>, net: &NetDraft<'_>, actions: &Actions<'_>, findings: &mut Findings) {
+/// Shares of prestress add up; what is left must pull. Answers whether it does not.
+pub(super) fn check_shares(
+    case: &CaseGiven,
+    at: &Path<'_>,
+    net: &NetDraft<'_>,
+    actions: &Actions<'_>,
+    findings: &mut Findings,
+) -> bool {
     if case
         .factors
         .iter()
         .all(|(action, _)| actions.shares[*action].is_empty())
     {
-        return;
+        return false;
     }
-    let mut left = vec![1.0_f64; net.cables.len()];
+    let mut left = vec![1.0 + case.prestress_share; net.cables.len()];
     for (action, factor) in &case.factors {
         for (cables, share) in &actions.shares[*action] {
             for cable in cables {
@@ -369,11 +588,16 @@ fn check_shares(case: &CaseGiven, at: &Path<'_>, net: &NetDraft<'_>, actions: &A
             )
             .value(number(least - 1.0));
     }
+    !gone.is_empty()
 }
 
-/// What acts in a case, in words: "1.35 self + 1.5 snow-west".
-pub(crate) fn in_words(case: &CaseGiven, actions: &[v1::Action]) -> String {
-    /// Actions that are written out.
+/// What acts in a case, in words: "1.35 self + 1.5 snow-west without gW1".
+pub(crate) fn in_words<'n>(
+    case: &CaseGiven,
+    actions: &[v1::Action],
+    member_name: &dyn Fn(Member) -> &'n str,
+) -> String {
+    /// Actions, and members taken out, that are written out.
     const WRITTEN_OUT: usize = 100;
     let mut text = String::new();
     for (count, (action, factor)) in case.factors.iter().take(WRITTEN_OUT).enumerate() {
@@ -394,6 +618,19 @@ pub(crate) fn in_words(case: &CaseGiven, actions: &[v1::Action]) -> String {
     }
     if text.is_empty() {
         text.push_str("nothing");
+    }
+    if case.prestress_share != 0.0 {
+        text.push_str(&format!(
+            ", prestress times {}",
+            rounded(1.0 + case.prestress_share, 12)
+        ));
+    }
+    for (count, member) in case.removed.iter().take(WRITTEN_OUT).enumerate() {
+        let before = if count == 0 { " without " } else { ", " };
+        text.push_str(&format!("{before}{}", shown(member_name(*member))));
+    }
+    if case.removed.len() > WRITTEN_OUT {
+        text.push_str(&format!(" and {} more", case.removed.len() - WRITTEN_OUT));
     }
     text
 }

@@ -1,15 +1,15 @@
 //! Checks: what is covered, over which cases.
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_api::ropewalk::v1::check::Kind;
 use ropewalk_numerics::brief::{Check, CheckKind};
-use ropewalk_numerics::model::{CableId, NodeId, StrutId};
+use ropewalk_numerics::model::{Area, CableId, NodeId, StrutId};
+use v1::check::Kind;
 
 use super::cases::Cases;
+use super::check_kinds;
 use super::findings::{Findings, Path};
 use super::names::Thing;
 use super::net::NetDraft;
-use super::numbers::{MOVEMENT_LIMIT, Of, PULL_LIMIT, Quantity, SAFETY_FACTOR, SHARE_OF_REFERENCE};
 use super::reasons;
 use super::resolved::Resolved;
 use super::scope::{ANYTHING, MEMBERS, NODES, Scope, Scopes};
@@ -34,7 +34,7 @@ pub(crate) fn read(
     context: &Context<'_, '_>,
     findings: &mut Findings,
     resolved: &mut Resolved,
-) -> Vec<Check> {
+) -> Vec<CheckDraft> {
     let list = Path::root("checks");
     if messages.len() > MOST {
         findings
@@ -63,6 +63,13 @@ pub(crate) fn read(
         .collect()
 }
 
+/// A check as read. Which nodes are at the corners of panels is known only when panels are.
+pub(crate) struct CheckDraft {
+    pub(crate) check: Check,
+    /// Skins and zones that it covers.
+    pub(crate) areas: Vec<Area>,
+}
+
 fn read_check(
     check: &v1::Check,
     number: usize,
@@ -70,7 +77,7 @@ fn read_check(
     context: &Context<'_, '_>,
     findings: &mut Findings,
     resolved: &mut Resolved,
-) -> Option<Check> {
+) -> Option<CheckDraft> {
     let over = at.field("over");
     if context.cases.messages.is_empty() && check.over.is_empty() {
         findings.error(
@@ -82,111 +89,85 @@ fn read_check(
         );
     }
     let cases = context.cases.named(&check.over, &over, findings);
-    let of = Of::new("check", "");
-    let mut limit = |kind: &'static str, field: &'static str, quantity: &Quantity, value: f64| {
-        findings.number(&at.field(kind).field(field), of, quantity, value)
+    let Some(given) = check.kind.as_ref() else {
+        findings.error(
+            reasons::MISSING,
+            at,
+            "",
+            format!("check {number} says not what is checked"),
+            "give one of safety, resistance, service_stress, construction_stress, slackness, buckling, movement, \
+             clearance, anchor_pull, clamp, saddle",
+        );
+        return None;
     };
-    let kind = match check.kind.as_ref() {
-        Some(Kind::Safety(safety)) => {
-            limit("safety", "factor", &SAFETY_FACTOR, safety.factor).map(|factor| CheckKind::Safety { factor })
-        }
-        Some(Kind::Slackness(slackness)) => {
-            let share = slackness.min_share_of_reference;
-            limit("slackness", "min_share_of_reference", &SHARE_OF_REFERENCE, share).map(|share| CheckKind::Slackness {
-                min_share_of_reference: share,
-            })
-        }
-        Some(Kind::Movement(movement)) => {
-            limit("movement", "limit_m", &MOVEMENT_LIMIT, movement.limit_m).map(|limit| CheckKind::Movement { limit })
-        }
-        Some(Kind::AnchorPull(pull)) => {
-            limit("anchor_pull", "limit_n", &PULL_LIMIT, pull.limit_n).map(|limit| CheckKind::AnchorPull { limit })
-        }
-        // Refused by name elsewhere.
-        Some(Kind::Resistance(_) | Kind::ServiceStress(_) | Kind::Buckling(_) | Kind::Clearance(_)) => return None,
-        None => {
-            findings.error(
-                reasons::MISSING,
-                at,
-                "",
-                format!("check {number} says not what is checked"),
-                "give one of safety, slackness, movement, anchor_pull",
-            );
-            return None;
-        }
-    };
+    // Refused by name elsewhere.
+    if matches!(given, Kind::Drainage(_)) {
+        return None;
+    }
+    let kind = check_kinds::read(given, at, context, findings, resolved);
     let mut read = Check {
         kind: kind.unwrap_or(CheckKind::Safety { factor: 1.0 }),
         cables: Vec::new(),
         struts: Vec::new(),
         nodes: Vec::new(),
+        panels: Vec::new(),
         cases: cases.unwrap_or_default(),
     };
-    cover(check, &mut read, at, context, findings, resolved);
-    tell_not_judgeable(check, &read, at, context, findings);
-    kind.map(|_| read)
+    let areas = cover(given, &check.on, &mut read, at, context, findings, resolved);
+    tell_not_judgeable(given, &read, at, context, findings);
+    kind.map(|_| CheckDraft { check: read, areas })
 }
 
 fn cover(
-    check: &v1::Check,
+    given: &Kind,
+    names: &[String],
     read: &mut Check,
     at: &Path<'_>,
     context: &Context<'_, '_>,
     findings: &mut Findings,
     resolved: &mut Resolved,
-) {
+) -> Vec<Area> {
     let (net, on) = (context.net, at.field("on"));
-    let supported = |node: &usize| context.supports.of_node[*node].is_some();
-    let all = check.on.is_empty();
-    let mut scope_of = |allowed| context.scopes.of(net, &check.on, &on, allowed, findings);
-    let mut complete = true;
-    match check.kind {
-        Some(Kind::Movement(_)) if all => {
-            let free = (0..net.nodes.len()).filter(|node| !supported(node));
-            read.nodes = free.map(NodeId::new).collect();
-            resolved.left_out(&on, "all free nodes");
-        }
-        Some(Kind::AnchorPull(_)) if all => {
-            read.nodes = (0..net.nodes.len()).filter(supported).map(NodeId::new).collect();
-            resolved.left_out(&on, "all anchors");
-        }
-        _ if all => {
-            read.cables = (0..net.cables.len()).map(CableId::new).collect();
-            resolved.left_out(&on, "all cables");
-        }
-        Some(Kind::Movement(_)) => {
-            let scope = scope_of(ANYTHING);
-            complete = scope.complete;
+    let mut areas = Vec::new();
+    let all = names.is_empty();
+    let complete = if all {
+        let told = cover_all(given, read, context);
+        resolved.left_out(&on, told);
+        true
+    } else {
+        let allowed = match given {
+            Kind::Movement(_) => ANYTHING,
+            Kind::AnchorPull(_) | Kind::Clamp(_) | Kind::Saddle(_) => NODES,
+            _ => MEMBERS,
+        };
+        let scope = context.scopes.of(net, names, &on, allowed, findings);
+        if let Kind::Movement(_) = given {
             read.nodes = nodes_of(&scope, context).into_iter().map(NodeId::new).collect();
-        }
-        Some(Kind::AnchorPull(_)) => {
-            let scope = scope_of(NODES);
-            complete = scope.complete;
-            for node in scope.nodes() {
-                if !supported(&node) {
-                    let id = net.nodes[node].id;
-                    findings.error(
-                        reasons::WRONG_KIND,
-                        &on,
-                        id,
-                        format!(
-                            "node {} has no support: there is no pull on an anchor to check",
-                            Quoted(id)
-                        ),
-                        "name supported nodes",
-                    );
-                }
-            }
-            read.nodes = scope.nodes().map(NodeId::new).collect();
-        }
-        _ => {
-            let scope = scope_of(MEMBERS);
-            complete = scope.complete;
+            areas = scope.areas().collect();
+        } else {
             read.cables = scope.cables().map(CableId::new).collect();
             read.struts = scope.struts().map(StrutId::new).collect();
+            read.nodes = scope.nodes().map(NodeId::new).collect();
         }
-    }
-    if complete && read.cables.is_empty() && read.struts.is_empty() && read.nodes.is_empty() {
+        if let Kind::AnchorPull(_) = given {
+            for node in scope.nodes().filter(|node| context.supports.of_node[*node].is_none()) {
+                let id = net.nodes[node].id;
+                findings.error(
+                    reasons::WRONG_KIND,
+                    &on,
+                    id,
+                    format!(
+                        "node {} has no support: there is no pull on an anchor to check",
+                        Quoted(id)
+                    ),
+                    "name supported nodes",
+                );
+            }
+        }
+        scope.complete
+    };
+    let no_part = read.cables.is_empty() && read.struts.is_empty() && read.nodes.is_empty() && read.panels.is_empty();
+    if complete && no_part && areas.is_empty() {
         findings.error(
             reasons::COVERS_NOTHING,
             &on,
@@ -195,6 +176,94 @@ fn cover(
             "name in on what it covers, or take it out",
         );
     }
+    areas
+}
+
+/// Everything that a check is for; answers that in words.
+fn cover_all(given: &Kind, read: &mut Check, context: &Context<'_, '_>) -> &'static str {
+    let net = context.net;
+    let nodes = |wanted: &dyn Fn(usize) -> bool| -> Vec<NodeId> {
+        (0..net.nodes.len())
+            .filter(|node| wanted(*node))
+            .map(NodeId::new)
+            .collect()
+    };
+    let supported = |node: usize| context.supports.of_node[node].is_some();
+    let cables = || (0..net.cables.len()).map(CableId::new).collect();
+    let struts = || (0..net.struts.len()).map(StrutId::new).collect();
+    match given {
+        Kind::Movement(_) => {
+            read.nodes = nodes(&|node| !supported(node));
+            "all free nodes"
+        }
+        Kind::AnchorPull(_) => {
+            read.nodes = nodes(&supported);
+            "all anchors"
+        }
+        Kind::Buckling(_) => {
+            read.struts = struts();
+            "all struts"
+        }
+        Kind::Clearance(_) => {
+            read.cables = cables();
+            read.struts = struts();
+            "all members"
+        }
+        Kind::Clamp(_) => {
+            let passages = passages(net);
+            read.nodes = nodes(&|node| passages[node].is_clamp());
+            "all nodes where ropes cross and one of them runs on, clamped"
+        }
+        Kind::Saddle(_) => {
+            let passages = passages(net);
+            read.nodes = nodes(&|node| passages[node].sliding);
+            "all nodes through which a rope slides"
+        }
+        _ => {
+            read.cables = cables();
+            "all cables"
+        }
+    }
+}
+
+/// What ropes do at a node.
+#[derive(Clone, Copy, Debug, Default)]
+struct Passage {
+    /// Ropes that come to it.
+    ropes: usize,
+    /// Whether one of them runs on through it, clamped.
+    clamped: bool,
+    /// Whether one of them slides through it.
+    sliding: bool,
+}
+
+impl Passage {
+    fn is_clamp(self) -> bool {
+        self.clamped && self.ropes > 1
+    }
+}
+
+/// What ropes do at each node.
+fn passages(net: &NetDraft<'_>) -> Vec<Passage> {
+    let mut passages = vec![Passage::default(); net.nodes.len()];
+    for cable in &net.cables {
+        let mut touched: Vec<usize> = cable.path.clone();
+        touched.sort_unstable();
+        touched.dedup();
+        touched.iter().for_each(|node| passages[*node].ropes += 1);
+        let inner = cable.path.len().saturating_sub(1);
+        for node in cable.path.iter().take(inner).skip(1) {
+            let slides = cable.message.slides.as_ref();
+            let slides = slides
+                .is_some_and(|slides| slides.at.is_empty() || slides.at.iter().any(|id| id == net.nodes[*node].id));
+            if slides {
+                passages[*node].sliding = true;
+            } else {
+                passages[*node].clamped = true;
+            }
+        }
+    }
+    passages
 }
 
 /// Nodes named themselves, and the free ones of named members, each once, in order.
@@ -218,64 +287,103 @@ fn nodes_of(scope: &Scope, context: &Context<'_, '_>) -> Vec<usize> {
     (0..wanted.len()).filter(|node| wanted[*node]).collect()
 }
 
-fn tell_not_judgeable(
-    check: &v1::Check,
-    read: &Check,
-    at: &Path<'_>,
-    context: &Context<'_, '_>,
-    findings: &mut Findings,
-) {
+/// Tells members that this check covers and cannot judge, each reason once.
+fn tell_not_judgeable(given: &Kind, read: &Check, at: &Path<'_>, context: &Context<'_, '_>, findings: &mut Findings) {
     let net = context.net;
-    let Some(Kind::Safety(_) | Kind::Slackness(_)) = check.kind else {
-        return;
+    let cable_id = |cable: &CableId| net.cables[cable.index()].message.id.as_str();
+    let strut_id = |strut: &StrutId| net.struts[strut.index()].message.id.as_str();
+    let lacks = |segment: usize, has: &dyn Fn(&v1::Section) -> bool| {
+        context.sections.of_segment[segment].is_some_and(|(section, _)| !has(context.sections.list[section].message))
     };
-    let strength = matches!(check.kind, Some(Kind::Safety(_)));
-    let unknown = |cable: &CableId| {
-        let draft = &net.cables[cable.index()];
-        let mut segments = draft.first_segment..draft.first_segment + draft.n_segments();
-        segments.any(|segment| {
-            context.sections.of_segment[segment]
-                .is_some_and(|(section, _)| context.sections.list[section].message.breaking_force_n.is_none())
-        })
-    };
-    let cables = read.cables.iter().filter(|cable| strength && unknown(cable));
-    let cables: Vec<&str> = cables
-        .map(|cable| net.cables[cable.index()].message.id.as_str())
-        .collect();
     let of = read.cables.len() + read.struts.len();
-    if let Some(first) = cables.first() {
-        findings
-            .doubt(
-                reasons::NOT_JUDGEABLE,
-                &at.field("safety"),
-                first,
-                format!(
-                    "{} of {of} members will not be judged: {} have no breaking force",
-                    cables.len(),
-                    quoted_list(cables.iter().copied())
-                ),
-                "give breaking_force_n of their sections, or cover fewer members",
-            )
-            .value(cables.len());
-    }
-    let struts: Vec<&str> = read
-        .struts
-        .iter()
-        .map(|s| net.struts[s.index()].message.id.as_str())
-        .collect();
-    if let Some(first) = struts.first() {
-        findings
-            .doubt(
-                reasons::NOT_JUDGEABLE,
-                &at.field("on"),
-                first,
-                format!(
-                    "{} of {of} members will not be judged: {} are struts, and this check is for ropes",
-                    struts.len(),
-                    quoted_list(struts.iter().copied())
-                ),
+    let mut tell = |field: &'static str, ids: Vec<&str>, why: &str, cure: &str| {
+        if let Some(first) = ids.first() {
+            findings
+                .doubt(
+                    reasons::NOT_JUDGEABLE,
+                    &at.field(field),
+                    first,
+                    format!(
+                        "{} of {of} members will not be judged: {} {why}",
+                        ids.len(),
+                        quoted_list(ids.iter().copied())
+                    ),
+                    cure,
+                )
+                .value(ids.len());
+        }
+    };
+    match given {
+        Kind::Safety(_)
+        | Kind::Resistance(_)
+        | Kind::ServiceStress(_)
+        | Kind::ConstructionStress(_)
+        | Kind::Slackness(_) => {
+            if !matches!(given, Kind::Slackness(_)) {
+                let unknown = |cable: &&CableId| {
+                    let draft = &net.cables[cable.index()];
+                    let mut segments = draft.first_segment..draft.first_segment + draft.n_segments();
+                    segments.any(|segment| lacks(segment, &|section| section.breaking_force_n.is_some()))
+                };
+                tell(
+                    check_kinds::field(given),
+                    read.cables.iter().filter(unknown).map(cable_id).collect(),
+                    "have no breaking force",
+                    "give breaking_force_n of their sections, or cover fewer members",
+                );
+            }
+            tell(
+                "on",
+                read.struts.iter().map(strut_id).collect(),
+                "are struts, and this check is for ropes",
                 "cover ropes only",
-            )
-            .value(struts.len());
+            );
+        }
+        Kind::Buckling(_) => {
+            let unknown = |strut: &&StrutId| {
+                let segment = net.struts[strut.index()].segment;
+                lacks(segment, &|section| section.bending_stiffness_n_m2.is_some())
+            };
+            tell(
+                check_kinds::field(given),
+                read.struts.iter().filter(unknown).map(strut_id).collect(),
+                "have no bending stiffness",
+                "give bending_stiffness_n_m2 of their sections, or cover fewer members",
+            );
+            tell(
+                "on",
+                read.cables.iter().map(cable_id).collect(),
+                "are cables, and this check is for struts",
+                "cover struts only",
+            );
+        }
+        Kind::Clamp(_) | Kind::Saddle(_) => {
+            let passages = passages(net);
+            let is_clamp = matches!(given, Kind::Clamp(_));
+            let judged = |node: &NodeId| {
+                let passage = passages[node.index()];
+                passage.clamped || (passage.sliding && !is_clamp)
+            };
+            let others = read.nodes.iter().filter(|node| !judged(node));
+            let ids: Vec<&str> = others.map(|node| net.nodes[node.index()].id).collect();
+            if let Some(first) = ids.first() {
+                findings
+                    .doubt(
+                        reasons::NOT_JUDGEABLE,
+                        &at.field("on"),
+                        first,
+                        format!(
+                            "{} of {} nodes will not be judged: no rope runs on through {}{}",
+                            ids.len(),
+                            read.nodes.len(),
+                            quoted_list(ids.iter().copied()),
+                            if is_clamp { ", clamped" } else { "" }
+                        ),
+                        "name nodes inside the path of a rope",
+                    )
+                    .value(ids.len());
+            }
+        }
+        Kind::Movement(_) | Kind::AnchorPull(_) | Kind::Clearance(_) | Kind::Drainage(_) => {}
     }
 }

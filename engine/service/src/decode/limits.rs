@@ -8,6 +8,8 @@ use super::net::NetDraft;
 use super::reasons;
 use crate::config::Limits;
 
+/// Skins and zones: each zone is compared with each panel.
+const MOST_AREAS: u32 = 10_000;
 /// Bytes of one element of a list: it must fit a message from the server, which stays below 1 MiB.
 const LARGEST_ELEMENT: usize = 900 * 1024;
 /// Bytes of what a frozen brief says in one message: title, remarks, labels, the actions of the reference state.
@@ -31,6 +33,9 @@ pub(crate) fn counts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings
         fits &= most(findings, "net.roles", "roles", net.roles.len(), limits.segments);
         fits &= most(findings, "net.cables", "cables", net.cables.len(), limits.segments);
         fits &= most(findings, "net.groups", "groups", net.groups.len(), limits.segments);
+        fits &= most(findings, "net.panels", "panels", net.panels.len(), limits.segments);
+        fits &= most(findings, "net.skins", "skins", net.skins.len(), MOST_AREAS);
+        fits &= most(findings, "net.zones", "zones", net.zones.len(), MOST_AREAS);
     }
     fits
 }
@@ -86,6 +91,9 @@ pub(crate) fn elements(brief: &v1::Brief, findings: &mut Findings) {
         each("net.struts", &net.struts, |e| &e.id, findings);
         each("net.groups", &net.groups, |e| &e.id, findings);
         each("net.support_groups", &net.support_groups, |e| &e.id, findings);
+        each("net.skins", &net.skins, |e| &e.id, findings);
+        each("net.zones", &net.zones, |e| &e.id, findings);
+        each("net.panels", &net.panels, |e| &e.id, findings);
     }
     each("actions", &brief.actions, |e| &e.id, findings);
     each("checks", &brief.checks, |_| "", findings);
@@ -97,6 +105,9 @@ pub(crate) fn elements(brief: &v1::Brief, findings: &mut Findings) {
         .sum();
     let notes = brief.solving.as_ref().map_or(0, |s| s.note.len())
         + brief.prestress.as_ref().map_or(0, |p| p.note.len())
+        + (brief.diagnosis.iter())
+            .map(|d| d.note.len() + d.about.iter().map(|id| id.len() + 4).sum::<usize>())
+            .sum::<usize>()
         + brief.frozen_from.as_ref().map_or(0, |f| f.note.len());
     let net = match &brief.net_source {
         Some(v1::brief::NetSource::Net(net)) => net.note.len(),

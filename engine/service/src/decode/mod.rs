@@ -5,8 +5,9 @@
 //! |---|---|
 //! | `reading`, `work` | the whole brief, and what comes of it |
 //! | `findings`, `reasons`, `numbers`, `names` | what is told, where, and why |
-//! | `net`, `places`, `sections`, `supports`, `stretch`, `scope` | the net |
-//! | `prestress`, `wish`, `actions`, `cases`, `checks`, `solving` | what is wanted of it |
+//! | `net`, `places`, `sections`, `supports`, `stretch`, `scope`, `surface` | the net |
+//! | `prestress`, `wish`, `actions`, `factors`, `combinations`, `cases`, `solving` | what is wanted of it |
+//! | `checks`, `check_kinds`, `editions`, `diagnosis` | what it is judged by |
 //! | `plausible`, `frozen`, `accepted` | doubts |
 //! | `limits`, `not_served` | what is refused |
 //!
@@ -15,8 +16,13 @@
 mod accepted;
 mod actions;
 mod cases;
+mod check_kinds;
 mod checks;
+mod combinations;
+mod diagnosis;
 mod digest;
+mod editions;
+mod factors;
 mod findings;
 mod frozen;
 mod limits;
@@ -35,12 +41,16 @@ mod sections;
 mod solving;
 mod stretch;
 mod supports;
+mod surface;
 mod wish;
 mod work;
 
 pub(crate) use cases::{ENVELOPE, REFERENCE};
+pub(crate) use check_kinds::field as check_field;
 pub use digest::digest;
+pub(crate) use editions::of as edition_of;
 pub(crate) use net::STANDARD_GRAVITY;
 pub use not_served::{NOT_SERVED, SERVED};
 pub use reading::{Reading, read};
+pub(crate) use surface::WithoutValue;
 pub use work::Work;

@@ -19,8 +19,10 @@ pub(crate) enum Thing {
     Role(usize),
     /// A group.
     Group(usize),
-    /// Something that was refused because it is not served yet.
-    NotServed,
+    /// A skin.
+    Skin(usize),
+    /// A zone.
+    Zone(usize),
 }
 
 impl Thing {
@@ -31,7 +33,8 @@ impl Thing {
             Self::Strut(_) => "strut",
             Self::Role(_) => "role",
             Self::Group(_) => "group",
-            Self::NotServed => "part that is not served",
+            Self::Skin(_) => "skin",
+            Self::Zone(_) => "zone",
         }
     }
 }

@@ -171,14 +171,10 @@ impl<'a> NetDraft<'a> {
         declare("net.roles", &mut roles.map(|(i, r)| (r.id.as_str(), Thing::Role(i))));
         let groups = net.groups.iter().enumerate();
         declare("net.groups", &mut groups.map(|(i, g)| (g.id.as_str(), Thing::Group(i))));
-        declare(
-            "net.skins",
-            &mut net.skins.iter().map(|s| (s.id.as_str(), Thing::NotServed)),
-        );
-        declare(
-            "net.zones",
-            &mut net.zones.iter().map(|z| (z.id.as_str(), Thing::NotServed)),
-        );
+        let skins = net.skins.iter().enumerate();
+        declare("net.skins", &mut skins.map(|(i, s)| (s.id.as_str(), Thing::Skin(i))));
+        let zones = net.zones.iter().enumerate();
+        declare("net.zones", &mut zones.map(|(i, z)| (z.id.as_str(), Thing::Zone(i))));
     }
 
     fn read_nodes(&mut self, findings: &mut Findings) {

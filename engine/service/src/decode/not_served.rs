@@ -14,19 +14,36 @@ pub const SERVED: &[&str] = &[
     "net.struts",
     "net.groups",
     "net.support_groups",
+    "net.skins",
+    "net.zones",
+    "net.panels",
     "prestress",
     "actions.loads.nodes",
     "actions.loads.own_weight",
     "actions.loads.on_length",
     "actions.loads.on_plan_length",
+    "actions.loads.on_plan",
+    "actions.loads.on_surface",
+    "actions.loads.wind_on_ropes",
+    "actions.loads.ice",
     "actions.loads.temperature",
     "actions.loads.move",
     "actions.loads.prestress",
+    "factors",
+    "combinations",
     "cases",
     "checks.safety",
     "checks.slackness",
     "checks.movement",
     "checks.anchor_pull",
+    "checks.resistance",
+    "checks.service_stress",
+    "checks.construction_stress",
+    "checks.buckling",
+    "checks.clearance",
+    "checks.clamp",
+    "checks.saddle",
+    "diagnosis",
     "solving",
     "accepted",
     "frozen_from",
@@ -36,19 +53,9 @@ pub const SERVED: &[&str] = &[
 pub const NOT_SERVED: &[&str] = &[
     "stored_net",
     "net.adjusters",
-    "net.skins",
-    "net.zones",
-    "net.panels",
     "net.cables.slides",
     "net.roles.adjuster",
-    "actions.loads.on_plan",
-    "actions.loads.on_surface",
-    "factors",
-    "combinations",
-    "checks.resistance",
-    "checks.service_stress",
-    "checks.buckling",
-    "checks.clearance",
+    "checks.drainage",
     "modes",
     "motions",
     "stages",
@@ -88,12 +95,7 @@ pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
     ] {
         elements(list, &ids, &mut part);
     }
-    let combinations = Path::root("combinations");
-    for number in 0..brief.combinations.len() {
-        part(&combinations.number(number), "");
-    }
     for (field, given) in [
-        ("factors", brief.factors.is_some()),
         ("modes", brief.modes.is_some()),
         ("workshop", brief.workshop.is_some()),
         ("keep", brief.keep.is_some()),
@@ -103,7 +105,6 @@ pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
             part(&Path::root(field), "");
         }
     }
-    in_actions(&brief.actions, &mut part);
     in_checks(&brief.checks, &mut part);
 }
 
@@ -115,17 +116,8 @@ fn elements(list: &str, ids: &[&str], part: &mut impl FnMut(&Path<'_>, &str)) {
 }
 
 fn in_net(net: &v1::Net, part: &mut impl FnMut(&Path<'_>, &str)) {
-    for (list, ids) in [
-        (
-            "net.adjusters",
-            net.adjusters.iter().map(|a| a.id.as_str()).collect::<Vec<_>>(),
-        ),
-        ("net.skins", net.skins.iter().map(|s| s.id.as_str()).collect()),
-        ("net.zones", net.zones.iter().map(|z| z.id.as_str()).collect()),
-        ("net.panels", net.panels.iter().map(|p| p.id.as_str()).collect()),
-    ] {
-        elements(list, &ids, part);
-    }
+    let adjusters: Vec<&str> = net.adjusters.iter().map(|a| a.id.as_str()).collect();
+    elements("net.adjusters", &adjusters, part);
     let cables = Path::root("net.cables");
     for (number, cable) in net.cables.iter().enumerate() {
         if cable.slides.is_some() {
@@ -140,32 +132,11 @@ fn in_net(net: &v1::Net, part: &mut impl FnMut(&Path<'_>, &str)) {
     }
 }
 
-fn in_actions(actions: &[v1::Action], part: &mut impl FnMut(&Path<'_>, &str)) {
-    let list = Path::root("actions");
-    for (number, action) in actions.iter().enumerate() {
-        let at = list.element(&action.id, number);
-        let loads = at.field("loads");
-        for (number, load) in action.loads.iter().enumerate() {
-            let field = match load.kind {
-                Some(v1::load::Kind::OnPlan(_)) => "on_plan",
-                Some(v1::load::Kind::OnSurface(_)) => "on_surface",
-                _ => continue,
-            };
-            part(&loads.number(number).field(field), &action.id);
-        }
-    }
-}
-
 fn in_checks(checks: &[v1::Check], part: &mut impl FnMut(&Path<'_>, &str)) {
     let list = Path::root("checks");
     for (number, check) in checks.iter().enumerate() {
-        let field = match check.kind {
-            Some(v1::check::Kind::Resistance(_)) => "resistance",
-            Some(v1::check::Kind::ServiceStress(_)) => "service_stress",
-            Some(v1::check::Kind::Buckling(_)) => "buckling",
-            Some(v1::check::Kind::Clearance(_)) => "clearance",
-            _ => continue,
-        };
-        part(&list.number(number).field(field), "");
+        if let Some(v1::check::Kind::Drainage(_)) = check.kind {
+            part(&list.number(number).field("drainage"), "");
+        }
     }
 }

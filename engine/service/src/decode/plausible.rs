@@ -201,6 +201,7 @@ fn wanted_tension(
         PrestressRule::Tension(tension) => Some(*tension),
         PrestressRule::MeanTension(family) => prestress.mean_tensions.get(*family).copied(),
         PrestressRule::ForceDensity(density) => Some(density * length?),
+        PrestressRule::Adjustable(family) => Some(prestress.adjustables.get(*family)?.density * length?),
         PrestressRule::UnstressedLength(unstressed) => {
             let strain = length? / unstressed - 1.0;
             Some(axial_stiffness * strain.max(0.0))
@@ -245,15 +246,6 @@ pub(crate) fn unused_data(brief: &v1::Brief, net: &NetDraft<'_>, findings: &mut 
         }
     };
     let message = net.message;
-    let stiff = message
-        .sections
-        .iter()
-        .filter(|section| section.bending_stiffness_n_m2.is_some());
-    told(
-        "net.sections",
-        "bending_stiffness_n_m2",
-        stiff.map(|section| section.id.as_str()).collect(),
-    );
     let taking_up = |fitting: &Option<v1::EndFitting>| fitting.as_ref().is_some_and(|f| f.take_up_m.is_some());
     let roles = message.roles.iter().filter(|role| taking_up(&role.end_fitting));
     told(

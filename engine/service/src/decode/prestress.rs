@@ -41,12 +41,7 @@ pub(crate) fn read(
     findings: &mut Findings,
     resolved: &mut Resolved,
 ) -> Prestress {
-    let mut read = Prestress {
-        rules: Vec::new(),
-        mean_tensions: Vec::new(),
-        hold: Vec::new(),
-        under: Vec::new(),
-    };
+    let mut read = Prestress::default();
     let Some(prestress) = prestress.filter(|prestress| !prestress.rules.is_empty()) else {
         let path = if prestress.is_some() {
             "prestress.rules"

@@ -3,12 +3,15 @@
 use std::sync::Arc;
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::Brief;
-use ropewalk_numerics::model::{CableGiven, Net, NetGiven, NodeGiven, NodeId, StrutGiven, SupportGiven};
+use ropewalk_numerics::brief::{Brief, Check, Prestress};
+use ropewalk_numerics::model::{CableGiven, Member, Net, NetGiven, NodeGiven, NodeId, StrutGiven, SupportGiven};
+use ropewalk_numerics::shape::first_shape;
 
 use super::actions::Actions;
 use super::cases::{Cases, LARGEST, in_words};
+use super::checks::CheckDraft;
 use super::digest::digest;
+use super::factors::Factors;
 use super::findings::{Findings, Path, is_id};
 use super::names::bad_id;
 use super::net::NetDraft;
@@ -16,8 +19,11 @@ use super::resolved::Resolved;
 use super::scope::Scopes;
 use super::sections::Sections;
 use super::supports::Supports;
+use super::surface::SurfaceDraft;
 use super::work::{Names, Work};
-use super::{accepted, checks, frozen, limits, not_served, plausible, prestress, reasons, solving};
+use super::{
+    accepted, checks, combinations, diagnosis, frozen, limits, not_served, plausible, prestress, reasons, solving,
+};
 use crate::config::Limits;
 use crate::words::shown;
 
@@ -43,27 +49,18 @@ pub fn read(brief: v1::Brief, limits: &Limits) -> Reading {
     let mut resolved = Resolved::default();
     let digest = digest(&brief);
     let parts = read_parts(&brief, limits, &mut findings, &mut resolved);
-    accepted::read(&brief.accepted, &mut findings);
-    let (cases, parts) = match parts {
-        Some(parts) => (parts.words, parts.work.filter(|_| !findings.has_errors())),
+    let (cases, built) = match parts {
+        Some(parts) => {
+            let built = parts.work.and_then(|(unbuilt, names)| {
+                let built = unbuilt.build(&mut findings, &mut resolved);
+                built.map(|domain| (domain, names))
+            });
+            (parts.words, built)
+        }
         None => (Vec::new(), None),
     };
-    let work = parts.and_then(|(brief_read, names)| match brief_read.build() {
-        Ok(domain) => Some((domain, names)),
-        Err(errors) => {
-            // The border checks everything that the model does; should it ever not, the model has the last word.
-            for error in errors {
-                findings.error(
-                    reasons::OUT_OF_RANGE,
-                    &Path::root("net"),
-                    "",
-                    error.to_string(),
-                    "mend this part of the net",
-                );
-            }
-            None
-        }
-    });
+    accepted::read(&brief.accepted, &mut findings);
+    let work = built.filter(|_| !findings.has_errors());
     let findings = findings.into_list();
     let work = work.map(|(domain, names)| Work::new(domain, brief, digest.clone(), names, &findings));
     Reading {
@@ -78,12 +75,46 @@ pub fn read(brief: v1::Brief, limits: &Limits) -> Reading {
 /// A brief of the kernel whose net is not built yet.
 struct Unbuilt {
     net: NetGiven,
-    rest: Box<dyn FnOnce(Net) -> Brief>,
+    surface: SurfaceDraft,
+    checks: Vec<CheckDraft>,
+    rest: Box<dyn FnOnce(Arc<Net>, Vec<Check>) -> Brief>,
+    prestress: Prestress,
 }
 
 impl Unbuilt {
-    fn build(self) -> Result<Brief, Vec<ropewalk_numerics::model::NetError>> {
-        Ok((self.rest)(Net::new(self.net)?))
+    fn build(self, findings: &mut Findings, resolved: &mut Resolved) -> Option<Brief> {
+        let net = Net::new(self.net).map_err(|errors| {
+            // The border checks everything that the model does; should it ever not, the model has the last word.
+            for error in errors {
+                findings.error(
+                    reasons::OUT_OF_RANGE,
+                    &Path::root("net"),
+                    "",
+                    error.to_string(),
+                    "mend this part of the net",
+                );
+            }
+        });
+        let net = Arc::new(net.ok()?);
+        // Without a first shape there is no reference state either, and the run tells why.
+        let first = (!self.surface.is_empty())
+            .then(|| first_shape(&net, &self.prestress).ok())
+            .flatten();
+        let Some(first) = first else {
+            let checks = self.checks.into_iter().map(|draft| draft.check).collect();
+            return Some((self.rest)(net, checks));
+        };
+        let net = self.surface.complete((*net).clone(), &first, findings, resolved)?;
+        let mut checks = Vec::with_capacity(self.checks.len());
+        for CheckDraft { mut check, areas } in self.checks {
+            check.nodes.extend(self.surface.corners(&net, &first, &areas));
+            check.nodes.sort_unstable();
+            check.nodes.dedup();
+            checks.push(check);
+        }
+        let brief = (self.rest)(Arc::new(net), checks);
+        self.surface.tell_actions(&brief.net, &first, &brief.actions, findings);
+        Some(brief)
     }
 }
 
@@ -135,7 +166,8 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
     let sections = Sections::read(&net, findings, resolved);
     let supports = Supports::read(&net, findings);
     let scopes = Scopes::read(&net, findings);
-    let actions = Actions::read(&brief.actions, &net, &scopes, &supports, findings);
+    let surface = SurfaceDraft::read(&net, &scopes, &supports, findings);
+    let actions = Actions::read(&brief.actions, &net, &sections, &scopes, &supports, findings, resolved);
     let prestress = prestress::read(
         brief.prestress.as_ref(),
         &prestress::Context {
@@ -148,8 +180,18 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
         findings,
         resolved,
     );
-    let cases = Cases::read(brief, &actions, findings);
-    cases.doubts(&net, &actions, &prestress.under, findings);
+    let context = combinations::Context {
+        net: &net,
+        scopes: &scopes,
+        actions: &actions,
+        under: &prestress.under,
+        limits,
+    };
+    let factors = brief.factors.as_ref();
+    let factors = factors.map(|factors| Factors::read(factors, &actions, findings, resolved));
+    let mut cases = Cases::read(brief, &context, findings, resolved);
+    combinations::read(brief, factors.as_ref(), &context, &mut cases, findings, resolved);
+    cases.doubts(&context, factors.as_ref(), findings);
     let checks = checks::read(
         &brief.checks,
         &checks::Context {
@@ -162,16 +204,21 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
         findings,
         resolved,
     );
+    let diagnosis = diagnosis::read(brief.diagnosis.as_ref(), &cases, findings, resolved);
     plausible::sections(&net, findings);
     plausible::extent(&net, findings);
     plausible::prestress(&net, &sections, &prestress, findings);
     plausible::unused_data(brief, &net, findings);
     frozen::read(brief.frozen_from.as_ref(), &net, &sections, &prestress, findings);
 
+    let member_name = |member| match member {
+        Member::Cable(cable) => net.cables[cable.index()].message.id.as_str(),
+        Member::Strut(strut) => net.struts[strut.index()].message.id.as_str(),
+    };
     let words = (cases.list.iter())
         .map(|case| v1::CaseInWords {
             case: shown(&case.name),
-            in_words: in_words(case, &brief.actions),
+            in_words: in_words(case, &brief.actions, &member_name),
             sets: first_sets(&case.sets),
         })
         .collect();
@@ -179,19 +226,25 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
     let given = (!findings.has_errors())
         .then(|| net_given(&net, &sections, supports))
         .flatten();
-    let (actions, cases) = (actions.list, cases.list);
+    let (actions, cases, effects) = (actions.list, cases.list, cases.effects);
     let work = given.map(|net| {
-        let rest = move |net| Brief {
-            net: Arc::new(net),
+        let kept = prestress.clone();
+        let rest = move |net, checks| Brief {
+            net,
             prestress,
             actions,
             cases,
+            effects,
             checks,
+            diagnosis,
             settings,
         };
         let unbuilt = Unbuilt {
             net,
+            surface,
+            checks,
             rest: Box::new(rest),
+            prestress: kept,
         };
         (unbuilt, names)
     });

@@ -108,6 +108,20 @@ reasons! {
     MOVE_WITHOUT_SUPPORT,
     /// A load moves a support along a direction in which it is free.
     MOVE_ALONG_FREE,
+    /// Ropes of a skin cross, touch or lie above each other in plan, so that its meshes cannot be told apart.
+    MESHES_UNCLEAR,
+    /// A skin whose ropes enclose no mesh in plan, and that has no panels given one by one.
+    SKIN_WITHOUT_PANELS,
+    /// A rope that a skin names, of which a stretch bounds none of its panels.
+    ROPE_BOUNDS_NO_PANEL,
+    /// Two panels have the same corners.
+    PANEL_TWICE,
+    /// An outline in plan that crosses itself or encloses nothing.
+    BAD_OUTLINE,
+    /// A load gives different coefficients to a panel that lies in several zones.
+    ZONES_CONTRADICT,
+    /// A load needs a diameter that a section does not give.
+    NO_DIAMETER,
     /// A prestress share takes away all of the tension.
     SHARE_TAKES_ALL,
     /// An action without loads.
@@ -124,12 +138,34 @@ reasons! {
     NO_MASS,
     /// A case leaves out an action under which the reference state was found.
     CASE_WITHOUT_DEAD_LOAD,
+    /// Factors whose standard, edition and annex are not told.
+    NO_SOURCE,
+    /// A factor is smaller than one that is as a rule the smaller of the two.
+    FACTORS_OUT_OF_ORDER,
+    /// A class of actions that no action has.
+    CLASS_WITHOUT_ACTIONS,
+    /// An action that no rule combines, since its class has no factors.
+    ACTION_NOT_COMBINED,
+    /// A rule that finds nothing to combine.
+    COMBINATION_WITHOUT_ACTIONS,
+    /// How many cases and design effects a rule makes.
+    CASES_MADE,
+    /// A permanent action has a factor below 1 in every case.
+    PERMANENT_BELOW_ONE,
+    /// A permanent action has a factor above 1 in every case.
+    NO_FAVOURABLE_CASE,
+    /// A case takes out every member.
+    REMOVES_ALL,
     /// A change of temperature from a temperature that is not stated.
     NO_REFERENCE_TEMPERATURE,
     /// A check over sets or cases that are not there.
     CHECK_WITHOUT_CASES,
     /// Members that a check covers but cannot judge.
     NOT_JUDGEABLE,
+    /// A standard or edition whose factors are not known here, and not given.
+    EDITION_UNKNOWN,
+    /// A factor that the named edition does not recommend.
+    FACTOR_NOT_OF_EDITION,
     /// Cases, but no check.
     NOTHING_CHECKED,
     /// A value that looks as if it were in another unit.
@@ -152,6 +188,12 @@ reasons! {
     OVER_BREAKING,
     /// A movement so large that units or loads are to be doubted.
     LARGE_MOVEMENT,
+    /// A state with hardly any stiffness left against a movement, or none.
+    LITTLE_STIFFNESS,
+    /// Panels that a pressure on the surface leaves without a value.
+    PANELS_WITHOUT_VALUE,
+    /// A panel that was found in plan has turned over in the reference state.
+    PANEL_TURNED,
     /// The independent routine does not confirm a state.
     AUDIT_FAILED,
     /// A state without an answer.
@@ -164,6 +206,9 @@ pub const OF_RESULTS: &[&str] = &[
     SLACK_IN_REFERENCE,
     OVER_BREAKING,
     LARGE_MOVEMENT,
+    PANELS_WITHOUT_VALUE,
+    PANEL_TURNED,
+    ZONES_CONTRADICT,
     AUDIT_FAILED,
 ];
 

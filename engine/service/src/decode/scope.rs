@@ -3,6 +3,7 @@
 use std::collections::{HashMap, HashSet};
 
 use ropewalk_api::ropewalk::v1;
+use ropewalk_numerics::model::Area;
 
 use super::findings::{Findings, Path};
 use super::names::Thing;
@@ -16,6 +17,8 @@ pub(crate) struct Allowed {
     pub(crate) nodes: bool,
     pub(crate) cables: bool,
     pub(crate) struts: bool,
+    /// Skins and zones.
+    pub(crate) areas: bool,
     /// In words, for messages.
     pub(crate) words: &'static str,
 }
@@ -24,25 +27,36 @@ pub(crate) const MEMBERS: Allowed = Allowed {
     nodes: false,
     cables: true,
     struts: true,
+    areas: false,
     words: "cables, struts, roles or groups of them",
 };
 pub(crate) const CABLES: Allowed = Allowed {
     nodes: false,
     cables: true,
     struts: false,
+    areas: false,
     words: "cables, roles of cables or groups of them",
 };
 pub(crate) const NODES: Allowed = Allowed {
     nodes: true,
     cables: false,
     struts: false,
+    areas: false,
     words: "nodes or groups of nodes",
+};
+pub(crate) const AREAS: Allowed = Allowed {
+    nodes: false,
+    cables: false,
+    struts: false,
+    areas: true,
+    words: "skins, zones or groups of them",
 };
 pub(crate) const ANYTHING: Allowed = Allowed {
     nodes: true,
     cables: true,
     struts: true,
-    words: "nodes, members, roles or groups",
+    areas: true,
+    words: "nodes, members, skins, zones, roles or groups",
 };
 
 /// How narrowly a list names a thing.
@@ -58,7 +72,7 @@ pub(crate) enum Narrowness {
     Part,
 }
 
-/// A node, cable or strut that a list covers.
+/// A node, cable, strut, skin or zone that a list covers.
 #[derive(Clone, Copy, Debug)]
 pub(crate) struct Covered {
     pub(crate) thing: Thing,
@@ -91,6 +105,14 @@ impl Scope {
     pub(crate) fn struts(&self) -> impl Iterator<Item = usize> + '_ {
         self.covered.iter().filter_map(|covered| match covered.thing {
             Thing::Strut(strut) => Some(strut),
+            _ => None,
+        })
+    }
+
+    pub(crate) fn areas(&self) -> impl Iterator<Item = Area> + '_ {
+        self.covered.iter().filter_map(|covered| match covered.thing {
+            Thing::Skin(skin) => Some(Area::Skin(skin)),
+            Thing::Zone(zone) => Some(Area::Zone(zone)),
             _ => None,
         })
     }
@@ -138,8 +160,12 @@ impl Scopes {
             let of = at.field("of");
             tell_repeated(&group.of, &of, findings);
             for (number, id) in group.of.iter().enumerate() {
-                net.names
-                    .find(findings, &of.number(number), "member, node, role or group", id);
+                net.names.find(
+                    findings,
+                    &of.number(number),
+                    "member, node, role, skin, zone or group",
+                    id,
+                );
             }
             if group.of.is_empty() {
                 findings.doubt(
@@ -247,13 +273,10 @@ impl Scopes {
                     waiting.extend(self.of_role[role].iter().rev().filter(|inner| visited.insert(**inner)));
                     continue;
                 }
-                Thing::NotServed => {
-                    scope.complete = false;
-                    continue;
-                }
                 Thing::Node(_) => allowed.nodes,
                 Thing::Cable(_) => allowed.cables,
                 Thing::Strut(_) => allowed.struts,
+                Thing::Skin(_) | Thing::Zone(_) => allowed.areas,
             };
             if !fits {
                 wrong = wrong.or(Some(thing));
@@ -281,7 +304,8 @@ fn name<'a>(net: &NetDraft<'a>, thing: Thing) -> Quoted<'a> {
         Thing::Strut(strut) => &net.struts[strut].message.id,
         Thing::Role(role) => &net.message.roles[role].id,
         Thing::Group(group) => &net.message.groups[group].id,
-        Thing::NotServed => "",
+        Thing::Skin(skin) => &net.message.skins[skin].id,
+        Thing::Zone(zone) => &net.message.zones[zone].id,
     })
 }
 

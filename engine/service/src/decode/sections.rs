@@ -8,7 +8,7 @@ use super::names::Names;
 use super::net::{MemberDraft, NetDraft};
 use super::numbers::{
     AREA, AXIAL_STIFFNESS, BENDING_STIFFNESS, BREAKING_FORCE, DIAMETER, EXPANSION, MASS_PER_LENGTH, MODULUS, Of,
-    STRENGTH_FACTOR, TAKE_UP,
+    PROOF_FORCE, STRENGTH_FACTOR, TAKE_UP,
 };
 use super::reasons;
 use super::resolved::Resolved;
@@ -38,6 +38,10 @@ pub(crate) struct SectionDraft<'a> {
     pub(crate) expansion: f64,
     /// Of the bare rope (N).
     pub(crate) breaking_force: Option<f64>,
+    /// Force at the proof strength (N).
+    pub(crate) proof_force: Option<f64>,
+    pub(crate) diameter: Option<f64>,
+    pub(crate) bending_stiffness: Option<f64>,
 }
 
 impl<'a> Sections<'a> {
@@ -195,7 +199,9 @@ impl<'a> Sections<'a> {
             mass_per_length: draft.mass_per_length,
             expansion: draft.expansion,
             breaking_force: draft.breaking_force.map(|force| factor * force),
-            ..Section::default()
+            proof_force: draft.proof_force,
+            bending_stiffness: draft.bending_stiffness,
+            diameter: draft.diameter,
         })
     }
 }
@@ -262,12 +268,14 @@ fn read_section<'a>(
     };
     let area = positive(field, &AREA, area);
     let breaking_force = positive("breaking_force_n", &BREAKING_FORCE, section.breaking_force_n).flatten();
-    positive("diameter_m", &DIAMETER, section.diameter_m);
-    positive(
+    let proof_force = positive("proof_force_n", &PROOF_FORCE, section.proof_force_n).flatten();
+    let diameter = positive("diameter_m", &DIAMETER, section.diameter_m).flatten();
+    let bending_stiffness = positive(
         "bending_stiffness_n_m2",
         &BENDING_STIFFNESS,
         section.bending_stiffness_n_m2,
-    );
+    )
+    .flatten();
 
     let product = match (modulus, area) {
         (Some(Some(modulus)), Some(Some(area))) => Some(modulus * area),
@@ -334,6 +342,9 @@ fn read_section<'a>(
         mass_per_length: mass,
         expansion,
         breaking_force,
+        proof_force,
+        diameter,
+        bending_stiffness,
     }
 }
 

@@ -1,7 +1,8 @@
 //! The work of a brief without errors.
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::Brief;
+use ropewalk_numerics::brief::{Brief, EffectRule};
+use ropewalk_numerics::model::Member;
 
 use super::cases::{REFERENCE, in_words};
 use super::findings::accepts;
@@ -9,7 +10,7 @@ use super::names::nearest;
 use super::reasons;
 use super::sections::Sections;
 use super::supports::Supports;
-use crate::words::{Quoted, shown};
+use crate::words::{Quoted, number, shown};
 
 /// The brief for the kernel, the message that it came from, and what results need of it.
 #[derive(Debug)]
@@ -67,7 +68,8 @@ impl Work {
         }
     }
 
-    /// Cases that sets and cases in `only` name, in brief order; all of them where it is empty. The word `reference`
+    /// Cases that sets, cases and design effects in `only` name, in brief order, those that effects need included; all of
+    /// them where it is empty. The word `reference`
     /// names none.
     ///
     /// # Errors
@@ -77,7 +79,7 @@ impl Work {
         reason = "the finding goes straight into the refusal, once a call"
     )]
     pub fn select(&self, only: &[String]) -> Result<Vec<usize>, v1::Finding> {
-        let cases = &self.brief.cases;
+        let Brief { cases, effects, .. } = &self.brief;
         if only.is_empty() {
             return Ok((0..cases.len()).collect());
         }
@@ -90,8 +92,16 @@ impl Work {
                     found = true;
                 }
             }
+            for effect in effects {
+                if effect.name == *name || effect.sets.contains(name) {
+                    effect.cases().for_each(|case| wanted[case] = true);
+                    found = true;
+                }
+            }
             if !found {
-                let known = cases.iter().flat_map(|case| case.sets.iter().chain([&case.name]));
+                let known = cases.iter().map(|case| (&case.sets, &case.name));
+                let known = known.chain(effects.iter().map(|effect| (&effect.sets, &effect.name)));
+                let known = known.flat_map(|(sets, name)| sets.iter().chain([name]));
                 let meant = nearest(name, known.map(String::as_str));
                 let question = meant.map_or(String::new(), |meant| format!(" Did you mean {}?", Quoted(meant)));
                 return Err(v1::Finding {
@@ -112,7 +122,43 @@ impl Work {
     /// What acts in a case, in words.
     #[must_use]
     pub fn in_words(&self, case: usize) -> String {
-        in_words(&self.brief.cases[case], &self.message.actions)
+        in_words(&self.brief.cases[case], &self.message.actions, &|member| {
+            self.member_name(member)
+        })
+    }
+
+    /// Ids of what a case takes out.
+    pub(crate) fn removed(&self, case: usize) -> Vec<&str> {
+        let removed = self.brief.cases[case].removed.iter();
+        removed.map(|member| self.member_name(*member)).collect()
+    }
+
+    pub(crate) fn member_name(&self, member: Member) -> &str {
+        let net = &self.brief.net;
+        match member {
+            Member::Cable(cable) => &net.cables()[cable.index()].name,
+            Member::Strut(strut) => &net.struts()[strut.index()].name,
+        }
+    }
+
+    /// What a design effect is, in words.
+    #[must_use]
+    pub fn effect_in_words(&self, effect: usize) -> String {
+        let effect = &self.brief.effects[effect];
+        let of = |position: usize| self.in_words(effect.terms[position].0);
+        match effect.rule {
+            EffectRule::Loss { factor } => {
+                format!("({}) and {} times what changes to ({})", of(0), number(factor), of(1))
+            }
+            EffectRule::OnEffect { factor } => format!("{} of ({})", number(factor), of(0)),
+            EffectRule::OnParts { permanent, variable } => format!(
+                "{} of ({}) and {} of what changes to ({})",
+                number(permanent),
+                of(0),
+                number(variable),
+                of(1)
+            ),
+        }
     }
 
     /// What acts in the reference state, in words.
@@ -145,6 +191,15 @@ impl Work {
     /// Whether the given place of a node is where its springs are at rest, so that it must not be written over.
     pub(crate) fn keeps_position(&self, node: usize) -> bool {
         self.names.keeps_position[node]
+    }
+
+    /// Whether a panel is a mesh of ropes, and none given in the brief one by one.
+    pub(crate) fn is_mesh(&self, panel: usize) -> bool {
+        let id = &self.brief.net.panels()[panel].name;
+        match &self.message.net_source {
+            Some(v1::brief::NetSource::Net(net)) => net.panels.iter().all(|given| given.id != *id),
+            _ => true,
+        }
     }
 
     /// Where the breaking force of a segment comes from, if the brief tells.

@@ -1,14 +1,17 @@
 //! Cautions that every client must show.
 
 use ropewalk_numerics::brief::Caution;
+use ropewalk_numerics::model::Net;
+
+use crate::decode::Work;
 
 /// Cautions that hold for every result.
 #[must_use]
 pub fn cautions() -> Vec<String> {
     [
         "This result is an aid. The local code with its national annex and a licensed engineer decide.",
-        "The checks are simple limits set in the brief; they apply no edition of a standard. State beside them which code and \
-         edition the limits follow.",
+        "The checks are limits set in the brief, or single clauses of the edition that a result names; values marked \"from \
+         memory\" must be verified, editions and national annexes differ.",
         "Rope data (stiffness, mass, breaking force) must come from the supplier's certificate or tests; values from tables \
          are first estimates.",
         "Nonlinear results must not be added or scaled: every combination is a case of its own from the same unstressed \
@@ -20,10 +23,30 @@ pub fn cautions() -> Vec<String> {
     .to_vec()
 }
 
+/// Cautions that hold for every result of a net, whatever came of it.
+pub(super) fn of_net(work: &Work, net: &Net) -> Vec<String> {
+    let own = (!net.panels().is_empty()).then_some(Caution::SkinsPassLoad);
+    of_run(work, own.as_slice())
+}
+
 /// Cautions of a run: those of every result, then its own.
-pub(super) fn of_run(own: &[Caution]) -> Vec<String> {
+pub(super) fn of_run(work: &Work, own: &[Caution]) -> Vec<String> {
     let own = own.iter().map(|caution| sentence(&caution.to_string()));
-    cautions().into_iter().chain(own).collect()
+    let factors = work
+        .message
+        .factors
+        .as_ref()
+        .filter(|_| !work.message.combinations.is_empty());
+    let source = factors.map(|factors| match factors.source.trim() {
+        "" => "the factors of combinations come without a source".to_owned(),
+        source => format!("the factors of combinations are those of the brief, from: {source}"),
+    });
+    let effects = (!work.brief.effects.is_empty()).then(|| {
+        "design effects are sums of effects by a rule, quantity by quantity, never states: nothing is in balance in them"
+            .to_owned()
+    });
+    let of_brief = source.into_iter().chain(effects).map(|text| sentence(&text));
+    cautions().into_iter().chain(own).chain(of_brief).collect()
 }
 
 /// The text as a sentence, cut where it is long: lists of ids may be.

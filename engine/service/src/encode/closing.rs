@@ -1,7 +1,7 @@
 //! The end of a run: envelopes, then the summary.
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::{self, Plan, ReferenceOutcome};
+use ropewalk_numerics::brief::{self, Effect, Plan, ReferenceOutcome};
 use ropewalk_numerics::check::{CaseDigest, Envelope, Extreme};
 use ropewalk_numerics::model::Member;
 use ropewalk_numerics::shape::ShapeError;
@@ -9,8 +9,8 @@ use v1::run_response::Event;
 
 use super::parts::{count, event};
 use super::state::Array;
-use super::{cautions, outcome, verdicts};
-use crate::decode::{ENVELOPE, Work};
+use super::{anchors, cautions, effects, outcome, verdicts};
+use crate::decode::{ENVELOPE, REFERENCE, Work};
 
 /// What the end of a run needs of a case.
 #[derive(Debug)]
@@ -87,12 +87,13 @@ impl Tally {
         }
     }
 
-    /// Takes in a case.
-    pub fn add(&mut self, case: usize, noted: &Noted) {
-        if let Some(summed_up) = &mut self.summed_up {
-            summed_up.add(case, &noted.digest);
-        }
+    /// Takes in a case. Answers the design effects that are complete with it.
+    pub fn add(&mut self, case: usize, noted: &Noted) -> Vec<Effect> {
         self.counts.join(noted.counts);
+        match &mut self.summed_up {
+            Some(summed_up) => summed_up.add(case, &noted.digest),
+            None => Vec::new(),
+        }
     }
 }
 
@@ -112,7 +113,11 @@ pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
     }
     let summary = match (&found, summed_up.map(brief::Tally::finish)) {
         (Ok(reference), Some(summary)) => {
-            messages.extend(envelope(plan, &cases, &summary.envelopes));
+            messages.extend(envelope(plan, &cases, &summary));
+            if let Some(rules) = &summary.factor_rules {
+                messages.extend(effects::factor_rules(&plan.brief().net, rules));
+            }
+            messages.extend(effects::losses(work, plan, &summary.losses));
             let answered = summary.facts.answered;
             let reference_audited = usize::from(reference.result.audit.passed);
             v1::Summary {
@@ -126,9 +131,10 @@ pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
                 judged: Some(share(summary.facts.judged.count, summary.facts.judged.of)),
                 passes: Some(share(summary.facts.passing.count, summary.facts.passing.of)),
                 checks: verdicts::checks(work, plan, &summary.checks),
-                cautions: cautions::of_run(&summary.cautions),
+                cautions: cautions::of_run(work, &summary.cautions),
                 findings: counts.messages(),
                 digest: work.digest.clone(),
+                anchors: Some(anchors::sheet(plan, &summary.anchors)),
             }
         }
         _ => {
@@ -141,9 +147,10 @@ pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
                 judged: Some(v1::Share { count: 0, of: covered }),
                 passes: Some(share(0, 0)),
                 checks,
-                cautions: cautions::cautions(),
+                cautions: cautions::of_net(work, &plan.brief().net),
                 findings: counts.messages(),
                 digest: work.digest.clone(),
+                anchors: None,
             }
         }
     };
@@ -158,36 +165,57 @@ fn share(of_them: usize, of: usize) -> v1::Share {
     }
 }
 
-/// Least and largest tension of every rope segment over the sound cases and the reference state, and where they occur.
-fn envelope(plan: &Plan, cases: &[usize], envelopes: &[Envelope]) -> Vec<v1::RunResponse> {
+/// Least and largest forces of every segment and largest movements of every node, over the sound cases and the reference
+/// state, and where they occur.
+fn envelope(plan: &Plan, cases: &[usize], summary: &brief::Summary) -> Vec<v1::RunResponse> {
     let brief = plan.brief();
     let segments = brief.net.segments().iter();
     let ropes = segments.filter(|s| matches!(s.member, Member::Cable(_))).count();
+    let (ropes, struts) = summary.envelopes.split_at(ropes);
     // Position in the table of cases; −1 stands for the reference state.
     let mut position = vec![-1.0; brief.cases.len()];
     for (number, case) in cases.iter().enumerate() {
         position[*case] = f64::from(count(number));
     }
-    let of_all = |take: &dyn Fn(&Envelope) -> f64| envelopes[..ropes].iter().map(take).collect::<Vec<f64>>();
     let place = |extreme: Extreme| extreme.case.map_or(-1.0, |case| position[case]);
+    let of_all = |list: &[Envelope], take: &dyn Fn(&Envelope) -> f64| list.iter().map(take).collect::<Vec<f64>>();
+    let moved = &summary.movements;
+    let array = |name, unit, over, values| Array {
+        case: ENVELOPE,
+        name,
+        unit,
+        over,
+        components: 1,
+        baseline: "",
+        values,
+    };
+    let (rope, strut) = (v1::Range::RopeSegment, v1::Range::Strut);
     [
-        ("tension_min_n", "N", of_all(&|e| e.least.value)),
-        ("tension_max_n", "N", of_all(&|e| e.largest.value)),
-        ("tension_min_case", "", of_all(&|e| place(e.least))),
-        ("tension_max_case", "", of_all(&|e| place(e.largest))),
+        array("tension_min_n", "N", rope, of_all(ropes, &|e| e.least.value)),
+        array("tension_max_n", "N", rope, of_all(ropes, &|e| e.largest.value)),
+        array("tension_min_case", "", rope, of_all(ropes, &|e| place(e.least))),
+        array("tension_max_case", "", rope, of_all(ropes, &|e| place(e.largest))),
+        array("axial_force_min_n", "N", strut, of_all(struts, &|e| e.least.value)),
+        array("axial_force_max_n", "N", strut, of_all(struts, &|e| e.largest.value)),
+        array("axial_force_min_case", "", strut, of_all(struts, &|e| place(e.least))),
+        array("axial_force_max_case", "", strut, of_all(struts, &|e| place(e.largest))),
+        Array {
+            baseline: REFERENCE,
+            ..array(
+                "movement_max_m",
+                "m",
+                v1::Range::Node,
+                moved.iter().map(|m| m.value).collect(),
+            )
+        },
+        array(
+            "movement_max_case",
+            "",
+            v1::Range::Node,
+            moved.iter().map(|m| place(*m)).collect(),
+        ),
     ]
     .into_iter()
-    .flat_map(|(name, unit, values)| {
-        let array = Array {
-            case: ENVELOPE,
-            name,
-            unit,
-            over: v1::Range::RopeSegment,
-            components: 1,
-            baseline: "",
-            values,
-        };
-        array.parts().collect::<Vec<_>>()
-    })
+    .flat_map(|array| array.parts().collect::<Vec<_>>())
     .collect()
 }

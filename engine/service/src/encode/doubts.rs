@@ -1,7 +1,7 @@
 //! What is odd about a solved state.
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::StateResult;
+use ropewalk_numerics::brief::{LITTLE_LEFT, Standing, StateResult};
 use ropewalk_numerics::model::{Net, SegmentId};
 
 use crate::decode::{Work, reasons};
@@ -20,6 +20,7 @@ pub(super) fn of_state(work: &Work, net: &Net, case: &str, state: &StateResult) 
         audit_failed(net, state),
     ];
     let mut findings: Vec<v1::Finding> = found.into_iter().flatten().collect();
+    findings.extend(little_stiffness(net, state));
     for finding in &mut findings {
         finding.case = case.to_owned();
         work.accept(finding);
@@ -27,7 +28,7 @@ pub(super) fn of_state(work: &Work, net: &Net, case: &str, state: &StateResult) 
     findings
 }
 
-fn finding(
+pub(super) fn finding(
     severity: v1::FindingSeverity,
     reason: &str,
     id: &str,
@@ -136,6 +137,37 @@ fn large_movement(net: &Net, state: &StateResult) -> Option<v1::Finding> {
         rounded(moved, 4),
         message,
         "check units and signs of the loads",
+    ))
+}
+
+fn little_stiffness(net: &Net, state: &StateResult) -> Option<v1::Finding> {
+    let diagnosis = state.diagnosis.as_ref()?;
+    let least = diagnosis.stiffnesses.first()?;
+    let (node, by) = least.movements.first()?;
+    let how = match diagnosis.standing {
+        Standing::Firm => return None,
+        Standing::Weak => format!(
+            "less than {} % of that of the reference state",
+            rounded(100.0 * LITTLE_LEFT, 2)
+        ),
+        Standing::Unstable => "none: the state is not stable".to_owned(),
+    };
+    let id = net.node_name(*node);
+    let message = format!(
+        "the least stiffness is {} N/m, {how}; most moves {}, along ({:.2}, {:.2}, {:.2})",
+        rounded(least.stiffness, 3),
+        Quoted(id),
+        by.x,
+        by.y,
+        by.z
+    );
+    Some(finding(
+        v1::FindingSeverity::Doubt,
+        reasons::LITTLE_STIFFNESS,
+        id,
+        rounded(least.stiffness, 3),
+        message,
+        "give more prestress there, or hold the node along that direction",
     ))
 }
 

@@ -156,15 +156,18 @@ pub(super) fn of_shape(net: &Net, error: &ShapeError) -> (v1::CaseOutcome, v1::F
             none,
             members.iter().map(|(member, _)| member.clone()).collect(),
         ),
-        ShapeError::TargetsUnmet { targets, left, .. } => (
-            "TARGETS_UNMET",
-            "take the nearest balanced set, drop one of the wishes, or leave some members to balance {}",
-            left.iter().map(|left| left.node.clone()).collect(),
-            targets
-                .iter()
-                .filter(|target| !target.met)
-                .map(|target| target.member.clone())
-                .collect(),
+        ShapeError::BadTarget { .. } => ("BAD_TARGET", "mend the target, or take it out", none.clone(), none),
+        ShapeError::NothingAdjustable => (
+            "NOTHING_ADJUSTABLE",
+            "give some prestress rules adjust {}",
+            none.clone(),
+            none,
+        ),
+        ShapeError::NotMeasurable { .. } => (
+            "TARGET_NOT_MEASURABLE",
+            "start from other force densities, or take the target out",
+            none.clone(),
+            none,
         ),
         ShapeError::NoLength { member, from, to } => (
             "NO_LENGTH",

@@ -40,7 +40,7 @@ pub fn freeze(
         from_digest: work.digest.clone(),
         digest: digest(&frozen),
         reference: Some(summary),
-        cautions: cautions::cautions(),
+        cautions: cautions::of_net(work, &plan.brief().net),
     };
     let parts = merging_parts(frozen).into_iter().map(Part::Brief);
     let parts = parts.chain([Part::Summary(closing)]);
@@ -156,7 +156,18 @@ fn merging_parts(mut brief: v1::Brief) -> Vec<v1::Brief> {
                 })+
             };
         }
-        take!(nodes, sections, roles, cables, struts, groups, support_groups);
+        take!(
+            nodes,
+            sections,
+            roles,
+            cables,
+            struts,
+            groups,
+            support_groups,
+            skins,
+            zones,
+            panels
+        );
         parts.extend(lists.into_iter().map(in_net));
     }
     if let Some(prestress) = &mut brief.prestress {

@@ -98,6 +98,8 @@ pub fn id_tables(_work: &Work, plan: &Plan, cases: &[usize]) -> Vec<v1::IdTable>
     tables.extend(rows(v1::Range::End, &mut ends));
     let mut cases = cases.iter().map(|case| plain(&brief.cases[*case].name));
     tables.extend(rows(v1::Range::Case, &mut cases));
+    let mut actions = brief.actions.iter().map(|action| plain(&action.name));
+    tables.extend(rows(v1::Range::Action, &mut actions));
     tables
 }
 

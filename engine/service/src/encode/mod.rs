@@ -6,14 +6,20 @@
 //! | `head` | what is about to run: sizes, settings, tables of ids |
 //! | `progress` | what is being worked on |
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
-//! | `closing`, `verdicts`, `cautions` | the end of a run |
+//! | `surface` | panels, and what each action does in the reference state |
+//! | `effects` | sums of effects, paths of cases, losses of members |
+//! | `diagnosis` | free movements, states of self-stress, least stiffnesses |
+//! | `closing`, `verdicts`, `rules`, `anchors`, `cautions` | the end of a run |
 //! | `freeze` | the brief with what was found written in |
 //! | `report` | what reading the brief told |
 //! | `parts` | how much fits a message |
 
+mod anchors;
 mod cautions;
 mod closing;
+mod diagnosis;
 mod doubts;
+mod effects;
 mod failure;
 mod freeze;
 mod head;
@@ -21,11 +27,14 @@ mod outcome;
 mod parts;
 mod progress;
 mod report;
+mod rules;
 mod state;
+mod surface;
 mod verdicts;
 
 pub use cautions::cautions;
 pub use closing::{Noted, Tally, closing};
+pub use effects::{design_effect, path};
 pub use freeze::freeze;
 pub use head::{id_tables, started};
 pub use outcome::{case, engine_error, reference};

@@ -11,13 +11,14 @@ use v1::run_response::Event;
 use super::closing::Noted;
 use super::parts::{count, event, first_ids};
 use super::progress::way;
-use super::{doubts, failure, state};
+use super::{diagnosis, doubts, failure, state, surface};
 use crate::decode::{REFERENCE, Work, reasons};
+use crate::words::quoted_list;
 
 /// Loose nodes that are listed.
 const LOOSE_NODES: usize = 1000;
 
-/// The reference state: beginning, arrays, findings, summary.
+/// The reference state: beginning, arrays, findings, summary; then panels and what each action does.
 #[must_use]
 pub fn reference(work: &Work, plan: &Plan, found: &Result<ReferenceOutcome, ShapeError>) -> Vec<v1::RunResponse> {
     let begin = v1::CaseBegin {
@@ -30,10 +31,14 @@ pub fn reference(work: &Work, plan: &Plan, found: &Result<ReferenceOutcome, Shap
         let lengths = &reference.state.unstressed_lengths;
         messages.extend(state::arrays(&plan.brief().net, REFERENCE, &reference.result, lengths));
         messages.extend(state::history(REFERENCE, &reference.history));
+        messages.extend(diagnosed(&plan.brief().net, REFERENCE, &reference.result));
     }
     let findings = reference_findings(work, plan, found);
     messages.extend(findings.into_iter().map(|finding| event(Event::Finding(finding))));
     messages.push(event(Event::CaseSummary(reference_summary(plan, found))));
+    if let Ok(reference) = found {
+        messages.extend(surface::tables(plan, reference));
+    }
     messages
 }
 
@@ -43,7 +48,11 @@ pub(super) fn reference_findings(
     found: &Result<ReferenceOutcome, ShapeError>,
 ) -> Vec<v1::Finding> {
     match found {
-        Ok(reference) => doubts::of_state(work, &plan.brief().net, REFERENCE, &reference.result),
+        Ok(reference) => {
+            let mut findings = doubts::of_state(work, &plan.brief().net, REFERENCE, &reference.result);
+            findings.extend(surface::doubts(work, plan, reference));
+            findings
+        }
         Err(error) => vec![no_answer(REFERENCE, &failure::of_shape(&plan.brief().net, error).1)],
     }
 }
@@ -94,6 +103,7 @@ pub fn case(
         } => {
             messages.extend(state::arrays(net, name, result, &reference.state.unstressed_lengths));
             messages.extend(state::history(name, &solution.history));
+            messages.extend(diagnosed(net, name, result));
             let mut closing = summary(net, name, result, reference);
             closing.set_way(way(solution.way));
             closing.load_factor = solution.load_factor;
@@ -122,6 +132,12 @@ pub fn case(
         },
     };
     closing.case.clone_from(name);
+    let removed = work.removed(case);
+    if let (Some(failure), false) = (closing.failure.as_mut(), removed.is_empty()) {
+        failure
+            .message
+            .push_str(&format!(" Taken out: {}.", quoted_list(removed)));
+    }
     findings.extend(closing.failure.as_ref().map(|failure| no_answer(name, failure)));
     let noted = Noted::new(digest, &findings);
     messages.extend(findings.into_iter().map(|finding| event(Event::Finding(finding))));
@@ -173,6 +189,11 @@ fn no_answer(case: &str, failure: &v1::Failure) -> v1::Finding {
     }
 }
 
+fn diagnosed(net: &Net, case: &str, state: &StateResult) -> Vec<v1::RunResponse> {
+    let found = state.diagnosis.as_deref();
+    found.map_or_else(Vec::new, |found| diagnosis::parts(net, case, found))
+}
+
 /// What a state says of itself.
 fn summary(net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutcome) -> v1::CaseSummary {
     let name = |node: usize| net.nodes()[node].name.clone();
@@ -188,6 +209,8 @@ fn summary(net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutc
         imbalance_allowed_n: audit.allowed,
         load_sum_n: state.load_sum.iter().copied().collect(),
         support_force_sum_n: state.support_sum.iter().copied().collect(),
+        load_moment_nm: state.load_moment.iter().copied().collect(),
+        support_moment_nm: state.support_moment.iter().copied().collect(),
         largest_movement_m: movement.map_or(0.0, |(_, moved)| moved),
         largest_movement_node: movement.map_or_else(String::new, |(node, _)| name(node)),
         lowest_tension_share: lowest.map(|(_, share)| share),
@@ -196,6 +219,9 @@ fn summary(net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutc
         }),
         loose_nodes: first_ids(state.loose_nodes.iter().map(|node| net.node_name(*node)), LOOSE_NODES),
         loose_nodes_total: count(state.loose_nodes.len()),
+        smallest_stiffness_n_per_m: (state.diagnosis.as_ref())
+            .and_then(|found| found.stiffnesses.first())
+            .map(|least| least.stiffness),
         ..v1::CaseSummary::default()
     }
 }
@@ -204,8 +230,10 @@ fn summary(net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutc
 fn lowest_tension_share(net: &Net, state: &StateResult, reference: &ReferenceOutcome) -> Option<(usize, f64)> {
     let before = &reference.state.axial_forces;
     let taut = |segment: &usize| net.segments()[*segment].law == AxialLaw::TensionOnly && before[*segment] > 0.0;
+    let left = |segment: &usize| !state.removed.contains(&SegmentId::new(*segment));
     (0..before.len())
         .filter(taut)
+        .filter(left)
         .map(|segment| (segment, state.axial_forces[segment] / before[segment]))
         .reduce(|lowest, next| if next.1 < lowest.1 { next } else { lowest })
 }

@@ -45,7 +45,7 @@ impl Array<'_> {
     }
 }
 
-fn flat<'a>(vectors: impl IntoIterator<Item = &'a Vector3<f64>>) -> Vec<f64> {
+pub(super) fn flat<'a>(vectors: impl IntoIterator<Item = &'a Vector3<f64>>) -> Vec<f64> {
     vectors
         .into_iter()
         .flat_map(|vector| [vector.x, vector.y, vector.z])
@@ -105,6 +105,8 @@ pub(super) fn arrays(net: &Net, case: &str, state: &StateResult, reference_lengt
         .iter()
         .map(|end| end.force.z.atan2(end.force.x.hypot(end.force.y)).to_degrees());
     send("end_angle_up_deg", Range::End, 1, up.collect());
+    send("panel_area_m2", Range::Panel, 1, state.panel_areas.clone());
+    send("panel_pressure_pa", Range::Panel, 1, state.panel_pressures.clone());
     messages
 }
 
@@ -140,9 +142,11 @@ pub(super) fn history(case: &str, history: &[IterationReport]) -> Vec<v1::RunRes
     messages
 }
 
-fn unit(name: &str) -> &'static str {
+pub(super) fn unit(name: &str) -> &'static str {
     match name.rsplit('_').next() {
         Some("m") => "m",
+        Some("m2") => "m2",
+        Some("pa") => "Pa",
         Some("n") => "N",
         Some("j") => "J",
         Some("deg") => "deg",

@@ -3,14 +3,17 @@
 use prost::Message as _;
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::{CheckKind, CheckResult, Plan, Verdict};
-use ropewalk_numerics::check::Covered;
+use ropewalk_numerics::check::{Covered, Judgement, Lack};
 
 use super::parts::{BYTES, count, first_ids};
-use crate::decode::Work;
+use super::rules;
+use crate::decode::{REFERENCE, Work, check_field};
 use crate::words::shown;
 
 /// Parts that could not be judged and are listed.
 const NOT_JUDGED: usize = 100;
+/// Judged parts that are listed.
+const JUDGED: usize = 200;
 /// Names that a check read and that are repeated.
 const OVER: usize = 100;
 
@@ -35,29 +38,32 @@ pub(super) fn checks(work: &Work, plan: &Plan, results: &[CheckResult]) -> Vec<v
 pub(super) fn not_judged(work: &Work, plan: &Plan) -> Vec<v1::CheckResult> {
     let checks = plan.brief().checks.iter().enumerate();
     let results = checks.map(|(number, check)| {
-        let covered: Vec<Covered> = check.covered().collect();
+        let covered = check.covered();
         v1::CheckResult {
             not_judged: count(covered.len()),
-            not_judged_ids: ids(plan, &covered),
+            not_judged_ids: ids(plan, covered.iter()),
             not_judged_why: "there is no reference state".to_owned(),
             verdict: v1::Verdict::NoAnswer.into(),
-            ..head(work, number, check.kind)
+            ..head(work, number, &check.kind)
         }
     });
     fit(results.collect())
 }
 
-/// Takes out lists of ids, from the last check on, until all checks fit one message.
+/// Takes out lists, from the last check on, until all checks fit one message: first the judged parts, then ids.
 fn fit(mut results: Vec<v1::CheckResult>) -> Vec<v1::CheckResult> {
     let mut size: usize = results.iter().map(|result| result.encoded_len() + 8).sum();
-    for result in results.iter_mut().rev() {
-        if size <= BYTES {
-            break;
+    for (judgements, names) in [(20, usize::MAX), (0, usize::MAX), (0, 3)] {
+        for result in results.iter_mut().rev() {
+            if size <= BYTES {
+                return results;
+            }
+            let before = result.encoded_len();
+            result.judgements.truncate(judgements);
+            result.not_judged_ids.truncate(names);
+            result.over.truncate(names);
+            size -= before - result.encoded_len();
         }
-        let before = result.encoded_len();
-        result.not_judged_ids.truncate(3);
-        result.over.truncate(3);
-        size -= before - result.encoded_len();
     }
     results
 }
@@ -68,66 +74,71 @@ fn name(plan: &Plan, covered: Covered) -> &str {
         Covered::Cable(cable) => &net.cables()[cable.index()].name,
         Covered::Strut(strut) => &net.struts()[strut.index()].name,
         Covered::Node(node) => net.node_name(node),
+        Covered::Panel(panel) => &net.panels()[panel].name,
+        Covered::Point => "",
     }
 }
 
-fn ids(plan: &Plan, covered: &[Covered]) -> Vec<String> {
-    first_ids(covered.iter().map(|covered| name(plan, *covered)), NOT_JUDGED)
+/// The part that was judged; of a clearance the member or panel that comes nearest.
+fn judged_name<'p>(plan: &'p Plan, judgement: &Judgement) -> &'p str {
+    match (judgement.of, judgement.segment, judgement.panel) {
+        (Covered::Point, Some(segment), _) => plan.brief().net.member_name(segment),
+        (Covered::Point, None, Some(panel)) => name(plan, Covered::Panel(panel)),
+        (of, ..) => name(plan, of),
+    }
 }
 
-fn head(work: &Work, number: usize, kind: CheckKind) -> v1::CheckResult {
-    let (kind, unit, source) = match kind {
-        CheckKind::Safety { .. } => (
-            "safety",
-            "N",
-            "factor of the brief times largest tension, against the breaking force with end fittings",
-        ),
-        CheckKind::Slackness { .. } => (
-            "slackness",
-            "",
-            "least tension over the tension in the reference state, against the share of the brief",
-        ),
-        CheckKind::Movement { .. } => (
-            "movement",
-            "m",
-            "distance from the place in the reference state, against the limit of the brief",
-        ),
-        CheckKind::AnchorPull { .. } => (
-            "anchor_pull",
-            "N",
-            "resultant support force, against the limit of the brief",
-        ),
-    };
-    let over = work.message.checks[number].over.iter().map(String::as_str);
+/// Name of a case in results.
+pub(super) fn case_name(plan: &Plan, case: Option<usize>) -> &str {
+    case.map_or(REFERENCE, |case| plan.brief().case_name(case))
+}
+
+fn ids<'a>(plan: &Plan, covered: impl Iterator<Item = &'a Covered>) -> Vec<String> {
+    first_ids(covered.map(|covered| name(plan, *covered)), NOT_JUDGED)
+}
+
+fn head(work: &Work, number: usize, kind: &CheckKind) -> v1::CheckResult {
+    let message = &work.message.checks[number];
+    let (_, unit, _) = rules::measure(rules::usual_measure(kind));
     v1::CheckResult {
         path: format!("checks[{number}]"),
-        kind: kind.to_owned(),
-        over: first_ids(over, OVER),
+        kind: message.kind.as_ref().map_or("", check_field).to_owned(),
+        over: first_ids(message.over.iter().map(String::as_str), OVER),
         unit: unit.to_owned(),
-        source: source.to_owned(),
+        source: rules::source(work, number, kind),
         ..v1::CheckResult::default()
     }
 }
 
 fn check(work: &Work, plan: &Plan, number: usize, result: &CheckResult) -> v1::CheckResult {
+    let kind = &result.kind;
+    let worst = result.worst();
     let mut message = v1::CheckResult {
         judged: count(result.judgements.len()),
         not_judged: count(result.not_judged.len()),
-        not_judged_ids: ids(plan, &result.not_judged),
+        not_judged_ids: ids(plan, result.not_judged.iter().map(|(part, _)| part)),
         not_judged_why: why_not_judged(result),
         verdict: verdict(result.verdict()).into(),
-        ..head(work, number, result.kind)
+        judgements: judgements(plan, &result.judgements),
+        notes: rules::notes(work, kind, worst),
+        ..head(work, number, kind)
     };
-    if let Some(worst) = result.worst() {
-        message.worst = name(plan, worst.of).to_owned();
-        message.demand = worst.demand;
-        message.limit = worst.limit;
+    if let Some(worst) = worst {
+        let (_, unit, scale) = rules::measure(worst.measure);
+        message.worst = judged_name(plan, worst).to_owned();
+        message.demand = worst.demand * scale;
+        message.limit = worst.limit * scale;
+        message.unit = unit.to_owned();
         message.ratio = worst.ratio;
-        message.governing_case.clone_from(&plan.brief().cases[worst.case].name);
+        message.governing_case = case_name(plan, worst.case).to_owned();
         let origin = worst
             .segment
             .and_then(|segment| work.breaking_force_origin(segment.index()));
-        if let (CheckKind::Safety { .. }, Some(origin)) = (result.kind, origin) {
+        let of_strength = matches!(
+            kind,
+            CheckKind::Safety { .. } | CheckKind::Resistance { .. } | CheckKind::ShareOfStrength { .. }
+        );
+        if let Some(origin) = origin.filter(|_| of_strength) {
             message
                 .source
                 .push_str(&format!(" (breaking force: {})", shown(origin)));
@@ -136,24 +147,31 @@ fn check(work: &Work, plan: &Plan, number: usize, result: &CheckResult) -> v1::C
     message
 }
 
+/// Judged parts, the largest ratio first.
+fn judgements(plan: &Plan, all: &[Judgement]) -> Vec<v1::Judgement> {
+    let mut sorted: Vec<&Judgement> = all.iter().collect();
+    // Stable: of equals the first of the check.
+    sorted.sort_by(|a, b| b.ratio.total_cmp(&a.ratio));
+    let listed = sorted.into_iter().take(JUDGED).map(|judgement| {
+        let (words, unit, scale) = rules::measure(judgement.measure);
+        v1::Judgement {
+            id: judged_name(plan, judgement).to_owned(),
+            demand: judgement.demand * scale,
+            limit: judgement.limit * scale,
+            unit: unit.to_owned(),
+            ratio: judgement.ratio,
+            passes: judgement.passes,
+            governing_case: case_name(plan, judgement.case).to_owned(),
+            measure: words.to_owned(),
+        }
+    });
+    listed.collect()
+}
+
+/// Each reason once, in a fixed order.
 fn why_not_judged(result: &CheckResult) -> String {
-    let struts = result
-        .not_judged
-        .iter()
-        .filter(|part| matches!(part, Covered::Strut(_)))
-        .count();
-    let mut reasons = Vec::new();
-    if struts < result.not_judged.len() {
-        reasons.push(match result.kind {
-            _ if !result.unanswered.is_empty() && result.judgements.is_empty() => "no case with a sound answer",
-            CheckKind::Safety { .. } => "no breaking force is given",
-            CheckKind::Slackness { .. } => "slack in the reference state",
-            CheckKind::Movement { .. } => "only slack ropes lead there: the place is not determined",
-            CheckKind::AnchorPull { .. } => "not supported",
-        });
-    }
-    if struts > 0 {
-        reasons.push("struts are not judged by this check");
-    }
-    reasons.join("; ")
+    let mut lacks: Vec<Lack> = result.not_judged.iter().map(|(_, lack)| *lack).collect();
+    lacks.sort_unstable();
+    lacks.dedup();
+    lacks.into_iter().map(rules::lack).collect::<Vec<_>>().join("; ")
 }

@@ -176,9 +176,15 @@ impl Solver<'_> {
                     encode::engine_error(&self.prepared.work, &self.prepared.plan, case)
                 }
             };
-            tally.add(case, &noted);
+            let effects = tally.add(case, &noted);
             self.desk.done.fetch_add(1, Ordering::Relaxed);
             outbox.send(messages).await?;
+            for effect in effects {
+                let Prepared { work, plan } = &**self.prepared;
+                outbox
+                    .send(encode::design_effect(work, plan, self.reference, &effect))
+                    .await?;
+            }
         }
     }
 
@@ -191,11 +197,19 @@ impl Solver<'_> {
         self.work.shared.pool.start(move || {
             let _place = place;
             break_on_purpose(breaks);
-            let outcome = clock.time(|| {
+            let (outcome, path) = clock.time(|| {
                 let observe = &mut |report: &_| desk.observe(&about, Task::Case(case), report, &stop);
-                about.plan.case(&reference, case, observe)
+                let outcome = about.plan.case(&reference, case, observe);
+                (outcome, about.plan.path(&reference, case, observe))
             });
-            encode::case(&about.work, &about.plan, &reference, case, &outcome)
+            let (mut messages, noted) = encode::case(&about.work, &about.plan, &reference, case, &outcome);
+            if let Some(path) = path {
+                // Arrays of a case lie before its summary.
+                let last = messages.len().saturating_sub(1);
+                let name = &about.plan.brief().cases[case].name;
+                messages.splice(last..last, encode::path(name, &path));
+            }
+            (messages, noted)
         })
     }
 }

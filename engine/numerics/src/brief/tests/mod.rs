@@ -28,9 +28,8 @@ fn action(name: &str, loads: Vec<Load>) -> Action {
 fn case(name: &str, factors: &[(usize, f64)]) -> CaseGiven {
     CaseGiven {
         name: name.to_owned(),
-        sets: Vec::new(),
         factors: factors.to_vec(),
-        load_steps: None,
+        ..CaseGiven::default()
     }
 }
 
@@ -53,7 +52,9 @@ fn brief(net: Net, prestress: Prestress, actions: Vec<Action>, cases: Vec<CaseGi
         prestress,
         actions,
         cases,
+        effects: Vec::new(),
         checks: Vec::new(),
+        diagnosis: None,
         settings: Settings::default(),
     }
 }
@@ -63,8 +64,7 @@ fn densities(net: &Net, density: f64) -> Prestress {
     Prestress {
         rules: vec![PrestressRule::ForceDensity(density); net.segments().len()],
         mean_tensions: Vec::new(),
-        hold: Vec::new(),
-        under: Vec::new(),
+        ..Prestress::default()
     }
 }
 

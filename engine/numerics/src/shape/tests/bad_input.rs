@@ -186,8 +186,8 @@ fn tensions_that_do_not_balance() {
         rules: [500.0, 600.0, 2000.0].map(PrestressRule::Tension).to_vec(),
         ..all(&net, PrestressRule::Balance)
     };
-    let outcome = shape(&net, &prestress, vec![]);
-    let text = message(outcome);
+    let found = shape(&net, &prestress, vec![]).expect("the nearest balanced set");
+    let text = found.report.unmet_in_words().expect("something is not met");
     assert!(text.contains("the given tensions leave"), "{text}");
     assert!(text.contains("instead of"), "{text}");
 }
@@ -200,14 +200,23 @@ fn dependent_tensions_that_disagree() {
         rules: [500.0, 700.0].map(PrestressRule::Tension).to_vec(),
         ..all(&net, PrestressRule::Balance)
     };
-    let outcome = shape(&net, &prestress, vec![]);
-    let Err(ShapeError::TargetsUnmet { rank, targets, left }) = outcome else {
-        panic!("{outcome:?}");
-    };
-    assert_eq!(rank, 1);
+    let report = shape(&net, &prestress, vec![])
+        .expect("the nearest balanced set")
+        .report;
+    let unmet = report.unmet.as_ref().expect("they disagree");
+    let left = &unmet.left;
+    assert_eq!(unmet.rank, Some(1));
     // Least squares of logarithms: both get the geometric mean.
-    for target in &targets {
+    for target in &report.targets {
         close(target.found, (500.0_f64 * 700.0).sqrt(), 1e-3);
+    }
+    // Each alone sets the other as well: there is one tension in a straight rope.
+    assert_eq!(unmet.fights.len(), 1);
+    let fight = unmet.fights[0];
+    for side in 0..2 {
+        let wanted = report.targets[fight.targets[side]].wanted;
+        close(fight.alone[side], wanted, 1e-6);
+        close(fight.left_out[1 - side], wanted, 1e-6);
     }
     assert_eq!(left[0].node, "m");
     close(left[0].force.norm(), 200.0, 1e-3);

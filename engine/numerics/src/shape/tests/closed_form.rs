@@ -44,7 +44,13 @@ fn a_tension_in_every_segment() {
     for force in &found.state.axial_forces {
         close(*force, 12_345.0, 1e-10 * 12_345.0);
     }
-    assert!(found.report.targets.iter().all(|t| t.met && !t.is_mean));
+    assert!(
+        found
+            .report
+            .targets
+            .iter()
+            .all(|t| t.met && t.quantity == Quantity::Tension)
+    );
 }
 
 /// The length of minimal weight: equal tensions meet at the point where unit vectors cancel (Fermat's point).
@@ -90,7 +96,7 @@ fn a_mean_tension_with_one_force_density() {
     for (force, length) in found.state.axial_forces.iter().zip([l2 + 100.0 / q, l2, l2]) {
         close(*force, q * length, 1e-9);
     }
-    assert!(found.report.targets[0].met && found.report.targets[0].is_mean);
+    assert!(found.report.targets[0].met && found.report.targets[0].quantity == Quantity::MeanTension);
 }
 
 /// On a vertical line: `q (10 − z) = EA (z/L0 − 1)` between a force density above and a rope of given length below.

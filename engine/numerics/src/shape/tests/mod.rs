@@ -7,6 +7,8 @@ mod grids;
 mod properties;
 mod published;
 mod sensitivity;
+mod skins;
+mod targets;
 mod tent;
 
 use std::ops::ControlFlow;
@@ -14,7 +16,7 @@ use std::sync::Arc;
 
 use nalgebra::Vector3;
 
-use super::{Found, Prestress, PrestressRule, ShapeError, find};
+use super::{Adjustable, Found, Prestress, PrestressRule, Quantity, SagMeasure, ShapeError, ShapeTarget, Wish, find};
 use crate::equilibrium::{Analysis, Settings};
 use crate::load::{Action, Load};
 use crate::model::{Net, NodeId};
@@ -39,9 +41,7 @@ fn shape(net: &Arc<Net>, prestress: &Prestress, loads: Vec<Load>) -> Result<Foun
 fn all(net: &Net, rule: PrestressRule) -> Prestress {
     Prestress {
         rules: vec![rule; net.segments().len()],
-        mean_tensions: Vec::new(),
-        hold: Vec::new(),
-        under: Vec::new(),
+        ..Prestress::default()
     }
 }
 
