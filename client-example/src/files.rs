@@ -79,7 +79,11 @@ pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::E
     if let Some(sections) = draw::sections(run) {
         put("sections.svg", sections.as_bytes())?;
     }
-    let on_page: Vec<Sheet> = sheets.into_iter().filter(|sheet| sheet.file != "anchors").collect();
+    // These are long, and the page shows what they tell in other ways.
+    let on_page: Vec<Sheet> = sheets
+        .into_iter()
+        .filter(|sheet| !["anchors", "loss-cells", "panel-loads"].contains(&sheet.file))
+        .collect();
     put("report.html", report::page(run, &on_page, &scale).as_bytes())?;
     Ok(Written {
         files: count,
@@ -146,7 +150,17 @@ pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
     if !run.diagnoses.is_empty() {
         sheets.push(sheet::diagnoses(run));
     }
-    sheets.extend(sheet::doubling(run));
+    let if_any = [
+        sheet::judgements(run),
+        sheet::losses(run),
+        sheet::loss_cells(run),
+        sheet::effects(run),
+        sheet::over_linearity(run),
+        sheet::doubling(run),
+        sheet::loads(run),
+        sheet::panel_loads(run),
+    ];
+    sheets.extend(if_any.into_iter().flatten());
     sheets
 }
 
@@ -210,6 +224,15 @@ fn results(run: &Run) -> String {
         "ends": ends,
         "cases": run.case_ids,
         "states": states,
+        "design_effects": run.effects.iter().map(|effect| {
+            json!({
+                "effect": message_json("DesignEffect", &effect.effect.encode_to_vec()),
+                "columns": columns(&effect.columns),
+            })
+        }).collect::<Vec<_>>(),
+        "losses": run.losses.iter().map(|row| message_json("LossRow", &row.encode_to_vec())).collect::<Vec<_>>(),
+        "panels": run.panels.iter().map(|panel| message_json("PanelEntry", &panel.encode_to_vec())).collect::<Vec<_>>(),
+        "load_pictures": run.loads.iter().map(|picture| message_json("LoadPicture", &picture.encode_to_vec())).collect::<Vec<_>>(),
         "envelope": columns(&run.envelope),
         "broken_off": run.broken_off,
     });

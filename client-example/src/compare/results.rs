@@ -86,9 +86,12 @@ pub(super) struct Comparison {
 }
 
 /// Arrays that repeat others in another form, or tell of the way and not of the result.
-const LEFT_OUT: [&str; 6] = [
+const LEFT_OUT: [&str; 9] = [
     "stretch",
     "length_m",
+    "path_load_factor",
+    "path_movement_m",
+    "path_tension_n",
     "support_force_own_axes_n",
     "end_force_n",
     "end_angle_plan_deg",
@@ -107,6 +110,18 @@ impl Comparison {
             };
             comparison.states += 1;
             comparison.columns(&old.id, [&old.columns, &new.columns], &labels, limits, &mut unlike);
+        }
+        for old in &a.effects {
+            let Some(new) = b.effects.iter().find(|other| other.effect.id == old.effect.id) else {
+                continue;
+            };
+            comparison.columns(
+                &old.effect.id,
+                [&old.columns, &new.columns],
+                &labels,
+                limits,
+                &mut unlike,
+            );
         }
         comparison.columns("envelope", [&a.envelope, &b.envelope], &labels, limits, &mut unlike);
         if !unlike.is_empty() {
@@ -375,6 +390,7 @@ impl Labels {
             (v1::Range::Support, "anchors"),
             (v1::Range::End, "ends"),
             (v1::Range::Case, "cases"),
+            (v1::Range::Panel, "panels"),
         ];
         for (range, words) in ranges {
             let (old, new) = (entries(a, range), entries(b, range));
@@ -445,6 +461,7 @@ fn entries(run: &Run, range: v1::Range) -> Vec<String> {
             .map(|end| format!("{} at {}", run.member_id(end.segment), run.nodes[end.node]))
             .collect(),
         v1::Range::Case => run.case_ids.clone(),
+        v1::Range::Panel => run.panels.iter().map(|panel| panel.id.clone()).collect(),
         _ => Vec::new(),
     };
     let mut times: HashMap<String, usize> = HashMap::new();

@@ -1,6 +1,7 @@
 //! One page that holds everything: no network, no other file, readable on a phone and on paper.
 
 mod data;
+mod matrix;
 mod pictures;
 
 use ropewalk_api::ropewalk::v1;
@@ -14,13 +15,14 @@ use crate::sheet::{self, Sheet};
 
 const STYLE: &str = include_str!("report.css");
 /// Parts of the script in their order: what all share comes first.
-const SCRIPT: [&str; 6] = [
+const SCRIPT: [&str; 7] = [
     include_str!("wide.js"),
     include_str!("common.js"),
     include_str!("shape.js"),
     include_str!("tension_map.js"),
     include_str!("together.js"),
     include_str!("section.js"),
+    include_str!("load_picture.js"),
 ];
 
 /// Findings that the page lists.
@@ -42,6 +44,8 @@ pub(crate) fn page(run: &Run, sheets: &[Sheet], scale: &Scale) -> String {
             // What a sheet tells in numbers is drawn behind it.
             "checks" => body.push_str(&pictures::tension_map(run)),
             "anchor-sets" => body.push_str(&pictures::together(run)),
+            "losses" => body.push_str(&matrix::losses(run)),
+            "loads" => body.push_str(&pictures::load_picture(run)),
             "doubling" => body.push_str(&doubling(run)),
             _ => {}
         }

@@ -127,6 +127,30 @@ pub(super) fn together(run: &Run) -> String {
     )
 }
 
+/// What each action does to each panel.
+pub(super) fn load_picture(run: &Run) -> String {
+    if !has_shape(run) {
+        return String::new();
+    }
+    let actions: String = (run.loads.iter().enumerate())
+        .map(|(at, picture)| {
+            let open = match picture.without_value_total {
+                0 => String::new(),
+                count => format!(" ({count} panels without value)"),
+            };
+            format!("<option value=\"{at}\">{}{open}</option>", markup(&picture.action))
+        })
+        .collect();
+    format!(
+        "<section id=\"load-picture\"><h2>Load picture</h2>\n<div class=\"tools\"><label>action <select id=\"loads-action\">{actions}\
+         </select></label></div>\n<p id=\"loads-words\" class=\"note\"></p>\n<div class=\"stage\"><canvas id=\"loads-plan\" \
+         class=\"picture\" role=\"img\" aria-label=\"Plan of the panels with the pressure of the action on each\"></canvas>\
+         <output id=\"loads-told\" class=\"told\"></output></div>\n<p class=\"note\">Numbers: kPa, ▼ presses on the outer side or down, ▲ \
+         lifts off it; darker is more. The cross marks where the sum acts. Forces on single nodes and along ropes are in the sum, \
+         not in the picture.</p>\n</section>\n"
+    )
+}
+
 /// A section along a picked rope.
 pub(super) fn section(run: &Run) -> String {
     let segments = run.cable_segments();

@@ -21,7 +21,7 @@
       why: now.why, acting: now.words, id: now.id };
   }
   function name(index) { return index < 0 || !data.states[index] ? "reference" : data.states[index].id; }
-  function share(now, s) { return now.kn && data.breaking[s] ? now.kn[s] / data.breaking[s] : null; }
+  function share(now, s) { return now.kn && now.kn[s] !== null && data.breaking[s] ? now.kn[s] / data.breaking[s] : null; }
   function percent(value) {
     var text = (100 * value).toFixed(0);
     return text === "100" && value > 1 ? (100 * value).toFixed(1) : text;
@@ -61,6 +61,7 @@
     order.forEach(function (s) {
       var strut = data.segments[s][2] >= data.cables, part = share(now, s), gone = kn && !strut && kn[s] === null;
       context.setLineDash([]);
+      if (strut && kn && kn[s] === null && !now.worst) { context.strokeStyle = "#c3cad1"; context.lineWidth = 1; line(context, s); return; }
       if (strut) {
         context.strokeStyle = kn ? INK : MUTED; context.lineWidth = 6; line(context, s);
         context.strokeStyle = "#fff"; context.lineWidth = 2.5; line(context, s);
@@ -120,6 +121,7 @@
       var most = -1, open = 0;
       for (var s = 0; s < data.segments.length; s++) {
         if (data.segments[s][2] >= data.cables) continue;
+        if (now.kn[s] === null) continue;
         var part = share(now, s);
         if (part === null) open += 1;
         else if (most < 0 || part > share(now, most)) most = s;
@@ -163,6 +165,7 @@
         (now.worst ? "\nin " + name(now.pullFrom[at.support]) : "");
     }
     var s = at.segment, part = data.segments[s], line = data.members[part[2]] + "\n" + data.nodes[part[0]] + " to " + data.nodes[part[1]];
+    if (now.kn && now.kn[s] === null && !now.worst) return line + "\ntaken out";
     if (!now.kn || now.kn[s] === null || now.kn[s] === undefined) return line;
     if (now.slack.has(s) && !now.worst) return line + "\nslack, 0 kN";
     line += "\n" + digits(Math.abs(now.kn[s])) + " kN" + (now.kn[s] < 0 ? " compression" : "");

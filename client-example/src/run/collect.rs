@@ -6,7 +6,7 @@ use prost::Message as _;
 use ropewalk_api::ropewalk::v1;
 use ropewalk_api::ropewalk::v1::run_response::Event;
 
-use super::{Column, End, Member, Run, Segment, State};
+use super::{Column, Effect, End, Member, Run, Segment, State};
 
 /// A stream that does not keep to the contract.
 #[derive(Clone, Debug, PartialEq, thiserror::Error)]
@@ -38,6 +38,10 @@ pub(crate) struct Collector {
     ended: Vec<v1::CaseSummary>,
     findings: Vec<v1::Finding>,
     diagnoses: Vec<v1::StateDiagnosis>,
+    effects: Vec<v1::DesignEffect>,
+    losses: Vec<v1::LossRow>,
+    panels: Vec<v1::PanelEntry>,
+    loads: Vec<v1::LoadPicture>,
     timing: Option<v1::Timing>,
     summary: Option<v1::Summary>,
 }
@@ -90,11 +94,21 @@ impl Collector {
             Event::Timing(timing) => self.timing = Some(timing),
             Event::Summary(summary) => self.summary = Some(summary),
             Event::Diagnosis(part) => self.diagnoses.push(part),
-            Event::Panels(_)
-            | Event::LoadPicture(_)
-            | Event::Progress(_)
-            | Event::DesignEffect(_)
-            | Event::LossTable(_) => {}
+            Event::DesignEffect(effect) => self.effects.push(effect),
+            Event::LossTable(part) => {
+                if size(part.offset) != self.losses.len() {
+                    return Err(odd(format!("the table of losses has a gap at {}", part.offset)));
+                }
+                self.losses.extend(part.rows);
+            }
+            Event::Panels(part) => {
+                if size(part.offset) != self.panels.len() {
+                    return Err(odd(format!("the table of panels has a gap at {}", part.offset)));
+                }
+                self.panels.extend(part.panels);
+            }
+            Event::LoadPicture(part) => self.take_load_picture(part)?,
+            Event::Progress(_) => {}
         }
         Ok(())
     }
@@ -121,6 +135,23 @@ impl Collector {
         table.from_nodes.extend(part.from_nodes);
         table.to_nodes.extend(part.to_nodes);
         table.segments.extend(part.segments);
+        Ok(())
+    }
+
+    fn take_load_picture(&mut self, part: v1::LoadPicture) -> Result<(), Oddity> {
+        match self.loads.last_mut().filter(|known| known.action == part.action) {
+            None => self.loads.push(part),
+            Some(known) => {
+                if size(part.offset) != known.pressure_pa.len().max(known.on_plan_pa.len()) {
+                    return Err(odd(format!(
+                        "the picture of \"{}\" has a gap at {}",
+                        part.action, part.offset
+                    )));
+                }
+                known.pressure_pa.extend(part.pressure_pa);
+                known.on_plan_pa.extend(part.on_plan_pa);
+            }
+        }
         Ok(())
     }
 
@@ -168,6 +199,8 @@ impl Collector {
         if self.ended.is_empty() {
             return Err(odd("the stream broke off before the first state was closed"));
         }
+        // Design effects may lack their arrays, and stand beside what has no verdict.
+        self.effects.clear();
         // Arrays of states that were not closed may lack their ends; those over all states mean nothing without all.
         let closed: Vec<&str> = self.ended.iter().map(|end| end.case.as_str()).collect();
         self.columns.retain(|case, _| closed.contains(&case.as_str()));
@@ -234,6 +267,10 @@ impl Collector {
             envelope: BTreeMap::new(),
             findings: std::mem::take(&mut self.findings),
             diagnoses: std::mem::take(&mut self.diagnoses),
+            effects: Vec::new(),
+            losses: std::mem::take(&mut self.losses),
+            panels: std::mem::take(&mut self.panels),
+            loads: std::mem::take(&mut self.loads),
             summary,
             timing: self.timing.take(),
             broken_off,
@@ -242,7 +279,19 @@ impl Collector {
         run.segments = self.segments(&run)?;
         run.supports = self.supports(&run)?;
         run.ends = self.ends(&run)?;
+        if run
+            .panels
+            .iter()
+            .flat_map(|panel| &panel.corners)
+            .any(|&corner| size(corner) >= run.nodes.len())
+        {
+            return Err(odd("a panel at a node that is not there"));
+        }
         run.envelope = self.checked_columns("envelope", &run)?;
+        for effect in std::mem::take(&mut self.effects) {
+            let columns = self.checked_columns(&effect.id, &run)?;
+            run.effects.push(Effect { effect, columns });
+        }
         let ended = std::mem::take(&mut self.ended);
         for end in ended {
             let begin = self
@@ -348,6 +397,7 @@ impl Collector {
                 v1::Range::Strut => Some(run.struts.len()),
                 v1::Range::Support => Some(run.supports.len()),
                 v1::Range::End => Some(run.ends.len()),
+                v1::Range::Panel => Some(run.panels.len()),
                 _ => None,
             };
             let fits = entries.is_none_or(|entries| column.values.len() == entries * column.components);

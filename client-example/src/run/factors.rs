@@ -1,4 +1,4 @@
-//! Whether a state carries factored loads: what a foundation's engineer must know of every pull.
+//! What the brief says of a state: whether its loads are factored, and whether members are taken out.
 
 use ropewalk_api::ropewalk::v1;
 
@@ -56,6 +56,15 @@ impl Run {
             None => Factoring::Unknown,
         };
         rules.map(of_rule).max().unwrap_or(Factoring::Unknown)
+    }
+}
+
+impl Run {
+    /// Whether a case takes members out of the net.
+    pub(crate) fn takes_out(&self, state: &State) -> bool {
+        let by_hand = self.brief.cases.iter().find(|case| case.id == state.id);
+        // Cases that a rule made say so in their words.
+        by_hand.map_or(state.in_words.contains(" without "), |case| !case.remove.is_empty())
     }
 }
 

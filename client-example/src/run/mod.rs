@@ -57,6 +57,13 @@ impl State {
     }
 }
 
+/// A sum of effects of states, which is no state.
+#[derive(Clone, Debug)]
+pub(crate) struct Effect {
+    pub(crate) effect: v1::DesignEffect,
+    pub(crate) columns: BTreeMap<String, Column>,
+}
+
 /// What a segment belongs to, by position among the cables or struts.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(crate) enum Member {
@@ -95,6 +102,12 @@ pub(crate) struct Run {
     pub(crate) states: Vec<State>,
     pub(crate) envelope: BTreeMap<String, Column>,
     pub(crate) findings: Vec<v1::Finding>,
+    pub(crate) effects: Vec<Effect>,
+    /// What the loss of members came to.
+    pub(crate) losses: Vec<v1::LossRow>,
+    pub(crate) panels: Vec<v1::PanelEntry>,
+    /// What each action does, the parts of each joined.
+    pub(crate) loads: Vec<v1::LoadPicture>,
     /// What was found of states beside their balance, in order.
     pub(crate) diagnoses: Vec<v1::StateDiagnosis>,
     pub(crate) summary: v1::Summary,

@@ -189,7 +189,7 @@ pub(crate) fn struts(run: &Run) -> Sheet {
             head("unstressed length", "m"),
         ],
         rows,
-        note: "Tension positive: a mast under pressure has negative numbers. Buckling is not checked.",
+        note: "Tension positive: a mast under pressure has negative numbers. Buckling is judged only where a check asks for it.",
     }
 }
 
