@@ -355,7 +355,10 @@ fn ending(run: &Run) -> String {
     text.push_str(&sheet::terminal(&sheet::anchor_peaks(run)));
     text.push('\n');
     text.push_str(&sheet::terminal(&sheet::cases(run)));
-    for extra in [sheet::losses(run), sheet::effects(run)].into_iter().flatten() {
+    for extra in [sheet::shape(run), sheet::losses(run), sheet::effects(run)]
+        .into_iter()
+        .flatten()
+    {
         text.push_str(&format!("\n{}", sheet::terminal(&extra)));
     }
     if !run.diagnoses.is_empty() {

@@ -151,7 +151,9 @@ pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
         sheets.push(sheet::diagnoses(run));
     }
     let if_any = [
+        sheet::shape(run),
         sheet::judgements(run),
+        sheet::slides(run),
         sheet::losses(run),
         sheet::loss_cells(run),
         sheet::effects(run),
@@ -230,6 +232,7 @@ fn results(run: &Run) -> String {
                 "columns": columns(&effect.columns),
             })
         }).collect::<Vec<_>>(),
+        "shape_report": run.shape_report.as_ref().map(|report| message_json("ShapeReport", &report.encode_to_vec())),
         "losses": run.losses.iter().map(|row| message_json("LossRow", &row.encode_to_vec())).collect::<Vec<_>>(),
         "panels": run.panels.iter().map(|panel| message_json("PanelEntry", &panel.encode_to_vec())).collect::<Vec<_>>(),
         "load_pictures": run.loads.iter().map(|picture| message_json("LoadPicture", &picture.encode_to_vec())).collect::<Vec<_>>(),

@@ -391,6 +391,8 @@ impl Labels {
             (v1::Range::End, "ends"),
             (v1::Range::Case, "cases"),
             (v1::Range::Panel, "panels"),
+            (v1::Range::Slide, "slides"),
+            (v1::Range::Reach, "reaches"),
         ];
         for (range, words) in ranges {
             let (old, new) = (entries(a, range), entries(b, range));
@@ -401,8 +403,8 @@ impl Labels {
                 .filter_map(|(at, id)| Some((id.clone(), at, *places.get(id.as_str())?)))
                 .collect();
             let (less, more) = (old.len() - shared.len(), new.len() - shared.len());
-            // Cases that one side lacks are told one by one.
-            if less + more > 0 && range != v1::Range::Case {
+            // Cases that one side lacks are told one by one; reaches are pieces of what is told.
+            if less + more > 0 && ![v1::Range::Case, v1::Range::Reach].contains(&range) {
                 apart.push(format!(
                     "{words}: {less} only in A, {more} only in B, {} in both",
                     shared.len()
@@ -424,21 +426,15 @@ impl Labels {
                 .collect::<Vec<_>>()
         };
         match was.over {
-            // Rope segments are the first of all segments; reaches are segments as long as no rope slides.
+            // Rope segments are the first of all segments.
             v1::Range::RopeSegment | v1::Range::Segment => listed(v1::Range::Segment),
             over if self.of.contains_key(&(over as i32)) => listed(over),
-            v1::Range::Reach if self.segments_of(n_was, n_now) => listed(v1::Range::Segment),
             // Entries without a name of their own are compared where both runs have as many of them.
             _ if n_was == n_now => (0..n_was)
                 .map(|at| (Cow::Owned(format!("number {at}")), at, at))
                 .collect(),
             _ => Vec::new(),
         }
-    }
-
-    fn segments_of(&self, n_was: usize, n_now: usize) -> bool {
-        let shared = self.of.get(&(v1::Range::Segment as i32)).map_or(0, Vec::len);
-        n_was == n_now && n_was == shared
     }
 }
 
@@ -461,6 +457,16 @@ fn entries(run: &Run, range: v1::Range) -> Vec<String> {
             .map(|end| format!("{} at {}", run.member_id(end.segment), run.nodes[end.node]))
             .collect(),
         v1::Range::Case => run.case_ids.clone(),
+        v1::Range::Slide => run
+            .slides
+            .iter()
+            .map(|(rope, node)| format!("{rope} at {}", run.nodes[*node]))
+            .collect(),
+        // Without a table each segment is a reach of its own.
+        v1::Range::Reach if run.reaches.is_empty() => entries(run, v1::Range::Segment),
+        v1::Range::Reach => (run.reaches.iter())
+            .map(|(member, segment)| format!("{member} from {}", run.nodes[run.segments[*segment].nodes[0]]))
+            .collect(),
         v1::Range::Panel => run.panels.iter().map(|panel| panel.id.clone()).collect(),
         _ => Vec::new(),
     };

@@ -38,6 +38,7 @@ pub(crate) struct Collector {
     ended: Vec<v1::CaseSummary>,
     findings: Vec<v1::Finding>,
     diagnoses: Vec<v1::StateDiagnosis>,
+    shape_report: Option<v1::ShapeReport>,
     effects: Vec<v1::DesignEffect>,
     losses: Vec<v1::LossRow>,
     panels: Vec<v1::PanelEntry>,
@@ -108,6 +109,7 @@ impl Collector {
                 self.panels.extend(part.panels);
             }
             Event::LoadPicture(part) => self.take_load_picture(part)?,
+            Event::ShapeReport(part) => self.take_shape_report(part)?,
             Event::Progress(_) => {}
         }
         Ok(())
@@ -135,6 +137,21 @@ impl Collector {
         table.from_nodes.extend(part.from_nodes);
         table.to_nodes.extend(part.to_nodes);
         table.segments.extend(part.segments);
+        Ok(())
+    }
+
+    fn take_shape_report(&mut self, part: v1::ShapeReport) -> Result<(), Oddity> {
+        let Some(known) = self.shape_report.as_mut() else {
+            self.shape_report = Some(part);
+            return Ok(());
+        };
+        if size(part.offset) != known.wishes.len() {
+            return Err(odd(format!("the report on the shape has a gap at {}", part.offset)));
+        }
+        known.wishes.extend(part.wishes);
+        known.fights.extend(part.fights);
+        known.left.extend(part.left);
+        known.at_bounds.extend(part.at_bounds);
         Ok(())
     }
 
@@ -268,6 +285,9 @@ impl Collector {
             findings: std::mem::take(&mut self.findings),
             diagnoses: std::mem::take(&mut self.diagnoses),
             effects: Vec::new(),
+            slides: Vec::new(),
+            reaches: Vec::new(),
+            shape_report: self.shape_report.take(),
             losses: std::mem::take(&mut self.losses),
             panels: std::mem::take(&mut self.panels),
             loads: std::mem::take(&mut self.loads),
@@ -279,6 +299,8 @@ impl Collector {
         run.segments = self.segments(&run)?;
         run.supports = self.supports(&run)?;
         run.ends = self.ends(&run)?;
+        run.slides = self.places(v1::Range::Slide, |table| &table.from_nodes, run.nodes.len())?;
+        run.reaches = self.places(v1::Range::Reach, |table| &table.segments, run.segments.len())?;
         if run
             .panels
             .iter()
@@ -386,6 +408,31 @@ impl Collector {
         Ok(ends)
     }
 
+    /// Ids of a table, each with a position that must be below a number.
+    fn places(
+        &self,
+        over: v1::Range,
+        of: impl Fn(&Table) -> &Vec<u32>,
+        below: usize,
+    ) -> Result<Vec<(String, usize)>, Oddity> {
+        let Some(table) = self.tables.get(&(over as i32)) else {
+            return Ok(Vec::new());
+        };
+        let positions = of(table);
+        if positions.len() != table.ids.len() || positions.iter().any(|&at| size(at) >= below) {
+            return Err(odd(format!(
+                "a table of ids names what is not there ({})",
+                over.as_str_name()
+            )));
+        }
+        Ok(table
+            .ids
+            .iter()
+            .cloned()
+            .zip(positions.iter().map(|&at| size(at)))
+            .collect())
+    }
+
     fn checked_columns(&mut self, case: &str, run: &Run) -> Result<BTreeMap<String, Column>, Oddity> {
         let mut checked = BTreeMap::new();
         for (name, (column, total)) in self.columns.remove(case).unwrap_or_default() {
@@ -398,6 +445,8 @@ impl Collector {
                 v1::Range::Support => Some(run.supports.len()),
                 v1::Range::End => Some(run.ends.len()),
                 v1::Range::Panel => Some(run.panels.len()),
+                v1::Range::Slide => Some(run.slides.len()),
+                v1::Range::Reach if !run.reaches.is_empty() => Some(run.reaches.len()),
                 _ => None,
             };
             let fits = entries.is_none_or(|entries| column.values.len() == entries * column.components);

@@ -102,6 +102,12 @@ pub(crate) struct Run {
     pub(crate) states: Vec<State>,
     pub(crate) envelope: BTreeMap<String, Column>,
     pub(crate) findings: Vec<v1::Finding>,
+    /// Where ropes slide: the rope, and the position of the node.
+    pub(crate) slides: Vec<(String, usize)>,
+    /// The rope or strut of each reach, and its first segment; empty: each segment is a reach of its own.
+    pub(crate) reaches: Vec<(String, usize)>,
+    /// What was wanted of the reference state, its parts joined.
+    pub(crate) shape_report: Option<v1::ShapeReport>,
     pub(crate) effects: Vec<Effect>,
     /// What the loss of members came to.
     pub(crate) losses: Vec<v1::LossRow>,
@@ -167,13 +173,6 @@ impl Run {
         }
     }
 
-    /// Segments of a cable in path order, or that of a strut.
-    pub(crate) fn segments_of(&self, member: Member) -> Vec<usize> {
-        (0..self.segments.len())
-            .filter(|&segment| self.segments[segment].member == member)
-            .collect()
-    }
-
     /// Segments of each cable in path order.
     pub(crate) fn cable_segments(&self) -> Vec<Vec<usize>> {
         let mut lists = vec![Vec::new(); self.cables.len()];
@@ -183,6 +182,28 @@ impl Run {
             }
         }
         lists
+    }
+
+    /// Unstressed length of each cable in the reference state (m), and of each strut; none where the engine told of none.
+    pub(crate) fn unstressed_lengths(&self) -> Option<[Vec<f64>; 2]> {
+        let reference = self.reference().filter(|state| state.answered())?;
+        let lengths = reference.numbers("unstressed_length_m")?;
+        let mut sums = [vec![0.0; self.cables.len()], vec![0.0; self.struts.len()]];
+        let first: Vec<usize> = if self.reaches.is_empty() {
+            (0..self.segments.len()).collect()
+        } else {
+            self.reaches.iter().map(|(_, segment)| *segment).collect()
+        };
+        if first.len() != lengths.len() {
+            return None;
+        }
+        for (segment, length) in first.into_iter().zip(lengths) {
+            match self.segments[segment].member {
+                Member::Cable(cable) => sums[0][cable] += length,
+                Member::Strut(strut) => sums[1][strut] += length,
+            }
+        }
+        Some(sums)
     }
 
     /// Findings beside those that only repeat why a case has no answer.

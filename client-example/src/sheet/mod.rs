@@ -12,6 +12,8 @@ mod loads;
 mod losses;
 mod page;
 mod ropes;
+mod shape;
+mod slides;
 mod text;
 mod verdict;
 
@@ -31,6 +33,8 @@ pub(crate) use loads::{loads, panel_loads};
 pub(crate) use losses::{loss_cells, losses, losses_by_need, lost_words, survivors};
 pub(crate) use page::html;
 pub(crate) use ropes::{ropes, struts};
+pub(crate) use shape::shape;
+pub(crate) use slides::slides;
 pub(crate) use text::{terminal, wrap};
 pub(crate) use verdict::{audit_line, largest_difference, verdict_word, why};
 

@@ -6,6 +6,7 @@
 //! | `head` | what is about to run: sizes, settings, tables of ids |
 //! | `progress` | what is being worked on |
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
+//! | `shape` | how the reference state meets what was wanted |
 //! | `surface` | panels, and what each action does in the reference state |
 //! | `effects` | sums of effects, paths of cases, losses of members |
 //! | `diagnosis` | free movements, states of self-stress, least stiffnesses |
@@ -28,6 +29,7 @@ mod parts;
 mod progress;
 mod report;
 mod rules;
+mod shape;
 mod state;
 mod surface;
 mod verdicts;
