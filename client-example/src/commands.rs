@@ -359,6 +359,12 @@ fn ending(run: &Run) -> String {
         let words = sheet::sizing_words(sizing);
         text.push_str(&format!("\n{}\n{words}\n", sheet::terminal(&sheet::sized(sizing))));
     }
+    for extra in [sheet::shape(run), sheet::losses(run), sheet::effects(run)]
+        .into_iter()
+        .flatten()
+    {
+        text.push_str(&format!("\n{}", sheet::terminal(&extra)));
+    }
     if !run.diagnoses.is_empty() {
         text.push_str(&format!("\n{}", sheet::terminal(&sheet::diagnoses(run))));
     }
