@@ -293,6 +293,7 @@ impl Problem {
             effects: Vec::new(),
             checks: Vec::new(),
             diagnosis: None,
+            envelopes: Vec::new(),
             settings: Settings {
                 tolerance: 1e-14,
                 ..Settings::default()

@@ -117,6 +117,7 @@ fn state(case: &str, words: &str, middle: &str, sink: f64, tensions: [f64; 2], l
             case: case.to_owned(),
             in_words: words.to_owned(),
             sets: Vec::new(),
+            again: false,
         }),
         column(case, "position_m", "m", node, 3, &positions),
         column(case, "displacement_m", "m", node, 3, &moves),
@@ -195,6 +196,7 @@ fn events_named(names: Names) -> Vec<Event> {
             case: "lamp".to_owned(),
             in_words: "lamp".to_owned(),
             sets: Vec::new(),
+            again: false,
         }),
         Event::CaseSummary(v1::CaseSummary {
             case: "lamp".to_owned(),

@@ -49,6 +49,15 @@ impl CaseGiven {
     }
 }
 
+/// An envelope over some cases.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct EnvelopeGiven {
+    /// Name of their set.
+    pub name: String,
+    /// The cases, by index.
+    pub cases: Vec<usize>,
+}
+
 /// The whole work.
 #[derive(Clone, Debug)]
 pub struct Brief {
@@ -66,6 +75,8 @@ pub struct Brief {
     pub checks: Vec<Check>,
     /// States that are looked into, if any.
     pub diagnosis: Option<DiagnosisGiven>,
+    /// Envelopes beside that over all cases, in result order.
+    pub envelopes: Vec<EnvelopeGiven>,
     /// How states are solved for.
     pub settings: Settings,
 }

@@ -23,7 +23,7 @@ pub use cause::{Cause, Culprit, LikelyCause};
 pub use diagnosis::{DiagnosisGiven, LITTLE_LEFT, Standing, StateDiagnosis};
 pub use effect::{DesignEffect, EffectRule, FactorRules};
 pub use estimate::Estimate;
-pub use given::{Brief, CaseGiven, LoadPath};
+pub use given::{Brief, CaseGiven, EnvelopeGiven, LoadPath};
 pub use loss::{Loss, LossExtreme, LossForce};
 pub use outcome::{CaseOutcome, EndForce, ReferenceOutcome, StateResult, SupportForce, Task};
 pub use path::PathResult;

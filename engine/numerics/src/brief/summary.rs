@@ -83,6 +83,8 @@ pub struct Summary {
     pub checks: Vec<CheckResult>,
     /// Envelope of every segment over the reference state and the sound cases.
     pub envelopes: Vec<Envelope>,
+    /// The same over the reference state and the sound cases of each of [`super::Brief::envelopes`].
+    pub set_envelopes: Vec<Vec<Envelope>>,
     /// What the loss of each member that some case takes out came to, in the order in which cases name them.
     pub losses: Vec<Loss>,
     /// Which way to factor a predominant action governs, where design effects stand beside cases.

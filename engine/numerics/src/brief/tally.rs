@@ -71,6 +71,7 @@ pub struct Tally {
     answered: usize,
     checks: Vec<CheckTally>,
     envelopes: EnvelopeTally,
+    set_envelopes: Vec<EnvelopeTally>,
     losses: LossTally,
     factor_rules: Option<FactorRules>,
     movements: MovementTally,
@@ -118,6 +119,7 @@ impl Tally {
                 .map(|check| CheckTally::new(check, &against))
                 .collect(),
             envelopes: EnvelopeTally::new(&reference.state.axial_forces),
+            set_envelopes: vec![EnvelopeTally::new(&reference.state.axial_forces); brief.envelopes.len()],
             losses: LossTally::new(&brief),
             factor_rules: None,
             movements: MovementTally::new(brief.net.nodes().len()),
@@ -138,6 +140,11 @@ impl Tally {
             self.cases[case] = Standing::Sound;
             self.judge(case, digest);
             self.envelopes.add(case, digest);
+            for (given, tally) in self.brief.envelopes.iter().zip(&mut self.set_envelopes) {
+                if given.cases.contains(&case) {
+                    tally.add(case, digest);
+                }
+            }
             self.movements.add(case, digest);
             self.anchors.add(case, digest);
         } else {
@@ -218,6 +225,17 @@ impl Tally {
         Effect { effect, digest, beside }
     }
 
+    /// Cases that govern a check as far as it has come, each once, in brief order.
+    #[must_use]
+    pub fn governing(&self) -> Vec<usize> {
+        let n_cases = self.brief.cases.len();
+        let worst = self.checks.iter().filter_map(CheckTally::governing_case);
+        let mut cases: Vec<usize> = worst.filter(|case| *case < n_cases).collect();
+        cases.sort_unstable();
+        cases.dedup();
+        cases
+    }
+
     /// The end of the run.
     #[must_use]
     pub fn finish(self) -> Summary {
@@ -249,6 +267,7 @@ impl Tally {
             facts,
             checks,
             envelopes: self.envelopes.finish(),
+            set_envelopes: self.set_envelopes.into_iter().map(EnvelopeTally::finish).collect(),
             losses: self.losses.finish(),
             factor_rules: self.factor_rules,
             movements: self.movements.finish(),

@@ -63,6 +63,16 @@ impl CheckTally {
         }
     }
 
+    /// The case in which the worst part so far is worst; `None` while there is none, or where it is the reference state.
+    #[must_use]
+    pub fn governing_case(&self) -> Option<usize> {
+        let worst = self.parts.iter().filter_map(|(_, standing)| match standing {
+            Standing::Worst(judgement) => Some(judgement),
+            _ => None,
+        });
+        worst.max_by(|a, b| a.ratio.total_cmp(&b.ratio))?.case
+    }
+
     /// What came of the check. `unanswered`: its cases without a sound answer.
     #[must_use]
     pub fn finish(self, check: &Check, unanswered: Vec<usize>) -> CheckResult {

@@ -139,6 +139,7 @@ fn friction_at_an_edge_keeps_its_share() {
         );
         let mut case = case(&net, vec![7.0]);
         case.nodal_forces[2] = Vector3::new(0.0, 0.0, -weight);
+        case.lying = vec![4.0, 3.0];
         let solution = answer(&net, &case);
         let kept = weight * (-mu * std::f64::consts::FRAC_PI_2).exp();
         assert!((solution.axial_forces[1] - weight).abs() < 1e-6);
@@ -171,6 +172,7 @@ fn enough_friction_is_a_clamp() {
     let clamped = net(nodes(), cables);
     let mut of_slides = case(&slides, vec![8.2, 3.58, 3.58]);
     of_slides.nodal_forces[1] = Vector3::new(300.0, 0.0, -500.0);
+    of_slides.lying = vec![4.1, 4.1, 3.58, 3.58];
     let mut of_clamped = case(&clamped, vec![4.1, 4.1, 3.58, 3.58]);
     of_clamped.nodal_forces[1] = Vector3::new(300.0, 0.0, -500.0);
     let (a, b) = (answer(&slides, &of_slides), answer(&clamped, &of_clamped));

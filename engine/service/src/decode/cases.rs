@@ -240,12 +240,20 @@ impl<'a> Cases<'a> {
         complete.then(|| (0..wanted.len()).filter(|case| wanted[*case]).collect())
     }
 
+    /// Cases of a set, in brief order; `None` if there is no such set.
+    pub(crate) fn of_set(&self, set: &str) -> Option<Vec<usize>> {
+        self.sets.get(set)?;
+        let cases = self.list.iter().enumerate();
+        let of_set = cases.filter(|(_, case)| case.sets.iter().any(|name| name == set));
+        Some(of_set.map(|(case, _)| case).collect())
+    }
+
     /// The case with a name; tells if there is none.
     pub(crate) fn case(&self, name: &str, at: &Path<'_>, findings: &mut Findings) -> Option<usize> {
         self.names.find(findings, at, "case", name)
     }
 
-    fn unknown(&self, name: &str, at: &Path<'_>, findings: &mut Findings) {
+    pub(super) fn unknown(&self, name: &str, at: &Path<'_>, findings: &mut Findings) {
         if name == REFERENCE {
             findings.error(
                 reasons::RESERVED_ID,

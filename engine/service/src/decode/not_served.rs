@@ -49,6 +49,7 @@ pub const SERVED: &[&str] = &[
     "sizing",
     "diagnosis",
     "solving",
+    "keep",
     "accepted",
     "frozen_from",
 ];
@@ -61,7 +62,6 @@ pub const NOT_SERVED: &[&str] = &[
     "stages",
     "workshop",
     "readings",
-    "keep",
     "variants",
 ];
 
@@ -93,11 +93,7 @@ pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
     ] {
         elements(list, &ids, &mut part);
     }
-    for (field, given) in [
-        ("modes", brief.modes.is_some()),
-        ("workshop", brief.workshop.is_some()),
-        ("keep", brief.keep.is_some()),
-    ] {
+    for (field, given) in [("modes", brief.modes.is_some()), ("workshop", brief.workshop.is_some())] {
         if given {
             part(&Path::root(field), "");
         }

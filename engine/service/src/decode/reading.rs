@@ -24,7 +24,7 @@ use super::supports::Supports;
 use super::surface::SurfaceDraft;
 use super::work::{Names, Work};
 use super::{
-    accepted, checks, combinations, diagnosis, frozen, limits, not_served, plausible, prestress, reasons, sizing,
+    accepted, checks, combinations, diagnosis, frozen, keep, limits, not_served, plausible, prestress, reasons, sizing,
     solving,
 };
 use crate::config::Limits;
@@ -247,7 +247,8 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
         findings,
         resolved,
     );
-    let names = Names::new(&sections, &supports, sizing);
+    let (kept, envelopes) = keep::read(brief.keep.as_ref(), &cases, findings);
+    let names = Names::new(&sections, &supports, sizing, kept);
     let given = (!findings.has_errors())
         .then(|| net_given(&net, &sections, &slides, supports))
         .flatten();
@@ -262,6 +263,7 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
             effects,
             checks,
             diagnosis,
+            envelopes,
             settings,
         };
         let unbuilt = Unbuilt {

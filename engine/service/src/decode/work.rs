@@ -6,6 +6,7 @@ use ropewalk_numerics::model::Member;
 
 use super::cases::{REFERENCE, in_words};
 use super::findings::accepts;
+use super::keep::Kept;
 use super::names::nearest;
 use super::reasons;
 use super::sections::Sections;
@@ -38,10 +39,17 @@ pub(crate) struct Names {
     breaking_force_origins: Vec<String>,
     /// Sections that are to be chosen, if any.
     sizing: Option<SizingWork>,
+    /// Which states are told with their arrays; all, where the brief does not say.
+    kept: Option<Kept>,
 }
 
 impl Names {
-    pub(crate) fn new(sections: &Sections<'_>, supports: &Supports, sizing: Option<SizingWork>) -> Self {
+    pub(crate) fn new(
+        sections: &Sections<'_>,
+        supports: &Supports,
+        sizing: Option<SizingWork>,
+        kept: Option<Kept>,
+    ) -> Self {
         let origins = sections.of_segment.iter().map(|section| match section {
             Some((section, _)) => sections.list[*section].message.breaking_force_origin.clone(),
             None => String::new(),
@@ -50,6 +58,7 @@ impl Names {
             keeps_position: supports.is_elastic.clone(),
             breaking_force_origins: origins.collect(),
             sizing,
+            kept,
         }
     }
 }
@@ -70,6 +79,12 @@ impl Work {
             names,
             findings: findings.to_vec(),
         }
+    }
+
+    /// Which states are told with their arrays; `None`: all.
+    #[must_use]
+    pub fn kept(&self) -> Option<&Kept> {
+        self.names.kept.as_ref()
     }
 
     /// Sections that are to be chosen, if any.

@@ -97,6 +97,14 @@ impl Tally {
     }
 }
 
+impl Tally {
+    /// Cases that govern a check.
+    #[must_use]
+    pub fn governing(&self) -> Vec<usize> {
+        self.summed_up.as_ref().map_or_else(Vec::new, brief::Tally::governing)
+    }
+}
+
 /// The envelopes, then the summary.
 #[must_use]
 pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
@@ -114,6 +122,7 @@ pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
     let summary = match (&found, summed_up.map(brief::Tally::finish)) {
         (Ok(reference), Some(summary)) => {
             messages.extend(envelope(plan, &cases, &summary));
+            messages.extend(set_envelopes(plan, &cases, &summary));
             if let Some(rules) = &summary.factor_rules {
                 messages.extend(effects::factor_rules(&plan.brief().net, rules));
             }
@@ -167,22 +176,60 @@ fn share(of_them: usize, of: usize) -> v1::Share {
 
 /// Least and largest forces of every segment and largest movements of every node, over the sound cases and the reference
 /// state, and where they occur.
-fn envelope(plan: &Plan, cases: &[usize], summary: &brief::Summary) -> Vec<v1::RunResponse> {
+/// Tensions over the cases of sets.
+fn set_envelopes(plan: &Plan, cases: &[usize], summary: &brief::Summary) -> Vec<v1::RunResponse> {
     let brief = plan.brief();
-    let segments = brief.net.segments().iter();
-    let ropes = segments.filter(|s| matches!(s.member, Member::Cable(_))).count();
-    let (ropes, struts) = summary.envelopes.split_at(ropes);
-    // Position in the table of cases; −1 stands for the reference state.
-    let mut position = vec![-1.0; brief.cases.len()];
-    for (number, case) in cases.iter().enumerate() {
-        position[*case] = f64::from(count(number));
+    let mut messages = Vec::new();
+    for (given, segments) in brief.envelopes.iter().zip(&summary.set_envelopes) {
+        let name = format!("{ENVELOPE}/{}", given.name);
+        messages.extend(forces(plan, cases, &name, segments));
     }
-    let place = |extreme: Extreme| extreme.case.map_or(-1.0, |case| position[case]);
-    let of_all = |list: &[Envelope], take: &dyn Fn(&Envelope) -> f64| list.iter().map(take).collect::<Vec<f64>>();
+    messages
+}
+
+fn envelope(plan: &Plan, cases: &[usize], summary: &brief::Summary) -> Vec<v1::RunResponse> {
+    let place = |extreme: &Extreme| place(plan, cases, *extreme);
     let moved = &summary.movements;
-    let array = |name, unit, over, values| Array {
+    let largest = Array {
         case: ENVELOPE,
-        name,
+        name: "movement_max_m",
+        unit: "m",
+        over: v1::Range::Node,
+        components: 1,
+        baseline: REFERENCE,
+        values: moved.iter().map(|m| m.value).collect(),
+    };
+    let governing = Array {
+        name: "movement_max_case",
+        unit: "",
+        baseline: "",
+        values: moved.iter().map(place).collect(),
+        ..largest
+    };
+    let mut messages = forces(plan, cases, ENVELOPE, &summary.envelopes);
+    messages.extend(largest.parts());
+    messages.extend(governing.parts());
+    messages
+}
+
+/// Position in the table of cases; −1 stands for the reference state.
+fn place(plan: &Plan, cases: &[usize], extreme: Extreme) -> f64 {
+    debug_assert!(extreme.case.is_none_or(|case| case < plan.brief().cases.len()));
+    // Cases run in brief order, so that their table is sorted.
+    let position = extreme.case.and_then(|case| cases.binary_search(&case).ok());
+    position.map_or(-1.0, |position| f64::from(count(position)))
+}
+
+/// Least and largest axial forces with their cases.
+fn forces(plan: &Plan, cases: &[usize], name: &str, segments: &[Envelope]) -> Vec<v1::RunResponse> {
+    let is_rope = |s: &&ropewalk_numerics::model::Segment| matches!(s.member, Member::Cable(_));
+    let ropes = plan.brief().net.segments().iter().filter(is_rope).count();
+    let (ropes, struts) = segments.split_at(ropes);
+    let of_all = |list: &[Envelope], take: &dyn Fn(&Envelope) -> f64| list.iter().map(take).collect::<Vec<f64>>();
+    let place = |extreme| place(plan, cases, extreme);
+    let array = |what, unit, over, values| Array {
+        case: name,
+        name: what,
         unit,
         over,
         components: 1,
@@ -199,21 +246,6 @@ fn envelope(plan: &Plan, cases: &[usize], summary: &brief::Summary) -> Vec<v1::R
         array("axial_force_max_n", "N", strut, of_all(struts, &|e| e.largest.value)),
         array("axial_force_min_case", "", strut, of_all(struts, &|e| place(e.least))),
         array("axial_force_max_case", "", strut, of_all(struts, &|e| place(e.largest))),
-        Array {
-            baseline: REFERENCE,
-            ..array(
-                "movement_max_m",
-                "m",
-                v1::Range::Node,
-                moved.iter().map(|m| m.value).collect(),
-            )
-        },
-        array(
-            "movement_max_case",
-            "",
-            v1::Range::Node,
-            moved.iter().map(|m| place(*m)).collect(),
-        ),
     ]
     .into_iter()
     .flat_map(|array| array.parts().collect::<Vec<_>>())

@@ -32,6 +32,7 @@ pub fn reference(
         case: REFERENCE.to_owned(),
         in_words: work.reference_in_words(),
         sets: Vec::new(),
+        again: false,
     };
     let mut messages = vec![event(Event::CaseBegin(begin))];
     if let Ok(reference) = found {
@@ -191,6 +192,7 @@ fn begin(work: &Work, plan: &Plan, case: usize) -> v1::RunResponse {
         case: given.name.clone(),
         in_words: work.in_words(case),
         sets: given.sets.clone(),
+        again: false,
     }))
 }
 

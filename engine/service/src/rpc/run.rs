@@ -55,6 +55,7 @@ pub(super) async fn run(work: Work, request: v1::RunRequest, outbox: Outbox<v1::
             clock: &clock,
         };
         solver.solve_in_order(&cases, &mut tally, &outbox).await?;
+        solver.tell_governing_again(&tally, &outbox).await?;
     }
 
     let about = Arc::clone(&prepared);
@@ -182,6 +183,19 @@ struct Solver<'a> {
 type CaseAnswer = (Vec<v1::RunResponse>, encode::Noted);
 
 impl Solver<'_> {
+    /// The messages of a case without the arrays that the brief does not keep.
+    fn kept(&self, case: usize, mut messages: Vec<v1::RunResponse>) -> Vec<v1::RunResponse> {
+        if self.prepared.work.kept().is_some_and(|kept| !kept.is_full(case)) {
+            let is_kept = |event: &Event| match event {
+                // A path is asked for by name.
+                Event::Columns(columns) => columns.name.starts_with("path_"),
+                _ => true,
+            };
+            messages.retain(|message| message.event.as_ref().is_none_or(is_kept));
+        }
+        messages
+    }
+
     /// As many cases at a time as there are threads; none is started before the client has taken the results of those
     /// in front of it, so that a slow reader holds no thread.
     async fn solve_in_order(
@@ -208,7 +222,7 @@ impl Solver<'_> {
             };
             let effects = tally.add(case, &noted);
             self.desk.done.fetch_add(1, Ordering::Relaxed);
-            outbox.send(messages).await?;
+            outbox.send(self.kept(case, messages)).await?;
             for effect in effects {
                 let Prepared { work, plan } = &**self.prepared;
                 outbox
@@ -216,6 +230,29 @@ impl Solver<'_> {
                     .await?;
             }
         }
+    }
+
+    /// Solves cases that govern a check again where their arrays were left out, and tells these now: to the bit the same.
+    async fn tell_governing_again(
+        &self,
+        tally: &encode::Tally,
+        outbox: &Outbox<v1::RunResponse>,
+    ) -> Result<(), Refusal> {
+        let Some(kept) = self.prepared.work.kept().filter(|kept| kept.governing) else {
+            return Ok(());
+        };
+        for case in tally.governing().into_iter().filter(|case| !kept.is_full(*case)) {
+            let mut pending = self.start(case);
+            let answer = self.desk.relay(&mut pending, outbox, progress).await;
+            let (mut messages, _) = answer.map_err(|panicked| self.work.internal(panicked))?;
+            // Findings were told the first time.
+            messages.retain(|message| !matches!(message.event, Some(Event::Finding(_))));
+            if let Some(Event::CaseBegin(begin)) = messages.first_mut().and_then(|first| first.event.as_mut()) {
+                begin.again = true;
+            }
+            outbox.send(messages).await?;
+        }
+        Ok(())
     }
 
     fn start(&self, case: usize) -> Pending<CaseAnswer> {
