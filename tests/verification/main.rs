@@ -26,3 +26,4 @@ mod scalar;
 mod shapes;
 mod straight;
 mod supports;
+mod targets;

@@ -8,7 +8,8 @@ use super::find::{RawShape, names};
 use super::{Prestress, ShapeError, ShapeReport};
 use crate::assembly::{Loading, LoadingError};
 use crate::equilibrium::{
-    self, Analysis, IterationReport, LoadSteps, Settings, Solution, SolveError, Termination, Way, audit, stability,
+    self, Analysis, IterationReport, LoadSteps, Settings, Solution, SolveError, Termination, Way, audit, member_states,
+    stability,
 };
 use crate::load::{Action, Case};
 use crate::model::{Net, NodeId, ReferenceState, SegmentId};
@@ -70,12 +71,25 @@ pub(super) fn finish(
         state,
         report,
     };
-    let audit = audit::audit(net, &found.case, &found.state.positions, &found.state.axial_forces);
+    let audit = audited(analysis, &found);
     let stands = audit.largest_imbalance <= STANDS * largest(&found.state.axial_forces);
     if stands && audit.passed {
         return checked(analysis, found);
     }
     polished(analysis, prestress, actions, settings, found, observe)
+}
+
+/// What the independent routine says of a state.
+fn audited(analysis: &Analysis, found: &Found) -> audit::Audit {
+    let state = &found.state;
+    let members = member_states(analysis.structure(), &found.case, state);
+    audit::audit_members(
+        analysis.structure().net(),
+        &found.case,
+        &state.positions,
+        &state.axial_forces,
+        &members,
+    )
 }
 
 /// Corrects the state as an elastic net.
@@ -136,7 +150,7 @@ pub(super) fn elastic(
 pub(super) fn checked(analysis: &Analysis, mut found: Found) -> Result<Found, ShapeError> {
     let net = analysis.structure().net();
     let state = &found.state;
-    let audit = audit::audit(net, &found.case, &state.positions, &state.axial_forces);
+    let audit = audited(analysis, &found);
     if !audit.passed {
         return Err(ShapeError::GateFailed {
             imbalance: audit.largest_imbalance.max(audit.largest_force_error),

@@ -40,7 +40,9 @@ pub(crate) fn list(names: &[String], most: usize) -> String {
 
 /// A direction in two decimals.
 pub(crate) fn direction(d: &Vector3<f64>) -> String {
-    format!("({:.2}, {:.2}, {:.2})", d.x, d.y, d.z)
+    // Nothing is not less than nothing.
+    let [x, y, z] = [d.x, d.y, d.z].map(|c| if c.abs() < 0.005 { 0.0 } else { c });
+    format!("({x:.2}, {y:.2}, {z:.2})")
 }
 
 #[cfg(test)]
