@@ -73,7 +73,10 @@ fn the_ring_by_its_tensions() {
     let closed: Vec<NodeId> = nodes.iter().chain(&nodes[..1]).copied().collect();
     let rule = problem.adjustable(4000.0);
     problem.cable(&closed, stiff(AXIAL_STIFFNESS), [rule; 4]);
-    for (segment, tension) in (0..5).zip([20012.496; 4].into_iter().chain([13829.317])) {
+    // T = q l: 20012.496 and 13829.317 N.
+    let corner = 6000.0 * (2.0 * 2.25_f64.powi(2) + 1.0).sqrt();
+    let along = 3000.0 * 4.5_f64.hypot(1.0);
+    for (segment, tension) in (0..5).zip([corner; 4].into_iter().chain([along])) {
         let segments = if segment == 4 { 4..8 } else { segment..segment + 1 };
         problem.target(Wish::Tension {
             segments: segments.map(SegmentId::new).collect(),
@@ -83,7 +86,6 @@ fn the_ring_by_its_tensions() {
     let state = problem.solve().state;
     let flat = |list: &[[f64; 3]]| -> Vec<f64> { list.iter().flatten().copied().collect() };
     let found: Vec<[f64; 3]> = nodes.iter().map(|n| state.positions[n.index()].into()).collect();
-    // The tensions are given to eight digits.
     check_all(
         "target tension: ring of force densities (m)",
         "common practice: force densities; closed form against bisection",
@@ -154,7 +156,7 @@ fn a_height_decides_the_force_density() {
     check_all("target height: parabola (m)", SOURCE, &heights, &found, Absolute(1e-9));
 }
 
-/// Radius of a polygon inscribed in a circle: nodes of an edge rope under a pull towards the centre stay on the circle
+/// Radius of a polygon inscribed in a circle: nodes of an edge rope pulled away from the centre lie on the circle
 /// `R = c²/(8 s) + s/2` of its chord and rise.
 #[test]
 fn radius_of_an_edge_rope() {
@@ -183,7 +185,7 @@ fn radius_of_an_edge_rope() {
             path.push(problem.fixed(at.x, at.y, at.z));
         } else {
             let node = problem.free(at.x + 0.02, at.y * 0.5, 0.1);
-            let far = on_circle(k, -4.0);
+            let far = on_circle(k, 4.0);
             ties.push((node, problem.fixed(far.x, far.y, far.z)));
             path.push(node);
         }
