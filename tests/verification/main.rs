@@ -28,3 +28,4 @@ mod shapes;
 mod straight;
 mod supports;
 mod surfaces;
+mod targets;

@@ -15,6 +15,7 @@ use ropewalk_numerics::model::{
     CableGiven, CableId, ElasticSupportGiven, Member, Net, NetGiven, NodeGiven, NodeId, PanelGiven, Section, Skin,
     StrutGiven, StrutId, SupportGiven,
 };
+use ropewalk_numerics::shape::{Adjustable, ShapeTarget, Wish};
 
 /// A net in the making.
 #[derive(Clone, Debug, Default)]
@@ -23,6 +24,8 @@ pub(crate) struct Problem {
     cable_rules: Vec<PrestressRule>,
     strut_rules: Vec<PrestressRule>,
     mean_tensions: Vec<f64>,
+    adjustables: Vec<Adjustable>,
+    targets: Vec<ShapeTarget>,
     hold: Vec<NodeId>,
     under: Vec<Load>,
     case: Vec<Load>,
@@ -123,6 +126,25 @@ impl Problem {
     pub(crate) fn mean_tension(&mut self, tension: f64) -> PrestressRule {
         self.mean_tensions.push(tension);
         PrestressRule::MeanTension(self.mean_tensions.len() - 1)
+    }
+
+    /// A rule for segments whose one force density (N/m) may change so that targets are met.
+    pub(crate) fn adjustable(&mut self, density: f64) -> PrestressRule {
+        self.adjustables.push(Adjustable {
+            density,
+            least: 0.0,
+            most: f64::INFINITY,
+        });
+        PrestressRule::Adjustable(self.adjustables.len() - 1)
+    }
+
+    /// What the shape is to meet.
+    pub(crate) fn target(&mut self, wish: Wish) {
+        self.targets.push(ShapeTarget {
+            name: self.targets.len().to_string(),
+            wish,
+            weight: 1.0,
+        });
     }
 
     /// Keeps a free node where it is while the shape is found.
@@ -280,7 +302,8 @@ impl Problem {
                 mean_tensions: self.mean_tensions,
                 hold: self.hold,
                 under: vec![0],
-                ..Prestress::default()
+                adjustables: self.adjustables,
+                targets: self.targets,
             },
             actions: actions.to_vec(),
             cases: vec![CaseGiven {

@@ -164,10 +164,32 @@ impl Structure {
 
     /// `½ (u vᵀ + v uᵀ)` with `u = Σ c_e ∂l_e/∂x`, `v = Σ ∂N/∂l_e ∂l_e/∂x`: symmetric by itself without friction.
     fn add_sliding(&self, piece: &Sliding, tension: f64, response: &Response, values: &mut [f64]) {
-        let lengths = &response.lengths[piece.segments()];
-        let mut slopes = vec![0.0; lengths.len()];
-        piece.slopes_into(lengths, tension, &mut slopes);
-        let reach = self.net().segments()[piece.first].length;
+        let mut slopes = vec![0.0; piece.factors.len()];
+        piece.slopes_into(&response.lengths[piece.segments()], tension, &mut slopes);
+        self.add_stretch(
+            piece.first,
+            &piece.factors,
+            &slopes,
+            &response.chords,
+            &response.lengths,
+            values,
+        );
+    }
+
+    /// Adds `½ (u vᵀ + v uᵀ)` for a reach that slides, with `u = Σ c_e ∂l_e/∂x` and `v = Σ k_e ∂l_e/∂x`.
+    ///
+    /// `first`: its first segment. `factors`, `slopes`: `c` (–) and `k` (N/m), one a segment of the reach. `chords`,
+    /// `lengths`: one a segment of the net (m).
+    pub(crate) fn add_stretch(
+        &self,
+        first: usize,
+        factors: &[f64],
+        slopes: &[f64],
+        chords: &[Vector3<f64>],
+        lengths: &[f64],
+        values: &mut [f64],
+    ) {
+        let reach = self.net().segments()[first].length;
         let Some(clique) = self.slides[reach].as_ref() else {
             return;
         };
@@ -183,9 +205,9 @@ impl Structure {
             vec![Vector3::zeros(); clique.nodes.len()],
             vec![Vector3::zeros(); clique.nodes.len()],
         );
-        for ((e, factor), slope) in piece.segments().zip(&piece.factors).zip(&slopes) {
-            if response.lengths[e] > 0.0 {
-                let n = response.chords[e] / response.lengths[e];
+        for ((e, factor), slope) in (first..).zip(factors).zip(slopes) {
+            if lengths[e] > 0.0 {
+                let n = chords[e] / lengths[e];
                 let [i, j] = self.ends[e].map(place);
                 u[i] -= n * *factor;
                 u[j] += n * *factor;

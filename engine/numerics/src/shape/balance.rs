@@ -4,11 +4,16 @@
 //! Σ n_m N_m = −r_h   at every held node h, in the directions in which it is free outside the search
 //! ```
 //!
-//! Least squares by singular values: of many solutions the one of least square sum. Own weight of these members depends
+//! Least squares by singular values: of many solutions the one of least square sum. If a rope pushes in that one, and it is
+//! one of many, another is looked for in which none does. Own weight of these members depends
 //! on their force, so the solve is repeated until the forces settle.
+//!
+//! # Reference
+//! Forces that must not push: Lawson & Hanson 1974.
 
 use nalgebra::{DMatrix, DVector, Vector3};
 
+use super::nonnegative::non_negative;
 use super::search::{Point, Search};
 use super::{BalanceReport, ForceLeft, ShapeError};
 use crate::model::{AxialLaw, Net, NodeId, SegmentId};
@@ -30,16 +35,21 @@ impl Search<'_, '_> {
         family_densities: &[f64],
     ) -> Result<(BalanceReport, f64), ShapeError> {
         let net = self.net();
-        let members = self.parts.balance();
+        // One force each; a reach that slides has one tension in all of its segments.
+        let groups = self.parts.balance_groups();
+        let members: Vec<usize> = groups.iter().map(|group| group[0]).collect();
         let rows: Vec<(NodeId, Vector3<f64>)> = hold.iter().flat_map(|h| free_directions(net, *h)).collect();
         let directions = DMatrix::from_fn(rows.len(), members.len(), |row, column| {
-            let segment = members[column];
-            let [from, to] = net.segments()[segment].ends;
-            let (node, along) = &rows[row];
-            let n = point.chords[segment] / point.lengths[segment];
-            let sign = f64::from(u8::from(from == *node)) - f64::from(u8::from(to == *node));
-            sign * along.dot(&n)
+            let one = |segment: &usize| {
+                let [from, to] = net.segments()[*segment].ends;
+                let (node, along) = &rows[row];
+                let n = point.chords[*segment] / point.lengths[*segment];
+                let sign = f64::from(u8::from(from == *node)) - f64::from(u8::from(to == *node));
+                sign * along.dot(&n)
+            };
+            groups[column].iter().map(one).sum()
         });
+        let whole = directions.clone();
         // Without held nodes or members there is nothing to decompose, only something to be left over.
         let svd = (!directions.is_empty()).then(|| directions.svd(true, true));
         let values = || svd.iter().flat_map(|svd| svd.singular_values.iter().copied());
@@ -49,11 +59,7 @@ impl Search<'_, '_> {
         let mut left = DVector::zeros(rows.len());
         for round in 0..=MAX_ROUNDS {
             // Out of balance with the forces as they are: what they have to take up in addition.
-            left = DVector::from_iterator(
-                rows.len(),
-                rows.iter()
-                    .map(|(node, along)| along.dot(&point.out_of_balance[node.index()])),
-            );
+            left = out_of_balance(&rows, point);
             let Some(svd) = svd.as_ref().filter(|_| rank > 0 && round < MAX_ROUNDS) else {
                 break;
             };
@@ -61,10 +67,33 @@ impl Search<'_, '_> {
             if more.amax() <= 1e-14 * point_force(self, point) {
                 break;
             }
-            for (segment, force) in members.iter().zip(&more) {
-                self.balance_forces[*segment] += force;
+            for (group, force) in groups.iter().zip(&more) {
+                group.iter().for_each(|segment| self.balance_forces[*segment] += force);
             }
             *point = self.point(std::mem::take(&mut point.positions), family_densities);
+        }
+        let pushes = |search: &Self, e: &usize| {
+            net.segments()[*e].law == AxialLaw::TensionOnly
+                && search.balance_forces[*e] < -BALANCED * point_force(search, point)
+        };
+        if rank < members.len() && members.iter().any(|e| pushes(self, e)) {
+            let any_sign: Vec<bool> = (members.iter())
+                .map(|e| net.segments()[*e].law == AxialLaw::TwoWay)
+                .collect();
+            for _ in 0..MAX_ROUNDS {
+                let forces = DVector::from_iterator(members.len(), members.iter().map(|e| self.balance_forces[*e]));
+                let Some(others) = non_negative(&whole, &(&whole * &forces - &left), &any_sign) else {
+                    break;
+                };
+                for (group, force) in groups.iter().zip(&others) {
+                    group.iter().for_each(|segment| self.balance_forces[*segment] = *force);
+                }
+                *point = self.point(std::mem::take(&mut point.positions), family_densities);
+                left = out_of_balance(&rows, point);
+                if (&others - forces).amax() <= 1e-14 * point_force(self, point) {
+                    break;
+                }
+            }
         }
         self.check_forces(hold, &members, rank, &left, point)?;
         let change = members
@@ -76,7 +105,7 @@ impl Search<'_, '_> {
             unique: rank == members.len(),
             rank,
             residual: left.iter().fold(0.0, |m: f64, l| m.max(l.abs())),
-            segments: members.into_iter().map(SegmentId::new).collect(),
+            segments: groups.concat().into_iter().map(SegmentId::new).collect(),
         };
         Ok((report, change))
     }
@@ -121,6 +150,13 @@ impl Search<'_, '_> {
             })
         }
     }
+}
+
+fn out_of_balance(rows: &[(NodeId, Vector3<f64>)], point: &Point) -> DVector<f64> {
+    let each = rows
+        .iter()
+        .map(|(node, along)| along.dot(&point.out_of_balance[node.index()]));
+    DVector::from_iterator(rows.len(), each)
 }
 
 fn point_force(search: &Search<'_, '_>, point: &Point) -> f64 {

@@ -32,6 +32,17 @@ pub enum ShapeError {
         /// What was given.
         value: f64,
     },
+    /// Two rules for one reach that slides.
+    #[error(
+        "rope \"{member}\" slides through \"{node}\", and its rule changes there: one tension is on both sides; \
+         give both the same rule"
+    )]
+    MixedReach {
+        /// Id of the rope.
+        member: String,
+        /// Id of the node.
+        node: String,
+    },
     /// Every member has a given length, but some free nodes have no place to start from.
     #[error(
         "every member has a given unstressed length, so the free nodes need coordinates to start from: {} have none",

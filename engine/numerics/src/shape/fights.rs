@@ -36,7 +36,7 @@ pub(super) fn targets(search: &Search<'_, '_>, found: &Densities) -> Vec<Target>
             },
             wanted,
             found: *mean,
-            miss: mean / wanted - 1.0,
+            miss: (mean / wanted).max(1e-30).ln(),
             met: (mean / wanted - 1.0).abs() <= MET,
         })
     });

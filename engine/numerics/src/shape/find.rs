@@ -284,6 +284,8 @@ fn softened(parts: &Parts, densities: &[f64]) -> Parts {
             })
             .collect(),
         families: Vec::new(),
+        slides: Vec::new(),
+        slide_of: Vec::new(),
     }
 }
 
@@ -358,6 +360,7 @@ impl Shape {
             }
         }
         let taut = |e: &usize| match parts.of[*e] {
+            Part::Elastic(_) if parts.slide(*e).is_some() => point.axial_forces[*e] > 0.0,
             Part::Elastic(bar) => {
                 bar.is_taut(point.lengths[*e]) && matches!(net.segments()[*e].member, Member::Cable(_))
             }

@@ -8,7 +8,8 @@ use super::find::{RawShape, names};
 use super::{Prestress, ShapeError, ShapeReport};
 use crate::assembly::{Loading, LoadingError};
 use crate::equilibrium::{
-    self, Analysis, IterationReport, LoadSteps, Settings, Solution, SolveError, Termination, Way, audit, stability,
+    self, Analysis, IterationReport, LoadSteps, Settings, Solution, SolveError, Termination, Way, audit, member_states,
+    stability,
 };
 use crate::load::{Action, Case};
 use crate::model::{Net, NodeId, ReferenceState, SegmentId};
@@ -91,6 +92,19 @@ pub(super) fn finish(
         return checked(analysis, found);
     }
     polished(analysis, prestress, actions, settings, found, observe)
+}
+
+/// What the independent routine says of a state.
+fn audited(analysis: &Analysis, found: &Found) -> audit::Audit {
+    let state = &found.state;
+    let members = member_states(analysis.structure(), &found.case, state);
+    audit::audit_members(
+        analysis.structure().net(),
+        &found.case,
+        &state.positions,
+        &state.axial_forces,
+        &members,
+    )
 }
 
 /// Corrects the state as an elastic net.

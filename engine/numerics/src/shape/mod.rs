@@ -11,6 +11,7 @@ mod given;
 mod krylov;
 mod loads;
 mod lsqr;
+mod nonnegative;
 mod parts;
 mod report;
 mod rows;

@@ -1,8 +1,10 @@
 //! What the rules make of each segment, and the families whose force density is sought.
 
+use std::ops::Range;
+
 use super::given::Adjustable;
 use super::{Prestress, PrestressRule, ShapeError};
-use crate::element::Bar;
+use crate::element::{Bar, Sliding};
 use crate::model::{AxialLaw, Net, NodeId};
 
 /// What a segment is to the search.
@@ -70,6 +72,19 @@ pub(super) struct Parts {
     /// Families, those of mean tensions first, then those for targets to decide, then one for each segment with a tension
     /// of its own.
     pub(super) families: Vec<Family>,
+    /// Reaches that slide.
+    pub(super) slides: Vec<Slide>,
+    /// Which of them a segment belongs to, one entry a segment; empty where nothing slides.
+    pub(super) slide_of: Vec<Option<usize>>,
+}
+
+/// A reach that slides: one tension in all of its segments.
+#[derive(Clone, Debug, PartialEq)]
+pub(super) struct Slide {
+    /// Its segments, which share one rule.
+    pub(super) segments: Range<usize>,
+    /// Its law where its unstressed length is given.
+    pub(super) elastic: Option<Sliding>,
 }
 
 impl Parts {
@@ -93,7 +108,12 @@ impl Parts {
             segments: Vec::new(),
             sought: Sought::Targets(*given),
         }));
-        let mut of = Vec::with_capacity(prestress.rules.len());
+        let mut of: Vec<Part> = Vec::with_capacity(prestress.rules.len());
+        let continues = |e: usize| e > 0 && net.segments()[e].length == net.segments()[e - 1].length;
+        let mixed = |e: usize| ShapeError::MixedReach {
+            member: net.member_name(crate::model::SegmentId::new(e)).to_owned(),
+            node: net.node_name(net.segments()[e].ends[0]).to_owned(),
+        };
         for (index, (rule, segment)) in prestress.rules.iter().zip(net.segments()).enumerate() {
             let bearable = |force: f64| force.is_finite() && (force >= 0.0 || segment.law == AxialLaw::TwoWay);
             of.push(match *rule {
@@ -101,6 +121,14 @@ impl Parts {
                 PrestressRule::ForceDensity(q) => return Err(bad(index, "force density (N/m)", q)),
                 // Without force there is nothing to seek.
                 PrestressRule::Tension(0.0) => Part::Density(0.0),
+                PrestressRule::Tension(n) if bearable(n) && continues(index) => match of[index - 1] {
+                    // One tension in all segments of a reach that slides: one thing to seek.
+                    Part::Family(family) if prestress.rules[index - 1] == *rule => {
+                        families[family].segments.push(index);
+                        Part::Family(family)
+                    }
+                    _ => return Err(mixed(index)),
+                },
                 PrestressRule::Tension(n) if bearable(n) => {
                     families.push(Family {
                         segments: vec![index],
@@ -151,7 +179,31 @@ impl Parts {
                 *family = number[*family];
             }
         }
-        Ok(Self { of, families: kept })
+        let (slides, slide_of) = slides(net, prestress, &of)?;
+        Ok(Self {
+            of,
+            families: kept,
+            slides,
+            slide_of,
+        })
+    }
+
+    /// The reach of a segment, if it slides.
+    pub(super) fn slide(&self, segment: usize) -> Option<usize> {
+        self.slide_of.get(segment).copied().flatten()
+    }
+
+    /// Segments left to balance, together where one tension is in all of them.
+    pub(super) fn balance_groups(&self) -> Vec<Vec<usize>> {
+        let mut groups: Vec<Vec<usize>> = Vec::new();
+        for e in self.balance() {
+            let slide = self.slide(e);
+            match groups.last_mut() {
+                Some(last) if slide.is_some() && self.slide(last[0]) == slide => last.push(e),
+                _ => groups.push(vec![e]),
+            }
+        }
+        groups
     }
 
     /// Whether every member has a given unstressed length, as in a frozen net.
@@ -202,4 +254,43 @@ impl Parts {
         }
         Ok(())
     }
+}
+
+/// The reaches that slide, and that of each segment.
+type Slides = (Vec<Slide>, Vec<Option<usize>>);
+
+fn slides(net: &Net, prestress: &Prestress, of: &[Part]) -> Result<Slides, ShapeError> {
+    let mut slides = Vec::new();
+    let mut slide_of = Vec::new();
+    for reach in net.reaches().iter().filter(|reach| reach.slides()) {
+        slide_of.resize(of.len(), None);
+        let segments = reach.segments.clone();
+        let first = segments.start;
+        let same = |e: &usize| match (of[first], of[*e]) {
+            (Part::Elastic(_), Part::Elastic(_)) => prestress.rules[first] == prestress.rules[*e],
+            (a, b) => a == b,
+        };
+        if let Some(other) = segments.clone().find(|e| !same(e)) {
+            return Err(ShapeError::MixedReach {
+                member: net.member_name(crate::model::SegmentId::new(other)).to_owned(),
+                node: net.node_name(net.segments()[other].ends[0]).to_owned(),
+            });
+        }
+        let elastic = match prestress.rules[first] {
+            PrestressRule::UnstressedLength(unstressed_length) => Some(Sliding {
+                first,
+                axial_stiffness: segments
+                    .clone()
+                    .map(|e| net.segments()[e].section.axial_stiffness)
+                    .collect(),
+                expansion: vec![1.0; segments.len()],
+                factors: vec![1.0; segments.len()],
+                unstressed_length,
+            }),
+            _ => None,
+        };
+        slide_of[segments.clone()].fill(Some(slides.len()));
+        slides.push(Slide { segments, elastic });
+    }
+    Ok((slides, slide_of))
 }

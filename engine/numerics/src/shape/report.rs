@@ -13,7 +13,8 @@ pub struct BalanceReport {
     pub segments: Vec<SegmentId>,
     /// How many of their forces the held nodes determine.
     pub rank: usize,
-    /// Whether they determine all; otherwise the forces of least square sum were taken.
+    /// Whether they determine all; otherwise the forces of least square sum were taken, or,
+    /// if a rope pushed with those, ones with which none does.
     pub unique: bool,
     /// Largest force left at a held node (N).
     pub residual: f64,

@@ -14,6 +14,7 @@ use nalgebra::Vector3;
 use super::given::{SagMeasure, ShapeTarget, Wish};
 use super::parts::{Part, Parts};
 use super::search::Point;
+use super::sensitivity::less_rope;
 use super::surface::Surface;
 use super::{Prestress, ShapeError};
 use crate::model::{Net, NodeId, SegmentId};
@@ -262,6 +263,12 @@ impl Rows {
                 for &e in segments {
                     let axial = point.axial_forces[e];
                     match parts.of[e] {
+                        part if parts.slide(e).is_some() => {
+                            slope.tighter(net, parts, point, e, w / sum);
+                            if matches!(part, Part::Density(_) | Part::Family(_)) {
+                                slope.densities.push((e, w * axial / sum));
+                            }
+                        }
                         Part::Elastic(bar) if bar.is_taut(point.lengths[e]) => {
                             slope.longer(net, point, e, w * bar.stiffness / sum);
                         }
@@ -280,7 +287,17 @@ impl Rows {
             Measure::UnstressedLength { segments, .. } => {
                 let sum: f64 = segments.iter().map(|e| point.unstressed[*e]).sum();
                 for &e in segments {
-                    if matches!(parts.of[e], Part::Density(_) | Part::Family(_)) {
+                    let by_density = matches!(parts.of[e], Part::Density(_) | Part::Family(_));
+                    if parts.slide(e).is_some() {
+                        let share = point.unstressed[e] / point.lengths[e];
+                        slope.longer(net, point, e, w * share / sum);
+                        slope.tighter(net, parts, point, e, -w * less_rope(net, point, e) / sum);
+                        if by_density {
+                            slope
+                                .densities
+                                .push((e, -w * point.unstressed[e] * (1.0 - share) / sum));
+                        }
+                    } else if by_density {
                         // L0 = l / (1 + q l / EA): dL0/dl = (L0/l)², dL0/d ln q = −L0 (1 − L0/l).
                         let share = point.unstressed[e] / point.lengths[e];
                         slope.longer(net, point, e, w * share * share / sum);
@@ -326,6 +343,16 @@ impl Rows {
 }
 
 impl Slope {
+    /// Adds a derivative by the tension of the reach of a segment that slides.
+    fn tighter(&mut self, net: &Net, parts: &Parts, point: &Point, segment: usize, by: f64) {
+        if let Some(slide) = parts.slide(segment) {
+            let segments = parts.slides[slide].segments.clone();
+            for (e, slope) in segments.zip(&point.slide_slopes[slide]) {
+                self.longer(net, point, e, by * slope);
+            }
+        }
+    }
+
     /// Adds a derivative by the length of a segment.
     pub(super) fn longer(&mut self, net: &Net, point: &Point, segment: usize, by: f64) {
         let [i, j] = net.segments()[segment].ends.map(NodeId::index);

@@ -18,7 +18,7 @@ use nalgebra::{Matrix3, Vector3};
 
 use super::ShapeError;
 use super::loads::ShapeLoads;
-use super::parts::{Part, Parts};
+use super::parts::{Part, Parts, Slide};
 use super::rows::Rows;
 use super::sensitivity::Side;
 use crate::assembly::Structure;
@@ -39,6 +39,9 @@ const MAX_EVALUATIONS: u32 = 40;
 /// Stiffness left to slack ropes, over the largest in the net, so that a slack rope does not make the matrix singular.
 const SLACK_STIFFNESS: f64 = 1e-10;
 
+/// Pivot over the largest stiffness in the net at which compression cancels tension.
+const CANCELS: f64 = 1e-12;
+
 /// The net at some positions.
 #[derive(Clone, Debug)]
 pub(super) struct Point {
@@ -51,6 +54,8 @@ pub(super) struct Point {
     pub(super) unstressed: Vec<f64>,
     /// Loads less forces of members and elastic supports (N).
     pub(super) out_of_balance: Vec<Vector3<f64>>,
+    /// Change of the tension of each reach that slides with the length of each of its segments (N/m).
+    pub(super) slide_slopes: Vec<Vec<f64>>,
     residual: Vec<f64>,
     worst: (f64, Option<NodeId>),
     pub(super) largest_force: f64,
@@ -123,16 +128,31 @@ impl<'a, 'o> Search<'a, 'o> {
             axial_forces: Vec::with_capacity(n_segments),
             unstressed: Vec::with_capacity(n_segments),
             out_of_balance: self.loads.nodal.clone(),
+            slide_slopes: Vec::new(),
             residual: vec![0.0; self.structure.n_dofs()],
             worst: (0.0, None),
             largest_force: self.loads.nodal.iter().fold(0.0, |m: f64, p| m.max(p.amax())),
             positions,
         };
+        let slides = self.slide_tensions(&mut point, family_densities);
         for (index, segment) in net.segments().iter().enumerate() {
             let [i, j] = segment.ends.map(NodeId::index);
             let chord = point.positions[j] - point.positions[i];
             let length = chord.norm();
             let (axial, unstressed, force) = match self.parts.of[index] {
+                _ if self.parts.slide(index).is_some() => {
+                    let axial = slides[self.parts.slide(index).expect("it slides")];
+                    let force = if length > 0.0 {
+                        chord * (axial / length)
+                    } else {
+                        Vector3::zeros()
+                    };
+                    (
+                        axial,
+                        unstressed_length(length, axial, segment.section.axial_stiffness),
+                        force,
+                    )
+                }
                 Part::Elastic(bar) => {
                     let axial = bar.axial_force(length);
                     let force = if length > 0.0 {
@@ -199,6 +219,41 @@ impl<'a, 'o> Search<'a, 'o> {
         point
     }
 
+    /// Tension of each reach that slides (N); notes how it changes with the lengths of its segments.
+    ///
+    /// A force density is tension over the mean length of the segments.
+    fn slide_tensions(&self, point: &mut Point, family_densities: &[f64]) -> Vec<f64> {
+        let one = |slide: &Slide| {
+            let lengths: Vec<f64> = (self.net().segments()[slide.segments.clone()].iter())
+                .map(|s| {
+                    let [i, j] = s.ends.map(NodeId::index);
+                    (point.positions[j] - point.positions[i]).norm()
+                })
+                .collect();
+            let n = lengths.len() as f64;
+            let first = slide.segments.start;
+            let mut slopes = vec![0.0; lengths.len()];
+            let tension = match (&slide.elastic, self.density(first, family_densities)) {
+                (Some(rope), _) => {
+                    let tension = rope.tension(&lengths);
+                    if tension > 0.0 {
+                        rope.slopes_into(&lengths, tension, &mut slopes);
+                    }
+                    tension
+                }
+                (None, Some(q)) => {
+                    slopes.fill(q / n);
+                    q * lengths.iter().sum::<f64>() / n
+                }
+                (None, None) => self.balance_forces[first],
+            };
+            (tension, slopes)
+        };
+        let (tensions, slopes) = self.parts.slides.iter().map(one).unzip();
+        point.slide_slopes = slopes;
+        tensions
+    }
+
     /// Factorises the stiffness at a point. `floor`: least force across a member of given length (N).
     ///
     /// Without members of given length the densities alone decide it: what is factorised for them already, stays.
@@ -214,6 +269,25 @@ impl<'a, 'o> Search<'a, 'o> {
         let mut definite = true;
         for (index, block) in blocks.iter_mut().enumerate() {
             match self.parts.of[index] {
+                Part::Balance => {}
+                _ if self.parts.slide(index).is_some() => {
+                    let (length, axial) = (point.lengths[index], point.axial_forces[index]);
+                    if length == 0.0 {
+                        continue;
+                    }
+                    definite &= axial >= 0.0;
+                    let is_elastic = matches!(self.parts.of[index], Part::Elastic(_));
+                    let across = if is_elastic { axial.max(floor) } else { axial } / length;
+                    largest = largest.max(across);
+                    // What its stretch resists is added below. Where the rope is straight that is nothing, so that on the
+                    // way there is a little, which ends with the residual; a slack rope is held like one across.
+                    let along = if is_elastic && axial == 0.0 {
+                        across
+                    } else {
+                        across.min(floor / length)
+                    };
+                    *block = axial_block(along, across, &(point.chords[index] / length));
+                }
                 Part::Elastic(bar) => {
                     let length = point.lengths[index];
                     if length == 0.0 {
@@ -230,7 +304,6 @@ impl<'a, 'o> Search<'a, 'o> {
                     largest = largest.max(along);
                     *block = axial_block(along, across, &(point.chords[index] / length));
                 }
-                Part::Balance => {}
                 Part::Density(_) | Part::Family(_) => {
                     let q = self.density(index, family_densities).expect("a part with a density");
                     definite &= q >= 0.0;
@@ -246,10 +319,21 @@ impl<'a, 'o> Search<'a, 'o> {
         }
         self.structure.tangent_into(&blocks, &mut self.values);
         self.structure.add_elastic_supports(&mut self.values);
+        for (slide, slopes) in self.parts.slides.iter().zip(&point.slide_slopes) {
+            let (ones, first) = (vec![1.0; slopes.len()], slide.segments.start);
+            let (chords, lengths) = (&point.chords, &point.lengths);
+            let values = &mut self.values;
+            self.structure
+                .add_stretch(first, &ones, slopes, chords, lengths, values);
+        }
+        let mut cancels = false;
         let outcome = if definite {
             self.factor.cholesky(&self.values)
         } else {
-            self.factor.ldlt(&self.values).map(|_| ())
+            // Without pivoting, a pivot that all but vanishes leaves no digits: compression cancels the tension there.
+            self.factor.ldlt(&self.values).map(|inertia| {
+                cancels = inertia.smallest.abs() <= CANCELS * largest;
+            })
         };
         outcome.map_err(|error| match error {
             crate::equilibrium::linear::FactorError::Pivot { dof } => ShapeError::Singular {
@@ -257,7 +341,13 @@ impl<'a, 'o> Search<'a, 'o> {
             },
             crate::equilibrium::linear::FactorError::NotFinite => self.unbounded(point),
         })?;
-        if !self.parts.of.iter().any(|part| matches!(part, Part::Elastic(_))) {
+        if cancels {
+            let mut movement = vec![1.0; self.structure.n_dofs()];
+            self.factor.solve_in_place(&mut movement);
+            return Err(self.singular(&movement));
+        }
+        let by_densities = !self.parts.of.iter().any(|part| matches!(part, Part::Elastic(_)));
+        if by_densities && self.parts.slides.is_empty() {
             self.factorised_for = Some(family_densities.to_vec());
         }
         Ok(())
@@ -305,12 +395,20 @@ impl<'a, 'o> Search<'a, 'o> {
     fn allowed(&self, point: &Point, family_densities: &[f64]) -> f64 {
         let stiffest = (0..self.parts.of.len())
             .map(|e| match self.parts.of[e] {
-                Part::Elastic(bar) if bar.is_taut(point.lengths[e]) => bar.stiffness,
+                Part::Elastic(bar) if self.parts.slide(e).is_none() && bar.is_taut(point.lengths[e]) => bar.stiffness,
+                _ if self.parts.slide(e).is_some() => self.slide_stiffness(point, e),
                 _ => self.density(e, family_densities).unwrap_or(0.0).abs(),
             })
             .fold(0.0, f64::max);
         let size = point.positions.iter().fold(0.0, |m: f64, x| m.max(x.amax()));
         (BALANCED * point.largest_force).max(2.0 * f64::EPSILON * stiffest * size)
+    }
+
+    /// The largest stiffness in the reach of a segment that slides (N/m).
+    fn slide_stiffness(&self, point: &Point, segment: usize) -> f64 {
+        let slopes = self.parts.slide(segment).map(|slide| &point.slide_slopes[slide]);
+        let across = point.axial_forces[segment].abs() / point.lengths[segment].max(f64::MIN_POSITIVE);
+        slopes.map_or(0.0, |slopes| slopes.iter().fold(across, |m: f64, k| m.max(*k)))
     }
 
     /// The step along `movement` at which the residual no longer points along it, and its length.
@@ -364,6 +462,7 @@ impl<'a, 'o> Search<'a, 'o> {
     fn report(&mut self, point: &Point, iteration: u32, step_length: f64) -> Result<(), ShapeError> {
         let energy = |e: usize| 0.5 * point.axial_forces[e] * (point.lengths[e] - point.unstressed[e]);
         let slack = |e: &usize| match self.parts.of[*e] {
+            Part::Elastic(_) if self.parts.slide(*e).is_some() => point.axial_forces[*e] == 0.0,
             Part::Elastic(bar) => !bar.is_taut(point.lengths[*e]),
             _ => false,
         };

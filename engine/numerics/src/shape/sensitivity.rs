@@ -18,7 +18,7 @@ use super::parts::{Part, Parts};
 use super::rows::Slope;
 use super::search::{Point, Search};
 use crate::assembly::Structure;
-use crate::model::NodeId;
+use crate::model::{Net, NodeId};
 
 /// Right-hand sides that are solved for together: enough to stream the factor seldom, few enough to bound the memory.
 const TOGETHER: usize = 32;
@@ -238,7 +238,11 @@ impl Search<'_, '_> {
         let mut forces = Vec::with_capacity(2 * segments.len());
         for &index in segments {
             let [i, j] = self.net().segments()[index].ends.map(NodeId::index);
-            let force = point.chords[index] * densities[family];
+            let force = if self.parts.slide(index).is_some() {
+                point.chords[index] * (point.axial_forces[index] / point.lengths[index])
+            } else {
+                point.chords[index] * densities[family]
+            };
             // With more force the same length needs less rope, which weighs less.
             let unstressed = point.unstressed[index];
             let shorter = if unstressed > 0.0 {
@@ -287,6 +291,12 @@ fn load_change(structure: &Structure, parts: &Parts, loads: &ShapeLoads, point: 
     let n_nodes = net.nodes().len();
     let (mut nodal, mut change) = (vec![Vector3::zeros(); n_nodes], vec![Vector3::zeros(); n_nodes]);
     structure.dofs().nodal_into(movement, &mut nodal);
+    for (index, by) in slide_changes(net, parts, point, &nodal) {
+        let load = loads.per_length[index] * (-0.5 * by);
+        let [i, j] = net.segments()[index].ends.map(NodeId::index);
+        change[i] += load;
+        change[j] += load;
+    }
     for (index, segment) in net.segments().iter().enumerate() {
         let (length, plan) = (point.lengths[index], point.chords[index].xy().norm());
         let [i, j] = segment.ends.map(NodeId::index);
@@ -321,6 +331,24 @@ fn load_change_transposed(
     let n_nodes = net.nodes().len();
     let (mut nodal, mut change) = (vec![Vector3::zeros(); n_nodes], vec![Vector3::zeros(); n_nodes]);
     structure.dofs().nodal_into(forces, &mut nodal);
+    for (slide, slopes) in parts.slides.iter().zip(&point.slide_slopes) {
+        let shortened = |e: usize| {
+            let [i, j] = net.segments()[e].ends.map(NodeId::index);
+            0.5 * less_rope(net, point, e) * loads.per_length[e].dot(&(nodal[i] + nodal[j]))
+        };
+        let by: f64 = slide.segments.clone().map(shortened).sum();
+        for (e, slope) in slide
+            .segments
+            .clone()
+            .zip(slopes)
+            .filter(|(e, _)| point.lengths[*e] > 0.0)
+        {
+            let [i, j] = net.segments()[e].ends.map(NodeId::index);
+            let along = point.chords[e] * (by * slope / point.lengths[e]);
+            change[i] += along;
+            change[j] -= along;
+        }
+    }
     for (index, segment) in net.segments().iter().enumerate() {
         let (length, plan) = (point.lengths[index], point.chords[index].xy().norm());
         let [i, j] = segment.ends.map(NodeId::index);
@@ -343,10 +371,39 @@ fn load_change_transposed(
     components
 }
 
-/// `dL0/dl` at the force density as it is.
+/// Segments of reaches that slide, each with the unstressed length that less lies in it as the nodes move, because the
+/// tension of the reach rises (m).
+fn slide_changes<'a>(
+    net: &'a Net,
+    parts: &'a Parts,
+    point: &'a Point,
+    nodal: &'a [Vector3<f64>],
+) -> impl Iterator<Item = (usize, f64)> + 'a {
+    let slides = parts.slides.iter().zip(&point.slide_slopes);
+    slides.flat_map(move |(slide, slopes)| {
+        let rises = |(e, slope): (usize, &f64)| {
+            let [i, j] = net.segments()[e].ends.map(NodeId::index);
+            slope * point.chords[e].dot(&(nodal[j] - nodal[i])) / point.lengths[e].max(f64::MIN_POSITIVE)
+        };
+        let rise: f64 = slide.segments.clone().zip(slopes).map(rises).sum();
+        slide
+            .segments
+            .clone()
+            .map(move |e| (e, rise * less_rope(net, point, e)))
+    })
+}
+
+/// `−∂L0/∂T` of a segment at the length that it has (m/N).
+pub(super) fn less_rope(net: &Net, point: &Point, segment: usize) -> f64 {
+    let share = point.unstressed[segment] / point.lengths[segment].max(f64::MIN_POSITIVE);
+    point.lengths[segment] * share * share / net.segments()[segment].section.axial_stiffness
+}
+
+/// `dL0/dl` at the force density as it is; at the tension as it is where the rope slides.
 fn unstressed_slope(parts: &Parts, point: &Point, segment: usize) -> f64 {
     let stretch = point.lengths[segment] / point.unstressed[segment];
     match parts.of[segment] {
+        _ if parts.slide(segment).is_some() => 1.0 / stretch,
         Part::Elastic(_) => 0.0,
         Part::Balance => 1.0 / stretch,
         Part::Density(_) | Part::Family(_) => 1.0 / (stretch * stretch),

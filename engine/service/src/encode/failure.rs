@@ -141,6 +141,12 @@ pub(super) fn of_shape(net: &Net, error: &ShapeError) -> (v1::CaseOutcome, v1::F
     let one = |id: &String| vec![id.clone()];
     let (reason, cure, nodes, members) = match error {
         ShapeError::BadRule { member, .. } => ("BAD_RULE", "mend the prestress rule of the member", none, one(member)),
+        ShapeError::MixedReach { member, node } => (
+            "MIXED_REACH",
+            "give the whole reach one prestress rule",
+            one(node),
+            one(member),
+        ),
         ShapeError::MissingCoordinates { nodes } => {
             ("NO_COORDINATES", "list these nodes with xyz_m", nodes.clone(), none)
         }

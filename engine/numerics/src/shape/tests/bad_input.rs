@@ -78,6 +78,33 @@ fn slack_ropes_leave_a_node_loose() {
     assert!(text.contains("only slack ropes lead to \"t\""), "{text}");
 }
 
+/// A free end pulls nothing to it: it is loose, not a rope without length.
+#[test]
+fn a_slack_rope_with_a_free_end_is_loose() {
+    let mut sketch = rope();
+    sketch.cable("tail", section(1e6, 0.0), "m t");
+    let net = Arc::new(sketch.net());
+    let mut prestress = all(&net, PrestressRule::ForceDensity(100.0));
+    prestress.rules[2] = PrestressRule::UnstressedLength(2.0);
+    let text = message(shape(&net, &prestress, vec![]));
+    assert!(text.contains("only slack ropes lead to \"t\""), "{text}");
+}
+
+/// A strut that pushes as much as its ropes pull leaves the node between them without stiffness.
+#[test]
+fn compression_that_cancels_tension_is_told() {
+    let mut sketch = rope();
+    sketch.held("post", [3.0, 0.0, -2.0]);
+    sketch.strut("strut", section(1e7, 0.0), "post", "m");
+    let net = Arc::new(sketch.net());
+    let mut prestress = all(&net, PrestressRule::ForceDensity(100.0));
+    for push in [-200.0, -200.0 * (1.0 + 1e-15)] {
+        prestress.rules[2] = PrestressRule::ForceDensity(push);
+        let text = message(shape(&net, &prestress, vec![down(node(&net, "m"), 10.0)]));
+        assert!(text.contains("compression and tension cancel there"), "{text}");
+    }
+}
+
 #[test]
 fn loads_of_the_reference_state_are_dead() {
     let net = Arc::new(rope().net());

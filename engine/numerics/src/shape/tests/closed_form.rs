@@ -182,6 +182,37 @@ fn of_many_balancing_forces_the_least_are_taken() {
     assert!(!balance.unique && balance.rank == 1);
 }
 
+/// Four level guys at a head, 60 degrees apart, of which the forces of least square sum have one push: others balance as
+/// well, in which none does.
+#[test]
+fn of_many_balancing_forces_some_in_which_no_rope_pushes_are_taken() {
+    let mut sketch = Sketch::default();
+    sketch.node("h", [0.0, 0.0, 0.0]);
+    let at = |degrees: f64| [4.0 * degrees.to_radians().cos(), 4.0 * degrees.to_radians().sin(), 0.0];
+    sketch.held("wall", at(180.0));
+    sketch.cable("rope", section(1e6, 0.0), "h wall");
+    for (name, degrees) in [("g1", 10.0), ("g2", -20.0), ("g3", 160.0), ("up", 90.0)] {
+        sketch.held(name, at(degrees));
+        sketch.cable(name, section(1e6, 0.0), &format!("h {name}"));
+    }
+    let net = Arc::new(sketch.net());
+    let mut prestress = all(&net, PrestressRule::Balance);
+    prestress.rules[0] = PrestressRule::Tension(1000.0);
+    prestress.hold = vec![node(&net, "h")];
+    let found = shape(&net, &prestress, vec![]).expect("a shape");
+    let forces = &found.state.axial_forces;
+    assert!(forces.iter().all(|n| *n >= 0.0), "{forces:?}");
+    let sum: Vector3<f64> = (0..5)
+        .map(|e| {
+            let [_, j] = net.segments()[e].ends;
+            found.state.positions[j.index()].normalize() * forces[e]
+        })
+        .sum();
+    assert!(sum.norm() < 1e-7, "{sum}");
+    let balance = found.report.balance.expect("a report");
+    assert!(!balance.unique && balance.residual < 1e-7);
+}
+
 /// An elastic support at rest where it was given gives way: on a line `q (x_m) …` is two springs in a row.
 #[test]
 fn an_elastic_support_gives_way() {

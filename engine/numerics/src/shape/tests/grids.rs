@@ -31,7 +31,17 @@ fn saddle(n: u32, mass: f64) -> Sketch {
 /// Equal tension along each rope, another one across: nodes find the places where the directions cancel.
 #[test]
 fn a_net_of_constant_tensions() {
-    let net = Arc::new(saddle(6, 0.0).net());
+    constant_tensions(6);
+}
+
+/// More unknowns than their derivatives are formed for: least squares by products.
+#[test]
+fn a_net_of_many_constant_tensions() {
+    constant_tensions(15);
+}
+
+fn constant_tensions(n: u32) {
+    let net = Arc::new(saddle(n, 0.0).net());
     let half = net.segments().len() / 2;
     let wanted = |e: usize| if e < half { 10e3 } else { 12e3 };
     let prestress = Prestress {
@@ -53,6 +63,53 @@ fn a_net_of_constant_tensions() {
     for (sum, node) in sums.iter().zip(net.nodes()) {
         assert!(node.position.is_some() || sum.norm() < 1e-5, "{sum} at {}", node.name);
     }
+}
+
+/// The force density of every segment free, and all free nodes wanted on a surface: met where it is in reach, by many
+/// unknowns under few equations.
+#[test]
+fn a_net_fitted_to_a_surface() {
+    let net = Arc::new(saddle(15, 2.0).net());
+    let hypar = |x: f64, y: f64| 1.1 * ((x / 6.0 - 1.0).powi(2) - (y / 6.0 - 1.0).powi(2));
+    let points = (0..81)
+        .map(|k| {
+            let (x, y) = (1.5 * f64::from(k % 9), 1.5 * f64::from(k / 9));
+            Vector3::new(x, y, hypar(x, y))
+        })
+        .collect();
+    let n = net.segments().len();
+    let nodes: Vec<NodeId> = (0..net.nodes().len())
+        .filter(|k| net.nodes()[*k].position.is_none())
+        .map(NodeId::new)
+        .step_by(7)
+        .collect();
+    let prestress = Prestress {
+        rules: (0..n).map(PrestressRule::Adjustable).collect(),
+        adjustables: vec![
+            Adjustable {
+                density: 8e3,
+                least: 0.0,
+                most: f64::INFINITY,
+            };
+            n
+        ],
+        targets: vec![ShapeTarget {
+            name: "form".to_owned(),
+            wish: Wish::Surface {
+                nodes: nodes.clone(),
+                points,
+            },
+            weight: 1.0,
+        }],
+        ..Prestress::default()
+    };
+    let found = shape(&net, &prestress, vec![own_weight()]).expect("a shape");
+    assert_eq!(found.report.unmet_in_words(), None);
+    for node in nodes {
+        let x = found.state.positions[node.index()];
+        close(x.z, hypar(x.x, x.y), 1e-8);
+    }
+    assert!(found.state.axial_forces.iter().all(|n| *n > 0.0));
 }
 
 /// Finds the shape of a saddle with a wanted mean tension in each rope.

@@ -8,6 +8,7 @@ mod properties;
 mod published;
 mod sensitivity;
 mod skins;
+mod sliding;
 mod targets;
 mod tent;
 

@@ -349,6 +349,16 @@ fn what_can_not_be_a_target_is_told() {
 /// formed by columns, by rows, and applied both ways.
 #[test]
 fn derivatives_of_targets() {
+    derivatives(false);
+}
+
+/// The same where two of the ropes slide.
+#[test]
+fn derivatives_of_targets_on_ropes_that_slide() {
+    derivatives(true);
+}
+
+fn derivatives(slides: bool) {
     let mut sketch = Sketch::default();
     sketch.held("A", [0.0, 0.0, 3.0]);
     sketch.held("B", [9.0, 1.0, 0.0]);
@@ -360,6 +370,11 @@ fn derivatives_of_targets() {
     sketch.cable("three", section(3e5, 7.0), "p r");
     sketch.cable("tie", section(3e4, 1.0), "q Z");
     sketch.strut("post", section(1e6, 3.0), "p", "r");
+    if slides {
+        let through = |place| crate::model::Slide { place, friction: 0.0 };
+        sketch.given.cables[0].slides = vec![through(2)];
+        sketch.given.cables[1].slides = vec![through(2)];
+    }
     let corners = ["A", "p", "q", "r"].map(|name| sketch.id(name)).to_vec();
     sketch.given.panels.push(crate::model::PanelGiven {
         name: "panel".to_owned(),
@@ -371,7 +386,7 @@ fn derivatives_of_targets() {
     rules.extend([PrestressRule::MeanTension(0); 3]);
     rules.extend([
         PrestressRule::Adjustable(1),
-        PrestressRule::UnstressedLength(3.0),
+        PrestressRule::UnstressedLength(if slides { 2.0 } else { 3.0 }),
         PrestressRule::Adjustable(2),
     ]);
     let sag = |measure| Wish::Sag {
@@ -446,8 +461,8 @@ fn derivatives_of_targets() {
     let mut search = Search::new(&analysis, &parts, &loads, &mut observe);
     search.rows = rows;
     let densities = [1100.0, 900.0, 250.0, -60.0];
-    let start: Vec<Vector3<f64>> = (net.nodes().iter())
-        .map(|n| n.position.unwrap_or(Vector3::new(4.0, 4.0, 1.0)))
+    let start: Vec<Vector3<f64>> = (net.nodes().iter().enumerate())
+        .map(|(k, n)| n.position.unwrap_or(Vector3::new(4.0, k as f64, 1.0)))
         .collect();
     let point = search.balanced(start, &densities).expect("a balanced shape");
     assert!(point.axial_forces[7] > 0.0, "the tie is taut");
