@@ -13,4 +13,5 @@ mod reasons;
 mod results;
 mod sizes;
 mod surfaces;
+mod targets;
 mod violations;

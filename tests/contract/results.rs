@@ -24,8 +24,9 @@ pub(crate) fn run(work: &Work, cases: &[usize]) -> Vec<Event> {
     messages.extend(id_tables(work, &plan, cases).into_iter().map(|table| v1::RunResponse {
         event: Some(Event::Ids(table)),
     }));
-    let found = plan.reference(&mut |_| ControlFlow::Continue(()));
-    messages.extend(reference(work, &plan, &found));
+    let mut history = Vec::new();
+    let found = plan.reference_with_history(&mut history, &mut |_| ControlFlow::Continue(()));
+    messages.extend(reference(work, &plan, &found, &history));
     let mut tally = Tally::new(&plan, cases, &found);
     if let Ok(found) = &found {
         for index in cases {
@@ -460,7 +461,7 @@ fn without_a_reference_state_nothing_is_judged() {
     let plan = ropewalk_numerics::brief::Plan::new(work.brief.clone());
     let found = plan.reference(&mut |_| ControlFlow::Break(()));
     assert!(found.is_err());
-    let said = reference(&work, &plan, &found);
+    let said = reference(&work, &plan, &found, &[]);
     let Some(Event::CaseSummary(closing)) = said.last().and_then(|message| message.event.clone()) else {
         panic!("the reference state is closed");
     };

@@ -66,15 +66,26 @@ impl Plan {
         &self,
         observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
     ) -> Result<ReferenceOutcome, ShapeError> {
+        self.reference_with_history(&mut Vec::new(), observe)
+    }
+
+    /// Finds the reference state and notes every iteration in `history`, also where there is none.
+    ///
+    /// # Errors
+    /// [`ShapeError`] if there is none.
+    pub fn reference_with_history(
+        &self,
+        history: &mut Vec<IterationReport>,
+        observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
+    ) -> Result<ReferenceOutcome, ShapeError> {
         let brief = &self.brief;
-        let mut history = Vec::new();
         let Found { state, case, report } = shape::find(
             &self.analysis,
             &brief.prestress,
             &brief.actions,
             &brief.settings,
             &mut |report| {
-                note(&mut history, report);
+                note(history, report);
                 observe(report)
             },
         )?;
@@ -94,7 +105,7 @@ impl Plan {
             case,
             result,
             report,
-            history,
+            history: history.clone(),
             bases: Vec::new(),
         };
         outcome.bases = self.bases(&outcome, observe);

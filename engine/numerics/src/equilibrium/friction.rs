@@ -28,15 +28,6 @@ const BEGINS: f64 = 1e-9;
 /// Rope that has passed the wrong way, over the length of its piece, at which a slipping rope sticks again (–).
 const PASSED: f64 = 1e-12;
 
-/// Whether any rope slides against friction.
-pub(super) fn is_felt(structure: &Structure) -> bool {
-    structure
-        .net()
-        .reaches()
-        .iter()
-        .any(|r| r.friction.iter().any(|mu| *mu > 0.0))
-}
-
 /// Ropes that stick and slip in one load level.
 pub(super) struct Friction {
     gripping: Gripping,

@@ -88,7 +88,7 @@ pub fn solve(
     check_vectors("start position", start)?;
     let anchors = existence::check_loads_are_held(structure, &bars_only(structure, &full, start))?;
 
-    let before = match friction::is_felt(structure) {
+    let before = match structure.net().has_friction() && !case.lying.is_empty() {
         true => Some(lying_at(structure, &level(0.0, None)?, start)),
         false => None,
     };

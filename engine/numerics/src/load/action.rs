@@ -102,6 +102,15 @@ pub enum Load {
         /// By how much (m).
         by: Vector3<f64>,
     },
+    /// A piece of rope drawn in or let out at one of its ends: its unstressed length changes.
+    Adjustment {
+        /// Index of the unstressed length, see [`crate::model::Net::n_lengths`].
+        length: usize,
+        /// The segment at that end.
+        segment: SegmentId,
+        /// Change (m), positive = longer.
+        by: f64,
+    },
     /// Change of prestress through lengths: each reach gets the unstressed length for which its reference tension at
     /// the reference geometry is `(1 + share) T`. Reaches slack in the reference state and struts keep their length.
     PrestressShare {

@@ -31,7 +31,7 @@ pub struct Case {
     /// Segments taken out, by index.
     pub removed: Vec<bool>,
     /// Unstressed length (m) that lies in every segment while nothing slides from where it lay in the reference state, at
-    /// the full load. Read where ropes slide against friction; empty: there is none.
+    /// the full load. Empty: ropes slide without friction.
     pub lying: Vec<f64>,
     /// Pressure on the outer side of every panel (Pa); it stays normal to the panel as that moves. Empty: none.
     pub pressures: Vec<f64>,
@@ -90,14 +90,27 @@ impl Case {
             reference,
             surface: &surface,
             shares: vec![prestress_share; net.segments().len()],
+            adjustments: Vec::new(),
         };
         for (action, factor) in factors.iter().filter(|(_, factor)| *factor != 0.0) {
             for load in &actions[*action].loads {
                 adding.add(&mut case, load, *factor);
             }
         }
-        let shares = adding.shares;
+        let Adding {
+            shares, adjustments, ..
+        } = adding;
         case.apply_shares(net, reference, &shares);
+        if net.has_friction() {
+            case.lying = lying(net, reference, &case.unstressed_lengths);
+        }
+        for (length, segment, by) in adjustments {
+            case.unstressed_lengths[length] += by;
+            // What an end gives or takes is at that end until it slides.
+            if let Some(lying) = case.lying.get_mut(segment) {
+                *lying += by;
+            }
+        }
         case
     }
 
@@ -148,6 +161,8 @@ struct Adding<'a> {
     surface: &'a Surface,
     /// Share of prestress by segment.
     shares: Vec<f64>,
+    /// Unstressed length, segment at the end, change (m).
+    adjustments: Vec<(usize, usize, f64)>,
 }
 
 impl Adding<'_> {
@@ -238,6 +253,9 @@ impl Adding<'_> {
                     case.segments[index].temperature_change += factor * change;
                 }
             }
+            Load::Adjustment { length, segment, by } => {
+                self.adjustments.push((*length, segment.index(), factor * by));
+            }
             Load::SupportMovement { node, by } => case.support_movements[node.index()] += factor * by,
             Load::PrestressShare { scope, share } => {
                 for index in segments(net, scope) {
@@ -297,17 +315,33 @@ pub fn ice_per_length(section: &Section, thickness: f64, density: f64) -> f64 {
     section.diameter.map_or(0.0, ring)
 }
 
-/// Unstressed length of one segment (m): that of its reach, shared by current length where a reach has several.
+/// Unstressed length of one segment (m): that of its reach, or what of it lies there in the reference state.
 fn unstressed_length(net: &Net, reference: &ReferenceState, segment: usize) -> f64 {
     let index = net.segments()[segment].length;
     let whole = reference.unstressed_lengths[index];
     match net.reaches().get(index) {
-        Some(reach) if reach.segments.len() > 1 => {
-            let total: f64 = reach.segments.clone().map(|e| span(net, reference, e).norm()).sum();
-            whole * span(net, reference, segment).norm() / total
+        Some(reach) if reach.slides() => {
+            let needed = |e| needed_length(net, reference, e);
+            whole * needed(segment) / reach.segments.clone().map(needed).sum::<f64>()
         }
         _ => whole,
     }
+}
+
+/// Unstressed length that a segment takes up in the reference state (m): `l / (1 + T / EA)`.
+fn needed_length(net: &Net, reference: &ReferenceState, segment: usize) -> f64 {
+    let strain = reference.axial_forces[segment] / net.segments()[segment].section.axial_stiffness;
+    span(net, reference, segment).norm() / (1.0 + strain)
+}
+
+/// Unstressed length (m) that lies in every segment while nothing slides from where it lay in the reference state.
+fn lying(net: &Net, reference: &ReferenceState, unstressed_lengths: &[f64]) -> Vec<f64> {
+    (net.segments().iter().enumerate())
+        .map(|(e, segment)| {
+            let index = segment.length;
+            unstressed_length(net, reference, e) * unstressed_lengths[index] / reference.unstressed_lengths[index]
+        })
+        .collect()
 }
 
 fn span(net: &Net, reference: &ReferenceState, segment: usize) -> Vector3<f64> {

@@ -451,6 +451,20 @@ impl Net {
         self.reaches.get(length).is_some_and(Reach::slides)
     }
 
+    /// Whether every rope is clamped at every node: then reaches are segments.
+    #[must_use]
+    pub fn is_clamped(&self) -> bool {
+        !self.reaches.iter().any(Reach::slides)
+    }
+
+    /// Whether some rope slides against friction.
+    #[must_use]
+    pub fn has_friction(&self) -> bool {
+        self.reaches
+            .iter()
+            .any(|reach| reach.friction.iter().any(|mu| *mu > 0.0))
+    }
+
     /// Whether every rope is clamped at every node and every member straight: what is left is straight bars.
     #[must_use]
     pub fn is_plain(&self) -> bool {

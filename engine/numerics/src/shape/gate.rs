@@ -30,7 +30,22 @@ pub struct Found {
 /// The case under which a state is to be in balance.
 pub(super) fn case_under(net: &Net, state: &ReferenceState, actions: &[Action], prestress: &Prestress) -> Case {
     let factors: Vec<(usize, f64)> = prestress.under.iter().map(|action| (*action, 1.0)).collect();
-    Case::new(net, state, actions, &factors)
+    let mut case = Case::new(net, state, actions, &factors);
+    // Ropes come to rest in the reference state without friction.
+    case.lying.clear();
+    case
+}
+
+fn audited(analysis: &Analysis, found: &Found) -> audit::Audit {
+    let members = equilibrium::member_states(analysis.structure(), &found.case, &found.state);
+    let Found { case, state, .. } = found;
+    audit::audit_members(
+        analysis.structure().net(),
+        case,
+        &state.positions,
+        &state.axial_forces,
+        &members,
+    )
 }
 
 /// Gives the shape its unstressed lengths and looks whether it stands; corrects it if rounding or a member near slack
@@ -70,7 +85,7 @@ pub(super) fn finish(
         state,
         report,
     };
-    let audit = audit::audit(net, &found.case, &found.state.positions, &found.state.axial_forces);
+    let audit = audited(analysis, &found);
     let stands = audit.largest_imbalance <= STANDS * largest(&found.state.axial_forces);
     if stands && audit.passed {
         return checked(analysis, found);
@@ -136,7 +151,7 @@ pub(super) fn elastic(
 pub(super) fn checked(analysis: &Analysis, mut found: Found) -> Result<Found, ShapeError> {
     let net = analysis.structure().net();
     let state = &found.state;
-    let audit = audit::audit(net, &found.case, &state.positions, &state.axial_forces);
+    let audit = audited(analysis, &found);
     if !audit.passed {
         return Err(ShapeError::GateFailed {
             imbalance: audit.largest_imbalance.max(audit.largest_force_error),

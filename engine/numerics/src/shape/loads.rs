@@ -118,6 +118,7 @@ impl ShapeLoads {
             Load::Temperature { .. } => return Err("change of temperature"),
             Load::SupportMovement { .. } => return Err("support movement"),
             Load::PrestressShare { .. } => return Err("change of prestress"),
+            Load::Adjustment { .. } => return Err("turn of an adjuster"),
         }
         Ok(())
     }

@@ -6,6 +6,7 @@ use ropewalk_api::ropewalk::v1::load::Kind;
 use ropewalk_numerics::load::{Action, Load, Scope as Segments};
 use ropewalk_numerics::model::{Area, NodeId, SegmentId};
 
+use super::adjusters::Adjusters;
 use super::findings::{Findings, Path};
 use super::names::{Names, Thing};
 use super::net::NetDraft;
@@ -37,6 +38,8 @@ pub(crate) struct Actions<'a> {
     pub(crate) list: Vec<Action>,
     /// Cables and share of each change of prestress, by action.
     pub(crate) shares: Vec<Vec<(Vec<usize>, f64)>>,
+    /// Adjuster and opening (m) of each use, by action.
+    pub(crate) adjustments: Vec<Vec<(usize, f64)>>,
 }
 
 impl<'a> Actions<'a> {
@@ -47,6 +50,7 @@ impl<'a> Actions<'a> {
         sections: &Sections<'a>,
         scopes: &Scopes,
         supports: &Supports,
+        adjusters: &Adjusters<'a>,
         findings: &mut Findings,
         resolved: &mut Resolved,
     ) -> Self {
@@ -56,6 +60,7 @@ impl<'a> Actions<'a> {
             messages,
             list: Vec::with_capacity(messages.len()),
             shares: vec![Vec::new(); messages.len()],
+            adjustments: vec![Vec::new(); messages.len()],
         };
         for (index, message) in messages.iter().enumerate() {
             actions.names.declare(findings, &at, index, message.id.as_str(), index);
@@ -78,6 +83,8 @@ impl<'a> Actions<'a> {
                 supports,
                 resolved,
                 shares: &mut actions.shares[index],
+                adjusters,
+                adjustments: &mut actions.adjustments[index],
                 findings,
             };
             let loads = message.loads.iter().enumerate();
@@ -97,6 +104,7 @@ impl<'a> Actions<'a> {
             Some(Kind::Temperature(_)) => Some("change of temperature"),
             Some(Kind::Move(_)) => Some("movement of a support"),
             Some(Kind::Prestress(_)) => Some("change of prestress"),
+            Some(Kind::Adjust(_)) => Some("turn of an adjuster"),
             Some(Kind::OnSurface(_)) => Some("pressure that follows the surface"),
             Some(Kind::WindOnRopes(_)) => Some("wind on ropes"),
             Some(
@@ -129,6 +137,8 @@ struct Reader<'r, 'a> {
     supports: &'r Supports,
     resolved: &'r mut Resolved,
     shares: &'r mut Vec<(Vec<usize>, f64)>,
+    adjusters: &'r Adjusters<'a>,
+    adjustments: &'r mut Vec<(usize, f64)>,
     findings: &'r mut Findings,
 }
 
@@ -170,6 +180,12 @@ impl Reader<'_, '_> {
             }
             Some(Kind::Move(load)) => self.movement(load, &at.field("move")),
             Some(Kind::Prestress(load)) => self.share(load, &at.field("prestress")),
+            Some(Kind::Adjust(load)) => {
+                let at = at.field("adjust");
+                let (adjuster, by, load) = self.adjusters.load(self.action, load, &at, self.findings)?;
+                self.adjustments.push((adjuster, by));
+                Some(load)
+            }
             Some(Kind::OnPlan(load)) => self.on_plan(load, &at.field("on_plan")),
             Some(Kind::OnSurface(load)) => self.on_surface(load, &at.field("on_surface")),
             Some(Kind::WindOnRopes(load)) => self.wind_on_ropes(load, &at.field("wind_on_ropes")),
@@ -181,7 +197,7 @@ impl Reader<'_, '_> {
                     self.action,
                     format!("a load of action {} says not what acts", Quoted(self.action)),
                     "give one of nodes, own_weight, on_length, on_plan_length, on_plan, on_surface, wind_on_ropes, ice, temperature, \
-                     move, prestress",
+                     move, prestress, adjust",
                 );
                 None
             }

@@ -5,7 +5,7 @@
 //! |---|---|
 //! | `reading`, `work` | the whole brief, and what comes of it |
 //! | `findings`, `reasons`, `numbers`, `names` | what is told, where, and why |
-//! | `net`, `places`, `sections`, `supports`, `stretch`, `scope`, `surface` | the net |
+//! | `net`, `places`, `sections`, `supports`, `stretch`, `slides`, `adjusters`, `scope`, `surface` | the net |
 //! | `prestress`, `wish`, `actions`, `factors`, `combinations`, `cases`, `solving` | what is wanted of it |
 //! | `checks`, `check_kinds`, `editions`, `diagnosis` | what it is judged by |
 //! | `plausible`, `frozen`, `accepted` | doubts |
@@ -15,6 +15,7 @@
 
 mod accepted;
 mod actions;
+mod adjusters;
 mod cases;
 mod check_kinds;
 mod checks;
@@ -38,10 +39,12 @@ pub mod reasons;
 mod resolved;
 mod scope;
 mod sections;
+mod slides;
 mod solving;
 mod stretch;
 mod supports;
 mod surface;
+mod targets;
 mod wish;
 mod work;
 

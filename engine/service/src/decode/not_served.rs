@@ -17,6 +17,7 @@ pub const SERVED: &[&str] = &[
     "net.skins",
     "net.zones",
     "net.panels",
+    "net.adjusters",
     "prestress",
     "actions.loads.nodes",
     "actions.loads.own_weight",
@@ -29,6 +30,7 @@ pub const SERVED: &[&str] = &[
     "actions.loads.temperature",
     "actions.loads.move",
     "actions.loads.prestress",
+    "actions.loads.adjust",
     "factors",
     "combinations",
     "cases",
@@ -52,9 +54,6 @@ pub const SERVED: &[&str] = &[
 /// Parts of a brief that are refused.
 pub const NOT_SERVED: &[&str] = &[
     "stored_net",
-    "net.adjusters",
-    "net.cables.slides",
-    "net.roles.adjuster",
     "checks.drainage",
     "modes",
     "motions",
@@ -81,8 +80,7 @@ pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
     };
     match &brief.net_source {
         Some(v1::brief::NetSource::StoredNet(digest)) => part(&Path::root("stored_net"), digest),
-        Some(v1::brief::NetSource::Net(net)) => in_net(net, &mut part),
-        None => {}
+        Some(v1::brief::NetSource::Net(_)) | None => {}
     }
     for (list, ids) in [
         (
@@ -112,23 +110,6 @@ fn elements(list: &str, ids: &[&str], part: &mut impl FnMut(&Path<'_>, &str)) {
     let list = Path::root(list);
     for (number, id) in ids.iter().enumerate() {
         part(&list.element(id, number), id);
-    }
-}
-
-fn in_net(net: &v1::Net, part: &mut impl FnMut(&Path<'_>, &str)) {
-    let adjusters: Vec<&str> = net.adjusters.iter().map(|a| a.id.as_str()).collect();
-    elements("net.adjusters", &adjusters, part);
-    let cables = Path::root("net.cables");
-    for (number, cable) in net.cables.iter().enumerate() {
-        if cable.slides.is_some() {
-            part(&cables.element(&cable.id, number).field("slides"), &cable.id);
-        }
-    }
-    let roles = Path::root("net.roles");
-    for (number, role) in net.roles.iter().enumerate() {
-        if role.adjuster.is_some() {
-            part(&roles.element(&role.id, number).field("adjuster"), &role.id);
-        }
     }
 }
 

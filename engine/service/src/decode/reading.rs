@@ -8,6 +8,7 @@ use ropewalk_numerics::model::{CableGiven, Member, Net, NetGiven, NodeGiven, Nod
 use ropewalk_numerics::shape::first_shape;
 
 use super::actions::Actions;
+use super::adjusters::Adjusters;
 use super::cases::{Cases, LARGEST, in_words};
 use super::checks::CheckDraft;
 use super::digest::digest;
@@ -18,6 +19,7 @@ use super::net::NetDraft;
 use super::resolved::Resolved;
 use super::scope::Scopes;
 use super::sections::Sections;
+use super::slides::Slides;
 use super::supports::Supports;
 use super::surface::SurfaceDraft;
 use super::work::{Names, Work};
@@ -167,7 +169,18 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
     let supports = Supports::read(&net, findings);
     let scopes = Scopes::read(&net, findings);
     let surface = SurfaceDraft::read(&net, &scopes, &supports, findings);
-    let actions = Actions::read(&brief.actions, &net, &sections, &scopes, &supports, findings, resolved);
+    let slides = Slides::read(&net, findings);
+    let adjusters = Adjusters::read(&net, &slides, findings, resolved);
+    let actions = Actions::read(
+        &brief.actions,
+        &net,
+        &sections,
+        &scopes,
+        &supports,
+        &adjusters,
+        findings,
+        resolved,
+    );
     let prestress = prestress::read(
         brief.prestress.as_ref(),
         &prestress::Context {
@@ -192,6 +205,7 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
     let mut cases = Cases::read(brief, &context, findings, resolved);
     combinations::read(brief, factors.as_ref(), &context, &mut cases, findings, resolved);
     cases.doubts(&context, factors.as_ref(), findings);
+    adjusters.check_travel(&cases.list, &actions.adjustments, findings);
     let checks = checks::read(
         &brief.checks,
         &checks::Context {
@@ -224,7 +238,7 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
         .collect();
     let names = Names::new(&sections, &supports);
     let given = (!findings.has_errors())
-        .then(|| net_given(&net, &sections, supports))
+        .then(|| net_given(&net, &sections, &slides, supports))
         .flatten();
     let (actions, cases, effects) = (actions.list, cases.list, cases.effects);
     let work = given.map(|net| {
@@ -251,7 +265,7 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
     Some(Parts { words, work })
 }
 
-fn net_given(net: &NetDraft<'_>, sections: &Sections<'_>, supports: Supports) -> Option<NetGiven> {
+fn net_given(net: &NetDraft<'_>, sections: &Sections<'_>, slides: &Slides, supports: Supports) -> Option<NetGiven> {
     let nodes = net.nodes.iter().zip(supports.of_node);
     let nodes = nodes.map(|(node, support)| NodeGiven {
         name: node.id.to_owned(),
@@ -261,7 +275,7 @@ fn net_given(net: &NetDraft<'_>, sections: &Sections<'_>, supports: Supports) ->
         }),
         attached_mass: node.attached_mass,
     });
-    let cables = net.cables.iter().map(|cable| {
+    let cables = net.cables.iter().zip(&slides.of_cable).map(|(cable, slides)| {
         let segments = cable.first_segment..cable.first_segment + cable.n_segments();
         Some(CableGiven {
             name: cable.message.id.clone(),
@@ -269,7 +283,8 @@ fn net_given(net: &NetDraft<'_>, sections: &Sections<'_>, supports: Supports) ->
             sections: segments
                 .map(|segment| sections.section(segment))
                 .collect::<Option<_>>()?,
-            ..CableGiven::default()
+            slides: slides.clone(),
+            hangs: cable.message.hangs.is_some(),
         })
     });
     let struts = net.struts.iter().map(|strut| {

@@ -24,7 +24,8 @@ pub fn freeze(
     plan: &Plan,
     found: &Result<ReferenceOutcome, ShapeError>,
 ) -> Result<Vec<v1::FreezeResponse>, String> {
-    let summary = outcome::reference_summary(work, plan, found);
+    let history = found.as_ref().map_or(&[][..], |reference| &reference.history);
+    let summary = outcome::reference_summary(work, plan, found, history);
     let reference = match found {
         Ok(reference) if reference.result.audit.passed => reference,
         Ok(_) => {
@@ -41,6 +42,7 @@ pub fn freeze(
         digest: digest(&frozen),
         reference: Some(summary),
         cautions: cautions::of_net(work, &plan.brief().net),
+        findings: outcome::reference_findings(work, plan, found),
     };
     let parts = merging_parts(frozen).into_iter().map(Part::Brief);
     let parts = parts.chain([Part::Summary(closing)]);
@@ -56,6 +58,8 @@ fn frozen_brief(work: &Work, net: &Net, reference: &ReferenceOutcome) -> v1::Bri
     }
     let prestress = brief.prestress.get_or_insert_with(v1::Prestress::default);
     prestress.hold.clear();
+    // They are met as closely as they can be; from here on lengths are kept.
+    prestress.targets.clear();
     prestress.rules = rules(net, &reference.state.unstressed_lengths);
     brief.frozen_from = Some(v1::FrozenFrom {
         digest: work.digest.clone(),
@@ -101,15 +105,19 @@ fn rules(net: &Net, lengths: &[f64]) -> Vec<v1::PrestressRule> {
             continue;
         }
         let visits = visits(&cable.path);
-        for (position, length) in of_cable.iter().enumerate() {
-            let [from, to] = [cable.path[position], cable.path[position + 1]];
+        for (reach, length) in net.reaches()[cable.reaches.clone()].iter().zip(of_cable) {
+            let (position, end) = (
+                reach.segments.start - cable.segments.start,
+                reach.segments.end - cable.segments.start,
+            );
+            let [from, to] = [cable.path[position], cable.path[end]];
             let part = v1::PartOfCable {
                 cable: cable.name.clone(),
                 from: net.node_name(from).to_owned(),
                 to: net.node_name(to).to_owned(),
                 from_visit: visits[position],
-                // The default, the first visit after `from`, is the next node of the path.
-                to_visit: None,
+                // The default, the first visit after `from`, is the right one unless the rope slides through `to` before.
+                to_visit: (cable.path[position + 1..end].contains(&to)).then(|| visits[end].unwrap_or(1)),
                 note: String::new(),
             };
             rules.push(v1::PrestressRule {

@@ -56,6 +56,13 @@ pub(super) fn ends(net: &Net) -> impl Iterator<Item = (NodeId, usize)> + '_ {
         .filter(|(node, _)| net.support_of(*node).is_some())
 }
 
+/// Nodes through which ropes slide, in cable order and along each cable: node and the segment before it.
+pub(super) fn slides(net: &Net) -> impl Iterator<Item = (NodeId, usize)> + '_ {
+    let sliding = net.reaches().iter().filter(|reach| reach.slides());
+    let before = sliding.flat_map(|reach| reach.segments.start..reach.segments.end - 1);
+    before.map(|segment| (net.segments()[segment].ends[1], segment))
+}
+
 /// Tables of ids, in parts.
 #[must_use]
 pub fn id_tables(_work: &Work, plan: &Plan, cases: &[usize]) -> Vec<v1::IdTable> {
@@ -96,6 +103,20 @@ pub fn id_tables(_work: &Work, plan: &Plan, cases: &[usize]) -> Vec<v1::IdTable>
     let mut ends =
         ends(net).map(|(node, segment)| Row::new(member(segment), [Some(position(node)), None, Some(count(segment))]));
     tables.extend(rows(v1::Range::End, &mut ends));
+    let mut slides = slides(net)
+        .map(|(node, segment)| Row::new(member(segment), [Some(position(node)), None, Some(count(segment))]));
+    if !net.is_clamped() {
+        tables.extend(rows(v1::Range::Slide, &mut slides));
+        let reaches = net.reaches().iter().map(|reach| {
+            let cable = &net.cables()[reach.cable.index()].name;
+            Row::new(cable, [None, None, Some(count(reach.segments.start))])
+        });
+        let struts = net
+            .struts()
+            .iter()
+            .map(|strut| Row::new(&strut.name, [None, None, Some(count(strut.segment.index()))]));
+        tables.extend(rows(v1::Range::Reach, &mut reaches.chain(struts)));
+    }
     let mut cases = cases.iter().map(|case| plain(&brief.cases[*case].name));
     tables.extend(rows(v1::Range::Case, &mut cases));
     let mut actions = brief.actions.iter().map(|action| plain(&action.name));

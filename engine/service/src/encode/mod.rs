@@ -7,6 +7,7 @@
 //! | `progress` | what is being worked on |
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
 //! | `certificate` | how far a state can be from the true one |
+//! | `shape` | how the reference state meets what was wanted |
 //! | `surface` | panels, and what each action does in the reference state |
 //! | `effects` | sums of effects, paths of cases, losses of members |
 //! | `diagnosis` | free movements, states of self-stress, least stiffnesses |
@@ -30,6 +31,7 @@ mod parts;
 mod progress;
 mod report;
 mod rules;
+mod shape;
 mod state;
 mod surface;
 mod verdicts;

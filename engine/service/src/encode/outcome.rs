@@ -11,7 +11,7 @@ use v1::run_response::Event;
 use super::closing::Noted;
 use super::parts::{count, event, first_ids};
 use super::progress::way;
-use super::{certificate, diagnosis, doubts, failure, state, surface};
+use super::{certificate, diagnosis, doubts, failure, shape, state, surface};
 use crate::decode::{REFERENCE, Work, reasons};
 use crate::words::quoted_list;
 
@@ -19,8 +19,15 @@ use crate::words::quoted_list;
 const LOOSE_NODES: usize = 1000;
 
 /// The reference state: beginning, arrays, findings, summary; then panels and what each action does.
+///
+/// `history`: every iteration, also where there is no state.
 #[must_use]
-pub fn reference(work: &Work, plan: &Plan, found: &Result<ReferenceOutcome, ShapeError>) -> Vec<v1::RunResponse> {
+pub fn reference(
+    work: &Work,
+    plan: &Plan,
+    found: &Result<ReferenceOutcome, ShapeError>,
+    history: &[IterationReport],
+) -> Vec<v1::RunResponse> {
     let begin = v1::CaseBegin {
         case: REFERENCE.to_owned(),
         in_words: work.reference_in_words(),
@@ -28,14 +35,21 @@ pub fn reference(work: &Work, plan: &Plan, found: &Result<ReferenceOutcome, Shap
     };
     let mut messages = vec![event(Event::CaseBegin(begin))];
     if let Ok(reference) = found {
-        let lengths = &reference.state.unstressed_lengths;
-        messages.extend(state::arrays(&plan.brief().net, REFERENCE, &reference.result, lengths));
-        messages.extend(state::history(REFERENCE, &reference.history));
+        messages.extend(state::arrays(
+            &plan.brief().net,
+            REFERENCE,
+            &reference.result,
+            &reference.result,
+        ));
+    }
+    messages.extend(state::history(REFERENCE, history));
+    if let Ok(reference) = found {
+        messages.extend(shape::report(&reference.report));
         messages.extend(diagnosed(&plan.brief().net, REFERENCE, &reference.result));
     }
     let findings = reference_findings(work, plan, found);
     messages.extend(findings.into_iter().map(|finding| event(Event::Finding(finding))));
-    messages.push(event(Event::CaseSummary(reference_summary(work, plan, found))));
+    messages.push(event(Event::CaseSummary(reference_summary(work, plan, found, history))));
     if let Ok(reference) = found {
         messages.extend(surface::tables(plan, reference));
     }
@@ -51,6 +65,7 @@ pub(super) fn reference_findings(
         Ok(reference) => {
             let mut findings = doubts::of_state(work, &plan.brief().net, REFERENCE, &reference.result);
             findings.extend(surface::doubts(work, plan, reference));
+            findings.extend(doubts::targets_unmet(work, &reference.report));
             findings
         }
         Err(error) => vec![no_answer(REFERENCE, &failure::of_shape(&plan.brief().net, error).1)],
@@ -62,6 +77,7 @@ pub(super) fn reference_summary(
     work: &Work,
     plan: &Plan,
     found: &Result<ReferenceOutcome, ShapeError>,
+    history: &[IterationReport],
 ) -> v1::CaseSummary {
     match found {
         Ok(reference) => {
@@ -69,7 +85,7 @@ pub(super) fn reference_summary(
             summary.set_outcome(v1::CaseOutcome::Answered);
             summary.set_way(way(reference.report.way));
             summary.load_factor = 1.0;
-            summary.iterations = iterations(&reference.history);
+            summary.iterations = iterations(history);
             summary.factorisations = reference.report.iterations;
             summary
         }
@@ -79,6 +95,7 @@ pub(super) fn reference_summary(
                 case: REFERENCE.to_owned(),
                 outcome: outcome.into(),
                 failure: Some(failure),
+                iterations: iterations(history),
                 ..v1::CaseSummary::default()
             }
         }
@@ -105,7 +122,7 @@ pub fn case(
             result,
             cause,
         } => {
-            messages.extend(state::arrays(net, name, result, &reference.state.unstressed_lengths));
+            messages.extend(state::arrays(net, name, result, &reference.result));
             messages.extend(state::history(name, &solution.history));
             messages.extend(diagnosed(net, name, result));
             let mut closing = summary(work, net, name, result, reference);

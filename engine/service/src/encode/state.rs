@@ -52,8 +52,9 @@ pub(super) fn flat<'a>(vectors: impl IntoIterator<Item = &'a Vector3<f64>>) -> V
         .collect()
 }
 
-/// Every array of a state. `reference_lengths`: unstressed lengths in the reference state (m).
-pub(super) fn arrays(net: &Net, case: &str, state: &StateResult, reference_lengths: &[f64]) -> Vec<v1::RunResponse> {
+/// Every array of a state. `reference`: the state that differences are measured from.
+pub(super) fn arrays(net: &Net, case: &str, state: &StateResult, reference: &StateResult) -> Vec<v1::RunResponse> {
+    let (reference_lengths, reference_lying) = (&reference.unstressed_lengths, &reference.lying);
     let ropes = net
         .segments()
         .iter()
@@ -76,6 +77,12 @@ pub(super) fn arrays(net: &Net, case: &str, state: &StateResult, reference_lengt
     send("displacement_m", Range::Node, 3, flat(&state.displacements));
     send("tension_n", Range::RopeSegment, 1, state.axial_forces[..ropes].to_vec());
     let slack = state.slack[..ropes].iter().map(|slack| f64::from(u8::from(*slack)));
+    if net.segments().iter().any(|segment| segment.hangs) {
+        for (name, end) in [("tension_start_n", 0), ("tension_end_n", 1)] {
+            let values = state.pulls[..ropes].iter().map(|pulls| pulls[end].norm());
+            send(name, Range::RopeSegment, 1, values.collect());
+        }
+    }
     send("slack", Range::RopeSegment, 1, slack.collect());
     send("axial_force_n", Range::Strut, 1, state.axial_forces[ropes..].to_vec());
     send("length_m", Range::Segment, 1, state.lengths.clone());
@@ -87,6 +94,7 @@ pub(super) fn arrays(net: &Net, case: &str, state: &StateResult, reference_lengt
         .zip(reference_lengths)
         .map(|(now, then)| now - then);
     send("unstressed_length_change_m", Range::Reach, 1, change.collect());
+    send("slid_m", Range::Slide, 1, slid(net, state, reference_lying));
 
     let mut of_node = vec![None; net.nodes().len()];
     for support in &state.support_forces {
@@ -108,6 +116,20 @@ pub(super) fn arrays(net: &Net, case: &str, state: &StateResult, reference_lengt
     send("panel_area_m2", Range::Panel, 1, state.panel_areas.clone());
     send("panel_pressure_pa", Range::Panel, 1, state.panel_pressures.clone());
     messages
+}
+
+/// Unstressed rope that has passed each node through which one slides, towards the end of its cable (m): what the reach
+/// has more beyond the node than in the reference state, less what its own length grew.
+fn slid(net: &Net, state: &StateResult, reference: &[f64]) -> Vec<f64> {
+    let mut slid = Vec::new();
+    for reach in net.reaches().iter().filter(|reach| reach.slides()) {
+        let mut before = 0.0;
+        for segment in reach.segments.clone().take(reach.segments.len() - 1) {
+            before += reference[segment] - state.lying[segment];
+            slid.push(before);
+        }
+    }
+    slid
 }
 
 /// Angle of a pull in plan, from x towards y (rad); zero where it is upright, since rounding would decide.
