@@ -13,7 +13,7 @@ use ropewalk_service::encode::{Tally, case, closing, design_effect, engine_error
 use serde_json::json;
 use v1::run_response::Event;
 
-use crate::briefs::{changed, first_net, found, quince_yard, terrace, work};
+use crate::briefs::{changed, first_net, found, terrace, work};
 
 /// Every event of a run of some cases.
 pub(crate) fn run(work: &Work, cases: &[usize]) -> Vec<Event> {
@@ -108,7 +108,7 @@ fn certificates_tell_their_energies_on_request_only() {
 
 #[test]
 fn a_pushing_strut_is_the_condition_of_a_certificate() {
-    let events = run(&work(&quince_yard()), &[]);
+    let events = run(&work(&terrace()), &[]);
     let reference = closings(&events)[0];
     let certificate = reference.certificate.as_ref().expect("answered");
     assert!(certificate.condition.contains("struts"), "{}", certificate.condition);

@@ -109,14 +109,15 @@ fn along(analysis: &Analysis, densities: &[f64], axis: &Axis) -> Vec<Option<f64>
     let mut ones = vec![1.0; n];
     (0..n).for_each(|node| ones[node] = f64::from(u8::from(moves(node))));
     factor.solve_in_place(&mut ones);
-    let n_moving = (0..n).filter(|node| moves(*node)).count();
-    if n_moving <= EACH {
-        let mut unit = vec![0.0; n];
-        for node in (0..n).filter(|node| moves(*node)) {
-            unit.fill(0.0);
-            unit[node] = 1.0;
-            factor.solve_in_place(&mut unit);
-            ones[node] = unit[node];
+    let moving: Vec<usize> = (0..n).filter(|node| moves(*node)).collect();
+    if moving.len() <= EACH {
+        let mut units = vec![0.0; n * moving.len()];
+        for (unit, node) in moving.iter().enumerate() {
+            units[unit * n + node] = 1.0;
+        }
+        factor.solve_in_place(&mut units);
+        for (unit, node) in moving.iter().enumerate() {
+            ones[*node] = units[unit * n + node];
         }
     }
     (0..n)

@@ -18,6 +18,11 @@ impl Dice {
         ((self.0 >> 11) as f64 + 0.5) / (1_u64 << 53) as f64
     }
 
+    fn two_to_six(&mut self) -> usize {
+        let roll = self.roll();
+        2 + [0.2, 0.4, 0.6, 0.8].into_iter().filter(|step| roll > *step).count()
+    }
+
     fn between(&mut self, low: f64, high: f64) -> f64 {
         low + (high - low) * self.roll()
     }
@@ -136,7 +141,7 @@ enum Ropes {
 /// A saddle on a rim, one side of which may be on springs; ropes of random stiffness, prestress and load, some of them
 /// too long.
 fn random_saddle(dice: &mut Dice, ropes: Ropes) -> Problem {
-    let (nx, ny) = (2 + (dice.roll() * 5.0) as usize, 2 + (dice.roll() * 5.0) as usize);
+    let (nx, ny) = (dice.two_to_six(), dice.two_to_six());
     let rise = dice.between(0.0, 2.0);
     let mut sketch = Sketch::default();
     let sprung = dice.roll() < 0.5;
