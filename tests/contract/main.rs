@@ -3,6 +3,7 @@
 mod absurd;
 mod briefs;
 mod checks;
+mod combinations;
 mod diagnosis;
 mod drafts;
 mod fields;
@@ -13,4 +14,5 @@ mod reasons;
 mod results;
 mod sizes;
 mod surfaces;
+mod targets;
 mod violations;

@@ -1168,12 +1168,6 @@ fn parts_that_are_not_served() {
             json!({"in_m": 0.1}),
             "net.roles[rope].adjuster",
         ),
-        ("/factors", json!({}), "factors"),
-        (
-            "/combinations",
-            json!([{"set": "ultimate", "fundamental": {}}]),
-            "combinations[0]",
-        ),
         (
             "/checks/0",
             json!({"drainage": {"min_fall": 0.05}}),

@@ -11,8 +11,8 @@ use ropewalk_numerics::brief::{
 use ropewalk_numerics::equilibrium::{Settings, Termination};
 use ropewalk_numerics::load::{Action, Load};
 use ropewalk_numerics::model::{
-    CableGiven, ElasticSupportGiven, Net, NetGiven, NodeGiven, NodeId, PanelGiven, Section, Skin, StrutGiven,
-    SupportGiven,
+    CableGiven, CableId, ElasticSupportGiven, Member, Net, NetGiven, NodeGiven, NodeId, PanelGiven, Section, Skin,
+    StrutGiven, SupportGiven,
 };
 
 /// A net in the making.
@@ -26,6 +26,7 @@ pub(crate) struct Problem {
     under: Vec<Load>,
     case: Vec<Load>,
     ponding: Option<PondingGiven>,
+    removed: Vec<Member>,
 }
 
 /// What a problem answers.
@@ -167,6 +168,11 @@ impl Problem {
         self.case.push(load);
     }
 
+    /// Takes a rope out, in the case.
+    pub(crate) fn take_out(&mut self, cable: CableId) {
+        self.removed.push(Member::Cable(cable));
+    }
+
     /// A force (N) on one node, in the case.
     pub(crate) fn push_node(&mut self, node: NodeId, x: f64, y: f64, z: f64) {
         self.load(Load::Nodes {
@@ -221,6 +227,7 @@ impl Problem {
                 name: "case".to_owned(),
                 factors: vec![(0, 1.0), (1, 1.0)],
                 ponding: self.ponding,
+                removed: self.removed,
                 ..CaseGiven::default()
             }],
             effects: Vec::new(),

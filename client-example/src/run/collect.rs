@@ -93,6 +93,7 @@ impl Collector {
             Event::Panels(_)
             | Event::LoadPicture(_)
             | Event::Progress(_)
+            | Event::ShapeReport(_)
             | Event::DesignEffect(_)
             | Event::LossTable(_) => {}
         }

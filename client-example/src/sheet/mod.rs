@@ -22,7 +22,7 @@ pub(crate) use diagnosis::diagnoses;
 pub(crate) use page::html;
 pub(crate) use ropes::{ropes, struts};
 pub(crate) use text::{terminal, wrap};
-pub(crate) use verdict::{audit_line, largest_difference, verdict_word, why};
+pub(crate) use verdict::{audit_line, largest_difference, proof_line, verdict_word, why};
 
 /// How a number is shown to eyes.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]

@@ -23,7 +23,7 @@ pub use diagnosis::{DiagnosisGiven, LITTLE_LEFT, Standing, StateDiagnosis};
 pub use effect::{DesignEffect, EffectRule, FactorRules};
 pub use estimate::Estimate;
 pub use given::{Brief, CaseGiven, LoadPath};
-pub use loss::{Loss, LossExtreme};
+pub use loss::{Loss, LossExtreme, LossForce};
 pub use outcome::{CaseOutcome, EndForce, ReferenceOutcome, StateResult, SupportForce, Task};
 pub use path::PathResult;
 pub use picture::{LoadPicture, Resultant};

@@ -5,6 +5,7 @@ use nalgebra::Vector3;
 use super::{Cause, Ponding, PondingEnd, StateDiagnosis};
 use crate::check::{Against, Base, CaseDigest};
 use crate::equilibrium::audit::Audit;
+use crate::equilibrium::certificate::Certificate;
 use crate::equilibrium::{IterationReport, Solution, SolveError, Termination};
 use crate::load::Case;
 use crate::model::{Net, NodeId, ReferenceState, SegmentId};
@@ -79,6 +80,8 @@ pub struct StateResult {
     pub ponding: Option<Ponding>,
     /// What the independent routine found.
     pub audit: Audit,
+    /// How far the state can be from the true one; `None` where it is no answer, or nothing can be said.
+    pub certificate: Option<Certificate>,
     /// What it allows beside bearing its load, where that was asked for.
     pub diagnosis: Option<Box<StateDiagnosis>>,
 }

@@ -102,6 +102,7 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
             .collect(),
         ponding: None,
         audit: audit::audit_members(net, case, positions, axial_forces, state.members),
+        certificate: None,
         loads,
         diagnosis: None,
     }
