@@ -355,6 +355,16 @@ fn ending(run: &Run) -> String {
     text.push_str(&sheet::terminal(&sheet::anchor_peaks(run)));
     text.push('\n');
     text.push_str(&sheet::terminal(&sheet::cases(run)));
+    if let Some(sizing) = &run.sizing {
+        let words = sheet::sizing_words(sizing);
+        text.push_str(&format!("\n{}\n{words}\n", sheet::terminal(&sheet::sized(sizing))));
+    }
+    for extra in [sheet::shape(run), sheet::losses(run), sheet::effects(run)]
+        .into_iter()
+        .flatten()
+    {
+        text.push_str(&format!("\n{}", sheet::terminal(&extra)));
+    }
     if !run.diagnoses.is_empty() {
         text.push_str(&format!("\n{}", sheet::terminal(&sheet::diagnoses(run))));
     }

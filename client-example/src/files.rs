@@ -62,31 +62,49 @@ pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::E
         .collect();
     for state in drawn.iter().take(PLANS) {
         if let Some(plan) = draw::plan(run, state, &scale) {
-            let base = file_name(&state.id);
-            // Different ids may make the same name; upper and lower case are one to some file systems.
-            let free = (1..).map(|number| {
-                if number == 1 {
-                    base.clone()
-                } else {
-                    format!("{base}-{number}")
-                }
-            });
-            let name = free
-                .into_iter()
-                .find(|name| names.insert(name.to_lowercase()))
-                .expect("numbers do not run out");
-            put(&format!("plan-{name}.svg"), plan.as_bytes())?;
+            put(
+                &format!("plan-{}.svg", free_name(&state.id, &mut names)),
+                plan.as_bytes(),
+            )?;
         }
+    }
+    let mut names = BTreeSet::new();
+    for (state, path) in run.load_paths().into_iter().take(PLANS) {
+        let name = free_name(&state.id, &mut names);
+        put(
+            &format!("doubling-{name}.svg"),
+            draw::doubling(run, state, &path).as_bytes(),
+        )?;
     }
     if let Some(sections) = draw::sections(run) {
         put("sections.svg", sections.as_bytes())?;
     }
-    let on_page: Vec<Sheet> = sheets.into_iter().filter(|sheet| sheet.file != "anchors").collect();
+    // These are long, and the page shows what they tell in other ways.
+    let on_page: Vec<Sheet> = sheets
+        .into_iter()
+        .filter(|sheet| !["anchors", "loss-cells", "panel-loads"].contains(&sheet.file))
+        .collect();
     put("report.html", report::page(run, &on_page, &scale).as_bytes())?;
     Ok(Written {
         files: count,
         plans_left_out: drawn.len().saturating_sub(PLANS),
     })
+}
+
+/// A name for a file made of an id that no other id has: different ids may make the same one, and upper and lower case are
+/// one to some file systems.
+fn free_name(id: &str, taken: &mut BTreeSet<String>) -> String {
+    let base = file_name(id);
+    let free = (1..).map(|number| {
+        if number == 1 {
+            base.clone()
+        } else {
+            format!("{base}-{number}")
+        }
+    });
+    free.into_iter()
+        .find(|name| taken.insert(name.to_lowercase()))
+        .expect("numbers do not run out")
 }
 
 /// Removes what the list of an earlier run names, and begins the list anew. Files that no list names are left alone.
@@ -129,9 +147,25 @@ pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
         sheet::sums(run),
     ];
     // Of interest only where it was asked for.
+    if let Some(sizing) = &run.sizing {
+        sheets.extend([sheet::sized(sizing), sheet::sizing_rounds(sizing)]);
+    }
     if !run.diagnoses.is_empty() {
         sheets.push(sheet::diagnoses(run));
     }
+    let if_any = [
+        sheet::shape(run),
+        sheet::judgements(run),
+        sheet::slides(run),
+        sheet::losses(run),
+        sheet::loss_cells(run),
+        sheet::effects(run),
+        sheet::over_linearity(run),
+        sheet::doubling(run),
+        sheet::loads(run),
+        sheet::panel_loads(run),
+    ];
+    sheets.extend(if_any.into_iter().flatten());
     sheets
 }
 
@@ -195,6 +229,16 @@ fn results(run: &Run) -> String {
         "ends": ends,
         "cases": run.case_ids,
         "states": states,
+        "design_effects": run.effects.iter().map(|effect| {
+            json!({
+                "effect": message_json("DesignEffect", &effect.effect.encode_to_vec()),
+                "columns": columns(&effect.columns),
+            })
+        }).collect::<Vec<_>>(),
+        "shape_report": run.shape_report.as_ref().map(|report| message_json("ShapeReport", &report.encode_to_vec())),
+        "losses": run.losses.iter().map(|row| message_json("LossRow", &row.encode_to_vec())).collect::<Vec<_>>(),
+        "panels": run.panels.iter().map(|panel| message_json("PanelEntry", &panel.encode_to_vec())).collect::<Vec<_>>(),
+        "load_pictures": run.loads.iter().map(|picture| message_json("LoadPicture", &picture.encode_to_vec())).collect::<Vec<_>>(),
         "envelope": columns(&run.envelope),
         "broken_off": run.broken_off,
     });

@@ -13,6 +13,8 @@ mod minimal;
 mod reasons;
 mod results;
 mod sizes;
+mod sizing;
+mod slides;
 mod surfaces;
 mod targets;
 mod violations;

@@ -17,7 +17,7 @@ use crate::violations::{check, check_mild, told};
 
 /// Four corners, a mast in the middle of nothing, and ropes between: two square panels of 3 m side, west and east of a
 /// common rope, upon given nodes.
-fn awning() -> Value {
+pub(crate) fn awning() -> Value {
     json!({
         "id": "awning",
         "net": {

@@ -8,11 +8,12 @@ use ropewalk_numerics::brief::{
     Brief, CaseGiven, CaseOutcome, Plan, PondingGiven, Prestress, PrestressRule, ReferenceOutcome, StateResult,
     SupportForce,
 };
+use ropewalk_numerics::check::{Against, CaseDigest, Check, CheckKind, CheckTally, Judgement, Lack};
 use ropewalk_numerics::equilibrium::{Settings, Termination};
 use ropewalk_numerics::load::{Action, Load};
 use ropewalk_numerics::model::{
     CableGiven, CableId, ElasticSupportGiven, Member, Net, NetGiven, NodeGiven, NodeId, PanelGiven, Section, Skin,
-    StrutGiven, SupportGiven,
+    StrutGiven, StrutId, SupportGiven,
 };
 
 /// A net in the making.
@@ -179,6 +180,65 @@ impl Problem {
             nodes: vec![node],
             force: Vector3::new(x, y, z),
         });
+    }
+
+    /// A panel by its corners.
+    pub(crate) fn panel(&mut self, corners: &[NodeId]) {
+        self.net.panels.push(PanelGiven {
+            name: format!("p{}", self.net.panels.len()),
+            corners: corners.to_vec(),
+        });
+    }
+
+    /// What a check over the whole net says, with the nodes where they were given and with these axial forces (N) and
+    /// support forces (N): its only part, or its worst.
+    #[track_caller]
+    pub(crate) fn judge(
+        self,
+        kind: CheckKind,
+        nodes: &[NodeId],
+        axial_forces: &[f64],
+        support_forces: &[(NodeId, Vector3<f64>)],
+    ) -> Result<Judgement, Lack> {
+        let net = Net::new(self.net).expect("the net of a case is valid");
+        let positions: Vec<_> = net.nodes().iter().map(|n| n.position.expect("a place")).collect();
+        let mut digest = CaseDigest {
+            answered: true,
+            audited: true,
+            axial_forces: axial_forces.to_vec(),
+            displacements: vec![Vector3::zeros(); positions.len()],
+            positions: positions.clone(),
+            support_forces: vec![None; positions.len()],
+            ..CaseDigest::default()
+        };
+        for (node, force) in support_forces {
+            digest.support_forces[node.index()] = Some(*force);
+        }
+        let of_members = !nodes.is_empty() || matches!(kind, CheckKind::Drainage { .. });
+        let of_struts = matches!(kind, CheckKind::Buckling { .. });
+        let members = |count: usize, wanted: bool| if wanted && !of_members { count } else { 0 };
+        let check = Check {
+            kind,
+            cables: (0..members(net.cables().len(), !of_struts)).map(CableId::new).collect(),
+            struts: (0..members(net.struts().len(), of_struts)).map(StrutId::new).collect(),
+            nodes: nodes.to_vec(),
+            panels: (0..net.panels().len()).collect(),
+            cases: vec![0],
+        };
+        let against = Against {
+            net: &net,
+            axial_forces,
+            positions: &positions,
+            bases: &[],
+        };
+        let mut tally = CheckTally::new(&check, &against);
+        tally.add(&check, &against, 0, &digest);
+        let result = tally.finish(&check, Vec::new());
+        match (result.worst(), result.not_judged.first()) {
+            (_, Some((_, lack))) => Err(*lack),
+            (Some(worst), None) => Ok(*worst),
+            (None, None) => panic!("the check covers nothing"),
+        }
     }
 
     /// Solves to the rounding floor of the input: the published digits are compared, not the tolerance at which a user's

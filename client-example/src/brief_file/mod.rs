@@ -104,9 +104,31 @@ pub(crate) fn message_json(name: &str, encoded: &[u8]) -> serde_json::Value {
     let options = SerializeOptions::new()
         .use_proto_field_name(true)
         .stringify_64_bit_integers(false);
-    message
+    let mut value = message
         .serialize_with_options(serde_json::value::Serializer, &options)
-        .expect("a message is a JSON value")
+        .expect("a message is a JSON value");
+    sort_maps(&mut value, &descriptor(name));
+    value
+}
+
+/// Puts the entries of maps into the order of their keys, as they have none of their own: equal messages read alike.
+fn sort_maps(value: &mut serde_json::Value, message: &MessageDescriptor) {
+    let Some(fields) = value.as_object_mut() else { return };
+    for (name, value) in fields.iter_mut() {
+        let Some(field) = message.get_field_by_name(name) else {
+            continue;
+        };
+        if field.is_map() {
+            if let Some(entries) = value.as_object_mut() {
+                entries.sort_keys();
+            }
+        } else if let Some(inner) = field.kind().as_message() {
+            match value {
+                serde_json::Value::Array(items) => items.iter_mut().for_each(|item| sort_maps(item, inner)),
+                single => sort_maps(single, inner),
+            }
+        }
+    }
 }
 
 fn text_of(file: &Path) -> std::io::Result<String> {

@@ -86,9 +86,12 @@ pub(super) struct Comparison {
 }
 
 /// Arrays that repeat others in another form, or tell of the way and not of the result.
-const LEFT_OUT: [&str; 6] = [
+const LEFT_OUT: [&str; 9] = [
     "stretch",
     "length_m",
+    "path_load_factor",
+    "path_movement_m",
+    "path_tension_n",
     "support_force_own_axes_n",
     "end_force_n",
     "end_angle_plan_deg",
@@ -107,6 +110,18 @@ impl Comparison {
             };
             comparison.states += 1;
             comparison.columns(&old.id, [&old.columns, &new.columns], &labels, limits, &mut unlike);
+        }
+        for old in &a.effects {
+            let Some(new) = b.effects.iter().find(|other| other.effect.id == old.effect.id) else {
+                continue;
+            };
+            comparison.columns(
+                &old.effect.id,
+                [&old.columns, &new.columns],
+                &labels,
+                limits,
+                &mut unlike,
+            );
         }
         comparison.columns("envelope", [&a.envelope, &b.envelope], &labels, limits, &mut unlike);
         if !unlike.is_empty() {
@@ -375,6 +390,9 @@ impl Labels {
             (v1::Range::Support, "anchors"),
             (v1::Range::End, "ends"),
             (v1::Range::Case, "cases"),
+            (v1::Range::Panel, "panels"),
+            (v1::Range::Slide, "slides"),
+            (v1::Range::Reach, "reaches"),
         ];
         for (range, words) in ranges {
             let (old, new) = (entries(a, range), entries(b, range));
@@ -385,8 +403,8 @@ impl Labels {
                 .filter_map(|(at, id)| Some((id.clone(), at, *places.get(id.as_str())?)))
                 .collect();
             let (less, more) = (old.len() - shared.len(), new.len() - shared.len());
-            // Cases that one side lacks are told one by one.
-            if less + more > 0 && range != v1::Range::Case {
+            // Cases that one side lacks are told one by one; reaches are pieces of what is told.
+            if less + more > 0 && ![v1::Range::Case, v1::Range::Reach].contains(&range) {
                 apart.push(format!(
                     "{words}: {less} only in A, {more} only in B, {} in both",
                     shared.len()
@@ -408,21 +426,15 @@ impl Labels {
                 .collect::<Vec<_>>()
         };
         match was.over {
-            // Rope segments are the first of all segments; reaches are segments as long as no rope slides.
+            // Rope segments are the first of all segments.
             v1::Range::RopeSegment | v1::Range::Segment => listed(v1::Range::Segment),
             over if self.of.contains_key(&(over as i32)) => listed(over),
-            v1::Range::Reach if self.segments_of(n_was, n_now) => listed(v1::Range::Segment),
             // Entries without a name of their own are compared where both runs have as many of them.
             _ if n_was == n_now => (0..n_was)
                 .map(|at| (Cow::Owned(format!("number {at}")), at, at))
                 .collect(),
             _ => Vec::new(),
         }
-    }
-
-    fn segments_of(&self, n_was: usize, n_now: usize) -> bool {
-        let shared = self.of.get(&(v1::Range::Segment as i32)).map_or(0, Vec::len);
-        n_was == n_now && n_was == shared
     }
 }
 
@@ -445,6 +457,17 @@ fn entries(run: &Run, range: v1::Range) -> Vec<String> {
             .map(|end| format!("{} at {}", run.member_id(end.segment), run.nodes[end.node]))
             .collect(),
         v1::Range::Case => run.case_ids.clone(),
+        v1::Range::Slide => run
+            .slides
+            .iter()
+            .map(|(rope, node)| format!("{rope} at {}", run.nodes[*node]))
+            .collect(),
+        // Without a table each segment is a reach of its own.
+        v1::Range::Reach if run.reaches.is_empty() => entries(run, v1::Range::Segment),
+        v1::Range::Reach => (run.reaches.iter())
+            .map(|(member, segment)| format!("{member} from {}", run.nodes[run.segments[*segment].nodes[0]]))
+            .collect(),
+        v1::Range::Panel => run.panels.iter().map(|panel| panel.id.clone()).collect(),
         _ => Vec::new(),
     };
     let mut times: HashMap<String, usize> = HashMap::new();
@@ -506,8 +529,8 @@ mod tests {
         assert_eq!(
             told,
             [
-                ("position z", "reference", "m"),
-                ("tension", "full-snow", "carrying A to m")
+                ("tension", "full-snow", "carrying A to m"),
+                ("position z", "reference", "m")
             ]
         );
         assert!((comparison.numbers[0].difference() - 300.0).abs() < 1e-9);

@@ -1,6 +1,7 @@
 //! Drawings as SVG: the numbers in them are those of the CSV files, kept in `data-` attributes beside what is shown.
 
 mod convergence;
+mod doubling;
 mod frame;
 mod pick;
 mod plan;
@@ -11,6 +12,8 @@ mod sections;
 use std::fmt::Write as _;
 
 pub(crate) use convergence::convergence;
+pub(crate) use doubling::doubling;
+pub(crate) use pick::{moved_cases, ropes as picked_ropes};
 pub(crate) use plan::plan;
 pub(crate) use sections::sections;
 

@@ -59,6 +59,15 @@ pub(crate) fn cases<'a>(run: &'a Run, nodes: &[usize]) -> Vec<&'a State> {
     moved.into_iter().map(|(_, state)| state).collect()
 }
 
+/// Answered cases that move a rope most.
+pub(crate) fn moved_cases(run: &Run, cable: usize) -> Vec<&State> {
+    let nodes: Vec<usize> = run.cable_segments()[cable]
+        .iter()
+        .flat_map(|&at| run.segments[at].nodes)
+        .collect();
+    cases(run, &nodes)
+}
+
 pub(crate) fn size(vector: [f64; 3]) -> f64 {
     vector.iter().map(|part| part * part).sum::<f64>().sqrt()
 }

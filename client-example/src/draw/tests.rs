@@ -59,3 +59,22 @@ fn a_case_without_answer_is_drawn_as_such() {
         "numbers of another state would mislead"
     );
 }
+
+#[test]
+fn a_load_path_marks_both_rules_and_says_where_a_rope_goes_slack() {
+    let mut run = sample::run_named(Names {
+        middle: "m",
+        rope: "<rope>",
+        case: "full-snow",
+        title: "t",
+    });
+    sample::give_path(&mut run, &[0.0, 0.5, 1.0, 1.5]);
+    let state = &run.states[1];
+    let drawn = doubling(&run, state, &run.load_path(state).unwrap());
+    assert!(
+        drawn.contains("data-on-action=\"29\"") && drawn.contains("data-on-effect=\"39\""),
+        "{drawn}"
+    );
+    assert!(drawn.contains("slack from 0.500 F"));
+    assert!(!drawn.contains("<rope>"));
+}

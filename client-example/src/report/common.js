@@ -85,7 +85,7 @@ var page = (function () {
       context.lineTo(head[0] - 10 * dx + 4 * dy, head[1] - 10 * dy - 4 * dx);
       context.closePath(); context.fill();
       // A number keeps to the canvas, and off the numbers of larger pulls.
-      var out = side * dx, text = digits(size) + " kN", wide = 7.2 * text.length;
+      var out = side * dx, text = digits(size) + " kN" + (Math.hypot(dx, dy) < 0.3 ? list[i][2] > 0 ? " up" : " down" : ""), wide = 7.2 * text.length;
       var middle = x + side * 54 * dx + (out > 0.4 ? wide / 2 : out < -0.4 ? -wide / 2 : 0), low = y + side * 60 * dy + 4;
       middle = Math.max(wide / 2 + 3, Math.min(canvas.clientWidth - wide / 2 - 3, middle));
       low = Math.max(14, Math.min(canvas.clientHeight - 5, low));

@@ -1,5 +1,6 @@
 //! The numbers that the turning shape reads: rounded to what a screen can show; the files beside the page have all digits.
 
+use ropewalk_api::ropewalk::v1;
 use serde_json::{Value, json};
 
 use crate::colour::{self, Scale};
@@ -51,6 +52,8 @@ pub(crate) fn data(run: &Run, scale: &Scale) -> Value {
         "supports": run.supports,
         "reference": flat(&reference, 4),
         "states": states,
+        "panels": run.panels.iter().map(panel).collect::<Vec<_>>(),
+        "actions": run.loads.iter().map(action).collect::<Vec<_>>(),
         "worst": worst(run),
         "top": top_share(run),
         "pullScale": pull_scale(run),
@@ -86,16 +89,20 @@ fn state_data(run: &Run, state: &State, room: &mut usize) -> Value {
         return value;
     }
     *room -= n_numbers;
-    let scale: Vec<f64> = forces.iter().map(|force| rounded(force / 1e3, 3)).collect();
-    let slack: Vec<usize> = run
-        .slack(state)
+    let is_slack = run.slack(state);
+    // What is neither slack nor carries anything is taken out of the net, in a case that takes members out.
+    let takes_out = run.takes_out(state);
+    let kn: Vec<Option<f64>> = (forces.iter().zip(&is_slack))
+        .map(|(force, slack)| (!takes_out || *slack || *force != 0.0).then(|| rounded(force / 1e3, 3)))
+        .collect();
+    let slack: Vec<usize> = is_slack
         .iter()
         .enumerate()
         .filter(|(_, slack)| **slack)
         .map(|(at, _)| at)
         .collect();
     value["moves"] = json!(flat(&moves, 5));
-    value["kn"] = json!(scale);
+    value["kn"] = json!(kn);
     value["slack"] = json!(slack);
     let loads = &state.summary.load_sum_n;
     value["loads"] = json!(
@@ -154,6 +161,36 @@ fn worst(run: &Run) -> Value {
         "slackFrom": states("tension_min_case"),
         "pulls": pulls.iter().map(|(force, _)| force.map(|part| rounded(-part / 1e3, 3))).collect::<Vec<_>>(),
         "pullFrom": pulls.iter().map(|(_, from)| from).collect::<Vec<_>>(),
+    })
+}
+
+fn panel(panel: &v1::PanelEntry) -> Value {
+    json!({
+        "id": panel.id, "corners": panel.corners, "skin": panel.skin, "zones": panel.zones.join(", "),
+        "area": rounded(panel.area_m2, 3), "onPlan": rounded(panel.area_on_plan_m2, 3),
+    })
+}
+
+fn action(picture: &v1::LoadPicture) -> Value {
+    let size = picture.force_n.iter().map(|part| part * part).sum::<f64>().sqrt();
+    // What is left of zero by rounding is no force.
+    let part = |axis: usize| {
+        picture
+            .force_n
+            .get(axis)
+            .copied()
+            .filter(|part| part.abs() > 1e-9 * size)
+            .unwrap_or(0.0)
+    };
+    let pressures = |list: &[f64]| list.iter().map(|pressure| rounded(*pressure, 2)).collect::<Vec<_>>();
+    json!({
+        "id": picture.action,
+        "force": (0..3).map(|axis| rounded(part(axis) / 1e3, 4)).collect::<Vec<_>>(),
+        "point": picture.point_m.iter().map(|part| rounded(*part, 3)).collect::<Vec<_>>(),
+        "panels": picture.loaded_panels,
+        "area": rounded(picture.loaded_area_m2, 3), "onPlan": rounded(picture.loaded_area_on_plan_m2, 3),
+        "without": picture.without_value, "withoutTotal": picture.without_value_total,
+        "pressure": pressures(&picture.pressure_pa), "plan": pressures(&picture.on_plan_pa),
     })
 }
 

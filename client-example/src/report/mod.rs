@@ -1,6 +1,7 @@
 //! One page that holds everything: no network, no other file, readable on a phone and on paper.
 
 mod data;
+mod matrix;
 mod pictures;
 
 use ropewalk_api::ropewalk::v1;
@@ -14,16 +15,21 @@ use crate::sheet::{self, Sheet};
 
 const STYLE: &str = include_str!("report.css");
 /// Parts of the script in their order: what all share comes first.
-const SCRIPT: [&str; 5] = [
+const SCRIPT: [&str; 7] = [
     include_str!("wide.js"),
     include_str!("common.js"),
     include_str!("shape.js"),
     include_str!("tension_map.js"),
     include_str!("together.js"),
+    include_str!("section.js"),
+    include_str!("load_picture.js"),
 ];
 
 /// Findings that the page lists.
 const FINDINGS: usize = 200;
+
+/// Load paths that the page draws.
+const DOUBLINGS: usize = 6;
 
 /// The page.
 pub(crate) fn page(run: &Run, sheets: &[Sheet], scale: &Scale) -> String {
@@ -38,9 +44,13 @@ pub(crate) fn page(run: &Run, sheets: &[Sheet], scale: &Scale) -> String {
             // What a sheet tells in numbers is drawn behind it.
             "checks" => body.push_str(&pictures::tension_map(run)),
             "anchor-sets" => body.push_str(&pictures::together(run)),
+            "losses" => body.push_str(&matrix::losses(run)),
+            "loads" => body.push_str(&pictures::load_picture(run)),
+            "doubling" => body.push_str(&doubling(run)),
             _ => {}
         }
     }
+    body.push_str(&pictures::section(run));
     body.push_str(&convergence(run));
     body.push_str(&drawings(run, scale));
     body.push_str(&findings(run));
@@ -149,6 +159,17 @@ fn convergence(run: &Run) -> String {
              <div class=\"wide\">{plot}</div></section>\n"
         ),
     }
+}
+
+/// Load paths, the first ones; all lie beside the page.
+fn doubling(run: &Run) -> String {
+    let plots: String = run
+        .load_paths()
+        .iter()
+        .take(DOUBLINGS)
+        .map(|(state, path)| format!("<div class=\"wide\">{}</div>\n", draw::doubling(run, state, path)))
+        .collect();
+    format!("<section class=\"drawings\"><h2>Load paths</h2>\n{plots}</section>\n")
 }
 
 fn drawings(run: &Run, scale: &Scale) -> String {

@@ -1,6 +1,7 @@
 //! The sections that the script fills with pictures: their titles, choices and legends.
 
 use crate::colour::{self, Scale};
+use crate::draw;
 use crate::escape::markup;
 use crate::number::percent;
 use crate::run::{Run, State};
@@ -79,11 +80,11 @@ pub(super) fn tension_map(run: &Run) -> String {
     }
     let top = data::top_share(run);
     let legend = if top > 0.0 {
-        let ticks: String = (0..=4)
-            .map(|step| {
-                let share = f64::from(step) / 4.0;
-                format!("<i style=\"left:{:.0}%\">{}</i>", share * 100.0, percent(share * top))
-            })
+        // The scale ends at a whole tenth.
+        let ticks: String = (0..=10)
+            .map(|step| f64::from(step) / 10.0)
+            .take_while(|share| *share < top + 0.05)
+            .map(|share| format!("<i style=\"left:{:.1}%\">{}</i>", share / top * 100.0, percent(share)))
             .collect();
         format!(
             "<div class=\"legend\"><span>share of the breaking force with end fittings, %</span><div class=\"bar\" \
@@ -123,6 +124,75 @@ pub(super) fn together(run: &Run) -> String {
          <th scope=\"col\" class=\"r\">plan angle <small>deg</small></th><th scope=\"col\" class=\"r\">upward angle <small>deg</small></th>\
          </tr></thead><tbody id=\"together-rows\"></tbody></table></div></section>\n",
         options(run)
+    )
+}
+
+/// What each action does to each panel.
+pub(super) fn load_picture(run: &Run) -> String {
+    if !has_shape(run) {
+        return String::new();
+    }
+    let actions: String = (run.loads.iter().enumerate())
+        .map(|(at, picture)| {
+            let open = match picture.without_value_total {
+                0 => String::new(),
+                count => format!(" ({count} panels without value)"),
+            };
+            format!("<option value=\"{at}\">{}{open}</option>", markup(&picture.action))
+        })
+        .collect();
+    format!(
+        "<section id=\"load-picture\"><h2>Load picture</h2>\n<div class=\"tools\"><label>action <select id=\"loads-action\">{actions}\
+         </select></label></div>\n<p id=\"loads-words\" class=\"note\"></p>\n<div class=\"stage\"><canvas id=\"loads-plan\" \
+         class=\"picture\" role=\"img\" aria-label=\"Plan of the panels with the pressure of the action on each\"></canvas>\
+         <output id=\"loads-told\" class=\"told\"></output></div>\n<p class=\"note\">Numbers: kPa, ▼ presses on the outer side or down, ▲ \
+         lifts off it; darker is more. The cross marks where the sum acts. Forces on single nodes and along ropes are in the sum, \
+         not in the picture.</p>\n</section>\n"
+    )
+}
+
+/// A section along a picked rope.
+pub(super) fn section(run: &Run) -> String {
+    let segments = run.cable_segments();
+    let first = draw::picked_ropes(run).first().copied();
+    let mut ropes: Vec<usize> = (0..run.cables.len())
+        .filter(|&cable| segments[cable].len() > 1)
+        .collect();
+    // The rope that says most stands first; the others follow in brief order.
+    ropes.sort_by_key(|&cable| (Some(cable) != first, cable));
+    if ropes.is_empty() || !has_shape(run) {
+        return String::new();
+    }
+    let ropes: String = ropes
+        .iter()
+        .map(|&cable| format!("<option value=\"{cable}\">{}</option>", markup(&run.cables[cable])))
+        .collect();
+    let moved = first.map(|cable| draw::moved_cases(run, cable)).unwrap_or_default();
+    let case = |number: usize| -> String {
+        let picked = moved.get(number).map(|state| state.id.as_str());
+        let options: String = (0..run.states.len())
+            .filter(|&at| run.states[at].answered() && run.states[at].id != "reference")
+            .map(|at| {
+                let id = &run.states[at].id;
+                let chosen = if Some(id.as_str()) == picked { " selected" } else { "" };
+                format!("<option value=\"{at}\"{chosen}>{}</option>", markup(id))
+            })
+            .collect();
+        format!(
+            "<label><span class=\"look look-{0}\"></span> <select id=\"cut-case-{0}\"><option value=\"\">none</option>{options}\
+             </select></label>",
+            number + 1
+        )
+    };
+    format!(
+        "<section id=\"section\"><h2>Section along a rope</h2>\n<div class=\"tools\"><label>rope <select id=\"cut-rope\">{ropes}\
+         </select></label><span><span class=\"look look-0\"></span> reference</span>{}{}{}<label>movements <select id=\"cut-times\">\
+         <option>1</option><option>2</option><option>5</option><option>10</option></select> times</label></div>\n\
+         <p id=\"cut-words\" class=\"note\"></p>\n<div class=\"wide\"><svg id=\"cut\" viewBox=\"0 0 980 560\" role=\"img\" \
+         aria-label=\"Section along the picked rope: heights, movements and falls\" font-size=\"13\"></svg></div></section>\n",
+        case(0),
+        case(1),
+        case(2)
     )
 }
 

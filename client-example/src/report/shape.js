@@ -99,6 +99,7 @@
     var strut = data.segments[s][2] >= data.cables;
     context.setLineDash([]);
     context.lineCap = "round";
+    if (kn && kn[s] === null) { context.strokeStyle = PALE; context.lineWidth = 0.8; context.setLineDash([1, 4]); line(seen, s); return; }
     if (strut) {
       context.strokeStyle = kn ? INK : MUTED; context.lineWidth = 7; line(seen, s);
       context.strokeStyle = "#fff"; context.lineWidth = 3; line(seen, s);
@@ -140,7 +141,8 @@
     var text = data.members[part[2]] + "\n" + data.nodes[part[0]] + " to " + data.nodes[part[1]];
     if (now.kn) {
       var kn = now.kn[under];
-      if ((now.slack || []).indexOf(under) >= 0) text += "\nslack, 0 kN";
+      if (kn === null) text += "\ntaken out";
+      else if ((now.slack || []).indexOf(under) >= 0) text += "\nslack, 0 kN";
       else if (part[2] >= data.cables) text += "\n" + digits(Math.abs(kn)) + " kN " + (kn < 0 ? "compression" : "tension");
       else text += "\n" + digits(kn) + " kN" + (data.breaking[under] ? ", " + Math.round(100 * kn / data.breaking[under]) + " % of breaking" : "");
       var move = function (n) { return Math.hypot(now.moves[3 * n], now.moves[3 * n + 1], now.moves[3 * n + 2]) * 1000; };

@@ -21,7 +21,7 @@
       why: now.why, acting: now.words, id: now.id };
   }
   function name(index) { return index < 0 || !data.states[index] ? "reference" : data.states[index].id; }
-  function share(now, s) { return now.kn && data.breaking[s] ? now.kn[s] / data.breaking[s] : null; }
+  function share(now, s) { return now.kn && now.kn[s] !== null && data.breaking[s] ? now.kn[s] / data.breaking[s] : null; }
   function percent(value) {
     var text = (100 * value).toFixed(0);
     return text === "100" && value > 1 ? (100 * value).toFixed(1) : text;
@@ -61,6 +61,7 @@
     order.forEach(function (s) {
       var strut = data.segments[s][2] >= data.cables, part = share(now, s), gone = kn && !strut && kn[s] === null;
       context.setLineDash([]);
+      if (strut && kn && kn[s] === null && !now.worst) { context.strokeStyle = "#c3cad1"; context.lineWidth = 1; line(context, s); return; }
       if (strut) {
         context.strokeStyle = kn ? INK : MUTED; context.lineWidth = 6; line(context, s);
         context.strokeStyle = "#fff"; context.lineWidth = 2.5; line(context, s);
@@ -99,8 +100,12 @@
     list.forEach(function (entry) {
       var part = data.segments[entry[1]], text = percent(entry[0]) + " %", wide = 7.2 * text.length;
       var x = (seen[3 * part[0]] + seen[3 * part[1]]) / 2, y = (seen[3 * part[0] + 1] + seen[3 * part[1] + 1]) / 2 + 4;
-      var free = boxes.every(function (box) { return Math.abs(box[0] - x) > (box[2] + wide) / 2 || Math.abs(box[1] - y) > 14; });
-      if (!free) return;
+      // On its segment, or close beside it.
+      var place = [[0, 0], [0, -15], [0, 15], [wide, 0], [-wide, 0]].find(function (off) {
+        return boxes.every(function (box) { return Math.abs(box[0] - x - off[0]) > (box[2] + wide) / 2 || Math.abs(box[1] - y - off[1]) > 14; });
+      });
+      if (!place) return;
+      x += place[0]; y += place[1];
       boxes.push([x, y, wide]);
       page.label(context, text, x, y, entry[0] > 1 ? ALARM : INK);
     });
@@ -116,6 +121,7 @@
       var most = -1, open = 0;
       for (var s = 0; s < data.segments.length; s++) {
         if (data.segments[s][2] >= data.cables) continue;
+        if (now.kn[s] === null) continue;
         var part = share(now, s);
         if (part === null) open += 1;
         else if (most < 0 || part > share(now, most)) most = s;
@@ -159,6 +165,7 @@
         (now.worst ? "\nin " + name(now.pullFrom[at.support]) : "");
     }
     var s = at.segment, part = data.segments[s], line = data.members[part[2]] + "\n" + data.nodes[part[0]] + " to " + data.nodes[part[1]];
+    if (now.kn && now.kn[s] === null && !now.worst) return line + "\ntaken out";
     if (!now.kn || now.kn[s] === null || now.kn[s] === undefined) return line;
     if (now.slack.has(s) && !now.worst) return line + "\nslack, 0 kN";
     line += "\n" + digits(Math.abs(now.kn[s])) + " kN" + (now.kn[s] < 0 ? " compression" : "");

@@ -6,7 +6,7 @@ use prost::Message as _;
 use ropewalk_api::ropewalk::v1;
 use ropewalk_api::ropewalk::v1::run_response::Event;
 
-use super::{Column, End, Member, Run, Segment, State};
+use super::{Column, Effect, End, Member, Run, Segment, State};
 
 /// A stream that does not keep to the contract.
 #[derive(Clone, Debug, PartialEq, thiserror::Error)]
@@ -38,6 +38,12 @@ pub(crate) struct Collector {
     ended: Vec<v1::CaseSummary>,
     findings: Vec<v1::Finding>,
     diagnoses: Vec<v1::StateDiagnosis>,
+    sizing: Option<v1::SizingResult>,
+    shape_report: Option<v1::ShapeReport>,
+    effects: Vec<v1::DesignEffect>,
+    losses: Vec<v1::LossRow>,
+    panels: Vec<v1::PanelEntry>,
+    loads: Vec<v1::LoadPicture>,
     timing: Option<v1::Timing>,
     summary: Option<v1::Summary>,
 }
@@ -90,12 +96,23 @@ impl Collector {
             Event::Timing(timing) => self.timing = Some(timing),
             Event::Summary(summary) => self.summary = Some(summary),
             Event::Diagnosis(part) => self.diagnoses.push(part),
-            Event::Panels(_)
-            | Event::LoadPicture(_)
-            | Event::Progress(_)
-            | Event::ShapeReport(_)
-            | Event::DesignEffect(_)
-            | Event::LossTable(_) => {}
+            Event::Sizing(sizing) => self.sizing = Some(sizing),
+            Event::DesignEffect(effect) => self.effects.push(effect),
+            Event::LossTable(part) => {
+                if size(part.offset) != self.losses.len() {
+                    return Err(odd(format!("the table of losses has a gap at {}", part.offset)));
+                }
+                self.losses.extend(part.rows);
+            }
+            Event::Panels(part) => {
+                if size(part.offset) != self.panels.len() {
+                    return Err(odd(format!("the table of panels has a gap at {}", part.offset)));
+                }
+                self.panels.extend(part.panels);
+            }
+            Event::LoadPicture(part) => self.take_load_picture(part)?,
+            Event::ShapeReport(part) => self.take_shape_report(part)?,
+            Event::Progress(_) => {}
         }
         Ok(())
     }
@@ -122,6 +139,38 @@ impl Collector {
         table.from_nodes.extend(part.from_nodes);
         table.to_nodes.extend(part.to_nodes);
         table.segments.extend(part.segments);
+        Ok(())
+    }
+
+    fn take_shape_report(&mut self, part: v1::ShapeReport) -> Result<(), Oddity> {
+        let Some(known) = self.shape_report.as_mut() else {
+            self.shape_report = Some(part);
+            return Ok(());
+        };
+        if size(part.offset) != known.wishes.len() {
+            return Err(odd(format!("the report on the shape has a gap at {}", part.offset)));
+        }
+        known.wishes.extend(part.wishes);
+        known.fights.extend(part.fights);
+        known.left.extend(part.left);
+        known.at_bounds.extend(part.at_bounds);
+        Ok(())
+    }
+
+    fn take_load_picture(&mut self, part: v1::LoadPicture) -> Result<(), Oddity> {
+        match self.loads.last_mut().filter(|known| known.action == part.action) {
+            None => self.loads.push(part),
+            Some(known) => {
+                if size(part.offset) != known.pressure_pa.len().max(known.on_plan_pa.len()) {
+                    return Err(odd(format!(
+                        "the picture of \"{}\" has a gap at {}",
+                        part.action, part.offset
+                    )));
+                }
+                known.pressure_pa.extend(part.pressure_pa);
+                known.on_plan_pa.extend(part.on_plan_pa);
+            }
+        }
         Ok(())
     }
 
@@ -169,6 +218,8 @@ impl Collector {
         if self.ended.is_empty() {
             return Err(odd("the stream broke off before the first state was closed"));
         }
+        // Design effects may lack their arrays, and stand beside what has no verdict.
+        self.effects.clear();
         // Arrays of states that were not closed may lack their ends; those over all states mean nothing without all.
         let closed: Vec<&str> = self.ended.iter().map(|end| end.case.as_str()).collect();
         self.columns.retain(|case, _| closed.contains(&case.as_str()));
@@ -235,6 +286,14 @@ impl Collector {
             envelope: BTreeMap::new(),
             findings: std::mem::take(&mut self.findings),
             diagnoses: std::mem::take(&mut self.diagnoses),
+            sizing: self.sizing.take(),
+            effects: Vec::new(),
+            slides: Vec::new(),
+            reaches: Vec::new(),
+            shape_report: self.shape_report.take(),
+            losses: std::mem::take(&mut self.losses),
+            panels: std::mem::take(&mut self.panels),
+            loads: std::mem::take(&mut self.loads),
             summary,
             timing: self.timing.take(),
             broken_off,
@@ -243,7 +302,21 @@ impl Collector {
         run.segments = self.segments(&run)?;
         run.supports = self.supports(&run)?;
         run.ends = self.ends(&run)?;
+        run.slides = self.places(v1::Range::Slide, |table| &table.from_nodes, run.nodes.len())?;
+        run.reaches = self.places(v1::Range::Reach, |table| &table.segments, run.segments.len())?;
+        if run
+            .panels
+            .iter()
+            .flat_map(|panel| &panel.corners)
+            .any(|&corner| size(corner) >= run.nodes.len())
+        {
+            return Err(odd("a panel at a node that is not there"));
+        }
         run.envelope = self.checked_columns("envelope", &run)?;
+        for effect in std::mem::take(&mut self.effects) {
+            let columns = self.checked_columns(&effect.id, &run)?;
+            run.effects.push(Effect { effect, columns });
+        }
         let ended = std::mem::take(&mut self.ended);
         for end in ended {
             let begin = self
@@ -338,6 +411,31 @@ impl Collector {
         Ok(ends)
     }
 
+    /// Ids of a table, each with a position that must be below a number.
+    fn places(
+        &self,
+        over: v1::Range,
+        of: impl Fn(&Table) -> &Vec<u32>,
+        below: usize,
+    ) -> Result<Vec<(String, usize)>, Oddity> {
+        let Some(table) = self.tables.get(&(over as i32)) else {
+            return Ok(Vec::new());
+        };
+        let positions = of(table);
+        if positions.len() != table.ids.len() || positions.iter().any(|&at| size(at) >= below) {
+            return Err(odd(format!(
+                "a table of ids names what is not there ({})",
+                over.as_str_name()
+            )));
+        }
+        Ok(table
+            .ids
+            .iter()
+            .cloned()
+            .zip(positions.iter().map(|&at| size(at)))
+            .collect())
+    }
+
     fn checked_columns(&mut self, case: &str, run: &Run) -> Result<BTreeMap<String, Column>, Oddity> {
         let mut checked = BTreeMap::new();
         for (name, (column, total)) in self.columns.remove(case).unwrap_or_default() {
@@ -349,6 +447,9 @@ impl Collector {
                 v1::Range::Strut => Some(run.struts.len()),
                 v1::Range::Support => Some(run.supports.len()),
                 v1::Range::End => Some(run.ends.len()),
+                v1::Range::Panel => Some(run.panels.len()),
+                v1::Range::Slide => Some(run.slides.len()),
+                v1::Range::Reach if !run.reaches.is_empty() => Some(run.reaches.len()),
                 _ => None,
             };
             let fits = entries.is_none_or(|entries| column.values.len() == entries * column.components);

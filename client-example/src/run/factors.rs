@@ -1,4 +1,4 @@
-//! Whether a state carries factored loads: what a foundation's engineer must know of every pull.
+//! What the brief says of a state: whether its loads are factored, and whether members are taken out.
 
 use ropewalk_api::ropewalk::v1;
 
@@ -9,9 +9,9 @@ use super::{Run, State};
 pub(crate) enum Factoring {
     /// The reference state: what acts while the prestress is measured, unfactored.
     Reference,
-    /// Every action with its whole, unfactored value, or left out; or by a serviceability rule.
+    /// No action with a factor above 1; or by a serviceability rule.
     Characteristic,
-    /// Some action with another factor than 1, or by a rule for ultimate states.
+    /// Some action with a factor above 1, or by a rule for ultimate states.
     Factored,
     /// By a rule that this client does not know.
     Unknown,
@@ -35,8 +35,7 @@ impl Run {
             return Factoring::Reference;
         }
         if let Some(case) = self.brief.cases.iter().find(|case| case.id == state.id) {
-            let whole = |factor: &f64| *factor == 0.0 || factor.abs() == 1.0;
-            return if case.factors.values().all(whole) {
+            return if case.factors.values().all(|factor| factor.abs() <= 1.0) {
                 Factoring::Characteristic
             } else {
                 Factoring::Factored
@@ -60,16 +59,27 @@ impl Run {
     }
 }
 
+impl Run {
+    /// Whether a case takes members out of the net.
+    pub(crate) fn takes_out(&self, state: &State) -> bool {
+        let by_hand = self.brief.cases.iter().find(|case| case.id == state.id);
+        // Cases that a rule made say so in their words.
+        by_hand.map_or(state.in_words.contains(" without "), |case| !case.remove.is_empty())
+    }
+}
+
 #[cfg(test)]
 mod tests {
     use super::super::sample;
     use super::*;
 
     #[test]
-    fn one_factor_other_than_1_makes_a_state_factored() {
+    fn one_factor_above_1_makes_a_state_factored() {
         let mut run = sample::run();
         let of = |run: &Run, at: usize| run.factoring(&run.states[at]);
         assert_eq!(of(&run, 0), Factoring::Reference);
+        assert_eq!(of(&run, 1), Factoring::Characteristic);
+        run.brief.cases[0].factors.insert("wind".to_owned(), 0.6);
         assert_eq!(of(&run, 1), Factoring::Characteristic);
         run.brief.cases[0].factors.insert("snow".to_owned(), 1.5);
         assert_eq!(of(&run, 1), Factoring::Factored);

@@ -3,6 +3,7 @@
 mod collect;
 mod factors;
 mod member;
+mod path;
 pub(crate) mod record;
 
 use std::collections::BTreeMap;
@@ -10,6 +11,7 @@ use std::collections::BTreeMap;
 use ropewalk_api::ropewalk::v1;
 
 pub(crate) use collect::Collector;
+pub(crate) use path::{Growth, LoadPath};
 
 /// A result array.
 #[derive(Clone, Debug, PartialEq)]
@@ -55,6 +57,13 @@ impl State {
     }
 }
 
+/// A sum of effects of states, which is no state.
+#[derive(Clone, Debug)]
+pub(crate) struct Effect {
+    pub(crate) effect: v1::DesignEffect,
+    pub(crate) columns: BTreeMap<String, Column>,
+}
+
 /// What a segment belongs to, by position among the cables or struts.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(crate) enum Member {
@@ -93,8 +102,22 @@ pub(crate) struct Run {
     pub(crate) states: Vec<State>,
     pub(crate) envelope: BTreeMap<String, Column>,
     pub(crate) findings: Vec<v1::Finding>,
+    /// Where ropes slide: the rope, and the position of the node.
+    pub(crate) slides: Vec<(String, usize)>,
+    /// The rope or strut of each reach, and its first segment; empty: each segment is a reach of its own.
+    pub(crate) reaches: Vec<(String, usize)>,
+    /// What was wanted of the reference state, its parts joined.
+    pub(crate) shape_report: Option<v1::ShapeReport>,
+    pub(crate) effects: Vec<Effect>,
+    /// What the loss of members came to.
+    pub(crate) losses: Vec<v1::LossRow>,
+    pub(crate) panels: Vec<v1::PanelEntry>,
+    /// What each action does, the parts of each joined.
+    pub(crate) loads: Vec<v1::LoadPicture>,
     /// What was found of states beside their balance, in order.
     pub(crate) diagnoses: Vec<v1::StateDiagnosis>,
+    /// Sections that were chosen; none where the brief asks for none.
+    pub(crate) sizing: Option<v1::SizingResult>,
     pub(crate) summary: v1::Summary,
     pub(crate) timing: Option<v1::Timing>,
     /// Why the stream broke off before its summary; none where it came whole.
@@ -152,13 +175,6 @@ impl Run {
         }
     }
 
-    /// Segments of a cable in path order, or that of a strut.
-    pub(crate) fn segments_of(&self, member: Member) -> Vec<usize> {
-        (0..self.segments.len())
-            .filter(|&segment| self.segments[segment].member == member)
-            .collect()
-    }
-
     /// Segments of each cable in path order.
     pub(crate) fn cable_segments(&self) -> Vec<Vec<usize>> {
         let mut lists = vec![Vec::new(); self.cables.len()];
@@ -168,6 +184,28 @@ impl Run {
             }
         }
         lists
+    }
+
+    /// Unstressed length of each cable in the reference state (m), and of each strut; none where the engine told of none.
+    pub(crate) fn unstressed_lengths(&self) -> Option<[Vec<f64>; 2]> {
+        let reference = self.reference().filter(|state| state.answered())?;
+        let lengths = reference.numbers("unstressed_length_m")?;
+        let mut sums = [vec![0.0; self.cables.len()], vec![0.0; self.struts.len()]];
+        let first: Vec<usize> = if self.reaches.is_empty() {
+            (0..self.segments.len()).collect()
+        } else {
+            self.reaches.iter().map(|(_, segment)| *segment).collect()
+        };
+        if first.len() != lengths.len() {
+            return None;
+        }
+        for (segment, length) in first.into_iter().zip(lengths) {
+            match self.segments[segment].member {
+                Member::Cable(cable) => sums[0][cable] += length,
+                Member::Strut(strut) => sums[1][strut] += length,
+            }
+        }
+        Some(sums)
     }
 
     /// Findings beside those that only repeat why a case has no answer.

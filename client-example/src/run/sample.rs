@@ -6,7 +6,7 @@
 use ropewalk_api::ropewalk::v1;
 use ropewalk_api::ropewalk::v1::run_response::Event;
 
-use super::{Collector, Run};
+use super::{Collector, Column, Run};
 
 /// Ids that tests may replace by nasty ones.
 #[derive(Clone, Copy, Debug)]
@@ -200,6 +200,7 @@ fn events_named(names: Names) -> Vec<Event> {
             case: "lamp".to_owned(),
             outcome: v1::CaseOutcome::NoEquilibrium.into(),
             failure: Some(v1::Failure {
+                group: String::new(),
                 reason: "NOT_HELD".to_owned(),
                 message: "nothing holds the lamp".to_owned(),
                 cure: "tie it to the net".to_owned(),
@@ -254,4 +255,33 @@ fn events_named(names: Names) -> Vec<Event> {
         }),
     ]);
     events
+}
+
+/// Gives the case of a sample a path: movements in proportion, a carrying rope on a line, a bracing one that goes slack.
+pub(crate) fn give_path(run: &mut Run, factors: &[f64]) {
+    let column = |over: v1::Range, components: usize, values: Vec<f64>| Column {
+        unit: String::new(),
+        over,
+        components,
+        baseline: String::new(),
+        values,
+    };
+    let each = |number: &dyn Fn(f64) -> f64| factors.iter().map(|factor| number(*factor)).collect::<Vec<f64>>();
+    let mut tensions = each(&|factor| 20e3 + 6e3 * factor);
+    tensions.extend(each(&|factor| {
+        if factor < 0.5 { 20e3 * (1.0 - 2.0 * factor) } else { 0.0 }
+    }));
+    let columns = &mut run.states[1].columns;
+    columns.insert(
+        "path_load_factor".to_owned(),
+        column(v1::Range::Unspecified, 1, factors.to_vec()),
+    );
+    columns.insert(
+        "path_movement_m".to_owned(),
+        column(v1::Range::Unspecified, 1, each(&|factor| 0.02 * factor)),
+    );
+    columns.insert(
+        "path_tension_n".to_owned(),
+        column(v1::Range::Cable, factors.len(), tensions),
+    );
 }

@@ -49,7 +49,7 @@ pub(crate) fn anchor_sets(run: &Run) -> Sheet {
             head("upward angle", "deg"),
         ],
         rows,
-        note: "Pull on the anchor. Hx, Hy and V of a row act together. Factored: an action of the case has another factor than 1. \
+        note: "Pull on the anchor. Hx, Hy and V of a row act together. Factored: an action of the case has a factor above 1. \
                Forces of other anchors in the same case: anchors.csv, or below.",
     }
 }

@@ -224,13 +224,13 @@ pub(crate) fn anchor_peaks(run: &Run) -> Sheet {
     }
 }
 
-/// Components that point one way in one state and the other way in another: "Hx, V". Rounding noise is no reversal: a
-/// thousandth of the largest pull counts.
+/// Components that point one way in one state and the other way in another: "Hx, V". Rounding noise is no reversal: of the
+/// upright part a thousandth of the largest pull counts, of level ones a hundredth.
 fn reversals(of_node: &[(&State, Pull)], largest: f64) -> String {
     let turns = ["Hx", "Hy", "V"].into_iter().enumerate().filter(|(axis, _)| {
         let parts = of_node.iter().map(|(_, pull)| pull.parts[*axis]);
         let (low, high) = parts.fold((0.0_f64, 0.0_f64), |(low, high), part| (low.min(part), high.max(part)));
-        high.min(-low) > 1e-3 * largest
+        high.min(-low) > if *axis == 2 { 1e-3 } else { 1e-2 } * largest
     });
     let turns: Vec<&str> = turns.map(|(_, name)| name).collect();
     if turns.is_empty() {

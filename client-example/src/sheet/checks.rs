@@ -36,13 +36,18 @@ pub(crate) fn checks(run: &Run) -> Sheet {
     }
 }
 
+/// Unit of demands and limits for eyes, and how many of it make one of the contract's.
+pub(super) fn shown_unit(unit: &str) -> (&str, f64) {
+    match unit {
+        "N" => ("kN", 1e-3),
+        "m" => ("mm", 1e3),
+        "" => ("%", 1e2),
+        unit => (unit, 1.0),
+    }
+}
+
 fn row(result: &v1::CheckResult) -> Row {
-    let (scale, unit) = match result.unit.as_str() {
-        "N" => (1e-3, "kN"),
-        "m" => (1e3, "mm"),
-        "" => (1e2, "%"),
-        unit => (1.0, unit),
-    };
+    let (unit, scale) = shown_unit(&result.unit);
     let judged = result.judged > 0;
     let when_judged = |cell: Cell| if judged { cell } else { Cell::Empty };
     let mark = match result.verdict() {

@@ -3,7 +3,7 @@
 use ropewalk_api::ropewalk::v1;
 
 use super::{Cell, Head, Mark, Place, Row, Sheet, envelope_case, file_head, head};
-use crate::run::{Member, Run};
+use crate::run::Run;
 
 /// The extreme of some numbers at some places, with its place; none where there are no numbers.
 fn extreme(places: &[usize], numbers: &[f64], better: impl Fn(f64, f64) -> bool) -> Option<(usize, f64)> {
@@ -52,9 +52,11 @@ fn rope_heads() -> Vec<Head> {
 
 /// Ropes by role, then by the largest share of their breaking force.
 pub(crate) fn ropes(run: &Run) -> Sheet {
+    let lengths = run.unstressed_lengths();
     let mut keyed: Vec<(usize, f64, Row)> = Vec::new();
     for (cable, segments) in run.cable_segments().iter().enumerate() {
-        keyed.push(rope(run, cable, segments));
+        let length = lengths.as_ref().map(|[ropes, _]| ropes[cable]);
+        keyed.push(rope(run, cable, segments, length));
     }
     keyed.sort_by(|a, b| a.0.cmp(&b.0).then(b.1.total_cmp(&a.1)));
     Sheet {
@@ -69,7 +71,7 @@ pub(crate) fn ropes(run: &Run) -> Sheet {
     }
 }
 
-fn rope(run: &Run, cable: usize, segments: &[usize]) -> (usize, f64, Row) {
+fn rope(run: &Run, cable: usize, segments: &[usize], length: Option<f64>) -> (usize, f64, Row) {
     let id = &run.cables[cable];
     let given = run.cable(id);
     let role = given.map(|cable| cable.role.clone()).unwrap_or_default();
@@ -119,11 +121,6 @@ fn rope(run: &Run, cable: usize, segments: &[usize]) -> (usize, f64, Row) {
         let position = envelope(name)?.get(place?.0).copied()?;
         Some(Cell::text(envelope_case(run, position)))
     };
-    let unstressed = reference.and_then(|state| state.numbers("unstressed_length_m"));
-    // Reaches and segments are the same as long as no rope slides; struts stand behind the reaches.
-    let length = unstressed
-        .filter(|lengths| lengths.len() == run.segments.len())
-        .map(|lengths| segments.iter().map(|&segment| lengths[segment]).sum::<f64>());
     let least_breaking = breaking
         .iter()
         .copied()
@@ -173,7 +170,10 @@ fn rope(run: &Run, cable: usize, segments: &[usize]) -> (usize, f64, Row) {
 
 /// Struts in brief order: their forces over all answered states.
 pub(crate) fn struts(run: &Run) -> Sheet {
-    let rows = (0..run.struts.len()).map(|strut| strut_row(run, strut)).collect();
+    let lengths = run.unstressed_lengths();
+    let rows = (0..run.struts.len())
+        .map(|strut| strut_row(run, strut, lengths.as_ref().map(|[_, struts]| struts[strut])))
+        .collect();
     Sheet {
         file: "struts",
         title: "Masts and struts",
@@ -189,11 +189,11 @@ pub(crate) fn struts(run: &Run) -> Sheet {
             head("unstressed length", "m"),
         ],
         rows,
-        note: "Tension positive: a mast under pressure has negative numbers. Buckling is not checked.",
+        note: "Tension positive: a mast under pressure has negative numbers. Buckling is judged only where a check asks for it.",
     }
 }
 
-fn strut_row(run: &Run, strut: usize) -> Row {
+fn strut_row(run: &Run, strut: usize, length: Option<f64>) -> Row {
     let id = &run.struts[strut];
     let given: Option<&v1::Strut> = run.strut(id);
     let forces: Vec<(&str, f64)> = run
@@ -207,9 +207,6 @@ fn strut_row(run: &Run, strut: usize) -> Row {
     let rest = forces.iter().find(|(case, _)| *case == "reference");
     let kn = |found: Option<&(&str, f64)>| Cell::maybe(found.map(|(_, force)| Cell::three(force / 1e3)));
     let case = |found: Option<&(&str, f64)>| Cell::maybe(found.map(|(case, _)| Cell::text(*case)));
-    let segment = run.segments_of(Member::Strut(strut)).first().copied();
-    let lengths = run.reference().and_then(|state| state.numbers("unstressed_length_m"));
-    let lengths = lengths.filter(|lengths| lengths.len() == run.segments.len());
     Row {
         cells: vec![
             Cell::text(id),
@@ -220,11 +217,7 @@ fn strut_row(run: &Run, strut: usize) -> Row {
             case(low),
             kn(high),
             case(high),
-            Cell::maybe(
-                lengths
-                    .zip(segment)
-                    .map(|(lengths, segment)| Cell::three(lengths[segment])),
-            ),
+            Cell::maybe(length.map(Cell::three)),
         ],
         mark: Mark::Plain,
         group: String::new(),

@@ -49,18 +49,22 @@ fn the_anchor_sheet_shows_the_pull_not_the_support_force() {
     // A lies above the net's middle: the net pulls it down and inwards.
     let row = shown(&sheet, 0);
     assert_eq!(row[0..2], ["A", "full-snow"]);
-    assert_eq!(row[6], "24.8");
+    assert_eq!(row[7], "24.8");
     assert!(
-        row[3].parse::<f64>().unwrap() > 0.0 && row[5].parse::<f64>().unwrap() < 0.0,
+        row[4].parse::<f64>().unwrap() > 0.0 && row[6].parse::<f64>().unwrap() < 0.0,
         "{row:?}"
     );
     assert_eq!(
-        row[7..],
+        row[8..],
         ["45", "-13", "20.0", "124"],
         "limit and ratio of the check on A"
     );
     assert_eq!(sheet.rows[0].mark, Mark::Bad);
-    assert_eq!(sheet.rows[1].cells[9], Cell::Empty, "the reference state is not judged");
+    assert_eq!(
+        sheet.rows[1].cells[10],
+        Cell::Empty,
+        "the reference state is not judged"
+    );
     let peaks = anchor_peaks(&sample::run());
     assert_eq!(shown(&peaks, 0)[0..3], ["A", "24.8", "down, +x +y"]);
     assert_eq!(peaks.rows.len(), 4);
@@ -132,4 +136,55 @@ fn a_long_sheet_is_cut_on_the_terminal_only() {
 #[test]
 fn paragraphs_are_wrapped_at_words() {
     assert_eq!(wrap("one two three four", 9, "  "), "one two\n  three\n  four");
+}
+
+#[test]
+fn anchors_by_set_say_what_is_factored_and_join_what_one_case_governs() {
+    let mut run = sample::run();
+    run.states[1].sets = vec!["ultimate".to_owned()];
+    run.brief.cases[0].factors.insert("snow".to_owned(), 1.5);
+    let sheet = anchor_sets(&run);
+    let of_a: Vec<Vec<String>> = sheet
+        .rows
+        .iter()
+        .filter(|row| row.group == "A")
+        .map(|row| row.cells[1..5].iter().map(Cell::shown).collect())
+        .collect();
+    // A is a high point: the carrying rope pulls it down and inwards, most under snow.
+    assert_eq!(
+        of_a,
+        [
+            [
+                "reference",
+                "reference",
+                "largest pull, level, pressed down",
+                "reference"
+            ],
+            ["ultimate", "factored", "largest pull, level, pressed down", "full-snow"],
+        ]
+    );
+}
+
+#[test]
+fn a_load_path_is_sheeted_with_the_largest_departure_first() {
+    let mut run = sample::run();
+    assert!(doubling(&run).is_none());
+    sample::give_path(&mut run, &[0.0, 0.5, 1.0, 1.5]);
+    let sheet = doubling(&run).unwrap();
+    let shown: Vec<Vec<String>> = sheet
+        .rows
+        .iter()
+        .map(|row| row.cells.iter().map(Cell::shown).collect())
+        .collect();
+    let names: Vec<&str> = shown.iter().map(|row| row[1].as_str()).collect();
+    assert_eq!(names, ["largest movement", "bracing", "carrying"]);
+    // Bracing falls from 20 kN to nothing at half the load: 10 kN off the line at that place, of 20.
+    assert_eq!(shown[1][3..8], ["20.0", "0", "1.50", "0", "0"]);
+    assert_eq!((shown[1][10].as_str(), shown[1][11].as_str()), ("50", "0.500"));
+    // Carrying 20, 23, 26, 29 kN: the straight line, and 29 of 1.5 times 26.
+    assert_eq!(shown[2][3..8], ["20.0", "26.0", "1.50", "29.0", "39.0"]);
+    assert_eq!(
+        (shown[2][9].as_str(), shown[2][10].as_str(), shown[2][12].as_str()),
+        ("0.744", "0", "on the effect")
+    );
 }

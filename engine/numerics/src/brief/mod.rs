@@ -11,6 +11,7 @@ mod path;
 mod picture;
 mod plan;
 mod ponding;
+mod sizing;
 mod state;
 mod summary;
 mod tally;
@@ -29,6 +30,7 @@ pub use path::PathResult;
 pub use picture::{LoadPicture, Resultant};
 pub use plan::Plan;
 pub use ponding::{Ponding, PondingEnd, PondingGiven};
+pub use sizing::{Sizing, SizingNeed, SizingOutcome, SizingRound, SizingStep, SizingUnit, size};
 pub use summary::{Caution, Summary};
 pub use tally::{Effect, Tally};
 

@@ -155,7 +155,7 @@ impl Plan {
         let case = given.case(net, &reference.state, actions);
         let solved = match given.ponding {
             Some(ponding) => ponding::solve(&self.analysis, &case, ponding, &reference.state, settings, observe)
-                .map(|ponded| (ponded.solution, ponded.case, Some(ponded.ponding))),
+                .map(|ponded| (ponded.solution, Some(ponded.case), Some(ponded.ponding))),
             None => equilibrium::solve(
                 &self.analysis,
                 &case,
@@ -164,10 +164,11 @@ impl Plan {
                 settings,
                 observe,
             )
-            .map(|solution| (solution, case, None)),
+            .map(|solution| (solution, None, None)),
         };
         match solved {
-            Ok((solution, case, ponding)) => {
+            Ok((solution, ponded, ponding)) => {
+                let case = ponded.unwrap_or(case);
                 let bare = Bare {
                     positions: &solution.positions,
                     axial_forces: &solution.axial_forces,
@@ -213,7 +214,7 @@ impl Plan {
                 }
             }
             Err(error) => CaseOutcome::None {
-                cause: cause_of_error(net, &reference.state.positions, &error),
+                cause: cause_of_error(net, &case, &reference.state.positions, &error),
                 error,
             },
         }

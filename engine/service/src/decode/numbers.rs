@@ -158,6 +158,7 @@ pub(crate) const RADIUS: Quantity = Quantity::positive("radius", "m", 1e-6, 1e5)
 pub(crate) const RADIUS_OVER_DIAMETER: Quantity = Quantity::between("radius over diameter", "", 1.0, 1e3);
 pub(crate) const RADIUS_OVER_WIRE: Quantity = Quantity::between("radius over wire diameter", "", 1.0, 1e4);
 pub(crate) const FALL: Quantity = Quantity::positive("fall", "m per m", 1e-9, 10.0);
+pub(crate) const SIZING_RUNS: Quantity = Quantity::between("number of runs", "", 1.0, 10_000.0);
 pub(crate) const TOLERANCE: Quantity = Quantity::between("tolerance", "", 1e-14, 1e-8);
 pub(crate) const LOAD_STEPS: Quantity = Quantity::between("number of load steps", "", 1.0, 1000.0);
 pub(crate) const MODES_OF_STIFFNESS: Quantity = Quantity::between("number of modes of stiffness", "", 1.0, 20.0);

@@ -182,6 +182,8 @@ reasons! {
     EDITION_UNKNOWN,
     /// A factor that the named edition does not recommend.
     FACTOR_NOT_OF_EDITION,
+    /// A member that two choices of sizing cover.
+    SIZED_TWICE,
     /// Cases, but no check.
     NOTHING_CHECKED,
     /// A rope is to slide where it can not.

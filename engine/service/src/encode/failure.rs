@@ -25,6 +25,16 @@ fn failure(
         cure: cure.to_owned(),
         nodes: first_ids(nodes.iter().map(AsRef::as_ref), LOOKED_AT),
         members: first_ids(members.iter().map(AsRef::as_ref), LOOKED_AT),
+        group: group(reason, nodes, members),
+    }
+}
+
+/// What failures of one cause have in common: the reason and the first id to look at.
+fn group(reason: &str, nodes: &[impl AsRef<str>], members: &[impl AsRef<str>]) -> String {
+    let mut ids = nodes.iter().map(AsRef::as_ref).chain(members.iter().map(AsRef::as_ref));
+    match ids.find(|id: &&str| !id.is_empty()) {
+        Some(culprit) => format!("{reason}/{culprit}"),
+        None => reason.to_owned(),
     }
 }
 
@@ -104,7 +114,8 @@ fn cure_of(likely: &LikelyCause) -> String {
         LikelyCause::Pond { grows: false, .. } => {
             "the pond is near to growing without end: give the skin more fall or the ropes more prestress"
         }
-        LikelyCause::OutOfIterations => "allow more iterations in solving.max_iterations, or put the load on in steps",
+        LikelyCause::OutOfIterations => "allow more iterations in solving.max_iterations",
+        LikelyCause::GaveUp => "put the load on in steps with solving.load_steps, or give more prestress",
     };
     cure.to_owned()
 }

@@ -12,6 +12,7 @@
 //! | `effects` | sums of effects, paths of cases, losses of members |
 //! | `diagnosis` | free movements, states of self-stress, least stiffnesses |
 //! | `closing`, `verdicts`, `rules`, `anchors`, `cautions` | the end of a run |
+//! | `sizing` | sections chosen from lists |
 //! | `freeze` | the brief with what was found written in |
 //! | `report` | what reading the brief told |
 //! | `parts` | how much fits a message |
@@ -32,6 +33,7 @@ mod progress;
 mod report;
 mod rules;
 mod shape;
+mod sizing;
 mod state;
 mod surface;
 mod verdicts;
@@ -44,3 +46,4 @@ pub use head::{id_tables, started};
 pub use outcome::{case, engine_error, reference};
 pub use progress::progress;
 pub use report::check_report;
+pub use sizing::sizing;

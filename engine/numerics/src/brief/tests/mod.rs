@@ -2,6 +2,7 @@
 
 mod effects;
 mod outcomes;
+mod sizing;
 mod worked_numbers;
 
 use std::ops::ControlFlow;
