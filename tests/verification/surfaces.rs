@@ -385,6 +385,6 @@ fn water_on_a_net_that_never_catches_up_grows() {
         SOURCE,
         water() / (4.0 * stiffness / UNSTRESSED),
         last / before,
-        Relative(0.05),
+        Relative(1e-4),
     );
 }
