@@ -499,7 +499,7 @@ fn read_zone(net: &NetDraft<'_>, zone: &v1::Zone, at: &Path<'_>, findings: &mut 
     let skin = skin_of(net, &zone.skin, of, &at.field("skin"), findings);
     let field = at.field("outline_xy_m");
     let numbers = zone.outline_xy_m.len();
-    if numbers < 6 || numbers % 2 != 0 {
+    if numbers < 6 || !numbers.is_multiple_of(2) {
         findings
             .error(
                 reasons::WRONG_COUNT,

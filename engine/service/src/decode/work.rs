@@ -1,5 +1,7 @@
 //! The work of a brief without errors.
 
+use std::collections::HashSet;
+
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::{Brief, EffectRule, SizingOutcome};
 use ropewalk_numerics::model::Member;
@@ -247,12 +249,11 @@ impl Work {
         self.names.keeps_position[node]
     }
 
-    /// Whether a panel is a mesh of ropes, and none given in the brief one by one.
-    pub(crate) fn is_mesh(&self, panel: usize) -> bool {
-        let id = &self.brief.net.panels()[panel].name;
+    /// Ids of the panels that the brief gives one by one; all others are meshes of ropes.
+    pub(crate) fn given_panels(&self) -> HashSet<&str> {
         match &self.message.net_source {
-            Some(v1::brief::NetSource::Net(net)) => net.panels.iter().all(|given| given.id != *id),
-            _ => true,
+            Some(v1::brief::NetSource::Net(net)) => net.panels.iter().map(|panel| panel.id.as_str()).collect(),
+            _ => HashSet::new(),
         }
     }
 

@@ -151,11 +151,12 @@ pub(super) fn doubts(work: &Work, plan: &Plan, reference: &ReferenceOutcome) -> 
     }
     let surface = plan.surface(reference);
     let mut findings = Vec::new();
-    let turned: Vec<&str> = (net.panels().iter().enumerate())
-        .filter(|(index, panel)| {
-            work.is_mesh(*index) && fan::signed_area_on_plan(&panel.places(&reference.state.positions)) <= 0.0
+    let (given, positions) = (work.given_panels(), &reference.state.positions);
+    let turned: Vec<&str> = (net.panels().iter())
+        .filter(|panel| {
+            !given.contains(panel.name.as_str()) && fan::signed_area_on_plan(&panel.places(positions)) <= 0.0
         })
-        .map(|(_, panel)| panel.name.as_str())
+        .map(|panel| panel.name.as_str())
         .collect();
     if let Some(first) = turned.first() {
         findings.push(finding(
