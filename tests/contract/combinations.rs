@@ -632,6 +632,39 @@ fn a_loss_that_leaves_a_mechanism_is_named() {
         ("NOT_HELD", &["m".to_owned()][..])
     );
     assert!(failure.message.ends_with("Taken out: \"carrying\"."), "{failure:?}");
+
+    // The rule's own losses: those without an answer are counted, their effects say so, and nothing else ends.
+    let all: Vec<usize> = (0..work.brief.cases.len()).collect();
+    let events = run(&work, &all);
+    let unanswered = effects(&events).into_iter().filter(|effect| !effect.answered);
+    let unanswered: Vec<&str> = unanswered.map(|effect| effect.id.as_str()).collect();
+    assert!(
+        !unanswered.is_empty() && unanswered.iter().all(|id| id.ends_with("-without-carrying-effect")),
+        "{unanswered:?}"
+    );
+    let rows = events.iter().find_map(|event| match event {
+        Event::LossTable(table) => Some(&table.rows),
+        _ => None,
+    });
+    let row = rows
+        .and_then(|rows| rows.iter().find(|row| row.removed == ["carrying"]))
+        .expect("a row");
+    assert!(
+        row.unanswered_total as usize >= unanswered.len() && row.unanswered[0] == "pulled",
+        "{row:?}"
+    );
+    let Some(Event::Summary(summary)) = events.last() else {
+        panic!("no summary")
+    };
+    assert_eq!(summary.verdict(), v1::Verdict::NoAnswer);
+    assert_eq!(summary.checks[1].verdict(), v1::Verdict::NoAnswer);
+    // The ultimate cases are judged all the same: 2.2 times the tension under 1.35 self + 1.5 snow + 0.9 press is too much.
+    let ultimate = &summary.checks[0];
+    assert_eq!(
+        (ultimate.judged, ultimate.verdict()),
+        (2, v1::Verdict::Exceeds),
+        "{ultimate:?}"
+    );
 }
 
 #[test]
