@@ -36,6 +36,15 @@ pub(crate) fn checks(run: &Run) -> Sheet {
     }
 }
 
+/// How much of the limit is used; a rope whose tension grew everywhere uses nothing of what may be lost.
+fn used(result: &v1::CheckResult) -> Cell {
+    if result.kind == "slackness" && result.ratio < 0.0 {
+        Cell::text("none: grew")
+    } else {
+        Cell::percent(result.ratio)
+    }
+}
+
 fn row(result: &v1::CheckResult) -> Row {
     let (scale, unit) = match result.unit.as_str() {
         "N" => (1e-3, "kN"),
@@ -69,7 +78,7 @@ fn row(result: &v1::CheckResult) -> Row {
             when_judged(Cell::three(result.demand * scale)),
             Cell::three(result.limit * scale),
             Cell::text(unit),
-            when_judged(Cell::percent(result.ratio)),
+            when_judged(used(result)),
             Cell::text(&result.governing_case),
             Cell::Count(result.judged.into()),
             Cell::Count(result.not_judged.into()),
