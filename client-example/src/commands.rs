@@ -387,8 +387,9 @@ fn ending(run: &Run) -> String {
         ));
     }
     text.push_str(&format!(
-        "\n{}\n\n{}",
+        "\n{}\n{}\n\n{}",
         wrapped(&sheet::audit_line(run)),
+        wrapped(&sheet::proof_line(run)),
         cautions(&run.summary.cautions)
     ));
     if let Some(timing) = &run.timing {

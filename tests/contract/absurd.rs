@@ -34,7 +34,7 @@ fn check(reading: Reading, what: &str) {
     if let Some(work) = &reading.work {
         let plan = Plan::new(work.brief.clone());
         let found = plan.reference(&mut |_| ControlFlow::Continue(()));
-        assert!(!reference(work, &plan, &found).is_empty());
+        assert!(!reference(work, &plan, &found, &[]).is_empty());
     }
     assert!(check_report(reading).iter().any(|part| part.totals.is_some()));
 }

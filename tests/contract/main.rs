@@ -3,6 +3,7 @@
 mod absurd;
 mod briefs;
 mod checks;
+mod combinations;
 mod diagnosis;
 mod drafts;
 mod fields;
@@ -13,5 +14,7 @@ mod reasons;
 mod results;
 mod sizes;
 mod sizing;
+mod slides;
 mod surfaces;
+mod targets;
 mod violations;

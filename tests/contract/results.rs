@@ -9,11 +9,11 @@ use ropewalk_numerics::brief::{CaseOutcome, Cause, Culprit, LikelyCause};
 use ropewalk_numerics::equilibrium::{SolveError, Termination};
 use ropewalk_numerics::model::NodeId;
 use ropewalk_service::decode::Work;
-use ropewalk_service::encode::{Tally, case, closing, engine_error, id_tables, reference, started};
+use ropewalk_service::encode::{Tally, case, closing, design_effect, engine_error, id_tables, reference, started};
 use serde_json::json;
 use v1::run_response::Event;
 
-use crate::briefs::{changed, first_net, found, terrace, work};
+use crate::briefs::{changed, first_net, found, quince_yard, terrace, work};
 
 /// Every event of a run of some cases.
 pub(crate) fn run(work: &Work, cases: &[usize]) -> Vec<Event> {
@@ -24,15 +24,18 @@ pub(crate) fn run(work: &Work, cases: &[usize]) -> Vec<Event> {
     messages.extend(id_tables(work, &plan, cases).into_iter().map(|table| v1::RunResponse {
         event: Some(Event::Ids(table)),
     }));
-    let found = plan.reference(&mut |_| ControlFlow::Continue(()));
-    messages.extend(reference(work, &plan, &found));
+    let mut history = Vec::new();
+    let found = plan.reference_with_history(&mut history, &mut |_| ControlFlow::Continue(()));
+    messages.extend(reference(work, &plan, &found, &history));
     let mut tally = Tally::new(&plan, cases, &found);
     if let Ok(found) = &found {
         for index in cases {
             let outcome = plan.case(found, *index, &mut |_| ControlFlow::Continue(()));
             let (said, noted) = case(work, &plan, found, *index, &outcome);
             messages.extend(said);
-            tally.add(*index, &noted);
+            for effect in tally.add(*index, &noted) {
+                messages.extend(design_effect(work, &plan, found, &effect));
+            }
         }
     }
     messages.extend(closing(work, &plan, tally));
@@ -80,6 +83,36 @@ fn closings(events: &[Event]) -> Vec<&v1::CaseSummary> {
         _ => None,
     });
     closings.collect()
+}
+
+/// What is proven is told of every answered state; energies where they are asked for.
+#[test]
+fn certificates_tell_their_energies_on_request_only() {
+    let asked = changed(first_net(), &[("/solving", json!({"energies": true}))]);
+    for (brief, told) in [(first_net(), false), (asked, true)] {
+        let events = run(&work(&brief), &[0]);
+        let closings = closings(&events);
+        assert_eq!(closings.len(), 2);
+        for closing in closings {
+            let certificate = closing.certificate.as_ref().expect("answered");
+            assert!(certificate.certified && certificate.condition.is_empty());
+            assert!(certificate.tension_within_n > 0.0 && certificate.tension_within_n < 1e-3);
+            assert!(["carrying", "bracing"].contains(&certificate.tension_within_member.as_str()));
+            assert!(certificate.position_within_m < 1e-6);
+            assert_eq!(certificate.nodes_without_bound_total, 0);
+            assert_eq!(certificate.gap_j.is_some(), told);
+            assert_eq!(certificate.strain_energy_j.is_some_and(|energy| energy > 0.0), told);
+        }
+    }
+}
+
+#[test]
+fn a_pushing_strut_is_the_condition_of_a_certificate() {
+    let events = run(&work(&quince_yard()), &[]);
+    let reference = closings(&events)[0];
+    let certificate = reference.certificate.as_ref().expect("answered");
+    assert!(certificate.condition.contains("struts"), "{}", certificate.condition);
+    assert!(certificate.certified);
 }
 
 /// Worked numbers of the minimal draft: own Newton solve, stated beside it in the contract's design.
@@ -430,7 +463,7 @@ fn without_a_reference_state_nothing_is_judged() {
     let plan = ropewalk_numerics::brief::Plan::new(work.brief.clone());
     let found = plan.reference(&mut |_| ControlFlow::Break(()));
     assert!(found.is_err());
-    let said = reference(&work, &plan, &found);
+    let said = reference(&work, &plan, &found, &[]);
     let Some(Event::CaseSummary(closing)) = said.last().and_then(|message| message.event.clone()) else {
         panic!("the reference state is closed");
     };

@@ -119,10 +119,12 @@ fn state(net: &Net) -> ReferenceOutcome {
         panel_areas: Vec::new(),
         panel_pressures: Vec::new(),
         loose_nodes: (0..nodes).map(NodeId::new).collect(),
+        ponding: None,
         audit: Audit {
             passed: true,
             ..Audit::default()
         },
+        certificate: None,
         diagnosis: None,
     };
     ReferenceOutcome {
@@ -182,7 +184,12 @@ fn every_message_of_a_large_net_is_small() {
     assert_eq!(next, 30_276);
     small(&[started(&work, &plan, &[0])]);
     let found = Ok(state(&plan.brief().net));
-    small(&reference(&work, &plan, &found));
+    small(&reference(
+        &work,
+        &plan,
+        &found,
+        &found.as_ref().map_or(vec![], |r| r.history.clone()),
+    ));
     small(&closing(&work, &plan, Tally::new(&plan, &[0], &found)));
     let frozen = freeze(&work, &plan, &found).expect("a state");
     assert!(frozen.len() > 20, "a frozen brief comes in parts");

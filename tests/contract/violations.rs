@@ -1167,23 +1167,6 @@ fn accepted_doubts_stay_visible() {
 fn parts_that_are_not_served() {
     for (pointer, value, path) in [
         ("/stored_net", json!("3f9a"), "stored_net"),
-        (
-            "/net/adjusters",
-            json!([{"id": "t", "cable": "g1", "at": "G1"}]),
-            "net.adjusters[t]",
-        ),
-        ("/net/cables/0/slides", json!({}), "net.cables[carrying].slides"),
-        (
-            "/net/roles/0/adjuster",
-            json!({"in_m": 0.1}),
-            "net.roles[rope].adjuster",
-        ),
-        ("/factors", json!({}), "factors"),
-        (
-            "/combinations",
-            json!([{"set": "ultimate", "fundamental": {}}]),
-            "combinations[0]",
-        ),
         ("/modes", json!({"count": 3}), "modes"),
         ("/motions", json!([{"id": "fall"}]), "motions[fall]"),
         ("/stages", json!([{"id": "first"}]), "stages[first]"),

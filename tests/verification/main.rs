@@ -27,3 +27,4 @@ mod scalar;
 mod shapes;
 mod straight;
 mod supports;
+mod surfaces;

@@ -5,14 +5,15 @@ use std::sync::Arc;
 
 use nalgebra::{DMatrix, Vector3};
 use ropewalk_numerics::brief::{
-    Brief, CaseGiven, CaseOutcome, Plan, Prestress, PrestressRule, ReferenceOutcome, StateResult, SupportForce,
+    Brief, CaseGiven, CaseOutcome, Plan, PondingGiven, Prestress, PrestressRule, ReferenceOutcome, StateResult,
+    SupportForce,
 };
 use ropewalk_numerics::check::{Against, CaseDigest, Check, CheckKind, CheckTally, Judgement, Lack};
 use ropewalk_numerics::equilibrium::{Settings, Termination};
 use ropewalk_numerics::load::{Action, Load};
 use ropewalk_numerics::model::{
-    CableGiven, CableId, ElasticSupportGiven, Net, NetGiven, NodeGiven, NodeId, PanelGiven, Section, StrutGiven,
-    StrutId, SupportGiven,
+    CableGiven, CableId, ElasticSupportGiven, Member, Net, NetGiven, NodeGiven, NodeId, PanelGiven, Section, Skin,
+    StrutGiven, StrutId, SupportGiven,
 };
 
 /// A net in the making.
@@ -25,6 +26,8 @@ pub(crate) struct Problem {
     hold: Vec<NodeId>,
     under: Vec<Load>,
     case: Vec<Load>,
+    ponding: Option<PondingGiven>,
+    removed: Vec<Member>,
 }
 
 /// What a problem answers.
@@ -127,6 +130,35 @@ impl Problem {
         self.hold.push(node);
     }
 
+    /// A skin of panels, each by its corners counter-clockwise seen from its outer side.
+    pub(crate) fn skin(&mut self, mass_per_area: f64, panels: &[&[NodeId]]) {
+        let first = self.net.panels.len();
+        for corners in panels {
+            self.net.panels.push(PanelGiven {
+                name: format!("p{}", self.net.panels.len()),
+                corners: corners.to_vec(),
+            });
+        }
+        self.net.skins.push(Skin {
+            name: format!("skin{}", self.net.skins.len()),
+            mass_per_area,
+            panels: (first..self.net.panels.len()).collect(),
+        });
+    }
+
+    /// Lets water of this density (kg/m³) gather on skins in the case.
+    pub(crate) fn gather_water(&mut self, density: f64, gravity: f64) {
+        self.ponding = Some(PondingGiven { density, gravity });
+    }
+
+    /// What comes of the case, whether it is an answer or not.
+    #[track_caller]
+    pub(crate) fn outcome(self) -> CaseOutcome {
+        let plan = self.plan();
+        let reference = reference(&plan);
+        plan.case(&reference, 0, &mut |_| ControlFlow::Continue(()))
+    }
+
     /// A dead load that acts in the reference state and in the case.
     pub(crate) fn always(&mut self, load: Load) {
         self.under.push(load);
@@ -135,6 +167,11 @@ impl Problem {
     /// A load of the case.
     pub(crate) fn load(&mut self, load: Load) {
         self.case.push(load);
+    }
+
+    /// Takes a rope out, in the case.
+    pub(crate) fn take_out(&mut self, cable: CableId) {
+        self.removed.push(Member::Cable(cable));
     }
 
     /// A force (N) on one node, in the case.
@@ -211,7 +248,7 @@ impl Problem {
     /// and tensions: what is compared is a state in balance.
     #[track_caller]
     pub(crate) fn solve(self) -> Answer {
-        let has_case = !self.case.is_empty();
+        let has_case = !self.case.is_empty() || self.ponding.is_some();
         let plan = self.plan();
         let reference = reference(&plan);
         let state = if has_case {
@@ -249,6 +286,8 @@ impl Problem {
             cases: vec![CaseGiven {
                 name: "case".to_owned(),
                 factors: vec![(0, 1.0), (1, 1.0)],
+                ponding: self.ponding,
+                removed: self.removed,
                 ..CaseGiven::default()
             }],
             effects: Vec::new(),

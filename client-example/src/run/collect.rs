@@ -95,6 +95,7 @@ impl Collector {
             Event::Panels(_)
             | Event::LoadPicture(_)
             | Event::Progress(_)
+            | Event::ShapeReport(_)
             | Event::DesignEffect(_)
             | Event::LossTable(_) => {}
         }

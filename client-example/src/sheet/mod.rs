@@ -24,7 +24,7 @@ pub(crate) use page::html;
 pub(crate) use ropes::{ropes, struts};
 pub(crate) use sizing::{sized, sizing_rounds, sizing_words};
 pub(crate) use text::{terminal, wrap};
-pub(crate) use verdict::{audit_line, largest_difference, verdict_word, why};
+pub(crate) use verdict::{audit_line, largest_difference, proof_line, verdict_word, why};
 
 /// How a number is shown to eyes.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]

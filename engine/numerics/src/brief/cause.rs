@@ -5,12 +5,12 @@ use std::fmt;
 
 use nalgebra::Vector3;
 
-use super::StateResult;
+use super::{Ponding, PondingEnd, StateResult};
 use crate::diagnose::mechanism::{self, Arrangement};
 use crate::diagnose::plausible;
 use crate::equilibrium::stability::FreeMovement;
 use crate::equilibrium::{Solution, SolveError, Termination};
-use crate::load::Case;
+use crate::load::{Case, Place};
 use crate::model::{Member, Net, NodeId, ReferenceState, SegmentId};
 use crate::shape::words::{direction, list};
 
@@ -81,6 +81,21 @@ pub enum LikelyCause {
         slack_cables: Vec<String>,
         /// Sum of the loads (N).
         load_sum: Vector3<f64>,
+    },
+    /// Water that gathers on a skin makes more room than it fills, or does not settle.
+    Pond {
+        /// Where it is deepest: id of a node or a panel.
+        place: String,
+        /// Depth there (m).
+        depth: f64,
+        /// Volume of all water (m³).
+        volume: f64,
+        /// What the last round added (m³), and the one before.
+        growth: (f64, f64),
+        /// Whether it grows: the last round added no less than the one before.
+        grows: bool,
+        /// Rounds.
+        rounds: usize,
     },
     /// The methods gave up before the forces were in balance, for no reason that the state shows.
     OutOfIterations,
@@ -183,6 +198,31 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
         worst: worst.into_iter().map(|(_, culprit)| culprit).collect(),
         last_good_load_factor,
     }
+}
+
+/// Why water on skins has not settled; `None` if it has.
+pub(super) fn cause_of_pond(net: &Net, ponding: &Ponding) -> Option<Cause> {
+    if ponding.end == PondingEnd::Settled {
+        return None;
+    }
+    let deepest = ponding.ponds.iter().max_by(|a, b| a.depth.total_cmp(&b.depth));
+    let place = deepest.map_or_else(String::new, |pond| match pond.deepest {
+        Place::Node(node) => net.node_name(node).to_owned(),
+        Place::Panel(panel) => net.panels()[panel].name.clone(),
+    });
+    Some(Cause {
+        likely: LikelyCause::Pond {
+            place,
+            depth: deepest.map_or(0.0, |pond| pond.depth),
+            volume: ponding.volume(),
+            growth: ponding.last_growth().unwrap_or((0.0, 0.0)),
+            grows: ponding.end == PondingEnd::Growing,
+            rounds: ponding.volumes.len(),
+        },
+        worst: Vec::new(),
+        members: Vec::new(),
+        last_good_load_factor: 1.0,
+    })
 }
 
 fn culprits(net: &Net, result: &StateResult) -> Vec<(NodeId, Culprit)> {
@@ -378,6 +418,26 @@ impl fmt::Display for LikelyCause {
                         "; slack: {slack}. Try more pull in these, or check the sign of the loads"
                     )
                 }
+            }
+            Self::Pond {
+                place,
+                depth,
+                volume,
+                growth: (last, before),
+                grows,
+                rounds,
+            } => {
+                write!(
+                    f,
+                    "water gathers on the skin, {:.0} mm deep at \"{place}\" and {volume:.3} m3 in all after {rounds} rounds of \
+                     filling; the last round added {last:.3e} m3, the one before {before:.3e} m3",
+                    depth * 1e3
+                )?;
+                f.write_str(if *grows {
+                    ": more water makes more room than it fills, and the pond grows without end"
+                } else {
+                    ": it has not settled"
+                })
             }
             Self::OutOfIterations => f.write_str(
                 "the iteration ended before the forces were in balance: allow more, or put the load on in steps",

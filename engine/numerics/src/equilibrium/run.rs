@@ -19,7 +19,7 @@ const RUNS_AWAY: f64 = 1e3;
 /// allows a node along all three.
 const HIDDEN_BY_ROUNDING: f64 = 5e-5;
 
-fn anchor_entries(structure: &Structure, anchors: &[Anchor]) -> Vec<(usize, f64)> {
+pub(super) fn anchor_entries(structure: &Structure, anchors: &[Anchor]) -> Vec<(usize, f64)> {
     let mut entries = Vec::new();
     for anchor in anchors {
         let first = structure.dofs().first(anchor.node);

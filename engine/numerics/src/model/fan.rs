@@ -41,6 +41,34 @@ pub(crate) fn triangle_changes(corners: &[Vector3<f64>], moved: &[Vector3<f64>])
         .collect()
 }
 
+/// The transpose of [`triangle_changes`]: what gives with any movement of the corners the same product as `weights` with the
+/// changes of the triangles.
+#[must_use]
+pub(crate) fn triangle_changes_transposed(corners: &[Vector3<f64>], weights: &[Vector3<f64>]) -> Vec<Vector3<f64>> {
+    let n = corners.len();
+    let mean = corners.iter().sum::<Vector3<f64>>() / n as f64;
+    let mut result = vec![Vector3::zeros(); n];
+    for k in 0..n {
+        let next = (k + 1) % n;
+        let (a, b) = (corners[k] - mean, corners[next] - mean);
+        result[k] += 0.5 * b.cross(&weights[k]);
+        result[next] += 0.5 * weights[k].cross(&a);
+    }
+    let of_mean = result.iter().sum::<Vector3<f64>>() / n as f64;
+    result.iter_mut().for_each(|r| *r -= of_mean);
+    result
+}
+
+/// The transpose of [`to_corners`]: what of the corners comes from each triangle.
+#[must_use]
+pub(crate) fn from_corners(corners: &[Vector3<f64>]) -> Vec<Vector3<f64>> {
+    let n = corners.len();
+    let of_mean = corners.iter().sum::<Vector3<f64>>() / (3.0 * n as f64);
+    (0..n)
+        .map(|k| (corners[k] + corners[(k + 1) % n]) / 3.0 + of_mean)
+        .collect()
+}
+
 /// What of the triangles goes to each corner.
 #[must_use]
 pub fn to_corners<T>(triangles: &[T]) -> Vec<T>
@@ -137,6 +165,22 @@ mod tests {
         for k in 0..5 {
             assert!(((after[k] - before[k]) / (2.0 * step) - changes[k]).norm() < 1e-9);
         }
+    }
+
+    #[test]
+    fn transposes_give_the_same_products() {
+        let corners = corners();
+        let vectors = |a: f64| -> Vec<Vector3<f64>> {
+            let one = |k: i32| Vector3::new((a * f64::from(k)).cos(), a - f64::from(k), (a + f64::from(k)).sin());
+            (0..5).map(one).collect()
+        };
+        let dot = |a: &[Vector3<f64>], b: &[Vector3<f64>]| -> f64 { a.iter().zip(b).map(|(a, b)| a.dot(b)).sum() };
+        let (moved, weights) = (vectors(0.7), vectors(1.9));
+        let forward = dot(&weights, &triangle_changes(&corners, &moved));
+        let backward = dot(&triangle_changes_transposed(&corners, &weights), &moved);
+        assert!((forward - backward).abs() < 1e-12 * forward.abs());
+        let forward = dot(&weights, &to_corners(&moved));
+        assert!((forward - dot(&from_corners(&weights), &moved)).abs() < 1e-12 * forward.abs());
     }
 
     #[test]

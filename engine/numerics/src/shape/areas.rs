@@ -52,6 +52,34 @@ impl ShapeLoads {
         }
     }
 
+    /// Adds the transposed derivative of these loads, times `forces`, to `change`.
+    pub(super) fn add_panel_changes_transposed(
+        &self,
+        net: &Net,
+        point: &Point,
+        forces: &[Vector3<f64>],
+        change: &mut [Vector3<f64>],
+    ) {
+        for (panel, per_area, per_plan_area) in self.loaded_panels(net) {
+            let corners = panel.places(&point.positions);
+            let areas = fan::triangles(&corners);
+            let up = areas.iter().map(|a| a.z).sum::<f64>().signum();
+            let weights: Vec<Vector3<f64>> = areas
+                .iter()
+                .zip(fan::from_corners(&panel.places(forces)))
+                .map(|(a, force)| {
+                    let size = a.norm();
+                    let along = if size > 0.0 { a / size } else { Vector3::zeros() };
+                    along * per_area.dot(&force) + Vector3::z() * (up * per_plan_area.dot(&force))
+                })
+                .collect();
+            let back = fan::triangle_changes_transposed(&corners, &weights);
+            for (corner, back) in panel.corners.iter().zip(back) {
+                change[corner.index()] += back;
+            }
+        }
+    }
+
     fn loaded_panels<'a>(
         &'a self,
         net: &'a Net,

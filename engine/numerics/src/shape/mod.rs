@@ -28,3 +28,4 @@ pub use find::{find, first_shape};
 pub use gate::Found;
 pub use given::{Adjustable, Prestress, PrestressRule, SagMeasure, ShapeTarget, Wish};
 pub use report::{BalanceReport, Fight, Quantity, ShapeReport, Target, Unmet, WITHIN};
+pub use surface::gives_surface;

@@ -337,6 +337,7 @@ fn load_change_transposed(
         change[i] -= along;
         change[j] += along;
     }
+    loads.add_panel_changes_transposed(net, point, &nodal, &mut change);
     let mut components = vec![0.0; structure.n_dofs()];
     structure.dofs().components_into(&change, &mut components);
     components

@@ -16,6 +16,12 @@ use nalgebra::{DMatrix, DVector, Vector2, Vector3};
 /// Singular values of the monomials at the points below this share of the largest count as zero.
 const RANK: f64 = 1e-6;
 
+/// Whether scattered points give a surface over plan: three or more, not on one line.
+#[must_use]
+pub fn gives_surface(points: &[Vector3<f64>]) -> bool {
+    Surface::new(points).is_some()
+}
+
 /// The surface.
 #[derive(Clone, Debug, PartialEq)]
 pub(super) struct Surface {

@@ -45,6 +45,7 @@ mod solving;
 mod stretch;
 mod supports;
 mod surface;
+mod targets;
 mod wish;
 mod work;
 

@@ -1,9 +1,10 @@
 //! What is wanted of each segment: the narrowest rule wins.
 
 use ropewalk_api::ropewalk::v1;
+use ropewalk_api::ropewalk::v1::adjust::Unknowns;
 use ropewalk_api::ropewalk::v1::prestress_rule::Rule;
 use ropewalk_numerics::model::NodeId;
-use ropewalk_numerics::shape::{Prestress, PrestressRule};
+use ropewalk_numerics::shape::{Adjustable, Prestress, PrestressRule};
 
 use super::actions::Actions;
 use super::findings::{Findings, Path};
@@ -14,7 +15,8 @@ use super::resolved::Resolved;
 use super::scope::{MEMBERS, Narrowness, Scopes, tell_repeated};
 use super::sections::Sections;
 use super::supports::Supports;
-use super::wish::{check_wish, in_words, read_part};
+use super::targets::Readers;
+use super::wish::{check_adjust, check_wish, in_words, read_part};
 use crate::words::{Quoted, quoted_list};
 
 /// A rule that covers a segment, and the family of segments that shares a mean tension under it.
@@ -64,8 +66,15 @@ pub(crate) fn read(
     rules.tell_in_force(context, resolved);
     rules.check_balance(&hold, context, findings);
     rules.check_coordinates(context, findings);
-    read.hold = hold.into_iter().map(NodeId::new).collect();
     rules.resolve(context, &mut read, findings);
+    rules.check_adjustable(findings);
+    let readers = Readers {
+        context,
+        hold: &hold,
+        on_balance: &|segment| rules.is_on_balance(segment),
+    };
+    read.targets = readers.read(&prestress.targets, findings, resolved);
+    read.hold = hold.into_iter().map(NodeId::new).collect();
     read
 }
 
@@ -213,6 +222,7 @@ impl<'m> Rules<'m> {
             }
         }
         check_wish(rule, &covered, at, net, findings);
+        check_adjust(rule, at, findings);
         for (segments, narrowness) in covered {
             let family = self.n_families;
             self.n_families += 1;
@@ -339,12 +349,35 @@ impl<'m> Rules<'m> {
         }
     }
 
+    fn is_on_balance(&self, segment: usize) -> bool {
+        self.of_segment[segment]
+            .is_some_and(|wish| matches!(self.message.rules[wish.rule].rule, Some(Rule::Balance(_))))
+    }
+
+    /// Targets need force densities that may change.
+    fn check_adjustable(&self, findings: &mut Findings) {
+        let may_change = |rule: &v1::PrestressRule| {
+            let wanted = matches!(
+                rule.rule,
+                Some(Rule::TensionN(_) | Rule::MeanTensionN(_) | Rule::ShareOfBreaking(_))
+            );
+            wanted || rule.adjust.is_some()
+        };
+        let mut in_force = self.of_segment.iter().flatten().map(|wish| wish.rule);
+        if !self.message.targets.is_empty() && !in_force.any(|rule| may_change(&self.message.rules[rule])) {
+            findings.error(
+                reasons::NOTHING_ADJUSTABLE,
+                &Path::root("prestress.targets"),
+                "",
+                "there are targets, and no rule lets the search change a force density",
+                "give rules with force_density_n_per_m an adjust {}",
+            );
+        }
+    }
+
     fn check_balance(&self, hold: &[usize], context: &Context<'_, '_>, findings: &mut Findings) {
         let net = context.net;
-        let on_balance = |segment: usize| {
-            self.of_segment[segment]
-                .is_some_and(|wish| matches!(self.message.rules[wish.rule].rule, Some(Rule::Balance(_))))
-        };
+        let on_balance = |segment: usize| self.is_on_balance(segment);
         if self.message.hold.is_empty() {
             if let Some(segment) = (0..net.segments.len()).find(|segment| on_balance(*segment)) {
                 let rule = self.of_segment[segment].map_or(0, |wish| wish.rule);
@@ -421,6 +454,7 @@ impl<'m> Rules<'m> {
     fn resolve(&self, context: &Context<'_, '_>, read: &mut Prestress, findings: &mut Findings) {
         let list = Path::root("prestress.rules");
         let mut families: Vec<Option<usize>> = vec![None; self.n_families];
+        let mut together: Vec<Option<usize>> = vec![None; self.message.rules.len()];
         let mut told = vec![false; self.message.rules.len()];
         for (segment, wish) in self.of_segment.iter().enumerate() {
             let (Some(wish), false) = (wish, self.tied[segment]) else {
@@ -429,7 +463,24 @@ impl<'m> Rules<'m> {
                 continue;
             };
             let rule = match self.message.rules[wish.rule].rule {
-                Some(Rule::ForceDensityNPerM(density)) => PrestressRule::ForceDensity(density),
+                Some(Rule::ForceDensityNPerM(density)) => match &self.message.rules[wish.rule].adjust {
+                    None => PrestressRule::ForceDensity(density),
+                    Some(adjust) => {
+                        let known = match adjust.unknowns {
+                            None | Some(Unknowns::EachMember(_)) => &mut families[wish.family],
+                            Some(Unknowns::Together(_)) => &mut together[wish.rule],
+                            Some(Unknowns::EachSegment(_)) => &mut None,
+                        };
+                        PrestressRule::Adjustable(*known.get_or_insert_with(|| {
+                            read.adjustables.push(Adjustable {
+                                density,
+                                least: adjust.least_n_per_m.unwrap_or(0.0),
+                                most: adjust.most_n_per_m.unwrap_or(f64::INFINITY),
+                            });
+                            read.adjustables.len() - 1
+                        }))
+                    }
+                },
                 Some(Rule::TensionN(tension)) => PrestressRule::Tension(tension),
                 Some(Rule::MeanTensionN(tension)) => {
                     let family = *families[wish.family].get_or_insert_with(|| {

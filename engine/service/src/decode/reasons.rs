@@ -104,6 +104,20 @@ reasons! {
     NO_BREAKING_FORCE,
     /// Nodes without coordinates that no shape search finds.
     NO_COORDINATES,
+    /// A target that wants nothing.
+    TARGET_WITHOUT_WISH,
+    /// A target for a node that the shape search does not place.
+    TARGET_NOT_FREE,
+    /// A force wanted of a member on balance.
+    TARGET_ON_BALANCE,
+    /// Targets, but no rule whose force density may be adjusted.
+    NOTHING_ADJUSTABLE,
+    /// A rule that cannot be adjusted, or whose bounds exclude its own force density.
+    NOT_ADJUSTABLE,
+    /// A node that is not between the ends of its chord.
+    NOT_BETWEEN,
+    /// Points that give no surface over plan.
+    NO_SURFACE,
     /// A load moves a node that has no support.
     MOVE_WITHOUT_SUPPORT,
     /// A load moves a support along a direction in which it is free.
@@ -120,6 +134,8 @@ reasons! {
     BAD_OUTLINE,
     /// A load gives different coefficients to a panel that lies in several zones.
     ZONES_CONTRADICT,
+    /// A case asks for ponding and for a path.
+    PONDING_WITH_PATH,
     /// A load needs a diameter that a section does not give.
     NO_DIAMETER,
     /// A prestress share takes away all of the tension.
@@ -196,6 +212,8 @@ reasons! {
     LOOSE_NODES,
     /// Ropes that are slack in the reference state.
     SLACK_IN_REFERENCE,
+    /// Not everything wanted of the reference state can be met: it is the nearest that balances.
+    TARGETS_UNMET,
     /// Tension above the breaking force in a solved state.
     OVER_BREAKING,
     /// A movement so large that units or loads are to be doubted.
@@ -216,6 +234,7 @@ reasons! {
 pub const OF_RESULTS: &[&str] = &[
     LOOSE_NODES,
     SLACK_IN_REFERENCE,
+    TARGETS_UNMET,
     OVER_BREAKING,
     LARGE_MOVEMENT,
     PANELS_WITHOUT_VALUE,

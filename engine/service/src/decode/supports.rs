@@ -39,6 +39,14 @@ pub(crate) struct Supports {
 }
 
 impl Supports {
+    /// Whether a node cannot move at all.
+    pub(crate) fn holds(&self, node: usize) -> bool {
+        !self.is_elastic[node]
+            && self.of_node[node]
+                .as_ref()
+                .is_some_and(|support| support.released.is_empty())
+    }
+
     pub(crate) fn read(net: &NetDraft<'_>, findings: &mut Findings) -> Self {
         let mut supports = Self {
             of_node: vec![None; net.nodes.len()],

@@ -6,7 +6,9 @@ use ropewalk_api::ropewalk::v1::prestress_rule::Rule;
 use super::findings::{Findings, Path};
 use super::names::Thing;
 use super::net::{MemberDraft, NetDraft};
-use super::numbers::{FORCE_DENSITY, MEAN_TENSION, Of, Quantity, SHARE_OF_BREAKING, TENSION, UNSTRESSED_LENGTH};
+use super::numbers::{
+    FORCE_DENSITY, FORCE_DENSITY_BOUND, MEAN_TENSION, Of, Quantity, SHARE_OF_BREAKING, TENSION, UNSTRESSED_LENGTH,
+};
 use super::reasons;
 use super::scope::Narrowness;
 use super::stretch::{Stretch, stretch};
@@ -131,9 +133,65 @@ pub(super) fn check_wish(
     }
 }
 
+/// Checks that a rule may be adjusted, and that its bounds leave its own force density in.
+pub(super) fn check_adjust(rule: &v1::PrestressRule, at: &Path<'_>, findings: &mut Findings) {
+    let Some(adjust) = &rule.adjust else {
+        return;
+    };
+    let at = at.field("adjust");
+    let Some(Rule::ForceDensityNPerM(density)) = rule.rule else {
+        findings.error(
+            reasons::NOT_ADJUSTABLE,
+            &at,
+            "",
+            "only a rule with a force density can be adjusted: the others say what is to be met",
+            "give force_density_n_per_m to start from, and the tension as a target",
+        );
+        return;
+    };
+    let of = Of::new("prestress rule", "");
+    for (field, bound, wrong, side) in [
+        (
+            "least_n_per_m",
+            adjust.least_n_per_m,
+            density.abs() < adjust.least_n_per_m.unwrap_or(0.0),
+            "below",
+        ),
+        (
+            "most_n_per_m",
+            adjust.most_n_per_m,
+            density.abs() > adjust.most_n_per_m.unwrap_or(f64::INFINITY),
+            "above",
+        ),
+    ] {
+        let field = at.field(field);
+        let Some(bound) = bound.and_then(|bound| findings.number(&field, of, &FORCE_DENSITY_BOUND, bound)) else {
+            continue;
+        };
+        if wrong {
+            findings
+                .error(
+                    reasons::NOT_ADJUSTABLE,
+                    &field,
+                    "",
+                    format!(
+                        "the force density {} N/m, where the search starts, is {side} its bound {} N/m",
+                        number(density.abs()),
+                        number(bound)
+                    ),
+                    "start within the bounds",
+                )
+                .value(number(bound));
+        }
+    }
+}
+
 /// A wish in words.
 pub(super) fn in_words(rule: &v1::PrestressRule) -> String {
     match rule.rule {
+        Some(Rule::ForceDensityNPerM(value)) if rule.adjust.is_some() => {
+            format!("force density {} N/m, adjusted to targets", number(value))
+        }
         Some(Rule::ForceDensityNPerM(value)) => format!("force density {} N/m", number(value)),
         Some(Rule::TensionN(value)) => format!("tension {} N in every segment", number(value)),
         Some(Rule::MeanTensionN(value)) => format!("mean tension {} N", number(value)),

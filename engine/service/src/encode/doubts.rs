@@ -3,6 +3,7 @@
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::{LITTLE_LEFT, Standing, StateResult};
 use ropewalk_numerics::model::{Net, SegmentId};
+use ropewalk_numerics::shape::ShapeReport;
 
 use crate::decode::{Work, reasons};
 use crate::words::{Quoted, force, length, quoted_list, rounded};
@@ -45,6 +46,30 @@ pub(super) fn finding(
         cure: cure.to_owned(),
         ..v1::Finding::default()
     }
+}
+
+/// The doubt that not everything wanted of the reference state is met.
+pub(super) fn targets_unmet(work: &Work, report: &ShapeReport) -> Option<v1::Finding> {
+    let message = report.unmet_in_words()?;
+    let worst = &report.targets[*report.ranked().first()?];
+    let mut finding = finding(
+        v1::FindingSeverity::Doubt,
+        reasons::TARGETS_UNMET,
+        &worst.on,
+        rounded(worst.found, 4),
+        message,
+        "take the nearest balanced set as it is, drop one of the wishes or give it less weight, let more be adjusted, or \
+         leave some members to balance {}",
+    );
+    finding.path = worst.name.as_ref().map_or_else(String::new, |name| target_path(name));
+    finding.case = crate::decode::REFERENCE.to_owned();
+    work.accept(&mut finding);
+    Some(finding)
+}
+
+/// Place of a target in the brief.
+pub(super) fn target_path(name: &str) -> String {
+    format!("prestress.targets[{name}]")
 }
 
 fn loose_nodes(net: &Net, state: &StateResult) -> Option<v1::Finding> {

@@ -50,6 +50,22 @@ pub(super) fn of_stop(case: &str, termination: Termination, load_factor: f64, ca
     failure(reason, message, &cure_of(&cause.likely), &nodes, &cause.members)
 }
 
+/// Why the state of a case is no answer although it is in balance: its water has not settled.
+pub(super) fn of_pond(case: &str, cause: &Cause) -> v1::Failure {
+    let grows = matches!(cause.likely, LikelyCause::Pond { grows: true, .. });
+    let (reason, what) = if grows {
+        ("POND_GROWS", "is not stable under water")
+    } else {
+        ("POND_NOT_SETTLED", "has no answer with water")
+    };
+    let place = match &cause.likely {
+        LikelyCause::Pond { place, .. } => vec![place.as_str()],
+        _ => Vec::new(),
+    };
+    let message = format!("case {} {what}: {cause}", Quoted(case));
+    failure(reason, message, &cure_of(&cause.likely), &place, &cause.members)
+}
+
 /// Why no state of a case can be given.
 pub(super) fn of_error(case: &str, error: &SolveError, cause: &Cause) -> v1::Failure {
     let reason = match error {
@@ -82,6 +98,12 @@ fn cure_of(likely: &LikelyCause) -> String {
         LikelyCause::MuchSlack { .. } => "give more prestress there, or less load",
         LikelyCause::RanAway => "check size and sign of the loads, and what holds these nodes",
         LikelyCause::Tips { .. } => "give more prestress, or check the sign of the loads",
+        LikelyCause::Pond { grows: true, .. } => {
+            "give the skin more fall or the ropes more prestress, so that water runs off"
+        }
+        LikelyCause::Pond { grows: false, .. } => {
+            "the pond is near to growing without end: give the skin more fall or the ropes more prestress"
+        }
         LikelyCause::OutOfIterations => "allow more iterations in solving.max_iterations, or put the load on in steps",
     };
     cure.to_owned()

@@ -24,7 +24,8 @@ pub fn freeze(
     plan: &Plan,
     found: &Result<ReferenceOutcome, ShapeError>,
 ) -> Result<Vec<v1::FreezeResponse>, String> {
-    let summary = outcome::reference_summary(plan, found);
+    let history = found.as_ref().map_or(&[][..], |reference| &reference.history);
+    let summary = outcome::reference_summary(work, plan, found, history);
     let reference = match found {
         Ok(reference) if reference.result.audit.passed => reference,
         Ok(_) => {
@@ -41,6 +42,7 @@ pub fn freeze(
         digest: digest(&frozen),
         reference: Some(summary),
         cautions: cautions::of_net(work, &plan.brief().net),
+        findings: outcome::reference_findings(work, plan, found),
     };
     let parts = merging_parts(frozen).into_iter().map(Part::Brief);
     let parts = parts.chain([Part::Summary(closing)]);
@@ -56,6 +58,8 @@ fn frozen_brief(work: &Work, net: &Net, reference: &ReferenceOutcome) -> v1::Bri
     }
     let prestress = brief.prestress.get_or_insert_with(v1::Prestress::default);
     prestress.hold.clear();
+    // They are met as closely as they can be; from here on lengths are kept.
+    prestress.targets.clear();
     prestress.rules = rules(net, &reference.state.unstressed_lengths);
     brief.frozen_from = Some(v1::FrozenFrom {
         digest: work.digest.clone(),
@@ -203,7 +207,7 @@ fn merging_parts(mut brief: v1::Brief) -> Vec<v1::Brief> {
             })+
         };
     }
-    take!(actions, cases, checks, accepted);
+    take!(actions, combinations, cases, checks, accepted);
     parts[0] = brief;
     parts
 }

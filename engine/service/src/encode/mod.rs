@@ -6,6 +6,8 @@
 //! | `head` | what is about to run: sizes, settings, tables of ids |
 //! | `progress` | what is being worked on |
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
+//! | `shape` | how the reference state meets what was wanted |
+//! | `certificate` | how far a state can be from the true one |
 //! | `surface` | panels, and what each action does in the reference state |
 //! | `effects` | sums of effects, paths of cases, losses of members |
 //! | `diagnosis` | free movements, states of self-stress, least stiffnesses |
@@ -17,6 +19,7 @@
 
 mod anchors;
 mod cautions;
+mod certificate;
 mod closing;
 mod diagnosis;
 mod doubts;
@@ -29,6 +32,7 @@ mod parts;
 mod progress;
 mod report;
 mod rules;
+mod shape;
 mod sizing;
 mod state;
 mod surface;

@@ -154,12 +154,12 @@ async fn find_reference(
     let mut pending = work.shared.pool.start(move || {
         let _place = place;
         break_on_purpose(breaks);
+        let mut history = Vec::new();
         let found = clock.time(|| {
-            about
-                .plan
-                .reference(&mut |report| desk_there.observe(&about, Task::Reference, report, &stop))
+            let observe = &mut |report: &_| desk_there.observe(&about, Task::Reference, report, &stop);
+            about.plan.reference_with_history(&mut history, observe)
         });
-        let messages = encode::reference(&about.work, &about.plan, &found);
+        let messages = encode::reference(&about.work, &about.plan, &found, &history);
         let tally = encode::Tally::new(&about.plan, &cases, &found);
         (messages, tally, found.ok().map(Arc::new))
     });

@@ -1,5 +1,6 @@
 //! Briefs from end to end.
 
+mod effects;
 mod outcomes;
 mod sizing;
 mod worked_numbers;

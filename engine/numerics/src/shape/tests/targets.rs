@@ -360,6 +360,11 @@ fn derivatives_of_targets() {
     sketch.cable("three", section(3e5, 7.0), "p r");
     sketch.cable("tie", section(3e4, 1.0), "q Z");
     sketch.strut("post", section(1e6, 3.0), "p", "r");
+    let corners = ["A", "p", "q", "r"].map(|name| sketch.id(name)).to_vec();
+    sketch.given.panels.push(crate::model::PanelGiven {
+        name: "panel".to_owned(),
+        corners,
+    });
     let net = Arc::new(sketch.net());
     let n = |name: &str| node(&net, name);
     let mut rules = vec![PrestressRule::Adjustable(0); 3];
@@ -432,7 +437,9 @@ fn derivatives_of_targets() {
         loads: vec![own_weight(), plan, down(n("p"), 700.0)],
     };
     let parts = Parts::new(&net, &prestress).expect("good rules");
-    let loads = ShapeLoads::new(&net, &[action], &[0]).expect("dead loads");
+    let mut loads = ShapeLoads::new(&net, &[action], &[0]).expect("dead loads");
+    loads.per_area = vec![Vector3::new(0.0, 3.0, -60.0)];
+    loads.per_plan_area = vec![Vector3::new(2.0, 0.0, -90.0)];
     let rows = Rows::new(&net, &parts, &prestress).expect("good targets");
     let analysis = Analysis::new(Arc::clone(&net));
     let mut observe = |_: &crate::equilibrium::IterationReport| ControlFlow::Continue(());
