@@ -10,6 +10,7 @@ use crate::brief_file::{self, Complaint};
 use crate::end::{End, Stop};
 use crate::engine::Engine;
 use crate::escape::file_name;
+use crate::number::counted;
 use crate::progress::Watch;
 use crate::run::{Collector, Run};
 use crate::{files, refusal, say, sheet};
@@ -213,13 +214,13 @@ pub(crate) async fn check(url: Option<&str>, briefs: &[PathBuf], values: bool) -
     let totals = report.totals.clone().unwrap_or_default();
     if let Some(sizes) = totals.sizes {
         text.push_str(&format!(
-            "{} nodes, {} segments, {} cables, {} struts, {} supports; {} cases in about {:.1} s, {:.1} MB\n",
-            sizes.nodes,
-            sizes.segments,
-            sizes.cables,
-            sizes.struts,
-            sizes.supports,
-            totals.cases,
+            "{}, {}, {}, {}, {}; {} in about {:.1} s, {:.1} MB\n",
+            counted(sizes.nodes as usize, "node"),
+            counted(sizes.segments as usize, "segment"),
+            counted(sizes.cables as usize, "cable"),
+            counted(sizes.struts as usize, "strut"),
+            counted(sizes.supports as usize, "support"),
+            counted(totals.cases as usize, "case"),
             totals.seconds,
             // Sizes of streams are far below 2^52 bytes.
             totals.bytes as f64 / 1e6

@@ -77,6 +77,15 @@ pub(crate) fn order(number: f64) -> String {
     }
 }
 
+/// So many of something: "1 case", "3 cases".
+pub(crate) fn counted(count: usize, noun: &str) -> String {
+    if count == 1 {
+        format!("1 {noun}")
+    } else {
+        format!("{count} {noun}s")
+    }
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;

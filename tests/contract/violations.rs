@@ -426,6 +426,16 @@ fn ids() {
 }
 
 #[test]
+fn a_bad_id_names_its_character() {
+    let reading = reading(&changed(first_net(), &[("/id", json!("a/b"))]));
+    let finding = told(&reading, Error, "BAD_ID", "id");
+    assert_eq!(
+        finding.message,
+        "the id \"a/b\" has the character \"/\", which ids must not have"
+    );
+}
+
+#[test]
 fn names_of_nothing_and_what_was_meant() {
     for (pointer, value, path, meant) in [
         ("/net/cables/1/role", json!("rop"), "net.cables[bracing].role", "rope"),

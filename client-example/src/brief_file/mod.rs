@@ -153,6 +153,10 @@ fn encode(file: &str, text: &str) -> Result<Vec<u8>, Vec<Complaint>> {
     };
     // Some editors put a mark in front of UTF-8; it means nothing.
     let text = text.strip_prefix('\u{feff}').unwrap_or(text);
+    if text.trim().is_empty() {
+        let message = "is empty: a brief is a JSON object, with its id and its net at least";
+        return Err(vec![complaint(String::new(), message.to_owned())]);
+    }
     let mut reader = serde_json::Deserializer::from_str(text);
     let tree = Tree::deserialize(&mut reader)
         .and_then(|tree| reader.end().map(|()| tree))

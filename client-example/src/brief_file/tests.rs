@@ -147,3 +147,14 @@ fn every_shipped_brief_is_read_and_written_back_alike() {
     }
     assert!(count >= 5, "{count} briefs");
 }
+
+#[test]
+fn says_that_a_file_is_empty() {
+    for text in ["", " \n", "\u{feff}"] {
+        let found = complaint(text);
+        assert!(
+            found.starts_with("b.json: is empty: a brief is a JSON object"),
+            "{found}"
+        );
+    }
+}

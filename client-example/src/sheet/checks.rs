@@ -46,6 +46,15 @@ pub(super) fn shown_unit(unit: &str) -> (&str, f64) {
     }
 }
 
+/// How much of the limit is used; a rope whose tension grew everywhere uses nothing of what may be lost.
+fn used(result: &v1::CheckResult) -> Cell {
+    if result.kind == "slackness" && result.ratio < 0.0 {
+        Cell::text("none: grew")
+    } else {
+        Cell::percent(result.ratio)
+    }
+}
+
 fn row(result: &v1::CheckResult) -> Row {
     let (unit, scale) = shown_unit(&result.unit);
     let judged = result.judged > 0;
@@ -74,7 +83,7 @@ fn row(result: &v1::CheckResult) -> Row {
             when_judged(Cell::three(result.demand * scale)),
             Cell::three(result.limit * scale),
             Cell::text(unit),
-            when_judged(Cell::percent(result.ratio)),
+            when_judged(used(result)),
             Cell::text(&result.governing_case),
             Cell::Count(result.judged.into()),
             Cell::Count(result.not_judged.into()),

@@ -2,7 +2,7 @@
 
 use ropewalk_api::ropewalk::v1;
 
-use crate::number::{order, percent, three};
+use crate::number::{counted, order, percent, three};
 use crate::run::Run;
 
 /// A verdict as a word.
@@ -165,12 +165,4 @@ pub(crate) fn proof_line(run: &Run) -> String {
 pub(crate) fn largest_difference(summary: &v1::CaseSummary) -> f64 {
     let pairs = summary.load_sum_n.iter().zip(&summary.support_force_sum_n);
     pairs.map(|(load, support)| (load + support).abs()).fold(0.0, f64::max)
-}
-
-fn counted(count: usize, noun: &str) -> String {
-    if count == 1 {
-        format!("1 {noun}")
-    } else {
-        format!("{count} {noun}s")
-    }
 }

@@ -154,7 +154,7 @@ fn judge_part(
 mod tests {
     use super::*;
     use crate::check::tests_support::{digest, net, positions, reference_forces};
-    use crate::check::{MovementLimit, PullLimits, Verdict};
+    use crate::check::{Base, MovementLimit, PullLimits, Verdict};
     use crate::model::{CableId, NodeId, SegmentId, StrutId};
     use nalgebra::Vector3;
 
@@ -268,6 +268,42 @@ mod tests {
         assert_eq!(result.not_judged, [(Covered::Node(NodeId::new(1)), Lack::Place)]);
         assert_eq!(result.judgements[0].case, Some(1));
         assert!(!result.judgements[0].passes);
+    }
+
+    #[test]
+    fn movement_from_a_case_needs_its_state() {
+        let from_zero = Check {
+            cables: Vec::new(),
+            nodes: vec![NodeId::new(1)],
+            ..check(CheckKind::Movement {
+                limit: MovementLimit::Length(0.02),
+                from: Some(0),
+            })
+        };
+        let found = |base: CaseDigest, digest: &CaseDigest| {
+            let bases = [Base { case: 0, digest: base }];
+            with_against(|against| {
+                let against = Against {
+                    bases: &bases,
+                    ..*against
+                };
+                let mut tally = CheckTally::new(&from_zero, &against);
+                tally.add(&from_zero, &against, 1, digest);
+                tally.finish(&from_zero, Vec::new())
+            })
+        };
+        let mut moved = digest(&[1.0; 3]);
+        moved.positions[1] += Vector3::new(0.0, 0.03, 0.04);
+        let result = found(digest(&[1.0; 3]), &moved);
+        assert!((result.judgements[0].demand - 0.05).abs() < 1e-15 && !result.judgements[0].passes);
+        let lack = |result: CheckResult| result.not_judged[0].1;
+        assert_eq!(lack(found(CaseDigest::default(), &moved)), Lack::Base);
+        // A design effect has no places.
+        moved.positions.clear();
+        assert_eq!(lack(found(digest(&[1.0; 3]), &moved)), Lack::State);
+        let mut loose = digest(&[1.0; 3]);
+        loose.loose_nodes = vec![NodeId::new(1)];
+        assert_eq!(lack(found(loose, &digest(&[1.0; 3]))), Lack::Place);
     }
 
     #[test]

@@ -130,7 +130,9 @@ pub(crate) fn bad_id(findings: &mut Findings, at: &Path<'_>, id: &str) {
     } else if id.chars().count() > 128 {
         format!("has {} characters", id.chars().count())
     } else {
-        "has a character that ids must not have".to_owned()
+        let bad = id.chars().find(|c| !is_id(c.encode_utf8(&mut [0; 4])));
+        let bad = bad.map_or_else(String::new, |c| format!(" {}", Quoted(c.encode_utf8(&mut [0; 4]))));
+        format!("has the character{bad}, which ids must not have")
     };
     findings
         .error(
