@@ -147,7 +147,8 @@ impl<'a> Geometry<'a> {
     ) -> Option<Self> {
         let net = structure.net();
         let counts = |segment: usize| {
-            loading.bars[segment].is_present()
+            // Ropes that slide or hang have no bars.
+            loading.unstressed_lengths[segment] > 0.0
                 && (members == Members::All
                     || net.segments()[segment].law == AxialLaw::TwoWay
                     || axial_forces[segment] > 0.0)
