@@ -2,13 +2,17 @@
 #![allow(clippy::unwrap_used, clippy::print_stdout, reason = "tests")]
 
 use std::ops::ControlFlow;
+use std::sync::Arc;
 
 use nalgebra::{DMatrix, Vector3};
 use ropewalk_numerics::assembly::Loading;
 use ropewalk_numerics::diagnose::mobility::{Members, Mobility, MobilityWay, mobility};
 use ropewalk_numerics::equilibrium::stability::{LeastStiffness, least_stiffnesses};
 use ropewalk_numerics::equilibrium::{Analysis, Settings, Termination, solve};
-use ropewalk_numerics::model::{ElasticSupportGiven, NodeId, SegmentId};
+use ropewalk_numerics::load::{Case, SegmentLoads};
+use ropewalk_numerics::model::{
+    CableGiven, ElasticSupportGiven, Net, NetGiven, NodeGiven, NodeId, SegmentId, Slide, SupportGiven,
+};
 
 #[path = "equilibrium/nets.rs"]
 #[allow(dead_code, reason = "another test uses the rest")]
@@ -373,6 +377,60 @@ fn counts_against_a_dense_eigensolver() {
             "n {n}"
         );
         check_listed(&net, &found);
+    }
+}
+
+/// A weight on a pulley: its rope is one member over both of its segments, so that of three directions two are free, along
+/// the ellipse of equal length and across it. Its pull stiffens both: the pulley hangs at the lowest point.
+#[test]
+fn a_pulley_on_a_rope() {
+    let at = |x: f64, z: f64, held: bool| NodeGiven {
+        name: format!("{x}"),
+        position: Some(Vector3::new(x, 0.0, z)),
+        support: held.then(SupportGiven::default),
+        attached_mass: 0.0,
+    };
+    let section = Example::section(1e6);
+    let net = Arc::new(
+        Net::new(NetGiven {
+            nodes: vec![at(-4.0, 3.0, true), at(0.0, 0.0, false), at(4.0, 3.0, true)],
+            cables: vec![CableGiven {
+                name: "rope".into(),
+                path: [0, 1, 2].map(NodeId::new).to_vec(),
+                sections: vec![section; 2],
+                slides: vec![Slide {
+                    place: 1,
+                    friction: 0.0,
+                }],
+                ..CableGiven::default()
+            }],
+            ..NetGiven::default()
+        })
+        .unwrap(),
+    );
+    let analysis = Analysis::new(Arc::clone(&net));
+    let tension = 5e3;
+    let case = Case {
+        nodal_forces: vec![Vector3::zeros(); 3],
+        unstressed_lengths: vec![10.0 / (1.0 + tension / 1e6)],
+        segments: vec![SegmentLoads::default(); 2],
+        support_movements: vec![Vector3::zeros(); 3],
+        removed: vec![false; 2],
+        ..Case::default()
+    };
+    let loading = Loading::new(analysis.structure(), &case, &case.unstressed_lengths, 1.0).unwrap();
+    let positions: Vec<_> = net.nodes().iter().filter_map(|n| n.position).collect();
+    let found = mobility(&analysis, &loading, &positions, &[tension; 2], Members::All).unwrap();
+    assert_eq!((found.members, found.directions), (1, 3));
+    counts(&found, 0, 2, 0);
+    // By hand: across 2 T / l; along the ellipse 2 T / l (1 - n_x²) with n_x = 4/5.
+    let mut stiffnesses: Vec<f64> = found.mechanisms.iter().map(|m| m.stiffness).collect();
+    stiffnesses.sort_by(f64::total_cmp);
+    for (found, wanted) in stiffnesses
+        .iter()
+        .zip([0.36 * 2.0 * tension / 5.0, 2.0 * tension / 5.0])
+    {
+        assert!((found - wanted).abs() < 1e-6 * wanted, "{stiffnesses:?}");
     }
 }
 

@@ -176,6 +176,8 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
         .max_by(|a, b| a.strain.abs().total_cmp(&b.strain.abs()));
     let odd = plausible::odd_stiffnesses(net);
     let is_spent = solution.termination == Termination::IterationLimit;
+    // Struts, friction and pressure that follows the shape leave the question open.
+    let exists = net.is_pure_tension() && !net.has_friction() && case.pressures.iter().all(|p| *p == 0.0);
     let likely = match (strained, odd.first()) {
         (Some(strained), _) if strained.likely_factor.is_some() => LikelyCause::UnitSlip {
             member: net.member_name(strained.segment).to_owned(),
@@ -196,7 +198,7 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
             slack: n_slack,
             of: n_cable_segments,
         },
-        _ if !net.is_pure_tension() => LikelyCause::Tips {
+        _ if !exists => LikelyCause::Tips {
             slack_cables: slack_cables(None),
             load_sum: case.nodal_forces.iter().sum(),
         },
@@ -204,7 +206,7 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
         _ => LikelyCause::GaveUp,
     };
     // A last state that balances carries its share of the load; one that does not is no good state.
-    let has_good_state = result.audit.passed && !net.is_pure_tension();
+    let has_good_state = result.audit.passed && !exists;
     let last_good_load_factor = if has_good_state { solution.load_factor } else { 0.0 };
     let beyond = (solution.history.iter())
         .map(|report| report.load_factor)
@@ -213,7 +215,7 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
     let is_halved = beyond.clone().any(|factor| factor > stopped_at);
     Cause {
         stopped_at: (has_good_state && is_halved).then_some(stopped_at),
-        exists: net.is_pure_tension() && !net.has_friction() && case.pressures.iter().all(|p| *p == 0.0),
+        exists,
         taken_out: taken_out(net, case),
         likely,
         members: worst_node.map_or_else(Vec::new, |node| members_at(net, node)),

@@ -68,7 +68,7 @@ pub(super) fn diagnose(
     let loading = Loading::new(analysis.structure(), case, &case.unstressed_lengths, 1.0).ok()?;
     let forces = &state.axial_forces;
     let of = |members| mobility(analysis, &loading, &state.positions, forces, members);
-    let is_slack = (state.slack.iter().zip(&loading.bars)).any(|(slack, bar)| *slack && bar.is_present());
+    let is_slack = (state.slack.iter().zip(&case.removed)).any(|(slack, removed)| *slack && !removed);
     let stiffnesses = least_stiffnesses(
         analysis,
         &loading,

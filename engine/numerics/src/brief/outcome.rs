@@ -139,6 +139,10 @@ impl ReferenceOutcome {
 
 /// What came of one case.
 #[derive(Clone, Debug)]
+#[allow(
+    clippy::large_enum_variant,
+    reason = "there is one a case, and nearly all are states"
+)]
 pub enum CaseOutcome {
     /// A state, converged or the last good one; see [`Solution::termination`].
     State {

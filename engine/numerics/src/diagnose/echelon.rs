@@ -12,7 +12,7 @@ pub(super) fn localise(mut vectors: Vec<Vec<f64>>) -> Vec<Vec<f64>> {
     for done in 0..vectors.len() {
         // The largest entry; of those that differ by rounding only, the first one.
         let most = vectors[done..].iter().map(|v| largest(v)).fold(0.0, f64::max);
-        if !(most > ROUNDING * scale) {
+        if most <= ROUNDING * scale {
             vectors.truncate(done);
             break;
         }

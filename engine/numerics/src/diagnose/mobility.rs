@@ -147,7 +147,8 @@ impl<'a> Geometry<'a> {
     ) -> Option<Self> {
         let net = structure.net();
         let counts = |segment: usize| {
-            loading.bars[segment].is_present()
+            // Ropes that slide or hang have no bars.
+            loading.unstressed_lengths[segment] > 0.0
                 && (members == Members::All
                     || net.segments()[segment].law == AxialLaw::TwoWay
                     || axial_forces[segment] > 0.0)
@@ -258,7 +259,7 @@ fn elastic_rows(structure: &Structure) -> Vec<Row> {
         let eigen = elastic.stiffness().clone().symmetric_eigen();
         let largest = eigen.eigenvalues.max();
         for (value, vector) in eigen.eigenvalues.iter().zip(eigen.eigenvectors.column_iter()) {
-            if !(*value > 1e-12 * largest) {
+            if *value <= 1e-12 * largest {
                 continue;
             }
             let mut entries = Vec::new();
@@ -375,7 +376,7 @@ fn null_space(matrix: &DMatrix<f64>) -> Option<(Vec<f64>, DMatrix<f64>)> {
     let values: Vec<f64> = order.iter().map(|i| svd.singular_values[*i]).collect();
     let zero = ZERO_DENSE * values[0];
     let free: Vec<DVector<f64>> = (order.iter().zip(&values))
-        .filter(|(_, value)| !(**value > zero))
+        .filter(|(_, value)| **value <= zero)
         .map(|(i, _)| across.row(*i).transpose())
         .collect();
     let basis = if free.is_empty() {

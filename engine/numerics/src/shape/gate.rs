@@ -37,18 +37,6 @@ pub(super) fn case_under(net: &Net, state: &ReferenceState, actions: &[Action], 
     case
 }
 
-fn audited(analysis: &Analysis, found: &Found) -> audit::Audit {
-    let members = equilibrium::member_states(analysis.structure(), &found.case, &found.state);
-    let Found { case, state, .. } = found;
-    audit::audit_members(
-        analysis.structure().net(),
-        case,
-        &state.positions,
-        &state.axial_forces,
-        &members,
-    )
-}
-
 /// Gives the shape its unstressed lengths and looks whether it stands; corrects it if rounding or a member near slack
 /// keeps it from standing.
 pub(super) fn finish(

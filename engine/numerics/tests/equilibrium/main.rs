@@ -8,6 +8,7 @@ mod held;
 mod nets;
 mod properties;
 mod random;
+mod random_special;
 mod saddle;
 mod special;
 mod struts;
