@@ -355,6 +355,10 @@ fn ending(run: &Run) -> String {
     text.push_str(&sheet::terminal(&sheet::anchor_peaks(run)));
     text.push('\n');
     text.push_str(&sheet::terminal(&sheet::cases(run)));
+    if let Some(sizing) = &run.sizing {
+        let words = sheet::sizing_words(sizing);
+        text.push_str(&format!("\n{}\n{words}\n", sheet::terminal(&sheet::sized(sizing))));
+    }
     for extra in [sheet::shape(run), sheet::losses(run), sheet::effects(run)]
         .into_iter()
         .flatten()
@@ -388,8 +392,9 @@ fn ending(run: &Run) -> String {
         ));
     }
     text.push_str(&format!(
-        "\n{}\n\n{}",
+        "\n{}\n{}\n\n{}",
         wrapped(&sheet::audit_line(run)),
+        wrapped(&sheet::proof_line(run)),
         cautions(&run.summary.cautions)
     ));
     if let Some(timing) = &run.timing {

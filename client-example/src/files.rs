@@ -147,6 +147,9 @@ pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
         sheet::sums(run),
     ];
     // Of interest only where it was asked for.
+    if let Some(sizing) = &run.sizing {
+        sheets.extend([sheet::sized(sizing), sheet::sizing_rounds(sizing)]);
+    }
     if !run.diagnoses.is_empty() {
         sheets.push(sheet::diagnoses(run));
     }

@@ -11,6 +11,7 @@ use v1::run_response::Event;
 
 use crate::briefs::{changed, errors, reading, terrace, work};
 use crate::results::run;
+use crate::surfaces::awning;
 
 const EN: &str = "EN 1993-1-11:2006";
 
@@ -309,6 +310,17 @@ fn checks_that_cannot_be_read() {
             "OUT_OF_RANGE",
             "checks[0].saddle.gamma_m_fr",
         ),
+        // There are no panels.
+        (
+            json!({"drainage": {"min_fall": 0.05}}),
+            "COVERS_NOTHING",
+            "checks[0].on",
+        ),
+        (
+            json!({"drainage": {"min_fall": 0.05}, "on": ["m"]}),
+            "WRONG_KIND",
+            "checks[0].on[0]",
+        ),
         // No rope slides anywhere.
         (
             json!({"saddle": {"friction_coefficient": 0.1}}),
@@ -469,4 +481,23 @@ fn angles_are_told_in_degrees() {
     assert_eq!((result.limit * 1e9).round(), 10e9);
     assert!(result.demand > 10.0 && result.demand < 90.0, "{}", result.demand);
     assert!((result.ratio - (result.demand - 5.0) / 5.0).abs() < 1e-9);
+}
+
+#[test]
+fn panels_are_judged_in_the_reference_state_too() {
+    // West and east are alike; their nodes are held, so that nothing moves. Corners 3, 3, 3 and 4 m high on a square of
+    // 3 m: the mean lies at 3.25 m, the triangles rise by 1 in 6 and by the root of 10 in 6.
+    let check = json!([{"drainage": {"min_fall": 0.2}, "on": ["west"]}]);
+    let (result, _) = result(&changed(awning(), &[("/checks", check)]));
+    assert_eq!((result.judged, result.verdict()), (1, v1::Verdict::Exceeds));
+    assert_eq!(result.governing_case, "reference");
+    assert!((result.demand - 1.0 / 6.0).abs() < 1e-12, "{}", result.demand);
+    assert!((result.ratio - 1.2).abs() < 1e-12);
+    let whole = json!([{"drainage": {"min_fall": 0.1}}, {"clearance": {"point_m": [1.5, 1.5, 3.0], "min_m": 0.2, "height": {}}}]);
+    let (result, summary) = self::result(&changed(awning(), &[("/checks", whole)]));
+    assert_eq!((result.judged, result.verdict()), (2, v1::Verdict::Passes));
+    // The panel stands a quarter of a metre above the point.
+    let clear = &summary.checks[1];
+    assert!((clear.demand - 0.25).abs() < 1e-12, "{clear:#?}");
+    assert_eq!(clear.judgements[0].measure, "height");
 }

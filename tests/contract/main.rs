@@ -3,6 +3,7 @@
 mod absurd;
 mod briefs;
 mod checks;
+mod combinations;
 mod diagnosis;
 mod drafts;
 mod fields;
@@ -12,6 +13,8 @@ mod minimal;
 mod reasons;
 mod results;
 mod sizes;
+mod sizing;
+mod slides;
 mod surfaces;
 mod targets;
 mod violations;

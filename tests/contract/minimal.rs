@@ -64,6 +64,7 @@ fn what_was_left_out_is_told_with_its_origin() {
     assert_eq!(origin("net.sections[r10].mass_kg_per_m", "0"), "default");
     assert_eq!(origin("net.sections[r10].expansion_per_k", "1.2e-5"), "default");
     assert_eq!(origin("solving.tolerance", "1e-10"), "default");
+    assert_eq!(origin("solving.energies", "false"), "default");
     assert_eq!(
         origin("net.nodes[m]", "free, its place is to be found"),
         "net.cables[carrying].nodes"

@@ -9,11 +9,11 @@ use ropewalk_numerics::brief::{CaseOutcome, Cause, Culprit, LikelyCause};
 use ropewalk_numerics::equilibrium::{SolveError, Termination};
 use ropewalk_numerics::model::NodeId;
 use ropewalk_service::decode::Work;
-use ropewalk_service::encode::{Tally, case, closing, engine_error, id_tables, reference, started};
+use ropewalk_service::encode::{Tally, case, closing, design_effect, engine_error, id_tables, reference, started};
 use serde_json::json;
 use v1::run_response::Event;
 
-use crate::briefs::{changed, first_net, found, terrace, work};
+use crate::briefs::{changed, first_net, found, quince_yard, terrace, work};
 
 /// Every event of a run of some cases.
 pub(crate) fn run(work: &Work, cases: &[usize]) -> Vec<Event> {
@@ -33,7 +33,9 @@ pub(crate) fn run(work: &Work, cases: &[usize]) -> Vec<Event> {
             let outcome = plan.case(found, *index, &mut |_| ControlFlow::Continue(()));
             let (said, noted) = case(work, &plan, found, *index, &outcome);
             messages.extend(said);
-            tally.add(*index, &noted);
+            for effect in tally.add(*index, &noted) {
+                messages.extend(design_effect(work, &plan, found, &effect));
+            }
         }
     }
     messages.extend(closing(work, &plan, tally));
@@ -81,6 +83,36 @@ fn closings(events: &[Event]) -> Vec<&v1::CaseSummary> {
         _ => None,
     });
     closings.collect()
+}
+
+/// What is proven is told of every answered state; energies where they are asked for.
+#[test]
+fn certificates_tell_their_energies_on_request_only() {
+    let asked = changed(first_net(), &[("/solving", json!({"energies": true}))]);
+    for (brief, told) in [(first_net(), false), (asked, true)] {
+        let events = run(&work(&brief), &[0]);
+        let closings = closings(&events);
+        assert_eq!(closings.len(), 2);
+        for closing in closings {
+            let certificate = closing.certificate.as_ref().expect("answered");
+            assert!(certificate.certified && certificate.condition.is_empty());
+            assert!(certificate.tension_within_n > 0.0 && certificate.tension_within_n < 1e-3);
+            assert!(["carrying", "bracing"].contains(&certificate.tension_within_member.as_str()));
+            assert!(certificate.position_within_m < 1e-6);
+            assert_eq!(certificate.nodes_without_bound_total, 0);
+            assert_eq!(certificate.gap_j.is_some(), told);
+            assert_eq!(certificate.strain_energy_j.is_some_and(|energy| energy > 0.0), told);
+        }
+    }
+}
+
+#[test]
+fn a_pushing_strut_is_the_condition_of_a_certificate() {
+    let events = run(&work(&quince_yard()), &[]);
+    let reference = closings(&events)[0];
+    let certificate = reference.certificate.as_ref().expect("answered");
+    assert!(certificate.condition.contains("struts"), "{}", certificate.condition);
+    assert!(certificate.certified);
 }
 
 /// Worked numbers of the minimal draft: own Newton solve, stated beside it in the contract's design.
@@ -279,12 +311,23 @@ fn a_case_that_nothing_holds_is_told_by_names() {
         worst: Vec::new(),
         members: vec!["carrying".to_owned()],
         last_good_load_factor: 0.0,
+        stopped_at: None,
+        exists: false,
+        taken_out: vec!["g1".to_owned()],
     };
     let (said, noted) = case(&work, &plan, &found, 0, &CaseOutcome::None { error, cause });
     let closing = closing_of_case(&said);
     assert_eq!(closing.outcome(), v1::CaseOutcome::NoEquilibrium);
     let failure = closing.failure.expect("a failure");
-    assert_eq!(failure.reason, "NOT_HELD");
+    assert_eq!(
+        (failure.reason.as_str(), failure.group.as_str()),
+        ("NOT_HELD", "NOT_HELD/m")
+    );
+    assert!(
+        failure.message.contains("Taken out in this case: \"g1\""),
+        "{}",
+        failure.message
+    );
     assert_eq!(
         (failure.nodes, failure.members),
         (vec!["m".to_owned()], vec!["carrying".to_owned()])
@@ -332,6 +375,9 @@ fn a_case_that_stops_keeps_its_last_state_and_says_where() {
         }],
         members: vec!["bracing".to_owned()],
         last_good_load_factor: 0.6,
+        stopped_at: Some(0.62),
+        exists: false,
+        taken_out: Vec::new(),
     };
     let cause = Some(cause);
     let (said, _) = case(
@@ -361,7 +407,9 @@ fn a_case_that_stops_keeps_its_last_state_and_says_where() {
         "case \"snowed\" made no more headway at 62 % of its load",
         "\"bracing\"",
         "\"m\"",
-        "60 %",
+        "Last good state kept at 60.0 % of the load",
+        "the load tips the net; its sum is 12.4 kN upwards",
+        "gave the same stop, down to 62.0 %",
     ] {
         assert!(failure.message.contains(words), "{words}: {}", failure.message);
     }
@@ -461,4 +509,39 @@ fn the_search_for_the_reference_state_tells_its_iterations() {
         let last = residuals.last().expect("an iteration");
         assert!(*last <= 1e-5, "{state} ends in balance: {residuals:?}");
     }
+}
+
+/// Doubts that need no check: a rope stretched beyond what any bears, and one beyond its breaking force.
+#[test]
+fn states_that_can_not_be_meant_are_doubted() {
+    let doubts = |changes: &[(&str, serde_json::Value)], reason: &str| {
+        let events = run(&work(&changed(first_net(), changes)), &[0]);
+        let found = events.into_iter().filter_map(|event| match event {
+            Event::Finding(finding) if finding.reason == reason => Some(finding),
+            _ => None,
+        });
+        found.collect::<Vec<v1::Finding>>()
+    };
+    let section = "/net/sections/0/";
+    let soft = doubts(&[(&format!("{section}axial_stiffness_n"), json!(65_000))], "UNIT_SLIP");
+    assert_eq!(
+        soft.iter().map(|f| f.case.as_str()).collect::<Vec<_>>(),
+        ["reference", "full-snow"]
+    );
+    // 19.6 kN over 65 kN.
+    assert!(
+        soft[0].message.contains("stretched by 30.2 % with 19.6 kN"),
+        "{}",
+        soft[0].message
+    );
+    let weak = doubts(
+        &[(&format!("{section}breaking_force_n"), json!(22_000))],
+        "OVER_BREAKING",
+    );
+    assert_eq!(weak.iter().map(|f| f.case.as_str()).collect::<Vec<_>>(), ["full-snow"]);
+    assert!(
+        weak[0].message.contains("\"carrying\" would break: 24.8 kN"),
+        "{}",
+        weak[0].message
+    );
 }

@@ -119,10 +119,12 @@ fn state(net: &Net) -> ReferenceOutcome {
         panel_areas: Vec::new(),
         panel_pressures: Vec::new(),
         loose_nodes: (0..nodes).map(NodeId::new).collect(),
+        ponding: None,
         audit: Audit {
             passed: true,
             ..Audit::default()
         },
+        certificate: None,
         diagnosis: None,
     };
     ReferenceOutcome {

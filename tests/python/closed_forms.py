@@ -439,8 +439,92 @@ def balance():
     )
 
 
+# Skins and ropes in the wind ------------------------------------------------------------------------------------------
+
+def clothed(name, load, upwards, **case):
+    """A square of 10 m with a skin, its corners fixed, its middle on four ropes; a third of each panel's load goes there.
+
+    `upwards`: sum of the load (N). The middle moves up or down, so that areas on plan stay: 4 N h / l = P / 3.
+    """
+    l0 = 7.0
+    corners = {"a": (-5, -5), "b": (5, -5), "c": (5, 5), "d": (-5, 5)}
+
+    def resists(h):
+        length = sqrt(50 + h * h)
+        return 4 * EA * (length / l0 - 1) * h / length
+
+    height = np.sign(upwards) * root(1e-3, 5, lambda h: resists(h) - abs(upwards) / 3)
+    given = brief(
+        [node(i, x, y, 0, support={}) for i, (x, y) in corners.items()] + [node("m", 0, 0, 0)],
+        [rope("rim", "a", "b", "c", "d", "a"), *[rope(f"s{i}", i, "m") for i in corners]],
+        [length_of("rim", 10.0)] + [length_of(f"s{i}", l0) for i in corners],
+        loads=[load],
+    )
+    given["net"]["skins"] = [{"id": "cloth", "between": ["rim", "sa", "sb", "sc", "sd"], "mass_kg_per_m2": 1.2}]
+    given["net"]["zones"] = [{"id": "all", "skin": "cloth", "outline_xy_m": [-6, -6, 6, -6, 6, 6, -6, 6]}]
+
+    def vertical(run):
+        return run.cases["case"].summary.load_sum_n[2]
+
+    def lever(run):
+        summary = run.cases["case"].summary
+        return (np.array(summary.load_moment_nm) + np.array(summary.support_moment_nm)) / upwards
+
+    return ClosedForm(
+        name,
+        given,
+        [
+            ("height of the middle (m)", [0, 0, height], at_node("case", "position_m", "m")),
+            ("sum of the load (N)", upwards, vertical),
+            ("moment of loads and supports over the load (m)", [0, 0, 0], lever),
+        ],
+        absolute=1e-7,
+        **case,
+    )
+
+
+def snow():
+    return clothed("load on plan", {"on_plan": {"on": ["cloth"], "pressure_pa": 600}}, -600 * 100)
+
+
+def suction():
+    load = {"on_surface": {"pressure_pa": 500, "coefficients": {"all": -0.9}}}
+    return clothed("load on surface", load, 0.9 * 500 * 100, relative=1e-6)
+
+
+def along_ropes(name, load, force):
+    """A level rope of two reaches of 5 m; half of what each bears goes to its middle."""
+    l0 = 5 / 1.005
+    size = hypot(*force)
+    moved = root(1e-9, 3, lambda d: 2 * EA * (hypot(5, d) / l0 - 1) * d / hypot(5, d) - size)
+    place = [0, moved * force[0] / size, moved * force[1] / size]
+    return ClosedForm(
+        name,
+        brief(
+            [node("A", -5, 0, 0, support={}), node("B", 5, 0, 0, support={}), node("m", 0, 0, 0)],
+            [rope("r", "A", "m", "B")],
+            [length_of("r", l0)],
+            sections=[{"id": "rope", "axial_stiffness_n": EA, "diameter_m": 0.02}],
+            loads=[load],
+        ),
+        [("where the middle goes (m)", place, at_node("case", "position_m", "m"))],
+    )
+
+
+def wind_on_a_rope():
+    wind = {"pressure_pa": 800, "along": [0, 3, 0], "drag_coefficient": 1.1, "on": ["r"]}
+    return along_ropes("load wind on ropes", {"wind_on_ropes": wind}, [800 * 1.1 * 0.02 * 5, 0])
+
+
+def ice_on_a_rope():
+    ring = np.pi * (0.035**2 - 0.01**2)
+    weight = 9.80665 * 900 * ring * 5 / 1.005
+    return along_ropes("load ice", {"ice": {"thickness_m": 0.025, "on": ["r"]}}, [0, -weight])
+
+
 ALL = [
     rigid(), on_a_rail(0.0), sprung(0.0), sprung(0.02), on_a_rail(1.5e6), prescribed_movement(), coupled(),
     nodal(), own_weight(), per_unstressed_length(), per_plan_length(), temperature(), prestress_share(),
     force_density(), tension(), mean_tension(), unstressed_length(), share_of_breaking(), balance(),
+    snow(), suction(), wind_on_a_rope(), ice_on_a_rope(),
 ]

@@ -36,9 +36,11 @@ def _module(name):
 
 
 brief = _module("brief_pb2")
+diagnosis = _module("diagnosis_pb2")
 service = _module("brief_service_pb2")
 service_grpc = _module("brief_service_pb2_grpc")
 result = _module("result_pb2")
+effect = _module("design_effect_pb2")
 finding = _module("finding_pb2")
 server = _module("server_service_pb2")
 server_grpc = _module("server_service_pb2_grpc")

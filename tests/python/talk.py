@@ -30,9 +30,11 @@ class Run:
         self.ids = {}
         self.cases = {}
         self.findings = []
+        self.effects = {}
+        self.losses = []
         self.started = self.summary = self.timing = None
         parts = {}
-        open_case = None
+        open_case = open_effect = None
         for event in self.events:
             kind = event.WhichOneof("event")
             assert self.summary is None, "nothing follows the summary"
@@ -44,11 +46,11 @@ class Run:
                 ids.extend(event.ids.ids)
             elif kind == "case_begin":
                 assert open_case is None, "a case ends before the next begins"
-                open_case = event.case_begin.case
+                open_case, open_effect = event.case_begin.case, None
                 self.cases[open_case] = Case()
             elif kind == "columns":
                 columns = event.columns
-                assert columns.case in (open_case, "envelope")
+                assert columns.case in (open_case, open_effect, "envelope")
                 gathered = parts.setdefault((columns.case, columns.name), [])
                 assert columns.offset == len(gathered), f"{columns.name} has a hole"
                 gathered.extend(columns.values)
@@ -62,6 +64,13 @@ class Run:
                 assert event.case_summary.case == open_case
                 self.cases[open_case].summary = event.case_summary
                 open_case = None
+            elif kind == "design_effect":
+                assert open_case is None, "an effect follows the cases that it needs"
+                open_effect = event.design_effect.id
+                self.effects[open_effect] = event.design_effect
+            elif kind == "loss_table":
+                assert event.loss_table.offset == len(self.losses)
+                self.losses.extend(event.loss_table.rows)
             elif kind == "finding":
                 self.findings.append(event.finding)
             elif kind == "timing":

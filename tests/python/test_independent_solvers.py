@@ -69,3 +69,40 @@ def test_tensions_and_slack_agree(channel, name, net, route, source):
         f"{name}: positions of nodes that are not loose (m)", source,
         x[placed], run.array("reference", "position_m")[net.free[placed]], absolute=1e-5,
     )
+
+
+@pytest.mark.parametrize(
+    ("name", "net", "route"),
+    [
+        ("saddle under half snow", nets.saddle_under_half_snow(), by_cone_program),
+        ("slack hammock", nets.slack_hammock(), by_minimisation),
+    ],
+    ids=["cone-program", "minimisation"],
+)
+def test_the_answer_of_others_is_within_the_certified_bounds(channel, name, net, route):
+    brief = brief_of(net)
+    brief["solving"] = {"energies": True}
+    run = talk.run(channel, brief)
+    certificate = run.cases["reference"].summary.certificate
+    assert certificate.certified
+    assert certificate.condition == ""
+    assert 0.0 <= certificate.gap_j <= 1e-9 * certificate.strain_energy_j
+    x, tension = polish(net, *route(net))
+    # The polish stops at 1e-11 of the largest force; what that leaves it may be off by itself.
+    own = np.abs(net.residual(x)).max() + 4 * np.finfo(float).eps * net.stiffness.max() * np.abs(net.xyz).max()
+    off = np.abs(run.array("reference", "tension_n") - tension).max()
+    print(f"{name}: tensions differ by {off:.1e} N, proven within {certificate.tension_within_n:.1e} N")
+    assert off <= certificate.tension_within_n + 100 * own
+    energy = 0.5 * tension**2 @ (1 / net.stiffness)
+    check(f"{name}: strain energy (J)", "the answer of the other route", energy, certificate.strain_energy_j,
+          relative=1e-9)
+    # No energy that another route finds is below the bound: its own value less that of the engine's answer.
+    found = run.array("reference", "position_m")[net.free]
+
+    def potential(at):
+        return 0.5 * net.tensions(at) ** 2 @ (1 / net.stiffness) - np.sum(net.pull * (at - net.xyz[net.free]))
+
+    rounding = 1e-13 * (certificate.strain_energy_j + np.abs(net.pull * (found - net.xyz[net.free])).sum())
+    assert potential(found) - potential(x) <= certificate.gap_j + rounding
+    loose = set(run.cases["reference"].summary.loose_nodes)
+    assert certificate.nodes_without_bound_total >= len(loose)

@@ -117,7 +117,7 @@ fn force_density(on: &[&str], force_density_n_per_m: f64) -> v1::Prestress {
     }
 }
 
-fn push(id: &str, on: &[&str], down_n: f64) -> v1::Action {
+pub(crate) fn push(id: &str, on: &[&str], down_n: f64) -> v1::Action {
     let kind = LoadKind::Nodes(v1::NodeLoad {
         on: owned(on),
         force_n: vec![0.0, 0.0, down_n],

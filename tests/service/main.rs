@@ -6,6 +6,7 @@ mod admission;
 mod briefs;
 mod client;
 mod drain;
+mod effects;
 mod engine;
 mod faults;
 mod hostile;

@@ -15,6 +15,7 @@
 #![allow(clippy::print_stdout, reason = "the report of a comparison is its printed line")]
 
 mod chains;
+mod checks;
 mod data;
 mod loads;
 mod nets;
@@ -26,3 +27,4 @@ mod scalar;
 mod shapes;
 mod straight;
 mod supports;
+mod surfaces;

@@ -5,12 +5,15 @@ use std::sync::Arc;
 
 use nalgebra::{DMatrix, Vector3};
 use ropewalk_numerics::brief::{
-    Brief, CaseGiven, CaseOutcome, Plan, Prestress, PrestressRule, ReferenceOutcome, StateResult, SupportForce,
+    Brief, CaseGiven, CaseOutcome, Plan, PondingGiven, Prestress, PrestressRule, ReferenceOutcome, StateResult,
+    SupportForce,
 };
+use ropewalk_numerics::check::{Against, CaseDigest, Check, CheckKind, CheckTally, Judgement, Lack};
 use ropewalk_numerics::equilibrium::{Settings, Termination};
 use ropewalk_numerics::load::{Action, Load};
 use ropewalk_numerics::model::{
-    CableGiven, ElasticSupportGiven, Net, NetGiven, NodeGiven, NodeId, Section, StrutGiven, SupportGiven,
+    CableGiven, CableId, ElasticSupportGiven, Member, Net, NetGiven, NodeGiven, NodeId, PanelGiven, Section, Skin,
+    StrutGiven, StrutId, SupportGiven,
 };
 
 /// A net in the making.
@@ -23,6 +26,8 @@ pub(crate) struct Problem {
     hold: Vec<NodeId>,
     under: Vec<Load>,
     case: Vec<Load>,
+    ponding: Option<PondingGiven>,
+    removed: Vec<Member>,
 }
 
 /// What a problem answers.
@@ -125,6 +130,35 @@ impl Problem {
         self.hold.push(node);
     }
 
+    /// A skin of panels, each by its corners counter-clockwise seen from its outer side.
+    pub(crate) fn skin(&mut self, mass_per_area: f64, panels: &[&[NodeId]]) {
+        let first = self.net.panels.len();
+        for corners in panels {
+            self.net.panels.push(PanelGiven {
+                name: format!("p{}", self.net.panels.len()),
+                corners: corners.to_vec(),
+            });
+        }
+        self.net.skins.push(Skin {
+            name: format!("skin{}", self.net.skins.len()),
+            mass_per_area,
+            panels: (first..self.net.panels.len()).collect(),
+        });
+    }
+
+    /// Lets water of this density (kg/m³) gather on skins in the case.
+    pub(crate) fn gather_water(&mut self, density: f64, gravity: f64) {
+        self.ponding = Some(PondingGiven { density, gravity });
+    }
+
+    /// What comes of the case, whether it is an answer or not.
+    #[track_caller]
+    pub(crate) fn outcome(self) -> CaseOutcome {
+        let plan = self.plan();
+        let reference = reference(&plan);
+        plan.case(&reference, 0, &mut |_| ControlFlow::Continue(()))
+    }
+
     /// A dead load that acts in the reference state and in the case.
     pub(crate) fn always(&mut self, load: Load) {
         self.under.push(load);
@@ -135,12 +169,76 @@ impl Problem {
         self.case.push(load);
     }
 
+    /// Takes a rope out, in the case.
+    pub(crate) fn take_out(&mut self, cable: CableId) {
+        self.removed.push(Member::Cable(cable));
+    }
+
     /// A force (N) on one node, in the case.
     pub(crate) fn push_node(&mut self, node: NodeId, x: f64, y: f64, z: f64) {
         self.load(Load::Nodes {
             nodes: vec![node],
             force: Vector3::new(x, y, z),
         });
+    }
+
+    /// A panel by its corners.
+    pub(crate) fn panel(&mut self, corners: &[NodeId]) {
+        self.net.panels.push(PanelGiven {
+            name: format!("p{}", self.net.panels.len()),
+            corners: corners.to_vec(),
+        });
+    }
+
+    /// What a check over the whole net says, with the nodes where they were given and with these axial forces (N) and
+    /// support forces (N): its only part, or its worst.
+    #[track_caller]
+    pub(crate) fn judge(
+        self,
+        kind: CheckKind,
+        nodes: &[NodeId],
+        axial_forces: &[f64],
+        support_forces: &[(NodeId, Vector3<f64>)],
+    ) -> Result<Judgement, Lack> {
+        let net = Net::new(self.net).expect("the net of a case is valid");
+        let positions: Vec<_> = net.nodes().iter().map(|n| n.position.expect("a place")).collect();
+        let mut digest = CaseDigest {
+            answered: true,
+            audited: true,
+            axial_forces: axial_forces.to_vec(),
+            displacements: vec![Vector3::zeros(); positions.len()],
+            positions: positions.clone(),
+            support_forces: vec![None; positions.len()],
+            ..CaseDigest::default()
+        };
+        for (node, force) in support_forces {
+            digest.support_forces[node.index()] = Some(*force);
+        }
+        let of_members = !nodes.is_empty() || matches!(kind, CheckKind::Drainage { .. });
+        let of_struts = matches!(kind, CheckKind::Buckling { .. });
+        let members = |count: usize, wanted: bool| if wanted && !of_members { count } else { 0 };
+        let check = Check {
+            kind,
+            cables: (0..members(net.cables().len(), !of_struts)).map(CableId::new).collect(),
+            struts: (0..members(net.struts().len(), of_struts)).map(StrutId::new).collect(),
+            nodes: nodes.to_vec(),
+            panels: (0..net.panels().len()).collect(),
+            cases: vec![0],
+        };
+        let against = Against {
+            net: &net,
+            axial_forces,
+            positions: &positions,
+            bases: &[],
+        };
+        let mut tally = CheckTally::new(&check, &against);
+        tally.add(&check, &against, 0, &digest);
+        let result = tally.finish(&check, Vec::new());
+        match (result.worst(), result.not_judged.first()) {
+            (_, Some((_, lack))) => Err(*lack),
+            (Some(worst), None) => Ok(*worst),
+            (None, None) => panic!("the check covers nothing"),
+        }
     }
 
     /// Solves to the rounding floor of the input: the published digits are compared, not the tolerance at which a user's
@@ -150,7 +248,7 @@ impl Problem {
     /// and tensions: what is compared is a state in balance.
     #[track_caller]
     pub(crate) fn solve(self) -> Answer {
-        let has_case = !self.case.is_empty();
+        let has_case = !self.case.is_empty() || self.ponding.is_some();
         let plan = self.plan();
         let reference = reference(&plan);
         let state = if has_case {
@@ -188,6 +286,8 @@ impl Problem {
             cases: vec![CaseGiven {
                 name: "case".to_owned(),
                 factors: vec![(0, 1.0), (1, 1.0)],
+                ponding: self.ponding,
+                removed: self.removed,
                 ..CaseGiven::default()
             }],
             effects: Vec::new(),

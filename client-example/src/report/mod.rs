@@ -96,7 +96,7 @@ fn head(run: &Run) -> String {
         "<header>\n<p class=\"over\">{}</p>\n<h1>{}</h1>\n{note}\n\
          <div class=\"verdict {class}\"><strong>{}</strong><span>{}</span></div>\n\
          <dl class=\"facts\">{}{}{}{}<div><dt>nodes</dt><dd>{}</dd></div><div><dt>segments</dt><dd>{}</dd></div></dl>\n\
-         <p class=\"audit\">{}</p>\n<nav id=\"contents\" class=\"contents\" aria-label=\"Contents\"></nav>\n</header>\n",
+         <p class=\"audit\">{}<br>{}</p>\n<nav id=\"contents\" class=\"contents\" aria-label=\"Contents\"></nav>\n</header>\n",
         markup(&run.brief.id),
         markup(run.title()),
         sheet::verdict_word(verdict),
@@ -107,7 +107,8 @@ fn head(run: &Run) -> String {
         share(&summary.passes, "pass"),
         sizes.nodes,
         sizes.segments,
-        markup(&sheet::audit_line(run))
+        markup(&sheet::audit_line(run)),
+        markup(&sheet::proof_line(run))
     )
 }
 

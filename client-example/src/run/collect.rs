@@ -38,6 +38,7 @@ pub(crate) struct Collector {
     ended: Vec<v1::CaseSummary>,
     findings: Vec<v1::Finding>,
     diagnoses: Vec<v1::StateDiagnosis>,
+    sizing: Option<v1::SizingResult>,
     shape_report: Option<v1::ShapeReport>,
     effects: Vec<v1::DesignEffect>,
     losses: Vec<v1::LossRow>,
@@ -95,6 +96,7 @@ impl Collector {
             Event::Timing(timing) => self.timing = Some(timing),
             Event::Summary(summary) => self.summary = Some(summary),
             Event::Diagnosis(part) => self.diagnoses.push(part),
+            Event::Sizing(sizing) => self.sizing = Some(sizing),
             Event::DesignEffect(effect) => self.effects.push(effect),
             Event::LossTable(part) => {
                 if size(part.offset) != self.losses.len() {
@@ -284,6 +286,7 @@ impl Collector {
             envelope: BTreeMap::new(),
             findings: std::mem::take(&mut self.findings),
             diagnoses: std::mem::take(&mut self.diagnoses),
+            sizing: self.sizing.take(),
             effects: Vec::new(),
             slides: Vec::new(),
             reaches: Vec::new(),

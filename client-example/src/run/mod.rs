@@ -116,6 +116,8 @@ pub(crate) struct Run {
     pub(crate) loads: Vec<v1::LoadPicture>,
     /// What was found of states beside their balance, in order.
     pub(crate) diagnoses: Vec<v1::StateDiagnosis>,
+    /// Sections that were chosen; none where the brief asks for none.
+    pub(crate) sizing: Option<v1::SizingResult>,
     pub(crate) summary: v1::Summary,
     pub(crate) timing: Option<v1::Timing>,
     /// Why the stream broke off before its summary; none where it came whole.

@@ -149,6 +149,11 @@ fn state(case: &str, words: &str, middle: &str, sink: f64, tensions: [f64; 2], l
             largest_movement_m: sink,
             largest_movement_node: middle.to_owned(),
             worst_ratio: (case != "reference").then_some(1.24),
+            certificate: Some(v1::Certificate {
+                certified: true,
+                tension_within_n: if case == "reference" { 2e-7 } else { 3e-7 },
+                ..Default::default()
+            }),
             ..Default::default()
         }),
     ]
@@ -195,6 +200,7 @@ fn events_named(names: Names) -> Vec<Event> {
             case: "lamp".to_owned(),
             outcome: v1::CaseOutcome::NoEquilibrium.into(),
             failure: Some(v1::Failure {
+                group: String::new(),
                 reason: "NOT_HELD".to_owned(),
                 message: "nothing holds the lamp".to_owned(),
                 cure: "tie it to the net".to_owned(),

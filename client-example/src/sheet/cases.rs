@@ -68,6 +68,9 @@ pub(crate) fn cases(run: &Run) -> Sheet {
             head("at node", ""),
             head("imbalance", "N"),
             file_head("allowed", "N"),
+            head("proven within", "N"),
+            file_head("places within", "mm"),
+            file_head("proven if", ""),
             // A column of zeros would push others off the page.
             if loose {
                 page_head("loose nodes", "")
@@ -91,6 +94,7 @@ fn row(state: &State) -> Row {
     let answered = state.answered();
     let when_answered = |cell: Cell| if answered { cell } else { Cell::Empty };
     let failure = summary.failure.as_ref();
+    let proven = summary.certificate.as_ref().filter(|_| answered);
     let told = |pick: fn(&v1::Failure) -> String| Cell::maybe(failure.map(|failure| Cell::text(pick(failure))));
     let mark = if !answered || !summary.audited {
         Mark::Gone
@@ -116,6 +120,9 @@ fn row(state: &State) -> Row {
             when_answered(Cell::text(&summary.largest_movement_node)),
             when_answered(Cell::Number(summary.imbalance_n, Show::Order)),
             when_answered(Cell::Number(summary.imbalance_allowed_n, Show::Order)),
+            Cell::maybe(proven.map(|found| Cell::Number(found.tension_within_n, Show::Order))),
+            Cell::maybe(proven.map(|found| Cell::Number(found.position_within_m * 1e3, Show::Order))),
+            Cell::maybe(proven.map(|found| Cell::text(&found.condition))),
             when_answered(Cell::Count(summary.loose_nodes_total.into())),
             told(|failure| failure.reason.clone()),
             told(|failure| failure.message.clone()),

@@ -99,8 +99,10 @@ fn row(run: &Run, part: &v1::StateDiagnosis) -> Option<Row> {
 /// The nodes that move most, each with its direction.
 fn moving(nodes: &[String], movements: &[f64], total: u32) -> String {
     let named = nodes.iter().zip(movements.chunks_exact(3)).take(NAMED);
+    // Adding zero takes the sign from a zero.
+    let shown = |component: f64| (component * 100.0).round() / 100.0 + 0.0;
     let named: Vec<String> = named
-        .map(|(node, by)| format!("{node} ({:.2}, {:.2}, {:.2})", by[0], by[1], by[2]))
+        .map(|(node, by)| format!("{node} ({:.2}, {:.2}, {:.2})", shown(by[0]), shown(by[1]), shown(by[2])))
         .collect();
     more(&named.join(", "), named.len(), total)
 }

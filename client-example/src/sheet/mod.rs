@@ -13,6 +13,7 @@ mod losses;
 mod page;
 mod ropes;
 mod shape;
+mod sizing;
 mod slides;
 mod text;
 mod verdict;
@@ -34,9 +35,10 @@ pub(crate) use losses::{loss_cells, losses, losses_by_need, lost_words, survivor
 pub(crate) use page::html;
 pub(crate) use ropes::{ropes, struts};
 pub(crate) use shape::shape;
+pub(crate) use sizing::{sized, sizing_rounds, sizing_words};
 pub(crate) use slides::slides;
 pub(crate) use text::{terminal, wrap};
-pub(crate) use verdict::{audit_line, largest_difference, verdict_word, why};
+pub(crate) use verdict::{audit_line, largest_difference, proof_line, verdict_word, why};
 
 /// How a number is shown to eyes.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]

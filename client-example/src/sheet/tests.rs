@@ -98,6 +98,23 @@ fn the_audit_line_names_the_worst_state() {
 }
 
 #[test]
+fn the_proof_line_tells_the_widest_bound_and_its_condition() {
+    let mut run = sample::run();
+    assert_eq!(
+        proof_line(&run),
+        "Proof: in 2 of 2 answered states no axial force is wrong by more than 3.0e-10 kN (\"full-snow\")."
+    );
+    for state in &mut run.states {
+        if let Some(certificate) = &mut state.summary.certificate {
+            certificate.condition = "with the struts as found".to_owned();
+        }
+    }
+    assert!(proof_line(&run).ends_with("(\"full-snow\"); in some with the struts as found."));
+    run.states.iter_mut().for_each(|state| state.summary.certificate = None);
+    assert_eq!(proof_line(&run), "Proof: of no state are the forces proven.");
+}
+
+#[test]
 fn a_long_sheet_is_cut_on_the_terminal_only() {
     let mut sheet = ropes(&sample::run());
     let row = sheet.rows[0].clone();

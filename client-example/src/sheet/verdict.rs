@@ -131,6 +131,36 @@ pub(crate) fn audit_line(run: &Run) -> String {
     line
 }
 
+/// Within what the axial forces are proven, and under which condition.
+pub(crate) fn proof_line(run: &Run) -> String {
+    let answered: Vec<&v1::CaseSummary> = (run.states.iter().filter(|state| state.answered()))
+        .map(|state| &state.summary)
+        .collect();
+    let proofs: Vec<(&v1::CaseSummary, &v1::Certificate)> = answered
+        .iter()
+        .filter_map(|summary| summary.certificate.as_ref().map(|found| (*summary, found)))
+        .filter(|(_, found)| found.certified)
+        .collect();
+    let widest = proofs
+        .iter()
+        .max_by(|a, b| a.1.tension_within_n.total_cmp(&b.1.tension_within_n));
+    let Some((summary, found)) = widest else {
+        return "Proof: of no state are the forces proven.".to_owned();
+    };
+    let mut line = format!(
+        "Proof: in {} of {} answered states no axial force is wrong by more than {} kN (\"{}\")",
+        proofs.len(),
+        answered.len(),
+        order(found.tension_within_n / 1e3),
+        summary.case
+    );
+    if let Some((_, found)) = proofs.iter().find(|(_, found)| !found.condition.is_empty()) {
+        line.push_str(&format!("; in some {}", found.condition));
+    }
+    line.push('.');
+    line
+}
+
 /// Largest component of the sum of loads and support forces (N); they must cancel.
 pub(crate) fn largest_difference(summary: &v1::CaseSummary) -> f64 {
     let pairs = summary.load_sum_n.iter().zip(&summary.support_force_sum_n);

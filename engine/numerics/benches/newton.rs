@@ -15,7 +15,7 @@ use std::time::Instant;
 
 use nalgebra::{Matrix3, Vector3};
 use ropewalk_numerics::assembly::{Loading, Response, Structure};
-use ropewalk_numerics::equilibrium::{Analysis, LoadSteps, Settings, Termination, Yardstick, solve};
+use ropewalk_numerics::equilibrium::{Analysis, LoadSteps, Settings, Termination, Yardstick, certificate, solve};
 use ropewalk_numerics::load::{Case, SegmentLoads};
 use ropewalk_numerics::model::{CableGiven, Net, NetGiven, NodeGiven, NodeId, Section, SupportGiven};
 
@@ -191,6 +191,15 @@ fn run(n: usize, load_steps: LoadSteps) {
     let mut step = response.residual.clone();
     let solving = timed(|| factor.solve_in_place(&mut step));
 
+    let at = certificate::State {
+        positions: &solution.positions,
+        axial_forces: &solution.axial_forces,
+        members: &solution.members,
+    };
+    let certify = || certificate::certificate(&analysis, &case, &at).expect("a fitting case");
+    let certifying = timed(|| drop(certify()));
+    let proven = certify().map_or(f64::NAN, |c| c.largest_force_bound());
+
     let moved = |(x, start): (&Vector3<f64>, &Vector3<f64>)| (x - start).amax();
     let largest = solution.positions.iter().zip(&positions).map(moved).fold(0.0, f64::max);
     let slack = solution.axial_forces.iter().filter(|t| **t == 0.0).count();
@@ -200,8 +209,8 @@ fn run(n: usize, load_steps: LoadSteps) {
         .collect();
     println!(
         "{{\"n\": {n}, \"dof\": {}, \"iterations\": {iterations:?}, \"factorisations\": {}, \"umax\": {largest:.17}, \
-         \"slack\": {slack}, \"seconds\": {{\"analysis\": {setup:.5}, \"one_assembly\": {assembly:.5}, \
-         \"one_factorisation\": {factorise:.5}, \"one_solve\": {solving:.5}, \"wall\": {wall:.5}, \
+         \"slack\": {slack}, \"forces_within\": {proven:.1e}, \"seconds\": {{\"analysis\": {setup:.5}, \"one_assembly\": {assembly:.5}, \
+         \"one_factorisation\": {factorise:.5}, \"one_solve\": {solving:.5}, \"certificate\": {certifying:.5}, \"wall\": {wall:.5}, \
          \"cpu\": {processor:.3}}}}}",
         structure.n_dofs(),
         solution.factorisations,

@@ -126,6 +126,12 @@ impl Structure {
         self.dofs.len()
     }
 
+    /// Pattern of matrices with one row a node, held nodes too, coupled as the net couples them.
+    #[must_use]
+    pub fn node_pattern(&self) -> Pattern {
+        Pattern::new(&vec![1; self.net.nodes().len()], &node_graph(&self.net))
+    }
+
     /// Where its matrices have entries.
     #[must_use]
     pub fn pattern(&self) -> &Pattern {

@@ -5,14 +5,14 @@ use std::fmt;
 
 use nalgebra::Vector3;
 
-use super::StateResult;
+use super::{Ponding, PondingEnd, StateResult};
 use crate::diagnose::mechanism::{self, Arrangement};
 use crate::diagnose::plausible;
 use crate::equilibrium::stability::FreeMovement;
 use crate::equilibrium::{Solution, SolveError, Termination};
-use crate::load::Case;
+use crate::load::{Case, Place};
 use crate::model::{Member, Net, NodeId, ReferenceState, SegmentId};
-use crate::shape::words::{direction, list};
+use crate::shape::words::{direction, kilonewtons, list, three_digits};
 
 /// A node to blame.
 #[derive(Clone, Debug, PartialEq)]
@@ -82,8 +82,25 @@ pub enum LikelyCause {
         /// Sum of the loads (N).
         load_sum: Vector3<f64>,
     },
-    /// The methods gave up before the forces were in balance, for no reason that the state shows.
+    /// Water that gathers on a skin makes more room than it fills, or does not settle.
+    Pond {
+        /// Where it is deepest: id of a node or a panel.
+        place: String,
+        /// Depth there (m).
+        depth: f64,
+        /// Volume of all water (m³).
+        volume: f64,
+        /// What the last round added (m³), and the one before.
+        growth: (f64, f64),
+        /// Whether it grows: the last round added no less than the one before.
+        grows: bool,
+        /// Rounds.
+        rounds: usize,
+    },
+    /// The allowance of iterations was used up before the forces were in balance.
     OutOfIterations,
+    /// Each method came to an end of its own, for no reason that the state shows: more iterations would not help.
+    GaveUp,
 }
 
 /// Why a case has no answer, and what to change.
@@ -95,8 +112,17 @@ pub struct Cause {
     pub worst: Vec<Culprit>,
     /// Ids of the members at the worst node.
     pub members: Vec<String>,
-    /// Share of the load of the last good state.
+    /// Share of the load of the last good state; zero where there is none, or where it means nothing: a net of ropes under
+    /// dead loads has a state at every share.
     pub last_good_load_factor: f64,
+    /// The least share of the load beyond the last good state that was tried in vain, where smaller and smaller steps
+    /// were taken.
+    pub stopped_at: Option<f64>,
+    /// Whether an equilibrium is known to exist, so that the solver gave up and not the net: ropes alone, dead loads, and
+    /// each of them held.
+    pub exists: bool,
+    /// Ids of the members that the case takes out.
+    pub taken_out: Vec<String>,
 }
 
 /// Share of slack segments from which slackness is to blame.
@@ -149,6 +175,7 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
         .flat_map(|forces| plausible::strained_members(net, case, forces))
         .max_by(|a, b| a.strain.abs().total_cmp(&b.strain.abs()));
     let odd = plausible::odd_stiffnesses(net);
+    let is_spent = solution.termination == Termination::IterationLimit;
     let likely = match (strained, odd.first()) {
         (Some(strained), _) if strained.likely_factor.is_some() => LikelyCause::UnitSlip {
             member: net.member_name(strained.segment).to_owned(),
@@ -156,14 +183,14 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
             strain: strained.strain,
             likely_factor: strained.likely_factor,
         },
-        (_, Some(odd)) => LikelyCause::UnitSlip {
+        (_, Some(odd)) if odd.is_borne_out(&reference.axial_forces) => LikelyCause::UnitSlip {
             member: net.member_name(odd.segment).to_owned(),
             axial_stiffness: odd.axial_stiffness,
             strain: solution.axial_forces[odd.segment.index()] / odd.axial_stiffness,
             likely_factor: Some(odd.likely_factor),
         },
         _ if solution.termination == Termination::RunsAway => LikelyCause::RanAway,
-        _ if limit < FAIR_LIMIT && solution.factorisations >= limit => LikelyCause::OutOfIterations,
+        _ if is_spent && limit < FAIR_LIMIT => LikelyCause::OutOfIterations,
         _ if n_slack > 0 && n_slack as f64 >= MUCH_SLACK * n_cable_segments as f64 => LikelyCause::MuchSlack {
             cables: slack_cables(worst_node),
             slack: n_slack,
@@ -173,16 +200,54 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
             slack_cables: slack_cables(None),
             load_sum: case.nodal_forces.iter().sum(),
         },
-        _ => LikelyCause::OutOfIterations,
+        _ if is_spent => LikelyCause::OutOfIterations,
+        _ => LikelyCause::GaveUp,
     };
     // A last state that balances carries its share of the load; one that does not is no good state.
-    let last_good_load_factor = if result.audit.passed { solution.load_factor } else { 0.0 };
+    let has_good_state = result.audit.passed && !net.is_pure_tension();
+    let last_good_load_factor = if has_good_state { solution.load_factor } else { 0.0 };
+    let beyond = (solution.history.iter())
+        .map(|report| report.load_factor)
+        .filter(|factor| *factor > solution.load_factor);
+    let stopped_at = beyond.clone().fold(f64::INFINITY, f64::min);
+    let is_halved = beyond.clone().any(|factor| factor > stopped_at);
     Cause {
+        stopped_at: (has_good_state && is_halved).then_some(stopped_at),
+        exists: net.is_pure_tension() && !net.has_friction() && case.pressures.iter().all(|p| *p == 0.0),
+        taken_out: taken_out(net, case),
         likely,
         members: worst_node.map_or_else(Vec::new, |node| members_at(net, node)),
         worst: worst.into_iter().map(|(_, culprit)| culprit).collect(),
         last_good_load_factor,
     }
+}
+
+/// Why water on skins has not settled; `None` if it has.
+pub(super) fn cause_of_pond(net: &Net, ponding: &Ponding) -> Option<Cause> {
+    if ponding.end == PondingEnd::Settled {
+        return None;
+    }
+    let deepest = ponding.ponds.iter().max_by(|a, b| a.depth.total_cmp(&b.depth));
+    let place = deepest.map_or_else(String::new, |pond| match pond.deepest {
+        Place::Node(node) => net.node_name(node).to_owned(),
+        Place::Panel(panel) => net.panels()[panel].name.clone(),
+    });
+    Some(Cause {
+        likely: LikelyCause::Pond {
+            place,
+            depth: deepest.map_or(0.0, |pond| pond.depth),
+            volume: ponding.volume(),
+            growth: ponding.last_growth().unwrap_or((0.0, 0.0)),
+            grows: ponding.end == PondingEnd::Growing,
+            rounds: ponding.volumes.len(),
+        },
+        worst: Vec::new(),
+        members: Vec::new(),
+        last_good_load_factor: 1.0,
+        stopped_at: None,
+        exists: false,
+        taken_out: Vec::new(),
+    })
 }
 
 fn culprits(net: &Net, result: &StateResult) -> Vec<(NodeId, Culprit)> {
@@ -239,8 +304,14 @@ pub(super) fn cause_of_movement(net: &Net, positions: &[Vector3<f64>], movement:
     }
 }
 
-/// Tells an error of the solver in the client's ids. `positions`: where the net was (m).
-pub(super) fn cause_of_error(net: &Net, positions: &[Vector3<f64>], error: &SolveError) -> Cause {
+/// Ids of the members that a case takes out.
+fn taken_out(net: &Net, case: &Case) -> Vec<String> {
+    let removed = (0..case.removed.len()).filter(|segment| case.removed[*segment]);
+    distinct(removed.map(|segment| net.member_name(SegmentId::new(segment)).to_owned()))
+}
+
+/// Tells an error of the solver in `case` in the client's ids. `positions`: where the net was (m).
+pub(super) fn cause_of_error(net: &Net, case: &Case, positions: &[Vector3<f64>], error: &SolveError) -> Cause {
     use crate::assembly::LoadingError;
     let likely = match error {
         SolveError::Loading(LoadingError::Segment { segment, what, value }) => LikelyCause::Numbers {
@@ -286,7 +357,19 @@ pub(super) fn cause_of_error(net: &Net, positions: &[Vector3<f64>], error: &Solv
         likely,
         worst: Vec::new(),
         last_good_load_factor: 0.0,
+        stopped_at: None,
+        exists: false,
+        taken_out: taken_out(net, case),
     }
+}
+
+/// A sum of loads (N) with a word for its sense, where it is mainly upright.
+fn sum_in_words(sum: &Vector3<f64>) -> String {
+    if sum.z.abs() >= 0.9 * sum.norm() && sum.z != 0.0 {
+        let sense = if sum.z > 0.0 { "upwards" } else { "downwards" };
+        return format!("{} {sense}", kilonewtons(sum.z.abs()));
+    }
+    format!("{} kN", direction(&(sum / 1e3)))
 }
 
 impl fmt::Display for Cause {
@@ -296,6 +379,15 @@ impl fmt::Display for Cause {
             text.push_str(if text.ends_with('?') { " " } else { ". " });
             text.push_str(&sentence);
         };
+        if !self.taken_out.is_empty() {
+            add(format!("Taken out in this case: {}", list(&self.taken_out, NAMED)));
+        }
+        if self.exists {
+            add(
+                "Ropes alone under held dead loads always have an equilibrium: the solver gave up, not the net"
+                    .to_owned(),
+            );
+        }
         if let Some(worst) = self.worst.first() {
             add(format!(
                 "Worst at \"{}\": {:.3} kN out of balance, moved {:.3} m",
@@ -306,8 +398,14 @@ impl fmt::Display for Cause {
         }
         if self.last_good_load_factor > 0.0 {
             add(format!(
-                "Last good state at {:.0} % of the load",
-                self.last_good_load_factor * 100.0
+                "Last good state kept at {} % of the load",
+                three_digits(self.last_good_load_factor * 100.0)
+            ));
+        }
+        if let Some(stopped_at) = self.stopped_at {
+            add(format!(
+                "Half the step and less gave the same stop, down to {} %",
+                three_digits(stopped_at * 100.0)
             ));
         }
         f.write_str(&text)
@@ -364,11 +462,8 @@ impl fmt::Display for LikelyCause {
                 "the net ran away from its place: check the size and sign of the loads, and what holds the nodes below",
             ),
             Self::Tips { slack_cables, load_sum } => {
-                let sum = direction(&(load_sum / 1e3));
-                write!(
-                    f,
-                    "the load tips the net rather than a wrong step; loads sum to {sum} kN"
-                )?;
+                let sum = sum_in_words(load_sum);
+                write!(f, "the load tips the net; its sum is {sum}")?;
                 if slack_cables.is_empty() {
                     f.write_str(". Try to put the load on in steps, or check its sign")
                 } else {
@@ -379,8 +474,32 @@ impl fmt::Display for LikelyCause {
                     )
                 }
             }
-            Self::OutOfIterations => f.write_str(
-                "the iteration ended before the forces were in balance: allow more, or put the load on in steps",
+            Self::Pond {
+                place,
+                depth,
+                volume,
+                growth: (last, before),
+                grows,
+                rounds,
+            } => {
+                write!(
+                    f,
+                    "water gathers on the skin, {:.0} mm deep at \"{place}\" and {volume:.3} m3 in all after {rounds} rounds of \
+                     filling; the last round added {last:.3e} m3, the one before {before:.3e} m3",
+                    depth * 1e3
+                )?;
+                f.write_str(if *grows {
+                    ": more water makes more room than it fills, and the pond grows without end"
+                } else {
+                    ": it has not settled"
+                })
+            }
+            Self::OutOfIterations => {
+                f.write_str("the allowed iterations were used up before the forces were in balance: allow more")
+            }
+            Self::GaveUp => f.write_str(
+                "each method ended before the forces were in balance, and more iterations would not help: put the load on \
+                 in steps, or give more prestress",
             ),
         }
     }

@@ -42,14 +42,21 @@ impl Estimate {
             + net.segments().len() as f64 * ASSEMBLY_SECONDS_PER_SEGMENT;
         let states = brief.cases.len() + 1;
         let supported = net.supports().len() + net.elastic_supports().iter().map(|e| e.nodes().len()).sum::<usize>();
-        // Positions and displacements; four numbers and a flag a segment; unstressed lengths; support forces.
-        let numbers = 6 * net.nodes().len() + 4 * net.segments().len() + net.n_lengths() + 9 * supported;
+        let on_paths: u32 = brief
+            .cases
+            .iter()
+            .filter_map(|case| case.path)
+            .map(|path| path.steps + 1)
+            .sum();
+        // Positions and displacements; four numbers and a flag a segment; unstressed lengths; support forces; two a panel.
+        let numbers =
+            6 * net.nodes().len() + 4 * net.segments().len() + net.n_lengths() + 9 * supported + 2 * net.panels().len();
         Self {
             unknowns,
             states,
             factor_entries,
             factor_operations,
-            seconds: iteration * FACTORISATIONS_PER_CASE * states as f64,
+            seconds: iteration * FACTORISATIONS_PER_CASE * (states as f64 + f64::from(on_paths)),
             result_bytes: (states * (8 * numbers + net.segments().len())) as u64,
         }
     }

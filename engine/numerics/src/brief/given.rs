@@ -9,7 +9,7 @@ use crate::load::{Action, Case};
 use crate::model::{Member, Net, ReferenceState};
 use crate::shape::Prestress;
 
-use super::DesignEffect;
+use super::{DesignEffect, PondingGiven};
 
 /// States on the way to a case and beyond, each solved from the one before.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -35,6 +35,8 @@ pub struct CaseGiven {
     pub removed: Vec<Member>,
     /// Share of prestress of all ropes on top of that of the actions: a partial factor on prestress, less one (–).
     pub prestress_share: f64,
+    /// Water that gathers on skins, where that is asked for.
+    pub ponding: Option<PondingGiven>,
     /// How the net gets there, where that is asked for.
     pub path: Option<LoadPath>,
 }

@@ -1,8 +1,14 @@
 //! What comes of taking members out: one row for each member, or members together, that some case lacks.
 
+use std::cmp::Ordering;
+use std::collections::BTreeMap;
+
 use super::{Brief, EffectRule};
 use crate::check::CaseDigest;
-use crate::model::{AxialLaw, Member, NodeId, SegmentId};
+use crate::model::{AxialLaw, Member, Net, NodeId, SegmentId};
+
+/// Members that a row keeps: of all of them, a row for each member would grow with the square of the net.
+const KEPT: usize = 20;
 
 /// A value and where it comes from.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -11,6 +17,28 @@ pub struct LossExtreme {
     pub value: f64,
     /// The case or, counted on from the last case, the design effect.
     pub case: usize,
+}
+
+/// What a loss does to a member that is left.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct LossForce {
+    /// The member.
+    pub member: Member,
+    /// Its axial force that is worst (N), tension positive.
+    pub force: f64,
+    /// The share of the breaking force (–), where that is known.
+    pub share: Option<f64>,
+    /// The case or, counted on from the last case, the design effect.
+    pub case: usize,
+}
+
+impl LossForce {
+    /// Worse ones first: by the share of the breaking force, then by the size of the force.
+    fn worse_first(&self, other: &Self) -> Ordering {
+        let rank = |force: &Self| (force.share.unwrap_or(-1.0), force.force.abs());
+        let (own, others) = (rank(self), rank(other));
+        others.0.total_cmp(&own.0).then(others.1.total_cmp(&own.1))
+    }
 }
 
 /// What the loss of some members came to, over every case without them and every design effect of their loss.
@@ -24,8 +52,8 @@ pub struct Loss {
     pub unanswered: Vec<usize>,
     /// Largest factor on the effect of the loss (–); 1 where only states without the members were found.
     pub factor: f64,
-    /// Axial force of every segment that is largest in size (N); `None` where nothing was found, or it is taken out.
-    pub largest_forces: Vec<Option<LossExtreme>>,
+    /// Members that are left, worst first: the first 20.
+    pub worst: Vec<LossForce>,
     /// Largest movement from the reference state (m) of nodes whose place is determined.
     pub largest_movement: Option<(NodeId, LossExtreme)>,
     /// Most ropes' segments slack in one state.
@@ -45,24 +73,27 @@ pub(super) struct LossTally {
 impl LossTally {
     pub(super) fn new(brief: &Brief) -> Self {
         let mut rows: Vec<Loss> = Vec::new();
+        let mut known: BTreeMap<Vec<(u8, usize)>, usize> = BTreeMap::new();
         let row_of_case = brief.cases.iter().map(|case| {
             if case.removed.is_empty() {
                 return None;
             }
-            let known = rows.iter().position(|row| row.removed == case.removed);
-            Some(known.unwrap_or_else(|| {
-                rows.push(Loss {
-                    removed: case.removed.clone(),
-                    cases: Vec::new(),
-                    unanswered: Vec::new(),
-                    factor: 1.0,
-                    largest_forces: vec![None; brief.net.segments().len()],
-                    largest_movement: None,
-                    slack: None,
-                    loose: None,
+            let row = *known
+                .entry(case.removed.iter().map(order).collect())
+                .or_insert_with(|| {
+                    rows.push(Loss {
+                        removed: case.removed.clone(),
+                        cases: Vec::new(),
+                        unanswered: Vec::new(),
+                        factor: 1.0,
+                        worst: Vec::new(),
+                        largest_movement: None,
+                        slack: None,
+                        loose: None,
+                    });
+                    rows.len() - 1
                 });
-                rows.len() - 1
-            }))
+            Some(row)
         });
         let row_of_case = row_of_case.collect();
         Self { rows, row_of_case }
@@ -79,7 +110,7 @@ impl LossTally {
             row.unanswered.push(case);
             return;
         }
-        row.take(case, digest);
+        row.take(&brief.net, case, digest);
         let slack = |segment: usize| {
             brief.net.segments()[segment].law == AxialLaw::TensionOnly
                 && digest.axial_forces[segment] <= 0.0
@@ -99,7 +130,7 @@ impl LossTally {
         for row in given.terms.iter().filter_map(|(case, _)| self.row_of_case[*case]) {
             let row = &mut self.rows[row];
             row.factor = row.factor.max(factor);
-            row.take(brief.cases.len() + effect, digest);
+            row.take(&brief.net, brief.cases.len() + effect, digest);
         }
     }
 
@@ -115,19 +146,53 @@ impl LossTally {
 }
 
 impl Loss {
-    fn take(&mut self, case: usize, digest: &CaseDigest) {
+    /// Keeps a force if it is among the worst, whatever the order of offers: what is pushed out had enough worse ones, and
+    /// those only grow worse.
+    fn offer(&mut self, force: LossForce) {
+        let place = |a: &LossForce, b: &LossForce| a.worse_first(b).then(order(&a.member).cmp(&order(&b.member)));
+        if let Some(known) = self.worst.iter().position(|known| known.member == force.member) {
+            let old = self.worst[known];
+            if force.worse_first(&old).then(force.case.cmp(&old.case)).is_ge() {
+                return;
+            }
+            self.worst.remove(known);
+        }
+        let position = self.worst.partition_point(|known| place(known, &force).is_lt());
+        self.worst.insert(position, force);
+        self.worst.truncate(KEPT);
+    }
+
+    fn take(&mut self, net: &Net, case: usize, digest: &CaseDigest) {
         let mut removed = vec![false; digest.axial_forces.len()];
         digest
             .removed
             .iter()
             .for_each(|segment| removed[segment.index()] = true);
-        for (segment, force) in digest
-            .axial_forces
-            .iter()
-            .enumerate()
-            .filter(|(segment, _)| !removed[*segment])
-        {
-            worse(&mut self.largest_forces[segment], *force, case);
+        // Of each member its worst segment: segments of a member follow one another.
+        let mut of_member: Option<LossForce> = None;
+        for (index, segment) in net.segments().iter().enumerate().filter(|(index, _)| !removed[*index]) {
+            let force = digest.axial_forces[index];
+            let breaking = segment
+                .section
+                .breaking_force
+                .filter(|_| segment.law == AxialLaw::TensionOnly);
+            let next = LossForce {
+                member: segment.member,
+                force,
+                share: breaking.map(|breaking| force / breaking),
+                case,
+            };
+            of_member = Some(match of_member {
+                Some(last) if last.member != segment.member => {
+                    self.offer(last);
+                    next
+                }
+                Some(last) if last.worse_first(&next).is_le() => last,
+                _ => next,
+            });
+        }
+        if let Some(last) = of_member {
+            self.offer(last);
         }
         let mut loose = vec![false; digest.displacements.len()];
         digest.loose_nodes.iter().for_each(|node| loose[node.index()] = true);
@@ -154,13 +219,17 @@ impl Loss {
     }
 }
 
-/// The one larger in size; of equals the one that comes first in the brief.
+/// Cables, then struts, each in the order of the net.
+fn order(member: &Member) -> (u8, usize) {
+    match member {
+        Member::Cable(cable) => (0, cable.index()),
+        Member::Strut(strut) => (1, strut.index()),
+    }
+}
+
+/// The larger one; of equals the one that comes first in the brief.
 fn worse(known: &mut Option<LossExtreme>, value: f64, case: usize) {
-    let is_worse = |old: LossExtreme| {
-        let (new, old_size) = (value.abs(), old.value.abs());
-        new > old_size || (new == old_size && case < old.case)
-    };
-    if known.is_none_or(is_worse) {
+    if known.is_none_or(|old| value > old.value || (value == old.value && case < old.case)) {
         *known = Some(LossExtreme { value, case });
     }
 }

@@ -2,9 +2,10 @@
 
 use nalgebra::Vector3;
 
-use super::{Cause, StateDiagnosis};
+use super::{Cause, Ponding, PondingEnd, StateDiagnosis};
 use crate::check::{Against, Base, CaseDigest};
 use crate::equilibrium::audit::Audit;
+use crate::equilibrium::certificate::Certificate;
 use crate::equilibrium::{IterationReport, Solution, SolveError, Termination};
 use crate::load::Case;
 use crate::model::{Net, NodeId, ReferenceState, SegmentId};
@@ -75,8 +76,12 @@ pub struct StateResult {
     pub loose_nodes: Vec<NodeId>,
     /// Segments that are taken out.
     pub removed: Vec<SegmentId>,
+    /// Water on skins, where the case asks for it; its weight is among the loads.
+    pub ponding: Option<Ponding>,
     /// What the independent routine found.
     pub audit: Audit,
+    /// How far the state can be from the true one; `None` where it is no answer, or nothing can be said.
+    pub certificate: Option<Certificate>,
     /// What it allows beside bearing its load, where that was asked for.
     pub diagnosis: Option<Box<StateDiagnosis>>,
 }
@@ -154,10 +159,16 @@ pub enum CaseOutcome {
 }
 
 impl CaseOutcome {
-    /// Whether there is a state within tolerance.
+    /// Whether there is a state within tolerance, with water that has settled.
     #[must_use]
     pub fn is_answered(&self) -> bool {
-        matches!(self, Self::State { solution, .. } if solution.termination == Termination::Converged)
+        match self {
+            Self::State { solution, result, .. } => {
+                let settled = |ponding: &Ponding| ponding.end == PondingEnd::Settled;
+                solution.termination == Termination::Converged && result.ponding.as_ref().is_none_or(settled)
+            }
+            Self::None { .. } => false,
+        }
     }
 
     /// The little that checks and envelopes need.

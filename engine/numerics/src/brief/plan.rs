@@ -4,13 +4,14 @@ use std::collections::BTreeSet;
 use std::ops::ControlFlow;
 use std::sync::Arc;
 
-use super::cause::{Stop, cause_of_error, cause_of_stop};
+use super::cause::{Stop, cause_of_error, cause_of_pond, cause_of_stop};
 use super::diagnosis::diagnose;
 use super::state::{Bare, state_result};
-use super::{Brief, CaseOutcome, Estimate, LoadPicture, ReferenceOutcome, Task};
+use super::{Brief, CaseOutcome, Estimate, LoadPicture, PondingEnd, ReferenceOutcome, Task, ponding};
 use crate::check::{Base, CaseDigest, CheckKind, worst_ratio};
+use crate::equilibrium::certificate::{self, Certificate, certificate};
 use crate::equilibrium::{self, Analysis, IterationReport, Settings, Termination, Way};
-use crate::load::Surface;
+use crate::load::{Case, Surface};
 use crate::shape::{self, Found, ShapeError};
 
 /// A brief with what is worked out once for its net: numbering, pattern, symbolic factorisation.
@@ -95,6 +96,7 @@ impl Plan {
             loose_nodes: &[],
         };
         let mut result = state_result(&brief.net, &case, &state.positions, &bare);
+        result.certificate = self.certificate(&case, &bare);
         if let Some(asked) = brief.diagnosis.as_ref().filter(|asked| asked.reference) {
             result.diagnosis = diagnose(&self.analysis, asked, &case, &result, None).map(Box::new);
         }
@@ -151,16 +153,22 @@ impl Plan {
             ..*settings
         };
         let case = given.case(net, &reference.state, actions);
-        let solved = equilibrium::solve(
-            &self.analysis,
-            &case,
-            &reference.state.positions,
-            &reference.state.unstressed_lengths,
-            settings,
-            observe,
-        );
+        let solved = match given.ponding {
+            Some(ponding) => ponding::solve(&self.analysis, &case, ponding, &reference.state, settings, observe)
+                .map(|ponded| (ponded.solution, Some(ponded.case), Some(ponded.ponding))),
+            None => equilibrium::solve(
+                &self.analysis,
+                &case,
+                &reference.state.positions,
+                &reference.state.unstressed_lengths,
+                settings,
+                observe,
+            )
+            .map(|solution| (solution, None, None)),
+        };
         match solved {
-            Ok(solution) => {
+            Ok((solution, ponded, ponding)) => {
+                let case = ponded.unwrap_or(case);
                 let bare = Bare {
                     positions: &solution.positions,
                     axial_forces: &solution.axial_forces,
@@ -170,8 +178,17 @@ impl Plan {
                 // The last good state carries a share of the load; it is told under the loads that it carries.
                 let carried = case.scaled(&reference.state.unstressed_lengths, solution.load_factor);
                 let mut result = state_result(net, &carried, &reference.state.positions, &bare);
+                result.ponding = ponding;
+                let of_pond = result.ponding.as_ref().and_then(|ponding| cause_of_pond(net, ponding));
+                let grows = result.ponding.as_ref().is_some_and(|p| p.end == PondingEnd::Growing);
+                if solution.termination == Termination::Converged && !grows {
+                    result.certificate = self.certificate(&carried, &bare);
+                }
                 let cause = match solution.termination {
-                    Termination::Converged | Termination::Cancelled => None,
+                    Termination::Cancelled => None,
+                    Termination::Converged => of_pond,
+                    // A pond that grew until nothing converged any more is the cause, not the last of its rounds.
+                    _ if grows => of_pond,
                     _ => Some(cause_of_stop(
                         net,
                         &Stop {
@@ -197,10 +214,20 @@ impl Plan {
                 }
             }
             Err(error) => CaseOutcome::None {
-                cause: cause_of_error(net, &reference.state.positions, &error),
+                cause: cause_of_error(net, &case, &reference.state.positions, &error),
                 error,
             },
         }
+    }
+
+    /// How far a state of `case` can be from the true one.
+    fn certificate(&self, case: &Case, state: &Bare<'_>) -> Option<Certificate> {
+        let found = certificate::State {
+            positions: state.positions,
+            axial_forces: state.axial_forces,
+            members: state.members,
+        };
+        certificate(&self.analysis, case, &found).expect("a case that was solved fits the net")
     }
 
     /// The panels in the reference state.

@@ -100,7 +100,9 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
             .filter(|e| case.removed[*e])
             .map(SegmentId::new)
             .collect(),
+        ponding: None,
         audit: audit::audit_members(net, case, positions, axial_forces, state.members),
+        certificate: None,
         loads,
         diagnosis: None,
     }

@@ -8,15 +8,17 @@ use super::judgement::{Covered, Judgement, LARGEST_RATIO, Lack, Measure};
 use super::{CaseDigest, Clamp, Saddle, SaddleRadius, SaddleSlip};
 use crate::model::{Net, NodeId, SegmentId};
 
-/// Places in the path of each cable at which it runs on through a node: the segments before and after.
-fn passages(net: &Net, node: NodeId) -> impl Iterator<Item = [usize; 2]> + '_ {
-    net.cables().iter().flat_map(move |cable| {
+/// Places in the path of each cable that is there at which it runs on through a node: the segments before and after.
+fn passages<'a>(net: &'a Net, node: NodeId, digest: &'a CaseDigest) -> impl Iterator<Item = [usize; 2]> + 'a {
+    let is_there = |segments: &[usize; 2]| !segments.iter().any(|s| digest.removed.contains(&SegmentId::new(*s)));
+    let all = net.cables().iter().flat_map(move |cable| {
         let first = cable.segments.start;
         let inner: Range<usize> = 1..cable.path.len() - 1;
         inner
             .filter(move |place| cable.path[*place] == node)
             .map(move |place| [first + place - 1, first + place])
-    })
+    });
+    all.filter(is_there)
 }
 
 /// Unit vectors along a rope through a node, in path order: on the way in and on the way out.
@@ -55,7 +57,7 @@ pub(super) fn clamp(net: &Net, given: &Clamp, part: Covered, digest: &CaseDigest
     };
     let mut worst: Option<Judgement> = None;
     let clamped = |[before, after]: &[usize; 2]| net.segments()[*before].length != net.segments()[*after].length;
-    for passage in passages(net, node).filter(clamped) {
+    for passage in passages(net, node, digest).filter(clamped) {
         let [one, other] = passage.map(|segment| digest.axial_forces[segment]);
         let across = if given.deviation_share == 0.0 {
             0.0
@@ -81,7 +83,7 @@ pub(super) fn saddle(net: &Net, given: &Saddle, part: Covered, digest: &CaseDige
     };
     let mut worst: Option<Judgement> = None;
     let mut add = |next: Judgement| worst = Some(worst.map_or(next, |worst| worst.worse(next)));
-    for passage in passages(net, node) {
+    for passage in passages(net, node, digest) {
         if let Some(radius) = &given.radius {
             add(bend(net, radius, part, passage)?);
         }

@@ -4,7 +4,7 @@ use nalgebra::{Vector2, Vector3};
 
 use super::judgement::{Covered, Judgement, Lack, Measure};
 use super::{Against, CaseDigest, Check, Clearance, MovementLimit};
-use crate::model::{NodeId, SegmentId};
+use crate::model::{NodeId, SegmentId, fan};
 
 /// Slopes are not told beyond this (m per m): a panel that stands upright has none.
 const STEEPEST: f64 = 1e6;
@@ -79,7 +79,8 @@ pub(super) fn clearance(
         .struts
         .iter()
         .map(|strut| net.struts()[strut.index()].segment.index());
-    for index in cables.chain(struts) {
+    let is_there = |index: &usize| !digest.removed.contains(&SegmentId::new(*index));
+    for index in cables.chain(struts).filter(is_there) {
         let ends = net.segments()[index].ends;
         if is_loose(&ends) {
             loose = true;
@@ -221,17 +222,16 @@ pub(super) fn fall(against: &Against<'_>, least: f64, part: Covered, digest: &Ca
         return Err(Lack::Place);
     }
     let places: Vec<_> = corners.iter().map(|corner| digest.positions[corner.index()]).collect();
-    let slopes = triangles(&places).into_iter().map(|triangle| slope(&triangle));
+    let slopes = fan::triangles(&places).into_iter().map(|area| slope(&area));
     let flattest = slopes.reduce(f64::min).ok_or(Lack::Place)?;
     Judgement::at_least(part, Measure::Fall, flattest, least)
 }
 
-/// Slope of the steepest line of a triangle (m per m).
-fn slope([a, b, c]: &[Vector3<f64>; 3]) -> f64 {
-    let normal = (b - a).cross(&(c - a));
-    let flat = normal.xy().norm();
-    if flat < STEEPEST * normal.z.abs() {
-        flat / normal.z.abs()
+/// Slope of the steepest line of a triangle (m per m), from its area vector (m²).
+fn slope(area: &Vector3<f64>) -> f64 {
+    let flat = area.xy().norm();
+    if flat < STEEPEST * area.z.abs() {
+        flat / area.z.abs()
     } else {
         STEEPEST
     }

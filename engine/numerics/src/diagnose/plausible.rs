@@ -10,7 +10,7 @@ const SLIPS: [f64; 2] = [1e3, 1e6];
 /// Strains that ropes are built for lie below this (–).
 const USUAL: f64 = 0.02;
 /// Decades between an `EA` and the median of its kind from which it counts as a slip.
-const SLIP_DECADES: f64 = 2.0;
+const SLIP_DECADES: f64 = 2.3;
 
 /// A member that is stretched or squeezed more than any material bears.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -73,9 +73,26 @@ pub struct OddStiffness {
     pub median: f64,
     /// Factor that brings it nearest to the median.
     pub likely_factor: f64,
+    /// Breaking force of its section (N), if known.
+    pub breaking_force: Option<f64>,
 }
 
-/// Ropes whose `EA` differs from the median of all ropes by two decades or more, and struts likewise.
+impl OddStiffness {
+    /// Whether more than the spread speaks for a slip: a net may have a thin tie beside a thick edge. Its strain under
+    /// `axial_forces` (N, one a segment), or its strain at breaking, is none that a rope has.
+    #[must_use]
+    pub fn is_borne_out(&self, axial_forces: &[f64]) -> bool {
+        let strain = axial_forces[self.segment.index()].abs() / self.axial_stiffness;
+        let at_breaking = self.breaking_force.map(|force| force / self.axial_stiffness);
+        strain > USUAL || at_breaking.is_some_and(|strain| !(BREAKS_AT.0..=BREAKS_AT.1).contains(&strain))
+    }
+}
+
+/// Strains at which ropes and bars break, by their breaking force over `EA` (–): from stiff steel to soft fibre, with a
+/// margin (common practice).
+const BREAKS_AT: (f64, f64) = (1e-3, 0.3);
+
+/// Ropes whose `EA` differs from the median of all ropes by a factor of 200 or more, and struts likewise.
 #[must_use]
 pub fn odd_stiffnesses(net: &Net) -> Vec<OddStiffness> {
     let mut odd = Vec::new();
@@ -89,7 +106,7 @@ pub fn odd_stiffnesses(net: &Net) -> Vec<OddStiffness> {
         let mut last = None;
         for (index, segment) in of_kind() {
             let ratio = median / segment.section.axial_stiffness;
-            // Ropes of one net span about a decade either way; two decades are no choice of ropes any more.
+            // Ropes of one net span about a decade either way, with a thin tie beside a thick edge two.
             let decades = ratio.log10();
             let size = if decades.abs() < 4.5 { SLIPS[0] } else { SLIPS[1] };
             let likely_factor = if decades > 0.0 { size } else { 1.0 / size };
@@ -100,6 +117,7 @@ pub fn odd_stiffnesses(net: &Net) -> Vec<OddStiffness> {
                     axial_stiffness: segment.section.axial_stiffness,
                     median,
                     likely_factor,
+                    breaking_force: segment.section.breaking_force,
                 });
             }
         }
@@ -155,6 +173,7 @@ mod tests {
         assert_eq!(odd.len(), 1);
         assert_eq!(odd[0].segment, SegmentId::new(1));
         assert_eq!(odd[0].likely_factor, 1000.0);
+        assert!(odd[0].is_borne_out(&[13_500.0; 4]) && !odd[0].is_borne_out(&[13.0; 4]));
         let case = Case {
             nodal_forces: vec![],
             unstressed_lengths: vec![],
@@ -167,6 +186,22 @@ mod tests {
         assert_eq!(strained.len(), 1);
         assert!((strained[0].strain - 1.517).abs() < 1e-3);
         assert_eq!(strained[0].likely_factor, Some(1000.0));
+    }
+
+    #[test]
+    fn a_thin_tie_is_odd_and_blamed_for_nothing() {
+        let ropes = net(&[5e7, 2e5, 5e7, 4e7]);
+        let odd = odd_stiffnesses(&ropes);
+        assert_eq!(odd.len(), 1);
+        assert!(!odd[0].is_borne_out(&[1e5, 500.0, 1e5, 1e5]));
+        // With a breaking force that its EA can not reach without tearing, or reaches unstretched, it is.
+        for (breaking, is_borne_out) in [(5e3, false), (1e5, true), (100.0, true)] {
+            let known = OddStiffness {
+                breaking_force: Some(breaking),
+                ..odd[0]
+            };
+            assert_eq!(known.is_borne_out(&[0.0; 4]), is_borne_out, "{breaking}");
+        }
     }
 
     #[test]

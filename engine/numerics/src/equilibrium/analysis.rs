@@ -1,9 +1,9 @@
 //! What is worked out once for a net before any state is sought.
 
-use std::sync::Arc;
+use std::sync::{Arc, OnceLock};
 
 use super::linear::{Factor, Symbolic};
-use crate::assembly::Structure;
+use crate::assembly::{Pattern, Structure};
 use crate::model::Net;
 
 /// Numbering, pattern and elimination order of a net; cheap to clone, shared by every case and thread.
@@ -11,6 +11,14 @@ use crate::model::Net;
 pub struct Analysis {
     structure: Arc<Structure>,
     symbolic: Arc<Symbolic>,
+    node_graph: Arc<OnceLock<NodeGraph>>,
+}
+
+/// Pattern and elimination order of matrices with one row a node, as force densities make them.
+#[derive(Debug)]
+pub(super) struct NodeGraph {
+    pub(super) pattern: Pattern,
+    pub(super) symbolic: Arc<Symbolic>,
 }
 
 impl Analysis {
@@ -27,6 +35,7 @@ impl Analysis {
         Self {
             structure: Arc::new(structure),
             symbolic,
+            node_graph: Arc::default(),
         }
     }
 
@@ -40,6 +49,15 @@ impl Analysis {
     #[must_use]
     pub fn symbolic(&self) -> &Arc<Symbolic> {
         &self.symbolic
+    }
+
+    /// What matrices with one row a node need; worked out when first asked for.
+    pub(super) fn node_graph(&self) -> &NodeGraph {
+        self.node_graph.get_or_init(|| {
+            let pattern = self.structure.node_pattern();
+            let symbolic = Arc::new(Symbolic::new(&pattern));
+            NodeGraph { pattern, symbolic }
+        })
     }
 
     /// Room for factorisations, for one worker.

@@ -37,14 +37,20 @@ const POLISH: Carried = Carried {
 const TRY: Newton = Newton {
     floor_share: 1.0,
     limit: 15,
+    patience: 15,
 };
+/// With struts a start that looks taut may be far off: then the interior point does better, and nothing should be lost on
+/// the way to it.
+const TRY_WITH_STRUTS: Newton = Newton { patience: 4, ..TRY };
 const AFTER_INTERIOR_POINT: Newton = Newton {
     floor_share: 0.1,
     limit: 80,
+    patience: 80,
 };
 const WITH_STRUTS: Newton = Newton {
     floor_share: 1.0,
     limit: 60,
+    patience: 60,
 };
 
 /// A way to answer one load level.
@@ -251,8 +257,14 @@ fn state(
         }
         positions.copy_from_slice(&entry);
     }
-    if slack < MUCH_SLACK * present && !is_taut {
-        let outcome = TRY.solve(run, loading, positions);
+    // A taut net of ropes that the carried forces do not solve is one for the interior point; one with struts need not be.
+    let attempt = match (is_taut, run.structure.net().is_pure_tension()) {
+        (false, _) => Some(TRY),
+        (true, false) => Some(TRY_WITH_STRUTS),
+        (true, true) => None,
+    };
+    if let Some(attempt) = attempt.filter(|_| slack < MUCH_SLACK * present) {
+        let outcome = attempt.solve(run, loading, positions);
         if ends(outcome, run) {
             return outcome;
         }
@@ -301,7 +313,8 @@ fn in_smaller_steps(
     let mut at_good = None;
     // The rest of the allowance is for what comes after.
     let share = run.settings.max_iterations / 4 * 3;
-    while step >= SMALLEST_STEP && run.factorisations < share {
+    run.allowance = share;
+    while step >= SMALLEST_STEP && !run.is_spent() {
         let factor = f64::min(reached + step, 1.0);
         load_step += 1;
         positions.copy_from_slice(&good);
@@ -318,6 +331,7 @@ fn in_smaller_steps(
             _ => step *= 0.5,
         }
     }
+    run.allowance = run.settings.max_iterations;
     positions.copy_from_slice(&good);
     let (outcome, loading) = answer(run, load_step + 1, 1.0, positions, relaxed)?;
     if matches!(outcome, Termination::Converged | Termination::Cancelled) || reached == 0.0 {
@@ -345,7 +359,8 @@ fn relaxed(
         relaxation::solve(run, loading, positions)
     };
     match outcome {
-        Termination::Converged => WITH_STRUTS.solve(run, loading, positions),
+        // Soft ropes on stiff struts creep towards the end; near it Newton does without more of that.
+        Termination::Converged | Termination::StepTooSmall => WITH_STRUTS.solve(run, loading, positions),
         outcome => outcome,
     }
 }

@@ -7,12 +7,14 @@
 //! interior point, then carried forces as a polish               pure tension, hard starts
 //! load steps, relaxation                                        with struts, hard starts
 //! stability      can the balanced state move freely?            with struts
+//! certificate    how far can it be from the true state?         after it is found
 //! eigen          least eigenvalues of a sparse matrix           where asked for
 //! ```
 
 mod analysis;
 pub mod audit;
 mod carried;
+pub mod certificate;
 pub mod eigen;
 pub mod existence;
 mod friction;

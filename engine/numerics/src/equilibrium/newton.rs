@@ -19,6 +19,9 @@ use crate::model::AxialLaw;
 /// Smallest isotropic stiffness of a segment over its axial stiffness; raised where rounding still breaks a pivot.
 const SMALLEST_STIFFNESS: [f64; 3] = [1e-12, 1e-9, 1e-6];
 
+/// Share of the largest axial force that stands for the load where there is little of it.
+const LITTLE_LOAD: f64 = 1e-3;
+
 /// How Newton is used in one place of the recipe.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct Newton {
@@ -26,6 +29,8 @@ pub(super) struct Newton {
     pub(super) floor_share: f64,
     /// Factorisations allowed.
     pub(super) limit: u32,
+    /// Factorisations after which the residual must be down to the load to go on: from a good start it soon is.
+    pub(super) patience: u32,
 }
 
 /// What compressed struts bring to the tangent.
@@ -55,8 +60,14 @@ impl Newton {
             if run.is_balanced(&run.response) {
                 return Termination::Converged;
             }
-            if run.is_spent() || run.factorisations - first >= self.limit {
+            if run.is_spent() {
                 return Termination::IterationLimit;
+            }
+            let used = run.factorisations - first;
+            let load = run.load.max(LITTLE_LOAD * run.response.largest_axial_force());
+            let is_hopeless = used == self.patience && residual > load;
+            if used >= self.limit || is_hopeless {
+                return Termination::StepTooSmall;
             }
             if !factorise(run, loading, self.floor_share * residual) {
                 return Termination::StepTooSmall;

@@ -68,7 +68,7 @@ pub(super) fn solve(run: &mut Run<'_>, loading: &Loading, positions: &mut [Vecto
         }
         run.respond(loading, positions);
     }
-    Termination::IterationLimit
+    Termination::StepTooSmall
 }
 
 /// Fictitious mass of each free direction: `½ Σ (k + |T| / l)` of all that meets there, with a reserve (N/m, step 1).

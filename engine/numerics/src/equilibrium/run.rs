@@ -19,7 +19,7 @@ const RUNS_AWAY: f64 = 1e3;
 /// allows a node along all three.
 const HIDDEN_BY_ROUNDING: f64 = 5e-5;
 
-fn anchor_entries(structure: &Structure, anchors: &[Anchor]) -> Vec<(usize, f64)> {
+pub(super) fn anchor_entries(structure: &Structure, anchors: &[Anchor]) -> Vec<(usize, f64)> {
     let mut entries = Vec::new();
     for anchor in anchors {
         let first = structure.dofs().first(anchor.node);
@@ -49,6 +49,8 @@ pub(super) struct Run<'a> {
     pub(super) load_factor: f64,
     pub(super) iteration: u32,
     pub(super) factorisations: u32,
+    /// Factorisations allowed for now: what the settings allow, or less while a part of it is kept for what comes after.
+    pub(super) allowance: u32,
     /// Largest load on a free direction in this load step (N).
     pub(super) load: f64,
     rounding: Vec<f64>,
@@ -87,6 +89,7 @@ impl<'a> Run<'a> {
             load_factor: 1.0,
             iteration: 0,
             factorisations: 0,
+            allowance: settings.max_iterations,
             load: 0.0,
             rounding: vec![0.0; structure.n_dofs()],
             anchors: anchor_entries(structure, anchors),
@@ -213,7 +216,7 @@ impl<'a> Run<'a> {
 
     /// Whether the allowance of factorisations is used up.
     pub(super) fn is_spent(&self) -> bool {
-        self.factorisations >= self.settings.max_iterations
+        self.factorisations >= self.allowance
     }
 
     pub(super) fn solve_in_place(&mut self, right_hand_side: &mut [f64]) {

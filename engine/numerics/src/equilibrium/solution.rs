@@ -50,9 +50,9 @@ pub struct IterationReport {
 pub enum Termination {
     /// Within tolerance.
     Converged,
-    /// Too many iterations.
+    /// The allowance of factorisations is used up.
     IterationLimit,
-    /// Steps became too small to matter.
+    /// No more headway: steps became too small to matter, or a method took as many as it ever needs.
     StepTooSmall,
     /// The iterate left the neighbourhood of the net.
     RunsAway,

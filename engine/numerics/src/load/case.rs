@@ -79,11 +79,13 @@ impl Case {
             lying: Vec::new(),
             pressures: Vec::new(),
         };
-        // Measured once, and only if something lies on it.
-        let surface = if net.panels().is_empty() {
-            Surface::default()
-        } else {
+        // Measured once, and only if something lies on areas of it.
+        let mut acting = factors.iter().filter(|(_, factor)| *factor != 0.0);
+        let is_on_areas = |load: &Load| matches!(load, Load::OnPlan { .. } | Load::OnSurface { .. });
+        let surface = if acting.any(|(action, _)| actions[*action].loads.iter().any(is_on_areas)) {
             Surface::new(net, &reference.positions)
+        } else {
+            Surface::default()
         };
         let mut adding = Adding {
             net,

@@ -12,6 +12,8 @@ use super::NodeId;
 const TOUCHES: f64 = 1e-9;
 /// Pairs of edges that are looked at in search of crossings: some seconds.
 const MOST_PAIRS: u64 = 2_000_000_000;
+/// Crossings that are told.
+const MOST_CROSSINGS: usize = 1000;
 
 /// What keeps ropes from having meshes that could be told apart in plan. Edges by their position in what was given.
 #[derive(Clone, Debug, PartialEq)]
@@ -55,7 +57,7 @@ pub struct Meshes {
 /// cross nothing.
 ///
 /// # Errors
-/// Every [`MeshError`] found.
+/// Every [`MeshError`] found; of crossings the first thousand.
 pub fn meshes(edges: &[[NodeId; 2]], plan: &[Vector2<f64>]) -> Result<Meshes, Vec<MeshError>> {
     let bounding = without_loose_ends(edges, plan.len());
     let loose = (0..edges.len()).filter(|edge| !bounding[*edge]).collect();
@@ -173,6 +175,9 @@ fn crossings(edges: &[[NodeId; 2]], kept: &[usize], plan: &[Vector2<f64>]) -> Ve
             if other_least.y <= most.y && other_most.y >= least.y && cross(edges, plan, *edge, other) {
                 let (first, second) = ((*edge).min(other), (*edge).max(other));
                 errors.push(MeshError::Crossing { edges: [first, second] });
+                if errors.len() == MOST_CROSSINGS {
+                    return errors;
+                }
             }
         }
         active.push(place);

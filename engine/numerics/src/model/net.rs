@@ -6,7 +6,7 @@ use nalgebra::Vector3;
 use nalgebra_sparse::{CooMatrix, CsrMatrix};
 
 use super::support::{ElasticSupport, ElasticSupportGiven, Support, SupportGiven};
-use super::violations::{check_surface, violations};
+use super::violations::{check_section, check_surface, violations};
 use super::{CableId, NetError, NodeId, Section, SegmentId, Skin, StrutId, Zone};
 
 /// A node as given.
@@ -355,6 +355,28 @@ impl Net {
             zones,
             branch_node,
         })
+    }
+
+    /// The same net with other sections.
+    ///
+    /// `sections`: one a segment.
+    ///
+    /// # Errors
+    /// Every [`NetError`] of a section that no net can have.
+    ///
+    /// # Panics
+    /// If there are not as many sections as segments.
+    pub fn with_sections(&self, sections: &[Section]) -> Result<Self, Vec<NetError>> {
+        assert_eq!(sections.len(), self.segments.len(), "one section a segment");
+        let mut errors = Vec::new();
+        let mut net = self.clone();
+        for (index, section) in sections.iter().enumerate() {
+            if net.segments[index].section != *section {
+                check_section(self.member_name(SegmentId::new(index)), section, &mut errors);
+                net.segments[index].section = *section;
+            }
+        }
+        if errors.is_empty() { Ok(net) } else { Err(errors) }
     }
 
     /// The same net with other panels, skins and zones: panels are meshes of the net and found only when it is known.

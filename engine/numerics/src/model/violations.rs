@@ -173,7 +173,7 @@ fn check_panel(panel: &PanelGiven, n_nodes: usize, errors: &mut Vec<NetError>) {
     }
 }
 
-fn check_section(name: &str, section: &Section, errors: &mut Vec<NetError>) {
+pub(super) fn check_section(name: &str, section: &Section, errors: &mut Vec<NetError>) {
     let mut positive = |what, value: f64, allowed: bool| {
         if !(value.is_finite() && allowed) {
             errors.push(NetError::NotPositive {

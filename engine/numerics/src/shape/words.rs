@@ -3,12 +3,12 @@
 use nalgebra::Vector3;
 
 /// A force (N) in kilonewtons with three digits that count.
-pub(super) fn kilonewtons(force: f64) -> String {
+pub(crate) fn kilonewtons(force: f64) -> String {
     format!("{} kN", three_digits(force / 1e3))
 }
 
 /// A number with three digits that count.
-pub(super) fn three_digits(value: f64) -> String {
+pub(crate) fn three_digits(value: f64) -> String {
     let size = value.abs();
     if size == 0.0 || !size.is_finite() {
         return format!("{value}");
@@ -40,6 +40,8 @@ pub(crate) fn list(names: &[String], most: usize) -> String {
 
 /// A direction in two decimals.
 pub(crate) fn direction(d: &Vector3<f64>) -> String {
+    // Adding zero takes the sign from a zero.
+    let d = d.map(|c| (c * 100.0).round() / 100.0 + 0.0);
     format!("({:.2}, {:.2}, {:.2})", d.x, d.y, d.z)
 }
 

@@ -6,7 +6,7 @@ use ropewalk_numerics::equilibrium::{Solution, Termination};
 
 use crate::nets::{Example, Random, grid};
 
-const NETS_A_FAMILY: u32 = 40;
+const NETS_A_FAMILY: u32 = 50;
 
 /// Downward, patterned, uplift or lateral loads on the free nodes, of size `force`.
 fn load(example: &mut Example, random: &mut Random, force: f64) {
@@ -26,7 +26,7 @@ fn load(example: &mut Example, random: &mut Random, force: f64) {
     }
 }
 
-fn saddle(random: &mut Random) -> Example {
+pub(crate) fn saddle(random: &mut Random) -> Example {
     let ea = random.power(5.5, 7.5);
     let (rise, n) = (random.range(0.3, 2.0), random.index(3, 13));
     let mut net = grid(n, 12.0, ea, |u, w| rise * (u * u - w * w));
@@ -130,7 +130,7 @@ fn delaunay(points: &[[f64; 2]]) -> Vec<[usize; 3]> {
     triangles
 }
 
-fn mesh(random: &mut Random) -> Example {
+pub(crate) fn mesh(random: &mut Random) -> Example {
     let n = random.index(8, 91);
     let points: Vec<[f64; 2]> = (0..n)
         .map(|_| [random.range(0.0, 10.0), random.range(0.0, 10.0)])
@@ -166,7 +166,7 @@ fn mesh(random: &mut Random) -> Example {
 }
 
 /// A tent: a prestressed net over masts that stand on the ground and push some of its nodes up.
-fn tent(random: &mut Random) -> Example {
+pub(crate) fn tent(random: &mut Random) -> Example {
     let ea = random.power(5.5, 7.5);
     let n = random.index(4, 12);
     let mut net = grid(n, 12.0, ea, |u, w| 2.0 * (1.0 - u * u) * (1.0 - w * w));

@@ -7,6 +7,7 @@ mod families;
 mod held;
 mod nets;
 mod properties;
+mod random;
 mod saddle;
 mod special;
 mod struts;

@@ -5,7 +5,7 @@ use std::collections::BTreeMap;
 use prost::Message as _;
 use ropewalk_api::ropewalk::v1;
 use ropewalk_api::ropewalk::v1::load::Kind;
-use ropewalk_numerics::brief::{CaseGiven, DesignEffect, LoadPath};
+use ropewalk_numerics::brief::{CaseGiven, DesignEffect, LoadPath, PondingGiven};
 use ropewalk_numerics::equilibrium::LoadSteps;
 use ropewalk_numerics::model::Member;
 
@@ -15,7 +15,7 @@ use super::factors::Factors;
 use super::findings::{Findings, Path, is_id};
 use super::names::{Names, bad_id};
 use super::net::NetDraft;
-use super::numbers::{FACTOR, LOAD_STEPS, Of, PATH_END, PATH_STEPS};
+use super::numbers::{FACTOR, LOAD_STEPS, Of, PATH_END, PATH_STEPS, WATER_DENSITY};
 use super::reasons;
 use super::resolved::Resolved;
 use super::scope::tell_repeated;
@@ -27,6 +27,8 @@ pub(crate) const REFERENCE: &str = "reference";
 pub(crate) const ENVELOPE: &str = "envelope";
 /// Names that cases and sets must not have.
 const RESERVED: [&str; 3] = [REFERENCE, "governing", ENVELOPE];
+/// Density of water where the brief gives none (kg/m³), common practice.
+const WATER: f64 = 1000.0;
 const PATH_END_DEFAULT: f64 = 1.5;
 const PATH_STEPS_DEFAULT: u32 = 15;
 /// Bytes of a case: its beginning is told in one message.
@@ -103,6 +105,7 @@ impl<'a> Cases<'a> {
                 factors,
                 load_steps: load_steps.map(LoadSteps::Equal),
                 removed: read_removed(case, &at, context, findings),
+                ponding: read_ponding(case, &at, context, findings, resolved),
                 path: read_path(case, &at, findings, resolved),
                 prestress_share: 0.0,
             });
@@ -496,6 +499,48 @@ fn read_path(case: &v1::Case, at: &Path<'_>, findings: &mut Findings, resolved: 
     })
 }
 
+fn read_ponding(
+    case: &v1::Case,
+    at: &Path<'_>,
+    context: &Context<'_, '_>,
+    findings: &mut Findings,
+    resolved: &mut Resolved,
+) -> Option<PondingGiven> {
+    let given = case.ponding.as_ref()?;
+    let (at, of) = (at.field("ponding"), Of::new("case", &case.id));
+    let density_at = at.field("density_kg_per_m3");
+    if given.density_kg_per_m3.is_none() {
+        resolved.left_out(&density_at, number(WATER));
+    }
+    let density = findings.number_or(&density_at, of, &WATER_DENSITY, given.density_kg_per_m3, WATER);
+    let net = context.net.message;
+    if net.skins.is_empty() {
+        findings.error(
+            reasons::COVERS_NOTHING,
+            &at,
+            &case.id,
+            format!("case {} gathers water, and the net has no skin", Quoted(&case.id)),
+            "give the net a skin, or take ponding out",
+        );
+    }
+    if case.path.is_some() {
+        findings.error(
+            reasons::PONDING_WITH_PATH,
+            &at,
+            &case.id,
+            format!(
+                "case {} asks for ponding and for a path: the states of a path have no water",
+                Quoted(&case.id)
+            ),
+            "make two cases of it",
+        );
+    }
+    Some(PondingGiven {
+        density: density?,
+        gravity: context.net.gravity,
+    })
+}
+
 pub(super) fn reserved(id: &str, at: &Path<'_>, findings: &mut Findings) {
     if RESERVED.contains(&id) {
         findings
@@ -624,6 +669,9 @@ pub(crate) fn in_words<'n>(
             ", prestress times {}",
             rounded(1.0 + case.prestress_share, 12)
         ));
+    }
+    if case.ponding.is_some() {
+        text.push_str(" + ponding water");
     }
     for (count, member) in case.removed.iter().take(WRITTEN_OUT).enumerate() {
         let before = if count == 0 { " without " } else { ", " };

@@ -1,8 +1,10 @@
 //! Checks: what is covered, over which cases.
 
+use nalgebra::Vector3;
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::{Check, CheckKind};
-use ropewalk_numerics::model::{Area, CableId, NodeId, StrutId};
+use ropewalk_numerics::load::Surface;
+use ropewalk_numerics::model::{Area, CableId, Net, NodeId, StrutId};
 use v1::check::Kind;
 
 use super::cases::Cases;
@@ -12,9 +14,10 @@ use super::names::Thing;
 use super::net::NetDraft;
 use super::reasons;
 use super::resolved::Resolved;
-use super::scope::{ANYTHING, MEMBERS, NODES, Scope, Scopes};
+use super::scope::{ANYTHING, AREAS, MEMBERS, NODES, PIECES, Scope, Scopes};
 use super::sections::Sections;
 use super::supports::Supports;
+use super::surface::SurfaceDraft;
 use crate::words::{Quoted, quoted_list};
 
 /// Checks of a brief: their results are told in one message.
@@ -63,11 +66,35 @@ pub(crate) fn read(
         .collect()
 }
 
-/// A check as read. Which nodes are at the corners of panels is known only when panels are.
+/// A check as read. What it covers of panels is known only when panels are.
 pub(crate) struct CheckDraft {
     pub(crate) check: Check,
     /// Skins and zones that it covers.
-    pub(crate) areas: Vec<Area>,
+    areas: Vec<Area>,
+    /// Whether it covers every panel.
+    all_panels: bool,
+}
+
+impl CheckDraft {
+    /// The check of a net without panels.
+    pub(crate) fn without_panels(self) -> Check {
+        self.check
+    }
+
+    /// The check with what it covers of the panels of a net, `positions` (m) being about where its nodes are.
+    pub(crate) fn with_panels(self, surface: &SurfaceDraft, net: &Net, positions: &[Vector3<f64>]) -> Check {
+        let mut check = self.check;
+        match check.kind {
+            CheckKind::Movement { .. } => {
+                check.nodes.extend(surface.corners(net, positions, &self.areas));
+                check.nodes.sort_unstable();
+                check.nodes.dedup();
+            }
+            _ if self.all_panels => check.panels = (0..net.panels().len()).collect(),
+            _ => check.panels = Surface::new(net, positions).panels_of(&self.areas).collect(),
+        }
+        check
+    }
 }
 
 fn read_check(
@@ -96,14 +123,10 @@ fn read_check(
             "",
             format!("check {number} says not what is checked"),
             "give one of safety, resistance, service_stress, construction_stress, slackness, buckling, movement, \
-             clearance, anchor_pull, clamp, saddle",
+             clearance, anchor_pull, clamp, saddle, drainage",
         );
         return None;
     };
-    // Refused by name elsewhere.
-    if matches!(given, Kind::Drainage(_)) {
-        return None;
-    }
     let kind = check_kinds::read(given, at, context, findings, resolved);
     let mut read = Check {
         kind: kind.unwrap_or(CheckKind::Safety { factor: 1.0 }),
@@ -115,7 +138,11 @@ fn read_check(
     };
     let areas = cover(given, &check.on, &mut read, at, context, findings, resolved);
     tell_not_judgeable(given, &read, at, context, findings);
-    kind.map(|_| CheckDraft { check: read, areas })
+    kind.map(|_| CheckDraft {
+        check: read,
+        areas,
+        all_panels: check.on.is_empty() && matches!(given, Kind::Drainage(_) | Kind::Clearance(_)),
+    })
 }
 
 fn cover(
@@ -137,13 +164,14 @@ fn cover(
     } else {
         let allowed = match given {
             Kind::Movement(_) => ANYTHING,
+            Kind::Drainage(_) => AREAS,
+            Kind::Clearance(_) => PIECES,
             Kind::AnchorPull(_) | Kind::Clamp(_) | Kind::Saddle(_) => NODES,
             _ => MEMBERS,
         };
         let scope = context.scopes.of(net, names, &on, allowed, findings);
         if let Kind::Movement(_) = given {
             read.nodes = nodes_of(&scope, context).into_iter().map(NodeId::new).collect();
-            areas = scope.areas().collect();
         } else {
             read.cables = scope.cables().map(CableId::new).collect();
             read.struts = scope.struts().map(StrutId::new).collect();
@@ -164,10 +192,14 @@ fn cover(
                 );
             }
         }
+        areas = scope.areas().collect();
         scope.complete
     };
     let no_part = read.cables.is_empty() && read.struts.is_empty() && read.nodes.is_empty() && read.panels.is_empty();
-    if complete && no_part && areas.is_empty() {
+    let message = net.message;
+    let has_panels = !(message.skins.is_empty() && message.panels.is_empty());
+    let all_panels = all && has_panels && matches!(given, Kind::Drainage(_));
+    if complete && no_part && areas.is_empty() && !all_panels {
         findings.error(
             reasons::COVERS_NOTHING,
             &on,
@@ -207,8 +239,9 @@ fn cover_all(given: &Kind, read: &mut Check, context: &Context<'_, '_>) -> &'sta
         Kind::Clearance(_) => {
             read.cables = cables();
             read.struts = struts();
-            "all members"
+            "all members and panels"
         }
+        Kind::Drainage(_) => "all panels",
         Kind::Clamp(_) => {
             let passages = passages(net);
             read.nodes = nodes(&|node| passages[node].is_clamp());

@@ -230,6 +230,8 @@ struct Maker<'m, 'r, 'a> {
     known: BTreeMap<Key, usize>,
     /// Combinations made so far, by set.
     numbers: BTreeMap<&'a str, usize>,
+    /// Design effects by rule, its factor, their last case and the one that they stand beside.
+    effects: BTreeMap<(u8, u64, usize, Option<usize>), usize>,
 }
 
 impl<'m, 'r, 'a> Maker<'m, 'r, 'a> {
@@ -247,6 +249,7 @@ impl<'m, 'r, 'a> Maker<'m, 'r, 'a> {
             cases,
             known,
             numbers: BTreeMap::new(),
+            effects: BTreeMap::new(),
         }
     }
 
@@ -445,10 +448,15 @@ impl<'m, 'r, 'a> Maker<'m, 'r, 'a> {
 
     fn effect(&mut self, effect: DesignEffect, at: &Path<'_>, findings: &mut Findings) {
         // Where rules share a case they share its effects.
-        let same = |other: &&mut DesignEffect| {
-            (other.rule, &other.terms, other.beside) == (effect.rule, &effect.terms, effect.beside)
+        let (rule, factor) = match effect.rule {
+            EffectRule::Loss { factor } => (0, factor),
+            EffectRule::OnEffect { factor } => (1, factor),
+            EffectRule::OnParts { variable, .. } => (2, variable),
         };
-        if let Some(known) = self.cases.effects.iter_mut().find(same) {
+        let last = effect.terms.last().map_or(0, |(case, _)| *case);
+        let key = (rule, factor.to_bits(), last, effect.beside);
+        if let Some(known) = self.effects.get(&key) {
+            let known = &mut self.cases.effects[*known];
             for set in effect.sets {
                 if !known.sets.contains(&set) {
                     known.sets.push(set);
@@ -456,6 +464,7 @@ impl<'m, 'r, 'a> Maker<'m, 'r, 'a> {
             }
             return;
         }
+        self.effects.insert(key, self.cases.effects.len());
         self.cases.declare_effect(&effect.name, at, findings);
         self.cases.effects.push(effect);
     }

@@ -9,15 +9,21 @@ use super::reasons;
 use crate::config::Limits;
 
 /// Skins and zones: each zone is compared with each panel.
-const MOST_AREAS: u32 = 10_000;
+const MOST_AREAS: u32 = 1000;
+/// Classes of actions: each is compared with each where they make too many cases.
+const MOST_CLASSES: u32 = 1000;
 /// Bytes of one element of a list: it must fit a message from the server, which stays below 1 MiB.
 const LARGEST_ELEMENT: usize = 900 * 1024;
-/// Bytes of what a frozen brief says in one message: title, remarks, labels, the actions of the reference state.
+/// Bytes of what a frozen brief says in one message: title, remarks, labels, the actions of the reference state, factors.
 const LARGEST_HEAD: usize = 128 * 1024;
 
 /// Refuses lists that are too long, before anything is made of them. Answers whether to go on.
 pub(crate) fn counts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings) -> bool {
     let mut fits = most(findings, "cases", "cases", brief.cases.len(), limits.cases);
+    let rules = brief.combinations.len();
+    fits &= most(findings, "combinations", "rules", rules, limits.cases);
+    let classes = brief.factors.as_ref().map_or(0, |factors| factors.classes.len());
+    fits &= most(findings, "factors.classes", "classes of actions", classes, MOST_CLASSES);
     if let Some(v1::brief::NetSource::Net(net)) = &brief.net_source {
         fits &= most(findings, "net.nodes", "nodes", net.nodes.len(), limits.nodes);
         let paths: usize = net.cables.iter().map(|cable| cable.nodes.len().saturating_sub(1)).sum();
@@ -96,6 +102,7 @@ pub(crate) fn elements(brief: &v1::Brief, findings: &mut Findings) {
         each("net.panels", &net.panels, |e| &e.id, findings);
     }
     each("actions", &brief.actions, |e| &e.id, findings);
+    each("combinations", &brief.combinations, |_| "", findings);
     each("checks", &brief.checks, |_| "", findings);
     each("accepted", &brief.accepted, |e| &e.on, findings);
     let labels: usize = brief
@@ -117,14 +124,15 @@ pub(crate) fn elements(brief: &v1::Brief, findings: &mut Findings) {
         .flat_map(|prestress| &prestress.under)
         .map(|id| id.len() + 4)
         .sum();
-    let head = brief.title.len() + brief.note.len() + labels + notes + net + under;
+    let factors = brief.factors.as_ref().map_or(0, Message::encoded_len);
+    let head = brief.title.len() + brief.note.len() + labels + notes + net + under + factors;
     if head > LARGEST_HEAD {
         findings
             .error(
                 reasons::TOO_LARGE,
                 &Path::root("note"),
                 "",
-                format!("title, remarks, labels and prestress.under take {head} bytes: at most {LARGEST_HEAD} can be sent back"),
+                format!("title, remarks, labels, prestress.under and factors take {head} bytes: at most {LARGEST_HEAD} can be sent back"),
                 "keep long texts elsewhere, and gather loads in fewer actions",
             )
             .value(head);

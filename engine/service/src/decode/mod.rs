@@ -7,7 +7,7 @@
 //! | `findings`, `reasons`, `numbers`, `names` | what is told, where, and why |
 //! | `net`, `places`, `sections`, `supports`, `stretch`, `slides`, `adjusters`, `scope`, `surface` | the net |
 //! | `prestress`, `wish`, `actions`, `factors`, `combinations`, `cases`, `solving` | what is wanted of it |
-//! | `checks`, `check_kinds`, `editions`, `diagnosis` | what it is judged by |
+//! | `checks`, `check_kinds`, `editions`, `diagnosis`, `sizing` | what it is judged and sized by |
 //! | `plausible`, `frozen`, `accepted` | doubts |
 //! | `limits`, `not_served` | what is refused |
 //!
@@ -39,6 +39,7 @@ pub mod reasons;
 mod resolved;
 mod scope;
 mod sections;
+mod sizing;
 mod slides;
 mod solving;
 mod stretch;
@@ -55,5 +56,6 @@ pub(crate) use editions::of as edition_of;
 pub(crate) use net::STANDARD_GRAVITY;
 pub use not_served::{NOT_SERVED, SERVED};
 pub use reading::{Reading, read};
+pub use sizing::SizingWork;
 pub(crate) use surface::WithoutValue;
 pub use work::Work;

@@ -45,6 +45,8 @@ pub const SERVED: &[&str] = &[
     "checks.clearance",
     "checks.clamp",
     "checks.saddle",
+    "checks.drainage",
+    "sizing",
     "diagnosis",
     "solving",
     "accepted",
@@ -54,14 +56,12 @@ pub const SERVED: &[&str] = &[
 /// Parts of a brief that are refused.
 pub const NOT_SERVED: &[&str] = &[
     "stored_net",
-    "checks.drainage",
     "modes",
     "motions",
     "stages",
     "workshop",
     "readings",
     "keep",
-    "sizing",
     "variants",
 ];
 
@@ -97,27 +97,16 @@ pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
         ("modes", brief.modes.is_some()),
         ("workshop", brief.workshop.is_some()),
         ("keep", brief.keep.is_some()),
-        ("sizing", brief.sizing.is_some()),
     ] {
         if given {
             part(&Path::root(field), "");
         }
     }
-    in_checks(&brief.checks, &mut part);
 }
 
 fn elements(list: &str, ids: &[&str], part: &mut impl FnMut(&Path<'_>, &str)) {
     let list = Path::root(list);
     for (number, id) in ids.iter().enumerate() {
         part(&list.element(id, number), id);
-    }
-}
-
-fn in_checks(checks: &[v1::Check], part: &mut impl FnMut(&Path<'_>, &str)) {
-    let list = Path::root("checks");
-    for (number, check) in checks.iter().enumerate() {
-        if let Some(v1::check::Kind::Drainage(_)) = check.kind {
-            part(&list.number(number).field("drainage"), "");
-        }
     }
 }

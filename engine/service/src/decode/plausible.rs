@@ -3,6 +3,8 @@
 use std::f64::consts::PI;
 
 use ropewalk_api::ropewalk::v1;
+use ropewalk_numerics::diagnose::plausible::odd_stiffnesses;
+use ropewalk_numerics::model::{Member, Net};
 use ropewalk_numerics::shape::{Prestress, PrestressRule};
 
 use super::findings::{Findings, Path};
@@ -96,6 +98,42 @@ pub(crate) fn sections(net: &NetDraft<'_>, findings: &mut Findings) {
             "kg/m",
             hint,
         );
+    }
+}
+
+/// Doubts about stiffnesses beside those of the other ropes or struts: the first member of each section.
+pub(crate) fn ratios(net: &Net, findings: &mut Findings) {
+    let mut told: Vec<f64> = Vec::new();
+    for odd in odd_stiffnesses(net) {
+        // Members of one section share its slip.
+        if told.contains(&odd.axial_stiffness) {
+            continue;
+        }
+        told.push(odd.axial_stiffness);
+        let (list, kind, index) = match net.segments()[odd.segment.index()].member {
+            Member::Cable(cable) => ("net.cables", "ropes", cable.index()),
+            Member::Strut(strut) => ("net.struts", "struts", strut.index()),
+        };
+        let id = net.member_name(odd.segment);
+        let share = odd.axial_stiffness / odd.median;
+        let times = if share < 1.0 {
+            format!("1/{}", rounded(1.0 / share, 2))
+        } else {
+            format!("{} times", rounded(share, 2))
+        };
+        findings
+            .doubt(
+                reasons::UNIT_SLIP,
+                &Path::root(list).element(id, index),
+                id,
+                format!(
+                    "{} has an axial stiffness of {} N, {times} that of the median of the {kind}: was it in another unit?",
+                    Quoted(id),
+                    number(odd.axial_stiffness)
+                ),
+                "check the unit of the stiffness of its section, or accept this doubt",
+            )
+            .value(number(odd.axial_stiffness));
     }
 }
 

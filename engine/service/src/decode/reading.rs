@@ -24,7 +24,8 @@ use super::supports::Supports;
 use super::surface::SurfaceDraft;
 use super::work::{Names, Work};
 use super::{
-    accepted, checks, combinations, diagnosis, frozen, limits, not_served, plausible, prestress, reasons, solving,
+    accepted, checks, combinations, diagnosis, frozen, limits, not_served, plausible, prestress, reasons, sizing,
+    solving,
 };
 use crate::config::Limits;
 use crate::words::shown;
@@ -55,7 +56,10 @@ pub fn read(brief: v1::Brief, limits: &Limits) -> Reading {
         Some(parts) => {
             let built = parts.work.and_then(|(unbuilt, names)| {
                 let built = unbuilt.build(&mut findings, &mut resolved);
-                built.map(|domain| (domain, names))
+                built.map(|domain| {
+                    plausible::ratios(&domain.net, &mut findings);
+                    (domain, names)
+                })
             });
             (parts.words, built)
         }
@@ -103,17 +107,13 @@ impl Unbuilt {
             .then(|| first_shape(&net, &self.prestress).ok())
             .flatten();
         let Some(first) = first else {
-            let checks = self.checks.into_iter().map(|draft| draft.check).collect();
+            let checks = self.checks.into_iter().map(CheckDraft::without_panels).collect();
             return Some((self.rest)(net, checks));
         };
         let net = self.surface.complete((*net).clone(), &first, findings, resolved)?;
-        let mut checks = Vec::with_capacity(self.checks.len());
-        for CheckDraft { mut check, areas } in self.checks {
-            check.nodes.extend(self.surface.corners(&net, &first, &areas));
-            check.nodes.sort_unstable();
-            check.nodes.dedup();
-            checks.push(check);
-        }
+        let surface = &self.surface;
+        let checks = self.checks.into_iter();
+        let checks = checks.map(|draft| draft.with_panels(surface, &net, &first)).collect();
         let brief = (self.rest)(Arc::new(net), checks);
         self.surface.tell_actions(&brief.net, &first, &brief.actions, findings);
         Some(brief)
@@ -236,7 +236,18 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
             sets: first_sets(&case.sets),
         })
         .collect();
-    let names = Names::new(&sections, &supports);
+    let sizing = sizing::read(
+        brief.sizing.as_ref(),
+        &sizing::Context {
+            net: &net,
+            scopes: &scopes,
+            sections: &sections,
+            has_checks: !brief.checks.is_empty(),
+        },
+        findings,
+        resolved,
+    );
+    let names = Names::new(&sections, &supports, sizing);
     let given = (!findings.has_errors())
         .then(|| net_given(&net, &sections, &slides, supports))
         .flatten();

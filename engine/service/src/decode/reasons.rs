@@ -134,6 +134,8 @@ reasons! {
     BAD_OUTLINE,
     /// A load gives different coefficients to a panel that lies in several zones.
     ZONES_CONTRADICT,
+    /// A case asks for ponding and for a path.
+    PONDING_WITH_PATH,
     /// A load needs a diameter that a section does not give.
     NO_DIAMETER,
     /// A prestress share takes away all of the tension.
@@ -180,6 +182,8 @@ reasons! {
     EDITION_UNKNOWN,
     /// A factor that the named edition does not recommend.
     FACTOR_NOT_OF_EDITION,
+    /// A member that two choices of sizing cover.
+    SIZED_TWICE,
     /// Cases, but no check.
     NOTHING_CHECKED,
     /// A rope is to slide where it can not.

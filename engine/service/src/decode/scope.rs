@@ -51,6 +51,13 @@ pub(crate) const AREAS: Allowed = Allowed {
     areas: true,
     words: "skins, zones or groups of them",
 };
+pub(crate) const PIECES: Allowed = Allowed {
+    nodes: false,
+    cables: true,
+    struts: true,
+    areas: true,
+    words: "cables, struts, skins, zones, roles or groups",
+};
 pub(crate) const ANYTHING: Allowed = Allowed {
     nodes: true,
     cables: true,

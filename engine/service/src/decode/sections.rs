@@ -23,6 +23,8 @@ const AGREEMENT: f64 = 1e-3;
 /// Sections as read, and the one of every segment.
 #[derive(Debug)]
 pub(crate) struct Sections<'a> {
+    /// Position in the list, by id.
+    pub(crate) names: Names<'a, usize>,
     pub(crate) list: Vec<SectionDraft<'a>>,
     /// Index of the section and strength factor of the fittings, by segment.
     pub(crate) of_segment: Vec<Option<(usize, f64)>>,
@@ -61,11 +63,13 @@ impl<'a> Sections<'a> {
         }
         let roles = read_roles(net, &names, findings);
         let mut sections = Self {
+            names: Names::new("sections"),
             list,
             of_segment: vec![None; net.segments.len()],
         };
         sections.of_cables(net, &names, &roles, findings, resolved);
         sections.of_struts(net, &names, &roles, findings, resolved);
+        sections.names = names;
         sections
     }
 
@@ -193,6 +197,11 @@ impl<'a> Sections<'a> {
     /// The section of a segment as the kernel wants it, where it could be read.
     pub(crate) fn section(&self, segment: usize) -> Option<Section> {
         let (index, factor) = self.of_segment[segment]?;
+        self.with_fittings(index, factor)
+    }
+
+    /// A section of the list as the kernel wants it, with the strength factor of end fittings, where it could be read.
+    pub(crate) fn with_fittings(&self, index: usize, factor: f64) -> Option<Section> {
         let draft = &self.list[index];
         Some(Section {
             axial_stiffness: draft.axial_stiffness?,

@@ -42,5 +42,9 @@ pub(crate) fn read(solving: Option<&v1::Solving>, findings: &mut Findings, resol
         }
         None => resolved.left_out(&at.field("max_iterations"), settings.max_iterations),
     }
+    // The encoder reads it from the message: it changes what is told, not what is found.
+    if solving.and_then(|solving| solving.energies).is_none() {
+        resolved.left_out(&at.field("energies"), false);
+    }
     settings
 }

@@ -18,6 +18,8 @@ use super::scope::{CABLES, Scopes};
 use super::supports::Supports;
 use crate::words::{Quoted, quoted_list, rounded};
 
+/// Corners of an outline: it is compared with each panel.
+const MOST_CORNERS: usize = 1000;
 /// Characters of the name of a panel.
 const LONGEST_NAME: usize = 128;
 
@@ -119,11 +121,12 @@ impl SurfaceDraft {
             let before = found.panels.len();
             match meshes(&edges, &plan) {
                 Ok(meshes) => {
+                    let encloses = !meshes.corners.is_empty();
                     for corners in meshes.corners {
                         let name = found.unique(name_of(&net, &corners));
                         found.add(&net, index, name, corners, &at, findings);
                     }
-                    if found.panels.len() == before && skin.spans {
+                    if !encloses && skin.spans {
                         findings.error(
                             reasons::SKIN_WITHOUT_PANELS,
                             &at,
@@ -506,6 +509,21 @@ fn read_zone(net: &NetDraft<'_>, zone: &v1::Zone, at: &Path<'_>, findings: &mut 
                 "give three corners at least, x and y of each in turn",
             )
             .value(numbers);
+        return None;
+    }
+    if numbers > 2 * MOST_CORNERS {
+        findings
+            .error(
+                reasons::TOO_MANY,
+                &field,
+                &zone.id,
+                format!(
+                    "{of}: its outline has {} corners: at most {MOST_CORNERS} are taken",
+                    numbers / 2
+                ),
+                "draw the outline with fewer corners",
+            )
+            .value(numbers / 2);
         return None;
     }
     let mut complete = true;

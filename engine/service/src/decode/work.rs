@@ -1,7 +1,7 @@
 //! The work of a brief without errors.
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::{Brief, EffectRule};
+use ropewalk_numerics::brief::{Brief, EffectRule, SizingOutcome};
 use ropewalk_numerics::model::Member;
 
 use super::cases::{REFERENCE, in_words};
@@ -9,11 +9,12 @@ use super::findings::accepts;
 use super::names::nearest;
 use super::reasons;
 use super::sections::Sections;
+use super::sizing::SizingWork;
 use super::supports::Supports;
 use crate::words::{Quoted, number, shown};
 
 /// The brief for the kernel, the message that it came from, and what results need of it.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub struct Work {
     /// The work.
     pub brief: Brief,
@@ -29,16 +30,18 @@ pub struct Work {
 }
 
 /// What results need of the message beside the domain.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub(crate) struct Names {
     /// Nodes in model order whose given position is where their springs are at rest.
     keeps_position: Vec<bool>,
     /// Where the breaking force of each segment comes from; empty: not told.
     breaking_force_origins: Vec<String>,
+    /// Sections that are to be chosen, if any.
+    sizing: Option<SizingWork>,
 }
 
 impl Names {
-    pub(crate) fn new(sections: &Sections<'_>, supports: &Supports) -> Self {
+    pub(crate) fn new(sections: &Sections<'_>, supports: &Supports, sizing: Option<SizingWork>) -> Self {
         let origins = sections.of_segment.iter().map(|section| match section {
             Some((section, _)) => sections.list[*section].message.breaking_force_origin.clone(),
             None => String::new(),
@@ -46,6 +49,7 @@ impl Names {
         Self {
             keeps_position: supports.is_elastic.clone(),
             breaking_force_origins: origins.collect(),
+            sizing,
         }
     }
 }
@@ -66,6 +70,41 @@ impl Work {
             names,
             findings: findings.to_vec(),
         }
+    }
+
+    /// Sections that are to be chosen, if any.
+    #[must_use]
+    pub fn sizing(&self) -> Option<&SizingWork> {
+        self.names.sizing.as_ref()
+    }
+
+    /// Why the brief cannot be frozen, if so: sections that are still to be chosen.
+    pub(crate) fn refuse_to_freeze(&self) -> Option<v1::Finding> {
+        self.names.sizing.as_ref().map(|_| v1::Finding {
+            severity: v1::FindingSeverity::Error.into(),
+            reason: reasons::NOT_SERVED.to_owned(),
+            path: "sizing".to_owned(),
+            message: "a brief whose sections are still to be chosen cannot be frozen".to_owned(),
+            cure: "run it, write the chosen sections into the brief, and take sizing out".to_owned(),
+            ..v1::Finding::default()
+        })
+    }
+
+    /// The work with the sections that were chosen.
+    #[must_use]
+    pub fn sized(&self, outcome: &SizingOutcome) -> Self {
+        let mut work = self.clone();
+        work.brief = outcome.brief.clone();
+        if let Some(sizing) = &self.names.sizing {
+            let units = sizing.given.units.iter().zip(&sizing.choices).zip(&outcome.choice);
+            for ((unit, names), position) in units {
+                let (_, origin) = &names.sections[*position];
+                for segment in &unit.segments {
+                    work.names.breaking_force_origins[segment.index()].clone_from(origin);
+                }
+            }
+        }
+        work
     }
 
     /// Cases that sets, cases and design effects in `only` name, in brief order, those that effects need included; all of

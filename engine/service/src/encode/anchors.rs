@@ -1,12 +1,11 @@
 //! What each anchor must take.
 
 use nalgebra::Vector3;
-use prost::Message as _;
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::Plan;
 use ropewalk_numerics::check::{AnchorExtremes, AnchorPull};
 
-use super::parts::{BYTES, count};
+use super::parts::{count, fitting};
 use super::verdicts::case_name;
 
 /// Share of the largest pull below which a vertical part is noise.
@@ -14,14 +13,8 @@ const NOISE: f64 = 1e-3;
 
 /// The anchors in node order, as many as fit.
 pub(super) fn sheet(plan: &Plan, anchors: &[AnchorExtremes]) -> v1::AnchorSheet {
-    let mut size = 0;
-    let all = anchors.iter().map(|anchor| forces(plan, anchor));
-    let fitting = all.take_while(|forces| {
-        size += forces.encoded_len() + 8;
-        size <= BYTES
-    });
     v1::AnchorSheet {
-        anchors: fitting.collect(),
+        anchors: fitting(anchors.iter().map(|anchor| forces(plan, anchor))),
         total: count(anchors.len()),
     }
 }
@@ -43,7 +36,7 @@ fn pull(plan: &Plan, pull: &AnchorPull) -> v1::AnchorPull {
     let force = pull.force + Vector3::zeros();
     let horizontal = force.xy().norm();
     v1::AnchorPull {
-        case: case_name(plan, pull.case).to_owned(),
+        case: case_name(plan.brief(), pull.case).to_owned(),
         x_n: force.x,
         y_n: force.y,
         up_n: force.z,

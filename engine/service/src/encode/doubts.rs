@@ -6,10 +6,12 @@ use ropewalk_numerics::model::{Net, SegmentId};
 use ropewalk_numerics::shape::ShapeReport;
 
 use crate::decode::{Work, reasons};
-use crate::words::{Quoted, force, length, quoted_list, rounded};
+use crate::words::{Quoted, force, length, number, quoted_list, rounded};
 
 /// Movement over the extent of the net from which units or loads are to be doubted.
 const LARGE_MOVEMENT: f64 = 0.25;
+/// Strain from which units are to be doubted: steel breaks at about 0.02.
+const LARGEST_STRAIN: f64 = 0.05;
 
 /// Findings about a state, with the doubts marked that the brief accepts.
 pub(super) fn of_state(work: &Work, net: &Net, case: &str, state: &StateResult) -> Vec<v1::Finding> {
@@ -17,6 +19,7 @@ pub(super) fn of_state(work: &Work, net: &Net, case: &str, state: &StateResult) 
         loose_nodes(net, state),
         slack_in_reference(net, case, state),
         over_breaking(net, state),
+        strained(net, state),
         large_movement(net, state),
         audit_failed(net, state),
     ];
@@ -136,6 +139,36 @@ fn over_breaking(net: &Net, state: &StateResult) -> Option<v1::Finding> {
     ))
 }
 
+/// The member that is strained most, where no rope or strut bears that.
+fn strained(net: &Net, state: &StateResult) -> Option<v1::Finding> {
+    let bears = |segment: &usize| !state.slack[*segment] && state.stretches[*segment] > 0.0;
+    let strains = (0..state.stretches.len())
+        .filter(bears)
+        .map(|segment| (segment, state.stretches[segment] - 1.0));
+    let (segment, strain) = strains.reduce(|worst, next| if next.1.abs() > worst.1.abs() { next } else { worst })?;
+    if strain.abs() <= LARGEST_STRAIN {
+        return None;
+    }
+    let id = net.member_name(SegmentId::new(segment));
+    let stiffness = net.segments()[segment].section.axial_stiffness;
+    let how = if strain > 0.0 { "stretched" } else { "squeezed" };
+    let message = format!(
+        "{} is {how} by {} % with {}: was its axial stiffness of {} N given in kN?",
+        Quoted(id),
+        rounded(100.0 * strain.abs(), 3),
+        force(state.axial_forces[segment]),
+        number(stiffness)
+    );
+    Some(finding(
+        v1::FindingSeverity::Doubt,
+        reasons::UNIT_SLIP,
+        id,
+        number(stiffness),
+        message,
+        "check the units of stiffness, prestress and loads, or accept this doubt",
+    ))
+}
+
 fn large_movement(net: &Net, state: &StateResult) -> Option<v1::Finding> {
     let first = *state.positions.first()?;
     let fold = state.positions.iter().zip(&state.displacements);
@@ -178,13 +211,15 @@ fn little_stiffness(net: &Net, state: &StateResult) -> Option<v1::Finding> {
         Standing::Unstable => "none: the state is not stable".to_owned(),
     };
     let id = net.node_name(*node);
+    // Adding zero takes the sign from a zero.
+    let shown = |component: f64| (component * 100.0).round() / 100.0 + 0.0;
     let message = format!(
         "the least stiffness is {} N/m, {how}; most moves {}, along ({:.2}, {:.2}, {:.2})",
         rounded(least.stiffness, 3),
         Quoted(id),
-        by.x,
-        by.y,
-        by.z
+        shown(by.x),
+        shown(by.y),
+        shown(by.z)
     );
     Some(finding(
         v1::FindingSeverity::Doubt,

@@ -11,7 +11,7 @@ use super::parts::{count, event, first_ids, split};
 use super::state::{Array, flat, unit};
 use crate::decode::{ENVELOPE, REFERENCE, Work};
 
-/// Members of a design effect, or of a loss, that are listed.
+/// Members of a design effect that are listed.
 const MEMBERS: usize = 20;
 /// Ids that are listed.
 const LISTED: usize = 100;
@@ -228,7 +228,14 @@ fn row(work: &Work, plan: &Plan, loss: &Loss) -> v1::LossRow {
         cases: count(loss.cases.len()),
         unanswered: first_ids(unanswered, LISTED),
         unanswered_total: count(loss.unanswered.len()),
-        worst: worst(plan, loss),
+        worst: (loss.worst.iter())
+            .map(|worst| v1::LossCell {
+                member: work.member_name(worst.member).to_owned(),
+                force_n: worst.force,
+                share_of_breaking: worst.share,
+                case: brief.case_name(worst.case).to_owned(),
+            })
+            .collect(),
         slack_segments: most(loss.slack),
         loose_nodes: most(loss.loose),
         ..v1::LossRow::default()
@@ -239,51 +246,4 @@ fn row(work: &Work, plan: &Plan, loss: &Loss) -> v1::LossRow {
         brief.case_name(moved.case).clone_into(&mut row.largest_movement_case);
     }
     row
-}
-
-/// Members that are left, by the share of their breaking force, then by the size of their force.
-fn worst(plan: &Plan, loss: &Loss) -> Vec<v1::LossCell> {
-    let brief = plan.brief();
-    let net = &brief.net;
-    // Of each member its worst segment.
-    let mut cells: Vec<(Member, Option<f64>, f64, usize)> = Vec::new();
-    for (segment, extreme) in net.segments().iter().zip(&loss.largest_forces) {
-        let Some(extreme) = extreme else { continue };
-        let breaking = segment
-            .section
-            .breaking_force
-            .filter(|_| matches!(segment.member, Member::Cable(_)));
-        let share = breaking.map(|breaking| extreme.value / breaking);
-        let next = (segment.member, share, extreme.value, extreme.case);
-        match cells.last_mut() {
-            Some(last) if last.0 == segment.member => {
-                if before(&next, last) {
-                    *last = next;
-                }
-            }
-            _ => cells.push(next),
-        }
-    }
-    // Stable: of equals the first in model order.
-    cells.sort_by(|a, b| rank(b).0.total_cmp(&rank(a).0).then(rank(b).1.total_cmp(&rank(a).1)));
-    cells.truncate(MEMBERS);
-    let cell = |(member, share_of_breaking, force_n, case): (Member, Option<f64>, f64, usize)| v1::LossCell {
-        member: match member {
-            Member::Cable(cable) => net.cables()[cable.index()].name.clone(),
-            Member::Strut(strut) => net.struts()[strut.index()].name.clone(),
-        },
-        force_n,
-        share_of_breaking,
-        case: brief.case_name(case).to_owned(),
-    };
-    cells.into_iter().map(cell).collect()
-}
-
-/// Share and size that cells are sorted by.
-fn rank(cell: &(Member, Option<f64>, f64, usize)) -> (f64, f64) {
-    (cell.1.unwrap_or(-1.0), cell.2.abs())
-}
-
-fn before(a: &(Member, Option<f64>, f64, usize), b: &(Member, Option<f64>, f64, usize)) -> bool {
-    rank(a).0 > rank(b).0 || (rank(a).0 == rank(b).0 && rank(a).1 > rank(b).1)
 }

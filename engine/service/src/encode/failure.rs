@@ -25,6 +25,16 @@ fn failure(
         cure: cure.to_owned(),
         nodes: first_ids(nodes.iter().map(AsRef::as_ref), LOOKED_AT),
         members: first_ids(members.iter().map(AsRef::as_ref), LOOKED_AT),
+        group: group(reason, nodes, members),
+    }
+}
+
+/// What failures of one cause have in common: the reason and the first id to look at.
+fn group(reason: &str, nodes: &[impl AsRef<str>], members: &[impl AsRef<str>]) -> String {
+    let mut ids = nodes.iter().map(AsRef::as_ref).chain(members.iter().map(AsRef::as_ref));
+    match ids.find(|id: &&str| !id.is_empty()) {
+        Some(culprit) => format!("{reason}/{culprit}"),
+        None => reason.to_owned(),
     }
 }
 
@@ -48,6 +58,22 @@ pub(super) fn of_stop(case: &str, termination: Termination, load_factor: f64, ca
     message.push_str(&format!(". {cause}"));
     let nodes: Vec<&str> = cause.worst.iter().map(|culprit| culprit.node.as_str()).collect();
     failure(reason, message, &cure_of(&cause.likely), &nodes, &cause.members)
+}
+
+/// Why the state of a case is no answer although it is in balance: its water has not settled.
+pub(super) fn of_pond(case: &str, cause: &Cause) -> v1::Failure {
+    let grows = matches!(cause.likely, LikelyCause::Pond { grows: true, .. });
+    let (reason, what) = if grows {
+        ("POND_GROWS", "is not stable under water")
+    } else {
+        ("POND_NOT_SETTLED", "has no answer with water")
+    };
+    let place = match &cause.likely {
+        LikelyCause::Pond { place, .. } => vec![place.as_str()],
+        _ => Vec::new(),
+    };
+    let message = format!("case {} {what}: {cause}", Quoted(case));
+    failure(reason, message, &cure_of(&cause.likely), &place, &cause.members)
 }
 
 /// Why no state of a case can be given.
@@ -82,7 +108,14 @@ fn cure_of(likely: &LikelyCause) -> String {
         LikelyCause::MuchSlack { .. } => "give more prestress there, or less load",
         LikelyCause::RanAway => "check size and sign of the loads, and what holds these nodes",
         LikelyCause::Tips { .. } => "give more prestress, or check the sign of the loads",
-        LikelyCause::OutOfIterations => "allow more iterations in solving.max_iterations, or put the load on in steps",
+        LikelyCause::Pond { grows: true, .. } => {
+            "give the skin more fall or the ropes more prestress, so that water runs off"
+        }
+        LikelyCause::Pond { grows: false, .. } => {
+            "the pond is near to growing without end: give the skin more fall or the ropes more prestress"
+        }
+        LikelyCause::OutOfIterations => "allow more iterations in solving.max_iterations",
+        LikelyCause::GaveUp => "put the load on in steps with solving.load_steps, or give more prestress",
     };
     cure.to_owned()
 }

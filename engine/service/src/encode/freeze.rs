@@ -25,7 +25,7 @@ pub fn freeze(
     found: &Result<ReferenceOutcome, ShapeError>,
 ) -> Result<Vec<v1::FreezeResponse>, String> {
     let history = found.as_ref().map_or(&[][..], |reference| &reference.history);
-    let summary = outcome::reference_summary(plan, found, history);
+    let summary = outcome::reference_summary(work, plan, found, history);
     let reference = match found {
         Ok(reference) if reference.result.audit.passed => reference,
         Ok(_) => {
@@ -207,7 +207,7 @@ fn merging_parts(mut brief: v1::Brief) -> Vec<v1::Brief> {
             })+
         };
     }
-    take!(actions, cases, checks, accepted);
+    take!(actions, combinations, cases, checks, accepted);
     parts[0] = brief;
     parts
 }

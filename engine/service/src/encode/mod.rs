@@ -7,16 +7,19 @@
 //! | `progress` | what is being worked on |
 //! | `state`, `outcome`, `failure`, `doubts` | a state: arrays, closing words, why there is none, what is odd about it |
 //! | `shape` | how the reference state meets what was wanted |
+//! | `certificate` | how far a state can be from the true one |
 //! | `surface` | panels, and what each action does in the reference state |
 //! | `effects` | sums of effects, paths of cases, losses of members |
 //! | `diagnosis` | free movements, states of self-stress, least stiffnesses |
 //! | `closing`, `verdicts`, `rules`, `anchors`, `cautions` | the end of a run |
+//! | `sizing` | sections chosen from lists |
 //! | `freeze` | the brief with what was found written in |
 //! | `report` | what reading the brief told |
 //! | `parts` | how much fits a message |
 
 mod anchors;
 mod cautions;
+mod certificate;
 mod closing;
 mod diagnosis;
 mod doubts;
@@ -30,6 +33,7 @@ mod progress;
 mod report;
 mod rules;
 mod shape;
+mod sizing;
 mod state;
 mod surface;
 mod verdicts;
@@ -42,3 +46,4 @@ pub use head::{id_tables, started};
 pub use outcome::{case, engine_error, reference};
 pub use progress::progress;
 pub use report::check_report;
+pub use sizing::sizing;

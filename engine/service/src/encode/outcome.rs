@@ -1,9 +1,9 @@
 //! A state from its beginning to its closing words.
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::{CaseOutcome, Plan, ReferenceOutcome, StateResult};
+use ropewalk_numerics::brief::{CaseOutcome, LikelyCause, Plan, ReferenceOutcome, StateResult};
 use ropewalk_numerics::check::CaseDigest;
-use ropewalk_numerics::equilibrium::{IterationReport, Termination};
+use ropewalk_numerics::equilibrium::IterationReport;
 use ropewalk_numerics::model::{AxialLaw, Net, SegmentId};
 use ropewalk_numerics::shape::ShapeError;
 use v1::run_response::Event;
@@ -11,7 +11,7 @@ use v1::run_response::Event;
 use super::closing::Noted;
 use super::parts::{count, event, first_ids};
 use super::progress::way;
-use super::{diagnosis, doubts, failure, shape, state, surface};
+use super::{certificate, diagnosis, doubts, failure, shape, state, surface};
 use crate::decode::{REFERENCE, Work, reasons};
 use crate::words::quoted_list;
 
@@ -49,7 +49,7 @@ pub fn reference(
     }
     let findings = reference_findings(work, plan, found);
     messages.extend(findings.into_iter().map(|finding| event(Event::Finding(finding))));
-    messages.push(event(Event::CaseSummary(reference_summary(plan, found, history))));
+    messages.push(event(Event::CaseSummary(reference_summary(work, plan, found, history))));
     if let Ok(reference) = found {
         messages.extend(surface::tables(plan, reference));
     }
@@ -74,13 +74,14 @@ pub(super) fn reference_findings(
 
 /// The closing words of the reference state.
 pub(super) fn reference_summary(
+    work: &Work,
     plan: &Plan,
     found: &Result<ReferenceOutcome, ShapeError>,
     history: &[IterationReport],
 ) -> v1::CaseSummary {
     match found {
         Ok(reference) => {
-            let mut summary = summary(&plan.brief().net, REFERENCE, &reference.result, reference);
+            let mut summary = summary(work, &plan.brief().net, REFERENCE, &reference.result, reference);
             summary.set_outcome(v1::CaseOutcome::Answered);
             summary.set_way(way(reference.report.way));
             summary.load_factor = 1.0;
@@ -124,24 +125,22 @@ pub fn case(
             messages.extend(state::arrays(net, name, result, &reference.result));
             messages.extend(state::history(name, &solution.history));
             messages.extend(diagnosed(net, name, result));
-            let mut closing = summary(net, name, result, reference);
+            let mut closing = summary(work, net, name, result, reference);
             closing.set_way(way(solution.way));
             closing.load_factor = solution.load_factor;
             closing.iterations = iterations(&solution.history);
             closing.factorisations = solution.factorisations;
-            if solution.termination == Termination::Converged {
+            closing.ponding = result.ponding.as_ref().map(|ponding| surface::ponding(net, ponding));
+            if outcome.is_answered() {
                 closing.set_outcome(v1::CaseOutcome::Answered);
                 closing.worst_ratio = plan.worst_ratio(reference, case, &digest);
                 findings.extend(doubts::of_state(work, net, name, result));
             } else {
                 closing.set_outcome(v1::CaseOutcome::NotConverged);
-                let cause = cause.as_ref();
-                closing.failure = Some(failure::of_stop(
-                    name,
-                    solution.termination,
-                    solution.load_factor,
-                    cause,
-                ));
+                closing.failure = Some(match cause.as_ref() {
+                    Some(cause) if matches!(cause.likely, LikelyCause::Pond { .. }) => failure::of_pond(name, cause),
+                    cause => failure::of_stop(name, solution.termination, solution.load_factor, cause),
+                });
             }
             closing
         }
@@ -215,7 +214,7 @@ fn diagnosed(net: &Net, case: &str, state: &StateResult) -> Vec<v1::RunResponse>
 }
 
 /// What a state says of itself.
-fn summary(net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutcome) -> v1::CaseSummary {
+fn summary(work: &Work, net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutcome) -> v1::CaseSummary {
     let name = |node: usize| net.nodes()[node].name.clone();
     let movement = doubts::largest_movement(state);
     let lowest = lowest_tension_share(net, state, reference);
@@ -239,6 +238,10 @@ fn summary(net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutc
         }),
         loose_nodes: first_ids(state.loose_nodes.iter().map(|node| net.node_name(*node)), LOOSE_NODES),
         loose_nodes_total: count(state.loose_nodes.len()),
+        certificate: state
+            .certificate
+            .as_ref()
+            .map(|found| certificate::of(work, net, found)),
         smallest_stiffness_n_per_m: (state.diagnosis.as_ref())
             .and_then(|found| found.stiffnesses.first())
             .map(|least| least.stiffness),

@@ -33,6 +33,17 @@ pub(super) fn split<M: Message>(list: Vec<M>) -> Vec<Vec<M>> {
     parts
 }
 
+/// The first of many messages: [`BYTES`] in all.
+pub(super) fn fitting<M: Message>(messages: impl Iterator<Item = M>) -> Vec<M> {
+    let mut size = 0;
+    messages
+        .take_while(|message| {
+            size += message.encoded_len() + 8;
+            size <= BYTES
+        })
+        .collect()
+}
+
 /// The first of many ids: at most `count` of them and [`BYTES`] in all.
 pub(super) fn first_ids<'a>(ids: impl Iterator<Item = &'a str>, count: usize) -> Vec<String> {
     let mut size = 0;

@@ -1,8 +1,8 @@
 //! Panels in the reference state, and what each action does there.
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::{LoadPicture, Plan, ReferenceOutcome};
-use ropewalk_numerics::load::{Load, Surface};
+use ropewalk_numerics::brief::{LoadPicture, Plan, Ponding, PondingEnd, ReferenceOutcome};
+use ropewalk_numerics::load::{Load, Place, Surface};
 use ropewalk_numerics::model::{Net, fan};
 use v1::run_response::Event;
 
@@ -105,6 +105,41 @@ fn pictures(net: &Net, surface: &Surface, action: &str, picture: &LoadPicture) -
         }
     }
     parts.into_iter().map(|part| event(Event::LoadPicture(part))).collect()
+}
+
+/// Water on skins.
+pub(super) fn ponding(net: &Net, ponding: &Ponding) -> v1::PondingResult {
+    /// Ponds that are listed.
+    const LISTED: usize = 100;
+    let ponds = ponding.ponds.iter().take(LISTED).map(|pond| {
+        let (node, panel) = match pond.deepest {
+            Place::Node(node) => (net.node_name(node), ""),
+            Place::Panel(panel) => ("", net.panels()[panel].name.as_str()),
+        };
+        v1::Pond {
+            node: node.to_owned(),
+            panel: panel.to_owned(),
+            xyz_m: pond.position.iter().copied().collect(),
+            depth_m: pond.depth,
+            level_m: pond.level,
+            volume_m3: pond.volume,
+            mass_kg: ponding.density * pond.volume,
+            area_m2: pond.area,
+        }
+    });
+    v1::PondingResult {
+        end: match ponding.end {
+            PondingEnd::Settled => v1::PondingEnd::Settled,
+            PondingEnd::Growing => v1::PondingEnd::Growing,
+            PondingEnd::NotSettled => v1::PondingEnd::NotSettled,
+        }
+        .into(),
+        volume_m3: ponding.volume(),
+        mass_kg: ponding.density * ponding.volume(),
+        ponds: ponds.collect(),
+        ponds_total: count(ponding.ponds.len()),
+        round_volume_m3: ponding.volumes.clone(),
+    }
 }
 
 /// What is odd about panels and pressures in the reference state.

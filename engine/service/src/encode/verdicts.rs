@@ -2,7 +2,7 @@
 
 use prost::Message as _;
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::{CheckKind, CheckResult, Plan, Verdict};
+use ropewalk_numerics::brief::{Brief, CheckKind, CheckResult, Plan, Verdict};
 use ropewalk_numerics::check::{Covered, Judgement, Lack};
 
 use super::parts::{BYTES, count, first_ids};
@@ -68,8 +68,8 @@ fn fit(mut results: Vec<v1::CheckResult>) -> Vec<v1::CheckResult> {
     results
 }
 
-fn name(plan: &Plan, covered: Covered) -> &str {
-    let net = &plan.brief().net;
+pub(super) fn name(brief: &Brief, covered: Covered) -> &str {
+    let net = &brief.net;
     match covered {
         Covered::Cable(cable) => &net.cables()[cable.index()].name,
         Covered::Strut(strut) => &net.struts()[strut.index()].name,
@@ -80,21 +80,21 @@ fn name(plan: &Plan, covered: Covered) -> &str {
 }
 
 /// The part that was judged; of a clearance the member or panel that comes nearest.
-fn judged_name<'p>(plan: &'p Plan, judgement: &Judgement) -> &'p str {
+pub(super) fn judged_name<'b>(brief: &'b Brief, judgement: &Judgement) -> &'b str {
     match (judgement.of, judgement.segment, judgement.panel) {
-        (Covered::Point, Some(segment), _) => plan.brief().net.member_name(segment),
-        (Covered::Point, None, Some(panel)) => name(plan, Covered::Panel(panel)),
-        (of, ..) => name(plan, of),
+        (Covered::Point, Some(segment), _) => brief.net.member_name(segment),
+        (Covered::Point, None, Some(panel)) => name(brief, Covered::Panel(panel)),
+        (of, ..) => name(brief, of),
     }
 }
 
 /// Name of a case in results.
-pub(super) fn case_name(plan: &Plan, case: Option<usize>) -> &str {
-    case.map_or(REFERENCE, |case| plan.brief().case_name(case))
+pub(super) fn case_name(brief: &Brief, case: Option<usize>) -> &str {
+    case.map_or(REFERENCE, |case| brief.case_name(case))
 }
 
 fn ids<'a>(plan: &Plan, covered: impl Iterator<Item = &'a Covered>) -> Vec<String> {
-    first_ids(covered.map(|covered| name(plan, *covered)), NOT_JUDGED)
+    first_ids(covered.map(|covered| name(plan.brief(), *covered)), NOT_JUDGED)
 }
 
 fn head(work: &Work, number: usize, kind: &CheckKind) -> v1::CheckResult {
@@ -125,12 +125,12 @@ fn check(work: &Work, plan: &Plan, number: usize, result: &CheckResult) -> v1::C
     };
     if let Some(worst) = worst {
         let (_, unit, scale) = rules::measure(worst.measure);
-        message.worst = judged_name(plan, worst).to_owned();
+        message.worst = judged_name(plan.brief(), worst).to_owned();
         message.demand = worst.demand * scale;
         message.limit = worst.limit * scale;
         message.unit = unit.to_owned();
         message.ratio = worst.ratio;
-        message.governing_case = case_name(plan, worst.case).to_owned();
+        message.governing_case = case_name(plan.brief(), worst.case).to_owned();
         let origin = worst
             .segment
             .and_then(|segment| work.breaking_force_origin(segment.index()));
@@ -155,13 +155,13 @@ fn judgements(plan: &Plan, all: &[Judgement]) -> Vec<v1::Judgement> {
     let listed = sorted.into_iter().take(JUDGED).map(|judgement| {
         let (words, unit, scale) = rules::measure(judgement.measure);
         v1::Judgement {
-            id: judged_name(plan, judgement).to_owned(),
+            id: judged_name(plan.brief(), judgement).to_owned(),
             demand: judgement.demand * scale,
             limit: judgement.limit * scale,
             unit: unit.to_owned(),
             ratio: judgement.ratio,
             passes: judgement.passes,
-            governing_case: case_name(plan, judgement.case).to_owned(),
+            governing_case: case_name(plan.brief(), judgement.case).to_owned(),
             measure: words.to_owned(),
         }
     });

@@ -18,7 +18,13 @@ pub(super) async fn freeze(
     request: v1::FreezeRequest,
     outbox: Outbox<v1::FreezeResponse>,
 ) -> Result<(), Refusal> {
-    let (prepared, ()) = prepare(&work, request.brief.unwrap_or_default(), |_, _| Ok(())).await?;
+    let (prepared, ()) = prepare(&work, request.brief.unwrap_or_default(), |prepared, _| {
+        prepared
+            .work
+            .refuse_to_freeze()
+            .map_or(Ok(()), |finding| Err(Refusal::BriefHasErrors(vec![finding])))
+    })
+    .await?;
     tracing::info!(digest = prepared.work.digest, "freeze");
     let desk = Arc::new(ProgressDesk::new(0));
     let breaks = work.fault(&Fault::PanicInReference);

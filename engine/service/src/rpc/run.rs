@@ -44,6 +44,7 @@ pub(super) async fn run(work: Work, request: v1::RunRequest, outbox: Outbox<v1::
     outbox.send(head).await?;
 
     let desk = Arc::new(ProgressDesk::new(cases.len()));
+    let prepared = size(&work, prepared, &desk, &clock, &outbox).await?;
     let (mut tally, reference) = find_reference(&work, &prepared, &desk, &clock, &cases, &outbox).await?;
     if let Some(reference) = reference {
         let solver = Solver {
@@ -103,6 +104,35 @@ fn head(about: &Prepared, cases: &[usize], findings: Vec<v1::Finding>) -> Vec<v1
         .chain(findings.into_iter().map(Event::Finding))
         .map(event)
         .collect()
+}
+
+/// Chooses sections, where the brief asks for it: the work goes on with them.
+async fn size(
+    work: &Work,
+    prepared: Arc<Prepared>,
+    desk: &Arc<ProgressDesk>,
+    clock: &Arc<Clock>,
+    outbox: &Outbox<v1::RunResponse>,
+) -> Result<Arc<Prepared>, Refusal> {
+    if prepared.work.sizing().is_none() {
+        return Ok(prepared);
+    }
+    let (stop, place) = (work.stop.clone(), Arc::clone(&work.place));
+    let (desk_there, clock) = (Arc::clone(desk), Arc::clone(clock));
+    let mut pending = work.shared.pool.start(move || {
+        let _place = place;
+        let observe = &mut |task, report: &_| desk_there.observe(&prepared, task, report, &stop);
+        let (work, told) = clock.time(|| encode::sizing(&prepared.work, observe))?;
+        let plan = Plan::new(work.brief.clone());
+        Some((Arc::new(Prepared { work, plan }), told))
+    });
+    let answer = desk.relay(&mut pending, outbox, progress).await;
+    // Broken off, there is nobody left who waits for the answer.
+    let (sized, told) = answer
+        .map_err(|panicked| work.internal(panicked))?
+        .ok_or(Refusal::ClientLeft)?;
+    outbox.send(vec![told]).await?;
+    Ok(sized)
 }
 
 async fn find_reference(

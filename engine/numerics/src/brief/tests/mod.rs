@@ -1,6 +1,8 @@
 //! Briefs from end to end.
 
+mod effects;
 mod outcomes;
+mod sizing;
 mod worked_numbers;
 
 use std::ops::ControlFlow;

@@ -373,3 +373,35 @@ fn temperature_changes_the_length_and_not_the_load() {
     assert!((hanging.start - same.start).norm() < 1e-9);
     assert!(hanging.length > 20.02);
 }
+
+/// The gap as its definition has it, from the energies of two chords: `v + δ` is the force of the second.
+#[test]
+fn gap_is_that_of_its_definition() {
+    // Gauss's rule is exact for x^14: 1/15 on (0, 1), twice.
+    let power: f64 = GAUSS.iter().map(|(x, w)| w * x.powi(14)).sum();
+    close(power, 1.0 / 15.0, 1e-15);
+    let mut dice = Dice(31);
+    for case in 0..200 {
+        let (mut rope, chord) = random_rope(&mut dice);
+        rope.load *= 10.0_f64.max(1e-3 * rope.axial_stiffness / rope.unstressed_length / rope.load.norm());
+        let chord = if case % 10 == 0 {
+            rope.load.normalize() * (chord.norm().min(0.9 * rope.stress_free_length))
+        } else {
+            chord
+        };
+        let other = chord * dice.between(0.6, 1.0) + dice.direction() * (dice.between(0.05, 0.3) * chord.norm());
+        let (at, beside) = (rope.at(&chord, None), rope.at(&other, None));
+        // Conjugate: Cc(v) = v·d − W·d − potential, the load's work taken out on both sides.
+        let total = rope.load * rope.unstressed_length;
+        let conjugate = |h: &Hanging, d: &Vector3<f64>| (h.start - total).dot(d) - h.potential;
+        let delta = beside.start - at.start;
+        let expected = conjugate(&beside, &other) - conjugate(&at, &chord) - delta.dot(&chord);
+        let gap = at.gap(&delta);
+        let size = conjugate(&beside, &other).abs() + conjugate(&at, &chord).abs();
+        assert!(gap >= 0.0);
+        assert!(
+            (gap - expected).abs() <= 1e-2 * gap + 1e-12 * size,
+            "{case}: {gap:e} {expected:e} {size:e}"
+        );
+    }
+}
