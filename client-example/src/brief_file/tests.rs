@@ -20,7 +20,7 @@ fn lists_known_names_where_none_is_near() {
     let found = complaint(r#"{"prestress": {"qqqq": 1}}"#);
     assert_eq!(
         found,
-        r#"b.json: prestress.qqqq: unknown name "qqqq"; known here: under, hold, rules, note"#
+        r#"b.json: prestress.qqqq: unknown name "qqqq"; known here: under, hold, rules, note, targets"#
     );
 }
 

@@ -81,8 +81,9 @@
   }
   function axis(number, name) { return "F" + name + " " + digits(number) + " kN"; }
   function say(action) {
-    var text = "Factor 1, reference state. Sum: " + ["x", "y", "z"].map(function (name, a) { return axis(action.force[a], name); }).join(", ");
-    if (action.point.length) text += ", acting at (" + action.point.map(function (part) { return part.toFixed(2); }).join(", ") + ") m";
+    var size = Math.hypot(action.force[0], action.force[1], action.force[2]);
+    var text = "Factor 1, reference state. Sum: " + ["x", "y", "z"].map(function (name, a) { return axis(Math.abs(action.force[a]) < 1e-4 * size ? 0 : action.force[a], name); }).join(", ");
+    if (action.point.length) text += ", acting at (" + action.point.map(function (part) { return part.toFixed(2).replace(/^-0\.00$/, "0.00"); }).join(", ") + ") m";
     text += ". ";
     if (action.panels) text += action.panels + " of " + data.panels.length + " panels loaded, " + digits(action.area) + " m\u00b2, " + digits(action.onPlan) + " m\u00b2 on plan. ";
     else text += data.panels.length ? "No panel is loaded by a pressure. " : "";

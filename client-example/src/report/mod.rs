@@ -96,7 +96,7 @@ fn head(run: &Run) -> String {
         "<header>\n<p class=\"over\">{}</p>\n<h1>{}</h1>\n{note}\n\
          <div class=\"verdict {class}\"><strong>{}</strong><span>{}</span></div>\n\
          <dl class=\"facts\">{}{}{}{}<div><dt>nodes</dt><dd>{}</dd></div><div><dt>segments</dt><dd>{}</dd></div></dl>\n\
-         <p class=\"audit\">{}<br>{}</p>\n</header>\n",
+         <p class=\"audit\">{}<br>{}</p>\n<nav id=\"contents\" class=\"contents\" aria-label=\"Contents\"></nav>\n</header>\n",
         markup(&run.brief.id),
         markup(run.title()),
         sheet::verdict_word(verdict),
@@ -148,14 +148,14 @@ fn causes(run: &Run) -> String {
             )
         })
         .collect();
-    format!("<section class=\"causes\"><h2>Without an answer</h2><ol>{items}</ol></section>\n")
+    format!("<section id=\"causes\" class=\"causes\"><h2>Without an answer</h2><ol>{items}</ol></section>\n")
 }
 
 fn convergence(run: &Run) -> String {
     match draw::convergence(run) {
         None => String::new(),
         Some(plot) => format!(
-            "<section><h2>Convergence</h2><p class=\"note\">Largest out-of-balance force (N, log scale) over iterations.</p>\
+            "<section id=\"convergence\"><h2>Convergence</h2><p class=\"note\">Largest out-of-balance force (N, log scale) over iterations.</p>\
              <div class=\"wide\">{plot}</div></section>\n"
         ),
     }
@@ -169,7 +169,7 @@ fn doubling(run: &Run) -> String {
         .take(DOUBLINGS)
         .map(|(state, path)| format!("<div class=\"wide\">{}</div>\n", draw::doubling(run, state, path)))
         .collect();
-    format!("<section class=\"drawings\"><h2>Load paths</h2>\n{plots}</section>\n")
+    format!("<section id=\"load-paths\" class=\"drawings\"><h2>Load paths</h2>\n{plots}</section>\n")
 }
 
 fn drawings(run: &Run, scale: &Scale) -> String {
@@ -189,7 +189,7 @@ fn drawings(run: &Run, scale: &Scale) -> String {
         return text;
     }
     format!(
-        "<section class=\"drawings\"><h2>Drawings</h2><p class=\"note\">Drawn here: the reference state and the case with the worst ratio. More plans lie beside this page.</p>\n{text}</section>\n"
+        "<section id=\"drawings\" class=\"drawings\"><h2>Drawings</h2><p class=\"note\">Drawn here: the reference state and the case with the worst ratio. More plans lie beside this page.</p>\n{text}</section>\n"
     )
 }
 
@@ -284,18 +284,46 @@ mod tests {
 
     fn page_of(run: &Run) -> String {
         let scale = Scale::over([14e3, 25e3]);
-        page(run, &[sheet::checks(run), sheet::ropes(run), sheet::cases(run)], &scale)
+        let mut sheets = vec![
+            sheet::checks(run),
+            sheet::ropes(run),
+            sheet::cases(run),
+            sheet::anchor_sets(run),
+        ];
+        sheets.extend(
+            [sheet::losses(run), sheet::loads(run), sheet::doubling(run)]
+                .into_iter()
+                .flatten(),
+        );
+        page(run, &sheets, &scale)
     }
 
     #[test]
     fn ids_cannot_write_on_the_page() {
-        let run = sample::run_named(Names {
+        let mut run = sample::run_named(Names {
             middle: "m</script><script>alert(1)</script>",
             rope: "\"><img src=x onerror=alert(1)>",
             case: "<b>'c'</b>",
             title: "<script>alert(2)</script>",
         });
+        let nasty = "<img src=x>".to_owned();
+        run.losses = vec![v1::LossRow {
+            removed: vec![nasty.clone()],
+            worst: vec![v1::LossCell {
+                member: nasty.clone(),
+                share_of_breaking: Some(0.7),
+                case: "\"><b>".to_owned(),
+                ..Default::default()
+            }],
+            ..Default::default()
+        }];
+        run.loads = vec![v1::LoadPicture {
+            action: nasty,
+            ..Default::default()
+        }];
+        sample::give_path(&mut run, &[0.0, 1.0, 1.5]);
         let page = page_of(&run);
+        assert!(page.contains("loss-matrix") && page.contains("load-picture") && page.contains("load-paths"));
         assert_eq!(page.matches("<script").count(), 2, "only the page's own two");
         assert_eq!(page.matches("</script").count(), 2);
         assert!(!page.contains("<img") && !page.contains("<b>"));

@@ -132,13 +132,19 @@ pub(super) fn load_picture(run: &Run) -> String {
     if !has_shape(run) {
         return String::new();
     }
+    // Begins with an action that has a picture.
+    let first = run.loads.iter().position(|picture| picture.loaded_panels > 0);
     let actions: String = (run.loads.iter().enumerate())
         .map(|(at, picture)| {
+            let chosen = if Some(at) == first { " selected" } else { "" };
             let open = match picture.without_value_total {
                 0 => String::new(),
                 count => format!(" ({count} panels without value)"),
             };
-            format!("<option value=\"{at}\">{}{open}</option>", markup(&picture.action))
+            format!(
+                "<option value=\"{at}\"{chosen}>{}{open}</option>",
+                markup(&picture.action)
+            )
         })
         .collect();
     format!(

@@ -58,6 +58,11 @@
       order.sort(function (a, b) { return Math.abs(kn[a] || 0) - Math.abs(kn[b] || 0) || a - b; });
     }
     context.lineCap = "butt";
+    // In a fine mesh wide lines would run into each other: a third of a usual segment is wide enough.
+    var lengths = data.segments.map(function (part) {
+      return Math.hypot(seen[3 * part[0]] - seen[3 * part[1]], seen[3 * part[0] + 1] - seen[3 * part[1] + 1]);
+    }).sort(function (a, b) { return a - b; });
+    var widest = Math.max(1, Math.min(6.5, lengths[Math.floor(lengths.length / 2)] / 3));
     order.forEach(function (s) {
       var strut = data.segments[s][2] >= data.cables, part = share(now, s), gone = kn && !strut && kn[s] === null;
       context.setLineDash([]);
@@ -73,7 +78,7 @@
         return;
       }
       context.strokeStyle = part === null ? "#98a1aa" : part > 1 ? ALARM : page.shade(part / data.top);
-      context.lineWidth = 1.2 + 6.5 * Math.sqrt(Math.abs(kn[s]) / largest);
+      context.lineWidth = Math.min(1.2, widest / 2) + widest * Math.sqrt(Math.abs(kn[s]) / largest);
       line(context, s);
       if (now.worst && now.slack.has(s)) {
         context.strokeStyle = "#fff"; context.lineWidth = 1.3; context.setLineDash([4, 4]); line(context, s);

@@ -508,4 +508,49 @@ mod tests {
             );
         }
     }
+
+    #[test]
+    fn parts_of_long_tables_are_joined_and_gaps_refused() {
+        let loss = |offset: u32, removed: &str| {
+            Event::LossTable(v1::LossTable {
+                offset,
+                total: 2,
+                rows: vec![v1::LossRow {
+                    removed: vec![removed.to_owned()],
+                    ..Default::default()
+                }],
+            })
+        };
+        let picture = |action: &str, offset: u32, pressures: &[f64]| {
+            Event::LoadPicture(v1::LoadPicture {
+                action: action.to_owned(),
+                offset,
+                total: 3,
+                pressure_pa: pressures.to_vec(),
+                on_plan_pa: vec![0.0; pressures.len()],
+                ..Default::default()
+            })
+        };
+        let collected = |more: Vec<Event>| {
+            let mut collector = Collector::default();
+            let mut events = sample::events();
+            let summary = events.pop().unwrap();
+            let all = events.into_iter().chain(more).chain([summary]);
+            all.into_iter().try_for_each(|event| collector.take(event))?;
+            collector.finish(sample::brief())
+        };
+        let parts = vec![
+            loss(0, "a"),
+            loss(1, "b"),
+            picture("snow", 0, &[1.0, 2.0]),
+            picture("snow", 2, &[3.0]),
+            picture("lift", 0, &[4.0]),
+        ];
+        let run = collected(parts).unwrap();
+        assert_eq!(run.losses.len(), 2);
+        assert_eq!(run.loads.len(), 2);
+        assert_eq!(run.loads[0].pressure_pa, [1.0, 2.0, 3.0]);
+        assert!(collected(vec![loss(1, "b")]).is_err());
+        assert!(collected(vec![picture("snow", 0, &[1.0]), picture("snow", 2, &[3.0])]).is_err());
+    }
 }

@@ -24,8 +24,39 @@ impl Run {
         self.net()?.struts.iter().find(|strut| strut.id == id)
     }
 
+    /// The section that sizing chose for a member: results are those of it, not of the brief's.
+    fn chosen_section(&self, id: &str, role: &str) -> Option<String> {
+        let groups = |name: &String| {
+            let groups = self.net().into_iter().flat_map(|net| &net.groups);
+            groups
+                .filter(move |group| group.id == *name)
+                .any(|group| group.of.iter().any(|of| of == id || of == role))
+        };
+        let covers = |names: &[String]| names.iter().any(|name| name == id || name == role || groups(name));
+        let choices = &self.sizing.as_ref()?.choices;
+        let sizing = self.brief.sizing.as_ref();
+        let named = choices
+            .iter()
+            .find(|choice| choice.members.iter().any(|member| member == id));
+        // A choice lists its first members; the brief says of whom else it is.
+        let asked = |choice: &&v1::SizedChoice| {
+            let place = |list: &str| -> Option<usize> {
+                let number = choice.path.strip_prefix(list)?.strip_prefix('[')?.split(']').next()?;
+                number.parse().ok()
+            };
+            let single = || Some(sizing?.on.get(place("sizing.on")?)?.clone());
+            let several = || Some(sizing?.choices.get(place("sizing.choices")?)?.on.clone());
+            single().map_or_else(|| several().is_some_and(|names| covers(&names)), |name| covers(&[name]))
+        };
+        let choice = named.or_else(|| choices.iter().find(asked))?;
+        Some(choice.section.clone())
+    }
+
     /// Section of each segment of a cable, in path order.
     pub(crate) fn cable_sections(&self, cable: &v1::Cable) -> Vec<String> {
+        if let Some(chosen) = self.chosen_section(&cable.id, &cable.role) {
+            return vec![chosen; cable.nodes.len().saturating_sub(1)];
+        }
         let own = if cable.section.is_empty() {
             self.role(&cable.role)
                 .map(|role| role.section.clone())
@@ -45,6 +76,9 @@ impl Run {
 
     /// Section of a strut.
     pub(crate) fn strut_section(&self, strut: &v1::Strut) -> String {
+        if let Some(chosen) = self.chosen_section(&strut.id, &strut.role) {
+            return chosen;
+        }
         if strut.section.is_empty() {
             self.role(&strut.role)
                 .map(|role| role.section.clone())
@@ -139,6 +173,35 @@ mod tests {
             to: to.to_owned(),
             ..Default::default()
         }
+    }
+
+    #[test]
+    fn a_chosen_section_wins_over_the_briefs() {
+        let mut run = super::super::sample::run();
+        let cable = run.cable("carrying").unwrap().clone();
+        assert_eq!(run.cable_sections(&cable), ["r10", "r10"]);
+        let choice = |path: &str, members: &[&str]| v1::SizedChoice {
+            path: path.to_owned(),
+            members: members.iter().map(ToString::to_string).collect(),
+            section: "r20".to_owned(),
+            ..Default::default()
+        };
+        let sized = |choice: v1::SizedChoice| {
+            Some(v1::SizingResult {
+                choices: vec![choice],
+                ..Default::default()
+            })
+        };
+        run.sizing = sized(choice("sizing.on[0]", &["carrying"]));
+        assert_eq!(run.cable_sections(&cable), ["r20", "r20"]);
+        // One of many members stands in the brief only.
+        run.sizing = sized(choice("sizing.on[0]", &["other"]));
+        assert_eq!(run.cable_sections(&cable), ["r10", "r10"]);
+        run.brief.sizing = Some(v1::Sizing {
+            on: vec!["carrying".to_owned()],
+            ..Default::default()
+        });
+        assert_eq!(run.cable_sections(&cable), ["r20", "r20"]);
     }
 
     #[test]

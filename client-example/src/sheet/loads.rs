@@ -2,7 +2,7 @@
 
 use ropewalk_api::ropewalk::v1;
 
-use super::{Cell, Mark, Row, Sheet, head, page_head};
+use super::{Cell, Mark, Row, Sheet, Show, head, page_head};
 use crate::run::Run;
 
 /// One row for each action; none where the engine told of none.
@@ -35,12 +35,16 @@ pub(crate) fn loads(run: &Run) -> Option<Sheet> {
 
 fn row(picture: &v1::LoadPicture) -> Row {
     let size = picture.force_n.iter().map(|part| part * part).sum::<f64>().sqrt();
-    let force = |axis: usize| {
-        let part = picture.force_n.get(axis).copied().unwrap_or(0.0);
-        // What is left of zero by rounding is no force.
-        Cell::three(if part.abs() < 1e-9 * size { 0.0 } else { part / 1e3 })
+    let [fx, fy, fz] = Cell::components(
+        [0, 1, 2].map(|axis| picture.force_n.get(axis).map_or(0.0, |part| part / 1e3)),
+        size / 1e3,
+    );
+    let point = |axis: usize| {
+        let part = picture.point_m.get(axis);
+        Cell::maybe(part.map(|part| Cell::Number(*part, Show::Decimals(2))))
     };
-    let point = |axis: usize| Cell::maybe(picture.point_m.get(axis).map(|part| Cell::three(*part)));
+    let panels = picture.loaded_panels > 0;
+    let if_panels = |cell: Cell| if panels { cell } else { Cell::Empty };
     let area = picture.loaded_area_on_plan_m2;
     let more = match usize::try_from(picture.without_value_total)
         .unwrap_or(0)
@@ -52,16 +56,20 @@ fn row(picture: &v1::LoadPicture) -> Row {
     Row {
         cells: vec![
             Cell::text(&picture.action),
-            force(0),
-            force(1),
-            force(2),
+            fx,
+            fy,
+            fz,
             point(0),
             point(1),
             point(2),
-            Cell::three(picture.moment_along_nm / 1e3),
+            if size > 0.0 {
+                Cell::Number(picture.moment_along_nm / 1e3, Show::Decimals(2))
+            } else {
+                Cell::Empty
+            },
             Cell::Count(picture.loaded_panels.into()),
-            Cell::three(picture.loaded_area_m2),
-            Cell::three(area),
+            if_panels(Cell::three(picture.loaded_area_m2)),
+            if_panels(Cell::three(area)),
             if area > 0.0 {
                 Cell::three(size / area / 1e3)
             } else {

@@ -1,5 +1,6 @@
 use super::*;
 use crate::run::sample;
+use ropewalk_api::ropewalk::v1;
 
 fn shown(sheet: &Sheet, row: usize) -> Vec<String> {
     sheet.rows[row].cells.iter().map(Cell::shown).collect()
@@ -187,4 +188,131 @@ fn a_load_path_is_sheeted_with_the_largest_departure_first() {
         (shown[2][9].as_str(), shown[2][10].as_str(), shown[2][12].as_str()),
         ("0.744", "0", "on the effect")
     );
+}
+
+fn loss(removed: &str, unanswered: u32, share: f64) -> v1::LossRow {
+    v1::LossRow {
+        removed: vec![removed.to_owned()],
+        factor: 1.5,
+        cases: 2,
+        unanswered_total: unanswered,
+        worst: vec![v1::LossCell {
+            member: "bracing".to_owned(),
+            force_n: share * 82e3,
+            share_of_breaking: Some(share),
+            case: "loss-001".to_owned(),
+        }],
+        ..Default::default()
+    }
+}
+
+#[test]
+fn losses_without_an_answer_come_first_then_the_hardest_worked() {
+    let mut run = sample::run();
+    assert!(losses(&run).is_none() && loss_cells(&run).is_none());
+    run.losses = vec![loss("a", 0, 0.4), loss("b", 1, 0.2), loss("c", 0, 1.1)];
+    run.losses[2].loose_nodes = 3;
+    let sheet = losses(&run).unwrap();
+    let rows: Vec<(String, Mark)> = sheet.rows.iter().map(|row| (row.cells[0].shown(), row.mark)).collect();
+    let expected = [("b", Mark::Gone), ("c", Mark::Bad), ("a", Mark::Plain)];
+    assert_eq!(rows, expected.map(|(name, mark)| (name.to_owned(), mark)));
+    assert_eq!(sheet.rows[1].cells[11].shown(), "yes, 3 nodes");
+    assert_eq!(survivors(&run), ["bracing"]);
+    // Two losses under different cases without an answer tell no movement.
+    run.losses[1].unanswered_total = 2;
+    assert_eq!(losses(&run).unwrap().rows[0].cells[8], Cell::Empty);
+}
+
+#[test]
+fn an_action_that_leaves_panels_out_stands_out_and_rounding_is_no_force() {
+    let mut run = sample::run();
+    assert!(loads(&run).is_none());
+    run.loads = vec![v1::LoadPicture {
+        action: "lift".to_owned(),
+        force_n: vec![1e-9, 0.0, 33.2e3],
+        point_m: vec![1.0, 2.0, 3.0],
+        loaded_panels: 14,
+        loaded_area_on_plan_m2: 98.0,
+        without_value: vec!["p1".to_owned()],
+        without_value_total: 2,
+        without_value_area_m2: 11.0,
+        ..Default::default()
+    }];
+    let sheet = loads(&run).unwrap();
+    let row = shown(&sheet, 0);
+    assert_eq!(row[1..7], ["0", "0", "33.2", "1.00", "2.00", "3.00"]);
+    // 33.2 kN over 98 m2.
+    assert_eq!((row[11].as_str(), row[13].as_str()), ("0.339", "p1 and 1 more"));
+    assert_eq!(sheet.rows[0].mark, Mark::Open);
+}
+
+#[test]
+fn the_shape_report_tells_what_is_off_and_what_fights() {
+    let mut run = sample::run();
+    assert!(shape(&run).is_none());
+    let wish = |on: &str, quantity: v1::TargetQuantity, wanted: f64, found: f64, miss: f64, met: bool| v1::WishResult {
+        on: on.to_owned(),
+        quantity: quantity.into(),
+        wanted,
+        found,
+        miss,
+        met,
+        ..Default::default()
+    };
+    run.shape_report = Some(v1::ShapeReport {
+        wishes: vec![
+            wish("eNE", v1::TargetQuantity::Sag, 0.9, 0.61, -0.322, false),
+            wish("eNE", v1::TargetQuantity::MeanTension, 35e3, 35.04e3, 0.001_14, false),
+        ],
+        fights: vec![v1::WishFight {
+            first: 0,
+            second: 1,
+            first_alone: 0.9,
+            second_alone: 35e3,
+            first_left_out: 0.61,
+            second_left_out: 24e3,
+        }],
+        ..Default::default()
+    });
+    let sheet = shape(&run).unwrap();
+    assert_eq!(
+        shown(&sheet, 0)[..7],
+        ["eNE", "sag", "0.900", "0.610", "m", "-32.2", "no"]
+    );
+    assert_eq!(
+        shown(&sheet, 1)[..7],
+        ["eNE", "mean tension", "35.0", "35.0", "kN", "0.114", "within 0.2 %"]
+    );
+    assert_eq!(shown(&sheet, 2)[0], "sag of eNE against mean tension of eNE");
+    assert!(
+        shown(&sheet, 2)[7].ends_with("left out themselves to 0.610 m and 24.0 kN"),
+        "{:?}",
+        shown(&sheet, 2)
+    );
+}
+
+#[test]
+fn factors_on_effects_stand_beside_those_on_actions() {
+    let mut run = sample::run();
+    assert!(effects(&run).is_none() && over_linearity(&run).is_none());
+    let member = |member: &str, on_action_n: f64, index: f64| v1::OverLinearity {
+        member: member.to_owned(),
+        on_action_n,
+        on_effect_n: on_action_n / index,
+        index,
+    };
+    run.effects = vec![crate::run::Effect {
+        effect: v1::DesignEffect {
+            id: "ultimate-003-on-effect".to_owned(),
+            rule: v1::EffectRule::OnEffect.into(),
+            answered: false,
+            members: vec![member("carrying", 30e3, 0.8), member("bracing", 20e3, 1.6)],
+            ..Default::default()
+        },
+        columns: std::collections::BTreeMap::new(),
+    }];
+    assert_eq!(effects(&run).unwrap().rows[0].mark, Mark::Gone);
+    let sheet = over_linearity(&run).unwrap();
+    assert_eq!(shown(&sheet, 0)[3..], ["20.0", "12.5", "1.60", "on the action"]);
+    assert_eq!(shown(&sheet, 1)[3..], ["30.0", "37.5", "0.800", "on the effect"]);
 }
