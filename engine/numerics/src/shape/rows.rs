@@ -143,7 +143,7 @@ impl Rows {
         match &target.wish {
             Wish::Tension { segments, tension } => {
                 not_balanced(segments)?;
-                let pushes = segments.iter().find(|s| !(tension * parts.sign(s.index()) > 0.0));
+                let pushes = segments.iter().find(|s| tension * parts.sign(s.index()) <= 0.0);
                 if let Some(s) = pushes.filter(|_| *tension != 0.0 && tension.is_finite()) {
                     let way = if *tension > 0.0 { "pulls" } else { "pushes" };
                     return Err(bad(format!(

@@ -476,7 +476,7 @@ impl Readers<'_, '_, '_> {
         }
         let field = at.field("points_xyz_m");
         let numbers = &wish.points_xyz_m;
-        if numbers.len() % 3 != 0 {
+        if !numbers.len().is_multiple_of(3) {
             findings
                 .error(
                     reasons::WRONG_COUNT,
