@@ -1195,7 +1195,6 @@ fn parts_that_are_not_served() {
         ("/stages", json!([{"id": "first"}]), "stages[first]"),
         ("/workshop", json!({}), "workshop"),
         ("/readings", json!([{"id": "r1"}]), "readings[r1]"),
-        ("/keep", json!({}), "keep"),
         ("/variants", json!([{"id": "v"}]), "variants[v]"),
     ] {
         let mut base = terrace();

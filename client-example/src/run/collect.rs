@@ -36,6 +36,8 @@ pub(crate) struct Collector {
     columns: BTreeMap<String, BTreeMap<String, (Column, usize)>>,
     begun: Vec<v1::CaseBegin>,
     ended: Vec<v1::CaseSummary>,
+    /// The case that is being told again with its arrays.
+    told_again: Option<String>,
     findings: Vec<v1::Finding>,
     diagnoses: Vec<v1::StateDiagnosis>,
     sizing: Option<v1::SizingResult>,
@@ -85,6 +87,9 @@ impl Collector {
             Event::Started(started) => self.started = Some(started),
             Event::Ids(part) => self.take_ids(part)?,
             Event::Columns(part) => self.take_columns(part)?,
+            // Told before without its arrays: these follow, and the same summary.
+            Event::CaseBegin(begin) if begin.again => self.told_again = Some(begin.case),
+            Event::CaseSummary(end) if self.told_again.as_ref() == Some(&end.case) => self.told_again = None,
             Event::CaseBegin(begin) => self.begun.push(begin),
             Event::CaseSummary(end) => {
                 if self.begun.last().is_none_or(|begin| begin.case != end.case) {
