@@ -5,7 +5,7 @@ use std::ops::Range;
 use super::given::Adjustable;
 use super::{Prestress, PrestressRule, ShapeError};
 use crate::element::{Bar, Sliding};
-use crate::model::{AxialLaw, Net, NodeId};
+use crate::model::{AxialLaw, Net, NodeId, Segment};
 
 /// What a segment is to the search.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -83,6 +83,9 @@ pub(super) struct Parts {
 pub(super) struct Slide {
     /// Its segments, which share one rule.
     pub(super) segments: Range<usize>,
+    /// Whether each of them counts for the length of a force density: those between two supports do not shape the net,
+    /// and count only where there are no others.
+    pub(super) counts: Vec<bool>,
     /// Its law where its unstressed length is given.
     pub(super) elastic: Option<Sliding>,
 }
@@ -289,8 +292,17 @@ fn slides(net: &Net, prestress: &Prestress, of: &[Part]) -> Result<Slides, Shape
             }),
             _ => None,
         };
+        let shapes = |s: &Segment| s.ends.iter().any(|end| net.support_of(*end).is_none());
+        let mut counts: Vec<bool> = net.segments()[segments.clone()].iter().map(shapes).collect();
+        if counts.iter().all(|counts| !counts) {
+            counts.fill(true);
+        }
         slide_of[segments.clone()].fill(Some(slides.len()));
-        slides.push(Slide { segments, elastic });
+        slides.push(Slide {
+            segments,
+            counts,
+            elastic,
+        });
     }
     Ok((slides, slide_of))
 }

@@ -221,7 +221,7 @@ impl<'a, 'o> Search<'a, 'o> {
 
     /// Tension of each reach that slides (N); notes how it changes with the lengths of its segments.
     ///
-    /// A force density is tension over the mean length of the segments.
+    /// A force density is tension over the mean length of the segments that count.
     fn slide_tensions(&self, point: &mut Point, family_densities: &[f64]) -> Vec<f64> {
         let one = |slide: &Slide| {
             let lengths: Vec<f64> = (self.net().segments()[slide.segments.clone()].iter())
@@ -230,7 +230,7 @@ impl<'a, 'o> Search<'a, 'o> {
                     (point.positions[j] - point.positions[i]).norm()
                 })
                 .collect();
-            let n = lengths.len() as f64;
+            let counted = || slide.counts.iter().filter(|counts| **counts).count() as f64;
             let first = slide.segments.start;
             let mut slopes = vec![0.0; lengths.len()];
             let tension = match (&slide.elastic, self.density(first, family_densities)) {
@@ -242,8 +242,14 @@ impl<'a, 'o> Search<'a, 'o> {
                     tension
                 }
                 (None, Some(q)) => {
-                    slopes.fill(q / n);
-                    q * lengths.iter().sum::<f64>() / n
+                    let n = counted();
+                    let mut whole = 0.0;
+                    for ((slope, length), _) in slopes.iter_mut().zip(&lengths).zip(&slide.counts).filter(|(_, c)| **c)
+                    {
+                        *slope = q / n;
+                        whole += length;
+                    }
+                    q * whole / n
                 }
                 (None, None) => self.balance_forces[first],
             };
