@@ -47,10 +47,12 @@ class Run:
             elif kind == "case_begin":
                 assert open_case is None, "a case ends before the next begins"
                 open_case, open_effect = event.case_begin.case, None
-                self.cases[open_case] = Case()
+                again = event.case_begin.again
+                assert again == (open_case in self.cases), "a case is told twice only where that is said"
+                self.cases.setdefault(open_case, Case())
             elif kind == "columns":
                 columns = event.columns
-                assert columns.case in (open_case, open_effect, "envelope")
+                assert columns.case in (open_case, open_effect) or columns.case.split("/")[0] == "envelope"
                 gathered = parts.setdefault((columns.case, columns.name), [])
                 assert columns.offset == len(gathered), f"{columns.name} has a hole"
                 gathered.extend(columns.values)

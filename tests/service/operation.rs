@@ -118,7 +118,7 @@ async fn the_server_tells_its_limits() {
         "{}",
         build.instruction_set
     );
-    assert!(info.not_served.iter().any(|part| part == "combinations"));
+    assert!(info.not_served.iter().any(|part| part == "workshop"));
     assert!(!info.cautions.is_empty());
 }
 

@@ -304,24 +304,24 @@ impl Reader<'_, '_, '_> {
             let within = angle("plan_angle", "within_deg", &SECTOR_ANGLE, sector.within_deg);
             Some([direction?, within?])
         });
-        if let (Some(range), Some(Some([least, largest]))) = (&check.up_angle, up_angle) {
-            if least >= largest {
-                let at = self.at.field("up_angle");
-                self.findings
-                    .error(
-                        reasons::OUT_OF_RANGE,
-                        &at.field("largest_deg"),
-                        "",
-                        format!(
-                            "this range of angles goes from {} to {} deg",
-                            number(range.least_deg),
-                            number(range.largest_deg)
-                        ),
-                        "let the largest angle be greater than the least",
-                    )
-                    .value(number(range.largest_deg));
-                return None;
-            }
+        if let (Some(range), Some(Some([least, largest]))) = (&check.up_angle, up_angle)
+            && least >= largest
+        {
+            let at = self.at.field("up_angle");
+            self.findings
+                .error(
+                    reasons::OUT_OF_RANGE,
+                    &at.field("largest_deg"),
+                    "",
+                    format!(
+                        "this range of angles goes from {} to {} deg",
+                        number(range.least_deg),
+                        number(range.largest_deg)
+                    ),
+                    "let the largest angle be greater than the least",
+                )
+                .value(number(range.largest_deg));
+            return None;
         }
         let limits = PullLimits {
             resultant: resultant.ok()?,
