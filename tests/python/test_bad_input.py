@@ -196,3 +196,27 @@ def test_absurd_stiffness_gets_an_answer_or_a_reason(channel, briefs, stiffness)
             assert all(map(math.isfinite, values.ravel())), name
         if case.summary is not None and case.summary.outcome != stubs.result.CASE_OUTCOME_ANSWERED:
             assert case.summary.failure.reason and case.summary.failure.message
+
+
+def test_a_ring_that_runs_to_the_end_of_its_rope_is_named(channel):
+    # A lamp on a taut line, pushed along it without its weight: nothing stops it before the anchor.
+    brief = {
+        "id": "lamp",
+        "net": {
+            "nodes": [{"id": "A", "xyz_m": [0, 0, 3], "support": {}}, {"id": "B", "xyz_m": [10, 0, 3], "support": {}}],
+            "sections": [{"id": "r6", "axial_stiffness_n": 2e6}],
+            "cables": [{"id": "line", "section": "r6", "nodes": ["A", "lamp", "B"], "slides": {}}],
+        },
+        "prestress": {"under": ["weight"], "rules": [{"on": ["line"], "force_density_n_per_m": 2000}]},
+        "actions": [
+            {"id": "weight", "loads": [{"nodes": {"on": ["lamp"], "force_n": [0, 0, -300]}}]},
+            {"id": "push", "loads": [{"nodes": {"on": ["lamp"], "force_n": [500, 0, 0]}}]},
+        ],
+        "cases": [{"id": "pushed", "factors": {"push": 1}}, {"id": "both", "factors": {"weight": 1, "push": 0.1}}],
+    }
+    run = talk.run(channel, brief)
+    failure = run.cases["pushed"].summary.failure
+    assert 'nothing stops "lamp" from running along "line" to "B"' in failure.message and "clamp the rope" in failure.cure
+    assert "lamp" in failure.nodes and "gave up, not the net" not in failure.message
+    # The other case is answered: the weight keeps the lamp on the line.
+    assert run.cases["both"].summary.audited

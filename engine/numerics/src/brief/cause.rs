@@ -82,6 +82,17 @@ pub enum LikelyCause {
         /// Sum of the loads (N).
         load_sum: Vector3<f64>,
     },
+    /// A node on a sliding rope runs to the next one: contact there is not part of the model.
+    RanToTheEnd {
+        /// Id of the rope.
+        cable: String,
+        /// Id of the node that runs.
+        node: String,
+        /// Id of the node that it runs to.
+        end: String,
+        /// Distance between them in the reference state (m).
+        lay: f64,
+    },
     /// Water that gathers on a skin makes more room than it fills, or does not settle.
     Pond {
         /// Where it is deepest: id of a node or a panel.
@@ -178,7 +189,10 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
     let is_spent = solution.termination == Termination::IterationLimit;
     // Struts, friction and pressure that follows the shape leave the question open.
     let exists = net.is_pure_tension() && !net.has_friction() && case.pressures.iter().all(|p| *p == 0.0);
+    let ran_to_the_end = worst_node.and_then(|worst| ran_to_the_end(net, reference, result, worst));
+    let exists = exists && ran_to_the_end.is_none();
     let likely = match (strained, odd.first()) {
+        _ if ran_to_the_end.is_some() => ran_to_the_end.expect("looked at"),
         (Some(strained), _) if strained.likely_factor.is_some() => LikelyCause::UnitSlip {
             member: net.member_name(strained.segment).to_owned(),
             axial_stiffness: strained.axial_stiffness,
@@ -224,6 +238,34 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
     }
 }
 
+/// Cosine between the force left at a sliding node and its rope from which nothing but the rope's end would stop the node.
+const ALONG_THE_ROPE: f64 = 0.9;
+
+/// The sliding node that the force left at the worst node drives along its rope, if that is what is left.
+fn ran_to_the_end(net: &Net, reference: &ReferenceState, result: &StateResult, worst: NodeId) -> Option<LikelyCause> {
+    let left = unbalanced(net, result)[worst.index()];
+    let at = |node: NodeId| result.positions[node.index()];
+    let sliding = net.reaches().iter().filter(|reach| reach.slides());
+    for first in sliding.flat_map(|reach| reach.segments.start..reach.segments.end - 1) {
+        let [before, node] = net.segments()[first].ends;
+        let after = net.segments()[first + 1].ends[1];
+        if node != worst {
+            continue;
+        }
+        let along = (at(after) - at(before)).try_normalize(0.0)?.dot(&left);
+        if along.abs() > ALONG_THE_ROPE * left.norm() {
+            let end = if along > 0.0 { after } else { before };
+            return Some(LikelyCause::RanToTheEnd {
+                cable: net.member_name(SegmentId::new(first)).to_owned(),
+                node: net.node_name(node).to_owned(),
+                end: net.node_name(end).to_owned(),
+                lay: (reference.positions[end.index()] - reference.positions[node.index()]).norm(),
+            });
+        }
+    }
+    None
+}
+
 /// Why water on skins has not settled; `None` if it has.
 pub(super) fn cause_of_pond(net: &Net, ponding: &Ponding) -> Option<Cause> {
     if ponding.end == PondingEnd::Settled {
@@ -252,7 +294,8 @@ pub(super) fn cause_of_pond(net: &Net, ponding: &Ponding) -> Option<Cause> {
     })
 }
 
-fn culprits(net: &Net, result: &StateResult) -> Vec<(NodeId, Culprit)> {
+/// Force out of balance on every node (N).
+fn unbalanced(net: &Net, result: &StateResult) -> Vec<Vector3<f64>> {
     let mut exerted = result.loads.clone();
     for (pulls, segment) in result.pulls.iter().zip(net.segments()) {
         for (pull, end) in pulls.iter().zip(segment.ends) {
@@ -262,6 +305,11 @@ fn culprits(net: &Net, result: &StateResult) -> Vec<(NodeId, Culprit)> {
     for support in &result.support_forces {
         exerted[support.node.index()] += support.force;
     }
+    exerted
+}
+
+fn culprits(net: &Net, result: &StateResult) -> Vec<(NodeId, Culprit)> {
+    let exerted = unbalanced(net, result);
     let mut all: Vec<(NodeId, Culprit)> = (0..net.nodes().len())
         .map(|index| {
             let culprit = Culprit {
@@ -476,6 +524,11 @@ impl fmt::Display for LikelyCause {
                     )
                 }
             }
+            Self::RanToTheEnd { cable, node, end, lay } => write!(
+                f,
+                "nothing stops \"{node}\" from running along \"{cable}\" to \"{end}\", {lay:.2} m away in the reference state, and what \
+                 happens on contact is not part of the model"
+            ),
             Self::Pond {
                 place,
                 depth,

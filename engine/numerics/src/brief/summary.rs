@@ -30,6 +30,11 @@ pub enum Caution {
     },
     /// Skins have no stiffness here.
     SkinsPassLoad,
+    /// Ropes slide against friction, which depends on the path of the loads.
+    FrictionDependsOnPath {
+        /// Ids of the ropes.
+        cables: Vec<String>,
+    },
     /// The shape was corrected as an elastic net, so that given force densities are met nearly only.
     ShapeCorrected,
 }
@@ -60,6 +65,12 @@ impl fmt::Display for Caution {
                 f,
                 "\"{member}\" is strained by {:.1} % in the reference state: was its EA given in another unit?",
                 strain * 100.0
+            ),
+            Self::FrictionDependsOnPath { cables } => write!(
+                f,
+                "friction where ropes slide depends on the order in which loads come and go; each case is reached in one go \
+                 from the reference state, which has none: {}",
+                list(cables)
             ),
             Self::SkinsPassLoad => f.write_str(
                 "skins only pass load to the ropes at the corners of their panels: they have no stiffness and no \
@@ -110,6 +121,17 @@ pub(super) fn cautions(net: &Net, reference: &ReferenceOutcome) -> Vec<Caution> 
     }
     if !net.panels().is_empty() {
         cautions.push(Caution::SkinsPassLoad);
+    }
+    if net.has_friction() {
+        let reaches = net
+            .reaches()
+            .iter()
+            .filter(|reach| reach.friction.iter().any(|mu| *mu > 0.0));
+        let mut cables: Vec<String> = reaches
+            .map(|reach| net.cables()[reach.cable.index()].name.clone())
+            .collect();
+        cables.dedup();
+        cautions.push(Caution::FrictionDependsOnPath { cables });
     }
     if let Some(balance) = report.balance.as_ref().filter(|b| !b.unique) {
         cautions.push(Caution::BalanceNotUnique {

@@ -108,6 +108,9 @@ fn cure_of(likely: &LikelyCause) -> String {
         LikelyCause::MuchSlack { .. } => "give more prestress there, or less load",
         LikelyCause::RanAway => "check size and sign of the loads, and what holds these nodes",
         LikelyCause::Tips { .. } => "give more prestress, or check the sign of the loads",
+        LikelyCause::RanToTheEnd { .. } => {
+            "clamp the rope at that node, give the slide friction, or hold the node back with another rope"
+        }
         LikelyCause::Pond { grows: true, .. } => {
             "give the skin more fall or the ropes more prestress, so that water runs off"
         }
