@@ -139,14 +139,18 @@ impl<'a, 'o> Search<'a, 'o> {
             let [i, j] = segment.ends.map(NodeId::index);
             let chord = point.positions[j] - point.positions[i];
             let length = chord.norm();
+            // Where both ends coincide there is no direction to pull in.
+            let pull = |axial: f64| {
+                if length > 0.0 {
+                    chord * (axial / length)
+                } else {
+                    Vector3::zeros()
+                }
+            };
             let (axial, unstressed, force) = match self.parts.of[index] {
                 _ if self.parts.slide(index).is_some() => {
                     let axial = slides[self.parts.slide(index).expect("it slides")];
-                    let force = if length > 0.0 {
-                        chord * (axial / length)
-                    } else {
-                        Vector3::zeros()
-                    };
+                    let force = pull(axial);
                     (
                         axial,
                         unstressed_length(length, axial, segment.section.axial_stiffness),
@@ -155,20 +159,12 @@ impl<'a, 'o> Search<'a, 'o> {
                 }
                 Part::Elastic(bar) => {
                     let axial = bar.axial_force(length);
-                    let force = if length > 0.0 {
-                        chord * (axial / length)
-                    } else {
-                        Vector3::zeros()
-                    };
+                    let force = pull(axial);
                     (axial, bar.stress_free_length, force)
                 }
                 Part::Balance => {
                     let axial = self.balance_forces[index];
-                    let force = if length > 0.0 {
-                        chord * (axial / length)
-                    } else {
-                        Vector3::zeros()
-                    };
+                    let force = pull(axial);
                     (
                         axial,
                         unstressed_length(length, axial, segment.section.axial_stiffness),
