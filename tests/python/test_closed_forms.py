@@ -3,12 +3,13 @@
 import pytest
 
 import closed_forms
+import closed_forms_ropes
 import stubs
 import talk
 from report import check
 
 
-@pytest.mark.parametrize("case", closed_forms.ALL, ids=lambda case: case.name.replace(" ", "-"))
+@pytest.mark.parametrize("case", closed_forms.ALL + closed_forms_ropes.ALL, ids=lambda case: case.name.replace(" ", "-"))
 def test_closed_form(channel, case):
     run = talk.run(channel, case.brief)
     for name, state in run.cases.items():

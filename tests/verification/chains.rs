@@ -2,7 +2,7 @@
 //!
 //! Half of each bar's weight sits at each of its ends. The error of such a chain against the smooth curve is a series in
 //! even powers of the bar length, so that a few chains, each with bars half as long, tell the smooth curve's values by
-//! extrapolation (Romberg 1955). The catenary as an element of its own is not part of the engine yet.
+//! extrapolation (Romberg 1955). Ropes that hang as catenaries by themselves are in `hanging`.
 
 use nalgebra::Vector3;
 use ropewalk_numerics::brief::{PrestressRule, StateResult};

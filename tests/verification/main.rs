@@ -17,6 +17,7 @@
 mod chains;
 mod checks;
 mod data;
+mod hanging;
 mod loads;
 mod nets;
 mod prestress;
@@ -25,6 +26,7 @@ mod properties;
 mod report;
 mod scalar;
 mod shapes;
+mod sliding;
 mod straight;
 mod supports;
 mod surfaces;

@@ -13,7 +13,7 @@ use ropewalk_numerics::equilibrium::{Settings, Termination};
 use ropewalk_numerics::load::{Action, Load};
 use ropewalk_numerics::model::{
     CableGiven, CableId, ElasticSupportGiven, Member, Net, NetGiven, NodeGiven, NodeId, PanelGiven, Section, Skin,
-    StrutGiven, StrutId, SupportGiven,
+    Slide, StrutGiven, StrutId, SupportGiven,
 };
 use ropewalk_numerics::shape::{Adjustable, ShapeTarget, Wish};
 
@@ -110,6 +110,24 @@ impl Problem {
             section,
             [PrestressRule::UnstressedLength(unstressed_length)],
         );
+    }
+
+    /// A rope that hangs in a curve between each two of its nodes, with the unstressed length of each piece (m).
+    pub(crate) fn hanging(&mut self, path: &[NodeId], section: Section, unstressed_lengths: &[f64]) {
+        self.cable(
+            path,
+            section,
+            unstressed_lengths.iter().copied().map(PrestressRule::UnstressedLength),
+        );
+        self.net.cables.last_mut().expect("just added").hangs = true;
+    }
+
+    /// A rope that slides through its inner nodes, with its whole unstressed length (m).
+    pub(crate) fn sliding(&mut self, path: &[NodeId], section: Section, friction: f64, unstressed_length: f64) {
+        let rules = vec![PrestressRule::UnstressedLength(unstressed_length); path.len() - 1];
+        self.cable(path, section, rules);
+        let slides = (1..path.len() - 1).map(|place| Slide { place, friction });
+        self.net.cables.last_mut().expect("just added").slides = slides.collect();
     }
 
     /// A strut.

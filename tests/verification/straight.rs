@@ -270,3 +270,37 @@ fn vertical_rope_stretches_under_its_own_weight() {
     compare("top tension", state.support_forces[0].force.z);
     compare("top bar force", state.axial_forces[0]);
 }
+
+#[test]
+fn length_and_mark_of_a_rope() {
+    // 10 m between pins at 40 kN and 25 degC; where a mark at its end lies at 60 kN and 18 degC. Digits as given.
+    let source = "l = L0 (1 + alpha dT) (1 + T / EA), by hand (our own)";
+    let unstressed = 9.981564;
+    for (name, tension, change, length) in [
+        ("length between pins", 40e3, 15.0, 10.0),
+        ("length to the mark", 60e3, 8.0, 10.007479),
+    ] {
+        let mut problem = Problem::default();
+        let top = problem.fixed(0.0, 0.0, 0.0);
+        let end = problem.free(0.0, 0.0, -unstressed);
+        let mut section = stiff(24e6);
+        section.expansion = 12e-6;
+        problem.bar(top, end, section, unstressed);
+        // Without tension its end has no place: it hangs from the first.
+        problem.always(Load::Nodes {
+            nodes: vec![end],
+            force: Vector3::new(0.0, 0.0, -tension),
+        });
+        problem.load(Load::Temperature {
+            scope: Scope::All,
+            change,
+        });
+        check(
+            &format!("rope of 10 m: {name} (m)"),
+            source,
+            length,
+            -problem.solve().state.positions[end.index()].z,
+            Absolute(1e-6),
+        );
+    }
+}
