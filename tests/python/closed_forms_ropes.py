@@ -105,7 +105,7 @@ def hanging(name, dx, dz, l0, ea, weight):
     # The logarithm keeps the horizontal force positive: there is a second root of the equations below zero.
     logarithm, up = scipy.optimize.fsolve(
         lambda y: catenary_span(np.exp(y[0]), y[1], l0, ea, weight) - [dx, dz],
-        [np.log(weight * dx), weight * l0 / 2], xtol=1e-14,
+        [np.log(weight * dx), weight * l0 / 2], xtol=1e-12,
     )
     horizontal = np.exp(logarithm)
     assert np.allclose(catenary_span(horizontal, up, l0, ea, weight), [dx, dz], rtol=0, atol=1e-10)

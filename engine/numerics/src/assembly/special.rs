@@ -162,18 +162,60 @@ impl Structure {
         }
     }
 
-    /// `½ (u vᵀ + v uᵀ)` with `u = Σ c_e ∂l_e/∂x`, `v = Σ ∂N/∂l_e ∂l_e/∂x`: symmetric by itself without friction.
+    /// The stretch of a sliding piece is `u vᵀ` with `u = Σ c_e ∂l_e/∂x`, `v = Σ ∂N/∂l_e ∂l_e/∂x`: symmetric by itself
+    /// without friction. Where it slips against friction `γ v vᵀ` stands for it, of which the rest is
+    /// [`Structure::slips`]: the symmetric part of `u vᵀ` has a stiffness below zero, large beside what little holds a
+    /// rope along itself.
     fn add_sliding(&self, piece: &Sliding, tension: f64, response: &Response, values: &mut [f64]) {
         let mut slopes = vec![0.0; piece.factors.len()];
         piece.slopes_into(&response.lengths[piece.segments()], tension, &mut slopes);
+        let factors = match piece.slips() {
+            true => in_proportion(&piece.factors, &slopes),
+            false => piece.factors.clone(),
+        };
         self.add_stretch(
             piece.first,
-            &piece.factors,
+            &factors,
             &slopes,
             &response.chords,
             &response.lengths,
             values,
         );
+    }
+
+    /// What the tangent of [`Structure::add_special_tangent`] lacks: `w vᵀ` for each piece that slips against friction, one
+    /// entry a free direction (– and N/m).
+    pub(crate) fn slips(
+        &self,
+        special: &Special,
+        response: &Response,
+        taut: impl Fn(usize) -> bool,
+    ) -> Vec<(Vec<f64>, Vec<f64>)> {
+        let slipping = special.sliding.iter().enumerate();
+        let slipping = slipping.filter(|(place, piece)| piece.slips() && taut(*place));
+        let pairs = slipping.map(|(place, piece)| {
+            let mut slopes = vec![0.0; piece.factors.len()];
+            let tension = response.special.tensions[place];
+            piece.slopes_into(&response.lengths[piece.segments()], tension, &mut slopes);
+            let symmetric = in_proportion(&piece.factors, &slopes);
+            let rest: Vec<f64> = piece.factors.iter().zip(&symmetric).map(|(c, s)| c - s).collect();
+            let along = |shares: &[f64]| {
+                let mut nodal = vec![Vector3::zeros(); self.net().nodes().len()];
+                for (e, share) in piece.segments().zip(shares) {
+                    if response.lengths[e] > 0.0 {
+                        let n = response.chords[e] * (share / response.lengths[e]);
+                        let [i, j] = self.ends[e];
+                        nodal[i as usize] -= n;
+                        nodal[j as usize] += n;
+                    }
+                }
+                let mut components = vec![0.0; self.n_dofs()];
+                self.dofs().components_into(&nodal, &mut components);
+                components
+            };
+            (along(&rest), along(&slopes))
+        });
+        pairs.collect()
     }
 
     /// Adds `½ (u vᵀ + v uᵀ)` for a reach that slides, with `u = Σ c_e ∂l_e/∂x` and `v = Σ k_e ∂l_e/∂x`.
@@ -295,4 +337,11 @@ impl Structure {
         );
         substitute
     }
+}
+
+/// `γ k` that is nearest to `c`.
+fn in_proportion(factors: &[f64], slopes: &[f64]) -> Vec<f64> {
+    let dot = |a: &[f64], b: &[f64]| a.iter().zip(b).map(|(x, y)| x * y).sum::<f64>();
+    let share = dot(factors, slopes) / dot(slopes, slopes);
+    slopes.iter().map(|slope| share * slope).collect()
 }

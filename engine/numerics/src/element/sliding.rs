@@ -32,6 +32,12 @@ impl Sliding {
         self.first..self.first + self.factors.len()
     }
 
+    /// Whether it slips against friction somewhere: then its tensions differ.
+    #[must_use]
+    pub fn slips(&self) -> bool {
+        self.factors.iter().any(|factor| *factor != 1.0)
+    }
+
     /// Tension `N` of the piece (N) at the given lengths of its segments (m); zero while it is slack.
     #[must_use]
     pub fn tension(&self, lengths: &[f64]) -> f64 {

@@ -142,6 +142,7 @@ fn step(
     let mut step = std::mem::take(&mut run.step);
     run.structure.dofs().components_into(&balance, &mut step);
     run.solve_in_place(&mut step);
+    run.add_slips(&mut step);
     run.structure.dofs().nodal_into(&step, &mut run.nodal_step);
     run.step = step;
     true

@@ -2,7 +2,7 @@
 
 use std::ops::ControlFlow;
 
-use nalgebra::{Matrix3, Vector3};
+use nalgebra::{DMatrix, DVector, Matrix3, Vector3};
 
 use super::existence::Anchor;
 use super::linear::{Factor, FactorError};
@@ -37,6 +37,12 @@ pub(super) fn anchor_entries(structure: &Structure, anchors: &[Anchor]) -> Vec<(
     entries
 }
 
+/// `w vᵀ` beyond the factor, one entry a free direction.
+struct Slip {
+    w: Vec<f64>,
+    v: Vec<f64>,
+}
+
 /// One solve: buffers, counters, and who watches.
 pub(super) struct Run<'a> {
     pub(super) structure: &'a Structure,
@@ -58,6 +64,8 @@ pub(super) struct Run<'a> {
     anchors: Vec<(usize, f64)>,
     largest_stiffness: f64,
     factor: Factor,
+    /// What slips against friction brings to the tangent beyond the factor.
+    slips: Vec<Slip>,
     pub(super) values: Vec<f64>,
     pub(super) blocks: Vec<Matrix3<f64>>,
     pub(super) response: Response,
@@ -95,6 +103,7 @@ impl<'a> Run<'a> {
             anchors: anchor_entries(structure, anchors),
             largest_stiffness: 0.0,
             factor: analysis.new_factor(),
+            slips: Vec::new(),
             values: vec![0.0; structure.pattern().n_entries()],
             blocks: vec![Matrix3::zeros(); structure.net().segments().len()],
             response: Response::new(structure),
@@ -201,9 +210,12 @@ impl<'a> Run<'a> {
     /// `taut`: whether a sliding piece resists its stretching.
     pub(super) fn factorise_blocks(&mut self, loading: &Loading, taut: impl Fn(usize) -> bool) -> bool {
         self.structure.tangent_into(&self.blocks, &mut self.values);
+        self.slips.clear();
         if let Some(special) = &loading.special {
             self.structure
-                .add_special_tangent(special, &self.response, taut, &mut self.values);
+                .add_special_tangent(special, &self.response, &taut, &mut self.values);
+            let slips = self.structure.slips(special, &self.response, &taut);
+            self.slips.extend(slips.into_iter().map(|(w, v)| Slip { w, v }));
         }
         self.structure.add_elastic_supports(&mut self.values);
         for (position, share) in &self.anchors {
@@ -223,12 +235,59 @@ impl<'a> Run<'a> {
         self.factor.solve_in_place(right_hand_side);
     }
 
+    /// Turns what was solved with the factor into what the whole tangent gives, slips against friction with it
+    /// (Sherman & Morrison 1950; Woodbury 1950):
+    ///
+    /// ```text
+    /// (B + W Vᵀ)⁻¹ r = y − Z (I + Vᵀ Z)⁻¹ Vᵀ y,     y = B⁻¹ r,   Z = B⁻¹ W
+    /// ```
+    pub(super) fn add_slips(&mut self, solved: &mut [f64]) {
+        let n = self.slips.len();
+        if n == 0 {
+            return;
+        }
+        let dot = |a: &[f64], b: &[f64]| a.iter().zip(b).map(|(x, y)| x * y).sum::<f64>();
+        let columns: Vec<Vec<f64>> = (self.slips.iter())
+            .map(|slip| {
+                let mut column = slip.w.clone();
+                self.factor.solve_in_place(&mut column);
+                column
+            })
+            .collect();
+        let coupled = DMatrix::from_fn(n, n, |i, j| {
+            f64::from(u8::from(i == j)) + dot(&self.slips[i].v, &columns[j])
+        });
+        let right = DVector::from_fn(n, |i, _| dot(&self.slips[i].v, solved));
+        let Some(shares) = coupled.lu().solve(&right) else {
+            return;
+        };
+        for (column, share) in columns.iter().zip(shares.iter()) {
+            for (x, z) in solved.iter_mut().zip(column) {
+                *x -= share * z;
+            }
+        }
+    }
+
     /// Newton step from the current residual and factor, into `step` and `nodal_step`; returns its slope `r·dx` (J).
+    ///
+    /// Slips against friction are left out where they would make it lead uphill.
     pub(super) fn newton_step(&mut self) -> f64 {
-        self.step.copy_from_slice(&self.response.residual);
-        self.factor.solve_in_place(&mut self.step);
-        self.structure.dofs().nodal_into(&self.step, &mut self.nodal_step);
-        self.step.iter().zip(&self.response.residual).map(|(u, r)| u * r).sum()
+        let mut step = std::mem::take(&mut self.step);
+        step.copy_from_slice(&self.response.residual);
+        self.factor.solve_in_place(&mut step);
+        let slope = |step: &[f64], run: &Self| step.iter().zip(&run.response.residual).map(|(u, r)| u * r).sum::<f64>();
+        if !self.slips.is_empty() {
+            let without = step.clone();
+            self.add_slips(&mut step);
+            let downhill = slope(&step, self) > 0.0;
+            if !downhill {
+                step = without;
+            }
+        }
+        self.structure.dofs().nodal_into(&step, &mut self.nodal_step);
+        let slope = slope(&step, self);
+        self.step = step;
+        slope
     }
 
     /// Response at the given positions, into `response`.
