@@ -1190,12 +1190,10 @@ fn accepted_doubts_stay_visible() {
 fn parts_that_are_not_served() {
     for (pointer, value, path) in [
         ("/stored_net", json!("3f9a"), "stored_net"),
-        ("/modes", json!({"count": 3}), "modes"),
         ("/motions", json!([{"id": "fall"}]), "motions[fall]"),
         ("/stages", json!([{"id": "first"}]), "stages[first]"),
         ("/workshop", json!({}), "workshop"),
         ("/readings", json!([{"id": "r1"}]), "readings[r1]"),
-        ("/keep", json!({}), "keep"),
         ("/variants", json!([{"id": "v"}]), "variants[v]"),
     ] {
         let mut base = terrace();
@@ -1301,7 +1299,7 @@ fn everything_is_told_at_once() {
         ("/cases/0/factors/snw", json!(1)),
         ("/checks/0/over/0", json!("wimter")),
         ("/solving/tolerance", json!("Infinity")),
-        ("/modes", json!({})),
+        ("/workshop", json!({})),
         ("/accepted", json!([{"reason": "UNIT_SLIP"}])),
     ];
     let reading = reading(&changed(terrace(), &changes));
@@ -1315,7 +1313,7 @@ fn everything_is_told_at_once() {
         ("UNKNOWN_ID", "cases[snowed].factors[snw]"),
         ("UNKNOWN_ID", "checks[0].over[0]"),
         ("NOT_FINITE", "solving.tolerance"),
-        ("NOT_SERVED", "modes"),
+        ("NOT_SERVED", "workshop"),
         ("MISSING", "accepted[0].note"),
     ] {
         told(&reading, Error, reason, path);

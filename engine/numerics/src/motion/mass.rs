@@ -12,7 +12,8 @@ use nalgebra::{Matrix3, Vector3};
 
 use super::About;
 use crate::assembly::Structure;
-use crate::model::{NodeId, SegmentId, fan};
+use crate::load::Surface;
+use crate::model::{Area, NodeId, SegmentId, fan};
 
 /// Masses beside those of the net itself.
 #[derive(Clone, Debug, Default, PartialEq)]
@@ -21,6 +22,8 @@ pub struct MassGiven {
     pub nodes: Vec<(NodeId, f64)>,
     /// Mass per unstressed length of segments (kg/m), zero or more.
     pub segments: Vec<(SegmentId, f64)>,
+    /// Mass per area of what lies on areas (kg/m², on the area in the reference state), zero or more.
+    pub areas: Vec<(Vec<Area>, f64)>,
     /// Mass of air that moves with panels (kg/m² of panel, both faces together), zero or more.
     pub air: f64,
 }
@@ -52,14 +55,23 @@ impl Masses {
                 }
             }
         }
-        for skin in net.skins().iter().filter(|skin| skin.mass_per_area > 0.0) {
-            for panel in &skin.panels {
-                let panel = &net.panels()[*panel];
-                let areas = fan::triangles(&panel.places(about.reference));
-                let areas: Vec<f64> = areas.iter().map(Vector3::norm).collect();
-                for (corner, area) in panel.corners.iter().zip(fan::to_corners(&areas)) {
-                    alike[corner.index()] += skin.mass_per_area * area;
-                }
+        let mut per_area = vec![0.0; net.panels().len()];
+        for skin in net.skins() {
+            skin.panels
+                .iter()
+                .for_each(|panel| per_area[*panel] += skin.mass_per_area);
+        }
+        if !given.areas.is_empty() {
+            let surface = Surface::new(net, about.reference);
+            for (on, more) in &given.areas {
+                surface.panels_of(on).for_each(|panel| per_area[panel] += more);
+            }
+        }
+        for (panel, mass) in net.panels().iter().zip(per_area).filter(|(_, mass)| *mass > 0.0) {
+            let areas = fan::triangles(&panel.places(about.reference));
+            let areas: Vec<f64> = areas.iter().map(Vector3::norm).collect();
+            for (corner, area) in panel.corners.iter().zip(fan::to_corners(&areas)) {
+                alike[corner.index()] += mass * area;
             }
         }
         for (node, more) in &given.nodes {
