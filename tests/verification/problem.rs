@@ -334,6 +334,7 @@ impl Problem {
             effects: Vec::new(),
             checks: Vec::new(),
             diagnosis: None,
+            modes: None,
             envelopes: Vec::new(),
             settings: Settings {
                 tolerance: 1e-14,
