@@ -513,6 +513,53 @@ fn known_sliding_rope_is_certified() {
 }
 
 #[test]
+fn tangent_of_a_rope_that_slips_against_differences() {
+    let mut sketch = Sketch::default();
+    sketch.held("a", [0.0, 0.0, 0.0]);
+    sketch.node("b", [3.0, 0.5, -1.0]);
+    sketch.node("c", [6.0, -0.2, -1.4]);
+    sketch.held("d", [9.0, 0.0, 0.5]);
+    sketch.cable("rope", section(1e6, 0.0), "a b c d");
+    sketch.given.cables[0].slides = [1, 2].map(|place| Slide { place, friction: 0.2 }).to_vec();
+    let problem = Problem::new(sketch.net(), |net, start| {
+        case(net, vec![9.6], vec![Vector3::zeros(); start.len()])
+    });
+    let structure = problem.analysis.structure();
+    let mut loading = problem.loading();
+    let special = loading.special.as_mut().expect("it slides");
+    special.sliding[0].factors = vec![1.0, 1.17, 0.9];
+    let residual = |positions: &[Vector3<f64>]| {
+        let mut response = Response::new(structure);
+        structure.response_into(&loading, positions, &mut response);
+        response
+    };
+    let values = stability::tangent(structure, &loading, &problem.start);
+    let mut whole = nalgebra::DMatrix::from(&structure.pattern().full_matrix(&values));
+    assert!(whole.symmetric_eigenvalues().min() > 0.0);
+    let special = loading.special.as_ref().expect("it slides");
+    for (w, v) in structure.slips(special, &residual(&problem.start), |_| true) {
+        whole += nalgebra::DVector::from_vec(w) * nalgebra::DVector::from_vec(v).transpose();
+    }
+    let h = 1e-6;
+    for column in 0..structure.n_dofs() {
+        let moved = |by: f64| {
+            let mut positions = problem.start.clone();
+            let direction = structure.dofs().direction(column);
+            positions[structure.dofs().node(column).index()] += direction * by;
+            residual(&positions).residual
+        };
+        let (there, back) = (moved(h), moved(-h));
+        for row in 0..structure.n_dofs() {
+            let difference = (back[row] - there[row]) / (2.0 * h);
+            assert!(
+                (difference - whole[(row, column)]).abs() < 1e-6 * whole.amax(),
+                "{row} {column}"
+            );
+        }
+    }
+}
+
+#[test]
 fn friction_and_pressure_are_conditions() {
     let mut sketch = Sketch::default();
     sketch.held("a", [0.0, 0.0, 0.0]);
