@@ -18,6 +18,7 @@ mod chains;
 mod checks;
 mod data;
 mod loads;
+mod modes;
 mod nets;
 mod prestress;
 mod problem;
