@@ -19,6 +19,7 @@ mod checks;
 mod data;
 mod hanging;
 mod loads;
+mod modes;
 mod nets;
 mod prestress;
 mod problem;
