@@ -18,6 +18,7 @@ mod chains;
 mod checks;
 mod data;
 mod loads;
+mod motion;
 mod nets;
 mod prestress;
 mod problem;

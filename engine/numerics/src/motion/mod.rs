@@ -1,0 +1,4 @@
+//! What a net does in time.
+
+pub mod mass;
+pub mod transient;
