@@ -20,6 +20,7 @@ mod data;
 mod hanging;
 mod loads;
 mod modes;
+mod motion;
 mod nets;
 mod prestress;
 mod problem;

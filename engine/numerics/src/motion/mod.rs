@@ -1,4 +1,4 @@
-//! Natural frequencies about a balanced state.
+//! Natural frequencies about a balanced state; motion in time in [`transient`].
 //!
 //! ```text
 //! K x = ω² M x      K tangent at the state (symmetric part), M lumped masses, f = ω / 2π
@@ -15,6 +15,7 @@ mod krylov;
 mod mass;
 mod modes;
 mod pencil;
+pub mod transient;
 
 #[cfg(test)]
 mod tests;
