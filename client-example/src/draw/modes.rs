@@ -19,7 +19,7 @@ const CELL: [f64; 2] = [564.0, 330.0];
 const WORDS: f64 = 44.0;
 const MARGIN: f64 = 26.0;
 /// The largest movement over the largest extent of the net.
-const AMPLITUDE: f64 = 0.08;
+const AMPLITUDE: f64 = 0.05;
 const MOVED: &str = "#31688e";
 /// Seen from there: turned in plan, then tilted (rad).
 const TURN: f64 = 0.45;

@@ -24,7 +24,7 @@ pub struct ModesGiven {
 }
 
 impl Default for ModesGiven {
-    /// Limits: common practice, from memory: verify (EN 1991-1-4 for roof parts, 5 Hz; ASCE 7, 1 Hz).
+    /// Limits: common practice, from memory: verify (5 Hz, the European wind standard for parts of roofs; 1 Hz, the American one).
     fn default() -> Self {
         Self {
             reference: true,

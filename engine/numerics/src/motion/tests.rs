@@ -8,7 +8,7 @@ use nalgebra::{DMatrix, Vector3};
 use super::*;
 use crate::equilibrium::{Analysis, Settings, solve};
 use crate::load::{Case, SegmentLoads};
-use crate::model::{Net, NodeGiven, NodeId, SegmentId};
+use crate::model::{Area, Net, NodeGiven, NodeId, PanelGiven, SegmentId, Skin};
 use crate::test_nets::{Sketch, section};
 
 struct Solved {
@@ -371,4 +371,69 @@ fn what_only_slack_ropes_join_is_an_island() {
     assert_eq!(found.floating, []);
     let rigid = found.modes.iter().filter(|mode| mode.kind == ModeKind::Rigid).count();
     assert_eq!((rigid, found.modes.len()), (5, 6));
+}
+
+/// A node in the middle of a square of 4 m that four ropes hold, under four triangles of skin.
+fn tent(pressures: [f64; 4]) -> Solved {
+    let mut sketch = Sketch::default();
+    let corners = [[-2.0, -2.0], [2.0, -2.0], [2.0, 2.0], [-2.0, 2.0]];
+    let middle = sketch.id("m");
+    sketch.node("m", [0.0; 3]);
+    for (k, [x, y]) in corners.iter().enumerate() {
+        sketch.held(&k.to_string(), [*x, *y, 0.0]);
+        sketch.cable(&format!("c{k}"), section(1e6, 0.0), &format!("m {k}"));
+    }
+    for k in 0..4 {
+        sketch.given.panels.push(PanelGiven {
+            name: k.to_string(),
+            corners: vec![middle, NodeId::new(k + 1), NodeId::new((k + 1) % 4 + 1)],
+        });
+    }
+    sketch.given.skins.push(Skin {
+        name: "skin".to_owned(),
+        mass_per_area: 3.0,
+        panels: vec![0, 1, 2, 3],
+    });
+    let mut solved = Solved::new(sketch.net(), |_| 1.002, Vector3::zeros());
+    solved.case.pressures = pressures.to_vec();
+    solved
+}
+
+/// A third of each triangle lies on the node in the middle; air goes with the skin across it only.
+#[test]
+fn skins_and_air_move_along() {
+    let given = MassGiven {
+        areas: vec![(vec![Area::Skin(0)], 0.5)],
+        air: 2.0,
+        ..MassGiven::default()
+    };
+    let found = tent([0.0; 4]).modes(&given, 3).unwrap();
+    for (moving, wanted) in found.moving_mass.iter().zip([3.5, 3.5, 5.5]) {
+        assert!((moving - wanted * 16.0 / 3.0).abs() <= 1e-12 * wanted, "{moving}");
+    }
+    assert_eq!(found.unsymmetric, None);
+    // Up and down: four ropes of 2 kN, k = Σ T / l.
+    let length = 8.0_f64.sqrt();
+    let root = 4.0 * 2000.0 / length / (5.5 * 16.0 / 3.0);
+    assert!(
+        (found.modes[0].root - root).abs() <= 1e-9 * root,
+        "{} {root}",
+        found.modes[0].root
+    );
+}
+
+/// The same pressure on all panels inside a held rim has a potential; on one panel the slope of its force on the node is
+/// `p/6` times the cross product with the opposite edge, whose two entries in each row and column are antisymmetric.
+#[test]
+fn what_pressure_makes_unsymmetric_is_told() {
+    let even = tent([100.0; 4]).modes(&MassGiven::default(), 3).unwrap();
+    assert!(even.unsymmetric.unwrap() <= 1e-12, "{:?}", even.unsymmetric);
+    let odd = tent([100.0, 0.0, 0.0, 0.0]).modes(&MassGiven::default(), 3).unwrap();
+    let roots: f64 = odd.modes.iter().map(|mode| mode.root.powi(2)).sum::<f64>().sqrt();
+    let wanted = 100.0 / 6.0 * 4.0 * 2.0_f64.sqrt() / (3.0 * 16.0 / 3.0) / roots;
+    assert!(
+        (odd.unsymmetric.unwrap() - wanted).abs() <= 1e-9 * wanted,
+        "{:?} {wanted}",
+        odd.unsymmetric
+    );
 }
