@@ -58,12 +58,11 @@ impl Watch {
                 None => "no answer".to_owned(),
             },
         };
-        let line = format!(
-            "{}: {outcome}, {} iterations by {}",
-            end.case,
-            end.iterations,
-            way_words(end.way())
-        );
+        let mut line = format!("{}: {outcome}, {} iterations", end.case, end.iterations);
+        let way = way_words(end.way());
+        if !way.is_empty() {
+            line.push_str(&format!(" by {way}"));
+        }
         match &self.bar {
             Some(bar) => {
                 bar.inc_length(u64::from(bar.length().is_none_or(|length| length < as_count(done))));

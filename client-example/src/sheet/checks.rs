@@ -81,7 +81,7 @@ fn row(result: &v1::CheckResult) -> Row {
             Cell::text(verdict_word(result.verdict())),
             Cell::text(&result.worst),
             when_judged(Cell::three(result.demand * scale)),
-            Cell::three(result.limit * scale),
+            when_judged(Cell::three(result.limit * scale)),
             Cell::text(unit),
             when_judged(used(result)),
             Cell::text(&result.governing_case),

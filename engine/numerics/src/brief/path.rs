@@ -3,7 +3,7 @@
 use std::ops::ControlFlow;
 
 use super::{CaseGiven, Plan, ReferenceOutcome};
-use crate::equilibrium::audit::audit;
+use crate::equilibrium::audit::audit_members;
 use crate::equilibrium::{self, IterationReport, Termination};
 
 /// States along a path, each with an answer that the audit confirms.
@@ -56,7 +56,13 @@ impl Plan {
                 observe,
             );
             let Ok(solution) = solved else { return Some(found) };
-            let audit = audit(&brief.net, &loads, &solution.positions, &solution.axial_forces);
+            let audit = audit_members(
+                &brief.net,
+                &loads,
+                &solution.positions,
+                &solution.axial_forces,
+                &solution.members,
+            );
             if solution.termination != Termination::Converged || !audit.passed {
                 return Some(found);
             }

@@ -265,7 +265,7 @@ fn mean_lengths(net: &NetDraft<'_>) -> Vec<Option<f64>> {
     lengths
 }
 
-/// Notes about data that no served part uses.
+/// Notes about data that no served part uses; classes of actions are for combinations alone.
 pub(crate) fn unused_data(brief: &v1::Brief, net: &NetDraft<'_>, findings: &mut Findings) {
     let mut told = |path: &str, field: &str, ids: Vec<&str>| {
         if let Some(first) = ids.first() {
@@ -275,7 +275,7 @@ pub(crate) fn unused_data(brief: &v1::Brief, net: &NetDraft<'_>, findings: &mut 
                     &Path::root(path),
                     first,
                     format!(
-                        "{field} is kept, and no part that is served uses it ({} given)",
+                        "{field} is kept, and nothing in this brief uses it ({} given)",
                         ids.len()
                     ),
                     "nothing to mend",
@@ -297,6 +297,8 @@ pub(crate) fn unused_data(brief: &v1::Brief, net: &NetDraft<'_>, findings: &mut 
         "end_fitting.take_up_m",
         cables.map(|cable| cable.id.as_str()).collect(),
     );
-    let classed = brief.actions.iter().filter(|action| !action.class.is_empty());
-    told("actions", "class", classed.map(|action| action.id.as_str()).collect());
+    if brief.combinations.is_empty() {
+        let classed = brief.actions.iter().filter(|action| !action.class.is_empty());
+        told("actions", "class", classed.map(|action| action.id.as_str()).collect());
+    }
 }
