@@ -104,7 +104,7 @@ fn checked<'a>(analysis: &'a Analysis, motion: &'a Motion<'a>) -> Result<System<
 /// What stands against it; see [`MotionError`]. A step that does not converge is an [`Ending`], not an error.
 pub fn run(analysis: &Analysis, motion: &Motion<'_>, observe: Observer<'_>) -> Result<Outcome, MotionError> {
     let system = checked(analysis, motion)?;
-    Ok(Running::new(analysis, system).to_end(observe))
+    Ok(Running::new(analysis, system).finish(observe))
 }
 
 /// A break on its way.
@@ -225,7 +225,7 @@ impl<'a> Running<'a> {
         }
     }
 
-    fn to_end(mut self, observe: Observer<'_>) -> Outcome {
+    fn finish(mut self, observe: Observer<'_>) -> Outcome {
         let motion = self.system.motion;
         let steps = extent(&self.system).steps;
         let mut ending = if self.tell_frame(0, observe) {
@@ -237,7 +237,7 @@ impl<'a> Running<'a> {
         while ending == Ending::Done && step < steps {
             step += 1;
             let target = (step as f64 * motion.step).min(motion.duration);
-            ending = self.to_time(target, observe);
+            ending = self.advance(target, observe);
             let is_last = step == steps;
             let is_due = motion.frames.stride > 0 && step % motion.frames.stride == 0;
             if ending == Ending::Done && (is_due || is_last) && !self.tell_frame(step, observe) {
@@ -283,7 +283,7 @@ impl<'a> Running<'a> {
         moments.filter(|t| *t > self.time).fold(target, f64::min)
     }
 
-    fn to_time(&mut self, target: f64, observe: Observer<'_>) -> Ending {
+    fn advance(&mut self, target: f64, observe: Observer<'_>) -> Ending {
         let step = self.system.motion.step;
         while self.time < target {
             let next = self.next_moment(target);

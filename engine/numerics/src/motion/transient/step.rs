@@ -150,9 +150,9 @@ impl Stepper {
             .collect();
         place(system, &from, h, &movement, &mut state);
         for iteration in 0..=MOST_ITERATIONS {
-            for dof in 0..n {
+            for (dof, u) in movement.iter().enumerate() {
                 let (v0, a0) = (start.velocities[dof], start.accelerations[dof]);
-                let a1 = (movement[dof] - h * v0) / (beta * h * h) - (0.5 / beta - 1.0) * a0;
+                let a1 = (u - h * v0) / (beta * h * h) - (0.5 / beta - 1.0) * a0;
                 state.accelerations[dof] = a1;
                 state.velocities[dof] = v0 + h * ((1.0 - gamma) * a0 + gamma * a1);
             }
@@ -239,8 +239,8 @@ impl Stepper {
                 is_done = is_lost_in_rounding(&residual, &state.positions);
             }
             if is_done {
-                for dof in 0..n {
-                    state.velocities[dof] = 2.0 * movement[dof] / h - start.velocities[dof];
+                for (dof, u) in movement.iter().enumerate() {
+                    state.velocities[dof] = 2.0 * u / h - start.velocities[dof];
                     state.accelerations[dof] = (state.velocities[dof] - start.velocities[dof]) / h;
                 }
                 let dissipated = h * forces.damping_power;
@@ -321,9 +321,9 @@ fn explicit(system: &mut System<'_>, from: From<'_>, h: f64, observe: Observer<'
         state.velocities[dof] = start.velocities[dof] + h * start.accelerations[dof];
     }
     system.forces_at(from.loads[1], &state, from.taut, &mut forces, None);
-    for dof in 0..n {
+    for (dof, v) in half.iter().enumerate() {
         state.accelerations[dof] = forces.residual[dof] / system.mass_of(dof);
-        state.velocities[dof] = half[dof] + 0.5 * h * state.accelerations[dof];
+        state.velocities[dof] = v + 0.5 * h * state.accelerations[dof];
         if !state.velocities[dof].is_finite() {
             return Tried::NotConverged;
         }
