@@ -366,6 +366,9 @@ fn ending(run: &Run) -> String {
     {
         text.push_str(&format!("\n{}", sheet::terminal(&extra)));
     }
+    if let Some(modes) = sheet::modes(run) {
+        text.push_str(&format!("\n{}", sheet::terminal(&modes)));
+    }
     if !run.diagnoses.is_empty() {
         text.push_str(&format!("\n{}", sheet::terminal(&sheet::diagnoses(run))));
     }

@@ -79,6 +79,17 @@ pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::E
     if let Some(sections) = draw::sections(run) {
         put("sections.svg", sections.as_bytes())?;
     }
+    let mut names = BTreeSet::new();
+    for state in drawn.iter().take(PLANS) {
+        let pages = draw::modes(run, state);
+        if pages.is_empty() {
+            continue;
+        }
+        let name = free_name(&state.id, &mut names);
+        for (number, page) in (1..).zip(&pages) {
+            put(&format!("modes-{name}-{number}.svg"), page.as_bytes())?;
+        }
+    }
     // These are long, and the page shows what they tell in other ways.
     let on_page: Vec<Sheet> = sheets
         .into_iter()
@@ -154,6 +165,7 @@ pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
         sheets.push(sheet::diagnoses(run));
     }
     let if_any = [
+        sheet::modes(run),
         sheet::shape(run),
         sheet::judgements(run),
         sheet::slides(run),
@@ -237,6 +249,7 @@ fn results(run: &Run) -> String {
         }).collect::<Vec<_>>(),
         "shape_report": run.shape_report.as_ref().map(|report| message_json("ShapeReport", &report.encode_to_vec())),
         "losses": run.losses.iter().map(|row| message_json("LossRow", &row.encode_to_vec())).collect::<Vec<_>>(),
+        "modes": run.modes.iter().map(|part| message_json("StateModes", &part.encode_to_vec())).collect::<Vec<_>>(),
         "panels": run.panels.iter().map(|panel| message_json("PanelEntry", &panel.encode_to_vec())).collect::<Vec<_>>(),
         "load_pictures": run.loads.iter().map(|picture| message_json("LoadPicture", &picture.encode_to_vec())).collect::<Vec<_>>(),
         "envelope": columns(&run.envelope),

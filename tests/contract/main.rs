@@ -10,6 +10,7 @@ mod fields;
 mod freezing;
 mod golden;
 mod minimal;
+mod modes;
 mod reasons;
 mod results;
 mod sizes;

@@ -126,6 +126,7 @@ fn state(net: &Net) -> ReferenceOutcome {
         },
         certificate: None,
         diagnosis: None,
+        modes: None,
     };
     ReferenceOutcome {
         case: Case {

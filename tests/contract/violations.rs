@@ -1190,7 +1190,6 @@ fn accepted_doubts_stay_visible() {
 fn parts_that_are_not_served() {
     for (pointer, value, path) in [
         ("/stored_net", json!("3f9a"), "stored_net"),
-        ("/modes", json!({"count": 3}), "modes"),
         ("/motions", json!([{"id": "fall"}]), "motions[fall]"),
         ("/stages", json!([{"id": "first"}]), "stages[first]"),
         ("/workshop", json!({}), "workshop"),
@@ -1300,7 +1299,7 @@ fn everything_is_told_at_once() {
         ("/cases/0/factors/snw", json!(1)),
         ("/checks/0/over/0", json!("wimter")),
         ("/solving/tolerance", json!("Infinity")),
-        ("/modes", json!({})),
+        ("/workshop", json!({})),
         ("/accepted", json!([{"reason": "UNIT_SLIP"}])),
     ];
     let reading = reading(&changed(terrace(), &changes));
@@ -1314,7 +1313,7 @@ fn everything_is_told_at_once() {
         ("UNKNOWN_ID", "cases[snowed].factors[snw]"),
         ("UNKNOWN_ID", "checks[0].over[0]"),
         ("NOT_FINITE", "solving.tolerance"),
-        ("NOT_SERVED", "modes"),
+        ("NOT_SERVED", "workshop"),
         ("MISSING", "accepted[0].note"),
     ] {
         told(&reading, Error, reason, path);

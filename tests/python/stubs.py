@@ -37,6 +37,7 @@ def _module(name):
 
 brief = _module("brief_pb2")
 diagnosis = _module("diagnosis_pb2")
+motion = _module("motion_pb2")
 service = _module("brief_service_pb2")
 service_grpc = _module("brief_service_pb2_grpc")
 result = _module("result_pb2")

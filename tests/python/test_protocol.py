@@ -52,7 +52,7 @@ def test_get_info(channel):
     assert info.limits.request_bytes >= 64 << 20
     assert 0 < info.limits.response_bytes <= 1 << 20
     assert {"net.nodes", "cases", "prestress"} <= set(info.served)
-    assert "modes" in info.not_served
+    assert "modes" in info.served and "motions" in info.not_served
     assert info.cautions
 
 
@@ -79,12 +79,12 @@ def test_errors_come_with_details(channel, briefs):
 
 def test_part_that_is_not_served_is_refused_by_name(channel, briefs):
     brief = first_net(briefs)
-    brief["modes"] = {"count": 3}
+    brief["workshop"] = {}
     with pytest.raises(grpc.RpcError) as raised:
         talk.run(channel, brief)
     assert raised.value.code() == grpc.StatusCode.INVALID_ARGUMENT
     violations = details(raised.value)[error_details_pb2.BadRequest].field_violations
-    assert [v.reason for v in violations if v.field == "modes"] == ["NOT_SERVED"]
+    assert [v.reason for v in violations if v.field == "workshop"] == ["NOT_SERVED"]
 
 
 def test_bytes_that_are_no_message(channel):

@@ -19,6 +19,8 @@ mod checks;
 mod data;
 mod hanging;
 mod loads;
+mod modes;
+mod motion;
 mod nets;
 mod prestress;
 mod problem;

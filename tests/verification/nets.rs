@@ -8,12 +8,43 @@ use ropewalk_numerics::model::{CableId, SegmentId};
 use serde_json::Value;
 
 use crate::data::{Data, coordinates, file, index, number, numbers, vector};
-use crate::problem::{Problem, stiff, support_force};
+use crate::problem::{Problem, modes, stiff, support_force};
 use crate::report::Tolerance::{Absolute, Either, Relative};
 use crate::report::{check, check_all};
 
 fn list(value: &Value) -> &[Value] {
     value.as_array().expect("a list stands there")
+}
+
+/// Quantity whose values are natural frequencies about the final state.
+const FREQUENCIES: &str = "lowest 12 natural frequencies";
+/// Of the files: masses are weights over it (m/s²).
+const GRAVITY: f64 = 9.80665;
+
+/// Frequencies, and the mass that moves.
+fn compare_frequencies(data: &Data, state: &StateResult) {
+    let found = modes(state);
+    let expected = data.expected(FREQUENCIES);
+    let frequencies: Vec<f64> = found.modes.iter().map(|mode| mode.frequency).collect();
+    check_all(
+        &format!("{} natural frequencies (Hz)", data.id()),
+        &data.source(),
+        &numbers(&expected["value"]),
+        &frequencies,
+        Relative(number(&expected["tol_rel"])),
+    );
+    let masses = data.expected("lumped node masses");
+    // Held nodes have those of their ropes alone.
+    let sum: f64 = numbers(&masses["value"]).iter().filter(|mass| **mass > 60.0).sum();
+    for moving in found.moving_mass {
+        check(
+            &format!("{} moving mass (kg)", data.id()),
+            &data.source(),
+            sum,
+            moving,
+            Relative(1e-9),
+        );
+    }
 }
 
 /// Solves the net of a file and compares everything that the file gives of its static state.
@@ -64,6 +95,7 @@ fn compare_net_of(data: &Data, whole: &Data) {
         } else {
             problem.take_out(CableId::new(position));
         }
+        section.mass_per_length = number(&element["w"]) / GRAVITY;
         section.expansion = heat.map_or(0.0, |(expansion, _)| expansion);
         problem.bar(
             nodes[index(&element["i"])],
@@ -84,7 +116,25 @@ fn compare_net_of(data: &Data, whole: &Data) {
         let force = vector(&load["F"]);
         problem.push_node(nodes[index(&load["node"])], force.x, force.y, force.z);
     }
+    let expects = |quantity: &str| {
+        let names = data
+            .all_expected()
+            .iter()
+            .filter_map(|expected| expected["quantity"].as_str());
+        names.filter(|name| name.starts_with(quantity)).count() > 0
+    };
+    if expects(FREQUENCIES) {
+        // 60 kg on each free node: the file's masses say so.
+        for (i, node) in nodes.iter().enumerate().filter(|(i, _)| !supported.contains(i)) {
+            assert_eq!(*node, nodes[i]);
+            problem.attach(*node, 60.0);
+        }
+        problem.modes(numbers(&data.expected(FREQUENCIES)["value"]).len());
+    }
     let mut state = problem.solve().state;
+    if expects(FREQUENCIES) {
+        compare_frequencies(data, &state);
+    }
     // What is left, in the order of the file.
     let gone = |segment: usize| state.removed.contains(&SegmentId::new(segment));
     let kept: Vec<usize> = (0..state.slack.len()).filter(|segment| !gone(*segment)).collect();

@@ -5,8 +5,8 @@ use std::sync::Arc;
 
 use nalgebra::{DMatrix, Vector3};
 use ropewalk_numerics::brief::{
-    Brief, CaseGiven, CaseOutcome, Plan, PondingGiven, Prestress, PrestressRule, ReferenceOutcome, StateResult,
-    SupportForce,
+    Brief, CaseGiven, CaseOutcome, ModesGiven, Plan, PondingGiven, Prestress, PrestressRule, ReferenceOutcome,
+    StateResult, SupportForce,
 };
 use ropewalk_numerics::check::{Against, CaseDigest, Check, CheckKind, CheckTally, Judgement, Lack};
 use ropewalk_numerics::equilibrium::{Settings, Termination};
@@ -15,6 +15,7 @@ use ropewalk_numerics::model::{
     CableGiven, CableId, ElasticSupportGiven, Member, Net, NetGiven, NodeGiven, NodeId, PanelGiven, Section, Skin,
     Slide, StrutGiven, StrutId, SupportGiven,
 };
+use ropewalk_numerics::motion::Modes;
 use ropewalk_numerics::shape::{Adjustable, ShapeTarget, Wish};
 
 /// A net in the making.
@@ -31,6 +32,7 @@ pub(crate) struct Problem {
     case: Vec<Load>,
     ponding: Option<PondingGiven>,
     removed: Vec<Member>,
+    modes: Option<ModesGiven>,
 }
 
 /// What a problem answers.
@@ -191,6 +193,15 @@ impl Problem {
         self.ponding = Some(PondingGiven { density, gravity });
     }
 
+    /// Asks for the lowest natural frequencies of both states.
+    pub(crate) fn modes(&mut self, count: usize) {
+        self.modes = Some(ModesGiven {
+            cases: vec![0],
+            count,
+            ..ModesGiven::default()
+        });
+    }
+
     /// What comes of the case, whether it is an answer or not.
     #[track_caller]
     pub(crate) fn outcome(self) -> CaseOutcome {
@@ -334,6 +345,7 @@ impl Problem {
             effects: Vec::new(),
             checks: Vec::new(),
             diagnosis: None,
+            modes: self.modes,
             envelopes: Vec::new(),
             settings: Settings {
                 tolerance: 1e-14,
@@ -372,6 +384,21 @@ fn in_balance(state: &StateResult) {
         rest <= 1e-6 * largest,
         "loads and support forces leave {rest} N of {largest} N"
     );
+}
+
+/// The natural modes of a state: all of them, as a count shows, and orthogonal.
+#[track_caller]
+pub(crate) fn modes(state: &StateResult) -> &Modes {
+    let modes = state.modes.as_deref().expect("modes were asked for");
+    let modes = modes.as_ref().unwrap_or_else(|error| panic!("no modes: {error}"));
+    assert!(
+        modes.is_complete(),
+        "{:?} for {} modes",
+        modes.counted,
+        modes.modes.len()
+    );
+    assert!(modes.orthogonality < 1e-11, "{}", modes.orthogonality);
+    modes
 }
 
 /// The force of a support on the net (N).

@@ -3,6 +3,7 @@
 mod convergence;
 mod doubling;
 mod frame;
+mod modes;
 mod pick;
 mod plan;
 mod pulls;
@@ -13,6 +14,7 @@ use std::fmt::Write as _;
 
 pub(crate) use convergence::convergence;
 pub(crate) use doubling::doubling;
+pub(crate) use modes::modes;
 pub(crate) use pick::{moved_cases, ropes as picked_ropes};
 pub(crate) use plan::plan;
 pub(crate) use sections::sections;

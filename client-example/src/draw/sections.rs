@@ -46,6 +46,7 @@ pub(crate) fn sections(run: &Run) -> Option<String> {
         &format!("{} · sections along ropes", run.title()),
         &lines.map(|line| (line.to_owned(), MUTED)),
     );
+    first_frequencies(&mut sketch, run, &profiles);
     let mut top = 128.0;
     for profile in &profiles {
         let shape = draw(&mut sketch, run, profile, top);
@@ -53,6 +54,29 @@ pub(crate) fn sections(run: &Run) -> Option<String> {
     }
     frame::foot(&mut sketch, run, top);
     Some(sketch.finish(WIDTH, top + 20.0, &format!("{}, sections", run.title())))
+}
+
+/// The lowest natural frequency of each state drawn, in the corner, where it was asked for.
+fn first_frequencies(sketch: &mut Sketch, run: &Run, profiles: &[Profile]) {
+    let mut states = vec!["reference"];
+    for (state, _) in profiles.iter().flat_map(|profile| &profile.cases) {
+        if !states.contains(&state.id.as_str()) {
+            states.push(&state.id);
+        }
+    }
+    let frequencies = states.into_iter().filter_map(|state| {
+        let lowest = run.modes_found(state)?.lowest_frequency_hz?;
+        Some((state, lowest))
+    });
+    for (line, (state, lowest)) in (0_u8..4).zip(frequencies) {
+        sketch.put(format_args!(
+            "<text x=\"{:.0}\" y=\"{:.0}\" text-anchor=\"end\" data-f1-hz=\"{lowest}\">f1 {} Hz <tspan fill=\"{MUTED}\">{}</tspan></text>",
+            WIDTH - 36.0,
+            44.0 + 18.0 * f64::from(line),
+            three(lowest),
+            markup(&frame::short(state, 26))
+        ));
+    }
 }
 
 fn profile(run: &Run, cable: usize) -> Option<Profile<'_>> {

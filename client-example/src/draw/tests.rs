@@ -78,3 +78,27 @@ fn a_load_path_marks_both_rules_and_says_where_a_rope_goes_slack() {
     assert!(drawn.contains("slack from 0.500 F"));
     assert!(!drawn.contains("<rope>"));
 }
+
+#[test]
+fn modes_are_drawn_with_their_frequencies() {
+    let mut run = nasty();
+    assert!(modes(&run, &run.states[0]).is_empty());
+    assert!(!sections(&run).unwrap().contains("f1 "));
+    let nodes = run.nodes.clone();
+    sample::give_modes(&mut run, &nodes[nodes.len() - 1..]);
+    let pages = modes(&run, &run.states[0]);
+    assert_eq!(pages.len(), 1);
+    let page = &pages[0];
+    assert!(
+        page.contains("mode 1 · 2.50 Hz · period 0.400 s") && page.contains("data-frequency-hz=\"4\""),
+        "{page}"
+    );
+    assert!(page.contains("mode 3 · does not vibrate") && page.contains("takes part: x 0 %, y 25 %, z 100 %"));
+    assert!(!page.contains("<script") && page.contains("&lt;") && !page.contains("NaN") && !page.contains("inf"));
+    assert!(modes(&run, &run.states[1]).is_empty(), "another state has none");
+    let drawn = sections(&run).unwrap();
+    assert!(drawn.contains("f1 2.50 Hz") && drawn.contains("data-f1-hz=\"2.5\""));
+    // Shapes that do not fit the modes are not drawn.
+    run.states[0].columns.get_mut("mode_shape").unwrap().components = 6;
+    assert!(modes(&run, &run.states[0]).is_empty());
+}

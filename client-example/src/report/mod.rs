@@ -185,6 +185,12 @@ fn drawings(run: &Run, scale: &Scale) -> String {
     if let Some(sections) = draw::sections(run) {
         text.push_str(&format!("<div class=\"wide\">{sections}</div>\n"));
     }
+    let pages = run
+        .reference()
+        .map_or_else(Vec::new, |reference| draw::modes(run, reference));
+    if let Some(page) = pages.first() {
+        text.push_str(&format!("<div class=\"wide\">{page}</div>\n"));
+    }
     if text.is_empty() {
         return text;
     }

@@ -40,6 +40,7 @@ pub(crate) struct Collector {
     told_again: Option<String>,
     findings: Vec<v1::Finding>,
     diagnoses: Vec<v1::StateDiagnosis>,
+    modes: Vec<v1::StateModes>,
     sizing: Option<v1::SizingResult>,
     shape_report: Option<v1::ShapeReport>,
     effects: Vec<v1::DesignEffect>,
@@ -101,6 +102,7 @@ impl Collector {
             Event::Timing(timing) => self.timing = Some(timing),
             Event::Summary(summary) => self.summary = Some(summary),
             Event::Diagnosis(part) => self.diagnoses.push(part),
+            Event::Modes(part) => self.modes.push(part),
             Event::Sizing(sizing) => self.sizing = Some(sizing),
             Event::DesignEffect(effect) => self.effects.push(effect),
             Event::LossTable(part) => {
@@ -291,6 +293,7 @@ impl Collector {
             envelope: BTreeMap::new(),
             findings: std::mem::take(&mut self.findings),
             diagnoses: std::mem::take(&mut self.diagnoses),
+            modes: std::mem::take(&mut self.modes),
             sizing: self.sizing.take(),
             effects: Vec::new(),
             slides: Vec::new(),

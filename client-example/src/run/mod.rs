@@ -116,6 +116,8 @@ pub(crate) struct Run {
     pub(crate) loads: Vec<v1::LoadPicture>,
     /// What was found of states beside their balance, in order.
     pub(crate) diagnoses: Vec<v1::StateDiagnosis>,
+    /// Natural modes of states, in order.
+    pub(crate) modes: Vec<v1::StateModes>,
     /// Sections that were chosen; none where the brief asks for none.
     pub(crate) sizing: Option<v1::SizingResult>,
     pub(crate) summary: v1::Summary,
@@ -138,6 +140,25 @@ impl Run {
     /// The reference state, if the engine told of one.
     pub(crate) fn reference(&self) -> Option<&State> {
         self.states.iter().find(|state| state.id == "reference")
+    }
+
+    /// The natural modes of a state, from the lowest.
+    pub(crate) fn modes_of(&self, state: &str) -> Vec<&v1::Mode> {
+        let parts = self.modes.iter().filter(|part| part.case == state);
+        let modes = parts.filter_map(|part| match part.part.as_ref() {
+            Some(v1::state_modes::Part::Mode(mode)) => Some(mode),
+            _ => None,
+        });
+        modes.collect()
+    }
+
+    /// What holds for all natural modes of a state.
+    pub(crate) fn modes_found(&self, state: &str) -> Option<&v1::ModesFound> {
+        let mut parts = self.modes.iter().filter(|part| part.case == state);
+        parts.find_map(|part| match part.part.as_ref() {
+            Some(v1::state_modes::Part::Found(found)) => Some(found),
+            _ => None,
+        })
     }
 
     /// Rope segments: the first of all segments.

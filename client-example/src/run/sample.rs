@@ -259,6 +259,45 @@ fn events_named(names: Names) -> Vec<Event> {
     events
 }
 
+/// Gives the reference state of a sample three modes, the last of which does not vibrate.
+pub(crate) fn give_modes(run: &mut Run, nodes: &[String]) {
+    let part = |part| v1::StateModes {
+        case: "reference".to_owned(),
+        part: Some(part),
+    };
+    run.modes.push(part(v1::state_modes::Part::Found(v1::ModesFound {
+        modes: 3,
+        complete: true,
+        counted: Some(3),
+        moving_mass_kg: vec![8.0; 3],
+        lowest_tension_share: Some(1.0),
+        lowest_frequency_hz: Some(2.5),
+        ..v1::ModesFound::default()
+    })));
+    let kinds = [v1::ModeKind::Vibrates, v1::ModeKind::Vibrates, v1::ModeKind::Rigid];
+    for ((number, kind), frequency_hz) in (0..).zip(kinds).zip([2.5, 4.0, 0.0]) {
+        run.modes.push(part(v1::state_modes::Part::Mode(v1::Mode {
+            number,
+            kind: kind.into(),
+            frequency_hz,
+            modal_mass_kg: 8.0,
+            effective_mass_kg: vec![0.0, 2.0, 8.0],
+            nodes: nodes.to_vec(),
+            ..v1::Mode::default()
+        })));
+    }
+    let shapes = Column {
+        unit: String::new(),
+        over: v1::Range::Node,
+        components: 9,
+        baseline: String::new(),
+        values: (0..9 * run.nodes.len())
+            .map(|place| if place % 9 % 4 == 0 { 1.0 } else { 0.0 })
+            .collect(),
+    };
+    run.states[0].columns.insert("mode_shape".to_owned(), shapes);
+}
+
 /// Gives the case of a sample a path: movements in proportion, a carrying rope on a line, a bracing one that goes slack.
 pub(crate) fn give_path(run: &mut Run, factors: &[f64]) {
     let column = |over: v1::Range, components: usize, values: Vec<f64>| Column {

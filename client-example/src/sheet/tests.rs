@@ -316,3 +316,17 @@ fn factors_on_effects_stand_beside_those_on_actions() {
     assert_eq!(shown(&sheet, 0)[3..], ["20.0", "12.5", "1.60", "on the action"]);
     assert_eq!(shown(&sheet, 1)[3..], ["30.0", "37.5", "0.800", "on the effect"]);
 }
+
+#[test]
+fn natural_frequencies_stand_with_period_and_part() {
+    let mut run = sample::run();
+    assert!(modes(&run).is_none());
+    sample::give_modes(&mut run, &["m".to_owned()]);
+    let sheet = modes(&run).unwrap();
+    assert_eq!(sheet.rows.len(), 4);
+    let shown = |row: usize| -> Vec<String> { sheet.rows[row].cells.iter().map(Cell::shown).collect() };
+    assert_eq!(shown(0)[1], "3 modes, a count misses none");
+    assert_eq!(shown(1)[1..8], ["1", "2.50", "0.400", "0", "25", "100", "m"]);
+    assert_eq!(shown(3)[1..4], ["3 without stiffness", "–", "–"]);
+    assert_eq!((sheet.rows[1].mark, sheet.rows[3].mark), (Mark::Plain, Mark::Bad));
+}

@@ -348,7 +348,7 @@ fn errors_are_told_with_their_places() {
         folder.path("out").to_str().unwrap(),
     ]);
     assert_eq!(ended.code, 64);
-    for part in ["stages[masts]", "stages[pull-winch]", "modes", "workshop"] {
+    for part in ["stages[masts]", "stages[pull-winch]", "workshop"] {
         assert!(
             ended.told.contains(&format!("error NOT_SERVED  {part}\n")),
             "{part}:\n{}",

@@ -22,7 +22,7 @@
 //! | 1 | [`element`]: one member; [`load`]: what acts on it |
 //! | 2 | [`assembly`]: all members together; [`check`]: is it good enough |
 //! | 3 | [`equilibrium`]: one balanced state |
-//! | 4 | [`shape`]: a state to start from; [`diagnose`]: why there is none |
+//! | 4 | [`shape`]: a state to start from; [`diagnose`]: why there is none; [`motion`]: how it vibrates and moves |
 //! | 5 | [`brief`]: the whole work, planned and run |
 //!
 //! A module uses those below it only. Nothing here reads a clock or a file, logs, or starts a thread.
@@ -36,6 +36,7 @@ pub mod element;
 pub mod equilibrium;
 pub mod load;
 pub mod model;
+pub mod motion;
 pub mod shape;
 
 #[cfg(test)]

@@ -9,6 +9,8 @@ const FACTORISATIONS_PER_CASE: f64 = 12.0;
 const FACTOR_RATE: f64 = 12e9;
 /// Seconds a stored entry of the factor takes in two substitutions, bound by memory.
 const SOLVE_SECONDS_PER_ENTRY: f64 = 3e-9;
+/// Factorisations that natural modes of a state take: shifts, counts.
+const FACTORISATIONS_OF_MODES: f64 = 6.0;
 /// Seconds a segment takes to assemble.
 const ASSEMBLY_SECONDS_PER_SEGMENT: f64 = 1e-7;
 
@@ -51,13 +53,21 @@ impl Estimate {
         // Positions and displacements; four numbers and a flag a segment; unstressed lengths; support forces; two a panel.
         let numbers =
             6 * net.nodes().len() + 4 * net.segments().len() + net.n_lengths() + 9 * supported + 2 * net.panels().len();
+        let (mut of_modes, mut shapes) = (0.0, 0);
+        if let Some(modes) = &brief.modes {
+            let states = modes.cases.len() + usize::from(modes.reference);
+            let vectors = 3.0 * modes.count as f64 + 40.0;
+            let steps = vectors * (entries * SOLVE_SECONDS_PER_ENTRY + vectors * n * 4e-9);
+            of_modes = states as f64 * (FACTORISATIONS_OF_MODES * factor_operations / FACTOR_RATE + steps);
+            shapes = states * modes.count * 24 * net.nodes().len();
+        }
         Self {
             unknowns,
             states,
             factor_entries,
             factor_operations,
-            seconds: iteration * FACTORISATIONS_PER_CASE * (states as f64 + f64::from(on_paths)),
-            result_bytes: (states * (8 * numbers + net.segments().len())) as u64,
+            seconds: of_modes + iteration * FACTORISATIONS_PER_CASE * (states as f64 + f64::from(on_paths)),
+            result_bytes: (states * (8 * numbers + net.segments().len()) + shapes) as u64,
         }
     }
 }

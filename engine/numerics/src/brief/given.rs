@@ -2,7 +2,7 @@
 
 use std::sync::Arc;
 
-use super::DiagnosisGiven;
+use super::{DiagnosisGiven, ModesGiven};
 use crate::check::Check;
 use crate::equilibrium::{LoadSteps, Settings};
 use crate::load::{Action, Case};
@@ -75,6 +75,8 @@ pub struct Brief {
     pub checks: Vec<Check>,
     /// States that are looked into, if any.
     pub diagnosis: Option<DiagnosisGiven>,
+    /// States whose natural frequencies are wanted, if any.
+    pub modes: Option<ModesGiven>,
     /// Envelopes beside that over all cases, in result order.
     pub envelopes: Vec<EnvelopeGiven>,
     /// How states are solved for.

@@ -9,6 +9,7 @@ use crate::equilibrium::certificate::Certificate;
 use crate::equilibrium::{IterationReport, Solution, SolveError, Termination};
 use crate::load::Case;
 use crate::model::{Net, NodeId, ReferenceState, SegmentId};
+use crate::motion::{Modes, ModesError};
 use crate::shape::ShapeReport;
 
 /// Forces of a support on the net.
@@ -84,6 +85,8 @@ pub struct StateResult {
     pub certificate: Option<Certificate>,
     /// What it allows beside bearing its load, where that was asked for.
     pub diagnosis: Option<Box<StateDiagnosis>>,
+    /// Natural modes about it, where they were asked for, or why there are none.
+    pub modes: Option<Box<Result<Modes, ModesError>>>,
 }
 
 impl StateResult {

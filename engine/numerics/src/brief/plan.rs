@@ -6,6 +6,7 @@ use std::sync::Arc;
 
 use super::cause::{Stop, cause_of_error, cause_of_pond, cause_of_stop};
 use super::diagnosis::diagnose;
+use super::modes::modes_about;
 use super::state::{Bare, state_result};
 use super::{Brief, CaseOutcome, Estimate, LoadPicture, PondingEnd, ReferenceOutcome, Task, ponding};
 use crate::check::{Base, CaseDigest, CheckKind, worst_ratio};
@@ -100,6 +101,9 @@ impl Plan {
         if let Some(asked) = brief.diagnosis.as_ref().filter(|asked| asked.reference) {
             result.diagnosis = diagnose(&self.analysis, asked, &case, &result, None).map(Box::new);
         }
+        if let Some(asked) = brief.modes.as_ref().filter(|asked| asked.reference) {
+            result.modes = Some(modes_about(&self.analysis, asked, &case, &result, &state));
+        }
         let mut outcome = ReferenceOutcome {
             state,
             case,
@@ -144,9 +148,11 @@ impl Plan {
             cases,
             settings,
             diagnosis,
+            modes,
             ..
         } = &*self.brief;
         let given = &cases[case];
+        let index = case;
         let asked = diagnosis.as_ref().filter(|asked| asked.cases.contains(&case));
         let settings = &Settings {
             load_steps: given.load_steps.unwrap_or(settings.load_steps),
@@ -206,6 +212,11 @@ impl Plan {
                         .and_then(|of| of.stiffnesses.first())
                         .map(|least| least.stiffness);
                     result.diagnosis = diagnose(&self.analysis, asked, &case, &result, before).map(Box::new);
+                }
+                let asked = modes.as_ref().filter(|asked| asked.cases.binary_search(&index).is_ok());
+                if let Some(asked) = asked.filter(|_| solution.termination == Termination::Converged && !grows) {
+                    let modes = modes_about(&self.analysis, asked, &case, &result, &reference.state);
+                    result.modes = Some(modes);
                 }
                 CaseOutcome::State {
                     solution,

@@ -502,7 +502,12 @@ fn run(
     brief: Brief,
     observe: &mut dyn FnMut(Task, &IterationReport) -> ControlFlow<()>,
 ) -> Result<Option<Summary>, Ended> {
-    let plan = Plan::new(brief);
+    // Only verdicts are wanted of a round.
+    let plan = Plan::new(Brief {
+        diagnosis: None,
+        modes: None,
+        ..brief
+    });
     let mut goes_on = true;
     let mut see = |task: Task, report: &IterationReport| {
         let flow = observe(task, report);

@@ -105,6 +105,7 @@ pub(super) fn state_result(net: &Net, case: &Case, reference: &[Vector3<f64>], s
         certificate: None,
         loads,
         diagnosis: None,
+        modes: None,
     }
 }
 

@@ -40,6 +40,9 @@ pub struct Inertia {
     pub negative: usize,
     /// Smallest pivot by size.
     pub smallest: f64,
+    /// Largest pivot, or product `l² d` that elimination took from one, by size: far above the entries of the matrix, signs
+    /// of pivots are not certain.
+    pub largest: f64,
 }
 
 /// Elimination order and structure of the factor of one pattern; shared between threads.
@@ -333,6 +336,7 @@ impl Factor {
         let mut inertia = Inertia {
             negative: 0,
             smallest: f64::INFINITY,
+            largest: 0.0,
         };
         for s in 0..self.symbolic.factor.n_supernodes() {
             let block = factor.supernode(s).val();
@@ -345,6 +349,10 @@ impl Factor {
                 if pivot.abs() < inertia.smallest.abs() {
                     inertia.smallest = pivot;
                 }
+                let below = (j + 1..block.nrows())
+                    .map(|i| block[(i, j)].powi(2))
+                    .fold(1.0, f64::max);
+                inertia.largest = inertia.largest.max(below * pivot.abs());
             }
         }
         self.held = Held::Ldlt;

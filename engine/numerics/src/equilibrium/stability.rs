@@ -127,7 +127,7 @@ fn stiffen(structure: &Structure, nodes: &[NodeId], stiffness: f64, values: &mut
 }
 
 /// Exact but for the antisymmetric part of pressure and for [`Structure::slips`], by the entries of the pattern (N/m).
-pub(super) fn tangent(structure: &Structure, loading: &Loading, positions: &[Vector3<f64>]) -> Vec<f64> {
+pub(crate) fn tangent(structure: &Structure, loading: &Loading, positions: &[Vector3<f64>]) -> Vec<f64> {
     let blocks: Vec<_> = (structure.net().segments().iter().zip(&loading.bars))
         .map(|(s, bar)| bar.stiffness_block(&(positions[s.ends[1].index()] - positions[s.ends[0].index()])))
         .collect();

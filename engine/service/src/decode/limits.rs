@@ -115,6 +115,7 @@ pub(crate) fn elements(brief: &v1::Brief, findings: &mut Findings) {
         + (brief.diagnosis.iter())
             .map(|d| d.note.len() + d.about.iter().map(|id| id.len() + 4).sum::<usize>())
             .sum::<usize>()
+        + brief.modes.as_ref().map_or(0, Message::encoded_len)
         + brief.frozen_from.as_ref().map_or(0, |f| f.note.len());
     let net = match &brief.net_source {
         Some(v1::brief::NetSource::Net(net)) => net.note.len(),

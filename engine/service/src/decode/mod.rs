@@ -7,7 +7,7 @@
 //! | `findings`, `reasons`, `numbers`, `names` | what is told, where, and why |
 //! | `net`, `places`, `sections`, `supports`, `stretch`, `slides`, `adjusters`, `scope`, `surface` | the net |
 //! | `prestress`, `wish`, `actions`, `factors`, `combinations`, `cases`, `solving` | what is wanted of it |
-//! | `checks`, `check_kinds`, `editions`, `diagnosis`, `sizing` | what it is judged and sized by |
+//! | `checks`, `check_kinds`, `editions`, `diagnosis`, `modes`, `sizing` | what it is judged and sized by |
 //! | `plausible`, `frozen`, `accepted` | doubts |
 //! | `limits`, `not_served` | what is refused |
 //!
@@ -28,6 +28,7 @@ mod findings;
 mod frozen;
 mod keep;
 mod limits;
+mod modes;
 mod names;
 mod net;
 mod not_served;

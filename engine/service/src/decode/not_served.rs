@@ -48,6 +48,7 @@ pub const SERVED: &[&str] = &[
     "checks.drainage",
     "sizing",
     "diagnosis",
+    "modes",
     "solving",
     "keep",
     "accepted",
@@ -55,15 +56,7 @@ pub const SERVED: &[&str] = &[
 ];
 
 /// Parts of a brief that are refused.
-pub const NOT_SERVED: &[&str] = &[
-    "stored_net",
-    "modes",
-    "motions",
-    "stages",
-    "workshop",
-    "readings",
-    "variants",
-];
+pub const NOT_SERVED: &[&str] = &["stored_net", "motions", "stages", "workshop", "readings", "variants"];
 
 /// Refuses every part of the brief that is not served.
 pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
@@ -93,10 +86,8 @@ pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
     ] {
         elements(list, &ids, &mut part);
     }
-    for (field, given) in [("modes", brief.modes.is_some()), ("workshop", brief.workshop.is_some())] {
-        if given {
-            part(&Path::root(field), "");
-        }
+    if brief.workshop.is_some() {
+        part(&Path::root("workshop"), "");
     }
 }
 

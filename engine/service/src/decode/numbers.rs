@@ -162,6 +162,10 @@ pub(crate) const SIZING_RUNS: Quantity = Quantity::between("number of runs", "",
 pub(crate) const TOLERANCE: Quantity = Quantity::between("tolerance", "", 1e-14, 1e-8);
 pub(crate) const LOAD_STEPS: Quantity = Quantity::between("number of load steps", "", 1.0, 1000.0);
 pub(crate) const MODES_OF_STIFFNESS: Quantity = Quantity::between("number of modes of stiffness", "", 1.0, 20.0);
+pub(crate) const MODES: Quantity = Quantity::between("number of frequencies", "", 1.0, 100.0);
+pub(crate) const ADDED_MASS: Quantity = Quantity::not_negative("added mass", "kg", 1e9);
+pub(crate) const AIR_MASS: Quantity = Quantity::not_negative("mass of air", "kg/m2", 1e6);
+pub(crate) const FREQUENCY: Quantity = Quantity::not_negative("limit of frequency", "Hz", 1e6);
 pub(crate) const ITERATIONS: Quantity = Quantity::between("number of iterations", "", 1.0, 100_000.0);
 
 /// Whom a number belongs to.

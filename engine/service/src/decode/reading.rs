@@ -24,8 +24,8 @@ use super::supports::Supports;
 use super::surface::SurfaceDraft;
 use super::work::{Names, Work};
 use super::{
-    accepted, checks, combinations, diagnosis, frozen, keep, limits, not_served, plausible, prestress, reasons, sizing,
-    solving,
+    accepted, checks, combinations, diagnosis, frozen, keep, limits, modes, not_served, plausible, prestress, reasons,
+    sizing, solving,
 };
 use crate::config::Limits;
 use crate::words::shown;
@@ -219,6 +219,16 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
         resolved,
     );
     let diagnosis = diagnosis::read(brief.diagnosis.as_ref(), &cases, findings, resolved);
+    let modes = modes::read(
+        brief.modes.as_ref(),
+        &modes::Context {
+            net: &net,
+            scopes: &scopes,
+            cases: &cases,
+        },
+        findings,
+        resolved,
+    );
     plausible::sections(&net, findings);
     plausible::extent(&net, findings);
     plausible::prestress(&net, &sections, &prestress, findings);
@@ -263,6 +273,7 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
             effects,
             checks,
             diagnosis,
+            modes,
             envelopes,
             settings,
         };

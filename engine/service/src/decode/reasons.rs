@@ -220,6 +220,12 @@ reasons! {
     LARGE_MOVEMENT,
     /// A state with hardly any stiffness left against a movement, or none.
     LITTLE_STIFFNESS,
+    /// A natural frequency so low that the wind is to be studied.
+    LOW_FREQUENCY,
+    /// A state without natural modes, where they are wanted.
+    NO_MODES,
+    /// Natural modes of which a count does not show that none is missed.
+    MODES_NOT_PROVEN,
     /// Panels that a pressure on the surface leaves without a value.
     PANELS_WITHOUT_VALUE,
     /// A panel that was found in plan has turned over in the reference state.
@@ -237,6 +243,8 @@ pub const OF_RESULTS: &[&str] = &[
     TARGETS_UNMET,
     OVER_BREAKING,
     LARGE_MOVEMENT,
+    LOW_FREQUENCY,
+    MODES_NOT_PROVEN,
     PANELS_WITHOUT_VALUE,
     PANEL_TURNED,
     ZONES_CONTRADICT,

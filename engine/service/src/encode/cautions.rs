@@ -45,7 +45,17 @@ pub(super) fn of_run(work: &Work, own: &[Caution]) -> Vec<String> {
         "design effects are sums of effects by a rule, quantity by quantity, never states: nothing is in balance in them"
             .to_owned()
     });
-    let of_brief = source.into_iter().chain(effects).map(|text| sentence(&text));
+    let modes = work.brief.modes.is_some().then(|| {
+        "natural frequencies are of small undamped movements about a state, with lumped masses; ropes slide in them without \
+         friction; a rope near slackness changes them; added mass of air is an input; limits of frequency do not replace a \
+         study of the wind"
+            .to_owned()
+    });
+    let of_brief = source
+        .into_iter()
+        .chain(effects)
+        .chain(modes)
+        .map(|text| sentence(&text));
     cautions().into_iter().chain(own).chain(of_brief).collect()
 }
 

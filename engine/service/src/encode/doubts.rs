@@ -5,6 +5,7 @@ use ropewalk_numerics::brief::{LITTLE_LEFT, Standing, StateResult};
 use ropewalk_numerics::model::{Net, SegmentId};
 use ropewalk_numerics::shape::ShapeReport;
 
+use super::modes;
 use crate::decode::{Work, reasons};
 use crate::words::{Quoted, force, length, number, quoted_list, rounded};
 
@@ -25,6 +26,7 @@ pub(super) fn of_state(work: &Work, net: &Net, case: &str, state: &StateResult) 
     ];
     let mut findings: Vec<v1::Finding> = found.into_iter().flatten().collect();
     findings.extend(little_stiffness(net, state));
+    findings.extend(modes::findings(net, work.brief.modes.as_ref(), state));
     for finding in &mut findings {
         finding.case = case.to_owned();
         work.accept(finding);

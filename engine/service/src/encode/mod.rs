@@ -11,6 +11,7 @@
 //! | `surface` | panels, and what each action does in the reference state |
 //! | `effects` | sums of effects, paths of cases, losses of members |
 //! | `diagnosis` | free movements, states of self-stress, least stiffnesses |
+//! | `modes` | natural modes: frequencies, shapes, what is odd about them |
 //! | `closing`, `verdicts`, `rules`, `anchors`, `cautions` | the end of a run |
 //! | `sizing` | sections chosen from lists |
 //! | `freeze` | the brief with what was found written in |
@@ -27,6 +28,7 @@ mod effects;
 mod failure;
 mod freeze;
 mod head;
+mod modes;
 mod outcome;
 mod parts;
 mod progress;

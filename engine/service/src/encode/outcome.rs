@@ -11,7 +11,7 @@ use v1::run_response::Event;
 use super::closing::Noted;
 use super::parts::{count, event, first_ids};
 use super::progress::way;
-use super::{certificate, diagnosis, doubts, failure, shape, state, surface};
+use super::{certificate, diagnosis, doubts, failure, modes, shape, state, surface};
 use crate::decode::{REFERENCE, Work, reasons};
 use crate::words::quoted_list;
 
@@ -47,6 +47,7 @@ pub fn reference(
     if let Ok(reference) = found {
         messages.extend(shape::report(&reference.report));
         messages.extend(diagnosed(&plan.brief().net, REFERENCE, &reference.result));
+        messages.extend(moving(&plan.brief().net, REFERENCE, &reference.result, reference));
     }
     let findings = reference_findings(work, plan, found);
     messages.extend(findings.into_iter().map(|finding| event(Event::Finding(finding))));
@@ -126,6 +127,7 @@ pub fn case(
             messages.extend(state::arrays(net, name, result, &reference.result));
             messages.extend(state::history(name, &solution.history));
             messages.extend(diagnosed(net, name, result));
+            messages.extend(moving(net, name, result, reference));
             let mut closing = summary(work, net, name, result, reference);
             closing.set_way(way(solution.way));
             closing.load_factor = solution.load_factor;
@@ -213,6 +215,11 @@ fn no_answer(case: &str, failure: &v1::Failure) -> v1::Finding {
 fn diagnosed(net: &Net, case: &str, state: &StateResult) -> Vec<v1::RunResponse> {
     let found = state.diagnosis.as_deref();
     found.map_or_else(Vec::new, |found| diagnosis::parts(net, case, found))
+}
+
+fn moving(net: &Net, case: &str, state: &StateResult, reference: &ReferenceOutcome) -> Vec<v1::RunResponse> {
+    let lowest = lowest_tension_share(net, state, reference);
+    modes::parts(net, case, state, lowest.map(|(_, share)| share))
 }
 
 /// What a state says of itself.

@@ -182,13 +182,17 @@ struct Solver<'a> {
 /// What a case leaves: its messages, and what the summary needs of it.
 type CaseAnswer = (Vec<v1::RunResponse>, encode::Noted);
 
+/// Whether an array is told whatever the brief keeps: paths and shapes of modes are asked for by name.
+fn is_asked_for_by_name(columns: &v1::Columns) -> bool {
+    columns.name.starts_with("path_") || columns.name == "mode_shape"
+}
+
 impl Solver<'_> {
     /// The messages of a case without the arrays that the brief does not keep.
     fn kept(&self, case: usize, mut messages: Vec<v1::RunResponse>) -> Vec<v1::RunResponse> {
         if self.prepared.work.kept().is_some_and(|kept| !kept.is_full(case)) {
             let is_kept = |event: &Event| match event {
-                // A path is asked for by name.
-                Event::Columns(columns) => columns.name.starts_with("path_"),
+                Event::Columns(columns) => is_asked_for_by_name(columns),
                 _ => true,
             };
             messages.retain(|message| message.event.as_ref().is_none_or(is_kept));
@@ -245,8 +249,13 @@ impl Solver<'_> {
             let mut pending = self.start(case);
             let answer = self.desk.relay(&mut pending, outbox, progress).await;
             let (mut messages, _) = answer.map_err(|panicked| self.work.internal(panicked))?;
-            // Findings were told the first time.
-            messages.retain(|message| !matches!(message.event, Some(Event::Finding(_))));
+            // The rest was told the first time.
+            let is_told = |event: &Event| match event {
+                Event::Finding(_) | Event::Diagnosis(_) | Event::Modes(_) => true,
+                Event::Columns(columns) => is_asked_for_by_name(columns),
+                _ => false,
+            };
+            messages.retain(|message| message.event.as_ref().is_none_or(|event| !is_told(event)));
             if let Some(Event::CaseBegin(begin)) = messages.first_mut().and_then(|first| first.event.as_mut()) {
                 begin.again = true;
             }

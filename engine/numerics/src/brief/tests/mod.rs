@@ -57,6 +57,7 @@ fn brief(net: Net, prestress: Prestress, actions: Vec<Action>, cases: Vec<CaseGi
         effects: Vec::new(),
         checks: Vec::new(),
         diagnosis: None,
+        modes: None,
         envelopes: Vec::new(),
         settings: Settings::default(),
     }

@@ -1,0 +1,320 @@
+//! Whether a motion makes sense, how large it is, and what its steps can not resolve.
+
+use nalgebra::Vector3;
+
+use super::history::Side;
+use super::system::{System, driven_case};
+use super::waves::wave_speeds;
+use super::{BreakWhen, Driven, Motion, MotionError, Scheme};
+use crate::assembly::Structure;
+use crate::load::Case;
+use crate::model::{CableId, Net, NodeId, SegmentId};
+
+/// Steps allowed in one motion.
+const MOST_STEPS: f64 = 1e8;
+
+/// Bytes allowed for all frames of one motion.
+const MOST_BYTES: f64 = 4e9;
+
+/// Bytes of the ledger and other numbers of a frame.
+const FRAME_BYTES: f64 = 80.0;
+
+/// How large a motion is.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Extent {
+    /// Steps as given.
+    pub steps: u64,
+    /// Steps in all, as many as stability needs where they are explicit; halved ones not foreseen.
+    pub divided_steps: f64,
+    /// Frames.
+    pub frames: u64,
+    /// Size of all frames in double precision (bytes).
+    pub bytes: f64,
+    /// Largest stable explicit step (s).
+    pub stable_step: f64,
+}
+
+/// What a step does not resolve. It is told, not refused.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Caution {
+    /// A wave crosses a segment in less than one step.
+    Wave {
+        /// The rope.
+        cable: CableId,
+        /// Step as given (s).
+        step: f64,
+        /// Step that resolves transverse waves on it (s).
+        needed: f64,
+    },
+    /// A history changes faster than the steps follow.
+    History {
+        /// Which driven load, from 0.
+        driven: usize,
+        /// Step as given (s).
+        step: f64,
+        /// Step that resolves it (s).
+        needed: f64,
+    },
+}
+
+fn number(what: &'static str, value: f64, is_right: bool, needed: &'static str) -> Result<(), MotionError> {
+    if is_right {
+        Ok(())
+    } else {
+        Err(MotionError::Number { what, value, needed })
+    }
+}
+
+fn length(what: &'static str, given: usize, needed: usize, may_be_empty: bool) -> Result<(), MotionError> {
+    if given == needed || (may_be_empty && given == 0) {
+        Ok(())
+    } else {
+        Err(MotionError::WrongLength { what, given, needed })
+    }
+}
+
+/// Everything that can be told before the net is put in motion.
+pub(super) fn check_given(structure: &Structure, motion: &Motion<'_>) -> Result<(), MotionError> {
+    let net = structure.net();
+    let (nodes, segments) = (net.nodes().len(), net.segments().len());
+    if let Some(reach) = net.reaches().iter().find(|reach| reach.slides()) {
+        return Err(MotionError::Slides {
+            segment: SegmentId::new(reach.segments.start),
+        });
+    }
+    if let Some(hanging) = net.segments().iter().position(|segment| segment.hangs) {
+        return Err(MotionError::Hangs {
+            segment: SegmentId::new(hanging),
+        });
+    }
+    length("positions", motion.positions.len(), nodes, false)?;
+    length("velocities", motion.velocities.len(), nodes, true)?;
+    length("added masses", motion.added_masses.len(), nodes, true)?;
+    length("dashpots", motion.damping.segments.len(), segments, true)?;
+    let lengths = motion.reference.unstressed_lengths.len();
+    length("reference lengths", lengths, net.n_lengths(), false)?;
+    length("reference positions", motion.reference.positions.len(), nodes, false)?;
+    crate::assembly::check_vectors("position", &motion.positions)?;
+    crate::assembly::check_vectors("velocity", &motion.velocities)?;
+    if let Some(settled) = &motion.settled {
+        length("settled positions", settled.positions.len(), nodes, false)?;
+        length("settled forces", settled.axial_forces.len(), segments, false)?;
+    }
+    let positive = |value: f64| value > 0.0 && value.is_finite();
+    let not_negative = |value: f64| value >= 0.0 && value.is_finite();
+    number("duration", motion.duration, positive(motion.duration), "positive")?;
+    number("step", motion.step, positive(motion.step), "positive")?;
+    let within = motion.step <= motion.duration;
+    number("step", motion.step, within, "no longer than the duration")?;
+    let damping = &motion.damping;
+    number(
+        "damping by mass",
+        damping.mass,
+        not_negative(damping.mass),
+        "zero or more",
+    )?;
+    number(
+        "damping by stiffness",
+        damping.stiffness,
+        not_negative(damping.stiffness),
+        "zero or more",
+    )?;
+    for c in &damping.segments {
+        number("dashpot of a segment", *c, not_negative(*c), "zero or more")?;
+    }
+    for mass in &motion.added_masses {
+        number("added mass", *mass, not_negative(*mass), "zero or more")?;
+    }
+    if let Scheme::GeneralisedAlpha { spectral_radius, error } = motion.scheme {
+        let within = (0.0..=1.0).contains(&spectral_radius);
+        number("spectral radius", spectral_radius, within, "0 to 1")?;
+        if let Some(error) = error {
+            number("error of a step", error, positive(error), "positive")?;
+        }
+    }
+    for (node, velocity) in motion.velocities.iter().enumerate() {
+        let node = NodeId::new(node);
+        let free = structure.dofs().directions(node);
+        let along_free: Vector3<f64> = free.iter().map(|d| d * d.dot(velocity)).sum();
+        if (velocity - along_free).norm() > 1e-12 * velocity.norm() {
+            return Err(MotionError::HeldVelocity { node });
+        }
+    }
+    check_driven(net, motion)?;
+    check_breaks(net, motion)
+}
+
+fn check_driven(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
+    for (place, driven) in motion.driven.iter().enumerate() {
+        let history = match driven {
+            Driven::Case { history, .. } | Driven::Wind { speed: history, .. } => history,
+        };
+        history
+            .check()
+            .map_err(|error| MotionError::History { driven: place, error })?;
+        let refuse = |what| Err(MotionError::Driven { driven: place, what });
+        match driven {
+            Driven::Case { case, .. } => {
+                length("driven forces", case.nodal_forces.len(), net.nodes().len(), false)?;
+                let movements = case.support_movements.len();
+                length("driven support movements", movements, net.nodes().len(), false)?;
+                length("driven pressures", case.pressures.len(), net.panels().len(), true)?;
+                crate::assembly::check_vectors("force", &case.nodal_forces)?;
+                crate::assembly::check_vectors("movement", &case.support_movements)?;
+                if case.segments.iter().any(|segment| segment.temperature_change != 0.0) {
+                    return refuse("temperatures");
+                }
+                if case.unstressed_lengths != motion.reference.unstressed_lengths {
+                    return refuse("unstressed lengths");
+                }
+                if case.removed.iter().any(|removed| *removed) {
+                    return refuse("which members are there");
+                }
+                if moves_supports(case) {
+                    let jumps = history.jumps().into_iter().filter(|at| *at <= motion.duration);
+                    let at = |time, side| history.value(time, side);
+                    if jumps.into_iter().any(|t| at(t, Side::Before) != at(t, Side::After)) {
+                        return refuse("where supports are by a jump");
+                    }
+                    if at(0.0, Side::After) != 0.0 {
+                        return refuse("where supports are at the start: its factor must begin at zero, which");
+                    }
+                }
+            }
+            Driven::Wind {
+                coefficients,
+                density,
+                along,
+                ..
+            } => {
+                length("wind coefficients", coefficients.len(), net.panels().len(), false)?;
+                for c in coefficients {
+                    number("wind coefficient", *c, c.is_finite(), "finite")?;
+                }
+                let is_density = *density > 0.0 && density.is_finite();
+                number("density of air", *density, is_density, "positive")?;
+                let norm = along.norm();
+                number("length of the wind's direction", norm, (norm - 1.0).abs() < 1e-9, "1")?;
+            }
+        }
+    }
+    let moving = motion.driven.iter().filter_map(driven_case).any(moves_supports);
+    if moving && motion.damping.stiffness > 0.0 {
+        return Err(MotionError::DampedGround);
+    }
+    Ok(())
+}
+
+pub(super) fn moves_supports(case: &Case) -> bool {
+    case.support_movements.iter().any(|m| *m != Vector3::zeros())
+}
+
+fn check_breaks(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
+    let mut broken = vec![false; net.segments().len()];
+    for (place, given) in motion.breaks.iter().enumerate() {
+        let segment = given.segment;
+        let is_removed = |e: usize| motion.case.removed.get(e).is_some_and(|removed| *removed);
+        match broken.get_mut(segment.index()) {
+            None => return Err(MotionError::NotThere { place, segment }),
+            Some(_) if is_removed(segment.index()) => return Err(MotionError::NotThere { place, segment }),
+            Some(true) => return Err(MotionError::BrokenTwice { place, segment }),
+            Some(mark) => *mark = true,
+        }
+        let release = given.release >= 0.0 && given.release.is_finite();
+        number("release of a break", given.release, release, "zero or more")?;
+        match given.when {
+            BreakWhen::Time(t) => number("time of a break", t, t >= 0.0 && t.is_finite(), "zero or more")?,
+            BreakWhen::Tension(t) => number("tension of a break", t, t > 0.0 && t.is_finite(), "positive")?,
+        }
+    }
+    Ok(())
+}
+
+/// What can be told once masses are known.
+pub(super) fn check_masses(system: &System<'_>) -> Result<(), MotionError> {
+    for dof in 0..system.structure.n_dofs() {
+        let mass = system.mass_of(dof);
+        if !(mass > 0.0 && mass.is_finite()) {
+            return Err(MotionError::NoMass {
+                node: system.structure.dofs().node(dof),
+            });
+        }
+    }
+    Ok(())
+}
+
+/// How large the motion is.
+#[allow(
+    clippy::cast_possible_truncation,
+    clippy::cast_sign_loss,
+    reason = "beyond u64 it saturates, and is refused"
+)]
+pub(super) fn extent(system: &System<'_>) -> Extent {
+    let motion = system.motion;
+    let steps = (motion.duration / motion.step - 1e-9).ceil().max(1.0);
+    let stable_step = system.stable_step();
+    let divided = match motion.scheme {
+        Scheme::CentralDifferences => (motion.step / stable_step).ceil().max(1.0),
+        _ => 1.0,
+    };
+    let stride = motion.frames.stride;
+    let frames = match stride {
+        0 => 2.0,
+        stride => (steps / stride as f64).ceil() + 1.0,
+    };
+    let net = system.structure.net();
+    let along: usize = (motion.frames.cables.iter())
+        .map(|cable| {
+            let n = net.cables()[cable.index()].segments.len();
+            7 * (n + 1) + 2 * n
+        })
+        .sum();
+    let values = (6 * motion.frames.nodes.len() + along) as f64;
+    Extent {
+        steps: steps as u64,
+        divided_steps: steps * divided,
+        frames: frames as u64,
+        bytes: frames * (FRAME_BYTES + 8.0 * values),
+        stable_step,
+    }
+}
+
+/// Refuses what would never end.
+pub(super) fn check_extent(extent: &Extent) -> Result<(), MotionError> {
+    // What is not a number is refused as well.
+    if extent.divided_steps <= MOST_STEPS && extent.bytes <= MOST_BYTES {
+        return Ok(());
+    }
+    Err(MotionError::TooLarge {
+        steps: extent.divided_steps,
+        bytes: extent.bytes,
+        most_steps: MOST_STEPS,
+        most_bytes: MOST_BYTES,
+    })
+}
+
+/// What the steps can not resolve.
+pub(super) fn cautions(net: &Net, motion: &Motion<'_>) -> Vec<Caution> {
+    let step = motion.step;
+    let mut all = Vec::new();
+    for speeds in wave_speeds(net, motion) {
+        if speeds.transverse_step < step {
+            all.push(Caution::Wave {
+                cable: speeds.cable,
+                step,
+                needed: speeds.transverse_step,
+            });
+        }
+    }
+    for (place, driven) in motion.driven.iter().enumerate() {
+        let (Driven::Case { history, .. } | Driven::Wind { speed: history, .. }) = driven;
+        if let Some(needed) = history.finest().filter(|needed| *needed < step) {
+            all.push(Caution::History {
+                driven: place,
+                step,
+                needed,
+            });
+        }
+    }
+    all
+}

@@ -1,0 +1,111 @@
+//! Why a motion is not begun.
+
+use thiserror::Error;
+
+use super::HistoryError;
+use crate::assembly::LoadingError;
+use crate::model::{NodeId, SegmentId};
+
+/// What stands against a motion.
+#[derive(Clone, Debug, PartialEq, Error)]
+pub enum MotionError {
+    /// The case does not fit the net, or its numbers are beyond use.
+    #[error(transparent)]
+    Loading(#[from] LoadingError),
+    /// A rope slides.
+    #[error("{segment} slides through a node: motion knows clamped ropes only; clamp it there")]
+    Slides {
+        /// Its first segment.
+        segment: SegmentId,
+    },
+    /// A segment hangs as a catenary.
+    #[error("{segment} hangs as a catenary: motion knows straight segments only; divide it into straight ones")]
+    Hangs {
+        /// The segment.
+        segment: SegmentId,
+    },
+    /// A node that can move has no mass.
+    #[error("{node} can move but has no mass: give a rope at it a mass per length, or attach a mass")]
+    NoMass {
+        /// The node.
+        node: NodeId,
+    },
+    /// A list has the wrong length.
+    #[error("{given} {what} are given, the net needs {needed}")]
+    WrongLength {
+        /// Which list.
+        what: &'static str,
+        /// Its length.
+        given: usize,
+        /// The length that fits the net.
+        needed: usize,
+    },
+    /// A number is out of its range.
+    #[error("the {what} is {value}: it must be {needed}")]
+    Number {
+        /// Which.
+        what: &'static str,
+        /// Its value.
+        value: f64,
+        /// Its range.
+        needed: &'static str,
+    },
+    /// A node is given a velocity against its support.
+    #[error("{node} is held but given a velocity along a held direction")]
+    HeldVelocity {
+        /// The node.
+        node: NodeId,
+    },
+    /// A history is senseless.
+    #[error("history {driven}: {error}")]
+    History {
+        /// Which driven load, from 0.
+        driven: usize,
+        /// Why.
+        error: HistoryError,
+    },
+    /// A driven load changes what must not change.
+    #[error("driven load {driven} changes {what}: only forces, pressures and support movements may vary in time")]
+    Driven {
+        /// Which, from 0.
+        driven: usize,
+        /// What it changes.
+        what: &'static str,
+    },
+    /// Supports move while damping is measured against fixed ground.
+    #[error(
+        "damping by stiffness acts on velocities over fixed ground: with moving supports use damping along segments"
+    )]
+    DampedGround,
+    /// A break names a segment that is not there.
+    #[error("break {place} names {segment}, which is not in the net or taken out already")]
+    NotThere {
+        /// Which break, from 0.
+        place: usize,
+        /// The segment.
+        segment: SegmentId,
+    },
+    /// A segment would break twice.
+    #[error("break {place} names {segment}, which an earlier one breaks already")]
+    BrokenTwice {
+        /// Which break, from 0.
+        place: usize,
+        /// The segment.
+        segment: SegmentId,
+    },
+    /// It is too much.
+    #[error(
+        "{steps:e} steps with {bytes:e} bytes of frames: at most {most_steps:e} and {most_bytes:e}; \
+         shorten the time, lengthen the step or the stride"
+    )]
+    TooLarge {
+        /// Steps, as many as stability needs where they are explicit.
+        steps: f64,
+        /// Size of all frames.
+        bytes: f64,
+        /// Steps allowed.
+        most_steps: f64,
+        /// Size of frames allowed.
+        most_bytes: f64,
+    },
+}

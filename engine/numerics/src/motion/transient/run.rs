@@ -1,0 +1,445 @@
+//! From the start of a motion to its end.
+
+use nalgebra::Vector3;
+
+use super::check::{cautions, check_extent, check_given, check_masses, extent};
+use super::history::Side;
+use super::record::{Recorder, frame};
+use super::step::{Done, From, Stepper, Tried};
+use super::system::{Forces, State, System};
+use super::waves::wave_speeds;
+use super::{
+    Break, BreakWhen, Caution, Driven, DynamicFactors, Event, EventKind, Events, Extent, Ledger, Motion, MotionError,
+    Observer, Peaks, Progress, Scheme, WaveSpeeds,
+};
+use crate::equilibrium::Analysis;
+
+/// Steps are divided down to this share of the given one before a motion is given up.
+const SMALLEST_SHARE: f64 = 1.0 / (1 << 20) as f64;
+
+/// Share of the largest stable step that is used.
+const STABLE_SHARE: f64 = 0.9;
+
+/// How a motion ended.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Ending {
+    /// The duration is over.
+    Done,
+    /// Steps became too small: Newton did not converge, or the error could not be kept.
+    StepTooSmall,
+    /// The observer stopped it.
+    Cancelled,
+}
+
+/// What came of a motion.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Outcome {
+    /// How it ended.
+    pub ending: Ending,
+    /// Time reached (s).
+    pub time: f64,
+    /// Steps done, divided ones counted each.
+    pub steps: u64,
+    /// Smallest step that was done (s).
+    pub smallest_step: f64,
+    /// Newton iterations.
+    pub iterations: u64,
+    /// Factorisations.
+    pub factorisations: u64,
+    /// Position of every node at the end (m).
+    pub positions: Vec<Vector3<f64>>,
+    /// Velocity of every node at the end (m/s).
+    pub velocities: Vec<Vector3<f64>>,
+    /// Extremes.
+    pub peaks: Peaks,
+    /// Dynamic over static values; empty where there is nothing to compare with.
+    pub factors: DynamicFactors,
+    /// Slack, snatch and break.
+    pub events: Events,
+    /// Where the energy is at the end.
+    pub ledger: Ledger,
+    /// Largest error of the ledger by size (J).
+    pub largest_error: f64,
+}
+
+/// What can be told of a motion before it runs.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Outlook {
+    /// Its size.
+    pub extent: Extent,
+    /// Speeds of waves at the start.
+    pub waves: Vec<WaveSpeeds>,
+    /// What its steps can not resolve.
+    pub cautions: Vec<Caution>,
+}
+
+/// Checks a motion and tells its size, the speeds of waves and what its steps can not resolve.
+///
+/// # Errors
+/// What stands against it; see [`MotionError`].
+pub fn outlook(analysis: &Analysis, motion: &Motion<'_>) -> Result<Outlook, MotionError> {
+    let system = checked(analysis, motion)?;
+    let net = analysis.structure().net();
+    Ok(Outlook {
+        extent: extent(&system),
+        waves: wave_speeds(net, motion),
+        cautions: cautions(net, motion),
+    })
+}
+
+fn checked<'a>(analysis: &'a Analysis, motion: &'a Motion<'a>) -> Result<System<'a>, MotionError> {
+    let structure = analysis.structure();
+    check_given(structure, motion)?;
+    let system = System::new(structure, motion)?;
+    check_masses(&system)?;
+    check_extent(&extent(&system))?;
+    Ok(system)
+}
+
+/// Follows a motion to its end.
+///
+/// `observe` is told before every iteration, and every frame; when it breaks, the motion ends within one iteration.
+///
+/// # Errors
+/// What stands against it; see [`MotionError`]. A step that does not converge is an [`Ending`], not an error.
+pub fn run(analysis: &Analysis, motion: &Motion<'_>, observe: Observer<'_>) -> Result<Outcome, MotionError> {
+    let system = checked(analysis, motion)?;
+    Ok(Running::new(analysis, system).finish(observe))
+}
+
+/// A break on its way.
+#[derive(Clone, Copy, Debug)]
+struct Breaking {
+    given: Break,
+    /// When it begins, once that is known (s).
+    began: Option<f64>,
+    is_told: bool,
+}
+
+impl Breaking {
+    /// Share of the force left over a step around `middle` (s).
+    fn share(&self, middle: f64) -> f64 {
+        match self.began {
+            Some(began) if middle > began && self.given.release > 0.0 => {
+                (1.0 - (middle - began) / self.given.release).clamp(0.0, 1.0)
+            }
+            Some(began) if middle > began => 0.0,
+            _ => 1.0,
+        }
+    }
+}
+
+struct Running<'a> {
+    system: System<'a>,
+    stepper: Stepper,
+    recorder: Recorder,
+    state: State,
+    forces: Forces,
+    taut: Vec<bool>,
+    movements: Vec<Vector3<f64>>,
+    /// Moments at which loads jump (s), in order.
+    jumps: Vec<f64>,
+    breaks: Vec<Breaking>,
+    time: f64,
+    steps: u64,
+    smallest_step: f64,
+    /// Longest step for now (s).
+    limit: f64,
+    /// Whether forces at the start of the next step must be worked out anew.
+    is_stale: bool,
+    /// Whether accelerations jump there. Where they do not they are left alone: those of the generalised-α method belong
+    /// to its own moments within the steps, and are not those of the forces.
+    has_jumped: bool,
+    at_start: f64,
+    ledger: Ledger,
+    largest_error: f64,
+}
+
+impl<'a> Running<'a> {
+    fn new(analysis: &Analysis, mut system: System<'a>) -> Self {
+        let motion = system.motion;
+        let loads = system.loads_at(0.0, Side::After);
+        let mut positions = motion.positions.clone();
+        system.place_supports(&loads, &mut positions);
+        let dofs = system.structure.dofs();
+        let mut velocities = vec![0.0; dofs.len()];
+        if !motion.velocities.is_empty() {
+            dofs.components_into(&motion.velocities, &mut velocities);
+        }
+        let state = State {
+            accelerations: vec![0.0; velocities.len()],
+            held_velocities: vec![Vector3::zeros(); positions.len()],
+            positions,
+            velocities,
+        };
+        let mut jumps: Vec<f64> = (motion.driven.iter())
+            .flat_map(|driven| match driven {
+                Driven::Case { history, .. } | Driven::Wind { speed: history, .. } => history.jumps(),
+            })
+            .collect();
+        jumps.sort_by(f64::total_cmp);
+        let breaks = (motion.breaks.iter())
+            .map(|given| Breaking {
+                given: *given,
+                began: match given.when {
+                    BreakWhen::Time(t) => Some(t),
+                    BreakWhen::Tension(_) => None,
+                },
+                is_told: false,
+            })
+            .collect();
+        let limit = match motion.scheme {
+            Scheme::CentralDifferences => {
+                let stable = STABLE_SHARE * damped_step(&system);
+                motion.step / (motion.step / stable).ceil().max(1.0)
+            }
+            _ => motion.step,
+        };
+        let energies = system.energies(&state, &loads.movements);
+        let mut recorder = Recorder::new(&system);
+        recorder.add(&system, &state, 0.0);
+        Self {
+            stepper: Stepper::new(analysis),
+            recorder,
+            forces: system.new_forces(),
+            taut: system.taut(&state.positions),
+            movements: loads.movements,
+            jumps,
+            breaks,
+            time: 0.0,
+            steps: 0,
+            smallest_step: limit,
+            limit,
+            is_stale: true,
+            has_jumped: true,
+            at_start: energies.kinetic + energies.elastic + energies.potential,
+            ledger: Ledger {
+                kinetic: energies.kinetic,
+                elastic: energies.elastic,
+                potential: energies.potential,
+                ..Ledger::default()
+            },
+            largest_error: 0.0,
+            state,
+            system,
+        }
+    }
+
+    fn finish(mut self, observe: Observer<'_>) -> Outcome {
+        let motion = self.system.motion;
+        let steps = extent(&self.system).steps;
+        let mut ending = if self.tell_frame(0, observe) {
+            Ending::Done
+        } else {
+            Ending::Cancelled
+        };
+        let mut step = 0;
+        while ending == Ending::Done && step < steps {
+            step += 1;
+            let target = (step as f64 * motion.step).min(motion.duration);
+            ending = self.advance(target, observe);
+            let is_last = step == steps;
+            let is_due = motion.frames.stride > 0 && step % motion.frames.stride == 0;
+            if ending == Ending::Done && (is_due || is_last) && !self.tell_frame(step, observe) {
+                ending = Ending::Cancelled;
+            }
+        }
+        let velocities = self
+            .system
+            .nodal_velocities(&self.state.velocities, &self.state.held_velocities);
+        let settled = motion.settled.as_ref();
+        Outcome {
+            ending,
+            time: self.time,
+            steps: self.steps,
+            smallest_step: self.smallest_step,
+            iterations: self.stepper.iterations,
+            factorisations: self.stepper.factorisations,
+            positions: self.state.positions,
+            velocities,
+            factors: settled.map_or(DynamicFactors::default(), |settled| {
+                self.recorder.peaks.against(settled, &motion.positions)
+            }),
+            peaks: self.recorder.peaks,
+            events: self.recorder.events,
+            ledger: self.ledger,
+            largest_error: self.largest_error,
+        }
+    }
+
+    /// False where the observer stops.
+    fn tell_frame(&self, step: u64, observe: Observer<'_>) -> bool {
+        let frame = frame(&self.system, &self.state, step, self.time, self.ledger);
+        observe(Progress::Frame(&frame)).is_continue()
+    }
+
+    /// The next moment after now, up to `target`, at which loads or shares jump or kink (s).
+    fn next_moment(&self, target: f64) -> f64 {
+        let breaks = self
+            .breaks
+            .iter()
+            .filter_map(|b| b.began.map(|began| [began, began + b.given.release]));
+        let moments = self.jumps.iter().copied().chain(breaks.flatten());
+        moments.filter(|t| *t > self.time).fold(target, f64::min)
+    }
+
+    fn advance(&mut self, target: f64, observe: Observer<'_>) -> Ending {
+        let step = self.system.motion.step;
+        while self.time < target {
+            let next = self.next_moment(target);
+            let left = next - self.time;
+            // A step that would leave next to nothing takes it along.
+            let (h, end) = if self.limit >= left * (1.0 - 1e-9) {
+                (left, next)
+            } else {
+                (self.limit, self.time + self.limit)
+            };
+            if !self.begin(end) && self.is_stale {
+                self.refresh();
+            }
+            let loads = [
+                self.system.loads_at(self.time, Side::After),
+                self.system.loads_at(end, Side::Before),
+            ];
+            let from = From {
+                time: self.time,
+                state: &self.state,
+                forces: &self.forces,
+                taut: &self.taut,
+                loads: [&loads[0], &loads[1]],
+                movements: &self.movements,
+            };
+            match self.stepper.step(&mut self.system, from, h, observe) {
+                Tried::Cancelled => return Ending::Cancelled,
+                Tried::NotConverged => {
+                    self.limit = 0.5 * h;
+                }
+                Tried::Done(done) => {
+                    let growth = match self.system.motion.scheme {
+                        Scheme::GeneralisedAlpha {
+                            error: Some(allowed), ..
+                        } if done.error > 0.0 => 0.9 * (allowed / done.error).cbrt(),
+                        _ => 2.0,
+                    };
+                    if growth < 0.9 {
+                        // The error grows with the third power of the step.
+                        self.limit = h * growth.max(0.2);
+                    } else {
+                        self.accept(*done, end, h, loads[1].movements.clone());
+                        if self.system.motion.scheme != Scheme::CentralDifferences {
+                            let grown = self.limit.max(h) * growth.clamp(1.0, 2.0);
+                            self.limit = if growth < 1.0 { h * growth } else { grown }.min(step);
+                        }
+                        continue;
+                    }
+                }
+            }
+            if self.limit < SMALLEST_SHARE * step {
+                return Ending::StepTooSmall;
+            }
+        }
+        Ending::Done
+    }
+
+    /// Sets the shares of what breaks over a step to `end`; true where that made the forces anew.
+    fn begin(&mut self, end: f64) -> bool {
+        let middle = self.time + 0.5 * (end - self.time);
+        let mut has_changed = false;
+        for breaking in &mut self.breaks {
+            let e = breaking.given.segment.index();
+            let (before, share) = (self.system.shares[e], breaking.share(middle));
+            if share == before {
+                continue;
+            }
+            has_changed = true;
+            let stored = self.system.bars()[e].energy(self.system.length(&self.state.positions, e));
+            self.ledger.released += (before - share) * stored;
+            self.system.shares[e] = share;
+            if !breaking.is_told {
+                breaking.is_told = true;
+                self.recorder.events.add(Event {
+                    time: breaking.began.unwrap_or(self.time),
+                    segment: breaking.given.segment,
+                    kind: EventKind::Break,
+                });
+            }
+        }
+        if has_changed {
+            self.refresh();
+        }
+        has_changed
+    }
+
+    /// Forces from now on, and accelerations where they jump.
+    fn refresh(&mut self) {
+        let loads = self.system.loads_at(self.time, Side::After);
+        self.taut = self.system.taut(&self.state.positions);
+        self.system
+            .forces_at(&loads, &self.state, &self.taut, &mut self.forces, None);
+        if self.has_jumped || self.system.motion.scheme == Scheme::CentralDifferences {
+            for (dof, acceleration) in self.state.accelerations.iter_mut().enumerate() {
+                *acceleration = self.forces.residual[dof] / self.system.mass_of(dof);
+            }
+        }
+        self.is_stale = false;
+        self.has_jumped = false;
+    }
+
+    fn accept(&mut self, done: Done, end: f64, h: f64, movements: Vec<Vector3<f64>>) {
+        let taut = self.system.taut(&done.state.positions);
+        let states = [&self.state, &done.state];
+        self.recorder
+            .events
+            .compare(&self.system, [&self.taut, &taut], states, self.time, h);
+        self.state = done.state;
+        self.taut = taut;
+        self.time = end;
+        self.steps += 1;
+        self.smallest_step = self.smallest_step.min(h);
+        self.recorder.add(&self.system, &self.state, end);
+        self.ledger.work += done.work;
+        self.ledger.dissipated += done.dissipated;
+        let energies = self.system.energies(&self.state, &movements);
+        self.movements = movements;
+        self.ledger.kinetic = energies.kinetic;
+        self.ledger.elastic = energies.elastic;
+        self.ledger.potential = energies.potential;
+        let spent = self.ledger.dissipated + self.ledger.released;
+        self.ledger.error = (self.ledger.total() - self.at_start) - self.ledger.work + spent;
+        self.largest_error = self.largest_error.max(self.ledger.error.abs());
+        let mut is_moment = self.jumps.contains(&end);
+        for breaking in &mut self.breaks {
+            if let (None, BreakWhen::Tension(tension)) = (breaking.began, breaking.given.when) {
+                let e = breaking.given.segment.index();
+                if self.system.axial_force(&self.state.positions, e) >= tension {
+                    breaking.began = Some(end);
+                }
+            }
+            let ends = breaking.began.map(|began| [began, began + breaking.given.release]);
+            is_moment |= ends.is_some_and(|ends| ends.contains(&end));
+        }
+        if done.forces_at_end {
+            self.forces = done.forces;
+            self.has_jumped = is_moment;
+            self.is_stale = is_moment || !self.system.motion.damping.segments.is_empty();
+        } else {
+            // The conserving scheme needs no forces at the start of a step.
+            self.is_stale = false;
+        }
+    }
+}
+
+/// The stable step where there is damping (s): `2/ω (√(1 + ξ²) − ξ)` with the largest damping ratio `ξ`.
+fn damped_step(system: &System<'_>) -> f64 {
+    let undamped = system.stable_step();
+    let omega = 2.0 / undamped;
+    let damping = &system.motion.damping;
+    let dashpots = damping
+        .segments
+        .iter()
+        .zip(system.bars())
+        .filter(|(_, bar)| bar.is_present());
+    let relative = dashpots.map(|(c, bar)| c / bar.stiffness).fold(0.0, f64::max);
+    let ratio = 0.5 * ((damping.stiffness + relative) * omega + damping.mass / omega);
+    undamped * ((1.0 + ratio * ratio).sqrt() - ratio)
+}
