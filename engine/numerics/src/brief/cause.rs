@@ -240,8 +240,11 @@ pub(super) fn cause_of_stop(net: &Net, stop: &Stop<'_>) -> Cause {
 
 /// Cosine between the force left at a sliding node and its rope from which nothing but the rope's end would stop the node.
 const ALONG_THE_ROPE: f64 = 0.9;
+/// Distance of a sliding node from the next one, over what both pieces span, at which it has arrived there.
+const ARRIVED: f64 = 1e-4;
 
-/// The sliding node that the force left at the worst node drives along its rope, if that is what is left.
+/// The worst node, if it slides and the force left there drives it along its rope, or it stands at the next node already:
+/// there the rope may hold it in any direction.
 fn ran_to_the_end(net: &Net, reference: &ReferenceState, result: &StateResult, worst: NodeId) -> Option<LikelyCause> {
     let left = unbalanced(net, result)[worst.index()];
     let at = |node: NodeId| result.positions[node.index()];
@@ -252,9 +255,13 @@ fn ran_to_the_end(net: &Net, reference: &ReferenceState, result: &StateResult, w
         if node != worst {
             continue;
         }
-        let along = (at(after) - at(before)).try_normalize(0.0)?.dot(&left);
-        if along.abs() > ALONG_THE_ROPE * left.norm() {
-            let end = if along > 0.0 { after } else { before };
+        let whole = at(after) - at(before);
+        let along = whole.try_normalize(0.0)?.dot(&left);
+        let is_at = |end: NodeId| (at(end) - at(node)).norm() < ARRIVED * whole.norm();
+        let driven = along.abs() > ALONG_THE_ROPE * left.norm();
+        if driven || is_at(before) || is_at(after) {
+            let goes_on = if driven { along > 0.0 } else { is_at(after) };
+            let end = if goes_on { after } else { before };
             return Some(LikelyCause::RanToTheEnd {
                 cable: net.member_name(SegmentId::new(first)).to_owned(),
                 node: net.node_name(node).to_owned(),
