@@ -32,7 +32,7 @@ def yard(briefs):
 def by_hand(yard, slides):
     """The cases of the other solve: the bracket rigid, the rope over it clamped or sliding without friction."""
     brief = copy.deepcopy(yard)
-    for part in ("factors", "combinations", "diagnosis"):
+    for part in ("factors", "combinations", "diagnosis", "modes"):
         brief.pop(part, None)
     brief["checks"] = []
     next(node for node in brief["net"]["nodes"] if node["id"] == "N")["support"] = {}
