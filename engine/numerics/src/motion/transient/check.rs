@@ -140,8 +140,22 @@ pub(super) fn check_given(structure: &Structure, motion: &Motion<'_>) -> Result<
             return Err(MotionError::HeldVelocity { node });
         }
     }
+    check_frames(net, motion)?;
     check_driven(net, motion)?;
     check_breaks(net, motion)
+}
+
+fn check_frames(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
+    let nodes = motion.frames.nodes.iter().map(|node| node.index());
+    let cables = motion.frames.cables.iter().map(|cable| cable.index());
+    let outside = |what, index, present| Err(MotionError::NotShown { what, index, present });
+    if let Some(index) = nodes.into_iter().find(|index| *index >= net.nodes().len()) {
+        return outside("node", index, net.nodes().len());
+    }
+    match cables.into_iter().find(|index| *index >= net.cables().len()) {
+        Some(index) => outside("cable", index, net.cables().len()),
+        None => Ok(()),
+    }
 }
 
 fn check_driven(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
@@ -223,7 +237,10 @@ fn check_breaks(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
         let release = given.release >= 0.0 && given.release.is_finite();
         number("release of a break", given.release, release, "zero or more")?;
         match given.when {
-            BreakWhen::Time(t) => number("time of a break", t, t >= 0.0 && t.is_finite(), "zero or more")?,
+            BreakWhen::Time(t) => {
+                let within = (0.0..motion.duration).contains(&t);
+                number("time of a break", t, within, "zero or more, and before the end")?;
+            }
             BreakWhen::Tension(t) => number("tension of a break", t, t > 0.0 && t.is_finite(), "positive")?,
         }
     }

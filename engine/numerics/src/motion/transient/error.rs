@@ -85,6 +85,16 @@ pub enum MotionError {
         /// The segment.
         segment: SegmentId,
     },
+    /// A frame is to show a node or a cable that is not there.
+    #[error("frames show {what} {index}, the net has {present}")]
+    NotShown {
+        /// Node or cable.
+        what: &'static str,
+        /// Its index.
+        index: usize,
+        /// How many the net has.
+        present: usize,
+    },
     /// A segment would break twice.
     #[error("break {place} names {segment}, which an earlier one breaks already")]
     BrokenTwice {

@@ -276,6 +276,62 @@ fn the_ledger_closes_with_all_that_acts() {
 }
 
 #[test]
+fn springs_struts_and_skew_supports_keep_the_energy() {
+    let mut sketch = Sketch::default();
+    sketch.sprung("foot", [0.0, 0.0, 0.0], [3e4, 2e4, 5e5]);
+    sketch.node("foot", [0.0, 0.0, 0.0]).attached_mass = 30.0;
+    sketch.node("head", [0.5, 0.0, 4.0]).attached_mass = 60.0;
+    sketch.node("rail", [4.0, 1.0, 1.0]).attached_mass = 15.0;
+    sketch.node("rail", [4.0, 1.0, 1.0]).support = Some(crate::model::SupportGiven {
+        released: vec![Vector3::new(1.0, 0.5, 0.2), Vector3::new(0.0, 0.3, 1.0)],
+    });
+    for (name, place) in [
+        ("a", [-3.0, 2.0, 0.0]),
+        ("b", [-3.0, -2.0, 0.0]),
+        ("c", [5.0, 3.0, 2.0]),
+        ("d", [6.0, -2.0, 0.0]),
+    ] {
+        sketch.held(name, place);
+    }
+    sketch.strut("mast", section(2e7, 3.0), "foot", "head");
+    for path in ["head a", "head b", "head rail", "rail c", "rail d"] {
+        sketch.cable(path, section(8e5, 0.5), path);
+    }
+    let net = sketch.net();
+    let ends = net.segments().iter().map(|segment| {
+        let [a, b] = segment.ends.map(|n| net.nodes()[n.index()].position.expect("given"));
+        (segment.length, (b - a).norm() / 1.002)
+    });
+    let mut lengths = vec![0.0; net.n_lengths()];
+    ends.for_each(|(place, length)| lengths[place] = length);
+    let start = Start::new(net, lengths);
+    let mut motion = start.motion(Scheme::Conserving, 2.0, 2e-3);
+    for (force, mass) in motion.case.nodal_forces.iter_mut().zip([30.0, 60.0, 15.0]) {
+        force.z = -9.81 * mass;
+    }
+    let quiet = start.run(&motion);
+    assert_eq!(quiet.ending, Ending::Done);
+    assert!(quiet.events.snatches > 0);
+    let scale = quiet.ledger.elastic + quiet.ledger.kinetic;
+    assert!(quiet.largest_error <= 1e-10 * scale, "{:?}", quiet.ledger);
+    // The ground under the springs moves: its work is in the ledger too.
+    let mut shaken = start.case();
+    shaken.support_movements[0] = Vector3::new(0.02, -0.03, 0.04);
+    motion.driven.push(Driven::Case {
+        case: Box::new(shaken),
+        history: History::Ramp {
+            start: 0.2,
+            end: 0.6,
+            before: 0.0,
+            after: 1.0,
+        },
+    });
+    let moved = start.run(&motion);
+    assert!(moved.ledger.work.abs() > 1.0);
+    assert!(moved.largest_error <= 1e-10 * scale, "{:?}", moved.ledger);
+}
+
+#[test]
 fn a_thrown_mass_goes_slack_after_half_a_period_and_flies_on() {
     let start = single();
     // Stiffness 1e4 N/m, 5 kg: ω = √2000; taut from the start, slack after π/ω, back through its start and off.
@@ -518,6 +574,36 @@ fn what_can_not_move_is_refused() {
     assert!(
         matches!(stiff, MotionError::TooLarge { steps, .. } if steps > 1e8),
         "{stiff}"
+    );
+    let late = Break {
+        segment: SegmentId::new(0),
+        when: BreakWhen::Time(1.0),
+        release: 0.0,
+    };
+    assert_eq!(number(refusal(&|m| m.breaks = vec![late])), "time of a break");
+    let shown = refusal(&|m| m.frames.nodes.push(NodeId::new(99)));
+    assert!(
+        matches!(
+            shown,
+            MotionError::NotShown {
+                what: "node",
+                index: 99,
+                ..
+            }
+        ),
+        "{shown}"
+    );
+    let shown = refusal(&|m| m.frames.cables.push(crate::model::CableId::new(6)));
+    assert!(
+        matches!(
+            shown,
+            MotionError::NotShown {
+                what: "cable",
+                present: 6,
+                ..
+            }
+        ),
+        "{shown}"
     );
     let given = |segment, when| Break {
         segment: SegmentId::new(segment),
