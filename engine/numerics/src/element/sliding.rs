@@ -3,8 +3,9 @@
 //! ```text
 //! T_e = c_e N,    Σ l_e / (θ_e (1 + c_e N / EA_e)) = L0,    N = 0 while Σ l_e / θ_e ≤ L0
 //! ```
-//! Without friction all `c_e` are 1: one tension, and the energy stays convex (the least over all ways to share the
-//! length out of one that is convex in lengths and shares together). Where it slips against friction, `c` falls or
+//! Without friction all `c_e` are 1: one tension. Where stiffness and temperature are the same all along, the energy stays
+//! convex (the least over all ways to share the length out of one that is convex in lengths and shares together); where they
+//! change, equal tensions are not those of least energy, and no convexity is claimed. Where it slips against friction, `c` falls or
 //! rises by `exp(μ θ)` from node to node (Euler–Eytelwein) and there is no energy any more.
 
 /// A sliding piece as the equations see it; `c`, `θ` and `EA` a segment.

@@ -341,3 +341,56 @@ fn all_kinds_in_one_net() {
     let solution = answer(&net, &case);
     assert!(solution.axial_forces[7] < 0.0);
 }
+
+/// The audit denies rope that is missing, tensions beyond friction, and a hanging rope that misses its node.
+#[test]
+fn false_claims_are_denied() {
+    let slides = net(
+        vec![
+            node(0, [-4.0, 0.0, 0.0], true),
+            node(1, [0.0, 0.0, 0.0], true),
+            node(2, [0.0, 0.0, -3.0], false),
+        ],
+        vec![sliding(&[0, 1, 2], 0.1)],
+    );
+    let mut loaded = case(&slides, vec![7.0]);
+    loaded.nodal_forces[2] = Vector3::new(0.0, 0.0, -2000.0);
+    loaded.lying = vec![4.0, 3.0];
+    let solution = answer(&slides, &loaded);
+    let passes = |net: &Net, case: &Case, solution: &Solution| {
+        audit_members(
+            net,
+            case,
+            &solution.positions,
+            &solution.axial_forces,
+            &solution.members,
+        )
+        .passed
+    };
+    let mut short = solution.clone();
+    short.members.lying[0] -= 1e-6;
+    assert!(!passes(&slides, &loaded, &short));
+    let without_friction = net(
+        slides
+            .nodes()
+            .iter()
+            .enumerate()
+            .map(|(i, n)| node(i, n.position.expect("given").into(), i != 2))
+            .collect(),
+        vec![sliding(&[0, 1, 2], 0.0)],
+    );
+    assert!(passes(&slides, &loaded, &solution) && !passes(&without_friction, &loaded, &solution));
+
+    let hangs = net(
+        vec![node(0, [0.0, 0.0, 0.0], true), node(1, [20.0, 0.0, 1.0], true)],
+        vec![CableGiven {
+            hangs: true,
+            ..rope(&[0, 1])
+        }],
+    );
+    let mut heavy = case(&hangs, vec![20.5]);
+    heavy.segments[0].per_length = Vector3::new(0.0, 0.0, -50.0);
+    let mut solution = answer(&hangs, &heavy);
+    solution.members.pulls[0][0].x *= 1.0 + 1e-6;
+    assert!(!passes(&hangs, &heavy, &solution));
+}

@@ -118,8 +118,8 @@ pub(super) fn arrays(net: &Net, case: &str, state: &StateResult, reference: &Sta
     messages
 }
 
-/// Unstressed rope that has passed each node through which one slides, towards the end of its cable (m): what the reach
-/// has more beyond the node than in the reference state, less what its own length grew.
+/// Unstressed rope that has passed each node through which one slides, towards the end of its cable (m): what of the reach
+/// lies before the node less than in the reference state.
 fn slid(net: &Net, state: &StateResult, reference: &[f64]) -> Vec<f64> {
     let mut slid = Vec::new();
     for reach in net.reaches().iter().filter(|reach| reach.slides()) {
