@@ -346,6 +346,7 @@ impl Problem {
             checks: Vec::new(),
             diagnosis: None,
             modes: self.modes,
+            motions: Vec::new(),
             envelopes: Vec::new(),
             settings: Settings {
                 tolerance: 1e-14,

@@ -119,7 +119,8 @@ impl Collector {
             }
             Event::LoadPicture(part) => self.take_load_picture(part)?,
             Event::ShapeReport(part) => self.take_shape_report(part)?,
-            Event::Progress(_) => {}
+            // Motions are served by no engine yet.
+            Event::Progress(_) | Event::Motion(_) => {}
         }
         Ok(())
     }

@@ -2,7 +2,7 @@
 
 use std::sync::Arc;
 
-use super::{DiagnosisGiven, ModesGiven};
+use super::{DiagnosisGiven, ModesGiven, MotionGiven};
 use crate::check::Check;
 use crate::equilibrium::{LoadSteps, Settings};
 use crate::load::{Action, Case};
@@ -77,6 +77,8 @@ pub struct Brief {
     pub diagnosis: Option<DiagnosisGiven>,
     /// States whose natural frequencies are wanted, if any.
     pub modes: Option<ModesGiven>,
+    /// Motions, in result order.
+    pub motions: Vec<MotionGiven>,
     /// Envelopes beside that over all cases, in result order.
     pub envelopes: Vec<EnvelopeGiven>,
     /// How states are solved for.

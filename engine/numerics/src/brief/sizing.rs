@@ -506,6 +506,7 @@ fn run(
     let plan = Plan::new(Brief {
         diagnosis: None,
         modes: None,
+        motions: Vec::new(),
         ..brief
     });
     let mut goes_on = true;

@@ -274,6 +274,7 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
             checks,
             diagnosis,
             modes,
+            motions: Vec::new(),
             envelopes,
             settings,
         };

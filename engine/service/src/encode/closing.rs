@@ -144,6 +144,7 @@ pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
                 findings: counts.messages(),
                 digest: work.digest.clone(),
                 anchors: Some(anchors::sheet(plan, &summary.anchors)),
+                motions: None,
             }
         }
         _ => {
@@ -160,6 +161,7 @@ pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
                 findings: counts.messages(),
                 digest: work.digest.clone(),
                 anchors: None,
+                motions: None,
             }
         }
     };

@@ -35,6 +35,7 @@ pub fn progress(
         slack_segments: count(report.slack),
         cases_done: done,
         cases_total: total,
+        ..v1::Progress::default()
     }
 }
 

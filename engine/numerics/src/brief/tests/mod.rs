@@ -58,6 +58,7 @@ fn brief(net: Net, prestress: Prestress, actions: Vec<Action>, cases: Vec<CaseGi
         checks: Vec::new(),
         diagnosis: None,
         modes: None,
+        motions: Vec::new(),
         envelopes: Vec::new(),
         settings: Settings::default(),
     }
