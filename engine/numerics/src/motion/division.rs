@@ -110,6 +110,23 @@ impl Division {
         node.index() < self.whole.nodes().len()
     }
 
+    /// The node of the whole net that is nearest to a node along its rope.
+    #[must_use]
+    pub fn nearest(&self, node: NodeId) -> NodeId {
+        let beyond = node.index().checked_sub(self.whole.nodes().len());
+        match beyond.map(|place| self.points[place]) {
+            None => node,
+            Some(point) => self.whole.segments()[point.segment].ends[usize::from(point.share > 0.5)],
+        }
+    }
+
+    /// The hanging segment to which a point of division belongs; `None` for nodes of the whole net.
+    #[must_use]
+    pub fn segment_at(&self, node: NodeId) -> Option<SegmentId> {
+        let place = node.index().checked_sub(self.whole.nodes().len())?;
+        Some(SegmentId::new(self.points[place].segment))
+    }
+
     /// One entry a segment for one a segment of the whole net: each piece has that of its segment.
     #[must_use]
     pub fn by_piece<T: Clone>(&self, by_segment: &[T]) -> Vec<T> {

@@ -23,5 +23,5 @@ pub mod transient;
 mod tests;
 
 pub use division::Division;
-pub use mass::MassGiven;
+pub use mass::{MassGiven, nodal_masses};
 pub use modes::{About, Mode, ModeKind, Modes, ModesError, RootCount, natural_modes};
