@@ -230,7 +230,9 @@ impl History {
             };
             Some(after - before).filter(|by| by.abs() > ROUNDING * size)
         };
-        jumps.filter_map(|at| by(at).map(|by| (at, by))).min_by(|a, b| a.0.total_cmp(&b.0))
+        jumps
+            .filter_map(|at| by(at).map(|by| (at, by)))
+            .min_by(|a, b| a.0.total_cmp(&b.0))
     }
 
     /// Whether it is zero throughout, from the start up to a time (s).
@@ -246,7 +248,9 @@ impl History {
             } => (*mean == 0.0 && *amplitude == 0.0) || *start >= until || *end <= 0.0,
             Self::Table(points) => {
                 let within = points.iter().filter(|(time, _)| (0.0..=until).contains(time));
-                self.at_start() == 0.0 && self.value(until, Side::Before) == 0.0 && within.into_iter().all(|p| p.1 == 0.0)
+                self.at_start() == 0.0
+                    && self.value(until, Side::Before) == 0.0
+                    && within.into_iter().all(|p| p.1 == 0.0)
             }
             _ => self.at_start() == 0.0 && self.value(until, Side::After) == 0.0,
         }
