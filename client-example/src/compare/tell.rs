@@ -227,8 +227,8 @@ fn brief_sheet(changes: &[Change]) -> Sheet {
         )
     });
     Sheet {
-        file: "brief-differs",
-        title: "Differences of the briefs",
+        file: "brief-differs".into(),
+        title: "Differences of the briefs".into(),
         heads: vec![head("place", ""), head("A", ""), head("B", "")],
         rows: rows.collect(),
         note: "",
@@ -241,8 +241,8 @@ fn said_sheet(said: &[Said]) -> Sheet {
         .iter()
         .map(|said| plain(vec![Cell::text(&said.what), cell(&said.was), cell(&said.now)], ""));
     Sheet {
-        file: "words-differ",
-        title: "Differences of verdicts, answers and findings",
+        file: "words-differ".into(),
+        title: "Differences of verdicts, answers and findings".into(),
         heads: vec![head("what", ""), head("A", ""), head("B", "")],
         rows: rows.collect(),
         note: "",
@@ -285,8 +285,8 @@ fn all_numbers(results: &Comparison) -> Sheet {
         )
     });
     Sheet {
-        file: "results-differ",
-        title: "Differences of results",
+        file: "results-differ".into(),
+        title: "Differences of results".into(),
         heads: vec![
             head("quantity", ""),
             head("unit", ""),
@@ -351,8 +351,8 @@ fn worst_numbers(results: &Comparison) -> Sheet {
         )
     });
     Sheet {
-        file: "results-differ",
-        title: "Largest differences",
+        file: "results-differ".into(),
+        title: "Largest differences".into(),
         heads: vec![
             head("quantity", ""),
             head("id", ""),

@@ -19,6 +19,8 @@ mod slides;
 mod text;
 mod verdict;
 
+use std::borrow::Cow;
+
 use crate::escape;
 use crate::number;
 use crate::run::Run;
@@ -210,8 +212,8 @@ pub(crate) struct Row {
 #[derive(Clone, Debug, PartialEq)]
 pub(crate) struct Sheet {
     /// Name of its CSV file, without ending.
-    pub(crate) file: &'static str,
-    pub(crate) title: &'static str,
+    pub(crate) file: Cow<'static, str>,
+    pub(crate) title: Cow<'static, str>,
     pub(crate) heads: Vec<Head>,
     pub(crate) rows: Vec<Row>,
     /// What a reader must know about the columns.
