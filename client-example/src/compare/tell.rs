@@ -8,7 +8,7 @@ use super::brief::Change;
 use super::results::{Comparison, Number, Quantity, Said};
 use super::thresholds::Thresholds;
 use super::{Side, short};
-use crate::number::three;
+use crate::number::{for_eyes, three};
 use crate::sheet::{self, Cell, Mark, Row, Sheet, head};
 
 /// Lines of a list that a terminal shows.
@@ -257,15 +257,6 @@ fn plain(cells: Vec<Cell>, group: &str) -> Row {
     }
 }
 
-/// Unit for eyes, and how many of it make one of the contract's.
-fn shown(unit: &str) -> (&str, f64) {
-    match unit {
-        "N" => ("kN", 1e-3),
-        "m" => ("mm", 1e3),
-        other => (other, 1.0),
-    }
-}
-
 /// Every number that differs.
 fn all_numbers(results: &Comparison) -> Sheet {
     let rows = results.numbers.iter().map(|number| {
@@ -315,7 +306,7 @@ fn worst_numbers(results: &Comparison) -> Sheet {
     }
     let rows = worst.into_iter().map(|(number, count)| {
         let Quantity { name, unit, .. } = &results.quantities[number.quantity];
-        let (eyes, scale) = shown(unit);
+        let (eyes, scale) = for_eyes(unit);
         let value = |number: f64| match (name.as_str(), unit.as_str()) {
             ("slack", _) => Cell::text(if number == 0.0 { "taut" } else { "slack" }),
             // Places and lengths are metres; movements, and what differs in them, are millimetres.
