@@ -21,4 +21,4 @@ pub mod transient;
 mod tests;
 
 pub use mass::MassGiven;
-pub use modes::{About, Mode, ModeKind, Modes, ModesError, RootCount, natural_modes};
+pub use modes::{About, Mode, ModeKind, Modes, ModesError, Observer, RootCount, natural_modes};
