@@ -399,7 +399,7 @@ fn a_motion_with_everything_is_read_as_meant() {
     assert_eq!(
         work.motion_in_words(0),
         "from iced: let go from the shape of snowed; 1 node moved; 3 nodes set off with a velocity; 1 snow by a table; \
-         2 snow by a table; 1 snow, from 4 s on 2; 1 +- 0.5 snow at 2 Hz; creep from 0 at 0 s to 1 at 3 s; 0.25 snow \
+         2 snow by a table; 1 snow, from 4 s on 2; 1 +-0.5 snow at 2 Hz; creep from 0 at 0 s to 1 at 3 s; 0.25 snow \
          throughout; g1 breaks at 0 s within 0.02 s; carrying from A to m breaks at 50 kN; post breaks at 19.9 s"
     );
     for (scheme, expected) in [
@@ -950,7 +950,10 @@ fn actions_that_cannot_vary_are_told() {
     let turned = changed(
         driven("turned", json!({"constant": 1})),
         &[
-            ("/net/adjusters", json!([{"id": "t1", "cable": "g1", "at": "G1"}])),
+            (
+                "/net/adjusters",
+                json!([{"id": "t1", "cable": "g1", "at": "G1", "in_m": 0.1, "out_m": 0.1}]),
+            ),
             (
                 "/actions/-",
                 json!({"id": "turned", "loads": [{"nodes": {"on": ["m"], "force_n": [0, 0, -1]}}, {"adjust": {"adjuster": "t1", "open_m": 0.01}}]}),
@@ -1437,5 +1440,33 @@ fn motions_are_refused_until_they_are_served() {
     assert_eq!(reading.work.is_some(), served);
     if !served {
         told(&reading, Error, "NOT_SERVED", "motions[drift]");
+    }
+}
+
+/// The example briefs with motions, as the next to be served.
+#[test]
+fn the_examples_are_in_order() {
+    for (text, words) in [
+        (
+            include_str!("../../client-example/briefs/rill-footbridge-motion.json"),
+            [
+                "from walked: +-1 steps at 2.5 Hz",
+                "from gale: wind-left from C1 to u1 breaks at 0.5 s within 0.01 s",
+            ],
+        ),
+        (
+            include_str!("../../client-example/briefs/quince-yard-motion.json"),
+            ["from reference: 24 m/s wind by a table", "from reference: 1 node moved"],
+        ),
+    ] {
+        let brief: Value = serde_json::from_str(text).expect("valid JSON");
+        let reading = ahead(&brief);
+        assert!(
+            reading.findings.iter().all(|finding| finding.severity() == Note),
+            "{:#?}",
+            reading.findings
+        );
+        let work = work(&brief);
+        assert_eq!([0, 1].map(|motion| work.motion_in_words(motion)), words);
     }
 }
