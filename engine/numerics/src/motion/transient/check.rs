@@ -73,7 +73,7 @@ fn length(what: &'static str, given: usize, needed: usize, may_be_empty: bool) -
 }
 
 /// Everything that can be told before the net is put in motion.
-pub(super) fn check_given(structure: &Structure, motion: &Motion<'_>) -> Result<(), MotionError> {
+pub(super) fn check_given(structure: &Structure, motion: &Motion) -> Result<(), MotionError> {
     let net = structure.net();
     let (nodes, segments) = (net.nodes().len(), net.segments().len());
     if let Some(reach) = net.reaches().iter().find(|reach| reach.slides()) {
@@ -144,7 +144,7 @@ pub(super) fn check_given(structure: &Structure, motion: &Motion<'_>) -> Result<
     check_breaks(net, motion)
 }
 
-fn check_frames(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
+fn check_frames(net: &Net, motion: &Motion) -> Result<(), MotionError> {
     let nodes = motion.frames.nodes.iter().map(|node| node.index());
     let cables = motion.frames.cables.iter().map(|cable| cable.index());
     let outside = |what, index, present| Err(MotionError::NotShown { what, index, present });
@@ -157,7 +157,7 @@ fn check_frames(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
     }
 }
 
-fn check_driven(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
+fn check_driven(net: &Net, motion: &Motion) -> Result<(), MotionError> {
     for (place, driven) in motion.driven.iter().enumerate() {
         let history = match driven {
             Driven::Case { history, .. } | Driven::Wind { speed: history, .. } => history,
@@ -220,7 +220,7 @@ pub(super) fn moves_supports(case: &Case) -> bool {
     case.support_movements.iter().any(|m| *m != Vector3::zeros())
 }
 
-fn check_breaks(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
+fn check_breaks(net: &Net, motion: &Motion) -> Result<(), MotionError> {
     let mut broken = vec![false; net.segments().len()];
     for (place, given) in motion.breaks.iter().enumerate() {
         let segment = given.segment;
@@ -245,7 +245,7 @@ fn check_breaks(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
 }
 
 /// What can be told once masses are known.
-pub(super) fn check_masses(system: &System<'_>) -> Result<(), MotionError> {
+pub(super) fn check_masses(system: &System) -> Result<(), MotionError> {
     for dof in 0..system.structure.n_dofs() {
         let mass = system.mass_of(dof);
         if !(mass > 0.0 && mass.is_finite()) {
@@ -263,8 +263,8 @@ pub(super) fn check_masses(system: &System<'_>) -> Result<(), MotionError> {
     clippy::cast_sign_loss,
     reason = "beyond u64 it saturates, and is refused"
 )]
-pub(super) fn extent(system: &System<'_>) -> Extent {
-    let motion = system.motion;
+pub(super) fn extent(system: &System) -> Extent {
+    let motion = &system.motion;
     let steps = (motion.duration / motion.step - 1e-9).ceil().max(1.0);
     let stable_step = system.stable_step();
     let divided = match motion.scheme {
@@ -308,7 +308,7 @@ pub(super) fn check_extent(extent: &Extent) -> Result<(), MotionError> {
 }
 
 /// What the steps can not resolve.
-pub(super) fn cautions(net: &Net, motion: &Motion<'_>) -> Vec<Caution> {
+pub(super) fn cautions(net: &Net, motion: &Motion) -> Vec<Caution> {
     let step = motion.step;
     let mut all = Vec::new();
     for speeds in wave_speeds(net, motion) {
