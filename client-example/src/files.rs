@@ -333,6 +333,8 @@ fn segments(run: &Run) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::escape::file_name;
+    use crate::run::motion_sample;
     use crate::run::sample::{self, Names};
 
     #[test]
@@ -360,6 +362,57 @@ mod tests {
         assert!(folder.join("plan-wind.svg").exists());
         for own in ["notes.txt", "mine.svg", "../outside.csv"] {
             assert!(folder.join(own).exists(), "{own} is gone");
+        }
+        fs::remove_dir_all(base).unwrap();
+    }
+
+    #[test]
+    fn a_motion_is_written_inside_the_folder_and_small() {
+        let base = std::env::temp_dir().join(format!("ropewalk-motion-{}", std::process::id()));
+        let folder = base.join("out");
+        write(&motion_sample::run_named("../gust & <b>"), &folder).unwrap();
+        let listed = fs::read_to_string(folder.join(LIST)).unwrap();
+        for name in listed.lines().filter(|name| name.starts_with("motion")) {
+            assert!(is_ours(name) && folder.join(name).exists(), "{name}");
+        }
+        let base_name = format!("motion-{}", file_name("../gust & <b>"));
+        for end in [
+            "frames.csv",
+            "nodes.csv",
+            "rope-main.csv",
+            "events.csv",
+            "waves.csv",
+            "peaks-ropes.csv",
+            "spectrum.csv",
+            "spectrum-peaks.csv",
+            "watched-1.svg",
+            "energy.svg",
+            "rope-main.svg",
+            "spectra-1.svg",
+        ] {
+            let name = format!("{base_name}-{end}");
+            assert!(listed.lines().any(|known| known == name), "no {name} in {listed}");
+        }
+        for name in listed.lines().filter(|name| name.ends_with(".svg")) {
+            let drawing = fs::read_to_string(folder.join(name)).unwrap();
+            assert!(drawing.len() < 300_000, "{name} has {} bytes", drawing.len());
+            assert!(
+                !drawing.contains("<b>") && !drawing.contains("NaN") && !drawing.contains("inf"),
+                "{name}"
+            );
+        }
+        let page = fs::read_to_string(folder.join("report.html")).unwrap();
+        assert!(page.contains("<h2>Motion ../gust &amp; &lt;b&gt;</h2>") && !page.contains("<b>"));
+        assert_eq!(page.matches("Motions: an aid.").count(), 2);
+        if let Ok(keep) = std::env::var("LOOK") {
+            write(&motion_sample::run_named("tie-breaks"), Path::new(&keep)).unwrap();
+            println!(
+                "{}",
+                sheet::motion_text(
+                    &motion_sample::run_named("t"),
+                    &motion_sample::run_named("tie-breaks").motions[0]
+                )
+            );
         }
         fs::remove_dir_all(base).unwrap();
     }
