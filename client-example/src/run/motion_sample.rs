@@ -447,12 +447,16 @@ fn motion(id: &str, nodes: Vec<String>) -> Vec<Event> {
 
 /// A run with one motion.
 pub(crate) fn run_named(id: &str) -> Run {
-    collected(events(id)).unwrap()
+    collected_of(id, events(id)).unwrap()
 }
 
 /// The run of some events.
 pub(crate) fn collected(events: Vec<Event>) -> Result<Run, String> {
-    let brief = brief("gust");
+    collected_of("gust", events)
+}
+
+fn collected_of(id: &str, events: Vec<Event>) -> Result<Run, String> {
+    let brief = brief(id);
     let mut collector = Collector::of(&v1::RunRequest {
         brief: Some(brief.clone()),
         only: Vec::new(),

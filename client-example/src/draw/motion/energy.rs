@@ -24,7 +24,7 @@ type Entry = (&'static str, fn(&v1::EnergyLedger) -> f64);
 
 const ENTRIES: [Entry; 6] = [
     ("kinetic", |energy| energy.kinetic_j),
-    ("elastic, change", |energy| energy.elastic_j),
+    ("elastic change", |energy| energy.elastic_j),
     ("potential", |energy| energy.potential_j),
     ("work done", |energy| energy.work_j),
     ("dissipated", |energy| energy.dissipated_j),

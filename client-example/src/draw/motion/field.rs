@@ -2,6 +2,7 @@
 
 use ropewalk_api::ropewalk::v1;
 
+use crate::number::three;
 use crate::run::MotionRun;
 
 /// Columns and rows of a grid.
@@ -225,6 +226,47 @@ pub(super) fn origin(motion: &MotionRun, rope: usize) -> Option<([f64; 2], &v1::
     })
 }
 
+/// Where and when waves are drawn to begin.
+#[derive(Clone, Debug, PartialEq)]
+pub(super) struct Start {
+    /// Unstressed length (m) and time (s).
+    pub(super) at: [f64; 2],
+    pub(super) words: String,
+}
+
+/// Share of the largest movement that counts as moving.
+const MOVES: f64 = 0.05;
+
+/// Where something first happens to a rope; where no event tells, where it first moves, if that is in one place.
+pub(super) fn start(motion: &MotionRun, rope: usize, sideways: &Grid) -> Option<Start> {
+    if let Some((at, event)) = origin(motion, rope) {
+        let what = match event.kind() {
+            v1::MotionEventKind::Break => "begins to break",
+            v1::MotionEventKind::Slack => "goes slack",
+            _ => "comes taut",
+        };
+        return Some(Start {
+            at,
+            words: format!("{} {what}, {} s", event.member, three(event.time_s)),
+        });
+    }
+    let largest = |row: &[f64]| row.iter().map(|by| by.abs()).fold(0.0, f64::max);
+    let all = sideways.rows.iter().map(|row| largest(row)).fold(0.0, f64::max);
+    let moves = |row: &&Vec<f64>| largest(row) > MOVES * all;
+    let (row, line) = sideways.rows.iter().enumerate().find(|(_, row)| moves(row))?;
+    let here = largest(line);
+    let along = line.iter().filter(|by| by.abs() > 0.5 * here).count();
+    if 3 * along > line.len() {
+        return None;
+    }
+    let column = (0..line.len()).max_by(|&a, &b| line[a].abs().total_cmp(&line[b].abs()))?;
+    let time = middle(sideways.time, sideways.rows.len(), row);
+    Some(Start {
+        at: [middle(sideways.material, line.len(), column), time],
+        words: format!("first moves here, about {} s", three(time)),
+    })
+}
+
 /// The way of a wave from a place and time, both ways and turned back at the ends of the rope, until time ends or it has been
 /// turned back so often. Points (m, s).
 pub(super) fn way(from: [f64; 2], speed: f64, [low, high]: [f64; 2], until: f64, turns: usize) -> [Vec<[f64; 2]>; 2] {
@@ -291,6 +333,20 @@ mod tests {
             looked_at += 1;
         }
         assert!(looked_at > 30, "{looked_at}");
+    }
+
+    #[test]
+    fn without_an_event_waves_begin_where_the_rope_first_moves_if_that_is_one_place() {
+        let mut run = motion_sample::run_named("gust");
+        let grid = sideways(&run.motions[0], 0).unwrap().grid;
+        let told = start(&run.motions[0], 0, &grid).unwrap();
+        assert_eq!((told.at, told.words.as_str()), ([9.9, 0.0], "tie begins to break, 0 s"));
+        run.motions[0].events.clear();
+        let found = start(&run.motions[0], 0, &grid).unwrap();
+        assert!((found.at[0] - 9.9).abs() < 0.5 && found.at[1] < 0.005, "{found:?}");
+        let mut even = grid;
+        even.rows.iter_mut().flatten().for_each(|by| *by = 1.0);
+        assert_eq!(start(&run.motions[0], 0, &even), None);
     }
 
     #[test]

@@ -13,11 +13,13 @@ use crate::number::three;
 use crate::run::{MotionRun, Run};
 
 const LEFT: f64 = 92.0;
-const TOP: f64 = 172.0;
+const TOP: f64 = 180.0;
 const FIELD: [f64; 2] = [470.0, 520.0];
 const PITCH: f64 = 574.0;
-/// Classes of colour.
-const CLASSES: usize = 40;
+/// Classes of colour: an odd number, so that nothing has one of its own.
+const CLASSES: usize = 41;
+/// Share of the time that an axial wave takes at least to pass the rope where it is drawn.
+const SEEN: f64 = 0.06;
 /// How often the drawn way of a wave is turned back.
 const TURNS: usize = 4;
 
@@ -42,8 +44,8 @@ pub(super) fn space_time(run: &Run, motion: &MotionRun, rope: usize) -> Option<S
                 MUTED,
             ),
             (
-                "Across: unstressed length along the rope. Down: time. A wave is a slanting band; the flatter, the faster it runs. \
-                 Dashed: how a wave would run at the speed of the start."
+                "Across: unstressed length along the rope; downwards: time. A wave is a slanting band: the flatter, the faster. Dashed: a \
+                 wave at the speed of the start."
                     .to_owned(),
                 MUTED,
             ),
@@ -103,7 +105,7 @@ pub(super) fn space_time(run: &Run, motion: &MotionRun, rope: usize) -> Option<S
         &format!("mm from the start, positive along ({}){rest}", along.join(", ")),
         &|share| colour::two_ways(2.0 * share - 1.0),
     );
-    guides(&mut sketch, motion, rope, &tension);
+    guides(&mut sketch, motion, rope, [&tension, &sideways.grid]);
     let bottom = TOP + FIELD[1] + 88.0;
     frame::foot(&mut sketch, run, bottom);
     Some(sketch.finish(WIDTH, bottom + 18.0, &title))
@@ -271,13 +273,14 @@ fn legend(sketch: &mut Sketch, panel: usize, [low, high]: [f64; 2], words: &str,
     ));
 }
 
-/// How waves would run from where something first happened.
-fn guides(sketch: &mut Sketch, motion: &MotionRun, rope: usize, grid: &Grid) {
-    let Some((from, event)) = field::origin(motion, rope) else {
+/// How waves would run from where something first happened: on the movement transverse ones, on the tension axial ones, or
+/// transverse ones there too where axial ones are too fast for the picture.
+fn guides(sketch: &mut Sketch, motion: &MotionRun, rope: usize, grids: [&Grid; 2]) {
+    let Some(start) = field::start(motion, rope, grids[1]) else {
         return;
     };
+    let grid = grids[0];
     let shown = &motion.shown.ropes[rope];
-    let waves = motion.waves_of(&shown.cable);
     let place = |panel: usize, [material, time]: [f64; 2]| {
         let [left, top] = corner(panel);
         [
@@ -285,67 +288,64 @@ fn guides(sketch: &mut Sketch, motion: &MotionRun, rope: usize, grid: &Grid) {
             top + (time - grid.time[0]) / (grid.time[1] - grid.time[0]) * FIELD[1],
         ]
     };
-    let mut lines: Vec<(usize, f64, String, usize)> = Vec::new();
-    if let Some(waves) = waves {
+    if let Some(waves) = motion.waves_of(&shown.cable) {
         let (least, most) = (waves.transverse_least_m_per_s, waves.transverse_most_m_per_s);
         let which = if least < 0.98 * most { " at most" } else { "" };
-        let words = format!("transverse wave,{which} {} m/s", three(most));
-        lines.push((1, most, words, TURNS));
-        lines.push((
-            0,
-            waves.axial_m_per_s,
-            format!("axial wave, {} m/s", three(waves.axial_m_per_s)),
-            1,
-        ));
-    }
-    for (panel, speed, words, turns) in lines {
-        for (side, way) in field::way(from, speed, grid.material, grid.time[1], turns)
-            .iter()
-            .enumerate()
-        {
-            if way.len() < 2 {
-                continue;
-            }
-            let points: Vec<String> = (way.iter())
-                .map(|point| place(panel, *point))
-                .map(|[x, y]| format!("{x:.1},{y:.1}"))
-                .collect();
-            sketch.put(format_args!(
-                "<polyline points=\"{}\" fill=\"none\" stroke=\"#fff\" stroke-width=\"2.6\" stroke-opacity=\".55\"/>\
-                 <polyline points=\"{}\" fill=\"none\" stroke=\"{INK}\" stroke-width=\"1\" stroke-dasharray=\"6 5\" stroke-opacity=\".75\" data-speed-m-per-s=\"{speed}\"/>",
-                points.join(" "),
-                points.join(" ")
-            ));
-            // The words stand beside the longer of the two first ways.
-            let longer = (from[0] - grid.material[0] > grid.material[1] - from[0]) == (side == 0);
-            if longer {
-                let [a, b] = [place(panel, way[0]), place(panel, way[1])];
-                let (x, y) = (f64::midpoint(a[0], b[0]), f64::midpoint(a[1], b[1]));
-                let low_enough = y - TOP > 18.0;
-                sketch.put(format_args!(
-                    "<text x=\"{:.1}\" y=\"{:.1}\" text-anchor=\"{}\" font-size=\"12\" {HALO}>{words}</text>",
-                    x,
-                    if low_enough { y - 8.0 } else { y + 24.0 },
-                    if low_enough {
-                        if side == 0 { "end" } else { "start" }
-                    } else {
-                        "middle"
-                    }
-                ));
+        let transverse = (most, format!("transverse wave,{which} {} m/s", three(most)), TURNS);
+        let axial = waves.axial_m_per_s;
+        let passes = (grid.material[1] - grid.material[0]) / axial;
+        let on_tension = if passes > SEEN * (grid.time[1] - grid.time[0]) {
+            (axial, format!("axial wave, {} m/s", three(axial)), 1)
+        } else {
+            transverse.clone()
+        };
+        for (panel, (speed, words, turns)) in [on_tension, transverse].into_iter().enumerate() {
+            let ways = field::way(start.at, speed, grid.material, grid.time[1], turns);
+            let long = ways
+                .iter()
+                .map(|way| way.get(1).map_or(0.0, |next| (next[0] - way[0][0]).abs()));
+            let longer = usize::from(long.clone().nth(1) > long.clone().next());
+            for (side, way) in ways.iter().enumerate().filter(|(_, way)| way.len() > 1) {
+                let points: Vec<[f64; 2]> = way.iter().map(|point| place(panel, *point)).collect();
+                guide(
+                    sketch,
+                    &points,
+                    speed,
+                    (side == longer).then_some(words.as_str()),
+                    panel,
+                );
             }
         }
     }
     for panel in 0..2 {
-        let [x, y] = place(panel, from);
+        let [x, y] = place(panel, start.at);
         sketch.put(format_args!(
-            "<circle cx=\"{x:.1}\" cy=\"{y:.1}\" r=\"4\" fill=\"none\" stroke=\"{ALARM}\" stroke-width=\"1.6\"><title>{} {}, {} s</title></circle>",
-            markup(&event.member),
-            match event.kind() {
-                ropewalk_api::ropewalk::v1::MotionEventKind::Break => "begins to break",
-                ropewalk_api::ropewalk::v1::MotionEventKind::Slack => "goes slack",
-                _ => "comes taut",
-            },
-            three(event.time_s)
+            "<circle cx=\"{x:.1}\" cy=\"{y:.1}\" r=\"4\" fill=\"none\" stroke=\"{ALARM}\" stroke-width=\"1.6\"><title>{}</title></circle>",
+            markup(&start.words)
         ));
     }
+}
+
+/// One way of a wave, its words beside the middle of its first part.
+fn guide(sketch: &mut Sketch, points: &[[f64; 2]], speed: f64, words: Option<&str>, panel: usize) {
+    let line: Vec<String> = points.iter().map(|[x, y]| format!("{x:.1},{y:.1}")).collect();
+    let line = line.join(" ");
+    sketch.put(format_args!(
+        "<polyline points=\"{line}\" fill=\"none\" stroke=\"#fff\" stroke-width=\"2.6\" stroke-opacity=\".55\"/>\
+         <polyline points=\"{line}\" fill=\"none\" stroke=\"{INK}\" stroke-width=\"1\" stroke-dasharray=\"6 5\" stroke-opacity=\".75\" data-speed-m-per-s=\"{speed}\"/>"
+    ));
+    let (Some(words), [a, b, ..]) = (words, points) else {
+        return;
+    };
+    let [left, top] = corner(panel);
+    let (x, y) = (f64::midpoint(a[0], b[0]), f64::midpoint(a[1], b[1]));
+    // Beside the line where it is steep enough for that, below it where it lies flat at the top.
+    let (x, y) = if y - top > 22.0 { (x, y - 14.0) } else { (x, y + 26.0) };
+    #[allow(clippy::cast_precision_loss, reason = "a few letters")]
+    let half = 3.6 * words.chars().count() as f64;
+    let shift = if b[0] > a[0] { half + 12.0 } else { -half - 12.0 };
+    let x = (x + shift).clamp(left + half + 4.0, left + FIELD[0] - half - 4.0);
+    sketch.put(format_args!(
+        "<text x=\"{x:.1}\" y=\"{y:.1}\" text-anchor=\"middle\" font-size=\"12\" {HALO}>{words}</text>"
+    ));
 }

@@ -51,7 +51,7 @@ pub(super) fn spectra(run: &Run, motion: &MotionRun) -> Vec<String> {
                 format!("Marks above: natural frequencies of {from}, by number of the mode.")
             };
             let lines = [
-                format!("{of}Amplitude of a sine that makes a line, log scale; Hann window, which widens a peak to four lines."),
+                format!("{of}Amplitude of a sine that makes a line, log scale; Hann window, which widens a peak to four lines. Drawn as far as anything exceeds a thousandth of the largest."),
                 marks,
             ];
             frame::head(&mut sketch, &title, &lines.map(|line| (line, MUTED)));
@@ -81,6 +81,14 @@ fn plot(
     let frequencies: Vec<f64> = (0..amplitudes.len())
         .map(|line| line as f64 * spectrum.resolution_hz)
         .collect();
+    // What lies below a thousandth of the largest is not drawn, and nothing beyond the last line above that.
+    let top_line = amplitudes.iter().copied().fold(0.0, f64::max);
+    let last = amplitudes
+        .iter()
+        .rposition(|size| *size >= 1e-3 * top_line)
+        .unwrap_or(0);
+    let drawn = (last + last / 20 + 2).min(amplitudes.len());
+    let (frequencies, amplitudes) = (&frequencies[..drawn], &amplitudes[..drawn]);
     let largest = amplitudes
         .iter()
         .chain(spectrum.peaks.iter().map(|peak| &peak.amplitude))
@@ -121,7 +129,7 @@ fn plot(
     plot.below(sketch, "Hz");
     marks(sketch, &plot, natural);
     let orders: Vec<f64> = amplitudes.iter().map(|amplitude| order(*amplitude)).collect();
-    plot.curve(sketch, &frequencies, &orders, CURVES[0]);
+    plot.curve(sketch, frequencies, &orders, CURVES[0]);
     let mut taken = Taken::default();
     for peak in spectrum
         .peaks
