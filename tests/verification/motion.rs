@@ -32,8 +32,8 @@ struct Moving {
 
 /// The same, ready.
 struct Ready {
-    analysis: Analysis,
-    reference: ReferenceState,
+    analysis: Arc<Analysis>,
+    reference: Arc<ReferenceState>,
 }
 
 impl Moving {
@@ -65,23 +65,23 @@ impl Moving {
     fn ready(self) -> Ready {
         let net = Net::new(self.given).expect("a valid net");
         Ready {
-            reference: ReferenceState {
+            reference: Arc::new(ReferenceState {
                 positions: net.nodes().iter().map(|n| n.position.expect("given")).collect(),
                 unstressed_lengths: self.unstressed_lengths,
                 axial_forces: vec![0.0; net.segments().len()],
-            },
-            analysis: Analysis::new(Arc::new(net)),
+            }),
+            analysis: Arc::new(Analysis::new(Arc::new(net))),
         }
     }
 }
 
 impl Ready {
     /// A motion from the given positions at rest, each node told at every step.
-    fn motion(&self, scheme: Scheme, duration: f64, step: f64) -> Motion<'_> {
+    fn motion(&self, scheme: Scheme, duration: f64, step: f64) -> Motion {
         let net = self.analysis.structure().net();
         let (nodes, segments) = (net.nodes().len(), net.segments().len());
         Motion {
-            reference: &self.reference,
+            reference: Arc::clone(&self.reference),
             positions: self.reference.positions.clone(),
             velocities: Vec::new(),
             added_masses: Vec::new(),
@@ -108,9 +108,9 @@ impl Ready {
         }
     }
 
-    fn run(&self, motion: &Motion<'_>) -> (Vec<Frame>, Outcome) {
+    fn run(&self, motion: &Motion) -> (Vec<Frame>, Outcome) {
         let mut frames = Vec::new();
-        let outcome = transient::run(&self.analysis, motion, &mut |progress| {
+        let outcome = transient::run(&self.analysis, &Arc::new(motion.clone()), &mut |progress| {
             if let Progress::Frame(frame) = progress {
                 frames.push(frame.clone());
             }
@@ -197,7 +197,7 @@ fn pluck(data: &Data, n: usize) -> (Vec<Frame>, Outlook) {
     let ready = moving.ready();
     let period = number(&data.expected("continuous period 2L/c")["value"]);
     let mut motion = ready.motion(AVERAGE, 0.5 * period, period / 4000.0);
-    let outlook = transient::outlook(&ready.analysis, &motion).expect("a motion");
+    let outlook = transient::outlook(&ready.analysis, &Arc::new(motion.clone())).expect("a motion");
     for (k, position) in motion.positions.iter_mut().enumerate() {
         let x = k as f64 / n as f64;
         position.y = if x <= 0.25 { 4.0 * x } else { (1.0 - x) / 0.75 } * 1e-4;

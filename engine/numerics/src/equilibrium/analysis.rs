@@ -45,6 +45,12 @@ impl Analysis {
         &self.structure
     }
 
+    /// The same, for one who outlives the analysis.
+    #[must_use]
+    pub fn shared_structure(&self) -> Arc<Structure> {
+        Arc::clone(&self.structure)
+    }
+
     /// Elimination order and structure of the factor.
     #[must_use]
     pub fn symbolic(&self) -> &Arc<Symbolic> {

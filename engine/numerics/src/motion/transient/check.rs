@@ -2,7 +2,6 @@
 
 use nalgebra::Vector3;
 
-use super::history::Side;
 use super::system::{System, driven_case};
 use super::waves::wave_speeds;
 use super::{BreakWhen, Driven, Motion, MotionError, Scheme};
@@ -74,7 +73,7 @@ fn length(what: &'static str, given: usize, needed: usize, may_be_empty: bool) -
 }
 
 /// Everything that can be told before the net is put in motion.
-pub(super) fn check_given(structure: &Structure, motion: &Motion<'_>) -> Result<(), MotionError> {
+pub(super) fn check_given(structure: &Structure, motion: &Motion) -> Result<(), MotionError> {
     let net = structure.net();
     let (nodes, segments) = (net.nodes().len(), net.segments().len());
     if let Some(reach) = net.reaches().iter().find(|reach| reach.slides()) {
@@ -145,7 +144,7 @@ pub(super) fn check_given(structure: &Structure, motion: &Motion<'_>) -> Result<
     check_breaks(net, motion)
 }
 
-fn check_frames(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
+fn check_frames(net: &Net, motion: &Motion) -> Result<(), MotionError> {
     let nodes = motion.frames.nodes.iter().map(|node| node.index());
     let cables = motion.frames.cables.iter().map(|cable| cable.index());
     let outside = |what, index, present| Err(MotionError::NotShown { what, index, present });
@@ -158,7 +157,7 @@ fn check_frames(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
     }
 }
 
-fn check_driven(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
+fn check_driven(net: &Net, motion: &Motion) -> Result<(), MotionError> {
     for (place, driven) in motion.driven.iter().enumerate() {
         let history = match driven {
             Driven::Case { history, .. } | Driven::Wind { speed: history, .. } => history,
@@ -185,12 +184,10 @@ fn check_driven(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
                     return refuse("which members are there");
                 }
                 if moves_supports(case) {
-                    let jumps = history.jumps().into_iter().filter(|at| *at <= motion.duration);
-                    let at = |time, side| history.value(time, side);
-                    if jumps.into_iter().any(|t| at(t, Side::Before) != at(t, Side::After)) {
+                    if history.first_jump(motion.duration).is_some() {
                         return refuse("where supports are by a jump");
                     }
-                    if at(0.0, Side::After) != 0.0 {
+                    if history.at_start() != 0.0 {
                         return refuse("where supports are at the start: its factor must begin at zero, which");
                     }
                 }
@@ -223,7 +220,7 @@ pub(super) fn moves_supports(case: &Case) -> bool {
     case.support_movements.iter().any(|m| *m != Vector3::zeros())
 }
 
-fn check_breaks(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
+fn check_breaks(net: &Net, motion: &Motion) -> Result<(), MotionError> {
     let mut broken = vec![false; net.segments().len()];
     for (place, given) in motion.breaks.iter().enumerate() {
         let segment = given.segment;
@@ -248,7 +245,7 @@ fn check_breaks(net: &Net, motion: &Motion<'_>) -> Result<(), MotionError> {
 }
 
 /// What can be told once masses are known.
-pub(super) fn check_masses(system: &System<'_>) -> Result<(), MotionError> {
+pub(super) fn check_masses(system: &System) -> Result<(), MotionError> {
     for dof in 0..system.structure.n_dofs() {
         let mass = system.mass_of(dof);
         if !(mass > 0.0 && mass.is_finite()) {
@@ -266,8 +263,8 @@ pub(super) fn check_masses(system: &System<'_>) -> Result<(), MotionError> {
     clippy::cast_sign_loss,
     reason = "beyond u64 it saturates, and is refused"
 )]
-pub(super) fn extent(system: &System<'_>) -> Extent {
-    let motion = system.motion;
+pub(super) fn extent(system: &System) -> Extent {
+    let motion = &system.motion;
     let steps = (motion.duration / motion.step - 1e-9).ceil().max(1.0);
     let stable_step = system.stable_step();
     let divided = match motion.scheme {
@@ -311,7 +308,7 @@ pub(super) fn check_extent(extent: &Extent) -> Result<(), MotionError> {
 }
 
 /// What the steps can not resolve.
-pub(super) fn cautions(net: &Net, motion: &Motion<'_>) -> Vec<Caution> {
+pub(super) fn cautions(net: &Net, motion: &Motion) -> Vec<Caution> {
     let step = motion.step;
     let mut all = Vec::new();
     for speeds in wave_speeds(net, motion) {
@@ -325,7 +322,8 @@ pub(super) fn cautions(net: &Net, motion: &Motion<'_>) -> Vec<Caution> {
     }
     for (place, driven) in motion.driven.iter().enumerate() {
         let (Driven::Case { history, .. } | Driven::Wind { speed: history, .. }) = driven;
-        if let Some(needed) = history.finest().filter(|needed| *needed < step) {
+        // Times of a table are rounded.
+        if let Some(needed) = history.finest().filter(|needed| *needed * (1.0 + 1e-9) < step) {
             all.push(Caution::History {
                 driven: place,
                 step,

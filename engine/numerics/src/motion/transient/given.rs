@@ -1,6 +1,7 @@
 //! What is asked of a motion.
 
 use std::ops::ControlFlow;
+use std::sync::Arc;
 
 use nalgebra::Vector3;
 
@@ -10,9 +11,9 @@ use crate::model::{CableId, NodeId, ReferenceState, SegmentId};
 
 /// A motion from a state of the net.
 #[derive(Clone, Debug, PartialEq)]
-pub struct Motion<'a> {
+pub struct Motion {
     /// The reference state: masses come from it.
-    pub reference: &'a ReferenceState,
+    pub reference: Arc<ReferenceState>,
     /// Position of every node at the start (m): a solved state, or a shape plucked from it.
     pub positions: Vec<Vector3<f64>>,
     /// Velocity of every node at the start (m/s); along held directions it must be zero. Empty: at rest.
@@ -147,7 +148,7 @@ pub enum Progress<'a> {
         /// Largest out-of-balance force (N); zero in an explicit step.
         residual: f64,
     },
-    /// A frame.
+    /// A frame; told by [`super::run`] only, since [`super::Running::next_frame`] hands it over.
     Frame(&'a Frame),
 }
 

@@ -34,5 +34,5 @@ pub use error::MotionError;
 pub use given::{Break, BreakWhen, Damping, Driven, Frames, Motion, Observer, Progress, Scheme, Settled};
 pub use history::{History, HistoryError};
 pub use record::{DynamicFactors, Event, EventKind, Events, Frame, Ledger, Peak, Peaks};
-pub use run::{Ending, Outcome, Outlook, outlook, run};
+pub use run::{Ending, Outcome, Outlook, Running, outlook, run};
 pub use waves::{RopeField, WaveSpeeds};

@@ -174,7 +174,7 @@ impl Events {
     /// Adds what happened between two states from `start` to `start + h` (s).
     pub(super) fn compare(
         &mut self,
-        system: &System<'_>,
+        system: &System,
         [before, after]: [&[bool]; 2],
         [from, to]: [&State; 2],
         start: f64,
@@ -209,7 +209,7 @@ pub(super) struct Recorder {
 }
 
 impl Recorder {
-    pub(super) fn new(system: &System<'_>) -> Self {
+    pub(super) fn new(system: &System) -> Self {
         let start = system.motion.positions.clone();
         let towards: Vec<Vector3<f64>> = system.motion.settled.as_ref().map_or(Vec::new(), |settled| {
             let moved = settled.positions.iter().zip(&start);
@@ -231,7 +231,7 @@ impl Recorder {
         }
     }
 
-    pub(super) fn add(&mut self, system: &System<'_>, state: &State, time: f64) {
+    pub(super) fn add(&mut self, system: &System, state: &State, time: f64) {
         for (e, share) in system.shares.iter().enumerate() {
             let axial = system.axial_force(&state.positions, e);
             self.peaks.largest_forces[e].raise(axial, time);
@@ -250,7 +250,7 @@ impl Recorder {
 }
 
 /// A frame of a state.
-pub(super) fn frame(system: &System<'_>, state: &State, step: u64, time: f64, ledger: Ledger) -> Frame {
+pub(super) fn frame(system: &System, state: &State, step: u64, time: f64, ledger: Ledger) -> Frame {
     let chosen = &system.motion.frames;
     let net = system.structure.net();
     let velocities = system.nodal_velocities(&state.velocities, &state.held_velocities);

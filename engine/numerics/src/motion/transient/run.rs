@@ -1,4 +1,6 @@
-//! From the start of a motion to its end.
+//! From the start of a motion to its end, frame by frame.
+
+use std::sync::Arc;
 
 use nalgebra::Vector3;
 
@@ -9,8 +11,8 @@ use super::step::{Done, From, Stepper, Tried};
 use super::system::{Forces, State, System};
 use super::waves::wave_speeds;
 use super::{
-    Break, BreakWhen, Caution, Driven, DynamicFactors, Event, EventKind, Events, Extent, Ledger, Motion, MotionError,
-    Observer, Peaks, Progress, Scheme, WaveSpeeds,
+    Break, BreakWhen, Caution, Driven, DynamicFactors, Event, EventKind, Events, Extent, Frame, Ledger, Motion,
+    MotionError, Observer, Peaks, Progress, Scheme, WaveSpeeds,
 };
 use crate::equilibrium::Analysis;
 
@@ -77,7 +79,7 @@ pub struct Outlook {
 ///
 /// # Errors
 /// What stands against it; see [`MotionError`].
-pub fn outlook(analysis: &Analysis, motion: &Motion<'_>) -> Result<Outlook, MotionError> {
+pub fn outlook(analysis: &Analysis, motion: &Arc<Motion>) -> Result<Outlook, MotionError> {
     let system = checked(analysis, motion)?;
     let net = analysis.structure().net();
     Ok(Outlook {
@@ -87,24 +89,28 @@ pub fn outlook(analysis: &Analysis, motion: &Motion<'_>) -> Result<Outlook, Moti
     })
 }
 
-fn checked<'a>(analysis: &'a Analysis, motion: &'a Motion<'a>) -> Result<System<'a>, MotionError> {
-    let structure = analysis.structure();
-    check_given(structure, motion)?;
-    let system = System::new(structure, motion)?;
+fn checked(analysis: &Analysis, motion: &Arc<Motion>) -> Result<System, MotionError> {
+    check_given(analysis.structure(), motion)?;
+    let system = System::new(analysis.shared_structure(), Arc::clone(motion))?;
     check_masses(&system)?;
     check_extent(&extent(&system))?;
     Ok(system)
 }
 
-/// Follows a motion to its end.
+/// Follows a motion to its end at one go.
 ///
 /// `observe` is told before every iteration, and every frame; when it breaks, the motion ends within one iteration.
 ///
 /// # Errors
 /// What stands against it; see [`MotionError`]. A step that does not converge is an [`Ending`], not an error.
-pub fn run(analysis: &Analysis, motion: &Motion<'_>, observe: Observer<'_>) -> Result<Outcome, MotionError> {
-    let system = checked(analysis, motion)?;
-    Ok(Running::new(analysis, system).finish(observe))
+pub fn run(analysis: &Arc<Analysis>, motion: &Arc<Motion>, observe: Observer<'_>) -> Result<Outcome, MotionError> {
+    let mut running = Running::begin(Arc::clone(analysis), Arc::clone(motion))?;
+    while let Some(frame) = running.next_frame(observe) {
+        if observe(Progress::Frame(&frame)).is_break() {
+            running.ending = Some(Ending::Cancelled);
+        }
+    }
+    Ok(running.finish())
 }
 
 /// A break on its way.
@@ -129,8 +135,11 @@ impl Breaking {
     }
 }
 
-struct Running<'a> {
-    system: System<'a>,
+/// A motion under way. It owns all that it needs: between two frames it may wait as long as it likes, or go on in another
+/// thread, and comes to the same bits.
+#[derive(Debug)]
+pub struct Running {
+    system: System,
     stepper: Stepper,
     recorder: Recorder,
     state: State,
@@ -141,6 +150,11 @@ struct Running<'a> {
     jumps: Vec<f64>,
     breaks: Vec<Breaking>,
     time: f64,
+    /// Whole steps done; none before the frame of the start.
+    whole: Option<u64>,
+    /// Whole steps to do.
+    wanted: u64,
+    ending: Option<Ending>,
     steps: u64,
     smallest_step: f64,
     /// Longest step for now (s).
@@ -155,9 +169,13 @@ struct Running<'a> {
     largest_error: f64,
 }
 
-impl<'a> Running<'a> {
-    fn new(analysis: &Analysis, mut system: System<'a>) -> Self {
-        let motion = system.motion;
+impl Running {
+    /// Checks a motion and makes it ready; nothing moves yet.
+    ///
+    /// # Errors
+    /// What stands against it; see [`MotionError`].
+    pub fn begin(analysis: Arc<Analysis>, motion: Arc<Motion>) -> Result<Self, MotionError> {
+        let mut system = checked(&analysis, &motion)?;
         let loads = system.loads_at(0.0, Side::After);
         let mut positions = motion.positions.clone();
         system.place_supports(&loads, &mut positions);
@@ -198,8 +216,8 @@ impl<'a> Running<'a> {
         let energies = system.energies(&state, &loads.movements);
         let mut recorder = Recorder::new(&system);
         recorder.add(&system, &state, 0.0);
-        Self {
-            stepper: Stepper::new(analysis),
+        Ok(Self {
+            stepper: Stepper::new(&analysis),
             recorder,
             forces: system.new_forces(),
             taut: system.taut(&state.positions),
@@ -207,6 +225,9 @@ impl<'a> Running<'a> {
             jumps,
             breaks,
             time: 0.0,
+            whole: None,
+            wanted: extent(&system).steps,
+            ending: None,
             steps: 0,
             smallest_step: limit,
             limit,
@@ -222,34 +243,59 @@ impl<'a> Running<'a> {
             largest_error: 0.0,
             state,
             system,
-        }
+        })
     }
 
-    fn finish(mut self, observe: Observer<'_>) -> Outcome {
-        let motion = self.system.motion;
-        let steps = extent(&self.system).steps;
-        let mut ending = if self.tell_frame(0, observe) {
-            Ending::Done
-        } else {
-            Ending::Cancelled
-        };
-        let mut step = 0;
-        while ending == Ending::Done && step < steps {
-            step += 1;
-            let target = (step as f64 * motion.step).min(motion.duration);
-            ending = self.advance(target, observe);
-            let is_last = step == steps;
-            let is_due = motion.frames.stride > 0 && step % motion.frames.stride == 0;
-            if ending == Ending::Done && (is_due || is_last) && !self.tell_frame(step, observe) {
-                ending = Ending::Cancelled;
+    /// Goes on to the next frame: the first is that of the start, the last that of the last step. `None` when the motion has
+    /// ended.
+    ///
+    /// `observe` is told of every iteration before it; when it breaks, the motion ends as cancelled within one iteration.
+    pub fn next_frame(&mut self, observe: Observer<'_>) -> Option<Frame> {
+        let stride = self.system.motion.frames.stride;
+        while self.ending.is_none() {
+            let done = self.whole.map_or(0, |whole| whole + 1);
+            if done > 0 {
+                let motion = &self.system.motion;
+                let target = (done as f64 * motion.step).min(motion.duration);
+                self.ending = self.advance(target, observe);
+                if self.ending.is_some() {
+                    break;
+                }
+            }
+            self.whole = Some(done);
+            let is_last = done == self.wanted;
+            if is_last {
+                self.ending = Some(Ending::Done);
+            }
+            if done == 0 || is_last || (stride > 0 && done % stride == 0) {
+                return Some(frame(&self.system, &self.state, done, self.time, self.ledger));
             }
         }
+        None
+    }
+
+    /// Time reached (s).
+    #[must_use]
+    pub fn time(&self) -> f64 {
+        self.time
+    }
+
+    /// How it ended; `None` while it goes on.
+    #[must_use]
+    pub fn ending(&self) -> Option<Ending> {
+        self.ending
+    }
+
+    /// What came of it; cancelled where it has not ended yet.
+    #[must_use]
+    pub fn finish(self) -> Outcome {
+        let motion = &self.system.motion;
         let velocities = self
             .system
             .nodal_velocities(&self.state.velocities, &self.state.held_velocities);
         let settled = motion.settled.as_ref();
         Outcome {
-            ending,
+            ending: self.ending.unwrap_or(Ending::Cancelled),
             time: self.time,
             steps: self.steps,
             smallest_step: self.smallest_step,
@@ -267,12 +313,6 @@ impl<'a> Running<'a> {
         }
     }
 
-    /// False where the observer stops.
-    fn tell_frame(&self, step: u64, observe: Observer<'_>) -> bool {
-        let frame = frame(&self.system, &self.state, step, self.time, self.ledger);
-        observe(Progress::Frame(&frame)).is_continue()
-    }
-
     /// The next moment after now, up to `target`, at which loads or shares jump or kink (s).
     fn next_moment(&self, target: f64) -> f64 {
         let breaks = self
@@ -283,7 +323,8 @@ impl<'a> Running<'a> {
         moments.filter(|t| *t > self.time).fold(target, f64::min)
     }
 
-    fn advance(&mut self, target: f64, observe: Observer<'_>) -> Ending {
+    /// Goes on to `target` (s); how it ended where it did not get there.
+    fn advance(&mut self, target: f64, observe: Observer<'_>) -> Option<Ending> {
         let step = self.system.motion.step;
         while self.time < target {
             let next = self.next_moment(target);
@@ -294,7 +335,7 @@ impl<'a> Running<'a> {
             } else {
                 (self.limit, self.time + self.limit)
             };
-            if !self.begin(end) && self.is_stale {
+            if !self.set_shares(end) && self.is_stale {
                 self.refresh();
             }
             let loads = [
@@ -310,7 +351,7 @@ impl<'a> Running<'a> {
                 movements: &self.movements,
             };
             match self.stepper.step(&mut self.system, from, h, observe) {
-                Tried::Cancelled => return Ending::Cancelled,
+                Tried::Cancelled => return Some(Ending::Cancelled),
                 Tried::NotConverged => {
                     self.limit = 0.5 * h;
                 }
@@ -335,14 +376,14 @@ impl<'a> Running<'a> {
                 }
             }
             if self.limit < SMALLEST_SHARE * step {
-                return Ending::StepTooSmall;
+                return Some(Ending::StepTooSmall);
             }
         }
-        Ending::Done
+        None
     }
 
     /// Sets the shares of what breaks over a step to `end`; true where that made the forces anew.
-    fn begin(&mut self, end: f64) -> bool {
+    fn set_shares(&mut self, end: f64) -> bool {
         let middle = self.time + 0.5 * (end - self.time);
         let mut has_changed = false;
         for breaking in &mut self.breaks {
@@ -430,7 +471,7 @@ impl<'a> Running<'a> {
 }
 
 /// The stable step where there is damping (s): `2/ω (√(1 + ξ²) − ξ)` with the largest damping ratio `ξ`.
-fn damped_step(system: &System<'_>) -> f64 {
+fn damped_step(system: &System) -> f64 {
     let undamped = system.stable_step();
     let omega = 2.0 / undamped;
     let damping = &system.motion.damping;

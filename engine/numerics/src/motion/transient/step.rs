@@ -113,7 +113,7 @@ impl Stepper {
     }
 
     /// Tries a step of length `h` (s).
-    pub(super) fn step(&mut self, system: &mut System<'_>, from: From<'_>, h: f64, observe: Observer<'_>) -> Tried {
+    pub(super) fn step(&mut self, system: &mut System, from: From<'_>, h: f64, observe: Observer<'_>) -> Tried {
         match system.motion.scheme {
             Scheme::GeneralisedAlpha { spectral_radius, .. } => {
                 self.averaged(system, from, h, Alpha::new(spectral_radius), observe)
@@ -127,14 +127,7 @@ impl Stepper {
     /// (1 − α_m) M a1 + α_m M a0 = (1 − α_f) r1 + α_f r0
     /// x1 = x0 + h v0 + h² [(½ − β) a0 + β a1],   v1 = v0 + h [(1 − γ) a0 + γ a1]
     /// ```
-    fn averaged(
-        &mut self,
-        system: &mut System<'_>,
-        from: From<'_>,
-        h: f64,
-        alpha: Alpha,
-        observe: Observer<'_>,
-    ) -> Tried {
+    fn averaged(&mut self, system: &mut System, from: From<'_>, h: f64, alpha: Alpha, observe: Observer<'_>) -> Tried {
         let Alpha {
             inertia,
             force,
@@ -206,7 +199,7 @@ impl Stepper {
     /// ```text
     /// M (v1 − v0) / h = p − Cᵀ (q d_m),   (x1 − x0) / h = (v0 + v1) / 2
     /// ```
-    fn conserving(&mut self, system: &mut System<'_>, from: From<'_>, h: f64, observe: Observer<'_>) -> Tried {
+    fn conserving(&mut self, system: &mut System, from: From<'_>, h: f64, observe: Observer<'_>) -> Tried {
         let start = from.state;
         let loads = from.loads[0].mean(from.loads[1]);
         let mut state = start.clone();
@@ -299,7 +292,7 @@ impl Stepper {
 /// ```text
 /// v½ = v0 + h/2 a0,   x1 = x0 + h v½,   M a1 = r(x1, v0 + h a0),   v1 = v½ + h/2 a1
 /// ```
-fn explicit(system: &mut System<'_>, from: From<'_>, h: f64, observe: Observer<'_>) -> Tried {
+fn explicit(system: &mut System, from: From<'_>, h: f64, observe: Observer<'_>) -> Tried {
     let progress = Progress::Iteration {
         time: from.time,
         iteration: 0,
@@ -342,7 +335,7 @@ fn explicit(system: &mut System<'_>, from: From<'_>, h: f64, observe: Observer<'
 }
 
 /// Moves free directions by `movement` (m) and held nodes with their supports.
-fn place(system: &mut System<'_>, from: &From<'_>, h: f64, movement: &[f64], state: &mut State) {
+fn place(system: &mut System, from: &From<'_>, h: f64, movement: &[f64], state: &mut State) {
     if system.supports_move {
         system.place_supports(from.loads[1], &mut state.positions);
         let steps: Vec<_> = (state.positions.iter().zip(&from.state.positions))
@@ -353,7 +346,7 @@ fn place(system: &mut System<'_>, from: &From<'_>, h: f64, movement: &[f64], sta
     system.structure.dofs().move_nodes(movement, 1.0, &mut state.positions);
 }
 
-fn distance(system: &System<'_>, residual: &[f64], rates: &[f64], weight: f64, forces: &Forces) -> Distance {
+fn distance(system: &System, residual: &[f64], rates: &[f64], weight: f64, forces: &Forces) -> Distance {
     let mut largest: f64 = 0.0;
     for r in residual {
         if !r.is_finite() {

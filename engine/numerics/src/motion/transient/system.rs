@@ -1,7 +1,10 @@
 //! The net in motion as the schemes see it: masses, loads at a time, forces, stiffness.
 
+use std::sync::Arc;
+
 use nalgebra::{Matrix3, Vector3};
 
+use super::check::moves_supports;
 use super::history::Side;
 use super::mass;
 use super::{Driven, Motion, MotionError};
@@ -77,9 +80,9 @@ pub(super) struct Energies {
 
 /// The net in motion.
 #[derive(Debug)]
-pub(super) struct System<'a> {
-    pub(super) structure: &'a Structure,
-    pub(super) motion: &'a Motion<'a>,
+pub(super) struct System {
+    pub(super) structure: Arc<Structure>,
+    pub(super) motion: Arc<Motion>,
     /// What acts throughout; its support movements are those of the present.
     loading: Loading,
     /// Mass of every node (kg).
@@ -105,49 +108,55 @@ pub(super) fn driven_case(driven: &Driven) -> Option<&Case> {
     }
 }
 
-impl<'a> System<'a> {
+impl System {
     /// Puts a motion on a net.
     ///
     /// # Errors
     /// What [`Loading::new`] finds.
-    pub(super) fn new(structure: &'a Structure, motion: &'a Motion<'a>) -> Result<Self, MotionError> {
+    pub(super) fn new(structure: Arc<Structure>, motion: Arc<Motion>) -> Result<Self, MotionError> {
         let net = structure.net();
         // Pressure follows the moving panels and is added moment by moment.
         let case = Case {
             pressures: Vec::new(),
             ..motion.case.clone()
         };
-        let loading = Loading::new(structure, &case, &motion.case.unstressed_lengths, 1.0)?;
-        let mut masses = mass::lumped(net, motion.reference, &motion.case.removed);
+        let loading = Loading::new(&structure, &case, &motion.case.unstressed_lengths, 1.0)?;
+        let mut masses = mass::lumped(net, &motion.reference, &motion.case.removed);
         for (mass, added) in masses.iter_mut().zip(&motion.added_masses) {
             *mass += added;
         }
         let mut elastic_entries = vec![0.0; structure.pattern().n_entries()];
         structure.add_elastic_supports(&mut elastic_entries);
-        let moves = |case: &Case| case.support_movements.iter().any(|m| *m != Vector3::zeros());
         let mut system = Self {
-            structure,
-            motion,
             masses,
             shares: vec![1.0; net.segments().len()],
             ends: net.segments().iter().map(|s| s.ends.map(NodeId::index)).collect(),
             elastic_entries,
             damping_entries: Vec::new(),
-            supports_move: motion.driven.iter().filter_map(driven_case).any(moves),
+            supports_move: motion.driven.iter().filter_map(driven_case).any(moves_supports),
             start: motion.positions.clone(),
             loading,
+            structure,
+            motion,
         };
-        if motion.damping.stiffness > 0.0 {
-            let mut entries = vec![0.0; structure.pattern().n_entries()];
-            let blocks: Vec<_> = (0..system.ends.len())
-                .map(|e| system.bars()[e].stiffness_block(&system.chord(&motion.positions, e)))
-                .collect();
-            structure.tangent_into(&blocks, &mut entries);
-            structure.add_elastic_supports(&mut entries);
-            entries.iter_mut().for_each(|entry| *entry *= motion.damping.stiffness);
-            system.damping_entries = entries;
-        }
+        system.damping_entries = system.damping_by_stiffness();
         Ok(system)
+    }
+
+    /// Entries of `b K` with the tangent `K` at the start; empty where there is no such damping.
+    fn damping_by_stiffness(&self) -> Vec<f64> {
+        let share = self.motion.damping.stiffness;
+        if share == 0.0 {
+            return Vec::new();
+        }
+        let mut entries = vec![0.0; self.structure.pattern().n_entries()];
+        let blocks: Vec<_> = (0..self.ends.len())
+            .map(|e| self.bars()[e].stiffness_block(&self.chord(&self.start, e)))
+            .collect();
+        self.structure.tangent_into(&blocks, &mut entries);
+        self.structure.add_elastic_supports(&mut entries);
+        entries.iter_mut().for_each(|entry| *entry *= share);
+        entries
     }
 
     pub(super) fn bars(&self) -> &[Bar] {
@@ -221,7 +230,7 @@ impl<'a> System<'a> {
     /// Puts held nodes where their supports are.
     pub(super) fn place_supports(&mut self, loads: &Loads, positions: &mut [Vector3<f64>]) {
         self.loading.support_movements.copy_from_slice(&loads.movements);
-        self.loading.place_supports(self.structure, positions);
+        self.loading.place_supports(&self.structure, positions);
     }
 
     /// Velocity of every node (m/s).
@@ -502,7 +511,7 @@ impl<'a> System<'a> {
 
     /// Largest force that acts throughout on a free direction (N).
     pub(super) fn largest_force(&self) -> f64 {
-        self.loading.largest_force(self.structure)
+        self.loading.largest_force(&self.structure)
     }
 
     pub(super) fn kinetic_energy(&self, velocities: &[f64]) -> f64 {

@@ -13,20 +13,20 @@ use crate::test_nets::{Sketch, section};
 
 /// A net with a state to start from, whether that balances or not.
 struct Start {
-    analysis: Analysis,
-    reference: ReferenceState,
+    analysis: Arc<Analysis>,
+    reference: Arc<ReferenceState>,
 }
 
 impl Start {
     fn new(net: Net, unstressed_lengths: Vec<f64>) -> Self {
         let positions: Vec<_> = net.nodes().iter().map(|n| n.position.expect("given")).collect();
         Self {
-            reference: ReferenceState {
+            reference: Arc::new(ReferenceState {
                 positions,
                 unstressed_lengths,
                 axial_forces: vec![0.0; net.segments().len()],
-            },
-            analysis: Analysis::new(Arc::new(net)),
+            }),
+            analysis: Arc::new(Analysis::new(Arc::new(net))),
         }
     }
 
@@ -52,9 +52,9 @@ impl Start {
         Box::new(case)
     }
 
-    fn motion(&self, scheme: Scheme, duration: f64, step: f64) -> Motion<'_> {
+    fn motion(&self, scheme: Scheme, duration: f64, step: f64) -> Motion {
         Motion {
-            reference: &self.reference,
+            reference: Arc::clone(&self.reference),
             positions: self.reference.positions.clone(),
             velocities: Vec::new(),
             added_masses: Vec::new(),
@@ -70,12 +70,13 @@ impl Start {
         }
     }
 
-    fn run(&self, motion: &Motion<'_>) -> Outcome {
-        run(&self.analysis, motion, &mut |_| ControlFlow::Continue(())).expect("a motion")
+    fn run(&self, motion: &Motion) -> Outcome {
+        let motion = Arc::new(motion.clone());
+        run(&self.analysis, &motion, &mut |_| ControlFlow::Continue(())).expect("a motion")
     }
 
-    fn refusal(&self, motion: &Motion<'_>) -> MotionError {
-        let refused = run(&self.analysis, motion, &mut |_| panic!("nothing may run"));
+    fn refusal(&self, motion: &Motion) -> MotionError {
+        let refused = Running::begin(Arc::clone(&self.analysis), Arc::new(motion.clone()));
         refused.expect_err("refused")
     }
 }
@@ -132,7 +133,7 @@ const AVERAGE: Scheme = Scheme::GeneralisedAlpha {
 };
 
 /// Thrown about so that ropes go slack and snatch all the time.
-fn thrown(start: &Start, motion: &mut Motion<'_>) {
+fn thrown(start: &Start, motion: &mut Motion) {
     let dofs = start.analysis.structure().dofs();
     motion.velocities = (0..start.net().nodes().len())
         .map(|n| match dofs.directions(NodeId::new(n)).len() {
@@ -470,7 +471,7 @@ fn divided_steps_keep_the_error() {
 #[test]
 fn it_stops_within_one_iteration() {
     let start = saddle(1.01);
-    let motion = start.motion(AVERAGE, 1.0, 1e-3);
+    let motion = Arc::new(start.motion(AVERAGE, 1.0, 1e-3));
     let mut told = 0;
     let outcome = run(&start.analysis, &motion, &mut |progress| {
         told += 1;
@@ -482,6 +483,87 @@ fn it_stops_within_one_iteration() {
     let outcome = outcome.expect("a motion");
     assert_eq!(outcome.ending, Ending::Cancelled);
     assert_eq!(told, 21);
+}
+
+#[test]
+fn a_motion_that_waits_and_changes_threads_comes_to_the_same_bits() {
+    let averaged = Scheme::GeneralisedAlpha {
+        spectral_radius: 0.8,
+        error: Some(1e-5),
+    };
+    for scheme in [averaged, Scheme::Conserving, Scheme::CentralDifferences] {
+        let start = saddle(1.002);
+        let mut motion = start.motion(scheme, 0.1003, 1e-3);
+        thrown(&start, &mut motion);
+        motion.damping.segments = vec![30.0; 24];
+        motion.breaks = vec![Break {
+            segment: SegmentId::new(3),
+            when: BreakWhen::Time(0.0311),
+            release: 0.02,
+        }];
+        motion.frames = Frames {
+            stride: 10,
+            nodes: (0..9).map(NodeId::new).collect(),
+            cables: vec![crate::model::CableId::new(2)],
+        };
+        let motion = Arc::new(motion);
+        let mut at_once = Vec::new();
+        let outcome = run(&start.analysis, &motion, &mut |progress| {
+            if let Progress::Frame(frame) = progress {
+                at_once.push(frame.clone());
+            }
+            ControlFlow::Continue(())
+        });
+        let mut running = Running::begin(Arc::clone(&start.analysis), motion).expect("a motion");
+        let mut in_parts = Vec::new();
+        loop {
+            let (moved, frame) = std::thread::spawn(move || {
+                let frame = running.next_frame(&mut |_| ControlFlow::Continue(()));
+                (running, frame)
+            })
+            .join()
+            .expect("it goes on");
+            running = moved;
+            match frame {
+                Some(frame) => {
+                    assert_eq!(frame.time, running.time());
+                    in_parts.push(frame);
+                }
+                None => break,
+            }
+        }
+        assert_eq!(running.ending(), Some(Ending::Done));
+        let steps: Vec<u64> = in_parts.iter().map(|frame| frame.step).collect();
+        assert_eq!(steps, [0, 10, 20, 30, 40, 50, 60, 70, 80, 90, 100, 101]);
+        assert_eq!(in_parts[11].time, 0.1003);
+        assert_eq!(in_parts, at_once, "{scheme:?}");
+        assert_eq!(running.finish(), outcome.expect("a motion"), "{scheme:?}");
+    }
+}
+
+#[test]
+fn a_motion_under_way_stops_within_one_iteration() {
+    for scheme in [AVERAGE, Scheme::Conserving, Scheme::CentralDifferences] {
+        let start = saddle(1.01);
+        let motion = Arc::new(start.motion(scheme, 1.0, 1e-3));
+        let mut running = Running::begin(Arc::clone(&start.analysis), motion).expect("a motion");
+        let mut told = 0;
+        let mut observe = |_: Progress<'_>| {
+            told += 1;
+            if told == 8 {
+                ControlFlow::Break(())
+            } else {
+                ControlFlow::Continue(())
+            }
+        };
+        assert_eq!(running.next_frame(&mut observe).expect("the start").step, 0);
+        assert_eq!(running.ending(), None);
+        assert_eq!(running.next_frame(&mut observe), None);
+        assert_eq!(running.next_frame(&mut observe), None);
+        assert_eq!(told, 8, "{scheme:?}");
+        assert_eq!(running.ending(), Some(Ending::Cancelled));
+        assert!(running.time() < 8e-3);
+    }
 }
 
 #[test]
@@ -508,6 +590,7 @@ fn frames_show_a_wave_along_a_rope() {
         nodes: vec![NodeId::new(3)],
         cables: vec![crate::model::CableId::new(0)],
     };
+    let motion = Arc::new(motion);
     let told = outlook(&start.analysis, &motion).expect("a motion");
     let speed = (5000.0_f64 / 2.0).sqrt();
     assert!((told.waves[0].transverse[1] - speed).abs() < 1e-9 * speed);
@@ -530,8 +613,11 @@ fn frames_show_a_wave_along_a_rope() {
     let reached = field.material[front];
     let expected = 1.0 + speed * 0.2;
     assert!((reached - expected).abs() < 0.75, "{reached} {expected}");
-    let coarse = Motion { step: 0.02, ..motion };
-    let told = outlook(&start.analysis, &coarse).expect("a motion");
+    let coarse = Motion {
+        step: 0.02,
+        ..(*motion).clone()
+    };
+    let told = outlook(&start.analysis, &Arc::new(coarse)).expect("a motion");
     assert!(matches!(told.cautions[0], Caution::Wave { needed, .. } if (needed - 0.25 / 1.005 / speed).abs() < 1e-9));
 }
 
@@ -539,7 +625,7 @@ fn frames_show_a_wave_along_a_rope() {
 fn what_can_not_move_is_refused() {
     let start = saddle(1.01);
     let good = start.motion(AVERAGE, 1.0, 1e-3);
-    let refusal = |change: &dyn Fn(&mut Motion<'_>)| {
+    let refusal = |change: &dyn Fn(&mut Motion)| {
         let mut motion = good.clone();
         change(&mut motion);
         start.refusal(&motion)

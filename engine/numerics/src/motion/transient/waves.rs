@@ -22,7 +22,7 @@ pub struct WaveSpeeds {
 }
 
 /// Speeds on every rope that has a mass per length throughout.
-pub(super) fn wave_speeds(net: &Net, motion: &Motion<'_>) -> Vec<WaveSpeeds> {
+pub(super) fn wave_speeds(net: &Net, motion: &Motion) -> Vec<WaveSpeeds> {
     let mut all = Vec::new();
     for (index, cable) in net.cables().iter().enumerate() {
         let has_mass = cable
