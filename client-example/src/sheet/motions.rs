@@ -3,7 +3,7 @@
 use ropewalk_api::ropewalk::v1;
 
 use super::text::{terminal_up_to, wrap};
-use super::{Cell, Mark, Row, Sheet, head, page_head, terminal};
+use super::{Cell, Mark, Row, Sheet, file_head, head, page_head, terminal};
 use crate::number::{counted, for_eyes, order, percent, three};
 use crate::run::{MotionRun, Run};
 
@@ -246,25 +246,25 @@ pub(crate) fn motions(run: &Run) -> Option<Sheet> {
         heads: vec![
             head("motion", ""),
             head("how it ended", ""),
-            head("steps", ""),
-            page_head("smallest step", "ms"),
+            file_head("steps", ""),
+            file_head("smallest step", "ms"),
             head("largest tension", "kN"),
             head("in", ""),
-            page_head("at", "s"),
+            file_head("at", "s"),
             head("largest movement", "mm"),
             head("of", ""),
-            page_head("at", "s"),
+            file_head("at", "s"),
             head("largest pull", "kN"),
             head("on", ""),
-            page_head("at", "s"),
+            file_head("at", "s"),
             head("tension over static", ""),
-            page_head("in", ""),
+            file_head("in", ""),
             head("movement over static", ""),
-            page_head("of", ""),
+            file_head("of", ""),
             head("slack", ""),
             head("snatches", ""),
-            page_head("largest kinetic energy", "J"),
-            page_head("error of the ledger over it", "%"),
+            file_head("largest kinetic energy", "J"),
+            file_head("error of the ledger over it", "%"),
         ],
         rows,
         note: "Motions in time from solved states. Not judged by checks: peaks are to be compared with resistances by an engineer. \

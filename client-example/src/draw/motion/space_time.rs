@@ -44,8 +44,7 @@ pub(super) fn space_time(run: &Run, motion: &MotionRun, rope: usize) -> Option<S
                 MUTED,
             ),
             (
-                "Across: unstressed length along the rope; downwards: time. A wave is a slanting band: the flatter, the faster. Dashed: a \
-                 wave at the speed of the start."
+                "Across: unstressed length; downwards: time. A wave is a slanting band: the flatter, the faster. Dashed: at the speed of the start."
                     .to_owned(),
                 MUTED,
             ),
@@ -331,7 +330,7 @@ fn guide(sketch: &mut Sketch, points: &[[f64; 2]], speed: f64, words: Option<&st
     let line: Vec<String> = points.iter().map(|[x, y]| format!("{x:.1},{y:.1}")).collect();
     let line = line.join(" ");
     sketch.put(format_args!(
-        "<polyline points=\"{line}\" fill=\"none\" stroke=\"#fff\" stroke-width=\"2.6\" stroke-opacity=\".55\"/>\
+        "<polyline points=\"{line}\" fill=\"none\" stroke=\"#fff\" stroke-width=\"2.2\" stroke-opacity=\".4\"/>\
          <polyline points=\"{line}\" fill=\"none\" stroke=\"{INK}\" stroke-width=\"1\" stroke-dasharray=\"6 5\" stroke-opacity=\".75\" data-speed-m-per-s=\"{speed}\"/>"
     ));
     let (Some(words), [a, b, ..]) = (words, points) else {

@@ -14,7 +14,7 @@ use crate::run::{MotionRun, Run};
 /// Plots on a page.
 const DOWN: usize = 4;
 const LEFT: f64 = 92.0;
-const TOP: f64 = 140.0;
+const TOP: f64 = 150.0;
 const HEIGHT: f64 = 170.0;
 const PITCH: f64 = 252.0;
 /// Powers of ten below the largest amplitude.
@@ -51,7 +51,7 @@ pub(super) fn spectra(run: &Run, motion: &MotionRun) -> Vec<String> {
                 format!("Marks above: natural frequencies of {from}, by number of the mode.")
             };
             let lines = [
-                format!("{of}Amplitude of a sine that makes a line, log scale; Hann window, which widens a peak to four lines. Drawn as far as anything exceeds a thousandth of the largest."),
+                format!("{of}Amplitude of a sine that makes a line, log scale, down to a thousandth of the largest. The window widens a peak to four lines."),
                 marks,
             ];
             frame::head(&mut sketch, &title, &lines.map(|line| (line, MUTED)));
@@ -149,12 +149,12 @@ fn plot(
             peak.frequency_hz
         ));
         #[allow(clippy::cast_precision_loss, reason = "a few letters")]
-        let middle = x + 8.0 + 3.4 * letters as f64;
-        if middle < right - 40.0 && taken.take(middle, y - 4.0, letters) {
+        let half = 3.6 * letters as f64;
+        let middle = x.clamp(LEFT + half + 4.0, right - half);
+        if taken.take(middle, y - 11.0, letters) {
             sketch.put(format_args!(
-                "<text x=\"{:.1}\" y=\"{:.1}\" font-size=\"12\" {HALO}>{words}</text>",
-                x + 6.0,
-                y - 1.0
+                "<text x=\"{middle:.1}\" y=\"{:.1}\" text-anchor=\"middle\" font-size=\"12\" {HALO}>{words}</text>",
+                y - 7.0
             ));
         }
     }
