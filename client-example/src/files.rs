@@ -10,10 +10,10 @@ use serde_json::{Map, Value, json};
 
 use crate::brief_file::{self, message_json};
 use crate::colour::Scale;
-use crate::escape::{csv_text, file_name};
+use crate::escape::{csv_text, free_file_name};
 use crate::run::{Column, Run, State, record};
 use crate::sheet::{self, Sheet};
-use crate::{draw, json_text, report};
+use crate::{draw, json_text, motion_files, report};
 
 /// Plans that are drawn; beyond it those without answer and with the worst ratios count.
 const PLANS: usize = 60;
@@ -63,14 +63,14 @@ pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::E
     for state in drawn.iter().take(PLANS) {
         if let Some(plan) = draw::plan(run, state, &scale) {
             put(
-                &format!("plan-{}.svg", free_name(&state.id, &mut names)),
+                &format!("plan-{}.svg", free_file_name(&state.id, &mut names)),
                 plan.as_bytes(),
             )?;
         }
     }
     let mut names = BTreeSet::new();
     for (state, path) in run.load_paths().into_iter().take(PLANS) {
-        let name = free_name(&state.id, &mut names);
+        let name = free_file_name(&state.id, &mut names);
         put(
             &format!("doubling-{name}.svg"),
             draw::doubling(run, state, &path).as_bytes(),
@@ -85,37 +85,32 @@ pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::E
         if pages.is_empty() {
             continue;
         }
-        let name = free_name(&state.id, &mut names);
+        let name = free_file_name(&state.id, &mut names);
         for (number, page) in (1..).zip(&pages) {
             put(&format!("modes-{name}-{number}.svg"), page.as_bytes())?;
+        }
+    }
+    for motion in &run.motions {
+        for sheet in sheet::motion_sheets(run, motion, sheet::Told::All) {
+            put(&format!("{}.csv", sheet.file), sheet.csv().as_bytes())?;
+        }
+        for (name, text) in motion_files::tables(run, motion) {
+            put(&name, text.as_bytes())?;
+        }
+        for (name, drawing) in draw::motion(run, motion) {
+            put(&format!("motion-{}-{name}.svg", motion.name), drawing.as_bytes())?;
         }
     }
     // These are long, and the page shows what they tell in other ways.
     let on_page: Vec<Sheet> = sheets
         .into_iter()
-        .filter(|sheet| !["anchors", "loss-cells", "panel-loads"].contains(&sheet.file))
+        .filter(|sheet| !["anchors", "loss-cells", "panel-loads"].contains(&sheet.file.as_ref()))
         .collect();
     put("report.html", report::page(run, &on_page, &scale).as_bytes())?;
     Ok(Written {
         files: count,
         plans_left_out: drawn.len().saturating_sub(PLANS),
     })
-}
-
-/// A name for a file made of an id that no other id has: different ids may make the same one, and upper and lower case are
-/// one to some file systems.
-fn free_name(id: &str, taken: &mut BTreeSet<String>) -> String {
-    let base = file_name(id);
-    let free = (1..).map(|number| {
-        if number == 1 {
-            base.clone()
-        } else {
-            format!("{base}-{number}")
-        }
-    });
-    free.into_iter()
-        .find(|name| taken.insert(name.to_lowercase()))
-        .expect("numbers do not run out")
 }
 
 /// Removes what the list of an earlier run names, and begins the list anew. Files that no list names are left alone.
@@ -166,6 +161,7 @@ pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
     }
     let if_any = [
         sheet::modes(run),
+        sheet::motions(run),
         sheet::shape(run),
         sheet::judgements(run),
         sheet::slides(run),
@@ -192,7 +188,8 @@ fn scale(run: &Run) -> Scale {
     )
 }
 
-/// Everything, as the contract names it; wall times are left out, so that equal runs give equal files.
+/// Everything, as the contract names it, but for frames of motions, which are in tables of their own; wall times are left out,
+/// so that equal runs give equal files.
 fn results(run: &Run) -> String {
     let columns = |columns: &std::collections::BTreeMap<String, Column>| -> Value {
         let entries = columns.iter().map(|(name, column)| {
@@ -250,6 +247,18 @@ fn results(run: &Run) -> String {
         "shape_report": run.shape_report.as_ref().map(|report| message_json("ShapeReport", &report.encode_to_vec())),
         "losses": run.losses.iter().map(|row| message_json("LossRow", &row.encode_to_vec())).collect::<Vec<_>>(),
         "modes": run.modes.iter().map(|part| message_json("StateModes", &part.encode_to_vec())).collect::<Vec<_>>(),
+        "motions": run.motions.iter().map(|motion| {
+            json!({
+                "id": motion.id,
+                "begin": motion.begin.as_ref().map(|begin| message_json("MotionBegin", &begin.encode_to_vec())),
+                "shown": message_json("MotionShown", &motion.shown.encode_to_vec()),
+                "waves": motion.waves.iter().map(|waves| message_json("RopeWaves", &waves.encode_to_vec())).collect::<Vec<_>>(),
+                "events": motion.events.iter().map(|event| message_json("MotionEvent", &event.encode_to_vec())).collect::<Vec<_>>(),
+                "spectra": motion.spectra.iter().map(|spectrum| message_json("MotionSpectrum", &spectrum.encode_to_vec())).collect::<Vec<_>>(),
+                "end": motion.end.as_ref().map(|end| message_json("MotionEnd", &end.encode_to_vec())),
+                "columns": columns(&motion.columns),
+            })
+        }).collect::<Vec<_>>(),
         "panels": run.panels.iter().map(|panel| message_json("PanelEntry", &panel.encode_to_vec())).collect::<Vec<_>>(),
         "load_pictures": run.loads.iter().map(|picture| message_json("LoadPicture", &picture.encode_to_vec())).collect::<Vec<_>>(),
         "envelope": columns(&run.envelope),
@@ -324,6 +333,8 @@ fn segments(run: &Run) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::escape::file_name;
+    use crate::run::motion_sample;
     use crate::run::sample::{self, Names};
 
     #[test]
@@ -351,6 +362,57 @@ mod tests {
         assert!(folder.join("plan-wind.svg").exists());
         for own in ["notes.txt", "mine.svg", "../outside.csv"] {
             assert!(folder.join(own).exists(), "{own} is gone");
+        }
+        fs::remove_dir_all(base).unwrap();
+    }
+
+    #[test]
+    fn a_motion_is_written_inside_the_folder_and_small() {
+        let base = std::env::temp_dir().join(format!("ropewalk-motion-{}", std::process::id()));
+        let folder = base.join("out");
+        write(&motion_sample::run_named("../gust & <b>"), &folder).unwrap();
+        let listed = fs::read_to_string(folder.join(LIST)).unwrap();
+        for name in listed.lines().filter(|name| name.starts_with("motion")) {
+            assert!(is_ours(name) && folder.join(name).exists(), "{name}");
+        }
+        let base_name = format!("motion-{}", file_name("../gust & <b>"));
+        for end in [
+            "frames.csv",
+            "nodes.csv",
+            "rope-main.csv",
+            "events.csv",
+            "waves.csv",
+            "peaks-ropes.csv",
+            "spectrum.csv",
+            "spectrum-peaks.csv",
+            "watched-1.svg",
+            "energy.svg",
+            "rope-main.svg",
+            "spectra-1.svg",
+        ] {
+            let name = format!("{base_name}-{end}");
+            assert!(listed.lines().any(|known| known == name), "no {name} in {listed}");
+        }
+        for name in listed.lines().filter(|name| name.ends_with(".svg")) {
+            let drawing = fs::read_to_string(folder.join(name)).unwrap();
+            assert!(drawing.len() < 300_000, "{name} has {} bytes", drawing.len());
+            assert!(
+                !drawing.contains("<b>") && !drawing.contains("NaN") && !drawing.contains("inf"),
+                "{name}"
+            );
+        }
+        let page = fs::read_to_string(folder.join("report.html")).unwrap();
+        assert!(page.contains("<h2>Motion ../gust &amp; &lt;b&gt;</h2>") && !page.contains("<b>"));
+        assert_eq!(page.matches("Motions: an aid.").count(), 2);
+        if let Ok(keep) = std::env::var("LOOK") {
+            write(&motion_sample::run_named("tie-breaks"), Path::new(&keep)).unwrap();
+            println!(
+                "{}",
+                sheet::motion_text(
+                    &motion_sample::run_named("t"),
+                    &motion_sample::run_named("tie-breaks").motions[0]
+                )
+            );
         }
         fs::remove_dir_all(base).unwrap();
     }

@@ -6,7 +6,8 @@ use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::Task;
 
 use super::Work;
-use super::run::{Clock, ProgressDesk, break_on_purpose, prepare};
+use super::desk::{Clock, ProgressDesk};
+use super::run::{break_on_purpose, prepare};
 use super::stream::Outbox;
 use crate::config::Fault;
 use crate::encode;

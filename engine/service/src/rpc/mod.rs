@@ -1,6 +1,7 @@
 //! The generated traits, one file a service: decode, compute, stream; nothing else.
 
 mod brief;
+mod desk;
 mod freeze;
 mod run;
 mod server;

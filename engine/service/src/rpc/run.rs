@@ -1,26 +1,19 @@
 //! A run: the brief is read, its reference state found, its cases solved in brief order.
 
 use std::collections::VecDeque;
-use std::ops::ControlFlow;
 use std::sync::Arc;
-use std::sync::atomic::{AtomicU32, AtomicU64, Ordering};
-use std::time::{Duration, Instant};
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics as numerics;
 use ropewalk_numerics::brief::{Plan, ReferenceOutcome, Task};
-use tokio::sync::watch;
 use v1::run_response::Event;
 
 use super::Work;
+use super::desk::{Clock, ProgressDesk};
 use super::stream::Outbox;
 use crate::config::Fault;
-use crate::pool::{Panicked, Pending, Stop};
+use crate::pool::{Panicked, Pending};
 use crate::status::Refusal;
 use crate::{decode, encode};
-
-/// Shortest time between two reports of progress in a run.
-const BETWEEN_PROGRESS: Duration = Duration::from_millis(200);
 
 /// A brief that has been read and planned.
 pub(super) struct Prepared {
@@ -36,7 +29,8 @@ pub(super) async fn run(work: Work, request: v1::RunRequest, outbox: Outbox<v1::
         let cases = prepared
             .work
             .select(&only)
-            .map_err(|finding| Refusal::BriefHasErrors(vec![finding]))?;
+            .map_err(|finding| Refusal::BriefHasErrors(vec![finding]))?
+            .cases;
         Ok((head(prepared, &cases, findings), cases))
     };
     let (prepared, (head, cases)) = prepare(&work, request.brief.unwrap_or_default(), begin).await?;
@@ -225,7 +219,7 @@ impl Solver<'_> {
                 }
             };
             let effects = tally.add(case, &noted);
-            self.desk.done.fetch_add(1, Ordering::Relaxed);
+            self.desk.one_more_done();
             outbox.send(self.kept(case, messages)).await?;
             for effect in effects {
                 let Prepared { work, plan } = &**self.prepared;
@@ -287,96 +281,6 @@ impl Solver<'_> {
             }
             (messages, noted)
         })
-    }
-}
-
-/// Where tasks on the pool report, and the run picks up what the client shall see.
-#[derive(Debug)]
-pub(super) struct ProgressDesk {
-    latest: watch::Sender<Option<v1::Progress>>,
-    began: Instant,
-    /// Time from which on the next report is wanted (ms since the beginning).
-    wanted_from_ms: AtomicU64,
-    done: AtomicU32,
-    total: u32,
-}
-
-impl ProgressDesk {
-    pub(super) fn new(cases: usize) -> Self {
-        Self {
-            latest: watch::Sender::new(None),
-            began: Instant::now(),
-            wanted_from_ms: AtomicU64::new(0),
-            done: AtomicU32::new(0),
-            total: u32::try_from(cases).unwrap_or(u32::MAX),
-        }
-    }
-
-    /// Called in each iteration, on the pool; says whether to go on.
-    pub(super) fn observe(
-        &self,
-        about: &Prepared,
-        task: Task,
-        report: &numerics::equilibrium::IterationReport,
-        stop: &Stop,
-    ) -> ControlFlow<()> {
-        if stop.is_asked() {
-            return ControlFlow::Break(());
-        }
-        let now = u64::try_from(self.began.elapsed().as_millis()).unwrap_or(u64::MAX);
-        let wanted = self.wanted_from_ms.load(Ordering::Relaxed);
-        let between = u64::try_from(BETWEEN_PROGRESS.as_millis()).unwrap_or(u64::MAX);
-        let turn = now >= wanted
-            && self
-                .wanted_from_ms
-                .compare_exchange(wanted, now + between, Ordering::Relaxed, Ordering::Relaxed)
-                .is_ok();
-        if turn {
-            let done = self.done.load(Ordering::Relaxed);
-            let report = encode::progress(&about.work, &about.plan, task, report, done, self.total);
-            self.latest.send_replace(Some(report));
-        }
-        ControlFlow::Continue(())
-    }
-
-    /// Waits for an answer and meanwhile passes progress on to a client that keeps up.
-    pub(super) async fn relay<T, Message>(
-        &self,
-        pending: &mut Pending<T>,
-        outbox: &Outbox<Message>,
-        message: impl Fn(v1::Progress) -> Message,
-    ) -> Result<T, Panicked> {
-        let mut latest = self.latest.subscribe();
-        loop {
-            tokio::select! {
-                biased;
-                answer = pending.answer() => return answer,
-                Ok(()) = latest.changed() => {
-                    let progress = latest.borrow_and_update().clone();
-                    if let Some(progress) = progress {
-                        outbox.send_if_idle(message(progress));
-                    }
-                }
-            }
-        }
-    }
-}
-
-/// Sums the time spent computing (µs).
-#[derive(Debug, Default)]
-pub(super) struct Clock(AtomicU64);
-
-impl Clock {
-    pub(super) fn time<T>(&self, task: impl FnOnce() -> T) -> T {
-        let began = Instant::now();
-        let value = task();
-        let spent = u64::try_from(began.elapsed().as_micros()).unwrap_or(u64::MAX);
-        self.0.fetch_add(spent, Ordering::Relaxed);
-        value
-    }
-
-    fn seconds(&self) -> f64 {
-        Duration::from_micros(self.0.load(Ordering::Relaxed)).as_secs_f64()
     }
 }
 
