@@ -320,7 +320,7 @@ fn motion_events(motion: &MotionRun) -> Option<Sheet> {
     let rows = motion.events.iter().map(|event| {
         let (words, mark) = match event.kind() {
             v1::MotionEventKind::Slack => ("went slack", Mark::Plain),
-            v1::MotionEventKind::Snatch => ("came taut again", Mark::Open),
+            v1::MotionEventKind::Snatch => ("snatched", Mark::Plain),
             v1::MotionEventKind::Break => ("began to break", Mark::Bad),
             v1::MotionEventKind::Unspecified => ("", Mark::Plain),
         };
@@ -349,8 +349,8 @@ fn motion_events(motion: &MotionRun) -> Option<Sheet> {
         ],
         rows,
         note: match motion.end.as_ref().map_or(0, |end| end.events_left_out) {
-            0 => "In order of time.",
-            _ => "In order of time; later ones are counted but not listed.",
+            0 => "In order of time. Snatched: came taut again.",
+            _ => "In order of time; later ones are counted but not listed. Snatched: came taut again.",
         },
     })
 }

@@ -18,7 +18,7 @@ const FIELD: [f64; 2] = [470.0, 520.0];
 const PITCH: f64 = 574.0;
 /// Classes of colour: an odd number, so that nothing has one of its own.
 const CLASSES: usize = 41;
-/// Share of the time that an axial wave takes at least to pass the rope where it is drawn.
+/// Share of the time that a wave takes at least to pass the rope where it is drawn.
 const SEEN: f64 = 0.06;
 /// How often the drawn way of a wave is turned back.
 const TURNS: usize = 4;
@@ -104,8 +104,13 @@ pub(super) fn space_time(run: &Run, motion: &MotionRun, rope: usize) -> Option<S
         &format!("mm from the start, positive along ({}){rest}", along.join(", ")),
         &|share| colour::two_ways(2.0 * share - 1.0),
     );
-    guides(&mut sketch, motion, rope, [&tension, &sideways.grid]);
-    let bottom = TOP + FIELD[1] + 88.0;
+    let note = guides(&mut sketch, motion, rope, [&tension, &sideways.grid]);
+    sketch.put(format_args!(
+        "<text x=\"36\" y=\"{:.1}\" font-size=\"12\">{}</text>",
+        TOP + FIELD[1] + 90.0,
+        markup(&note)
+    ));
+    let bottom = TOP + FIELD[1] + 114.0;
     frame::foot(&mut sketch, run, bottom);
     Some(sketch.finish(WIDTH, bottom + 18.0, &title))
 }
@@ -273,13 +278,29 @@ fn legend(sketch: &mut Sketch, panel: usize, [low, high]: [f64; 2], words: &str,
 }
 
 /// How waves would run from where something first happened: on the movement transverse ones, on the tension axial ones, or
-/// transverse ones there too where axial ones are too fast for the picture.
-fn guides(sketch: &mut Sketch, motion: &MotionRun, rope: usize, grids: [&Grid; 2]) {
-    let Some(start) = field::start(motion, rope, grids[1]) else {
-        return;
-    };
+/// transverse ones there too where axial ones are too fast for the picture. Returns what must be known of it, in words.
+fn guides(sketch: &mut Sketch, motion: &MotionRun, rope: usize, grids: [&Grid; 2]) -> String {
     let grid = grids[0];
     let shown = &motion.shown.ropes[rope];
+    let Some(waves) = motion.waves_of(&shown.cable) else {
+        return "No wave is drawn: the rope has no mass per length throughout.".to_owned();
+    };
+    let (least, most) = (waves.transverse_least_m_per_s, waves.transverse_most_m_per_s);
+    let (length, span) = (grid.material[1] - grid.material[0], grid.time[1] - grid.time[0]);
+    if most <= 0.0 {
+        return "No wave is drawn: the rope is slack at the start.".to_owned();
+    }
+    if length / most < SEEN * span {
+        return format!(
+            "A transverse wave ({} m/s) passes the rope in {} s, too fast to be seen here: a shorter motion with more frames shows it.",
+            three(most),
+            three(length / most)
+        );
+    }
+    let Some(start) = field::start(motion, rope, grids[1]) else {
+        return "No wave is drawn: no event tells where one begins, and the rope moves in many places at once."
+            .to_owned();
+    };
     let place = |panel: usize, [material, time]: [f64; 2]| {
         let [left, top] = corner(panel);
         [
@@ -287,33 +308,27 @@ fn guides(sketch: &mut Sketch, motion: &MotionRun, rope: usize, grids: [&Grid; 2
             top + (time - grid.time[0]) / (grid.time[1] - grid.time[0]) * FIELD[1],
         ]
     };
-    if let Some(waves) = motion.waves_of(&shown.cable) {
-        let (least, most) = (waves.transverse_least_m_per_s, waves.transverse_most_m_per_s);
-        let which = if least < 0.98 * most { " at most" } else { "" };
-        let transverse = (most, format!("transverse wave,{which} {} m/s", three(most)), TURNS);
-        let axial = waves.axial_m_per_s;
-        let passes = (grid.material[1] - grid.material[0]) / axial;
-        let on_tension = if passes > SEEN * (grid.time[1] - grid.time[0]) {
-            (axial, format!("axial wave, {} m/s", three(axial)), 1)
-        } else {
-            transverse.clone()
-        };
-        for (panel, (speed, words, turns)) in [on_tension, transverse].into_iter().enumerate() {
-            let ways = field::way(start.at, speed, grid.material, grid.time[1], turns);
-            let long = ways
-                .iter()
-                .map(|way| way.get(1).map_or(0.0, |next| (next[0] - way[0][0]).abs()));
-            let longer = usize::from(long.clone().nth(1) > long.clone().next());
-            for (side, way) in ways.iter().enumerate().filter(|(_, way)| way.len() > 1) {
-                let points: Vec<[f64; 2]> = way.iter().map(|point| place(panel, *point)).collect();
-                guide(
-                    sketch,
-                    &points,
-                    speed,
-                    (side == longer).then_some(words.as_str()),
-                    panel,
-                );
-            }
+    let which = if least < 0.98 * most { " at most" } else { "" };
+    let transverse = (most, format!("transverse wave,{which} {} m/s", three(most)), TURNS);
+    let axial = waves.axial_m_per_s;
+    let on_tension = if length / axial > SEEN * span {
+        (axial, format!("axial wave, {} m/s", three(axial)), 1)
+    } else {
+        transverse.clone()
+    };
+    for (panel, (speed, words, turns)) in [on_tension, transverse].into_iter().enumerate() {
+        let ways = field::way(start.at, speed, grid.material, grid.time[1], turns);
+        let long = |way: &[[f64; 2]]| way.get(1).map_or(0.0, |next| (next[0] - way[0][0]).abs());
+        let longer = usize::from(long(&ways[1]) > long(&ways[0]));
+        for (side, way) in ways.iter().enumerate().filter(|(_, way)| way.len() > 1) {
+            let points: Vec<[f64; 2]> = way.iter().map(|point| place(panel, *point)).collect();
+            guide(
+                sketch,
+                &points,
+                speed,
+                (side == longer).then_some(words.as_str()),
+                panel,
+            );
         }
     }
     for panel in 0..2 {
@@ -323,6 +338,7 @@ fn guides(sketch: &mut Sketch, motion: &MotionRun, rope: usize, grids: [&Grid; 2
             markup(&start.words)
         ));
     }
+    format!("Circle, from where the dashed waves run: {}.", start.words)
 }
 
 /// One way of a wave, its words beside the middle of its first part.
