@@ -324,7 +324,7 @@ fn sudden_loss_of_a_rope() {
         let mut motion = ready.motion(scheme, 3.0 * exact, exact / 1000.0);
         motion.case.nodal_forces[1].z = -mass * gravity;
         motion.breaks.push(Break {
-            segment: SegmentId::new(1),
+            segments: vec![SegmentId::new(1)],
             when: BreakWhen::Time(0.0),
             release: 0.0,
         });

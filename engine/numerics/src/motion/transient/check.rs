@@ -285,13 +285,17 @@ pub(super) fn moves_supports(case: &Case) -> bool {
 fn check_breaks(net: &Net, motion: &Motion) -> Result<(), MotionError> {
     let mut broken = vec![false; net.segments().len()];
     for (place, given) in motion.breaks.iter().enumerate() {
-        let segment = given.segment;
+        if given.segments.is_empty() {
+            return Err(MotionError::NothingBreaks { place });
+        }
         let is_removed = |e: usize| motion.case.removed.get(e).is_some_and(|removed| *removed);
-        match broken.get_mut(segment.index()) {
-            None => return Err(MotionError::NotThere { place, segment }),
-            Some(_) if is_removed(segment.index()) => return Err(MotionError::NotThere { place, segment }),
-            Some(true) => return Err(MotionError::BrokenTwice { place, segment }),
-            Some(mark) => *mark = true,
+        for segment in given.segments.iter().copied() {
+            match broken.get_mut(segment.index()) {
+                None => return Err(MotionError::NotThere { place, segment }),
+                Some(_) if is_removed(segment.index()) => return Err(MotionError::NotThere { place, segment }),
+                Some(true) => return Err(MotionError::BrokenTwice { place, segment }),
+                Some(mark) => *mark = true,
+            }
         }
         let release = given.release >= 0.0 && given.release.is_finite();
         number("release of a break", given.release, release, "zero or more")?;

@@ -104,6 +104,12 @@ pub enum MotionError {
         /// The segment.
         segment: SegmentId,
     },
+    /// A break names no segment.
+    #[error("break {place} names no segment")]
+    NothingBreaks {
+        /// Which break, from 0.
+        place: usize,
+    },
     /// A frame is to show a node or a cable that is not there.
     #[error("frames show {what} {index}, the net has {present}")]
     NotShown {

@@ -74,23 +74,23 @@ pub enum Driven {
     },
 }
 
-/// A segment that breaks: it lets go of both ends. Its mass and its weight stay at them; what is clamped stays so.
-#[derive(Clone, Copy, Debug, PartialEq)]
+/// Segments that break together: each lets go of both ends. Their mass and their weight stay at these; what is clamped stays so.
+#[derive(Clone, Debug, PartialEq)]
 pub struct Break {
-    /// The segment; a whole rope breaks in all of its segments.
-    pub segment: SegmentId,
+    /// The segments: one, or all of a rope.
+    pub segments: Vec<SegmentId>,
     /// When.
     pub when: BreakWhen,
     /// How long it takes to let go (s), its force fading evenly; zero: at once.
     pub release: f64,
 }
 
-/// When a segment breaks.
+/// When segments break.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub enum BreakWhen {
     /// At this time (s).
     Time(f64),
-    /// At the end of the step in which its tension reaches this (N).
+    /// At the end of the step in which the tension of one of them reaches this (N).
     Tension(f64),
 }
 

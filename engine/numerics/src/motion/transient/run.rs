@@ -103,6 +103,8 @@ pub struct Outcome {
     pub ledger: Ledger,
     /// Largest error of the ledger by size (J).
     pub largest_error: f64,
+    /// Largest kinetic energy at the end of any step (J), to compare it with.
+    pub largest_kinetic: f64,
 }
 
 /// What can be told of a motion before it runs.
@@ -156,7 +158,7 @@ pub fn run(analysis: &Arc<Analysis>, motion: &Arc<Motion>, observe: Observer<'_>
 }
 
 /// A break on its way.
-#[derive(Clone, Copy, Debug)]
+#[derive(Clone, Debug)]
 struct Breaking {
     given: Break,
     /// When it begins, once that is known (s).
@@ -212,6 +214,7 @@ pub struct Running {
     at_start: f64,
     ledger: Ledger,
     largest_error: f64,
+    largest_kinetic: f64,
 }
 
 impl Running {
@@ -243,7 +246,7 @@ impl Running {
         jumps.sort_by(f64::total_cmp);
         let breaks = (motion.breaks.iter())
             .map(|given| Breaking {
-                given: *given,
+                given: given.clone(),
                 began: match given.when {
                     BreakWhen::Time(t) => Some(t),
                     BreakWhen::Tension(_) => None,
@@ -299,6 +302,7 @@ impl Running {
                 ..Ledger::default()
             },
             largest_error: 0.0,
+            largest_kinetic: energies.kinetic,
             state,
             system,
         })
@@ -334,7 +338,8 @@ impl Running {
             if is_last {
                 self.ending = Some(Ending::Done);
             }
-            if done == 0 || is_last || (stride > 0 && done % stride == 0) {
+            // With a stride of zero the start alone.
+            if is_last || done.is_multiple_of(stride) {
                 return Some(frame(&self.system, &self.moment(), done, self.ledger));
             }
         }
@@ -388,6 +393,7 @@ impl Running {
             events: self.recorder.events,
             ledger: self.ledger,
             largest_error: self.largest_error,
+            largest_kinetic: self.largest_kinetic,
         }
     }
 
@@ -477,23 +483,26 @@ impl Running {
         let middle = self.time + 0.5 * (end - self.time);
         let mut has_changed = false;
         for breaking in &mut self.breaks {
-            let e = breaking.given.segment.index();
-            let (before, share) = (self.system.shares[e], breaking.share(middle));
-            if share == before {
-                continue;
+            let share = breaking.share(middle);
+            for segment in &breaking.given.segments {
+                let e = segment.index();
+                let before = self.system.shares[e];
+                if share == before {
+                    continue;
+                }
+                has_changed = true;
+                let stored = self.system.bars()[e].energy(self.system.length(&self.state.positions, e));
+                self.ledger.released += (before - share) * stored;
+                self.system.shares[e] = share;
+                if !breaking.is_told {
+                    self.recorder.events.add(Event {
+                        time: breaking.began.unwrap_or(self.time),
+                        segment: *segment,
+                        kind: EventKind::Break,
+                    });
+                }
             }
-            has_changed = true;
-            let stored = self.system.bars()[e].energy(self.system.length(&self.state.positions, e));
-            self.ledger.released += (before - share) * stored;
-            self.system.shares[e] = share;
-            if !breaking.is_told {
-                breaking.is_told = true;
-                self.recorder.events.add(Event {
-                    time: breaking.began.unwrap_or(self.time),
-                    segment: breaking.given.segment,
-                    kind: EventKind::Break,
-                });
-            }
+            breaking.is_told |= share < 1.0;
         }
         if has_changed {
             self.refresh();
@@ -537,11 +546,12 @@ impl Running {
         let spent = self.ledger.dissipated + self.ledger.released;
         self.ledger.error = (self.ledger.total() - self.at_start) - self.ledger.work + spent;
         self.largest_error = self.largest_error.max(self.ledger.error.abs());
+        self.largest_kinetic = self.largest_kinetic.max(energies.kinetic);
         let mut is_moment = self.jumps.contains(&end);
         for breaking in &mut self.breaks {
             if let (None, BreakWhen::Tension(tension)) = (breaking.began, breaking.given.when) {
-                let e = breaking.given.segment.index();
-                if self.system.axial_force(&self.state.positions, e) >= tension {
+                let axial = |segment: &SegmentId| self.system.axial_force(&self.state.positions, segment.index());
+                if breaking.given.segments.iter().any(|segment| axial(segment) >= tension) {
                     breaking.began = Some(end);
                 }
             }

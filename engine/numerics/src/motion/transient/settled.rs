@@ -48,7 +48,9 @@ pub fn settled_case(net: &Net, motion: &Motion) -> Case {
     }
     for given in &motion.breaks {
         if matches!(given.when, BreakWhen::Time(at) if at <= motion.duration) {
-            settled.removed[given.segment.index()] = true;
+            for segment in &given.segments {
+                settled.removed[segment.index()] = true;
+            }
         }
     }
     settled

@@ -263,12 +263,12 @@ fn the_ledger_closes_with_all_that_acts() {
     });
     motion.breaks = vec![
         Break {
-            segment: SegmentId::new(3),
+            segments: vec![SegmentId::new(3)],
             when: BreakWhen::Time(0.3111),
             release: 0.05,
         },
         Break {
-            segment: SegmentId::new(17),
+            segments: vec![SegmentId::new(17)],
             when: BreakWhen::Time(0.6),
             release: 0.0,
         },
@@ -389,7 +389,7 @@ fn a_rope_breaks_at_its_tension() {
     let mut motion = start.motion(AVERAGE, 0.05, 1e-4);
     motion.velocities = vec![Vector3::zeros(), Vector3::x()];
     motion.breaks.push(Break {
-        segment: SegmentId::new(0),
+        segments: vec![SegmentId::new(0)],
         when: BreakWhen::Tension(100.0),
         release: 0.0,
     });
@@ -524,7 +524,7 @@ fn a_motion_that_waits_and_changes_threads_comes_to_the_same_bits() {
         thrown(&start, &mut motion);
         motion.damping.segments = vec![30.0; 24];
         motion.breaks = vec![Break {
-            segment: SegmentId::new(3),
+            segments: vec![SegmentId::new(3)],
             when: BreakWhen::Time(0.0311),
             release: 0.02,
         }];
@@ -689,11 +689,11 @@ fn what_can_not_move_is_refused() {
         "{stiff}"
     );
     let late = Break {
-        segment: SegmentId::new(0),
+        segments: vec![SegmentId::new(0)],
         when: BreakWhen::Time(1.0),
         release: 0.0,
     };
-    assert_eq!(number(refusal(&|m| m.breaks = vec![late])), "time of a break");
+    assert_eq!(number(refusal(&|m| m.breaks = vec![late.clone()])), "time of a break");
     let shown = refusal(&|m| m.frames.nodes.push(NodeId::new(99)));
     assert!(
         matches!(
@@ -719,10 +719,17 @@ fn what_can_not_move_is_refused() {
         "{shown}"
     );
     let given = |segment, when| Break {
-        segment: SegmentId::new(segment),
+        segments: vec![SegmentId::new(segment)],
         when,
         release: 0.0,
     };
+    let none = refusal(&|m| {
+        m.breaks = vec![Break {
+            segments: Vec::new(),
+            ..given(0, BreakWhen::Time(0.0))
+        }];
+    });
+    assert!(matches!(none, MotionError::NothingBreaks { place: 0 }), "{none}");
     let gone = refusal(&|m| m.breaks = vec![given(24, BreakWhen::Time(0.0))]);
     assert!(matches!(gone, MotionError::NotThere { place: 0, .. }), "{gone}");
     let twice = refusal(&|m| m.breaks = vec![given(3, BreakWhen::Time(0.0)), given(3, BreakWhen::Tension(1.0))]);

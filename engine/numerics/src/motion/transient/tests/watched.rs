@@ -322,7 +322,7 @@ fn the_case_at_rest() {
     let when = [BreakWhen::Time(1.999), BreakWhen::Tension(1.0)];
     motion.breaks = (when.into_iter().enumerate())
         .map(|(place, when)| Break {
-            segment: SegmentId::new(place),
+            segments: vec![SegmentId::new(place)],
             when,
             release: 0.5,
         })
