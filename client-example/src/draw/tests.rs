@@ -137,8 +137,9 @@ fn a_rope_over_time_says_which_way_time_runs_and_how_fast_a_wave_is() {
     // A slack rope is white, and the scale says so.
     assert!(!drawn.contains("white: slack"));
     run.motions[0].frames[20].ropes[0].tension_n[5] = 0.0;
+    run.motions[0].frames[20].ropes[0].tension_n[6] = 90.0;
     let slack = drawing(&run, "rope-main");
-    assert!(slack.contains("white: slack") && slack.contains("data-what=\"slack\""));
+    assert!(slack.contains("kN, log scale; white: slack") && slack.contains("data-what=\"slack\""));
 }
 
 #[test]

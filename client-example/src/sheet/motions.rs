@@ -102,11 +102,15 @@ pub(crate) fn motion_lines(run: &Run, motion: &MotionRun) -> Vec<(&'static str, 
     lines.push(("against the static answer", against_static(begin, end)));
     lines.push((
         "slack",
-        format!(
-            "segments went slack {}, came taut again {}",
-            times(end.slackenings),
-            times(end.snatches)
-        ),
+        if end.slackenings == 0 && end.snatches == 0 {
+            "no segment went slack".to_owned()
+        } else {
+            format!(
+                "segments went slack {} and snatched {}",
+                times(end.slackenings),
+                times(end.snatches)
+            )
+        },
     ));
     let share = if end.largest_kinetic_j > 0.0 {
         format!(

@@ -4,7 +4,7 @@
 use super::WIDTH;
 use super::curve::bounds;
 use super::field::{self, Grid};
-use crate::colour;
+use crate::colour::{self, Scale};
 use crate::draw::frame::{self, short, ticks};
 use crate::draw::room::HALO;
 use crate::draw::{ALARM, INK, MUTED, Sketch};
@@ -30,10 +30,10 @@ pub(super) fn space_time(run: &Run, motion: &MotionRun, rope: usize) -> Option<S
     let shown = &motion.shown.ropes[rope];
     let mut sketch = Sketch::new();
     let title = format!(
-        "{} · motion {} · rope {} over time",
-        run.title(),
+        "Motion {} · rope {} over time · {}",
         motion.id,
-        shown.cable
+        shown.cable,
+        run.title()
     );
     frame::head(
         &mut sketch,
@@ -50,31 +50,45 @@ pub(super) fn space_time(run: &Run, motion: &MotionRun, rope: usize) -> Option<S
             ),
         ],
     );
-    let [low, high] = bounds(tension.rows.iter().flatten().copied());
-    let taut = bounds(tension.rows.iter().flatten().copied().filter(|force| *force > 0.0));
+    let forces = || tension.rows.iter().flatten().copied();
+    let [low, high] = bounds(forces());
+    let taut = bounds(forces().filter(|force| *force > 0.0));
     let has_slack = low <= 0.0;
-    // A scale from the least tension shows a small wave in a tight rope; a rope that is nearly even keeps a narrow range.
+    // From the least tension on, so that a small wave in a tight rope is seen; by logarithm where tensions span much.
+    let scale = Scale::over(forces());
     let low = if has_slack { 0.0 } else { taut[0] };
     let high = if high > low { high } else { low + 1.0 };
-    let tension_class = |force: f64| (force > 0.0).then(|| class((force - low) / (high - low)));
+    let share = |force: f64| {
+        if scale.logarithmic {
+            scale.share(force)
+        } else {
+            (force - low) / (high - low)
+        }
+    };
     panel(
         &mut sketch,
         motion,
         rope,
         0,
         &tension,
-        "tension",
-        "kN",
-        "slack",
-        &|number| tension_class(number).map(|class| (class, colour::at(share_of(class)))),
+        ["tension", "kN", "slack"],
+        &|force| {
+            let class = (force > 0.0).then(|| class(share(force)))?;
+            Some((class, colour::at(share_of(class))))
+        },
     );
-    legend(
-        &mut sketch,
-        0,
-        [low / 1e3, high / 1e3],
-        if has_slack { "kN; white: slack" } else { "kN" },
-        &colour::at,
+    let words = format!(
+        "kN{}{}",
+        if scale.logarithmic { ", log scale" } else { "" },
+        if has_slack { "; white: slack" } else { "" }
     );
+    let marks = if scale.logarithmic {
+        let ticks = scale.ticks().into_iter();
+        ticks.map(|(tick, text)| (share(tick * 1e3), text)).collect()
+    } else {
+        even([low / 1e3, high / 1e3])
+    };
+    legend(&mut sketch, 0, &marks, &words, &colour::at);
     let [least, most] = bounds(sideways.grid.rows.iter().flatten().copied());
     let size = least.abs().max(most.abs()).max(1e-12);
     panel(
@@ -83,9 +97,7 @@ pub(super) fn space_time(run: &Run, motion: &MotionRun, rope: usize) -> Option<S
         rope,
         1,
         &sideways.grid,
-        "movement across the rope",
-        "mm",
-        "",
+        ["movement across the rope", "mm", ""],
         &|number| {
             let class = class(f64::midpoint(number / size, 1.0));
             Some((class, colour::two_ways(2.0 * share_of(class) - 1.0)))
@@ -100,7 +112,7 @@ pub(super) fn space_time(run: &Run, motion: &MotionRun, rope: usize) -> Option<S
     legend(
         &mut sketch,
         1,
-        [-size * 1e3, size * 1e3],
+        &even([-size * 1e3, size * 1e3]),
         &format!("mm from the start, positive along ({}){rest}", along.join(", ")),
         &|share| colour::two_ways(2.0 * share - 1.0),
     );
@@ -139,16 +151,13 @@ fn corner(panel: usize) -> [f64; 2] {
 type Paint<'a> = dyn Fn(f64) -> Option<(usize, String)> + 'a;
 
 /// A field with its axes. Cells are joined to runs of a class, and the most frequent class lies below all.
-#[allow(clippy::too_many_arguments, reason = "a panel and its words")]
 fn panel(
     sketch: &mut Sketch,
     motion: &MotionRun,
     rope: usize,
     number: usize,
     grid: &Grid,
-    name: &str,
-    unit: &str,
-    nothing: &str,
+    [name, unit, nothing]: [&str; 3],
     paint: &Paint,
 ) {
     let [left, top] = corner(number);
@@ -250,8 +259,16 @@ fn cells(sketch: &mut Sketch, grid: &Grid, [left, top]: [f64; 2], nothing: &str,
     sketch.put(format_args!("</g>"));
 }
 
-/// The scale of colours below a field.
-fn legend(sketch: &mut Sketch, panel: usize, [low, high]: [f64; 2], words: &str, paint: &dyn Fn(f64) -> String) {
+/// Round numbers of an even scale, each with its share of it.
+fn even([low, high]: [f64; 2]) -> Vec<(f64, String)> {
+    let numbers = ticks(low, high, 6.0).into_iter();
+    numbers
+        .map(|tick| ((tick - low) / (high - low), tick.to_string()))
+        .collect()
+}
+
+/// The scale of colours below a field, with numbers at shares of it.
+fn legend(sketch: &mut Sketch, panel: usize, marks: &[(f64, String)], words: &str, paint: &dyn Fn(f64) -> String) {
     let [left, top] = [corner(panel)[0], TOP + FIELD[1] + 18.0];
     let step = FIELD[0] / 48.0;
     for number in 0..48 {
@@ -262,8 +279,8 @@ fn legend(sketch: &mut Sketch, panel: usize, [low, high]: [f64; 2], words: &str,
             paint((f64::from(number) + 0.5) / 48.0)
         ));
     }
-    for tick in ticks(low, high, 6.0) {
-        let x = left + (tick - low) / (high - low) * FIELD[0];
+    for (share, tick) in marks {
+        let x = left + share * FIELD[0];
         sketch.put(format_args!(
             "<path d=\"M{x:.1} {:.1}v4\" stroke=\"{INK}\"/><text x=\"{x:.1}\" y=\"{:.1}\" text-anchor=\"middle\" font-size=\"11\">{tick}</text>",
             top + 12.0,
