@@ -110,7 +110,8 @@ fn breaks(net: &Net, member: &str, when: BreakWhen) -> BreakGiven {
 }
 
 fn begun(plan: &Plan, reference: &ReferenceOutcome, index: usize) -> MotionBegun {
-    plan.motion(reference, index, &mut run_on).expect("it can begin")
+    plan.motion(reference, index, &mut |_, _| ControlFlow::Continue(()))
+        .expect("it can begin")
 }
 
 fn followed(plan: &Plan, reference: &ReferenceOutcome, index: usize) -> MotionFound {
@@ -121,7 +122,7 @@ fn followed(plan: &Plan, reference: &ReferenceOutcome, index: usize) -> MotionFo
 
 fn refused(plan: &Plan, index: usize) -> MotionNotBegun {
     let reference = plan.reference(&mut run_on).expect("a reference state");
-    plan.motion(&reference, index, &mut run_on)
+    plan.motion(&reference, index, &mut |_, _| ControlFlow::Continue(()))
         .expect_err("it can not begin")
 }
 
@@ -302,7 +303,7 @@ fn what_can_not_begin_is_told_in_the_ids_of_the_client() {
     let mut hasty = plan.brief().clone();
     hasty.settings.max_iterations = 1;
     hasty.motions[0].from = Some(0);
-    let refused = Plan::new(hasty).motion(&reference, 0, &mut run_on);
+    let refused = Plan::new(hasty).motion(&reference, 0, &mut |_, _| ControlFlow::Continue(()));
     let refused = refused.expect_err("not converged");
     assert!(
         matches!(
@@ -320,7 +321,7 @@ fn what_can_not_begin_is_told_in_the_ids_of_the_client() {
         "{refused}"
     );
 
-    let stopped = plan.motion(&reference, 1, &mut |_| ControlFlow::Break(()));
+    let stopped = plan.motion(&reference, 1, &mut |_, _| ControlFlow::Break(()));
     assert_eq!(stopped.expect_err("stopped"), MotionNotBegun::Cancelled);
 }
 
@@ -536,7 +537,7 @@ fn more_pieces_change_the_state_at_the_start_less() {
     let mut hasty = plan.brief().clone();
     hasty.settings.max_iterations = 0;
     let refused = Plan::new(hasty)
-        .motion(&reference, 0, &mut run_on)
+        .motion(&reference, 0, &mut |_, _| ControlFlow::Continue(()))
         .expect_err("not converged");
     assert!(
         matches!(refused, MotionNotBegun::NotDivided { pieces: 8, .. }),
