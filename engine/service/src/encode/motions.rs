@@ -561,3 +561,6 @@ fn arrays(net: &Net, motion: &str, outcome: &Outcome) -> Vec<v1::RunResponse> {
     );
     messages
 }
+
+#[cfg(test)]
+mod tests;
