@@ -10,7 +10,7 @@ use crate::brief_file::{self, Complaint};
 use crate::end::{End, Stop};
 use crate::engine::Engine;
 use crate::escape::file_name;
-use crate::number::counted;
+use crate::number::{counted, three};
 use crate::progress::Watch;
 use crate::run::{Collector, Run};
 use crate::{files, refusal, say, sheet};
@@ -217,8 +217,16 @@ pub(crate) async fn check(url: Option<&str>, briefs: &[PathBuf], values: bool) -
     }
     let totals = report.totals.clone().unwrap_or_default();
     if let Some(sizes) = totals.sizes {
+        let motions = match totals.motions as usize {
+            0 => String::new(),
+            count => format!(
+                " and {} of about {} steps",
+                counted(count, "motion"),
+                three(totals.motion_steps)
+            ),
+        };
         text.push_str(&format!(
-            "{}, {}, {}, {}, {}; {} in about {:.1} s, {:.1} MB\n",
+            "{}, {}, {}, {}, {}; {}{motions} in about {:.1} s, {:.1} MB\n",
             counted(sizes.nodes as usize, "node"),
             counted(sizes.segments as usize, "segment"),
             counted(sizes.cables as usize, "cable"),

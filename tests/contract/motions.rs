@@ -14,7 +14,7 @@ use ropewalk_service::decode::Work;
 use serde_json::{Value, json};
 use v1::FindingSeverity::{Doubt, Error, Note};
 
-use crate::briefs::{changed, errors, quince_cloth, reading, terrace};
+use crate::briefs::{LIMITS, changed, errors, message, quince_cloth, reading, terrace};
 use crate::violations::told;
 
 /// The work of a brief without errors.
@@ -861,6 +861,21 @@ fn histories_that_make_no_sense_are_told() {
 }
 
 #[test]
+fn points_of_a_record_that_fall_together_are_told() {
+    let record = |from: f64| {
+        let table = json!({"values": [0, 1, 2], "every_s": 1e-9, "from_s": from});
+        drifting(&[("/driven/0", json!({"action": "snow", "table": table}))])
+    };
+    let found = check(
+        &record(1e9),
+        "TIMES_OUT_OF_ORDER",
+        "motions[drift].driven[0].table.every_s",
+    );
+    assert!(found.message.contains("1e-9 s apart"), "{found:#?}");
+    assert!(reading(&record(1.0)).work.is_some());
+}
+
+#[test]
 fn histories_that_are_odd_are_doubted() {
     let at = |field: &str| format!("motions[drift].driven[0].{field}");
     let driven = |history: Value| {
@@ -1342,7 +1357,65 @@ fn watched_quantities_and_spectra_are_told() {
             ("/motions/0/driven/0", json!({"action": "snow", "constant": 1})),
         ],
     );
-    check(&long, "TOO_LARGE", "motions[drift].spectra");
+    let found = check(&long, "TOO_LARGE", "motions[drift].spectra");
+    assert!(found.cure.contains("at most 3368421 samples"), "{found:#?}");
+    // 2.56e8 bytes by 64 and 12 for the one that is watched: so many and no more, the moment of the start among them.
+    for (steps, fits) in [(3_368_420, true), (3_368_421, false)] {
+        let just = changed(
+            long.clone(),
+            &[("/motions/0/duration_s", json!(f64::from(steps) * 1e-3))],
+        );
+        if fits {
+            assert!(motion(&just).spectra.is_some());
+        } else {
+            check(&just, "TOO_LARGE", "motions[drift].spectra");
+        }
+    }
+    let many: Vec<Value> = (0..1001)
+        .map(|place| json!({"id": format!("w{place}"), "largest_tension": "g1"}))
+        .collect();
+    let found = check(
+        &drifting(&[("/watched", json!(many))]),
+        "TOO_MANY",
+        "motions[drift].watched",
+    );
+    assert_eq!(found.value, "1001");
+    assert_eq!(motion(&drifting(&[("/watched", json!(many[1..]))])).watched.len(), 1000);
+}
+
+#[test]
+fn the_net_that_moves_is_as_small_as_any() {
+    let hanging = |pieces: u32| {
+        message(&changed(
+            drifting(&[("/pieces_of_hanging", json!(pieces))]),
+            &[("/net/cables/2/hangs", json!({}))],
+        ))
+    };
+    let segments = |message: &v1::Brief| match &message.net_source {
+        Some(v1::brief::NetSource::Net(net)) => {
+            let of_cables: usize = net.cables.iter().map(|cable| cable.nodes.len() - 1).sum();
+            let of_hanging = net.cables[2].nodes.len() - 1;
+            (
+                u32::try_from(of_cables + net.struts.len()).expect("few"),
+                u32::try_from(of_hanging).expect("few"),
+            )
+        }
+        _ => panic!("a net"),
+    };
+    let (all, hang) = segments(&hanging(10));
+    let most = all + 9 * hang;
+    let read = |pieces, most| {
+        let limits = ropewalk_service::config::Limits {
+            segments: most,
+            ..LIMITS
+        };
+        ropewalk_service::decode::read(hanging(pieces), &limits)
+    };
+    assert!(errors(&read(10, most)).next().is_none());
+    let refused = read(10, most - 1);
+    let found = told(&refused, Error, "TOO_MANY", "motions[drift].pieces_of_hanging");
+    assert_eq!(found.value, most.to_string());
+    assert!(refused.work.is_none());
 }
 
 #[test]

@@ -133,11 +133,66 @@ pub(crate) fn push(id: &str, on: &[&str], down_n: f64) -> v1::Action {
     }
 }
 
-fn case(id: &str, action: &str, factor: f64) -> v1::Case {
+pub(crate) fn case(id: &str, action: &str, factor: f64) -> v1::Case {
     v1::Case {
         id: id.to_owned(),
         factors: [(action.to_owned(), factor)].into(),
         ..v1::Case::default()
+    }
+}
+
+/// The brief with a mass in its ropes and these motions.
+pub(crate) fn moving(mut brief: v1::Brief, motions: Vec<v1::Motion>) -> v1::Brief {
+    if let Some(v1::brief::NetSource::Net(net)) = &mut brief.net_source {
+        net.sections[0].mass_kg_per_m = Some(0.4);
+    }
+    brief.motions = motions;
+    brief
+}
+
+/// A motion of `duration_s` in steps of `step_s`, damped a little, in which snow of the net falls at the start and stays.
+pub(crate) fn motion(id: &str, duration_s: f64, step_s: f64) -> v1::Motion {
+    let factors = v1::RayleighFactors {
+        mass_per_s: 0.5,
+        ..v1::RayleighFactors::default()
+    };
+    v1::Motion {
+        id: id.to_owned(),
+        duration_s,
+        step_s,
+        driven: vec![v1::DrivenLoad {
+            what: Some(v1::driven_load::What::Action("snow".to_owned())),
+            history: Some(v1::driven_load::History::Constant(1.0)),
+            ..v1::DrivenLoad::default()
+        }],
+        damping: Some(v1::MotionDamping {
+            rayleigh: Some(v1::motion_damping::Rayleigh::Factors(factors)),
+            ..v1::MotionDamping::default()
+        }),
+        ..v1::Motion::default()
+    }
+}
+
+/// Frames every so many steps, with these nodes and ropes.
+pub(crate) fn frames(every_steps: u32, nodes: &[&str], ropes: &[&str]) -> v1::MotionFrames {
+    v1::MotionFrames {
+        every_steps: Some(every_steps),
+        nodes: owned(nodes),
+        ropes: owned(ropes),
+        ..v1::MotionFrames::default()
+    }
+}
+
+/// The movement of a node downwards.
+pub(crate) fn sag(id: &str, node: &str) -> v1::WatchedQuantity {
+    v1::WatchedQuantity {
+        id: id.to_owned(),
+        of: Some(v1::watched_quantity::Of::Movement(v1::NodeAlong {
+            node: node.to_owned(),
+            along: vec![0.0, 0.0, -1.0],
+            ..v1::NodeAlong::default()
+        })),
+        ..v1::WatchedQuantity::default()
     }
 }
 

@@ -11,6 +11,7 @@ mod engine;
 mod faults;
 mod hostile;
 mod http2;
+mod motions;
 mod operation;
 mod overhead;
 mod requests;

@@ -99,7 +99,9 @@ impl MotionRun {
             }
             Part::Shown(more) => {
                 self.shown.nodes.extend(more.nodes);
-                self.shown.ropes.extend(more.ropes);
+                for rope in more.ropes {
+                    self.take_rope(rope)?;
+                }
                 self.shown.watched.extend(more.watched);
             }
             Part::Waves(more) => self.waves.extend(more.ropes),
@@ -119,6 +121,22 @@ impl MotionRun {
                 self.spectra.push(spectrum);
             }
         }
+        Ok(())
+    }
+
+    /// A shown rope, or a part that goes on with the last one.
+    fn take_rope(&mut self, more: v1::ShownRope) -> Result<(), Oddity> {
+        if more.from == 0 {
+            self.shown.ropes.push(more);
+            return Ok(());
+        }
+        let goes_on =
+            |known: &&mut v1::ShownRope| known.cable == more.cable && known.material_m.len() == more.from as usize;
+        let Some(known) = self.shown.ropes.last_mut().filter(goes_on) else {
+            return Err(self.odd(format!("goes on with rope \"{}\", which it has not begun", more.cable)));
+        };
+        known.material_m.extend(more.material_m);
+        known.nodes.extend(more.nodes);
         Ok(())
     }
 

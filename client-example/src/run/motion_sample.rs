@@ -304,6 +304,7 @@ fn beginning(nodes: Vec<String>) -> Vec<Part> {
                 cable: "main".to_owned(),
                 material_m: (0..=N_SEGMENTS).map(|at| PIECE_M * f64::from(at)).collect(),
                 nodes,
+                from: 0,
             }],
             watched: vec![
                 quantity("middle", "m", "movement of n20 along (0, 0, 1)"),

@@ -29,8 +29,9 @@ pub use given::{Brief, CaseGiven, EnvelopeGiven, LoadPath};
 pub use loss::{Loss, LossExtreme, LossForce};
 pub use modes::{GustNote, ModesGiven};
 pub use motion::{
-    BreakGiven, Compared, DampingGiven, Divided, DrivenGiven, DrivenWhat, MotionBegun, MotionDoubt, MotionExtreme,
-    MotionExtremes, MotionFound, MotionGiven, MotionNotBegun, ShownRope, SpectraGiven, StartGiven, Watched,
+    AtRest, BreakGiven, Compared, DampingGiven, Divided, DrivenGiven, DrivenWhat, MotionBegun, MotionDoubt,
+    MotionExtreme, MotionExtremes, MotionFound, MotionGiven, MotionNotBegun, ShownRope, SpectraGiven, StartGiven,
+    Watched,
 };
 pub use outcome::{CaseOutcome, EndForce, ReferenceOutcome, StateResult, SupportForce, Task};
 pub use path::PathResult;

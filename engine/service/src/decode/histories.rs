@@ -183,11 +183,25 @@ fn spaced(
     };
     let every = findings.number(&field, of, &SPACING, every)?;
     let from = from?;
-    Some(
-        (0..table.values.len())
-            .map(|place| from + place as f64 * every)
-            .collect(),
-    )
+    let times = (0..table.values.len()).map(|place| from + place as f64 * every);
+    let times: Vec<f64> = times.collect();
+    if times.windows(2).any(|pair| pair[1] <= pair[0]) {
+        findings
+            .error(
+                reasons::TIMES_OUT_OF_ORDER,
+                &field,
+                of.id,
+                format!(
+                    "{of}: points of a table {} s apart fall together at times like {} s",
+                    number(every),
+                    number(from)
+                ),
+                "let the table begin nearer to the start of the motion, or space it wider",
+            )
+            .value(number(every));
+        return None;
+    }
+    Some(times)
 }
 
 /// Times as given, one by one.

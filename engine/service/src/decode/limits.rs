@@ -4,6 +4,7 @@ use prost::Message;
 use ropewalk_api::ropewalk::v1;
 
 use super::findings::{Findings, Path};
+use super::motions::{MOST_PIECES, PIECES_DEFAULT};
 use super::net::NetDraft;
 use super::reasons;
 use crate::config::Limits;
@@ -30,7 +31,9 @@ pub(crate) fn counts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings
     if let Some(v1::brief::NetSource::Net(net)) = &brief.net_source {
         fits &= most(findings, "net.nodes", "nodes", net.nodes.len(), limits.nodes);
         let paths: usize = net.cables.iter().map(|cable| cable.nodes.len().saturating_sub(1)).sum();
-        fits &= most(findings, "net", "segments", paths + net.struts.len(), limits.segments);
+        let segments = paths + net.struts.len();
+        fits &= most(findings, "net", "segments", segments, limits.segments);
+        fits &= divided(brief, net, segments, limits, findings);
         // What describes members need not be more than they can be.
         fits &= most(
             findings,
@@ -45,6 +48,39 @@ pub(crate) fn counts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings
         fits &= most(findings, "net.panels", "panels", net.panels.len(), limits.segments);
         fits &= most(findings, "net.skins", "skins", net.skins.len(), MOST_AREAS);
         fits &= most(findings, "net.zones", "zones", net.zones.len(), MOST_AREAS);
+    }
+    fits
+}
+
+/// Refuses motions whose hanging ropes would be divided into too many pieces.
+fn divided(brief: &v1::Brief, net: &v1::Net, segments: usize, limits: &Limits, findings: &mut Findings) -> bool {
+    let hanging: usize = (net.cables.iter().filter(|cable| cable.hangs.is_some()))
+        .map(|cable| cable.nodes.len().saturating_sub(1))
+        .sum();
+    let list = Path::root("motions");
+    let mut fits = true;
+    for (place, motion) in brief.motions.iter().enumerate() {
+        let pieces = motion.pieces_of_hanging.unwrap_or(PIECES_DEFAULT);
+        // Numbers out of their range have an error of their own.
+        let more = hanging.saturating_mul(pieces.clamp(1, MOST_PIECES) as usize - 1);
+        let count = segments.saturating_add(more);
+        if count <= limits.segments as usize || segments > limits.segments as usize {
+            continue;
+        }
+        fits = false;
+        findings
+            .error(
+                reasons::TOO_MANY,
+                &list.element(&motion.id, place).field("pieces_of_hanging"),
+                &motion.id,
+                format!(
+                    "with {hanging} hanging segments in {pieces} pieces each the net that moves has {count} segments: \
+                     this server takes {}",
+                    limits.segments
+                ),
+                "give a smaller number of pieces, or take hangs out of ropes that are nearly straight",
+            )
+            .value(count);
     }
     fits
 }

@@ -27,8 +27,10 @@ use crate::words::{Quoted, number, quoted_list, rounded};
 const MOST_STEPS: f64 = 1e8;
 /// Spectral radius where the brief gives none.
 const RADIUS: f64 = 0.8;
-/// Straight pieces of a hanging segment where the brief does not say.
-const PIECES_DEFAULT: u32 = 16;
+/// Straight pieces of a hanging segment where the brief does not say,
+pub(super) const PIECES_DEFAULT: u32 = 16;
+/// and at most.
+pub(super) const MOST_PIECES: u32 = 1000;
 
 /// What motions are read against.
 pub(crate) struct Context<'c, 'a> {

@@ -24,8 +24,14 @@ const MOST_BYTES: f64 = 4e9;
 const FRAME_BYTES: f64 = 80.0;
 /// Samples of one spectrum.
 const LEAST_SAMPLES: f64 = 16.0;
-/// Samples of all watched quantities of a motion, which are held until it ends.
-const MOST_SAMPLES: f64 = 5e7;
+/// Watched quantities of a motion: each frame tells all of them in one message.
+const MOST_WATCHED: usize = 1000;
+/// Bytes of the samples of a motion, which are held until it ends.
+const MOST_SAMPLE_BYTES: f64 = 2.56e8;
+/// Bytes that a sample takes for each watched quantity, with the lines of its spectrum,
+const BYTES_OF_SAMPLE: f64 = 12.0;
+/// and for the working out of one spectrum.
+const BYTES_OF_TRANSFORM: f64 = 64.0;
 
 /// Reads what frames show, `pieces` to a hanging segment, and tells where they come to too much.
 pub(super) fn read_frames(
@@ -135,6 +141,19 @@ pub(super) fn read_watched(
     findings: &mut Findings,
 ) -> Vec<Watched> {
     let list = at.field("watched");
+    let count = motion.watched.len();
+    if count > MOST_WATCHED {
+        findings
+            .error(
+                reasons::TOO_MANY,
+                &list,
+                of.id,
+                format!("{of}: {count} quantities are watched: at most {MOST_WATCHED} are taken"),
+                "watch fewer, or follow the motion twice with some of them each; frames can show nodes and ropes too",
+            )
+            .value(count);
+        return Vec::new();
+    }
     let mut names = Names::new("watched quantities");
     let mut watched = Vec::with_capacity(motion.watched.len());
     for (place, given) in motion.watched.iter().enumerate() {
@@ -296,21 +315,25 @@ pub(super) fn read_spectra(
                 )
                 .value(number(from));
         }
-        let all = samples * motion.watched.len() as f64;
-        if all > MOST_SAMPLES {
+        let each = BYTES_OF_SAMPLE * motion.watched.len() as f64 + BYTES_OF_TRANSFORM;
+        let all = samples * each;
+        if all > MOST_SAMPLE_BYTES {
             findings
                 .error(
                     reasons::TOO_LARGE,
                     &at,
                     id,
                     format!(
-                        "{of}: {} samples of {} watched quantities come to {}: at most {} are taken",
+                        "{of}: spectra of {} samples of {} watched quantities take {} bytes: at most {} are taken",
                         number(samples),
                         motion.watched.len(),
                         rounded(all, 3),
-                        number(MOST_SAMPLES)
+                        number(MOST_SAMPLE_BYTES)
                     ),
-                    "watch fewer quantities, let samples begin later, or lengthen the step",
+                    format!(
+                        "take at most {} samples: let them begin later, or lengthen the step; or watch fewer quantities",
+                        number((MOST_SAMPLE_BYTES / each).floor())
+                    ),
                 )
                 .value(rounded(all, 3));
         }

@@ -52,6 +52,6 @@ pub use motions::{
     NotedMotion, motion_broke, motion_end, motion_frame, motion_head, motion_not_begun, motion_progress,
 };
 pub use outcome::{case, engine_error, reference};
-pub use progress::progress;
+pub use progress::{motion_state_progress, progress};
 pub use report::check_report;
 pub use sizing::sizing;

@@ -14,14 +14,14 @@ use v1::run_response::Event;
 
 use super::closing::Counts;
 use super::doubts::finding;
-use super::parts::{NUMBERS, count, event, split};
+use super::parts::{BYTES, NUMBERS, count, event, split};
 use super::state::{Array, flat};
 use super::{failure, motion_doubts};
 use crate::decode::{Work, reasons};
 use crate::words::{Quoted, number, shown};
 
 /// What the end of a run needs of a motion.
-#[derive(Debug)]
+#[derive(Debug, Default)]
 pub struct NotedMotion {
     pub(super) finished: bool,
     pub(super) counts: Counts,
@@ -35,6 +35,8 @@ const PER_NODE: usize = 6;
 const PER_POINT: usize = 8;
 /// Names of shown nodes in one message; each has at most 512 bytes.
 const NODES_SHOWN: usize = 384;
+/// Bytes that a point of a shown rope takes besides the id of its node.
+const BYTES_OF_POINT: usize = 12;
 
 /// A part of a motion.
 fn part(motion: &str, part: Part) -> v1::RunResponse {
@@ -44,25 +46,33 @@ fn part(motion: &str, part: Part) -> v1::RunResponse {
     }))
 }
 
-/// Where a motion is, on its way to the client. `spent`: what it has taken to get there.
+/// Where a motion is, on its way to the client. `spent`: what it has taken to get there. `slack`: segments that were slack in its
+/// last frame.
 #[must_use]
-pub fn motion_progress(plan: &Plan, motion: usize, report: &Progress<'_>, spent: Duration) -> v1::Progress {
+pub fn motion_progress(
+    plan: &Plan,
+    motion: usize,
+    report: &Progress<'_>,
+    spent: Duration,
+    slack: usize,
+) -> v1::Progress {
     let given = &plan.brief().motions[motion];
-    let (time, iteration, residual) = match report {
+    let (time, iteration, residual, slack) = match report {
         Progress::Iteration {
             time,
             iteration,
             residual,
-        } => (*time, *iteration, *residual),
-        Progress::Frame(frame) => (frame.time, 0, 0.0),
+        } => (*time, *iteration, *residual, slack),
+        Progress::Frame(frame) => (frame.time, 0, 0.0, frame.slack),
     };
     v1::Progress {
         motion: given.name.clone(),
         iteration,
         residual_n: residual,
+        slack_segments: count(slack),
         simulated_s: time,
         duration_s: given.duration,
-        left_s: (time > 0.0).then(|| spent.as_secs_f64() * (given.duration - time) / time),
+        left_s: (time > 0.0).then(|| spent.as_secs_f64() * (given.duration - time).max(0.0) / time),
         ..v1::Progress::default()
     }
 }
@@ -105,7 +115,7 @@ pub fn motion_head(work: &Work, plan: &Plan, motion: usize, begun: &MotionBegun)
 }
 
 /// What peaks are compared with where the brief names no case.
-const AT_REST: &str = "at rest under what acts at the end";
+pub(super) const AT_REST: &str = "at rest under what acts at the end";
 
 /// What frames show, in parts.
 fn shown_things(work: &Work, net: &Net, motion: usize, begun: &MotionBegun) -> Vec<v1::RunResponse> {
@@ -114,12 +124,10 @@ fn shown_things(work: &Work, net: &Net, motion: usize, begun: &MotionBegun) -> V
         nodes: nodes.iter().map(|node| net.node_name(*node).to_owned()).collect(),
         ..v1::MotionShown::default()
     });
-    let ropes = begun.shown_ropes().into_iter().map(|rope| v1::ShownRope {
-        cable: net.cables()[rope.cable.index()].name.clone(),
-        material_m: rope.material,
-        nodes: (rope.nodes.iter())
-            .map(|node| node.map_or_else(String::new, |node| net.node_name(node).to_owned()))
-            .collect(),
+    let ropes = begun.shown_ropes().into_iter().flat_map(|rope| {
+        let nodes = rope.nodes.iter();
+        let nodes = nodes.map(|node| node.map_or_else(String::new, |node| net.node_name(node).to_owned()));
+        shown_rope(&net.cables()[rope.cable.index()].name, &rope.material, nodes.collect())
     });
     let ropes = split(ropes.collect()).into_iter().map(|ropes| v1::MotionShown {
         ropes,
@@ -140,6 +148,28 @@ fn shown_things(work: &Work, net: &Net, motion: usize, begun: &MotionBegun) -> V
     });
     let parts = nodes.chain(ropes).chain(watched);
     parts.map(|shown| part(&given.name, Part::Shown(shown))).collect()
+}
+
+/// A shown rope, in parts that each fit a message.
+fn shown_rope(cable: &str, material: &[f64], nodes: Vec<String>) -> Vec<v1::ShownRope> {
+    let mut parts: Vec<v1::ShownRope> = Vec::new();
+    let mut size = BYTES;
+    for (place, (material, node)) in material.iter().zip(nodes).enumerate() {
+        let own = BYTES_OF_POINT + node.len();
+        if size + own > BYTES {
+            parts.push(v1::ShownRope {
+                cable: cable.to_owned(),
+                from: count(place),
+                ..v1::ShownRope::default()
+            });
+            size = cable.len();
+        }
+        size += own;
+        let part = parts.last_mut().expect("there is one");
+        part.material_m.push(*material);
+        part.nodes.push(node);
+    }
+    parts
 }
 
 /// Unit of a watched quantity, and what it is.
@@ -531,3 +561,6 @@ fn arrays(net: &Net, motion: &str, outcome: &Outcome) -> Vec<v1::RunResponse> {
     );
     messages
 }
+
+#[cfg(test)]
+mod tests;

@@ -1,22 +1,16 @@
 //! What is being worked on.
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::{Plan, Task};
+use ropewalk_numerics::brief::{AtRest, Plan, Task};
 use ropewalk_numerics::equilibrium::{IterationReport, Way};
 
+use super::motions::AT_REST;
 use super::parts::count;
-use crate::decode::{REFERENCE, Work};
+use crate::decode::REFERENCE;
 
-/// One iteration, on its way to the client.
+/// One iteration, on its way to the client; how many cases are done is added there.
 #[must_use]
-pub fn progress(
-    _work: &Work,
-    plan: &Plan,
-    task: Task,
-    report: &IterationReport,
-    done: u32,
-    total: u32,
-) -> v1::Progress {
+pub fn progress(plan: &Plan, task: Task, report: &IterationReport) -> v1::Progress {
     let brief = plan.brief();
     let (case, motion) = match task {
         Task::Reference => (REFERENCE, ""),
@@ -36,9 +30,21 @@ pub fn progress(
             .map_or_else(String::new, |node| brief.net.node_name(node).to_owned()),
         strain_energy_j: report.strain_energy,
         slack_segments: count(report.slack),
-        cases_done: done,
-        cases_total: total,
         ..v1::Progress::default()
+    }
+}
+
+/// One iteration for a state that a motion needs before time runs.
+#[must_use]
+pub fn motion_state_progress(plan: &Plan, motion: usize, state: AtRest, report: &IterationReport) -> v1::Progress {
+    let case = match state {
+        AtRest::State(None) => REFERENCE,
+        AtRest::State(Some(case)) => &plan.brief().cases[case].name,
+        AtRest::Settled => AT_REST,
+    };
+    v1::Progress {
+        case: case.to_owned(),
+        ..progress(plan, Task::Motion(motion), report)
     }
 }
 

@@ -25,6 +25,8 @@ pub fn check_report(reading: Reading) -> Vec<v1::CheckResponse> {
         let estimate = plan.estimate();
         totals.seconds = estimate.seconds;
         totals.bytes = estimate.result_bytes;
+        totals.motions = count(estimate.motions);
+        totals.motion_steps = estimate.motion_steps;
         totals.sizes = Some(sizes(&plan, n_cases));
     }
     let findings = split(reading.findings).into_iter().map(|findings| v1::CheckResponse {

@@ -47,10 +47,7 @@ impl ProgressDesk {
         report: &numerics::equilibrium::IterationReport,
         stop: &Stop,
     ) -> ControlFlow<()> {
-        self.watch(stop, || {
-            let done = self.done.load(Ordering::Relaxed);
-            encode::progress(&about.work, &about.plan, task, report, done, self.total)
-        })
+        self.watch(stop, || encode::progress(&about.plan, task, report))
     }
 
     /// Says whether to go on, and asks for a report of progress where it is time for one.
@@ -67,7 +64,11 @@ impl ProgressDesk {
                 .compare_exchange(wanted, now + between, Ordering::Relaxed, Ordering::Relaxed)
                 .is_ok();
         if turn {
-            self.latest.send_replace(Some(report()));
+            self.latest.send_replace(Some(v1::Progress {
+                cases_done: self.done.load(Ordering::Relaxed),
+                cases_total: self.total,
+                ..report()
+            }));
         }
         ControlFlow::Continue(())
     }

@@ -8,7 +8,7 @@ use std::sync::Arc;
 use std::time::{Duration, Instant};
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::{MotionBegun, ReferenceOutcome, Task};
+use ropewalk_numerics::brief::{MotionBegun, ReferenceOutcome};
 use ropewalk_numerics::motion::transient;
 use tokio::sync::mpsc;
 use tracing::Instrument as _;
@@ -44,6 +44,8 @@ struct Following {
     begun: MotionBegun,
     /// Time computed so far.
     spent: Duration,
+    /// Segments that were slack in the last frame.
+    slack: usize,
 }
 
 impl Solver<'_> {
@@ -158,13 +160,20 @@ impl Follower {
 
     fn begin(&self) -> (Vec<v1::RunResponse>, Standing) {
         let Prepared { work, plan } = &*self.prepared;
-        let observe =
-            &mut |report: &_| (self.desk).observe(&self.prepared, Task::Motion(self.motion), report, &self.stop);
+        let observe = &mut |state, report: &_| {
+            (self.desk).watch(&self.stop, || {
+                encode::motion_state_progress(plan, self.motion, state, report)
+            })
+        };
         match plan.motion(&self.reference, self.motion, observe) {
             Ok(begun) => {
-                let spent = Duration::ZERO;
                 let messages = encode::motion_head(work, plan, self.motion, &begun);
-                (messages, Ok(Box::new(Following { begun, spent })))
+                let following = Following {
+                    begun,
+                    spent: Duration::ZERO,
+                    slack: 0,
+                };
+                (messages, Ok(Box::new(following)))
             }
             Err(why) => {
                 let (messages, noted) = encode::motion_not_begun(work, plan, self.motion, &why);
@@ -176,16 +185,26 @@ impl Follower {
     fn go_on(&self, mut following: Box<Following>) -> (Vec<v1::RunResponse>, Standing) {
         let Prepared { work, plan } = &*self.prepared;
         let (began, spent) = (Instant::now(), following.spent);
+        let is_over = || began.elapsed() >= JOB;
         let mut messages = Vec::new();
-        while messages.len() < MESSAGES_OF_JOB && began.elapsed() < JOB {
+        while messages.len() < MESSAGES_OF_JOB && !is_over() {
+            let slack = following.slack;
             let observe = &mut |report: transient::Progress<'_>| {
                 (self.desk).watch(&self.stop, || {
-                    encode::motion_progress(plan, self.motion, &report, spent + began.elapsed())
+                    encode::motion_progress(plan, self.motion, &report, spent + began.elapsed(), slack)
                 })
             };
-            match following.begun.next_frame(observe) {
-                Some(frame) => messages.extend(encode::motion_frame(plan, self.motion, &frame)),
-                None => {
+            match following.begun.go_on(&mut || is_over(), observe) {
+                transient::Went::Frame(frame) => {
+                    following.slack = frame.slack;
+                    messages.extend(encode::motion_frame(plan, self.motion, &frame));
+                }
+                transient::Went::Paused => {}
+                // Nobody is there any more: spectra of what was sampled would only take time.
+                transient::Went::Ended if self.stop.is_asked() => {
+                    return (Vec::new(), Err(encode::NotedMotion::default()));
+                }
+                transient::Went::Ended => {
                     let (end, noted) = encode::motion_end(work, plan, self.motion, following.begun);
                     messages.extend(end);
                     return (messages, Err(noted));

@@ -23,6 +23,15 @@ use crate::motion::{About, Division, nodal_masses};
 
 type Watch<'a> = &'a mut dyn FnMut(&IterationReport) -> ControlFlow<()>;
 
+/// A state at rest that is found before time runs.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum AtRest {
+    /// That of a case, by index, or the reference state; also with its hanging ropes divided.
+    State(Option<usize>),
+    /// What acts at the end of the motion.
+    Settled,
+}
+
 /// An answered state of the net as given.
 #[derive(Clone, Debug)]
 struct Found {
@@ -77,20 +86,23 @@ impl Plan {
     ///
     /// Water that gathers on skins in the state at the start stays on the nodes as a load, without mass.
     ///
+    /// `observe` is told of every iteration, and for which state it is done; when it breaks, the motion does not begin.
+    ///
     /// # Errors
     /// [`MotionNotBegun`], in the client's ids.
     pub fn motion(
         &self,
         reference: &ReferenceOutcome,
         index: usize,
-        observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
+        observe: &mut dyn FnMut(AtRest, &IterationReport) -> ControlFlow<()>,
     ) -> Result<MotionBegun, MotionNotBegun> {
         let brief = self.brief();
         let given = &brief.motions[index];
         self.refuse_sliding()?;
-        let found = self.state_of(reference, given.from, observe)?;
+        let mut start = |report: &IterationReport| observe(AtRest::State(given.from), report);
+        let found = self.state_of(reference, given.from, &mut start)?;
         self.refuse_breaks(given, &found.case)?;
-        let stage = self.stage(given, &found, observe)?;
+        let stage = self.stage(given, &found, &mut start)?;
         let names = Names {
             brief,
             division: stage.division.as_deref(),
@@ -99,7 +111,8 @@ impl Plan {
 
         let mut positions = match given.start.shape_of {
             Some(case) if Some(case) != given.from => {
-                let shape = self.state_of(reference, Some(case), observe)?;
+                let mut observe = |report: &IterationReport| observe(AtRest::State(Some(case)), report);
+                let shape = self.state_of(reference, Some(case), &mut observe)?;
                 match &stage.division {
                     Some(division) => division.positions(&shape.case, &shape.positions),
                     None => shape.positions,
@@ -163,7 +176,11 @@ impl Plan {
             other => refuse(&other),
         })?;
         motion = Arc::unwrap_or_clone(shared);
-        let (settled, compared) = self.compared(reference, given, &stage, &motion, observe)?;
+        let sought = given
+            .compare_with
+            .map_or(AtRest::Settled, |case| AtRest::State(Some(case)));
+        let mut observe = |report: &IterationReport| observe(sought, report);
+        let (settled, compared) = self.compared(reference, given, &stage, &motion, &mut observe)?;
         motion.settled.clone_from(&settled);
 
         let dofs = stage.analysis.structure().dofs();

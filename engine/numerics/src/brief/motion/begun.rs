@@ -7,7 +7,7 @@ use super::doubts::doubts;
 use crate::model::{AxialLaw, CableId, Net, NodeId, SegmentId};
 use crate::motion::Division;
 use crate::motion::transient::{
-    DynamicFactors, Ending, Event, Motion, Observer, Outcome, Outlook, Peak, Peaks, Running,
+    DynamicFactors, Ending, Event, Motion, Observer, Outcome, Outlook, Peak, Peaks, Running, Went,
 };
 
 /// What peaks are compared with.
@@ -121,6 +121,11 @@ impl MotionBegun {
     /// Goes on to the next frame; see [`Running::next_frame`].
     pub fn next_frame(&mut self, observe: Observer<'_>) -> Option<crate::motion::transient::Frame> {
         self.running.next_frame(observe)
+    }
+
+    /// Goes on to the next frame or a pause; see [`Running::go_on`].
+    pub fn go_on(&mut self, pauses: &mut dyn FnMut() -> bool, observe: Observer<'_>) -> Went {
+        self.running.go_on(pauses, observe)
     }
 
     /// The ropes that frames show, in their order.

@@ -14,6 +14,7 @@ mod doubts;
 mod given;
 mod refused;
 
+pub use begin::AtRest;
 pub use begun::{Compared, Divided, MotionBegun, MotionExtreme, MotionExtremes, MotionFound, ShownRope};
 pub use doubts::MotionDoubt;
 pub use given::{BreakGiven, DampingGiven, DrivenGiven, DrivenWhat, MotionGiven, StartGiven};

@@ -266,6 +266,14 @@ impl Names<'_> {
                 let what = format!("{} is held along the velocity that it is given", at(*node));
                 self.given(what, Some(*node), None)
             }
+            MotionError::AirAtMovingSupport { node } => {
+                let what = format!(
+                    "{} moves with its support and slides on it, while air across a skin couples the two directions: \
+                     hold it fully, or leave out the air",
+                    at(*node)
+                );
+                self.given(what, Some(*node), None)
+            }
             MotionError::Driven { driven: place, what } => {
                 let what = format!(
                     "{} changes {what}: only forces, pressures and movements of supports may vary in time",

@@ -7,7 +7,7 @@ use crate::load::Case;
 use crate::model::{Member, SegmentId, Slide};
 use crate::motion::MassGiven;
 use crate::motion::transient::{
-    self, Break, BreakWhen, Damping, Ending, EventKind, Frames, History, Motion, Scheme, Settled,
+    self, Break, BreakWhen, Damping, Ending, EventKind, Frames, History, Motion, Progress, Scheme, Settled, Went,
 };
 
 const AVERAGE: Scheme = Scheme::GeneralisedAlpha {
@@ -110,7 +110,8 @@ fn breaks(net: &Net, member: &str, when: BreakWhen) -> BreakGiven {
 }
 
 fn begun(plan: &Plan, reference: &ReferenceOutcome, index: usize) -> MotionBegun {
-    plan.motion(reference, index, &mut run_on).expect("it can begin")
+    plan.motion(reference, index, &mut |_, _| ControlFlow::Continue(()))
+        .expect("it can begin")
 }
 
 fn followed(plan: &Plan, reference: &ReferenceOutcome, index: usize) -> MotionFound {
@@ -121,7 +122,7 @@ fn followed(plan: &Plan, reference: &ReferenceOutcome, index: usize) -> MotionFo
 
 fn refused(plan: &Plan, index: usize) -> MotionNotBegun {
     let reference = plan.reference(&mut run_on).expect("a reference state");
-    plan.motion(&reference, index, &mut run_on)
+    plan.motion(&reference, index, &mut |_, _| ControlFlow::Continue(()))
         .expect_err("it can not begin")
 }
 
@@ -302,7 +303,7 @@ fn what_can_not_begin_is_told_in_the_ids_of_the_client() {
     let mut hasty = plan.brief().clone();
     hasty.settings.max_iterations = 1;
     hasty.motions[0].from = Some(0);
-    let refused = Plan::new(hasty).motion(&reference, 0, &mut run_on);
+    let refused = Plan::new(hasty).motion(&reference, 0, &mut |_, _| ControlFlow::Continue(()));
     let refused = refused.expect_err("not converged");
     assert!(
         matches!(
@@ -320,8 +321,71 @@ fn what_can_not_begin_is_told_in_the_ids_of_the_client() {
         "{refused}"
     );
 
-    let stopped = plan.motion(&reference, 1, &mut |_| ControlFlow::Break(()));
+    let stopped = plan.motion(&reference, 1, &mut |_, _| ControlFlow::Break(()));
     assert_eq!(stopped.expect_err("stopped"), MotionNotBegun::Cancelled);
+}
+
+/// The states that are solved before time runs, in that order.
+fn states_solved(plan: &Plan, index: usize) -> Vec<AtRest> {
+    let reference = plan.reference(&mut run_on).expect("a reference state");
+    let mut states = Vec::new();
+    let begun = plan.motion(&reference, index, &mut |state, _| {
+        states.push(state);
+        ControlFlow::Continue(())
+    });
+    begun.expect("it can begin");
+    states.dedup();
+    states
+}
+
+#[test]
+fn which_state_is_solved_is_told() {
+    let from_snow = MotionGiven {
+        from: Some(0),
+        ..motion(0.1, 0.01)
+    };
+    let let_go = MotionGiven {
+        start: StartGiven {
+            shape_of: Some(0),
+            ..StartGiven::default()
+        },
+        compare_with: Some(1),
+        ..motion(0.1, 0.01)
+    };
+    let plan = saddle_plan(vec![motion(0.1, 0.01), from_snow, let_go]);
+    assert_eq!(states_solved(&plan, 0), [AtRest::Settled]);
+    assert_eq!(states_solved(&plan, 1), [AtRest::State(Some(0)), AtRest::Settled]);
+    assert_eq!(
+        states_solved(&plan, 2),
+        [AtRest::State(Some(0)), AtRest::State(Some(1))]
+    );
+}
+
+#[test]
+fn pauses_leave_the_bits_alone() {
+    let mut given = motion(0.3, 0.002);
+    given.frames.stride = 40;
+    given.breaks = vec![breaks(&saddle().net(), "x2", BreakWhen::Time(0.1))];
+    let plan = saddle_plan(vec![given]);
+    let reference = plan.reference(&mut run_on).expect("a reference state");
+    let mut at_one_go = begun(&plan, &reference, 0);
+    let mut paused = begun(&plan, &reference, 0);
+    let (mut pauses, mut asked) = (0, 0);
+    let mut observe = |_: Progress<'_>| ControlFlow::Continue(());
+    loop {
+        let every_third = &mut || {
+            asked += 1;
+            asked % 3 == 0
+        };
+        match paused.go_on(every_third, &mut observe) {
+            Went::Frame(frame) => assert_eq!(Some(frame), at_one_go.next_frame(&mut observe)),
+            Went::Paused => pauses += 1,
+            Went::Ended => break,
+        }
+    }
+    assert!(pauses > 40, "{pauses}");
+    assert_eq!(at_one_go.next_frame(&mut observe), None);
+    assert_eq!(paused.finish(), at_one_go.finish());
 }
 
 #[test]
@@ -536,7 +600,7 @@ fn more_pieces_change_the_state_at_the_start_less() {
     let mut hasty = plan.brief().clone();
     hasty.settings.max_iterations = 0;
     let refused = Plan::new(hasty)
-        .motion(&reference, 0, &mut run_on)
+        .motion(&reference, 0, &mut |_, _| ControlFlow::Continue(()))
         .expect_err("not converged");
     assert!(
         matches!(refused, MotionNotBegun::NotDivided { pieces: 8, .. }),

@@ -49,7 +49,7 @@ pub use error::MotionError;
 pub use given::{Break, BreakWhen, Damping, Driven, Frames, Motion, Observer, Progress, Scheme, Settled};
 pub use history::{History, HistoryError};
 pub use record::{DynamicFactors, Event, EventKind, Events, Frame, Ledger, Peak, Peaks, SupportPeak};
-pub use run::{Ending, Outcome, Outlook, Running, Stuck, StuckBy, outlook, run};
+pub use run::{Ending, Outcome, Outlook, Running, Stuck, StuckBy, Went, outlook, run};
 pub use settled::settled_case;
 pub use spectrum::{SpectraGiven, Spectrum, SpectrumPeak};
 pub use watch::Watched;

@@ -157,6 +157,17 @@ pub fn run(analysis: &Arc<Analysis>, motion: &Arc<Motion>, observe: Observer<'_>
     Ok(running.finish())
 }
 
+/// How far a motion went at one go.
+#[derive(Clone, Debug, PartialEq)]
+pub enum Went {
+    /// To a frame.
+    Frame(Frame),
+    /// To a whole step without a frame.
+    Paused,
+    /// To its end.
+    Ended,
+}
+
 /// A break on its way.
 #[derive(Clone, Debug)]
 struct Breaking {
@@ -313,6 +324,15 @@ impl Running {
     ///
     /// `observe` is told of every iteration before it; when it breaks, the motion ends as cancelled within one iteration.
     pub fn next_frame(&mut self, observe: Observer<'_>) -> Option<Frame> {
+        match self.go_on(&mut || false, observe) {
+            Went::Frame(frame) => Some(frame),
+            Went::Paused | Went::Ended => None,
+        }
+    }
+
+    /// Goes on to the next frame as [`Self::next_frame`] does, or up to a whole step after which `pauses` says so: frames may
+    /// lie far apart. Where it pauses makes no difference to the bits.
+    pub fn go_on(&mut self, pauses: &mut dyn FnMut() -> bool, observe: Observer<'_>) -> Went {
         let stride = self.system.motion.frames.stride;
         while self.ending.is_none() {
             let done = self.whole.map_or(0, |whole| whole + 1);
@@ -340,10 +360,13 @@ impl Running {
             }
             // With a stride of zero the start alone.
             if is_last || done.is_multiple_of(stride) {
-                return Some(frame(&self.system, &self.moment(), done, self.ledger));
+                return Went::Frame(frame(&self.system, &self.moment(), done, self.ledger));
+            }
+            if pauses() {
+                return Went::Paused;
             }
         }
-        None
+        Went::Ended
     }
 
     fn moment(&self) -> Moment<'_> {
