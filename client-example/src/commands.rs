@@ -138,11 +138,15 @@ async fn receive(
             watch.progress(progress);
         }
         let ended = matches!(event, v1::run_response::Event::CaseSummary(_));
+        let in_motion = matches!(event, v1::run_response::Event::Motion(_));
         collector
             .take(event)
             .map_err(|odd| Broken::Odd(Stop::new(End::EngineFailed, odd.to_string())))?;
         if let Some(last) = collector.closed().last().filter(|_| ended) {
             watch.closed(last, collector.closed().len());
+        }
+        if let Some(motion) = collector.ended_motion().filter(|_| in_motion) {
+            watch.motion_ended(motion);
         }
     }
     Ok(())
@@ -371,6 +375,9 @@ fn ending(run: &Run) -> String {
     }
     if !run.diagnoses.is_empty() {
         text.push_str(&format!("\n{}", sheet::terminal(&sheet::diagnoses(run))));
+    }
+    for motion in &run.motions {
+        text.push_str(&format!("\n{}", sheet::motion_text(run, motion)));
     }
     let causes = sheet::causes(run);
     if !causes.is_empty() {

@@ -1,5 +1,7 @@
 //! Ids and remarks are foreign text: each output has its own way to keep them from meaning anything but themselves.
 
+use std::collections::BTreeSet;
+
 /// For HTML and SVG, in text and in quoted attributes.
 pub(crate) fn markup(text: &str) -> String {
     let mut escaped = String::with_capacity(text.len());
@@ -68,6 +70,22 @@ pub(crate) fn file_name(id: &str) -> String {
     let name = name.trim_start_matches('.');
     let short: String = name.chars().take(80).collect();
     if short.is_empty() { "_".to_owned() } else { short }
+}
+
+/// A name for a file made of an id that no other id has: different ids may make the same one, and upper and lower case are
+/// one to some file systems.
+pub(crate) fn free_file_name(id: &str, taken: &mut BTreeSet<String>) -> String {
+    let base = file_name(id);
+    let free = (1..).map(|number| {
+        if number == 1 {
+            base.clone()
+        } else {
+            format!("{base}-{number}")
+        }
+    });
+    free.into_iter()
+        .find(|name| taken.insert(name.to_lowercase()))
+        .expect("numbers do not run out")
 }
 
 #[cfg(test)]

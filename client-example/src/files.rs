@@ -10,7 +10,7 @@ use serde_json::{Map, Value, json};
 
 use crate::brief_file::{self, message_json};
 use crate::colour::Scale;
-use crate::escape::{csv_text, file_name};
+use crate::escape::{csv_text, free_file_name};
 use crate::run::{Column, Run, State, record};
 use crate::sheet::{self, Sheet};
 use crate::{draw, json_text, report};
@@ -63,14 +63,14 @@ pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::E
     for state in drawn.iter().take(PLANS) {
         if let Some(plan) = draw::plan(run, state, &scale) {
             put(
-                &format!("plan-{}.svg", free_name(&state.id, &mut names)),
+                &format!("plan-{}.svg", free_file_name(&state.id, &mut names)),
                 plan.as_bytes(),
             )?;
         }
     }
     let mut names = BTreeSet::new();
     for (state, path) in run.load_paths().into_iter().take(PLANS) {
-        let name = free_name(&state.id, &mut names);
+        let name = free_file_name(&state.id, &mut names);
         put(
             &format!("doubling-{name}.svg"),
             draw::doubling(run, state, &path).as_bytes(),
@@ -85,7 +85,7 @@ pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::E
         if pages.is_empty() {
             continue;
         }
-        let name = free_name(&state.id, &mut names);
+        let name = free_file_name(&state.id, &mut names);
         for (number, page) in (1..).zip(&pages) {
             put(&format!("modes-{name}-{number}.svg"), page.as_bytes())?;
         }
@@ -93,29 +93,13 @@ pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::E
     // These are long, and the page shows what they tell in other ways.
     let on_page: Vec<Sheet> = sheets
         .into_iter()
-        .filter(|sheet| !["anchors", "loss-cells", "panel-loads"].contains(&sheet.file))
+        .filter(|sheet| !["anchors", "loss-cells", "panel-loads"].contains(&sheet.file.as_ref()))
         .collect();
     put("report.html", report::page(run, &on_page, &scale).as_bytes())?;
     Ok(Written {
         files: count,
         plans_left_out: drawn.len().saturating_sub(PLANS),
     })
-}
-
-/// A name for a file made of an id that no other id has: different ids may make the same one, and upper and lower case are
-/// one to some file systems.
-fn free_name(id: &str, taken: &mut BTreeSet<String>) -> String {
-    let base = file_name(id);
-    let free = (1..).map(|number| {
-        if number == 1 {
-            base.clone()
-        } else {
-            format!("{base}-{number}")
-        }
-    });
-    free.into_iter()
-        .find(|name| taken.insert(name.to_lowercase()))
-        .expect("numbers do not run out")
 }
 
 /// Removes what the list of an earlier run names, and begins the list anew. Files that no list names are left alone.

@@ -77,6 +77,15 @@ pub(crate) fn order(number: f64) -> String {
     }
 }
 
+/// Unit for eyes, and how many of it make one of the contract's.
+pub(crate) fn for_eyes(unit: &str) -> (&str, f64) {
+    match unit {
+        "N" => ("kN", 1e-3),
+        "m" => ("mm", 1e3),
+        other => (other, 1.0),
+    }
+}
+
 /// So many of something: "1 case", "3 cases".
 pub(crate) fn counted(count: usize, noun: &str) -> String {
     if count == 1 {

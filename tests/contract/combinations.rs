@@ -515,7 +515,7 @@ fn too_many_cases_name_the_classes_that_multiply() {
 #[test]
 fn a_run_of_a_set_takes_what_its_effects_need() {
     let work = work(&yard());
-    let selected = work.select(&["loss".to_owned()]).expect("a set");
+    let selected = work.select(&["loss".to_owned()]).expect("a set").cases;
     let names: Vec<&str> = selected
         .iter()
         .map(|case| work.brief.cases[*case].name.as_str())
@@ -537,8 +537,11 @@ fn a_run_of_a_set_takes_what_its_effects_need() {
     let one = work
         .select(&["loss-003-without-bracing-effect".to_owned()])
         .expect("an effect");
-    assert_eq!(one.len(), 2);
-    assert_eq!(work.select(&["ultimate-003".to_owned()]).expect("a case").len(), 1);
+    assert_eq!(one.cases.len(), 2);
+    assert_eq!(
+        work.select(&["ultimate-003".to_owned()]).expect("a case").cases.len(),
+        1
+    );
     let unknown = work.select(&["losss".to_owned()]).expect_err("no such set");
     assert!(unknown.message.contains("Did you mean \"loss\"?"), "{unknown:?}");
 }

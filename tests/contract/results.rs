@@ -282,7 +282,7 @@ fn checks_are_told_with_demand_limit_and_source() {
 #[test]
 fn checks_judge_what_was_run() {
     let work = work(&terrace());
-    let only = work.select(&["summer".to_owned()]).expect("a case");
+    let only = work.select(&["summer".to_owned()]).expect("a case").cases;
     let events = run(&work, &only);
     let summary = summary(&events);
     assert_eq!(summary.answered, Some(v1::Share { count: 2, of: 2 }));

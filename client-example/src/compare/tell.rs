@@ -8,7 +8,7 @@ use super::brief::Change;
 use super::results::{Comparison, Number, Quantity, Said};
 use super::thresholds::Thresholds;
 use super::{Side, short};
-use crate::number::three;
+use crate::number::{for_eyes, three};
 use crate::sheet::{self, Cell, Mark, Row, Sheet, head};
 
 /// Lines of a list that a terminal shows.
@@ -227,8 +227,8 @@ fn brief_sheet(changes: &[Change]) -> Sheet {
         )
     });
     Sheet {
-        file: "brief-differs",
-        title: "Differences of the briefs",
+        file: "brief-differs".into(),
+        title: "Differences of the briefs".into(),
         heads: vec![head("place", ""), head("A", ""), head("B", "")],
         rows: rows.collect(),
         note: "",
@@ -241,8 +241,8 @@ fn said_sheet(said: &[Said]) -> Sheet {
         .iter()
         .map(|said| plain(vec![Cell::text(&said.what), cell(&said.was), cell(&said.now)], ""));
     Sheet {
-        file: "words-differ",
-        title: "Differences of verdicts, answers and findings",
+        file: "words-differ".into(),
+        title: "Differences of verdicts, answers and findings".into(),
         heads: vec![head("what", ""), head("A", ""), head("B", "")],
         rows: rows.collect(),
         note: "",
@@ -254,15 +254,6 @@ fn plain(cells: Vec<Cell>, group: &str) -> Row {
         cells,
         mark: Mark::Plain,
         group: group.to_owned(),
-    }
-}
-
-/// Unit for eyes, and how many of it make one of the contract's.
-fn shown(unit: &str) -> (&str, f64) {
-    match unit {
-        "N" => ("kN", 1e-3),
-        "m" => ("mm", 1e3),
-        other => (other, 1.0),
     }
 }
 
@@ -285,8 +276,8 @@ fn all_numbers(results: &Comparison) -> Sheet {
         )
     });
     Sheet {
-        file: "results-differ",
-        title: "Differences of results",
+        file: "results-differ".into(),
+        title: "Differences of results".into(),
         heads: vec![
             head("quantity", ""),
             head("unit", ""),
@@ -315,7 +306,7 @@ fn worst_numbers(results: &Comparison) -> Sheet {
     }
     let rows = worst.into_iter().map(|(number, count)| {
         let Quantity { name, unit, .. } = &results.quantities[number.quantity];
-        let (eyes, scale) = shown(unit);
+        let (eyes, scale) = for_eyes(unit);
         let value = |number: f64| match (name.as_str(), unit.as_str()) {
             ("slack", _) => Cell::text(if number == 0.0 { "taut" } else { "slack" }),
             // Places and lengths are metres; movements, and what differs in them, are millimetres.
@@ -351,8 +342,8 @@ fn worst_numbers(results: &Comparison) -> Sheet {
         )
     });
     Sheet {
-        file: "results-differ",
-        title: "Largest differences",
+        file: "results-differ".into(),
+        title: "Largest differences".into(),
         heads: vec![
             head("quantity", ""),
             head("id", ""),

@@ -40,7 +40,7 @@ pub(crate) fn page(run: &Run, sheets: &[Sheet], scale: &Scale) -> String {
     body.push_str(&pictures::shape(run, scale));
     for sheet in sheets {
         body.push_str(&sheet::html(sheet));
-        match sheet.file {
+        match sheet.file.as_ref() {
             // What a sheet tells in numbers is drawn behind it.
             "checks" => body.push_str(&pictures::tension_map(run)),
             "anchor-sets" => body.push_str(&pictures::together(run)),

@@ -6,14 +6,15 @@ use prost::Message as _;
 use ropewalk_api::ropewalk::v1;
 use ropewalk_api::ropewalk::v1::run_response::Event;
 
-use super::{Column, Effect, End, Member, Run, Segment, State};
+use super::motion::Motions;
+use super::{Column, Effect, End, Member, MotionRun, Run, Segment, State};
 
 /// A stream that does not keep to the contract.
 #[derive(Clone, Debug, PartialEq, thiserror::Error)]
 #[error("the engine's answer does not keep to the contract: {0}")]
 pub(crate) struct Oddity(String);
 
-fn odd(what: impl Into<String>) -> Oddity {
+pub(super) fn odd(what: impl Into<String>) -> Oddity {
     Oddity(what.into())
 }
 
@@ -41,6 +42,7 @@ pub(crate) struct Collector {
     findings: Vec<v1::Finding>,
     diagnoses: Vec<v1::StateDiagnosis>,
     modes: Vec<v1::StateModes>,
+    motions: Motions,
     sizing: Option<v1::SizingResult>,
     shape_report: Option<v1::ShapeReport>,
     effects: Vec<v1::DesignEffect>,
@@ -73,6 +75,11 @@ impl Collector {
     /// States that are closed so far.
     pub(crate) fn closed(&self) -> &[v1::CaseSummary] {
         &self.ended
+    }
+
+    /// The motion that ended last, as long as no other one has begun.
+    pub(crate) fn ended_motion(&self) -> Option<&MotionRun> {
+        self.motions.last_ended()
     }
 
     /// Takes an event.
@@ -119,8 +126,8 @@ impl Collector {
             }
             Event::LoadPicture(part) => self.take_load_picture(part)?,
             Event::ShapeReport(part) => self.take_shape_report(part)?,
-            // Motions are served by no engine yet.
-            Event::Progress(_) | Event::Motion(_) => {}
+            Event::Motion(part) => self.motions.take(part)?,
+            Event::Progress(_) => {}
         }
         Ok(())
     }
@@ -229,8 +236,10 @@ impl Collector {
         // Design effects may lack their arrays, and stand beside what has no verdict.
         self.effects.clear();
         // Arrays of states that were not closed may lack their ends; those over all states mean nothing without all.
-        let closed: Vec<&str> = self.ended.iter().map(|end| end.case.as_str()).collect();
-        self.columns.retain(|case, _| closed.contains(&case.as_str()));
+        self.motions.cut();
+        let mut closed = self.motions.keys();
+        closed.extend(self.ended.iter().map(|end| end.case.clone()));
+        self.columns.retain(|case, _| closed.contains(case));
         let count = |of: usize| u32::try_from(of).unwrap_or(u32::MAX);
         let answered: Vec<&v1::CaseSummary> = self
             .ended
@@ -295,6 +304,7 @@ impl Collector {
             findings: std::mem::take(&mut self.findings),
             diagnoses: std::mem::take(&mut self.diagnoses),
             modes: std::mem::take(&mut self.modes),
+            motions: std::mem::take(&mut self.motions).finish()?,
             sizing: self.sizing.take(),
             effects: Vec::new(),
             slides: Vec::new(),
@@ -326,6 +336,12 @@ impl Collector {
             let columns = self.checked_columns(&effect.id, &run)?;
             run.effects.push(Effect { effect, columns });
         }
+        let mut motions = std::mem::take(&mut run.motions);
+        for motion in &mut motions {
+            motion.columns = self.checked_columns(&motion.key(), &run)?;
+            motion.check_spectra()?;
+        }
+        run.motions = motions;
         let ended = std::mem::take(&mut self.ended);
         for end in ended {
             let begin = self
@@ -474,7 +490,7 @@ impl Collector {
     }
 }
 
-fn size(count: u32) -> usize {
+pub(super) fn size(count: u32) -> usize {
     usize::try_from(count).expect("this machine counts beyond 32 bits")
 }
 

@@ -3,6 +3,7 @@
 mod collect;
 mod factors;
 mod member;
+mod motion;
 mod path;
 pub(crate) mod record;
 
@@ -11,6 +12,7 @@ use std::collections::BTreeMap;
 use ropewalk_api::ropewalk::v1;
 
 pub(crate) use collect::Collector;
+pub(crate) use motion::MotionRun;
 pub(crate) use path::{Growth, LoadPath};
 
 /// A result array.
@@ -118,6 +120,8 @@ pub(crate) struct Run {
     pub(crate) diagnoses: Vec<v1::StateDiagnosis>,
     /// Natural modes of states, in order.
     pub(crate) modes: Vec<v1::StateModes>,
+    /// Motions in brief order; each has its end.
+    pub(crate) motions: Vec<MotionRun>,
     /// Sections that were chosen; none where the brief asks for none.
     pub(crate) sizing: Option<v1::SizingResult>,
     pub(crate) summary: v1::Summary,
@@ -269,5 +273,7 @@ impl Run {
     }
 }
 
+#[cfg(test)]
+pub(crate) mod motion_sample;
 #[cfg(test)]
 pub(crate) mod sample;

@@ -33,8 +33,8 @@ pub(crate) fn anchor_sets(run: &Run) -> Sheet {
         }
     }
     Sheet {
-        file: "anchor-sets",
-        title: "Anchors by set",
+        file: "anchor-sets".into(),
+        title: "Anchors by set".into(),
         heads: vec![
             head("anchor", ""),
             head("set", ""),

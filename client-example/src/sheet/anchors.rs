@@ -114,8 +114,8 @@ pub(crate) fn anchors(run: &Run) -> Sheet {
         }
     }
     Sheet {
-        file: "anchors",
-        title: "Anchors in every case",
+        file: "anchors".into(),
+        title: "Anchors in every case".into(),
         heads: vec![
             head("anchor", ""),
             head("case", ""),
@@ -201,8 +201,8 @@ pub(crate) fn anchor_peaks(run: &Run) -> Sheet {
     }
     keyed.sort_by(|a, b| b.0.total_cmp(&a.0));
     Sheet {
-        file: "anchor-peaks",
-        title: "Anchor sheet: largest pull of each anchor",
+        file: "anchor-peaks".into(),
+        title: "Anchor sheet: largest pull of each anchor".into(),
         heads: vec![
             head("anchor", ""),
             head("pull", "kN"),

@@ -50,8 +50,8 @@ fn culprit(failure: &v1::Failure) -> String {
 pub(crate) fn cases(run: &Run) -> Sheet {
     let loose = run.states.iter().any(|state| state.summary.loose_nodes_total > 0);
     Sheet {
-        file: "cases",
-        title: "Case ledger",
+        file: "cases".into(),
+        title: "Case ledger".into(),
         heads: vec![
             head("case", ""),
             page_head("what acts", ""),
@@ -201,8 +201,8 @@ pub(crate) fn sums(run: &Run) -> Sheet {
         }
     });
     Sheet {
-        file: "sums",
-        title: "Loads against supports",
+        file: "sums".into(),
+        title: "Loads against supports".into(),
         heads: vec![
             head("case", ""),
             head("loads Fx", "kN"),

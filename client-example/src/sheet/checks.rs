@@ -12,8 +12,8 @@ pub(crate) fn checks(run: &Run) -> Sheet {
     results.sort_by(|a, b| b.verdict.cmp(&a.verdict).then(b.ratio.total_cmp(&a.ratio)));
     let rows = results.iter().map(|result| row(result)).collect();
     Sheet {
-        file: "checks",
-        title: "Verdict sheet",
+        file: "checks".into(),
+        title: "Verdict sheet".into(),
         heads: vec![
             head("check", ""),
             head("over", ""),

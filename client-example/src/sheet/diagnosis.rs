@@ -13,8 +13,8 @@ const NAMED: usize = 4;
 pub(crate) fn diagnoses(run: &Run) -> Sheet {
     let rows = run.diagnoses.iter().filter_map(|part| row(run, part));
     Sheet {
-        file: "free-movements",
-        title: "Free movements and self-stress",
+        file: "free-movements".into(),
+        title: "Free movements and self-stress".into(),
         heads: vec![
             head("state", ""),
             head("what", ""),

@@ -17,8 +17,8 @@ pub(crate) fn doubling(run: &Run) -> Option<Sheet> {
         }
     }
     (!rows.is_empty()).then(|| Sheet {
-        file: "doubling",
-        title: "Does doubling double?",
+        file: "doubling".into(),
+        title: "Does doubling double?".into(),
         heads: vec![
             head("case", ""),
             head("of", ""),

@@ -20,8 +20,8 @@ pub(crate) fn effects(run: &Run) -> Option<Sheet> {
     let ratio = |effect: &v1::DesignEffect| effect.worst_ratio.unwrap_or(-1.0);
     effects.sort_by(|a, b| a.answered.cmp(&b.answered).then(ratio(b).total_cmp(&ratio(a))));
     (!effects.is_empty()).then(|| Sheet {
-        file: "design-effects",
-        title: "Design effects",
+        file: "design-effects".into(),
+        title: "Design effects".into(),
         heads: vec![
             head("design effect", ""),
             head("rule", ""),
@@ -84,8 +84,8 @@ pub(crate) fn over_linearity(run: &Run) -> Option<Sheet> {
     };
     found.sort_by(|a, b| off(b.1).total_cmp(&off(a.1)));
     (!found.is_empty()).then(|| Sheet {
-        file: "over-linearity",
-        title: "Factor on the action or on the effect",
+        file: "over-linearity".into(),
+        title: "Factor on the action or on the effect".into(),
         heads: vec![
             head("rope", ""),
             head("case", ""),

@@ -14,8 +14,8 @@ pub(crate) fn judgements(run: &Run) -> Option<Sheet> {
     }
     judged.sort_by(|a, b| b.1.ratio.total_cmp(&a.1.ratio));
     (!judged.is_empty()).then(|| Sheet {
-        file: "judgements",
-        title: "Judged one by one",
+        file: "judgements".into(),
+        title: "Judged one by one".into(),
         heads: vec![
             head("check", ""),
             head("over", ""),

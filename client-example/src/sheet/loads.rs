@@ -8,8 +8,8 @@ use crate::run::Run;
 /// One row for each action; none where the engine told of none.
 pub(crate) fn loads(run: &Run) -> Option<Sheet> {
     (!run.loads.is_empty()).then(|| Sheet {
-        file: "loads",
-        title: "Load pictures: sums of each action",
+        file: "loads".into(),
+        title: "Load pictures: sums of each action".into(),
         heads: vec![
             head("action", ""),
             head("Fx", "kN"),
@@ -114,8 +114,8 @@ pub(crate) fn panel_loads(run: &Run) -> Option<Sheet> {
         }
     }
     (!rows.is_empty()).then(|| Sheet {
-        file: "panel-loads",
-        title: "Actions panel by panel",
+        file: "panel-loads".into(),
+        title: "Actions panel by panel".into(),
         heads: vec![
             head("action", ""),
             head("panel", ""),

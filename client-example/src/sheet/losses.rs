@@ -49,8 +49,8 @@ pub(crate) fn survivors(run: &Run) -> Vec<&str> {
 /// One row for each loss; none where nothing is taken out.
 pub(crate) fn losses(run: &Run) -> Option<Sheet> {
     (!run.losses.is_empty()).then(|| Sheet {
-        file: "losses",
-        title: "Loss of members",
+        file: "losses".into(),
+        title: "Loss of members".into(),
         heads: vec![
             head("lost", ""),
             head("cases", ""),
@@ -130,8 +130,8 @@ pub(crate) fn loss_cells(run: &Run) -> Option<Sheet> {
         }
     }
     (!rows.is_empty()).then(|| Sheet {
-        file: "loss-cells",
-        title: "Loss matrix, cell by cell",
+        file: "loss-cells".into(),
+        title: "Loss matrix, cell by cell".into(),
         heads: vec![
             head("lost", ""),
             head("member", ""),

@@ -11,6 +11,7 @@ mod judgements;
 mod loads;
 mod losses;
 mod modes;
+mod motions;
 mod page;
 mod ropes;
 mod shape;
@@ -18,6 +19,8 @@ mod sizing;
 mod slides;
 mod text;
 mod verdict;
+
+use std::borrow::Cow;
 
 use crate::escape;
 use crate::number;
@@ -34,6 +37,7 @@ pub(crate) use judgements::judgements;
 pub(crate) use loads::{loads, panel_loads};
 pub(crate) use losses::{loss_cells, losses, losses_by_need, lost_words, survivors};
 pub(crate) use modes::modes;
+pub(crate) use motions::{Told, energy_words, motion_lines, motion_outcome, motion_sheets, motion_text, motions};
 pub(crate) use page::html;
 pub(crate) use ropes::{ropes, struts};
 pub(crate) use shape::shape;
@@ -210,8 +214,8 @@ pub(crate) struct Row {
 #[derive(Clone, Debug, PartialEq)]
 pub(crate) struct Sheet {
     /// Name of its CSV file, without ending.
-    pub(crate) file: &'static str,
-    pub(crate) title: &'static str,
+    pub(crate) file: Cow<'static, str>,
+    pub(crate) title: Cow<'static, str>,
     pub(crate) heads: Vec<Head>,
     pub(crate) rows: Vec<Row>,
     /// What a reader must know about the columns.

@@ -44,8 +44,8 @@ pub(crate) fn modes(run: &Run) -> Option<Sheet> {
         }
     }
     Some(Sheet {
-        file: "frequencies",
-        title: "Natural frequencies",
+        file: "frequencies".into(),
+        title: "Natural frequencies".into(),
         heads: vec![
             head("state", ""),
             head("mode", ""),

@@ -32,7 +32,7 @@ pub(crate) fn html(sheet: &Sheet) -> String {
     let mut text = format!(
         "<section id=\"{}\"><h2>{}</h2>\n",
         sheet.file,
-        escape::markup(sheet.title)
+        escape::markup(&sheet.title)
     );
     if !sheet.note.is_empty() {
         text.push_str(&format!("<p class=\"note\">{}</p>\n", escape::markup(sheet.note)));

@@ -41,7 +41,7 @@ fn rope_heads() -> Vec<Head> {
         head("case of max", ""),
         head("unstressed length", "m"),
         Head {
-            title: "0 to 100 % of breaking",
+            title: "0 to 100 % of breaking".into(),
             unit: "",
             place: Place::PageOnly,
         },
@@ -60,8 +60,8 @@ pub(crate) fn ropes(run: &Run) -> Sheet {
     }
     keyed.sort_by(|a, b| a.0.cmp(&b.0).then(b.1.total_cmp(&a.1)));
     Sheet {
-        file: "cables",
-        title: "Rope ledger",
+        file: "cables".into(),
+        title: "Rope ledger".into(),
         heads: rope_heads(),
         rows: keyed.into_iter().map(|(_, _, row)| row).collect(),
         note: "Tensions over all segments of a rope and all answered cases, the reference state among them. \
@@ -175,8 +175,8 @@ pub(crate) fn struts(run: &Run) -> Sheet {
         .map(|strut| strut_row(run, strut, lengths.as_ref().map(|[_, struts]| struts[strut])))
         .collect();
     Sheet {
-        file: "struts",
-        title: "Masts and struts",
+        file: "struts".into(),
+        title: "Masts and struts".into(),
         heads: vec![
             head("strut", ""),
             head("role", ""),

@@ -13,8 +13,8 @@ pub(crate) fn shape(run: &Run) -> Option<Sheet> {
     rows.extend(report.fights.iter().map(|fight| fight_row(report, fight)));
     rows.extend(report.left.iter().map(left));
     (!rows.is_empty()).then(|| Sheet {
-        file: "shape",
-        title: "Shape report: what was wanted of the reference state",
+        file: "shape".into(),
+        title: "Shape report: what was wanted of the reference state".into(),
         heads: vec![
             head("of", ""),
             head("what", ""),

@@ -32,8 +32,8 @@ pub(crate) fn sized(sizing: &v1::SizingResult) -> Sheet {
         }
     });
     Sheet {
-        file: "sizing",
-        title: "Chosen sections",
+        file: "sizing".into(),
+        title: "Chosen sections".into(),
         heads: vec![
             head("choice", ""),
             page_head("members", ""),
@@ -75,8 +75,8 @@ pub(crate) fn sizing_rounds(sizing: &v1::SizingResult) -> Sheet {
         }
     });
     Sheet {
-        file: "sizing-rounds",
-        title: "Sections that were tried",
+        file: "sizing-rounds".into(),
+        title: "Sections that were tried".into(),
         heads: vec![
             head("why", ""),
             head("positions in the lists", ""),

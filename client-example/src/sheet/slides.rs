@@ -36,8 +36,8 @@ pub(crate) fn slides(run: &Run) -> Option<Sheet> {
     });
     let rows: Vec<Row> = rows.collect();
     (!rows.is_empty()).then(|| Sheet {
-        file: "slides",
-        title: "Ropes that slide",
+        file: "slides".into(),
+        title: "Ropes that slide".into(),
         heads: vec![head("rope", ""), head("at node", ""), head("case", ""), head("passed", "mm")],
         rows,
         note: "Unstressed rope that has passed the node since the reference state, positive towards the end of the rope.",

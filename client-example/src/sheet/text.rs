@@ -12,6 +12,11 @@ const ROWS: usize = 40;
 
 /// The sheet as lines; long groups are cut, and what is left out is told.
 pub(crate) fn terminal(sheet: &Sheet) -> String {
+    terminal_up_to(sheet, ROWS)
+}
+
+/// The sheet as lines, so many rows of it at most.
+pub(crate) fn terminal_up_to(sheet: &Sheet, rows: usize) -> String {
     let columns: Vec<usize> = (0..sheet.heads.len())
         .filter(|&column| sheet.heads[column].place == Place::Everywhere)
         .collect();
@@ -20,7 +25,7 @@ pub(crate) fn terminal(sheet: &Sheet) -> String {
     let mut left_out: Vec<(&str, usize)> = Vec::new();
     for row in &sheet.rows {
         let shown = shown_of.entry(row.group.as_str()).or_default();
-        if *shown >= ROWS_A_GROUP && !row.group.is_empty() || grid.len() >= ROWS {
+        if *shown >= ROWS_A_GROUP && !row.group.is_empty() || grid.len() >= rows {
             match left_out.iter_mut().find(|(group, _)| *group == row.group) {
                 Some((_, count)) => *count += 1,
                 None => left_out.push((row.group.as_str(), 1)),

@@ -4,6 +4,7 @@ use ropewalk_api::ropewalk::v1;
 
 use crate::number::{counted, order, percent, three};
 use crate::run::Run;
+use crate::sheet::motion_outcome;
 
 /// A verdict as a word.
 pub(crate) fn verdict_word(verdict: v1::Verdict) -> &'static str {
@@ -85,6 +86,8 @@ pub(crate) fn why(run: &Run) -> String {
                 };
                 let states = counted(run.states.len(), "state");
                 format!("{} of {states} without an answer: \"{first}\"{others}", none.len())
+            } else if let Some(motion) = run.motions.iter().find(|motion| !motion.finished()) {
+                format!("motion \"{}\": {}", motion.id, motion_outcome(motion))
             } else {
                 "an answer did not pass the audit, or a case was not run".to_owned()
             }

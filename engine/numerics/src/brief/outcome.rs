@@ -195,4 +195,6 @@ pub enum Task {
     Reference,
     /// A case, by index.
     Case(usize),
+    /// A motion, by index.
+    Motion(usize),
 }

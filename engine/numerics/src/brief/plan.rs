@@ -48,9 +48,12 @@ impl Plan {
         &self.brief
     }
 
-    /// The parts of the work: the reference state first, since every case starts from it, then the cases in order.
+    /// The parts of the work: the reference state first, since every case starts from it, then the cases in order, then the
+    /// motions.
     pub fn tasks(&self) -> impl Iterator<Item = Task> + use<> {
-        std::iter::once(Task::Reference).chain((0..self.brief.cases.len()).map(Task::Case))
+        let cases = (0..self.brief.cases.len()).map(Task::Case);
+        let motions = (0..self.brief.motions.len()).map(Task::Motion);
+        std::iter::once(Task::Reference).chain(cases).chain(motions)
     }
 
     /// What the work will cost, roughly.
@@ -142,6 +145,20 @@ impl Plan {
         case: usize,
         observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
     ) -> CaseOutcome {
+        self.answer(reference, case, true, observe).0
+    }
+
+    /// The same, and what the state carries, water on skins included.
+    ///
+    /// `look_into`: whether everything is worked out that the brief wants to know of the state; where not, it only has its
+    /// answer, with the same bits.
+    pub(super) fn answer(
+        &self,
+        reference: &ReferenceOutcome,
+        case: usize,
+        look_into: bool,
+        observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
+    ) -> (CaseOutcome, Case) {
         let Brief {
             net,
             actions,
@@ -153,7 +170,8 @@ impl Plan {
         } = &*self.brief;
         let given = &cases[case];
         let index = case;
-        let asked = diagnosis.as_ref().filter(|asked| asked.cases.contains(&case));
+        let diagnosis = diagnosis.as_ref().filter(|_| look_into);
+        let asked = diagnosis.filter(|asked| asked.cases.contains(&case));
         let settings = &Settings {
             load_steps: given.load_steps.unwrap_or(settings.load_steps),
             ..*settings
@@ -187,7 +205,7 @@ impl Plan {
                 result.ponding = ponding;
                 let of_pond = result.ponding.as_ref().and_then(|ponding| cause_of_pond(net, ponding));
                 let grows = result.ponding.as_ref().is_some_and(|p| p.end == PondingEnd::Growing);
-                if solution.termination == Termination::Converged && !grows {
+                if look_into && solution.termination == Termination::Converged && !grows {
                     result.certificate = self.certificate(&carried, &bare);
                 }
                 let cause = match solution.termination {
@@ -213,21 +231,23 @@ impl Plan {
                         .map(|least| least.stiffness);
                     result.diagnosis = diagnose(&self.analysis, asked, &case, &result, before).map(Box::new);
                 }
-                let asked = modes.as_ref().filter(|asked| asked.cases.binary_search(&index).is_ok());
+                let modes = modes.as_ref().filter(|_| look_into);
+                let asked = modes.filter(|asked| asked.cases.binary_search(&index).is_ok());
                 if let Some(asked) = asked.filter(|_| solution.termination == Termination::Converged && !grows) {
                     let modes = modes_about(&self.analysis, asked, &case, &result, &reference.state);
                     result.modes = Some(modes);
                 }
-                CaseOutcome::State {
+                let outcome = CaseOutcome::State {
                     solution,
                     result: Box::new(result),
                     cause,
-                }
+                };
+                (outcome, carried)
             }
-            Err(error) => CaseOutcome::None {
-                cause: cause_of_error(net, &case, &reference.state.positions, &error),
-                error,
-            },
+            Err(error) => {
+                let cause = cause_of_error(net, &case, &reference.state.positions, &error);
+                (CaseOutcome::None { error, cause }, case)
+            }
         }
     }
 

@@ -37,6 +37,8 @@ pub enum Caution {
     },
     /// The shape was corrected as an elastic net, so that given force densities are met nearly only.
     ShapeCorrected,
+    /// Motions were run: no check judges them, and some of what they say is assumed.
+    MotionsNotJudged,
 }
 
 /// Strain beyond which a unit slip is likelier than a rope: steel breaks at about 0.02.
@@ -79,6 +81,11 @@ impl fmt::Display for Caution {
             Self::ShapeCorrected => f.write_str(
                 "the shape found was corrected as an elastic net: given force densities are met nearly only",
             ),
+            Self::MotionsNotJudged => f.write_str(
+                "motions are not judged by checks: an engineer compares their peaks with resistances; damping and times of \
+                 release are as given, mass is lumped at nodes, loads have none of their own, skins only pass load, and \
+                 nothing slides",
+            ),
         }
     }
 }
@@ -88,7 +95,7 @@ impl fmt::Display for Caution {
 pub struct Summary {
     /// The word on top.
     pub verdict: Verdict,
-    /// The four facts behind it.
+    /// The facts behind it.
     pub facts: Facts,
     /// The checks, in the order of the brief.
     pub checks: Vec<CheckResult>,

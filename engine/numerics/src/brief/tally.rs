@@ -76,6 +76,16 @@ pub struct Tally {
     factor_rules: Option<FactorRules>,
     movements: MovementTally,
     anchors: AnchorTally,
+    /// One entry a motion of the brief.
+    motions: Vec<Motion>,
+}
+
+/// What is known of a motion of the brief.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+enum Motion {
+    NotOfTheRun,
+    Awaited,
+    Finished,
 }
 
 impl Tally {
@@ -124,7 +134,29 @@ impl Tally {
             factor_rules: None,
             movements: MovementTally::new(brief.net.nodes().len()),
             anchors: AnchorTally::new(supports.map(|support| (support.node, support.force))),
+            motions: vec![Motion::NotOfTheRun; brief.motions.len()],
             brief,
+        }
+    }
+
+    /// The same with motions to be run, by index; each that is never added counts as not finished.
+    #[must_use]
+    pub fn with_motions(mut self, motions: &[usize]) -> Self {
+        for motion in motions {
+            self.motions[*motion] = Motion::Awaited;
+        }
+        if !motions.is_empty() && !self.cautions.contains(&Caution::MotionsNotJudged) {
+            self.cautions.push(Caution::MotionsNotJudged);
+        }
+        self
+    }
+
+    /// Takes in a motion of the run. Motions of no run are not looked at.
+    ///
+    /// `finished`: whether it was followed to its end.
+    pub fn add_motion(&mut self, motion: usize, finished: bool) {
+        if finished && self.motions[motion] == Motion::Awaited {
+            self.motions[motion] = Motion::Finished;
         }
     }
 
@@ -257,7 +289,14 @@ impl Tally {
             of: cases.iter().filter(|case| **case != Standing::NotOfTheRun).count(),
         };
         let audited = cases.iter().filter(|case| **case == Standing::Sound).count();
-        let facts = Facts::new(answered, audited, &checks);
+        let are = |wanted: fn(&Motion) -> bool| self.motions.iter().filter(|motion| wanted(motion)).count();
+        let facts = Facts {
+            motions: Share {
+                count: are(|motion| *motion == Motion::Finished),
+                of: are(|motion| *motion != Motion::NotOfTheRun),
+            },
+            ..Facts::new(answered, audited, &checks)
+        };
         Summary {
             verdict: if self.reference_audited {
                 facts.verdict()

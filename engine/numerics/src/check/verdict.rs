@@ -1,4 +1,4 @@
-//! The four facts of a run, and the word on top.
+//! The facts of a run, and the word on top.
 
 use super::CheckResult;
 
@@ -11,7 +11,7 @@ pub enum Verdict {
     NotJudged,
     /// A limit is exceeded.
     Exceeds,
-    /// A state that was asked for was not found, or the audit does not confirm it.
+    /// A state that was asked for was not found, or the audit does not confirm it; or a motion was not followed to its end.
     NoAnswer,
 }
 
@@ -24,7 +24,7 @@ pub struct Share {
     pub of: usize,
 }
 
-/// The four facts of a run.
+/// The facts of a run.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Facts {
     /// Cases with a state within tolerance.
@@ -35,6 +35,8 @@ pub struct Facts {
     pub judged: Share,
     /// Judged parts that keep within their limit, of those judged.
     pub passing: Share,
+    /// Motions that were followed to their end, of those asked for.
+    pub motions: Share,
 }
 
 impl Facts {
@@ -58,6 +60,7 @@ impl Facts {
                 count: checks.iter().flat_map(|c| &c.judgements).filter(|j| j.passes).count(),
                 of: judged,
             },
+            motions: Share::default(),
         }
     }
 
@@ -65,7 +68,7 @@ impl Facts {
     #[must_use]
     pub fn verdict(&self) -> Verdict {
         let falls_short = |share: Share| share.count < share.of;
-        if falls_short(self.answered) || falls_short(self.audited) {
+        if falls_short(self.answered) || falls_short(self.audited) || falls_short(self.motions) {
             Verdict::NoAnswer
         } else if falls_short(self.passing) {
             Verdict::Exceeds
@@ -89,6 +92,7 @@ mod tests {
             audited: share(2, 2),
             judged: share(5, 5),
             passing: share(5, 5),
+            motions: share(1, 1),
         };
         assert_eq!(facts.verdict(), Verdict::Passes);
         facts.judged = share(4, 5);
@@ -97,6 +101,9 @@ mod tests {
         facts.passing = share(3, 4);
         assert_eq!(facts.verdict(), Verdict::Exceeds);
         facts.audited = share(1, 2);
+        assert_eq!(facts.verdict(), Verdict::NoAnswer);
+        facts.audited = share(2, 2);
+        facts.motions = share(0, 1);
         assert_eq!(facts.verdict(), Verdict::NoAnswer);
         assert!(Verdict::NoAnswer > Verdict::Exceeds && Verdict::NotJudged > Verdict::Passes);
     }

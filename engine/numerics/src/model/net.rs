@@ -400,6 +400,75 @@ impl Net {
         Ok(self)
     }
 
+    /// The same net with segments of ropes divided into straight ones in a row, none of which hangs.
+    ///
+    /// Nodes keep their indices; those between the pieces come after them, segment by segment, free and without a position. No
+    /// id that a client may give has a slash in it, as their names have.
+    ///
+    /// `pieces`: one a segment, at least 1; 1 for struts and where a rope slides.
+    ///
+    /// # Panics
+    /// If there are not as many numbers as segments, or a strut or a piece of a sliding rope is to be divided.
+    #[must_use]
+    pub fn divided(&self, pieces: &[usize]) -> Self {
+        assert_eq!(pieces.len(), self.segments.len(), "one number a segment");
+        let mut net = self.clone();
+        (net.segments, net.reaches) = (Vec::new(), Vec::new());
+        for (cable, before) in net.cables.iter_mut().zip(&self.cables) {
+            let (first_segment, first_reach) = (net.segments.len(), net.reaches.len());
+            cable.path.truncate(1);
+            for reach in &self.reaches[before.reaches.clone()] {
+                for e in reach.segments.clone() {
+                    assert!(!reach.slides() || pieces[e] == 1, "a sliding rope stays whole");
+                    let segment = &self.segments[e];
+                    for piece in 1..=pieces[e].max(1) {
+                        let from = cable.path[cable.path.len() - 1];
+                        let to = if piece < pieces[e] {
+                            let name = format!("{}/{}", cable.name, net.nodes.len());
+                            net.nodes.push(Node {
+                                name,
+                                position: None,
+                                attached_mass: 0.0,
+                            });
+                            NodeId::new(net.nodes.len() - 1)
+                        } else {
+                            segment.ends[1]
+                        };
+                        cable.path.push(to);
+                        if !reach.slides() || e == reach.segments.start {
+                            net.reaches.push(Reach {
+                                segments: net.segments.len()..net.segments.len(),
+                                ..reach.clone()
+                            });
+                        }
+                        let of_segment = net.reaches.len() - 1;
+                        net.segments.push(Segment {
+                            ends: [from, to],
+                            length: of_segment,
+                            hangs: false,
+                            ..*segment
+                        });
+                        net.reaches[of_segment].segments.end = net.segments.len();
+                    }
+                }
+            }
+            cable.segments = first_segment..net.segments.len();
+            cable.reaches = first_reach..net.reaches.len();
+        }
+        for (index, strut) in net.struts.iter_mut().enumerate() {
+            let e = strut.segment.index();
+            assert_eq!(pieces[e], 1, "a strut stays whole");
+            strut.segment = SegmentId::new(net.segments.len());
+            net.segments.push(Segment {
+                length: net.reaches.len() + index,
+                ..self.segments[e]
+            });
+        }
+        net.support_of_node.resize(net.nodes.len(), None);
+        net.branch_node = branch_node_matrix(net.nodes.len(), &net.segments);
+        net
+    }
+
     /// Nodes in the order given.
     #[must_use]
     pub fn nodes(&self) -> &[Node] {

@@ -28,6 +28,13 @@ pub struct MassGiven {
     pub air: f64,
 }
 
+/// Mass of every node that moves alike in every direction (kg): that of the net, without what is taken out, and what is given
+/// besides; air left out.
+#[must_use]
+pub fn nodal_masses(structure: &Structure, given: &MassGiven, about: &About<'_>) -> Vec<f64> {
+    Masses::new(structure, given, about).alike
+}
+
 /// Masses of the nodes.
 #[derive(Clone, Debug, PartialEq)]
 pub(super) struct Masses {

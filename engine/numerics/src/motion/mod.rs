@@ -10,7 +10,9 @@
 //! | `pencil` | `K` and `M` without what has no stiffness; shifts; counts of roots by signs of pivots |
 //! | `krylov` | the lowest roots by shift and invert |
 //! | `modes` | all of it about one state, and what is told of it |
+//! | `division` | hanging ropes as straight pieces, for motion in time |
 
+mod division;
 mod krylov;
 mod mass;
 mod modes;
@@ -20,5 +22,6 @@ pub mod transient;
 #[cfg(test)]
 mod tests;
 
-pub use mass::MassGiven;
+pub use division::Division;
+pub use mass::{MassGiven, nodal_masses};
 pub use modes::{About, Mode, ModeKind, Modes, ModesError, RootCount, natural_modes};

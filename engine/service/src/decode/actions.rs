@@ -4,15 +4,16 @@ use nalgebra::Vector3;
 use ropewalk_api::ropewalk::v1;
 use ropewalk_api::ropewalk::v1::load::Kind;
 use ropewalk_numerics::load::{Action, Load, Scope as Segments};
-use ropewalk_numerics::model::{Area, NodeId, SegmentId};
+use ropewalk_numerics::model::{NodeId, SegmentId};
 
 use super::adjusters::Adjusters;
+use super::coefficients;
 use super::findings::{Findings, Path};
 use super::names::{Names, Thing};
 use super::net::NetDraft;
 use super::numbers::{
-    DRAG_COEFFICIENT, FORCE, FORCE_PER_LENGTH, ICE_DENSITY, ICE_THICKNESS, MOVEMENT, Of, PRESSURE,
-    PRESSURE_COEFFICIENT, PRESTRESS_SHARE, TEMPERATURE_CHANGE, WIND_PRESSURE,
+    DRAG_COEFFICIENT, FORCE, FORCE_PER_LENGTH, ICE_DENSITY, ICE_THICKNESS, MOVEMENT, Of, PRESSURE, PRESTRESS_SHARE,
+    TEMPERATURE_CHANGE, WIND_PRESSURE,
 };
 use super::reasons;
 use super::resolved::Resolved;
@@ -239,65 +240,13 @@ impl Reader<'_, '_> {
         let field = at.field("pressure_pa");
         let pressure = self.findings.number(&field, of, &PRESSURE, load.pressure_pa);
         self.doubt_pressure(load.pressure_pa, &field);
-        let list = at.field("coefficients");
-        let mut coefficients = Vec::with_capacity(load.coefficients.len());
-        let mut complete = true;
-        for (name, value) in &load.coefficients {
-            let at = list.key(name);
-            let value = self.findings.number(&at, of, &PRESSURE_COEFFICIENT, *value);
-            let area = match self.net.names.find(self.findings, &at, "zone", name) {
-                Some(Thing::Zone(zone)) => Some(Area::Zone(zone)),
-                Some(Thing::Skin(skin)) => Some(Area::Skin(skin)),
-                Some(other) => {
-                    self.findings.error(
-                        reasons::WRONG_KIND,
-                        &at,
-                        name,
-                        format!(
-                            "{} is a {}, and coefficients are of zones and skins",
-                            Quoted(name),
-                            other.kind()
-                        ),
-                        "name zones or skins",
-                    );
-                    None
-                }
-                None => None,
-            };
-            complete &= area.is_some() && value.is_some();
-            coefficients.extend(area.zip(value));
-        }
-        // Brief order: the first zone around a panel is the one that comes first there.
-        coefficients.sort_by_key(|(area, _)| match area {
-            Area::Zone(zone) => (0, *zone),
-            Area::Skin(skin) => (1, *skin),
-        });
-        let elsewhere = match load.elsewhere {
-            Some(value) => {
-                let value = self
-                    .findings
-                    .number(&at.field("elsewhere"), of, &PRESSURE_COEFFICIENT, value);
-                complete &= value.is_some();
-                value
-            }
-            None => None,
-        };
-        let message = &self.net.message;
-        if (load.coefficients.is_empty() && load.elsewhere.is_none())
-            || (message.skins.is_empty() && message.panels.is_empty())
-        {
-            self.findings.error(
-                reasons::COVERS_NOTHING,
-                &list,
-                self.action,
-                format!("a pressure of action {} acts on nothing", Quoted(self.action)),
-                "give coefficients of zones or skins, or elsewhere, in a net that has skins",
-            );
-            return None;
-        }
+        let what = format!("a pressure of {of}");
+        let given = (&load.coefficients, load.elsewhere);
+        let coefficients = coefficients::read(given, &what, of, at, self.net, self.findings);
+        let (coefficients, elsewhere) = coefficients?;
         Some(Load::OnSurface {
             pressure: pressure?,
-            coefficients: complete.then_some(coefficients)?,
+            coefficients,
             elsewhere,
         })
     }

@@ -48,6 +48,14 @@ pub(crate) struct Cases<'a> {
     made: BTreeMap<String, Made>,
 }
 
+/// What an id stands for.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) enum Known {
+    Case(usize),
+    Set,
+    Effect,
+}
+
 /// What an id that a rule made stands for.
 #[derive(Clone, Copy, Debug)]
 enum Made {
@@ -248,6 +256,47 @@ impl<'a> Cases<'a> {
         Some(of_set.map(|(case, _)| case).collect())
     }
 
+    /// What an id stands for, if it is taken.
+    pub(crate) fn known(&self, id: &str) -> Option<Known> {
+        if let Some(case) = self.names.get(id) {
+            return Some(Known::Case(case));
+        }
+        match self.made.get(id) {
+            Some(Made::Case(case)) => Some(Known::Case(*case)),
+            Some(Made::Effect(_)) => Some(Known::Effect),
+            None => self.sets.get(id).map(|()| Known::Set),
+        }
+    }
+
+    /// The one case with a name, by hand or made; tells sets, design effects and unknown names.
+    pub(crate) fn one(&self, name: &str, at: &Path<'_>, findings: &mut Findings) -> Option<usize> {
+        let what = match self.known(name) {
+            Some(Known::Case(case)) => return Some(case),
+            Some(Known::Set) => "set",
+            Some(Known::Effect) => "design effect",
+            None => {
+                let mut cases: Names<'_, ()> = Names::new("cases");
+                let made = self.made.iter().filter(|(_, made)| matches!(made, Made::Case(_)));
+                let made = made.map(|(id, _)| id.as_str());
+                for known in self.names.order().iter().copied().chain(made) {
+                    cases.insert(known, ());
+                }
+                cases.unknown(findings, at, "case", name);
+                return None;
+            }
+        };
+        findings
+            .error(
+                reasons::WRONG_KIND,
+                at,
+                name,
+                format!("{} is a {what}, and one state is wanted here", Quoted(name)),
+                "name a case",
+            )
+            .value(name);
+        None
+    }
+
     /// The case with a name; tells if there is none.
     pub(crate) fn case(&self, name: &str, at: &Path<'_>, findings: &mut Findings) -> Option<usize> {
         self.names.find(findings, at, "case", name)
@@ -272,8 +321,14 @@ impl<'a> Cases<'a> {
         both.unknown(findings, at, "set or case", name);
     }
 
-    /// What the cases leave out or say twice.
-    pub(crate) fn doubts(&self, context: &Context<'_, 'a>, factors: Option<&Factors<'a>>, findings: &mut Findings) {
+    /// What the cases leave out or say twice. `driven`: actions that act in motions.
+    pub(crate) fn doubts(
+        &self,
+        context: &Context<'_, 'a>,
+        factors: Option<&Factors<'a>>,
+        driven: &[usize],
+        findings: &mut Findings,
+    ) {
         let Context {
             net, actions, under, ..
         } = *context;
@@ -301,7 +356,7 @@ impl<'a> Cases<'a> {
         }
         self.own_weight(net, actions, findings);
         self.temperature(net, actions, findings);
-        self.unused(actions, under, findings);
+        self.unused(actions, &[under, driven].concat(), findings);
         self.permanent(actions, under, factors, findings);
     }
 
@@ -433,9 +488,9 @@ impl<'a> Cases<'a> {
         }
     }
 
-    fn unused(&self, actions: &Actions<'_>, under: &[usize], findings: &mut Findings) {
+    fn unused(&self, actions: &Actions<'_>, others: &[usize], findings: &mut Findings) {
         let mut acting = self.acting(actions);
-        under.iter().for_each(|action| acting[*action] = true);
+        others.iter().for_each(|action| acting[*action] = true);
         let idle = |action: &usize| !acting[*action];
         let unused: Vec<&str> = (0..actions.messages.len())
             .filter(idle)

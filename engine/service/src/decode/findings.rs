@@ -163,7 +163,8 @@ impl Findings {
         self.add(v1::FindingSeverity::Note, reason, path, id, message.into(), cure.into())
     }
 
-    fn add(
+    /// Something of a severity that depends.
+    pub(crate) fn add(
         &mut self,
         severity: v1::FindingSeverity,
         reason: &'static str,

@@ -12,14 +12,17 @@ use crate::config::Limits;
 const MOST_AREAS: u32 = 1000;
 /// Classes of actions: each is compared with each where they make too many cases.
 const MOST_CLASSES: u32 = 1000;
+/// Motions of a brief.
+const MOST_MOTIONS: u32 = 100;
 /// Bytes of one element of a list: it must fit a message from the server, which stays below 1 MiB.
-const LARGEST_ELEMENT: usize = 900 * 1024;
+pub(super) const LARGEST_ELEMENT: usize = 900 * 1024;
 /// Bytes of what a frozen brief says in one message: title, remarks, labels, the actions of the reference state, factors.
 const LARGEST_HEAD: usize = 128 * 1024;
 
 /// Refuses lists that are too long, before anything is made of them. Answers whether to go on.
 pub(crate) fn counts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings) -> bool {
     let mut fits = most(findings, "cases", "cases", brief.cases.len(), limits.cases);
+    fits &= most(findings, "motions", "motions", brief.motions.len(), MOST_MOTIONS);
     let rules = brief.combinations.len();
     fits &= most(findings, "combinations", "rules", rules, limits.cases);
     let classes = brief.factors.as_ref().map_or(0, |factors| factors.classes.len());

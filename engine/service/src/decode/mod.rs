@@ -6,7 +6,8 @@
 //! | `reading`, `work` | the whole brief, and what comes of it |
 //! | `findings`, `reasons`, `numbers`, `names` | what is told, where, and why |
 //! | `net`, `places`, `sections`, `supports`, `stretch`, `slides`, `adjusters`, `scope`, `surface` | the net |
-//! | `prestress`, `wish`, `actions`, `factors`, `combinations`, `cases`, `solving` | what is wanted of it |
+//! | `prestress`, `wish`, `actions`, `coefficients`, `factors`, `combinations`, `cases`, `solving` | what is wanted of it |
+//! | `motions`, `driven`, `histories`, `breaks`, `motion_start`, `watched`, `motion_net`, `motion_words` | motions in time |
 //! | `checks`, `check_kinds`, `editions`, `diagnosis`, `modes`, `sizing` | what it is judged and sized by |
 //! | `plausible`, `frozen`, `accepted` | doubts |
 //! | `limits`, `not_served` | what is refused |
@@ -16,19 +17,27 @@
 mod accepted;
 mod actions;
 mod adjusters;
+mod breaks;
 mod cases;
 mod check_kinds;
 mod checks;
+mod coefficients;
 mod combinations;
 mod diagnosis;
 mod digest;
+mod driven;
 mod editions;
 mod factors;
 mod findings;
 mod frozen;
+mod histories;
 mod keep;
 mod limits;
 mod modes;
+mod motion_net;
+mod motion_start;
+mod motion_words;
+mod motions;
 mod names;
 mod net;
 mod not_served;
@@ -48,6 +57,7 @@ mod stretch;
 mod supports;
 mod surface;
 mod targets;
+mod watched;
 mod wish;
 mod work;
 
@@ -58,7 +68,7 @@ pub(crate) use editions::of as edition_of;
 pub use keep::Kept;
 pub(crate) use net::STANDARD_GRAVITY;
 pub use not_served::{NOT_SERVED, SERVED};
-pub use reading::{Reading, read};
+pub use reading::{Reading, read, read_refusing};
 pub use sizing::SizingWork;
 pub(crate) use surface::WithoutValue;
-pub use work::Work;
+pub use work::{Selected, Work};

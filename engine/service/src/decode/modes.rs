@@ -48,18 +48,7 @@ pub(crate) fn read(
             Some(default.count)
         }
     };
-    let field = at.field("air_mass_kg_per_m2");
-    let air = findings.number_or(&field, OF, &AIR_MASS, modes.air_mass_kg_per_m2, 0.0);
-    let has_panels = !context.net.message.skins.is_empty() || !context.net.message.panels.is_empty();
-    if air.is_some_and(|air| air > 0.0) && !has_panels {
-        findings.doubt(
-            reasons::DATA_NOT_USED,
-            &field,
-            "",
-            "air is to move with panels, and the net has none",
-            "give skins, or put the mass of air on cables in modes.added",
-        );
-    }
+    let air = read_air(modes.air_mass_kg_per_m2, OF, &at, context.net, findings);
     let limits = limits(modes, &at, &default, findings, resolved);
     let mut masses = MassGiven {
         air: air.unwrap_or(0.0),
@@ -67,7 +56,8 @@ pub(crate) fn read(
     };
     let list = at.field("added");
     for (position, added) in modes.added.iter().enumerate() {
-        read_added(added, &list.number(position), context, &mut masses, findings);
+        let at = list.number(position);
+        read_added(added, &at, context.net, context.scopes, &mut masses, findings);
     }
     let (reference, cases) = states?;
     let (wind_study_below, flexible_below) = limits?;
@@ -121,10 +111,34 @@ fn limits(
     Some((study, below))
 }
 
-fn read_added(
+/// Mass of the air that moves with panels (kg/m²).
+pub(super) fn read_air(
+    given: Option<f64>,
+    of: Of<'_>,
+    at: &Path<'_>,
+    net: &NetDraft<'_>,
+    findings: &mut Findings,
+) -> Option<f64> {
+    let field = at.field("air_mass_kg_per_m2");
+    let air = findings.number_or(&field, of, &AIR_MASS, given, 0.0)?;
+    if air > 0.0 && !net.has_panels() {
+        findings.doubt(
+            reasons::DATA_NOT_USED,
+            &field,
+            of.id,
+            "air is to move with panels, and the net has none",
+            format!("give skins, or put the mass of air on cables in {at}.added"),
+        );
+    }
+    Some(air)
+}
+
+/// Reads what lies on nodes, members or areas, into `masses`.
+pub(super) fn read_added(
     added: &v1::AddedMass,
     at: &Path<'_>,
-    context: &Context<'_, '_>,
+    net: &NetDraft<'_>,
+    scopes: &Scopes,
     masses: &mut MassGiven,
     findings: &mut Findings,
 ) {
@@ -155,12 +169,12 @@ fn read_added(
         }
     };
     let mass = findings.number(&at.field(name), of, quantity, value);
-    let scope = context.scopes.of(context.net, &added.on, &on, allowed, findings);
+    let scope = scopes.of(net, &added.on, &on, allowed, findings);
     let Some(mass) = mass else { return };
     match added.mass {
         Some(Mass::MassKg(_)) => masses.nodes.extend(scope.nodes().map(|node| (NodeId::new(node), mass))),
         Some(Mass::MassPerLengthKgPerM(_)) => {
-            let segments = scope.segments(context.net).into_iter();
+            let segments = scope.segments(net).into_iter();
             masses
                 .segments
                 .extend(segments.map(|segment| (SegmentId::new(segment), mass)));

@@ -134,6 +134,11 @@ impl<'a> NetDraft<'a> {
         net
     }
 
+    /// Whether it has panels, or skins that span them.
+    pub(crate) fn has_panels(&self) -> bool {
+        !self.message.skins.is_empty() || !self.message.panels.is_empty()
+    }
+
     fn read_scalars(&mut self, findings: &mut Findings, resolved: &mut Resolved) {
         let of = Of::new("net", "");
         let at = Path::root("net.gravity_m_per_s2");

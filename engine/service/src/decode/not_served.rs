@@ -58,9 +58,12 @@ pub const SERVED: &[&str] = &[
 /// Parts of a brief that are refused.
 pub const NOT_SERVED: &[&str] = &["stored_net", "motions", "stages", "workshop", "readings", "variants"];
 
-/// Refuses every part of the brief that is not served.
-pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
-    let mut part = |path: &Path<'_>, id: &str| {
+/// Refuses these parts of the brief, wherever it has them.
+pub(crate) fn refuse(brief: &v1::Brief, refused: &[&str], findings: &mut Findings) {
+    let mut part = |name: &str, path: &Path<'_>, id: &str| {
+        if !refused.contains(&name) {
+            return;
+        }
         findings
             .error(
                 reasons::NOT_SERVED,
@@ -72,7 +75,7 @@ pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
             .value(id);
     };
     match &brief.net_source {
-        Some(v1::brief::NetSource::StoredNet(digest)) => part(&Path::root("stored_net"), digest),
+        Some(v1::brief::NetSource::StoredNet(digest)) => part("stored_net", &Path::root("stored_net"), digest),
         Some(v1::brief::NetSource::Net(_)) | None => {}
     }
     for (list, ids) in [
@@ -84,16 +87,12 @@ pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
         ("readings", brief.readings.iter().map(|r| r.id.as_str()).collect()),
         ("variants", brief.variants.iter().map(|v| v.id.as_str()).collect()),
     ] {
-        elements(list, &ids, &mut part);
+        let elements = Path::root(list);
+        for (number, id) in ids.iter().enumerate() {
+            part(list, &elements.element(id, number), id);
+        }
     }
     if brief.workshop.is_some() {
-        part(&Path::root("workshop"), "");
-    }
-}
-
-fn elements(list: &str, ids: &[&str], part: &mut impl FnMut(&Path<'_>, &str)) {
-    let list = Path::root(list);
-    for (number, id) in ids.iter().enumerate() {
-        part(&list.element(id, number), id);
+        part("workshop", &Path::root("workshop"), "");
     }
 }

@@ -166,6 +166,27 @@ pub(crate) const MODES: Quantity = Quantity::between("number of frequencies", ""
 pub(crate) const ADDED_MASS: Quantity = Quantity::not_negative("added mass", "kg", 1e9);
 pub(crate) const AIR_MASS: Quantity = Quantity::not_negative("mass of air", "kg/m2", 1e6);
 pub(crate) const FREQUENCY: Quantity = Quantity::not_negative("limit of frequency", "Hz", 1e6);
+pub(crate) const DURATION: Quantity = Quantity::positive("duration", "s", 1e-9, 1e6);
+pub(crate) const TIME_STEP: Quantity = Quantity::positive("step in time", "s", 1e-12, 1e6);
+pub(crate) const SPECTRAL_RADIUS: Quantity = Quantity::between("spectral radius", "", 0.0, 1.0);
+pub(crate) const STEP_ERROR: Quantity = Quantity::positive("error of a step", "m", 1e-12, 1e3);
+pub(crate) const WIND_SPEED: Quantity = Quantity::signed("speed of the wind", "m/s", 1e3);
+pub(crate) const MOMENT: Quantity = Quantity::signed("time", "s", 1e9);
+pub(crate) const SPACING: Quantity = Quantity::positive("spacing in time", "s", 1e-9, 1e6);
+pub(crate) const DRIVEN_FREQUENCY: Quantity = Quantity::positive("frequency", "Hz", 1e-9, 1e6);
+pub(crate) const PHASE: Quantity = Quantity::signed("phase", "deg", 1e6);
+pub(crate) const AIR_DENSITY: Quantity = Quantity::positive("density of air", "kg/m3", 1e-6, 100.0);
+pub(crate) const BREAK_TIME: Quantity = Quantity::not_negative("time", "s", 1e6);
+pub(crate) const BREAK_TENSION: Quantity = Quantity::positive("tension", "N", 1e-3, 1e13);
+pub(crate) const RELEASE: Quantity = Quantity::not_negative("time of release", "s", 1e6);
+pub(crate) const MASS_DAMPING: Quantity = Quantity::not_negative("factor of mass", "1/s", 1e6);
+pub(crate) const STIFFNESS_DAMPING: Quantity = Quantity::not_negative("factor of stiffness", "s", 1e3);
+pub(crate) const DAMPING_RATIO: Quantity = Quantity::between("damping ratio", "", 0.0, 1.0);
+pub(crate) const ROPE_DAMPING: Quantity = Quantity::not_negative("force per rate of strain", "N s", 1e12);
+pub(crate) const VELOCITY: Quantity = Quantity::signed("velocity", "m/s", 1e4);
+pub(crate) const FRAME_STEPS: Quantity = Quantity::between("number of steps", "", 1.0, 4_294_967_295.0);
+pub(crate) const SAMPLES_FROM: Quantity = Quantity::not_negative("time", "s", 1e6);
+pub(crate) const PIECES: Quantity = Quantity::between("number of pieces", "", 2.0, 1000.0);
 pub(crate) const ITERATIONS: Quantity = Quantity::between("number of iterations", "", 1.0, 100_000.0);
 
 /// Whom a number belongs to.

@@ -2,6 +2,7 @@
 
 use std::sync::Arc;
 
+use nalgebra::Vector3;
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::{Brief, Check, Prestress};
 use ropewalk_numerics::model::{CableGiven, Member, Net, NetGiven, NodeGiven, NodeId, StrutGiven, SupportGiven};
@@ -14,6 +15,7 @@ use super::checks::CheckDraft;
 use super::digest::digest;
 use super::factors::Factors;
 use super::findings::{Findings, Path, is_id};
+use super::motions::MotionDraft;
 use super::names::bad_id;
 use super::net::NetDraft;
 use super::resolved::Resolved;
@@ -24,8 +26,8 @@ use super::supports::Supports;
 use super::surface::SurfaceDraft;
 use super::work::{Names, Work};
 use super::{
-    accepted, checks, combinations, diagnosis, frozen, keep, limits, modes, not_served, plausible, prestress, reasons,
-    sizing, solving,
+    accepted, checks, combinations, diagnosis, frozen, keep, limits, modes, motion_net, motions, not_served, plausible,
+    prestress, reasons, sizing, solving,
 };
 use crate::config::Limits;
 use crate::words::shown;
@@ -48,10 +50,16 @@ pub struct Reading {
 /// Reads a brief.
 #[must_use]
 pub fn read(brief: v1::Brief, limits: &Limits) -> Reading {
+    read_refusing(brief, limits, not_served::NOT_SERVED)
+}
+
+/// Reads a brief and refuses these parts of it.
+#[must_use]
+pub fn read_refusing(brief: v1::Brief, limits: &Limits, refused: &[&str]) -> Reading {
     let mut findings = Findings::default();
     let mut resolved = Resolved::default();
     let digest = digest(&brief);
-    let parts = read_parts(&brief, limits, &mut findings, &mut resolved);
+    let parts = read_parts(&brief, limits, refused, &mut findings, &mut resolved);
     let (cases, built) = match parts {
         Some(parts) => {
             let built = parts.work.and_then(|(unbuilt, names)| {
@@ -83,6 +91,9 @@ struct Unbuilt {
     net: NetGiven,
     surface: SurfaceDraft,
     checks: Vec<CheckDraft>,
+    motions: Vec<MotionDraft>,
+    /// Nodes that can move.
+    movable: Vec<bool>,
     rest: Box<dyn FnOnce(Arc<Net>, Vec<Check>) -> Brief>,
     prestress: Prestress,
 }
@@ -108,16 +119,32 @@ impl Unbuilt {
             .flatten();
         let Some(first) = first else {
             let checks = self.checks.into_iter().map(CheckDraft::without_panels).collect();
-            return Some((self.rest)(net, checks));
+            let mut brief = (self.rest)(net, checks);
+            // Of a net without panels all is known that motions ask for.
+            let anywhere = vec![Vector3::zeros(); brief.net.nodes().len()];
+            let positions = self.surface.is_empty().then_some(&anywhere[..]);
+            complete_motions(&mut brief, self.motions, positions, &self.movable, findings);
+            return Some(brief);
         };
         let net = self.surface.complete((*net).clone(), &first, findings, resolved)?;
         let surface = &self.surface;
         let checks = self.checks.into_iter();
         let checks = checks.map(|draft| draft.with_panels(surface, &net, &first)).collect();
-        let brief = (self.rest)(Arc::new(net), checks);
+        let mut brief = (self.rest)(Arc::new(net), checks);
         self.surface.tell_actions(&brief.net, &first, &brief.actions, findings);
+        complete_motions(&mut brief, self.motions, Some(&first), &self.movable, findings);
         Some(brief)
     }
+}
+
+fn complete_motions(
+    brief: &mut Brief,
+    drafts: Vec<MotionDraft>,
+    positions: Option<&[Vector3<f64>]>,
+    movable: &[bool],
+    findings: &mut Findings,
+) {
+    brief.motions = motion_net::complete(drafts, &brief.net, positions, &brief.cases, movable, findings);
 }
 
 struct Parts {
@@ -139,11 +166,17 @@ fn first_sets(sets: &[String]) -> Vec<String> {
     fits.cloned().collect()
 }
 
-fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resolved: &mut Resolved) -> Option<Parts> {
+fn read_parts(
+    brief: &v1::Brief,
+    limits: &Limits,
+    refused: &[&str],
+    findings: &mut Findings,
+    resolved: &mut Resolved,
+) -> Option<Parts> {
     if !is_id(&brief.id) {
         bad_id(findings, &Path::root("id"), &brief.id);
     }
-    not_served::refuse(brief, findings);
+    not_served::refuse(brief, refused, findings);
     if !limits::counts(brief, limits, findings) {
         return None;
     }
@@ -204,7 +237,13 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
     let factors = factors.map(|factors| Factors::read(factors, &actions, findings, resolved));
     let mut cases = Cases::read(brief, &context, findings, resolved);
     combinations::read(brief, factors.as_ref(), &context, &mut cases, findings, resolved);
-    cases.doubts(&context, factors.as_ref(), findings);
+    let motions = if refused.contains(&"motions") {
+        &[]
+    } else {
+        &brief.motions[..]
+    };
+    let driven = motions::driven_actions(motions, &actions);
+    cases.doubts(&context, factors.as_ref(), &driven, findings);
     adjusters.check_travel(&cases.list, &actions.adjustments, findings);
     let checks = checks::read(
         &brief.checks,
@@ -224,6 +263,20 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
         &modes::Context {
             net: &net,
             scopes: &scopes,
+            cases: &cases,
+        },
+        findings,
+        resolved,
+    );
+    let motions = motions::read(
+        motions,
+        &motions::Context {
+            net: &net,
+            scopes: &scopes,
+            supports: &supports,
+            slides: &slides,
+            actions: &actions,
+            under: &prestress.under,
             cases: &cases,
         },
         findings,
@@ -259,6 +312,7 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
     );
     let (kept, envelopes) = keep::read(brief.keep.as_ref(), &cases, findings);
     let names = Names::new(&sections, &supports, sizing, kept);
+    let movable = (0..net.nodes.len()).map(|node| !supports.holds(node)).collect();
     let given = (!findings.has_errors())
         .then(|| net_given(&net, &sections, &slides, supports))
         .flatten();
@@ -282,6 +336,8 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
             net,
             surface,
             checks,
+            motions,
+            movable,
             rest: Box::new(rest),
             prestress: kept,
         };

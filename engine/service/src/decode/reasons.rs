@@ -150,7 +150,7 @@ reasons! {
     FACTOR_ZERO,
     /// Own weight acts in no case.
     NO_OWN_WEIGHT,
-    /// Nothing has a mass.
+    /// Nothing has a mass, or nothing at nodes that a motion moves.
     NO_MASS,
     /// A case leaves out an action under which the reference state was found.
     CASE_WITHOUT_DEAD_LOAD,
@@ -196,6 +196,42 @@ reasons! {
     NO_TRAVEL_PER_TURN,
     /// A case asks more of an adjuster than its travel.
     ADJUSTER_TOO_SHORT,
+    /// Times that do not rise, or an end that does not come after its beginning.
+    TIMES_OUT_OF_ORDER,
+    /// A table that gives times and an equal spacing.
+    TIMES_TWICE,
+    /// A table that ends before its motion does, or begins after it.
+    HISTORY_SHORT,
+    /// A load that varies in time and is zero throughout.
+    HISTORY_ZERO,
+    /// An action that is to vary in time and changes more than forces, pressures and places of supports.
+    NOT_DRIVABLE,
+    /// A motion moves supports by a jump, or not from where they are.
+    SUPPORT_JUMPS,
+    /// An action that varies in a motion acts already in the state at its start.
+    ACTS_TWICE,
+    /// A part of a cable that is to be one segment and is several.
+    NOT_ONE_SEGMENT,
+    /// A segment that breaks twice in one motion.
+    BREAKS_TWICE,
+    /// A member that is to break is taken out at the start.
+    BREAK_NOT_THERE,
+    /// A motion without damping.
+    NO_DAMPING,
+    /// Damping by stiffness in a motion that moves supports.
+    DAMPED_GROUND,
+    /// A node is moved, or has a velocity, at the start along a direction in which its support holds it.
+    START_ALONG_HELD,
+    /// A rope that slides in a net that is to move in time.
+    SLIDES_IN_MOTION,
+    /// A motion that nothing sets going.
+    NOTHING_MOVES,
+    /// Steps of a motion too long for what they are to follow.
+    STEPS_TOO_LONG,
+    /// Fewer samples than a spectrum needs.
+    TOO_FEW_SAMPLES,
+    /// A force of a support is watched at a node that has none.
+    NO_SUPPORT_FORCE,
     /// A value that looks as if it were in another unit.
     UNIT_SLIP,
     /// Prestress above the breaking force.
@@ -226,6 +262,12 @@ reasons! {
     NO_MODES,
     /// Natural modes of which a count does not show that none is missed.
     MODES_NOT_PROVEN,
+    /// A motion that could not begin or did not come to its end.
+    MOTION_NOT_FINISHED,
+    /// Energy that the steps of a motion make or lose.
+    ENERGY_NOT_KEPT,
+    /// A spectrum of too short a record for its largest peak.
+    SHORT_SPECTRUM,
     /// Panels that a pressure on the surface leaves without a value.
     PANELS_WITHOUT_VALUE,
     /// A panel that was found in plan has turned over in the reference state.
@@ -245,6 +287,9 @@ pub const OF_RESULTS: &[&str] = &[
     LARGE_MOVEMENT,
     LOW_FREQUENCY,
     MODES_NOT_PROVEN,
+    STEPS_TOO_LONG,
+    ENERGY_NOT_KEPT,
+    SHORT_SPECTRUM,
     PANELS_WITHOUT_VALUE,
     PANEL_TURNED,
     ZONES_CONTRADICT,

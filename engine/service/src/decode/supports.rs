@@ -47,6 +47,18 @@ impl Supports {
                 .is_some_and(|support| support.released.is_empty())
     }
 
+    /// The part of a vector along which a node can move.
+    pub(crate) fn movable_part(&self, node: usize, vector: Vector3<f64>) -> Vector3<f64> {
+        let Some(support) = &self.of_node[node] else {
+            return vector;
+        };
+        let basis = orthonormal(&[], &support.released);
+        if basis.len() == 3 {
+            return vector;
+        }
+        basis.iter().map(|unit| unit * unit.dot(&vector)).sum()
+    }
+
     pub(crate) fn read(net: &NetDraft<'_>, findings: &mut Findings) -> Self {
         let mut supports = Self {
             of_node: vec![None; net.nodes.len()],

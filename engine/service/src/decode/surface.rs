@@ -1,6 +1,7 @@
 //! Skins, zones and panels: what the brief says of them, and, once the net is known, the panels themselves.
 
 use std::collections::{BTreeMap, HashMap, HashSet};
+use std::fmt;
 
 use nalgebra::{Vector2, Vector3};
 use ropewalk_api::ropewalk::v1;
@@ -188,11 +189,7 @@ impl SurfaceDraft {
     /// Tells zones without panels, and the panels as far as they are known.
     fn tell_zones(&self, net: &Net, positions: &[Vector3<f64>], findings: &mut Findings, resolved: &mut Resolved) {
         let surface = Surface::new(net, positions);
-        let about = if net.nodes().iter().all(|node| node.position.is_some()) {
-            ""
-        } else {
-            "about "
-        };
+        let about = about(net);
         let list = Path::root("net.panels");
         for (index, panel) in net.panels().iter().enumerate() {
             let Some(skin) = surface.skins[index] else {
@@ -237,42 +234,30 @@ impl SurfaceDraft {
         findings: &mut Findings,
     ) {
         let surface = Surface::new(net, positions);
-        let about = if net.nodes().iter().all(|node| node.position.is_some()) {
-            ""
-        } else {
-            "about "
-        };
         let list = Path::root("actions");
         for (index, action) in actions.iter().enumerate() {
             let at = list.element(&action.name, index);
             let loads = at.field("loads");
             for (number, load) in action.loads.iter().enumerate() {
-                let Load::OnSurface { coefficients, .. } = load else {
+                let Load::OnSurface {
+                    coefficients,
+                    elsewhere,
+                    ..
+                } = load
+                else {
                     continue;
                 };
                 let at = loads.number(number);
                 let at = at.field("on_surface");
-                if let Some((panel, zones)) = surface.contradictions(coefficients).first() {
-                    let [first, second] = zones.map(|zone| Quoted(&net.zones()[zone].name));
-                    findings.error(
-                        reasons::ZONES_CONTRADICT,
-                        &at.field("coefficients"),
-                        &action.name,
-                        format!(
-                            "action {}: zones {first} and {second} both cover panel {}, with different coefficients",
-                            Quoted(&action.name),
-                            Quoted(&net.panels()[*panel].name)
-                        ),
-                        "draw the zones apart, or give them one coefficient",
-                    );
-                }
-                if let Some(found) = WithoutValue::of(net, &surface, load) {
+                let of = Of::new("action", &action.name);
+                tell_contradiction(net, &surface, coefficients, of, &at, findings);
+                if let Some(found) = WithoutValue::of(net, &surface, coefficients, *elsewhere) {
                     findings
                         .note(
                             reasons::PANELS_WITHOUT_VALUE,
                             &at.field("coefficients"),
                             &action.name,
-                            found.message(net, &action.name, about),
+                            found.message(net, of, about(net)),
                             WithoutValue::CURE,
                         )
                         .value(found.panels.len());
@@ -297,6 +282,39 @@ impl SurfaceDraft {
     }
 }
 
+/// A word before areas that are found before the shape is, unless it is given.
+pub(super) fn about(net: &Net) -> &'static str {
+    if net.nodes().iter().all(|node| node.position.is_some()) {
+        ""
+    } else {
+        "about "
+    }
+}
+
+/// Tells the first panel that lies in two zones with different coefficients. `at`: what has the coefficients.
+pub(super) fn tell_contradiction(
+    net: &Net,
+    surface: &Surface,
+    coefficients: &[(Area, f64)],
+    of: Of<'_>,
+    at: &Path<'_>,
+    findings: &mut Findings,
+) {
+    if let Some((panel, zones)) = surface.contradictions(coefficients).first() {
+        let [first, second] = zones.map(|zone| Quoted(&net.zones()[zone].name));
+        findings.error(
+            reasons::ZONES_CONTRADICT,
+            &at.field("coefficients"),
+            of.id,
+            format!(
+                "{of}: zones {first} and {second} both cover panel {}, with different coefficients",
+                Quoted(&net.panels()[*panel].name)
+            ),
+            "draw the zones apart, or give them one coefficient",
+        );
+    }
+}
+
 /// Panels that a pressure on the surface leaves without a value.
 #[derive(Debug)]
 pub(crate) struct WithoutValue {
@@ -312,16 +330,13 @@ pub(crate) struct WithoutValue {
 impl WithoutValue {
     pub(crate) const CURE: &'static str = "give elsewhere, or widen the zones";
 
-    pub(crate) fn of(net: &Net, surface: &Surface, load: &Load) -> Option<Self> {
-        let Load::OnSurface {
-            coefficients,
-            elsewhere,
-            ..
-        } = load
-        else {
-            return None;
-        };
-        let none = |panel: &usize| surface.coefficient(*panel, coefficients, *elsewhere).is_none();
+    pub(crate) fn of(
+        net: &Net,
+        surface: &Surface,
+        coefficients: &[(Area, f64)],
+        elsewhere: Option<f64>,
+    ) -> Option<Self> {
+        let none = |panel: &usize| surface.coefficient(*panel, coefficients, elsewhere).is_none();
         let panels: Vec<usize> = (0..net.panels().len()).filter(none).collect();
         if panels.is_empty() {
             return None;
@@ -353,16 +368,15 @@ impl WithoutValue {
         })
     }
 
-    /// `about`: a word before the areas, where they are not known exactly.
-    pub(crate) fn message(&self, net: &Net, action: &str, about: &str) -> String {
+    /// `of`: whose pressure it is. `about`: a word before the areas, where they are not known exactly.
+    pub(crate) fn message(&self, net: &Net, of: impl fmt::Display, about: &str) -> String {
         let ids: Vec<&str> = self
             .panels
             .iter()
             .map(|panel| net.panels()[*panel].name.as_str())
             .collect();
         format!(
-            "action {}: coefficients for {} cover {} of {} panels ({about}{} of {} m2 on plan). Without value: {}",
-            Quoted(action),
+            "{of}: coefficients for {} cover {} of {} panels ({about}{} of {} m2 on plan). Without value: {}",
             self.with,
             self.of - self.panels.len(),
             self.of,

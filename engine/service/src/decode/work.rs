@@ -2,13 +2,16 @@
 
 use std::collections::HashSet;
 
+use prost::Message as _;
 use ropewalk_api::ropewalk::v1;
 use ropewalk_numerics::brief::{Brief, EffectRule, SizingOutcome};
 use ropewalk_numerics::model::Member;
 
 use super::cases::{REFERENCE, in_words};
-use super::findings::accepts;
+use super::findings::{Path, accepts};
 use super::keep::Kept;
+use super::limits::LARGEST_ELEMENT;
+use super::motion_words;
 use super::names::nearest;
 use super::reasons;
 use super::sections::Sections;
@@ -43,6 +46,15 @@ pub(crate) struct Names {
     sizing: Option<SizingWork>,
     /// Which states are told with their arrays; all, where the brief does not say.
     kept: Option<Kept>,
+}
+
+/// What of a brief is run, in brief order.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Selected {
+    /// Cases.
+    pub cases: Vec<usize>,
+    /// Motions.
+    pub motions: Vec<usize>,
 }
 
 impl Names {
@@ -95,8 +107,26 @@ impl Work {
         self.names.sizing.as_ref()
     }
 
-    /// Why the brief cannot be frozen, if so: sections that are still to be chosen.
+    /// Why the brief cannot be frozen, if so: sections that are still to be chosen, or a motion that no message could repeat.
     pub(crate) fn refuse_to_freeze(&self) -> Option<v1::Finding> {
+        let motions = self.message.motions.iter();
+        let mut large = motions.filter(|motion| motion.encoded_len() > LARGEST_ELEMENT);
+        if let Some(motion) = large.next() {
+            let size = motion.encoded_len();
+            return Some(v1::Finding {
+                severity: v1::FindingSeverity::Error.into(),
+                reason: reasons::TOO_LARGE.to_owned(),
+                path: Path::root("motions").key(&motion.id).to_string(),
+                id: shown(&motion.id),
+                value: size.to_string(),
+                message: format!(
+                    "motion {} takes {size} bytes: at most {LARGEST_ELEMENT} can be sent back",
+                    Quoted(&motion.id)
+                ),
+                cure: "freeze the brief without its motions, and put them in again".to_owned(),
+                ..v1::Finding::default()
+            });
+        }
         self.names.sizing.as_ref().map(|_| v1::Finding {
             severity: v1::FindingSeverity::Error.into(),
             reason: reasons::NOT_SERVED.to_owned(),
@@ -124,22 +154,30 @@ impl Work {
         work
     }
 
-    /// Cases that sets, cases and design effects in `only` name, in brief order, those that effects need included; all of
-    /// them where it is empty. The word `reference`
-    /// names none.
+    /// Cases that sets, cases and design effects in `only` name, those that effects need included, and the motions that it
+    /// names; all of both where it is empty. The word `reference` names none.
     ///
     /// # Errors
-    /// A finding for the first name that is neither a set nor a case.
+    /// A finding for the first name that is none of these.
     #[allow(
         clippy::result_large_err,
         reason = "the finding goes straight into the refusal, once a call"
     )]
-    pub fn select(&self, only: &[String]) -> Result<Vec<usize>, v1::Finding> {
-        let Brief { cases, effects, .. } = &self.brief;
+    pub fn select(&self, only: &[String]) -> Result<Selected, v1::Finding> {
+        let Brief {
+            cases,
+            effects,
+            motions,
+            ..
+        } = &self.brief;
         if only.is_empty() {
-            return Ok((0..cases.len()).collect());
+            return Ok(Selected {
+                cases: (0..cases.len()).collect(),
+                motions: (0..motions.len()).collect(),
+            });
         }
         let mut wanted = vec![false; cases.len()];
+        let mut wanted_motions = vec![false; motions.len()];
         for (number, name) in only.iter().enumerate() {
             let mut found = name == REFERENCE;
             for (case, wanted) in cases.iter().zip(&mut wanted) {
@@ -154,10 +192,17 @@ impl Work {
                     found = true;
                 }
             }
+            for (motion, wanted) in motions.iter().zip(&mut wanted_motions) {
+                if motion.name == *name {
+                    *wanted = true;
+                    found = true;
+                }
+            }
             if !found {
                 let known = cases.iter().map(|case| (&case.sets, &case.name));
                 let known = known.chain(effects.iter().map(|effect| (&effect.sets, &effect.name)));
                 let known = known.flat_map(|(sets, name)| sets.iter().chain([name]));
+                let known = known.chain(motions.iter().map(|motion| &motion.name));
                 let meant = nearest(name, known.map(String::as_str));
                 let question = meant.map_or(String::new(), |meant| format!(" Did you mean {}?", Quoted(meant)));
                 return Err(v1::Finding {
@@ -166,13 +211,17 @@ impl Work {
                     path: format!("only[{number}]"),
                     id: shown(name),
                     value: shown(name),
-                    message: format!("there is no set or case {}.{question}", Quoted(name)),
-                    cure: "name sets or cases of the brief, or none for all of them".to_owned(),
+                    message: format!("there is no set, case or motion {}.{question}", Quoted(name)),
+                    cure: "name sets, cases or motions of the brief, or none for all of them".to_owned(),
                     ..v1::Finding::default()
                 });
             }
         }
-        Ok((0..cases.len()).filter(|case| wanted[*case]).collect())
+        let named = |wanted: Vec<bool>| (0..wanted.len()).filter(|place| wanted[*place]).collect();
+        Ok(Selected {
+            cases: named(wanted),
+            motions: named(wanted_motions),
+        })
     }
 
     /// What acts in a case, in words.
@@ -181,6 +230,12 @@ impl Work {
         in_words(&self.brief.cases[case], &self.message.actions, &|member| {
             self.member_name(member)
         })
+    }
+
+    /// What acts and happens in a motion, in words.
+    #[must_use]
+    pub fn motion_in_words(&self, motion: usize) -> String {
+        motion_words::in_words(&self.brief, motion)
     }
 
     /// Ids of what a case takes out.

@@ -207,7 +207,7 @@ fn merging_parts(mut brief: v1::Brief) -> Vec<v1::Brief> {
             })+
         };
     }
-    take!(actions, combinations, cases, checks, accepted);
+    take!(actions, combinations, cases, checks, motions, accepted);
     parts[0] = brief;
     parts
 }

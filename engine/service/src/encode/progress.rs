@@ -18,11 +18,14 @@ pub fn progress(
     total: u32,
 ) -> v1::Progress {
     let brief = plan.brief();
+    let (case, motion) = match task {
+        Task::Reference => (REFERENCE, ""),
+        Task::Case(case) => (brief.cases[case].name.as_str(), ""),
+        Task::Motion(motion) => ("", brief.motions[motion].name.as_str()),
+    };
     v1::Progress {
-        case: match task {
-            Task::Reference => REFERENCE.to_owned(),
-            Task::Case(case) => brief.cases[case].name.clone(),
-        },
+        case: case.to_owned(),
+        motion: motion.to_owned(),
         way: way(report.way).into(),
         load_step: report.load_step,
         load_factor: report.load_factor,

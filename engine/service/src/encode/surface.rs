@@ -173,16 +173,21 @@ pub(super) fn doubts(work: &Work, plan: &Plan, reference: &ReferenceOutcome) -> 
     }
     for action in &brief.actions {
         for load in &action.loads {
-            let Load::OnSurface { coefficients, .. } = load else {
+            let Load::OnSurface {
+                coefficients,
+                elsewhere,
+                ..
+            } = load
+            else {
                 continue;
             };
-            if let Some(found) = WithoutValue::of(net, &surface, load) {
+            if let Some(found) = WithoutValue::of(net, &surface, coefficients, *elsewhere) {
                 findings.push(finding(
                     v1::FindingSeverity::Doubt,
                     reasons::PANELS_WITHOUT_VALUE,
                     &action.name,
                     found.panels.len().to_string(),
-                    found.message(net, &action.name, ""),
+                    found.message(net, format_args!("action {}", Quoted(&action.name)), ""),
                     WithoutValue::CURE,
                 ));
             }

@@ -29,7 +29,8 @@ pub(super) async fn run(work: Work, request: v1::RunRequest, outbox: Outbox<v1::
         let cases = prepared
             .work
             .select(&only)
-            .map_err(|finding| Refusal::BriefHasErrors(vec![finding]))?;
+            .map_err(|finding| Refusal::BriefHasErrors(vec![finding]))?
+            .cases;
         Ok((head(prepared, &cases, findings), cases))
     };
     let (prepared, (head, cases)) = prepare(&work, request.brief.unwrap_or_default(), begin).await?;

@@ -2,7 +2,6 @@
 
 use nalgebra::Vector3;
 
-use super::history::Side;
 use super::system::{System, driven_case};
 use super::waves::wave_speeds;
 use super::{BreakWhen, Driven, Motion, MotionError, Scheme};
@@ -185,12 +184,10 @@ fn check_driven(net: &Net, motion: &Motion) -> Result<(), MotionError> {
                     return refuse("which members are there");
                 }
                 if moves_supports(case) {
-                    let jumps = history.jumps().into_iter().filter(|at| *at <= motion.duration);
-                    let at = |time, side| history.value(time, side);
-                    if jumps.into_iter().any(|t| at(t, Side::Before) != at(t, Side::After)) {
+                    if history.first_jump(motion.duration).is_some() {
                         return refuse("where supports are by a jump");
                     }
-                    if at(0.0, Side::After) != 0.0 {
+                    if history.at_start() != 0.0 {
                         return refuse("where supports are at the start: its factor must begin at zero, which");
                     }
                 }
@@ -325,7 +322,8 @@ pub(super) fn cautions(net: &Net, motion: &Motion) -> Vec<Caution> {
     }
     for (place, driven) in motion.driven.iter().enumerate() {
         let (Driven::Case { history, .. } | Driven::Wind { speed: history, .. }) = driven;
-        if let Some(needed) = history.finest().filter(|needed| *needed < step) {
+        // Times of a table are rounded.
+        if let Some(needed) = history.finest().filter(|needed| *needed * (1.0 + 1e-9) < step) {
             all.push(Caution::History {
                 driven: place,
                 step,

@@ -58,6 +58,9 @@ pub(super) enum Side {
     After,
 }
 
+/// Size of a jump, over that of the history, that still counts as rounding.
+const ROUNDING: f64 = 1e-9;
+
 /// What is wrong with a history.
 #[derive(Clone, Copy, Debug, PartialEq, Error)]
 pub enum HistoryError {
@@ -208,6 +211,51 @@ impl History {
         }
     }
 
+    /// Its value as the motion begins.
+    #[must_use]
+    pub fn at_start(&self) -> f64 {
+        self.value(0.0, Side::After)
+    }
+
+    /// The first jump of its value from the start up to a time (s): when (s), and by how much.
+    #[must_use]
+    pub fn first_jump(&self, until: f64) -> Option<(f64, f64)> {
+        let jumps = self.jumps().into_iter().filter(|at| (0.0..=until).contains(at));
+        let by = |at: f64| {
+            let (before, after) = (self.value(at, Side::Before), self.value(at, Side::After));
+            // A sine that ends after whole periods comes to zero but for the rounding of its phase.
+            let size = match self {
+                Self::Harmonic { mean, amplitude, .. } => mean.abs() + amplitude.abs(),
+                _ => before.abs().max(after.abs()),
+            };
+            Some(after - before).filter(|by| by.abs() > ROUNDING * size)
+        };
+        jumps
+            .filter_map(|at| by(at).map(|by| (at, by)))
+            .min_by(|a, b| a.0.total_cmp(&b.0))
+    }
+
+    /// Whether it is zero throughout, from the start up to a time (s).
+    #[must_use]
+    pub fn is_zero(&self, until: f64) -> bool {
+        match self {
+            Self::Harmonic {
+                mean,
+                amplitude,
+                start,
+                end,
+                ..
+            } => (*mean == 0.0 && *amplitude == 0.0) || *start >= until || *end <= 0.0,
+            Self::Table(points) => {
+                let within = points.iter().filter(|(time, _)| (0.0..=until).contains(time));
+                self.at_start() == 0.0
+                    && self.value(until, Side::Before) == 0.0
+                    && within.into_iter().all(|p| p.1 == 0.0)
+            }
+            _ => self.at_start() == 0.0 && self.value(until, Side::After) == 0.0,
+        }
+    }
+
     /// Moments at which the value jumps (s).
     pub(super) fn jumps(&self) -> Vec<f64> {
         match self {
@@ -222,7 +270,8 @@ impl History {
 
     /// Shortest time in which it does something (s): a twentieth of a period, a piece of a table, a ramp; none if it
     /// only jumps.
-    pub(super) fn finest(&self) -> Option<f64> {
+    #[must_use]
+    pub fn finest(&self) -> Option<f64> {
         match self {
             Self::Constant(_) | Self::Step { .. } => None,
             Self::Table(points) => {
@@ -269,6 +318,32 @@ mod tests {
         assert_eq!(wave.value(1.0, Side::Before), 0.0);
         assert!((wave.value(2.0, Side::Before) - 3.0).abs() < 1e-15);
         assert_eq!(wave.value(5.0, Side::After), 0.0);
+    }
+
+    #[test]
+    fn jumps_and_zeros_within_a_time() {
+        let step = |at, before, after| History::Step { at, before, after };
+        assert_eq!(step(1.0, 0.0, 3.0).first_jump(2.0), Some((1.0, 3.0)));
+        assert_eq!(step(1.0, 0.0, 3.0).first_jump(0.5), None);
+        assert_eq!(step(-1.0, 0.0, 3.0).first_jump(0.5), None);
+        assert!(step(1.0, 0.0, 3.0).is_zero(0.5) && !step(1.0, 0.0, 3.0).is_zero(1.0));
+        assert!(step(0.0, 2.0, 0.0).is_zero(9.0) && !step(0.5, 2.0, 0.0).is_zero(9.0));
+        let wave = |mean, start, end| History::Harmonic {
+            mean,
+            amplitude: 2.0,
+            frequency: 1.7,
+            phase: 0.0,
+            start,
+            end,
+        };
+        // Seventeen whole periods.
+        assert_eq!(wave(0.0, 0.0, 10.0).first_jump(20.0), None);
+        let (at, by) = wave(0.5, 1.0, 9.0).first_jump(20.0).expect("a jump");
+        assert!(at == 1.0 && (by - 0.5).abs() < 1e-12);
+        assert!(wave(0.0, 3.0, 4.0).is_zero(3.0) && !wave(0.0, 3.0, 4.0).is_zero(3.5));
+        let table = History::Table(vec![(1.0, 0.0), (2.0, 4.0), (3.0, 0.0)]);
+        assert!(table.is_zero(1.0) && !table.is_zero(1.5) && !table.is_zero(9.0));
+        assert_eq!((table.at_start(), table.first_jump(9.0)), (0.0, None));
     }
 
     #[test]
