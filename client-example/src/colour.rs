@@ -33,6 +33,32 @@ pub(crate) fn at(share: f64) -> String {
     format!("rgb({},{},{})", mix(16), mix(8), mix(0))
 }
 
+/// A map of our own for what has two directions: blue for less, paper for nothing, orange for more, as dark as each other at
+/// equal distance.
+const TWO_WAYS: [[f64; 3]; 5] = [
+    [16.0, 62.0, 102.0],
+    [92.0, 155.0, 198.0],
+    [247.0, 247.0, 245.0],
+    [228.0, 142.0, 78.0],
+    [132.0, 48.0, 4.0],
+];
+
+/// The colour at a share from -1 over 0 to 1 of the largest size.
+pub(crate) fn two_ways(share: f64) -> String {
+    let place = (share.clamp(-1.0, 1.0) + 1.0) * 2.0;
+    #[allow(
+        clippy::cast_possible_truncation,
+        clippy::cast_sign_loss,
+        reason = "the place is between 0 and 4"
+    )]
+    let step = (place.floor() as usize).min(3);
+    #[allow(clippy::cast_precision_loss, reason = "the step is at most 3")]
+    let rest = place - step as f64;
+    let mixed: [f64; 3] =
+        std::array::from_fn(|part| (TWO_WAYS[step][part] * (1.0 - rest) + TWO_WAYS[step + 1][part] * rest).round());
+    format!("rgb({},{},{})", mixed[0], mixed[1], mixed[2])
+}
+
 /// Colour of a force: linear where forces are alike, by their logarithm where they span more than a factor of 20.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub(crate) struct Scale {
@@ -135,6 +161,16 @@ mod tests {
         assert_eq!(at(1.0), "rgb(68,1,84)");
         // 0.875 of the way through 32 steps is step 28.
         assert_eq!(at(0.0), "rgb(170,220,50)");
+    }
+
+    #[test]
+    fn nothing_is_paper_and_directions_are_told_apart() {
+        assert_eq!(two_ways(0.0), "rgb(247,247,245)");
+        assert_eq!(
+            (two_ways(-1.0).as_str(), two_ways(1.0).as_str()),
+            ("rgb(16,62,102)", "rgb(132,48,4)")
+        );
+        assert_eq!(two_ways(0.75), "rgb(180,95,41)");
     }
 
     #[test]

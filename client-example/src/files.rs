@@ -13,7 +13,7 @@ use crate::colour::Scale;
 use crate::escape::{csv_text, free_file_name};
 use crate::run::{Column, Run, State, record};
 use crate::sheet::{self, Sheet};
-use crate::{draw, json_text, report};
+use crate::{draw, json_text, motion_files, report};
 
 /// Plans that are drawn; beyond it those without answer and with the worst ratios count.
 const PLANS: usize = 60;
@@ -90,6 +90,17 @@ pub(crate) fn write(run: &Run, folder: &Path) -> Result<Written, (PathBuf, io::E
             put(&format!("modes-{name}-{number}.svg"), page.as_bytes())?;
         }
     }
+    for motion in &run.motions {
+        for sheet in sheet::motion_sheets(run, motion, sheet::Told::All) {
+            put(&format!("{}.csv", sheet.file), sheet.csv().as_bytes())?;
+        }
+        for (name, text) in motion_files::tables(run, motion) {
+            put(&name, text.as_bytes())?;
+        }
+        for (name, drawing) in draw::motion(run, motion) {
+            put(&format!("motion-{}-{name}.svg", motion.name), drawing.as_bytes())?;
+        }
+    }
     // These are long, and the page shows what they tell in other ways.
     let on_page: Vec<Sheet> = sheets
         .into_iter()
@@ -150,6 +161,7 @@ pub(crate) fn all_sheets(run: &Run) -> Vec<Sheet> {
     }
     let if_any = [
         sheet::modes(run),
+        sheet::motions(run),
         sheet::shape(run),
         sheet::judgements(run),
         sheet::slides(run),
@@ -176,7 +188,8 @@ fn scale(run: &Run) -> Scale {
     )
 }
 
-/// Everything, as the contract names it; wall times are left out, so that equal runs give equal files.
+/// Everything, as the contract names it, but for frames of motions, which are in tables of their own; wall times are left out,
+/// so that equal runs give equal files.
 fn results(run: &Run) -> String {
     let columns = |columns: &std::collections::BTreeMap<String, Column>| -> Value {
         let entries = columns.iter().map(|(name, column)| {
@@ -234,6 +247,18 @@ fn results(run: &Run) -> String {
         "shape_report": run.shape_report.as_ref().map(|report| message_json("ShapeReport", &report.encode_to_vec())),
         "losses": run.losses.iter().map(|row| message_json("LossRow", &row.encode_to_vec())).collect::<Vec<_>>(),
         "modes": run.modes.iter().map(|part| message_json("StateModes", &part.encode_to_vec())).collect::<Vec<_>>(),
+        "motions": run.motions.iter().map(|motion| {
+            json!({
+                "id": motion.id,
+                "begin": motion.begin.as_ref().map(|begin| message_json("MotionBegin", &begin.encode_to_vec())),
+                "shown": message_json("MotionShown", &motion.shown.encode_to_vec()),
+                "waves": motion.waves.iter().map(|waves| message_json("RopeWaves", &waves.encode_to_vec())).collect::<Vec<_>>(),
+                "events": motion.events.iter().map(|event| message_json("MotionEvent", &event.encode_to_vec())).collect::<Vec<_>>(),
+                "spectra": motion.spectra.iter().map(|spectrum| message_json("MotionSpectrum", &spectrum.encode_to_vec())).collect::<Vec<_>>(),
+                "end": motion.end.as_ref().map(|end| message_json("MotionEnd", &end.encode_to_vec())),
+                "columns": columns(&motion.columns),
+            })
+        }).collect::<Vec<_>>(),
         "panels": run.panels.iter().map(|panel| message_json("PanelEntry", &panel.encode_to_vec())).collect::<Vec<_>>(),
         "load_pictures": run.loads.iter().map(|picture| message_json("LoadPicture", &picture.encode_to_vec())).collect::<Vec<_>>(),
         "envelope": columns(&run.envelope),
@@ -308,6 +333,8 @@ fn segments(run: &Run) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::escape::file_name;
+    use crate::run::motion_sample;
     use crate::run::sample::{self, Names};
 
     #[test]
@@ -335,6 +362,57 @@ mod tests {
         assert!(folder.join("plan-wind.svg").exists());
         for own in ["notes.txt", "mine.svg", "../outside.csv"] {
             assert!(folder.join(own).exists(), "{own} is gone");
+        }
+        fs::remove_dir_all(base).unwrap();
+    }
+
+    #[test]
+    fn a_motion_is_written_inside_the_folder_and_small() {
+        let base = std::env::temp_dir().join(format!("ropewalk-motion-{}", std::process::id()));
+        let folder = base.join("out");
+        write(&motion_sample::run_named("../gust & <b>"), &folder).unwrap();
+        let listed = fs::read_to_string(folder.join(LIST)).unwrap();
+        for name in listed.lines().filter(|name| name.starts_with("motion")) {
+            assert!(is_ours(name) && folder.join(name).exists(), "{name}");
+        }
+        let base_name = format!("motion-{}", file_name("../gust & <b>"));
+        for end in [
+            "frames.csv",
+            "nodes.csv",
+            "rope-main.csv",
+            "events.csv",
+            "waves.csv",
+            "peaks-ropes.csv",
+            "spectrum.csv",
+            "spectrum-peaks.csv",
+            "watched-1.svg",
+            "energy.svg",
+            "rope-main.svg",
+            "spectra-1.svg",
+        ] {
+            let name = format!("{base_name}-{end}");
+            assert!(listed.lines().any(|known| known == name), "no {name} in {listed}");
+        }
+        for name in listed.lines().filter(|name| name.ends_with(".svg")) {
+            let drawing = fs::read_to_string(folder.join(name)).unwrap();
+            assert!(drawing.len() < 300_000, "{name} has {} bytes", drawing.len());
+            assert!(
+                !drawing.contains("<b>") && !drawing.contains("NaN") && !drawing.contains("inf"),
+                "{name}"
+            );
+        }
+        let page = fs::read_to_string(folder.join("report.html")).unwrap();
+        assert!(page.contains("<h2>Motion ../gust &amp; &lt;b&gt;</h2>") && !page.contains("<b>"));
+        assert_eq!(page.matches("Motions: an aid.").count(), 2);
+        if let Ok(keep) = std::env::var("LOOK") {
+            write(&motion_sample::run_named("tie-breaks"), Path::new(&keep)).unwrap();
+            println!(
+                "{}",
+                sheet::motion_text(
+                    &motion_sample::run_named("t"),
+                    &motion_sample::run_named("tie-breaks").motions[0]
+                )
+            );
         }
         fs::remove_dir_all(base).unwrap();
     }

@@ -13,6 +13,7 @@ mod engine;
 mod escape;
 mod files;
 mod json_text;
+mod motion_files;
 mod number;
 mod progress;
 mod refusal;

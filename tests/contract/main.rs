@@ -11,6 +11,7 @@ mod freezing;
 mod golden;
 mod minimal;
 mod modes;
+mod motions;
 mod reasons;
 mod results;
 mod sizes;

@@ -6,8 +6,8 @@ use std::collections::{BTreeMap, BTreeSet, HashMap};
 use ropewalk_api::ropewalk::v1;
 
 use super::thresholds::Thresholds;
-use crate::number::percent;
-use crate::run::{Column, Run};
+use crate::number::{for_eyes, percent, three};
+use crate::run::{Column, MotionRun, Run};
 use crate::sheet::{self, verdict_word};
 
 /// Two runs that say something different.
@@ -86,7 +86,8 @@ pub(super) struct Comparison {
 }
 
 /// Arrays that repeat others in another form, or tell of the way and not of the result.
-const LEFT_OUT: [&str; 9] = [
+const LEFT_OUT: [&str; 10] = [
+    "spectrum_amplitude",
     "stretch",
     "length_m",
     "path_load_factor",
@@ -96,6 +97,21 @@ const LEFT_OUT: [&str; 9] = [
     "end_force_n",
     "end_angle_plan_deg",
     "end_angle_up_deg",
+];
+
+/// A largest value of a motion, its unit and where the end of the motion tells it.
+type Extreme = (
+    &'static str,
+    &'static str,
+    fn(&v1::MotionEnd) -> &Option<v1::MotionExtreme>,
+);
+
+const EXTREMES: [Extreme; 5] = [
+    ("largest tension", "N", |end| &end.largest_tension_n),
+    ("largest movement", "m", |end| &end.largest_movement_m),
+    ("largest pull on a support", "N", |end| &end.largest_support_force_n),
+    ("largest tension over static", "", |end| &end.largest_tension_factor),
+    ("largest movement over static", "", |end| &end.largest_movement_factor),
 ];
 
 impl Comparison {
@@ -124,6 +140,7 @@ impl Comparison {
             );
         }
         comparison.columns("envelope", [&a.envelope, &b.envelope], &labels, limits, &mut unlike);
+        comparison.motions([a, b], &labels, limits, &mut unlike);
         if !unlike.is_empty() {
             let names: Vec<&str> = unlike.iter().map(String::as_str).collect();
             comparison
@@ -279,6 +296,57 @@ impl Comparison {
         }
     }
 
+    /// Motions by id: how they ended, what was largest, how often ropes went slack and snatched, and their arrays.
+    fn motions(&mut self, [a, b]: [&Run; 2], labels: &Labels, limits: &Thresholds, unlike: &mut BTreeSet<String>) {
+        let ids: BTreeSet<&str> = (a.motions.iter().chain(&b.motions))
+            .map(|motion| motion.id.as_str())
+            .collect();
+        for id in ids {
+            let of = |run: &'_ Run| run.motions.iter().find(|motion| motion.id == id).cloned();
+            let (was, now) = (of(a), of(b));
+            let outcome = |motion: &Option<MotionRun>| motion.as_ref().map(sheet::motion_outcome);
+            self.say(format!("motion \"{id}\""), outcome(&was), outcome(&now));
+            let (Some(was), Some(now)) = (was, now) else { continue };
+            let (Some(old), Some(new)) = (&was.end, &now.end) else {
+                continue;
+            };
+            for (name, unit, of) in EXTREMES {
+                let (old, new) = (of(old), of(new));
+                let words = |extreme: &Option<v1::MotionExtreme>| {
+                    extreme.as_ref().map(|extreme| {
+                        let (unit, scale) = for_eyes(unit);
+                        let value = format!("{} {unit}", three(extreme.value * scale));
+                        format!(
+                            "{} of \"{}\" at {} s",
+                            value.trim_end(),
+                            extreme.id,
+                            three(extreme.time_s)
+                        )
+                    })
+                };
+                let differs = match (old, new) {
+                    (Some(old), Some(new)) => {
+                        let larger = old.value.abs().max(new.value.abs());
+                        limits.passes(unit, (old.value - new.value).abs(), larger)
+                    }
+                    (None, None) => false,
+                    _ => true,
+                };
+                if differs {
+                    self.say(format!("motion \"{id}\", {name}"), words(old), words(new));
+                }
+            }
+            let count = |end: &v1::MotionEnd| {
+                Some(format!(
+                    "went slack {} times, came taut again {} times",
+                    end.slackenings, end.snatches
+                ))
+            };
+            self.say(format!("motion \"{id}\", segments"), count(old), count(new));
+            self.columns(&was.key(), [&was.columns, &now.columns], labels, limits, unlike);
+        }
+    }
+
     fn columns(
         &mut self,
         case: &str,
@@ -288,7 +356,10 @@ impl Comparison {
         unlike: &mut BTreeSet<String>,
     ) {
         let wanted = |name: &str, column: &Column| {
-            column.over != v1::Range::Iteration && !name.ends_with("_case") && !LEFT_OUT.contains(&name)
+            column.over != v1::Range::Iteration
+                && !name.ends_with("_case")
+                && !name.ends_with("_time_s")
+                && !LEFT_OUT.contains(&name)
         };
         for (name, column) in was.iter().filter(|(name, column)| wanted(name, column)) {
             match now.get(name) {
@@ -482,6 +553,7 @@ fn entries(run: &Run, range: v1::Range) -> Vec<String> {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::run::motion_sample;
     use crate::run::sample::{self, Names};
 
     fn limits() -> Thresholds {
@@ -559,6 +631,50 @@ mod tests {
             "{:?}",
             comparison.apart
         );
+    }
+
+    #[test]
+    fn motions_tell_what_was_largest_and_what_happened() {
+        let (one, mut other) = (motion_sample::run_named("gust"), motion_sample::run_named("gust"));
+        assert!(!Comparison::new(&one, &other, &limits()).differs());
+        let motion = &mut other.motions[0];
+        let end = motion.end.as_mut().unwrap();
+        // 28.14 kN in both to 0.1 kN and 1 %; 160 mm to 1 mm; 1.98 to 0.01.
+        end.largest_tension_n.as_mut().unwrap().value += 200.0;
+        end.largest_movement_m.as_mut().unwrap().value += 0.004;
+        end.largest_movement_factor.as_mut().unwrap().value = 1.5;
+        end.largest_tension_factor = None;
+        end.snatches = 13;
+        motion.columns.get_mut("tension_max_n").unwrap().values[3] += 900.0;
+        motion.columns.get_mut("tension_max_time_s").unwrap().values[3] += 0.2;
+        let comparison = Comparison::new(&one, &other, &limits());
+        let said: Vec<(&str, &str)> = (comparison.said.iter())
+            .map(|said| (said.what.as_str(), said.now.as_deref().unwrap_or("-")))
+            .collect();
+        assert_eq!(
+            said,
+            [
+                ("motion \"gust\", largest movement", "164 mm of \"n10\" at 0 s"),
+                ("motion \"gust\", largest tension over static", "-"),
+                (
+                    "motion \"gust\", largest movement over static",
+                    "1.50 of \"n30\" at 0.188 s"
+                ),
+                (
+                    "motion \"gust\", segments",
+                    "went slack 12 times, came taut again 13 times"
+                ),
+            ]
+        );
+        assert_eq!(comparison.numbers.len(), 1);
+        assert_eq!(
+            (comparison.numbers[0].case.as_str(), comparison.numbers[0].id.as_str()),
+            ("motion/gust", "main n3 to n4")
+        );
+        other.motions.clear();
+        let comparison = Comparison::new(&one, &other, &limits());
+        assert_eq!(comparison.said[0].what, "motion \"gust\"");
+        assert_eq!(comparison.said[0].now, None);
     }
 
     #[test]

@@ -310,7 +310,10 @@ fn worst_numbers(results: &Comparison) -> Sheet {
         let value = |number: f64| match (name.as_str(), unit.as_str()) {
             ("slack", _) => Cell::text(if number == 0.0 { "taut" } else { "slack" }),
             // Places and lengths are metres; movements, and what differs in them, are millimetres.
-            (name, "m") if !name.starts_with("displacement") && !name.ends_with("change") => {
+            (name, "m")
+                if !["displacement", "movement"].iter().any(|word| name.starts_with(word))
+                    && !name.ends_with("change") =>
+            {
                 Cell::text(format!("{number:.4} m"))
             }
             _ => Cell::text(format!("{} {eyes}", three(number * scale)).trim_end().to_owned()),

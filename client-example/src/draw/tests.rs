@@ -1,5 +1,6 @@
 use super::*;
 use crate::colour::Scale;
+use crate::run::motion_sample;
 use crate::run::sample::{self, Names};
 
 fn nasty() -> crate::run::Run {
@@ -101,4 +102,51 @@ fn modes_are_drawn_with_their_frequencies() {
     // Shapes that do not fit the modes are not drawn.
     run.states[0].columns.get_mut("mode_shape").unwrap().components = 6;
     assert!(modes(&run, &run.states[0]).is_empty());
+}
+
+fn drawing(run: &crate::run::Run, name: &str) -> String {
+    let drawings = motion(run, &run.motions[0]);
+    let names: Vec<String> = drawings.iter().map(|(name, _)| name.clone()).collect();
+    let found = drawings.into_iter().find(|(known, _)| known == name);
+    found.unwrap_or_else(|| panic!("no {name} among {names:?}")).1
+}
+
+#[test]
+fn a_rope_over_time_says_which_way_time_runs_and_how_fast_a_wave_is() {
+    let mut run = motion_sample::run_named("<b>");
+    let drawn = drawing(&run, "rope-main");
+    assert!(
+        drawn.contains("time, downwards") && drawn.contains("transverse wave, 211 m/s"),
+        "{drawn}"
+    );
+    // On the tension too: an axial wave passes 39.6 m in 10 ms of 400, too fast to be followed by eye.
+    assert!(!drawn.contains("axial wave"));
+    assert!(drawn.contains("positive along (0, 0, 1.00)") && !drawn.contains("<b>"));
+    run.motions[0].waves[0].axial_m_per_s = 900.0;
+    assert!(drawing(&run, "rope-main").contains("axial wave, 900 m/s"));
+    // A slack rope is white, and the scale says so.
+    assert!(!drawn.contains("white: slack"));
+    run.motions[0].frames[20].ropes[0].tension_n[5] = 0.0;
+    let slack = drawing(&run, "rope-main");
+    assert!(slack.contains("white: slack") && slack.contains("data-what=\"slack\""));
+}
+
+#[test]
+fn quantities_have_units_and_extremes() {
+    let run = motion_sample::run_named("gust");
+    let drawn = drawing(&run, "watched-1");
+    let heights = run.motions[0].watched(0);
+    let largest = heights.iter().copied().fold(0.0, f64::max);
+    assert!(
+        drawn.contains(&format!("{} mm at ", crate::number::three(largest * 1e3))),
+        "{drawn}"
+    );
+    assert!(drawn.contains("(kN)") && drawn.contains("(m/s)") && drawn.contains("tie breaks, 0 s"));
+    let drawn = drawing(&run, "energy");
+    for label in [">kinetic ", ">elastic change ", ">dissipated ", ">released "] {
+        assert!(drawn.contains(label), "{label}");
+    }
+    assert!(drawn.contains("Zero throughout: potential, work done."));
+    let drawn = drawing(&run, "spectra-1");
+    assert!(drawn.contains("data-natural-hz") && drawn.contains(">f1<") && drawn.contains(" Hz</text>"));
 }

@@ -2,6 +2,7 @@
 
 mod data;
 mod matrix;
+mod motions;
 mod pictures;
 
 use ropewalk_api::ropewalk::v1;
@@ -45,6 +46,7 @@ pub(crate) fn page(run: &Run, sheets: &[Sheet], scale: &Scale) -> String {
             "checks" => body.push_str(&pictures::tension_map(run)),
             "anchor-sets" => body.push_str(&pictures::together(run)),
             "losses" => body.push_str(&matrix::losses(run)),
+            "motions" => body.push_str(&motions::sections(run)),
             "loads" => body.push_str(&pictures::load_picture(run)),
             "doubling" => body.push_str(&doubling(run)),
             _ => {}

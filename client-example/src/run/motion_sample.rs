@@ -40,14 +40,15 @@ fn mirrored(shape: &dyn Fn(f64) -> f64, at: f64) -> f64 {
     }
 }
 
-/// Height of a point at a time (m).
+/// Height of a point at a time (m): what moves is let in over the first 8 ms, so that the rope starts straight.
 pub(crate) fn height(material: f64, time: f64) -> f64 {
     let first = |at: f64| {
         let off = (at - PIECE_M * f64::from(BREAK_AT)) / 1.6;
         0.16 * (-off * off).exp()
     };
     let way = speed() * time;
-    0.5 * (mirrored(&first, material - way) + mirrored(&first, material + way))
+    let let_in = (time / 0.008).clamp(0.0, 1.0);
+    0.5 * let_in * (mirrored(&first, material - way) + mirrored(&first, material + way))
 }
 
 fn tension(material: f64, time: f64) -> f64 {
@@ -61,7 +62,11 @@ fn tension(material: f64, time: f64) -> f64 {
         let at = at.rem_euclid(2.0 * length());
         if at <= length() { at } else { 2.0 * length() - at }
     };
-    let axial = 6e3 * (-8.0 * time).exp() * 0.5 * (pulse(fold(material - way)) + pulse(fold(material + way)));
+    let axial = 6e3
+        * (time / 0.002).min(1.0)
+        * (-8.0 * time).exp()
+        * 0.5
+        * (pulse(fold(material - way)) + pulse(fold(material + way)));
     let slope = (height(material + 0.1, time) - height(material - 0.1, time)) / 0.2;
     TENSION_N + axial + 1.2e6 * slope * slope
 }
@@ -442,12 +447,16 @@ fn motion(id: &str, nodes: Vec<String>) -> Vec<Event> {
 
 /// A run with one motion.
 pub(crate) fn run_named(id: &str) -> Run {
-    collected(events(id)).unwrap()
+    collected_of(id, events(id)).unwrap()
 }
 
 /// The run of some events.
 pub(crate) fn collected(events: Vec<Event>) -> Result<Run, String> {
-    let brief = brief("gust");
+    collected_of("gust", events)
+}
+
+fn collected_of(id: &str, events: Vec<Event>) -> Result<Run, String> {
+    let brief = brief(id);
     let mut collector = Collector::of(&v1::RunRequest {
         brief: Some(brief.clone()),
         only: Vec::new(),

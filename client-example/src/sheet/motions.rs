@@ -3,12 +3,14 @@
 use ropewalk_api::ropewalk::v1;
 
 use super::text::{terminal_up_to, wrap};
-use super::{Cell, Mark, Row, Sheet, head, page_head, terminal};
+use super::{Cell, Mark, Row, Sheet, file_head, head, page_head, terminal};
 use crate::number::{counted, for_eyes, order, percent, three};
 use crate::run::{MotionRun, Run};
 
 /// Events that a terminal shows.
 const EVENTS: usize = 20;
+/// How far from a peak a natural frequency may be to stand beside it, over that frequency.
+const NEAR: f64 = 0.25;
 /// Width of the names in a block of lines.
 const NAMES: usize = 26;
 
@@ -65,15 +67,14 @@ pub(crate) fn motion_lines(run: &Run, motion: &MotionRun) -> Vec<(&'static str, 
     let Some(begin) = &motion.begin else {
         return lines;
     };
-    let planned =
-        planned_step(run, motion).map_or(String::new(), |step| format!(" of {} as planned", step_words(step)));
+    let planned = planned_step(run, motion).map_or(String::new(), |step| format!("planned {}, ", step_words(step)));
     lines.push((
         "steps",
         format!(
-            "{}{planned}, the smallest {}; {}",
-            end.steps,
+            "{}; {planned}smallest {}; {}",
+            counted(as_size(end.steps), "step"),
             step_words(end.smallest_step_s),
-            counted(usize::try_from(end.iterations).unwrap_or(usize::MAX), "iteration")
+            counted(as_size(end.iterations), "iteration")
         ),
     ));
     let extremes = [
@@ -126,13 +127,17 @@ pub(crate) fn motion_lines(run: &Run, motion: &MotionRun) -> Vec<(&'static str, 
             "hanging ropes",
             format!(
                 "{} divided; that moves nodes by up to {} mm and changes tensions by up to {} kN",
-                counted(usize::try_from(begin.divided_segments).unwrap_or(usize::MAX), "segment"),
+                counted(as_size(begin.divided_segments.into()), "segment"),
                 three(begin.moved_by_division_m * 1e3),
                 three(begin.tension_by_division_n / 1e3)
             ),
         ));
     }
     lines
+}
+
+fn as_size(count: u64) -> usize {
+    usize::try_from(count).unwrap_or(usize::MAX)
 }
 
 fn times(count: u64) -> String {
@@ -205,9 +210,9 @@ fn mass_words(begin: &v1::MotionBegin) -> String {
 /// A motion for a terminal.
 pub(crate) fn motion_text(run: &Run, motion: &MotionRun) -> String {
     let mut text = format!("Motion {}\n", motion.id);
-    let indent = " ".repeat(NAMES + 4);
+    let indent = format!("\n{}", " ".repeat(NAMES + 4));
     for (name, words) in motion_lines(run, motion) {
-        let words = wrap(&words, 116 - NAMES, &indent);
+        let words = wrap(&words, 114 - NAMES, "").replace('\n', &indent);
         text.push_str(&format!("  {name:NAMES$}  {words}\n"));
     }
     if let Some(events) = motion_events(motion) {
@@ -241,25 +246,25 @@ pub(crate) fn motions(run: &Run) -> Option<Sheet> {
         heads: vec![
             head("motion", ""),
             head("how it ended", ""),
-            head("steps", ""),
-            page_head("smallest step", "ms"),
+            file_head("steps", ""),
+            file_head("smallest step", "ms"),
             head("largest tension", "kN"),
             head("in", ""),
-            page_head("at", "s"),
+            file_head("at", "s"),
             head("largest movement", "mm"),
             head("of", ""),
-            page_head("at", "s"),
+            file_head("at", "s"),
             head("largest pull", "kN"),
             head("on", ""),
-            page_head("at", "s"),
+            file_head("at", "s"),
             head("tension over static", ""),
-            page_head("in", ""),
+            file_head("in", ""),
             head("movement over static", ""),
-            page_head("of", ""),
+            file_head("of", ""),
             head("slack", ""),
             head("snatches", ""),
-            page_head("largest kinetic energy", "J"),
-            page_head("error of the ledger over it", "%"),
+            file_head("largest kinetic energy", "J"),
+            file_head("error of the ledger over it", "%"),
         ],
         rows,
         note: "Motions in time from solved states. Not judged by checks: peaks are to be compared with resistances by an engineer. \
@@ -338,7 +343,7 @@ fn motion_events(motion: &MotionRun) -> Option<Sheet> {
         heads: vec![
             head("time", "s"),
             head("what", ""),
-            head("rope or strut", ""),
+            head("member", ""),
             head("from", ""),
             head("to", ""),
         ],
@@ -361,32 +366,30 @@ pub(crate) enum Told {
 /// Speeds of waves beside the step that follows them; none where no rope has any.
 fn motion_waves(run: &Run, motion: &MotionRun, told: Told) -> Option<Sheet> {
     let used = planned_step(run, motion);
-    let resolves = |step: Option<f64>| match (step, used) {
-        // What the engine rounds in its last digits is no difference.
-        (Some(step), Some(used)) => Some(used <= step * (1.0 + 1e-9)),
-        _ => None,
-    };
-    let words = |resolved: Option<bool>| match resolved {
-        Some(true) => Cell::text("followed"),
-        Some(false) => Cell::text("smeared"),
-        None => Cell::Empty,
-    };
+    // What the engine rounds in its last digits is no difference.
+    let follows = |step: Option<f64>| Some(used? <= step? * (1.0 + 1e-9));
     let rows = motion.waves.iter().filter_map(|waves| {
-        let transverse = resolves(waves.transverse_step_s);
+        let (transverse, axial) = (follows(waves.transverse_step_s), follows(Some(waves.axial_step_s)));
         let shown = motion.shown.ropes.iter().any(|rope| rope.cable == waves.cable);
         if told == Told::Telling && !shown && transverse != Some(false) {
             return None;
         }
+        let followed = match (transverse, axial) {
+            (_, Some(true)) => "transverse and axial",
+            (Some(true), _) => "transverse",
+            (Some(false), _) => "neither",
+            (None, Some(false)) => "not the axial ones",
+            (None, None) => "",
+        };
         let cells = vec![
             Cell::text(&waves.cable),
             Cell::three(waves.transverse_least_m_per_s),
             Cell::three(waves.transverse_most_m_per_s),
             Cell::maybe(waves.transverse_step_s.map(|step| Cell::three(step * 1e3))),
-            words(transverse),
             Cell::three(waves.axial_m_per_s),
             Cell::three(waves.axial_step_s * 1e3),
-            words(resolves(Some(waves.axial_step_s))),
             Cell::maybe(used.map(|step| Cell::three(step * 1e3))),
+            Cell::text(followed),
         ];
         Some(Row {
             cells,
@@ -404,19 +407,18 @@ fn motion_waves(run: &Run, motion: &MotionRun, told: Told) -> Option<Sheet> {
         title: format!("Motion {}: waves on ropes", motion.id).into(),
         heads: vec![
             head("rope", ""),
-            head("transverse, slowest", "m/s"),
-            head("transverse, fastest", "m/s"),
-            head("step that follows it", "ms"),
-            head("so it is", ""),
-            head("axial", "m/s"),
-            head("step that follows it", "ms"),
-            head("so it is", ""),
-            head("step used", "ms"),
+            head("transverse slowest", "m/s"),
+            head("transverse fastest", "m/s"),
+            head("takes steps of", "ms"),
+            head("axial waves", "m/s"),
+            head("takes steps of", "ms"),
+            head("steps planned", "ms"),
+            head("followed are", ""),
         ],
         rows,
-        note: "Speeds over the unstressed length in the state at the start. Followed: the wave takes a step or more from one point \
-               to the next; smeared: it passes more than a segment in a step. Listed are ropes that frames show and those whose \
-               transverse waves are smeared; the CSV file has all.",
+        note: "Speeds over the unstressed length in the state at the start. Takes steps of: the time in which the wave crosses one \
+               segment; longer steps smear it. Listed are ropes that frames show and those whose transverse waves are smeared; \
+               the CSV file has all.",
     })
 }
 
@@ -429,7 +431,11 @@ fn motion_peaks(run: &Run, motion: &MotionRun) -> Option<Sheet> {
         let (unit, scale) = for_eyes(&spectrum.unit);
         for peak in &spectrum.peaks {
             let off = |frequency: f64| (peak.frequency_hz - frequency).abs();
-            let nearest = natural.iter().min_by(|a, b| off(a.1).total_cmp(&off(b.1)));
+            // Beyond the modes that were asked for, the nearest one says nothing.
+            let nearest = natural
+                .iter()
+                .min_by(|a, b| off(a.1).total_cmp(&off(b.1)))
+                .filter(|(_, frequency)| off(*frequency) <= (NEAR * frequency).max(spectrum.resolution_hz));
             let mut cells = vec![
                 Cell::text(&spectrum.watched),
                 Cell::three(peak.frequency_hz),
@@ -471,8 +477,8 @@ fn motion_peaks(run: &Run, motion: &MotionRun) -> Option<Sheet> {
         ],
         rows,
         note: "Largest first for each watched quantity. Amplitude: of a sine that makes the peak. Nearest mode: natural mode of the \
-               state that the motion starts from, where modes are asked for; a large movement has other frequencies than a small \
-               one.",
+               state that the motion starts from, where modes are asked for and one is within a quarter; a large movement has other \
+               frequencies than a small one.",
     })
 }
 

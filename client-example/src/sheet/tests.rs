@@ -1,5 +1,5 @@
 use super::*;
-use crate::run::sample;
+use crate::run::{motion_sample, sample};
 use ropewalk_api::ropewalk::v1;
 
 fn shown(sheet: &Sheet, row: usize) -> Vec<String> {
@@ -329,4 +329,142 @@ fn natural_frequencies_stand_with_period_and_part() {
     assert_eq!(shown(1)[1..8], ["1", "2.50", "0.400", "0", "25", "100", "m"]);
     assert_eq!(shown(3)[1..4], ["3 without stiffness", "–", "–"]);
     assert_eq!((sheet.rows[1].mark, sheet.rows[3].mark), (Mark::Plain, Mark::Bad));
+}
+
+#[test]
+fn a_motion_tells_what_was_largest_in_lines_and_in_a_row() {
+    let run = motion_sample::run_named("gust");
+    assert!(motions(&sample::run()).is_none());
+    let sheet = motions(&run).unwrap();
+    assert_eq!(
+        shown(&sheet, 0),
+        [
+            "gust",
+            "followed to its end, 0.400 s",
+            "2003",
+            "0.0500",
+            "28.1",
+            "main",
+            "0.0140",
+            "160",
+            "n10",
+            "0",
+            "27.3",
+            "n0",
+            "0.0146",
+            "1.41",
+            "main",
+            "1.98",
+            "n30",
+            "12",
+            "12",
+            &crate::number::three(run.motions[0].end.as_ref().unwrap().largest_kinetic_j),
+            &crate::number::three(2.0 / run.motions[0].end.as_ref().unwrap().largest_kinetic_j),
+        ]
+    );
+    let lines = motion_lines(&run, &run.motions[0]);
+    let line = |name: &str| lines.iter().find(|(known, _)| *known == name).unwrap().1.as_str();
+    assert_eq!(line("largest tension"), "28.1 kN in main, 0.0140 s");
+    assert_eq!(line("largest movement"), "160 mm at n10, 0 s");
+    assert_eq!(line("largest pull on a support"), "27.3 kN at n0, 0.0146 s");
+    assert!(
+        line("against the static answer")
+            .starts_with("tension of main 1.41 times the static answer (0.0140 s); movement of n30 1.98"),
+        "{}",
+        line("against the static answer")
+    );
+    assert_eq!(line("slack"), "segments went slack 12 times, came taut again 12 times");
+    // 0.4 s in 2000 steps.
+    assert_eq!(
+        line("steps"),
+        "2003 steps; planned 0.200 ms, smallest 0.0500 ms; 5210 iterations"
+    );
+    assert!(line("error of the energy ledger").starts_with("at most 0.0200 J, "));
+}
+
+#[test]
+fn waves_stand_beside_the_step_that_follows_them() {
+    let mut run = motion_sample::run_named("gust");
+    let waves = |run: &Run, told: Told| {
+        let sheets = motion_sheets(run, &run.motions[0], told);
+        sheets.into_iter().find(|sheet| sheet.file.ends_with("-waves"))
+    };
+    let sheet = waves(&run, Told::Telling).unwrap();
+    // c = sqrt(20 kN / 0.45 kg/m) = 210.8 m/s; 0.99 m over it 4.70 ms, over 3900 m/s 0.254 ms.
+    let row = shown(&sheet, 0);
+    assert_eq!(
+        row,
+        [
+            "main",
+            "211",
+            "211",
+            "4.70",
+            "3900",
+            "0.254",
+            "0.200",
+            "transverse and axial"
+        ]
+    );
+    // A rope that no frame shows is listed only where its transverse waves are smeared.
+    let mut other = run.motions[0].waves[0].clone();
+    other.cable = "other".to_owned();
+    run.motions[0].waves.push(other);
+    assert_eq!(waves(&run, Told::Telling).unwrap().rows.len(), 1);
+    assert_eq!(waves(&run, Told::All).unwrap().rows.len(), 2);
+    run.motions[0].waves[1].transverse_step_s = Some(1e-4);
+    run.motions[0].waves[1].axial_step_s = 1e-5;
+    let sheet = waves(&run, Told::Telling).unwrap();
+    assert_eq!(
+        (shown(&sheet, 1)[7].as_str(), sheet.rows[1].mark),
+        ("neither", Mark::Open)
+    );
+}
+
+#[test]
+fn events_are_in_order_and_peaks_beside_the_nearest_natural_frequency() {
+    let run = motion_sample::run_named("gust");
+    let text = motion_text(&run, &run.motions[0]);
+    assert!(
+        text.contains("left out here: 5; all in motion-gust-events.csv"),
+        "{text}"
+    );
+    let sheets = motion_sheets(&run, &run.motions[0], Told::All);
+    assert_eq!(shown(&sheets[0], 0), ["0", "began to break", "tie", "n10", "low"]);
+    assert_eq!(sheets[0].rows.len(), 25);
+    let peaks = sheets.last().unwrap();
+    let first = shown(peaks, 0);
+    let frequency: f64 = first[1].parse().unwrap();
+    let mode: f64 = first[4].parse().unwrap();
+    let natural: f64 = first[5].parse().unwrap();
+    // Natural frequencies of the string are multiples of 210.8 / 2 / 39.6 = 2.662 Hz.
+    assert!((natural - 2.662 * mode).abs() < 0.01 * natural, "{first:?}");
+    assert!((frequency - natural).abs() <= 2.662 / 2.0, "{first:?}");
+    assert_eq!(first[3], "mm");
+}
+
+#[test]
+fn a_motion_without_an_answer_says_why_and_what_to_try() {
+    let mut run = motion_sample::run_named("gust");
+    let motion = &mut run.motions[0];
+    let end = motion.end.as_mut().unwrap();
+    end.set_outcome(v1::MotionOutcome::Stopped);
+    end.time_s = 0.25;
+    end.failure = Some(v1::Failure {
+        message: "steps became too small".to_owned(),
+        cure: "give the node a mass".to_owned(),
+        ..Default::default()
+    });
+    let text = motion_text(&run, &run.motions[0]);
+    assert!(text.contains("stopped at 0.250 s: steps became too small"), "{text}");
+    assert!(text.contains("give the node a mass"), "{text}");
+    assert_eq!(motions(&run).unwrap().rows[0].mark, Mark::Gone);
+    run.summary.set_verdict(v1::Verdict::NoAnswer);
+    assert_eq!(why(&run), "motion \"gust\": stopped at 0.250 s: steps became too small");
+    // One that could not begin has no numbers to tell.
+    let motion = &mut run.motions[0];
+    motion.begin = None;
+    motion.end.as_mut().unwrap().set_outcome(v1::MotionOutcome::NotBegun);
+    let lines = motion_lines(&run, &run.motions[0]);
+    let names: Vec<&str> = lines.iter().map(|(name, _)| *name).collect();
+    assert_eq!(names, ["how it ended", "try"]);
 }

@@ -1,7 +1,9 @@
 //! Natural frequencies about the states of a brief.
 
+use std::ops::ControlFlow;
+
 use super::StateResult;
-use crate::equilibrium::Analysis;
+use crate::equilibrium::{Analysis, IterationReport, Way};
 use crate::load::Case;
 use crate::model::ReferenceState;
 use crate::motion::{About, MassGiven, Modes, ModesError, natural_modes};
@@ -60,13 +62,17 @@ impl ModesGiven {
     }
 }
 
-/// Modes about a state of `case`.
+/// Modes about a state of `case`, found by iterations of which `last` was the last.
+///
+/// `observe` is asked with that report, again and again, whether to go on.
 pub(super) fn modes_about(
     analysis: &Analysis,
     asked: &ModesGiven,
     case: &Case,
     state: &StateResult,
     reference: &ReferenceState,
+    last: Option<&IterationReport>,
+    observe: &mut dyn FnMut(&IterationReport) -> ControlFlow<()>,
 ) -> Box<Result<Modes, ModesError>> {
     let about = About {
         case,
@@ -75,5 +81,18 @@ pub(super) fn modes_about(
         axial_forces: &state.axial_forces,
         lying: &state.lying,
     };
-    Box::new(natural_modes(analysis, &about, &asked.masses, asked.count))
+    let last = last.copied().unwrap_or(IterationReport {
+        way: Way::Newton,
+        load_step: 1,
+        load_factor: 1.0,
+        iteration: 0,
+        residual: 0.0,
+        worst_node: None,
+        strain_energy: 0.0,
+        slack: 0,
+        step_length: 0.0,
+    });
+    Box::new(natural_modes(analysis, &about, &asked.masses, asked.count, &mut || {
+        observe(&last)
+    }))
 }

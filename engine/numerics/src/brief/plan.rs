@@ -105,7 +105,16 @@ impl Plan {
             result.diagnosis = diagnose(&self.analysis, asked, &case, &result, None).map(Box::new);
         }
         if let Some(asked) = brief.modes.as_ref().filter(|asked| asked.reference) {
-            result.modes = Some(modes_about(&self.analysis, asked, &case, &result, &state));
+            let last = history.last();
+            result.modes = Some(modes_about(
+                &self.analysis,
+                asked,
+                &case,
+                &result,
+                &state,
+                last,
+                observe,
+            ));
         }
         let mut outcome = ReferenceOutcome {
             state,
@@ -234,7 +243,8 @@ impl Plan {
                 let modes = modes.as_ref().filter(|_| look_into);
                 let asked = modes.filter(|asked| asked.cases.binary_search(&index).is_ok());
                 if let Some(asked) = asked.filter(|_| solution.termination == Termination::Converged && !grows) {
-                    let modes = modes_about(&self.analysis, asked, &case, &result, &reference.state);
+                    let last = solution.history.last();
+                    let modes = modes_about(&self.analysis, asked, &case, &result, &reference.state, last, observe);
                     result.modes = Some(modes);
                 }
                 let outcome = CaseOutcome::State {

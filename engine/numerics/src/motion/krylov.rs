@@ -11,6 +11,7 @@
 
 use nalgebra::DMatrix;
 
+use super::modes::{ModesError, Observer, go_on};
 use super::pencil::Pencil;
 use crate::equilibrium::linear::Factor;
 
@@ -57,12 +58,23 @@ pub(super) struct Lowest {
 }
 
 /// The lowest `count` roots of a pencil, and those that can not be told apart from the last of them; fewer where there are
-/// fewer. `None` where numbers are beyond use.
-pub(super) fn lowest(pencil: &Pencil<'_>, factor: &mut Factor, count: usize) -> Option<Lowest> {
-    let first = pencil.shift_below(factor)?;
+/// fewer.
+///
+/// `observe` is asked before each factorisation and each vector.
+///
+/// # Errors
+/// [`ModesError::BeyondUse`] where numbers are, [`ModesError::Cancelled`] where `observe` stops it.
+pub(super) fn lowest(
+    pencil: &Pencil<'_>,
+    factor: &mut Factor,
+    count: usize,
+    observe: Observer<'_>,
+) -> Result<Lowest, ModesError> {
+    let beyond_use = || ModesError::BeyondUse;
+    let first = pencil.shift_below(factor, observe)?;
     let mut search = Search::new(pencil, factor, first);
-    while search.done < FIRST_VECTORS && search.step() {}
-    let ritz = search.ritz()?;
+    while search.done < FIRST_VECTORS && search.step(observe)? {}
+    let ritz = search.ritz().ok_or_else(beyond_use)?;
     // Rounding of roots that are zero must not set the shift.
     let rounding = 10.0 * pencil.rounding();
     let least_gap = 1e-3 * pencil.rounding();
@@ -71,37 +83,43 @@ pub(super) fn lowest(pencil: &Pencil<'_>, factor: &mut Factor, count: usize) -> 
         (Some(lowest), Some(positive)) => Some(lowest.min(0.0) - 1e-3 * positive),
         _ => None,
     };
+    go_on(observe)?;
     let shift = match wanted.filter(|wanted| pencil.take_shift(factor, *wanted)) {
         Some(wanted) => wanted,
         None if pencil.take_shift(factor, first) => first,
-        None => return None,
+        None => return Err(ModesError::BeyondUse),
     };
     let mut search = Search::new(pencil, factor, shift);
     let most = pencil.size().min(8 * count + 160);
     loop {
         let until = (search.done + search.done / 8 + WIDTH).max(2 * count + WIDTH).min(most);
-        while search.done < until && search.step() {}
-        let ritz = search.ritz()?;
+        while search.done < until && search.step(observe)? {}
+        let ritz = search.ritz().ok_or_else(beyond_use)?;
         let (is_all, at_end) = (search.is_exhausted(), search.done >= most);
         let good = ritz.good();
         let gap = ritz.gap(count, if is_all { ritz.roots.len() } else { good }, least_gap);
         let Some((found, limits)) = gap else {
             if at_end || is_all {
                 let found = good.min(count);
-                return Some(search.finish(&ritz, found, None));
+                return Ok(search.finish(&ritz, found, None));
             }
             continue;
         };
-        let counted = limits.into_iter().find_map(|limit| {
-            let below = pencil.count_below(search.factor, limit)?;
-            Some(Counted { limit, below })
-        });
+        let mut counted = None;
+        for limit in limits {
+            go_on(observe)?;
+            if let Some(below) = pencil.count_below(search.factor, limit) {
+                counted = Some(Counted { limit, below });
+                break;
+            }
+        }
+        go_on(observe)?;
         if !pencil.take_shift(search.factor, shift) {
-            return None;
+            return Err(ModesError::BeyondUse);
         }
         let is_complete = counted.is_none_or(|counted| counted.below == found);
         if is_complete || at_end || is_all {
-            return Some(search.finish(&ritz, found, counted));
+            return Ok(search.finish(&ritz, found, counted));
         }
         search.add_other();
     }
@@ -252,13 +270,14 @@ impl<'a, 'b> Search<'a, 'b> {
     }
 
     /// Applies `A` to the next basis vector; `false` where there is none.
-    fn step(&mut self) -> bool {
+    fn step(&mut self, observe: Observer<'_>) -> Result<bool, ModesError> {
+        go_on(observe)?;
         if self.done == self.basis.len() {
             if !self.exhausted {
                 self.add_other();
             }
             if self.done == self.basis.len() {
-                return false;
+                return Ok(false);
             }
         }
         let image = self.images[self.done].clone();
@@ -270,7 +289,7 @@ impl<'a, 'b> Search<'a, 'b> {
         }
         self.columns.push(products);
         self.done += 1;
-        true
+        Ok(true)
     }
 
     fn ritz(&self) -> Option<Ritz> {

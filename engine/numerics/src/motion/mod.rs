@@ -24,4 +24,4 @@ mod tests;
 
 pub use division::Division;
 pub use mass::{MassGiven, nodal_masses};
-pub use modes::{About, Mode, ModeKind, Modes, ModesError, RootCount, natural_modes};
+pub use modes::{About, Mode, ModeKind, Modes, ModesError, Observer, RootCount, natural_modes};

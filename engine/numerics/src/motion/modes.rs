@@ -1,5 +1,7 @@
 //! Natural modes about one state.
 
+use std::ops::ControlFlow;
+
 use nalgebra::{DMatrix, Vector3};
 use thiserror::Error;
 
@@ -131,6 +133,20 @@ pub enum ModesError {
     /// Numbers are beyond use.
     #[error("numbers are beyond use")]
     BeyondUse,
+    /// The observer stopped the search.
+    #[error("the search was stopped")]
+    Cancelled,
+}
+
+/// Asked before each factorisation and each vector of a search whether it goes on.
+pub type Observer<'a> = &'a mut dyn FnMut() -> ControlFlow<()>;
+
+/// Asks whether to go on.
+pub(super) fn go_on(observe: Observer<'_>) -> Result<(), ModesError> {
+    match observe() {
+        ControlFlow::Continue(()) => Ok(()),
+        ControlFlow::Break(()) => Err(ModesError::Cancelled),
+    }
 }
 
 /// The lowest `count` natural modes about a state.
@@ -139,12 +155,14 @@ pub enum ModesError {
 /// What sliding against friction and pressure make unsymmetric is left out, and its size told.
 ///
 /// # Errors
-/// [`ModesError`] if the pencil of stiffness and mass has no roots, or none that can be found.
+/// [`ModesError`] if the pencil of stiffness and mass has no roots, or none that can be found; [`ModesError::Cancelled`] as
+/// soon as `observe` breaks, which is asked before each factorisation and each vector.
 pub fn natural_modes(
     analysis: &Analysis,
     about: &About<'_>,
     given: &MassGiven,
     count: usize,
+    observe: Observer<'_>,
 ) -> Result<Modes, ModesError> {
     let structure = analysis.structure();
     let loading = Loading::new(structure, about.case, &about.case.unstressed_lengths, 1.0)?;
@@ -164,10 +182,13 @@ pub fn natural_modes(
         return Err(ModesError::NoMass);
     }
     let mut factor = analysis.new_factor();
-    if !massless.is_empty() && !pencil.holds_massless(&mut factor) {
-        return Err(ModesError::MasslessNotHeld { nodes: massless });
+    if !massless.is_empty() {
+        go_on(observe)?;
+        if !pencil.holds_massless(&mut factor) {
+            return Err(ModesError::MasslessNotHeld { nodes: massless });
+        }
     }
-    let found = lowest(&pencil, &mut factor, count).ok_or(ModesError::BeyondUse)?;
+    let found = lowest(&pencil, &mut factor, count, observe)?;
     let (along, moving_mass) = along_axes(structure, &pencil);
     let modes = (found.pairs.iter())
         .map(|pair| mode(structure, &pencil, pair, &along))

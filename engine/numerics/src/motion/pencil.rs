@@ -7,6 +7,7 @@
 //! no root is left of it, exactly. Directions without mass follow the others at once; they have no root of their own and add
 //! nothing to the count while `K` on them alone is positive definite, which is tested first.
 
+use super::modes::{ModesError, Observer, go_on};
 use crate::assembly::{Pattern, Structure};
 use crate::equilibrium::eigen::largest_on_diagonal;
 use crate::equilibrium::linear::Factor;
@@ -106,17 +107,23 @@ impl<'a> Pencil<'a> {
         ROUNDING * self.quotients().fold(0.0, f64::max)
     }
 
-    /// A shift below every root, with the shifted matrix factorised; `None` where numbers are beyond use.
-    pub(super) fn shift_below(&self, factor: &mut Factor) -> Option<f64> {
+    /// A shift below every root, with the shifted matrix factorised.
+    ///
+    /// # Errors
+    /// Where numbers are beyond use, or `observe` stops it before a factorisation.
+    pub(super) fn shift_below(&self, factor: &mut Factor, observe: Observer<'_>) -> Result<f64, ModesError> {
         let size = (FIRST_SHIFT * self.quotients().fold(f64::INFINITY, f64::min)).max(self.rounding());
         let mut shift = -if size > 0.0 && size.is_finite() { size } else { 1.0 };
-        while !self.take_shift(factor, shift) {
+        loop {
+            go_on(observe)?;
+            if self.take_shift(factor, shift) {
+                return Ok(shift);
+            }
             shift *= 4.0;
             if !shift.is_finite() {
-                return None;
+                return Err(ModesError::BeyondUse);
             }
         }
-        Some(shift)
     }
 
     /// How many roots lie below `limit` (rad²/s²); `None` where a pivot or the growth of the elimination leaves it open.

@@ -1,6 +1,7 @@
 //! Against closed forms, and against all roots of the dense pencil.
 
 use std::f64::consts::PI;
+use std::ops::ControlFlow;
 use std::sync::Arc;
 
 use nalgebra::{DMatrix, Vector3};
@@ -40,7 +41,7 @@ impl Solved {
             ..Case::default()
         };
         let analysis = Analysis::new(net);
-        let go_on = &mut |_: &_| std::ops::ControlFlow::Continue(());
+        let go_on = &mut |_: &_| ControlFlow::Continue(());
         let found = solve(
             &analysis,
             &case,
@@ -69,7 +70,7 @@ impl Solved {
             axial_forces: &self.axial_forces,
             lying: &self.lying,
         };
-        natural_modes(&self.analysis, &about, given, count)
+        natural_modes(&self.analysis, &about, given, count, &mut || ControlFlow::Continue(()))
     }
 }
 
@@ -436,4 +437,36 @@ fn what_pressure_makes_unsymmetric_is_told() {
         "{:?} {wanted}",
         odd.unsymmetric
     );
+}
+
+/// It is asked before every vector and factorisation, and stops at once wherever it is told to.
+#[test]
+fn a_search_stops_when_asked() {
+    let solved = beads(40, 1.0);
+    let about = About {
+        case: &solved.case,
+        positions: &solved.positions,
+        reference: &solved.start,
+        axial_forces: &solved.axial_forces,
+        lying: &solved.lying,
+    };
+    let search = |until: usize| {
+        let mut asked = 0;
+        let found = natural_modes(&solved.analysis, &about, &MassGiven::default(), 3, &mut || {
+            asked += 1;
+            if asked == until {
+                ControlFlow::Break(())
+            } else {
+                ControlFlow::Continue(())
+            }
+        });
+        (found, asked)
+    };
+    let (found, all) = search(usize::MAX);
+    // As many times as there are vectors in both spaces, and a few factorisations.
+    let vectors = found.unwrap().vectors;
+    assert!(all > vectors && all < vectors + 40, "{all} {vectors}");
+    for until in 1..=all {
+        assert_eq!(search(until), (Err(ModesError::Cancelled), until));
+    }
 }

@@ -84,12 +84,14 @@ fn load(brief: &Brief, driven: &DrivenGiven) -> String {
             amplitude,
             frequency,
             ..
-        } => format!(
-            "{} +- {} {name} at {} Hz",
-            number(*mean),
-            value(*amplitude),
-            number(*frequency)
-        ),
+        } => {
+            let mean = if *mean == 0.0 {
+                String::new()
+            } else {
+                format!("{} ", number(*mean))
+            };
+            format!("{mean}+-{} {name} at {} Hz", value(*amplitude), number(*frequency))
+        }
     }
 }
 

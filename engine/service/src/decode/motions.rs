@@ -294,20 +294,36 @@ fn read_scheme(
                 resolved.left_out(&field, RADIUS);
             }
             let radius = findings.number_or(&field, of, &SPECTRAL_RADIUS, given.spectral_radius, RADIUS);
-            let error = match given.error_m {
-                Some(error) => Some(findings.number(&at.field("error_m"), of, &STEP_ERROR, error)?),
-                None => {
-                    resolved.left_out(&at.field("error_m"), "equal steps");
-                    None
-                }
-            };
+            let error = read_error(given.error_m, of, &at, findings, resolved);
             Some(Scheme::GeneralisedAlpha {
                 spectral_radius: radius?,
-                error,
+                error: error?,
             })
         }
-        Some(GivenScheme::EnergyConserving(_)) => Some(Scheme::Conserving),
+        Some(GivenScheme::EnergyConserving(given)) => {
+            let at = at.field("energy_conserving");
+            let error = read_error(given.error_m, of, &at, findings, resolved)?;
+            Some(Scheme::Conserving { error })
+        }
         Some(GivenScheme::CentralDifferences(_)) => Some(Scheme::CentralDifferences),
+    }
+}
+
+/// Error of a step that is to be kept, if any; `None` where it could not be read.
+fn read_error(
+    given: Option<f64>,
+    of: Of<'_>,
+    at: &Path<'_>,
+    findings: &mut Findings,
+    resolved: &mut Resolved,
+) -> Option<Option<f64>> {
+    let field = at.field("error_m");
+    match given {
+        Some(error) => findings.number(&field, of, &STEP_ERROR, error).map(Some),
+        None => {
+            resolved.left_out(&field, "equal steps");
+            Some(None)
+        }
     }
 }
 

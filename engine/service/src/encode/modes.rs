@@ -140,6 +140,7 @@ fn none(net: &Net, error: &ModesError) -> v1::Finding {
             "give sections their mass per length, or nodes an attached or added mass",
         ),
         ModesError::Loading(_) | ModesError::BeyondUse => ("", String::new(), "check units of masses and stiffnesses"),
+        ModesError::Cancelled => ("", String::new(), "run the brief again"),
     };
     let colon = if named.is_empty() { "" } else { ": " };
     finding(

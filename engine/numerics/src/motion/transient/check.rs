@@ -2,18 +2,23 @@
 
 use nalgebra::Vector3;
 
+use super::record::sampled_steps;
+use super::spectrum::LEAST_SAMPLES;
 use super::system::{System, driven_case};
 use super::waves::wave_speeds;
 use super::{BreakWhen, Driven, Motion, MotionError, Scheme};
 use crate::assembly::Structure;
 use crate::load::Case;
-use crate::model::{CableId, Net, NodeId, SegmentId};
+use crate::model::{Area, CableId, Net, NodeId, SegmentId};
 
 /// Steps allowed in one motion.
 const MOST_STEPS: f64 = 1e8;
 
 /// Bytes allowed for all frames of one motion.
 const MOST_BYTES: f64 = 4e9;
+
+/// Bytes allowed for the samples of one motion, which are kept to its end.
+const MOST_SAMPLE_BYTES: f64 = 2.56e8;
 
 /// Bytes of the ledger and other numbers of a frame.
 const FRAME_BYTES: f64 = 80.0;
@@ -29,6 +34,8 @@ pub struct Extent {
     pub frames: u64,
     /// Size of all frames in double precision (bytes).
     pub bytes: f64,
+    /// Size of the samples for spectra, which are kept to the end, and of working out one of them (bytes).
+    pub sample_bytes: f64,
     /// Largest stable explicit step (s).
     pub stable_step: f64,
 }
@@ -88,7 +95,6 @@ pub(super) fn check_given(structure: &Structure, motion: &Motion) -> Result<(), 
     }
     length("positions", motion.positions.len(), nodes, false)?;
     length("velocities", motion.velocities.len(), nodes, true)?;
-    length("added masses", motion.added_masses.len(), nodes, true)?;
     length("dashpots", motion.damping.segments.len(), segments, true)?;
     let lengths = motion.reference.unstressed_lengths.len();
     length("reference lengths", lengths, net.n_lengths(), false)?;
@@ -121,15 +127,13 @@ pub(super) fn check_given(structure: &Structure, motion: &Motion) -> Result<(), 
     for c in &damping.segments {
         number("dashpot of a segment", *c, not_negative(*c), "zero or more")?;
     }
-    for mass in &motion.added_masses {
-        number("added mass", *mass, not_negative(*mass), "zero or more")?;
-    }
-    if let Scheme::GeneralisedAlpha { spectral_radius, error } = motion.scheme {
+    check_added(net, motion)?;
+    if let Scheme::GeneralisedAlpha { spectral_radius, .. } = motion.scheme {
         let within = (0.0..=1.0).contains(&spectral_radius);
         number("spectral radius", spectral_radius, within, "0 to 1")?;
-        if let Some(error) = error {
-            number("error of a step", error, positive(error), "positive")?;
-        }
+    }
+    if let Some(error) = motion.scheme.allowed_error() {
+        number("error of a step", error, positive(error), "positive")?;
     }
     for (node, velocity) in motion.velocities.iter().enumerate() {
         let node = NodeId::new(node);
@@ -139,9 +143,67 @@ pub(super) fn check_given(structure: &Structure, motion: &Motion) -> Result<(), 
             return Err(MotionError::HeldVelocity { node });
         }
     }
+    check_spectra(motion)?;
     check_frames(net, motion)?;
     check_driven(net, motion)?;
     check_breaks(net, motion)
+}
+
+fn check_added(net: &Net, motion: &Motion) -> Result<(), MotionError> {
+    let given = &motion.masses;
+    let in_range = |what, index: usize, present: usize| {
+        if index < present {
+            Ok(())
+        } else {
+            Err(MotionError::NoPlaceForMass { what, index, present })
+        }
+    };
+    for (node, _) in &given.nodes {
+        in_range("node", node.index(), net.nodes().len())?;
+    }
+    for (segment, _) in &given.segments {
+        in_range("segment", segment.index(), net.segments().len())?;
+    }
+    for area in given.areas.iter().flat_map(|(on, _)| on) {
+        match *area {
+            Area::Skin(skin) => in_range("skin", skin, net.skins().len())?,
+            Area::Zone(zone) => in_range("zone", zone, net.zones().len())?,
+        }
+    }
+    let values = (given.nodes.iter().map(|(_, mass)| mass))
+        .chain(given.segments.iter().map(|(_, mass)| mass))
+        .chain(given.areas.iter().map(|(_, mass)| mass))
+        .chain([&given.air]);
+    for mass in values {
+        number("added mass", *mass, *mass >= 0.0 && mass.is_finite(), "zero or more")?;
+    }
+    Ok(())
+}
+
+fn check_spectra(motion: &Motion) -> Result<(), MotionError> {
+    let Some(given) = &motion.spectra else {
+        return Ok(());
+    };
+    if motion.watched.is_empty() {
+        return Err(MotionError::NothingWatched);
+    }
+    let within = given.from >= 0.0 && given.from < motion.duration;
+    let needed = "zero or more, and before the end of the motion";
+    number("beginning of spectra", given.from, within, needed)?;
+    if let Some(limit) = given.up_to {
+        let within = limit > 0.0 && limit <= 0.5 / motion.step * (1.0 + 1e-9);
+        let needed = "positive, and at most the Nyquist frequency 1/(2 step)";
+        number("highest frequency of spectra", limit, within, needed)?;
+    }
+    let samples = sampled_steps(motion).map_or(0, |[first, last]| (last + 1).saturating_sub(first));
+    if samples < LEAST_SAMPLES {
+        return Err(MotionError::TooFewSamples {
+            from: given.from,
+            samples,
+            least: LEAST_SAMPLES,
+        });
+    }
+    Ok(())
 }
 
 fn check_frames(net: &Net, motion: &Motion) -> Result<(), MotionError> {
@@ -223,13 +285,17 @@ pub(super) fn moves_supports(case: &Case) -> bool {
 fn check_breaks(net: &Net, motion: &Motion) -> Result<(), MotionError> {
     let mut broken = vec![false; net.segments().len()];
     for (place, given) in motion.breaks.iter().enumerate() {
-        let segment = given.segment;
+        if given.segments.is_empty() {
+            return Err(MotionError::NothingBreaks { place });
+        }
         let is_removed = |e: usize| motion.case.removed.get(e).is_some_and(|removed| *removed);
-        match broken.get_mut(segment.index()) {
-            None => return Err(MotionError::NotThere { place, segment }),
-            Some(_) if is_removed(segment.index()) => return Err(MotionError::NotThere { place, segment }),
-            Some(true) => return Err(MotionError::BrokenTwice { place, segment }),
-            Some(mark) => *mark = true,
+        for segment in given.segments.iter().copied() {
+            match broken.get_mut(segment.index()) {
+                None => return Err(MotionError::NotThere { place, segment }),
+                Some(_) if is_removed(segment.index()) => return Err(MotionError::NotThere { place, segment }),
+                Some(true) => return Err(MotionError::BrokenTwice { place, segment }),
+                Some(mark) => *mark = true,
+            }
         }
         let release = given.release >= 0.0 && given.release.is_finite();
         number("release of a break", given.release, release, "zero or more")?;
@@ -247,11 +313,25 @@ fn check_breaks(net: &Net, motion: &Motion) -> Result<(), MotionError> {
 /// What can be told once masses are known.
 pub(super) fn check_masses(system: &System) -> Result<(), MotionError> {
     for dof in 0..system.structure.n_dofs() {
-        let mass = system.mass_of(dof);
+        let node = system.structure.dofs().node(dof);
+        let mass = system.inertia.least(node.index());
         if !(mass > 0.0 && mass.is_finite()) {
-            return Err(MotionError::NoMass {
-                node: system.structure.dofs().node(dof),
-            });
+            return Err(MotionError::NoMass { node });
+        }
+    }
+    // Air across a skin would pass on the inertia of a support that moves to directions in which its node is free.
+    let held = system
+        .structure
+        .net()
+        .supports()
+        .iter()
+        .filter(|_| system.supports_move);
+    for support in held.filter(|support| system.moves(support.node())) {
+        let mass = system.inertia.of_node(support.node().index());
+        let is_coupled =
+            |held: &Vector3<f64>, free: &Vector3<f64>| held.dot(&(mass * free)).abs() > 1e-12 * mass.norm();
+        if (support.held().iter()).any(|held| support.free().iter().any(|free| is_coupled(held, free))) {
+            return Err(MotionError::AirAtMovingSupport { node: support.node() });
         }
     }
     Ok(())
@@ -283,18 +363,27 @@ pub(super) fn extent(system: &System) -> Extent {
             7 * (n + 1) + 2 * n
         })
         .sum();
-    let values = (6 * motion.frames.nodes.len() + along) as f64;
+    let values = (6 * motion.frames.nodes.len() + along + motion.watched.len()) as f64;
+    let samples = sampled_steps(motion).map_or(0, |[first, last]| (last + 1).saturating_sub(first));
     Extent {
         steps: steps as u64,
         divided_steps: steps * divided,
         frames: frames as u64,
         bytes: frames * (FRAME_BYTES + 8.0 * values),
+        // The spectra have half as many numbers; a transform works on complex numbers, with as much room beside them.
+        sample_bytes: samples as f64 * (12.0 * motion.watched.len() as f64 + 64.0),
         stable_step,
     }
 }
 
 /// Refuses what would never end.
 pub(super) fn check_extent(extent: &Extent) -> Result<(), MotionError> {
+    if extent.sample_bytes > MOST_SAMPLE_BYTES {
+        return Err(MotionError::TooManySamples {
+            bytes: extent.sample_bytes,
+            most: MOST_SAMPLE_BYTES,
+        });
+    }
     // What is not a number is refused as well.
     if extent.divided_steps <= MOST_STEPS && extent.bytes <= MOST_BYTES {
         return Ok(());

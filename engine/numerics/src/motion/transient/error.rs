@@ -30,6 +30,16 @@ pub enum MotionError {
         /// The node.
         node: NodeId,
     },
+    /// A mass is added where nothing is.
+    #[error("a mass is added to {what} {index}, the net has {present}")]
+    NoPlaceForMass {
+        /// Node, segment, skin or zone.
+        what: &'static str,
+        /// Its index.
+        index: usize,
+        /// How many the net has.
+        present: usize,
+    },
     /// A list has the wrong length.
     #[error("{given} {what} are given, the net needs {needed}")]
     WrongLength {
@@ -77,6 +87,15 @@ pub enum MotionError {
         "damping by stiffness acts on velocities over fixed ground: with moving supports use damping along segments"
     )]
     DampedGround,
+    /// A support moves while its node is free in other directions and air across skins couples the two.
+    #[error(
+        "{node} moves with its support and slides on it, while air across a skin couples the two directions: \
+         hold it fully, or leave out the air"
+    )]
+    AirAtMovingSupport {
+        /// The node.
+        node: NodeId,
+    },
     /// A break names a segment that is not there.
     #[error("break {place} names {segment}, which is not in the net or taken out already")]
     NotThere {
@@ -84,6 +103,12 @@ pub enum MotionError {
         place: usize,
         /// The segment.
         segment: SegmentId,
+    },
+    /// A break names no segment.
+    #[error("break {place} names no segment")]
+    NothingBreaks {
+        /// Which break, from 0.
+        place: usize,
     },
     /// A frame is to show a node or a cable that is not there.
     #[error("frames show {what} {index}, the net has {present}")]
@@ -94,6 +119,37 @@ pub enum MotionError {
         index: usize,
         /// How many the net has.
         present: usize,
+    },
+    /// Something can not be watched.
+    #[error("watched quantity {place} {what}")]
+    Watched {
+        /// Which, from 0.
+        place: usize,
+        /// What is wrong with it.
+        what: &'static str,
+    },
+    /// Spectra are wanted of nothing.
+    #[error("spectra are wanted, but nothing is watched")]
+    NothingWatched,
+    /// Too little is left for spectra.
+    #[error(
+        "from {from} s on {samples} whole steps are left for spectra: at least {least}; begin earlier, or follow longer"
+    )]
+    TooFewSamples {
+        /// Where they begin (s).
+        from: f64,
+        /// Whole steps from there to the end.
+        samples: u64,
+        /// How many it takes.
+        least: u64,
+    },
+    /// What is watched is too much to keep for spectra.
+    #[error("{bytes:e} bytes of samples for spectra: at most {most:e}; watch less, begin later or lengthen the step")]
+    TooManySamples {
+        /// Bytes needed.
+        bytes: f64,
+        /// Bytes allowed.
+        most: f64,
     },
     /// A segment would break twice.
     #[error("break {place} names {segment}, which an earlier one breaks already")]

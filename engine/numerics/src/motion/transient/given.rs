@@ -5,21 +5,23 @@ use std::sync::Arc;
 
 use nalgebra::Vector3;
 
-use super::{Frame, History};
+use super::{Frame, History, SpectraGiven, Watched};
 use crate::load::Case;
 use crate::model::{CableId, NodeId, ReferenceState, SegmentId};
+use crate::motion::MassGiven;
 
 /// A motion from a state of the net.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Motion {
-    /// The reference state: masses come from it.
+    /// The reference state: skins have their mass per area in it.
     pub reference: Arc<ReferenceState>,
     /// Position of every node at the start (m): a solved state, or a shape plucked from it.
     pub positions: Vec<Vector3<f64>>,
     /// Velocity of every node at the start (m/s); along held directions it must be zero. Empty: at rest.
     pub velocities: Vec<Vector3<f64>>,
-    /// Mass of every node beyond that of the net (kg), zero or more: air that moves along, persons. Empty: none.
-    pub added_masses: Vec<f64>,
+    /// Masses beside those of the net: persons, equipment, water on areas, air that moves with panels across them. Air keeps the
+    /// directions that panels have at the start.
+    pub masses: MassGiven,
     /// What acts throughout, and the unstressed lengths and temperatures.
     pub case: Case,
     /// What acts besides, each with its history.
@@ -36,7 +38,11 @@ pub struct Motion {
     pub step: f64,
     /// What is told on the way.
     pub frames: Frames,
-    /// The answer to compare with, to which the motion would settle, if there is one.
+    /// Quantities that every frame tells, and of which there may be spectra.
+    pub watched: Vec<Watched>,
+    /// Spectra of all that is watched; none: not wanted.
+    pub spectra: Option<SpectraGiven>,
+    /// The answer to compare with, to which the motion would settle, if there is one: see [`super::settled_case`].
     pub settled: Option<Settled>,
 }
 
@@ -68,23 +74,23 @@ pub enum Driven {
     },
 }
 
-/// A segment that breaks: it lets go of both ends. Its mass and its weight stay at them; what is clamped stays so.
-#[derive(Clone, Copy, Debug, PartialEq)]
+/// Segments that break together: each lets go of both ends. Their mass and their weight stay at these; what is clamped stays so.
+#[derive(Clone, Debug, PartialEq)]
 pub struct Break {
-    /// The segment; a whole rope breaks in all of its segments.
-    pub segment: SegmentId,
+    /// The segments: one, or all of a rope.
+    pub segments: Vec<SegmentId>,
     /// When.
     pub when: BreakWhen,
     /// How long it takes to let go (s), its force fading evenly; zero: at once.
     pub release: f64,
 }
 
-/// When a segment breaks.
+/// When segments break.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub enum BreakWhen {
     /// At this time (s).
     Time(f64),
-    /// At the end of the step in which its tension reaches this (N).
+    /// At the end of the step in which the tension of one of them reaches this (N).
     Tension(f64),
 }
 
@@ -111,9 +117,22 @@ pub enum Scheme {
         error: Option<f64>,
     },
     /// Bars whose force makes energy balance to the last digit (Simo & Tarnow 1992; Gonzalez 1996).
-    Conserving,
+    Conserving {
+        /// Largest estimated error of a step in any position (m), as above.
+        error: Option<f64>,
+    },
     /// Explicit central differences; each step divided into as many as stability needs.
     CentralDifferences,
+}
+
+impl Scheme {
+    /// Largest error of a step that is allowed (m), where it is to be kept.
+    pub(super) fn allowed_error(self) -> Option<f64> {
+        match self {
+            Self::GeneralisedAlpha { error, .. } | Self::Conserving { error } => error,
+            Self::CentralDifferences => None,
+        }
+    }
 }
 
 /// What is told on the way.

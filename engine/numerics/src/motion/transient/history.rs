@@ -256,6 +256,24 @@ impl History {
         }
     }
 
+    /// Second derivative by time just before a moment (1/s²), without what kinks and jumps do at once.
+    pub(super) fn second_derivative(&self, time: f64) -> f64 {
+        match self {
+            Self::Harmonic {
+                amplitude,
+                frequency,
+                phase,
+                start,
+                end,
+                ..
+            } if time >= *start && time <= *end => {
+                let omega = 2.0 * PI * frequency;
+                -amplitude * omega * omega * (omega * (time - start) + phase).sin()
+            }
+            _ => 0.0,
+        }
+    }
+
     /// Moments at which the value jumps (s).
     pub(super) fn jumps(&self) -> Vec<f64> {
         match self {

@@ -20,19 +20,25 @@ mod check;
 mod error;
 mod given;
 mod history;
-mod mass;
+mod inertia;
 mod record;
 mod run;
+mod settled;
+mod spectrum;
 mod step;
 mod system;
 #[cfg(test)]
 mod tests;
+mod watch;
 mod waves;
 
 pub use check::{Caution, Extent};
 pub use error::MotionError;
 pub use given::{Break, BreakWhen, Damping, Driven, Frames, Motion, Observer, Progress, Scheme, Settled};
 pub use history::{History, HistoryError};
-pub use record::{DynamicFactors, Event, EventKind, Events, Frame, Ledger, Peak, Peaks};
-pub use run::{Ending, Outcome, Outlook, Running, outlook, run};
+pub use record::{DynamicFactors, Event, EventKind, Events, Frame, Ledger, Peak, Peaks, SupportPeak};
+pub use run::{Ending, Outcome, Outlook, Running, Stuck, StuckBy, outlook, run};
+pub use settled::settled_case;
+pub use spectrum::{SpectraGiven, Spectrum, SpectrumPeak};
+pub use watch::Watched;
 pub use waves::{RopeField, WaveSpeeds};

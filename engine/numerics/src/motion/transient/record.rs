@@ -2,8 +2,9 @@
 
 use nalgebra::Vector3;
 
-use super::system::{State, System};
-use super::{RopeField, Settled};
+use super::spectrum::{LEAST_SAMPLES, spectrum};
+use super::system::{Moment, State, System};
+use super::{Motion, RopeField, Settled, SpectraGiven, Spectrum};
 use crate::model::{NodeId, SegmentId};
 
 /// Where the energy is and where it went (J). What is not told apart is zero at the start.
@@ -54,6 +55,8 @@ pub struct Frame {
     pub slack: usize,
     /// Where the energy is.
     pub ledger: Ledger,
+    /// Value of everything watched.
+    pub watched: Vec<f64>,
 }
 
 /// A value and when it was first reached.
@@ -90,6 +93,19 @@ pub struct Peaks {
     pub movements: Vec<Peak>,
     /// Largest movement of every node along that to the static answer (m); empty without one.
     pub towards: Vec<Peak>,
+    /// Largest force of the support of every node that has one, rigid or elastic, in the order of the nodes.
+    pub supports: Vec<SupportPeak>,
+}
+
+/// Largest force of a support on the net.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct SupportPeak {
+    /// The supported node.
+    pub node: NodeId,
+    /// Its size (N), and when it was first reached (s).
+    pub size: Peak,
+    /// The force on the net then (N).
+    pub force: Vector3<f64>,
 }
 
 /// Dynamic over static values; none where the static one is too small to compare with.
@@ -224,6 +240,13 @@ impl Recorder {
                 least_forces: at(f64::INFINITY, system.shares.len()),
                 movements: at(0.0, start.len()),
                 towards: at(0.0, towards.len()),
+                supports: (system.supported().iter())
+                    .map(|node| SupportPeak {
+                        node: *node,
+                        size: Peak { value: 0.0, time: 0.0 },
+                        force: Vector3::zeros(),
+                    })
+                    .collect(),
             },
             events: Events::default(),
             start,
@@ -231,7 +254,16 @@ impl Recorder {
         }
     }
 
-    pub(super) fn add(&mut self, system: &System, state: &State, time: f64) {
+    pub(super) fn add(&mut self, system: &System, moment: &Moment<'_>) {
+        let (time, state) = (moment.time, moment.state);
+        for peak in &mut self.peaks.supports {
+            let force = system.support_force(peak.node, moment);
+            let size = force.norm();
+            if size > peak.size.value {
+                peak.size.raise(size, time);
+                peak.force = force;
+            }
+        }
         for (e, share) in system.shares.iter().enumerate() {
             let axial = system.axial_force(&state.positions, e);
             self.peaks.largest_forces[e].raise(axial, time);
@@ -250,7 +282,8 @@ impl Recorder {
 }
 
 /// A frame of a state.
-pub(super) fn frame(system: &System, state: &State, step: u64, time: f64, ledger: Ledger) -> Frame {
+pub(super) fn frame(system: &System, moment: &Moment<'_>, step: u64, ledger: Ledger) -> Frame {
+    let (time, state) = (moment.time, moment.state);
     let chosen = &system.motion.frames;
     let net = system.structure.net();
     let velocities = system.nodal_velocities(&state.velocities, &state.held_velocities);
@@ -287,5 +320,62 @@ pub(super) fn frame(system: &System, state: &State, step: u64, time: f64, ledger
             .filter(|e| !taut[*e] && system.shares[*e] > 0.0 && system.bars()[*e].is_present())
             .count(),
         ledger,
+        watched: watched(system, moment),
     }
+}
+
+/// Value of everything watched.
+pub(super) fn watched(system: &System, moment: &Moment<'_>) -> Vec<f64> {
+    let all = system.motion.watched.iter();
+    all.map(|watched| watched.value(system, moment)).collect()
+}
+
+/// Samples of everything watched, for spectra.
+#[derive(Debug)]
+pub(super) struct Series {
+    /// First and last whole step that is sampled.
+    first: u64,
+    last: u64,
+    samples: Vec<Vec<f64>>,
+}
+
+impl Series {
+    /// None where no spectra are wanted.
+    pub(super) fn new(motion: &Motion) -> Option<Self> {
+        let [first, last] = sampled_steps(motion)?;
+        Some(Self {
+            first,
+            last,
+            samples: vec![Vec::new(); motion.watched.len()],
+        })
+    }
+
+    /// Takes the sample of a whole step.
+    pub(super) fn add(&mut self, system: &System, moment: &Moment<'_>, step: u64) {
+        if (self.first..=self.last).contains(&step) {
+            for (samples, value) in self.samples.iter_mut().zip(watched(system, moment)) {
+                samples.push(value);
+            }
+        }
+    }
+
+    /// The spectra of what was sampled; none where that is too little.
+    pub(super) fn spectra(&self, step: f64, given: &SpectraGiven) -> Vec<Spectrum> {
+        let enough = |samples: &&Vec<f64>| samples.len() as u64 >= LEAST_SAMPLES;
+        let told = self.samples.iter().filter(enough);
+        told.map(|samples| spectrum(samples, step, given.up_to)).collect()
+    }
+}
+
+/// First and last whole step that is sampled for spectra, where they are wanted.
+#[allow(
+    clippy::cast_possible_truncation,
+    clippy::cast_sign_loss,
+    reason = "beyond u64 it saturates, and is refused"
+)]
+pub(super) fn sampled_steps(motion: &Motion) -> Option<[u64; 2]> {
+    let given = motion.spectra.as_ref()?;
+    let first = (given.from / motion.step - 1e-9).ceil().max(0.0);
+    let last = (motion.duration / motion.step + 1e-9).floor();
+    Some([first as u64, last as u64])
 }

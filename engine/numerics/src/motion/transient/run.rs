@@ -6,15 +6,17 @@ use nalgebra::Vector3;
 
 use super::check::{cautions, check_extent, check_given, check_masses, extent};
 use super::history::Side;
-use super::record::{Recorder, frame};
-use super::step::{Done, From, Stepper, Tried};
-use super::system::{Forces, State, System};
+use super::record::{Recorder, Series, frame};
+use super::step::{Done, Failure, From, Stepper, Tried, turned};
+use super::system::{Forces, Moment, State, System};
+use super::watch::check_watched;
 use super::waves::wave_speeds;
 use super::{
     Break, BreakWhen, Caution, Driven, DynamicFactors, Event, EventKind, Events, Extent, Frame, Ledger, Motion,
-    MotionError, Observer, Peaks, Progress, Scheme, WaveSpeeds,
+    MotionError, Observer, Peaks, Progress, Scheme, Spectrum, WaveSpeeds,
 };
 use crate::equilibrium::Analysis;
+use crate::model::{NodeId, SegmentId};
 
 /// Steps are divided down to this share of the given one before a motion is given up.
 const SMALLEST_SHARE: f64 = 1.0 / (1 << 20) as f64;
@@ -23,14 +25,50 @@ const SMALLEST_SHARE: f64 = 1.0 / (1 << 20) as f64;
 const STABLE_SHARE: f64 = 0.9;
 
 /// How a motion ended.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, PartialEq)]
 pub enum Ending {
     /// The duration is over.
     Done,
-    /// Steps became too small: Newton did not converge, or the error could not be kept.
-    StepTooSmall,
+    /// Steps became too small.
+    StepTooSmall(Stuck),
     /// The observer stopped it.
     Cancelled,
+}
+
+/// Where and why steps became too small: a step was divided down to 2⁻²⁰ of the given one, and still could not be done.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Stuck {
+    /// Why the smallest one could not be done.
+    pub why: StuckBy,
+    /// Time reached, at which it began (s).
+    pub time: f64,
+    /// Smallest step tried (s).
+    pub step: f64,
+    /// Node where the residual, or the error, of the last trial is largest.
+    pub node: NodeId,
+    /// Segment that came taut or went slack within the last trial; of several the one whose force changed most.
+    pub segment: Option<SegmentId>,
+}
+
+/// Why a step could not be done.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum StuckBy {
+    /// Newton did not converge.
+    NotConverged {
+        /// Largest out-of-balance force of its last iteration (N).
+        residual: f64,
+        /// The largest that is allowed (N).
+        allowed: f64,
+    },
+    /// The error that is to be kept was not.
+    ErrorNotKept {
+        /// Estimated error of the step in a position (m).
+        error: f64,
+        /// The largest that is allowed (m).
+        allowed: f64,
+    },
+    /// Numbers are beyond use.
+    BeyondUse,
 }
 
 /// What came of a motion.
@@ -58,10 +96,15 @@ pub struct Outcome {
     pub factors: DynamicFactors,
     /// Slack, snatch and break.
     pub events: Events,
+    /// Spectra of all that is watched, in that order, of the samples up to where the motion ended; empty where none are
+    /// wanted, or where it ended before there were 16 samples.
+    pub spectra: Vec<Spectrum>,
     /// Where the energy is at the end.
     pub ledger: Ledger,
     /// Largest error of the ledger by size (J).
     pub largest_error: f64,
+    /// Largest kinetic energy at the end of any step (J), to compare it with.
+    pub largest_kinetic: f64,
 }
 
 /// What can be told of a motion before it runs.
@@ -93,6 +136,7 @@ fn checked(analysis: &Analysis, motion: &Arc<Motion>) -> Result<System, MotionEr
     check_given(analysis.structure(), motion)?;
     let system = System::new(analysis.shared_structure(), Arc::clone(motion))?;
     check_masses(&system)?;
+    check_watched(&system)?;
     check_extent(&extent(&system))?;
     Ok(system)
 }
@@ -114,7 +158,7 @@ pub fn run(analysis: &Arc<Analysis>, motion: &Arc<Motion>, observe: Observer<'_>
 }
 
 /// A break on its way.
-#[derive(Clone, Copy, Debug)]
+#[derive(Clone, Debug)]
 struct Breaking {
     given: Break,
     /// When it begins, once that is known (s).
@@ -142,8 +186,11 @@ pub struct Running {
     system: System,
     stepper: Stepper,
     recorder: Recorder,
+    series: Option<Series>,
     state: State,
     forces: Forces,
+    /// What the forces make of the masses (m/s²); those of the state may belong to other moments.
+    accelerations: Vec<f64>,
     taut: Vec<bool>,
     movements: Vec<Vector3<f64>>,
     /// Moments at which loads jump (s), in order.
@@ -167,6 +214,7 @@ pub struct Running {
     at_start: f64,
     ledger: Ledger,
     largest_error: f64,
+    largest_kinetic: f64,
 }
 
 impl Running {
@@ -198,7 +246,7 @@ impl Running {
         jumps.sort_by(f64::total_cmp);
         let breaks = (motion.breaks.iter())
             .map(|given| Breaking {
-                given: *given,
+                given: given.clone(),
                 began: match given.when {
                     BreakWhen::Time(t) => Some(t),
                     BreakWhen::Tension(_) => None,
@@ -214,13 +262,26 @@ impl Running {
             _ => motion.step,
         };
         let energies = system.energies(&state, &loads.movements);
+        let taut = system.taut(&state.positions);
+        let mut forces = system.new_forces();
+        system.forces_at(&loads, &state, &taut, &mut forces, None);
+        let mut accelerations = vec![0.0; state.velocities.len()];
+        system.inertia.divide_into(&forces.residual, &mut accelerations);
         let mut recorder = Recorder::new(&system);
-        recorder.add(&system, &state, 0.0);
+        let start = Moment {
+            time: 0.0,
+            state: &state,
+            forces: &forces,
+            accelerations: &accelerations,
+        };
+        recorder.add(&system, &start);
         Ok(Self {
+            series: Series::new(&system.motion),
+            accelerations,
             stepper: Stepper::new(&analysis),
             recorder,
-            forces: system.new_forces(),
-            taut: system.taut(&state.positions),
+            forces,
+            taut,
             movements: loads.movements,
             jumps,
             breaks,
@@ -241,6 +302,7 @@ impl Running {
                 ..Ledger::default()
             },
             largest_error: 0.0,
+            largest_kinetic: energies.kinetic,
             state,
             system,
         })
@@ -263,15 +325,33 @@ impl Running {
                 }
             }
             self.whole = Some(done);
+            if let Some(series) = &mut self.series {
+                let moment = Moment {
+                    time: self.time,
+                    state: &self.state,
+                    forces: &self.forces,
+                    accelerations: &self.accelerations,
+                };
+                series.add(&self.system, &moment, done);
+            }
             let is_last = done == self.wanted;
             if is_last {
                 self.ending = Some(Ending::Done);
             }
             if done == 0 || is_last || (stride > 0 && done % stride == 0) {
-                return Some(frame(&self.system, &self.state, done, self.time, self.ledger));
+                return Some(frame(&self.system, &self.moment(), done, self.ledger));
             }
         }
         None
+    }
+
+    fn moment(&self) -> Moment<'_> {
+        Moment {
+            time: self.time,
+            state: &self.state,
+            forces: &self.forces,
+            accelerations: &self.accelerations,
+        }
     }
 
     /// Time reached (s).
@@ -294,7 +374,9 @@ impl Running {
             .system
             .nodal_velocities(&self.state.velocities, &self.state.held_velocities);
         let settled = motion.settled.as_ref();
+        let spectra = self.series.as_ref().zip(motion.spectra.as_ref());
         Outcome {
+            spectra: spectra.map_or(Vec::new(), |(series, given)| series.spectra(motion.step, given)),
             ending: self.ending.unwrap_or(Ending::Cancelled),
             time: self.time,
             steps: self.steps,
@@ -310,6 +392,7 @@ impl Running {
             events: self.recorder.events,
             ledger: self.ledger,
             largest_error: self.largest_error,
+            largest_kinetic: self.largest_kinetic,
         }
     }
 
@@ -350,22 +433,19 @@ impl Running {
                 loads: [&loads[0], &loads[1]],
                 movements: &self.movements,
             };
-            match self.stepper.step(&mut self.system, from, h, observe) {
+            let failure = match self.stepper.step(&mut self.system, from, h, observe) {
                 Tried::Cancelled => return Some(Ending::Cancelled),
-                Tried::NotConverged => {
+                Tried::Failed(failure) => {
                     self.limit = 0.5 * h;
+                    failure
                 }
                 Tried::Done(done) => {
-                    let growth = match self.system.motion.scheme {
-                        Scheme::GeneralisedAlpha {
-                            error: Some(allowed), ..
-                        } if done.error > 0.0 => 0.9 * (allowed / done.error).cbrt(),
-                        _ => 2.0,
-                    };
-                    if growth < 0.9 {
-                        // The error grows with the third power of the step.
-                        self.limit = h * growth.max(0.2);
-                    } else {
+                    let (error, node) = done.error;
+                    let allowed = self.system.motion.scheme.allowed_error();
+                    let allowed = allowed.filter(|_| error > 0.0);
+                    // The error grows with the third power of the step.
+                    let growth = allowed.map_or(2.0, |allowed| 0.9 * (allowed / error).cbrt());
+                    if growth >= 0.9 {
                         self.accept(*done, end, h, loads[1].movements.clone());
                         if self.system.motion.scheme != Scheme::CentralDifferences {
                             let grown = self.limit.max(h) * growth.clamp(1.0, 2.0);
@@ -373,10 +453,25 @@ impl Running {
                         }
                         continue;
                     }
+                    self.limit = h * growth.max(0.2);
+                    Failure {
+                        why: StuckBy::ErrorNotKept {
+                            error,
+                            allowed: allowed.unwrap_or_default(),
+                        },
+                        node,
+                        segment: turned(&self.system, &from, &done.state.positions),
+                    }
                 }
-            }
+            };
             if self.limit < SMALLEST_SHARE * step {
-                return Some(Ending::StepTooSmall);
+                return Some(Ending::StepTooSmall(Stuck {
+                    why: failure.why,
+                    time: self.time,
+                    step: h,
+                    node: failure.node,
+                    segment: failure.segment,
+                }));
             }
         }
         None
@@ -387,23 +482,26 @@ impl Running {
         let middle = self.time + 0.5 * (end - self.time);
         let mut has_changed = false;
         for breaking in &mut self.breaks {
-            let e = breaking.given.segment.index();
-            let (before, share) = (self.system.shares[e], breaking.share(middle));
-            if share == before {
-                continue;
+            let share = breaking.share(middle);
+            for segment in &breaking.given.segments {
+                let e = segment.index();
+                let before = self.system.shares[e];
+                if share == before {
+                    continue;
+                }
+                has_changed = true;
+                let stored = self.system.bars()[e].energy(self.system.length(&self.state.positions, e));
+                self.ledger.released += (before - share) * stored;
+                self.system.shares[e] = share;
+                if !breaking.is_told {
+                    self.recorder.events.add(Event {
+                        time: breaking.began.unwrap_or(self.time),
+                        segment: *segment,
+                        kind: EventKind::Break,
+                    });
+                }
             }
-            has_changed = true;
-            let stored = self.system.bars()[e].energy(self.system.length(&self.state.positions, e));
-            self.ledger.released += (before - share) * stored;
-            self.system.shares[e] = share;
-            if !breaking.is_told {
-                breaking.is_told = true;
-                self.recorder.events.add(Event {
-                    time: breaking.began.unwrap_or(self.time),
-                    segment: breaking.given.segment,
-                    kind: EventKind::Break,
-                });
-            }
+            breaking.is_told |= share < 1.0;
         }
         if has_changed {
             self.refresh();
@@ -418,9 +516,9 @@ impl Running {
         self.system
             .forces_at(&loads, &self.state, &self.taut, &mut self.forces, None);
         if self.has_jumped || self.system.motion.scheme == Scheme::CentralDifferences {
-            for (dof, acceleration) in self.state.accelerations.iter_mut().enumerate() {
-                *acceleration = self.forces.residual[dof] / self.system.mass_of(dof);
-            }
+            self.system
+                .inertia
+                .divide_into(&self.forces.residual, &mut self.state.accelerations);
         }
         self.is_stale = false;
         self.has_jumped = false;
@@ -437,7 +535,6 @@ impl Running {
         self.time = end;
         self.steps += 1;
         self.smallest_step = self.smallest_step.min(h);
-        self.recorder.add(&self.system, &self.state, end);
         self.ledger.work += done.work;
         self.ledger.dissipated += done.dissipated;
         let energies = self.system.energies(&self.state, &movements);
@@ -448,25 +545,31 @@ impl Running {
         let spent = self.ledger.dissipated + self.ledger.released;
         self.ledger.error = (self.ledger.total() - self.at_start) - self.ledger.work + spent;
         self.largest_error = self.largest_error.max(self.ledger.error.abs());
+        self.largest_kinetic = self.largest_kinetic.max(energies.kinetic);
         let mut is_moment = self.jumps.contains(&end);
         for breaking in &mut self.breaks {
             if let (None, BreakWhen::Tension(tension)) = (breaking.began, breaking.given.when) {
-                let e = breaking.given.segment.index();
-                if self.system.axial_force(&self.state.positions, e) >= tension {
+                let axial = |segment: &SegmentId| self.system.axial_force(&self.state.positions, segment.index());
+                if breaking.given.segments.iter().any(|segment| axial(segment) >= tension) {
                     breaking.began = Some(end);
                 }
             }
             let ends = breaking.began.map(|began| [began, began + breaking.given.release]);
             is_moment |= ends.is_some_and(|ends| ends.contains(&end));
         }
-        if done.forces_at_end {
-            self.forces = done.forces;
-            self.has_jumped = is_moment;
-            self.is_stale = is_moment || !self.system.motion.damping.segments.is_empty();
-        } else {
-            // The conserving scheme needs no forces at the start of a step.
-            self.is_stale = false;
-        }
+        self.forces = done.forces;
+        self.system
+            .inertia
+            .divide_into(&self.forces.residual, &mut self.accelerations);
+        let moment = Moment {
+            time: end,
+            state: &self.state,
+            forces: &self.forces,
+            accelerations: &self.accelerations,
+        };
+        self.recorder.add(&self.system, &moment);
+        self.has_jumped = is_moment;
+        self.is_stale = is_moment || !self.system.motion.damping.segments.is_empty();
     }
 }
 

@@ -1,13 +1,12 @@
 //! One step of time.
 
-use std::ops::ControlFlow;
-
 use nalgebra::{Matrix3, Vector3};
 
 use super::system::{Forces, Loads, State, System};
-use super::{Observer, Progress, Scheme};
+use super::{Observer, Progress, Scheme, StuckBy};
 use crate::equilibrium::Analysis;
 use crate::equilibrium::linear::Factor;
+use crate::model::{NodeId, SegmentId};
 
 /// Largest residual over the largest of inertia, load and tension.
 const TOLERANCE: f64 = 1e-12;
@@ -20,26 +19,32 @@ const MOST_ITERATIONS: u32 = 15;
 pub(super) enum Tried {
     /// It is done.
     Done(Box<Done>),
-    /// Newton did not converge.
-    NotConverged,
+    /// It could not be done.
+    Failed(Failure),
     /// The observer stopped it.
     Cancelled,
+}
+
+/// A step that could not be done.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Failure {
+    pub(super) why: StuckBy,
+    pub(super) node: NodeId,
+    pub(super) segment: Option<SegmentId>,
 }
 
 /// A step that is done.
 #[derive(Debug)]
 pub(super) struct Done {
     pub(super) state: State,
-    /// Forces at its end; those in its middle where the scheme knows only these.
+    /// Forces at its end.
     pub(super) forces: Forces,
-    /// Whether the forces are those at the end.
-    pub(super) forces_at_end: bool,
     /// Work of driven loads, pressure and supports (J).
     pub(super) work: f64,
     /// Energy that damping took (J).
     pub(super) dissipated: f64,
-    /// Estimated error of the step in any position (m); zero where there is no estimate.
-    pub(super) error: f64,
+    /// Largest estimated error of the step in any position (m), zero where there is no estimate; and where.
+    pub(super) error: (f64, NodeId),
 }
 
 /// Where a step begins.
@@ -47,7 +52,7 @@ pub(super) struct Done {
 pub(super) struct From<'a> {
     pub(super) time: f64,
     pub(super) state: &'a State,
-    /// Forces at the start; not used by the conserving scheme.
+    /// Forces at the start.
     pub(super) forces: &'a Forces,
     /// Which segments are taut there.
     pub(super) taut: &'a [bool],
@@ -63,6 +68,12 @@ pub(super) struct Stepper {
     factor: Factor,
     values: Vec<f64>,
     blocks: Vec<Matrix3<f64>>,
+    /// What is out of balance along the free directions (N), then the correction that follows from it (m).
+    residual: Vec<f64>,
+    /// Change of velocity over time that the scheme sets against the forces (m/s²).
+    change: Vec<f64>,
+    /// Room for products with the mass.
+    product: Vec<f64>,
     /// Newton iterations so far.
     pub(super) iterations: u64,
     /// Factorisations so far.
@@ -98,6 +109,8 @@ impl Alpha {
 struct Distance {
     residual: f64,
     allowed: f64,
+    /// Where the residual is largest.
+    node: NodeId,
 }
 
 impl Stepper {
@@ -107,6 +120,9 @@ impl Stepper {
             factor: analysis.new_factor(),
             values: vec![0.0; structure.pattern().n_entries()],
             blocks: vec![Matrix3::zeros(); structure.net().segments().len()],
+            residual: vec![0.0; structure.n_dofs()],
+            change: vec![0.0; structure.n_dofs()],
+            product: vec![0.0; structure.n_dofs()],
             iterations: 0,
             factorisations: 0,
         }
@@ -118,7 +134,7 @@ impl Stepper {
             Scheme::GeneralisedAlpha { spectral_radius, .. } => {
                 self.averaged(system, from, h, Alpha::new(spectral_radius), observe)
             }
-            Scheme::Conserving => self.conserving(system, from, h, observe),
+            Scheme::Conserving { .. } => self.conserving(system, from, h, observe),
             Scheme::CentralDifferences => explicit(system, from, h, observe),
         }
     }
@@ -142,6 +158,7 @@ impl Stepper {
             .map(|dof| h * (start.velocities[dof] + 0.5 * h * start.accelerations[dof]))
             .collect();
         place(system, &from, h, &movement, &mut state);
+        let mut last = Distance::unknown();
         for iteration in 0..=MOST_ITERATIONS {
             for (dof, u) in movement.iter().enumerate() {
                 let (v0, a0) = (start.velocities[dof], start.accelerations[dof]);
@@ -152,16 +169,17 @@ impl Stepper {
             let rate = gamma / (beta * h);
             let blocks = Some((self.blocks.as_mut_slice(), rate));
             system.forces_at(from.loads[1], &state, from.taut, &mut forces, blocks);
-            let mut residual: Vec<f64> = (0..n)
-                .map(|dof| {
-                    (1.0 - force) * forces.residual[dof] + force * from.forces.residual[dof]
-                        - system.mass_of(dof)
-                            * ((1.0 - inertia) * state.accelerations[dof] + inertia * start.accelerations[dof])
-                })
-                .collect();
-            let distance = distance(system, &residual, &state.accelerations, 1.0, &forces);
-            if let ControlFlow::Break(tried) = self.watch(&from, iteration, distance, observe) {
-                return tried;
+            for (dof, residual) in self.residual.iter_mut().enumerate() {
+                *residual = (1.0 - force) * forces.residual[dof] + force * from.forces.residual[dof];
+                self.change[dof] = (1.0 - inertia) * state.accelerations[dof] + inertia * start.accelerations[dof];
+            }
+            let distance = self.less_inertia(system, &state.accelerations, 1.0, &forces);
+            if self.is_stopped(&from, iteration, distance, observe) {
+                return Tried::Cancelled;
+            }
+            last = distance;
+            if !distance.residual.is_finite() {
+                break;
             }
             let mut is_done = distance.residual <= distance.allowed;
             if !is_done {
@@ -169,31 +187,29 @@ impl Stepper {
                 self.blocks.iter_mut().for_each(|block| *block *= weight);
                 let mass_weight = (1.0 - inertia) / (beta * h * h);
                 system.matrix_into(&self.blocks, mass_weight, weight * rate, weight, &mut self.values);
-                if !self.solve(&mut residual) {
-                    return Tried::NotConverged;
+                if !self.solve() {
+                    break;
                 }
-                system.structure.dofs().move_nodes(&residual, 1.0, &mut state.positions);
-                movement.iter_mut().zip(&residual).for_each(|(u, dx)| *u += dx);
-                is_done = is_lost_in_rounding(&residual, &state.positions);
+                let steps = &self.residual;
+                system.structure.dofs().move_nodes(steps, 1.0, &mut state.positions);
+                movement.iter_mut().zip(steps).for_each(|(u, dx)| *u += dx);
+                is_done = is_lost_in_rounding(steps, &state.positions);
             }
             if is_done {
-                let error = (state.accelerations.iter().zip(&start.accelerations))
-                    .map(|(a1, a0)| (beta - 1.0 / 6.0) * h * h * (a1 - a0).abs())
-                    .fold(0.0, f64::max);
+                let error = error_of(system, [start, &state], (beta - 1.0 / 6.0) * h * h);
                 let dissipated = 0.5 * h * (from.forces.damping_power + forces.damping_power);
                 let movements = [from.movements, &from.loads[1].movements];
                 let work = system.work([from.forces, &forces], [start, &state], movements);
                 return Tried::Done(Box::new(Done {
                     state,
                     forces,
-                    forces_at_end: true,
                     work,
                     dissipated,
                     error,
                 }));
             }
         }
-        Tried::NotConverged
+        Tried::Failed(failure(system, &from, last, &state.positions))
     }
 
     /// ```text
@@ -204,86 +220,88 @@ impl Stepper {
         let loads = from.loads[0].mean(from.loads[1]);
         let mut state = start.clone();
         let mut forces = from.forces.clone();
-        let n = start.velocities.len();
         let mut movement: Vec<f64> = start.velocities.iter().map(|v| h * v).collect();
         place(system, &from, h, &movement, &mut state);
+        let mut last = Distance::unknown();
         for iteration in 0..=MOST_ITERATIONS {
             let ends = [start.positions.as_slice(), state.positions.as_slice()];
             let blocks = Some(self.blocks.as_mut_slice());
             system.forces_between(&loads, ends, h, from.taut, &mut forces, blocks);
-            let mut residual: Vec<f64> = (0..n)
-                .map(|dof| {
-                    let change = 2.0 * (movement[dof] / h - start.velocities[dof]) / h;
-                    forces.residual[dof] - system.mass_of(dof) * change
-                })
-                .collect();
-            let distance = distance(system, &residual, &start.velocities, 2.0 / h, &forces);
-            if let ControlFlow::Break(tried) = self.watch(&from, iteration, distance, observe) {
-                return tried;
+            self.residual.copy_from_slice(&forces.residual);
+            for (dof, change) in self.change.iter_mut().enumerate() {
+                *change = 2.0 * (movement[dof] / h - start.velocities[dof]) / h;
+            }
+            let distance = self.less_inertia(system, &start.velocities, 2.0 / h, &forces);
+            if self.is_stopped(&from, iteration, distance, observe) {
+                return Tried::Cancelled;
+            }
+            last = distance;
+            if !distance.residual.is_finite() {
+                break;
             }
             let mut is_done = distance.residual <= distance.allowed;
             if !is_done {
                 system.matrix_into(&self.blocks, 2.0 / (h * h), 1.0 / h, 0.5, &mut self.values);
-                if !self.solve(&mut residual) {
-                    return Tried::NotConverged;
+                if !self.solve() {
+                    break;
                 }
-                system.structure.dofs().move_nodes(&residual, 1.0, &mut state.positions);
-                movement.iter_mut().zip(&residual).for_each(|(u, dx)| *u += dx);
-                is_done = is_lost_in_rounding(&residual, &state.positions);
+                let steps = &self.residual;
+                system.structure.dofs().move_nodes(steps, 1.0, &mut state.positions);
+                movement.iter_mut().zip(steps).for_each(|(u, dx)| *u += dx);
+                is_done = is_lost_in_rounding(steps, &state.positions);
             }
             if is_done {
                 for (dof, u) in movement.iter().enumerate() {
                     state.velocities[dof] = 2.0 * u / h - start.velocities[dof];
-                    state.accelerations[dof] = (state.velocities[dof] - start.velocities[dof]) / h;
                 }
                 let dissipated = h * forces.damping_power;
                 let movements = [from.movements, &from.loads[1].movements];
                 let work = system.work([&forces, &forces], [start, &state], movements);
+                // So far those in the middle of the step.
+                system.forces_at(from.loads[1], &state, from.taut, &mut forces, None);
+                system.inertia.divide_into(&forces.residual, &mut state.accelerations);
+                let error = error_of(system, [start, &state], h * h / 12.0);
                 return Tried::Done(Box::new(Done {
                     state,
                     forces,
-                    forces_at_end: false,
                     work,
                     dissipated,
-                    error: 0.0,
+                    error,
                 }));
             }
         }
-        Tried::NotConverged
+        Tried::Failed(failure(system, &from, last, &state.positions))
     }
 
-    fn watch(
-        &mut self,
-        from: &From<'_>,
-        iteration: u32,
-        distance: Distance,
-        observe: Observer<'_>,
-    ) -> ControlFlow<Tried> {
+    /// Tells the observer of an iteration; whether it stops there.
+    fn is_stopped(&mut self, from: &From<'_>, iteration: u32, distance: Distance, observe: Observer<'_>) -> bool {
         self.iterations += 1;
         let progress = Progress::Iteration {
             time: from.time,
             iteration,
             residual: distance.residual,
         };
-        if observe(progress).is_break() {
-            return ControlFlow::Break(Tried::Cancelled);
-        }
-        if distance.residual.is_finite() {
-            ControlFlow::Continue(())
-        } else {
-            ControlFlow::Break(Tried::NotConverged)
-        }
+        observe(progress).is_break()
     }
 
-    /// Factorises the matrix and solves in place; false where it is singular.
-    fn solve(&mut self, right_hand_side: &mut [f64]) -> bool {
+    /// Takes the inertia of the change of velocity out of the residual; `rates` times `weight`: accelerations to measure it
+    /// by (m/s²).
+    fn less_inertia(&mut self, system: &System, rates: &[f64], weight: f64, forces: &Forces) -> Distance {
+        system.inertia.add_product(-1.0, &self.change, &mut self.residual);
+        self.product.fill(0.0);
+        system.inertia.add_product(weight, rates, &mut self.product);
+        distance(system, &self.residual, &self.product, forces)
+    }
+
+    /// Factorises the matrix and turns the residual into the correction; false where it is singular.
+    fn solve(&mut self) -> bool {
         self.factorisations += 1;
         // Compressed struts and pressure may make it indefinite at long steps.
         if self.factor.cholesky(&self.values).is_err() && self.factor.ldlt(&self.values).is_err() {
             return false;
         }
-        self.factor.solve_in_place(right_hand_side);
-        right_hand_side.iter().all(|dx| dx.is_finite())
+        self.factor.solve_in_place(&mut self.residual);
+        self.residual.iter().all(|dx| dx.is_finite())
     }
 }
 
@@ -314,11 +332,15 @@ fn explicit(system: &mut System, from: From<'_>, h: f64, observe: Observer<'_>) 
         state.velocities[dof] = start.velocities[dof] + h * start.accelerations[dof];
     }
     system.forces_at(from.loads[1], &state, from.taut, &mut forces, None);
+    system.inertia.divide_into(&forces.residual, &mut state.accelerations);
     for (dof, v) in half.iter().enumerate() {
-        state.accelerations[dof] = forces.residual[dof] / system.mass_of(dof);
         state.velocities[dof] = v + 0.5 * h * state.accelerations[dof];
         if !state.velocities[dof].is_finite() {
-            return Tried::NotConverged;
+            let beyond = Distance {
+                node: system.structure.dofs().node(dof),
+                ..Distance::unknown()
+            };
+            return Tried::Failed(failure(system, &from, beyond, &state.positions));
         }
     }
     let dissipated = 0.5 * h * (from.forces.damping_power + forces.damping_power);
@@ -327,10 +349,9 @@ fn explicit(system: &mut System, from: From<'_>, h: f64, observe: Observer<'_>) 
     Tried::Done(Box::new(Done {
         state,
         forces,
-        forces_at_end: true,
         work,
         dissipated,
-        error: 0.0,
+        error: (0.0, NodeId::new(0)),
     }))
 }
 
@@ -346,29 +367,81 @@ fn place(system: &mut System, from: &From<'_>, h: f64, movement: &[f64], state: 
     system.structure.dofs().move_nodes(movement, 1.0, &mut state.positions);
 }
 
-fn distance(system: &System, residual: &[f64], rates: &[f64], weight: f64, forces: &Forces) -> Distance {
-    let mut largest: f64 = 0.0;
-    for r in residual {
+fn distance(system: &System, residual: &[f64], inertia: &[f64], forces: &Forces) -> Distance {
+    let (mut largest, mut at) = (0.0, 0);
+    for (dof, r) in residual.iter().enumerate() {
         if !r.is_finite() {
             return Distance {
-                residual: f64::INFINITY,
-                allowed: 0.0,
+                node: system.structure.dofs().node(dof),
+                ..Distance::unknown()
             };
         }
-        largest = largest.max(r.abs());
+        if r.abs() > largest {
+            (largest, at) = (r.abs(), dof);
+        }
     }
-    let inertia = rates.iter().enumerate();
-    let inertia = inertia.map(|(dof, v)| weight * (system.mass_of(dof) * v).abs());
     let load = forces
         .applied
         .iter()
         .map(Vector3::amax)
         .fold(system.largest_force(), f64::max);
-    let yardstick = inertia.fold(load.max(forces.largest_axial), f64::max);
+    let yardstick = (inertia.iter()).fold(load.max(forces.largest_axial), |most, f| most.max(f.abs()));
     Distance {
         residual: largest,
         allowed: TOLERANCE * yardstick,
+        node: system.node_of(at),
     }
+}
+
+impl Distance {
+    /// That of numbers beyond use.
+    fn unknown() -> Self {
+        Self {
+            residual: f64::INFINITY,
+            allowed: 0.0,
+            node: NodeId::new(0),
+        }
+    }
+}
+
+fn failure(system: &System, from: &From<'_>, last: Distance, reached: &[Vector3<f64>]) -> Failure {
+    Failure {
+        why: if last.residual.is_finite() {
+            StuckBy::NotConverged {
+                residual: last.residual,
+                allowed: last.allowed,
+            }
+        } else {
+            StuckBy::BeyondUse
+        },
+        node: last.node,
+        segment: turned(system, from, reached),
+    }
+}
+
+/// The segment that went slack or came taut from the start to the positions `reached`; of several the one whose force
+/// changed most.
+pub(super) fn turned(system: &System, from: &From<'_>, reached: &[Vector3<f64>]) -> Option<SegmentId> {
+    let change = |e: usize| {
+        let forces = [from.state.positions.as_slice(), reached].map(|positions| system.axial_force(positions, e));
+        (forces[1] - forces[0]).abs()
+    };
+    let taut = system.taut(reached);
+    let turned = (0..taut.len()).filter(|e| taut[*e] != from.taut[*e]);
+    let most = turned.map(|e| (change(e), e)).max_by(|a, b| a.0.total_cmp(&b.0));
+    most.map(|(_, e)| SegmentId::new(e))
+}
+
+/// Largest error of a step in a position by the change of the accelerations (m), and where.
+fn error_of(system: &System, [from, to]: [&State; 2], weight: f64) -> (f64, NodeId) {
+    let (mut largest, mut at) = (0.0, 0);
+    for (dof, (a0, a1)) in from.accelerations.iter().zip(&to.accelerations).enumerate() {
+        let error = weight * (a1 - a0).abs();
+        if error > largest {
+            (largest, at) = (error, dof);
+        }
+    }
+    (largest, system.node_of(at))
 }
 
 /// Whether a correction is below what positions can tell apart.

@@ -1,17 +1,20 @@
 //! The net in motion as the schemes see it: masses, loads at a time, forces, stiffness.
 
+use std::collections::BTreeSet;
 use std::sync::Arc;
 
 use nalgebra::{Matrix3, Vector3};
 
 use super::check::moves_supports;
 use super::history::Side;
-use super::mass;
+use super::inertia::Inertia;
 use super::{Driven, Motion, MotionError};
 use crate::assembly::{Loading, Structure};
 use crate::element::{Bar, axial_block};
 use crate::load::Case;
-use crate::model::{AxialLaw, NodeId};
+use crate::model::{AxialLaw, NodeId, Segment};
+use crate::motion::About;
+use crate::motion::mass::Masses;
 
 /// Loads at one moment.
 #[derive(Clone, Debug)]
@@ -70,6 +73,17 @@ pub(super) struct Forces {
     pub(super) largest_axial: f64,
 }
 
+/// All that is known of a moment.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Moment<'a> {
+    /// Time (s).
+    pub(super) time: f64,
+    pub(super) state: &'a State,
+    pub(super) forces: &'a Forces,
+    /// What the forces make of the masses, along every free direction (m/s²).
+    pub(super) accelerations: &'a [f64],
+}
+
 /// Elastic and other energies of a state (J).
 #[derive(Clone, Copy, Debug, Default)]
 pub(super) struct Energies {
@@ -85,16 +99,20 @@ pub(super) struct System {
     pub(super) motion: Arc<Motion>,
     /// What acts throughout; its support movements are those of the present.
     loading: Loading,
-    /// Mass of every node (kg).
-    pub(super) masses: Vec<f64>,
+    pub(super) inertia: Inertia,
     /// Share of every segment's force that still acts: 1 whole, 0 broken.
     pub(super) shares: Vec<f64>,
     /// Ends of every segment.
     ends: Vec<[usize; 2]>,
     /// Entries of the stiffness of elastic supports.
     elastic_entries: Vec<f64>,
-    /// Entries of the damping matrix `b K`; empty: none.
+    /// Entries of the damping matrix `b K`, and its block of every segment; empty: none.
     damping_entries: Vec<f64>,
+    damping_blocks: Vec<Matrix3<f64>>,
+    /// Nodes with a support, rigid or elastic, in rising order.
+    supported: Vec<NodeId>,
+    /// Segments at each of them.
+    at_supports: Vec<Vec<usize>>,
     /// Whether supports move.
     pub(super) supports_move: bool,
     start: Vec<Vector3<f64>>,
@@ -121,42 +139,69 @@ impl System {
             ..motion.case.clone()
         };
         let loading = Loading::new(&structure, &case, &motion.case.unstressed_lengths, 1.0)?;
-        let mut masses = mass::lumped(net, &motion.reference, &motion.case.removed);
-        for (mass, added) in masses.iter_mut().zip(&motion.added_masses) {
-            *mass += added;
-        }
+        let of_segment = |segment: &Segment| motion.case.unstressed_lengths[segment.length];
+        let lying: Vec<f64> = net.segments().iter().map(of_segment).collect();
+        let about = About {
+            case: &motion.case,
+            positions: &motion.positions,
+            reference: &motion.reference.positions,
+            axial_forces: &[],
+            lying: &lying,
+        };
+        let inertia = Inertia::new(&structure, Masses::new(&structure, &motion.masses, &about));
+        let rigid = net.supports().iter().filter(|support| !support.held().is_empty());
+        let elastic = net.elastic_supports().iter().flat_map(|elastic| elastic.nodes());
+        let supported: BTreeSet<NodeId> = rigid.map(|support| support.node()).chain(elastic.copied()).collect();
+        let at_supports = (supported.iter())
+            .map(|node| {
+                let segments = net.segments().iter().enumerate();
+                let at_node = segments.filter(|(_, segment)| segment.ends.contains(node));
+                at_node.map(|(e, _)| e).collect()
+            })
+            .collect();
         let mut elastic_entries = vec![0.0; structure.pattern().n_entries()];
         structure.add_elastic_supports(&mut elastic_entries);
         let mut system = Self {
-            masses,
+            inertia,
             shares: vec![1.0; net.segments().len()],
             ends: net.segments().iter().map(|s| s.ends.map(NodeId::index)).collect(),
             elastic_entries,
             damping_entries: Vec::new(),
+            damping_blocks: Vec::new(),
+            supported: supported.into_iter().collect(),
+            at_supports,
             supports_move: motion.driven.iter().filter_map(driven_case).any(moves_supports),
             start: motion.positions.clone(),
             loading,
             structure,
             motion,
         };
-        system.damping_entries = system.damping_by_stiffness();
+        system.damp_by_stiffness();
         Ok(system)
     }
 
-    /// Entries of `b K` with the tangent `K` at the start; empty where there is no such damping.
-    fn damping_by_stiffness(&self) -> Vec<f64> {
+    /// Works out `b K` with the tangent `K` at the start.
+    fn damp_by_stiffness(&mut self) {
         let share = self.motion.damping.stiffness;
         if share == 0.0 {
-            return Vec::new();
+            return;
         }
         let mut entries = vec![0.0; self.structure.pattern().n_entries()];
-        let blocks: Vec<_> = (0..self.ends.len())
+        let mut blocks: Vec<_> = (0..self.ends.len())
             .map(|e| self.bars()[e].stiffness_block(&self.chord(&self.start, e)))
             .collect();
         self.structure.tangent_into(&blocks, &mut entries);
         self.structure.add_elastic_supports(&mut entries);
         entries.iter_mut().for_each(|entry| *entry *= share);
-        entries
+        blocks.iter_mut().for_each(|block| *block *= share);
+        self.damping_entries = entries;
+        self.damping_blocks = blocks;
+    }
+
+    /// Whether a driven load moves the support of a node.
+    pub(super) fn moves(&self, node: NodeId) -> bool {
+        let mut cases = self.motion.driven.iter().filter_map(driven_case);
+        cases.any(|case| case.support_movements[node.index()] != Vector3::zeros())
     }
 
     pub(super) fn bars(&self) -> &[Bar] {
@@ -177,8 +222,14 @@ impl System {
         self.shares[segment] * self.bars()[segment].axial_force(self.length(positions, segment))
     }
 
-    pub(super) fn mass_of(&self, dof: usize) -> f64 {
-        self.masses[self.structure.dofs().node(dof).index()]
+    /// Node of a free direction; the first of all where nothing can move.
+    pub(super) fn node_of(&self, dof: usize) -> NodeId {
+        let dofs = self.structure.dofs();
+        if dofs.is_empty() {
+            NodeId::new(0)
+        } else {
+            dofs.node(dof)
+        }
     }
 
     /// Loads at a time (s), at a jump those on one side of it.
@@ -240,6 +291,77 @@ impl System {
         nodal
     }
 
+    /// Velocity of one node (m/s).
+    pub(super) fn velocity(&self, node: NodeId, state: &State) -> Vector3<f64> {
+        state.held_velocities[node.index()] + self.along_free(node, &state.velocities)
+    }
+
+    /// Acceleration of one node (m/s²).
+    pub(super) fn acceleration(&self, node: NodeId, moment: &Moment<'_>) -> Vector3<f64> {
+        let mut acceleration = self.along_free(node, moment.accelerations);
+        if let Some(support) = self.structure.net().support_of(node).filter(|_| self.supports_move) {
+            for driven in &self.motion.driven {
+                if let Driven::Case { case, history } = driven {
+                    let movement = case.support_movements[node.index()];
+                    acceleration += support.held_part(&movement) * history.second_derivative(moment.time);
+                }
+            }
+        }
+        acceleration
+    }
+
+    /// Vector of one node from components along the free directions.
+    fn along_free(&self, node: NodeId, components: &[f64]) -> Vector3<f64> {
+        let dofs = self.structure.dofs();
+        let own = &components[dofs.first(node)..];
+        dofs.directions(node).iter().zip(own).map(|(d, c)| d * *c).sum()
+    }
+
+    /// Nodes with a support, rigid or elastic, in rising order.
+    pub(super) fn supported(&self) -> &[NodeId] {
+        &self.supported
+    }
+
+    /// Force of the support of a node on the net (N); zero where it has none.
+    ///
+    /// ```text
+    /// elastic   −S (x − rest − movement) − b S v
+    /// rigid     along held directions:  M (a + α v) + b K v − (all other forces)
+    /// ```
+    pub(super) fn support_force(&self, node: NodeId, moment: &Moment<'_>) -> Vector3<f64> {
+        let Ok(place) = self.supported.binary_search(&node) else {
+            return Vector3::zeros();
+        };
+        let net = self.structure.net();
+        let share = self.motion.damping.stiffness;
+        let mut elastic = moment.forces.elastic[node.index()];
+        if share > 0.0 {
+            for support in net.elastic_supports() {
+                for row in (0..support.nodes().len()).filter(|row| support.nodes()[*row] == node) {
+                    for (column, other) in support.nodes().iter().enumerate() {
+                        elastic -= support.block(row, column) * self.velocity(*other, moment.state) * share;
+                    }
+                }
+            }
+        }
+        let Some(support) = net.support_of(node).filter(|support| !support.held().is_empty()) else {
+            return elastic;
+        };
+        let velocity = self.velocity(node, moment.state);
+        let rate = self.acceleration(node, moment) + velocity * self.motion.damping.mass;
+        // What damping by stiffness does through elastic supports acts on the node beside what these exert.
+        let mut resisted = self.inertia.of_node(node.index()) * rate - moment.forces.out_of_balance[node.index()]
+            + (moment.forces.elastic[node.index()] - elastic);
+        if share > 0.0 {
+            for e in &self.at_supports[place] {
+                let [i, j] = self.ends[*e];
+                let other = NodeId::new(if i == node.index() { j } else { i });
+                resisted += self.damping_blocks[*e] * (velocity - self.velocity(other, moment.state));
+            }
+        }
+        elastic + support.held_part(&resisted)
+    }
+
     /// Part of one vector a node along held directions.
     pub(super) fn held_parts(&self, nodal: &[Vector3<f64>]) -> Vec<Vector3<f64>> {
         let dofs = self.structure.dofs();
@@ -260,7 +382,7 @@ impl System {
 
     /// Room for forces.
     pub(super) fn new_forces(&self) -> Forces {
-        let nodes = self.masses.len();
+        let nodes = self.start.len();
         Forces {
             out_of_balance: vec![Vector3::zeros(); nodes],
             applied: vec![Vector3::zeros(); nodes],
@@ -306,9 +428,8 @@ impl System {
                 .product_into(&self.damping_entries, along_free, &mut forces.residual);
         }
         if self.motion.damping.mass > 0.0 {
-            for (dof, (damping, v)) in forces.residual.iter_mut().zip(along_free).enumerate() {
-                *damping += self.motion.damping.mass * self.masses[self.structure.dofs().node(dof).index()] * v;
-            }
+            self.inertia
+                .add_product(self.motion.damping.mass, along_free, &mut forces.residual);
         }
         forces.damping_power = forces.residual.iter().zip(along_free).map(|(f, v)| f * v).sum();
     }
@@ -493,13 +614,7 @@ impl System {
             *value += damping_weight * damping;
         }
         let weight = mass_weight + damping_weight * self.motion.damping.mass;
-        // The diagonal is the head of each column.
-        for (dof, head) in self.structure.pattern().column_starts()[..self.structure.n_dofs()]
-            .iter()
-            .enumerate()
-        {
-            values[*head] += weight * self.mass_of(dof);
-        }
+        self.inertia.add_to(&self.structure, weight, values);
     }
 
     /// Which segments bear force at these positions.
@@ -512,11 +627,6 @@ impl System {
     /// Largest force that acts throughout on a free direction (N).
     pub(super) fn largest_force(&self) -> f64 {
         self.loading.largest_force(&self.structure)
-    }
-
-    pub(super) fn kinetic_energy(&self, velocities: &[f64]) -> f64 {
-        let squares = velocities.iter().enumerate();
-        0.5 * squares.map(|(dof, v)| self.mass_of(dof) * v * v).sum::<f64>()
     }
 
     /// Strain energy of one segment (J), as far as it still acts.
@@ -541,7 +651,7 @@ impl System {
         }
         let moved = positions.iter().zip(&self.start).zip(&self.loading.nodal_forces);
         Energies {
-            kinetic: self.kinetic_energy(&state.velocities),
+            kinetic: 0.5 * self.inertia.square(&state.velocities),
             elastic,
             potential: -moved.map(|((x, start), force)| force.dot(&(x - start))).sum::<f64>(),
         }
@@ -569,11 +679,12 @@ impl System {
     /// A step below which explicit differences are stable (s): `2/ω`, with a bound on the highest frequency.
     ///
     /// ```text
-    /// ω² ≤ max over nodes of  2 Σ k / M,   k = EA / a of the segments at the node,  more where springs are
+    /// ω² ≤ max over nodes of  2 Σ k / m,   k = EA / a of the segments at the node,  more where springs are
     /// ```
-    /// The block of a segment is never stiffer than `k`, so that this holds in any state (Gershgorin, by blocks).
+    /// The block of a segment is never stiffer than `k`, and `m` is the least mass of the node in any direction, so that this
+    /// holds in any state (Gershgorin, by blocks).
     pub(super) fn stable_step(&self) -> f64 {
-        let mut stiffness = vec![0.0; self.masses.len()];
+        let mut stiffness = vec![0.0; self.start.len()];
         for (bar, ends) in self.bars().iter().zip(&self.ends) {
             for end in ends {
                 stiffness[*end] += 2.0 * bar.stiffness;
@@ -587,7 +698,7 @@ impl System {
         let mut largest: f64 = 0.0;
         for dof in 0..self.structure.n_dofs() {
             let node = self.structure.dofs().node(dof).index();
-            largest = largest.max(stiffness[node] / self.masses[node]);
+            largest = largest.max(stiffness[node] / self.inertia.least(node));
         }
         2.0 / largest.sqrt()
     }
