@@ -10,27 +10,12 @@ from independent import Net
 
 @dataclass
 class Thrown:
-    """A net with masses (kg, one a free node) that starts with a velocity (m/s); dead loads are those of the net.
-
-    `push`: further force on the free nodes at a time (N). `dashpots`: force per rate of length of every segment (N s/m),
-    such that force and dashpot together never push. `mass_damping`: force per mass and velocity (1/s).
-    """
+    """A net with a mass (kg) and a velocity at the start (m/s) of every free node; dead loads are those of the net."""
 
     net: Net
     mass: np.ndarray
     velocity: np.ndarray
-    push: object = None
-    mass_damping: float = 0.0
     events: list = field(default_factory=list)
-
-    def rates(self, t, y):
-        """Velocities and accelerations, flat."""
-        n = len(self.net.free)
-        x, v = y[: 3 * n].reshape(n, 3), y[3 * n :].reshape(n, 3)
-        force = self.net.residual(x) - self.mass_damping * self.mass[:, None] * v
-        if self.push is not None:
-            force = force + self.push(t)
-        return np.concatenate([y[3 * n :], (force / self.mass[:, None]).ravel()])
 
     def excess(self, y):
         """Length less stress-free length of every segment (m)."""
@@ -49,16 +34,13 @@ class Thrown:
         self.events = []
         taut = self.excess(y) > 0.0
 
-        def smooth(t, y):
+        def smooth(_, y):
             """The rates with the set of taut segments of this stretch of time."""
             x = y[: 3 * n].reshape(n, 3)
             d = self.net.spans(x)
             length = np.sqrt(np.einsum("ij,ij->i", d, d))
             q = np.where(taut, self.net.stiffness * (length - self.net.unstressed) / length, 0.0)
-            v = y[3 * n :].reshape(n, 3)
-            force = self.net.pull - self.net.branch.T @ (q[:, None] * d) - self.mass_damping * self.mass[:, None] * v
-            if self.push is not None:
-                force = force + self.push(t)
+            force = self.net.pull - self.net.branch.T @ (q[:, None] * d)
             return np.concatenate([y[3 * n :], (force / self.mass[:, None]).ravel()])
 
         # A segment that has just passed its bend lies at it within the accuracy of the root: this keeps it off.
