@@ -201,7 +201,7 @@ def string(data, n):
         for k in range(n + 1)
     ]
     section = {"id": "rope", "axial_stiffness_n": stiffness, "mass_kg_per_m": mass}
-    return brief_of(nodes, [rope("s", *(entry["id"] for entry in nodes))], {"s": n * unstressed}, [section])
+    return brief_of(nodes, [rope("s", *(entry["id"] for entry in nodes))], {"s": unstressed}, [section])
 
 
 def test_plucked_string(channel):

@@ -25,7 +25,7 @@ def long_rope(actions=(), end=None):
         nodes[0] = end
     section = {"id": "rope", "axial_stiffness_n": STIFFNESS, "mass_kg_per_m": MASS}
     path = [entry["id"] for entry in nodes]
-    return brief_of(nodes, [rope("s", *path)], {"s": PIECES * UNSTRESSED}, [section], actions)
+    return brief_of(nodes, [rope("s", *path)], {"s": UNSTRESSED}, [section], actions)
 
 
 def peak(time, u):
