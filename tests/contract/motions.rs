@@ -10,26 +10,20 @@ use ropewalk_numerics::brief::{
 use ropewalk_numerics::model::{CableId, NodeId, SegmentId};
 use ropewalk_numerics::motion::MassGiven;
 use ropewalk_numerics::motion::transient::{BreakWhen, Frames, History, Scheme};
-use ropewalk_service::decode::{NOT_SERVED, Reading, Work, read_refusing};
+use ropewalk_service::decode::Work;
 use serde_json::{Value, json};
 use v1::FindingSeverity::{Doubt, Error, Note};
 
-use crate::briefs::{LIMITS, changed, errors, message, quince_cloth, terrace};
+use crate::briefs::{changed, errors, quince_cloth, reading, terrace};
 use crate::violations::told;
-
-/// The reading of a brief, motions included.
-fn ahead(json: &Value) -> Reading {
-    let refused: Vec<&str> = NOT_SERVED.iter().copied().filter(|part| *part != "motions").collect();
-    read_refusing(message(json), &LIMITS, &refused)
-}
 
 /// The work of a brief without errors.
 #[track_caller]
 fn work(json: &Value) -> Work {
-    let reading = ahead(json);
-    let errors: Vec<_> = errors(&reading).collect();
+    let read = reading(json);
+    let errors: Vec<_> = errors(&read).collect();
     assert!(errors.is_empty(), "{errors:#?}");
-    reading.work.expect("no errors, so there is work")
+    read.work.expect("no errors, so there is work")
 }
 
 /// The one motion of a brief.
@@ -70,10 +64,10 @@ fn gusty(wind: Value) -> Value {
 /// One kind of error, at this place.
 #[track_caller]
 fn check(brief: &Value, reason: &str, path: &str) -> v1::Finding {
-    let reading = ahead(brief);
-    let found = told(&reading, Error, reason, path).clone();
-    assert!(reading.work.is_none());
-    let others: Vec<_> = errors(&reading).filter(|error| error.reason != reason).collect();
+    let read = reading(brief);
+    let found = told(&read, Error, reason, path).clone();
+    assert!(read.work.is_none());
+    let others: Vec<_> = errors(&read).filter(|error| error.reason != reason).collect();
     assert!(others.is_empty(), "also {others:#?}");
     found
 }
@@ -81,9 +75,9 @@ fn check(brief: &Value, reason: &str, path: &str) -> v1::Finding {
 /// A doubt or a note at this place, while the work can be done.
 #[track_caller]
 fn check_mild(brief: &Value, severity: v1::FindingSeverity, reason: &str, path: &str) -> v1::Finding {
-    let reading = ahead(brief);
-    let found = told(&reading, severity, reason, path).clone();
-    assert!(reading.work.is_some(), "{:#?}", errors(&reading).collect::<Vec<_>>());
+    let read = reading(brief);
+    let found = told(&read, severity, reason, path).clone();
+    assert!(read.work.is_some(), "{:#?}", errors(&read).collect::<Vec<_>>());
     found
 }
 
@@ -96,7 +90,7 @@ fn node(work: &Work, name: &str) -> NodeId {
 #[test]
 fn the_calm_motion_is_in_order() {
     let told = |brief: &Value| {
-        let mut findings = ahead(brief).findings;
+        let mut findings = reading(brief).findings;
         findings.retain(|finding| finding.severity() != Note || finding.path.starts_with("motions"));
         findings
     };
@@ -107,10 +101,10 @@ fn the_calm_motion_is_in_order() {
 
 #[test]
 fn defaults_are_used_and_told() {
-    let reading = ahead(&drifting(&[]));
+    let read = reading(&drifting(&[]));
     let has = |path: &str, value: &str| {
-        let found = reading.resolved.iter().find(|r| r.path == path);
-        let found = found.unwrap_or_else(|| panic!("no {path} in {:#?}", reading.resolved));
+        let found = read.resolved.iter().find(|r| r.path == path);
+        let found = found.unwrap_or_else(|| panic!("no {path} in {:#?}", read.resolved));
         assert_eq!((found.value.as_str(), found.origin.as_str()), (value, "default"));
     };
     has("motions[drift].from", "reference");
@@ -210,7 +204,7 @@ fn defaults_are_used_and_told() {
     assert_eq!((mean, phase, start), (0.0, 0.0, 0.0));
     assert!(end > given.duration, "with the motion, and without a jump at its end");
     assert_eq!(given.spectra, Some(SpectraGiven { from: 0.0, up_to: None }));
-    let reading = ahead(&brief);
+    let read = reading(&brief);
     for (path, value) in [
         ("generalised_alpha.spectral_radius", "0.8"),
         ("generalised_alpha.error_m", "equal steps"),
@@ -221,10 +215,10 @@ fn defaults_are_used_and_told() {
         ("spectra.up_to_hz", "half of one over the step"),
     ] {
         let path = format!("motions[drift].{path}");
-        let found = reading.resolved.iter().find(|r| r.path == path);
+        let found = read.resolved.iter().find(|r| r.path == path);
         assert_eq!(found.map(|r| r.value.as_str()), Some(value), "{path}");
     }
-    let gust = ahead(&gusty(json!({"along": [0, 1, 0], "elsewhere": 0.4})));
+    let gust = reading(&gusty(json!({"along": [0, 1, 0], "elsewhere": 0.4})));
     let density = gust
         .resolved
         .iter()
@@ -403,7 +397,7 @@ fn a_motion_with_everything_is_read_as_meant() {
          throughout; g1 breaks at 0 s within 0.02 s; carrying from A to m breaks at 50 kN; post breaks at 19.9 s"
     );
     for (scheme, expected) in [
-        ("energy_conserving", Scheme::Conserving),
+        ("energy_conserving", Scheme::Conserving { error: None }),
         ("central_differences", Scheme::CentralDifferences),
     ] {
         assert_eq!(
@@ -679,7 +673,7 @@ fn everything_that_is_wrong_is_told_at_once() {
         "damping": {"factors": {"mass_per_s": -1}}, "start": {"moved": [{}]}, "watched": [{"id": ""}],
         "frames": {"every_steps": 0}, "spectra": {"up_to_hz": -1}, "compare_with": "never"
     });
-    let reading = ahead(&with(terrace(), motion));
+    let read = reading(&with(terrace(), motion));
     for (reason, path) in [
         ("RESERVED_ID", "motions[0].id"),
         ("UNKNOWN_ID", "from"),
@@ -703,7 +697,7 @@ fn everything_that_is_wrong_is_told_at_once() {
         } else {
             format!("motions[reference].{path}")
         };
-        told(&reading, Error, reason, &path);
+        told(&read, Error, reason, &path);
     }
 }
 
@@ -921,13 +915,8 @@ fn histories_that_are_odd_are_doubted() {
         json!({"harmonic": {"amplitude": 1, "frequency_hz": 5}}),
         json!({"table": {"values": values, "every_s": 0.01}}),
     ] {
-        let reading = ahead(&driven(history));
-        assert!(
-            reading
-                .findings
-                .iter()
-                .all(|finding| finding.reason != "STEPS_TOO_LONG")
-        );
+        let read = reading(&driven(history));
+        assert!(read.findings.iter().all(|finding| finding.reason != "STEPS_TOO_LONG"));
     }
 }
 
@@ -975,8 +964,8 @@ fn actions_that_cannot_vary_are_told() {
         &[("/motions/0/from", json!("snowed"))],
     );
     check_mild(&again, Doubt, "ACTS_TWICE", at);
-    let reading = ahead(&driven("snow", json!({"constant": 1})));
-    assert!(reading.findings.iter().all(|finding| finding.reason != "ACTS_TWICE"));
+    let read = reading(&driven("snow", json!({"constant": 1})));
+    assert!(read.findings.iter().all(|finding| finding.reason != "ACTS_TWICE"));
     // An action that acts in a motion alone is used.
     let alone = changed(
         terrace(),
@@ -985,8 +974,8 @@ fn actions_that_cannot_vary_are_told() {
             json!({"id": "kick", "loads": [{"nodes": {"on": ["m"], "force_n": [0, 900, 0]}}]}),
         )],
     );
-    told(&ahead(&alone), Note, "ACTION_UNUSED", "actions");
-    let used = ahead(&with(alone, changed(calm(), &[("/driven/0/action", json!("kick"))])));
+    told(&reading(&alone), Note, "ACTION_UNUSED", "actions");
+    let used = reading(&with(alone, changed(calm(), &[("/driven/0/action", json!("kick"))])));
     assert!(used.findings.iter().all(|finding| finding.reason != "ACTION_UNUSED"));
 }
 
@@ -1244,7 +1233,7 @@ fn starts_that_make_no_sense_are_told() {
     );
     let moves = drifting(&[("/driven", json!([])), ("/start", json!({"shape_of": "snowed"}))]);
     assert!(
-        ahead(&moves)
+        reading(&moves)
             .findings
             .iter()
             .all(|finding| finding.reason != "NOTHING_MOVES")
@@ -1433,17 +1422,7 @@ fn a_run_may_name_motions() {
     assert!(error.message.contains("\"second\""), "{}", error.message);
 }
 
-#[test]
-fn motions_are_refused_until_they_are_served() {
-    let served = !NOT_SERVED.contains(&"motions");
-    let reading = crate::briefs::reading(&drifting(&[]));
-    assert_eq!(reading.work.is_some(), served);
-    if !served {
-        told(&reading, Error, "NOT_SERVED", "motions[drift]");
-    }
-}
-
-/// The example briefs with motions, as the next to be served.
+/// The example briefs with motions.
 #[test]
 fn the_examples_are_in_order() {
     for (text, words) in [
@@ -1460,11 +1439,11 @@ fn the_examples_are_in_order() {
         ),
     ] {
         let brief: Value = serde_json::from_str(text).expect("valid JSON");
-        let reading = ahead(&brief);
+        let read = reading(&brief);
         assert!(
-            reading.findings.iter().all(|finding| finding.severity() == Note),
+            read.findings.iter().all(|finding| finding.severity() == Note),
             "{:#?}",
-            reading.findings
+            read.findings
         );
         let work = work(&brief);
         assert_eq!([0, 1].map(|motion| work.motion_in_words(motion)), words);

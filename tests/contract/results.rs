@@ -27,7 +27,7 @@ pub(crate) fn run(work: &Work, cases: &[usize]) -> Vec<Event> {
     let mut history = Vec::new();
     let found = plan.reference_with_history(&mut history, &mut |_| ControlFlow::Continue(()));
     messages.extend(reference(work, &plan, &found, &history));
-    let mut tally = Tally::new(&plan, cases, &found);
+    let mut tally = Tally::new(&plan, cases, &[], &found);
     if let Ok(found) = &found {
         for index in cases {
             let outcome = plan.case(found, *index, &mut |_| ControlFlow::Continue(()));
@@ -344,7 +344,7 @@ fn a_case_that_nothing_holds_is_told_by_names() {
         .iter()
         .any(|message| matches!(message.event, Some(Event::Columns(_))));
     assert!(!columns, "there is no state to tell");
-    let mut tally = Tally::new(&plan, &[0], &Ok(found));
+    let mut tally = Tally::new(&plan, &[0], &[], &Ok(found));
     tally.add(0, &noted);
     let summary = closing_of(&work, &plan, tally);
     assert_eq!(summary.verdict(), v1::Verdict::NoAnswer);
@@ -456,7 +456,7 @@ fn failures_of_our_own_are_told_and_do_not_end_the_run() {
     let work = work(&first_net());
     let (plan, found) = found(&work);
     let found = Ok(found);
-    let mut tally = Tally::new(&plan, &[0], &found);
+    let mut tally = Tally::new(&plan, &[0], &[], &found);
     let (said, noted) = engine_error(&work, &plan, 0);
     tally.add(0, &noted);
     let Some(Event::CaseSummary(closing)) = said.last().and_then(|message| message.event.clone()) else {
@@ -485,7 +485,7 @@ fn without_a_reference_state_nothing_is_judged() {
     };
     let failure = closing.failure.expect("a failure");
     assert_eq!(failure.reason, "CANCELLED");
-    let said = closing_of(&work, &plan, Tally::new(&plan, &[0, 1, 2], &found));
+    let said = closing_of(&work, &plan, Tally::new(&plan, &[0, 1, 2], &[], &found));
     assert_eq!(said.verdict(), v1::Verdict::NoAnswer);
     assert_eq!(said.answered, Some(v1::Share { count: 0, of: 4 }));
     assert_eq!(said.checks[0].not_judged, 4);

@@ -191,7 +191,7 @@ fn every_message_of_a_large_net_is_small() {
         &found,
         &found.as_ref().map_or(vec![], |r| r.history.clone()),
     ));
-    small(&closing(&work, &plan, Tally::new(&plan, &[0], &found)));
+    small(&closing(&work, &plan, Tally::new(&plan, &[0], &[], &found)));
     let frozen = freeze(&work, &plan, &found).expect("a state");
     assert!(frozen.len() > 20, "a frozen brief comes in parts");
     small(&frozen);
@@ -216,7 +216,7 @@ fn long_texts_of_the_client_are_not_repeated_whole() {
     let work = read(brief.clone(), &LIMITS).work.expect("no errors");
     let plan = Plan::new(work.brief.clone());
     let found = Ok(state(&plan.brief().net));
-    let mut tally = Tally::new(&plan, &[0], &found);
+    let mut tally = Tally::new(&plan, &[0], &[], &found);
     let reference = found.as_ref().expect("a state");
     let outcome = plan.case(reference, 0, &mut |_| std::ops::ControlFlow::Continue(()));
     tally.add(0, &encode::case(&work, &plan, reference, 0, &outcome).1);

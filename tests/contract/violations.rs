@@ -1190,7 +1190,6 @@ fn accepted_doubts_stay_visible() {
 fn parts_that_are_not_served() {
     for (pointer, value, path) in [
         ("/stored_net", json!("3f9a"), "stored_net"),
-        ("/motions", json!([{"id": "fall"}]), "motions[fall]"),
         ("/stages", json!([{"id": "first"}]), "stages[first]"),
         ("/workshop", json!({}), "workshop"),
         ("/readings", json!([{"id": "r1"}]), "readings[r1]"),

@@ -52,7 +52,7 @@ def test_get_info(channel):
     assert info.limits.request_bytes >= 64 << 20
     assert 0 < info.limits.response_bytes <= 1 << 20
     assert {"net.nodes", "cases", "prestress"} <= set(info.served)
-    assert "modes" in info.served and "motions" in info.not_served
+    assert "motions" in info.served and "stages" in info.not_served
     assert info.cautions
 
 

@@ -99,6 +99,8 @@ pub enum Fault {
     PanicInReference,
     /// Panics in the case with this id.
     PanicInCase(String),
+    /// Panics in the motion with this id.
+    PanicInMotion(String),
 }
 
 impl FromStr for Fault {
@@ -109,7 +111,10 @@ impl FromStr for Fault {
             None if text == "panic-in-reading" => Ok(Self::PanicInReading),
             None if text == "panic-in-reference" => Ok(Self::PanicInReference),
             Some(("panic-in-case", id)) if !id.is_empty() => Ok(Self::PanicInCase(id.to_owned())),
-            _ => Err("known faults: panic-in-reading, panic-in-reference, panic-in-case=ID".to_owned()),
+            Some(("panic-in-motion", id)) if !id.is_empty() => Ok(Self::PanicInMotion(id.to_owned())),
+            _ => Err(
+                "known faults: panic-in-reading, panic-in-reference, panic-in-case=ID, panic-in-motion=ID".to_owned(),
+            ),
         }
     }
 }

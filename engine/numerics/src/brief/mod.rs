@@ -28,7 +28,10 @@ pub use estimate::Estimate;
 pub use given::{Brief, CaseGiven, EnvelopeGiven, LoadPath};
 pub use loss::{Loss, LossExtreme, LossForce};
 pub use modes::{GustNote, ModesGiven};
-pub use motion::{BreakGiven, DampingGiven, DrivenGiven, DrivenWhat, MotionGiven, SpectraGiven, StartGiven, Watched};
+pub use motion::{
+    BreakGiven, Compared, DampingGiven, Divided, DrivenGiven, DrivenWhat, MotionBegun, MotionDoubt, MotionExtreme,
+    MotionExtremes, MotionFound, MotionGiven, MotionNotBegun, ShownRope, SpectraGiven, StartGiven, Watched,
+};
 pub use outcome::{CaseOutcome, EndForce, ReferenceOutcome, StateResult, SupportForce, Task};
 pub use path::PathResult;
 pub use picture::{LoadPicture, Resultant};

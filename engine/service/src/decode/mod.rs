@@ -68,7 +68,7 @@ pub(crate) use editions::of as edition_of;
 pub use keep::Kept;
 pub(crate) use net::STANDARD_GRAVITY;
 pub use not_served::{NOT_SERVED, SERVED};
-pub use reading::{Reading, read, read_refusing};
+pub use reading::{Reading, read};
 pub use sizing::SizingWork;
 pub(crate) use surface::WithoutValue;
 pub use work::{Selected, Work};

@@ -49,6 +49,7 @@ pub const SERVED: &[&str] = &[
     "sizing",
     "diagnosis",
     "modes",
+    "motions",
     "solving",
     "keep",
     "accepted",
@@ -56,14 +57,11 @@ pub const SERVED: &[&str] = &[
 ];
 
 /// Parts of a brief that are refused.
-pub const NOT_SERVED: &[&str] = &["stored_net", "motions", "stages", "workshop", "readings", "variants"];
+pub const NOT_SERVED: &[&str] = &["stored_net", "stages", "workshop", "readings", "variants"];
 
-/// Refuses these parts of the brief, wherever it has them.
-pub(crate) fn refuse(brief: &v1::Brief, refused: &[&str], findings: &mut Findings) {
-    let mut part = |name: &str, path: &Path<'_>, id: &str| {
-        if !refused.contains(&name) {
-            return;
-        }
+/// Refuses every part of the brief that is not served.
+pub(crate) fn refuse(brief: &v1::Brief, findings: &mut Findings) {
+    let mut part = |path: &Path<'_>, id: &str| {
         findings
             .error(
                 reasons::NOT_SERVED,
@@ -75,24 +73,20 @@ pub(crate) fn refuse(brief: &v1::Brief, refused: &[&str], findings: &mut Finding
             .value(id);
     };
     match &brief.net_source {
-        Some(v1::brief::NetSource::StoredNet(digest)) => part("stored_net", &Path::root("stored_net"), digest),
+        Some(v1::brief::NetSource::StoredNet(digest)) => part(&Path::root("stored_net"), digest),
         Some(v1::brief::NetSource::Net(_)) | None => {}
     }
     for (list, ids) in [
-        (
-            "motions",
-            brief.motions.iter().map(|m| m.id.as_str()).collect::<Vec<_>>(),
-        ),
-        ("stages", brief.stages.iter().map(|s| s.id.as_str()).collect()),
+        ("stages", brief.stages.iter().map(|s| s.id.as_str()).collect::<Vec<_>>()),
         ("readings", brief.readings.iter().map(|r| r.id.as_str()).collect()),
         ("variants", brief.variants.iter().map(|v| v.id.as_str()).collect()),
     ] {
         let elements = Path::root(list);
         for (number, id) in ids.iter().enumerate() {
-            part(list, &elements.element(id, number), id);
+            part(&elements.element(id, number), id);
         }
     }
     if brief.workshop.is_some() {
-        part("workshop", &Path::root("workshop"), "");
+        part(&Path::root("workshop"), "");
     }
 }

@@ -50,16 +50,10 @@ pub struct Reading {
 /// Reads a brief.
 #[must_use]
 pub fn read(brief: v1::Brief, limits: &Limits) -> Reading {
-    read_refusing(brief, limits, not_served::NOT_SERVED)
-}
-
-/// Reads a brief and refuses these parts of it.
-#[must_use]
-pub fn read_refusing(brief: v1::Brief, limits: &Limits, refused: &[&str]) -> Reading {
     let mut findings = Findings::default();
     let mut resolved = Resolved::default();
     let digest = digest(&brief);
-    let parts = read_parts(&brief, limits, refused, &mut findings, &mut resolved);
+    let parts = read_parts(&brief, limits, &mut findings, &mut resolved);
     let (cases, built) = match parts {
         Some(parts) => {
             let built = parts.work.and_then(|(unbuilt, names)| {
@@ -166,17 +160,11 @@ fn first_sets(sets: &[String]) -> Vec<String> {
     fits.cloned().collect()
 }
 
-fn read_parts(
-    brief: &v1::Brief,
-    limits: &Limits,
-    refused: &[&str],
-    findings: &mut Findings,
-    resolved: &mut Resolved,
-) -> Option<Parts> {
+fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resolved: &mut Resolved) -> Option<Parts> {
     if !is_id(&brief.id) {
         bad_id(findings, &Path::root("id"), &brief.id);
     }
-    not_served::refuse(brief, refused, findings);
+    not_served::refuse(brief, findings);
     if !limits::counts(brief, limits, findings) {
         return None;
     }
@@ -237,12 +225,7 @@ fn read_parts(
     let factors = factors.map(|factors| Factors::read(factors, &actions, findings, resolved));
     let mut cases = Cases::read(brief, &context, findings, resolved);
     combinations::read(brief, factors.as_ref(), &context, &mut cases, findings, resolved);
-    let motions = if refused.contains(&"motions") {
-        &[]
-    } else {
-        &brief.motions[..]
-    };
-    let driven = motions::driven_actions(motions, &actions);
+    let driven = motions::driven_actions(&brief.motions, &actions);
     cases.doubts(&context, factors.as_ref(), &driven, findings);
     adjusters.check_travel(&cases.list, &actions.adjustments, findings);
     let checks = checks::read(
@@ -269,7 +252,7 @@ fn read_parts(
         resolved,
     );
     let motions = motions::read(
-        motions,
+        &brief.motions,
         &motions::Context {
             net: &net,
             scopes: &scopes,

@@ -232,6 +232,11 @@ impl Work {
         })
     }
 
+    /// Name of a state: a case, or the reference state.
+    pub(crate) fn state_name(&self, state: Option<usize>) -> &str {
+        state.map_or(REFERENCE, |case| &self.brief.cases[case].name)
+    }
+
     /// What acts and happens in a motion, in words.
     #[must_use]
     pub fn motion_in_words(&self, motion: usize) -> String {

@@ -7,6 +7,7 @@ use ropewalk_numerics::model::Member;
 use ropewalk_numerics::shape::ShapeError;
 use v1::run_response::Event;
 
+use super::motions::NotedMotion;
 use super::parts::{count, event};
 use super::state::Array;
 use super::{anchors, cautions, effects, outcome, verdicts};
@@ -68,6 +69,8 @@ impl Counts {
 #[derive(Debug)]
 pub struct Tally {
     cases: Vec<usize>,
+    /// Motions of the run.
+    motions: usize,
     found: Result<ReferenceOutcome, ShapeError>,
     /// The summary in the making, if there is a reference state.
     summed_up: Option<brief::Tally>,
@@ -75,13 +78,14 @@ pub struct Tally {
 }
 
 impl Tally {
-    /// A tally of a run of `cases`, none of them solved yet.
+    /// A tally of a run of `cases` and `motions`, none of them worked off yet.
     #[must_use]
-    pub fn new(plan: &Plan, cases: &[usize], found: &Result<ReferenceOutcome, ShapeError>) -> Self {
+    pub fn new(plan: &Plan, cases: &[usize], motions: &[usize], found: &Result<ReferenceOutcome, ShapeError>) -> Self {
         let summed_up = found.as_ref().ok();
         Self {
             cases: cases.to_vec(),
-            summed_up: summed_up.map(|reference| brief::Tally::new(plan, reference, cases)),
+            motions: motions.len(),
+            summed_up: summed_up.map(|reference| brief::Tally::new(plan, reference, cases).with_motions(motions)),
             found: found.clone(),
             counts: Counts::default(),
         }
@@ -93,6 +97,14 @@ impl Tally {
         match &mut self.summed_up {
             Some(summed_up) => summed_up.add(case, &noted.digest),
             None => Vec::new(),
+        }
+    }
+
+    /// Takes in a motion.
+    pub fn add_motion(&mut self, motion: usize, noted: &NotedMotion) {
+        self.counts.join(noted.counts);
+        if let Some(summed_up) = &mut self.summed_up {
+            summed_up.add_motion(motion, noted.finished);
         }
     }
 }
@@ -110,6 +122,7 @@ impl Tally {
 pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
     let Tally {
         cases,
+        motions,
         found,
         summed_up,
         mut counts,
@@ -144,7 +157,7 @@ pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
                 findings: counts.messages(),
                 digest: work.digest.clone(),
                 anchors: Some(anchors::sheet(plan, &summary.anchors)),
-                motions: None,
+                motions: (motions > 0).then(|| share(summary.facts.motions.count, summary.facts.motions.of)),
             }
         }
         _ => {
@@ -161,7 +174,7 @@ pub fn closing(work: &Work, plan: &Plan, tally: Tally) -> Vec<v1::RunResponse> {
                 findings: counts.messages(),
                 digest: work.digest.clone(),
                 anchors: None,
-                motions: None,
+                motions: (motions > 0).then(|| share(0, motions)),
             }
         }
     };

@@ -12,7 +12,7 @@ use crate::words::{Quoted, rounded};
 /// Nodes or members to look at.
 const LOOKED_AT: usize = 20;
 
-fn failure(
+pub(super) fn failure(
     reason: &str,
     message: String,
     cure: &str,

@@ -12,6 +12,7 @@
 //! | `effects` | sums of effects, paths of cases, losses of members |
 //! | `diagnosis` | free movements, states of self-stress, least stiffnesses |
 //! | `modes` | natural modes: frequencies, shapes, what is odd about them |
+//! | `motions`, `motion_doubts` | motions in time: frames, events, spectra, extremes, what is odd about them |
 //! | `closing`, `verdicts`, `rules`, `anchors`, `cautions` | the end of a run |
 //! | `sizing` | sections chosen from lists |
 //! | `freeze` | the brief with what was found written in |
@@ -29,6 +30,8 @@ mod failure;
 mod freeze;
 mod head;
 mod modes;
+mod motion_doubts;
+mod motions;
 mod outcome;
 mod parts;
 mod progress;
@@ -45,6 +48,9 @@ pub use closing::{Noted, Tally, closing};
 pub use effects::{design_effect, path};
 pub use freeze::freeze;
 pub use head::{id_tables, started};
+pub use motions::{
+    NotedMotion, motion_broke, motion_end, motion_frame, motion_head, motion_not_begun, motion_progress,
+};
 pub use outcome::{case, engine_error, reference};
 pub use progress::progress;
 pub use report::check_report;

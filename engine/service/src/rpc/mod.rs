@@ -3,6 +3,7 @@
 mod brief;
 mod desk;
 mod freeze;
+mod motions;
 mod run;
 mod server;
 mod stream;

@@ -26,20 +26,22 @@ pub(super) async fn run(work: Work, request: v1::RunRequest, outbox: Outbox<v1::
     let clock = Arc::new(Clock::default());
     let only = request.only;
     let begin = move |prepared: &Prepared, findings| {
-        let cases = prepared
-            .work
-            .select(&only)
-            .map_err(|finding| Refusal::BriefHasErrors(vec![finding]))?
-            .cases;
-        Ok((head(prepared, &cases, findings), cases))
+        let selected = (prepared.work.select(&only)).map_err(|finding| Refusal::BriefHasErrors(vec![finding]))?;
+        Ok((head(prepared, &selected.cases, findings), selected))
     };
-    let (prepared, (head, cases)) = prepare(&work, request.brief.unwrap_or_default(), begin).await?;
-    tracing::info!(digest = prepared.work.digest, cases = cases.len(), "run");
+    let (prepared, (head, selected)) = prepare(&work, request.brief.unwrap_or_default(), begin).await?;
+    let decode::Selected { cases, motions } = &selected;
+    tracing::info!(
+        digest = prepared.work.digest,
+        cases = cases.len(),
+        motions = motions.len(),
+        "run"
+    );
     outbox.send(head).await?;
 
     let desk = Arc::new(ProgressDesk::new(cases.len()));
     let prepared = size(&work, prepared, &desk, &clock, &outbox).await?;
-    let (mut tally, reference) = find_reference(&work, &prepared, &desk, &clock, &cases, &outbox).await?;
+    let (mut tally, reference) = find_reference(&work, &prepared, &desk, &clock, &selected, &outbox).await?;
     if let Some(reference) = reference {
         let solver = Solver {
             work: &work,
@@ -48,8 +50,9 @@ pub(super) async fn run(work: Work, request: v1::RunRequest, outbox: Outbox<v1::
             desk: &desk,
             clock: &clock,
         };
-        solver.solve_in_order(&cases, &mut tally, &outbox).await?;
+        solver.solve_in_order(cases, &mut tally, &outbox).await?;
         solver.tell_governing_again(&tally, &outbox).await?;
+        solver.follow_in_order(motions, &mut tally, &outbox).await?;
     }
 
     let about = Arc::clone(&prepared);
@@ -135,7 +138,7 @@ async fn find_reference(
     prepared: &Arc<Prepared>,
     desk: &Arc<ProgressDesk>,
     clock: &Arc<Clock>,
-    cases: &[usize],
+    selected: &decode::Selected,
     outbox: &Outbox<v1::RunResponse>,
 ) -> Result<(encode::Tally, Option<Arc<ReferenceOutcome>>), Refusal> {
     let breaks = work.fault(&Fault::PanicInReference);
@@ -145,7 +148,7 @@ async fn find_reference(
         Arc::clone(desk),
         Arc::clone(clock),
     );
-    let (place, cases) = (Arc::clone(&work.place), cases.to_vec());
+    let (place, selected) = (Arc::clone(&work.place), selected.clone());
     let mut pending = work.shared.pool.start(move || {
         let _place = place;
         break_on_purpose(breaks);
@@ -155,7 +158,7 @@ async fn find_reference(
             about.plan.reference_with_history(&mut history, observe)
         });
         let messages = encode::reference(&about.work, &about.plan, &found, &history);
-        let tally = encode::Tally::new(&about.plan, &cases, &found);
+        let tally = encode::Tally::new(&about.plan, &selected.cases, &selected.motions, &found);
         (messages, tally, found.ok().map(Arc::new))
     });
     let answer = desk.relay(&mut pending, outbox, progress).await;
@@ -164,13 +167,13 @@ async fn find_reference(
     Ok((tally, reference))
 }
 
-/// Solves the cases of a run.
-struct Solver<'a> {
-    work: &'a Work,
-    prepared: &'a Arc<Prepared>,
-    reference: &'a Arc<ReferenceOutcome>,
-    desk: &'a Arc<ProgressDesk>,
-    clock: &'a Arc<Clock>,
+/// Works off the cases and motions of a run.
+pub(super) struct Solver<'a> {
+    pub(super) work: &'a Work,
+    pub(super) prepared: &'a Arc<Prepared>,
+    pub(super) reference: &'a Arc<ReferenceOutcome>,
+    pub(super) desk: &'a Arc<ProgressDesk>,
+    pub(super) clock: &'a Arc<Clock>,
 }
 
 /// What a case leaves: its messages, and what the summary needs of it.
@@ -288,7 +291,7 @@ pub(super) fn break_on_purpose(breaks: bool) {
     assert!(!breaks, "a fault on purpose");
 }
 
-fn progress(progress: v1::Progress) -> v1::RunResponse {
+pub(super) fn progress(progress: v1::Progress) -> v1::RunResponse {
     event(Event::Progress(progress))
 }
 

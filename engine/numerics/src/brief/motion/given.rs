@@ -1,4 +1,4 @@
-//! Motions of a brief.
+//! What is asked of a motion.
 
 use std::f64::consts::PI;
 
@@ -6,7 +6,7 @@ use nalgebra::Vector3;
 
 use crate::model::{NodeId, SegmentId};
 use crate::motion::MassGiven;
-use crate::motion::transient::{BreakWhen, Frames, History, Scheme};
+use crate::motion::transient::{BreakWhen, Frames, History, Scheme, SpectraGiven, Watched};
 
 /// A motion as given.
 #[derive(Clone, Debug, PartialEq)]
@@ -112,58 +112,6 @@ pub struct StartGiven {
     pub moved: Vec<(NodeId, Vector3<f64>)>,
     /// Velocities (m/s); a node named twice has the sum.
     pub velocities: Vec<(NodeId, Vector3<f64>)>,
-}
-
-/// A quantity that every frame tells. Directions are unit vectors.
-#[derive(Clone, Debug, PartialEq)]
-pub enum Watched {
-    /// Movement of a node from its start (m).
-    Movement {
-        /// The node.
-        node: NodeId,
-        /// Along this.
-        along: Vector3<f64>,
-    },
-    /// Velocity of a node (m/s).
-    Velocity {
-        /// The node.
-        node: NodeId,
-        /// Along this.
-        along: Vector3<f64>,
-    },
-    /// Acceleration of a node (m/s²).
-    Acceleration {
-        /// The node.
-        node: NodeId,
-        /// Along this.
-        along: Vector3<f64>,
-    },
-    /// Axial force of a segment (N).
-    AxialForce {
-        /// The segment.
-        segment: SegmentId,
-    },
-    /// Largest axial force of some segments (N).
-    LargestForce {
-        /// The segments.
-        segments: Vec<SegmentId>,
-    },
-    /// Force of a support on the net (N).
-    SupportForce {
-        /// The supported node.
-        node: NodeId,
-        /// Along this.
-        along: Vector3<f64>,
-    },
-}
-
-/// Spectra of watched quantities.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct SpectraGiven {
-    /// Samples are taken from then on (s).
-    pub from: f64,
-    /// Highest frequency that is told (Hz); `None`: half of one over the step.
-    pub up_to: Option<f64>,
 }
 
 #[cfg(test)]

@@ -1,6 +1,7 @@
 //! Briefs from end to end.
 
 mod effects;
+mod motions;
 mod outcomes;
 mod sizing;
 mod worked_numbers;

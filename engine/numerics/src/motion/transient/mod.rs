@@ -13,6 +13,18 @@
 //! The step is halved where a snatch does not converge, and divided where an error is to be kept or loads jump. All
 //! frames stand at whole steps. What is not conserved, dissipated or done by loads is told as the error of the steps.
 //!
+//! | file | subject |
+//! |---|---|
+//! | `given`, `history` | what is asked of a motion |
+//! | `check` | whether it makes sense, and how large it is |
+//! | `run` | [`Running`]: from frame to frame; may wait in between |
+//! | `step` | one step of each scheme; errors of the implicit ones by the change of acceleration |
+//! | `system`, `inertia` | forces, stiffness, mass; forces of supports |
+//! | `record` | frames, peaks, events, the ledger of energy |
+//! | `watch`, `spectrum` | quantities watched at every step, and their spectra |
+//! | `settled` | the static case to compare with |
+//! | `waves` | speeds of waves on ropes |
+//!
 //! Ropes that slide and segments that hang are refused. Pressure is left out of the tangent: the forces are exact, and
 //! inertia outweighs its slope in a step.
 

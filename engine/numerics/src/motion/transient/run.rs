@@ -338,7 +338,8 @@ impl Running {
             if is_last {
                 self.ending = Some(Ending::Done);
             }
-            if done == 0 || is_last || (stride > 0 && done % stride == 0) {
+            // With a stride of zero the start alone.
+            if is_last || done.is_multiple_of(stride) {
                 return Some(frame(&self.system, &self.moment(), done, self.ledger));
             }
         }

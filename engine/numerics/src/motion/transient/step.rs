@@ -380,10 +380,10 @@ fn distance(system: &System, residual: &[f64], inertia: &[f64], forces: &Forces)
             (largest, at) = (r.abs(), dof);
         }
     }
-    let load = forces
-        .applied
-        .iter()
-        .map(Vector3::amax)
+    // What acts on held nodes is not to be balanced.
+    let dofs = system.structure.dofs();
+    let load = (0..dofs.len())
+        .map(|dof| dofs.direction(dof).dot(&forces.applied[dofs.node(dof).index()]).abs())
         .fold(system.largest_force(), f64::max);
     let yardstick = (inertia.iter()).fold(load.max(forces.largest_axial), |most, f| most.max(f.abs()));
     Distance {

@@ -42,3 +42,34 @@ fn numbers_beyond_use() {
         assert_eq!((found.node, found.time), (NodeId::new(1), 0.0));
     }
 }
+
+/// A panel under huge pressure between weak ropes: pressure is left out of the tangent, and only inertia holds the node. Its
+/// slope, `p/6` times the cross product with the opposite edge, is ten times `4 m/h²` even at the smallest step.
+#[test]
+fn newton_that_does_not_converge() {
+    let mut sketch = Sketch::default();
+    sketch.node("m", [0.1, 0.2, 0.3]).attached_mass = 1e-3;
+    let corners = [[-2.0, -2.0], [2.0, -2.0], [2.0, 2.0], [-2.0, 2.0]];
+    for (k, [x, y]) in corners.iter().enumerate() {
+        sketch.held(&k.to_string(), [*x, *y, 0.0]);
+        sketch.cable(&format!("c{k}"), section(1.0, 0.0), &format!("m {k}"));
+    }
+    sketch.given.panels.push(PanelGiven {
+        name: "panel".to_owned(),
+        corners: [0, 1, 2].map(NodeId::new).to_vec(),
+    });
+    let start = Start::new(sketch.net(), vec![3.1; 4]);
+    for scheme in [AVERAGE, CONSERVING] {
+        let mut motion = start.motion(scheme, 1.0, 0.5);
+        motion.case.pressures = vec![10.0 * 4e-3 / (0.5 / f64::from(1 << 20)).powi(2) * 6.0 / 4.0];
+        let found = stuck(&start, &motion);
+        match found.why {
+            StuckBy::NotConverged { residual, allowed } => assert!(residual > allowed && allowed > 0.0, "{found:?}"),
+            other => panic!("{scheme:?} {other:?}"),
+        }
+        assert_eq!((found.node, found.time), (NodeId::new(0), 0.0));
+        assert!(found.step < 1e-6, "{found:?}");
+        // The node was thrown so far that a rope came taut.
+        assert!(found.segment.is_some(), "{found:?}");
+    }
+}
