@@ -297,7 +297,29 @@ fn what_can_not_begin_is_told_in_the_ids_of_the_client() {
     assert_eq!(refused(&plan, 1).members(), ["x2"]);
     assert_eq!(refused(&plan, 5).nodes(), ["w1"]);
 
+    // A state that is not found with so few iterations.
     let reference = plan.reference(&mut run_on).expect("a reference state");
+    let mut hasty = plan.brief().clone();
+    hasty.settings.max_iterations = 1;
+    hasty.motions[0].from = Some(0);
+    let refused = Plan::new(hasty).motion(&reference, 0, &mut run_on);
+    let refused = refused.expect_err("not converged");
+    assert!(
+        matches!(
+            refused,
+            MotionNotBegun::NoState {
+                state: Some(0),
+                cause: Some(_),
+                ..
+            }
+        ),
+        "{refused:?}"
+    );
+    assert!(
+        refused.to_string().contains("\"snowed\"") && refused.to_string().contains("iterations"),
+        "{refused}"
+    );
+
     let stopped = plan.motion(&reference, 1, &mut |_| ControlFlow::Break(()));
     assert_eq!(stopped.expect_err("stopped"), MotionNotBegun::Cancelled);
 }
@@ -494,6 +516,35 @@ fn a_plucked_hanging_rope_keeps_its_energy() {
     assert!((1.8..2.3).contains(&factor), "{factor}");
 }
 
+/// What dividing does falls with the square of the number of pieces; where it fails, that is told.
+#[test]
+fn more_pieces_change_the_state_at_the_start_less() {
+    let in_pieces = |pieces_of_hanging| MotionGiven {
+        pieces_of_hanging,
+        ..motion(0.1, 0.01)
+    };
+    let plan = line([8, 16, 32].map(in_pieces).to_vec());
+    let reference = plan.reference(&mut run_on).expect("a reference state");
+    let divided: Vec<Divided> = (0..3)
+        .map(|n| begun(&plan, &reference, n).divided.expect("it hangs"))
+        .collect();
+    for (coarse, fine) in divided.iter().zip(&divided[1..]) {
+        for (coarse, fine) in [(coarse.moved, fine.moved), (coarse.tension, fine.tension)] {
+            close((coarse / fine).log2(), 2.0, 0.1);
+        }
+    }
+    let mut hasty = plan.brief().clone();
+    hasty.settings.max_iterations = 0;
+    let refused = Plan::new(hasty)
+        .motion(&reference, 0, &mut run_on)
+        .expect_err("not converged");
+    assert!(
+        matches!(refused, MotionNotBegun::NotDivided { pieces: 8, .. }),
+        "{refused:?}"
+    );
+    assert_eq!(refused.members(), ["line"]);
+}
+
 /// How many nodes and segments an outcome tells of.
 struct Outcomes {
     nodes: usize,
@@ -589,6 +640,39 @@ fn doubts_tell_the_worst_of_each_kind_once() {
         "{:?}",
         found.doubts
     );
+
+    // Steps that long make energy: average acceleration conserves that of linear nets only.
+    assert_eq!(told(|doubt| matches!(doubt, MotionDoubt::Energy { .. })), 1);
+    let net = saddle().net();
+    let m22 = node(&net, "m22");
+    let struck = MotionGiven {
+        start: StartGiven {
+            velocities: vec![(m22, Vector3::z())],
+            ..StartGiven::default()
+        },
+        watched: vec![Watched::Movement {
+            node: m22,
+            along: Vector3::z(),
+        }],
+        spectra: Some(SpectraGiven { from: 0.0, up_to: None }),
+        ..motion(0.4, 0.002)
+    };
+    let all = ["x1", "x2", "x3", "y1", "y2", "y3"];
+    let falling = MotionGiven {
+        from: Some(0),
+        breaks: all.map(|rope| breaks(&net, rope, BreakWhen::Time(0.0))).to_vec(),
+        ..motion(0.9, 0.01)
+    };
+    let plan = saddle_plan(vec![struck, falling]);
+    let reference = plan.reference(&mut run_on).expect("a reference state");
+    let short = followed(&plan, &reference, 0).doubts;
+    assert!(
+        matches!(short[..], [MotionDoubt::ShortSpectrum { watched: 0, count: 1, periods, .. }] if periods < 20.0),
+        "{short:?}"
+    );
+    let far = followed(&plan, &reference, 1).doubts;
+    let fell = |doubt: &MotionDoubt| matches!(doubt, MotionDoubt::LargeMovement { movement, extent, .. } if *movement > extent / 2.0);
+    assert!(far.iter().any(fell), "{far:?}");
 
     let calm = saddle_plan(vec![motion(0.05, 0.001)]);
     let reference = calm.reference(&mut run_on).expect("a reference state");

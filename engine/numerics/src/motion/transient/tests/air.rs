@@ -176,4 +176,17 @@ fn masses_without_a_place_and_air_at_moving_rollers_are_named() {
         ..MassGiven::default()
     });
     assert!(matches!(bad, MotionError::Number { what: "added mass", .. }), "{bad}");
+
+    let (start, _) = mast();
+    let rail = NodeId::new(2);
+    let mut shaken = start.case();
+    shaken.support_movements[rail.index()] = Vector3::new(0.0, 0.1, 0.0);
+    let mut motion = start.motion(AVERAGE, 1.0, 1e-3);
+    motion.driven.push(Driven::Case {
+        case: Box::new(shaken),
+        history: History::Table(vec![(0.0, 0.0), (1.0, 1.0)]),
+    });
+    assert_eq!(start.run(&motion).ending, Ending::Done);
+    motion.masses.air = 1.0;
+    assert_eq!(start.refusal(&motion), MotionError::AirAtMovingSupport { node: rail });
 }

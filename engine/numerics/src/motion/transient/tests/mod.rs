@@ -317,7 +317,7 @@ fn mast() -> (Start, NodeId) {
     }
     sketch.given.panels.push(PanelGiven {
         name: "panel".to_owned(),
-        corners: [1, 4, 3].map(NodeId::new).to_vec(),
+        corners: [1, 4, 2].map(NodeId::new).to_vec(),
     });
     let net = sketch.net();
     let ends = net.segments().iter().map(|segment| {
