@@ -18,7 +18,7 @@ from test_motions import brief_of, decay, follow
 # Wind on a panel that moves -------------------------------------------------------------------------------------------
 
 SIDE, AIR, SPEED, COEFFICIENT = 4.0, 1.25, 12.0, 1.1
-HALF, STIFFNESS, TENSION, MASS = 5.0, 1e5, 4e3, 60.0
+HALF, STIFFNESS, TENSION, MASS = 5.0, 1e5, 8e3, 60.0
 UNSTRESSED = HALF / (1 + TENSION / STIFFNESS)
 SPRING = 2 * STIFFNESS / UNSTRESSED
 OMEGA = sqrt(SPRING / MASS)

@@ -113,7 +113,7 @@ def test_energy_is_conserved_through_thousands_of_snatches(channel, h):
     given["actions"].append({"id": "push", "loads": [{"nodes": {"on": ["n5", "n9"], "force_n": [10.0, -5.0, 30.0]}}]})
     shown = [f"n{k}" for k in net.free]
     motion = follow(channel, given, [
-        asked("long", motions.CONSERVING, 10_000 * h, h, 20, nodes=shown, start=start(net, velocity),
+        asked("long", motions.CONSERVING, 12_000 * h, h, 20, nodes=shown, start=start(net, velocity),
               driven=[{"action": "push", "constant": 1.0}]),
     ])["long"]
     energy = motion.energy
