@@ -234,7 +234,7 @@ impl Running {
         }
         let state = State {
             accelerations: vec![0.0; velocities.len()],
-            held_velocities: vec![Vector3::zeros(); positions.len()],
+            held_velocities: system.support_velocities(0.0, Side::After),
             positions,
             velocities,
         };
@@ -510,9 +510,12 @@ impl Running {
         has_changed
     }
 
-    /// Forces from now on, and accelerations where they jump.
+    /// Forces from now on, with supports at the velocity that they go on with, and accelerations where they jump.
     fn refresh(&mut self) {
         let loads = self.system.loads_at(self.time, Side::After);
+        if self.system.supports_move {
+            self.state.held_velocities = self.system.support_velocities(self.time, Side::After);
+        }
         self.taut = self.system.taut(&self.state.positions);
         self.system
             .forces_at(&loads, &self.state, &self.taut, &mut self.forces, None);

@@ -440,6 +440,38 @@ fn moving_ground_shakes_a_mass() {
 }
 
 #[test]
+fn moving_ground_pulls_at_dashpots_without_lag() {
+    // Dashpots feel the velocity of the ground at the end of a step, not in its middle: else they are of first order.
+    let start = single();
+    for scheme in [AVERAGE, CONSERVING, Scheme::CentralDifferences] {
+        let end = |step: f64| {
+            let mut motion = start.motion(scheme, 0.1, step);
+            motion.case.unstressed_lengths[0] = 1.9;
+            let pull = 2e4 * (2.0 / 1.9 - 1.0);
+            motion.case.nodal_forces[1] = Vector3::new(pull, 0.0, 0.0);
+            motion.damping.segments = vec![200.0];
+            let mut shaken = start.case();
+            shaken.support_movements[0] = Vector3::x() * 1e-3;
+            motion.driven.push(Driven::Case {
+                case: Box::new(shaken),
+                history: History::Harmonic {
+                    mean: 0.0,
+                    amplitude: 1.0,
+                    frequency: 12.0,
+                    phase: 0.0,
+                    start: 0.0,
+                    end: 1.0,
+                },
+            });
+            start.run(&motion).positions[1].x
+        };
+        let all = [4e-4, 2e-4, 1e-4].map(end);
+        let order = ((all[0] - all[1]) / (all[1] - all[2])).abs().log2();
+        assert!((order - 2.0).abs() < 0.1, "{scheme:?}: {order}");
+    }
+}
+
+#[test]
 fn wind_damps_what_moves_with_it() {
     // A plate of 4 m² that moves along x: m ẍ = ½ ρ c A |U − ẋ| (U − ẋ) without ropes. From rest, U − ẋ = U / (1 + U t/b),
     // b = 2 m / (ρ c A).
