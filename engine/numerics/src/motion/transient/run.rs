@@ -5,6 +5,7 @@ use std::sync::Arc;
 use nalgebra::Vector3;
 
 use super::check::{cautions, check_extent, check_given, check_masses, extent};
+use super::explicit::explicit_divisions;
 use super::history::Side;
 use super::record::{Recorder, Series, frame};
 use super::step::{Done, Failure, From, Stepper, Tried, turned};
@@ -20,9 +21,6 @@ use crate::model::{NodeId, SegmentId};
 
 /// Steps are divided down to this share of the given one before a motion is given up.
 const SMALLEST_SHARE: f64 = 1.0 / (1 << 20) as f64;
-
-/// Share of the largest stable step that is used.
-const STABLE_SHARE: f64 = 0.9;
 
 /// How a motion ended.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -255,10 +253,7 @@ impl Running {
             })
             .collect();
         let limit = match motion.scheme {
-            Scheme::CentralDifferences => {
-                let stable = STABLE_SHARE * damped_step(&system);
-                motion.step / (motion.step / stable).ceil().max(1.0)
-            }
+            Scheme::CentralDifferences => motion.step / explicit_divisions(&system),
             _ => motion.step,
         };
         let energies = system.energies(&state, &loads.movements);
@@ -575,19 +570,4 @@ impl Running {
         self.has_jumped = is_moment;
         self.is_stale = is_moment || !self.system.motion.damping.segments.is_empty();
     }
-}
-
-/// The stable step where there is damping (s): `2/ω (√(1 + ξ²) − ξ)` with the largest damping ratio `ξ`.
-fn damped_step(system: &System) -> f64 {
-    let undamped = system.stable_step();
-    let omega = 2.0 / undamped;
-    let damping = &system.motion.damping;
-    let dashpots = damping
-        .segments
-        .iter()
-        .zip(system.bars())
-        .filter(|(_, bar)| bar.is_present());
-    let relative = dashpots.map(|(c, bar)| c / bar.stiffness).fold(0.0, f64::max);
-    let ratio = 0.5 * ((damping.stiffness + relative) * omega + damping.mass / omega);
-    undamped * ((1.0 + ratio * ratio).sqrt() - ratio)
 }

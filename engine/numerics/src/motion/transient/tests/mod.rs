@@ -527,6 +527,20 @@ fn divided_steps_keep_the_error() {
 }
 
 #[test]
+fn explicit_steps_are_as_many_as_foreseen() {
+    let start = single();
+    // The bound is ω² = 2 k/m = 4000, so that the stable step is 2/ω = 0.0316 s; nine tenths are used: 0.03 s does not do.
+    for (step, parts) in [(0.028, 1.0), (0.03, 2.0), (0.1, 4.0)] {
+        let motion = start.motion(Scheme::CentralDifferences, 10.0 * step, step);
+        let foreseen = outlook(&start.analysis, &Arc::new(motion.clone()))
+            .expect("a motion")
+            .extent;
+        assert_eq!(foreseen.divided_steps, 10.0 * parts);
+        assert_eq!(start.run(&motion).steps as f64, foreseen.divided_steps);
+    }
+}
+
+#[test]
 fn it_stops_within_one_iteration() {
     let start = saddle(1.01);
     let motion = Arc::new(start.motion(AVERAGE, 1.0, 1e-3));
