@@ -404,16 +404,6 @@ mod tests {
         let page = fs::read_to_string(folder.join("report.html")).unwrap();
         assert!(page.contains("<h2>Motion ../gust &amp; &lt;b&gt;</h2>") && !page.contains("<b>"));
         assert_eq!(page.matches("Motions: an aid.").count(), 2);
-        if let Ok(keep) = std::env::var("LOOK") {
-            write(&motion_sample::run_named("tie-breaks"), Path::new(&keep)).unwrap();
-            println!(
-                "{}",
-                sheet::motion_text(
-                    &motion_sample::run_named("t"),
-                    &motion_sample::run_named("tie-breaks").motions[0]
-                )
-            );
-        }
         fs::remove_dir_all(base).unwrap();
     }
 

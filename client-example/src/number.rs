@@ -82,6 +82,7 @@ pub(crate) fn for_eyes(unit: &str) -> (&str, f64) {
     match unit {
         "N" => ("kN", 1e-3),
         "m" => ("mm", 1e3),
+        "m/s2" => ("m/s²", 1.0),
         other => (other, 1.0),
     }
 }

@@ -158,11 +158,10 @@ fn words(progress: &v1::Progress) -> String {
             .filter(|left| left.is_finite() && *left >= 0.0)
             .map_or(String::new(), |left| format!(", about {} left", about(left)));
         return format!(
-            "{}: {} s of {} s, {} slack{left}",
+            "{}: {} s of {} s{left}",
             progress.motion,
             three(progress.simulated_s),
             three(progress.duration_s),
-            progress.slack_segments
         );
     }
     let motion = if progress.motion.is_empty() {
@@ -196,7 +195,6 @@ mod tests {
             simulated_s,
             duration_s: 20.0,
             left_s,
-            slack_segments: 3,
             ..Default::default()
         }
     }
@@ -204,9 +202,9 @@ mod tests {
     #[test]
     fn a_motion_tells_time_done_and_time_left() {
         let progress = at(3.2, Some(410.0));
-        assert_eq!(words(&progress), "gust: 3.20 s of 20.0 s, 3 slack, about 7 min left");
+        assert_eq!(words(&progress), "gust: 3.20 s of 20.0 s, about 7 min left");
         assert_eq!(parts(&progress), 160);
-        assert_eq!(words(&at(0.0, None)), "gust: 0 s of 20.0 s, 3 slack");
+        assert_eq!(words(&at(0.0, None)), "gust: 0 s of 20.0 s");
         assert_eq!(about(0.2), "less than 1 s");
         assert_eq!(about(7200.0), "2.00 h");
     }

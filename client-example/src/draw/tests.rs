@@ -124,11 +124,22 @@ fn a_rope_over_time_says_which_way_time_runs_and_how_fast_a_wave_is() {
     assert!(drawn.contains("positive along (0, 0, 1.00)") && !drawn.contains("<b>"));
     run.motions[0].waves[0].axial_m_per_s = 900.0;
     assert!(drawing(&run, "rope-main").contains("axial wave, 900 m/s"));
+    // Where it cannot be followed, or nobody knows where it begins, that is said and nothing is drawn.
+    assert!(drawn.contains("from where the dashed waves run: tie begins to break, 0 s"));
+    run.motions[0].waves[0].transverse_most_m_per_s = 3000.0;
+    let fast = drawing(&run, "rope-main");
+    assert!(
+        fast.contains("passes the rope in 0.0132 s, too fast") && !fast.contains("data-speed-m-per-s"),
+        "{fast}"
+    );
+    run.motions[0].waves.clear();
+    assert!(drawing(&run, "rope-main").contains("no mass per length"));
     // A slack rope is white, and the scale says so.
     assert!(!drawn.contains("white: slack"));
     run.motions[0].frames[20].ropes[0].tension_n[5] = 0.0;
+    run.motions[0].frames[20].ropes[0].tension_n[6] = 90.0;
     let slack = drawing(&run, "rope-main");
-    assert!(slack.contains("white: slack") && slack.contains("data-what=\"slack\""));
+    assert!(slack.contains("kN, log scale; white: slack") && slack.contains("data-what=\"slack\""));
 }
 
 #[test]

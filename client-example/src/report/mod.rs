@@ -97,7 +97,7 @@ fn head(run: &Run) -> String {
     format!(
         "<header>\n<p class=\"over\">{}</p>\n<h1>{}</h1>\n{note}\n\
          <div class=\"verdict {class}\"><strong>{}</strong><span>{}</span></div>\n\
-         <dl class=\"facts\">{}{}{}{}<div><dt>nodes</dt><dd>{}</dd></div><div><dt>segments</dt><dd>{}</dd></div></dl>\n\
+         <dl class=\"facts\">{}{}{}{}{}<div><dt>nodes</dt><dd>{}</dd></div><div><dt>segments</dt><dd>{}</dd></div></dl>\n\
          <p class=\"audit\">{}<br>{}</p>\n<nav id=\"contents\" class=\"contents\" aria-label=\"Contents\"></nav>\n</header>\n",
         markup(&run.brief.id),
         markup(run.title()),
@@ -107,6 +107,10 @@ fn head(run: &Run) -> String {
         share(&summary.audited, "audited"),
         share(&summary.judged, "judged"),
         share(&summary.passes, "pass"),
+        // Only where motions were asked for.
+        summary
+            .motions
+            .map_or(String::new(), |motions| share(&Some(motions), "motions followed")),
         sizes.nodes,
         sizes.segments,
         markup(&sheet::audit_line(run)),

@@ -102,11 +102,15 @@ pub(crate) fn motion_lines(run: &Run, motion: &MotionRun) -> Vec<(&'static str, 
     lines.push(("against the static answer", against_static(begin, end)));
     lines.push((
         "slack",
-        format!(
-            "segments went slack {}, came taut again {}",
-            times(end.slackenings),
-            times(end.snatches)
-        ),
+        if end.slackenings == 0 && end.snatches == 0 {
+            "no segment went slack".to_owned()
+        } else {
+            format!(
+                "segments went slack {} and snatched {}",
+                times(end.slackenings),
+                times(end.snatches)
+            )
+        },
     ));
     let share = if end.largest_kinetic_j > 0.0 {
         format!(
@@ -320,7 +324,7 @@ fn motion_events(motion: &MotionRun) -> Option<Sheet> {
     let rows = motion.events.iter().map(|event| {
         let (words, mark) = match event.kind() {
             v1::MotionEventKind::Slack => ("went slack", Mark::Plain),
-            v1::MotionEventKind::Snatch => ("came taut again", Mark::Open),
+            v1::MotionEventKind::Snatch => ("snatched", Mark::Plain),
             v1::MotionEventKind::Break => ("began to break", Mark::Bad),
             v1::MotionEventKind::Unspecified => ("", Mark::Plain),
         };
@@ -349,8 +353,8 @@ fn motion_events(motion: &MotionRun) -> Option<Sheet> {
         ],
         rows,
         note: match motion.end.as_ref().map_or(0, |end| end.events_left_out) {
-            0 => "In order of time.",
-            _ => "In order of time; later ones are counted but not listed.",
+            0 => "In order of time. Snatched: came taut again.",
+            _ => "In order of time; later ones are counted but not listed. Snatched: came taut again.",
         },
     })
 }

@@ -41,7 +41,7 @@ fn rope_heads() -> Vec<Head> {
         head("case of max", ""),
         head("unstressed length", "m"),
         Head {
-            title: "0 to 100 % of breaking".into(),
+            title: "0 to 100 % of breaking",
             unit: "",
             place: Place::PageOnly,
         },

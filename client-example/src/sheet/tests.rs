@@ -373,7 +373,7 @@ fn a_motion_tells_what_was_largest_in_lines_and_in_a_row() {
         "{}",
         line("against the static answer")
     );
-    assert_eq!(line("slack"), "segments went slack 12 times, came taut again 12 times");
+    assert_eq!(line("slack"), "segments went slack 12 times and snatched 12 times");
     // 0.4 s in 2000 steps.
     assert_eq!(
         line("steps"),

@@ -56,12 +56,11 @@ pub(super) fn energy(run: &Run, motion: &MotionRun) -> Option<String> {
     }
     let errors: Vec<f64> = ledgers.iter().map(|ledger| ledger.error_j).collect();
     let [low, high] = bounds(curves.iter().flat_map(|(_, _, values)| values.iter().copied()));
-    let in_kj = low.abs().max(high.abs()) >= 1e3;
-    let (unit, scale) = if in_kj { ("kJ", 1e-3) } else { ("J", 1.0) };
+    let (unit, scale) = fit([low, high]);
     let across = [times[0], times[times.len() - 1]];
 
     let mut sketch = Sketch::new();
-    let title = format!("{} · motion {} · energy", run.title(), motion.id);
+    let title = format!("Motion {} · energy · {}", motion.id, run.title());
     let zero = if nothing.is_empty() {
         String::new()
     } else {
@@ -96,8 +95,7 @@ pub(super) fn energy(run: &Run, motion: &MotionRun) -> Option<String> {
 
     let top = TOP + HEIGHT + 68.0;
     let [low, high] = bounds(errors.iter().copied());
-    let in_kj = low.abs().max(high.abs()) >= 1e3;
-    let (unit, scale) = if in_kj { ("kJ", 1e-3) } else { ("J", 1.0) };
+    let (unit, scale) = fit([low, high]);
     let plot = Plot {
         corner: [LEFT, top],
         size: [WIDTH - LEFT - RIGHT, ERROR_HEIGHT],
@@ -119,6 +117,17 @@ pub(super) fn energy(run: &Run, motion: &MotionRun) -> Option<String> {
     let bottom = top + ERROR_HEIGHT + 46.0;
     frame::foot(&mut sketch, run, bottom);
     Some(sketch.finish(WIDTH, bottom + 18.0, &title))
+}
+
+/// A unit for energies between two bounds (J), and how many of it make a joule.
+fn fit([low, high]: [f64; 2]) -> (&'static str, f64) {
+    match low.abs().max(high.abs()) {
+        most if most >= 1e3 => ("kJ", 1e-3),
+        most if most >= 0.1 || most == 0.0 => ("J", 1.0),
+        most if most >= 1e-4 => ("mJ", 1e3),
+        most if most >= 1e-7 => ("µJ", 1e6),
+        _ => ("nJ", 1e9),
+    }
 }
 
 /// Labels at the right ends of curves, moved apart where they would stand on each other.

@@ -21,6 +21,7 @@ pub(super) struct Grid {
 }
 
 impl Grid {
+    #[cfg(test)]
     fn columns(&self) -> usize {
         self.rows.first().map_or(0, Vec::len)
     }
@@ -243,7 +244,7 @@ pub(super) fn start(motion: &MotionRun, rope: usize, sideways: &Grid) -> Option<
         let what = match event.kind() {
             v1::MotionEventKind::Break => "begins to break",
             v1::MotionEventKind::Slack => "goes slack",
-            _ => "comes taut",
+            _ => "snatches",
         };
         return Some(Start {
             at,

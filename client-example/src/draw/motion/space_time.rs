@@ -4,7 +4,7 @@
 use super::WIDTH;
 use super::curve::bounds;
 use super::field::{self, Grid};
-use crate::colour;
+use crate::colour::{self, Scale};
 use crate::draw::frame::{self, short, ticks};
 use crate::draw::room::HALO;
 use crate::draw::{ALARM, INK, MUTED, Sketch};
@@ -18,7 +18,7 @@ const FIELD: [f64; 2] = [470.0, 520.0];
 const PITCH: f64 = 574.0;
 /// Classes of colour: an odd number, so that nothing has one of its own.
 const CLASSES: usize = 41;
-/// Share of the time that an axial wave takes at least to pass the rope where it is drawn.
+/// Share of the time that a wave takes at least to pass the rope where it is drawn.
 const SEEN: f64 = 0.06;
 /// How often the drawn way of a wave is turned back.
 const TURNS: usize = 4;
@@ -30,10 +30,10 @@ pub(super) fn space_time(run: &Run, motion: &MotionRun, rope: usize) -> Option<S
     let shown = &motion.shown.ropes[rope];
     let mut sketch = Sketch::new();
     let title = format!(
-        "{} · motion {} · rope {} over time",
-        run.title(),
+        "Motion {} · rope {} over time · {}",
         motion.id,
-        shown.cable
+        shown.cable,
+        run.title()
     );
     frame::head(
         &mut sketch,
@@ -50,31 +50,45 @@ pub(super) fn space_time(run: &Run, motion: &MotionRun, rope: usize) -> Option<S
             ),
         ],
     );
-    let [low, high] = bounds(tension.rows.iter().flatten().copied());
-    let taut = bounds(tension.rows.iter().flatten().copied().filter(|force| *force > 0.0));
+    let forces = || tension.rows.iter().flatten().copied();
+    let [low, high] = bounds(forces());
+    let taut = bounds(forces().filter(|force| *force > 0.0));
     let has_slack = low <= 0.0;
-    // A scale from the least tension shows a small wave in a tight rope; a rope that is nearly even keeps a narrow range.
+    // From the least tension on, so that a small wave in a tight rope is seen; by logarithm where tensions span much.
+    let scale = Scale::over(forces());
     let low = if has_slack { 0.0 } else { taut[0] };
     let high = if high > low { high } else { low + 1.0 };
-    let tension_class = |force: f64| (force > 0.0).then(|| class((force - low) / (high - low)));
+    let share = |force: f64| {
+        if scale.logarithmic {
+            scale.share(force)
+        } else {
+            (force - low) / (high - low)
+        }
+    };
     panel(
         &mut sketch,
         motion,
         rope,
         0,
         &tension,
-        "tension",
-        "kN",
-        "slack",
-        &|number| tension_class(number).map(|class| (class, colour::at(share_of(class)))),
+        ["tension", "kN", "slack"],
+        &|force| {
+            let class = (force > 0.0).then(|| class(share(force)))?;
+            Some((class, colour::at(share_of(class))))
+        },
     );
-    legend(
-        &mut sketch,
-        0,
-        [low / 1e3, high / 1e3],
-        if has_slack { "kN; white: slack" } else { "kN" },
-        &colour::at,
+    let words = format!(
+        "kN{}{}",
+        if scale.logarithmic { ", log scale" } else { "" },
+        if has_slack { "; white: slack" } else { "" }
     );
+    let marks = if scale.logarithmic {
+        let ticks = scale.ticks().into_iter();
+        ticks.map(|(tick, text)| (share(tick * 1e3), text)).collect()
+    } else {
+        even([low / 1e3, high / 1e3])
+    };
+    legend(&mut sketch, 0, &marks, &words, &colour::at);
     let [least, most] = bounds(sideways.grid.rows.iter().flatten().copied());
     let size = least.abs().max(most.abs()).max(1e-12);
     panel(
@@ -83,9 +97,7 @@ pub(super) fn space_time(run: &Run, motion: &MotionRun, rope: usize) -> Option<S
         rope,
         1,
         &sideways.grid,
-        "movement across the rope",
-        "mm",
-        "",
+        ["movement across the rope", "mm", ""],
         &|number| {
             let class = class(f64::midpoint(number / size, 1.0));
             Some((class, colour::two_ways(2.0 * share_of(class) - 1.0)))
@@ -100,12 +112,17 @@ pub(super) fn space_time(run: &Run, motion: &MotionRun, rope: usize) -> Option<S
     legend(
         &mut sketch,
         1,
-        [-size * 1e3, size * 1e3],
+        &even([-size * 1e3, size * 1e3]),
         &format!("mm from the start, positive along ({}){rest}", along.join(", ")),
         &|share| colour::two_ways(2.0 * share - 1.0),
     );
-    guides(&mut sketch, motion, rope, [&tension, &sideways.grid]);
-    let bottom = TOP + FIELD[1] + 88.0;
+    let note = guides(&mut sketch, motion, rope, [&tension, &sideways.grid]);
+    sketch.put(format_args!(
+        "<text x=\"36\" y=\"{:.1}\" font-size=\"12\">{}</text>",
+        TOP + FIELD[1] + 90.0,
+        markup(&note)
+    ));
+    let bottom = TOP + FIELD[1] + 114.0;
     frame::foot(&mut sketch, run, bottom);
     Some(sketch.finish(WIDTH, bottom + 18.0, &title))
 }
@@ -134,16 +151,13 @@ fn corner(panel: usize) -> [f64; 2] {
 type Paint<'a> = dyn Fn(f64) -> Option<(usize, String)> + 'a;
 
 /// A field with its axes. Cells are joined to runs of a class, and the most frequent class lies below all.
-#[allow(clippy::too_many_arguments, reason = "a panel and its words")]
 fn panel(
     sketch: &mut Sketch,
     motion: &MotionRun,
     rope: usize,
     number: usize,
     grid: &Grid,
-    name: &str,
-    unit: &str,
-    nothing: &str,
+    [name, unit, nothing]: [&str; 3],
     paint: &Paint,
 ) {
     let [left, top] = corner(number);
@@ -245,8 +259,16 @@ fn cells(sketch: &mut Sketch, grid: &Grid, [left, top]: [f64; 2], nothing: &str,
     sketch.put(format_args!("</g>"));
 }
 
-/// The scale of colours below a field.
-fn legend(sketch: &mut Sketch, panel: usize, [low, high]: [f64; 2], words: &str, paint: &dyn Fn(f64) -> String) {
+/// Round numbers of an even scale, each with its share of it.
+fn even([low, high]: [f64; 2]) -> Vec<(f64, String)> {
+    let numbers = ticks(low, high, 6.0).into_iter();
+    numbers
+        .map(|tick| ((tick - low) / (high - low), tick.to_string()))
+        .collect()
+}
+
+/// The scale of colours below a field, with numbers at shares of it.
+fn legend(sketch: &mut Sketch, panel: usize, marks: &[(f64, String)], words: &str, paint: &dyn Fn(f64) -> String) {
     let [left, top] = [corner(panel)[0], TOP + FIELD[1] + 18.0];
     let step = FIELD[0] / 48.0;
     for number in 0..48 {
@@ -257,8 +279,8 @@ fn legend(sketch: &mut Sketch, panel: usize, [low, high]: [f64; 2], words: &str,
             paint((f64::from(number) + 0.5) / 48.0)
         ));
     }
-    for tick in ticks(low, high, 6.0) {
-        let x = left + (tick - low) / (high - low) * FIELD[0];
+    for (share, tick) in marks {
+        let x = left + share * FIELD[0];
         sketch.put(format_args!(
             "<path d=\"M{x:.1} {:.1}v4\" stroke=\"{INK}\"/><text x=\"{x:.1}\" y=\"{:.1}\" text-anchor=\"middle\" font-size=\"11\">{tick}</text>",
             top + 12.0,
@@ -273,13 +295,29 @@ fn legend(sketch: &mut Sketch, panel: usize, [low, high]: [f64; 2], words: &str,
 }
 
 /// How waves would run from where something first happened: on the movement transverse ones, on the tension axial ones, or
-/// transverse ones there too where axial ones are too fast for the picture.
-fn guides(sketch: &mut Sketch, motion: &MotionRun, rope: usize, grids: [&Grid; 2]) {
-    let Some(start) = field::start(motion, rope, grids[1]) else {
-        return;
-    };
+/// transverse ones there too where axial ones are too fast for the picture. Returns what must be known of it, in words.
+fn guides(sketch: &mut Sketch, motion: &MotionRun, rope: usize, grids: [&Grid; 2]) -> String {
     let grid = grids[0];
     let shown = &motion.shown.ropes[rope];
+    let Some(waves) = motion.waves_of(&shown.cable) else {
+        return "No wave is drawn: the rope has no mass per length throughout.".to_owned();
+    };
+    let (least, most) = (waves.transverse_least_m_per_s, waves.transverse_most_m_per_s);
+    let (length, span) = (grid.material[1] - grid.material[0], grid.time[1] - grid.time[0]);
+    if most <= 0.0 {
+        return "No wave is drawn: the rope is slack at the start.".to_owned();
+    }
+    if length / most < SEEN * span {
+        return format!(
+            "A transverse wave ({} m/s) passes the rope in {} s, too fast to be seen here: a shorter motion with more frames shows it.",
+            three(most),
+            three(length / most)
+        );
+    }
+    let Some(start) = field::start(motion, rope, grids[1]) else {
+        return "No wave is drawn: no event tells where one begins, and the rope moves in many places at once."
+            .to_owned();
+    };
     let place = |panel: usize, [material, time]: [f64; 2]| {
         let [left, top] = corner(panel);
         [
@@ -287,33 +325,27 @@ fn guides(sketch: &mut Sketch, motion: &MotionRun, rope: usize, grids: [&Grid; 2
             top + (time - grid.time[0]) / (grid.time[1] - grid.time[0]) * FIELD[1],
         ]
     };
-    if let Some(waves) = motion.waves_of(&shown.cable) {
-        let (least, most) = (waves.transverse_least_m_per_s, waves.transverse_most_m_per_s);
-        let which = if least < 0.98 * most { " at most" } else { "" };
-        let transverse = (most, format!("transverse wave,{which} {} m/s", three(most)), TURNS);
-        let axial = waves.axial_m_per_s;
-        let passes = (grid.material[1] - grid.material[0]) / axial;
-        let on_tension = if passes > SEEN * (grid.time[1] - grid.time[0]) {
-            (axial, format!("axial wave, {} m/s", three(axial)), 1)
-        } else {
-            transverse.clone()
-        };
-        for (panel, (speed, words, turns)) in [on_tension, transverse].into_iter().enumerate() {
-            let ways = field::way(start.at, speed, grid.material, grid.time[1], turns);
-            let long = ways
-                .iter()
-                .map(|way| way.get(1).map_or(0.0, |next| (next[0] - way[0][0]).abs()));
-            let longer = usize::from(long.clone().nth(1) > long.clone().next());
-            for (side, way) in ways.iter().enumerate().filter(|(_, way)| way.len() > 1) {
-                let points: Vec<[f64; 2]> = way.iter().map(|point| place(panel, *point)).collect();
-                guide(
-                    sketch,
-                    &points,
-                    speed,
-                    (side == longer).then_some(words.as_str()),
-                    panel,
-                );
-            }
+    let which = if least < 0.98 * most { " at most" } else { "" };
+    let transverse = (most, format!("transverse wave,{which} {} m/s", three(most)), TURNS);
+    let axial = waves.axial_m_per_s;
+    let on_tension = if length / axial > SEEN * span {
+        (axial, format!("axial wave, {} m/s", three(axial)), 1)
+    } else {
+        transverse.clone()
+    };
+    for (panel, (speed, words, turns)) in [on_tension, transverse].into_iter().enumerate() {
+        let ways = field::way(start.at, speed, grid.material, grid.time[1], turns);
+        let long = |way: &[[f64; 2]]| way.get(1).map_or(0.0, |next| (next[0] - way[0][0]).abs());
+        let longer = usize::from(long(&ways[1]) > long(&ways[0]));
+        for (side, way) in ways.iter().enumerate().filter(|(_, way)| way.len() > 1) {
+            let points: Vec<[f64; 2]> = way.iter().map(|point| place(panel, *point)).collect();
+            guide(
+                sketch,
+                &points,
+                speed,
+                (side == longer).then_some(words.as_str()),
+                panel,
+            );
         }
     }
     for panel in 0..2 {
@@ -323,6 +355,7 @@ fn guides(sketch: &mut Sketch, motion: &MotionRun, rope: usize, grids: [&Grid; 2
             markup(&start.words)
         ));
     }
+    format!("Circle, from where the dashed waves run: {}.", start.words)
 }
 
 /// One way of a wave, its words beside the middle of its first part.

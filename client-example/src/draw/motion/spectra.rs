@@ -39,7 +39,7 @@ pub(super) fn spectra(run: &Run, motion: &MotionRun) -> Vec<String> {
     pages
         .map(|(page, on_page)| {
             let mut sketch = Sketch::new();
-            let title = format!("{} · motion {} · spectra", run.title(), motion.id);
+            let title = format!("Motion {} · spectra · {}", motion.id, run.title());
             let of = if n_pages > 1 {
                 format!("Page {} of {n_pages}. ", page + 1)
             } else {

@@ -16,8 +16,8 @@ pub fn cautions() -> Vec<String> {
          are first estimates.",
         "Nonlinear results must not be added or scaled: every combination is a case of its own from the same unstressed \
          lengths.",
-        "Not covered: fatigue, wind and vibration, fire, corrosion, terminations, foundations, glass and cladding, seismic \
-         action.",
+        "Not covered: fatigue, what wind and vibration do (frequencies and motions, where asked for, are told and not judged; \
+         no flutter, no galloping), fire, corrosion, terminations, foundations, glass and cladding, seismic action.",
     ]
     .map(str::to_owned)
     .to_vec()
