@@ -2,7 +2,7 @@
 
 import numpy as np
 
-from independent import Net
+from independent import Net, by_cone_program, polish
 
 
 def _grid(rows, columns, place):
@@ -57,3 +57,16 @@ def slack_hammock():
     loads[:, 0] = 300.0 * np.cos(2.3 * xyz[:, 1])
     loads[held] = 0.0
     return Net(xyz, held, ends, length * (1.0 + excess), stiffness, loads)
+
+
+def thrown(speed, strain):
+    """Saddle of 3 x 3 free nodes of 8 kg, prestrained, thrown: ropes go slack and snatch. With masses and velocities."""
+    xyz, held, ends = _grid(5, 5, lambda i, j: (2.0 * i, 2.0 * j, 0.15 * ((i - 2) ** 2 - (j - 2) ** 2)))
+    length = np.linalg.norm(xyz[ends[:, 1]] - xyz[ends[:, 0]], axis=1)
+    loads = np.zeros_like(xyz)
+    loads[~held, 2] = -50.0
+    net = Net(xyz, held, ends, length / (1.0 + strain), np.full(len(ends), 2e5), loads)
+    xyz[net.free] = polish(net, *by_cone_program(net))[0]
+    k = np.arange(len(net.free))
+    velocity = speed * np.column_stack([0.2 * np.cos(k), 0.2 * np.sin(2 * k), np.sin(1 + 3 * k)])
+    return net, np.full(len(k), 8.0), velocity

@@ -37,7 +37,9 @@ def _module(name):
 
 brief = _module("brief_pb2")
 diagnosis = _module("diagnosis_pb2")
+modes = _module("modes_pb2")
 motion = _module("motion_pb2")
+motion_result = _module("motion_result_pb2")
 service = _module("brief_service_pb2")
 service_grpc = _module("brief_service_pb2_grpc")
 result = _module("result_pb2")

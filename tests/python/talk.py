@@ -52,7 +52,7 @@ class Run:
                 self.cases.setdefault(open_case, Case())
             elif kind == "columns":
                 columns = event.columns
-                assert columns.case in (open_case, open_effect) or columns.case.split("/")[0] == "envelope"
+                assert columns.case in (open_case, open_effect) or columns.case.split("/")[0] in ("envelope", "motion")
                 gathered = parts.setdefault((columns.case, columns.name), [])
                 assert columns.offset == len(gathered), f"{columns.name} has a hole"
                 gathered.extend(columns.values)

@@ -75,7 +75,7 @@ def test_frequencies_shapes_and_participation(channel, share):
     shapes = run.array("reference", "mode_shape").reshape(len(x), len(modes), 3)
     for number, mode in enumerate(modes[:WANTED]):
         shape = shapes[:, number, :][net.free].ravel()[kept]
-        assert mode.kind == stubs.motion.MODE_KIND_VIBRATES and mode.residual < 1e-7
+        assert mode.kind == stubs.modes.MODE_KIND_VIBRATES and mode.residual < 1e-7
         assert np.abs(shapes[:, number, :]).max() <= 1.0 + 1e-12
         left = tangent @ shape - mode.root_rad2_per_s2 * moving * shape
         assert np.linalg.norm(left) <= 1e-6 * np.linalg.norm(tangent @ shape), number

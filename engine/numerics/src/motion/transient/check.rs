@@ -2,6 +2,7 @@
 
 use nalgebra::Vector3;
 
+use super::explicit::explicit_divisions;
 use super::record::sampled_steps;
 use super::spectrum::LEAST_SAMPLES;
 use super::system::{System, driven_case};
@@ -346,9 +347,8 @@ pub(super) fn check_masses(system: &System) -> Result<(), MotionError> {
 pub(super) fn extent(system: &System) -> Extent {
     let motion = &system.motion;
     let steps = (motion.duration / motion.step - 1e-9).ceil().max(1.0);
-    let stable_step = system.stable_step();
     let divided = match motion.scheme {
-        Scheme::CentralDifferences => (motion.step / stable_step).ceil().max(1.0),
+        Scheme::CentralDifferences => explicit_divisions(system),
         _ => 1.0,
     };
     let stride = motion.frames.stride;
@@ -372,7 +372,7 @@ pub(super) fn extent(system: &System) -> Extent {
         bytes: frames * (FRAME_BYTES + 8.0 * values),
         // The spectra have half as many numbers; a transform works on complex numbers, with as much room beside them.
         sample_bytes: samples as f64 * (12.0 * motion.watched.len() as f64 + 64.0),
-        stable_step,
+        stable_step: system.stable_step(),
     }
 }
 

@@ -256,6 +256,39 @@ impl History {
         }
     }
 
+    /// First derivative by time (1/s), at a kink that on one side of it; jumps left out.
+    pub(super) fn first_derivative(&self, time: f64, side: Side) -> f64 {
+        let reached = |at: f64| time > at || (time == at && side == Side::After);
+        match self {
+            Self::Constant(_) | Self::Step { .. } => 0.0,
+            Self::Table(points) => {
+                let next = points.partition_point(|(at, _)| reached(*at));
+                match (next.checked_sub(1).map(|last| points[last]), points.get(next)) {
+                    (Some((t0, v0)), Some((t1, v1))) => (v1 - v0) / (t1 - t0),
+                    _ => 0.0,
+                }
+            }
+            Self::Ramp {
+                start,
+                end,
+                before,
+                after,
+            } if reached(*start) && !reached(*end) => (after - before) / (end - start),
+            Self::Harmonic {
+                amplitude,
+                frequency,
+                phase,
+                start,
+                end,
+                ..
+            } if reached(*start) && !reached(*end) => {
+                let omega = 2.0 * PI * frequency;
+                amplitude * omega * (omega * (time - start) + phase).cos()
+            }
+            Self::Ramp { .. } | Self::Harmonic { .. } => 0.0,
+        }
+    }
+
     /// Second derivative by time just before a moment (1/s²), without what kinks and jumps do at once.
     pub(super) fn second_derivative(&self, time: f64) -> f64 {
         match self {
@@ -318,6 +351,11 @@ mod tests {
         assert_eq!(both(4.0), [1.0, 1.0]);
         assert_eq!(both(9.0), [1.0, 1.0]);
         assert_eq!(table.jumps(), [2.0]);
+        let slopes = |t| [Side::Before, Side::After].map(|side| table.first_derivative(t, side));
+        assert_eq!(slopes(1.0), [0.0, 2.0]);
+        assert_eq!(slopes(1.5), [2.0, 2.0]);
+        assert_eq!(slopes(2.0), [2.0, 1.0]);
+        assert_eq!(slopes(4.0), [1.0, 0.0]);
         let step = History::Step {
             at: 1.0,
             before: 0.0,

@@ -30,6 +30,7 @@
 
 mod check;
 mod error;
+mod explicit;
 mod given;
 mod history;
 mod inertia;

@@ -5,6 +5,7 @@ use std::sync::Arc;
 use nalgebra::Vector3;
 
 use super::check::{cautions, check_extent, check_given, check_masses, extent};
+use super::explicit::explicit_divisions;
 use super::history::Side;
 use super::record::{Recorder, Series, frame};
 use super::step::{Done, Failure, From, Stepper, Tried, turned};
@@ -20,9 +21,6 @@ use crate::model::{NodeId, SegmentId};
 
 /// Steps are divided down to this share of the given one before a motion is given up.
 const SMALLEST_SHARE: f64 = 1.0 / (1 << 20) as f64;
-
-/// Share of the largest stable step that is used.
-const STABLE_SHARE: f64 = 0.9;
 
 /// How a motion ended.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -245,7 +243,7 @@ impl Running {
         }
         let state = State {
             accelerations: vec![0.0; velocities.len()],
-            held_velocities: vec![Vector3::zeros(); positions.len()],
+            held_velocities: system.support_velocities(0.0, Side::After),
             positions,
             velocities,
         };
@@ -266,10 +264,7 @@ impl Running {
             })
             .collect();
         let limit = match motion.scheme {
-            Scheme::CentralDifferences => {
-                let stable = STABLE_SHARE * damped_step(&system);
-                motion.step / (motion.step / stable).ceil().max(1.0)
-            }
+            Scheme::CentralDifferences => motion.step / explicit_divisions(&system),
             _ => motion.step,
         };
         let energies = system.energies(&state, &loads.movements);
@@ -533,9 +528,12 @@ impl Running {
         has_changed
     }
 
-    /// Forces from now on, and accelerations where they jump.
+    /// Forces from now on, with supports at the velocity that they go on with, and accelerations where they jump.
     fn refresh(&mut self) {
         let loads = self.system.loads_at(self.time, Side::After);
+        if self.system.supports_move {
+            self.state.held_velocities = self.system.support_velocities(self.time, Side::After);
+        }
         self.taut = self.system.taut(&self.state.positions);
         self.system
             .forces_at(&loads, &self.state, &self.taut, &mut self.forces, None);
@@ -595,19 +593,4 @@ impl Running {
         self.has_jumped = is_moment;
         self.is_stale = is_moment || !self.system.motion.damping.segments.is_empty();
     }
-}
-
-/// The stable step where there is damping (s): `2/ω (√(1 + ξ²) − ξ)` with the largest damping ratio `ξ`.
-fn damped_step(system: &System) -> f64 {
-    let undamped = system.stable_step();
-    let omega = 2.0 / undamped;
-    let damping = &system.motion.damping;
-    let dashpots = damping
-        .segments
-        .iter()
-        .zip(system.bars())
-        .filter(|(_, bar)| bar.is_present());
-    let relative = dashpots.map(|(c, bar)| c / bar.stiffness).fold(0.0, f64::max);
-    let ratio = 0.5 * ((damping.stiffness + relative) * omega + damping.mass / omega);
-    undamped * ((1.0 + ratio * ratio).sqrt() - ratio)
 }

@@ -2,6 +2,7 @@
 
 use nalgebra::{Matrix3, Vector3};
 
+use super::history::Side;
 use super::system::{Forces, Loads, State, System};
 use super::{Observer, Progress, Scheme, StuckBy};
 use crate::equilibrium::Analysis;
@@ -359,10 +360,8 @@ fn explicit(system: &mut System, from: From<'_>, h: f64, observe: Observer<'_>) 
 fn place(system: &mut System, from: &From<'_>, h: f64, movement: &[f64], state: &mut State) {
     if system.supports_move {
         system.place_supports(from.loads[1], &mut state.positions);
-        let steps: Vec<_> = (state.positions.iter().zip(&from.state.positions))
-            .map(|(to, from)| (to - from) / h)
-            .collect();
-        state.held_velocities = system.held_parts(&steps);
+        // The way over a step would be the velocity in its middle, and dashpots there would lag by half a step.
+        state.held_velocities = system.support_velocities(from.time + h, Side::Before);
     }
     system.structure.dofs().move_nodes(movement, 1.0, &mut state.positions);
 }

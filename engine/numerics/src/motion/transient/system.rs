@@ -284,6 +284,21 @@ impl System {
         self.loading.place_supports(&self.structure, positions);
     }
 
+    /// Velocity of every node along held directions (m/s), that of its support; at a kink that on one side of it.
+    pub(super) fn support_velocities(&self, time: f64, side: Side) -> Vec<Vector3<f64>> {
+        let mut held = vec![Vector3::zeros(); self.start.len()];
+        for driven in &self.motion.driven {
+            if let Driven::Case { case, history } = driven {
+                let rate = history.first_derivative(time, side);
+                for support in self.structure.net().supports() {
+                    let node = support.node().index();
+                    held[node] += support.held_part(&case.support_movements[node]) * rate;
+                }
+            }
+        }
+        held
+    }
+
     /// Velocity of every node (m/s).
     pub(super) fn nodal_velocities(&self, along_free: &[f64], held: &[Vector3<f64>]) -> Vec<Vector3<f64>> {
         let mut nodal = held.to_vec();

@@ -10,7 +10,8 @@ use crate::model::{CableId, Net};
 pub struct WaveSpeeds {
     /// The rope.
     pub cable: CableId,
-    /// Least and largest speed of transverse waves `√(T/m)` over its segments (m/s); zero in a slack one.
+    /// Least and largest speed of transverse waves over its segments (m/s); zero in a slack one. With the length `l` of a
+    /// segment of unstressed length `L`: `√(T L / (m l))`, since the slope of a wave is that over `l`.
     pub transverse: [f64; 2],
     /// Largest speed of axial waves `√(EA/m)` (m/s).
     pub axial: f64,
@@ -47,8 +48,15 @@ pub(super) fn wave_speeds(net: &Net, motion: &Motion) -> Vec<WaveSpeeds> {
             let strain = segment.section.expansion * motion.case.segments[e].temperature_change;
             let stress_free = length * (1.0 + strain);
             let [from, to] = segment.ends.map(|end| motion.positions[end.index()]);
-            let tension = stiffness * ((to - from).norm() / stress_free - 1.0).max(0.0);
-            let (transverse, axial) = ((tension / mass).sqrt(), (stiffness / mass).sqrt());
+            let stretched = (to - from).norm();
+            let tension = stiffness * (stretched / stress_free - 1.0).max(0.0);
+            let slack = tension == 0.0;
+            let transverse = if slack {
+                0.0
+            } else {
+                (tension / mass * (length / stretched)).sqrt()
+            };
+            let axial = (stiffness / mass).sqrt();
             speeds.transverse = [
                 speeds.transverse[0].min(transverse),
                 speeds.transverse[1].max(transverse),
