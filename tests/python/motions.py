@@ -150,7 +150,7 @@ def _add_frame(frames, told):
     last["velocity"] += told.velocities_m_per_s
     for part in told.ropes:
         rope = last["ropes"].setdefault(part.rope, {"position": [], "velocity": [], "stretch": [], "tension": []})
-        assert 3 * part.__getattribute__("from") == len(rope["position"]), "a rope without holes"
+        assert 3 * getattr(part, "from") == len(rope["position"]), "a rope without holes"
         rope["position"] += part.positions_m
         rope["velocity"] += part.velocities_m_per_s
         rope["stretch"] += part.stretch
@@ -190,7 +190,7 @@ def watch(**quantities):
 
 
 def asked(name, scheme, duration, step, every=1, **more):
-    """A motion of `steps` equal steps with a frame at every `every` of them; `nodes` and `ropes` are shown."""
+    """A motion with a frame after every `every` steps; `nodes` and `ropes` are those shown."""
     frames = {"every_steps": every}
     for shown in ("nodes", "ropes"):
         if shown in more:
