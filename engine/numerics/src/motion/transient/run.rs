@@ -82,7 +82,7 @@ pub struct Outcome {
     pub smallest_step: f64,
     /// Newton iterations.
     pub iterations: u64,
-    /// Factorisations.
+    /// Factorisations; one serves as many iterations and steps as it can.
     pub factorisations: u64,
     /// Position of every node at the end (m).
     pub positions: Vec<Vector3<f64>>,

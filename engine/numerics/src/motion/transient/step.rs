@@ -1,4 +1,12 @@
 //! One step of time.
+//!
+//! Newton keeps a factor over iterations and over steps of the same length, as long as it serves (modified Newton): while
+//! the residual falls so fast that going on costs less than factorising anew. A step begins with the factor of the one
+//! before where the first correction there did; else, and where the residual falls too slowly (a rope came taut, a segment
+//! broke), the matrix of the present iterate is factorised. That touches the way, not the end: every iterate is judged by
+//! the residual of the exact forces against the same tolerance, whatever matrix the correction came from. A step that
+//! fails with a kept factor is tried again with one for every iterate, before it is halved. The factor belongs to the
+//! motion and waits with it between frames: whoever pauses comes to the same bits.
 
 use nalgebra::{Matrix3, Vector3};
 
@@ -12,8 +20,14 @@ use crate::model::{NodeId, SegmentId};
 /// Largest residual over the largest of inertia, load and tension.
 const TOLERANCE: f64 = 1e-12;
 
-/// Newton iterations of one step; where they do not suffice, the step is halved.
+/// Newton iterations of one step with a factor of their own; where they do not suffice, the step is halved.
 const MOST_ITERATIONS: u32 = 15;
+
+/// A factor is kept while no more iterations with it are to be expected than this: about as many as a factorisation costs.
+const MOST_TO_GO: f64 = 5.0;
+
+/// Share of the residual that an iteration with a kept factor may leave.
+const SLOWEST: f64 = 0.5;
 
 /// What came of a step that was tried.
 #[derive(Debug)]
@@ -67,10 +81,16 @@ pub(super) struct From<'a> {
 #[derive(Debug)]
 pub(super) struct Stepper {
     factor: Factor,
+    /// Weights of the matrix that the factor is of; `None` where there is none to keep.
+    kept: Option<Weights>,
+    /// Whether the first correction of the step before took so much of the residual that its factor was kept.
+    is_calm: bool,
     values: Vec<f64>,
     blocks: Vec<Matrix3<f64>>,
     /// What is out of balance along the free directions (N), then the correction that follows from it (m).
     residual: Vec<f64>,
+    /// Room for the residual while the kept factor is tried.
+    tried: Vec<f64>,
     /// Change of velocity over time that the scheme sets against the forces (m/s²).
     change: Vec<f64>,
     /// Room for products with the mass.
@@ -105,6 +125,64 @@ impl Alpha {
     }
 }
 
+/// Weights of mass, damping and elastic supports in the matrix of a step beside the blocks of segments.
+#[derive(Clone, Copy, Debug)]
+struct Weights {
+    mass: f64,
+    damping: f64,
+    elastic: f64,
+}
+
+impl Weights {
+    /// Whether they are alike but for the rounding of the length of a step.
+    fn are_like(&self, other: &Self) -> bool {
+        let pairs = [
+            (self.mass, other.mass),
+            (self.damping, other.damping),
+            (self.elastic, other.elastic),
+        ];
+        pairs.iter().all(|(a, b)| (a - b).abs() <= 1e-6 * a)
+    }
+}
+
+/// How the iterations of one step go.
+#[derive(Clone, Copy, Debug)]
+struct Pace {
+    /// Whether a factor may serve more than one iterate.
+    keeps: bool,
+    /// Residual of the iterate before (N); infinite at the first.
+    before: f64,
+    /// Corrections so far.
+    corrections: u32,
+    /// Factorisations among them.
+    factorisations: u32,
+    /// Whether the present factor has brought an iterate of this step nearer.
+    has_served: bool,
+}
+
+impl Pace {
+    fn new(keeps: bool) -> Self {
+        Self {
+            keeps,
+            before: f64::INFINITY,
+            corrections: 0,
+            factorisations: 0,
+            has_served: false,
+        }
+    }
+
+    /// Whether the residual falls so fast that going on with the same factor is worth it.
+    fn is_fast(&self, distance: Distance) -> bool {
+        let rate = distance.residual / self.before;
+        rate <= SLOWEST && (distance.residual / distance.allowed).ln() <= -MOST_TO_GO * rate.ln()
+    }
+
+    /// Whether a factor of another iterate was used.
+    fn has_kept(&self) -> bool {
+        self.corrections > self.factorisations
+    }
+}
+
 /// How far an iterate is from balance.
 #[derive(Clone, Copy, Debug)]
 struct Distance {
@@ -121,7 +199,10 @@ impl Stepper {
             factor: analysis.new_factor(),
             values: vec![0.0; structure.pattern().n_entries()],
             blocks: vec![Matrix3::zeros(); structure.net().segments().len()],
+            kept: None,
+            is_calm: false,
             residual: vec![0.0; structure.n_dofs()],
+            tried: vec![0.0; structure.n_dofs()],
             change: vec![0.0; structure.n_dofs()],
             product: vec![0.0; structure.n_dofs()],
             iterations: 0,
@@ -131,12 +212,20 @@ impl Stepper {
 
     /// Tries a step of length `h` (s).
     pub(super) fn step(&mut self, system: &mut System, from: From<'_>, h: f64, observe: Observer<'_>) -> Tried {
-        match system.motion.scheme {
-            Scheme::GeneralisedAlpha { spectral_radius, .. } => {
-                self.averaged(system, from, h, Alpha::new(spectral_radius), observe)
+        let mut pace = Pace::new(true);
+        loop {
+            let tried = match system.motion.scheme {
+                Scheme::GeneralisedAlpha { spectral_radius, .. } => {
+                    self.averaged(system, from, h, Alpha::new(spectral_radius), &mut pace, observe)
+                }
+                Scheme::Conserving { .. } => self.conserving(system, from, h, &mut pace, observe),
+                Scheme::CentralDifferences => explicit(system, from, h, observe),
+            };
+            match tried {
+                // Full Newton may come further.
+                Tried::Failed(_) if pace.has_kept() => pace = Pace::new(false),
+                _ => return tried,
             }
-            Scheme::Conserving { .. } => self.conserving(system, from, h, observe),
-            Scheme::CentralDifferences => explicit(system, from, h, observe),
         }
     }
 
@@ -144,7 +233,15 @@ impl Stepper {
     /// (1 − α_m) M a1 + α_m M a0 = (1 − α_f) r1 + α_f r0
     /// x1 = x0 + h v0 + h² [(½ − β) a0 + β a1],   v1 = v0 + h [(1 − γ) a0 + γ a1]
     /// ```
-    fn averaged(&mut self, system: &mut System, from: From<'_>, h: f64, alpha: Alpha, observe: Observer<'_>) -> Tried {
+    fn averaged(
+        &mut self,
+        system: &mut System,
+        from: From<'_>,
+        h: f64,
+        alpha: Alpha,
+        pace: &mut Pace,
+        observe: Observer<'_>,
+    ) -> Tried {
         let Alpha {
             inertia,
             force,
@@ -160,7 +257,7 @@ impl Stepper {
             .collect();
         place(system, &from, h, &movement, &mut state);
         let mut last = Distance::unknown();
-        for iteration in 0..=MOST_ITERATIONS {
+        for iteration in 0.. {
             for (dof, u) in movement.iter().enumerate() {
                 let (v0, a0) = (start.velocities[dof], start.accelerations[dof]);
                 let a1 = (u - h * v0) / (beta * h * h) - (0.5 / beta - 1.0) * a0;
@@ -186,15 +283,18 @@ impl Stepper {
             if !is_done {
                 let weight = 1.0 - force;
                 self.blocks.iter_mut().for_each(|block| *block *= weight);
-                let mass_weight = (1.0 - inertia) / (beta * h * h);
-                system.matrix_into(&self.blocks, mass_weight, weight * rate, weight, &mut self.values);
-                if !self.solve() {
+                let weights = Weights {
+                    mass: (1.0 - inertia) / (beta * h * h),
+                    damping: weight * rate,
+                    elastic: weight,
+                };
+                let Some(is_lost) = self.correct(system, weights, distance, pace, &state.positions) else {
                     break;
-                }
+                };
                 let steps = &self.residual;
                 system.structure.dofs().move_nodes(steps, 1.0, &mut state.positions);
                 movement.iter_mut().zip(steps).for_each(|(u, dx)| *u += dx);
-                is_done = is_lost_in_rounding(steps, &state.positions);
+                is_done = is_lost;
             }
             if is_done {
                 let error = error_of(system, [start, &state], (beta - 1.0 / 6.0) * h * h);
@@ -216,7 +316,14 @@ impl Stepper {
     /// ```text
     /// M (v1 − v0) / h = p − Cᵀ (q d_m),   (x1 − x0) / h = (v0 + v1) / 2
     /// ```
-    fn conserving(&mut self, system: &mut System, from: From<'_>, h: f64, observe: Observer<'_>) -> Tried {
+    fn conserving(
+        &mut self,
+        system: &mut System,
+        from: From<'_>,
+        h: f64,
+        pace: &mut Pace,
+        observe: Observer<'_>,
+    ) -> Tried {
         let start = from.state;
         let loads = from.loads[0].mean(from.loads[1]);
         let mut state = start.clone();
@@ -224,7 +331,7 @@ impl Stepper {
         let mut movement: Vec<f64> = start.velocities.iter().map(|v| h * v).collect();
         place(system, &from, h, &movement, &mut state);
         let mut last = Distance::unknown();
-        for iteration in 0..=MOST_ITERATIONS {
+        for iteration in 0.. {
             let ends = [start.positions.as_slice(), state.positions.as_slice()];
             let blocks = Some(self.blocks.as_mut_slice());
             system.forces_between(&loads, ends, h, from.taut, &mut forces, blocks);
@@ -242,14 +349,18 @@ impl Stepper {
             }
             let mut is_done = distance.residual <= distance.allowed;
             if !is_done {
-                system.matrix_into(&self.blocks, 2.0 / (h * h), 1.0 / h, 0.5, &mut self.values);
-                if !self.solve() {
+                let weights = Weights {
+                    mass: 2.0 / (h * h),
+                    damping: 1.0 / h,
+                    elastic: 0.5,
+                };
+                let Some(is_lost) = self.correct(system, weights, distance, pace, &state.positions) else {
                     break;
-                }
+                };
                 let steps = &self.residual;
                 system.structure.dofs().move_nodes(steps, 1.0, &mut state.positions);
                 movement.iter_mut().zip(steps).for_each(|(u, dx)| *u += dx);
-                is_done = is_lost_in_rounding(steps, &state.positions);
+                is_done = is_lost;
             }
             if is_done {
                 for (dof, u) in movement.iter().enumerate() {
@@ -292,6 +403,56 @@ impl Stepper {
         self.product.fill(0.0);
         system.inertia.add_product(weight, rates, &mut self.product);
         distance(system, &self.residual, &self.product, forces)
+    }
+
+    /// Turns the residual into the correction, with the kept factor where that serves, else with one of the matrix at this
+    /// iterate; whether the correction is lost in rounding. `None` where that matrix is singular or it is one too many.
+    fn correct(
+        &mut self,
+        system: &System,
+        weights: Weights,
+        distance: Distance,
+        pace: &mut Pace,
+        positions: &[Vector3<f64>],
+    ) -> Option<bool> {
+        let is_first = pace.corrections == 0;
+        let is_fast = if is_first { self.is_calm } else { pace.is_fast(distance) };
+        // Where there is no second correction, the first one did.
+        self.is_calm = if pace.corrections < 2 {
+            is_first || is_fast
+        } else {
+            self.is_calm
+        };
+        pace.has_served |= is_fast && !is_first;
+        pace.before = distance.residual;
+        let has_kept = self.kept.is_some_and(|kept| kept.are_like(&weights));
+        if pace.keeps && has_kept && (is_fast || pace.has_served) {
+            self.tried.copy_from_slice(&self.residual);
+            self.factor.solve_in_place(&mut self.tried);
+            let is_lost = is_lost_in_rounding(&self.tried, positions);
+            // What rounding leaves does not fall any more, with no factor. But that next to nothing is left to correct is
+            // taken only from one that has served in this step.
+            let serves = if is_lost { pace.has_served } else { is_fast };
+            if serves && self.tried.iter().all(|dx| dx.is_finite()) {
+                std::mem::swap(&mut self.residual, &mut self.tried);
+                pace.corrections += 1;
+                return Some(is_lost);
+            }
+        }
+        if pace.factorisations > MOST_ITERATIONS {
+            return None;
+        }
+        pace.corrections += 1;
+        pace.factorisations += 1;
+        pace.has_served = false;
+        self.kept = None;
+        let Weights { mass, damping, elastic } = weights;
+        system.matrix_into(&self.blocks, mass, damping, elastic, &mut self.values);
+        if !self.solve() {
+            return None;
+        }
+        self.kept = Some(weights);
+        Some(is_lost_in_rounding(&self.residual, positions))
     }
 
     /// Factorises the matrix and turns the residual into the correction; false where it is singular.

@@ -189,6 +189,41 @@ fn energy_stays_over_ten_thousand_steps_with_thousands_of_snatches() {
 }
 
 #[test]
+fn a_factor_serves_as_long_as_the_residual_falls() {
+    for scheme in [AVERAGE, CONSERVING] {
+        let start = saddle(1.01);
+        let mut motion = start.motion(scheme, 1.0, 1e-3);
+        motion.driven.push(Driven::Case {
+            case: start.force(6, Vector3::new(30.0, 0.0, -300.0)),
+            history: History::Step {
+                at: 0.1,
+                before: 0.0,
+                after: 1.0,
+            },
+        });
+        motion.breaks = vec![Break {
+            segments: vec![SegmentId::new(3)],
+            when: BreakWhen::Time(0.5),
+            release: 0.0,
+        }];
+        let calm = start.run(&motion);
+        assert_eq!((calm.ending, calm.steps), (Ending::Done, 1000));
+        assert!(calm.factorisations <= 10, "{scheme:?}: {}", calm.factorisations);
+        assert!(calm.iterations >= 2000, "{scheme:?}: {}", calm.iterations);
+        if scheme == CONSERVING {
+            assert!(calm.largest_error <= 1e-10 * calm.ledger.total(), "{:?}", calm.ledger);
+        }
+        // Where ropes snatch all the time, it often does not.
+        let start = saddle(1.0);
+        let mut motion = start.motion(scheme, 5.0, 5e-3);
+        thrown(&start, &mut motion);
+        let wild = start.run(&motion);
+        assert_eq!((wild.ending, wild.steps), (Ending::Done, 1000));
+        assert!(wild.factorisations >= 500, "{scheme:?}: {}", wild.factorisations);
+    }
+}
+
+#[test]
 fn every_scheme_is_of_second_order() {
     let others = [0.5, 0.0].map(|spectral_radius| Scheme::GeneralisedAlpha {
         spectral_radius,
