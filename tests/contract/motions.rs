@@ -1358,7 +1358,7 @@ fn watched_quantities_and_spectra_are_told() {
         ],
     );
     let found = check(&long, "TOO_LARGE", "motions[drift].spectra");
-    assert!(found.cure.contains("at most 3368421 samples"), "{found:#?}");
+    assert!(found.cure.contains("at most 3.368421e6 samples"), "{found:#?}");
     // 2.56e8 bytes by 64 and 12 for the one that is watched: so many and no more, the moment of the start among them.
     for (steps, fits) in [(3_368_420, true), (3_368_421, false)] {
         let just = changed(
@@ -1416,6 +1416,38 @@ fn the_net_that_moves_is_as_small_as_any() {
     let found = told(&refused, Error, "TOO_MANY", "motions[drift].pieces_of_hanging");
     assert_eq!(found.value, most.to_string());
     assert!(refused.work.is_none());
+}
+
+#[test]
+fn lists_that_cover_too_much_are_told() {
+    // Two ropes of two segments each have this role.
+    let many = |count: usize| {
+        let mut message = message(&drifting(&[]));
+        let damping = message.motions[0].damping.as_mut().expect("damped");
+        let ropes = v1::RopeDamping {
+            on: vec!["saddle".to_owned()],
+            force_per_strain_rate_n_s: 10.0,
+            ..v1::RopeDamping::default()
+        };
+        damping.ropes = vec![ropes; count];
+        ropewalk_service::decode::read(message, &LIMITS)
+    };
+    assert!(many(2_500_000).work.is_some());
+    let refused = many(2_500_003);
+    let found = told(&refused, Error, "TOO_MANY", "motions[drift].damping.ropes[2500000]");
+    assert_eq!(found.value, "10000004");
+    assert_eq!(errors(&refused).count(), 1);
+
+    // Loads that vary in time, each for the whole net: nodes as listed and segments.
+    let driven = |count: usize| {
+        let mut message = message(&drifting(&[]));
+        let load = message.motions[0].driven[0].clone();
+        message.motions[0].driven = vec![load; count];
+        ropewalk_service::decode::read(message, &LIMITS)
+    };
+    let found = told(&driven(2_000_000), Error, "TOO_MANY", "motions[drift].driven").clone();
+    assert_eq!(found.value, "2000000");
+    assert!(found.message.contains("at most 20000000"), "{found:#?}");
 }
 
 #[test]

@@ -32,7 +32,7 @@ const MESSAGES_OF_JOB: usize = 8;
 
 /// What comes of a motion on its way.
 enum Told {
-    Message(v1::RunResponse),
+    Message(Box<v1::RunResponse>),
     End(encode::NotedMotion),
 }
 
@@ -67,7 +67,7 @@ impl Solver<'_> {
             };
             loop {
                 match self.desk.relay_until(told.recv(), outbox, progress).await {
-                    Some(Told::Message(message)) => outbox.send([message]).await?,
+                    Some(Told::Message(message)) => outbox.send([*message]).await?,
                     Some(Told::End(noted)) => {
                         tally.add_motion(motion, &noted);
                         break;
@@ -131,7 +131,7 @@ impl Follower {
                 }
             };
             for message in messages {
-                if tell.send(Told::Message(message)).await.is_err() {
+                if tell.send(Told::Message(Box::new(message))).await.is_err() {
                     return;
                 }
             }
