@@ -1420,34 +1420,52 @@ fn the_net_that_moves_is_as_small_as_any() {
 
 #[test]
 fn lists_that_cover_too_much_are_told() {
-    // Two ropes of two segments each have this role.
-    let many = |count: usize| {
-        let mut message = message(&drifting(&[]));
-        let damping = message.motions[0].damping.as_mut().expect("damped");
+    // A rope of 4000 segments.
+    let between = (1..4000).map(|place| format!("x{place}"));
+    let nodes: Vec<String> = ["A".to_owned()]
+        .into_iter()
+        .chain(between)
+        .chain(["C".to_owned()])
+        .collect();
+    let long = json!({"id": "long", "role": "rope", "nodes": nodes});
+    let refused = |change: &dyn Fn(&mut v1::Motion)| {
+        let mut message = message(&changed(drifting(&[]), &[("/net/cables/-", long.clone())]));
+        change(&mut message.motions[0]);
+        let reading = ropewalk_service::decode::read(message, &LIMITS);
+        let too_many = errors(&reading).filter(|error| error.reason == "TOO_MANY").count();
+        (reading, too_many)
+    };
+    let (read, count) = refused(&|motion| {
         let ropes = v1::RopeDamping {
-            on: vec!["saddle".to_owned()],
+            on: vec!["long".to_owned()],
             force_per_strain_rate_n_s: 10.0,
             ..v1::RopeDamping::default()
         };
-        damping.ropes = vec![ropes; count];
-        ropewalk_service::decode::read(message, &LIMITS)
-    };
-    assert!(many(2_500_000).work.is_some());
-    let refused = many(2_500_003);
-    let found = told(&refused, Error, "TOO_MANY", "motions[drift].damping.ropes[2500000]");
-    assert_eq!(found.value, "10000004");
-    assert_eq!(errors(&refused).count(), 1);
+        motion.damping.as_mut().expect("damped").ropes = vec![ropes; 2600];
+    });
+    // 2500 of them are just enough.
+    let found = told(&read, Error, "TOO_MANY", "motions[drift].damping.ropes[2500]");
+    assert_eq!((found.value.as_str(), count), ("10004000", 1));
+    let (read, count) = refused(&|motion| {
+        let velocity = v1::StartVelocity {
+            on: vec!["m".to_owned()],
+            velocity_m_per_s: vec![0.0, 0.0, 1.0],
+            ..v1::StartVelocity::default()
+        };
+        motion.start = Some(v1::MotionStart {
+            velocities: vec![velocity; 2600],
+            ..v1::MotionStart::default()
+        });
+    });
+    assert_eq!(count, 0, "{:#?}", errors(&read).collect::<Vec<_>>());
 
-    // Loads that vary in time, each for the whole net: nodes as listed and segments.
-    let driven = |count: usize| {
-        let mut message = message(&drifting(&[]));
-        let load = message.motions[0].driven[0].clone();
-        message.motions[0].driven = vec![load; count];
-        ropewalk_service::decode::read(message, &LIMITS)
-    };
-    let found = told(&driven(2_000_000), Error, "TOO_MANY", "motions[drift].driven").clone();
-    assert_eq!(found.value, "2000000");
+    // Loads that vary in time, each for the whole net.
+    let (read, count) = refused(&|motion| motion.driven = vec![motion.driven[0].clone(); 5000]);
+    let found = told(&read, Error, "TOO_MANY", "motions[drift].driven");
+    assert_eq!((found.value.as_str(), count), ("5000", 1));
     assert!(found.message.contains("at most 20000000"), "{found:#?}");
+    let (_, count) = refused(&|motion| motion.driven = vec![motion.driven[0].clone(); 4900]);
+    assert_eq!(count, 0);
 }
 
 #[test]
