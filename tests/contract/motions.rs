@@ -1358,7 +1358,7 @@ fn watched_quantities_and_spectra_are_told() {
         ],
     );
     let found = check(&long, "TOO_LARGE", "motions[drift].spectra");
-    assert!(found.cure.contains("at most 3368421 samples"), "{found:#?}");
+    assert!(found.cure.contains("at most 3.368421e6 samples"), "{found:#?}");
     // 2.56e8 bytes by 64 and 12 for the one that is watched: so many and no more, the moment of the start among them.
     for (steps, fits) in [(3_368_420, true), (3_368_421, false)] {
         let just = changed(
@@ -1416,6 +1416,56 @@ fn the_net_that_moves_is_as_small_as_any() {
     let found = told(&refused, Error, "TOO_MANY", "motions[drift].pieces_of_hanging");
     assert_eq!(found.value, most.to_string());
     assert!(refused.work.is_none());
+}
+
+#[test]
+fn lists_that_cover_too_much_are_told() {
+    // A rope of 4000 segments.
+    let between = (1..4000).map(|place| format!("x{place}"));
+    let nodes: Vec<String> = ["A".to_owned()]
+        .into_iter()
+        .chain(between)
+        .chain(["C".to_owned()])
+        .collect();
+    let long = json!({"id": "long", "role": "rope", "nodes": nodes});
+    let refused = |change: &dyn Fn(&mut v1::Motion)| {
+        let mut message = message(&changed(drifting(&[]), &[("/net/cables/-", long.clone())]));
+        change(&mut message.motions[0]);
+        let reading = ropewalk_service::decode::read(message, &LIMITS);
+        let too_many = errors(&reading).filter(|error| error.reason == "TOO_MANY").count();
+        (reading, too_many)
+    };
+    let (read, count) = refused(&|motion| {
+        let ropes = v1::RopeDamping {
+            on: vec!["long".to_owned()],
+            force_per_strain_rate_n_s: 10.0,
+            ..v1::RopeDamping::default()
+        };
+        motion.damping.as_mut().expect("damped").ropes = vec![ropes; 2600];
+    });
+    // 2500 of them are just enough.
+    let found = told(&read, Error, "TOO_MANY", "motions[drift].damping.ropes[2500]");
+    assert_eq!((found.value.as_str(), count), ("10004000", 1));
+    let (read, count) = refused(&|motion| {
+        let velocity = v1::StartVelocity {
+            on: vec!["m".to_owned()],
+            velocity_m_per_s: vec![0.0, 0.0, 1.0],
+            ..v1::StartVelocity::default()
+        };
+        motion.start = Some(v1::MotionStart {
+            velocities: vec![velocity; 2600],
+            ..v1::MotionStart::default()
+        });
+    });
+    assert_eq!(count, 0, "{:#?}", errors(&read).collect::<Vec<_>>());
+
+    // Loads that vary in time, each for the whole net.
+    let (read, count) = refused(&|motion| motion.driven = vec![motion.driven[0].clone(); 5000]);
+    let found = told(&read, Error, "TOO_MANY", "motions[drift].driven");
+    assert_eq!((found.value.as_str(), count), ("5000", 1));
+    assert!(found.message.contains("at most 20000000"), "{found:#?}");
+    let (_, count) = refused(&|motion| motion.driven = vec![motion.driven[0].clone(); 4900]);
+    assert_eq!(count, 0);
 }
 
 #[test]

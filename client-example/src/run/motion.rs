@@ -363,6 +363,7 @@ mod tests {
             );
         }
         assert_eq!(motion.shown.ropes[0].nodes.len(), 41);
+        assert_eq!(motion.shown.ropes[0].material_m.len(), 41);
         assert_eq!(motion.amplitudes(1).unwrap().len(), 80);
         assert_eq!(run.summary.motions, Some(v1::Share { count: 1, of: 1 }));
     }

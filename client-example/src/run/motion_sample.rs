@@ -282,6 +282,19 @@ fn beginning(nodes: Vec<String>) -> Vec<Part> {
         unit: unit.to_owned(),
         in_words: words.to_owned(),
     };
+    let mut main = v1::ShownRope {
+        cable: "main".to_owned(),
+        material_m: (0..=N_SEGMENTS).map(|at| PIECE_M * f64::from(at)).collect(),
+        nodes,
+        from: 0,
+    };
+    // A rope may come in parts.
+    let goes_on = v1::ShownRope {
+        cable: "main".to_owned(),
+        material_m: main.material_m.split_off(25),
+        nodes: main.nodes.split_off(25),
+        from: 25,
+    };
     vec![
         Part::Begin(v1::MotionBegin {
             from: "reference".to_owned(),
@@ -300,12 +313,7 @@ fn beginning(nodes: Vec<String>) -> Vec<Part> {
             ..Default::default()
         }),
         Part::Shown(v1::MotionShown {
-            ropes: vec![v1::ShownRope {
-                cable: "main".to_owned(),
-                material_m: (0..=N_SEGMENTS).map(|at| PIECE_M * f64::from(at)).collect(),
-                nodes,
-                from: 0,
-            }],
+            ropes: vec![main, goes_on],
             watched: vec![
                 quantity("middle", "m", "movement of n20 along (0, 0, 1)"),
                 quantity("first-piece", "N", "tension of main from n0 to n1"),

@@ -247,9 +247,14 @@ pub(super) fn read_damping(
         }
         let list = at.field("ropes");
         for (place, ropes) in given.ropes.iter().enumerate() {
-            let segments = read_ropes(ropes, of, context, &list.number(place), findings);
+            let at = list.number(place);
+            let segments = read_ropes(ropes, of, context, &at, findings);
             is_right &= segments.is_some();
-            damping.segments.extend(segments.unwrap_or_default());
+            let segments = segments.unwrap_or_default();
+            if !context.covered.add(segments.len(), of, &at, findings) {
+                return None;
+            }
+            damping.segments.extend(segments);
         }
     }
     let none = damping.mass == 0.0 && damping.stiffness == 0.0 && damping.segments.iter().all(|(_, c)| *c == 0.0);

@@ -15,6 +15,8 @@ const MOST_AREAS: u32 = 1000;
 const MOST_CLASSES: u32 = 1000;
 /// Motions of a brief.
 const MOST_MOTIONS: u32 = 100;
+/// Loads of all motions that vary in time, times nodes and segments of the net: each is written out for all of them.
+const MOST_DRIVEN: usize = 20_000_000;
 /// Bytes of one element of a list: it must fit a message from the server, which stays below 1 MiB.
 pub(super) const LARGEST_ELEMENT: usize = 900 * 1024;
 /// Bytes of what a frozen brief says in one message: title, remarks, labels, the actions of the reference state, factors.
@@ -33,7 +35,7 @@ pub(crate) fn counts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings
         let paths: usize = net.cables.iter().map(|cable| cable.nodes.len().saturating_sub(1)).sum();
         let segments = paths + net.struts.len();
         fits &= most(findings, "net", "segments", segments, limits.segments);
-        fits &= divided(brief, net, segments, limits, findings);
+        fits &= motions(brief, net, segments, limits, findings);
         // What describes members need not be more than they can be.
         fits &= most(
             findings,
@@ -52,18 +54,22 @@ pub(crate) fn counts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings
     fits
 }
 
-/// Refuses motions whose hanging ropes would be divided into too many pieces.
-fn divided(brief: &v1::Brief, net: &v1::Net, segments: usize, limits: &Limits, findings: &mut Findings) -> bool {
+/// Refuses motions whose hanging ropes would be divided into too many pieces, or on which too many loads act.
+fn motions(brief: &v1::Brief, net: &v1::Net, segments: usize, limits: &Limits, findings: &mut Findings) -> bool {
     let hanging: usize = (net.cables.iter().filter(|cable| cable.hangs.is_some()))
         .map(|cable| cable.nodes.len().saturating_sub(1))
         .sum();
     let list = Path::root("motions");
-    let mut fits = true;
+    let (mut fits, mut loaded) = (true, 0_usize);
     for (place, motion) in brief.motions.iter().enumerate() {
         let pieces = motion.pieces_of_hanging.unwrap_or(PIECES_DEFAULT);
         // Numbers out of their range have an error of their own.
         let more = hanging.saturating_mul(pieces.clamp(1, MOST_PIECES) as usize - 1);
         let count = segments.saturating_add(more);
+        let size = count.saturating_add(net.nodes.len()).saturating_add(more);
+        let before = loaded;
+        loaded = loaded.saturating_add(motion.driven.len().saturating_mul(size));
+        fits &= driven(motion, (before, loaded), &list.element(&motion.id, place), findings);
         if count <= limits.segments as usize || segments > limits.segments as usize {
             continue;
         }
@@ -83,6 +89,25 @@ fn divided(brief: &v1::Brief, net: &v1::Net, segments: usize, limits: &Limits, f
             .value(count);
     }
     fits
+}
+
+/// Refuses too many loads that vary in time; `before`, `after`: what they come to without those of this motion, and with them.
+fn driven(motion: &v1::Motion, (before, after): (usize, usize), at: &Path<'_>, findings: &mut Findings) -> bool {
+    if before <= MOST_DRIVEN && after > MOST_DRIVEN {
+        findings
+            .error(
+                reasons::TOO_MANY,
+                &at.field("driven"),
+                &motion.id,
+                format!(
+                    "up to here loads that vary in time, each times the nodes and segments of the net that moves, come to \
+                     {after}: at most {MOST_DRIVEN} are taken"
+                ),
+                "gather what varies alike in one action, or leave out motions",
+            )
+            .value(motion.driven.len());
+    }
+    after <= MOST_DRIVEN
 }
 
 /// Refuses nets with too many nodes, those that only paths name counted.

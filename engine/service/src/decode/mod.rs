@@ -7,7 +7,7 @@
 //! | `findings`, `reasons`, `numbers`, `names` | what is told, where, and why |
 //! | `net`, `places`, `sections`, `supports`, `stretch`, `slides`, `adjusters`, `scope`, `surface` | the net |
 //! | `prestress`, `wish`, `actions`, `coefficients`, `factors`, `combinations`, `cases`, `solving` | what is wanted of it |
-//! | `motions`, `driven`, `histories`, `breaks`, `motion_start`, `watched`, `motion_net`, `motion_words` | motions in time |
+//! | `motions`, `driven`, `histories`, `breaks`, `motion_start`, `watched`, `motion_net`, `motion_words`, `covered` | motions in time |
 //! | `checks`, `check_kinds`, `editions`, `diagnosis`, `modes`, `sizing` | what it is judged and sized by |
 //! | `plausible`, `frozen`, `accepted` | doubts |
 //! | `limits`, `not_served` | what is refused |
@@ -23,6 +23,7 @@ mod check_kinds;
 mod checks;
 mod coefficients;
 mod combinations;
+mod covered;
 mod diagnosis;
 mod digest;
 mod driven;

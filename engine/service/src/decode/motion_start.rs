@@ -61,7 +61,11 @@ pub(super) fn read(
         let vector = (&given.by_m[..], "by_m", &MOVEMENT, "is moved");
         let nodes = read_vector(&given.on, vector, basics, context, &at, findings);
         is_right &= nodes.is_some();
-        for (node, by) in nodes.unwrap_or_default() {
+        let nodes = nodes.unwrap_or_default();
+        if !context.covered.add(nodes.len(), of, &at, findings) {
+            return None;
+        }
+        for (node, by) in nodes {
             if std::mem::replace(&mut moved[node.index()], true) {
                 is_right = false;
                 let id = context.net.nodes[node.index()].id;
@@ -89,7 +93,11 @@ pub(super) fn read(
         );
         let nodes = read_vector(&given.on, vector, basics, context, &at, findings);
         is_right &= nodes.is_some();
-        start.velocities.extend(nodes.unwrap_or_default());
+        let nodes = nodes.unwrap_or_default();
+        if !context.covered.add(nodes.len(), of, &at, findings) {
+            return None;
+        }
+        start.velocities.extend(nodes);
     }
     is_right.then_some(start)
 }

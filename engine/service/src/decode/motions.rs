@@ -11,6 +11,7 @@ use v1::motion::Scheme as GivenScheme;
 use super::actions::Actions;
 use super::cases::{Cases, Known, REFERENCE, reserved};
 use super::coefficients::Coefficients;
+use super::covered::Covered;
 use super::findings::{Findings, Path};
 use super::modes::{read_added, read_air};
 use super::names::Names;
@@ -42,6 +43,8 @@ pub(crate) struct Context<'c, 'a> {
     /// Actions under which the reference state is found.
     pub(crate) under: &'c [usize],
     pub(crate) cases: &'c Cases<'a>,
+    /// What lists of motions cover.
+    pub(crate) covered: Covered,
 }
 
 /// What the parts of a motion ask for; `None` where it could not be read.
@@ -372,10 +375,20 @@ fn read_masses(
     let list = at.field("added");
     for (place, added) in motion.added.iter().enumerate() {
         let at = list.number(place);
+        let before = covered_by(&masses);
         read_added(added, &at, context.net, context.scopes, &mut masses, findings);
+        if !(context.covered).add(covered_by(&masses) - before, of, &at, findings) {
+            return None;
+        }
     }
     masses.air = air?;
     Some(masses)
+}
+
+/// Nodes, segments and areas with added mass.
+fn covered_by(masses: &MassGiven) -> usize {
+    let areas: usize = masses.areas.iter().map(|(areas, _)| areas.len()).sum();
+    masses.nodes.len() + masses.segments.len() + areas
 }
 
 fn read_compared(

@@ -12,6 +12,7 @@ use super::actions::Actions;
 use super::adjusters::Adjusters;
 use super::cases::{Cases, LARGEST, in_words};
 use super::checks::CheckDraft;
+use super::covered::Covered;
 use super::digest::digest;
 use super::factors::Factors;
 use super::findings::{Findings, Path, is_id};
@@ -261,6 +262,7 @@ fn read_parts(brief: &v1::Brief, limits: &Limits, findings: &mut Findings, resol
             actions: &actions,
             under: &prestress.under,
             cases: &cases,
+            covered: Covered::default(),
         },
         findings,
         resolved,

@@ -159,7 +159,15 @@ pub(super) fn read_watched(
     for (place, given) in motion.watched.iter().enumerate() {
         names.declare(findings, &list, place, given.id.as_str(), ());
         let at = list.element(&given.id, place);
-        watched.extend(read_one(given, of, context, &at, findings));
+        let read = read_one(given, of, context, &at, findings);
+        let covers = match &read {
+            Some(Watched::LargestForce { segments }) => segments.len(),
+            _ => 1,
+        };
+        if !context.covered.add(covers, of, &at, findings) {
+            return watched;
+        }
+        watched.extend(read);
     }
     watched
 }
@@ -324,10 +332,10 @@ pub(super) fn read_spectra(
                     &at,
                     id,
                     format!(
-                        "{of}: spectra of {} samples of {} watched quantities take {} bytes: at most {} are taken",
+                        "{of}: spectra of {} samples take {} bytes where so many quantities are watched as here ({}): at most {} are taken",
                         number(samples),
-                        motion.watched.len(),
                         rounded(all, 3),
+                        motion.watched.len(),
                         number(MOST_SAMPLE_BYTES)
                     ),
                     format!(
