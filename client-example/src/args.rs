@@ -45,8 +45,8 @@ pub(crate) enum Command {
         /// Folder for the results; default: out/ and the id of the brief
         #[arg(long, value_name = "DIR")]
         out: Option<PathBuf>,
-        /// Run only this set or case; may be given several times
-        #[arg(long, value_name = "SET_OR_CASE")]
+        /// Run only this set, case or motion; may be given several times. Motions run only where they are named
+        #[arg(long, value_name = "ID")]
         only: Vec<String>,
     },
     /// Tell everything that is wrong or odd about a brief, and how it is understood; compute nothing

@@ -67,7 +67,7 @@ async fn until_interrupted(args: Args) -> Result<End, Stop> {
     tokio::select! {
         ended = execute(args) => ended,
         // Dropping the call tells the engine to stop.
-        _ = tokio::signal::ctrl_c() => Err(Stop::new(End::Interrupted, "interrupted")),
+        _ = tokio::signal::ctrl_c() => Err(Stop::new(End::Interrupted, "interrupted: nothing of this run was written, and what lies in its folder is older")),
     }
 }
 

@@ -1115,6 +1115,9 @@ fn breaks_that_make_no_sense_are_told() {
             );
         }
     }
+    let long = drifting(&[("/breaks", json!([{"member": "g1", "at_s": 9, "release_s": 1.5}]))]);
+    let found = check_mild(&long, Doubt, "RELEASE_TOO_LONG", "motions[drift].breaks[0].release_s");
+    assert_eq!(found.value, "1.5");
     let without = json!({"id": "slack", "factors": {"self": 1}, "remove": ["g2", "bracing"]});
     for breaks in [
         json!([{"member": "g2", "at_s": 1}]),

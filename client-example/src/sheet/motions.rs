@@ -112,7 +112,8 @@ pub(crate) fn motion_lines(run: &Run, motion: &MotionRun) -> Vec<(&'static str, 
             )
         },
     ));
-    let share = if end.largest_kinetic_j > 0.0 {
+    // Beside a net that hardly moves a share says nothing.
+    let share = if end.largest_error_j < 10.0 * end.largest_kinetic_j {
         format!(
             ", {} % of the largest kinetic energy, {}",
             small_percent(end.largest_error_j / end.largest_kinetic_j),

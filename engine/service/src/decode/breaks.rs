@@ -82,6 +82,25 @@ pub(super) fn read(
         }
         segments.iter().for_each(|segment| broken[*segment] = Some(place));
         tell_removed(&segments, id, basics, context, &at, findings);
+        if let (Some(BreakWhen::Time(time)), Some(release), Some(duration)) = (when, release, basics.duration)
+            && time + release > duration
+        {
+            findings
+                .doubt(
+                    reasons::RELEASE_TOO_LONG,
+                    &at.field("release_s"),
+                    of.id,
+                    format!(
+                        "{of}: {} lets go over {} s from {} s on, and the motion ends at {} s; the static answer has it gone",
+                        Quoted(id),
+                        number(release),
+                        number(time),
+                        number(duration)
+                    ),
+                    "lengthen the motion, or let the break come sooner or quicker",
+                )
+                .value(number(release));
+        }
         if let (Some(when), Some(release)) = (when, release) {
             breaks.push(BreakGiven {
                 segments: segments.into_iter().map(SegmentId::new).collect(),

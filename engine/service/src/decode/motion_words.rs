@@ -90,7 +90,7 @@ fn load(brief: &Brief, driven: &DrivenGiven) -> String {
             } else {
                 format!("{} ", number(*mean))
             };
-            format!("{mean}+-{} {name} at {} Hz", value(*amplitude), number(*frequency))
+            format!("{mean}+-{} {name} at {} Hz", value(*amplitude), rounded(*frequency, 4))
         }
     }
 }

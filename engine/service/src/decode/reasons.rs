@@ -202,6 +202,8 @@ reasons! {
     TIMES_TWICE,
     /// A table that ends before its motion does, or begins after it.
     HISTORY_SHORT,
+    /// A break that lets go over more time than its motion has.
+    RELEASE_TOO_LONG,
     /// A load that varies in time and is zero throughout.
     HISTORY_ZERO,
     /// An action that is to vary in time and changes more than forces, pressures and places of supports.
@@ -268,6 +270,12 @@ reasons! {
     ENERGY_NOT_KEPT,
     /// A spectrum of too short a record for its largest peak.
     SHORT_SPECTRUM,
+    /// Damping by the stiffness at the start, where ropes went slack or broke since.
+    DAMPING_OF_START,
+    /// Straight pieces of a hanging rope that are too long for what varies.
+    PIECES_TOO_LONG,
+    /// What was to break at a tension did not reach it.
+    NOT_BROKEN,
     /// Panels that a pressure on the surface leaves without a value.
     PANELS_WITHOUT_VALUE,
     /// A panel that was found in plan has turned over in the reference state.
@@ -290,6 +298,8 @@ pub const OF_RESULTS: &[&str] = &[
     STEPS_TOO_LONG,
     ENERGY_NOT_KEPT,
     SHORT_SPECTRUM,
+    DAMPING_OF_START,
+    PIECES_TOO_LONG,
     PANELS_WITHOUT_VALUE,
     PANEL_TURNED,
     ZONES_CONTRADICT,

@@ -137,7 +137,8 @@ fn none(net: &Net, error: &ModesError) -> v1::Finding {
         ModesError::NoMass => (
             "",
             String::new(),
-            "give sections their mass per length, or nodes an attached or added mass",
+            "give sections their mass per length, or nodes an attached or added mass; a hanging rope has its mass at its ends \
+             here: give it nodes in between",
         ),
         ModesError::Loading(_) | ModesError::BeyondUse => ("", String::new(), "check units of masses and stiffnesses"),
         ModesError::Cancelled => ("", String::new(), "run the brief again"),

@@ -76,6 +76,65 @@ pub(super) fn findings(work: &Work, plan: &Plan, motion: usize, doubts: &[Motion
                 "follow the motion over at least 20 periods",
             ))
         }
+        MotionDoubt::DampingOfStart { slackenings, breaks } => Some(doubt_of(
+            reasons::DAMPING_OF_START,
+            "",
+            slackenings.to_string(),
+            format!(
+                "damping by stiffness is that of the state at the start and resists on, where segments went slack {slackenings} \
+                 times and {breaks} were to break: it holds back what hangs loose, and can make peaks too small"
+            ),
+            "damp by mass and along ropes instead (`ropes` in damping), or compare with a motion without it",
+        )),
+        MotionDoubt::LongPieces {
+            cable,
+            crossing,
+            finest,
+            needed,
+        } => {
+            let id = net.cables()[cable.index()].name.as_str();
+            Some(doubt_of(
+                reasons::PIECES_TOO_LONG,
+                id,
+                format!("{} s", rounded(*crossing, 3)),
+                format!(
+                    "a transverse wave takes {} s to cross a straight piece of {}, and a load changes within {} s: waves that it \
+                     makes are smeared, forces at the ends come out too small",
+                    rounded(*crossing, 3),
+                    Quoted(id),
+                    rounded(*finest, 3)
+                ),
+                &format!(
+                    "give pieces_of_hanging at least {} and compare with twice as many",
+                    number(*needed)
+                ),
+            ))
+        }
+        MotionDoubt::NotBroken {
+            segment,
+            tension,
+            largest,
+            count,
+        } => {
+            let id = net.member_name(*segment);
+            let others = match count {
+                1 => String::new(),
+                more => format!("; {} other breaks did not come either", more - 1),
+            };
+            Some(finding(
+                v1::FindingSeverity::Note,
+                reasons::NOT_BROKEN,
+                id,
+                force(*largest),
+                format!(
+                    "{} did not break: it had {} at most, and was to break at {}{others}",
+                    Quoted(id),
+                    force(*largest),
+                    force(*tension)
+                ),
+                "nothing to mend, unless it was meant to break",
+            ))
+        }
         MotionDoubt::LargeMovement { node, movement, extent } => {
             let id = net.node_name(*node);
             Some(doubt_of(

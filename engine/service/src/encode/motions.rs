@@ -3,10 +3,13 @@
 use std::time::Duration;
 
 use ropewalk_api::ropewalk::v1;
-use ropewalk_numerics::brief::{Compared, MotionBegun, MotionExtreme, MotionFound, MotionNotBegun, Plan, Watched};
+use ropewalk_numerics::brief::{
+    BreakGiven, Compared, MotionBegun, MotionExtreme, MotionFound, MotionNotBegun, Plan, Watched,
+};
 use ropewalk_numerics::model::{Member, Net, NodeId, SegmentId};
 use ropewalk_numerics::motion::transient::{
-    Event as Happening, EventKind, Events, Frame, Ledger, Outcome, Peak, Progress, RopeField, Spectrum, WaveSpeeds,
+    BreakWhen, Event as Happening, EventKind, Events, Frame, Ledger, Outcome, Peak, Progress, RopeField, Spectrum,
+    WaveSpeeds,
 };
 use v1::Range;
 use v1::motion_part::Part;
@@ -18,7 +21,7 @@ use super::parts::{BYTES, NUMBERS, count, event, split};
 use super::state::{Array, flat};
 use super::{failure, motion_doubts};
 use crate::decode::{Work, reasons};
-use crate::words::{Quoted, number, shown};
+use crate::words::{Quoted, quoted_list, rounded, shown};
 
 /// What the end of a run needs of a motion.
 #[derive(Debug, Default)]
@@ -86,7 +89,20 @@ pub fn motion_head(work: &Work, plan: &Plan, motion: usize, begun: &MotionBegun)
     let extent = &begun.outlook.extent;
     let (compared_with, not_compared) = match &begun.compared {
         Compared::Case(case) => (brief.cases[*case].name.clone(), String::new()),
-        Compared::Settled => (AT_REST.to_owned(), String::new()),
+        Compared::Settled => {
+            let is_open = |given: &&BreakGiven| matches!(given.when, BreakWhen::Tension(_));
+            let kept = given
+                .breaks
+                .iter()
+                .filter(is_open)
+                .filter_map(|given| given.segments.first());
+            let kept: Vec<&str> = kept.map(|segment| net.member_name(*segment)).collect();
+            let kept = match kept.is_empty() {
+                true => String::new(),
+                false => format!(", with {} whole", quoted_list(kept)),
+            };
+            (format!("{AT_REST}{kept}"), String::new())
+        }
         Compared::Nothing { why } => (String::new(), why.clone()),
     };
     let begin = v1::MotionBegin {
@@ -175,7 +191,7 @@ fn shown_rope(cable: &str, material: &[f64], nodes: Vec<String>) -> Vec<v1::Show
 /// Unit of a watched quantity, and what it is.
 fn watched_in_words(net: &Net, watched: &Watched) -> (&'static str, String) {
     let along = |what: &str, node: NodeId, along: &nalgebra::Vector3<f64>| {
-        let [x, y, z] = [along.x, along.y, along.z].map(number);
+        let [x, y, z] = [along.x, along.y, along.z].map(|part| rounded(part, 4));
         format!("{what} {} along ({x}, {y}, {z})", shown(net.node_name(node)))
     };
     match watched {

@@ -91,7 +91,8 @@ pub struct MotionExtremes {
     pub movement: Option<MotionExtreme<NodeId>>,
     /// Pull on a support (N).
     pub support_force: Option<MotionExtreme<NodeId>>,
-    /// Peak over static tension (–), of segments of ropes with at least 5 % of the largest static one.
+    /// Peak over static tension (–), of segments of ropes with at least 5 % of the largest static one that reach their peak
+    /// after the start: one that only lets go has it there.
     pub tension_factor: Option<MotionExtreme<SegmentId>>,
     /// Peak over static movement (–), of nodes with at least 5 % of the largest static one.
     pub movement_factor: Option<MotionExtreme<NodeId>>,
@@ -294,7 +295,7 @@ impl Whole {
             kept.map(|(index, _, peak)| (index, peak)).collect()
         };
         let forces = ratios(&peaks.largest_forces, &factors.forces);
-        let forces = forces.into_iter().filter(|(segment, _)| is_rope(segment));
+        let forces = (forces.into_iter()).filter(|(segment, peak)| is_rope(segment) && peak.time > 0.0);
         let towards = ratios(&peaks.towards, &factors.movements);
         MotionExtremes {
             tension: largest(tensions).filter(|extreme| extreme.peak.value > 0.0),

@@ -2,7 +2,7 @@
 
 use super::begun::Whole;
 use crate::model::{CableId, NodeId, SegmentId};
-use crate::motion::transient::{Caution, Outcome, Outlook, Scheme};
+use crate::motion::transient::{BreakWhen, Caution, Driven, History, Outcome, Outlook, Scheme, WaveSpeeds};
 
 /// Something to be doubted.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -48,6 +48,35 @@ pub enum MotionDoubt {
         /// Quantities whose series are short.
         count: usize,
     },
+    /// Damping by stiffness is that of the start, and holds back what is slack or broken since.
+    DampingOfStart {
+        /// How many times segments went slack.
+        slackenings: u64,
+        /// Segments that were to break.
+        breaks: usize,
+    },
+    /// Pieces of a divided rope are longer than what varies: a wave crosses one in more time than the load changes in.
+    LongPieces {
+        /// The rope that needs the most pieces.
+        cable: CableId,
+        /// Time in which a wave crosses one piece (s).
+        crossing: f64,
+        /// Time in which a load changes (s).
+        finest: f64,
+        /// Pieces of each segment that would do.
+        needed: f64,
+    },
+    /// What was to break at a tension never reached it.
+    NotBroken {
+        /// Its first segment.
+        segment: SegmentId,
+        /// The tension (N).
+        tension: f64,
+        /// The largest that it had (N).
+        largest: f64,
+        /// How many such breaks there are.
+        count: usize,
+    },
     /// A node moves by more than half of the extent of the net.
     LargeMovement {
         /// The node.
@@ -86,6 +115,9 @@ pub(super) fn doubts(whole: &Whole, outlook: &Outlook, outcome: &Outcome) -> Vec
         histories(outlook),
         energy(whole.motion.scheme, outcome),
         short_spectrum(outcome),
+        damping_of_start(whole, outcome),
+        long_pieces(whole, outlook),
+        not_broken(whole, outcome),
         large_movement(whole, outcome),
         over_breaking(whole, outcome),
     ];
@@ -160,6 +192,78 @@ fn short_spectrum(outcome: &Outcome) -> Option<MotionDoubt> {
         frequency,
         periods,
         count,
+    })
+}
+
+fn damping_of_start(whole: &Whole, outcome: &Outcome) -> Option<MotionDoubt> {
+    let motion = &whole.motion;
+    let breaks = motion.breaks.iter().map(|given| given.segments.len()).sum();
+    let slackenings = outcome.events.slackenings;
+    (motion.damping.stiffness > 0.0 && (breaks > 0 || slackenings > 0))
+        .then_some(MotionDoubt::DampingOfStart { slackenings, breaks })
+}
+
+fn long_pieces(whole: &Whole, outlook: &Outlook) -> Option<MotionDoubt> {
+    /// Pieces that a wave of a sine should have.
+    const PIECES_OF_WAVE: f64 = 5.0;
+    let division = whole.division.as_ref()?;
+    let times = whole.motion.driven.iter().filter_map(|driven| {
+        let history = match driven {
+            Driven::Case { history, .. } | Driven::Wind { speed: history, .. } => history,
+        };
+        match history {
+            History::Harmonic { frequency, .. } => Some(1.0 / (PIECES_OF_WAVE * frequency)),
+            other => other.finest(),
+        }
+    });
+    let finest = times.reduce(f64::min)?;
+    let is_divided = |waves: &&WaveSpeeds| {
+        let mut segments = whole.net.cables()[waves.cable.index()].segments.clone();
+        segments.any(|segment| division.pieces(SegmentId::new(segment)).len() > 1)
+    };
+    let crossings = outlook.waves.iter().filter(is_divided);
+    let crossings = crossings.filter(|waves| waves.transverse_step.is_finite());
+    let slowest = crossings.reduce(|known, next| {
+        if next.transverse_step > known.transverse_step {
+            next
+        } else {
+            known
+        }
+    })?;
+    let crossing = slowest.transverse_step;
+    let pieces = whole.net.cables()[slowest.cable.index()].segments.clone();
+    let pieces = pieces
+        .map(|segment| division.pieces(SegmentId::new(segment)).len())
+        .max()?;
+    (crossing > finest * (1.0 + 1e-9)).then(|| MotionDoubt::LongPieces {
+        cable: slowest.cable,
+        crossing,
+        finest,
+        needed: (pieces as f64 * crossing / finest).ceil(),
+    })
+}
+
+fn not_broken(whole: &Whole, outcome: &Outcome) -> Option<MotionDoubt> {
+    let whole_segment = |segment: &SegmentId| match &whole.division {
+        Some(division) => division.segment(*segment),
+        None => *segment,
+    };
+    let unreached = whole.motion.breaks.iter().filter_map(|given| {
+        let BreakWhen::Tension(tension) = given.when else {
+            return None;
+        };
+        let peaks = given.segments.iter().map(whole_segment);
+        let largest = peaks.map(|segment| outcome.peaks.largest_forces[segment.index()].value);
+        let largest = largest.fold(f64::NEG_INFINITY, f64::max);
+        (largest < tension).then(|| (whole_segment(&given.segments[0]), tension, largest))
+    });
+    let all: Vec<_> = unreached.collect();
+    let (segment, tension, largest) = *all.first()?;
+    Some(MotionDoubt::NotBroken {
+        segment,
+        tension,
+        largest,
+        count: all.len(),
     })
 }
 

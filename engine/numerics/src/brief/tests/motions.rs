@@ -475,6 +475,71 @@ fn a_tension_breaks_a_whole_rope() {
     assert!(found.outcome.factors.forces[segments_of(&net, "y2")[0].index()].is_some());
 }
 
+/// Damping by the stiffness of the start is doubted once something breaks; a tension that is never reached is told.
+#[test]
+fn what_the_start_says_of_later_is_doubted() {
+    let net = saddle().net();
+    let mut lasting = motion(0.2, 0.002);
+    lasting.start.velocities = vec![(node(&net, "m22"), Vector3::new(0.0, 0.0, 0.01))];
+    lasting.damping.stiffness = 1e-4;
+    lasting.breaks = vec![breaks(&net, "y2", BreakWhen::Tension(1e7))];
+    let mut lost = lasting.clone();
+    lost.damping = DampingGiven {
+        mass: 0.1,
+        ..DampingGiven::default()
+    };
+    lost.breaks = vec![breaks(&net, "y2", BreakWhen::Time(0.1))];
+    let plan = saddle_plan(vec![lasting, lost]);
+    let reference = plan.reference(&mut run_on).expect("a reference state");
+    let [lasting, lost] = [0, 1].map(|index| followed(&plan, &reference, index));
+    let largest = lasting.doubts.iter().find_map(|doubt| match doubt {
+        MotionDoubt::NotBroken { largest, count: 1, .. } => Some(*largest),
+        _ => None,
+    });
+    let peaks = segments_of(&net, "y2").into_iter();
+    let peaks = peaks.map(|segment| lasting.outcome.peaks.largest_forces[segment.index()].value);
+    assert_eq!(largest, peaks.reduce(f64::max));
+    let of_start = |found: &MotionFound| {
+        let is = |doubt: &&MotionDoubt| matches!(doubt, MotionDoubt::DampingOfStart { .. });
+        found.doubts.iter().filter(is).count()
+    };
+    assert_eq!([of_start(&lasting), of_start(&lost)], [1, 0]);
+    assert!(!lost.doubts.iter().any(|d| matches!(d, MotionDoubt::NotBroken { .. })));
+    // The moment of the break is that of a whole step, and no sliver of a step comes before it.
+    assert_eq!((lost.outcome.steps, lost.outcome.ending), (100, Ending::Done));
+    assert!(lost.outcome.smallest_step > 0.0019, "{}", lost.outcome.smallest_step);
+}
+
+/// Pieces of a hanging rope that a quick load would need shorter.
+#[test]
+fn long_pieces_are_doubted() {
+    let within = |times: [f64; 3], pieces: usize| {
+        let mut given = motion(0.2, 1e-3);
+        given.pieces_of_hanging = pieces;
+        given.driven = vec![DrivenGiven {
+            what: DrivenWhat::Action(1),
+            history: History::Table(times.into_iter().zip([0.0, 1.0, 0.0]).collect()),
+        }];
+        let plan = line(vec![given]);
+        let reference = plan.reference(&mut run_on).expect("a reference state");
+        let doubts = followed(&plan, &reference, 0).doubts.into_iter();
+        let mut needed = doubts.filter_map(|doubt| match doubt {
+            MotionDoubt::LongPieces {
+                crossing,
+                finest,
+                needed,
+                ..
+            } => Some((crossing, finest, needed)),
+            _ => None,
+        });
+        needed.next()
+    };
+    let (crossing, finest, needed) = within([0.0, 4e-3, 8e-3], 16).expect("a doubt");
+    assert!((finest - 4e-3).abs() < 1e-12 && crossing > finest);
+    assert!((needed - (16.0 * crossing / finest).ceil()).abs() < 0.5);
+    assert_eq!(within([0.0, 0.1, 0.2], 16), None);
+}
+
 /// A rope of two hanging segments, a lamp of 30 kg between them, which carries its weight in the reference state.
 fn line(motions: Vec<MotionGiven>) -> Plan {
     let mut sketch = Sketch::default();

@@ -333,7 +333,7 @@ impl Running {
             let done = self.whole.map_or(0, |whole| whole + 1);
             if done > 0 {
                 let motion = &self.system.motion;
-                let target = (done as f64 * motion.step).min(motion.duration);
+                let target = self.snapped((done as f64 * motion.step).min(motion.duration));
                 self.ending = self.advance(target, observe);
                 if self.ending.is_some() {
                     break;
@@ -415,14 +415,25 @@ impl Running {
         }
     }
 
-    /// The next moment after now, up to `target`, at which loads or shares jump or kink (s).
-    fn next_moment(&self, target: f64) -> f64 {
+    /// Moments at which loads or shares jump or kink (s).
+    fn moments(&self) -> impl Iterator<Item = f64> + '_ {
         let breaks = self
             .breaks
             .iter()
             .filter_map(|b| b.began.map(|began| [began, began + b.given.release]));
-        let moments = self.jumps.iter().copied().chain(breaks.flatten());
-        moments.filter(|t| *t > self.time).fold(target, f64::min)
+        self.jumps.iter().copied().chain(breaks.flatten())
+    }
+
+    /// The end of a whole step (s): the moment beside it where only rounding is between them, which is no step of its own.
+    fn snapped(&self, target: f64) -> f64 {
+        let rounding = 1e-9 * self.system.motion.step;
+        let mut beside = self.moments().filter(|moment| (moment - target).abs() <= rounding);
+        beside.next().unwrap_or(target)
+    }
+
+    /// The next moment after now, up to `target` (s).
+    fn next_moment(&self, target: f64) -> f64 {
+        self.moments().filter(|t| *t > self.time).fold(target, f64::min)
     }
 
     /// Goes on to `target` (s); how it ended where it did not get there.
