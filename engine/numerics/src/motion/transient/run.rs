@@ -415,25 +415,30 @@ impl Running {
         }
     }
 
-    /// Moments at which loads or shares jump or kink (s).
-    fn moments(&self) -> impl Iterator<Item = f64> + '_ {
+    /// The first moment after `time` (s) at which loads or shares jump or kink (s).
+    fn moment_after(&self, time: f64) -> Option<f64> {
+        let jump = self
+            .jumps
+            .get(self.jumps.partition_point(|jump| *jump <= time))
+            .copied();
         let breaks = self
             .breaks
             .iter()
             .filter_map(|b| b.began.map(|began| [began, began + b.given.release]));
-        self.jumps.iter().copied().chain(breaks.flatten())
+        let later = breaks.flatten().filter(|moment| *moment > time);
+        later.chain(jump).reduce(f64::min)
     }
 
     /// The end of a whole step (s): the moment beside it where only rounding is between them, which is no step of its own.
     fn snapped(&self, target: f64) -> f64 {
         let rounding = 1e-9 * self.system.motion.step;
-        let mut beside = self.moments().filter(|moment| (moment - target).abs() <= rounding);
-        beside.next().unwrap_or(target)
+        let beside = self.moment_after(target - rounding);
+        beside.filter(|moment| *moment <= target + rounding).unwrap_or(target)
     }
 
     /// The next moment after now, up to `target` (s).
     fn next_moment(&self, target: f64) -> f64 {
-        self.moments().filter(|t| *t > self.time).fold(target, f64::min)
+        self.moment_after(self.time).map_or(target, |moment| moment.min(target))
     }
 
     /// Goes on to `target` (s); how it ended where it did not get there.
@@ -579,7 +584,7 @@ impl Running {
         self.ledger.error = (self.ledger.total() - self.at_start) - self.ledger.work + spent;
         self.largest_error = self.largest_error.max(self.ledger.error.abs());
         self.largest_kinetic = self.largest_kinetic.max(energies.kinetic);
-        let mut is_moment = self.jumps.contains(&end);
+        let mut is_moment = self.jumps.binary_search_by(|jump| jump.total_cmp(&end)).is_ok();
         for breaking in &mut self.breaks {
             if let (None, BreakWhen::Tension(tension)) = (breaking.began, breaking.given.when) {
                 let axial = |segment: &SegmentId| self.system.axial_force(&self.state.positions, segment.index());

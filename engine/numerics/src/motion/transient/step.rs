@@ -291,9 +291,7 @@ impl Stepper {
                 let Some(is_lost) = self.correct(system, weights, distance, pace, &state.positions) else {
                     break;
                 };
-                let steps = &self.residual;
-                system.structure.dofs().move_nodes(steps, 1.0, &mut state.positions);
-                movement.iter_mut().zip(steps).for_each(|(u, dx)| *u += dx);
+                self.apply(system, &mut movement, &mut state.positions);
                 is_done = is_lost;
             }
             if is_done {
@@ -357,9 +355,7 @@ impl Stepper {
                 let Some(is_lost) = self.correct(system, weights, distance, pace, &state.positions) else {
                     break;
                 };
-                let steps = &self.residual;
-                system.structure.dofs().move_nodes(steps, 1.0, &mut state.positions);
-                movement.iter_mut().zip(steps).for_each(|(u, dx)| *u += dx);
+                self.apply(system, &mut movement, &mut state.positions);
                 is_done = is_lost;
             }
             if is_done {
@@ -453,6 +449,13 @@ impl Stepper {
         }
         self.kept = Some(weights);
         Some(is_lost_in_rounding(&self.residual, positions))
+    }
+
+    /// Adds the correction to the movement over the step (m) and to the positions.
+    fn apply(&self, system: &System, movement: &mut [f64], positions: &mut [Vector3<f64>]) {
+        let steps = &self.residual;
+        system.structure.dofs().move_nodes(steps, 1.0, positions);
+        movement.iter_mut().zip(steps).for_each(|(u, dx)| *u += dx);
     }
 
     /// Factorises the matrix and turns the residual into the correction; false where it is singular.
